@@ -1,0 +1,67 @@
+"""The error tree. Every message is one line: what is wrong, the value, what is allowed, and what to do."""
+
+__all__ = [
+    "DatumError",
+    "HopwrightError",
+    "InputError",
+    "MissingExtraError",
+    "MissingGroundError",
+    "RasterError",
+    "field_error",
+]
+
+
+class HopwrightError(Exception):
+    """Root of every error that hopwright raises on purpose; the command line turns it into exit code 2."""
+
+
+class InputError(HopwrightError, ValueError):
+    """A value from outside (hop file, option, argument) is not allowed."""
+
+
+class RasterError(HopwrightError, OSError):
+    """A raster cannot be used: unreadable, without a CRS, not heights."""
+
+
+class DatumError(InputError):
+    """Heights on different vertical datums meet on one path."""
+
+
+class MissingGroundError(InputError):
+    """The terrain has no height where the path needs one."""
+
+
+class MissingExtraError(HopwrightError, ImportError):
+    """An optional dependency is needed and absent; the message names the extra to install."""
+
+
+def field_error(where: str, field: str, value: object, allowed: str, remedy: str = "") -> InputError:
+    """Build the one-line error for a bad field.
+
+    Parameters
+    ----------
+    where
+        The file (or ``"command line"``) that holds the field.
+    field
+        Dotted name of the field, as the user wrote it.
+    value
+        The offending value.
+    allowed
+        What would be accepted, with units.
+    remedy
+        What to do about it, if more than "give an allowed value".
+
+    Returns
+    -------
+    InputError
+        Ready to raise.
+
+    Examples
+    --------
+    >>> print(field_error("a.toml", "site_a.antenna_m", -3, "more than 0 m"))
+    a.toml: site_a.antenna_m = -3: must be more than 0 m
+    >>> print(field_error("a.toml", "frequency_ghz", 0, "more than 0", "give GHz, not Hz"))
+    a.toml: frequency_ghz = 0: must be more than 0; give GHz, not Hz
+    """
+    line = f"{where}: {field} = {value}: must be {allowed}"
+    return InputError(f"{line}; {remedy}" if remedy else line)
