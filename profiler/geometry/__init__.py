@@ -1,0 +1,26 @@
+"""Where the ray runs, what it must clear, and where it is tightest.
+
+Distances in metres from site A, heights in metres above the vertical datum. Clearance is positive when the ray is
+above the ground and its cover.
+"""
+
+from profiler.geometry.clearance import RuleCheck, check_rule, tight_places
+from profiler.geometry.corridor import CorridorCheck, check_corridor, corridor_offsets
+from profiler.geometry.ray import earth_bulge, elevation_angle, fresnel_radius, ray_height
+from profiler.geometry.reflection import Reflection, find_reflections, smooth_specular_distance
+
+__all__ = [
+    "CorridorCheck",
+    "Reflection",
+    "RuleCheck",
+    "check_corridor",
+    "check_rule",
+    "corridor_offsets",
+    "earth_bulge",
+    "elevation_angle",
+    "find_reflections",
+    "fresnel_radius",
+    "ray_height",
+    "smooth_specular_distance",
+    "tight_places",
+]

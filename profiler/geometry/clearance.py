@@ -1,0 +1,184 @@
+"""Hold one rule against one profile: clearance, requirement, surplus, and the places where it is tight."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import ArrayLike
+
+from profiler.errors import InputError, MissingGroundError
+from profiler.geometry.ray import earth_bulge, fresnel_radius, ray_height
+from profiler.models import frozen_array
+from profiler.units import Float
+
+__all__ = ["RuleCheck", "check_rule", "tight_places"]
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class RuleCheck:
+    """One rule held against one profile; arrays are (n,) along the path.
+
+    ``ratio`` is clearance/F1, NaN at the ends where F1 is 0. ``critical`` is the index of least surplus; ``tight``
+    are the indices of the separate tight places, tightest first (the first is ``critical``).
+    """
+
+    k: float
+    fresnel_fraction: float
+    margin_m: float
+    label: str
+    bulge_m: Float
+    f1_m: Float
+    clearance_m: Float
+    required_m: Float
+    surplus_m: Float
+    ratio: Float
+    critical: int
+    tight: tuple[int, ...]
+
+    @property
+    def passes(self) -> bool:
+        """Whether every point along the path has a surplus of 0 or more."""
+        return bool(self.surplus_m[self.critical] >= 0.0)
+
+    @property
+    def line_of_sight(self) -> bool:
+        """Whether the ray clears ground and cover at this k, with no Fresnel requirement."""
+        return bool(self.clearance_m.min() > 0.0)
+
+
+def check_rule(
+    distance_m: ArrayLike,
+    surface_m: ArrayLike,
+    centre_a_m: float,
+    centre_b_m: float,
+    frequency_hz: float,
+    *,
+    k: float,
+    fresnel_fraction: float,
+    margin_m: float = 0.0,
+    label: str = "",
+    places: int = 5,
+) -> RuleCheck:
+    """Clearance of one profile under one rule, and where it is least.
+
+    At each point: clearance = ray - (surface + bulge); required = fraction·F1 + margin; surplus = clearance -
+    required. The rule passes when no surplus is below 0. The two ends count too: there F1 is 0 and the clearance is
+    the antenna's height above the surface, so an antenna inside its own trees fails.
+
+    Parameters
+    ----------
+    distance_m
+        Distances from A, (n,), ascending from 0; the last is B.
+    surface_m
+        Ground plus cover above the datum, (n,), no gaps.
+    centre_a_m, centre_b_m
+        Antenna centres above the datum.
+    frequency_hz
+        Frequency, more than 0 Hz.
+    k, fresnel_fraction, margin_m
+        The rule: effective-earth-radius factor (above 0), fraction of F1 (0 or more), fixed margin in metres.
+    label
+        Name of the rule, carried into the result.
+    places
+        How many separate tight places to look for, 1 or more.
+
+    Returns
+    -------
+    RuleCheck
+
+    Raises
+    ------
+    MissingGroundError
+        If the surface has a gap; the message says where.
+    InputError
+        If the profile is too short, or its distances do not ascend from 0.
+
+    Examples
+    --------
+    A 40 km hop over flat ground at k = 4/3 and 6 GHz needs a bulge of 23.5 m and 22.3 m of F1 at the middle:
+
+    >>> check = check_rule([0, 20e3, 40e3], [0, 0, 0], 50.0, 50.0, 6e9, k=4 / 3, fresnel_fraction=1.0)
+    >>> check.passes, check.critical, round(float(check.surplus_m[1]), 1)
+    (True, 1, 4.1)
+
+    Notes
+    -----
+    The terms follow the path clearance criteria of Rec. ITU-R P.530-18 §2.2.
+    """
+    distance, surface = frozen_array(distance_m), frozen_array(surface_m)
+    if distance.ndim != 1 or distance.shape != surface.shape or distance.size < 2:
+        raise InputError(f"profile of shapes {distance.shape} and {surface.shape}: must be two equal rows of 2 or more")
+    if distance[0] != 0 or np.any(np.diff(distance) <= 0):
+        raise InputError("distance_m: must ascend from 0 at site A, each point further than the one before")
+    if np.isnan(surface).any():
+        gap = float(distance[np.isnan(surface)][0])
+        raise MissingGroundError(f"no ground height at {gap:.0f} m from A: must be known; fill it or give more terrain")
+    remaining = distance[-1] - distance
+    bulge = earth_bulge(distance, remaining, k)
+    f1 = fresnel_radius(distance, remaining, frequency_hz)
+    clearance = ray_height(distance, centre_a_m, centre_b_m) - surface - bulge
+    required = fresnel_fraction * f1 + margin_m
+    surplus = clearance - required
+    ratio = np.divide(clearance, f1, out=np.full_like(f1, np.nan), where=f1 > 0)
+    tight = tight_places(surplus, rise_m=max(2.0, 0.2 * float(f1.max())), places=places)
+    return RuleCheck(
+        k=float(k),
+        fresnel_fraction=float(fresnel_fraction),
+        margin_m=float(margin_m),
+        label=label,
+        bulge_m=frozen_array(bulge),
+        f1_m=frozen_array(f1),
+        clearance_m=frozen_array(clearance),
+        required_m=frozen_array(required),
+        surplus_m=frozen_array(surplus),
+        ratio=frozen_array(ratio),
+        critical=tight[0],
+        tight=tight,
+    )
+
+
+def tight_places(surplus_m: ArrayLike, *, rise_m: float, places: int = 5) -> tuple[int, ...]:
+    """Find the separate tight places of a profile, as indices, least surplus first.
+
+    Two minima are separate obstacles when the surplus rises by at least ``rise_m`` between them; a bump on the flank of
+    a crest is part of that crest. The place of least surplus always comes first.
+
+    Parameters
+    ----------
+    surplus_m
+        Surplus along the path, (n,), no gaps.
+    rise_m
+        Least rise of the surplus above the shallower of two places that makes them two, metres.
+    places
+        The most places to return, 1 or more.
+
+    Returns
+    -------
+    tuple of int
+
+    Examples
+    --------
+    >>> tight_places([9, 1, 2, 1.5, 9, 4, 9], rise_m=2.0)
+    (1, 5)
+    """
+    surplus = np.asarray(surplus_m, dtype=float)
+    padded = np.concatenate(([np.inf], surplus, [np.inf]))
+    minima = np.flatnonzero((surplus <= padded[:-2]) & (surplus < padded[2:]))
+    chosen = [int(np.argmin(surplus))]
+    for index in minima[np.argsort(surplus[minima], kind="stable")]:
+        if len(chosen) >= places:
+            break
+        if index != chosen[0] and _rise_to_lower(surplus, int(index)) >= rise_m:
+            chosen.append(int(index))
+    return tuple(chosen)
+
+
+def _rise_to_lower(surplus: Float, index: int) -> float:
+    """How far the surplus must rise on the way from one minimum to the nearest lower point, on the easier side."""
+    here = surplus[index]
+    lower = np.flatnonzero(surplus < here)
+    before, after = lower[lower < index], lower[lower > index]
+    rises = [float(surplus[before[-1] : index].max() - here)] if before.size else []
+    rises += [float(surplus[index : after[0]].max() - here)] if after.size else []
+    return min(rises, default=np.inf)

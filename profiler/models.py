@@ -1,0 +1,340 @@
+"""Frozen values passed between the stages. What a user decides lives here; what a stage finds lives beside the stage.
+
+Conventions: profiles run from site A to site B and distance 0 is A; longitude and latitude are WGS 84 degrees, east
+and north positive; heights named ``*_m`` are above the vertical datum of the terrain unless the name says otherwise
+(``antenna_m`` and ``cover_m`` are above ground). ``None`` means "not given": nothing is invented for it.
+"""
+
+from __future__ import annotations
+
+import math
+from dataclasses import dataclass, field
+from pathlib import Path
+from typing import Literal
+
+import numpy as np
+from numpy.typing import ArrayLike
+
+from profiler.errors import InputError
+from profiler.units import K_MEDIAN, Float
+
+__all__ = [
+    "AirChoice",
+    "AvailabilityChoice",
+    "ConfidenceChoice",
+    "CoverChoice",
+    "DiversityChoice",
+    "FillPolicy",
+    "HeightsChoice",
+    "Hop",
+    "MultipathMethod",
+    "Objective",
+    "Obstacle",
+    "Polarization",
+    "Profile",
+    "Radio",
+    "RadioMode",
+    "Rule",
+    "SampleMethod",
+    "Signature",
+    "Site",
+    "Terminal",
+    "TerrainChoice",
+    "TowerChoice",
+    "frozen_array",
+]
+
+Polarization = Literal["vertical", "horizontal"]
+SampleMethod = Literal["bilinear", "highest"]
+FillPolicy = Literal["stop", "interpolate"]
+MultipathMethod = Literal["p530-17", "p530-17-quick", "p530-18", "vigants-barnett"]
+
+
+def frozen_array(values: ArrayLike) -> Float:
+    """Copy values into a read-only float64 array.
+
+    Examples
+    --------
+    >>> frozen_array([1, 2]).flags.writeable
+    False
+    """
+    array = np.array(values, dtype=np.float64)
+    array.setflags(write=False)
+    return array
+
+
+def _require(ok: bool, name: str, value: object, allowed: str) -> None:
+    """Stop with the one-line error of a field unless ``ok``."""
+    if not ok:
+        raise InputError(f"{name} = {value}: must be {allowed}")
+
+
+@dataclass(frozen=True, slots=True)
+class Site:
+    """One end of a hop.
+
+    ``surveyed_ground_m`` replaces the raster's ground at the site. ``position_notes`` say how the position was given
+    when that was not plain WGS 84 degrees.
+    """
+
+    name: str
+    longitude: float
+    latitude: float
+    antenna_m: float
+    surveyed_ground_m: float | None = None
+    position_notes: tuple[str, ...] = ()
+
+    def __post_init__(self) -> None:
+        _require(-180 <= self.longitude <= 180, f"{self.name}: longitude", self.longitude, "-180 to 180 degrees")
+        _require(-90 <= self.latitude <= 90, f"{self.name}: latitude", self.latitude, "-90 to 90 degrees")
+        _require(0 < self.antenna_m < 2000, f"{self.name}: antenna_m", self.antenna_m, "more than 0 and under 2000 m")
+
+
+@dataclass(frozen=True, slots=True)
+class Rule:
+    """One clearance requirement: at factor k, ``fresnel_fraction`` of F1 plus ``margin_m`` must be free."""
+
+    k: float
+    fresnel_fraction: float
+    margin_m: float = 0.0
+    label: str = ""
+
+    def __post_init__(self) -> None:
+        _require(self.k > 0, "k", self.k, "more than 0")
+        _require(0 <= self.fresnel_fraction <= 10, "fresnel_fraction", self.fresnel_fraction, "0 to 10")
+        _require(-100 <= self.margin_m <= 1000, "margin_m", self.margin_m, "-100 to 1000 m")
+
+
+@dataclass(frozen=True, slots=True)
+class TerrainChoice:
+    """Where ground heights come from and how they are read.
+
+    ``spacing_m`` None means half the finest cell under the path; ``vertical_datum`` states the datum of rasters that
+    do not say it themselves.
+    """
+
+    paths: tuple[Path, ...]
+    method: SampleMethod = "bilinear"
+    spacing_m: float | None = None
+    missing: FillPolicy = "stop"
+    allow_mixed_datums: bool = False
+    vertical_datum: str | None = None
+
+
+@dataclass(frozen=True, slots=True)
+class Obstacle:
+    """One thing that stands on the ground across the path, ``from_m`` to ``to_m`` from site A, ``height_m`` tall."""
+
+    name: str
+    from_m: float
+    to_m: float
+    height_m: float
+
+    def __post_init__(self) -> None:
+        _require(0 <= self.from_m <= self.to_m, f"obstacle {self.name}: from_m", self.from_m, "0 to to_m")
+        _require(self.height_m >= 0, f"obstacle {self.name}: height_m", self.height_m, "0 m or more")
+
+
+@dataclass(frozen=True, slots=True)
+class CoverChoice:
+    """What stands on the ground: canopy rasters (heights), a land-cover raster with a height per class, obstacles."""
+
+    canopy: tuple[Path, ...] = ()
+    landcover: Path | None = None
+    class_heights_m: tuple[tuple[int, float], ...] = ()
+    obstacles: tuple[Obstacle, ...] = ()
+
+
+@dataclass(frozen=True, slots=True)
+class Terminal:
+    """The radio and antenna of one end. The gain is given, or follows from dish diameter and efficiency."""
+
+    power_dbm: float
+    line_loss_db: float = 0.0
+    gain_dbi: float | None = None
+    diameter_m: float | None = None
+    efficiency: float | None = None
+    model: str = ""
+
+
+@dataclass(frozen=True, slots=True)
+class Signature:
+    """A radio's selective-fading signature (Rec. ITU-R F.1093): width, depths and the reference delay."""
+
+    width_hz: float
+    depth_minimum_phase_db: float
+    depth_nonminimum_phase_db: float
+    delay_s: float = 6.3e-9
+
+
+@dataclass(frozen=True, slots=True)
+class RadioMode:
+    """One modulation state of the radio. The threshold is given, or follows from noise, rate, modulation and ratio."""
+
+    name: str
+    threshold_dbm: float | None = None
+    power_dbm: float | None = None
+    noise_figure_db: float | None = None
+    noise_temperature_k: float | None = None
+    bandwidth_hz: float | None = None
+    bit_rate_bps: float | None = None
+    modulation: str | None = None
+    bit_error_ratio: float | None = None
+    coding_gain_db: float = 0.0
+    implementation_loss_db: float = 0.0
+    signature: Signature | None = None
+
+
+@dataclass(frozen=True, slots=True)
+class Radio:
+    """Both terminals, the modes (most robust first or in any order) and named extra losses of the path."""
+
+    terminal_a: Terminal
+    terminal_b: Terminal
+    modes: tuple[RadioMode, ...]
+    other_losses_db: tuple[tuple[str, float], ...] = ()
+
+
+@dataclass(frozen=True, slots=True)
+class AirChoice:
+    """The air along the path; what is None comes from the reference atmosphere at the path's height."""
+
+    pressure_hpa: float | None = None
+    temperature_k: float | None = None
+    vapour_g_m3: float | None = None
+
+
+@dataclass(frozen=True, slots=True)
+class DiversityChoice:
+    """Space diversity: a second receiving antenna ``spacing_m`` below the main one at each end, with its gain."""
+
+    spacing_m: float
+    gain_difference_db: float = 0.0
+
+
+@dataclass(frozen=True, slots=True)
+class Objective:
+    """What the hop must meet; each target that is None is not asked for. Outage both ways is judged per direction."""
+
+    worst_month_percent: float | None = None
+    year_percent: float | None = None
+    minutes_per_year: float | None = None
+    severely_errored_seconds_ratio: float | None = None
+
+
+@dataclass(frozen=True, slots=True)
+class AvailabilityChoice:
+    """Climate numbers and method for the outage prediction. With ``use_maps`` the climate extra fills what is None.
+
+    ``k_percentiles`` are (percent of the time that k is not exceeded, k) pairs, ascending, for obstruction fading and
+    for the spread of k in the confidence analysis.
+    """
+
+    multipath_method: MultipathMethod
+    objective: Objective = Objective()
+    use_maps: bool = False
+    rain_rate_mm_h: float | None = None
+    dn1_n_km: float | None = None
+    terrain_roughness_m: float | None = None
+    geoclimatic_factor: float | None = None
+    dn75_n_km: float | None = None
+    climate_factor: float | None = None
+    k_percentiles: tuple[tuple[float, float], ...] = ()
+    diversity: DiversityChoice | None = None
+
+
+@dataclass(frozen=True, slots=True)
+class TowerChoice:
+    """What a tower allows and costs: range and step of positions, taken ones, price per metre and above a limit."""
+
+    lowest_m: float = 1.0
+    highest_m: float = 150.0
+    step_m: float = 1.0
+    taken_m: tuple[float, ...] = ()
+    taken_clearance_m: float = 1.0
+    cost_per_m: float = 1.0
+    threshold_m: float | None = None
+    threshold_cost: float = 0.0
+
+    def __post_init__(self) -> None:
+        _require(self.lowest_m > 0, "lowest_m", self.lowest_m, "more than 0 m")
+        _require(self.highest_m >= self.lowest_m, "highest_m", self.highest_m, f"at least lowest_m = {self.lowest_m}")
+        _require(self.step_m > 0, "step_m", self.step_m, "more than 0 m")
+
+
+@dataclass(frozen=True, slots=True)
+class HeightsChoice:
+    """What the search for antenna heights may do at each tower, and the optional loss limit."""
+
+    tower_a: TowerChoice = TowerChoice()
+    tower_b: TowerChoice = TowerChoice()
+    loss_limit_db: float | None = None
+    loss_k: float = K_MEDIAN
+
+
+@dataclass(frozen=True, slots=True)
+class ConfidenceChoice:
+    """How wrong the terrain and the cover may be. ``terrain_source`` names where ``terrain_sigma_m`` comes from."""
+
+    terrain_sigma_m: float
+    terrain_source: str
+    correlation_m: float
+    covariance: Literal["exponential", "gaussian"] = "exponential"
+    site_sigma_m: float | None = None
+    cover_sigma_m: float = 0.0
+    cover_relative_sigma: float = 0.0
+    vary_k: bool = False
+    draws: int = 2000
+    seed: int = 1
+
+
+@dataclass(frozen=True, slots=True)
+class Hop:
+    """All that a user says about one hop. Built by `profiler.hopfile` or in code; `profiler.study` runs it."""
+
+    name: str
+    site_a: Site
+    site_b: Site
+    frequency_hz: float
+    rules: tuple[Rule, ...]
+    terrain: TerrainChoice
+    polarization: Polarization = "vertical"
+    median_k: float = K_MEDIAN
+    diffraction_method: str = "delta-bullington"
+    sea_fraction: float = 0.0
+    cover: CoverChoice = CoverChoice()
+    radio: Radio | None = None
+    air: AirChoice = AirChoice()
+    availability: AvailabilityChoice | None = None
+    heights: HeightsChoice = HeightsChoice()
+    confidence: ConfidenceChoice | None = None
+    assumptions: tuple[str, ...] = ()
+    source: str = "code"
+    source_sha256: str | None = None
+
+    def __post_init__(self) -> None:
+        _require(1e7 <= self.frequency_hz <= 1e12, "frequency_hz", self.frequency_hz, "1e7 to 1e12 Hz")
+        _require(len(self.rules) > 0, "rules", "none", "at least one rule or a named preset")
+        _require(0 < self.median_k < math.inf, "median_k", self.median_k, "more than 0")
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Profile:
+    """Ground and cover from A to B, all arrays (n,) and read-only.
+
+    ``source`` indexes the raster that gave each ground height (-1: none). ``filled`` marks ground that was
+    interpolated by the user's leave. ``surveyed`` marks ground that a survey replaced.
+    """
+
+    distance_m: Float
+    longitude: Float
+    latitude: Float
+    ground_m: Float
+    cover_m: Float
+    filled: np.ndarray = field(repr=False)
+    surveyed: np.ndarray = field(repr=False)
+
+    @property
+    def surface_m(self) -> Float:
+        """Ground plus cover, above the vertical datum."""
+        return self.ground_m + self.cover_m
