@@ -20,11 +20,11 @@ def _data(folder: str) -> Path:
 
 @pytest.fixture
 def reference() -> Path:
-    """Published values: ../shared/reference from the project's root."""
+    """Find the published values: ../shared/reference from the project's root."""
     return _data("reference")
 
 
 @pytest.fixture
 def real_terrain() -> Path:
-    """Real terrain: ../shared/terrain from the project's root."""
+    """Find the real terrain: ../shared/terrain from the project's root."""
     return _data("terrain")

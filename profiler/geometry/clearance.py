@@ -169,16 +169,18 @@ def tight_places(surplus_m: ArrayLike, *, rise_m: float, places: int = 5) -> tup
     for index in minima[np.argsort(surplus[minima], kind="stable")]:
         if len(chosen) >= places:
             break
-        if index != chosen[0] and _rise_to_lower(surplus, int(index)) >= rise_m:
+        if index != chosen[0] and _rise_to_lower(surplus, int(index), chosen) >= rise_m:
             chosen.append(int(index))
     return tuple(chosen)
 
 
-def _rise_to_lower(surplus: Float, index: int) -> float:
-    """How far the surplus must rise on the way from one minimum to the nearest lower point, on the easier side."""
+def _rise_to_lower(surplus: Float, index: int, chosen: list[int]) -> float:
+    """How far the surplus must rise on the way from a minimum to a lower or chosen point, on the easier side."""
     here = surplus[index]
-    lower = np.flatnonzero(surplus < here)
+    deeper = surplus < here
+    deeper[chosen] = True
+    lower = np.flatnonzero(deeper)
     before, after = lower[lower < index], lower[lower > index]
     rises = [float(surplus[before[-1] : index].max() - here)] if before.size else []
     rises += [float(surplus[index : after[0]].max() - here)] if after.size else []
-    return min(rises, default=np.inf)
+    return min(rises)

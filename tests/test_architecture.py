@@ -1,0 +1,90 @@
+"""The import ranks and the sole users of DEVELOPERS.md, held against the imports themselves."""
+
+import ast
+from pathlib import Path
+
+import pytest
+
+PACKAGE = Path(__file__).resolve().parent.parent / "profiler"
+
+RANKS = {
+    "errors": 0,
+    "units": 0,
+    "models": 1,
+    "terrain": 2,
+    "path": 2,
+    "climate": 2,
+    "hopfile": 3,
+    "cover": 3,
+    "geometry": 4,
+    "diffraction": 5,
+    "atmosphere": 5,
+    "receiver": 5,
+    "budget": 6,
+    "availability": 6,
+    "heights": 7,
+    "confidence": 7,
+    "study": 8,
+    "figures": 10,
+    "cli": 11,
+}
+
+SOLE_USERS = {
+    "pydantic": {"hopfile"},
+    "rasterio": {"terrain"},
+    "pyproj": {"path"},
+    "itur": {"climate"},
+    "matplotlib": {"figures"},
+    "click": {"cli"},
+    "rich": {"cli"},
+}
+
+
+def imports() -> list[tuple[Path, str]]:
+    """Every (file, absolute module name imported) of the package, wherever in the file the import stands."""
+    found = []
+    for path in sorted(PACKAGE.rglob("*.py")):
+        for node in ast.walk(ast.parse(path.read_text())):
+            if isinstance(node, ast.Import):
+                found += [(path, alias.name) for alias in node.names]
+            elif isinstance(node, ast.ImportFrom):
+                assert node.level == 0, f"{path}: write imports absolutely"
+                found.append((path, node.module or ""))
+    return found
+
+
+def module_of(path: Path) -> str:
+    return path.relative_to(PACKAGE).parts[0].removesuffix(".py")
+
+
+def test_imports_go_only_to_a_lower_rank():
+    wrong = []
+    for path, name in imports():
+        parts = name.split(".")
+        if parts[0] != "profiler" or len(parts) == 1:
+            continue
+        here, there = module_of(path), parts[1]
+        if here not in ("__init__", "__main__") and here != there and RANKS[there] >= RANKS[here]:
+            wrong.append(f"{here} ({path.name}) imports {there}")
+    assert wrong == []
+
+
+def test_every_module_has_a_rank():
+    modules = {module_of(path) for path in PACKAGE.rglob("*.py")} - {"__init__", "__main__"}
+    assert modules == set(RANKS)
+
+
+@pytest.mark.parametrize("library", SOLE_USERS)
+def test_each_library_has_one_user(library):
+    users = {module_of(path) for path, name in imports() if name.split(".")[0] == library}
+    assert users == SOLE_USERS[library]
+
+
+def test_only_the_command_line_prints():
+    printers = {
+        module_of(path)
+        for path in PACKAGE.rglob("*.py")
+        for node in ast.walk(ast.parse(path.read_text()))
+        if isinstance(node, ast.Call) and isinstance(node.func, ast.Name) and node.func.id == "print"
+    }
+    assert printers <= {"cli"}
