@@ -30,6 +30,7 @@ __all__ = [
     "MultipathMethod",
     "Objective",
     "Obstacle",
+    "Obstruction",
     "Polarization",
     "Profile",
     "Radio",
@@ -47,6 +48,7 @@ __all__ = [
 Polarization = Literal["vertical", "horizontal"]
 SampleMethod = Literal["bilinear", "highest"]
 FillPolicy = Literal["stop", "interpolate"]
+Obstruction = Literal["isolated", "extended"]
 MultipathMethod = Literal["p530-17", "p530-17-quick", "p530-18", "vigants-barnett"]
 
 
@@ -245,7 +247,13 @@ class AvailabilityChoice:
 
 @dataclass(frozen=True, slots=True)
 class TowerChoice:
-    """What a tower allows and costs: range and step of positions, taken ones, price per metre and above a limit."""
+    """What a tower allows and costs: range and step of positions, taken ones, price per metre and above a limit.
+
+    Positions are the whole multiples of ``step_m`` above ground from ``lowest_m`` to ``highest_m``, both included;
+    with ``lowest_m`` equal to ``highest_m`` that one height, whatever the step. A position closer than
+    ``taken_clearance_m`` to one of ``taken_m`` is not free. ``threshold_cost`` is paid once for an antenna above
+    ``threshold_m`` (not for one at it).
+    """
 
     lowest_m: float = 1.0
     highest_m: float = 150.0
@@ -259,17 +267,35 @@ class TowerChoice:
     def __post_init__(self) -> None:
         _require(self.lowest_m > 0, "lowest_m", self.lowest_m, "more than 0 m")
         _require(self.highest_m >= self.lowest_m, "highest_m", self.highest_m, f"at least lowest_m = {self.lowest_m}")
+        _require(self.highest_m < 2000, "highest_m", self.highest_m, "under 2000 m")
         _require(self.step_m > 0, "step_m", self.step_m, "more than 0 m")
+        _require(
+            all(0 < taken < 2000 for taken in self.taken_m), "taken_m", self.taken_m, "more than 0 and under 2000 m"
+        )
+        _require(0 <= self.taken_clearance_m < 2000, "taken_clearance_m", self.taken_clearance_m, "0 m or more")
+        _require(0 <= self.cost_per_m < math.inf, "cost_per_m", self.cost_per_m, "0 or more")
+        _require(self.threshold_m is None or self.threshold_m > 0, "threshold_m", self.threshold_m, "more than 0 m")
+        _require(0 <= self.threshold_cost < math.inf, "threshold_cost", self.threshold_cost, "0 or more")
 
 
 @dataclass(frozen=True, slots=True)
 class HeightsChoice:
-    """What the search for antenna heights may do at each tower, and the optional loss limit."""
+    """What the search for antenna heights may do at each tower, and the optional loss limit.
+
+    ``diversity_obstruction`` says what the ground does to the lower antenna of a diversity pair (Rec. ITU-R P.530-18
+    §2.2.2): one or two isolated obstacles, or an extended one, which asks for more clearance.
+    """
 
     tower_a: TowerChoice = TowerChoice()
     tower_b: TowerChoice = TowerChoice()
     loss_limit_db: float | None = None
     loss_k: float = K_MEDIAN
+    diversity_obstruction: Obstruction = "extended"
+
+    def __post_init__(self) -> None:
+        limit_ok = self.loss_limit_db is None or 0 <= self.loss_limit_db < math.inf
+        _require(limit_ok, "loss_limit_db", self.loss_limit_db, "0 dB or more")
+        _require(self.loss_k > 0, "loss_k", self.loss_k, "more than 0")
 
 
 @dataclass(frozen=True, slots=True)
