@@ -71,6 +71,10 @@ def _require(ok: bool, name: str, value: object, allowed: str) -> None:
         raise InputError(f"{name} = {value}: must be {allowed}")
 
 
+def _positive_or_none(value: float | None) -> bool:
+    return value is None or 0 < value < math.inf
+
+
 @dataclass(frozen=True, slots=True)
 class Site:
     """One end of a hop.
@@ -158,6 +162,16 @@ class Terminal:
     efficiency: float | None = None
     model: str = ""
 
+    def __post_init__(self) -> None:
+        _require(math.isfinite(self.power_dbm), "power_dbm", self.power_dbm, "a finite level in dBm")
+        _require(0 <= self.line_loss_db < math.inf, "line_loss_db", self.line_loss_db, "0 dB or more")
+        _require(
+            self.gain_dbi is None or math.isfinite(self.gain_dbi), "gain_dbi", self.gain_dbi, "a finite gain in dBi"
+        )
+        _require(_positive_or_none(self.diameter_m), "diameter_m", self.diameter_m, "more than 0 m")
+        ok = self.efficiency is None or 0 < self.efficiency <= 1
+        _require(ok, "efficiency", self.efficiency, "more than 0 and at most 1 (a fraction, not percent)")
+
 
 @dataclass(frozen=True, slots=True)
 class Signature:
@@ -171,7 +185,12 @@ class Signature:
 
 @dataclass(frozen=True, slots=True)
 class RadioMode:
-    """One modulation state of the radio. The threshold is given, or follows from noise, rate, modulation and ratio."""
+    """One modulation state of the radio. The threshold is given, or follows from noise, rate, modulation and ratio.
+
+    ``noise_temperature_k`` is that of the whole receiving system (antenna and receiver), so N0 = k_B·T; a noise figure
+    F means 290 K·F. ``bit_rate_bps`` is the rate of information bits and ``coding_gain_db`` is in Eb/N0 of those bits.
+    ``power_dbm`` replaces the power of both terminals in this mode.
+    """
 
     name: str
     threshold_dbm: float | None = None
@@ -186,6 +205,20 @@ class RadioMode:
     implementation_loss_db: float = 0.0
     signature: Signature | None = None
 
+    def __post_init__(self) -> None:
+        for name in ("threshold_dbm", "power_dbm"):
+            level = getattr(self, name)
+            _require(level is None or math.isfinite(level), name, level, "a finite level in dBm")
+        for name, unit in (("noise_temperature_k", "K"), ("bandwidth_hz", "Hz"), ("bit_rate_bps", "bit/s")):
+            value = getattr(self, name)
+            _require(_positive_or_none(value), name, value, f"more than 0 {unit}")
+        figure, ratio = self.noise_figure_db, self.bit_error_ratio
+        _require(figure is None or 0 <= figure < math.inf, "noise_figure_db", figure, "0 dB or more")
+        _require(ratio is None or 0 < ratio < 0.5, "bit_error_ratio", ratio, "more than 0 and under 0.5")
+        for name in ("coding_gain_db", "implementation_loss_db"):
+            value = getattr(self, name)
+            _require(0 <= value < math.inf, name, value, "0 dB or more")
+
 
 @dataclass(frozen=True, slots=True)
 class Radio:
@@ -195,6 +228,12 @@ class Radio:
     terminal_b: Terminal
     modes: tuple[RadioMode, ...]
     other_losses_db: tuple[tuple[str, float], ...] = ()
+
+    def __post_init__(self) -> None:
+        for name, loss_db in self.other_losses_db:
+            _require(0 <= loss_db < math.inf, f"other loss {name}", loss_db, "0 dB or more (a loss is positive)")
+        names = [mode.name for mode in self.modes]
+        _require(len(set(names)) == len(names), "mode names", ", ".join(names), "different from one another")
 
 
 @dataclass(frozen=True, slots=True)
@@ -300,7 +339,14 @@ class HeightsChoice:
 
 @dataclass(frozen=True, slots=True)
 class ConfidenceChoice:
-    """How wrong the terrain and the cover may be. ``terrain_source`` names where ``terrain_sigma_m`` comes from."""
+    """How wrong the terrain and the cover may be, and how the doubt is drawn.
+
+    ``terrain_source`` says in words where ``terrain_sigma_m`` comes from. ``correlation_m`` is the practical range of
+    the terrain error: the distance at which its correlation has fallen to 5 %; 0 is none, infinity is one error for
+    the whole path. ``cover_correlation_m`` is the same for the cover, None meaning the terrain's. ``site_sigma_m`` is
+    the error of the ground at sites known better than the raster, None meaning that they share the raster's error.
+    The cover's error is ``cover_sigma_m`` and ``cover_relative_sigma`` times its height, added in quadrature.
+    """
 
     terrain_sigma_m: float
     terrain_source: str
@@ -309,9 +355,22 @@ class ConfidenceChoice:
     site_sigma_m: float | None = None
     cover_sigma_m: float = 0.0
     cover_relative_sigma: float = 0.0
+    cover_correlation_m: float | None = None
     vary_k: bool = False
     draws: int = 2000
     seed: int = 1
+
+    def __post_init__(self) -> None:
+        _require(0 <= self.terrain_sigma_m <= 100, "terrain_sigma_m", self.terrain_sigma_m, "0 to 100 m")
+        _require(self.correlation_m >= 0, "correlation_m", self.correlation_m, "0 m or more")
+        site = 0.0 if self.site_sigma_m is None else self.site_sigma_m
+        _require(0 <= site <= 100, "site_sigma_m", site, "0 to 100 m")
+        _require(0 <= self.cover_sigma_m <= 100, "cover_sigma_m", self.cover_sigma_m, "0 to 100 m")
+        _require(0 <= self.cover_relative_sigma <= 1, "cover_relative_sigma", self.cover_relative_sigma, "0 to 1")
+        cover = 0.0 if self.cover_correlation_m is None else self.cover_correlation_m
+        _require(cover >= 0, "cover_correlation_m", cover, "0 m or more")
+        _require(100 <= self.draws <= 1_000_000, "draws", self.draws, "100 to 1000000")
+        _require(self.seed >= 0, "seed", self.seed, "0 or more")
 
 
 @dataclass(frozen=True, slots=True)
