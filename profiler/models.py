@@ -27,6 +27,7 @@ __all__ = [
     "FillPolicy",
     "HeightsChoice",
     "Hop",
+    "KPeriod",
     "MultipathMethod",
     "Objective",
     "Obstacle",
@@ -42,6 +43,7 @@ __all__ = [
     "Terminal",
     "TerrainChoice",
     "TowerChoice",
+    "VigantsClimate",
     "frozen_array",
 ]
 
@@ -50,6 +52,8 @@ SampleMethod = Literal["bilinear", "highest"]
 FillPolicy = Literal["stop", "interpolate"]
 Obstruction = Literal["isolated", "extended"]
 MultipathMethod = Literal["p530-17", "p530-17-quick", "p530-18", "vigants-barnett"]
+VigantsClimate = Literal["humid", "average", "dry"]
+KPeriod = Literal["year", "worst-month"]
 
 
 def frozen_array(values: ArrayLike) -> Float:
@@ -182,6 +186,13 @@ class Signature:
     depth_nonminimum_phase_db: float
     delay_s: float = 6.3e-9
 
+    def __post_init__(self) -> None:
+        _require(0 < self.width_hz < math.inf, "width_hz", self.width_hz, "more than 0 Hz")
+        _require(0 < self.delay_s < math.inf, "delay_s", self.delay_s, "more than 0 s")
+        for name in ("depth_minimum_phase_db", "depth_nonminimum_phase_db"):
+            value = getattr(self, name)
+            _require(math.isfinite(value), name, value, "a number of dB")
+
 
 @dataclass(frozen=True, slots=True)
 class RadioMode:
@@ -252,15 +263,46 @@ class DiversityChoice:
     spacing_m: float
     gain_difference_db: float = 0.0
 
+    def __post_init__(self) -> None:
+        _require(0 < self.spacing_m < math.inf, "spacing_m", self.spacing_m, "more than 0 m")
+        _require(
+            math.isfinite(self.gain_difference_db), "gain_difference_db", self.gain_difference_db, "a number of dB"
+        )
+
 
 @dataclass(frozen=True, slots=True)
 class Objective:
-    """What the hop must meet; each target that is None is not asked for. Outage both ways is judged per direction."""
+    """What the hop must meet; each target that is None is not asked for. Outage both ways is judged per direction.
+
+    The ratios are of the seconds of the worst month. Errors begin above the radio's threshold, so
+    ``errored_seconds_ratio`` needs ``errored_threshold_offset_db``: by how much the level at which seconds are errored
+    lies above the threshold.
+    """
 
     worst_month_percent: float | None = None
     year_percent: float | None = None
     minutes_per_year: float | None = None
     severely_errored_seconds_ratio: float | None = None
+    errored_seconds_ratio: float | None = None
+    errored_threshold_offset_db: float | None = None
+
+    def __post_init__(self) -> None:
+        for name in ("worst_month_percent", "year_percent"):
+            value = getattr(self, name)
+            _require(value is None or 0 < value < 100, name, value, "more than 0 and under 100 %")
+        minutes = self.minutes_per_year
+        _require(minutes is None or 0 < minutes < 525_960, "minutes_per_year", minutes, "more than 0 and under 525960")
+        for name in ("severely_errored_seconds_ratio", "errored_seconds_ratio"):
+            value = getattr(self, name)
+            _require(value is None or 0 < value < 1, name, value, "more than 0 and under 1")
+        offset = self.errored_threshold_offset_db
+        _require(offset is None or 0 <= offset < 100, "errored_threshold_offset_db", offset, "0 to under 100 dB")
+        _require(
+            (offset is None) == (self.errored_seconds_ratio is None),
+            "errored_threshold_offset_db",
+            "not given" if offset is None else offset,
+            "given together with errored_seconds_ratio",
+        )
 
 
 @dataclass(frozen=True, slots=True)
@@ -268,7 +310,9 @@ class AvailabilityChoice:
     """Climate numbers and method for the outage prediction. With ``use_maps`` the climate extra fills what is None.
 
     ``k_percentiles`` are (percent of the time that k is not exceeded, k) pairs, ascending, for obstruction fading and
-    for the spread of k in the confidence analysis.
+    for the spread of k in the confidence analysis; ``k_period`` says of which time. ``climate_factor`` is the whole c
+    of Vigants-Barnett; where it is None, ``climate`` with the roughness of the path's own ground gives it.
+    ``annual_temperature_k`` is the mean of the year, for the length of the Vigants-Barnett fading season.
     """
 
     multipath_method: MultipathMethod
@@ -280,7 +324,10 @@ class AvailabilityChoice:
     geoclimatic_factor: float | None = None
     dn75_n_km: float | None = None
     climate_factor: float | None = None
+    climate: VigantsClimate | None = None
+    annual_temperature_k: float | None = None
     k_percentiles: tuple[tuple[float, float], ...] = ()
+    k_period: KPeriod = "year"
     diversity: DiversityChoice | None = None
 
 
