@@ -1,0 +1,9 @@
+"""Where the path runs on the WGS 84 ellipsoid.
+
+The only user of pyproj, which is imported inside the functions that need it: its import alone costs some 50 ms.
+"""
+
+from profiler.path.datum import DATUMS, to_wgs84
+from profiler.path.line import LONGEST_M, PathLine, across, geodesic, locate, midpoint, trace
+
+__all__ = ["DATUMS", "LONGEST_M", "PathLine", "across", "geodesic", "locate", "midpoint", "to_wgs84", "trace"]
