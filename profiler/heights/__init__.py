@@ -1,0 +1,54 @@
+"""How high the antennas must stand: the exact region of heights that clear, and the choice within it.
+
+Heights are metres above the ground of their own site unless a name says ``centre`` (above the vertical datum).
+"""
+
+from profiler.heights.choose import Choice, Lowering, NoPair, cheapest, cheapest_exact, cheapest_of, least_other
+from profiler.heights.diversity import DiversityEnd, check_diversity
+from profiler.heights.frontier import Stretch, frontier_stretches
+from profiler.heights.positions import all_positions, free_positions, height_cost, round_up
+from profiler.heights.region import (
+    ROUNDING_M,
+    ClearingRegion,
+    Least,
+    clearing_region,
+    least_a_for,
+    least_b_for,
+    least_equal,
+    least_ray,
+    surplus,
+)
+from profiler.heights.search import LimitHeights, heights_within
+from profiler.heights.sheet import EndHeights, MountingSheet, mounting_sheet
+
+__all__ = [
+    "ROUNDING_M",
+    "Choice",
+    "ClearingRegion",
+    "DiversityEnd",
+    "EndHeights",
+    "Least",
+    "LimitHeights",
+    "Lowering",
+    "MountingSheet",
+    "NoPair",
+    "Stretch",
+    "all_positions",
+    "cheapest",
+    "cheapest_exact",
+    "cheapest_of",
+    "check_diversity",
+    "clearing_region",
+    "free_positions",
+    "frontier_stretches",
+    "height_cost",
+    "heights_within",
+    "least_a_for",
+    "least_b_for",
+    "least_equal",
+    "least_other",
+    "least_ray",
+    "mounting_sheet",
+    "round_up",
+    "surplus",
+]

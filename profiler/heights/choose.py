@@ -1,0 +1,281 @@
+"""Choose antenna heights from a clearing region under limits and costs, or prove that no pair clears."""
+
+from __future__ import annotations
+
+import math
+from dataclasses import dataclass
+
+import numpy as np
+
+from profiler.errors import InputError
+from profiler.geometry import tight_places
+from profiler.heights.positions import all_positions, free_positions, height_cost
+from profiler.heights.region import ROUNDING_M, ClearingRegion, Least, least_a_for, least_b_for, surplus
+from profiler.models import TowerChoice
+from profiler.units import Float
+
+__all__ = ["Choice", "Lowering", "NoPair", "cheapest", "cheapest_exact", "cheapest_of", "least_other"]
+
+_TALLEST_M = 2000.0
+"""Above this no antenna is mounted (the models refuse it), so it is no remedy."""
+
+
+@dataclass(frozen=True, slots=True)
+class Choice:
+    """A pair of antenna heights above ground and what it costs."""
+
+    antenna_a_m: float
+    antenna_b_m: float
+    cost: float
+
+
+@dataclass(frozen=True, slots=True)
+class Lowering:
+    """One place that stands too high, and by how much; ``rule`` is an index, -1 for the bare ground of a site."""
+
+    point: int
+    distance_m: float
+    rule: int
+    by_m: float
+
+
+@dataclass(frozen=True, slots=True)
+class NoPair:
+    """No pair of heights is good enough under the limits, why, and what would have to change.
+
+    ``best_a_m`` and ``best_b_m`` are the highest pair there is: raising an antenna never lowers the ray, so when that
+    pair is short, every pair is. NaN where a tower has no free position at all. Each of the following would do alone:
+    lower all of ``lower``; let A stand at ``raise_a_to_m`` (None: no height of A alone would do), or B at
+    ``raise_b_to_m``; raise both by ``raise_both_by_m``; with ``taken_to_blame`` free the taken positions.
+    ``proven`` is False where the search was by trial, not by the region: then no pair was found.
+    """
+
+    reason: str
+    best_a_m: float
+    best_b_m: float
+    lower: tuple[Lowering, ...] = ()
+    raise_a_to_m: float | None = None
+    raise_b_to_m: float | None = None
+    raise_both_by_m: float | None = None
+    taken_to_blame: bool = False
+    proven: bool = True
+
+    @property
+    def remedies(self) -> tuple[str, ...]:
+        """What would have to change, one way a line."""
+        ways = []
+        if self.lower:
+            places = ", ".join(f"by {place.by_m:.2f} m at {place.distance_m / 1e3:.3f} km" for place in self.lower)
+            ways.append(f"lower what stands {places} from A")
+        if self.raise_a_to_m is not None:
+            ways.append(f"let antenna A stand at {self.raise_a_to_m:.2f} m or higher")
+        if self.raise_b_to_m is not None:
+            ways.append(f"let antenna B stand at {self.raise_b_to_m:.2f} m or higher")
+        if self.raise_both_by_m is not None:
+            ways.append(f"let both antennas stand {self.raise_both_by_m:.2f} m higher")
+        if self.taken_to_blame:
+            ways.append("free taken positions: the towers are high enough without them")
+        return tuple(ways)
+
+
+def least_other(
+    region: ClearingRegion, *, fixed_a_m: float | None = None, fixed_b_m: float | None = None
+) -> Least | NoPair:
+    """Least height at one end with the antenna at the other end fixed.
+
+    Parameters
+    ----------
+    region
+        From `profiler.heights.clearing_region`.
+    fixed_a_m, fixed_b_m
+        Height above ground of the fixed antenna, more than 0 m; exactly one of the two.
+
+    Returns
+    -------
+    Least or NoPair
+        `NoPair` when the fixed antenna stands too low at its own site (in its own cover) for any height to help.
+
+    Raises
+    ------
+    InputError
+        If none or both are given, or the height is not above 0.
+
+    Examples
+    --------
+    >>> from profiler.heights import clearing_region
+    >>> region = clearing_region([0, 5e3, 10e3], [110, 160, 100], 100, 100)
+    >>> least_other(region, fixed_a_m=40.0)
+    Least(height_m=80.0, point=1, distance_m=5000.0, rule=0)
+    >>> print(least_other(region, fixed_a_m=8.0).reason)
+    no antenna B helps: antenna A at 8.00 m stands 2.00 m too low at its own site, where 10.00 m are needed
+    """
+    given = [height for height in (fixed_a_m, fixed_b_m) if height is not None]
+    if len(given) != 1:
+        raise InputError(f"fixed_a_m = {fixed_a_m}, fixed_b_m = {fixed_b_m}: must be exactly one height")
+    fixed = given[0]
+    if not 0 < fixed < math.inf:
+        name = "fixed_b_m" if fixed_a_m is None else "fixed_a_m"
+        raise InputError(f"{name} = {fixed}: must be more than 0 m above ground")
+    at_a = fixed_a_m is not None
+    lowest = region.lowest_a_m if at_a else region.lowest_b_m
+    if fixed < lowest - ROUNDING_M:
+        point = 0 if at_a else region.distance_m.size - 1
+        place = Lowering(point, float(region.distance_m[point]), int(region.rule[point]), lowest - fixed)
+        here, far = ("A", "B") if at_a else ("B", "A")
+        return NoPair(
+            reason=f"no antenna {far} helps: antenna {here} at {fixed:.2f} m stands {lowest - fixed:.2f} m too low at "
+            f"its own site, where {lowest:.2f} m are needed",
+            best_a_m=fixed if at_a else math.inf,
+            best_b_m=math.inf if at_a else fixed,
+            lower=(place,),
+            raise_a_to_m=lowest if at_a else None,
+            raise_b_to_m=None if at_a else lowest,
+        )
+    height = float(least_b_for(region, fixed) if at_a else least_a_for(region, fixed))
+    point = _tightest(region, fixed if at_a else height, height if at_a else fixed, at_a)
+    return Least(height, point, float(region.distance_m[point]), int(region.rule[point]))
+
+
+def cheapest(region: ClearingRegion, tower_a: TowerChoice, tower_b: TowerChoice) -> Choice | NoPair:
+    """Find the cheapest pair of free positions that clears, or prove that none does.
+
+    Every free position of A is taken with the least free position of B that clears with it; costs never fall with
+    height, so the cheapest pair is among these. Of equally cheap pairs the one with the least sum is taken, then the
+    one with the least taller antenna.
+
+    Parameters
+    ----------
+    region
+        From `profiler.heights.clearing_region`.
+    tower_a, tower_b
+        Limits, steps, taken positions and costs.
+
+    Returns
+    -------
+    Choice or NoPair
+
+    Raises
+    ------
+    InputError
+        If a tower's limits hold no whole step.
+
+    Examples
+    --------
+    The heights must sum to 120 m. A metre costs 3 at B, but an antenna A above 60 m costs 100 more:
+
+    >>> from profiler.heights import clearing_region
+    >>> region = clearing_region([0, 5e3, 10e3], [100, 160, 100], 100, 100)
+    >>> tower_a, tower_b = TowerChoice(threshold_m=60, threshold_cost=100), TowerChoice(cost_per_m=3, highest_m=70)
+    >>> cheapest(region, tower_a, tower_b)
+    Choice(antenna_a_m=119.0, antenna_b_m=1.0, cost=222.0)
+    >>> print(cheapest(region, TowerChoice(highest_m=40), tower_b).reason)
+    no pair clears: at the highest there is, A 40.00 m and B 70.00 m, the ray is still 5.00 m short at 5.000 km
+    """
+    free_a, free_b = free_positions(tower_a), free_positions(tower_b)
+    if not (free_a.size and free_b.size):
+        return _tower_full(free_a, free_b, taken_to_blame=_clears_without_taken(region, tower_a, tower_b))
+    # one micrometre of grace: a requirement that meets a position up to rounding is met
+    index = np.searchsorted(free_b, least_b_for(region, free_a) - ROUNDING_M)
+    found = index < free_b.size
+    if not found.any():
+        blame = _clears_without_taken(region, tower_a, tower_b)
+        return _no_pair(region, float(free_a[-1]), float(free_b[-1]), taken_to_blame=blame)
+    return cheapest_of(free_a[found], free_b[index[found]], tower_a, tower_b)
+
+
+def cheapest_exact(region: ClearingRegion, tower_a: TowerChoice, tower_b: TowerChoice) -> Choice | NoPair:
+    """Find the cheapest pair of any heights between the towers' limits, regardless of steps and taken positions.
+
+    Along the frontier the cost is straight between its corners, except where a height passes a threshold; so the
+    cheapest pair is at a corner, a threshold or a limit, and looking at those is exact.
+
+    Parameters
+    ----------
+    region
+        From `profiler.heights.clearing_region`.
+    tower_a, tower_b
+        Limits and costs.
+
+    Returns
+    -------
+    Choice or NoPair
+
+    Examples
+    --------
+    >>> from profiler.heights import clearing_region
+    >>> region = clearing_region([0, 2e3, 8e3, 10e3], [100, 160, 160, 100], 100, 100)
+    >>> cheapest_exact(region, TowerChoice(cost_per_m=5), TowerChoice())
+    Choice(antenna_a_m=37.5, antenna_b_m=150.0, cost=337.5)
+    """
+    marks_b = [tower_b.lowest_m, tower_b.highest_m, *([] if tower_b.threshold_m is None else [tower_b.threshold_m])]
+    marks_a = [tower_a.lowest_m, tower_a.highest_m, *([] if tower_a.threshold_m is None else [tower_a.threshold_m])]
+    a = np.concatenate((region.vertices_m[:, 0], marks_a, least_a_for(region, marks_b)))
+    a = np.unique(np.clip(a, tower_a.lowest_m, tower_a.highest_m))
+    b = np.maximum(least_b_for(region, a), tower_b.lowest_m)
+    found = b <= tower_b.highest_m + ROUNDING_M
+    if not found.any():
+        return _no_pair(region, tower_a.highest_m, tower_b.highest_m)
+    return cheapest_of(a[found], b[found], tower_a, tower_b)
+
+
+def cheapest_of(antenna_a_m: Float, antenna_b_m: Float, tower_a: TowerChoice, tower_b: TowerChoice) -> Choice:
+    """Cheapest of some pairs that are good enough; of equals the least sum, then the least taller antenna.
+
+    Examples
+    --------
+    >>> cheapest_of(np.array([10.0, 20.0, 30.0]), np.array([30.0, 20.0, 10.0]), TowerChoice(), TowerChoice())
+    Choice(antenna_a_m=20.0, antenna_b_m=20.0, cost=40.0)
+    """
+    cost = height_cost(tower_a, antenna_a_m) + height_cost(tower_b, antenna_b_m)
+    total, taller = antenna_a_m + antenna_b_m, np.maximum(antenna_a_m, antenna_b_m)
+    # equal up to rounding is equal, or a rounding error would choose between mirrored pairs
+    first = np.lexsort((taller, np.round(total, 6), np.round(cost, 6)))[0]
+    return Choice(float(antenna_a_m[first]), float(antenna_b_m[first]), float(cost[first]))
+
+
+def _tightest(region: ClearingRegion, antenna_a: float, antenna_b: float, at_a: bool) -> int:
+    """Find the governing point that decides the height of the far antenna: the fixed end's own point is left out."""
+    chosen = region.governing_point[1:] if at_a else region.governing_point[:-1]
+    left = _ray(region, antenna_a, antenna_b)[chosen] - region.least_ray_m[chosen]
+    return int(chosen[int(np.argmin(left))])
+
+
+def _ray(region: ClearingRegion, antenna_a: float, antenna_b: float) -> Float:
+    share = region.distance_m / region.distance_m[-1]
+    return np.asarray((1 - share) * (region.ground_a_m + antenna_a) + share * (region.ground_b_m + antenna_b))
+
+
+def _no_pair(region: ClearingRegion, best_a: float, best_b: float, *, taken_to_blame: bool = False) -> NoPair:
+    """State why the highest pair falls short, and what would have to change."""
+    left = _ray(region, best_a, best_b) - region.least_ray_m
+    short = [i for i in tight_places(left, rise_m=2.0, places=10) if left[i] < -ROUNDING_M]
+    lower = [Lowering(i, float(region.distance_m[i]), int(region.rule[i]), float(-left[i])) for i in short]
+    worst = lower[0]
+    to_a, to_b = float(least_a_for(region, best_b)), float(least_b_for(region, best_a))
+    return NoPair(
+        reason=f"no pair clears: at the highest there is, A {best_a:.2f} m and B {best_b:.2f} m, the ray is still "
+        f"{worst.by_m:.2f} m short at {worst.distance_m / 1e3:.3f} km",
+        best_a_m=best_a,
+        best_b_m=best_b,
+        lower=tuple(lower),
+        raise_a_to_m=to_a if to_a < _TALLEST_M else None,
+        raise_b_to_m=to_b if to_b < _TALLEST_M else None,
+        raise_both_by_m=worst.by_m,
+        taken_to_blame=taken_to_blame,
+    )
+
+
+def _tower_full(free_a: Float, free_b: Float, *, taken_to_blame: bool) -> NoPair:
+    """State that a tower has no free position."""
+    full = " and ".join(name for name, free in (("A", free_a), ("B", free_b)) if not free.size)
+    return NoPair(
+        reason=f"no pair clears: every position of tower {full} is taken, or too close to a taken one",
+        best_a_m=float(free_a[-1]) if free_a.size else math.nan,
+        best_b_m=float(free_b[-1]) if free_b.size else math.nan,
+        taken_to_blame=taken_to_blame,
+    )
+
+
+def _clears_without_taken(region: ClearingRegion, tower_a: TowerChoice, tower_b: TowerChoice) -> bool:
+    """Tell whether the highest positions would clear if none were taken."""
+    return bool(surplus(region, all_positions(tower_a)[-1], all_positions(tower_b)[-1]) >= -ROUNDING_M)

@@ -1,0 +1,188 @@
+"""The lower antenna of a space-diversity pair: its clearance by P.530, and whether the spacing suits it."""
+
+from __future__ import annotations
+
+import math
+from dataclasses import dataclass
+from typing import Literal
+
+from numpy.typing import ArrayLike
+
+from profiler.errors import InputError
+from profiler.heights.region import ROUNDING_M, clearing_region, least_a_for, least_b_for, least_ray
+from profiler.models import Obstruction, Rule
+from profiler.units import wavelength
+
+__all__ = ["DiversityEnd", "check_diversity"]
+
+_FRACTIONS: dict[Obstruction, tuple[float, float]] = {"isolated": (0.0, 0.3), "extended": (0.3, 0.6)}
+"""Rec. ITU-R P.530-18 §2.2.2.2, step 2 (from memory): the range of F1 that the lower antenna clears at the median k."""
+
+_SPACING_M = (3.0, 23.0)
+"""Range of the data under P.530-18's space-diversity improvement, §6.1 (from memory)."""
+
+_FEWEST_WAVELENGTHS = 150.0
+"""Common practice, no source: 150 to 200 wavelengths apart, so that the two signals fade apart."""
+
+
+@dataclass(frozen=True, slots=True)
+class DiversityEnd:
+    """One end's diversity pair; heights above ground in metres.
+
+    ``lower_m`` is the planned lower antenna, ``spacing_m`` below the main one. ``least_m`` and ``full_m`` are the least
+    heights for the lower and the upper end of P.530's range of clearance (``fractions`` of F1 at the median k);
+    infinite where the far antenna is so low that no height helps. ``main_for_spacing_m`` is how high the main antenna
+    must stand for the lower one to keep ``least_m`` at this spacing.
+    """
+
+    end: Literal["A", "B"]
+    main_m: float
+    lower_m: float
+    spacing_m: float
+    spacing_wavelengths: float
+    fractions: tuple[float, float]
+    least_m: float
+    full_m: float
+    main_for_spacing_m: float
+
+    @property
+    def clears(self) -> bool:
+        """Whether the lower antenna has at least the lower end of P.530's range of clearance."""
+        return self.lower_m >= self.least_m - ROUNDING_M
+
+    @property
+    def clears_more_than_needed(self) -> bool:
+        """Whether it stands above P.530's range, which is meant to shield it from the ground's own reflection."""
+        return self.lower_m > self.full_m + ROUNDING_M
+
+    @property
+    def spacing_in_data(self) -> bool:
+        """Whether the spacing is within 3 to 23 m, the data under P.530's improvement factor."""
+        return _SPACING_M[0] <= self.spacing_m <= _SPACING_M[1]
+
+    @property
+    def spacing_wide_enough(self) -> bool:
+        """Whether the antennas are at least 150 wavelengths apart (common practice, no source)."""
+        return self.spacing_wavelengths >= _FEWEST_WAVELENGTHS
+
+    @property
+    def notes(self) -> tuple[str, ...]:
+        """What is wrong or worth knowing, one line each; empty when nothing is."""
+        lines = []
+        if not self.clears:
+            lines.append(f"{self.end}: the lower antenna at {self.lower_m:.2f} m {self._remedy()}")
+        if self.clears_more_than_needed:
+            lines.append(
+                f"{self.end}: the lower antenna at {self.lower_m:.2f} m clears more than {self.fractions[1]:g} F1 "
+                f"({self.full_m:.2f} m would do), so the ground shields it less from the reflected ray"
+            )
+        if not self.spacing_in_data:
+            lines.append(
+                f"{self.end}: a spacing of {self.spacing_m:.2f} m is outside {_SPACING_M[0]:g} to {_SPACING_M[1]:g} m, "
+                "the data under P.530's improvement factor"
+            )
+        if not self.spacing_wide_enough:
+            lines.append(
+                f"{self.end}: a spacing of {self.spacing_m:.2f} m is {self.spacing_wavelengths:.0f} wavelengths; "
+                f"{_FEWEST_WAVELENGTHS:.0f} or more are common practice"
+            )
+        return tuple(lines)
+
+    def _remedy(self) -> str:
+        """Say what a lower antenna that is too low needs."""
+        if math.isinf(self.least_m):
+            return "cannot be helped by height: the far main antenna stands too low at its own site; raise that first"
+        raising = f"needs {self.least_m:.2f} m: raise the main antenna to {self.main_for_spacing_m:.2f} m"
+        closer = self.main_m - self.least_m
+        return f"{raising}, or space them by {closer:.2f} m" if closer > 0 else raising
+
+
+def check_diversity(
+    distance_m: ArrayLike,
+    surface_m: ArrayLike,
+    ground_a_m: float,
+    ground_b_m: float,
+    frequency_hz: float,
+    *,
+    antenna_a_m: float,
+    antenna_b_m: float,
+    spacing_m: float,
+    obstruction: Obstruction,
+    median_k: float,
+) -> tuple[DiversityEnd, DiversityEnd]:
+    """Hold the lower antennas of a space-diversity hop to P.530's clearance, and check their spacing.
+
+    Each lower antenna receives from the far end's main antenna. At the median k it should clear 0.3 to 0.6 F1 over an
+    extended obstruction, 0 to 0.3 F1 over one or two isolated obstacles: enough for a loss of some 3 to 6 dB, and not
+    so much that the ground's reflection reaches it in full. Points at the sites themselves count, so an antenna inside
+    its own cover fails.
+
+    Parameters
+    ----------
+    distance_m, surface_m
+        The profile, (n,), metres from A and metres above the datum, no gaps.
+    ground_a_m, ground_b_m
+        Ground at the sites above the datum.
+    frequency_hz
+        Frequency, more than 0 Hz.
+    antenna_a_m, antenna_b_m
+        Main antennas above ground, more than 0 m.
+    spacing_m
+        How far the lower antenna is below the main one, more than 0 m and less than the main antenna's height.
+    obstruction
+        "isolated" (one or two obstacles) or "extended".
+    median_k
+        Median effective-earth-radius factor, more than 0.
+
+    Returns
+    -------
+    tuple of DiversityEnd
+        A and B.
+
+    Raises
+    ------
+    InputError
+        For an obstruction that is neither, or a spacing that puts the lower antenna into the ground.
+
+    Examples
+    --------
+    >>> ends = check_diversity([0, 20e3, 40e3], [0, 20, 0], 0, 0, 6e9, antenna_a_m=70, antenna_b_m=70, spacing_m=10,
+    ...     obstruction="isolated", median_k=4 / 3)
+    >>> ends[0].clears, round(ends[0].least_m, 2), round(ends[0].full_m, 2), round(ends[0].spacing_wavelengths)
+    (True, 17.09, 30.5, 200)
+    >>> print(ends[0].notes[0].partition(",")[0])
+    A: the lower antenna at 60.00 m clears more than 0.3 F1 (30.50 m would do)
+
+    Notes
+    -----
+    Rec. ITU-R P.530-18 §2.2.2.2 (from memory of the text). The choice within the range is the designer's.
+    """
+    if obstruction not in _FRACTIONS:
+        raise InputError(f'obstruction = {obstruction!r}: must be "isolated" or "extended"')
+    if not 0 < spacing_m < min(antenna_a_m, antenna_b_m):
+        raise InputError(
+            f"spacing_m = {spacing_m}: must be more than 0 m and less than the main antennas' heights, "
+            f"{antenna_a_m} and {antenna_b_m} m"
+        )
+    fractions = _FRACTIONS[obstruction]
+    needed = []
+    for fraction in fractions:
+        ray = least_ray(distance_m, surface_m, frequency_hz, [Rule(k=median_k, fresnel_fraction=fraction)])
+        region = clearing_region(distance_m, ray, ground_a_m, ground_b_m)
+        needed.append((float(least_a_for(region, antenna_b_m)), float(least_b_for(region, antenna_a_m))))
+    ends: tuple[tuple[Literal["A", "B"], float], ...] = (("A", antenna_a_m), ("B", antenna_b_m))
+    a, b = (
+        DiversityEnd(
+            end=end,
+            main_m=main,
+            lower_m=main - spacing_m,
+            spacing_m=spacing_m,
+            spacing_wavelengths=float(spacing_m / wavelength(frequency_hz)),
+            fractions=fractions,
+            least_m=needed[0][i],
+            full_m=needed[1][i],
+            main_for_spacing_m=needed[0][i] + spacing_m,
+        )
+        for i, (end, main) in enumerate(ends)
+    )
+    return a, b
