@@ -1,0 +1,24 @@
+"""What arrives and what is left: the link budget both ways, and its inverse questions.
+
+Tables add up: every loss is a negative line, every gain a positive one, and the sum is the received level.
+"""
+
+from profiler.budget.antenna import antenna_gain, dish_diameter, dish_gain, far_field_distance
+from profiler.budget.inverse import Answer, least_power, longest_free_space_range, smallest_dish
+from profiler.budget.link import Budget, Direction, ModeBudget, free_space_loss, link_budget
+
+__all__ = [
+    "Answer",
+    "Budget",
+    "Direction",
+    "ModeBudget",
+    "antenna_gain",
+    "dish_diameter",
+    "dish_gain",
+    "far_field_distance",
+    "free_space_loss",
+    "least_power",
+    "link_budget",
+    "longest_free_space_range",
+    "smallest_dish",
+]

@@ -1,0 +1,261 @@
+"""The link budget of one hop, both directions, one row per radio mode."""
+
+from __future__ import annotations
+
+import math
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import ArrayLike
+
+from profiler.budget.antenna import antenna_gain, near_field_warnings
+from profiler.errors import InputError
+from profiler.models import Radio, RadioMode
+from profiler.receiver import Line, Threshold, mode_threshold
+from profiler.units import Float, wavelength
+
+__all__ = ["Budget", "Direction", "ModeBudget", "free_space_loss", "link_budget", "path_lines", "table", "total"]
+
+FREE_SPACE_NOTE = "20·log10(4π·d/λ), Rec. ITU-R P.525-4 §2.3"
+AIMED = "antennas aimed at each other and matched in polarisation: full gain at both ends"
+
+
+@dataclass(frozen=True, slots=True)
+class ModeBudget:
+    """One mode's row: ``lines`` add up to ``received_dbm``, ``threshold_lines`` to ``threshold_dbm``.
+
+    Threshold and fade margin are None where the mode gives no data for a threshold.
+    """
+
+    name: str
+    lines: tuple[Line, ...]
+    received_dbm: float
+    threshold_lines: tuple[Line, ...]
+    threshold_dbm: float | None
+    fade_margin_db: float | None
+
+
+@dataclass(frozen=True, slots=True)
+class Direction:
+    """One direction of the hop. The levels and the margin are those of the first mode; ``modes`` has them all."""
+
+    transmitter: str
+    receiver: str
+    free_space_db: float
+    gas_db: float
+    diffraction_db: float
+    received_dbm: float
+    threshold_dbm: float | None
+    fade_margin_db: float | None
+    modes: tuple[ModeBudget, ...]
+
+
+@dataclass(frozen=True, slots=True)
+class Budget:
+    """Both directions, what was assumed, and where a method's stated range is left."""
+
+    a_to_b: Direction
+    b_to_a: Direction
+    assumptions: tuple[str, ...]
+    warnings: tuple[str, ...]
+
+
+def free_space_loss(distance_m: ArrayLike, frequency_hz: ArrayLike) -> Float:
+    """Free-space basic transmission loss, 20·log10(4π·d/λ).
+
+    Parameters
+    ----------
+    distance_m
+        Distance, m, above 0, any shape; long against the wavelength and beyond the antennas' near field.
+    frequency_hz
+        Frequency, Hz, above 0, broadcast against the distance.
+
+    Returns
+    -------
+    ndarray
+        Loss in dB between isotropic antennas.
+
+    Raises
+    ------
+    InputError
+        For a distance or frequency not above 0.
+
+    Examples
+    --------
+    >>> round(float(free_space_loss(1000.0, 1e9)), 2)
+    92.45
+    >>> free_space_loss([10e3, 20e3], 6e9).round(1).tolist()
+    [128.0, 134.0]
+
+    Notes
+    -----
+    Source: Rec. ITU-R P.525-4 §2.3 (from memory of the section); Friis, Proceedings of the IRE 34(5), 1946.
+    """
+    distance, frequency = np.asarray(distance_m, dtype=float), np.asarray(frequency_hz, dtype=float)
+    if not np.all((distance > 0) & np.isfinite(distance)):
+        raise InputError(f"distance = {distance_m!r} m: must be more than 0 m")
+    if not np.all((frequency > 0) & np.isfinite(frequency)):
+        raise InputError(f"frequency = {frequency_hz!r} Hz: must be more than 0 Hz")
+    return np.asarray(20.0 * np.log10(4.0 * np.pi * distance / wavelength(frequency)))
+
+
+def link_budget(
+    radio: Radio,
+    distance_m: float,
+    frequency_hz: float,
+    *,
+    gas_db: float,
+    diffraction_db: float,
+    gas_note: str = "",
+    diffraction_note: str = "",
+) -> Budget:
+    """Link budget in both directions for every mode of the radio.
+
+    Received level = power − line losses + antenna gains − free space − gases − diffraction − other losses; fade margin
+    = received level − threshold.
+
+    Parameters
+    ----------
+    radio
+        Both terminals, the modes (a radio without any gets one nameless row) and the named other losses.
+    distance_m
+        Length of the path, m, above 0.
+    frequency_hz
+        Frequency of both directions, Hz, above 0.
+    gas_db, diffraction_db
+        Losses of the whole path in dB, diffraction at the median k.
+    gas_note, diffraction_note
+        Method and edition of each, for the notes of their lines.
+
+    Returns
+    -------
+    Budget
+        The tables, with assumptions and warnings.
+
+    Raises
+    ------
+    InputError
+        For a terminal without a gain, contradicting statements, or a mode that lacks part of its threshold.
+
+    Examples
+    --------
+    >>> from profiler.models import Terminal
+    >>> end = Terminal(power_dbm=28.0, line_loss_db=1.5, gain_dbi=38.7)
+    >>> radio = Radio(end, end, (RadioMode("QPSK", threshold_dbm=-85.0),), (("radome", 1.0),))
+    >>> budget = link_budget(radio, 40e3, 6.175e9, gas_db=0.4, diffraction_db=0.0)
+    >>> for line in budget.a_to_b.modes[0].lines:
+    ...     print(f"{line.name:18}{line.value:8.2f} {line.unit}")
+    transmit power A     28.00 dBm
+    line loss A          -1.50 dB
+    antenna gain A       38.70 dBi
+    free space         -140.30 dB
+    gases                -0.40 dB
+    diffraction           0.00 dB
+    radome               -1.00 dB
+    antenna gain B       38.70 dBi
+    line loss B          -1.50 dB
+    >>> round(budget.a_to_b.received_dbm, 2), round(budget.a_to_b.fade_margin_db, 2)
+    (-39.3, 45.7)
+
+    Notes
+    -----
+    Sources: Rec. ITU-R P.525-4 (free space), P.341-7 (what the losses are between); see `mode_threshold`, `dish_gain`.
+    """
+    path = path_lines(distance_m, frequency_hz, gas_db, diffraction_db, gas_note, diffraction_note)
+    modes = radio.modes or (RadioMode(name=""),)
+    thresholds = [mode_threshold(mode) for mode in modes]
+    a_to_b, b_to_a = (
+        _direction(
+            way,
+            path,
+            tuple(
+                _row(mode, threshold, table(radio, way, mode, frequency_hz, path))
+                for mode, threshold in zip(modes, thresholds, strict=True)
+            ),
+        )
+        for way in ("AB", "BA")
+    )
+    warnings = near_field_warnings(
+        {"A": radio.terminal_a.diameter_m, "B": radio.terminal_b.diameter_m}, distance_m, frequency_hz
+    )
+    return Budget(a_to_b, b_to_a, _assumptions(modes, thresholds), warnings)
+
+
+def table(radio: Radio, way: str, mode: RadioMode, frequency_hz: float, path: tuple[Line, ...]) -> tuple[Line, ...]:
+    """Lines of one direction from power to received level, the ``path``'s and the other losses between the antennas.
+
+    ``way`` is the end that sends and the end that receives: "AB" or "BA".
+    """
+    sender, receiver = way[0], way[1]
+    ends = {"A": radio.terminal_a, "B": radio.terminal_b}
+    power_dbm = ends[sender].power_dbm if mode.power_dbm is None else mode.power_dbm
+    power_note = "as given" if mode.power_dbm is None else f"as given for mode {mode.name}"
+    return (
+        Line(f"transmit power {sender}", float(power_dbm), "dBm", power_note),
+        loss_line(f"line loss {sender}", ends[sender].line_loss_db, "as given"),
+        antenna_gain(ends[sender], frequency_hz, sender),
+        *path,
+        *(loss_line(name, loss_db, "as given") for name, loss_db in radio.other_losses_db),
+        antenna_gain(ends[receiver], frequency_hz, receiver),
+        loss_line(f"line loss {receiver}", ends[receiver].line_loss_db, "as given"),
+    )
+
+
+def path_lines(
+    distance_m: float,
+    frequency_hz: float,
+    gas_db: float,
+    diffraction_db: float,
+    gas_note: str = "",
+    diffraction_note: str = "",
+) -> tuple[Line, Line, Line]:
+    """Lines of the path itself: free space, gases, diffraction."""
+    return (
+        loss_line("free space", float(free_space_loss(distance_m, frequency_hz)), FREE_SPACE_NOTE),
+        loss_line("gases", gas_db, gas_note),
+        loss_line("diffraction", diffraction_db, diffraction_note),
+    )
+
+
+def loss_line(name: str, loss_db: float, note: str) -> Line:
+    """Enter a loss as a negative line (0, not −0, for none)."""
+    if not math.isfinite(loss_db):
+        raise InputError(f"{name} loss = {loss_db} dB: must be a finite number")
+    return Line(name, 0.0 - float(loss_db), "dB", note)
+
+
+def total(lines: tuple[Line, ...]) -> float:
+    """Sum of a table's lines, correctly rounded, so that the order of the lines does not matter."""
+    return math.fsum(line.value for line in lines)
+
+
+def _direction(way: str, path: tuple[Line, Line, Line], rows: tuple[ModeBudget, ...]) -> Direction:
+    first = rows[0]
+    free_space_db, gas_db, diffraction_db = (0.0 - line.value for line in path)
+    return Direction(
+        transmitter=way[0],
+        receiver=way[1],
+        free_space_db=free_space_db,
+        gas_db=gas_db,
+        diffraction_db=diffraction_db,
+        received_dbm=first.received_dbm,
+        threshold_dbm=first.threshold_dbm,
+        fade_margin_db=first.fade_margin_db,
+        modes=rows,
+    )
+
+
+def _row(mode: RadioMode, threshold: Threshold, lines: tuple[Line, ...]) -> ModeBudget:
+    received_dbm = total(lines)
+    margin_db = None if threshold.level_dbm is None else received_dbm - threshold.level_dbm
+    return ModeBudget(mode.name, lines, received_dbm, threshold.lines, threshold.level_dbm, margin_db)
+
+
+def _assumptions(modes: tuple[RadioMode, ...], thresholds: list[Threshold]) -> tuple[str, ...]:
+    """Collect what the budget assumed, each thing once."""
+    lines = [AIMED, "the same frequency and path losses in both directions"]
+    if len(modes) > 1:
+        lines.append(f"level, threshold and fade margin of a direction are those of its first mode, {modes[0].name}")
+    for threshold in thresholds:
+        lines += threshold.assumptions
+    return tuple(dict.fromkeys(lines))

@@ -1,0 +1,30 @@
+"""What level a receiver needs: noise, modulation, bit error ratio, threshold.
+
+Coherent detection in additive white Gaussian noise throughout: no fading, no interference, no phase noise. Bit error
+ratios are inverted exactly (in closed form or by a bracketed root), never from a table.
+"""
+
+from profiler.receiver.modulation import Modulation, bit_error_ratio, parse_modulation, required_eb_n0_db
+from profiler.receiver.noise import (
+    NOISE_REFERENCE_K,
+    effective_temperature,
+    noise_density_dbm_hz,
+    noise_figure,
+    noise_power_dbm,
+)
+from profiler.receiver.threshold import Line, Threshold, mode_threshold
+
+__all__ = [
+    "NOISE_REFERENCE_K",
+    "Line",
+    "Modulation",
+    "Threshold",
+    "bit_error_ratio",
+    "effective_temperature",
+    "mode_threshold",
+    "noise_density_dbm_hz",
+    "noise_figure",
+    "noise_power_dbm",
+    "parse_modulation",
+    "required_eb_n0_db",
+]
