@@ -1,0 +1,32 @@
+"""Ground heights from rasters: files and folders in, heights at longitudes and latitudes out.
+
+Coordinates are longitude, latitude in degrees on WGS 84; heights are metres above whatever the raster's vertical datum
+is. Missing ground is NaN, never 0.
+"""
+
+from profiler.terrain.classes import sample_classes
+from profiler.terrain.describe import Bounds, RasterInfo
+from profiler.terrain.files import file_hash
+from profiler.terrain.gaps import fill_missing, missing_stretches, require_ground
+from profiler.terrain.mosaic import Samples, Skipped, SourceUse, Terrain, open_terrain
+from profiler.terrain.sites import require_inside
+from profiler.terrain.survey import FolderSurvey, RasterSurvey, survey
+
+__all__ = [
+    "Bounds",
+    "FolderSurvey",
+    "RasterInfo",
+    "RasterSurvey",
+    "Samples",
+    "Skipped",
+    "SourceUse",
+    "Terrain",
+    "file_hash",
+    "fill_missing",
+    "missing_stretches",
+    "open_terrain",
+    "require_ground",
+    "require_inside",
+    "sample_classes",
+    "survey",
+]

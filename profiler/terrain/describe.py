@@ -1,0 +1,371 @@
+"""What one raster says of itself: where it lies, how its cells become metres, and whether they are heights at all."""
+
+from __future__ import annotations
+
+import math
+from dataclasses import dataclass
+from pathlib import Path
+from typing import Any, NamedTuple
+
+import numpy as np
+
+from profiler.errors import InputError, RasterError
+from profiler.terrain.files import RasterFile
+from profiler.terrain.gdal import from_lonlat, open_raster, to_lonlat
+from profiler.terrain.reference import Reference, parse_reference, unit_factor
+from profiler.units import Float
+
+__all__ = ["Bounds", "Coding", "NotHeightsError", "RasterInfo", "Reading", "Tile", "describe", "ground_cell"]
+
+_PHOTO_DRIVERS = frozenset({"JPEG", "GIF", "WEBP", "BMP"})
+_UNIT_CELLS = 256
+"""Blocks are read in groups of about this many cells a side: one call to GDAL costs as much as copying 2000 cells."""
+
+Affine = tuple[float, float, float, float, float, float]
+
+
+class NotHeightsError(RasterError):
+    """A readable raster that holds something else: a photo, classes, a mask."""
+
+
+class Bounds(NamedTuple):
+    """Degrees on WGS 84; `west` is above `east` when the raster crosses the antimeridian (as in RFC 7946 §5.2)."""
+
+    west: float
+    south: float
+    east: float
+    north: float
+
+
+@dataclass(frozen=True, slots=True)
+class RasterInfo:
+    """What a raster declares, for the provenance and for `hopwright terrain`.
+
+    Attributes
+    ----------
+    path, member
+        The file, and the raster inside it when the file is an archive.
+    driver
+        GDAL's name of the format.
+    crs
+        ``EPSG:32612``, or the name of a CRS in no register; the vertical part is in `vertical_datum`.
+    width, height
+        Columns and rows.
+    cell_x_m, cell_y_m
+        Size of a cell on the ground along its row and column, metres, at the centre of the raster.
+    bounds
+        Outer edges of the outermost cells, degrees.
+    nodata
+        Declared marker of missing cells, as stored; None when none is declared.
+    unit, unit_factor_m
+        Unit of height, and metres in one of it.
+    vertical_datum
+        What heights count from; None when neither the raster nor the user says.
+    pixel_is_point
+        The raster states its coordinates at cell centres rather than cell corners (GDAL accounts for it).
+    size_bytes
+        Size of the file.
+    notes
+        What had to be assumed or converted.
+    """
+
+    path: Path
+    member: str
+    driver: str
+    crs: str
+    width: int
+    height: int
+    cell_x_m: float
+    cell_y_m: float
+    bounds: Bounds
+    nodata: float | None
+    unit: str
+    unit_factor_m: float
+    vertical_datum: str | None
+    pixel_is_point: bool
+    size_bytes: int
+    notes: tuple[str, ...] = ()
+
+    @property
+    def name(self) -> str:
+        """What messages call the raster."""
+        return f"{self.path}/{self.member}" if self.member else str(self.path)
+
+
+@dataclass(frozen=True, slots=True)
+class Reading:
+    """How rasters are to be understood where they do not say.
+
+    `classes` reads cells as class numbers, not heights; `eight_bit` takes 8-bit cells for heights.
+    """
+
+    vertical_datum: str | None = None
+    height_unit: str | None = None
+    eight_bit: bool = False
+    classes: bool = False
+
+
+@dataclass(frozen=True, slots=True)
+class Coding:
+    """From stored cells to metres: height = cell · scale_m + offset_m, missing where the cell is `nodata` or masked."""
+
+    band: int
+    nodata: float
+    scale_m: float
+    offset_m: float
+    masked: bool
+    item_bytes: int
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Tile:
+    """One indexed raster: its description, and all that sampling needs without opening it again."""
+
+    info: RasterInfo
+    file: RasterFile
+    reference: Reference
+    affine: Affine
+    coding: Coding
+    block: tuple[int, int]
+    unit: tuple[int, int]
+
+
+def describe(file: RasterFile, reading: Reading) -> Tile:
+    """Read the metadata of one raster and check that it can be used; no cell is read.
+
+    Raises
+    ------
+    RasterError
+        When it is unreadable, has no CRS or no place, is a photo or classes instead of heights, or its unit is unknown.
+    """
+    with open_raster(file.source, file.path) as dataset:
+        band = _band(dataset, file, reading)
+        reference = _reference(dataset, file)
+        affine = _affine(dataset, file)
+        notes: list[str] = []
+        unit, factor = ("", 1.0) if reading.classes else _unit(dataset, band, reference, file, reading, notes)
+        datum = None if reading.classes else _datum(reference, reading, notes)
+        size = (dataset.width, dataset.height)
+        bounds = _bounds(reference, affine, size)
+        cell_x_m, cell_y_m = ground_cell(reference, affine, (size[0] - 1) / 2, (size[1] - 1) / 2)
+        if not all(math.isfinite(value) for value in (*bounds, cell_x_m, cell_y_m)):
+            raise RasterError(
+                f"{file.name}: its corners fall nowhere on the earth in {reference.name}; correct its CRS"
+            )
+        info = RasterInfo(
+            path=file.path,
+            member=file.member,
+            driver=dataset.driver,
+            crs=reference.name,
+            width=size[0],
+            height=size[1],
+            cell_x_m=cell_x_m,
+            cell_y_m=cell_y_m,
+            bounds=bounds,
+            nodata=None if dataset.nodatavals[band - 1] is None else float(dataset.nodatavals[band - 1]),
+            unit=unit,
+            unit_factor_m=factor,
+            vertical_datum=datum,
+            pixel_is_point=dataset.tags().get("AREA_OR_POINT") == "Point",
+            size_bytes=file.path.stat().st_size,
+            notes=tuple(notes),
+        )
+        block = dataset.block_shapes[band - 1]
+        return Tile(info, file, reference, affine, _coding(dataset, band, factor), block, _read_unit(block))
+
+
+def _read_unit(block: tuple[int, int]) -> tuple[int, int]:
+    rows, cols = (side * max(1, _UNIT_CELLS // side) for side in block)
+    return rows, cols
+
+
+def _band(dataset: Any, file: RasterFile, reading: Reading) -> int:
+    """Band that holds the heights, refusing what cannot be heights."""
+    from rasterio.enums import ColorInterp
+
+    remedy = "give a raster of classes" if reading.classes else "give a raster of elevations"
+    colours = dataset.colorinterp
+    if not dataset.count:
+        raise RasterError(
+            f"{file.name}: holds {len(dataset.subdatasets)} subdatasets; extract the one with the heights"
+        )
+    bands = [i for i, colour in zip(dataset.indexes, colours, strict=True) if colour != ColorInterp.alpha]
+    if dataset.driver in _PHOTO_DRIVERS or {ColorInterp.red, ColorInterp.green, ColorInterp.blue} & set(colours):
+        raise NotHeightsError(
+            f"{file.name}: is a photo ({len(bands)}-band colour or grey image), not heights; {remedy}"
+        )
+    if len(bands) > 1:
+        named = [
+            i for i in bands if (dataset.descriptions[i - 1] or "").lower() in ("elevation", "height", "dem", "dtm")
+        ]
+        if len(named) != 1:
+            raise NotHeightsError(f"{file.name}: has {len(bands)} bands where one was expected; {remedy} of one band")
+        bands = named
+    band = bands[0]
+    kind = np.dtype(dataset.dtypes[band - 1])
+    if kind.kind not in "iuf":
+        raise NotHeightsError(f"{file.name}: holds {kind} cells, not real numbers; {remedy}")
+    if not reading.classes:
+        if colours[band - 1] == ColorInterp.palette:
+            raise NotHeightsError(f"{file.name}: holds classes or colours (it has a palette), not heights; {remedy}")
+        if kind.itemsize == 1 and not reading.eight_bit:
+            raise NotHeightsError(f"{file.name}: holds 8-bit cells (a photo, mask or class map), not heights; {remedy}")
+    return int(band)
+
+
+def _reference(dataset: Any, file: RasterFile) -> Reference:
+    if not dataset.crs:
+        raise RasterError(
+            f"{file.name}: has no coordinate reference system, so nobody can tell where it lies; assign the right one "
+            "(a .prj file beside an ASCII grid, gdal_edit -a_srs for a GeoTIFF)"
+        )
+    try:
+        return parse_reference(dataset.crs.wkt)
+    except InputError as error:
+        raise RasterError(f"{file.name}: {error}; reproject it") from None
+
+
+def _affine(dataset: Any, file: RasterFile) -> Affine:
+    a, b, c, d, e, f = dataset.transform[:6]
+    placed = dataset.transform[:6] != (1.0, 0.0, 0.0, 0.0, 1.0, 0.0)
+    if not placed or not math.isfinite(a + b + c + d + e + f) or a * e - b * d == 0.0:
+        raise RasterError(
+            f"{file.name}: has a CRS but no corner coordinates and cell size; georeference it (a world file, gdal_edit "
+            "-a_ullr), or warp it if it has ground control points"
+        )
+    return a, b, c, d, e, f
+
+
+def _unit(
+    dataset: Any, band: int, reference: Reference, file: RasterFile, reading: Reading, notes: list[str]
+) -> tuple[str, float]:
+    """Find the unit of height and its metres: what the band says, else the vertical CRS, else the user, else metres."""
+    declared = (dataset.units[band - 1] or "").strip()
+    try:
+        factor = unit_factor(declared) if declared else reference.vertical_unit_m
+    except InputError as error:
+        raise RasterError(f"{file.name}: {error}; correct the unit of the band") from None
+    if (
+        declared
+        and reference.vertical_unit_m is not None
+        and not math.isclose(factor or 0.0, reference.vertical_unit_m)
+    ):
+        raise RasterError(
+            f"{file.name}: the band's unit is {declared} but its vertical CRS counts in units of "
+            f"{reference.vertical_unit_m:g} m; correct the one that is wrong"
+        )
+    if factor is not None:
+        name = declared or {1.0: "m", 0.3048: "ft"}.get(factor, f"unit of {factor:.9g} m")
+        if factor != 1.0:
+            notes.append(f"heights in {name} converted to metres (1 = {factor:.9g} m)")
+        return name, factor
+    if reading.height_unit is not None:
+        factor = unit_factor(reading.height_unit)
+        notes.append(f"declares no height unit: taken as {reading.height_unit}, as stated by the user")
+        return reading.height_unit, factor
+    if reference.plane_unit_m is not None and reference.plane_unit_m != 1.0:
+        raise RasterError(
+            f"{file.name}: declares no height unit and its map plane is in units of {reference.plane_unit_m:.9g} m, so "
+            "heights may be metres or feet; state the height unit"
+        )
+    notes.append("declares no height unit: taken as metres")
+    return "m", 1.0
+
+
+def _datum(reference: Reference, reading: Reading, notes: list[str]) -> str | None:
+    if reference.vertical_datum is not None:
+        if reference.vertical_datum.startswith("ellipsoid"):
+            notes.append(f"heights above the {reference.vertical_datum}, not above sea level")
+        return reference.vertical_datum
+    if reading.vertical_datum is not None:
+        notes.append(f"declares no vertical datum: taken as {reading.vertical_datum}, as stated by the user")
+        return reading.vertical_datum
+    notes.append("declares no vertical datum")
+    return None
+
+
+def _coding(dataset: Any, band: int, factor: float) -> Coding:
+    from rasterio.enums import MaskFlags
+
+    flags = dataset.mask_flag_enums[band - 1]
+    kind = np.dtype(dataset.dtypes[band - 1])
+    declared = dataset.nodatavals[band - 1]
+    nodata = math.nan
+    if declared is not None and kind.kind == "f":
+        nodata = float(kind.type(declared))  # stored cells hold the rounded marker, not the printed one
+    elif declared is not None and np.iinfo(kind).min <= declared <= np.iinfo(kind).max:
+        nodata = float(declared)
+    return Coding(
+        band=band,
+        nodata=nodata,
+        scale_m=float(dataset.scales[band - 1]) * factor,
+        offset_m=float(dataset.offsets[band - 1]) * factor,
+        masked=MaskFlags.all_valid not in flags and MaskFlags.nodata not in flags,
+        item_bytes=kind.itemsize,
+    )
+
+
+def ground_cell(reference: Reference, affine: Affine, col: float, row: float) -> tuple[float, float]:
+    """Metres on the ground along the row and along the column of the cell centred at (col, row).
+
+    Chords between the middles of opposite sides of the cell, on the WGS 84 ellipsoid: exact enough at any latitude,
+    over the antimeridian and at a pole, where differences of longitude are not.
+    """
+    a, b, c, d, e, f = affine
+    u = np.array([col, col + 1.0, col + 0.5, col + 0.5])
+    v = np.array([row + 0.5, row + 0.5, row, row + 1.0])
+    x, y = a * u + b * v + c, d * u + e * v + f
+    longitude, latitude = (x, y) if reference.is_wgs84 else to_lonlat(reference.horizontal, x, y)
+    point = _geocentric(longitude, latitude)
+    side_x, side_y = np.linalg.norm(point[1] - point[0]), np.linalg.norm(point[3] - point[2])
+    return float(side_x), float(side_y)
+
+
+def _geocentric(longitude: Float, latitude: Float) -> Float:
+    """Geocentric metres on the WGS 84 ellipsoid (a = 6 378 137 m, 1/f = 298.257 223 563), one row a point."""
+    a, e2 = 6_378_137.0, 0.006_694_379_990_141_3
+    lam, phi = np.radians(longitude), np.radians(latitude)
+    normal = a / np.sqrt(1.0 - e2 * np.sin(phi) ** 2)
+    return np.stack(
+        [normal * np.cos(phi) * np.cos(lam), normal * np.cos(phi) * np.sin(lam), normal * (1.0 - e2) * np.sin(phi)],
+        axis=-1,
+    )
+
+
+def _bounds(reference: Reference, affine: Affine, size: tuple[int, int]) -> Bounds:
+    """Degrees that the raster spans, from points along its outline (and the poles, which an outline goes round)."""
+    a, b, c, d, e, f = affine
+    width, height = size
+    step = np.linspace(0.0, 1.0, 22)[:-1]
+    u = width * np.concatenate([step, np.ones(21), 1.0 - step, np.zeros(21)])
+    v = height * np.concatenate([np.zeros(21), step, np.ones(21), 1.0 - step])
+    x, y = a * u + b * v + c, d * u + e * v + f
+    longitude, latitude = (x, y) if reference.is_wgs84 else to_lonlat(reference.horizontal, x, y)
+    if not np.isfinite(longitude).any():
+        return Bounds(math.nan, math.nan, math.nan, math.nan)
+    if not np.isfinite(longitude).all():  # an outline that leaves its own projection: exclude nothing
+        return Bounds(-180.0, -90.0, 180.0, 90.0)
+    south, north = float(latitude.min()), float(latitude.max())
+    poles = () if reference.period else _poles_inside(reference, affine, size)
+    if poles:
+        return Bounds(-180.0, min(south, *poles), 180.0, max(north, *poles))
+    turn = np.unwrap(longitude, period=360.0)
+    west, east = float(turn.min()), float(turn.max())
+    if east - west >= 360.0 - 1e-9:
+        return Bounds(-180.0, south, 180.0, north)
+    return Bounds(_wrap(west), south, _wrap(east), north)
+
+
+def _wrap(longitude: float) -> float:
+    """Longitude within -180° to 180°, either end kept as it came."""
+    return longitude if -180.0 <= longitude <= 180.0 else (longitude + 180.0) % 360.0 - 180.0
+
+
+def _poles_inside(reference: Reference, affine: Affine, size: tuple[int, int]) -> tuple[float, ...]:
+    a, b, c, d, e, f = affine
+    latitude = np.array([90.0, -90.0])
+    x, y = from_lonlat(reference.horizontal, np.zeros(2), latitude)
+    col = (e * (x - c) - b * (y - f)) / (a * e - b * d)
+    row = (a * (y - f) - d * (x - c)) / (a * e - b * d)
+    inside = (col >= 0) & (col <= size[0]) & (row >= 0) & (row <= size[1])
+    return tuple(latitude[inside].tolist())

@@ -1,0 +1,341 @@
+"""Terrain: rasters opened together, asked for heights at longitudes and latitudes."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from dataclasses import dataclass
+from pathlib import Path
+from types import TracebackType
+from typing import Self
+
+import numpy as np
+from numpy.typing import ArrayLike, NDArray
+
+from profiler.errors import DatumError, InputError, MissingGroundError, RasterError
+from profiler.models import SampleMethod
+from profiler.terrain.describe import NotHeightsError, RasterInfo, Reading, Tile, describe
+from profiler.terrain.files import find_rasters
+from profiler.terrain.gdal import OpenRasters, gdal_session
+from profiler.terrain.index import Ints, build_index, find_hits
+from profiler.terrain.reference import datum_key, resolve_datum, unit_factor
+from profiler.terrain.sampling import Ground, cells_on_ground, sample_ground
+from profiler.units import Float
+
+__all__ = ["Samples", "Skipped", "SourceUse", "Terrain", "as_degrees", "describe_all", "open_terrain"]
+
+
+@dataclass(frozen=True, slots=True)
+class Skipped:
+    """A file in a folder that was left out, and why: it holds something other than heights."""
+
+    path: Path
+    reason: str
+
+
+@dataclass(frozen=True, slots=True)
+class SourceUse:
+    """What one raster gave to a set of samples.
+
+    Attributes
+    ----------
+    info
+        The raster.
+    share
+        Share of all the points whose height came from it, 0 to 1.
+    blocks_read, bytes_read
+        Blocks of the raster that were read for them, and the bytes they hold unpacked.
+    read_share
+        `bytes_read` over the unpacked bytes of the whole raster.
+    notes
+        What had to be assumed, converted or settled.
+    """
+
+    info: RasterInfo
+    share: float
+    blocks_read: int
+    bytes_read: int
+    read_share: float
+    notes: tuple[str, ...]
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Samples:
+    """Ground heights at points; arrays have the shape of the points asked for, and are read-only.
+
+    Attributes
+    ----------
+    ground_m
+        Height in metres; NaN where missing.
+    source
+        Which of `sources` the height came from; -1 where missing.
+    covered
+        The point lies on some raster: where the height is missing, that is a void, not a place off the terrain.
+    sources
+        The rasters that gave heights, in the order of their share.
+    vertical_datum
+        What all the heights count from, as far as the sources say; None when none says, or when they differ.
+    notes
+        What holds for the heights together: datums that are mixed or not all known.
+    """
+
+    ground_m: Float
+    source: Ints
+    covered: NDArray[np.bool_]
+    sources: tuple[SourceUse, ...]
+    vertical_datum: str | None
+    notes: tuple[str, ...]
+
+
+class Terrain:
+    """Rasters indexed together; a context manager that closes the files it opened. Made by `open_terrain`.
+
+    One thread at a time may use it (GDAL's datasets allow no more); every process opens its own.
+    """
+
+    __slots__ = ("_allow_mixed_datums", "_index", "_method", "_rasters", "skipped")
+
+    def __init__(
+        self, tiles: Sequence[Tile], skipped: Sequence[Skipped], *, method: SampleMethod, allow_mixed_datums: bool
+    ) -> None:
+        self._index = build_index(tiles)
+        self._rasters = OpenRasters()
+        self._method: SampleMethod = method
+        self._allow_mixed_datums = allow_mixed_datums
+        self.skipped = tuple(skipped)
+
+    def __enter__(self) -> Self:
+        return self
+
+    def __exit__(
+        self, kind: type[BaseException] | None, error: BaseException | None, trace: TracebackType | None
+    ) -> None:
+        self.close()
+
+    def close(self) -> None:
+        """Close the files; sampling again opens them again."""
+        self._rasters.close()
+
+    @property
+    def rasters(self) -> tuple[RasterInfo, ...]:
+        """Every raster, in the order found."""
+        return tuple(tile.info for tile in self._index.tiles)
+
+    def covers(self, longitude: ArrayLike, latitude: ArrayLike) -> NDArray[np.bool_]:
+        """Whether points (degrees, any shape) lie on some raster, void or not; no cell is read."""
+        lon, lat, shape = as_degrees(longitude, latitude)
+        covered = np.zeros(lon.size, dtype=bool)
+        with gdal_session():
+            hits = find_hits(self._index, lon, lat)
+        covered[hits.point[hits.inside]] = True
+        return covered.reshape(shape)
+
+    def finest_cell_m(self, longitude: ArrayLike, latitude: ArrayLike) -> float:
+        """Shorter side, in metres on the ground, of the smallest cell among the rasters under any of the points.
+
+        Raises
+        ------
+        MissingGroundError
+            When no raster covers any of them.
+        """
+        lon, lat, _ = as_degrees(longitude, latitude)
+        with gdal_session():
+            hits = find_hits(self._index, lon, lat)
+            hits = hits.take(hits.inside)
+            if not hits.point.size:
+                raise MissingGroundError(
+                    f"no raster covers longitude {lon.min():.6f} to {lon.max():.6f}, latitude {lat.min():.6f} to "
+                    f"{lat.max():.6f}; give terrain that does"
+                )
+            return float(cells_on_ground(self._index, hits)[1].min())
+
+    def sample(self, longitude: ArrayLike, latitude: ArrayLike) -> Samples:
+        """Heights of the ground at points, in metres.
+
+        Bilinear between the four cell centres around a point, or the highest of those of them that carry weight. The
+        finest raster answers where all of these hold heights, else the next.
+
+        Parameters
+        ----------
+        longitude, latitude
+            Degrees on WGS 84, any shapes that broadcast; any longitude goes (181 is -179), latitude -90 to 90.
+
+        Returns
+        -------
+        Samples
+            Heights, where each came from, and what each raster gave.
+
+        Raises
+        ------
+        InputError
+            For coordinates that are not finite or no latitude.
+        RasterError
+            When a raster cannot be read, or holds heights that no place on earth has.
+        DatumError
+            When heights come from rasters on different vertical datums, unless that was allowed.
+        """
+        lon, lat, shape = as_degrees(longitude, latitude)
+        with gdal_session():
+            ground = sample_ground(self._index, self._rasters, lon, lat, self._method)
+        numbers, place, counts = np.unique(ground.tile, return_inverse=True, return_counts=True)
+        order = np.lexsort((numbers, -counts))
+        order = order[numbers[order] >= 0]
+        rank = np.full(numbers.size, -1, dtype=np.int64)
+        rank[order] = np.arange(order.size)
+        sources = tuple(self._use(int(numbers[k]), int(counts[k]), ground) for k in order)
+        datum, datum_notes = _one_datum(sources, allow_mixed=self._allow_mixed_datums)
+        result = Samples(
+            ground_m=ground.height_m.reshape(shape),
+            source=rank[place].reshape(shape),
+            covered=ground.covered.reshape(shape),
+            sources=sources,
+            vertical_datum=datum,
+            notes=datum_notes,
+        )
+        for array in (result.ground_m, result.source, result.covered):
+            array.flags.writeable = False
+        return result
+
+    def _use(self, number: int, count: int, ground: Ground) -> SourceUse:
+        tile, tally = self._index.tiles[number], ground.tally
+        notes = tile.info.notes + tally.notes(number)
+        edge = int(np.count_nonzero(ground.edge & (ground.tile == number)))
+        if edge:
+            notes += (
+                f"{edge} points in its outermost half cell: blended with the next raster, or the edge value held",
+            )
+        read = tally.read_bytes.get(number, 0)
+        whole = tile.info.width * tile.info.height * tile.coding.item_bytes
+        share = count / ground.tile.size
+        return SourceUse(tile.info, share, tally.blocks.get(number, 0), read, read / whole, notes)
+
+
+def open_terrain(
+    paths: Sequence[Path] | Path,
+    *,
+    method: SampleMethod = "bilinear",
+    allow_mixed_datums: bool = False,
+    vertical_datum: str | None = None,
+    height_unit: str | None = None,
+    eight_bit: bool = False,
+) -> Terrain:
+    r"""Index rasters for sampling; only their metadata is read.
+
+    Parameters
+    ----------
+    paths
+        Rasters, zip archives and folders (walked to the bottom). A folder may also hold photos, masks and class maps:
+        they are left out and listed in `Terrain.skipped`; named on their own they are an error.
+    method
+        ``"bilinear"`` between cell centres, or ``"highest"`` of the cells around.
+    allow_mixed_datums
+        Let heights on different vertical datums meet in one set of samples.
+    vertical_datum
+        Datum of the rasters that declare none: a name, or the ``EPSG:…`` of a vertical CRS.
+    height_unit
+        Unit of the rasters that declare none (``"m"``, ``"ft"``…); metres otherwise.
+    eight_bit
+        Take 8-bit cells for heights (canopy height maps often are), instead of a photo or a mask.
+
+    Returns
+    -------
+    Terrain
+        A context manager.
+
+    Raises
+    ------
+    InputError
+        For a path that does not exist, an unknown method, unit or datum.
+    RasterError
+        For a raster that is damaged, has no CRS, or is not heights.
+
+    Examples
+    --------
+    >>> import tempfile
+    >>> wgs84 = ('GEOGCS["WGS 84",DATUM["WGS_1984",SPHEROID["WGS 84",6378137,298.257223563]],'
+    ...     'UNIT["degree",0.0174532925199433]]')
+    >>> with tempfile.TemporaryDirectory() as folder:
+    ...     _ = Path(folder, "hill.prj").write_text(wgs84)
+    ...     _ = Path(folder, "hill.asc").write_text(
+    ...         "ncols 3\nnrows 2\nxllcorner 10\nyllcorner 50\ncellsize 0.1\nNODATA_value -9999\n"
+    ...         "100 200 300\n300 400 -9999\n")
+    ...     with open_terrain(Path(folder)) as terrain:
+    ...         found = terrain.sample([10.05, 10.1, 10.25, 12.0], [50.15, 50.1, 50.05, 50.0])
+    >>> found.ground_m.round(9).tolist(), found.source.tolist(), found.covered.tolist()
+    ([100.0, 250.0, nan, nan], [0, 0, -1, -1], [True, True, True, False])
+    >>> found.sources[0].share
+    0.5
+    """
+    if method not in ("bilinear", "highest"):
+        raise InputError(f"terrain method {method!r}: must be bilinear or highest")
+    if height_unit is not None:
+        unit_factor(height_unit)
+    datum = None if vertical_datum is None else resolve_datum(vertical_datum)
+    reading = Reading(vertical_datum=datum, height_unit=height_unit, eight_bit=eight_bit)
+    tiles, skipped = describe_all([paths] if isinstance(paths, Path) else paths, reading)
+    return Terrain(tiles, skipped, method=method, allow_mixed_datums=allow_mixed_datums)
+
+
+def describe_all(paths: Sequence[Path], reading: Reading) -> tuple[list[Tile], list[Skipped]]:
+    """Describe every raster in the paths; what a folder holds besides heights is set aside, all else is an error."""
+    tiles: list[Tile] = []
+    skipped: list[Skipped] = []
+    refused: RasterError | None = None
+    with gdal_session():
+        for file in find_rasters(paths):
+            try:
+                tiles.append(describe(file, reading))
+            except NotHeightsError as error:
+                if file.named:
+                    raise
+                refused = refused or error
+                skipped.append(Skipped(file.path, str(error)))
+    if not tiles and refused is not None:
+        raise refused
+    return tiles, skipped
+
+
+def as_degrees(longitude: ArrayLike, latitude: ArrayLike) -> tuple[Float, Float, tuple[int, ...]]:
+    """Broadcast, check and flatten coordinates; return them with the shape to give results.
+
+    Raises
+    ------
+    InputError
+        For a coordinate that is not finite, or a latitude beyond the poles.
+    """
+    lon, lat = np.broadcast_arrays(np.asarray(longitude, dtype=float), np.asarray(latitude, dtype=float))
+    flat_lon, flat_lat = lon.ravel(), lat.ravel()
+    bad = ~(np.isfinite(flat_lon) & (np.abs(flat_lat) <= 90.0))
+    if bad.any():
+        i = int(np.argmax(bad))
+        raise InputError(
+            f"point {i}: longitude {flat_lon[i]:g}, latitude {flat_lat[i]:g}: must be finite degrees with latitude "
+            "-90 to 90; longitude comes first"
+        )
+    return flat_lon, flat_lat, lon.shape
+
+
+def _one_datum(sources: tuple[SourceUse, ...], *, allow_mixed: bool) -> tuple[str | None, tuple[str, ...]]:
+    """Find the vertical datum of all sources; an undeclared one proves no difference, so it is noted, not refused."""
+    seen: dict[str, RasterInfo] = {}
+    silent = 0
+    for use in sources:
+        if use.info.vertical_datum is None:
+            silent += 1
+        else:
+            seen.setdefault(datum_key(use.info.vertical_datum), use.info)
+    if len(seen) > 1:
+        found = ", ".join(f"{info.vertical_datum} ({info.name})" for info in seen.values())
+        if not allow_mixed:
+            raise DatumError(
+                f"heights on different vertical datums meet on one path: {found}; bring the rasters to one datum, "
+                "leave one out, or allow mixed datums and live with the step between them"
+            )
+        return None, (f"heights on different vertical datums are mixed, as allowed: {found}",)
+    if not seen:
+        return None, ("no raster declares its vertical datum",) if silent else ()
+    datum = next(iter(seen.values())).vertical_datum
+    if silent:
+        return datum, (
+            f"{silent} of {len(sources)} rasters declare no vertical datum: taken as {datum}, like the rest",
+        )
+    return datum, ()

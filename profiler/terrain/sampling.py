@@ -1,0 +1,170 @@
+"""Ground heights at points from every raster that reaches them: the finest that has data, seams and edges settled.
+
+For each point the rasters on which it lies are tried from the finest cell to the coarsest. A raster answers when every
+cell that carries weight is there and holds a height, its neighbours on the same lattice included; a void anywhere
+among them passes the point on. What is left lies in the outermost half cell of its rasters, where cells are absent
+rather than void: there the weights of the cells that do exist, in all the lattices that reach the point, are scaled to
+one. Between two rasters whose grids meet edge to edge that is the straight line from one to the other; at the outer
+edge of everything it holds the edge value.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import NDArray
+
+from profiler.models import SampleMethod
+from profiler.terrain.cells import Tally, fetch_heights
+from profiler.terrain.describe import ground_cell
+from profiler.terrain.gdal import OpenRasters
+from profiler.terrain.index import Hits, Index, Ints, find_hits, locate_cells
+from profiler.units import Float
+
+__all__ = ["Ground", "cells_on_ground", "sample_ground"]
+
+_FULL = 1.0 - 1e-9
+_NONE = np.iinfo(np.int64).max
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Ground:
+    """Heights at points (NaN missing), the tile each came from (-1 none), where an edge was settled, and the cost."""
+
+    height_m: Float
+    tile: Ints
+    edge: NDArray[np.bool_]
+    covered: NDArray[np.bool_]
+    tally: Tally
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class _Around:
+    """The cells around points that exist: Σ weight · height (or the highest), Σ weight, and whether any is void."""
+
+    value: Float
+    weight: Float
+    void: NDArray[np.bool_]
+
+
+def cells_on_ground(index: Index, hits: Hits) -> tuple[Ints, Float]:
+    """Lattices among the hits, and the two sides of their cells on the ground (metres) about where they are hit."""
+    names, first = np.unique(index.lattice[hits.tile], return_index=True)
+    sides = np.empty((names.size, 2))
+    for i, k in enumerate(first):
+        tile = index.tiles[hits.tile[k]]
+        sides[i] = ground_cell(tile.reference, tile.affine, float(hits.u[k]), float(hits.v[k]))
+    return names, sides
+
+
+def sample_ground(
+    index: Index, rasters: OpenRasters, longitude: Float, latitude: Float, method: SampleMethod
+) -> Ground:
+    """Heights in metres at points (n,) in degrees on WGS 84; NaN where no raster has one."""
+    hits = find_hits(index, longitude, latitude)
+    names, sides = cells_on_ground(index, hits)
+    # sizes within 0.1 % are one resolution, so that rounding does not choose between two products of the same grid
+    sizes = np.rint(1000.0 * np.log(sides.prod(axis=1) + 1e-300) / 2.0).astype(np.int64)
+    size = sizes[np.searchsorted(names, index.lattice[hits.tile])]
+    order = np.lexsort((hits.tile, size, hits.point))
+    hits, size = hits.take(order), size[order]
+    candidates = np.unique(hits.tile)
+
+    n, tally = longitude.size, Tally()
+    height, tile, finest = np.full(n, np.nan), np.full(n, -1, dtype=np.int64), np.full(n, _NONE)
+    edges: list[tuple[Ints, _Around]] = []
+    todo = np.flatnonzero(hits.inside)
+    covered = np.zeros(n, dtype=bool)
+    covered[hits.point[todo]] = True
+    while todo.size:
+        first = np.diff(hits.point[todo], prepend=-1) > 0
+        now, rest = todo[first], todo[~first]
+        around = _around(index, rasters, hits.take(now), candidates, tally, method)
+        whole = (around.weight >= _FULL) & ~around.void
+        done = now[whole]
+        height[hits.point[done]] = around.value[whole]
+        tile[hits.point[done]], finest[hits.point[done]] = hits.tile[done], size[done]
+        edges.append((now[~whole], _pick(around, ~whole)))
+        todo = rest[np.isnan(height[hits.point[rest]])]
+
+    near = np.flatnonzero(~hits.inside & (size < finest[hits.point]))
+    if near.size:
+        edges.append((near, _around(index, rasters, hits.take(near), candidates, tally, method)))
+    edge = _settle_edges(index, hits, size, edges, height, tile, finest, method)
+    return Ground(height, tile, edge, covered, tally)
+
+
+def _pick(around: _Around, which: NDArray[np.bool_]) -> _Around:
+    return _Around(around.value[which], around.weight[which], around.void[which])
+
+
+def _around(
+    index: Index, rasters: OpenRasters, hits: Hits, candidates: Ints, tally: Tally, method: SampleMethod
+) -> _Around:
+    """Combine the cells around each hit; a cell of no weight is not looked at."""
+    col, row = np.floor(hits.u).astype(np.int64), np.floor(hits.v).astype(np.int64)
+    right, down = hits.u - col, hits.v - row
+    weight = np.stack([(1 - right) * (1 - down), right * (1 - down), (1 - right) * down, right * down])
+    cols, rows = np.stack([col, col + 1, col, col + 1]), np.stack([row, row, row + 1, row + 1])
+    wanted = np.flatnonzero(weight > 0.0)
+    tile, cell_col, cell_row = locate_cells(
+        index, np.tile(hits.tile, 4)[wanted], cols.ravel()[wanted], rows.ravel()[wanted], candidates
+    )
+    there = tile >= 0
+    exists = np.zeros(weight.shape, dtype=bool)
+    exists.flat[wanted[there]] = True
+    cells = np.zeros(weight.shape)
+    cells.flat[wanted[there]] = fetch_heights(index, rasters, tile[there], cell_col[there], cell_row[there], tally)
+    used = np.where(exists, weight, 0.0)
+    if method == "bilinear":
+        value = (used * cells).sum(axis=0)
+    else:
+        value = np.where(exists, cells, -np.inf).max(axis=0, initial=-np.inf)
+    return _Around(value, used.sum(axis=0), np.asarray(np.isnan(cells).any(axis=0)))
+
+
+def _settle_edges(
+    index: Index,
+    hits: Hits,
+    size: Ints,
+    edges: list[tuple[Ints, _Around]],
+    height: Float,
+    tile: Ints,
+    finest: Ints,
+    method: SampleMethod,
+) -> NDArray[np.bool_]:
+    """Fill, in place, points in the outermost half cell of rasters finer than any that answered; return which.
+
+    A point needs either two lattices that reach it (together half the weight: a seam, or a gap of a fraction of a
+    cell), or one on which it lies when no coarser raster answered either.
+    """
+    n = height.size
+    settled = np.zeros(n, dtype=bool)
+    which = np.concatenate([hit for hit, _ in edges]) if edges else np.zeros(0, dtype=np.int64)
+    if not which.size:
+        return settled
+    value = np.concatenate([around.value for _, around in edges])
+    weight = np.concatenate([around.weight for _, around in edges])
+    void = np.concatenate([around.void for _, around in edges])
+    keep = np.flatnonzero(~void & (weight > 0.0) & (size[which] < finest[hits.point[which]]))
+    key = hits.point[which[keep]] * len(index.tiles) + index.lattice[hits.tile[which[keep]]]
+    keep = keep[np.unique(key, return_index=True)[1]]
+    which, value, weight = which[keep], value[keep], weight[keep]
+    point = hits.point[which]
+
+    total = np.bincount(point, weight, n)
+    on_raster = np.bincount(point, hits.inside[which], n) > 0
+    seam = (np.bincount(point, minlength=n) >= 2) & (total >= 0.5)
+    settled = seam | (on_raster & np.isnan(height))
+    if method == "bilinear":
+        mixed = np.bincount(point, value, n)[settled] / total[settled]
+    else:
+        top = np.full(n, -np.inf)
+        np.maximum.at(top, point, value)
+        mixed = top[settled]
+    height[settled] = mixed
+    strongest = np.argsort(weight, kind="stable")
+    strongest = strongest[settled[point[strongest]]]
+    tile[point[strongest]] = hits.tile[which[strongest]]
+    return settled

@@ -1,0 +1,185 @@
+"""What a folder of terrain holds: coverage, resolution, datums, voids; every raster read once, in pieces."""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Sequence
+from dataclasses import dataclass
+from pathlib import Path
+
+import numpy as np
+
+from profiler.errors import RasterError
+from profiler.terrain.cells import to_metres
+from profiler.terrain.describe import Bounds, NotHeightsError, RasterInfo, Reading, Tile, describe
+from profiler.terrain.files import find_rasters
+from profiler.terrain.gdal import gdal_session, open_raster, read_window
+from profiler.terrain.index import build_index, find_hits
+from profiler.terrain.mosaic import Skipped
+
+__all__ = ["FolderSurvey", "RasterSurvey", "survey"]
+
+_PIECE_CELLS = 4_000_000
+
+
+@dataclass(frozen=True, slots=True)
+class RasterSurvey:
+    """One raster: what it declares, and what its cells hold.
+
+    `void_share` (0 to 1), `min_m` and `max_m` are None when cells were not read, heights also when all are void.
+    """
+
+    info: RasterInfo
+    void_share: float | None
+    min_m: float | None
+    max_m: float | None
+
+
+@dataclass(frozen=True, slots=True)
+class FolderSurvey:
+    """All rasters under some paths.
+
+    Attributes
+    ----------
+    rasters
+        Each usable raster.
+    problems
+        One-line messages about rasters that cannot be used; `open_terrain` on the same paths stops with the first.
+    skipped
+        What is not heights, and why.
+    bounds
+        Degrees around all of them; None when there are none.
+    covered_share
+        Share of the bounds that lies on a raster, from a grid of 100 by 100 points; None when there are none.
+    finest_cell_m, coarsest_cell_m
+        Smallest and largest side of a cell on the ground, metres; None when there are none.
+    vertical_datums
+        Different vertical datums, in order of appearance; None among them stands for "not declared".
+    void_share, min_m, max_m
+        Over all cells (a cell that two tiles hold counts twice); None when not read.
+    size_bytes
+        Of all files.
+    """
+
+    rasters: tuple[RasterSurvey, ...]
+    problems: tuple[str, ...]
+    skipped: tuple[Skipped, ...]
+    bounds: Bounds | None
+    covered_share: float | None
+    finest_cell_m: float | None
+    coarsest_cell_m: float | None
+    vertical_datums: tuple[str | None, ...]
+    void_share: float | None
+    min_m: float | None
+    max_m: float | None
+    size_bytes: int
+
+
+def survey(paths: Sequence[Path] | Path, *, read_heights: bool = True, eight_bit: bool = False) -> FolderSurvey:
+    """Describe every raster under the paths without stopping at a bad one.
+
+    Parameters
+    ----------
+    paths
+        Rasters, archives, folders.
+    read_heights
+        Read every cell, for voids and heights; without, only metadata is read.
+    eight_bit
+        Take 8-bit cells for heights, as in `open_terrain`.
+
+    Raises
+    ------
+    InputError, RasterError
+        When a path does not exist, or the paths hold nothing like a raster.
+    """
+    reading = Reading(eight_bit=eight_bit, height_unit=None)
+    tiles: list[Tile] = []
+    rasters: list[RasterSurvey] = []
+    problems: list[str] = []
+    skipped: list[Skipped] = []
+    with gdal_session():
+        for file in find_rasters([paths] if isinstance(paths, Path) else paths):
+            try:
+                tile = describe(file, reading)
+                rasters.append(_survey_tile(tile) if read_heights else RasterSurvey(tile.info, None, None, None))
+                tiles.append(tile)
+            except NotHeightsError as error:
+                skipped.append(Skipped(file.path, str(error)))
+            except RasterError as error:
+                problems.append(str(error))
+        return _summary(tiles, rasters, problems, skipped)
+
+
+def _survey_tile(tile: Tile) -> RasterSurvey:
+    """Read all cells in bands of whole blocks."""
+    info, coding = tile.info, tile.coding
+    rows = max(1, _PIECE_CELLS // (info.width * tile.unit[0])) * tile.unit[0]
+    lowest, highest, known = math.inf, -math.inf, 0
+    with open_raster(tile.file.source, info.path) as dataset:
+        for top in range(0, info.height, rows):
+            span = (top, min(top + rows, info.height))
+            cells, valid = read_window(
+                dataset, coding.band, span, (0, info.width), path=info.path, masked=coding.masked
+            )
+            height = to_metres(tile, cells, valid)
+            height = height[~np.isnan(height)]
+            if height.size:
+                known += height.size
+                lowest, highest = min(lowest, float(height.min())), max(highest, float(height.max()))
+    void_share = 1.0 - known / (info.width * info.height)
+    return RasterSurvey(info, void_share, *((lowest, highest) if known else (None, None)))
+
+
+def _summary(
+    tiles: list[Tile], rasters: list[RasterSurvey], problems: list[str], skipped: list[Skipped]
+) -> FolderSurvey:
+    infos = [raster.info for raster in rasters]
+    sides = [side for info in infos for side in (info.cell_x_m, info.cell_y_m)]
+    bounds = _around([info.bounds for info in infos]) if infos else None
+    read = [raster for raster in rasters if raster.void_share is not None]
+    cells = sum(raster.info.width * raster.info.height for raster in read)
+    void = sum((raster.void_share or 0.0) * raster.info.width * raster.info.height for raster in read)
+    return FolderSurvey(
+        rasters=tuple(rasters),
+        problems=tuple(problems),
+        skipped=tuple(skipped),
+        bounds=bounds,
+        covered_share=None if bounds is None else _covered_share(tiles, bounds),
+        finest_cell_m=min(sides, default=None),
+        coarsest_cell_m=max(sides, default=None),
+        vertical_datums=tuple(dict.fromkeys(info.vertical_datum for info in infos)),
+        void_share=void / cells if cells else None,
+        min_m=min((raster.min_m for raster in read if raster.min_m is not None), default=None),
+        max_m=max((raster.max_m for raster in read if raster.max_m is not None), default=None),
+        size_bytes=sum({info.path: info.size_bytes for info in infos}.values()),
+    )
+
+
+def _around(bounds: Sequence[Bounds]) -> Bounds:
+    """Bounds around bounds: the circle of longitudes is cut in its widest gap."""
+    south, north = min(bound.south for bound in bounds), max(bound.north for bound in bounds)
+    spans = sorted((bound.west, bound.west + (bound.east - bound.west) % 360.0) for bound in bounds)
+    if any(bound.east - bound.west >= 360.0 for bound in bounds):
+        return Bounds(-180.0, south, 180.0, north)
+    gaps, reach = [], spans[0][1]
+    for west, east in spans[1:]:
+        gaps.append((west - reach, west, reach))
+        reach = max(reach, east)
+    first = spans[0][0]
+    widest = max([(first + 360.0 - reach, first, reach), *gaps])
+    if widest[0] <= 0.0:
+        return Bounds(-180.0, south, 180.0, north)
+    west, east = widest[1], widest[2]
+    return Bounds(west, south, east if east <= 180.0 else east - 360.0, north)
+
+
+def _covered_share(tiles: Sequence[Tile], bounds: Bounds) -> float:
+    """Share of points of a grid over the bounds that lie on a raster (cosine-weighted, so a share of the area)."""
+    part = (np.arange(100) + 0.5) / 100.0
+    width = (bounds.east - bounds.west) % 360.0 or 360.0
+    lon, lat = np.meshgrid(bounds.west + width * part, bounds.south + (bounds.north - bounds.south) * part)
+    lon, lat = lon.ravel(), np.clip(lat.ravel(), -90.0, 90.0)
+    hits = find_hits(build_index(tiles), lon, lat)
+    covered = np.zeros(lon.size, dtype=bool)
+    covered[hits.point[hits.inside]] = True
+    return float(np.average(covered, weights=np.cos(np.radians(lat)) + 1e-12))
