@@ -1,0 +1,40 @@
+"""Diffraction over a profile (Rec. ITU-R P.526-15): each method for batches of hops, and one front door by name."""
+
+from profiler.diffraction.edges import EdgeLosses
+from profiler.diffraction.formulas import (
+    double_edge_loss,
+    fresnel_parameter,
+    knife_edge_loss,
+    rounded_obstacle_loss,
+    rounding,
+)
+from profiler.diffraction.general import DeltaBullington, bullington, delta_bullington
+from profiler.diffraction.methods import DEFAULT_METHOD, METHODS, DiffractionLoss, Edge, Method, compare, diffract
+from profiler.diffraction.obstacles import cascaded_knife_edges, double_edge, single_knife_edge
+from profiler.diffraction.rounded import RoundedLosses, rounded_obstacle
+from profiler.diffraction.sphere import spherical_earth
+
+__all__ = [
+    "DEFAULT_METHOD",
+    "METHODS",
+    "DeltaBullington",
+    "DiffractionLoss",
+    "Edge",
+    "EdgeLosses",
+    "Method",
+    "RoundedLosses",
+    "bullington",
+    "cascaded_knife_edges",
+    "compare",
+    "delta_bullington",
+    "diffract",
+    "double_edge",
+    "double_edge_loss",
+    "fresnel_parameter",
+    "knife_edge_loss",
+    "rounded_obstacle",
+    "rounded_obstacle_loss",
+    "rounding",
+    "single_knife_edge",
+    "spherical_earth",
+]

@@ -1,0 +1,234 @@
+"""Diffraction over the main edges of a profile: the principal one, two of them, three in cascade."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import ArrayLike, NDArray
+
+from profiler.diffraction.edges import EdgeLosses, edge_losses, nu_at
+from profiler.diffraction.formulas import NU_NO_LOSS, double_edge_terms, fresnel_parameter, knife_edge_loss
+from profiler.diffraction.hops import Block, Hops, Index, Points
+from profiler.units import Float
+
+__all__ = ["cascaded_knife_edges", "double_edge", "single_knife_edge"]
+
+_NO_POINT = -1
+
+
+def _main_point(block: Block) -> tuple[Index]:
+    """Inner point of greatest ν of each hop."""
+    return ((block.rise() * block.grid.weight).argmax(axis=1),)
+
+
+def single_knife_edge(
+    distance_m: ArrayLike,
+    height_m: ArrayLike,
+    centre_a_m: ArrayLike,
+    centre_b_m: ArrayLike,
+    frequency_hz: ArrayLike,
+    effective_radius_m: ArrayLike,
+) -> EdgeLosses:
+    """Loss of the principal edge alone: J(ν) of the profile's point of greatest ν.
+
+    Parameters
+    ----------
+    distance_m, height_m, centre_a_m, centre_b_m, frequency_hz, effective_radius_m
+        As in `delta_bullington`.
+
+    Returns
+    -------
+    EdgeLosses
+        The loss and one slot, NaN where ν is not above −0.78.
+
+    Raises
+    ------
+    InputError, MissingGroundError
+        As in `delta_bullington`.
+
+    Examples
+    --------
+    >>> edge = single_knife_edge([0, 5e3, 10e3], [100, 130, 100], 130, 130, 6e9, float("inf"))
+    >>> round(float(edge.loss_db), 2), edge.distance_m.tolist()
+    (6.03, [5000.0])
+
+    Notes
+    -----
+    Source: Rec. ITU-R P.526-15 §4.1.
+    """
+    hops = Hops.of(distance_m, height_m, centre_a_m, centre_b_m, frequency_hz, effective_radius_m)
+    point = hops.points_at(*hops.run(_main_point))
+    nu = nu_at(hops, point.t, point.rise_m)
+    loss = knife_edge_loss(nu)
+    return edge_losses(hops, loss, [(nu > NU_NO_LOSS, point.t, point.height_m, nu, loss)])
+
+
+def _three_points(block: Block) -> tuple[Index, Index, Index]:
+    """Inner points of greatest ν: of the whole path, and of the sections from it to A and to B; −1 for none."""
+    rise, t = block.rise(), block.grid.t
+    main = (rise * block.grid.weight).argmax(axis=1)
+    rows = np.arange(rise.shape[0])
+    t_main = np.broadcast_to(t, rise.shape)[rows, main][:, None]
+    rise_main = rise[rows, main][:, None]
+    index = np.arange(rise.shape[1])
+
+    def best(share: Float, share_main: Float, side: NDArray[np.bool_]) -> Index:
+        """Point of greatest ν among those on one side; shares count from that side's end."""
+        room = np.where(side, share_main - share, 1.0)
+        weighted = (rise - rise_main * share / share_main) * np.sqrt(share_main / (share * room))
+        return np.where(side.any(axis=1), np.where(side, weighted, -np.inf).argmax(axis=1), _NO_POINT)
+
+    to_a = best(t, t_main, index < main[:, None])
+    to_b = best(1.0 - t, 1.0 - t_main, index > main[:, None])
+    return main, to_a, to_b
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class _Trio:
+    """The principal edge of each hop and the main one on either side, with their ν; −inf where a side has no point."""
+
+    main: Points
+    to_a: Points
+    to_b: Points
+    nu: Float
+    nu_a: Float
+    nu_b: Float
+
+    @classmethod
+    def of(cls, hops: Hops, finder: Hops) -> _Trio:
+        """Find the points by `finder`, and take rise and ν from `hops`, the same paths maybe over another radius."""
+        found = finder.run(_three_points)
+        main, to_a, to_b = (hops.points_at(index) for index in found)
+        nu_a = _section_nu(hops, (to_a.t, main.t), (to_a.rise_m, main.rise_m), found[1])
+        nu_b = _section_nu(hops, (1.0 - to_b.t, 1.0 - main.t), (to_b.rise_m, main.rise_m), found[2])
+        return cls(main, to_a, to_b, nu_at(hops, main.t, main.rise_m), nu_a, nu_b)
+
+
+def _section_nu(hops: Hops, share: tuple[Float, Float], rise_m: tuple[Float, Float], index: Index) -> Float:
+    """ν of a point seen from one end and the principal edge; both given as (point, edge), shares from that end."""
+    there = index != _NO_POINT
+    near = np.where(there, share[0], share[1] / 2.0)
+    d1, d2 = hops.length_m * near, hops.length_m * (share[1] - near)
+    nu = fresnel_parameter(rise_m[0] - rise_m[1] * near / share[1], d1, d2, hops.frequency_hz)
+    return np.asarray(np.where(there, nu, -np.inf))
+
+
+def cascaded_knife_edges(
+    distance_m: ArrayLike,
+    height_m: ArrayLike,
+    centre_a_m: ArrayLike,
+    centre_b_m: ArrayLike,
+    frequency_hz: ArrayLike,
+    effective_radius_m: ArrayLike,
+    edges_radius_m: ArrayLike | None = None,
+) -> EdgeLosses:
+    """Loss of up to three knife edges in cascade: the principal edge, and the main one on either side of it.
+
+    L = J(νp) + T·(J(νt) + J(νr) + C) dB for νp > −0.78, else 0, with T = 1 − e^(−J(νp)/6) and C = 10 + 0.04·D, D in km.
+    νt is the greatest of the section from A to the principal edge, νr of the section from there to B.
+
+    Parameters
+    ----------
+    distance_m, height_m, centre_a_m, centre_b_m, frequency_hz, effective_radius_m
+        As in `delta_bullington`.
+    edges_radius_m
+        Effective radius by which the edges are found, if not the one of the loss, m. The source recommends to find
+        them at the median radius and to keep them for every other one, so that the loss does not jump between edges.
+
+    Returns
+    -------
+    EdgeLosses
+        The loss and three slots in the order of the path: towards A, principal, towards B; NaN where ν ≤ −0.78.
+
+    Raises
+    ------
+    InputError, MissingGroundError
+        As in `delta_bullington`.
+
+    Examples
+    --------
+    >>> two = cascaded_knife_edges([0, 4e3, 6e3, 10e3], [0, 120, 110, 0], 100, 100, 6e9, 8500e3)
+    >>> round(float(two.loss_db), 2), two.distance_m.tolist()
+    (33.78, [nan, 4000.0, 6000.0])
+
+    Notes
+    -----
+    Source: Rec. ITU-R P.526-15 §4.4.2, the cascaded knife edge method (from memory of the text).
+    """
+    hops = Hops.of(distance_m, height_m, centre_a_m, centre_b_m, frequency_hz, effective_radius_m)
+    finder = hops if edges_radius_m is None else hops.with_radius(edges_radius_m)
+    trio = _Trio.of(hops, finder)
+    j, j_a, j_b = (knife_edge_loss(nu) for nu in (trio.nu, trio.nu_a, trio.nu_b))
+    loss = j - np.expm1(-j / 6.0) * (j_a + j_b + 10.0 + 0.04 * hops.length_m / 1000.0)
+    counts = trio.nu > NU_NO_LOSS
+    slots = [
+        (counts & (trio.nu_a > NU_NO_LOSS), trio.to_a.t, trio.to_a.height_m, trio.nu_a, j_a),
+        (counts, trio.main.t, trio.main.height_m, trio.nu, j),
+        (counts & (trio.nu_b > NU_NO_LOSS), trio.to_b.t, trio.to_b.height_m, trio.nu_b, j_b),
+    ]
+    return edge_losses(hops, np.where(counts, loss, 0.0), slots)
+
+
+def _pick(mask: NDArray[np.bool_], yes: Points, no: Points) -> Points:
+    """Point `yes` where `mask` holds, else `no`."""
+    pairs = ((yes.t, no.t), (yes.height_m, no.height_m), (yes.rise_m, no.rise_m))
+    return Points(*(np.where(mask, *pair) for pair in pairs))
+
+
+def double_edge(
+    distance_m: ArrayLike,
+    height_m: ArrayLike,
+    centre_a_m: ArrayLike,
+    centre_b_m: ArrayLike,
+    frequency_hz: ArrayLike,
+    effective_radius_m: ArrayLike,
+) -> EdgeLosses:
+    """Loss of the profile's two main edges, by `double_edge_loss`.
+
+    The first is the principal edge; the second has the greatest ν of the two sections from it to the ends. Where no
+    second one has ν > −0.78, the loss is that of the principal edge alone.
+
+    Parameters
+    ----------
+    distance_m, height_m, centre_a_m, centre_b_m, frequency_hz, effective_radius_m
+        As in `delta_bullington`.
+
+    Returns
+    -------
+    EdgeLosses
+        The loss and two slots in the order of the path; a single edge takes the first. The edges' own losses leave
+        out the correction between them.
+
+    Raises
+    ------
+    InputError, MissingGroundError
+        As in `delta_bullington`.
+
+    Examples
+    --------
+    >>> two = double_edge([0, 10e3, 20e3, 30e3], [0, 140, 140, 0], 100, 100, 6e9, float("inf"))
+    >>> round(float(two.loss_db), 2), two.distance_m.tolist()
+    (37.55, [10000.0, 20000.0])
+
+    Notes
+    -----
+    Source: Rec. ITU-R P.526-15 §4.3 for the loss (from memory of the text). The choice of edges is that of §4.4.2.
+    """
+    hops = Hops.of(distance_m, height_m, centre_a_m, centre_b_m, frequency_hz, effective_radius_m)
+    trio = _Trio.of(hops, hops)
+    counts = trio.nu > NU_NO_LOSS
+    pair = counts & (np.maximum(trio.nu_a, trio.nu_b) > NU_NO_LOSS)
+    first = _pick(pair & (trio.nu_a > trio.nu_b), trio.to_a, trio.main)
+    last = _pick(pair & ~(trio.nu_a > trio.nu_b), trio.to_b, trio.main)
+    between = np.where(pair, last.t - first.t, 1.0)
+    spacings = (hops.length_m * first.t, hops.length_m * between, hops.length_m * (1.0 - last.t))
+    terms = double_edge_terms(first.rise_m, last.rise_m, spacings, hops.frequency_hz)
+    alone = knife_edge_loss(trio.nu)
+    j_1, j_2 = np.where(pair, knife_edge_loss(terms.nu_1), alone), knife_edge_loss(terms.nu_2)
+    loss = np.where(pair, np.maximum(j_1 + j_2 + terms.correction_db, 0.0), alone)
+    slots = [
+        (counts, first.t, first.height_m, np.where(pair, terms.nu_1, trio.nu), j_1),
+        (pair, last.t, last.height_m, terms.nu_2, j_2),
+    ]
+    return edge_losses(hops, loss, slots)
