@@ -137,7 +137,7 @@ def _canopy(choice: CoverChoice, longitude: Float, latitude: Float, method: Samp
     """Heights from the canopy rasters, NaN where they have none, and the share that they cover."""
     from profiler.terrain import open_terrain
 
-    with open_terrain(choice.canopy, method=method, allow_mixed_datums=True) as canopy:
+    with open_terrain(choice.canopy, method=method, allow_mixed_datums=True, eight_bit=True) as canopy:
         heights = np.array(canopy.sample(longitude, latitude).ground_m)
     lowest = np.nanmin(heights, initial=0.0)
     if lowest < 0.0:

@@ -1,0 +1,34 @@
+"""Run every stage for one hop, in one direction, and return one immutable result."""
+
+from profiler.study.document import plain, point_table, to_document
+from profiler.study.outage import ModeOutage
+from profiler.study.result import (
+    Air,
+    Place,
+    Provenance,
+    Relief,
+    RuleResult,
+    Study,
+    TerrainUse,
+    Verdict,
+    least_surplus,
+)
+from profiler.study.run import open_hop_terrain, run_study
+
+__all__ = [
+    "Air",
+    "ModeOutage",
+    "Place",
+    "Provenance",
+    "Relief",
+    "RuleResult",
+    "Study",
+    "TerrainUse",
+    "Verdict",
+    "least_surplus",
+    "open_hop_terrain",
+    "plain",
+    "point_table",
+    "run_study",
+    "to_document",
+]

@@ -1,0 +1,179 @@
+"""The first half of a study: from two sites and some rasters to a profile, a corridor and a view from above."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+
+from profiler.cover import cover_along
+from profiler.geometry import corridor_offsets
+from profiler.models import Hop, Profile, Site, frozen_array
+from profiler.path import PathLine, across, geodesic, trace
+from profiler.study.result import Relief, TerrainUse
+from profiler.terrain import Samples, Terrain, fill_missing, missing_stretches, require_ground, require_inside
+from profiler.units import Float
+
+__all__ = ["Corridor", "Ground", "read_ground"]
+
+_SEARCH_STEPS = 256
+_RELIEF_ALONG, _RELIEF_ACROSS = 480, 81
+_ACROSS_STEPS = 10
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Corridor:
+    """Surface beside the path, (n, across), out to the edge of the widest zone that a rule asks for."""
+
+    offset_m: Float
+    surface_m: Float
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Ground:
+    """Everything that the rasters say about one hop."""
+
+    line: PathLine
+    profile: Profile
+    terrain: TerrainUse
+    corridor: Corridor | None
+    relief: Relief | None
+    heights_around_m: Float | None
+
+
+def read_ground(
+    hop: Hop, terrain: Terrain, *, relief: bool = False, around: tuple[Float, Float] | None = None
+) -> Ground:
+    """Read the ground and the cover under, beside and around one hop.
+
+    Parameters
+    ----------
+    hop
+        The hop.
+    terrain
+        The open terrain.
+    relief
+        Whether to read the ground some way to both sides too, for the view from above.
+    around
+        Longitudes and latitudes of further points wanted, such as the grid for the terrain's roughness.
+
+    Returns
+    -------
+    Ground
+
+    Raises
+    ------
+    MissingGroundError
+        Where the path has no ground and the hop file does not let it be filled.
+    InputError, RasterError
+        For a site off the terrain, rasters that cannot be used, or datums that do not agree.
+    """
+    for site in (hop.site_a, hop.site_b):
+        require_inside(terrain, site.name, site.longitude, site.latitude)
+    line, cell_m = _lay_path(hop, terrain)
+    samples = terrain.sample(line.longitude, line.latitude)
+    ground_m, filled, fill_notes = _without_gaps(hop, line, samples)
+    ground_m, differences = _with_surveys(hop, ground_m)
+    cover = cover_along(hop.cover, line.along_m, line.longitude, line.latitude, method=hop.terrain.method)
+    surveyed = np.zeros(line.points, dtype=bool)
+    surveyed[[0, -1]] = [difference is not None for difference in differences]
+    profile = Profile(
+        distance_m=line.along_m,
+        longitude=line.longitude,
+        latitude=line.latitude,
+        ground_m=frozen_array(ground_m),
+        cover_m=cover.cover_m,
+        filled=filled,
+        surveyed=surveyed,
+    )
+    use = TerrainUse(
+        method=hop.terrain.method,
+        spacing_m=line.spacing_m,
+        finest_cell_m=cell_m,
+        vertical_datum=samples.vertical_datum,
+        sources=samples.sources,
+        filled_points=int(filled.sum()),
+        surveyed_difference_a_m=differences[0],
+        surveyed_difference_b_m=differences[1],
+        notes=(*samples.notes, *fill_notes),
+        cover_notes=cover.notes,
+    )
+    return Ground(
+        line=line,
+        profile=profile,
+        terrain=use,
+        corridor=_corridor(hop, terrain, profile, line, cell_m),
+        relief=_relief(terrain, line) if relief else None,
+        heights_around_m=None if around is None else terrain.sample(*around).ground_m,
+    )
+
+
+def _lay_path(hop: Hop, terrain: Terrain) -> tuple[PathLine, float]:
+    """Trace the path with points half the finest cell apart, unless the hop file says otherwise."""
+    ends = (hop.site_a.longitude, hop.site_a.latitude, hop.site_b.longitude, hop.site_b.latitude)
+    coarse = trace(*ends, spacing_m=float(geodesic(*ends)[0]) / _SEARCH_STEPS)
+    cell_m = terrain.finest_cell_m(coarse.longitude, coarse.latitude)
+    return trace(*ends, spacing_m=hop.terrain.spacing_m or 0.5 * cell_m), cell_m
+
+
+def _without_gaps(hop: Hop, line: PathLine, samples: Samples) -> tuple[Float, np.ndarray, tuple[str, ...]]:
+    """Ground with its gaps filled where the hop file allows it; otherwise a gap is an error that says where."""
+    ground_m, filled = np.array(samples.ground_m), np.zeros(line.points, dtype=bool)
+    notes: tuple[str, ...] = ()
+    if hop.terrain.missing == "interpolate":
+        ground_m, filled = fill_missing(line.along_m, ground_m)
+        stretches = ", ".join(
+            f"{line.along_m[first] / 1e3:.2f} to {line.along_m[last] / 1e3:.2f} km"
+            for first, last in missing_stretches(np.where(filled, np.nan, 0.0))
+        )
+        if stretches:
+            notes = (f"ground missing at {stretches}: interpolated along the path, as the hop file allows",)
+    require_ground(line.along_m, line.longitude, line.latitude, ground_m)
+    return ground_m, filled, notes
+
+
+def _with_surveys(hop: Hop, ground_m: Float) -> tuple[Float, tuple[float | None, float | None]]:
+    """Put the surveyed ground in at the sites, and say how far the raster was from it."""
+
+    def difference(site: Site, raster_m: float) -> float | None:
+        return None if site.surveyed_ground_m is None else site.surveyed_ground_m - raster_m
+
+    differences = difference(hop.site_a, float(ground_m[0])), difference(hop.site_b, float(ground_m[-1]))
+    if hop.site_a.surveyed_ground_m is not None:
+        ground_m[0] = hop.site_a.surveyed_ground_m
+    if hop.site_b.surveyed_ground_m is not None:
+        ground_m[-1] = hop.site_b.surveyed_ground_m
+    return ground_m, differences
+
+
+def _corridor(hop: Hop, terrain: Terrain, profile: Profile, line: PathLine, cell_m: float) -> Corridor | None:
+    """Surface across the path to the edge of the widest zone asked for; the path's own points keep their profile.
+
+    Across, points stand half a cell apart, but no closer than a tenth of the zone: what is narrower than that hides
+    next to none of it.
+    """
+    fraction = max(rule.fresnel_fraction for rule in hop.rules)
+    if fraction == 0.0:
+        return None
+    widest = float(np.abs(corridor_offsets(line.along_m, hop.frequency_hz, fraction, np.inf)).max())
+    offset = corridor_offsets(line.along_m, hop.frequency_hz, fraction, max(0.5 * cell_m, widest / _ACROSS_STEPS))
+    longitude, latitude = across(line, offset)
+    ground = np.array(terrain.sample(longitude, latitude).ground_m)
+    cover = cover_along(hop.cover, line.along_m, longitude, latitude, method=hop.terrain.method)
+    surface = ground + cover.cover_m
+    surface[:, offset.shape[1] // 2] = profile.surface_m
+    return Corridor(frozen_array(offset), frozen_array(surface))
+
+
+def _relief(terrain: Terrain, line: PathLine) -> Relief:
+    """Ground on a grid along the path, as wide as an eighth of its length but 3 to 10 km."""
+    half_width = float(np.clip(line.distance_m / 16.0, 1.5e3, 5e3))
+    site_a, site_b = ((float(line.longitude[end]), float(line.latitude[end])) for end in (0, -1))
+    thin = trace(*site_a, *site_b, spacing_m=line.distance_m / _RELIEF_ALONG)
+    offset = np.linspace(-half_width, half_width, _RELIEF_ACROSS)
+    longitude, latitude = across(thin, offset[None, :])
+    return Relief(
+        along_m=thin.along_m,
+        offset_m=frozen_array(offset),
+        ground_m=frozen_array(terrain.sample(longitude, latitude).ground_m),
+    )

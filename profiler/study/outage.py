@@ -1,0 +1,174 @@
+"""The availability stage of a study: from path, climate and margin to outage, for every mode of the radio."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+from dataclasses import dataclass
+
+import numpy as np
+
+from profiler.availability import (
+    Availability,
+    OutageCurve,
+    OutageModel,
+    PathFacts,
+    outage_curve,
+    outage_model,
+    path_roughness,
+    predict,
+)
+from profiler.budget import Budget, ModeBudget
+from profiler.diffraction import DiffractionLoss, diffract
+from profiler.models import Hop, Profile
+from profiler.study.climate import ClimateUse
+
+__all__ = ["ModeOutage", "OutageResult", "predict_outage"]
+
+_CURVE_MARGINS_DB = np.linspace(0.0, 60.0, 121)
+
+
+@dataclass(frozen=True, slots=True)
+class ModeOutage:
+    """Outage of one mode in its weaker direction."""
+
+    mode: str
+    direction: str
+    fade_margin_db: float
+    worst_month_percent: float
+    year_percent: float
+    met: bool | None
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class OutageResult:
+    """Outage of the reference mode, its curve over the margin, and the totals of every mode; or nothing and why."""
+
+    availability: Availability | None
+    curve: OutageCurve | None
+    modes: tuple[ModeOutage, ...]
+    assumptions: tuple[str, ...]
+    warnings: tuple[str, ...]
+
+    @property
+    def meets(self) -> bool | None:
+        """Whether the objective is met; None where there is none, or it cannot be told."""
+        objective = None if self.availability is None else self.availability.objective
+        return None if objective is None else objective.met
+
+
+def predict_outage(
+    hop: Hop,
+    profile: Profile,
+    climate: ClimateUse,
+    budget: Budget | None,
+    centre_a_m: float,
+    centre_b_m: float,
+    losses: Mapping[float, DiffractionLoss],
+) -> OutageResult:
+    """Predict the outage of every mode whose fade margin is known.
+
+    Parameters
+    ----------
+    hop, profile, climate
+        The hop, its profile and its climate numbers.
+    budget
+        The link budget, or None.
+    centre_a_m, centre_b_m
+        Antenna centres above the datum.
+    losses
+        Diffraction loss by k, the median k and those of the rules among them.
+
+    Returns
+    -------
+    OutageResult
+        Empty, with the reason among the assumptions, where there is no margin or no climate to predict from.
+    """
+    choice = climate.choice
+    if choice is None:
+        return OutageResult(None, None, (), (), climate.warnings)
+    rows = () if budget is None else _weaker_rows(budget)
+    known = [(direction, row) for direction, row in rows if row.fade_margin_db is not None]
+    if hop.radio is None or not known:
+        reason = "availability not predicted: the hop file gives no radio with a threshold"
+        return OutageResult(None, None, (), (reason,), climate.warnings)
+    path = _facts(hop, profile, climate, centre_a_m, centre_b_m)
+    excess, low_k_excess = _excess_losses(hop, profile, climate, centre_a_m, centre_b_m, losses)
+    signatures = {mode.name: mode.signature for mode in hop.radio.modes}
+    models: dict[str, OutageModel] = {}
+    found: list[tuple[str, str, Availability]] = []
+    for direction, row in known:
+        models[row.name] = outage_model(
+            path,
+            choice,
+            signature=signatures[row.name],
+            k_excess_db=excess,
+            low_k_excess_db=low_k_excess,
+            sources=climate.sources,
+        )
+        assert row.fade_margin_db is not None
+        found.append((row.name, direction, predict(models[row.name], row.fade_margin_db)))
+    name, direction, first = found[0]
+    assumption = f"availability is that of mode {name}, {direction}: the direction with less fade margin"
+    return OutageResult(
+        availability=first,
+        curve=outage_curve(models[name], _CURVE_MARGINS_DB),
+        modes=tuple(_summary(*each) for each in found),
+        assumptions=(assumption, *first.assumptions),
+        warnings=(*climate.warnings, *first.warnings),
+    )
+
+
+def _summary(mode: str, direction: str, availability: Availability) -> ModeOutage:
+    return ModeOutage(
+        mode=mode,
+        direction=direction,
+        fade_margin_db=availability.fade_margin_db,
+        worst_month_percent=availability.worst_month_percent.total,
+        year_percent=availability.year_percent.total,
+        met=None if availability.objective is None else availability.objective.met,
+    )
+
+
+def _weaker_rows(budget: Budget) -> tuple[tuple[str, ModeBudget], ...]:
+    """Each mode with the direction that has less fade margin."""
+
+    def margin(pair: tuple[str, ModeBudget]) -> float:
+        return np.inf if pair[1].fade_margin_db is None else pair[1].fade_margin_db
+
+    both = zip(budget.a_to_b.modes, budget.b_to_a.modes, strict=True)
+    return tuple(min((("A to B", there), ("B to A", back)), key=margin) for there, back in both)
+
+
+def _facts(hop: Hop, profile: Profile, climate: ClimateUse, centre_a_m: float, centre_b_m: float) -> PathFacts:
+    """Put the path into the plain numbers that the outage methods take."""
+    named_climate = climate.choice is not None and climate.choice.climate is not None
+    return PathFacts(
+        distance_m=float(profile.distance_m[-1]),
+        frequency_hz=hop.frequency_hz,
+        centre_a_m=centre_a_m,
+        centre_b_m=centre_b_m,
+        latitude=climate.latitude,
+        polarization=hop.polarization,
+        mean_ground_m=float(profile.ground_m.mean()),
+        ground_roughness_m=path_roughness(profile.distance_m, profile.ground_m) if named_climate else None,
+    )
+
+
+def _excess_losses(
+    hop: Hop,
+    profile: Profile,
+    climate: ClimateUse,
+    centre_a_m: float,
+    centre_b_m: float,
+    losses: Mapping[float, DiffractionLoss],
+) -> tuple[list[float], float]:
+    """Diffraction loss over the budget's, at every percentile of k and at the lowest k of the rules."""
+    counted_db = losses[hop.median_k].loss_db
+    path = (profile.distance_m, profile.surface_m, centre_a_m, centre_b_m, hop.frequency_hz)
+    excess = [
+        diffract(hop.diffraction_method, *path, k, polarization=hop.polarization, sea_fraction=hop.sea_fraction).loss_db
+        - counted_db
+        for _, k in climate.k_percentiles
+    ]
+    lowest = min(rule.k for rule in hop.rules)
+    return excess, losses[lowest].loss_db - counted_db

@@ -1,0 +1,49 @@
+"""What somebody else needs to get the same numbers: files with their hashes, and versions."""
+
+from __future__ import annotations
+
+from datetime import UTC, datetime
+from functools import cache
+from importlib.metadata import version
+from platform import python_version
+
+from profiler import __version__
+from profiler.models import Hop
+from profiler.study.result import Provenance, TerrainUse
+from profiler.terrain import file_hash
+
+__all__ = ["provenance"]
+
+_LIBRARIES = ("numpy", "scipy", "rasterio", "pyproj", "matplotlib", "pydantic")
+
+
+@cache
+def _versions() -> tuple[tuple[str, str], ...]:
+    """Versions of hopwright, Python and the libraries that numbers pass through."""
+    libraries = tuple((name, version(name)) for name in _LIBRARIES)
+    return (("hopwright", __version__), ("python", python_version()), *libraries)
+
+
+def provenance(hop: Hop, terrain: TerrainUse) -> Provenance:
+    """Name, size and SHA-256 of every file that the study used, and the versions that made it.
+
+    Parameters
+    ----------
+    hop
+        The hop, for its file's hash and its cover rasters.
+    terrain
+        What terrain was used; only rasters that gave heights are listed.
+
+    Returns
+    -------
+    Provenance
+    """
+    covers = [*hop.cover.canopy, *([hop.cover.landcover] if hop.cover.landcover else [])]
+    files = dict.fromkeys([use.info.path for use in terrain.sources] + [path for path in covers if path.is_file()])
+    return Provenance(
+        created=datetime.now(UTC).isoformat(timespec="seconds"),
+        versions=_versions(),
+        hop_file=hop.source,
+        hop_sha256=hop.source_sha256,
+        rasters=tuple((path.name, path.stat().st_size, file_hash(path)) for path in files),
+    )

@@ -1,0 +1,267 @@
+"""The composer: every stage in its order, for one hop."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from contextlib import nullcontext
+
+from profiler.atmosphere import atmosphere_warnings, gas_attenuation, local_atmosphere
+from profiler.budget import Budget, link_budget
+from profiler.confidence import Confidence, assess
+from profiler.diffraction import DiffractionLoss, diffract
+from profiler.errors import InputError
+from profiler.geometry import check_corridor, check_rule, elevation_angle, find_reflections
+from profiler.models import Hop, Rule
+from profiler.study.climate import ClimateUse, climate_numbers
+from profiler.study.ground import Ground, read_ground
+from profiler.study.outage import OutageResult, predict_outage
+from profiler.study.provenance import provenance
+from profiler.study.result import Air, RuleResult, Study, Verdict, least_surplus
+from profiler.terrain import Terrain, open_terrain
+
+__all__ = ["open_hop_terrain", "run_study"]
+
+
+def open_hop_terrain(hop: Hop) -> Terrain:
+    """Open the terrain that a hop names, as it asks for it.
+
+    Raises
+    ------
+    InputError, RasterError
+        For rasters that do not exist or cannot be used.
+    """
+    choice = hop.terrain
+    return open_terrain(
+        choice.paths,
+        method=choice.method,
+        allow_mixed_datums=choice.allow_mixed_datums,
+        vertical_datum=choice.vertical_datum,
+    )
+
+
+def run_study(hop: Hop, terrain: Terrain | None = None, *, relief: bool = False) -> Study:
+    """Study one hop: ground, clearance under every rule, losses, margin, availability and confidence.
+
+    Parameters
+    ----------
+    hop
+        The hop.
+    terrain
+        The open terrain, to use it for several hops; by default the hop's own is opened and closed.
+    relief
+        Whether to read the ground to both sides too, for the figure's view from above.
+
+    Returns
+    -------
+    Study
+
+    Raises
+    ------
+    HopwrightError
+        If anything is wrong with the input; one line says what, where, and what to do.
+    """
+    climate = climate_numbers(hop)
+    with open_hop_terrain(hop) if terrain is None else nullcontext(terrain) as source:
+        ground = read_ground(hop, source, relief=relief, around=climate.roughness_points)
+    climate = climate.with_roughness(ground.heights_around_m)
+    profile = ground.profile
+    centre_a_m = float(profile.ground_m[0]) + hop.site_a.antenna_m
+    centre_b_m = float(profile.ground_m[-1]) + hop.site_b.antenna_m
+    rules = tuple(_check(hop, ground, rule, centre_a_m, centre_b_m) for rule in hop.rules)
+    losses = _diffraction(hop, ground, centre_a_m, centre_b_m)
+    median_loss = losses[hop.median_k]
+    air = _air(hop, ground)
+    budget = _budget(hop, ground, air, median_loss)
+    outage = predict_outage(hop, profile, climate, budget, centre_a_m, centre_b_m, losses)
+    confidence = _confidence(hop, ground, climate)
+    angles = _angles(ground, centre_a_m, centre_b_m, hop.median_k)
+    return Study(
+        hop=hop,
+        line=ground.line,
+        profile=profile,
+        centre_a_m=centre_a_m,
+        centre_b_m=centre_b_m,
+        elevation_a_deg=angles[0],
+        elevation_b_deg=angles[1],
+        terrain=ground.terrain,
+        rules=rules,
+        diffraction=tuple(losses[k] for k in dict.fromkeys(rule.k for rule in hop.rules)),
+        median_diffraction=median_loss,
+        air=air,
+        budget=budget,
+        availability=outage.availability,
+        outage_curve=outage.curve,
+        mode_outages=outage.modes,
+        confidence=confidence,
+        relief=ground.relief,
+        verdict=_verdict(hop, ground, rules, outage),
+        provenance=provenance(hop, ground.terrain),
+        assumptions=_assumptions(hop, ground, air, budget, outage),
+        warnings=_warnings(hop, list(losses.values()), budget, outage),
+    )
+
+
+def _angles(ground: Ground, centre_a_m: float, centre_b_m: float, k: float) -> tuple[float, float]:
+    """Elevation angles at A and at B, degrees."""
+    distance_m = ground.line.distance_m
+    return (
+        float(elevation_angle(distance_m, centre_a_m, centre_b_m, k)),
+        float(elevation_angle(distance_m, centre_b_m, centre_a_m, k)),
+    )
+
+
+def _check(hop: Hop, ground: Ground, rule: Rule, centre_a_m: float, centre_b_m: float) -> RuleResult:
+    """Hold one rule against the path and the ground beside it."""
+    profile, k, fraction = ground.profile, rule.k, rule.fresnel_fraction
+    path = (profile.distance_m, profile.surface_m, centre_a_m, centre_b_m, hop.frequency_hz)
+    corridor = None
+    if ground.corridor is not None and fraction > 0:
+        beside = (profile.distance_m, ground.corridor.offset_m, ground.corridor.surface_m)
+        corridor = check_corridor(*beside, *path[2:], k=k, fresnel_fraction=fraction, margin_m=rule.margin_m)
+    elevation_a_deg, elevation_b_deg = _angles(ground, centre_a_m, centre_b_m, rule.k)
+    return RuleResult(
+        check=check_rule(*path, k=k, fresnel_fraction=fraction, margin_m=rule.margin_m, label=rule.label),
+        corridor=corridor,
+        elevation_a_deg=elevation_a_deg,
+        elevation_b_deg=elevation_b_deg,
+        reflections=find_reflections(*path, k=k),
+    )
+
+
+def _diffraction(hop: Hop, ground: Ground, centre_a_m: float, centre_b_m: float) -> dict[float, DiffractionLoss]:
+    """Loss by the chosen method at every k of the rules and at the median k, each k once."""
+    profile = ground.profile
+    path = (profile.distance_m, profile.surface_m, centre_a_m, centre_b_m, hop.frequency_hz)
+    return {
+        k: diffract(hop.diffraction_method, *path, k, polarization=hop.polarization, sea_fraction=hop.sea_fraction)
+        for k in dict.fromkeys([*(rule.k for rule in hop.rules), hop.median_k])
+    }
+
+
+def _air(hop: Hop, ground: Ground) -> Air:
+    """Gas attenuation in the air that was given, or the reference atmosphere at the path's mean height."""
+    height_m = float(ground.profile.ground_m.mean()) + 0.5 * (hop.site_a.antenna_m + hop.site_b.antenna_m)
+    given = hop.air
+    atmosphere = local_atmosphere(
+        height_m,
+        total_pressure_hpa=given.pressure_hpa,
+        temperature_k=given.temperature_k,
+        vapour_g_m3=given.vapour_g_m3,
+    )
+    per_km = float(
+        gas_attenuation(hop.frequency_hz, atmosphere.pressure_hpa, atmosphere.temperature_k, atmosphere.vapour_g_m3)
+    )
+    fields = {"pressure": given.pressure_hpa, "temperature": given.temperature_k, "vapour": given.vapour_g_m3}
+    assumed = [name for name, value in fields.items() if value is None]
+    reference = f"Rec. ITU-R P.835-6 mean annual reference atmosphere at {height_m:.0f} m"
+    source = f"{', '.join(assumed)}: {reference}" if assumed else "given"
+    return Air(atmosphere, per_km, per_km * ground.line.distance_m / 1e3, source)
+
+
+def _budget(hop: Hop, ground: Ground, air: Air, loss: DiffractionLoss) -> Budget | None:
+    """Link budget both ways where a radio is given."""
+    if hop.radio is None:
+        return None
+    return link_budget(
+        hop.radio,
+        ground.line.distance_m,
+        hop.frequency_hz,
+        gas_db=air.gas_db,
+        diffraction_db=loss.loss_db,
+        gas_note=f"Rec. ITU-R P.676-13; {air.source}",
+        diffraction_note=f"{loss.method} at k = {loss.k:.3g}",
+    )
+
+
+def _confidence(hop: Hop, ground: Ground, climate: ClimateUse) -> Confidence | None:
+    """How sure the clearance is, where the hop file says how wrong the terrain may be."""
+    choice, profile = hop.confidence, ground.profile
+    if choice is None:
+        return None
+    percentiles = climate.k_percentiles if choice.vary_k else ()
+    if choice.vary_k and not percentiles:
+        raise InputError(
+            f"{hop.source}: confidence.vary_k = true: must come with availability.k_percentiles or the climate maps;"
+            " give one of them, or set it to false"
+        )
+    surveyed_sigma_m = 0.0 if choice.site_sigma_m is None else choice.site_sigma_m
+    return assess(
+        profile.distance_m,
+        profile.ground_m,
+        profile.cover_m,
+        hop.site_a.antenna_m,
+        hop.site_b.antenna_m,
+        hop.frequency_hz,
+        [(rule.k, rule.fresnel_fraction, rule.margin_m) for rule in hop.rules],
+        terrain_sigma_m=choice.terrain_sigma_m,
+        correlation_m=choice.correlation_m,
+        covariance=choice.covariance,
+        site_sigma_a_m=surveyed_sigma_m if profile.surveyed[0] else choice.site_sigma_m,
+        site_sigma_b_m=surveyed_sigma_m if profile.surveyed[-1] else choice.site_sigma_m,
+        cover_sigma_m=choice.cover_sigma_m,
+        cover_relative_sigma=choice.cover_relative_sigma,
+        cover_correlation_m=choice.cover_correlation_m,
+        k_percentiles=percentiles,
+        draws=choice.draws,
+        seed=choice.seed,
+    )
+
+
+def _verdict(hop: Hop, ground: Ground, rules: Sequence[RuleResult], outage: OutageResult) -> Verdict:
+    """Say whether the hop passes and why, worst rule first."""
+    clears = all(result.passes for result in rules)
+    worst = min(rules, key=least_surplus)
+    surplus_m = least_surplus(worst)
+    beside = worst.corridor is not None and worst.corridor.surplus_m < worst.check.surplus_m[worst.check.critical]
+    at = worst.corridor.distance_index if beside and worst.corridor is not None else worst.check.critical
+    where = f"{ground.profile.distance_m[at] / 1e3:.2f} km from {hop.site_a.name}"
+    if beside and worst.corridor is not None:
+        where += f", {abs(worst.corridor.offset_m):.0f} m {worst.corridor.side} of the path"
+    rule = f"{worst.check.fresnel_fraction:g} F1 + {worst.check.margin_m:g} m at k = {worst.check.k:.3g}"
+    clearance = f"{'clears every rule, tightest' if clears else 'does not clear: short'}"
+    headline = f"{clearance} by {abs(surplus_m):.1f} m, {where} ({rule})"
+    if outage.meets is not None:
+        headline += f"; {'meets' if outage.meets else 'misses'} the availability objective"
+    return Verdict(
+        passes=clears and outage.meets is not False, clears=clears, meets_objective=outage.meets, headline=headline
+    )
+
+
+def _assumptions(hop: Hop, ground: Ground, air: Air, budget: Budget | None, outage: OutageResult) -> tuple[str, ...]:
+    """Everything that was assumed, in the order of the stages, each thing once."""
+    terrain = ground.terrain
+    sources = [f"{use.info.path.name}: {note}" for use in terrain.sources for note in use.notes]
+    datum = terrain.vertical_datum or "not stated; heights are taken to share one datum"
+    return tuple(
+        dict.fromkeys(
+            [
+                *hop.assumptions,
+                *(f"{site.name}: {note}" for site in (hop.site_a, hop.site_b) for note in site.position_notes),
+                f"ground between cell centres: {terrain.method}; a point every {terrain.spacing_m:.1f} m",
+                f"vertical datum: {datum}",
+                *sources,
+                *terrain.notes,
+                *terrain.cover_notes,
+                f"diffraction: {hop.diffraction_method} over ground and cover; budget at k = {hop.median_k:.3g}",
+                f"air: {air.source}",
+                *(budget.assumptions if budget is not None else ()),
+                *outage.assumptions,
+            ]
+        )
+    )
+
+
+def _warnings(
+    hop: Hop, losses: Sequence[DiffractionLoss], budget: Budget | None, outage: OutageResult
+) -> tuple[str, ...]:
+    """Every warning of every stage, each once."""
+    return tuple(
+        dict.fromkeys(
+            [
+                *(warning for loss in losses for warning in loss.warnings),
+                *atmosphere_warnings(hop.frequency_hz),
+                *(budget.warnings if budget is not None else ()),
+                *outage.warnings,
+            ]
+        )
+    )
