@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 from dataclasses import dataclass, field
 from typing import Any
 
@@ -53,36 +54,35 @@ class Tally:
 
 
 def fetch(
-    index: Index, rasters: OpenRasters, tile: Ints, col: Ints, row: Ints, tally: Tally
-) -> tuple[Float, NDArray[np.bool_]]:
-    """Fetch stored values of single cells (float64, exact for 32-bit types), and where a mask band drops them.
+    tile: Tile, number: int, rasters: OpenRasters, col: Ints, row: Ints, tally: Tally
+) -> tuple[Float, NDArray[np.bool_] | None]:
+    """Fetch stored values of single cells (float64, exact for 32-bit types), and where a mask band holds them valid.
 
     Cells are sorted into groups of blocks; the rectangle around the wanted cells of a group is read once, and only
     the blocks under it. Nothing but the wanted cells is kept.
     """
-    raw = np.empty(tile.size)
-    valid = np.ones(tile.size, dtype=bool)
-    unit_rows, unit_cols = index.unit[tile].T
-    key = (tile << 40) | ((row // unit_rows) << 20) | (col // unit_cols)
-    order = np.argsort(key, kind="stable")
-    starts = np.flatnonzero(np.diff(key[order], prepend=-1))
-    for which in np.split(order, starts[1:]):
-        if which.size:
-            number = int(tile[which[0]])
-            raw[which], valid[which] = _window(index.tiles[number], number, rasters, col[which], row[which], tally)
+    raw = np.empty(col.size)
+    valid = np.ones(col.size, dtype=bool) if tile.coding.masked else None
+    key = (row // tile.unit[0] << 32) | (col // tile.unit[1])
+    order = np.argsort(key, kind="stable")  # wanted cells come nearly in order: this is quick
+    starts = np.flatnonzero(np.diff(key[order])) + 1
+    for which in np.split(order, starts) if starts.size else [slice(None)]:
+        part_col, part_row = col[which], row[which]
+        rows, cols = _span(part_row), _span(part_col)
+        dataset = rasters.get(tile.file.source, tile.file.path)
+        cells, cells_valid = read_window(
+            dataset, tile.coding.band, rows, cols, path=tile.file.path, masked=tile.coding.masked
+        )
+        tally.count(number, tile, rows, cols)
+        at = (part_row - rows[0]) * (cols[1] - cols[0]) + (part_col - cols[0])
+        raw[which] = cells.ravel()[at]
+        if valid is not None and cells_valid is not None:
+            valid[which] = cells_valid.ravel()[at]
     return raw, valid
 
 
-def _window(
-    tile: Tile, number: int, rasters: OpenRasters, col: Ints, row: Ints, tally: Tally
-) -> tuple[NDArray[Any], NDArray[np.bool_] | bool]:
-    rows, cols = (int(row.min()), int(row.max()) + 1), (int(col.min()), int(col.max()) + 1)
-    dataset = rasters.get(tile.file.source, tile.file.path)
-    coding = tile.coding
-    cells, valid = read_window(dataset, coding.band, rows, cols, path=tile.file.path, masked=coding.masked)
-    tally.count(number, tile, rows, cols)
-    at = (row - rows[0], col - cols[0])
-    return cells[at], True if valid is None else valid[at]
+def _span(numbers: Ints) -> tuple[int, int]:
+    return int(numbers.min()), int(numbers.max()) + 1
 
 
 def fetch_heights(index: Index, rasters: OpenRasters, tile: Ints, col: Ints, row: Ints, tally: Tally) -> Float:
@@ -93,13 +93,29 @@ def fetch_heights(index: Index, rasters: OpenRasters, tile: Ints, col: Ints, row
     RasterError
         When a cell holds a height that no place on earth has.
     """
-    raw, valid = fetch(index, rasters, tile, col, row, tally)
-    height = raw * index.scale_m[tile] + index.offset_m[tile]
-    height[(raw == index.nodata[tile]) | ~valid] = np.nan
+    if not tile.size:
+        return np.empty(0)
+    if tile.min() == tile.max():
+        return _heights_on_tile(index, int(tile[0]), rasters, col, row, tally)
+    height = np.empty(tile.size)
+    order = np.argsort(tile, kind="stable")
+    for which in np.split(order, np.flatnonzero(np.diff(tile[order])) + 1):
+        height[which] = _heights_on_tile(index, int(tile[which[0]]), rasters, col[which], row[which], tally)
+    return height
+
+
+def _heights_on_tile(index: Index, number: int, rasters: OpenRasters, col: Ints, row: Ints, tally: Tally) -> Float:
+    tile = index.tiles[number]
+    raw, valid = fetch(tile, number, rasters, col, row, tally)
+    coding = tile.coding
+    height = raw * coding.scale_m + coding.offset_m
+    if not math.isnan(coding.nodata):
+        height[raw == coding.nodata] = np.nan
+    if valid is not None:
+        height[~valid] = np.nan
     odd = np.flatnonzero((height < _LOWEST_GROUND_M) | (height > _HIGHEST_M))
-    for number in np.unique(tile[odd]).tolist():
-        mine = odd[tile[odd] == number]
-        height[mine] = _judge(index.tiles[number], number, raw[mine], height[mine], col[mine], row[mine], tally)
+    if odd.size:
+        height[odd] = _judge(tile, number, raw[odd], height[odd], col[odd], row[odd], tally)
     return height
 
 

@@ -54,9 +54,14 @@ def sample_classes(paths: Sequence[Path] | Path, longitude: ArrayLike, latitude:
                     )  # a point on the outer edge is in the last cell
                     for at, side in zip((mine.u, mine.v), index.size[number], strict=True)
                 )
-                raw, valid = fetch(index, rasters, mine.tile, col, row, Tally())
-                there = valid & (raw != index.nodata[number]) & ~np.isnan(raw)
-                _require_whole(raw[there], index.tiles[number].info.name)
+                if not mine.point.size:
+                    continue
+                tile = index.tiles[number]
+                raw, valid = fetch(tile, int(number), rasters, col, row, Tally())
+                there = (raw != tile.coding.nodata) & ~np.isnan(raw)
+                if valid is not None:
+                    there &= valid
+                _require_whole(raw[there], tile.info.name)
                 classes[mine.point[there]] = raw[there].astype(np.int64)
         finally:
             rasters.close()

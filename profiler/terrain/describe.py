@@ -11,11 +11,10 @@ import numpy as np
 
 from profiler.errors import InputError, RasterError
 from profiler.terrain.files import RasterFile
-from profiler.terrain.gdal import from_lonlat, open_raster, to_lonlat
+from profiler.terrain.gdal import open_raster
 from profiler.terrain.reference import Reference, parse_reference, unit_factor
-from profiler.units import Float
 
-__all__ = ["Bounds", "Coding", "NotHeightsError", "RasterInfo", "Reading", "Tile", "describe", "ground_cell"]
+__all__ = ["Bounds", "Coding", "NotHeightsError", "RasterInfo", "Reading", "Tile", "describe"]
 
 _PHOTO_DRIVERS = frozenset({"JPEG", "GIF", "WEBP", "BMP"})
 _UNIT_CELLS = 256
@@ -133,6 +132,8 @@ class Tile:
 def describe(file: RasterFile, reading: Reading) -> Tile:
     """Read the metadata of one raster and check that it can be used; no cell is read.
 
+    Where it lies in degrees, and its cells in metres, `profiler.terrain.placing` works out for many rasters at once.
+
     Raises
     ------
     RasterError
@@ -146,12 +147,6 @@ def describe(file: RasterFile, reading: Reading) -> Tile:
         unit, factor = ("", 1.0) if reading.classes else _unit(dataset, band, reference, file, reading, notes)
         datum = None if reading.classes else _datum(reference, reading, notes)
         size = (dataset.width, dataset.height)
-        bounds = _bounds(reference, affine, size)
-        cell_x_m, cell_y_m = ground_cell(reference, affine, (size[0] - 1) / 2, (size[1] - 1) / 2)
-        if not all(math.isfinite(value) for value in (*bounds, cell_x_m, cell_y_m)):
-            raise RasterError(
-                f"{file.name}: its corners fall nowhere on the earth in {reference.name}; correct its CRS"
-            )
         info = RasterInfo(
             path=file.path,
             member=file.member,
@@ -159,9 +154,9 @@ def describe(file: RasterFile, reading: Reading) -> Tile:
             crs=reference.name,
             width=size[0],
             height=size[1],
-            cell_x_m=cell_x_m,
-            cell_y_m=cell_y_m,
-            bounds=bounds,
+            cell_x_m=math.nan,
+            cell_y_m=math.nan,
+            bounds=Bounds(math.nan, math.nan, math.nan, math.nan),
             nodata=None if dataset.nodatavals[band - 1] is None else float(dataset.nodatavals[band - 1]),
             unit=unit,
             unit_factor_m=factor,
@@ -303,69 +298,3 @@ def _coding(dataset: Any, band: int, factor: float) -> Coding:
         masked=MaskFlags.all_valid not in flags and MaskFlags.nodata not in flags,
         item_bytes=kind.itemsize,
     )
-
-
-def ground_cell(reference: Reference, affine: Affine, col: float, row: float) -> tuple[float, float]:
-    """Metres on the ground along the row and along the column of the cell centred at (col, row).
-
-    Chords between the middles of opposite sides of the cell, on the WGS 84 ellipsoid: exact enough at any latitude,
-    over the antimeridian and at a pole, where differences of longitude are not.
-    """
-    a, b, c, d, e, f = affine
-    u = np.array([col, col + 1.0, col + 0.5, col + 0.5])
-    v = np.array([row + 0.5, row + 0.5, row, row + 1.0])
-    x, y = a * u + b * v + c, d * u + e * v + f
-    longitude, latitude = (x, y) if reference.is_wgs84 else to_lonlat(reference.horizontal, x, y)
-    point = _geocentric(longitude, latitude)
-    side_x, side_y = np.linalg.norm(point[1] - point[0]), np.linalg.norm(point[3] - point[2])
-    return float(side_x), float(side_y)
-
-
-def _geocentric(longitude: Float, latitude: Float) -> Float:
-    """Geocentric metres on the WGS 84 ellipsoid (a = 6 378 137 m, 1/f = 298.257 223 563), one row a point."""
-    a, e2 = 6_378_137.0, 0.006_694_379_990_141_3
-    lam, phi = np.radians(longitude), np.radians(latitude)
-    normal = a / np.sqrt(1.0 - e2 * np.sin(phi) ** 2)
-    return np.stack(
-        [normal * np.cos(phi) * np.cos(lam), normal * np.cos(phi) * np.sin(lam), normal * (1.0 - e2) * np.sin(phi)],
-        axis=-1,
-    )
-
-
-def _bounds(reference: Reference, affine: Affine, size: tuple[int, int]) -> Bounds:
-    """Degrees that the raster spans, from points along its outline (and the poles, which an outline goes round)."""
-    a, b, c, d, e, f = affine
-    width, height = size
-    step = np.linspace(0.0, 1.0, 22)[:-1]
-    u = width * np.concatenate([step, np.ones(21), 1.0 - step, np.zeros(21)])
-    v = height * np.concatenate([np.zeros(21), step, np.ones(21), 1.0 - step])
-    x, y = a * u + b * v + c, d * u + e * v + f
-    longitude, latitude = (x, y) if reference.is_wgs84 else to_lonlat(reference.horizontal, x, y)
-    if not np.isfinite(longitude).any():
-        return Bounds(math.nan, math.nan, math.nan, math.nan)
-    if not np.isfinite(longitude).all():  # an outline that leaves its own projection: exclude nothing
-        return Bounds(-180.0, -90.0, 180.0, 90.0)
-    south, north = float(latitude.min()), float(latitude.max())
-    poles = () if reference.period else _poles_inside(reference, affine, size)
-    if poles:
-        return Bounds(-180.0, min(south, *poles), 180.0, max(north, *poles))
-    turn = np.unwrap(longitude, period=360.0)
-    west, east = float(turn.min()), float(turn.max())
-    if east - west >= 360.0 - 1e-9:
-        return Bounds(-180.0, south, 180.0, north)
-    return Bounds(_wrap(west), south, _wrap(east), north)
-
-
-def _wrap(longitude: float) -> float:
-    """Longitude within -180° to 180°, either end kept as it came."""
-    return longitude if -180.0 <= longitude <= 180.0 else (longitude + 180.0) % 360.0 - 180.0
-
-
-def _poles_inside(reference: Reference, affine: Affine, size: tuple[int, int]) -> tuple[float, ...]:
-    a, b, c, d, e, f = affine
-    latitude = np.array([90.0, -90.0])
-    x, y = from_lonlat(reference.horizontal, np.zeros(2), latitude)
-    col = (e * (x - c) - b * (y - f)) / (a * e - b * d)
-    row = (a * (y - f) - d * (x - c)) / (a * e - b * d)
-    inside = (col >= 0) & (col <= size[0]) & (row >= 0) & (row <= size[1])
-    return tuple(latitude[inside].tolist())

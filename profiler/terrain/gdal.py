@@ -27,7 +27,7 @@ _OPTIONS = {
     "REPORT_COMPD_CS": "YES",  # the same for DTED and .hgt, whose formats define EGM96
 }
 
-_HANDLES = 32
+_HANDLES = 128
 """Rasters kept open at once: a path crosses few, and the limit on open files of a process is low."""
 
 
@@ -127,7 +127,7 @@ def _transform(source: CRS | str, target: CRS | str, x: Float, y: Float) -> tupl
     from rasterio.warp import transform
 
     try:
-        out = transform(source, target, x, y)
+        out = transform(source, target, x.tolist(), y.tolist())  # it loops over them: lists are quicker
     except CPLE_BaseError:
         if x.size <= 1:
             return np.full(x.shape, np.nan), np.full(x.shape, np.nan)

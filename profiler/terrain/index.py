@@ -14,6 +14,7 @@ from numpy.typing import NDArray
 
 from profiler.terrain.describe import Tile
 from profiler.terrain.gdal import from_lonlat
+from profiler.terrain.placing import by_crs
 from profiler.terrain.reference import Reference
 from profiler.units import Float
 
@@ -24,8 +25,8 @@ Ints = NDArray[np.int64]
 _ALIGNED_CELLS = 1e-3
 """Tiles whose corners miss a common grid by less are one grid: printed cell sizes round, real shifts are larger."""
 
-_CHUNK = 256
-"""Points along a path are tested against the tiles in runs of this many."""
+_RUNS = 64
+"""Points are tested against the tiles in this many runs, which follow the path: tiles beside it are not looked at."""
 
 _SNAP_CELLS = 1e-6
 """A point this near a line of cell centres or an edge is on it: coordinates do not carry more digits."""
@@ -49,8 +50,7 @@ class Index:
 
     `inverse` takes (x, y) to (column, row) counted from cell centres; `box` is the middle and half sides of the
     outline in the CRS, one cell wider; `lattice` and `offset` place a tile's first cell; `around` is the number of
-    columns round the globe where the lattice closes on itself, else 0; `unit` is the rows and columns read at a time;
-    `scale_m`, `offset_m` and `nodata` are those of its coding.
+    columns round the globe where the lattice closes on itself, else 0.
     """
 
     tiles: tuple[Tile, ...]
@@ -61,10 +61,6 @@ class Index:
     lattice: Ints
     offset: Ints
     around: Ints
-    unit: Ints
-    scale_m: Float
-    offset_m: Float
-    nodata: Float
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -90,10 +86,7 @@ def build_index(tiles: Sequence[Tile]) -> Index:
     affine = np.array([tile.affine for tile in tiles])
     size = np.array([(tile.info.width, tile.info.height) for tile in tiles], dtype=np.int64)
     inverse = np.array([_inverse(tile.affine) for tile in tiles])
-    by_crs: dict[str, list[int]] = {}
-    for i, tile in enumerate(tiles):
-        by_crs.setdefault(tile.reference.horizontal.wkt, []).append(i)
-    groups = tuple(_group(tiles, np.array(ids, dtype=np.int64)) for ids in by_crs.values())
+    groups = tuple(_group(tiles, members) for members in by_crs(tiles))
     lattice = np.full(len(tiles), -1, dtype=np.int64)
     offset = np.zeros((len(tiles), 2), dtype=np.int64)
     around = np.zeros(len(tiles), dtype=np.int64)
@@ -108,10 +101,6 @@ def build_index(tiles: Sequence[Tile]) -> Index:
         lattice=lattice,
         offset=offset,
         around=around,
-        unit=np.array([tile.unit for tile in tiles], dtype=np.int64),
-        scale_m=np.array([tile.coding.scale_m for tile in tiles]),
-        offset_m=np.array([tile.coding.offset_m for tile in tiles]),
-        nodata=np.array([tile.coding.nodata for tile in tiles]),
     )
 
 
@@ -210,7 +199,8 @@ def find_hits(index: Index, longitude: Float, latitude: Float) -> Hits:
 
 def _hits_in_group(index: Index, group: Group, point: Ints, x: Float, y: Float) -> list[Hits]:
     period = group.reference.period
-    starts = np.arange(0, x.size, _CHUNK)
+    run = max(16, -(-x.size // _RUNS))
+    starts = np.arange(0, x.size, run)
     first_x = np.repeat(x[starts], np.diff(np.append(starts, x.size)))
     turn = _turned(x - first_x, period)
     low_x, high_x = np.minimum.reduceat(turn, starts), np.maximum.reduceat(turn, starts)
@@ -227,7 +217,7 @@ def _hits_in_group(index: Index, group: Group, point: Ints, x: Float, y: Float) 
         if runs.size == starts.size:
             chosen, tx, ty = point, x, y
         else:
-            which = (starts[runs][:, None] + np.arange(_CHUNK)).ravel()
+            which = (starts[runs][:, None] + np.arange(run)).ravel()
             which = which[which < x.size]
             chosen, tx, ty = point[which], x[which], y[which]
         found.append(_hits_on_tile(index, int(tile), chosen, tx, ty, period))

@@ -17,8 +17,9 @@ from profiler.terrain.describe import NotHeightsError, RasterInfo, Reading, Tile
 from profiler.terrain.files import find_rasters
 from profiler.terrain.gdal import OpenRasters, gdal_session
 from profiler.terrain.index import Ints, build_index, find_hits
+from profiler.terrain.placing import place, require_placed
 from profiler.terrain.reference import datum_key, resolve_datum, unit_factor
-from profiler.terrain.sampling import Ground, cells_on_ground, sample_ground
+from profiler.terrain.sampling import Ground, lattice_cells, sample_ground
 from profiler.units import Float
 
 __all__ = ["Samples", "Skipped", "SourceUse", "Terrain", "as_degrees", "describe_all", "open_terrain"]
@@ -146,7 +147,7 @@ class Terrain:
                     f"no raster covers longitude {lon.min():.6f} to {lon.max():.6f}, latitude {lat.min():.6f} to "
                     f"{lat.max():.6f}; give terrain that does"
                 )
-            return float(cells_on_ground(self._index, hits)[1].min())
+            return float(lattice_cells(self._index, hits)[1].min())
 
     def sample(self, longitude: ArrayLike, latitude: ArrayLike) -> Samples:
         """Heights of the ground at points, in metres.
@@ -289,8 +290,11 @@ def describe_all(paths: Sequence[Path], reading: Reading) -> tuple[list[Tile], l
                     raise
                 refused = refused or error
                 skipped.append(Skipped(file.path, str(error)))
+        tiles = place(tiles)
     if not tiles and refused is not None:
         raise refused
+    for tile in tiles:
+        require_placed(tile)
     return tiles, skipped
 
 

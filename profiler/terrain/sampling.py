@@ -17,12 +17,12 @@ from numpy.typing import NDArray
 
 from profiler.models import SampleMethod
 from profiler.terrain.cells import Tally, fetch_heights
-from profiler.terrain.describe import ground_cell
 from profiler.terrain.gdal import OpenRasters
 from profiler.terrain.index import Hits, Index, Ints, find_hits, locate_cells
+from profiler.terrain.placing import by_crs, cells_on_ground
 from profiler.units import Float
 
-__all__ = ["Ground", "cells_on_ground", "sample_ground"]
+__all__ = ["Ground", "lattice_cells", "sample_ground"]
 
 _FULL = 1.0 - 1e-9
 _NONE = np.iinfo(np.int64).max
@@ -48,13 +48,15 @@ class _Around:
     void: NDArray[np.bool_]
 
 
-def cells_on_ground(index: Index, hits: Hits) -> tuple[Ints, Float]:
+def lattice_cells(index: Index, hits: Hits) -> tuple[Ints, Float]:
     """Lattices among the hits, and the two sides of their cells on the ground (metres) about where they are hit."""
     names, first = np.unique(index.lattice[hits.tile], return_index=True)
     sides = np.empty((names.size, 2))
-    for i, k in enumerate(first):
-        tile = index.tiles[hits.tile[k]]
-        sides[i] = ground_cell(tile.reference, tile.affine, float(hits.u[k]), float(hits.v[k]))
+    tiles = [index.tiles[k] for k in hits.tile[first]]
+    for members in by_crs(tiles):
+        affine = np.array([tiles[i].affine for i in members])
+        at = first[members]
+        sides[members] = cells_on_ground(tiles[members[0]].reference, affine, hits.u[at], hits.v[at])
     return names, sides
 
 
@@ -63,7 +65,7 @@ def sample_ground(
 ) -> Ground:
     """Heights in metres at points (n,) in degrees on WGS 84; NaN where no raster has one."""
     hits = find_hits(index, longitude, latitude)
-    names, sides = cells_on_ground(index, hits)
+    names, sides = lattice_cells(index, hits)
     # sizes within 0.1 % are one resolution, so that rounding does not choose between two products of the same grid
     sizes = np.rint(1000.0 * np.log(sides.prod(axis=1) + 1e-300) / 2.0).astype(np.int64)
     size = sizes[np.searchsorted(names, index.lattice[hits.tile])]
@@ -103,25 +105,33 @@ def _around(
     index: Index, rasters: OpenRasters, hits: Hits, candidates: Ints, tally: Tally, method: SampleMethod
 ) -> _Around:
     """Combine the cells around each hit; a cell of no weight is not looked at."""
-    col, row = np.floor(hits.u).astype(np.int64), np.floor(hits.v).astype(np.int64)
+    col, row = np.floor(hits.u), np.floor(hits.v)
     right, down = hits.u - col, hits.v - row
     weight = np.stack([(1 - right) * (1 - down), right * (1 - down), (1 - right) * down, right * down])
-    cols, rows = np.stack([col, col + 1, col, col + 1]), np.stack([row, row, row + 1, row + 1])
-    wanted = np.flatnonzero(weight > 0.0)
-    tile, cell_col, cell_row = locate_cells(
-        index, np.tile(hits.tile, 4)[wanted], cols.ravel()[wanted], rows.ravel()[wanted], candidates
-    )
-    there = tile >= 0
-    exists = np.zeros(weight.shape, dtype=bool)
-    exists.flat[wanted[there]] = True
+    near_col, near_row = col.astype(np.int64), row.astype(np.int64)
+    cols = np.stack([near_col, near_col + 1, near_col, near_col + 1])
+    rows = np.stack([near_row, near_row, near_row + 1, near_row + 1])
+    exists = weight > 0.0
     cells = np.zeros(weight.shape)
-    cells.flat[wanted[there]] = fetch_heights(index, rasters, tile[there], cell_col[there], cell_row[there], tally)
+    far_col, far_row = index.size[hits.tile].T - 1
+    tile = np.broadcast_to(hits.tile, weight.shape)
+    if not ((hits.u >= 0) & (hits.u <= far_col) & (hits.v >= 0) & (hits.v <= far_row)).all():
+        tile = np.where(exists, tile, -1)
+        tile[exists], cols[exists], rows[exists] = locate_cells(
+            index, tile[exists], cols[exists], rows[exists], candidates
+        )
+        exists &= tile >= 0
+    wanted = ... if exists.all() else exists
+    cells[wanted] = fetch_heights(
+        index, rasters, tile[wanted].ravel(), cols[wanted].ravel(), rows[wanted].ravel(), tally
+    ).reshape(cells[wanted].shape)
+    void = np.asarray(np.isnan(cells).any(axis=0))
     used = np.where(exists, weight, 0.0)
     if method == "bilinear":
-        value = (used * cells).sum(axis=0)
+        value = np.einsum("ij,ij->j", used, cells)
     else:
         value = np.where(exists, cells, -np.inf).max(axis=0, initial=-np.inf)
-    return _Around(value, used.sum(axis=0), np.asarray(np.isnan(cells).any(axis=0)))
+    return _Around(value, used.sum(axis=0), void)
 
 
 def _settle_edges(

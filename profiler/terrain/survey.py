@@ -16,6 +16,7 @@ from profiler.terrain.files import find_rasters
 from profiler.terrain.gdal import gdal_session, open_raster, read_window
 from profiler.terrain.index import build_index, find_hits
 from profiler.terrain.mosaic import Skipped
+from profiler.terrain.placing import place, require_placed
 
 __all__ = ["FolderSurvey", "RasterSurvey", "survey"]
 
@@ -93,6 +94,7 @@ def survey(paths: Sequence[Path] | Path, *, read_heights: bool = True, eight_bit
         When a path does not exist, or the paths hold nothing like a raster.
     """
     reading = Reading(eight_bit=eight_bit, height_unit=None)
+    found: list[Tile] = []
     tiles: list[Tile] = []
     rasters: list[RasterSurvey] = []
     problems: list[str] = []
@@ -100,11 +102,16 @@ def survey(paths: Sequence[Path] | Path, *, read_heights: bool = True, eight_bit
     with gdal_session():
         for file in find_rasters([paths] if isinstance(paths, Path) else paths):
             try:
-                tile = describe(file, reading)
-                rasters.append(_survey_tile(tile) if read_heights else RasterSurvey(tile.info, None, None, None))
-                tiles.append(tile)
+                found.append(describe(file, reading))
             except NotHeightsError as error:
                 skipped.append(Skipped(file.path, str(error)))
+            except RasterError as error:
+                problems.append(str(error))
+        for tile in place(found):
+            try:
+                require_placed(tile)
+                rasters.append(_survey_tile(tile) if read_heights else RasterSurvey(tile.info, None, None, None))
+                tiles.append(tile)
             except RasterError as error:
                 problems.append(str(error))
         return _summary(tiles, rasters, problems, skipped)
