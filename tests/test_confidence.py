@@ -1,0 +1,604 @@
+"""The confidence analysis against closed forms of Gaussian probability, its own forward model, and by property.
+
+Closed forms: Φ and its inverse from SciPy; Sheppard's orthant probability (1899) and Slepian's inequality (1962), both
+textbook results from memory. Sampling tolerances are four standard errors unless said otherwise; seeds are fixed.
+"""
+
+import time
+
+import numpy as np
+import pytest
+from hypothesis import given
+from hypothesis import strategies as st
+from scipy.special import ndtr, ndtri
+
+from profiler.confidence import (
+    TERRAIN_ERRORS,
+    assess,
+    correlation,
+    draw_field,
+    draw_inverse_k,
+    sigma_from_le90,
+    sigma_from_rmse,
+)
+from profiler.confidence.shares import shapley_shares
+from profiler.confidence.tally import Doubt, Nominal, run_draws
+from profiler.errors import InputError, MissingGroundError
+from profiler.geometry import check_rule, earth_bulge, fresnel_radius
+from profiler.models import ConfidenceChoice
+
+RULE = (4 / 3, 0.6, 1.0)
+SURVEYED = {"site_sigma_a_m": 0.0, "site_sigma_b_m": 0.0}
+ANTENNA_M = 40.0
+
+
+def top_of(distance_m, length_m, surplus_m, rule=RULE):
+    """Surface height that leaves this surplus under the rule, antennas of 40 m on ground at 100 m."""
+    k, fraction, margin = rule
+    rest = length_m - distance_m
+    required = fraction * fresnel_radius(distance_m, rest, 6e9) + margin
+    return 100 + ANTENNA_M - earth_bulge(distance_m, rest, k) - required - surplus_m
+
+
+def hills(surplus_m, where=(0.5,), length_m=20e3, cover_m=0.0, rules=(RULE,), **doubt):
+    """Assess a path that has nothing but hills, each with the given surplus, between its sites."""
+    at = np.asarray(where) * length_m
+    distance = np.concatenate(([0.0], at, [length_m]))
+    ground = np.concatenate(([100.0], top_of(at, length_m, surplus_m) - cover_m, [100.0]))
+    cover = np.concatenate(([0.0], np.full(at.size, cover_m), [0.0]))
+    settings = {"terrain_sigma_m": 0.0, "correlation_m": 100.0, "draws": 20000, **doubt}
+    return assess(distance, ground, cover, ANTENNA_M, ANTENNA_M, 6e9, rules, **settings)
+
+
+def near(chance, expected):
+    """Hold an estimated chance against a known one: within four standard errors of the estimate."""
+    return abs(chance.value - expected) <= 4 * np.sqrt(expected * (1 - expected) / 20000) + 1e-12
+
+
+# one obstacle, Gaussian error: the closed form
+
+
+@pytest.mark.parametrize("sigma", [2.0, 5.0])
+@pytest.mark.parametrize("surplus", [-3.0, 0.0, 4.0])
+def test_one_obstacle_has_the_normal_probability(sigma, surplus):
+    found = hills(surplus, terrain_sigma_m=sigma, **SURVEYED)
+    assert near(found.chance, ndtr(surplus / sigma))
+    assert found.rules[0].chance == found.chance
+
+
+@pytest.mark.parametrize("sigma", [2.0, 5.0])
+@pytest.mark.parametrize(("which", "chance"), [(0, 0.90), (1, 0.95)])
+def test_one_obstacle_needs_the_normal_quantile(sigma, which, chance):
+    sure = hills(1.5, where=(0.25,), terrain_sigma_m=sigma, **SURVEYED).sure[which]
+    raise_m = ndtri(chance) * sigma - 1.5
+    # standard error of a sample quantile, sqrt(p(1-p)/N)/density
+    error = 4 * np.sqrt(chance * (1 - chance) / 20000) * sigma * np.sqrt(2 * np.pi) * np.exp(ndtri(chance) ** 2 / 2)
+    assert sure.chance == chance
+    assert sure.raise_m == pytest.approx(raise_m, abs=error)
+    assert sure.raise_low_m <= sure.raise_m <= sure.raise_high_m
+    assert sure.equal_m == pytest.approx((ANTENNA_M + raise_m, ANTENNA_M + raise_m), abs=error)
+    # at a quarter of the way A lifts the ray by three quarters of its own raise, B by one
+    assert sure.a_only_m == pytest.approx(ANTENNA_M + raise_m / 0.75, abs=error / 0.75)
+    assert sure.b_only_m == pytest.approx(ANTENNA_M + raise_m / 0.25, abs=error / 0.25)
+
+
+def test_the_error_under_the_sites_moves_the_ray():
+    # independent: sigma² (1 + t² + (1-t)²); a ray that stood still would leave sigma² alone
+    found = hills(4.0, where=(0.25,), terrain_sigma_m=4.0, correlation_m=0.0)
+    assert near(found.chance, ndtr(1 / np.sqrt(1 + 0.25**2 + 0.75**2)))
+    surveyed = hills(4.0, where=(0.25,), terrain_sigma_m=4.0, site_sigma_a_m=3.0, site_sigma_b_m=1.0)
+    assert near(surveyed.chance, ndtr(4 / np.sqrt(16 + (0.75 * 3) ** 2 + (0.25 * 1) ** 2)))
+
+
+def test_one_error_for_the_whole_path_cancels():
+    found = hills(0.1, where=(0.2, 0.5, 0.6), terrain_sigma_m=10.0, correlation_m=np.inf)
+    assert found.chance.value == 1.0
+    assert found.sure[1].raise_m == pytest.approx(-0.1, abs=1e-4)
+
+
+@pytest.mark.parametrize("surplus", [-0.5, 0.5])
+def test_without_doubt_the_verdict_is_certain(surplus):
+    found = hills(surplus)
+    assert found.chance.value == float(surplus > 0)
+    assert found.sure[0].raise_m == pytest.approx(-surplus, abs=1e-4)
+    assert found.survey == ()
+    assert (found.rules[0].shares.terrain, found.rules[0].shares.cover, found.rules[0].shares.k) == (0, 0, 0)
+
+
+def test_a_point_may_have_its_own_error():
+    distance, ground = np.array([0, 10e3, 20e3]), np.array([100, float(top_of(10e3, 20e3, -1.0)), 100])
+    found = assess(
+        distance, ground, 0 * ground, 40, 40, 6e9, [RULE], terrain_sigma_m=[5, 0, 5], correlation_m=0.0, **SURVEYED
+    )
+    assert found.chance.value == 0.0
+
+
+# several obstacles: joint probabilities
+
+
+def test_independent_obstacles_multiply():
+    found = hills(3.0, where=(0.2, 0.4, 0.6, 0.8), terrain_sigma_m=3.0, correlation_m=0.0, **SURVEYED)
+    assert near(found.chance, ndtr(1.0) ** 4)
+
+
+@pytest.mark.parametrize("covariance", ["exponential", "gaussian"])
+@pytest.mark.parametrize("lag", [0.2, 0.6, 1.5])
+def test_two_correlated_obstacles_meet_sheppards_orthant(covariance, lag):
+    found = hills(
+        0.0, where=(0.5, 0.5 + lag * 1e-2), terrain_sigma_m=3.0, correlation_m=200.0, covariance=covariance, **SURVEYED
+    )
+    rho = np.exp(-3 * lag) if covariance == "exponential" else np.exp(-3 * lag**2)
+    assert near(found.chance, 0.25 + np.arcsin(rho) / (2 * np.pi))
+
+
+def test_longer_correlation_does_not_lower_the_chance_between_surveyed_sites():
+    where = np.linspace(0.3, 0.7, 41)
+    chances = [
+        hills(4.0, where=where, terrain_sigma_m=3.0, correlation_m=reach, **SURVEYED).chance.value
+        for reach in (0.0, 200.0, 2000.0, 20000.0, np.inf)
+    ]
+    assert np.all(np.diff(chances) > 0)
+    assert chances[0] == pytest.approx(ndtr(4 / 3) ** 41, abs=0.003)
+    assert chances[-1] == pytest.approx(ndtr(4 / 3), abs=0.01)
+
+
+# the drawn field
+
+
+@pytest.mark.parametrize("covariance", ["exponential", "gaussian"])
+@pytest.mark.parametrize("reach", [20.0, 300.0, 1e5])
+def test_field_has_the_covariance_of_its_model(covariance, reach):
+    x = np.cumsum(np.random.default_rng(4).uniform(5, 60, 80))
+    field = draw_field(x, reach, covariance, 20000, np.random.default_rng(5)).astype(float)
+    lag = np.abs(x[:, None] - x)
+    model = np.exp(-3 * lag / reach) if covariance == "exponential" else np.exp(-3 * (lag / reach) ** 2)
+    # 3160 pairs: the greatest of them may lie five standard errors out
+    assert np.abs(field @ field.T / 20000 - model).max() < 5 * np.sqrt(2 / 20000)
+    assert np.abs(field.mean(axis=1)).max() < 5 / np.sqrt(20000)
+    assert correlation(lag, reach, covariance) == pytest.approx(model)
+
+
+def test_field_without_correlation_and_with_full():
+    x = np.array([0.0, 1.0, 2.0])
+    loose = draw_field(x, 0.0, "gaussian", 20000, np.random.default_rng(1))
+    assert np.abs(np.corrcoef(loose) - np.eye(3)).max() < 4 / np.sqrt(20000)
+    tied = draw_field(x, np.inf, "exponential", 50, np.random.default_rng(1))
+    assert np.array_equal(tied[0], tied[2])
+    assert correlation([0.0, 1.0], 0.0).tolist() == [1, 0]
+    assert correlation([0.0, 1.0], np.inf).tolist() == [1, 1]
+
+
+# cover
+
+
+def test_tall_cover_counts_like_gaussian_error():
+    found = hills(2.0, cover_m=25.0, cover_sigma_m=3.0, cover_relative_sigma=0.16)
+    assert near(found.chance, ndtr(2.0 / np.hypot(3.0, 4.0)))
+
+
+def test_cover_does_not_sink_into_the_ground():
+    reachable = hills(-1.0, cover_m=2.0, cover_sigma_m=4.0)
+    assert near(reachable.chance, ndtr(-1 / 4))
+    assert hills(-2.5, cover_m=2.0, cover_sigma_m=4.0).chance.value == 0.0
+
+
+def test_where_there_is_no_cover_none_grows():
+    found = hills(1.0, cover_m=0.0, cover_sigma_m=10.0)
+    assert found.chance.value == 1.0
+
+
+def test_cover_over_an_antenna_cannot_be_cleared_from_the_other_end():
+    distance, ground, cover = [0, 10e3, 20e3], [100, 0, 100], [50, 0, 0]
+    sure = assess(
+        distance, ground, cover, 40, 40, 6e9, [(1, 0, 0)], terrain_sigma_m=1, correlation_m=0, cover_sigma_m=2
+    ).sure[1]
+    assert sure.b_only_m is None
+    assert sure.a_only_m == pytest.approx(50 + 1.645 * 2, abs=0.5)
+
+
+# k
+
+
+def test_time_share_clear_follows_the_percentiles_of_k():
+    # clear at the rule's k exactly, so clear whenever k is greater; 0.8 is the 1 % value
+    rule = (0.8, 0.0, 0.0)
+    distance, ground = [0, 25e3, 50e3], [0, float(top_of(25e3, 50e3, 1e-3, rule)) - 100, 0]
+    settings = {"terrain_sigma_m": 0.0, "correlation_m": 0.0, "draws": 20000}
+    pairs = [(1, 0.8), (50, 4 / 3), (99, 3)]
+    found = assess(distance, ground, [0, 0, 0], 40, 40, 6e9, [rule], k_percentiles=pairs, **settings)
+    assert near(found.rules[0].chance_with_k, 1.0)  # held at the outermost pair
+    pairs = [(0.1, 0.6), (20, 0.8), (50, 4 / 3)]
+    found = assess(distance, ground, [0, 0, 0], 40, 40, 6e9, [rule], k_percentiles=pairs, **settings)
+    assert near(found.rules[0].chance_with_k, 0.8)
+    assert found.rules[0].chance.value == 1.0
+    assert found.rules[0].shares.k == 1.0
+
+
+def test_drawn_k_has_the_given_percentiles():
+    pairs = [(0.1, 0.6), (10, 1.0), (50, 4 / 3), (99, 3.0)]
+    drawn = 1 / draw_inverse_k(pairs, 100_000, np.random.default_rng(2))
+    for percent, k in pairs[:-1]:
+        assert 100 * np.mean(drawn < k * (1 + 1e-6)) == pytest.approx(
+            percent, abs=400 * np.sqrt(percent / 100 / 100_000)
+        )
+    assert drawn.max() == pytest.approx(3.0)
+    assert drawn.min() == pytest.approx(0.6)
+
+
+def test_spread_of_k_leaves_the_rules_at_their_own_k():
+    doubt = {"terrain_sigma_m": 3.0, "cover_m": 10.0, "cover_sigma_m": 2.0, "draws": 500}
+    still, moving = hills(1.0, **doubt), hills(1.0, **doubt, k_percentiles=[(1, 0.7), (50, 1.3)])
+    assert still.rules[0].chance_with_k is None
+    assert still.rules[0].surplus_with_k is None
+    assert still.rules[0].shares.k == 0.0
+    assert moving.chance == still.chance
+    assert moving.sure == still.sure
+    assert "k does not vary" in " ".join(still.method)
+
+
+# bands and shares
+
+
+def test_band_of_a_gaussian_surplus():
+    found = hills(2.0, where=(0.3, 0.5), terrain_sigma_m=4.0, **SURVEYED).rules[0]
+    for index in (1, 2):
+        # standard error of the 5 % quantile is 0.0149 sigma at 20 000 draws, of the median 0.0089
+        assert found.surplus.low_m[index] == pytest.approx(2 - 1.645 * 4, abs=0.24)
+        assert found.surplus.median_m[index] == pytest.approx(2, abs=0.15)
+        assert found.surplus.high_m[index] == pytest.approx(2 + 1.645 * 4, abs=0.24)
+    assert found.surplus.low_m[0] == found.surplus.high_m[0] == pytest.approx(ANTENNA_M - RULE[2])
+    assert found.least_low_m <= found.surplus.low_m.min()
+
+
+def test_band_with_k_is_wider_where_the_bulge_is():
+    gauss = [(percent, 1 / (0.75 - 0.1 * ndtri(percent / 100))) for percent in (0.1, 50, 99.9)]
+    found = hills(2.0, terrain_sigma_m=4.0, k_percentiles=gauss, **SURVEYED).rules[0]
+    sigma = np.hypot(4.0, 0.1 * float(earth_bulge(10e3, 10e3, 1.0)))
+    width = found.surplus_with_k.high_m[1] - found.surplus_with_k.low_m[1]
+    assert width == pytest.approx(2 * 1.645 * sigma, abs=0.35)
+    assert found.surplus_with_k.median_m[1] == pytest.approx(2, abs=0.15)  # the median k is the rule's own
+
+
+def test_shares_of_an_additive_surplus_are_the_ratios_of_variances():
+    gauss = [(percent, 1 / (0.75 - 0.1 * ndtri(percent / 100))) for percent in (0.1, 50, 99.9)]
+    bulge = 0.1 * float(earth_bulge(15e3, 15e3, 1.0))
+    doubt = {"terrain_sigma_m": 2.0, "cover_m": 30.0, "cover_sigma_m": 1.0, "k_percentiles": gauss}
+    shares = hills(2.0, length_m=30e3, **doubt, **SURVEYED).rules[0].shares
+    total = 4 + 1 + bulge**2
+    # half the mean square of differences has a relative error of about sqrt(2/N)·1.5; four of them enter
+    assert shares.terrain == pytest.approx(4 / total, abs=0.03)
+    assert shares.cover == pytest.approx(1 / total, abs=0.03)
+    assert shares.k == pytest.approx(bulge**2 / total, abs=0.03)
+    assert shares.terrain + shares.cover + shares.k == pytest.approx(1.0)
+
+
+def test_shares_split_an_interaction_evenly():
+    # Y = a·b + c: nothing of a·b is explained by a or b alone, all by both; Shapley gives each half of it
+    a, b, c = np.random.default_rng(7).standard_normal((3, 40001))
+    mixed = {"a": a[1:] * b[:-1] + c[:-1], "b": a[:-1] * b[1:] + c[:-1], "c": a[:-1] * b[:-1] + c[1:]}
+    shares = shapley_shares(a * b + c, mixed)
+    assert shares == pytest.approx({"a": 0.25, "b": 0.25, "c": 0.5}, abs=0.03)
+
+
+def test_survey_ranks_the_hill_before_the_sites():
+    # independent errors: the surplus has variance sigma² (1 + 1/4 + 1/4), so shares of 2/3, 1/6, 1/6
+    found = hills(1.0, terrain_sigma_m=4.0, correlation_m=0.0)
+    assert found.survey[0].index == 1
+    assert {point.index for point in found.survey} == {0, 1, 2}
+    assert [point.share_of_doubt for point in found.survey] == pytest.approx([2 / 3, 1 / 6, 1 / 6], abs=0.02)
+    assert found.survey[0].chance_critical == pytest.approx(1.0, abs=0.001)
+    surveyed = hills(1.0, terrain_sigma_m=4.0, correlation_m=0.0, **SURVEYED)
+    assert [point.index for point in surveyed.survey] == [1]
+    assert surveyed.survey[0].share_of_doubt == pytest.approx(1.0, abs=1e-3)
+
+
+def test_survey_lists_a_place_once_and_the_tighter_hill_first():
+    where = (0.3, 0.301, 0.7, 0.701)
+    found = hills([0.5, 0.5, 2.0, 2.0], where=where, terrain_sigma_m=2.0, correlation_m=1e4, **SURVEYED)
+    first, second = found.survey[:2]
+    assert first.index in (1, 2)
+    assert second.index in (3, 4)
+    assert first.share_of_doubt > second.share_of_doubt
+    assert found.chance_critical.sum() == pytest.approx(1.0)
+
+
+def test_measuring_the_first_survey_point_removes_at_least_its_share():
+    where = np.linspace(0.2, 0.8, 13)
+    surplus = 1 + 40 * (where - 0.5) ** 2
+    doubt = {"where": where, "terrain_sigma_m": 3.0, "correlation_m": 0.0, **SURVEYED}
+    point = hills(surplus, **doubt).survey[0]
+    sigma = np.full(where.size + 2, 3.0)
+
+    def variance(found):
+        # of a distribution near the normal one: from its 5 % and 95 % points
+        return (found.rules[0].least_high_m - found.rules[0].least_low_m) ** 2
+
+    before = variance(hills(surplus, **doubt))
+    sigma[point.index] = 0.0
+    # measured, the hill may stand anywhere: average over what the survey could find
+    outcomes = []
+    for score in ndtri(np.linspace(0.05, 0.95, 10)):
+        found = surplus.copy()
+        found[point.index - 1] -= 3.0 * score
+        outcomes.append(variance(hills(found, **{**doubt, "terrain_sigma_m": sigma})))
+    assert 1 - np.mean(outcomes) / before > point.share_of_doubt - 0.05
+
+
+# sampling: seeds, convergence, arithmetic
+
+
+def test_same_seed_same_result_and_another_seed_another():
+    doubt = {"terrain_sigma_m": 4.0, "cover_m": 10.0, "cover_sigma_m": 2.0, "draws": 400}
+    first, again, other = hills(1.0, **doubt), hills(1.0, **doubt), hills(1.0, **doubt, seed=2)
+    assert first.sure == again.sure
+    assert first.rules[0].shares == again.rules[0].shares
+    assert np.array_equal(first.rules[0].surplus.low_m, again.rules[0].surplus.low_m)
+    assert other.sure != first.sure
+
+
+def test_error_falls_with_the_square_root_of_the_draws():
+    truth, raise_m = ndtr(0.25), ndtri(0.95) * 4.0 - 1.0
+
+    def rms(draws):
+        found = [hills(1.0, terrain_sigma_m=4.0, **SURVEYED, draws=draws, seed=seed) for seed in range(100)]
+        chance = np.array([one.chance.value for one in found]) - truth
+        height = np.array([one.sure[1].raise_m for one in found]) - raise_m
+        return np.sqrt(np.mean(chance**2)), np.sqrt(np.mean(height**2))
+
+    (few_chance, few_height), (many_chance, many_height) = rms(200), rms(3200)
+    # sixteen times the draws: a quarter; an rms of 100 is known to 7 %, a ratio of two to 10 %, three of those
+    assert few_chance / many_chance == pytest.approx(4, rel=0.3)
+    assert few_height / many_height == pytest.approx(4, rel=0.3)
+    assert few_chance == pytest.approx(np.sqrt(truth * (1 - truth) / 200), rel=0.22)
+
+
+@pytest.mark.parametrize("surplus", [1.0, 8.0])
+def test_intervals_cover_the_truth_as_often_as_they_say(surplus):
+    truth, raise_m = ndtr(surplus / 4.0), ndtri(0.9) * 4.0 - surplus
+    found = [hills(surplus, terrain_sigma_m=4.0, **SURVEYED, draws=300, seed=seed) for seed in range(300)]
+    chance = np.mean([one.chance.low <= truth <= one.chance.high for one in found])
+    height = np.mean([one.sure[0].raise_low_m <= raise_m <= one.sure[0].raise_high_m for one in found])
+    # 300 trials of 95 %: standard error 1.3 %
+    assert 0.91 <= chance <= 0.99
+    assert 0.91 <= height <= 0.99
+
+
+def test_blocks_and_single_precision_agree_with_the_plain_formula():
+    rng, n, draws = np.random.default_rng(8), 150, 300
+    share = np.linspace(0, 1, n)
+    nominal = Nominal(rng.uniform(-5, 900, (2, n)), np.array([0.75, 1.5]), 300 * share * (1 - share), share)
+    ground, covered = rng.normal(0, 5, (n, draws)).astype(np.float32), np.arange(40, 140)
+    cover = rng.normal(0, 3, (100, draws)).astype(np.float32)
+    inverse = rng.normal(0.8, 0.1, draws).astype(np.float32)
+    result = run_draws(nominal, Doubt(ground, cover, covered, inverse))
+
+    e, c = ground.astype(float), np.zeros((n, draws))
+    c[covered] = cover
+    terrain = (1 - share[:, None]) * e[0] + share[:, None] * e[-1] - e
+    fixed = nominal.surplus_m[:, :, None] + terrain - c
+    bulge = nominal.unit_bulge_m[:, None] * (inverse.astype(float) - nominal.inverse_k[:, None, None])
+    assert result.least_m == pytest.approx(fixed.min(axis=1), abs=1e-3)
+    assert result.least_varied_m == pytest.approx((fixed - bulge).min(axis=1), abs=1e-3)
+    assert np.mean(result.critical == fixed.min(axis=0).argmin(axis=0)) > 0.99
+    worst = fixed.min(axis=0)
+    assert result.need_a_m == pytest.approx((-worst[:-1] / (1 - share[:-1, None])).max(axis=0), rel=1e-4, abs=1e-3)
+    assert result.need_b_m == pytest.approx((-worst[1:] / share[1:, None]).max(axis=0), rel=1e-4, abs=1e-3)
+    low = np.sort(fixed, axis=2)[:, :, int(0.05 * draws)]
+    assert np.array([band.low_m for band in result.fixed]) == pytest.approx(low, abs=1e-3)
+    swapped = nominal.surplus_m[:, :, None] + terrain[:, 1:] - c[:, :-1] - bulge[:, :, :-1]
+    assert result.mixed_m["terrain"] == pytest.approx(swapped.min(axis=1), abs=1e-3)
+    swapped = nominal.surplus_m[:, :, None] + terrain[:, :-1] - c[:, :-1] - bulge[:, :, 1:]
+    assert result.mixed_m["k"] == pytest.approx(swapped.min(axis=1), abs=1e-3)
+
+
+# properties on arbitrary paths
+
+paths = st.integers(3, 14).flatmap(
+    lambda n: st.tuples(
+        st.lists(st.floats(0, 120), min_size=n, max_size=n),
+        st.lists(st.sampled_from([0.0, 0.0, 3.0, 20.0]), min_size=n, max_size=n),
+    )
+)
+
+
+def on_path(path, antennas=(40.0, 30.0), scale=1.0, **doubt):
+    ground, cover = np.array(path[0]), np.array(path[1])
+    distance = np.linspace(0, 30e3, ground.size)
+    settings = {"terrain_sigma_m": 5.0 * scale, "cover_sigma_m": 4.0 * scale, "correlation_m": 3e3, "draws": 400}
+    settings |= doubt
+    return assess(distance, ground, cover, *antennas, 6e9, [(4 / 3, 1.0, 0.0), (2 / 3, 0.3, 0.0)], **settings)
+
+
+@given(paths, st.floats(1.0, 3.0), st.sampled_from(["exponential", "gaussian"]))
+def test_more_doubt_never_lowers_the_sure_heights(path, factor, covariance):
+    # per draw, the need is convex in the common factor and the same for all draws at 0, so this holds for every seed
+    less, more = on_path(path, covariance=covariance), on_path(path, scale=factor, covariance=covariance)
+    for one, other in zip(less.sure, more.sure, strict=True):
+        assert other.raise_m >= one.raise_m - 1e-3
+        for low, high in ((one.a_only_m, other.a_only_m), (one.b_only_m, other.b_only_m)):
+            assert high is None or (low is not None and high >= low - 0.1)
+
+
+@given(paths)
+def test_any_doubt_asks_for_no_less_than_certainty(path):
+    certain = on_path(path, scale=0.0).sure[0]
+    assert on_path(path, cover_sigma_m=0.0).sure[0].raise_m >= certain.raise_m - 1e-3
+    assert on_path(path, terrain_sigma_m=0.0).sure[0].raise_m >= certain.raise_m - 1e-3
+
+
+@given(paths)
+def test_sure_heights_hold_when_put_back(path):
+    # the same seed draws the same errors, so the forward model must agree to the draw
+    for sure in on_path(path).sure:
+        a, b = sure.equal_m
+        assert on_path(path, (a + 1e-3, b + 1e-3)).chance.value >= sure.chance
+        assert on_path(path, (a - 1e-2, b - 1e-2)).chance.value < sure.chance + 0.005
+        if sure.a_only_m is not None:
+            assert on_path(path, (sure.a_only_m * (1 + 1e-6) + 1e-2, 30.0)).chance.value >= sure.chance
+        if sure.b_only_m is not None:
+            assert on_path(path, (40.0, sure.b_only_m * (1 + 1e-6) + 1e-2)).chance.value >= sure.chance
+
+
+@given(paths, st.floats(0.0, 30.0))
+def test_higher_antennas_are_never_less_sure(path, raise_m):
+    low, high = on_path(path), on_path(path, (40 + raise_m, 30.0))
+    assert high.chance.value >= low.chance.value
+    assert all(a.chance.value >= b.chance.value for a, b in zip(high.rules, low.rules, strict=True))
+
+
+@given(paths)
+def test_all_rules_are_no_surer_than_each_and_bands_are_ordered(path):
+    found = on_path(path, k_percentiles=[(0.1, 0.6), (50, 4 / 3), (99.9, 5)])
+    assert found.chance.value <= min(rule.chance.value for rule in found.rules)
+    assert found.chance.low <= found.chance.value <= found.chance.high
+    for rule in found.rules:
+        for band in (rule.surplus, rule.surplus_with_k):
+            assert np.all(band.low_m <= band.median_m)
+            assert np.all(band.median_m <= band.high_m)
+        shares = (rule.shares.terrain, rule.shares.cover, rule.shares.k)
+        assert min(shares) >= 0
+        # none where an antenna's own height over its site decides every draw: then the outcome is certain
+        assert sum(shares) == pytest.approx(1.0) or (sum(shares) == 0 and rule.chance_with_k.value in (0.0, 1.0))
+
+
+def test_reversing_the_path_changes_nothing_but_the_draws():
+    ground, cover = [10, 80, 30, 95, 20, 60, 5], [0, 10, 20, 0, 15, 0, 0]
+    ahead = on_path((ground, cover), (40, 30), draws=20000)
+    back = on_path((ground[::-1], cover[::-1]), (30, 40), draws=20000)
+    for one, other in zip(ahead.sure, back.sure, strict=True):
+        assert one.raise_m == pytest.approx(other.raise_m, abs=0.5)
+        assert one.a_only_m == pytest.approx(other.b_only_m, rel=0.02)
+        assert one.b_only_m == pytest.approx(other.a_only_m, rel=0.02)
+
+
+def test_median_band_and_verdict_match_the_rule_check():
+    distance, ground = np.linspace(0, 30e3, 200), 40 * np.random.default_rng(3).random(200)
+    found = assess(distance, ground, 0 * ground, 50, 50, 6e9, [RULE], terrain_sigma_m=0.0, correlation_m=0.0)
+    check = check_rule(
+        distance, ground, ground[0] + 50, ground[-1] + 50, 6e9, k=4 / 3, fresnel_fraction=0.6, margin_m=1
+    )
+    assert found.rules[0].surplus.median_m == pytest.approx(check.surplus_m)
+    assert found.chance.value == float(check.passes)
+    assert int(np.argmax(found.chance_critical)) == check.critical
+
+
+# statements of error
+
+
+def test_le90_is_the_90_percent_point_of_the_absolute_error():
+    assert 2 * ndtr(10.0 / sigma_from_le90(10.0)) - 1 == pytest.approx(0.90, abs=1e-12)
+    assert sigma_from_rmse(5.0, bias_m=3.0) == 4.0
+
+
+@pytest.mark.parametrize(
+    ("kind", "printed"),
+    [
+        ("srtm-1", "5.7"),  # Aziz et al., International Journal of Geoinformatics
+        ("nasadem", "3.7"),  # the same
+        ("merit", "2.7"),  # the same
+        ("alos-w3d30", "5.4"),  # Apeh et al., Journal of Geographic Information System 11(2), 2019
+    ],
+)
+def test_default_errors_are_the_published_rmse(kind, printed):
+    assert TERRAIN_ERRORS[kind].sigma_m == float(printed)
+    assert printed in TERRAIN_ERRORS[kind].source
+
+
+def test_every_default_says_where_it_comes_from():
+    for error in TERRAIN_ERRORS.values():
+        ConfidenceChoice(error.sigma_m, error.source, error.correlation_m)
+        assert len(error.source) > 20
+        assert len(error.correlation_source) > 10
+
+
+def test_method_states_what_was_assumed():
+    text = " ".join(hills(1.0, terrain_sigma_m=4.0, site_sigma_a_m=0.2, seed=9, covariance="gaussian").method)
+    for words in ("seed 9", "20000 draws", "sigma 4.00 m", "gaussian correlation", "100 m", "site A is known to 0.2 m"):
+        assert words in text
+    assert "uncorrelated" in " ".join(hills(1.0, terrain_sigma_m=4.0, correlation_m=0.0).method)
+
+
+# errors
+
+
+@pytest.mark.parametrize(
+    ("doubt", "message"),
+    [
+        ({"terrain_sigma_m": -1.0}, "terrain_sigma_m = -1.0: must be"),
+        ({"terrain_sigma_m": [1.0, -2.0, 1.0]}, "terrain_sigma_m = -2.0: must be"),
+        ({"terrain_sigma_m": np.nan}, "terrain_sigma_m = nan: must be"),
+        ({"terrain_sigma_m": np.inf}, "terrain_sigma_m = inf: must be a finite number"),
+        ({"correlation_m": -5.0}, "correlation_m = -5.0: must be 0 or more"),
+        ({"cover_correlation_m": np.nan}, "cover_correlation_m = nan"),
+        ({"site_sigma_b_m": -0.1}, "site_sigma_b_m = -0.1"),
+        ({"cover_relative_sigma": -0.1}, "cover_relative_sigma = -0.1"),
+        ({"covariance": "spherical"}, "covariance = 'spherical': must be 'exponential' or 'gaussian'"),
+        ({"draws": 10}, "draws = 10: must be 100 to"),
+        ({"draws": 10**9}, r"draws = 1000000000: must be 100 to \d+ on a path of 3 points"),
+        ({"seed": -1}, "seed = -1: must be 0 or more"),
+        ({"rules": ()}, "rules: none given"),
+        ({"rules": ((-1.0, 0.6, 0.0),)}, "k = -1.0: must be more than 0"),
+        ({"cover_m": -1.0}, "cover_m: least value -1.0 m"),
+        ({"k_percentiles": [(50, 1.3)]}, "k_percentiles = .*: must be two or more pairs"),
+        ({"k_percentiles": [(50, 1.3), (1, 0.8)]}, r"percent = \[50.0, 1.0\]: must ascend"),
+        ({"k_percentiles": [(0, 0.6), (50, 1.3)]}, "must ascend, above 0 and below 100"),
+        ({"k_percentiles": [(1, 1.3), (50, 0.8)]}, "must be above 0 and not fall"),
+    ],
+)
+def test_bad_input_is_named(doubt, message):
+    with pytest.raises(InputError, match=message):
+        hills(1.0, **doubt)
+
+
+def test_rows_must_fit_and_have_no_gaps():
+    settings = {"terrain_sigma_m": 1.0, "correlation_m": 100.0}
+    with pytest.raises(InputError, match="must be three equal rows"):
+        assess([0, 1e3], [0, 0], [0], 30, 30, 6e9, [RULE], **settings)
+    with pytest.raises(InputError, match=r"terrain_sigma_m of shape .* one for each of 2 points"):
+        assess([0, 1e3], [0, 0], [0, 0], 30, 30, 6e9, [RULE], **{**settings, "terrain_sigma_m": [1, 2, 3]})
+    with pytest.raises(MissingGroundError, match="no ground height at 500 m"):
+        assess([0, 500, 1e3], [0, np.nan, 0], [0, 0, 0], 30, 30, 6e9, [RULE], **settings)
+
+
+@pytest.mark.parametrize(("value", "message"), [(-1.0, "must be 0 m or more"), (np.nan, "must be 0 m or more")])
+def test_statements_of_error_are_held_to_their_range(value, message):
+    with pytest.raises(InputError, match=message):
+        sigma_from_le90(value)
+    with pytest.raises(InputError, match=message):
+        sigma_from_rmse(value)
+    with pytest.raises(InputError, match="at least the bias"):
+        sigma_from_rmse(1.0, bias_m=2.0)
+
+
+@pytest.mark.parametrize(
+    ("field", "value"),
+    [("terrain_sigma_m", -1), ("correlation_m", -1), ("cover_relative_sigma", 1.5), ("draws", 50), ("seed", -1)],
+)
+def test_choice_is_held_to_its_range(field, value):
+    with pytest.raises(InputError, match=f"{field} = {value}: must be"):
+        ConfidenceChoice(**{"terrain_sigma_m": 5.0, "terrain_source": "test", "correlation_m": 100.0, field: value})
+
+
+@pytest.mark.slow
+def test_thousand_points_and_two_thousand_draws_in_a_quarter_of_a_second():
+    x = np.linspace(0, 40e3, 1000)
+    ground = 50 + 20 * np.sin(x / 2000)
+    cover = np.where(np.sin(x / 700) > 0, 15.0, 0.0)
+    best = np.inf
+    for _ in range(3):
+        start = time.perf_counter()
+        assess(
+            x,
+            ground,
+            cover,
+            60,
+            60,
+            6e9,
+            [(4 / 3, 1.0, 0.0), (2 / 3, 0.3, 0.0), (1.0, 0.6, 3.0)],
+            terrain_sigma_m=5.0,
+            correlation_m=120.0,
+            cover_sigma_m=4.0,
+            k_percentiles=[(0.1, 0.6), (50, 4 / 3), (99, 3.0)],
+        )
+        best = min(best, time.perf_counter() - start)
+    assert best < 0.25
