@@ -5,7 +5,7 @@ above the ground and its cover.
 """
 
 from profiler.geometry.clearance import RuleCheck, check_rule, tight_places
-from profiler.geometry.corridor import CorridorCheck, check_corridor, corridor_offsets
+from profiler.geometry.corridor import CorridorCheck, check_corridor, corridor_least_ray, corridor_offsets
 from profiler.geometry.ray import earth_bulge, elevation_angle, fresnel_radius, ray_height
 from profiler.geometry.reflection import Reflection, find_reflections, smooth_specular_distance
 
@@ -15,6 +15,7 @@ __all__ = [
     "RuleCheck",
     "check_corridor",
     "check_rule",
+    "corridor_least_ray",
     "corridor_offsets",
     "earth_bulge",
     "elevation_angle",

@@ -12,7 +12,9 @@ from profiler.geometry.ray import earth_bulge, fresnel_radius, ray_height
 from profiler.models import frozen_array
 from profiler.units import Float
 
-__all__ = ["CorridorCheck", "check_corridor", "corridor_offsets"]
+__all__ = ["CorridorCheck", "check_corridor", "corridor_least_ray", "corridor_offsets"]
+
+_EDGE = 1.0 + 1e-9  # a point on the edge of the zone counts, whatever the last digit of its offset
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -74,6 +76,53 @@ def corridor_offsets(distance_m: ArrayLike, frequency_hz: float, fresnel_fractio
     return np.asarray(radius[:, None] * (np.arange(-each_side, each_side + 1) / each_side))
 
 
+def corridor_least_ray(
+    distance_m: ArrayLike,
+    offset_m: ArrayLike,
+    surface_m: ArrayLike,
+    frequency_hz: float,
+    *,
+    k: float,
+    fresnel_fraction: float,
+    margin_m: float = 0.0,
+) -> Float:
+    """Least height of the ray above the datum that one rule asks for because of each point across the path.
+
+    surface + bulge + sqrt(r² - y²) + margin, with the zone's radius r = fraction·F1 and the offset y.
+
+    Parameters
+    ----------
+    distance_m, offset_m, surface_m, frequency_hz, k, fresnel_fraction, margin_m
+        As in `check_corridor`.
+
+    Returns
+    -------
+    ndarray
+        Metres, (n, across); -inf where the point is unknown or lies beyond the zone and so asks for nothing.
+
+    Raises
+    ------
+    InputError
+        If the shapes do not fit.
+
+    Examples
+    --------
+    >>> corridor_least_ray([0, 5e3, 10e3], [[0.0], [0.0], [0.0]], [[10.0], [20.0], [30.0]], 6e9, k=4/3,
+    ...     fresnel_fraction=0.0).ravel().round(2).tolist()
+    [10.0, 21.47, 30.0]
+    """
+    distance = np.asarray(distance_m, dtype=float)
+    offset, surface = np.asarray(offset_m, dtype=float), np.asarray(surface_m, dtype=float)
+    if offset.shape != surface.shape or offset.ndim != 2 or offset.shape[0] != distance.size:
+        raise InputError(f"corridor of shapes {offset.shape} and {surface.shape}: must be (n, across) with n points")
+    remaining = distance[-1] - distance
+    radius = fresnel_fraction * fresnel_radius(distance, remaining, frequency_hz)[:, None]
+    least = surface + earth_bulge(distance, remaining, k)[:, None]
+    least += np.sqrt(np.maximum(radius**2 - offset**2, 0.0)) + margin_m
+    asks = (np.abs(offset) <= radius * _EDGE) & ~np.isnan(surface)
+    return np.asarray(np.where(asks, least, -np.inf))
+
+
 def check_corridor(
     distance_m: ArrayLike,
     offset_m: ArrayLike,
@@ -130,17 +179,13 @@ def check_corridor(
     The ellipsoid is Rec. ITU-R P.526-15 §2.1; at each distance its cross-section is a circle of radius F1 to a part in
     10⁴ and better for the paths of this trade. The bulge is that of the point of the path beside it.
     """
-    distance = np.asarray(distance_m, dtype=float)
-    offset, surface = np.asarray(offset_m, dtype=float), np.asarray(surface_m, dtype=float)
-    if offset.shape != surface.shape or offset.ndim != 2 or offset.shape[0] != distance.size:
-        raise InputError(f"corridor of shapes {offset.shape} and {surface.shape}: must be (n, across) with n points")
-    remaining = distance[-1] - distance
-    radius = fresnel_fraction * fresnel_radius(distance, remaining, frequency_hz)[:, None]
-    ray = ray_height(distance, centre_a_m, centre_b_m) - earth_bulge(distance, remaining, k)
-    within = np.abs(offset) <= radius * (1 + 1e-9)
-    required = np.sqrt(np.maximum(radius**2 - offset**2, 0.0)) + margin_m
-    known = within & ~np.isnan(surface)
-    surplus = np.where(known, ray[:, None] - surface - required, np.inf)
+    least = corridor_least_ray(
+        distance_m, offset_m, surface_m, frequency_hz, k=k, fresnel_fraction=fresnel_fraction, margin_m=margin_m
+    )
+    distance, offset, surface = (np.asarray(each, dtype=float) for each in (distance_m, offset_m, surface_m))
+    surplus = ray_height(distance, centre_a_m, centre_b_m)[:, None] - least
+    radius = fresnel_fraction * fresnel_radius(distance, distance[-1] - distance, frequency_hz)
+    within = np.abs(offset) <= radius[:, None] * _EDGE
     where = np.unravel_index(int(np.argmin(surplus)), surplus.shape)
     return CorridorCheck(
         half_width_m=float(radius.max()),
@@ -150,5 +195,5 @@ def check_corridor(
         surface_m=float(surface[where]),
         surplus_m=float(surplus[where]),
         least_surplus_m=frozen_array(surplus.min(axis=1)),
-        missing_share=float(1.0 - known.sum() / max(1, within.sum())),
+        missing_share=float(np.isnan(surface[within]).mean()),
     )

@@ -1,9 +1,10 @@
 """Run every stage for one hop, in one direction, and return one immutable result."""
 
 from profiler.study.document import plain, point_table, to_document
+from profiler.study.link import Air
 from profiler.study.outage import ModeOutage
 from profiler.study.result import (
-    Air,
+    Corridor,
     Place,
     Provenance,
     Relief,
@@ -17,6 +18,7 @@ from profiler.study.run import open_hop_terrain, run_study
 
 __all__ = [
     "Air",
+    "Corridor",
     "ModeOutage",
     "Place",
     "Provenance",

@@ -10,23 +10,15 @@ from profiler.cover import cover_along
 from profiler.geometry import corridor_offsets
 from profiler.models import Hop, Profile, Site, frozen_array
 from profiler.path import PathLine, across, geodesic, trace
-from profiler.study.result import Relief, TerrainUse
+from profiler.study.result import Corridor, Relief, TerrainUse
 from profiler.terrain import Samples, Terrain, fill_missing, missing_stretches, require_ground, require_inside
 from profiler.units import Float
 
-__all__ = ["Corridor", "Ground", "read_ground"]
+__all__ = ["Ground", "read_ground"]
 
 _SEARCH_STEPS = 256
 _RELIEF_ALONG, _RELIEF_ACROSS = 480, 81
 _ACROSS_STEPS = 10
-
-
-@dataclass(frozen=True, slots=True, eq=False)
-class Corridor:
-    """Surface beside the path, (n, across), out to the edge of the widest zone that a rule asks for."""
-
-    offset_m: Float
-    surface_m: Float
 
 
 @dataclass(frozen=True, slots=True, eq=False)

@@ -4,7 +4,6 @@ from __future__ import annotations
 
 from dataclasses import dataclass
 
-from profiler.atmosphere import Atmosphere
 from profiler.availability import Availability, OutageCurve
 from profiler.budget import Budget
 from profiler.confidence import Confidence
@@ -12,11 +11,13 @@ from profiler.diffraction import DiffractionLoss
 from profiler.geometry import CorridorCheck, Reflection, RuleCheck
 from profiler.models import Hop, Profile
 from profiler.path import PathLine
+from profiler.study.climate import ClimateUse
+from profiler.study.link import Air
 from profiler.study.outage import ModeOutage
 from profiler.terrain import SourceUse
 from profiler.units import Float
 
-__all__ = ["Air", "Place", "Provenance", "Relief", "RuleResult", "Study", "TerrainUse", "Verdict"]
+__all__ = ["Corridor", "Place", "Provenance", "Relief", "RuleResult", "Study", "TerrainUse", "Verdict"]
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -55,22 +56,20 @@ class TerrainUse:
 
 
 @dataclass(frozen=True, slots=True, eq=False)
+class Corridor:
+    """Surface beside the path, (n, across), out to the edge of the widest zone that a rule asks for."""
+
+    offset_m: Float
+    surface_m: Float
+
+
+@dataclass(frozen=True, slots=True, eq=False)
 class Relief:
     """The ground seen from above along the path: heights (n, across), offsets positive to the right of A→B."""
 
     along_m: Float
     offset_m: Float
     ground_m: Float
-
-
-@dataclass(frozen=True, slots=True)
-class Air:
-    """The air that the gas attenuation assumes, and where each number comes from."""
-
-    atmosphere: Atmosphere
-    gas_db_per_km: float
-    gas_db: float
-    source: str
 
 
 @dataclass(frozen=True, slots=True)
@@ -131,6 +130,8 @@ class Study:
     outage_curve: OutageCurve | None
     mode_outages: tuple[ModeOutage, ...]
     confidence: Confidence | None
+    corridor: Corridor | None
+    climate: ClimateUse
     relief: Relief | None
     verdict: Verdict
     provenance: Provenance

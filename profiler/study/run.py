@@ -5,18 +5,19 @@ from __future__ import annotations
 from collections.abc import Sequence
 from contextlib import nullcontext
 
-from profiler.atmosphere import atmosphere_warnings, gas_attenuation, local_atmosphere
-from profiler.budget import Budget, link_budget
+from profiler.atmosphere import atmosphere_warnings
+from profiler.budget import Budget
 from profiler.confidence import Confidence, assess
-from profiler.diffraction import DiffractionLoss, diffract
+from profiler.diffraction import DiffractionLoss
 from profiler.errors import InputError
 from profiler.geometry import check_corridor, check_rule, elevation_angle, find_reflections
 from profiler.models import Hop, Rule
 from profiler.study.climate import ClimateUse, climate_numbers
 from profiler.study.ground import Ground, read_ground
-from profiler.study.outage import OutageResult, predict_outage
+from profiler.study.link import Air, air_along, link
+from profiler.study.outage import OutageResult
 from profiler.study.provenance import provenance
-from profiler.study.result import Air, RuleResult, Study, Verdict, least_surplus
+from profiler.study.result import RuleResult, Study, Verdict, least_surplus
 from profiler.terrain import Terrain, open_terrain
 
 __all__ = ["open_hop_terrain", "run_study"]
@@ -68,11 +69,9 @@ def run_study(hop: Hop, terrain: Terrain | None = None, *, relief: bool = False)
     centre_a_m = float(profile.ground_m[0]) + hop.site_a.antenna_m
     centre_b_m = float(profile.ground_m[-1]) + hop.site_b.antenna_m
     rules = tuple(_check(hop, ground, rule, centre_a_m, centre_b_m) for rule in hop.rules)
-    losses = _diffraction(hop, ground, centre_a_m, centre_b_m)
-    median_loss = losses[hop.median_k]
-    air = _air(hop, ground)
-    budget = _budget(hop, ground, air, median_loss)
-    outage = predict_outage(hop, profile, climate, budget, centre_a_m, centre_b_m, losses)
+    air = air_along(hop, profile)
+    found = link(hop, profile, climate, air, centre_a_m, centre_b_m)
+    losses, budget, outage = found.losses, found.budget, found.outage
     confidence = _confidence(hop, ground, climate)
     angles = _angles(ground, centre_a_m, centre_b_m, hop.median_k)
     return Study(
@@ -86,13 +85,15 @@ def run_study(hop: Hop, terrain: Terrain | None = None, *, relief: bool = False)
         terrain=ground.terrain,
         rules=rules,
         diffraction=tuple(losses[k] for k in dict.fromkeys(rule.k for rule in hop.rules)),
-        median_diffraction=median_loss,
+        median_diffraction=losses[hop.median_k],
         air=air,
         budget=budget,
         availability=outage.availability,
         outage_curve=outage.curve,
         mode_outages=outage.modes,
         confidence=confidence,
+        corridor=ground.corridor,
+        climate=climate,
         relief=ground.relief,
         verdict=_verdict(hop, ground, rules, outage),
         provenance=provenance(hop, ground.terrain),
@@ -125,51 +126,6 @@ def _check(hop: Hop, ground: Ground, rule: Rule, centre_a_m: float, centre_b_m: 
         elevation_a_deg=elevation_a_deg,
         elevation_b_deg=elevation_b_deg,
         reflections=find_reflections(*path, k=k),
-    )
-
-
-def _diffraction(hop: Hop, ground: Ground, centre_a_m: float, centre_b_m: float) -> dict[float, DiffractionLoss]:
-    """Loss by the chosen method at every k of the rules and at the median k, each k once."""
-    profile = ground.profile
-    path = (profile.distance_m, profile.surface_m, centre_a_m, centre_b_m, hop.frequency_hz)
-    return {
-        k: diffract(hop.diffraction_method, *path, k, polarization=hop.polarization, sea_fraction=hop.sea_fraction)
-        for k in dict.fromkeys([*(rule.k for rule in hop.rules), hop.median_k])
-    }
-
-
-def _air(hop: Hop, ground: Ground) -> Air:
-    """Gas attenuation in the air that was given, or the reference atmosphere at the path's mean height."""
-    height_m = float(ground.profile.ground_m.mean()) + 0.5 * (hop.site_a.antenna_m + hop.site_b.antenna_m)
-    given = hop.air
-    atmosphere = local_atmosphere(
-        height_m,
-        total_pressure_hpa=given.pressure_hpa,
-        temperature_k=given.temperature_k,
-        vapour_g_m3=given.vapour_g_m3,
-    )
-    per_km = float(
-        gas_attenuation(hop.frequency_hz, atmosphere.pressure_hpa, atmosphere.temperature_k, atmosphere.vapour_g_m3)
-    )
-    fields = {"pressure": given.pressure_hpa, "temperature": given.temperature_k, "vapour": given.vapour_g_m3}
-    assumed = [name for name, value in fields.items() if value is None]
-    reference = f"Rec. ITU-R P.835-6 mean annual reference atmosphere at {height_m:.0f} m"
-    source = f"{', '.join(assumed)}: {reference}" if assumed else "given"
-    return Air(atmosphere, per_km, per_km * ground.line.distance_m / 1e3, source)
-
-
-def _budget(hop: Hop, ground: Ground, air: Air, loss: DiffractionLoss) -> Budget | None:
-    """Link budget both ways where a radio is given."""
-    if hop.radio is None:
-        return None
-    return link_budget(
-        hop.radio,
-        ground.line.distance_m,
-        hop.frequency_hz,
-        gas_db=air.gas_db,
-        diffraction_db=loss.loss_db,
-        gas_note=f"Rec. ITU-R P.676-13; {air.source}",
-        diffraction_note=f"{loss.method} at k = {loss.k:.3g}",
     )
 
 
