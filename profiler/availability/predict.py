@@ -1,0 +1,241 @@
+"""The outage of one hop at its fade margin, complete with what was used, assumed and left out; and its curve."""
+
+from __future__ import annotations
+
+import math
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import ArrayLike
+
+from profiler.availability.model import OutageModel
+from profiler.availability.notes import InputUsed, Notes
+from profiler.availability.objective import LARGEST_MARGIN_DB, MINUTES_PER_YEAR, Limit, ObjectiveResult, judge, limit_of
+from profiler.availability.outages import MECHANISMS, Mechanism, Outages, outages_at
+from profiler.availability.rain import PERCENT_RANGE
+from profiler.errors import InputError
+from profiler.models import MultipathMethod, frozen_array
+from profiler.units import Float
+
+__all__ = ["Availability", "OutageCurve", "outage_curve", "predict"]
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Availability:
+    """Outage of one hop, one direction, at its fade margin.
+
+    Attributes
+    ----------
+    fade_margin_db
+        The margin it is for. Below 0 dB the totals are 100 and the mechanisms are those at 0 dB.
+    method
+        Multipath method by name.
+    worst_month_percent, year_percent
+        Outage by mechanism and together.
+    missing
+        Mechanisms that were not computed, as nothing was given for them; the totals do not hold them.
+    low_k_blocks
+        Whether diffraction at the low k of the rules takes more than the margin; None if it was not given.
+    objective
+        The targets judged, or None if none was set.
+    limited_by
+        What limits the hop: of the objective, or without one the mechanism with the most outage in the year.
+    inputs, assumptions, warnings
+        Every number used with its source; what was assumed; what to beware of.
+    """
+
+    fade_margin_db: float
+    method: MultipathMethod
+    worst_month_percent: Outages[float]
+    year_percent: Outages[float]
+    missing: tuple[Mechanism, ...]
+    low_k_blocks: bool | None
+    objective: ObjectiveResult | None
+    limited_by: Limit
+    inputs: tuple[InputUsed, ...]
+    assumptions: tuple[str, ...]
+    warnings: tuple[str, ...]
+
+    @property
+    def year_minutes(self) -> float:
+        """Total outage in minutes of an average year of 365.25 days."""
+        return self.year_percent.total * MINUTES_PER_YEAR / 100.0
+
+    @property
+    def available_year_percent(self) -> float:
+        """Share of the year without outage, percent."""
+        return 100.0 - self.year_percent.total
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class OutageCurve:
+    """Outage over the fade margin: arrays of the shape of ``margin_db``, by mechanism and together."""
+
+    margin_db: Float
+    worst_month_percent: Outages[Float]
+    year_percent: Outages[Float]
+
+
+def outage_curve(model: OutageModel, margin_db: ArrayLike) -> OutageCurve:
+    """Outage at many fade margins, for a figure; the same forward model as `predict`.
+
+    Parameters
+    ----------
+    model
+        From `outage_model`.
+    margin_db
+        Fade margins, 0 dB or more, any shape.
+
+    Returns
+    -------
+    OutageCurve
+        Worst month and year, percent.
+
+    Raises
+    ------
+    InputError
+        If a margin is below 0 dB.
+
+    Examples
+    --------
+    >>> from profiler.availability import PathFacts, outage_model
+    >>> from profiler.models import AvailabilityChoice
+    >>> choice = AvailabilityChoice("vigants-barnett", climate_factor=1.0)
+    >>> model = outage_model(PathFacts(48.28e3, 6e9, 300.0, 400.0, latitude=45.0), choice)
+    >>> outage_curve(model, [30.0, 40.0]).worst_month_percent.total.round(5).tolist()
+    [0.04051, 0.00405]
+    """
+    month, year = outages_at(model, margin_db)
+    return OutageCurve(frozen_array(margin_db), month, year)
+
+
+def _point(outages: Outages[Float], down: bool) -> Outages[float]:
+    """Outages at one margin as plain floats; with no margin at all the hop is always down."""
+
+    def number(part: Float | None) -> float | None:
+        return None if part is None else float(part)
+
+    return Outages(
+        multipath=float(outages.multipath),
+        selective=number(outages.selective),
+        rain=number(outages.rain),
+        obstruction=number(outages.obstruction),
+        clear_air=100.0 if down else float(outages.clear_air),
+        total=100.0 if down else float(outages.total),
+    )
+
+
+def _rain_notes(year: Outages[Float]) -> Notes:
+    """Whether the rain outage left the percentages that its method is published for."""
+    if year.rain is None or float(year.rain) == 0.0:
+        return Notes()
+    rarest, most = PERCENT_RANGE
+    law = "Rec. ITU-R P.530-18 §2.4.1; its curve was carried on along the tangent"
+    span = f"outside the {rarest:g} to {most:g} % of {law}"
+    if float(year.rain) < rarest:
+        return Notes(assumptions=(f"rain outage = {float(year.rain):.2g} % of the year: {span}",))
+    if float(year.rain) > most:
+        return Notes(warnings=(f"rain outage = {float(year.rain):.2g} % of the year: {span}",))
+    return Notes()
+
+
+def _obstruction_notes(model: OutageModel, margin_db: float) -> Notes:
+    """Say what the statistics of k, or the lack of them, leave open."""
+    if model.k_percent is None or model.k_excess_db is None:
+        low_k = model.low_k_excess_db
+        if low_k is None or low_k <= margin_db:
+            return Notes()
+        line = (
+            f"diffraction at the low k takes {low_k:.1f} dB more than the budget counts, over the fade margin of "
+            f"{margin_db:.1f} dB: the hop is cut off then, for a time not counted; give k_percentiles"
+        )
+        return Notes(warnings=(line,))
+    lowest, highest = float(model.k_percent[0]), float(model.k_percent[-1])
+    if model.k_excess_db[-1] > margin_db:
+        line = f"obstruction: cut off at the highest k given, {highest:g} %; counted as cut off at every k above it too"
+        return Notes(warnings=(line,))
+    if model.k_excess_db[0] > margin_db:
+        return Notes()
+    line = (
+        f"obstruction: not cut off at the lowest k given, not exceeded {lowest:g} % of the time; below it counted as "
+        f"0, and it could be up to {lowest:g} %"
+    )
+    return Notes(assumptions=(line,))
+
+
+def _other_notes(fade_margin_db: float, missing: tuple[Mechanism, ...], objective: ObjectiveResult | None) -> Notes:
+    """Note no margin, what is not counted, and targets that no margin meets."""
+    warnings = []
+    if fade_margin_db < 0.0:
+        warnings.append(f"fade margin = {fade_margin_db:.1f} dB: the hop is below its threshold without any fading")
+    for target in () if objective is None else objective.targets:
+        if target.required_margin_db is None:
+            warnings.append(
+                f"{target.name} = {target.required:g}: no fade margin up to {LARGEST_MARGIN_DB:g} dB meets it"
+            )
+    warnings += [] if objective is None else list(objective.undecided)
+    assumptions = (f"not counted, as nothing was given for it: {', '.join(missing)}",) if missing else ()
+    return Notes(assumptions=assumptions, warnings=tuple(warnings))
+
+
+def predict(model: OutageModel, fade_margin_db: float) -> Availability:
+    """Outage of a hop in the worst month and in the year, and whether that meets its objective.
+
+    Parameters
+    ----------
+    model
+        From `outage_model`.
+    fade_margin_db
+        Flat fade margin of the direction, dB. Below 0 dB the hop is down without fading: totals are 100 %, no error.
+
+    Returns
+    -------
+    Availability
+        By mechanism and together, the objective judged, and every number used.
+
+    Raises
+    ------
+    InputError
+        If the margin is not finite.
+
+    Examples
+    --------
+    >>> from profiler.availability import PathFacts, outage_model
+    >>> from profiler.models import AvailabilityChoice, Objective
+    >>> path = PathFacts(25e3, 18e9, 300.0, 400.0, latitude=45.0)
+    >>> objective = Objective(minutes_per_year=53.0)
+    >>> choice = AvailabilityChoice("p530-17-quick", objective, dn1_n_km=-300.0, rain_rate_mm_h=35.0)
+    >>> hop = predict(outage_model(path, choice), 38.0)
+    >>> round(hop.year_percent.rain, 4), round(hop.year_minutes, 1), hop.objective.met, hop.limited_by, hop.missing
+    (0.0072, 38.5, True, 'rain', ('selective', 'obstruction'))
+
+    Notes
+    -----
+    Source: Rec. ITU-R P.530-17 and -18, P.838-3, P.841-6; each number's own source is in ``inputs``.
+    """
+    if not math.isfinite(fade_margin_db):
+        raise InputError(f"fade_margin_db = {fade_margin_db}: must be finite dB")
+    down = fade_margin_db < 0.0
+    month, year = outages_at(model, np.maximum(fade_margin_db, 0.0))
+    missing = tuple(mechanism for mechanism in MECHANISMS if year.part(mechanism) is None)
+    objective = judge(model, fade_margin_db)
+    limited_by: Limit = "no margin" if down else limit_of(year)
+    notes = (
+        model.notes
+        + _rain_notes(year)
+        + _obstruction_notes(model, fade_margin_db)
+        + _other_notes(fade_margin_db, missing, objective)
+    )
+    return Availability(
+        fade_margin_db=float(fade_margin_db),
+        method=model.choice.multipath_method,
+        worst_month_percent=_point(month, down),
+        year_percent=_point(year, down),
+        missing=missing,
+        low_k_blocks=None if model.low_k_excess_db is None else model.low_k_excess_db > fade_margin_db,
+        objective=objective,
+        limited_by=limited_by if objective is None else objective.limited_by,
+        inputs=notes.inputs,
+        assumptions=notes.assumptions,
+        warnings=notes.warnings,
+    )
