@@ -3,6 +3,7 @@
 from profiler.study.document import plain, point_table, to_document
 from profiler.study.link import Air
 from profiler.study.outage import ModeOutage
+from profiler.study.plan import HeightsPlan, heights_document, plan_heights
 from profiler.study.result import (
     Corridor,
     Place,
@@ -19,6 +20,7 @@ from profiler.study.run import open_hop_terrain, run_study
 __all__ = [
     "Air",
     "Corridor",
+    "HeightsPlan",
     "ModeOutage",
     "Place",
     "Provenance",
@@ -27,9 +29,11 @@ __all__ = [
     "Study",
     "TerrainUse",
     "Verdict",
+    "heights_document",
     "least_surplus",
     "open_hop_terrain",
     "plain",
+    "plan_heights",
     "point_table",
     "run_study",
     "to_document",

@@ -13,9 +13,10 @@ from profiler.geometry import CorridorCheck
 from profiler.models import Site
 from profiler.study.result import RuleResult, Study
 
-__all__ = ["SCHEMA", "plain", "point_table", "to_document"]
+__all__ = ["SCHEMA", "SCHEMA_HEIGHTS", "plain", "point_table", "to_document"]
 
 SCHEMA = "hopwright-study/1"
+SCHEMA_HEIGHTS = "hopwright-heights/1"
 
 
 def plain(value: Any) -> Any:
