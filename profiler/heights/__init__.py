@@ -18,7 +18,7 @@ from profiler.heights.region import (
     least_ray,
     surplus,
 )
-from profiler.heights.search import LimitHeights, heights_within
+from profiler.heights.search import LimitHeights, heights_for_loss, heights_within
 from profiler.heights.sheet import EndHeights, MountingSheet, mounting_sheet
 
 __all__ = [
@@ -42,6 +42,7 @@ __all__ = [
     "free_positions",
     "frontier_stretches",
     "height_cost",
+    "heights_for_loss",
     "heights_within",
     "least_a_for",
     "least_b_for",

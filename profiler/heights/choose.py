@@ -19,6 +19,8 @@ __all__ = ["Choice", "Lowering", "NoPair", "cheapest", "cheapest_exact", "cheape
 _TALLEST_M = 2000.0
 """Above this no antenna is mounted (the models refuse it), so it is no remedy."""
 
+_NAMED_PLACES = 5
+
 
 @dataclass(frozen=True, slots=True)
 class Choice:
@@ -45,8 +47,9 @@ class NoPair:
 
     ``best_a_m`` and ``best_b_m`` are the highest pair there is: raising an antenna never lowers the ray, so when that
     pair is short, every pair is. NaN where a tower has no free position at all. Each of the following would do alone:
-    lower all of ``lower``; let A stand at ``raise_a_to_m`` (None: no height of A alone would do), or B at
-    ``raise_b_to_m``; raise both by ``raise_both_by_m``; with ``taken_to_blame`` free the taken positions.
+    lower all of ``lower`` (each is the top of a place, which may stand in the way beside its top too); let A stand at
+    ``raise_a_to_m`` (None: no height of A alone would do), or B at ``raise_b_to_m``; raise both by ``raise_both_by_m``;
+    with ``taken_to_blame`` free the taken positions.
     ``proven`` is False where the search was by trial, not by the region: then no pair was found.
     """
 
@@ -65,8 +68,10 @@ class NoPair:
         """What would have to change, one way a line."""
         ways = []
         if self.lower:
-            places = ", ".join(f"by {place.by_m:.2f} m at {place.distance_m / 1e3:.3f} km" for place in self.lower)
-            ways.append(f"lower what stands {places} from A")
+            named = self.lower[:_NAMED_PLACES]
+            places = ", ".join(f"at {place.distance_m / 1e3:.3f} km by {place.by_m:.2f} m" for place in named)
+            more = len(self.lower) - len(named)
+            ways.append(f"lower what stands {places}" + (f", and {more} more" if more else ""))
         if self.raise_a_to_m is not None:
             ways.append(f"let antenna A stand at {self.raise_a_to_m:.2f} m or higher")
         if self.raise_b_to_m is not None:
@@ -248,7 +253,7 @@ def _ray(region: ClearingRegion, antenna_a: float, antenna_b: float) -> Float:
 def _no_pair(region: ClearingRegion, best_a: float, best_b: float, *, taken_to_blame: bool = False) -> NoPair:
     """State why the highest pair falls short, and what would have to change."""
     left = _ray(region, best_a, best_b) - region.least_ray_m
-    short = [i for i in tight_places(left, rise_m=2.0, places=10) if left[i] < -ROUNDING_M]
+    short = [i for i in tight_places(left, rise_m=2.0, places=left.size) if left[i] < -ROUNDING_M]
     lower = [Lowering(i, float(region.distance_m[i]), int(region.rule[i]), float(-left[i])) for i in short]
     worst = lower[0]
     to_a, to_b = float(least_a_for(region, best_b)), float(least_b_for(region, best_a))

@@ -8,12 +8,13 @@ from dataclasses import dataclass
 
 import numpy as np
 
+from profiler.errors import InputError
 from profiler.heights.choose import Choice, NoPair, cheapest_of
 from profiler.heights.positions import free_positions
 from profiler.models import TowerChoice, frozen_array
 from profiler.units import Float
 
-__all__ = ["LimitHeights", "heights_within"]
+__all__ = ["LimitHeights", "heights_for_loss", "heights_within"]
 
 _RESOLUTION_M = 0.01
 
@@ -55,7 +56,7 @@ def heights_within(
     ----------
     excess
         Forward model: how far the quantity is over its limit, for antenna heights A and B above ground in metres; 0 or
-        less is good, NaN is bad.
+        less is good, infinity and NaN are bad.
     tower_a, tower_b
         Limits, steps, taken positions and costs.
     what, unit
@@ -95,12 +96,67 @@ def heights_within(
         choice = NoPair(f"no pair: every position of tower {full} is taken, or too close to one", math.nan, math.nan)
     else:
         best_a, best_b = float(free_a[-1]), float(free_b[-1])
-        reason = (
-            f"no pair found: at the highest there is, A {best_a:.2f} m and B {best_b:.2f} m, the {what} is "
-            f"{excess(best_a, best_b):.2f} {unit} over its limit"
+        over = excess(best_a, best_b)
+        verdict = (
+            f"the {what} is {over:.2f} {unit} over its limit"
+            if math.isfinite(over)
+            else f"the {what} has no value: an antenna stands inside its own cover"
         )
+        reason = f"no pair found: at the highest there is, A {best_a:.2f} m and B {best_b:.2f} m, {verdict}"
         choice = NoPair(reason, best_a, best_b, proven=False)
     return LimitHeights(equal, holds, frozen_array(pairs), choice)
+
+
+def heights_for_loss(
+    loss_db: Callable[[float, float], float],
+    limit_db: float,
+    *,
+    grounds_m: tuple[float, float],
+    surfaces_m: tuple[float, float],
+    tower_a: TowerChoice,
+    tower_b: TowerChoice,
+) -> LimitHeights:
+    """Find the least heights for which the diffraction loss stays within a limit; see `heights_within`.
+
+    Parameters
+    ----------
+    loss_db
+        Loss over free space in dB for antenna centres A and B above the datum, at the k that is asked for: for
+        instance `profiler.diffraction.delta_bullington` with the profile and the effective radius filled in.
+    limit_db
+        Greatest loss, 0 dB or more.
+    grounds_m, surfaces_m
+        Ground, and ground plus cover, at A and B above the datum. An antenna below the surface of its own site is bad
+        whatever the loss, and ``loss_db`` is not asked about it.
+    tower_a, tower_b
+        Limits, steps, taken positions and costs.
+
+    Raises
+    ------
+    InputError
+        For a limit below 0, or a tower's limits that hold no whole step.
+
+    Examples
+    --------
+    A knife edge 30 m above two equal sites, halfway on a 10 km hop at 6 GHz (ν = 0.1265·h); a ray that grazes it loses
+    6.03 dB. Trees of 8 m stand at B:
+
+    >>> from profiler.diffraction import knife_edge_loss
+    >>> edge = lambda a, b: float(knife_edge_loss(0.1265 * (30 - (a + b) / 2)))
+    >>> found = heights_for_loss(edge, 6.04, grounds_m=(0, 0), surfaces_m=(0, 8), tower_a=TowerChoice(),
+    ...     tower_b=TowerChoice())
+    >>> round(found.least_equal_m, 1), found.frontier_m[:2].tolist(), found.frontier_m[-1].tolist()
+    (30.0, [[1.0, 59.0], [2.0, 58.0]], [52.0, 8.0])
+    """
+    if not 0 <= limit_db < math.inf:
+        raise InputError(f"limit_db = {limit_db}: must be 0 dB or more")
+
+    def excess(antenna_a_m: float, antenna_b_m: float) -> float:
+        centres = grounds_m[0] + antenna_a_m, grounds_m[1] + antenna_b_m
+        inside = any(centre < surface for centre, surface in zip(centres, surfaces_m, strict=True))
+        return math.inf if inside else loss_db(*centres) - limit_db
+
+    return heights_within(excess, tower_a, tower_b)
 
 
 def _staircase(excess: Callable[[float, float], float], free_a: Float, free_b: Float) -> Float:
