@@ -191,8 +191,28 @@ def test_diversity_with_no_way_out_says_so():
     assert "space them" not in trees[1].notes[0]
     with pytest.raises(InputError, match='obstruction = \'hill\': must be "isolated" or "extended"'):
         diversity(obstruction="hill")
-    with pytest.raises(InputError, match="spacing_m = 60: must be more than 0 m and less than"):
-        diversity(spacing_m=60)
+    with pytest.raises(InputError, match="spacing_m = 0: must be more than 0 m"):
+        diversity(spacing_m=0)
+
+
+def test_a_lower_antenna_in_the_ground_is_a_finding_not_an_error():
+    """Main antennas too short for the spacing, over a valley that asks for nothing: the ground itself is the limit."""
+    ends = check_diversity(
+        [0, 5e3, 10e3],
+        [0, -200, 0],
+        0,
+        0,
+        6e9,
+        antenna_a_m=8,
+        antenna_b_m=12,
+        spacing_m=10,
+        obstruction="isolated",
+        median_k=4 / 3,
+    )
+    assert [end.clears for end in ends] == [False, True]
+    assert ends[0].notes[0] == (
+        "A: the lower antenna at -2.00 m needs 0.00 m: raise the main antenna to 10.00 m, or space them by 8.00 m"
+    )
 
 
 def sheet(**changes):
