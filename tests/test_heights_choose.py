@@ -9,8 +9,8 @@ from hypothesis import given
 from hypothesis import strategies as st
 
 from profiler.errors import InputError
+from profiler.geometry import ROUNDING_M
 from profiler.heights import (
-    ROUNDING_M,
     Choice,
     NoPair,
     all_positions,

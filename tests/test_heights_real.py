@@ -11,9 +11,8 @@ import pytest
 from scipy.interpolate import RegularGridInterpolator
 from scipy.optimize import Bounds, LinearConstraint, linprog, milp
 
-from profiler.geometry import check_rule
+from profiler.geometry import ROUNDING_M, check_rule
 from profiler.heights import (
-    ROUNDING_M,
     Choice,
     NoPair,
     cheapest,

@@ -9,9 +9,8 @@ from hypothesis import given
 from hypothesis import strategies as st
 
 from profiler.errors import InputError, MissingGroundError
-from profiler.geometry import check_rule
+from profiler.geometry import ROUNDING_M, check_rule
 from profiler.heights import (
-    ROUNDING_M,
     clearing_region,
     frontier_stretches,
     least_a_for,

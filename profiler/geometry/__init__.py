@@ -4,12 +4,13 @@ Distances in metres from site A, heights in metres above the vertical datum. Cle
 above the ground and its cover.
 """
 
-from profiler.geometry.clearance import RuleCheck, check_rule, tight_places
+from profiler.geometry.clearance import ROUNDING_M, RuleCheck, check_rule, tight_places
 from profiler.geometry.corridor import CorridorCheck, check_corridor, corridor_least_ray, corridor_offsets
 from profiler.geometry.ray import earth_bulge, elevation_angle, fresnel_radius, ray_height
 from profiler.geometry.reflection import Reflection, find_reflections, smooth_specular_distance
 
 __all__ = [
+    "ROUNDING_M",
     "CorridorCheck",
     "Reflection",
     "RuleCheck",

@@ -12,7 +12,11 @@ from profiler.geometry.ray import earth_bulge, fresnel_radius, ray_height
 from profiler.models import frozen_array
 from profiler.units import Float
 
-__all__ = ["RuleCheck", "check_rule", "tight_places"]
+__all__ = ["ROUNDING_M", "RuleCheck", "check_rule", "tight_places"]
+
+ROUNDING_M = 1e-6
+"""Rounding of float64 sums of heights is far below a micrometre, and no height is meant so finely: what a requirement
+misses by less is met."""
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -38,8 +42,8 @@ class RuleCheck:
 
     @property
     def passes(self) -> bool:
-        """Whether every point along the path has a surplus of 0 or more."""
-        return bool(self.surplus_m[self.critical] >= 0.0)
+        """Whether every point along the path has a surplus of 0 or more, up to rounding."""
+        return bool(self.surplus_m[self.critical] >= -ROUNDING_M)
 
     @property
     def line_of_sight(self) -> bool:

@@ -8,6 +8,7 @@ import numpy as np
 from numpy.typing import ArrayLike
 
 from profiler.errors import InputError
+from profiler.geometry.clearance import ROUNDING_M
 from profiler.geometry.ray import earth_bulge, fresnel_radius, ray_height
 from profiler.models import frozen_array
 from profiler.units import Float
@@ -38,7 +39,7 @@ class CorridorCheck:
     @property
     def passes(self) -> bool:
         """Whether no ground beside the path rises into the required zone."""
-        return self.surplus_m >= 0.0
+        return self.surplus_m >= -ROUNDING_M
 
     @property
     def side(self) -> str:

@@ -8,7 +8,6 @@ from profiler.heights.diversity import DiversityEnd, check_diversity
 from profiler.heights.frontier import Stretch, frontier_stretches
 from profiler.heights.positions import all_positions, free_positions, height_cost, round_up
 from profiler.heights.region import (
-    ROUNDING_M,
     ClearingRegion,
     Least,
     clearing_region,
@@ -22,7 +21,6 @@ from profiler.heights.search import LimitHeights, heights_for_loss, heights_with
 from profiler.heights.sheet import EndHeights, MountingSheet, mounting_sheet
 
 __all__ = [
-    "ROUNDING_M",
     "Choice",
     "ClearingRegion",
     "DiversityEnd",

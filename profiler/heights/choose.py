@@ -8,9 +8,9 @@ from dataclasses import dataclass
 import numpy as np
 
 from profiler.errors import InputError
-from profiler.geometry import tight_places
+from profiler.geometry import ROUNDING_M, tight_places
 from profiler.heights.positions import all_positions, free_positions, height_cost
-from profiler.heights.region import ROUNDING_M, ClearingRegion, Least, least_a_for, least_b_for, surplus
+from profiler.heights.region import ClearingRegion, Least, least_a_for, least_b_for, surplus
 from profiler.models import TowerChoice
 from profiler.units import Float
 

@@ -9,7 +9,8 @@ from typing import Literal
 from numpy.typing import ArrayLike
 
 from profiler.errors import InputError
-from profiler.heights.region import ROUNDING_M, clearing_region, least_a_for, least_b_for, least_ray
+from profiler.geometry import ROUNDING_M
+from profiler.heights.region import clearing_region, least_a_for, least_b_for, least_ray
 from profiler.models import Obstruction, Rule
 from profiler.units import wavelength
 

@@ -6,7 +6,7 @@ import numpy as np
 from numpy.typing import ArrayLike
 
 from profiler.errors import InputError
-from profiler.heights.region import ROUNDING_M
+from profiler.geometry import ROUNDING_M
 from profiler.models import TowerChoice
 from profiler.units import Float
 

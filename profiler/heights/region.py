@@ -14,12 +14,11 @@ import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
 from profiler.errors import InputError, MissingGroundError
-from profiler.geometry import earth_bulge, fresnel_radius
+from profiler.geometry import ROUNDING_M, earth_bulge, fresnel_radius
 from profiler.models import Rule, frozen_array
 from profiler.units import Float
 
 __all__ = [
-    "ROUNDING_M",
     "ClearingRegion",
     "Least",
     "clearing_region",
@@ -31,9 +30,6 @@ __all__ = [
 ]
 
 Index = NDArray[np.intp]
-
-ROUNDING_M = 1e-6
-"""Rounding of float64 sums of heights is far below a micrometre, and no height is meant so finely."""
 
 _FILTER_PASSES = 8
 

@@ -10,10 +10,9 @@ from typing import Literal
 from numpy.typing import ArrayLike
 
 from profiler.errors import InputError
-from profiler.geometry import RuleCheck, check_rule
+from profiler.geometry import ROUNDING_M, RuleCheck, check_rule
 from profiler.heights.choose import NoPair
 from profiler.heights.positions import free_positions, round_up
-from profiler.heights.region import ROUNDING_M
 from profiler.models import Rule, TowerChoice
 from profiler.units import FOOT_M
 

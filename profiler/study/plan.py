@@ -198,9 +198,7 @@ def _for_objective(study: Study) -> LimitHeights | None:
     if study.availability is None or study.availability.objective is None:
         return None
     excess = partial(_margin_missing_db, study)
-    return heights_within(
-        excess, hop.heights.tower_a, hop.heights.tower_b, what="fade margin that the objective needs", unit="dB"
-    )
+    return heights_within(excess, hop.heights.tower_a, hop.heights.tower_b, what="shortage of fade margin", unit="dB")
 
 
 def _margin_missing_db(study: Study, antenna_a_m: float, antenna_b_m: float) -> float:

@@ -84,7 +84,7 @@ class Place:
 
 @dataclass(frozen=True, slots=True)
 class Verdict:
-    """Whether the hop passes, and the sentence that says why.
+    """Whether the hop passes, and the sentence that says why, in metres and in feet.
 
     ``passes`` needs every rule met and, where an objective is given, the objective met too.
     """
@@ -93,6 +93,7 @@ class Verdict:
     clears: bool
     meets_objective: bool | None
     headline: str
+    headline_feet: str
 
 
 @dataclass(frozen=True, slots=True)

@@ -19,6 +19,7 @@ from profiler.study.outage import OutageResult
 from profiler.study.provenance import provenance
 from profiler.study.result import RuleResult, Study, Verdict, least_surplus
 from profiler.terrain import Terrain, open_terrain
+from profiler.units import FOOT_M, STATUTE_MILE_M
 
 __all__ = ["open_hop_terrain", "run_study"]
 
@@ -164,23 +165,34 @@ def _confidence(hop: Hop, ground: Ground, climate: ClimateUse) -> Confidence | N
 
 
 def _verdict(hop: Hop, ground: Ground, rules: Sequence[RuleResult], outage: OutageResult) -> Verdict:
-    """Say whether the hop passes and why, worst rule first."""
+    """Say whether the hop passes and why, worst rule first, in both unit systems."""
     clears = all(result.passes for result in rules)
-    worst = min(rules, key=least_surplus)
-    surplus_m = least_surplus(worst)
-    beside = worst.corridor is not None and worst.corridor.surplus_m < worst.check.surplus_m[worst.check.critical]
-    at = worst.corridor.distance_index if beside and worst.corridor is not None else worst.check.critical
-    where = f"{ground.profile.distance_m[at] / 1e3:.2f} km from {hop.site_a.name}"
-    if beside and worst.corridor is not None:
-        where += f", {abs(worst.corridor.offset_m):.0f} m {worst.corridor.side} of the path"
-    rule = f"{worst.check.fresnel_fraction:g} F1 + {worst.check.margin_m:g} m at k = {worst.check.k:.3g}"
-    clearance = f"{'clears every rule, tightest' if clears else 'does not clear: short'}"
-    headline = f"{clearance} by {abs(surplus_m):.1f} m, {where} ({rule})"
-    if outage.meets is not None:
-        headline += f"; {'meets' if outage.meets else 'misses'} the availability objective"
     return Verdict(
-        passes=clears and outage.meets is not False, clears=clears, meets_objective=outage.meets, headline=headline
+        passes=clears and outage.meets is not False,
+        clears=clears,
+        meets_objective=outage.meets,
+        headline=_headline(hop, ground, rules, outage, feet=False),
+        headline_feet=_headline(hop, ground, rules, outage, feet=True),
     )
+
+
+def _headline(hop: Hop, ground: Ground, rules: Sequence[RuleResult], outage: OutageResult, *, feet: bool) -> str:
+    """Say in one sentence by how much, where and under which rule the hop clears or fails."""
+    metre, kilometre = (FOOT_M, STATUTE_MILE_M) if feet else (1.0, 1000.0)
+    short, far = ("ft", "mi") if feet else ("m", "km")
+    worst = min(rules, key=least_surplus)
+    check, corridor = worst.check, worst.corridor
+    at, aside = check.critical, ""
+    if corridor is not None and corridor.surplus_m < check.surplus_m[check.critical]:
+        at = corridor.distance_index
+        aside = f", {abs(corridor.offset_m) / metre:.0f} {short} {corridor.side} of the path"
+    surplus = least_surplus(worst) / metre
+    clearance = f"clears, {surplus:.1f}" if surplus >= 0 else f"does not clear, {-surplus:.1f}"
+    rule = f"{check.fresnel_fraction:g} F1" + (f" + {check.margin_m / metre:.1f} {short}" if check.margin_m else "")
+    place = f"{ground.profile.distance_m[at] / kilometre:.2f} {far} from {hop.site_a.name}{aside}"
+    objective = "" if outage.meets is None else f"; {'meets' if outage.meets else 'misses'} the availability objective"
+    sense = "to spare" if surplus >= 0 else "short"
+    return f"{clearance} {short} {sense} {place} (rule {rule} at k = {check.k:.2f}){objective}"
 
 
 def _assumptions(hop: Hop, ground: Ground, air: Air, budget: Budget | None, outage: OutageResult) -> tuple[str, ...]:

@@ -1,0 +1,110 @@
+"""Options that several commands share: the hop, given as a file or in options, and how to speak."""
+
+from __future__ import annotations
+
+from collections.abc import Callable, Iterator
+from contextlib import contextmanager
+from pathlib import Path
+from typing import TYPE_CHECKING, Any
+
+import click
+
+from profiler.errors import HopwrightError, InputError
+
+if TYPE_CHECKING:
+    from profiler.models import Hop
+
+__all__ = ["hop_options", "named", "read_hop", "speech_options"]
+
+Command = Callable[..., Any]
+
+_COMMAND_LINE = "command line"
+_SPELLING = {"position_a": "--a", "position_b": "--b"}
+
+
+def hop_options(command: Command) -> Command:
+    """Add the hop file and, for a hop without a file, the options that say the same."""
+    options = [
+        click.argument("hop_file", required=False, type=click.Path(path_type=Path), metavar="[HOP.toml]"),
+        click.option(
+            "--a", "position_a", metavar="POSITION", help='Site A without a file: "40.1, -105.2" or DMS text.'
+        ),
+        click.option("--b", "position_b", metavar="POSITION", help="Site B, likewise."),
+        click.option("--antenna-a", metavar="HEIGHT", help='Antenna A above ground: metres, or "98 ft".'),
+        click.option("--antenna-b", metavar="HEIGHT", help="Antenna B, likewise."),
+        click.option("--frequency-ghz", type=float, metavar="GHZ", help="Frequency."),
+        click.option(
+            "--terrain",
+            multiple=True,
+            type=click.Path(path_type=Path),
+            metavar="PATH",
+            help="Raster or folder of rasters; may be repeated.",
+        ),
+        click.option("--preset", metavar="NAME", help="Named clearance rules; an unknown name lists them."),
+        click.option("--low-k", type=float, metavar="K", help="Low k for presets that ask for one."),
+        click.option(
+            "--rule",
+            "rules",
+            multiple=True,
+            type=(float, float, float),
+            metavar="K FRACTION MARGIN_M",
+            help="A rule of your own: k, fraction of F1, margin in metres; may be repeated.",
+        ),
+    ]
+    for option in reversed(options):
+        command = option(command)
+    return command
+
+
+def speech_options(command: Command) -> Command:
+    """Add the options that say how much and how to print."""
+    command = click.option("--no-color", is_flag=True, help="Print without colour.")(command)
+    return click.option("-q", "--quiet", is_flag=True, help="Print the verdict only.")(command)
+
+
+def read_hop(hop_file: Path | None, **options: Any) -> Hop:
+    """Read the hop from its file, or build it from the options of `hop_options`.
+
+    Raises
+    ------
+    InputError
+        For a file and options together, or options that leave something out.
+    """
+    from profiler.hopfile import load_hop, quick_hop
+
+    given = [name for name, value in options.items() if value not in (None, ())]
+    if hop_file is not None:
+        if given:
+            raise InputError(
+                f"{hop_file}: option for {given[0]}: must not stand beside a hop file; change the file instead"
+            )
+        return load_hop(hop_file)
+    needed = ("position_a", "position_b", "antenna_a", "antenna_b", "frequency_ghz", "terrain")
+    missing = [_SPELLING.get(name, "--" + name.replace("_", "-")) for name in needed if name not in given]
+    if missing:
+        raise InputError(
+            f"{_COMMAND_LINE}: {', '.join(missing)}: must be given for a hop without a file; or name a hop file"
+            " (hopwright starter writes one)"
+        )
+    heights = {end: _number_or_text(options.pop(end)) for end in ("antenna_a", "antenna_b")}
+    return quick_hop(options.pop("position_a"), options.pop("position_b"), **heights, **options)
+
+
+def _number_or_text(text: str) -> float | str:
+    """Read a bare number as metres, and leave text with a unit to the hop file's reader."""
+    try:
+        return float(text)
+    except ValueError:
+        return text
+
+
+@contextmanager
+def named(source: str) -> Iterator[None]:
+    """Put the hop file's name before an error that a stage raised without knowing it."""
+    try:
+        yield
+    except HopwrightError as error:
+        text = str(error)
+        if text.startswith(source):
+            raise
+        raise InputError(f"{source}: {text}") from error

@@ -1,0 +1,295 @@
+"""A study on the terminal: the verdict first, then compact tables, then what was assumed."""
+
+from __future__ import annotations
+
+from typing import TYPE_CHECKING
+
+from profiler.cli.output import console
+from profiler.units import FOOT_M, STATUTE_MILE_M
+
+if TYPE_CHECKING:
+    from rich.console import Console
+    from rich.table import Table
+
+    from profiler.study import RuleResult, Study
+
+__all__ = ["Scale", "compact_table", "show_notes", "show_study"]
+
+
+class Scale:
+    """Heights and distances as the reader wants them: metres and kilometres, or feet and miles."""
+
+    def __init__(self, *, feet: bool) -> None:
+        self.height_unit, self.distance_unit = ("ft", "mi") if feet else ("m", "km")
+        self._height_m, self._distance_m = (FOOT_M, STATUTE_MILE_M) if feet else (1.0, 1000.0)
+
+    def height(self, height_m: float, digits: int = 1) -> str:
+        """Give a height without its unit."""
+        return f"{height_m / self._height_m:.{digits}f}"
+
+    def distance(self, distance_m: float, digits: int = 2) -> str:
+        """Give a distance without its unit."""
+        return f"{distance_m / self._distance_m:.{digits}f}"
+
+
+def compact_table(*headers: str) -> Table:
+    """Make a table with no frame but a line under its header; all but the first column to the right."""
+    from rich import box
+    from rich.table import Table
+
+    table = Table(box=box.SIMPLE_HEAD, pad_edge=False, show_edge=False)
+    for number, header in enumerate(headers):
+        table.add_column(header, justify="right" if number else "left")
+    return table
+
+
+def show_notes(screen: Console, title: str, notes: tuple[str, ...], style: str = "") -> None:
+    """Print a titled list, or nothing if it is empty."""
+    if notes:
+        screen.print(f"\n{title}", style="bold " + style, markup=False)
+        for note in notes:
+            screen.print(f"  - {note}", style=style, markup=False)
+
+
+def show_study(study: Study, *, feet: bool, quiet: bool, color: bool) -> None:
+    """Print a study."""
+    screen, scale = console(color=color), Scale(feet=feet)
+    verdict = study.verdict
+    word, style = ("PASSES", "bold green") if verdict.passes else ("DOES NOT PASS", "bold red")
+    screen.print(f"{study.hop.name}: {word}", style=style, markup=False)
+    screen.print(verdict.headline_feet if feet else verdict.headline, markup=False)
+    if quiet:
+        return
+    screen.print(_sites(study, scale), markup=False)
+    screen.print()
+    screen.print(_rules(study, scale))
+    _show_places(screen, study, scale)
+    _show_reflections(screen, study, scale)
+    if study.budget is not None:
+        screen.print()
+        screen.print(_budget(study))
+    if study.availability is not None:
+        _show_availability(screen, study)
+    if study.confidence is not None:
+        _show_confidence(screen, study, scale)
+    show_notes(screen, "Warnings", study.warnings, "yellow")
+    show_notes(screen, "Assumed", study.assumptions)
+    screen.print(
+        "\nA screening result, not a certificate: heights, clearances and exposure are for licensed practice and local"
+        " codes to confirm.",
+        style="dim",
+        markup=False,
+    )
+
+
+def _sites(study: Study, scale: Scale) -> str:
+    hop, line = study.hop, study.line
+    lines = []
+    for letter, site, centre_m, azimuth in (
+        ("A", hop.site_a, study.centre_a_m, line.azimuth_a_deg),
+        ("B", hop.site_b, study.centre_b_m, line.azimuth_b_deg),
+    ):
+        ground_m = centre_m - site.antenna_m
+        lines.append(
+            f"{letter}  {site.name}  {site.latitude:.6f}, {site.longitude:.6f}  ground {scale.height(ground_m)}"
+            f"  antenna {scale.height(site.antenna_m)} above ground = {scale.height(centre_m)} {scale.height_unit}"
+            f"  azimuth {azimuth:.2f}° true"
+        )
+    lines.append(
+        f"{scale.distance(line.distance_m, 3)} {scale.distance_unit}, {hop.frequency_hz / 1e9:g} GHz,"
+        f" {hop.polarization} polarization, {line.points} points {line.spacing_m:.1f} m apart"
+    )
+    return "\n".join(lines)
+
+
+def _rules(study: Study, scale: Scale) -> Table:
+    height = scale.height_unit
+    table = compact_table(
+        "rule", "k", "needs", "verdict", f"surplus {height}", f"at {scale.distance_unit}", f"F1 {height}", "clear/F1",
+        "sight", "loss dB", "elevation A, B °",
+    )  # fmt: skip
+    losses = {loss.k: loss.loss_db for loss in study.diffraction}
+    for result in study.rules:
+        check, at = result.check, result.check.critical
+        table.add_row(
+            check.label or "-",
+            f"{check.k:.3f}",
+            f"{check.fresnel_fraction:g} F1"
+            + (f" + {scale.height(check.margin_m)} {height}" if check.margin_m else ""),
+            "pass" if result.passes else "FAIL",
+            f"{scale.height(check.surplus_m[at])}",
+            scale.distance(study.profile.distance_m[at]),
+            scale.height(check.f1_m[at]),
+            f"{check.ratio[at]:.2f}",
+            "yes" if check.line_of_sight else "no",
+            f"{losses[check.k]:.1f}",
+            f"{result.elevation_a_deg:+.3f}, {result.elevation_b_deg:+.3f}",
+            style="" if result.passes else "red",
+        )
+    return table
+
+
+def _show_places(screen: Console, study: Study, scale: Scale) -> None:
+    """Print the tight places of the governing rule, and what stands beside the path."""
+    governing = study.governing
+    profile, check = study.profile, governing.check
+    table = compact_table(
+        "tight place", f"at {scale.distance_unit}", "latitude, longitude", f"ground {scale.height_unit}", "cover",
+        "clearance", "needs", "surplus",
+    )  # fmt: skip
+    for number, index in enumerate(check.tight, start=1):
+        table.add_row(
+            f"{number}",
+            scale.distance(profile.distance_m[index]),
+            f"{profile.latitude[index]:.5f}, {profile.longitude[index]:.5f}",
+            *(
+                scale.height(values[index])
+                for values in (
+                    profile.ground_m,
+                    profile.cover_m,
+                    check.clearance_m,
+                    check.required_m,
+                    check.surplus_m,
+                )
+            ),
+        )
+    screen.print(f"\nTight places, rule {check.label or '-'} at k = {check.k:.3f}", style="bold", markup=False)
+    screen.print(table)
+    beside = _beside(study, governing, scale)
+    if beside:
+        screen.print(beside, markup=False)
+
+
+def _beside(study: Study, result: RuleResult, scale: Scale) -> str:
+    corridor = result.corridor
+    if corridor is None:
+        return ""
+    width = f"{scale.height(corridor.half_width_m)} {scale.height_unit} to each side"
+    seen = f" ({corridor.missing_share:.0%} of it without ground)" if corridor.missing_share else ""
+    if corridor.surplus_m >= float(result.check.surplus_m[result.check.critical]):
+        return f"Beside the path, {width}{seen}: nothing rises higher into the zone than the path itself."
+    where = scale.distance(study.profile.distance_m[corridor.distance_index])
+    return (
+        f"Beside the path, {width}{seen}: tightest {scale.height(abs(corridor.offset_m))} {scale.height_unit} to the"
+        f" {corridor.side} at {where} {scale.distance_unit}, surplus {scale.height(corridor.surplus_m)}"
+        f" {scale.height_unit}."
+    )
+
+
+def _show_reflections(screen: Console, study: Study, scale: Scale) -> None:
+    """Print the specular points at the k of each rule, screened ones only in number."""
+    lines = []
+    for k, result in {result.check.k: result for result in study.rules}.items():
+        open_places = [place for place in result.reflections if not place.screened]
+        hidden = len(result.reflections) - len(open_places)
+        for place in open_places[:3]:
+            kind = "rough" if place.rough else "smooth enough to mirror"
+            lines.append(
+                f"  k = {k:.3f}: {scale.distance(place.distance_m)} {scale.distance_unit}, grazing"
+                f" {place.grazing_deg:.2f}°, {place.delay_s * 1e9:.2f} ns late, {kind}"
+            )
+        more = len(open_places) - 3
+        lines.append(f"  k = {k:.3f}: {hidden} screened" + (f", {more} more in view" if more > 0 else ""))
+    screen.print("\nReflection points", style="bold")
+    screen.print("\n".join(lines), markup=False)
+
+
+def _budget(study: Study) -> Table:
+    """Tabulate the budget of the first mode line by line both ways, then a row for every further mode."""
+    assert study.budget is not None
+    there, back = study.budget.a_to_b, study.budget.b_to_a
+    table = compact_table(f"budget, mode {there.modes[0].name}", "A to B", "B to A", "unit", "by")
+    for one, other in zip(there.modes[0].lines, back.modes[0].lines, strict=True):
+        table.add_row(one.name, f"{one.value:.2f}", f"{other.value:.2f}", one.unit, one.note)
+    table.add_section()
+    for name, part in (("received level", "received_dbm"), ("threshold", "threshold_dbm")):
+        table.add_row(name, *(_number(getattr(way, part)) for way in (there, back)), "dBm", "")
+    table.add_row("fade margin", *(_number(way.fade_margin_db) for way in (there, back)), "dB", "", style="bold")
+    for one_mode, other_mode in zip(there.modes[1:], back.modes[1:], strict=True):
+        margins = (_number(mode.fade_margin_db) for mode in (one_mode, other_mode))
+        table.add_row(f"fade margin, {one_mode.name}", *margins, "dB", "")
+    return table
+
+
+def _number(value: float | None) -> str:
+    return "-" if value is None else f"{value:.2f}"
+
+
+def _percent(value: float | None) -> str:
+    return "-" if value is None else f"{value:.3g}"
+
+
+def _show_availability(screen: Console, study: Study) -> None:
+    """Print outage by mechanism, the objective, and the total of every mode."""
+    found = study.availability
+    assert found is not None
+    table = compact_table("outage %", "multipath", "selective", "rain", "obstruction", "total")
+    for period, outages in (("worst month", found.worst_month_percent), ("year", found.year_percent)):
+        parts = (outages.multipath, outages.selective, outages.rain, outages.obstruction, outages.total)
+        table.add_row(period, *(_percent(part) for part in parts))
+    screen.print(f"\nAvailability ({found.method}), fade margin {found.fade_margin_db:.1f} dB", style="bold")
+    screen.print(table)
+    screen.print(
+        f"Out of service {found.year_minutes:.3g} minutes a year, limited by {found.limited_by}.", markup=False
+    )
+    for target in found.objective.targets if found.objective is not None else ():
+        margin = "no margin" if target.required_margin_db is None else f"{target.required_margin_db:.1f} dB"
+        outcome = "met" if target.met else "MISSED"
+        screen.print(
+            f"Objective {target.name} {target.required:g}: {outcome} at {target.achieved:.3g};"
+            f" {margin} of fade margin would do.",
+            style="" if target.met else "red",
+            markup=False,
+        )
+    if len(study.mode_outages) > 1:
+        modes = compact_table("mode", "weaker way", "fade margin dB", "worst month %", "year %", "objective")
+        for mode in study.mode_outages:
+            met = "-" if mode.met is None else "met" if mode.met else "missed"
+            modes.add_row(
+                mode.mode,
+                mode.direction,
+                f"{mode.fade_margin_db:.2f}",
+                _percent(mode.worst_month_percent),
+                _percent(mode.year_percent),
+                met,
+            )
+        screen.print(modes)
+
+
+def _show_confidence(screen: Console, study: Study, scale: Scale) -> None:
+    """Print how sure the clearance is, the sure heights and what to survey."""
+    found = study.confidence
+    assert found is not None
+    screen.print(
+        f"\nConfidence: all rules met with {found.chance.value:.1%} chance"
+        f" ({found.chance.low:.1%} to {found.chance.high:.1%} by {found.draws} draws, seed {found.seed})",
+        style="bold",
+        markup=False,
+    )
+    table = compact_table("rule", "chance", "least surplus 5 %", "50 %", "95 %", "doubt: terrain", "cover", "k")
+    for rule, doubt in zip(study.rules, found.rules, strict=True):
+        table.add_row(
+            rule.check.label or f"k = {doubt.k:.3f}",
+            f"{doubt.chance.value:.1%}",
+            *(scale.height(value) for value in (doubt.least_low_m, doubt.least_median_m, doubt.least_high_m)),
+            *(f"{share:.0%}" for share in (doubt.shares.terrain, doubt.shares.cover, doubt.shares.k)),
+        )
+    screen.print(table)
+    for sure in found.sure:
+        alone = [
+            f"{end} alone {scale.height(height)}"
+            for end, height in (("A", sure.a_only_m), ("B", sure.b_only_m))
+            if height is not None
+        ]
+        screen.print(
+            f"{sure.chance:.0%} sure: both antennas {scale.height(sure.raise_m)} {scale.height_unit} higher"
+            f" (A {scale.height(sure.equal_m[0])}, B {scale.height(sure.equal_m[1])})"
+            + (f", or {', or '.join(alone)}" if alone else ""),
+            markup=False,
+        )
+    places = ", ".join(
+        f"{scale.distance(point.distance_m)} {scale.distance_unit} ({point.share_of_doubt:.0%} of the doubt)"
+        for point in found.survey
+    )
+    if places:
+        screen.print(f"Survey first: {places}", markup=False)
