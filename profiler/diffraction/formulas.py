@@ -24,9 +24,12 @@ __all__ = [
 NU_NO_LOSS = -0.78
 """At and below this ν an edge costs nothing (Rec. ITU-R P.526-15 §4.1): 0.55 of the first Fresnel radius is clear."""
 
+MOST_ROUND = 10.0
+"""Above this m the published fit of the rounding loss turns over and falls, which no obstacle does."""
+
 
 def positive(name: str, value: ArrayLike, allowed: str, *, zero: bool = False, infinite: bool = False) -> Float:
-    """Return `value` as float64 once every entry is finite and above 0, or what else is let in; else raise InputError."""
+    """Return `value` as float64 once every entry is above 0 and finite, or else let in; otherwise raise InputError."""
     array = np.asarray(value, dtype=float)
     wrong = ~((array > 0) | (zero & (array == 0))) | (~np.array(infinite) & np.isinf(array))
     if wrong.any():
@@ -139,8 +142,8 @@ def rounded_obstacle_loss(
     d1_m, d2_m
         Distances from that vertex to the ends, m, above 0.
     radius_m
-        Radius of curvature of the top, m, 0 (a knife edge) or more. The formula turns over near m = 10: a top so
-        round is a piece of the spherical earth.
+        Radius of curvature of the top, m, 0 (a knife edge) or more. The published fit turns over near m = 10; above,
+        its terms in m alone are held at that of m = 10. A top so round is a piece of the spherical earth.
     frequency_hz
         Frequency, Hz, above 0.
 
@@ -173,7 +176,8 @@ def rounded_obstacle_loss(
     height = np.asarray(obstruction_m, dtype=float)
     lam = wavelength(frequency_hz)
     mn = height * (1.0 / d1 + 1.0 / d2) * np.cbrt(np.pi * np.asarray(radius_m, dtype=float) / lam)
-    round_top = 7.2 * np.sqrt(m) - 2.0 * m + 3.6 * m**1.5 - 0.8 * m * m
+    kept = np.minimum(m, MOST_ROUND)
+    round_top = 7.2 * np.sqrt(kept) - 2.0 * kept + 3.6 * kept**1.5 - 0.8 * kept * kept
     steep = -6.0 - 20.0 * np.log10(np.maximum(mn, 4.0)) + 17.0 * mn
     excess = round_top + np.where(mn <= 4.0, 12.5 * mn, steep)
     nu = fresnel_parameter(height, d1, d2, frequency_hz)

@@ -36,13 +36,11 @@ class DeltaBullington:
 
 def bullington_points(block: Block) -> tuple[Index, Index, Index]:
     """Inner points of each hop that A's horizon ray touches, that B's touches, and of greatest ν."""
-    rise = block.rise()
-    return _extreme_points(block, rise)
+    return _extreme_points(block, block.rise())
 
 
 def _extreme_points(block: Block, rise: Float) -> tuple[Index, Index, Index]:
-    scratch = np.empty_like(rise)
-    grid = block.grid
+    grid, scratch = block.grid, block.scratch
     return (
         np.multiply(rise, grid.from_a, out=scratch).argmax(axis=1),
         np.multiply(rise, grid.from_b, out=scratch).argmax(axis=1),
@@ -99,44 +97,23 @@ def _construction(hops: Hops, from_a: Index, from_b: Index, nearest: Index) -> E
     return edge_losses(hops, _whole_loss(knife, hops.length_m), slots)
 
 
-def _smooth_fit(fraction: Float) -> tuple[Float, Float]:
-    """Weights that turn the heights of all points into the smooth surface's heights under A and B.
-
-    The surface is the least-squares straight line through the ground, taken as straight between its points.
-    """
-    step = np.diff(fraction, axis=-1)
-    edge = np.zeros_like(fraction[..., :1])
-    before, after = np.concatenate([edge, step], axis=-1), np.concatenate([step, edge], axis=-1)
-    behind, ahead = np.roll(fraction, 1, axis=-1), np.roll(fraction, -1, axis=-1)
-    v1 = before + after
-    v2 = before * (2.0 * fraction + behind) + after * (2.0 * fraction + ahead)
-    return 2.0 * v1 - v2, v2 - v1
-
-
 def _weighted_sum(height_m: Float, weights: Float) -> Float:
     """Sum along each row of heights times weights, which are one row for all or one a row."""
     return np.asarray(height_m @ weights if weights.ndim == 1 else np.einsum("ij,ij->i", height_m, weights))
 
 
-def _delta_kernel(hops: Hops) -> Callable[[Block], tuple[NDArray[Any], ...]]:
-    """Kernel of one pass over a block: the three points of the construction and the smooth surface under the ends."""
-    shared = _smooth_fit(hops.distance_m / hops.distance_m[-1]) if hops.distance_m.ndim == 1 else None
-
-    def kernel(block: Block) -> tuple[NDArray[Any], ...]:
-        under_a, under_b = shared or _smooth_fit(block.fraction)
-        smooth_a, smooth_b = _weighted_sum(block.height_m, under_a), _weighted_sum(block.height_m, under_b)
-        above = block.above_chord()
-        scratch = np.empty_like(above)
-        highest = above.max(axis=1)
-        steep_a = np.multiply(above, block.grid.from_a, out=scratch).max(axis=1)
-        steep_b = np.multiply(above, block.grid.from_b, out=scratch).max(axis=1)
-        total = np.where(highest > 0, steep_a + steep_b, 1.0)
-        lower = np.maximum(highest, 0.0) / total
-        above += np.multiply(block.bulge_m[:, None], block.grid.bow, out=scratch)
-        points = _extreme_points(block, above)
-        return (*points, smooth_a - lower * steep_a, smooth_b - lower * steep_b)
-
-    return kernel
+def _delta_kernel(block: Block) -> tuple[NDArray[Any], ...]:
+    """Find the three points of the construction of each hop, and the smooth surface under its ends."""
+    grid, scratch = block.grid, block.scratch
+    above = block.above_chord()
+    highest = above.max(axis=1)
+    steep_a = np.multiply(above, grid.from_a, out=scratch).max(axis=1)
+    steep_b = np.multiply(above, grid.from_b, out=scratch).max(axis=1)
+    lower = np.maximum(highest, 0.0) / np.where(highest > 0, steep_a + steep_b, 1.0)
+    smooth_a = _weighted_sum(block.height_m, grid.under_a) - lower * steep_a
+    smooth_b = _weighted_sum(block.height_m, grid.under_b) - lower * steep_b
+    above += np.multiply(block.bulge_m[:, None], grid.bow, out=scratch)
+    return (*_extreme_points(block, above), smooth_a, smooth_b)
 
 
 def _greatest(hops: Hops, value_at: Callable[[Float], Float]) -> Float:
@@ -283,7 +260,7 @@ def delta_bullington(
     """
     sea = check_surface(polarization, sea_fraction)
     hops = Hops.of(distance_m, height_m, centre_a_m, centre_b_m, frequency_hz, effective_radius_m)
-    *points, smooth_a, smooth_b = hops.run(_delta_kernel(hops))
+    *points, smooth_a, smooth_b = hops.run(_delta_kernel)
     actual = _construction(hops, *points)
     above_a = hops.centre_a_m - np.minimum(smooth_a, hops.height_m[:, 0])
     above_b = hops.centre_b_m - np.minimum(smooth_b, hops.height_m[:, -1])

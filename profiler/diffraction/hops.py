@@ -21,6 +21,9 @@ __all__ = ["Block", "Hops", "Index", "Points"]
 
 Index = NDArray[np.intp]
 
+_SAME_FRACTION = 1e-12
+"""Hops of unlike lengths whose points stand at the same fractions of them, but for rounding, share one grid."""
+
 _POINTS_PER_BLOCK = 1 << 16
 """Half a megabyte per working array: three of them fit the second-level cache of a present core."""
 
@@ -38,13 +41,30 @@ class Grid:
     """t(1 − t): the shape of the earth's bulge."""
     weight: Float
     """1/sqrt(t(1 − t)): what turns a rise into ν, but for a factor of the hop."""
+    under_a: Float
+    """Weights of the heights of all points, ends included, in the height of the smooth surface under A."""
+    under_b: Float
 
     @classmethod
     def of(cls, fraction: Float) -> Grid:
         """Build the tables from the fractions t of all points, ends included."""
         t = fraction[..., 1:-1]
         bow = t * (1.0 - t)
-        return cls(t, 1.0 / t, 1.0 / (1.0 - t), bow, 1.0 / np.sqrt(bow))
+        return cls(t, 1.0 / t, 1.0 / (1.0 - t), bow, 1.0 / np.sqrt(bow), *_smooth_fit(fraction))
+
+
+def _smooth_fit(fraction: Float) -> tuple[Float, Float]:
+    """Weights that turn the heights of all points into the smooth surface's heights under A and B.
+
+    The surface is the least-squares straight line through the ground, taken as straight between its points.
+    """
+    step = np.diff(fraction, axis=-1)
+    edge = np.zeros_like(fraction[..., :1])
+    before, after = np.concatenate([edge, step], axis=-1), np.concatenate([step, edge], axis=-1)
+    behind, ahead = np.roll(fraction, 1, axis=-1), np.roll(fraction, -1, axis=-1)
+    v1 = before + after
+    v2 = before * (2.0 * fraction + behind) + after * (2.0 * fraction + ahead)
+    return 2.0 * v1 - v2, v2 - v1
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -61,7 +81,6 @@ class Points:
 class Block:
     """A run of hops with float64 heights in one piece of memory; arrays are `(rows, …)`."""
 
-    fraction: Float
     grid: Grid
     height_m: Float
     centre_a_m: Float
@@ -70,21 +89,28 @@ class Block:
     """d²/(2·a): four times the bulge at mid-path."""
     length_m: Float
     wavelength_m: Float
+    main: Float
+    """Holds what `above_chord` and `rise` return, and is overwritten by the next call, of the next block too.
+
+    Fresh arrays of this size go back to the system when they are dropped, and cost as much again as the computing.
+    """
+    scratch: Float
+    """As large, and free for a kernel to use between calls."""
 
     def above_chord(self) -> Float:
         """Heights of the inner points above the line between the antennas, without the bulge, `(rows, n - 2)`."""
-        ends = np.column_stack([self.centre_a_m, self.centre_b_m])
-        t = self.grid.t
+        t, a, b = self.grid.t, self.centre_a_m[:, None], self.centre_b_m[:, None]
         if t.ndim == 1:
-            return np.asarray(self.height_m[:, 1:-1] - ends @ np.stack([1.0 - t, t]))
-        line = np.multiply(ends[:, 1:] - ends[:, :1], t)
-        line += ends[:, :1]
-        return np.subtract(self.height_m[:, 1:-1], line, out=line)
+            np.matmul(np.concatenate([a, b], axis=1), np.stack([1.0 - t, t]), out=self.main)
+        else:
+            np.multiply(b - a, t, out=self.main)
+            np.add(self.main, a, out=self.main)
+        return np.subtract(self.height_m[:, 1:-1], self.main, out=self.main)
 
     def rise(self) -> Float:
         """Rise of the inner points over the ray on the bulged earth, m, `(rows, n - 2)`."""
         above = self.above_chord()
-        above += self.bulge_m[:, None] * self.grid.bow
+        above += np.multiply(self.bulge_m[:, None], self.grid.bow, out=self.scratch)
         return above
 
 
@@ -142,6 +168,8 @@ class Hops:
                 "do not fit: each of the last four must be one value or one per hop"
             )
         hops = shape[0] if shape else 1
+        if hops == 0:
+            raise InputError("height_m has no hops: must be at least one profile")
         _check_distance(distance)
         a, b, frequency, radius = (np.broadcast_to(value, (hops,)) for value in per_hop)
         height = np.broadcast_to(height, (hops, points))
@@ -168,22 +196,24 @@ class Hops:
 
     def blocks(self) -> Iterator[Block]:
         """Yield the hops in blocks that fit the cache, and raise MissingGroundError where a height is not a number."""
-        rows = max(1, _POINTS_PER_BLOCK // self.height_m.shape[1])
+        hops, points = self.height_m.shape
+        rows = min(hops, max(1, _POINTS_PER_BLOCK // points))
         bulge, lam = self.bulge_m, self.wavelength_m
-        shared = self.distance_m.ndim == 1
-        if shared:
-            fraction = self.distance_m / self.distance_m[-1]
-            grid = Grid.of(fraction)
-        for start in range(0, self.height_m.shape[0], rows):
+        first = self.distance_m if self.distance_m.ndim == 1 else self.distance_m[0]
+        common = first / first[-1]
+        common_grid = Grid.of(common)
+        work = np.empty((2, rows, points - 2))
+        for start in range(0, hops, rows):
             part = slice(start, start + rows)
             height = np.ascontiguousarray(self.height_m[part], dtype=float)
             if not np.isfinite(height).all():
                 self._raise_missing(start, height)
-            if not shared:
+            grid = common_grid
+            if self.distance_m.ndim == 2:
                 fraction = np.broadcast_to(self.distance_m, self.height_m.shape)[part] / self.length_m[part, None]
-                grid = Grid.of(fraction)
+                if np.abs(fraction - common).max() > _SAME_FRACTION:
+                    grid = Grid.of(fraction)
             yield Block(
-                fraction,
                 grid,
                 height,
                 self.centre_a_m[part],
@@ -191,6 +221,7 @@ class Hops:
                 bulge[part],
                 self.length_m[part],
                 lam[part],
+                *work[:, : height.shape[0]],
             )
 
     def run(self, kernel: Callable[[Block], tuple[NDArray[Any], ...]]) -> tuple[NDArray[Any], ...]:
@@ -236,7 +267,7 @@ def _check_distance(distance_m: Float) -> None:
         at = np.argwhere(stuck)[0]
         before, after = distance_m[(*at[:-1], at[-1])], distance_m[(*at[:-1], at[-1] + 1)]
         raise InputError(
-            f"distance_m goes from {before:g} to {after:g} m at point {at[-1] + 1}: must increase from A to B, and be finite"
+            f"distance_m goes from {before:g} to {after:g} m at point {at[-1] + 1}: must be finite and rise from A to B"
         )
 
 

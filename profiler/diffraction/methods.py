@@ -10,6 +10,7 @@ import numpy as np
 from numpy.typing import ArrayLike
 
 from profiler.diffraction.edges import EdgeLosses
+from profiler.diffraction.formulas import MOST_ROUND
 from profiler.diffraction.general import bullington, delta_bullington
 from profiler.diffraction.obstacles import cascaded_knife_edges, double_edge, single_knife_edge
 from profiler.diffraction.rounded import rounded_obstacle
@@ -111,10 +112,10 @@ def _rounded(inputs: _Inputs) -> _Solution:
             lines.append(
                 "the top of the main obstacle is not convex, so no radius fits it: the loss is that of a knife edge"
             )
-        if result.roundness > _MOST_ROUND:
+        if result.roundness > MOST_ROUND:
             lines.append(
-                f"roundness m = {float(result.roundness):.1f} is above {_MOST_ROUND:g}, where T(m, n) turns over "
-                "(Rec. ITU-R P.526-15 §4.2): take spherical-earth or delta-bullington"
+                f"roundness m = {float(result.roundness):.1f} is above {MOST_ROUND:g}, where the fit of "
+                "Rec. ITU-R P.526-15 §4.2 turns over: take spherical-earth or delta-bullington"
             )
         if not result.isolated:
             first, last = (float(x) / 1000 for x in result.top_m)
@@ -150,7 +151,6 @@ _GENERAL_HZ = (30e6, 50e9)
 _GENERAL_SOURCE = "Rec. ITU-R P.526-15 §4, and P.452 for the same model"
 _GENERAL_M = (250.0, 3_000_000.0)
 _GENERAL_M_SOURCE = "Rec. ITU-R P.1812, for the same model; P.526-15 states none"
-_MOST_ROUND = 10.0
 
 DEFAULT_METHOD = "delta-bullington"
 

@@ -55,7 +55,7 @@ def _rounded_kernel(block: Block) -> tuple[NDArray[Any], ...]:
 def _curvature(x_m: Float, y_m: Float, inside: NDArray[np.bool_]) -> Float:
     """Curvature −y″, 1/m, of the least-squares parabola through each row's points; infinite for fewer than 3 points.
 
-    Entries outside are 0 in both coordinates.
+    Entries outside are 0 in both coordinates. A bend of less than a micrometre is rounding, and counts as none.
     """
     enough = inside.sum(axis=1) >= 3
     scale = np.maximum(np.abs(x_m).max(axis=1), 1e-9)
@@ -64,7 +64,8 @@ def _curvature(x_m: Float, y_m: Float, inside: NDArray[np.bool_]) -> Float:
     normal = np.einsum("hip,hjp->hij", powers, powers)
     normal[~enough] = np.eye(3)
     fit = np.linalg.solve(normal, np.einsum("hip,hp->hi", powers, y_m)[..., None])[:, 2, 0]
-    return np.asarray(np.where(enough, -2.0 * fit / scale**2, np.inf))
+    bend = np.where(np.abs(fit) > 1e-6, -fit, 0.0)
+    return np.asarray(np.where(enough, 2.0 * bend / scale**2, np.inf))
 
 
 def rounded_obstacle(

@@ -1,0 +1,163 @@
+"""The front door: methods by name for one hop, side by side, with the edges used and the doubts."""
+
+import dataclasses
+import math
+
+import numpy as np
+import pytest
+
+from profiler.diffraction import (
+    DEFAULT_METHOD,
+    METHODS,
+    cascaded_knife_edges,
+    compare,
+    delta_bullington,
+    diffract,
+    double_edge,
+    spherical_earth,
+)
+from profiler.errors import InputError
+from profiler.units import MEAN_EARTH_RADIUS_M
+
+K = 4 / 3
+RADIUS = K * MEAN_EARTH_RADIUS_M
+D = np.linspace(0, 30e3, 301)
+
+
+def peak(at_m, height_m, width_m=400.0):
+    """Return a narrow triangular hill on the distances D."""
+    return np.maximum(height_m * (1 - np.abs(D - at_m) / width_m), 0)
+
+
+THREE = np.maximum.reduce([peak(6e3, 150), peak(15e3, 190), peak(24e3, 140)])
+HOP = (D, THREE, 100.0, 100.0, 6e9, K)
+
+
+def test_delta_bullington_is_the_default_and_comes_first():
+    assert next(iter(METHODS)) == DEFAULT_METHOD == "delta-bullington"
+    assert list(METHODS) == [
+        "delta-bullington",
+        "bullington",
+        "spherical-earth",
+        "knife-edge",
+        "rounded-obstacle",
+        "double-edge",
+        "cascaded-edges",
+    ]
+
+
+def test_compare_lists_what_each_method_gives_alone():
+    losses = compare(*HOP)
+    assert [loss.method for loss in losses] == list(METHODS)
+    assert losses == tuple(diffract(name, *HOP) for name in METHODS)
+    losses_db = {loss.method: loss.loss_db for loss in losses}
+    assert losses_db["knife-edge"] < losses_db["double-edge"] < losses_db["cascaded-edges"]
+    assert losses_db["knife-edge"] < losses_db["rounded-obstacle"]
+
+
+def test_every_loss_is_that_of_the_batch_function():
+    by_name = {loss.method: loss for loss in compare(*HOP, polarization="horizontal", sea_fraction=0.5)}
+    whole = delta_bullington(*HOP[:5], RADIUS, "horizontal", 0.5)
+    assert by_name["delta-bullington"].loss_db == float(whole.total_db)
+    assert by_name["bullington"].loss_db == float(whole.bullington_db)
+    assert by_name["double-edge"].loss_db == float(double_edge(*HOP[:5], RADIUS).loss_db)
+    assert by_name["cascaded-edges"].loss_db == float(cascaded_knife_edges(*HOP[:5], RADIUS).loss_db)
+    over = (float(whole.effective_a_m), float(whole.effective_b_m))
+    sphere = float(spherical_earth(30e3, *over, 6e9, RADIUS, "horizontal", 0.5))
+    assert by_name["spherical-earth"].loss_db == pytest.approx(sphere)
+
+
+def test_the_edges_say_where_and_how_high():
+    loss = diffract("cascaded-edges", *HOP)
+    assert [edge.distance_m for edge in loss.edges] == pytest.approx([6e3, 15e3, 24e3])
+    assert [edge.height_m for edge in loss.edges] == pytest.approx([150, 190, 140])
+    assert all(edge.loss_db > 0 for edge in loss.edges)
+
+
+def test_a_construction_charges_only_its_own_edge():
+    low, crest, high = diffract("delta-bullington", *HOP).edges
+    assert (low.loss_db, high.loss_db) == (None, None)
+    assert low.distance_m < crest.distance_m < high.distance_m
+    assert crest.nu > max(low.nu, high.nu)
+
+
+def test_the_result_is_plain_numbers():
+    loss = diffract("delta-bullington", *HOP)
+    assert type(loss.loss_db) is float
+    assert all(type(value) in (float, type(None)) for edge in loss.edges for value in dataclasses.astuple(edge))
+
+
+def test_bad_refraction_costs():
+    losses = [diffract("delta-bullington", *HOP[:5], k).loss_db for k in (math.inf, K, 1.0, 0.5)]
+    assert losses == sorted(losses)
+    assert losses[-1] > losses[0] + 1
+
+
+def test_the_cascade_keeps_the_edges_of_the_median_k_and_says_when_others_obstruct_more():
+    # a peak near A leads at k = 4/3; the bulge lifts the low hill in the middle past it at k = 0.4
+    ground = np.maximum(peak(2e3, 105), peak(15e3, 98))
+    median = diffract("cascaded-edges", D, ground, 100.0, 100.0, 6e9, K)
+    poor = diffract("cascaded-edges", D, ground, 100.0, 100.0, 6e9, 0.4)
+    assert median.warnings == ()
+    assert poor.edges[0].distance_m == median.edges[0].distance_m == pytest.approx(2e3)
+    assert poor.loss_db > median.loss_db
+    assert len(poor.warnings) == 1
+    assert "at this k the ground 15.000 km from A obstructs more" in poor.warnings[0]
+
+
+RANGES = [
+    ("delta-bullington", 80e9, "frequency 80 GHz is outside 0.03 to 50 GHz"),
+    ("bullington", 20e6, "frequency 0.02 GHz is outside 0.03 to 50 GHz"),
+    ("spherical-earth", 9e6, "frequency 0.009 GHz is outside 0.01 GHz and above"),
+    ("knife-edge", 20e6, "frequency 0.02 GHz is outside 0.03 GHz and above"),
+    ("rounded-obstacle", 20e6, "frequency 0.02 GHz is outside 0.03 GHz and above"),
+    ("double-edge", 20e6, "frequency 0.02 GHz is outside 0.03 GHz and above"),
+    ("cascaded-edges", 20e6, "frequency 0.02 GHz is outside 0.03 GHz and above"),
+]
+
+
+@pytest.mark.parametrize(("method", "frequency_hz", "text"), RANGES)
+def test_a_frequency_outside_the_stated_range_is_a_warning_that_names_it(method, frequency_hz, text):
+    flat = np.zeros_like(D)
+    assert diffract(method, D, flat, 100.0, 100.0, 6e9, K).warnings == ()
+    warnings = diffract(method, D, flat, 100.0, 100.0, frequency_hz, K).warnings
+    assert any(line.startswith(f"{method}: {text} (Rec. ITU-R P.") for line in warnings)
+
+
+@pytest.mark.parametrize("method", ["delta-bullington", "bullington"])
+@pytest.mark.parametrize(("length_m", "text"), [(200.0, "0.2 km"), (4e6, "4000 km")])
+def test_a_distance_outside_the_stated_range_is_a_warning_that_names_it(method, length_m, text):
+    (line,) = diffract(method, [0, length_m / 2, length_m], [0, 0, 0], 100.0, 100.0, 6e9, K).warnings
+    assert line == (
+        f"{method}: distance {text} is outside 0.25 to 3000 km "
+        "(Rec. ITU-R P.1812, for the same model; P.526-15 states none)"
+    )
+
+
+def test_two_edges_warn_of_a_third():
+    (line,) = diffract("double-edge", *HOP).warnings
+    assert line == "double-edge: a third edge, 24.000 km from A, is left out: cascaded-edges counts it"
+    assert diffract("double-edge", D, peak(15e3, 190), 100.0, 100.0, 6e9, K).warnings == ()
+
+
+def test_the_rounded_obstacle_warns_of_a_profile_that_is_not_one_round_top():
+    several = diffract("rounded-obstacle", *HOP)
+    assert any("more than one obstacle" in line for line in several.warnings)
+    plain = diffract("rounded-obstacle", D, np.zeros_like(D), 1.0, 1.0, 100e6, 4.0)
+    assert any("take spherical-earth or delta-bullington" in line for line in plain.warnings)
+
+
+def test_a_top_that_is_level_on_a_flat_earth_has_no_radius():
+    plateau = np.where(np.abs(D - 15e3) < 500, 120.0, 0.0)
+    (line,) = diffract("rounded-obstacle", D, plateau, 100.0, 100.0, 6e9, math.inf).warnings
+    assert line.endswith("is not convex, so no radius fits it: the loss is that of a knife edge")
+
+
+def test_unknown_methods_and_k_are_named():
+    with pytest.raises(InputError, match="diffraction method = 'epsilon': must be one of delta-bullington, bullington"):
+        diffract("epsilon", *HOP)
+    for k in (0.0, -1.0, math.nan):
+        with pytest.raises(InputError, match=f"k = {k:g}: must be above 0"):
+            diffract("bullington", *HOP[:5], k)
+    with pytest.raises(InputError, match="must be one profile"):
+        diffract("bullington", D, np.stack([THREE, THREE]), 100.0, 100.0, 6e9, K)
