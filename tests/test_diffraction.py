@@ -330,6 +330,19 @@ def test_sea_and_polarization_matter_where_the_ground_conducts():
     assert float(spherical_earth(*args, "vertical", 0.25)) == pytest.approx(0.75 * land_v + 0.25 * sea_v)
 
 
+def test_delta_bullington_falls_with_antenna_height_and_k_on_rolling_ground():
+    rng = np.random.default_rng(2)
+    h = np.cumsum(rng.normal(0, 1.5, (500, 201)), axis=1)
+    h += 300 - np.linspace(0, 1, 201) * h[:, -1:]
+    d = np.linspace(0, 60e3, 201)
+    base = delta_bullington(d, h, h[:, 0] + 15, h[:, -1] + 15, 1e9, 8500e3)
+    assert (base.total_db > base.bullington_db).all()  # the spherical part counts on every hop
+    higher = delta_bullington(d, h, h[:, 0] + 20, h[:, -1] + 15, 1e9, 8500e3)
+    poorer = delta_bullington(d, h, h[:, 0] + 15, h[:, -1] + 15, 1e9, 5000e3)
+    assert (higher.total_db < base.total_db).all()
+    assert (poorer.total_db > base.total_db).all()
+
+
 # Batches -------------------------------------------------------------------------------------------------------------
 
 

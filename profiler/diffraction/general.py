@@ -254,6 +254,9 @@ def delta_bullington(
 
     Notes
     -----
+    Higher ground can lower the total by a few dB where L_spherical counts: an obstacle above the ray lowers the fitted
+    surface under the antennas, and so raises them.
+
     Source: Rec. ITU-R P.526-15 §4.5, as in P.452 and P.1812. The wavelength is c/f with the exact c, where the source
     rounds to 0.2998/f: at most 0.006 dB in the
     published validation examples.
