@@ -128,7 +128,7 @@ def _around(
     void = np.asarray(np.isnan(cells).any(axis=0))
     used = np.where(exists, weight, 0.0)
     if method == "bilinear":
-        value = np.einsum("ij,ij->j", used, cells)
+        value = (used * cells).sum(axis=0)
     else:
         value = np.where(exists, cells, -np.inf).max(axis=0, initial=-np.inf)
     return _Around(value, used.sum(axis=0), void)

@@ -133,7 +133,8 @@ def _survey_tile(tile: Tile) -> RasterSurvey:
             if height.size:
                 known += height.size
                 lowest, highest = min(lowest, float(height.min())), max(highest, float(height.max()))
-    void_share = 1.0 - known / (info.width * info.height)
+    cells_there = info.width * info.height
+    void_share = (cells_there - known) / cells_there
     return RasterSurvey(info, void_share, *((lowest, highest) if known else (None, None)))
 
 
