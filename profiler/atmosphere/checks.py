@@ -22,7 +22,7 @@ def within(name: str, values: ArrayLike, low: float, high: float, allowed: str, 
 
 def positive(name: str, values: ArrayLike, unit: str) -> Float:
     """Return the values as an array if all are finite and above 0; NaN is refused as well."""
-    return within(name, values, 0.0, np.finfo(float).max, f"finite and more than 0 {unit}", open_low=True)
+    return within(name, values, 0.0, np.finfo(float).max, f"finite and more than 0 {unit}".rstrip(), open_low=True)
 
 
 def not_negative(name: str, values: ArrayLike, unit: str) -> Float:

@@ -116,8 +116,8 @@ def _rain(path: PathFacts, choice: AvailabilityChoice, sources: Mapping[str, str
     if rate is None:
         return None, Notes()
     k, alpha = rain_coefficients(path.frequency_hz, path.elevation_deg, path.tilt_deg)
-    specific_db_km = float(rain_attenuation(path.frequency_hz, rate, path.elevation_deg, path.tilt_deg))
     length_m = float(effective_distance(path.distance_m, path.frequency_hz, rate, alpha))
+    specific_db_km = float(rain_attenuation(path.frequency_hz, rate, path.elevation_deg, path.tilt_deg))
     fade_db = specific_db_km * length_m / 1e3
     used = (
         InputUsed("rain_rate_mm_h", rate, sources.get("rain_rate_mm_h", GIVEN)),

@@ -97,8 +97,8 @@ def rain_fade(fade_001_db: ArrayLike, frequency_hz: ArrayLike, percent: ArrayLik
     Notes
     -----
     Source: Rec. ITU-R P.530-18 §2.4.1 Step 5. C0 reads the power as inside the logarithm, so that C0 grows with log f;
-    the itur package reads it as (log10(f/10))^0.8, which makes up to about 3 % of fade at 0.001 % and at 1 %, and
-    nothing at or below 10 GHz or near 0.01 %.
+    the itur package reads it as (log10(f/10))^0.8, which takes up to 4.5 % less fade at 1 % and 3.5 % at 0.001 % up to
+    100 GHz, and differs by nothing at or below 10 GHz and by under 0.01 % at p = 0.01 %.
     """
     fade = not_negative("fade_001_db", fade_001_db, "dB")
     p = within("percent", percent, *PERCENT_RANGE, "0.001 to 1 % of the year")

@@ -89,7 +89,7 @@ def path_roughness(distance_m: ArrayLike, ground_m: ArrayLike) -> float:
     Raises
     ------
     InputError
-        If the path has fewer than three one-mile points between its ends (about 6.4 km), or ground is missing.
+        If the path has fewer than three one-mile points between its ends (4828 m or less), or ground is missing.
 
     Examples
     --------
@@ -108,7 +108,7 @@ def path_roughness(distance_m: ArrayLike, ground_m: ArrayLike) -> float:
     steps = np.arange(STATUTE_MILE_M, distance[-1], STATUTE_MILE_M)
     if steps.size < _FEWEST_SAMPLES:
         raise InputError(
-            f"distance_m = {distance[-1]:g}: must be more than {(_FEWEST_SAMPLES + 1) * STATUTE_MILE_M:.0f} m for the "
+            f"distance_m = {distance[-1]:g}: must be more than {_FEWEST_SAMPLES * STATUTE_MILE_M:.0f} m for the "
             "roughness of the path; give climate_factor instead"
         )
     return float(np.std(np.interp(steps, distance, ground)))
