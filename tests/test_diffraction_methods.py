@@ -14,6 +14,7 @@ from profiler.diffraction import (
     delta_bullington,
     diffract,
     double_edge,
+    losses_over_k,
     spherical_earth,
 )
 from profiler.errors import InputError
@@ -161,3 +162,14 @@ def test_unknown_methods_and_k_are_named():
             diffract("bullington", *HOP[:5], k)
     with pytest.raises(InputError, match="must be one profile"):
         diffract("bullington", D, np.stack([THREE, THREE]), 100.0, 100.0, 6e9, K)
+
+
+@pytest.mark.parametrize("method", METHODS)
+def test_losses_over_k_are_those_of_one_k_at_a_time(method):
+    d = np.linspace(0, 30e3, 61)
+    ground = 100 + 60 * np.exp(-(((d - 12e3) / 2e3) ** 2)) + 40 * np.exp(-(((d - 21e3) / 1e3) ** 2))
+    hop = (d, ground, 150.0, 150.0, 6e9)
+    ks = [0.6, 1.0, 4 / 3, 10.0]
+    together = losses_over_k(method, *hop, ks)
+    np.testing.assert_allclose(together, [diffract(method, *hop, k).loss_db for k in ks], rtol=1e-12, atol=1e-12)
+    assert np.all(np.diff(together) <= 0)

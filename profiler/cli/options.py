@@ -86,8 +86,9 @@ def read_hop(hop_file: Path | None, **options: Any) -> Hop:
             f"{_COMMAND_LINE}: {', '.join(missing)}: must be given for a hop without a file; or name a hop file"
             " (hopwright starter writes one)"
         )
-    heights = {end: _number_or_text(options.pop(end)) for end in ("antenna_a", "antenna_b")}
-    return quick_hop(options.pop("position_a"), options.pop("position_b"), **heights, **options)
+    for end in ("antenna_a", "antenna_b"):
+        options[end] = _number_or_text(options[end])
+    return quick_hop(options.pop("position_a"), options.pop("position_b"), **options)
 
 
 def _number_or_text(text: str) -> float | str:

@@ -11,9 +11,10 @@ if TYPE_CHECKING:
     from rich.console import Console
     from rich.table import Table
 
+    from profiler.confidence import Confidence
     from profiler.study import RuleResult, Study
 
-__all__ = ["Scale", "compact_table", "show_notes", "show_study"]
+__all__ = ["Scale", "compact_table", "show_notes", "show_study", "show_sure_heights"]
 
 
 class Scale:
@@ -32,23 +33,23 @@ class Scale:
         return f"{distance_m / self._distance_m:.{digits}f}"
 
 
-def compact_table(*headers: str) -> Table:
-    """Make a table with no frame but a line under its header; all but the first column to the right."""
+def compact_table(*headers: str, words: tuple[str, ...] = ()) -> Table:
+    """Make a table with no frame but a line under its header; columns to the right but the first and those of words."""
     from rich import box
     from rich.table import Table
 
     table = Table(box=box.SIMPLE_HEAD, pad_edge=False, show_edge=False)
     for number, header in enumerate(headers):
-        table.add_column(header, justify="right" if number else "left")
+        table.add_column(header, justify="right" if number and header not in words else "left", overflow="fold")
     return table
 
 
 def show_notes(screen: Console, title: str, notes: tuple[str, ...], style: str = "") -> None:
     """Print a titled list, or nothing if it is empty."""
     if notes:
-        screen.print(f"\n{title}", style="bold " + style, markup=False)
+        screen.print(f"\n{title}", style="bold " + style, markup=False, soft_wrap=True)
         for note in notes:
-            screen.print(f"  - {note}", style=style, markup=False)
+            screen.print(f"  - {note}", style=style, markup=False, soft_wrap=True)
 
 
 def show_study(study: Study, *, feet: bool, quiet: bool, color: bool) -> None:
@@ -56,13 +57,16 @@ def show_study(study: Study, *, feet: bool, quiet: bool, color: bool) -> None:
     screen, scale = console(color=color), Scale(feet=feet)
     verdict = study.verdict
     word, style = ("PASSES", "bold green") if verdict.passes else ("DOES NOT PASS", "bold red")
-    screen.print(f"{study.hop.name}: {word}", style=style, markup=False)
-    screen.print(verdict.headline_feet if feet else verdict.headline, markup=False)
+    screen.print(f"{study.hop.name}: {word}", style=style, markup=False, soft_wrap=True)
+    screen.print(verdict.headline_feet if feet else verdict.headline, markup=False, soft_wrap=True)
     if quiet:
         return
-    screen.print(_sites(study, scale), markup=False)
+    screen.print(_sites(study, scale), markup=False, soft_wrap=True)
     screen.print()
     screen.print(_rules(study, scale))
+    for k, result in {result.check.k: result for result in study.rules}.items():
+        angles = f"A {result.elevation_a_deg:+.3f}°, B {result.elevation_b_deg:+.3f}°"
+        screen.print(f"Elevation at k = {k:.3f}: {angles}", markup=False, soft_wrap=True)
     _show_places(screen, study, scale)
     _show_reflections(screen, study, scale)
     if study.budget is not None:
@@ -79,6 +83,7 @@ def show_study(study: Study, *, feet: bool, quiet: bool, color: bool) -> None:
         " codes to confirm.",
         style="dim",
         markup=False,
+        soft_wrap=True,
     )
 
 
@@ -106,7 +111,7 @@ def _rules(study: Study, scale: Scale) -> Table:
     height = scale.height_unit
     table = compact_table(
         "rule", "k", "needs", "verdict", f"surplus {height}", f"at {scale.distance_unit}", f"F1 {height}", "clear/F1",
-        "sight", "loss dB", "elevation A, B °",
+        "sight", "loss dB",
     )  # fmt: skip
     losses = {loss.k: loss.loss_db for loss in study.diffraction}
     for result in study.rules:
@@ -123,7 +128,6 @@ def _rules(study: Study, scale: Scale) -> Table:
             f"{check.ratio[at]:.2f}",
             "yes" if check.line_of_sight else "no",
             f"{losses[check.k]:.1f}",
-            f"{result.elevation_a_deg:+.3f}, {result.elevation_b_deg:+.3f}",
             style="" if result.passes else "red",
         )
     return table
@@ -153,11 +157,13 @@ def _show_places(screen: Console, study: Study, scale: Scale) -> None:
                 )
             ),
         )
-    screen.print(f"\nTight places, rule {check.label or '-'} at k = {check.k:.3f}", style="bold", markup=False)
+    screen.print(
+        f"\nTight places, rule {check.label or '-'} at k = {check.k:.3f}", style="bold", markup=False, soft_wrap=True
+    )
     screen.print(table)
     beside = _beside(study, governing, scale)
     if beside:
-        screen.print(beside, markup=False)
+        screen.print(beside, markup=False, soft_wrap=True)
 
 
 def _beside(study: Study, result: RuleResult, scale: Scale) -> str:
@@ -166,7 +172,7 @@ def _beside(study: Study, result: RuleResult, scale: Scale) -> str:
         return ""
     width = f"{scale.height(corridor.half_width_m)} {scale.height_unit} to each side"
     seen = f" ({corridor.missing_share:.0%} of it without ground)" if corridor.missing_share else ""
-    if corridor.surplus_m >= float(result.check.surplus_m[result.check.critical]):
+    if corridor.offset_m == 0.0:
         return f"Beside the path, {width}{seen}: nothing rises higher into the zone than the path itself."
     where = scale.distance(study.profile.distance_m[corridor.distance_index])
     return (
@@ -191,16 +197,20 @@ def _show_reflections(screen: Console, study: Study, scale: Scale) -> None:
         more = len(open_places) - 3
         lines.append(f"  k = {k:.3f}: {hidden} screened" + (f", {more} more in view" if more > 0 else ""))
     screen.print("\nReflection points", style="bold")
-    screen.print("\n".join(lines), markup=False)
+    screen.print("\n".join(lines), markup=False, soft_wrap=True)
 
 
 def _budget(study: Study) -> Table:
     """Tabulate the budget of the first mode line by line both ways, then a row for every further mode."""
     assert study.budget is not None
     there, back = study.budget.a_to_b, study.budget.b_to_a
-    table = compact_table(f"budget, mode {there.modes[0].name}", "A to B", "B to A", "unit", "by")
+    title = f"budget, mode {there.modes[0].name}"
+    table = compact_table(title, "A to B", "B to A", "unit", "by", words=("unit", "by"))
+    ends = {" A": " at the sender", " B": " at the receiver"}
     for one, other in zip(there.modes[0].lines, back.modes[0].lines, strict=True):
-        table.add_row(one.name, f"{one.value:.2f}", f"{other.value:.2f}", one.unit, one.note)
+        name = one.name[:-2] + ends[one.name[-2:]] if one.name[-2:] in ends else one.name
+        note = one.note if one.note == other.note else f"A to B {one.note}; B to A {other.note}"
+        table.add_row(name, f"{one.value:.2f}", f"{other.value:.2f}", one.unit, note)
     table.add_section()
     for name, part in (("received level", "received_dbm"), ("threshold", "threshold_dbm")):
         table.add_row(name, *(_number(getattr(way, part)) for way in (there, back)), "dBm", "")
@@ -240,6 +250,7 @@ def _show_availability(screen: Console, study: Study) -> None:
             f" {margin} of fade margin would do.",
             style="" if target.met else "red",
             markup=False,
+            soft_wrap=True,
         )
     if len(study.mode_outages) > 1:
         modes = compact_table("mode", "weaker way", "fade margin dB", "worst month %", "year %", "objective")
@@ -265,6 +276,7 @@ def _show_confidence(screen: Console, study: Study, scale: Scale) -> None:
         f" ({found.chance.low:.1%} to {found.chance.high:.1%} by {found.draws} draws, seed {found.seed})",
         style="bold",
         markup=False,
+        soft_wrap=True,
     )
     table = compact_table("rule", "chance", "least surplus 5 %", "50 %", "95 %", "doubt: terrain", "cover", "k")
     for rule, doubt in zip(study.rules, found.rules, strict=True):
@@ -275,21 +287,28 @@ def _show_confidence(screen: Console, study: Study, scale: Scale) -> None:
             *(f"{share:.0%}" for share in (doubt.shares.terrain, doubt.shares.cover, doubt.shares.k)),
         )
     screen.print(table)
+    show_sure_heights(screen, found, scale)
+    places = ", ".join(
+        f"{scale.distance(point.distance_m)} {scale.distance_unit} ({point.share_of_doubt:.0%} of the doubt)"
+        for point in found.survey
+    )
+    if places:
+        screen.print(f"Survey first: {places}", markup=False, soft_wrap=True)
+
+
+def show_sure_heights(screen: Console, found: Confidence, scale: Scale) -> None:
+    """Print the antenna heights that are sure enough, by raising both or one."""
     for sure in found.sure:
         alone = [
             f"{end} alone {scale.height(height)}"
             for end, height in (("A", sure.a_only_m), ("B", sure.b_only_m))
             if height is not None
         ]
+        change = f"{scale.height(abs(sure.raise_m))} {scale.height_unit} {'higher' if sure.raise_m > 0 else 'lower'}"
         screen.print(
-            f"{sure.chance:.0%} sure: both antennas {scale.height(sure.raise_m)} {scale.height_unit} higher"
+            f"{sure.chance:.0%} sure: both antennas {change}"
             f" (A {scale.height(sure.equal_m[0])}, B {scale.height(sure.equal_m[1])})"
             + (f", or {', or '.join(alone)}" if alone else ""),
             markup=False,
+            soft_wrap=True,
         )
-    places = ", ".join(
-        f"{scale.distance(point.distance_m)} {scale.distance_unit} ({point.share_of_doubt:.0%} of the doubt)"
-        for point in found.survey
-    )
-    if places:
-        screen.print(f"Survey first: {places}", markup=False)

@@ -89,7 +89,7 @@ def _drawn_profiles(
     from profiler.figures import profile_figure, render
 
     figure = profile_figure(study, feet=feet, distance_limits=distance_limits, height_limits=height_limits)
-    return [(path, render(figure, path)) for path in paths]
+    return [(path, render(figure, path.suffix)) for path in paths]
 
 
 def _drawn_margins(study: Study, paths: tuple[Path, ...]) -> list[tuple[Path, bytes]]:
@@ -104,7 +104,7 @@ def _drawn_margins(study: Study, paths: tuple[Path, ...]) -> list[tuple[Path, by
             f"{study.hop.source}: --margin-figure: must have a [radio] with a threshold and [availability] to draw"
         )
     figure = margin_figure(study)
-    return [(path, render(figure, path)) for path in paths]
+    return [(path, render(figure, path.suffix)) for path in paths]
 
 
 def _csv_text(study: Study) -> str:

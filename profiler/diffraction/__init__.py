@@ -9,7 +9,16 @@ from profiler.diffraction.formulas import (
     rounding,
 )
 from profiler.diffraction.general import DeltaBullington, bullington, delta_bullington
-from profiler.diffraction.methods import DEFAULT_METHOD, METHODS, DiffractionLoss, Edge, Method, compare, diffract
+from profiler.diffraction.methods import (
+    DEFAULT_METHOD,
+    METHODS,
+    DiffractionLoss,
+    Edge,
+    Method,
+    compare,
+    diffract,
+    losses_over_k,
+)
 from profiler.diffraction.obstacles import cascaded_knife_edges, double_edge, single_knife_edge
 from profiler.diffraction.rounded import RoundedLosses, rounded_obstacle
 from profiler.diffraction.sphere import spherical_earth
@@ -32,6 +41,7 @@ __all__ = [
     "double_edge_loss",
     "fresnel_parameter",
     "knife_edge_loss",
+    "losses_over_k",
     "rounded_obstacle",
     "rounded_obstacle_loss",
     "rounding",

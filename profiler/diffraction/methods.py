@@ -15,9 +15,9 @@ from profiler.diffraction.general import bullington, delta_bullington
 from profiler.diffraction.obstacles import cascaded_knife_edges, double_edge, single_knife_edge
 from profiler.diffraction.rounded import rounded_obstacle
 from profiler.errors import InputError
-from profiler.units import K_MEDIAN, MEAN_EARTH_RADIUS_M
+from profiler.units import K_MEDIAN, MEAN_EARTH_RADIUS_M, Float
 
-__all__ = ["DEFAULT_METHOD", "METHODS", "DiffractionLoss", "Edge", "Method", "compare", "diffract"]
+__all__ = ["DEFAULT_METHOD", "METHODS", "DiffractionLoss", "Edge", "Method", "compare", "diffract", "losses_over_k"]
 
 
 @dataclass(frozen=True, slots=True)
@@ -50,7 +50,7 @@ class DiffractionLoss:
 class _Inputs:
     """What a solver needs: the six arguments that all methods share, and those that only the spherical earth needs."""
 
-    common: tuple[ArrayLike, ArrayLike, ArrayLike, ArrayLike, float, float]
+    common: tuple[ArrayLike, ArrayLike, ArrayLike, ArrayLike, float, ArrayLike]
     polarization: str
     sea_fraction: float
 
@@ -65,7 +65,10 @@ class Method:
     name: str
     title: str
     source: str
+    losses_db: Callable[[_Inputs], Float]
+    """Losses alone, of as many hops as the inputs broadcast to."""
     solve: Callable[[_Inputs], _Solution]
+    """Loss of one hop with its edges and the doubts about it."""
     frequency_hz: tuple[float, float]
     frequency_source: str
     distance_m: tuple[float, float] | None = None
@@ -82,6 +85,10 @@ class Method:
             stated = f"{self.distance_m[0] / 1000:g} to {self.distance_m[1] / 1000:g} km"
             lines.append(f"distance {distance_m / 1000:g} km is outside {stated} ({self.distance_source})")
         return tuple(lines)
+
+
+def _cascade_at_median(inputs: _Inputs) -> EdgeLosses:
+    return cascaded_knife_edges(*inputs.common, edges_radius_m=K_MEDIAN * MEAN_EARTH_RADIUS_M)
 
 
 def _delta(inputs: _Inputs) -> _Solution:
@@ -134,7 +141,7 @@ def _double(inputs: _Inputs) -> _Solution:
 
 
 def _cascaded(inputs: _Inputs) -> _Solution:
-    result = cascaded_knife_edges(*inputs.common, edges_radius_m=K_MEDIAN * MEAN_EARTH_RADIUS_M)
+    result = _cascade_at_median(inputs)
     worst, kept = single_knife_edge(*inputs.common), np.nan_to_num(result.nu[1], nan=-np.inf)
     lines: tuple[str, ...] = ()
     if worst.nu[0] > kept:
@@ -159,6 +166,7 @@ _ALL = (
         "delta-bullington",
         "Delta-Bullington",
         "Rec. ITU-R P.526-15 §4.5",
+        lambda i: delta_bullington(*i.common, i.polarization, i.sea_fraction).total_db,
         _delta,
         _GENERAL_HZ,
         _GENERAL_SOURCE,
@@ -169,6 +177,7 @@ _ALL = (
         "bullington",
         "Bullington",
         "Rec. ITU-R P.526-15 §4.5.1",
+        lambda i: bullington(*i.common).loss_db,
         _bullington,
         _GENERAL_HZ,
         _GENERAL_SOURCE,
@@ -179,16 +188,47 @@ _ALL = (
         "spherical-earth",
         "Smooth spherical earth",
         "Rec. ITU-R P.526-15 §3.2",
+        lambda i: delta_bullington(*i.common, i.polarization, i.sea_fraction).spherical_db,
         _sphere,
         (10e6, float("inf")),
         "Rec. ITU-R P.526-15 §3.2",
     ),
-    Method("knife-edge", "Single knife edge", "Rec. ITU-R P.526-15 §4.1", _knife, _EDGES_HZ, _EDGES_SOURCE),
     Method(
-        "rounded-obstacle", "Single rounded obstacle", "Rec. ITU-R P.526-15 §4.2", _rounded, _EDGES_HZ, _EDGES_SOURCE
+        "knife-edge",
+        "Single knife edge",
+        "Rec. ITU-R P.526-15 §4.1",
+        lambda i: single_knife_edge(*i.common).loss_db,
+        _knife,
+        _EDGES_HZ,
+        _EDGES_SOURCE,
     ),
-    Method("double-edge", "Two isolated edges", "Rec. ITU-R P.526-15 §4.3", _double, _EDGES_HZ, _EDGES_SOURCE),
-    Method("cascaded-edges", "Cascaded knife edges", "Rec. ITU-R P.526-15 §4.4.2", _cascaded, _EDGES_HZ, _EDGES_SOURCE),
+    Method(
+        "rounded-obstacle",
+        "Single rounded obstacle",
+        "Rec. ITU-R P.526-15 §4.2",
+        lambda i: rounded_obstacle(*i.common).loss_db,
+        _rounded,
+        _EDGES_HZ,
+        _EDGES_SOURCE,
+    ),
+    Method(
+        "double-edge",
+        "Two isolated edges",
+        "Rec. ITU-R P.526-15 §4.3",
+        lambda i: double_edge(*i.common).loss_db,
+        _double,
+        _EDGES_HZ,
+        _EDGES_SOURCE,
+    ),
+    Method(
+        "cascaded-edges",
+        "Cascaded knife edges",
+        "Rec. ITU-R P.526-15 §4.4.2",
+        lambda i: _cascade_at_median(i).loss_db,
+        _cascaded,
+        _EDGES_HZ,
+        _EDGES_SOURCE,
+    ),
 )
 
 METHODS: Mapping[str, Method] = MappingProxyType({method.name: method for method in _ALL})
@@ -202,6 +242,12 @@ def _edges(found: EdgeLosses | None) -> tuple[Edge, ...]:
     columns = (found.distance_m, found.height_m, found.nu, found.edge_loss_db)
     rows = zip(*(column.tolist() for column in columns), strict=True)
     return tuple(Edge(d, h, nu, None if np.isnan(loss) else loss) for d, h, nu, loss in rows if not np.isnan(d))
+
+
+def _require_known(method: str) -> None:
+    """Stop unless the method has a name that is known."""
+    if method not in METHODS:
+        raise InputError(f"diffraction method = {method!r}: must be one of {', '.join(METHODS)}")
 
 
 def diffract(
@@ -258,8 +304,7 @@ def diffract(
     >>> print(diffract("bullington", [0, 50, 300], [0, 0, 0], 10, 10, 80e9, 1).warnings[0])
     bullington: frequency 80 GHz is outside 0.03 to 50 GHz (Rec. ITU-R P.526-15 §4, and P.452 for the same model)
     """
-    if method not in METHODS:
-        raise InputError(f"diffraction method = {method!r}: must be one of {', '.join(METHODS)}")
+    _require_known(method)
     if not k > 0:
         raise InputError(
             f"k = {k:g}: must be above 0 for diffraction (infinity is allowed; a negative k has no horizon)"
@@ -272,6 +317,50 @@ def diffract(
     ranges = chosen.range_warnings(float(np.asarray(distance_m)[-1]), frequency_hz)
     warnings = tuple(f"{method}: {line}" for line in (*ranges, *doubts))
     return DiffractionLoss(float(k), method, loss_db, _edges(found), warnings)
+
+
+def losses_over_k(
+    method: str,
+    distance_m: ArrayLike,
+    height_m: ArrayLike,
+    centre_a_m: float,
+    centre_b_m: float,
+    frequency_hz: float,
+    k: ArrayLike,
+    *,
+    polarization: str = "vertical",
+    sea_fraction: float = 0.0,
+) -> Float:
+    """Diffraction losses of one hop at many k at once, by a method chosen by name; without edges and warnings.
+
+    Parameters
+    ----------
+    method, distance_m, height_m, centre_a_m, centre_b_m, frequency_hz, polarization, sea_fraction
+        As in `diffract`.
+    k
+        Effective-earth-radius factors, (m,), each above 0.
+
+    Returns
+    -------
+    ndarray
+        Losses in dB, (m,).
+
+    Raises
+    ------
+    InputError, MissingGroundError
+        As in `diffract`.
+
+    Examples
+    --------
+    >>> losses_over_k("knife-edge", [0, 5e3, 10e3], [100, 130, 100], 130, 130, 6e9, [0.6, 4 / 3]).round(2).tolist()
+    [9.58, 7.65]
+    """
+    factors = np.asarray(k, dtype=float)
+    _require_known(method)
+    if factors.ndim != 1 or np.any(~(factors > 0)):
+        raise InputError(f"k = {k!r}: must be a row of factors above 0")
+    common = (distance_m, height_m, centre_a_m, centre_b_m, frequency_hz, factors * MEAN_EARTH_RADIUS_M)
+    return np.asarray(METHODS[method].losses_db(_Inputs(common, polarization, sea_fraction)))
 
 
 def compare(

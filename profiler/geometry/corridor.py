@@ -187,7 +187,9 @@ def check_corridor(
     surplus = ray_height(distance, centre_a_m, centre_b_m)[:, None] - least
     radius = fresnel_fraction * fresnel_radius(distance, distance[-1] - distance, frequency_hz)
     within = np.abs(offset) <= radius[:, None] * _EDGE
-    where = np.unravel_index(int(np.argmin(surplus)), surplus.shape)
+    # of places equally tight up to rounding the one nearest to the path counts, so that the path is not "beside" itself
+    tightest = np.where(surplus <= surplus.min() + ROUNDING_M, np.abs(offset), np.inf)
+    where = np.unravel_index(int(np.argmin(tightest)), surplus.shape)
     return CorridorCheck(
         half_width_m=float(radius.max()),
         across=int(offset.shape[1]),

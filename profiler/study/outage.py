@@ -18,7 +18,7 @@ from profiler.availability import (
     predict,
 )
 from profiler.budget import Budget, ModeBudget
-from profiler.diffraction import DiffractionLoss, diffract
+from profiler.diffraction import DiffractionLoss, losses_over_k
 from profiler.models import Hop, Profile
 from profiler.study.climate import ClimateUse
 
@@ -165,10 +165,11 @@ def _excess_losses(
     """Diffraction loss over the budget's, at every percentile of k and at the lowest k of the rules."""
     counted_db = losses[hop.median_k].loss_db
     path = (profile.distance_m, profile.surface_m, centre_a_m, centre_b_m, hop.frequency_hz)
-    excess = [
-        diffract(hop.diffraction_method, *path, k, polarization=hop.polarization, sea_fraction=hop.sea_fraction).loss_db
-        - counted_db
-        for _, k in climate.k_percentiles
-    ]
+    ks = [k for _, k in climate.k_percentiles]
+    excess = np.empty(0)
+    if ks:
+        excess = losses_over_k(
+            hop.diffraction_method, *path, ks, polarization=hop.polarization, sea_fraction=hop.sea_fraction
+        )
     lowest = min(rule.k for rule in hop.rules)
-    return excess, losses[lowest].loss_db - counted_db
+    return (excess - counted_db).tolist(), losses[lowest].loss_db - counted_db

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import math
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from functools import partial
 from typing import Any
 
@@ -195,19 +195,22 @@ def _for_loss(study: Study) -> LimitHeights | None:
 def _for_objective(study: Study) -> LimitHeights | None:
     """Least heights that meet the availability objective, through losses, budget and outage at each pair tried."""
     hop = study.hop
-    if study.availability is None or study.availability.objective is None:
+    if hop.radio is None or study.availability is None or study.availability.objective is None:
         return None
-    excess = partial(_margin_missing_db, study)
+    # the search asks hundreds of times: only the mode that is judged, and only the k that counts
+    lowest = min(hop.rules, key=lambda rule: rule.k)
+    judged = replace(hop, radio=replace(hop.radio, modes=hop.radio.modes[:1]), rules=(lowest,))
+    excess = partial(_margin_missing_db, study, judged)
     return heights_within(excess, hop.heights.tower_a, hop.heights.tower_b, what="shortage of fade margin", unit="dB")
 
 
-def _margin_missing_db(study: Study, antenna_a_m: float, antenna_b_m: float) -> float:
+def _margin_missing_db(study: Study, hop: Hop, antenna_a_m: float, antenna_b_m: float) -> float:
     """How much fade margin a pair of heights lacks to meet the objective, dB; infinite inside a site's own cover."""
     profile = study.profile
     centres = float(profile.ground_m[0]) + antenna_a_m, float(profile.ground_m[-1]) + antenna_b_m
     if centres[0] < profile.surface_m[0] or centres[1] < profile.surface_m[-1]:
         return math.inf
-    found = link(study.hop, profile, study.climate, study.air, *centres).outage.availability
+    found = link(hop, profile, study.climate, study.air, *centres).outage.availability
     if found is None or found.objective is None or found.objective.required_margin_db is None:
         return math.inf
     return found.objective.required_margin_db - found.fade_margin_db

@@ -183,7 +183,7 @@ def _headline(hop: Hop, ground: Ground, rules: Sequence[RuleResult], outage: Out
     worst = min(rules, key=least_surplus)
     check, corridor = worst.check, worst.corridor
     at, aside = check.critical, ""
-    if corridor is not None and corridor.surplus_m < check.surplus_m[check.critical]:
+    if corridor is not None and corridor.offset_m != 0.0:
         at = corridor.distance_index
         aside = f", {abs(corridor.offset_m) / metre:.0f} {short} {corridor.side} of the path"
     surplus = least_surplus(worst) / metre

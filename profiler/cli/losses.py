@@ -1,0 +1,68 @@
+"""`hopwright losses`: every diffraction method side by side for one hop."""
+
+from __future__ import annotations
+
+from typing import TYPE_CHECKING, Any
+
+import click
+
+from profiler.cli.options import hop_options, named, read_hop, speech_options
+from profiler.cli.output import console, json_text, put
+
+if TYPE_CHECKING:
+    from profiler.diffraction import DiffractionLoss
+    from profiler.study import Study
+
+__all__ = ["command"]
+
+
+@click.command("losses")
+@hop_options
+@click.option("--json", "json_to", metavar="FILE", help="Write the losses as JSON; - for standard output.")
+@speech_options
+def command(json_to: str | None, quiet: bool, no_color: bool, **hop_given: Any) -> int:
+    """List the diffraction loss by every method, at every k of the rules and at the median k, with the edges used."""
+    from profiler.diffraction import compare
+    from profiler.study import plain, run_study
+
+    hop = read_hop(**hop_given)
+    with named(hop.source):
+        study = run_study(hop)
+    profile = study.profile
+    path = (profile.distance_m, profile.surface_m, study.centre_a_m, study.centre_b_m, hop.frequency_hz)
+    by_k = {
+        k: compare(*path, k, polarization=hop.polarization, sea_fraction=hop.sea_fraction)
+        for k in dict.fromkeys([hop.median_k, *(rule.k for rule in hop.rules)])
+    }
+    if json_to is not None:
+        losses = [plain(loss) for found in by_k.values() for loss in found]
+        put(json_to, json_text({"schema": "hopwright-losses/1", "hop": hop.name, "diffraction": losses}))
+    if json_to != "-":
+        _show(study, by_k, quiet=quiet, color=not no_color)
+    return 0
+
+
+def _show(study: Study, by_k: dict[float, tuple[DiffractionLoss, ...]], *, quiet: bool, color: bool) -> None:
+    """Print a row for each method and a column for each k, then the edges and the doubts."""
+    from profiler.cli.show import compact_table, show_notes
+
+    screen = console(color=color)
+    table = compact_table("diffraction loss, dB", *(f"k = {k:.3f}" for k in by_k))
+    for rows in zip(*by_k.values(), strict=True):
+        chosen = rows[0].method == study.hop.diffraction_method
+        name = rows[0].method + (" (chosen)" if chosen else "")
+        table.add_row(name, *(f"{loss.loss_db:.2f}" for loss in rows), style="bold" if chosen else "")
+    screen.print(table)
+    if quiet:
+        return
+    edges = compact_table("edge", "k", "method", "km from A", "height m", "nu", "loss dB")
+    for k, losses in by_k.items():
+        for loss in losses:
+            for number, edge in enumerate(loss.edges, start=1):
+                charged = "-" if edge.loss_db is None else f"{edge.loss_db:.2f}"
+                where = (f"{edge.distance_m / 1e3:.3f}", f"{edge.height_m:.1f}", f"{edge.nu:.2f}")
+                edges.add_row(str(number), f"{k:.3f}", loss.method, *where, charged)
+    screen.print()
+    screen.print(edges)
+    doubts = dict.fromkeys(warning for losses in by_k.values() for loss in losses for warning in loss.warnings)
+    show_notes(screen, "Warnings", tuple(doubts), "yellow")
