@@ -9,7 +9,7 @@ from pyproj import Transformer
 from rasterio.transform import Affine
 
 from profiler.errors import DatumError, InputError, RasterError
-from profiler.terrain import open_terrain
+from profiler.terrain import open_terrain, survey
 
 GRID = Affine(0.01, 0, 10, 0, -0.01, 50)
 FLAT = np.full((10, 10), 1000, "float32")
@@ -180,14 +180,19 @@ def test_mask_band_and_nan_are_missing(tmp_path, write_raster):
     np.testing.assert_array_equal(found.ground_m, [np.nan, np.nan, 1000])
 
 
-def test_undeclared_marker_is_missing_and_noted(write_raster):
+def test_undeclared_marker_is_missing_and_noted(tmp_path, write_raster):
     heights = np.full((10, 10), 100, "int16")
     heights[4, 4] = -32768
     found = sample(write_raster("n.tif", heights, GRID), [10.045, 10.005], [49.955, 49.995])
     np.testing.assert_array_equal(found.ground_m, [np.nan, 100])
-    assert "holds -32768 without declaring it as nodata (1 cells near the path): taken as missing" in " ".join(
-        found.sources[0].notes
-    )
+    told = "holds -32768 in 1 of the cells read without declaring it as nodata: taken as missing"
+    assert told in found.sources[0].notes
+    assert told in survey(tmp_path).rasters[0].notes
+    heights[:] = -32768  # a raster that is all marker gives no height, but is not passed over in silence
+    found = sample(write_raster("n.tif", heights, GRID), 10.045, 49.955)
+    assert np.isnan(found.ground_m)
+    assert found.sources == ()
+    assert "n.tif: holds -32768" in " ".join(found.notes)
 
 
 def test_float_marker_is_compared_as_stored(write_raster):
@@ -201,8 +206,10 @@ def test_float_marker_is_compared_as_stored(write_raster):
 
 
 def test_heights_no_place_has_are_an_error(write_raster):
+    path = write_raster("c.tif", FLAT * 250, GRID)
     with pytest.raises(RasterError, match=r"c\.tif: holds 250000 m at column 3, row 4, where ground lies between"):
-        sample(write_raster("c.tif", FLAT * 250, GRID), 10.035, 49.955)
+        sample(path, 10.035, 49.955)
+    assert "c.tif: holds 250000 m at column 0, row 0" in survey(path).problems[0]
 
 
 def test_sea_bed_is_noted(write_raster):
@@ -222,6 +229,8 @@ def test_two_vertical_datums_on_one_path_stop(write_raster):
     with pytest.raises(DatumError, match=r"EGM96 geoid \(.*a\.tif\), EGM2008 geoid \(.*b\.tif\); bring the rasters to"):
         sample(folder, lon, lat)
     assert sample(folder, lon[:1], lat[:1]).vertical_datum == "EGM96 geoid"  # the other one is not on this path
+    with open_terrain(folder) as terrain:
+        assert not np.isnan(terrain.sample(lon, lat, allow_mixed_datums=True).ground_m).any()  # points beside a path
     allowed = sample(folder, lon, lat, allow_mixed_datums=True)
     assert allowed.vertical_datum is None
     assert "are mixed, as allowed: EGM96 geoid" in allowed.notes[0]

@@ -162,6 +162,37 @@ def test_bilinear_gives_a_plane_back_on_any_grid(tmp_path_factory, turn, stretch
     assert np.abs(sample(path, lon, lat).ground_m - expected).max() < 1e-6
 
 
+@pytest.mark.parametrize(
+    ("epsg", "lon", "lat", "cell"),
+    [
+        (3857, 9.0, 47.0, 30.0),  # web Mercator
+        (2154, 3.0, 46.5, 25.0),  # Lambert conformal, France
+        (3035, 10.0, 55.0, 25.0),  # Lambert equal area, Europe
+        (27700, -3.2, 55.9, 50.0),  # British grid, another ellipsoid
+        (4258, 20.0, 69.0, 1 / 3600),  # degrees, not on WGS 84
+        (2193, 175.0, -40.0, 15.0),  # New Zealand
+        (3031, 166.0, -77.8, 100.0),  # Antarctic polar stereographic
+        (5041, 15.0, 89.9, 100.0),  # around the north pole
+        (32601, -179.99, 66.0, 30.0),  # UTM zone 1, at the antimeridian
+    ],
+)
+def test_any_crs_agrees_with_pyproj(write_raster, epsg, lon, lat, cell):
+    """A plane of 10 m a cell in map coordinates, at points whose map coordinates pyproj finds by itself."""
+    to_map = Transformer.from_crs(4326, epsg, always_xy=True)
+    x0, y0 = to_map.transform(lon, lat)
+    heights = np.add.outer(np.arange(60.0), np.arange(60.0)) * 10
+    path = write_raster("p.tif", heights, from_origin(x0 - 30 * cell, y0 + 30 * cell, cell, cell), f"EPSG:{epsg}")
+    spread = 20 * (cell if cell > 1 else cell * 111_000) / 111_000
+    rng = np.random.default_rng(epsg)
+    lons = (lon + spread * rng.uniform(-1, 1, 50) + 180) % 360 - 180
+    lats = np.minimum(lat + spread * rng.uniform(-1, 1, 50), 90.0)
+    x, y = to_map.transform(lons, lats)
+    expected = 10 * ((x - x0 + y0 - y) / cell + 59)
+    found = sample(path, lons, lats)
+    assert np.abs(found.ground_m - expected).max() < MILLIMETRE
+    assert found.sources[0].info.crs == f"EPSG:{epsg}"
+
+
 @given(st.lists(st.integers(1, 59), max_size=3, unique=True), st.lists(st.integers(1, 59), max_size=3, unique=True),
        st.integers(0, 1), st.sampled_from(["bilinear", "highest"]))  # fmt: skip
 def test_cutting_a_raster_into_tiles_changes_nothing(tmp_path_factory, row_cuts, col_cuts, overlap, method):

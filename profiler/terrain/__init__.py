@@ -8,7 +8,8 @@ from profiler.terrain.classes import sample_classes
 from profiler.terrain.describe import Bounds, RasterInfo
 from profiler.terrain.files import file_hash
 from profiler.terrain.gaps import fill_missing, missing_stretches, require_ground
-from profiler.terrain.mosaic import Samples, Skipped, SourceUse, Terrain, open_terrain
+from profiler.terrain.mosaic import Terrain, open_terrain
+from profiler.terrain.samples import Samples, Skipped, SourceUse
 from profiler.terrain.sites import require_inside
 from profiler.terrain.survey import FolderSurvey, RasterSurvey, survey
 

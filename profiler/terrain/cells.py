@@ -3,8 +3,8 @@
 from __future__ import annotations
 
 import math
+from collections.abc import Callable
 from dataclasses import dataclass, field
-from typing import Any
 
 import numpy as np
 from numpy.typing import NDArray
@@ -44,10 +44,16 @@ class Tally:
         self.blocks[number] = self.blocks.get(number, 0) + blocks
         self.read_bytes[number] = self.read_bytes.get(number, 0) + high * wide * tile.coding.item_bytes
 
+    def meet(self, number: int, markers: Float) -> None:
+        """Remember undeclared markers of missing ground."""
+        counts = self.undeclared.setdefault(number, {})
+        for value, count in zip(*np.unique(markers, return_counts=True), strict=True):
+            counts[float(value)] = counts.get(float(value), 0) + int(count)
+
     def notes(self, number: int) -> tuple[str, ...]:
         """Sentences for the provenance about one tile."""
         told = tuple(
-            f"holds {value:g} without declaring it as nodata ({count} cells near the path): taken as missing"
+            f"holds {value:g} in {count} of the cells read without declaring it as nodata: taken as missing"
             for value, count in sorted(self.undeclared.get(number, {}).items())
         )
         return (*told, "ground below -500 m: the raster may hold the sea bed") if number in self.seabed else told
@@ -107,6 +113,26 @@ def fetch_heights(index: Index, rasters: OpenRasters, tile: Ints, col: Ints, row
 def _heights_on_tile(index: Index, number: int, rasters: OpenRasters, col: Ints, row: Ints, tally: Tally) -> Float:
     tile = index.tiles[number]
     raw, valid = fetch(tile, number, rasters, col, row, tally)
+    return to_metres(tile, number, raw, valid, tally, lambda i: (int(col[i]), int(row[i])))
+
+
+def to_metres(
+    tile: Tile,
+    number: int,
+    raw: Float,
+    valid: NDArray[np.bool_] | None,
+    tally: Tally,
+    place: Callable[[int], tuple[int, int]],
+) -> Float:
+    """Heights in metres of stored values (n,), NaN where missing; `place` tells the column and row of the i-th.
+
+    Beyond what any dry ground has, an undeclared marker is missing, a sea bed is noted, and the rest is an error.
+
+    Raises
+    ------
+    RasterError
+        When a cell holds a height that no place on earth has.
+    """
     coding = tile.coding
     height = raw * coding.scale_m + coding.offset_m
     if not math.isnan(coding.nodata):
@@ -114,35 +140,19 @@ def _heights_on_tile(index: Index, number: int, rasters: OpenRasters, col: Ints,
     if valid is not None:
         height[~valid] = np.nan
     odd = np.flatnonzero((height < _LOWEST_GROUND_M) | (height > _HIGHEST_M))
-    if odd.size:
-        height[odd] = _judge(tile, number, raw[odd], height[odd], col[odd], row[odd], tally)
-    return height
-
-
-def _judge(tile: Tile, number: int, raw: Float, height: Float, col: Ints, row: Ints, tally: Tally) -> Float:
-    """Decide about heights no dry ground has: undeclared markers are missing, a sea bed is noted, the rest an error."""
-    marker = np.isin(raw, _MARKERS) | (np.abs(raw) > 1e9)
-    impossible = ~marker & ((height < _LOWEST_SEABED_M) | (height > _HIGHEST_M))
-    if impossible.any():
-        i = int(np.argmax(impossible))
+    if not odd.size:
+        return height
+    marker = np.isin(raw[odd], _MARKERS) | (np.abs(raw[odd]) > 1e9)
+    height[odd[marker]] = np.nan
+    tally.meet(number, raw[odd[marker]])
+    odd = odd[~marker]
+    impossible = odd[(height[odd] < _LOWEST_SEABED_M) | (height[odd] > _HIGHEST_M)]
+    if impossible.size:
+        col, row = place(int(impossible[0]))
         raise RasterError(
-            f"{tile.info.name}: holds {height[i]:g} m at column {col[i]}, row {row[i]}, where ground lies between "
-            f"{_LOWEST_SEABED_M:g} and {_HIGHEST_M:g} m; correct its unit ({tile.info.unit}), scale or nodata value"
+            f"{tile.info.name}: holds {height[impossible[0]]:g} m at column {col}, row {row}, where ground lies "
+            f"between {_LOWEST_SEABED_M:g} and {_HIGHEST_M:g} m; correct its unit ({tile.info.unit}), scale or nodata"
         )
-    if marker.any():
-        counts = tally.undeclared.setdefault(number, {})
-        for value, count in zip(*np.unique(raw[marker], return_counts=True), strict=True):
-            counts[float(value)] = counts.get(float(value), 0) + int(count)
-    if not marker.all():
+    if odd.size:
         tally.seabed.add(number)
-    return np.where(marker, np.nan, height)
-
-
-def to_metres(tile: Tile, cells: NDArray[Any], valid: NDArray[np.bool_] | None) -> Float:
-    """Heights of a whole window of one raster, NaN where missing by its own account or by an undeclared marker."""
-    coding = tile.coding
-    raw = cells.astype(float)
-    height = raw * coding.scale_m + coding.offset_m
-    odd = (height < _LOWEST_GROUND_M) | (height > _HIGHEST_M)
-    missing = (raw == coding.nodata) | (odd & (np.isin(raw, _MARKERS) | (np.abs(raw) > 1e9)))
-    return np.where(missing if valid is None else missing | ~valid, np.nan, height)
+    return height

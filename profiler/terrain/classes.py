@@ -19,7 +19,7 @@ __all__ = ["sample_classes"]
 
 
 def sample_classes(paths: Sequence[Path] | Path, longitude: ArrayLike, latitude: ArrayLike) -> Ints:
-    """Class number of the cell that each point lies in.
+    r"""Class number of the cell that each point lies in.
 
     Parameters
     ----------
@@ -37,6 +37,16 @@ def sample_classes(paths: Sequence[Path] | Path, longitude: ArrayLike, latitude:
     ------
     RasterError
         When a raster is unreadable, a photo, without a CRS, or holds numbers that are not whole.
+
+    Examples
+    --------
+    >>> import tempfile
+    >>> grid = "ncols 2\nnrows 1\nxllcorner 10\nyllcorner 50\ncellsize 0.1\nNODATA_value 255\n4 255\n"
+    >>> with tempfile.TemporaryDirectory() as folder:
+    ...     _ = Path(folder, "cover.prj").write_text("Projection GEOGRAPHIC\nDatum WGS84\nUnits DD\n")
+    ...     _ = Path(folder, "cover.asc").write_text(grid)
+    ...     print(sample_classes(Path(folder), [10.02, 10.09, 10.15, 11.0], 50.05))
+    [ 4  4 -1 -1]
     """
     lon, lat, shape = as_degrees(longitude, latitude)
     tiles, _ = describe_all([paths] if isinstance(paths, Path) else paths, Reading(classes=True))

@@ -18,7 +18,7 @@ __all__ = ["Bounds", "Coding", "NotHeightsError", "RasterInfo", "Reading", "Tile
 
 _PHOTO_DRIVERS = frozenset({"JPEG", "GIF", "WEBP", "BMP"})
 _SMALL_BLOCK, _UNIT_CELLS = 64, 256
-"""Sides of blocks under 64 cells (strips of rows) are read together, up to about 256: every call to GDAL costs 20 µs."""
+"""Sides of blocks under 64 cells (strips of rows) are read together, up to about 256: each call costs 20 µs."""
 
 Affine = tuple[float, float, float, float, float, float]
 

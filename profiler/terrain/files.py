@@ -79,10 +79,10 @@ def _rasters_in(path: Path, *, named: bool) -> Iterator[RasterFile]:
         for member in members:
             name = Path(member)
             if not name.name.startswith(".") and name.suffix.lower() in _SUFFIXES - {".zip", ".gz"}:
-                yield RasterFile(path, member, f"/vsizip/{path}/{member}", named)
+                yield RasterFile(path, member, f"/vsizip/{path.as_posix()}/{member}", named)
     elif suffix == ".gz":
         if named or Path(path.stem).suffix.lower() in _SUFFIXES:
-            yield RasterFile(path, "", f"/vsigzip/{path}", named)
+            yield RasterFile(path, "", f"/vsigzip/{path.as_posix()}", named)
     else:
         yield RasterFile(path, "", str(path), named)
 

@@ -3,7 +3,6 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
-from dataclasses import dataclass
 from pathlib import Path
 from types import TracebackType
 from typing import Self
@@ -11,80 +10,19 @@ from typing import Self
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
-from profiler.errors import DatumError, InputError, MissingGroundError, RasterError
+from profiler.errors import InputError, MissingGroundError, RasterError
 from profiler.models import SampleMethod
 from profiler.terrain.describe import NotHeightsError, RasterInfo, Reading, Tile, describe
 from profiler.terrain.files import find_rasters
 from profiler.terrain.gdal import OpenRasters, gdal_session
-from profiler.terrain.index import Ints, build_index, find_hits
+from profiler.terrain.index import build_index, find_hits
 from profiler.terrain.placing import place, require_placed
-from profiler.terrain.reference import datum_key, resolve_datum, unit_factor
-from profiler.terrain.sampling import Ground, lattice_cells, sample_ground
+from profiler.terrain.reference import resolve_datum, unit_factor
+from profiler.terrain.samples import Samples, Skipped, gather_samples
+from profiler.terrain.sampling import lattice_cells, sample_ground
 from profiler.units import Float
 
-__all__ = ["Samples", "Skipped", "SourceUse", "Terrain", "as_degrees", "describe_all", "open_terrain"]
-
-
-@dataclass(frozen=True, slots=True)
-class Skipped:
-    """A file in a folder that was left out, and why: it holds something other than heights."""
-
-    path: Path
-    reason: str
-
-
-@dataclass(frozen=True, slots=True)
-class SourceUse:
-    """What one raster gave to a set of samples.
-
-    Attributes
-    ----------
-    info
-        The raster.
-    share
-        Share of all the points whose height came from it, 0 to 1.
-    blocks_read, bytes_read
-        Blocks of the raster that were read for them, and the bytes they hold unpacked.
-    read_share
-        `bytes_read` over the unpacked bytes of the whole raster.
-    notes
-        What had to be assumed, converted or settled.
-    """
-
-    info: RasterInfo
-    share: float
-    blocks_read: int
-    bytes_read: int
-    read_share: float
-    notes: tuple[str, ...]
-
-
-@dataclass(frozen=True, slots=True, eq=False)
-class Samples:
-    """Ground heights at points; arrays have the shape of the points asked for, and are read-only.
-
-    Attributes
-    ----------
-    ground_m
-        Height in metres; NaN where missing.
-    source
-        Which of `sources` the height came from; -1 where missing.
-    covered
-        The point lies on some raster: where the height is missing, that is a void, not a place off the terrain.
-    sources
-        The rasters that gave heights, in the order of their share.
-    vertical_datum
-        What all the heights count from, as far as the sources say; None when none says, or when they differ.
-    notes
-        What holds for the heights together: datums that are mixed or not all known.
-    """
-
-    ground_m: Float
-    source: Ints
-    covered: NDArray[np.bool_]
-    sources: tuple[SourceUse, ...]
-    vertical_datum: str | None
-    notes: tuple[str, ...]
+__all__ = ["Terrain", "as_degrees", "describe_all", "open_terrain"]
 
 
 class Terrain:
@@ -149,7 +87,7 @@ class Terrain:
                 )
             return float(lattice_cells(self._index, hits)[1].min())
 
-    def sample(self, longitude: ArrayLike, latitude: ArrayLike) -> Samples:
+    def sample(self, longitude: ArrayLike, latitude: ArrayLike, *, allow_mixed_datums: bool | None = None) -> Samples:
         """Heights of the ground at points, in metres.
 
         Bilinear between the four cell centres around a point, or the highest of those of them that carry weight. The
@@ -159,6 +97,9 @@ class Terrain:
         ----------
         longitude, latitude
             Degrees on WGS 84, any shapes that broadcast; any longitude goes (181 is -179), latitude -90 to 90.
+        allow_mixed_datums
+            What to do about rasters on different vertical datums, where it differs from how the terrain was opened:
+            points beside the path need not stop a study whose path is on one datum.
 
         Returns
         -------
@@ -177,37 +118,8 @@ class Terrain:
         lon, lat, shape = as_degrees(longitude, latitude)
         with gdal_session():
             ground = sample_ground(self._index, self._rasters, lon, lat, self._method)
-        numbers, place, counts = np.unique(ground.tile, return_inverse=True, return_counts=True)
-        order = np.lexsort((numbers, -counts))
-        order = order[numbers[order] >= 0]
-        rank = np.full(numbers.size, -1, dtype=np.int64)
-        rank[order] = np.arange(order.size)
-        sources = tuple(self._use(int(numbers[k]), int(counts[k]), ground) for k in order)
-        datum, datum_notes = _one_datum(sources, allow_mixed=self._allow_mixed_datums)
-        result = Samples(
-            ground_m=ground.height_m.reshape(shape),
-            source=rank[place].reshape(shape),
-            covered=ground.covered.reshape(shape),
-            sources=sources,
-            vertical_datum=datum,
-            notes=datum_notes,
-        )
-        for array in (result.ground_m, result.source, result.covered):
-            array.flags.writeable = False
-        return result
-
-    def _use(self, number: int, count: int, ground: Ground) -> SourceUse:
-        tile, tally = self._index.tiles[number], ground.tally
-        notes = tile.info.notes + tally.notes(number)
-        edge = int(np.count_nonzero(ground.edge & (ground.tile == number)))
-        if edge:
-            notes += (
-                f"{edge} points in its outermost half cell: blended with the next raster, or the edge value held",
-            )
-        read = tally.read_bytes.get(number, 0)
-        whole = tile.info.width * tile.info.height * tile.coding.item_bytes
-        share = count / ground.tile.size
-        return SourceUse(tile.info, share, tally.blocks.get(number, 0), read, read / whole, notes)
+        allow = self._allow_mixed_datums if allow_mixed_datums is None else allow_mixed_datums
+        return gather_samples(self._index.tiles, ground, shape, allow_mixed_datums=allow)
 
 
 def open_terrain(
@@ -316,30 +228,3 @@ def as_degrees(longitude: ArrayLike, latitude: ArrayLike) -> tuple[Float, Float,
             "-90 to 90; longitude comes first"
         )
     return flat_lon, flat_lat, lon.shape
-
-
-def _one_datum(sources: tuple[SourceUse, ...], *, allow_mixed: bool) -> tuple[str | None, tuple[str, ...]]:
-    """Find the vertical datum of all sources; an undeclared one proves no difference, so it is noted, not refused."""
-    seen: dict[str, RasterInfo] = {}
-    silent = 0
-    for use in sources:
-        if use.info.vertical_datum is None:
-            silent += 1
-        else:
-            seen.setdefault(datum_key(use.info.vertical_datum), use.info)
-    if len(seen) > 1:
-        found = ", ".join(f"{info.vertical_datum} ({info.name})" for info in seen.values())
-        if not allow_mixed:
-            raise DatumError(
-                f"heights on different vertical datums meet on one path: {found}; bring the rasters to one datum, "
-                "leave one out, or allow mixed datums and live with the step between them"
-            )
-        return None, (f"heights on different vertical datums are mixed, as allowed: {found}",)
-    if not seen:
-        return None, ("no raster declares its vertical datum",) if silent else ()
-    datum = next(iter(seen.values())).vertical_datum
-    if silent:
-        return datum, (
-            f"{silent} of {len(sources)} rasters declare no vertical datum: taken as {datum}, like the rest",
-        )
-    return datum, ()

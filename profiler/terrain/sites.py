@@ -11,7 +11,7 @@ __all__ = ["require_inside"]
 
 
 def require_inside(terrain: Terrain, name: str, longitude: float, latitude: float) -> None:
-    """Stop when a site lies off the terrain; offer the swap or the sign that would put it there.
+    r"""Stop when a site lies off the terrain; offer the swap or the sign that would put it there.
 
     Parameters
     ----------
@@ -26,6 +26,23 @@ def require_inside(terrain: Terrain, name: str, longitude: float, latitude: floa
     ------
     InputError
         One line: the site, how far off the nearest raster is, and the correction that would fit, if one does.
+
+    Examples
+    --------
+    >>> import tempfile
+    >>> from pathlib import Path
+    >>> from profiler.terrain import open_terrain
+    >>> grid = "ncols 2\nnrows 1\nxllcorner 10\nyllcorner 50\ncellsize 0.1\n100 200\n"
+    >>> with tempfile.TemporaryDirectory() as folder:
+    ...     _ = Path(folder, "hill.prj").write_text("Projection GEOGRAPHIC\nDatum WGS84\nUnits DD\n")
+    ...     _ = Path(folder, "hill.asc").write_text(grid)
+    ...     with open_terrain(Path(folder)) as terrain:
+    ...         require_inside(terrain, "site A", 10.05, 50.05)
+    ...         try:
+    ...             require_inside(terrain, "site B", 50.05, 10.05)
+    ...         except InputError as error:
+    ...             print(str(error).split("; ")[1])
+    longitude and latitude look swapped: longitude 10.050000, latitude 50.050000 would lie on it
 
     Notes
     -----

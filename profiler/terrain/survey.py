@@ -10,17 +10,17 @@ from pathlib import Path
 import numpy as np
 
 from profiler.errors import RasterError
-from profiler.terrain.cells import to_metres
+from profiler.terrain.cells import Tally, to_metres
 from profiler.terrain.describe import Bounds, NotHeightsError, RasterInfo, Reading, Tile, describe
 from profiler.terrain.files import find_rasters
 from profiler.terrain.gdal import gdal_session, open_raster, read_window
 from profiler.terrain.index import build_index, find_hits
-from profiler.terrain.mosaic import Skipped
 from profiler.terrain.placing import place, require_placed
+from profiler.terrain.samples import Skipped
 
 __all__ = ["FolderSurvey", "RasterSurvey", "survey"]
 
-_PIECE_CELLS = 4_000_000
+_PIECE_CELLS = 1_000_000
 
 
 @dataclass(frozen=True, slots=True)
@@ -28,12 +28,14 @@ class RasterSurvey:
     """One raster: what it declares, and what its cells hold.
 
     `void_share` (0 to 1), `min_m` and `max_m` are None when cells were not read, heights also when all are void.
+    `notes` say what was assumed, converted, or met among the cells.
     """
 
     info: RasterInfo
     void_share: float | None
     min_m: float | None
     max_m: float | None
+    notes: tuple[str, ...]
 
 
 @dataclass(frozen=True, slots=True)
@@ -77,7 +79,7 @@ class FolderSurvey:
 
 
 def survey(paths: Sequence[Path] | Path, *, read_heights: bool = True, eight_bit: bool = False) -> FolderSurvey:
-    """Describe every raster under the paths without stopping at a bad one.
+    r"""Describe every raster under the paths without stopping at a bad one.
 
     Parameters
     ----------
@@ -92,6 +94,20 @@ def survey(paths: Sequence[Path] | Path, *, read_heights: bool = True, eight_bit
     ------
     InputError, RasterError
         When a path does not exist, or the paths hold nothing like a raster.
+
+    Examples
+    --------
+    >>> import tempfile
+    >>> grid = "ncols 2\nnrows 2\nxllcorner 10\nyllcorner 50\ncellsize 0.1\nNODATA_value -9\n100 200 300 -9\n"
+    >>> with tempfile.TemporaryDirectory() as folder:
+    ...     _ = Path(folder, "hill.prj").write_text("Projection GEOGRAPHIC\nDatum WGS84\nUnits DD\n")
+    ...     _ = Path(folder, "hill.asc").write_text(grid)
+    ...     _ = Path(folder, "lost.asc").write_text(grid)
+    ...     found = survey(Path(folder))
+    >>> len(found.rasters), found.void_share, found.min_m, found.max_m
+    (1, 0.25, 100.0, 300.0)
+    >>> found.problems[0].split("/")[-1].split(",")[0]
+    'lost.asc: has no coordinate reference system'
     """
     reading = Reading(eight_bit=eight_bit, height_unit=None)
     found: list[Tile] = []
@@ -110,7 +126,9 @@ def survey(paths: Sequence[Path] | Path, *, read_heights: bool = True, eight_bit
         for tile in place(found):
             try:
                 require_placed(tile)
-                rasters.append(_survey_tile(tile) if read_heights else RasterSurvey(tile.info, None, None, None))
+                rasters.append(
+                    _survey_tile(tile) if read_heights else RasterSurvey(tile.info, None, None, None, tile.info.notes)
+                )
                 tiles.append(tile)
             except RasterError as error:
                 problems.append(str(error))
@@ -121,21 +139,29 @@ def _survey_tile(tile: Tile) -> RasterSurvey:
     """Read all cells in bands of whole blocks."""
     info, coding = tile.info, tile.coding
     rows = max(1, _PIECE_CELLS // (info.width * tile.unit[0])) * tile.unit[0]
-    lowest, highest, known = math.inf, -math.inf, 0
+    lowest, highest, known, tally = math.inf, -math.inf, 0, Tally()
     with open_raster(tile.file.source, info.path) as dataset:
         for top in range(0, info.height, rows):
             span = (top, min(top + rows, info.height))
             cells, valid = read_window(
                 dataset, coding.band, span, (0, info.width), path=info.path, masked=coding.masked
             )
-            height = to_metres(tile, cells, valid)
+            height = to_metres(
+                tile,
+                0,
+                cells.ravel().astype(float),
+                None if valid is None else valid.ravel(),
+                tally,
+                lambda i, top=top: (i % info.width, top + i // info.width),  # type: ignore[misc]
+            )
             height = height[~np.isnan(height)]
             if height.size:
                 known += height.size
                 lowest, highest = min(lowest, float(height.min())), max(highest, float(height.max()))
     cells_there = info.width * info.height
     void_share = (cells_there - known) / cells_there
-    return RasterSurvey(info, void_share, *((lowest, highest) if known else (None, None)))
+    notes = info.notes + tally.notes(0)
+    return RasterSurvey(info, void_share, lowest if known else None, highest if known else None, notes)
 
 
 def _summary(
