@@ -315,6 +315,13 @@ def test_area_that_crosses_the_antimeridian():
     assert "outside" not in note
 
 
+def test_degrees_and_grids_are_not_mixed_up():
+    with pytest.raises(InputError, match=r"crs = 32612: must be geographic, and WGS 84 / UTM zone 12N .* eastings"):
+        to_wgs84(-112, 36, 32612, degrees=True)
+    with pytest.raises(InputError, match=r"crs = 'NAD27': must be projected, and NAD27 \(EPSG:4267\) is for degrees"):
+        to_wgs84(-112, 36, "NAD27", degrees=False)
+
+
 @pytest.mark.parametrize(
     ("x", "y", "crs", "message"),
     [

@@ -262,7 +262,8 @@ def _degrees(angle: _Angle, axis: str) -> float:
     for name, part in zip(("minutes", "seconds"), numbers[1:], strict=False):
         if float(part) >= 60:
             raise _UnreadableError(f"with {name} under 60, not {part}")
-    size = sum(float(part) / scale for part, scale in zip(numbers, (1.0, 60.0, 3600.0), strict=False))
+    in_seconds = sum(float(part) * scale for part, scale in zip(numbers, (3600.0, 60.0, 1.0), strict=False))
+    size = in_seconds / 3600.0 if len(numbers) > 1 else float(numbers[0])
     if size > _LIMITS[axis]:
         swap = "; latitude comes first, or use letters" if axis == "lat" and size <= 180 and not angle.letter else ""
         raise _UnreadableError(f"a {_NAMES[axis]} of -{_LIMITS[axis]} to {_LIMITS[axis]} degrees, not {angle}{swap}")

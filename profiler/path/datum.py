@@ -60,7 +60,7 @@ DATUMS = {
 """EPSG codes of geographic coordinate systems by the names that people write (EPSG dataset; a test compares them)."""
 
 
-def to_wgs84(x: float, y: float, crs: int | str) -> tuple[float, float, str]:
+def to_wgs84(x: float, y: float, crs: int | str, *, degrees: bool | None = None) -> tuple[float, float, str]:
     """Turn a position of another datum or of a projected grid into WGS 84 degrees, and say how well that is known.
 
     Parameters
@@ -69,6 +69,9 @@ def to_wgs84(x: float, y: float, crs: int | str) -> tuple[float, float, str]:
         Easting and northing in the unit of the coordinate system, or longitude and latitude in degrees.
     crs
         EPSG code (``32612`` or ``"EPSG:32612"``), or the name of a geographic datum from `DATUMS` (``"NAD27"``).
+    degrees
+        True if x and y are degrees, False if they are not: a system of the other kind is then refused. None takes
+        either.
 
     Returns
     -------
@@ -102,6 +105,9 @@ def to_wgs84(x: float, y: float, crs: int | str) -> tuple[float, float, str]:
 
     network.set_network_enabled(False)  # type: ignore[attr-defined]  # documented, only not re-exported
     system = _crs(crs)
+    if degrees is not None and system.is_geographic != degrees:
+        kind, other = ("geographic", "eastings and northings") if degrees else ("projected", "degrees")
+        raise InputError(f"crs = {crs!r}: must be {kind}, and {_title(system)} is for {other}")
     if system.to_epsg() == 4326:
         check_positions(np.asarray([x], dtype=float), np.asarray([y], dtype=float))
         return float(x), float(y), ""

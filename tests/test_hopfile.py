@@ -1,0 +1,791 @@
+"""profiler.hopfile: what a hop file means, what it refuses and how, presets, starter, heights written back."""
+
+import hashlib
+import json
+import re
+import subprocess
+import sys
+import tomllib
+from dataclasses import fields
+from pathlib import Path
+
+import pytest
+from hypothesis import given
+from hypothesis import strategies as st
+
+from profiler import models
+from profiler.diffraction import METHODS
+from profiler.errors import InputError
+from profiler.hopfile import PRESETS, expand_preset, load_hop, parse_hop, quick_hop, starter, with_antennas
+from profiler.hopfile import schema as tables
+from profiler.hopfile.check import LENGTHS_M, _ways
+from profiler.path import geodesic
+from profiler.terrain_error import TERRAIN_ERRORS
+
+SMALL = """\
+frequency_ghz = 7.5
+[site_a]
+position = "46.0490 N, 39.1005 W"
+antenna_m = 35
+[site_b]
+position = "46.0490 N, 38.8743 W"
+antenna_m = 30
+[terrain]
+paths = ["dem"]
+[rules]
+preset = "light-route"
+"""
+
+RADIO = """
+[radio.a]
+power_dbm = 27
+gain_dbi = 36
+[radio.b]
+power_dbm = 27
+diameter_ft = 4
+efficiency = 0.6
+"""
+
+
+@pytest.fixture
+def folder(tmp_path):
+    (tmp_path / "dem").mkdir()
+    (tmp_path / "canopy.tif").touch()
+    return tmp_path
+
+
+def small(**changes: str) -> str:
+    """Text of the small hop with lines replaced: the name is the key's, ``table__key`` where two tables have it."""
+    text = SMALL
+    for name, line in changes.items():
+        table, _, key = name.rpartition("__")
+        start = text.index(f"[{table}]") if table else 0
+        at = re.compile(rf"^{key} = .*$", re.MULTILINE).search(text, start)
+        text = f"{text[: at.start()]}{line}{text[at.end() :]}"
+    return text
+
+
+def read(folder: Path, text: str) -> models.Hop:
+    return parse_hop(text, "hop.toml", folder)
+
+
+def refused(folder: Path, text: str) -> str:
+    with pytest.raises(InputError, match=r"^hop\.toml: ") as caught:
+        read(folder, text)
+    message = str(caught.value)
+    assert "\n" not in message
+    return message.removeprefix("hop.toml: ")
+
+
+# What a file means ----------------------------------------------------------------------------------------------------
+
+
+def test_small_hop(folder):
+    hop = read(folder, SMALL)
+    assert (hop.site_a.latitude, hop.site_a.longitude, hop.site_a.antenna_m) == (46.049, -39.1005, 35)
+    assert hop.frequency_hz == 7.5e9
+    assert hop.terrain == models.TerrainChoice((folder / "dem",))
+    assert hop.rules == (models.Rule(1.0, 0.6, 3.0, "light-route"),)
+    assert (hop.radio, hop.availability, hop.confidence, hop.air) == (None, None, None, models.AirChoice())
+    assert hop.name == "A to B"
+    assert hop.source == "hop.toml"
+    assert hop.assumptions == (
+        "positions: no datum is given for A and B, WGS 84 is taken",
+        "median k: none is given, 4/3 is taken (Rec. ITU-R P.530-18 §2.2, where unknown)",
+        "rules of preset light-route (lightly loaded routes): 0.6 F1 + 3 m at k = 1; common practice, no source",
+        "polarization: none is given, vertical is taken",
+    )
+
+
+def test_load_hop_takes_paths_from_its_folder_and_hashes_the_bytes(folder):
+    file = folder / "hop.toml"
+    file.write_bytes(b"\xef\xbb\xbf" + SMALL.replace("\n", "\r\n").encode())
+    hop = load_hop(file)
+    assert hop.terrain.paths == (folder / "dem",)
+    assert hop.source == "hop.toml"
+    assert hop.source_sha256 == hashlib.sha256(file.read_bytes()).hexdigest()
+
+
+@pytest.mark.parametrize(
+    ("key", "metres"),
+    [("antenna_m = 30.48", 30.48), ("antenna_ft = 100", 30.48), ("antenna_km = 0.03048", 30.48)],
+)
+def test_lengths_in_any_unit(folder, key, metres):
+    # 1 ft is exactly 0.3048 m (1959 agreement).
+    assert read(folder, small(site_a__antenna_m=key)).site_a.antenna_m == pytest.approx(metres, rel=1e-12)
+
+
+def test_other_units(folder):
+    text = small(frequency_ghz="frequency_mhz = 7_500") + (
+        "[[rules.rule]]\nk = 1.0\nfresnel_fraction = 0.6\nmargin_ft = 10\n"
+        "[[cover.obstacle]]\nname = 'mast'\nat_mi = 2\nheight_ft = 50\n"
+        "[heights.a]\ntaken_ft = [10, 20]\ncost_per_ft = 3.048\n"
+    )
+    hop = read(folder, text)
+    assert hop.frequency_hz == 7.5e9
+    assert hop.rules[1].margin_m == pytest.approx(3.048, rel=1e-12)
+    assert hop.cover.obstacles[0].from_m == pytest.approx(3218.688, rel=1e-12)  # the statute mile is 1609.344 m
+    assert hop.cover.obstacles[0].height_m == pytest.approx(15.24, rel=1e-12)
+    assert hop.heights.tower_a.taken_m == pytest.approx((3.048, 6.096), rel=1e-12)
+    assert hop.heights.tower_a.cost_per_m == pytest.approx(10.0, rel=1e-12)
+
+
+@pytest.mark.parametrize(
+    "place",
+    [
+        'position = "46°02\'56.4\\"N 39°06\'01.8\\"W"',
+        "latitude = 46.0490\nlongitude = -39.1005",
+        "easting = 492224.56\nnorthing = 5099496.88\nepsg = 32624",
+        "latitude = 46.0490\nlongitude = -39.1005\ndatum = 'WGS84'",
+    ],
+)
+def test_one_site_in_every_form_of_position(folder, place):
+    site = read(folder, small(site_a__position=place)).site_a
+    # Half a metre: the grid coordinates are this project's own conversion, given to the centimetre.
+    assert float(geodesic(-39.1005, 46.049, site.longitude, site.latitude)[0]) < 0.5
+
+
+def test_a_position_in_another_datum_is_moved_and_says_so(folder):
+    text = small(
+        site_a__position="position = '36 00 00 N, 112 00 00 W'\ndatum = 'NAD27'",
+        site_b__position="latitude = 36.1\nlongitude = -112.1\ndatum = 'EPSG:4267'",
+    )
+    hop = read(folder, text)
+    # NAD27 lies some 65 m from WGS 84 in Arizona (NIMA TR 8350.2, appendix B, from memory).
+    moved = float(geodesic(-112, 36, hop.site_a.longitude, hop.site_a.latitude)[0])
+    assert moved == pytest.approx(67, abs=10)
+    assert hop.site_a.position_notes[0] == "given as 36 00 00 N, 112 00 00 W"
+    assert hop.site_a.position_notes[1].startswith("from NAD27 (EPSG:4267) by NAD27 to WGS 84")
+    assert hop.site_b.position_notes[0] == "given as latitude 36.1, longitude -112.1"
+    assert not any("no datum" in note for note in hop.assumptions)
+
+
+def test_k_by_gradient(folder):
+    text = small(preset='preset = "p530-extended"\nmedian_gradient_n_km = -57\nlow_gradient_n_km = 39.25')
+    rules = read(folder, text + "[[rules.rule]]\ngradient_n_km = 0\nfresnel_fraction = 0.5\n").rules
+    # k = 157/(157 + dN/dh): 157/100, 157/196.25, 157/157.
+    assert [rule.k for rule in rules] == pytest.approx([1.57, 0.8, 1.0], rel=1e-12)
+
+
+def test_obstacle_by_position_stands_where_it_is(folder):
+    text = SMALL + "[[cover.obstacle]]\nname = 'silo'\nposition = '46.0495 N 39.0 W'\nwidth_m = 30\nheight_m = 20\n"
+    hop = read(folder, text)
+    silo = hop.cover.obstacles[0]
+    along = float(geodesic(-39.1005, 46.049, -39.0, 46.0495)[0])
+    assert 0.5 * (silo.from_m + silo.to_m) == pytest.approx(along, abs=1.0)
+    assert silo.to_m - silo.from_m == pytest.approx(30)
+    assert re.fullmatch(
+        r"obstacle silo: 77\d\d m from A, \d\d m (left|right) of the path, taken as on it", hop.assumptions[3]
+    )
+
+
+def test_terrain_error_in_each_of_its_ways(folder):
+    def confidence(lines: str) -> models.ConfidenceChoice:
+        return read(folder, f"{SMALL}[confidence]\n{lines}").confidence
+
+    named = confidence("terrain_kind = 'srtm-1'")
+    assert named.terrain_sigma_m == TERRAIN_ERRORS["srtm-1"].sigma_m
+    assert named.correlation_m == TERRAIN_ERRORS["srtm-1"].correlation_m
+    assert "Oksanen" in named.terrain_source
+    le90 = confidence("terrain_le90_m = 16\ncorrelation_m = 100\nterrain_source = 'producer'")
+    assert le90.terrain_sigma_m == pytest.approx(16 / 1.645, rel=1e-3)  # LE90 = 1.645 σ of a Gaussian
+    assert le90.terrain_source == "LE90 16 m / 1.645 (producer)"
+    rmse = confidence("terrain_rmse_m = 5\ncorrelation_m = inf")
+    assert (rmse.terrain_sigma_m, rmse.correlation_m, rmse.vary_k) == (5, float("inf"), False)
+
+
+def test_celsius(folder):
+    assert read(folder, f"{SMALL}[air]\ntemperature_c = 15").air.temperature_k == pytest.approx(288.15)
+
+
+# What a file may not say ----------------------------------------------------------------------------------------------
+
+
+@pytest.mark.parametrize(
+    ("changes", "more", "message"),
+    [
+        ({"frequency_ghz": "frequency_ghz = '7.5'"}, "", "frequency_ghz = '7.5': must be a number, 0.01 to 1000 GHz"),
+        ({"frequency_ghz": "frequency_mhz = 7.5"}, "", "frequency_mhz = 7.5: must be 10 to 1000000 MHz"),
+        ({"frequency_ghz": "frequency_ghz = nan"}, "", "frequency_ghz = nan: must be a number, 0.01 to 1000 GHz"),
+        ({"frequency_ghz": ""}, "", "frequency_ghz = (missing): must be a number, 0.01 to 1000 GHz"),
+        (
+            {"frequency_ghz": "frequency = 7.5"},
+            "",
+            "frequency = 7.5: must be a known key; did you mean frequency_hz?",
+        ),
+        (
+            {"site_a__antenna_m": "antenna_ft = 9000"},
+            "",
+            "site_a.antenna_ft = 9000: must be more than 0 and under 6561.68 ft",
+        ),
+        (
+            {"site_a__antenna_m": "antenna_m = true"},
+            "",
+            "site_a.antenna_m = true: must be a number, more than 0 and under 2000 m",
+        ),
+        (
+            {"site_a__antenna_m": ""},
+            "",
+            "site_a.antenna_m = (missing): must be a number, more than 0 and under 2000 m",
+        ),
+        (
+            {"site_a__antenna_m": "antenna_m = 35\nantenna_ft = 115"},
+            "",
+            "site_a.antenna_ft = 115: must be left out beside antenna_m = 35; give one",
+        ),
+        (
+            {"site_b__antenna_m": "antena_m = 30"},
+            "",
+            "site_b.antena_m = 30: must be a known key; did you mean antenna_m?",
+        ),
+        (
+            {"site_b__antenna_m": "antenna_m = 30\nfrequency_ghz = 7"},
+            "",
+            "site_b.frequency_ghz = 7: must be a known key; it belongs at the top of the file, before the first",
+        ),
+        (
+            {"site_b__antenna_m": "antenna_m = 30\nzzz = 7"},
+            "",
+            r"site_b.zzz = 7: must be a known key; known here: position,",
+        ),
+        (
+            {"site_a__position": ""},
+            "",
+            "site_a.position = (missing): must be given: position, or latitude and longitude",
+        ),
+        (
+            {"site_a__position": "position = '46 N 39 W'\nlatitude = 46"},
+            "",
+            "site_a.latitude = 46.0: must be left out beside position; give one of position, or latitude and longitude",
+        ),
+        ({"site_a__position": "latitude = 46"}, "", "site_a.longitude = (missing): must be given beside latitude"),
+        (
+            {"site_a__position": "easting = 1.0\nnorthing = 2.0"},
+            "",
+            "site_a.epsg = (missing): must be given beside easting",
+        ),
+        (
+            {"site_a__position": "easting = 1.0\nnorthing = 2.0\nepsg = 32624\ndatum = 'NAD27'"},
+            "",
+            "site_a.datum = 'NAD27': must be left out beside easting",
+        ),
+        (
+            {"site_a__position": "easting = 1.0\nnorthing = 2.0\nepsg = 4326"},
+            "",
+            "site_a.epsg = 4326: must be projected, and WGS 84 (EPSG:4326) is for degrees",
+        ),
+        (
+            {"site_a__position": "easting = 1.0\nnorthing = 2.0\nepsg = 32624"},
+            "",
+            "site_a.easting, northing = 1, 2: must lie in the area of WGS 84 / UTM zone 24N",
+        ),
+        (
+            {"site_a__position": "position = '46 N 39 W'\ndatum = 'NAD28'"},
+            "",
+            "site_a.datum = 'NAD28': must be an EPSG code or a known datum; did you mean 'NAD83'?",
+        ),
+        (
+            {"site_a__position": "position = '46 60 N 39 W'"},
+            "",
+            "site_a.position = '46 60 N 39 W': must be with minutes under",
+        ),
+        ({"site_a__position": "latitude = 96\nlongitude = 3"}, "", "site_a.latitude = 96: must be -90 to 90 degrees"),
+        (
+            {"site_a__position": "position = '46.049 N 38.8743 W'"},
+            "",
+            "site_b = '46.049000, -38.874300': must be another place than site_a",
+        ),
+        (
+            {"site_b__position": "name = 'A'\nposition = '46.049 N 38.8743 W'"},
+            "",
+            "site_b.name = 'A': must be another name than that of site_a",
+        ),
+        ({"paths": "paths = []"}, "", 'terrain.paths = []: must be a list with at least one text, like ["a.tif"]'),
+        ({"paths": "paths = 'dem'"}, "", "terrain.paths = 'dem': must be a list with at least one text"),
+        (
+            {"paths": "paths = ['dem', 'no.tif']"},
+            "",
+            "terrain.paths[1] = 'no.tif': must be a raster or a folder of rasters",
+        ),
+        (
+            {"paths": "paths = ['dem']\nmethod = 'bilinera'"},
+            "",
+            "terrain.method = 'bilinera': must be one of 'bilinear', 'highest'; did you mean 'bilinear'?",
+        ),
+        ({"preset": ""}, "", "rules.preset = (missing): must be given: rules.preset, or [[rules.rule]] tables"),
+        ({"preset": "preset = 'p530'"}, "", "rules.preset = 'p530': must be one of p530-isolated, p530-extended,"),
+        (
+            {"preset": "preset = 'p530-tropical'"},
+            "",
+            "rules.low_k = (missing): must be given beside preset 'p530-tropical': the k exceeded for about 99.9 %",
+        ),
+        (
+            {"preset": "preset = 'p530-tropical'\nlow_k = 1.4"},
+            "",
+            "rules.low_k = 1.4: must be below the median k of 1.333",
+        ),
+        (
+            {"preset": "preset = 'light-route'\nlow_k = 0.8"},
+            "",
+            "rules.low_k = 0.8: must be left out beside preset 'light-route', which fixes its k",
+        ),
+        (
+            {"preset": "low_k = 0.8\n[[rules.rule]]\nk = 1\nfresnel_fraction = 1"},
+            "",
+            "rules.low_k = 0.8: must be left out without a preset that uses it",
+        ),
+        (
+            {"preset": "[[rules.rule]]\nfresnel_fraction = 1"},
+            "",
+            "rules.rule[0].k = (missing): must be given, or gradient_n_km",
+        ),
+        (
+            {"preset": "[[rules.rule]]\nk = 1\ngradient_n_km = 0\nfresnel_fraction = 1"},
+            "",
+            "rules.rule[0].gradient_n_km = 0.0: must be left out beside k = 1; give one",
+        ),
+        (
+            {"preset": "[[rules.rule]]\ngradient_n_km = -157\nfresnel_fraction = 1"},
+            "",
+            "rules.rule[0].gradient_n_km = -157: must be more than -157 and at most 1000 N/km",
+        ),
+        (
+            {"preset": "[rules.rule]\nk = 1\nfresnel_fraction = 1"},
+            "",
+            "rules.rule = {k = 1, fresnel_fraction = 1}: must be a list of tables, each headed [[rules.rule]]",
+        ),
+        ({}, "[diffraction]\nmethod = 'knife'", "diffraction.method = 'knife': must be one of 'delta-bullington',"),
+        ({}, "[cover]\ncanopy = ['no.tif']", "cover.canopy[0] = 'no.tif': must be a raster"),
+        (
+            {},
+            "[cover]\nlandcover = 'canopy.tif'",
+            "cover.class_heights_m = (missing): must be given together with landcover",
+        ),
+        (
+            {},
+            "[cover]\nlandcover = 'canopy.tif'\nclass_heights_ft = { 41 = -5 }",
+            "cover.class_heights_ft.41 = -5: must be 0 to under 6561.68 ft",
+        ),
+        (
+            {},
+            "[cover]\nlandcover = 'canopy.tif'\nclass_heights_m = { forest = 5 }",
+            "cover.class_heights_m.forest = 5.0: must be keyed by the whole number of a land-cover class",
+        ),
+        ({}, "[[cover.obstacle]]\nheight_m = 5", "cover.obstacle[0].at_m = (missing): must be the only place"),
+        (
+            {},
+            "[[cover.obstacle]]\nheight_m = 5\nat_km = 1\nfrom_km = 1\nto_km = 2",
+            "cover.obstacle[0].from_m = 1000.0: must be the only place of the obstacle",
+        ),
+        (
+            {},
+            "[[cover.obstacle]]\nname = 'x'\nheight_m = 5\nfrom_km = 3\nto_km = 2",
+            "cover.obstacle[0].to_m = 2000.0: must be at least from_m = 3000; both count from site A",
+        ),
+        (
+            {},
+            "[[cover.obstacle]]\nheight_m = 5\nposition = '46.06 N 39.0 W'",
+            "cover.obstacle[0].position = '46.06 N 39.0 W': must be within 200 m of the path; it lies 12",
+        ),
+        (
+            {},
+            "[[cover.obstacle]]\nheight_m = 5\nposition = '46.049 N 39.2 W'",
+            "cover.obstacle[0].position = '46.049 N 39.2 W': must be between the sites; it lies 77",
+        ),
+        ({}, "[radio.a]\npower_dbm = 1\ngain_dbi = 30", "radio.b = (missing): must be a table, headed [radio.b]"),
+        ({}, RADIO.replace("efficiency = 0.6", ""), "radio.b.gain_dbi = (missing): must be given, or diameter_m"),
+        ({}, RADIO.replace("0.6", "60"), "radio.b.efficiency = 60: must be more than 0 and at most 1"),
+        ({}, RADIO + "[radio.losses]\nrain = -1", "radio.losses.rain = -1: must be 0 dB or more"),
+        ({}, RADIO + "[[radio.mode]]\nthreshold_dbm = -70", "radio.mode[0].name = (missing): must be text in quotes"),
+        (
+            {},
+            RADIO + "[[radio.mode]]\nname = 'a'\n[[radio.mode]]\nname = 'a'",
+            "radio.mode names = a, a: must be different from one another",
+        ),
+        (
+            {},
+            RADIO + "[[radio.mode]]\nname = 'a'\n[radio.mode.signature]\nwidth_mhz = 0",
+            "radio.mode[0].signature.width_mhz = 0: must be more than 0 MHz",
+        ),
+        (
+            {},
+            "[availability]\nmultipath_method = 'p530-17'\nk_percentiles = [[50, 1.3], [10, 1.4]]",
+            "availability.k_percentiles = [[50.0, 1.3], [10.0, 1.4]]: must be pairs of percent and k, both ascending",
+        ),
+        (
+            {},
+            "[availability]\nmultipath_method = 'p530-17'\n[availability.objective]\nerrored_seconds_ratio = 1e-4",
+            "availability.objective.errored_threshold_offset_db = not given: must be given together",
+        ),
+        (
+            {},
+            "[heights.b]\nlowest_m = 30\nhighest_m = 20",
+            "heights.b.highest_m = 20.0: must be at least lowest_m = 30.0",
+        ),
+        (
+            {},
+            "[heights.a]\ntaken_ft = [10, 'x']",
+            "heights.a.taken_ft[1] = 'x': must be a number, more than 0 and under",
+        ),
+        ({}, "[confidence]\ndraws = 500", "confidence.terrain_kind = (missing): must be the one statement"),
+        (
+            {},
+            "[confidence]\nterrain_kind = 'srtm'",
+            "confidence.terrain_kind = 'srtm': must be one of srtm-1, srtm-3,",
+        ),
+        (
+            {},
+            "[confidence]\nterrain_rmse_m = 5",
+            "confidence.correlation_m = (missing): must be given beside an error of your own",
+        ),
+        (
+            {},
+            "[confidence]\nterrain_kind = 'srtm-1'\nvary_k = true",
+            "confidence.vary_k = true: must be false where nothing says how k varies; give availability.k_percentiles",
+        ),
+        (
+            {},
+            "[confidence]\nterrain_kind = 'srtm-1'\ndraws = 10",
+            "confidence.draws = 10: must be 100 to 1000000",
+        ),
+        (
+            {},
+            "[confidence]\nterrain_kind = 'srtm-1'\ndraws = 1000.0",
+            "confidence.draws = 1000.0: must be a whole number, 100 to 1000000",
+        ),
+        ({}, "[air]\ntemperature_c = 5\ntemperature_k = 280", "air.temperature_c = 5.0: must be left out beside"),
+        ({}, "[air]\ntemperature_k = 15", "air.temperature_k = 15: must be 150 to 350 K"),
+    ],
+)
+def test_refused(folder, changes, more, message):
+    assert refused(folder, small(**changes) + more).startswith(message)
+
+
+def test_no_rules_at_all_lists_the_presets(folder):
+    message = refused(folder, SMALL[: SMALL.index("[rules]")])
+    assert message.startswith("rules = (missing): must be given: rules.preset, or [[rules.rule]] tables with k and")
+    assert all(name in message for name in PRESETS)
+
+
+@pytest.mark.parametrize(
+    ("text", "message"),
+    [
+        ("name = 7,5", r"hop\.toml: line 1, column 9: must be TOML: .*; text needs quotes, decimals a point"),
+        (
+            "a = 1\na = 2",
+            r"hop\.toml: line 2, column 6: must be TOML: cannot overwrite a value; give each key and each",
+        ),
+        ("a = 1\n[b", r"hop\.toml: line 2, column 3: must be TOML: "),
+        ('a = """\nb\n', r"hop\.toml: line 3, column 1: must be TOML: "),
+    ],
+)
+def test_broken_toml_says_where(text, message):
+    with pytest.raises(InputError, match=message) as caught:
+        parse_hop(text, "hop.toml")
+    assert "\n" not in str(caught.value)
+
+
+def test_files_that_cannot_be_read(tmp_path):
+    with pytest.raises(InputError, match=r"none\.toml: No such file or directory: must be a hop file that can be read"):
+        load_hop(tmp_path / "none.toml")
+    with pytest.raises(InputError, match=r"Is a directory: must be a hop file|Permission denied: must be a hop file"):
+        load_hop(tmp_path)
+    file = tmp_path / "latin.toml"
+    file.write_bytes("name = 'x'\n# 46°\n".encode("latin-1"))
+    with pytest.raises(InputError, match=r"latin\.toml: line 2: byte 0xb0: must be UTF-8 text"):
+        load_hop(file)
+
+
+json_like = st.recursive(
+    st.booleans() | st.dates() | st.integers(-5, 5) | st.floats() | st.text(max_size=5),
+    lambda inner: st.lists(inner, max_size=3) | st.dictionaries(st.text("abkmx_", max_size=4), inner, max_size=3),
+    max_leaves=5,
+)
+
+
+@given(st.data())
+def test_any_value_at_any_key_is_taken_or_refused_in_one_line(data):
+    from profiler.hopfile.build import build_hop
+
+    raw = tomllib.loads(starter().replace("terrain/", "."))
+    table = raw
+    while True:
+        key = data.draw(st.sampled_from(sorted(table)))
+        if not isinstance(table[key], dict) or data.draw(st.booleans()):
+            break
+        table = table[key]
+    table[key] = data.draw(json_like)
+    try:
+        build_hop(raw, "hop.toml", Path(), source="hop.toml")
+    except InputError as error:
+        message = str(error)
+    else:
+        message = "hop.toml: "
+    assert message.startswith("hop.toml: ")
+    assert "\n" not in message
+
+
+# Presets --------------------------------------------------------------------------------------------------------------
+
+
+@pytest.mark.parametrize(
+    ("name", "low_k", "expected"),
+    [
+        # Rec. ITU-R P.530-18 §2.2 (from memory): 1.0 F1 at the median k; at the low k 0, 0.3 or 0.6 F1.
+        ("p530-isolated", 0.8, [(4 / 3, 1.0, 0.0), (0.8, 0.0, 0.0)]),
+        ("p530-extended", 0.8, [(4 / 3, 1.0, 0.0), (0.8, 0.3, 0.0)]),
+        ("p530-tropical", 0.8, [(4 / 3, 1.0, 0.0), (0.8, 0.6, 0.0)]),
+        # Common practice, no source.
+        ("high-reliability", None, [(4 / 3, 1.0, 0.0), (2 / 3, 0.3, 0.0)]),
+        ("light-route", None, [(1.0, 0.6, 3.0)]),
+    ],
+)
+def test_presets(name, low_k, expected):
+    rules = expand_preset(name, low_k=low_k)
+    assert [(rule.k, rule.fresnel_fraction, rule.margin_m) for rule in rules] == expected
+    assert all(rule.label.startswith(name) for rule in rules)
+    assert set(PRESETS) == {"p530-isolated", "p530-extended", "p530-tropical", "high-reliability", "light-route"}
+
+
+def test_a_preset_for_longer_paths_says_so(folder):
+    notes = read(folder, small(preset="preset = 'p530-tropical'\nlow_k = 0.9")).assumptions
+    assert "preset p530-tropical is for paths over 30 km; this one has 17.5 km" in notes
+
+
+def test_preset_and_own_rules_add_up(folder):
+    hop = read(folder, SMALL + "[[rules.rule]]\nk = 0.9\nfresnel_fraction = 0\nlabel = 'mine'\n")
+    assert [rule.label for rule in hop.rules] == ["light-route", "mine"]
+
+
+# Without a file -------------------------------------------------------------------------------------------------------
+
+
+def quick(folder, **changes):
+    values = {
+        "position_a": "46.0490 N, 39.1005 W",
+        "position_b": "46.0490 N, 38.8743 W",
+        "antenna_a": 35,
+        "antenna_b": "98.4 ft",
+        "frequency_ghz": 7.5,
+        "terrain": ["dem"],
+        "preset": "light-route",
+        "base_dir": folder,
+    }
+    return quick_hop(**values | changes)
+
+
+def test_quick_hop_is_the_hop_of_the_file(folder):
+    quickly, slowly = quick(folder, antenna_b="30 m"), read(folder, SMALL)
+    for field in fields(quickly):
+        if field.name != "source":
+            assert getattr(quickly, field.name) == getattr(slowly, field.name)
+    assert quickly.source == "command line"
+    assert quick(folder).site_b.antenna_m == pytest.approx(98.4 * 0.3048)
+    assert quick(folder, preset=None, rules=[(1.0, 0.6, 2.0)]).rules == (models.Rule(1.0, 0.6, 2.0),)
+
+
+@pytest.mark.parametrize(
+    ("changes", "message"),
+    [
+        ({"antenna_a": -3}, r"command line: site_a\.antenna_m = -3: must be more than 0 and under 2000 m"),
+        (
+            {"antenna_b": "9000ft"},
+            r"command line: site_b\.antenna_ft = 9000\.0: must be more than 0 and under 6561\.68 ft",
+        ),
+        ({"antenna_b": "tall"}, r"command line: site_b\.antenna = 'tall': must be a height like 30 m or 98\.4 ft"),
+        ({"preset": None}, r"command line: rules\.preset = \(missing\): must be given: .*presets: p530-isolated"),
+        ({"position_a": "46"}, r"command line: site_a\.position = '46': must be a latitude and a longitude"),
+        ({"terrain": ["x.tif"]}, r"command line: terrain\.paths\[0\] = 'x\.tif': must be a raster or a folder"),
+    ],
+)
+def test_quick_hop_refuses(folder, changes, message):
+    with pytest.raises(InputError, match=message):
+        quick(folder, **changes)
+
+
+# The starter ----------------------------------------------------------------------------------------------------------
+
+HEADED = {
+    "": tables.HopTable,
+    "site_a": tables.SiteTable,
+    "site_b": tables.SiteTable,
+    "terrain": tables.TerrainTable,
+    "rules": tables.RulesTable,
+    "rules.rule": tables.RuleTable,
+    "diffraction": tables.DiffractionTable,
+    "cover": tables.CoverTable,
+    "cover.obstacle": tables.ObstacleTable,
+    "radio.a": tables.TerminalTable,
+    "radio.b": tables.TerminalTable,
+    "radio.mode": tables.ModeTable,
+    "radio.mode.signature": tables.SignatureTable,
+    "air": tables.AirTable,
+    "availability": tables.AvailabilityTable,
+    "availability.objective": tables.ObjectiveTable,
+    "availability.diversity": tables.DiversityTable,
+    "heights": tables.HeightsTable,
+    "heights.a": tables.TowerTable,
+    "heights.b": tables.TowerTable,
+    "confidence": tables.ConfidenceTable,
+}
+
+
+def starter_keys(text: str) -> set[tuple[str, str]]:
+    """(table, key) of every line of a hop file that holds a key, offered ones among them."""
+    found, table = set(), ""
+    for line in text.splitlines():
+        if header := re.match(r"\[+([\w.]+)\]+", line):
+            table = header[1]
+        elif key := re.match(r"#?(\w+) = ", line):
+            found.add((table, key[1]))
+    return found
+
+
+def test_starter_reads_once_its_terrain_is_filled_in(folder):
+    hop = read(folder, starter().replace('"terrain/"', '"dem"'))
+    assert "invented" in starter()
+    assert None not in (hop.radio, hop.availability, hop.confidence)
+    assert len(hop.radio.modes) == 2
+    assert "[0] = 'terrain/': must be a raster or a folder" in refused(folder, starter())
+
+
+def test_every_key_of_the_starter_is_known_and_every_known_field_is_in_it():
+    shown = starter_keys(starter())
+    unknown = [(table, key) for table, key in shown if table in HEADED and key not in _ways(HEADED[table])]
+    assert unknown == []
+    by_model = {model: set() for model in HEADED.values()}
+    for table, key in shown:
+        if table in HEADED:
+            by_model[HEADED[table]].add(_ways(HEADED[table])[key][0])
+    places = set(tables.PlaceTable.model_fields)
+    inner = {"site_a", "site_b", "terrain", "rules", "diffraction", "cover", "radio", "air", "availability", "heights"}
+    inner |= {"confidence", "rule", "obstacle", "signature", "objective", "diversity", "a", "b"}
+    missing = {
+        (model.__name__, field)
+        for model, keys in by_model.items()
+        for field in set(model.model_fields) - keys - inner
+        if not (model is tables.ObstacleTable and field in places)
+    }
+    assert missing == set()
+
+
+@pytest.mark.parametrize("line", [line for line in starter().splitlines() if re.match(r"#\w+ = ", line)])
+def test_every_offered_line_of_the_starter_is_toml(line):
+    assert len(tomllib.loads(line[1:])) == 1
+
+
+def test_starter_sites_stand_in_the_sample_country():
+    import rasterio
+    from rasterio.warp import transform
+
+    country = Path(__file__).resolve().parent.parent / "sample_dem" / "country.tif"
+    hop = parse_hop(starter().replace('"terrain/"', json.dumps(country.name)), base_dir=country.parent)
+    with rasterio.open(country) as raster:
+        for site in (hop.site_a, hop.site_b):
+            (x,), (y,) = transform("EPSG:4326", raster.crs, [site.longitude], [site.latitude])
+            assert raster.bounds.left < x < raster.bounds.right
+            assert raster.bounds.bottom < y < raster.bounds.top
+
+
+# The schema keeps up with the models ----------------------------------------------------------------------------------
+
+
+@pytest.mark.parametrize(
+    ("model", "table", "elsewhere"),
+    [
+        (models.TerrainChoice, tables.TerrainTable, set()),
+        (models.CoverChoice, tables.CoverTable, {"obstacles"}),
+        (models.Terminal, tables.TerminalTable, set()),
+        (models.RadioMode, tables.ModeTable, set()),
+        (models.Signature, tables.SignatureTable, set()),
+        (models.AirChoice, tables.AirTable, set()),
+        (models.AvailabilityChoice, tables.AvailabilityTable, set()),
+        (models.Objective, tables.ObjectiveTable, set()),
+        (models.DiversityChoice, tables.DiversityTable, set()),
+        (models.HeightsChoice, tables.HeightsTable, {"tower_a", "tower_b"}),
+        (models.TowerChoice, tables.TowerTable, set()),
+        (models.ConfidenceChoice, tables.ConfidenceTable, set()),
+        (models.Rule, tables.RuleTable, set()),
+        (models.Site, tables.SiteTable, {"surveyed_ground_m", "position_notes"}),
+        (
+            models.Hop,
+            tables.HopTable,
+            {"median_k", "diffraction_method", "sea_fraction", "assumptions", "source", "source_sha256"},
+        ),
+    ],
+)
+def test_every_field_of_a_model_can_be_said_in_the_file(model, table, elsewhere):
+    assert {field.name for field in fields(model)} - set(table.model_fields) == elsewhere
+
+
+def test_diffraction_methods_are_those_that_exist():
+    message = "must be one of " + ", ".join(repr(name) for name in METHODS)
+    with pytest.raises(InputError, match=re.escape(message)):
+        parse_hop(SMALL.replace('"dem"', '"."') + "[diffraction]\nmethod = 'none'")
+
+
+# Heights written back -------------------------------------------------------------------------------------------------
+
+
+@given(st.floats(0.5, 200), st.floats(0.5, 200))
+def test_with_antennas_changes_two_numbers_and_nothing_else(a_m, b_m):
+    text = starter().replace("antenna_m = 30", "antenna_ft = 98.43")
+    changed = with_antennas(text, a_m, b_m)
+    old, new = text.splitlines(), changed.splitlines()
+    different = [index for index, (one, other) in enumerate(zip(old, new, strict=True)) if one != other]
+    assert all(old[index].startswith("antenna_") for index in different)
+    assert len(different) <= 2
+    data = tomllib.loads(changed)
+    assert data["site_a"]["antenna_m"] == pytest.approx(a_m, abs=0.0006)
+    assert data["site_b"]["antenna_ft"] * 0.3048 == pytest.approx(b_m, abs=0.0006)
+
+
+@pytest.mark.parametrize(
+    ("text", "expected"),
+    [
+        (
+            "[site_b]\r\nantenna_m=1\r\n[ site_a ] # x\r\n  antenna_m\t= 2.50 # y",
+            "[site_b]\r\nantenna_m=8\r\n[ site_a ] # x\r\n  antenna_m\t= 7 # y",
+        ),
+        ("site_a.antenna_m = 1\nsite_b.antenna_m = 2", "site_a.antenna_m = 7\nsite_b.antenna_m = 8"),
+        (
+            "site_a = { antenna_m = 1, name = 'x' }\nsite_b = {antenna_m=2}",
+            "site_a = { antenna_m = 7, name = 'x' }\nsite_b = {antenna_m=8}",
+        ),
+        (
+            '[site_a]\n#antenna_m = 5\n"antenna_m" = 1\n[site_b]\nantenna_km = 1e-2',
+            '[site_a]\n#antenna_m = 5\n"antenna_m" = 7\n[site_b]\nantenna_km = 0.008',
+        ),
+    ],
+)
+def test_with_antennas_in_every_layout(text, expected):
+    assert with_antennas(text, 7, 8) == expected
+
+
+@pytest.mark.parametrize(
+    ("text", "a_m", "message"),
+    [
+        ("[site_a]\nantenna_m = 1\n[site_b]\nname = 'x'", 7, r"site_b: antenna_m \(or antenna_ft\): must stand .* 8 m"),
+        (
+            '[site_a]\nname = """\nantenna_m = 1"""\nantenna_m = 2\n[site_b]\nantenna_m = 1',
+            7,
+            r"write 7 m there by hand",
+        ),
+        ("[site_a]\nantenna_m = 1\n[site_b]\nantenna_m = 1", 0, r"site_a\.antenna_m = 0: must be more than 0"),
+        ("[site_a", 7, r"line 1, column 8: must be TOML"),
+    ],
+)
+def test_with_antennas_refuses(text, a_m, message):
+    with pytest.raises(InputError, match=message):
+        with_antennas(text, a_m, 8)
+
+
+def test_length_units_are_exact():
+    # International foot and statute mile (1959 agreement).
+    assert LENGTHS_M == {"m": 1, "ft": 0.3048, "km": 1000, "mi": 1609.344}
+
+
+def test_importing_the_package_does_not_import_pydantic_or_pyproj():
+    code = "import sys, profiler.hopfile, profiler.path; print({'pydantic', 'pyproj', 'rasterio'} & set(sys.modules))"
+    done = subprocess.run([sys.executable, "-c", code], capture_output=True, text=True, check=True)
+    assert done.stdout.strip() == "set()"
