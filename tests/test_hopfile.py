@@ -634,11 +634,17 @@ def starter_keys(text: str) -> set[tuple[str, str]]:
     """(table, key) of every line of a hop file that holds a key, offered ones among them."""
     found, table = set(), ""
     for line in text.splitlines():
-        if header := re.match(r"\[+([\w.]+)\]+", line):
+        if header := re.match(r"#?\[+([\w.]+)\]+", line):
             table = header[1]
         elif key := re.match(r"#?(\w+) = ", line):
             found.add((table, key[1]))
     return found
+
+
+def test_the_whole_starter_with_its_diversity_taken_up(folder):
+    text = starter().replace('"terrain/"', '"dem"')
+    text = text.replace("#[availability.d", "[availability.d").replace("#spacing_m = 10", "spacing_m = 10")
+    assert read(folder, text).availability.diversity == models.DiversityChoice(10.0)
 
 
 def test_starter_reads_once_its_terrain_is_filled_in(folder):
@@ -669,7 +675,7 @@ def test_every_key_of_the_starter_is_known_and_every_known_field_is_in_it():
     assert missing == set()
 
 
-@pytest.mark.parametrize("line", [line for line in starter().splitlines() if re.match(r"#\w+ = ", line)])
+@pytest.mark.parametrize("line", [line for line in starter().splitlines() if re.match(r"#(\w+ = |\[)", line)])
 def test_every_offered_line_of_the_starter_is_toml(line):
     assert len(tomllib.loads(line[1:])) == 1
 
@@ -760,6 +766,7 @@ def test_with_antennas_changes_two_numbers_and_nothing_else(a_m, b_m):
 )
 def test_with_antennas_in_every_layout(text, expected):
     assert with_antennas(text, 7, 8) == expected
+    assert with_antennas("\ufeff" + text, 7, 8) == "\ufeff" + expected
 
 
 @pytest.mark.parametrize(

@@ -48,13 +48,15 @@ def with_antennas(text: str, antenna_a_m: float, antenna_b_m: float) -> str:
     [site_b]
     antenna_m=31.5
     """
+    mark = text[:1] if text.startswith("\ufeff") else ""
+    text = text.removeprefix(mark)
     before = parse_tables(text, "hop file")
     for site, height_m in (("site_a", antenna_a_m), ("site_b", antenna_b_m)):
         if not 0 < height_m < 2000:
             raise InputError(f"{site}.antenna_m = {height_m}: must be more than 0 and under 2000 m")
         text = _replaced(text, site, height_m)
     _compare(before, parse_tables(text, "hop file"), {"site_a": antenna_a_m, "site_b": antenna_b_m})
-    return text
+    return mark + text
 
 
 def _replaced(text: str, site: str, height_m: float) -> str:

@@ -118,7 +118,7 @@ def parse_tables(text: str, where: str) -> dict[str, Any]:
 declaration; text needs quotes, decimals a point
     """
     try:
-        return tomllib.loads(text)
+        return tomllib.loads(text.removeprefix("\ufeff"))
     except tomllib.TOMLDecodeError as error:
         message = str(error)
         place = _PLACE.search(message)
