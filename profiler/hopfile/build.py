@@ -59,9 +59,9 @@ def build_hop(raw: Raw, where: str, base_dir: Path, *, source: str, source_sha25
     _check_sites(*sites, spot)
     rules, median_k, rule_notes = _rules(top.rules, spot, sites)
     terrain = _terrain(top.terrain, spot.into("terrain"), base_dir)
-    cover, cover_notes = _cover(top.cover or {}, spot.into("cover"), base_dir, sites)
+    cover, cover_notes = _cover(top.cover, spot.into("cover"), base_dir, sites)
     notes = (*_datum_notes(top.site_a, top.site_b), *rule_notes, *cover_notes)
-    values = _diffraction(top.diffraction or {}, spot.into("diffraction"))
+    values = _diffraction(top.diffraction, spot.into("diffraction"))
     if top.polarization is None:
         notes += ("polarization: none is given, vertical is taken",)
     else:
@@ -128,7 +128,9 @@ def _path(text: str, name: str, spot: Spot, base_dir: Path) -> Path:
     return path
 
 
-def _cover(raw: Raw, spot: Spot, base_dir: Path, sites: tuple[Site, Site]) -> tuple[CoverChoice, Notes]:
+def _cover(raw: Raw | None, spot: Spot, base_dir: Path, sites: tuple[Site, Site]) -> tuple[CoverChoice, Notes]:
+    if raw is None:
+        return CoverChoice(), ()
     from profiler.hopfile.schema import CoverTable
 
     table = check(CoverTable, raw, spot)
@@ -160,7 +162,9 @@ def _class_heights(heights: Mapping[str, float], spot: Spot) -> tuple[tuple[int,
     return tuple(sorted((int(name), height) for name, height in heights.items()))
 
 
-def _diffraction(raw: Raw, spot: Spot) -> dict[str, Any]:
+def _diffraction(raw: Raw | None, spot: Spot) -> dict[str, Any]:
+    if raw is None:
+        return {}
     from profiler.hopfile.schema import DiffractionTable
 
     values = given(check(DiffractionTable, raw, spot))
