@@ -87,6 +87,24 @@ def test_p0_in_full():
     assert float(occurrence_17_quick(50e3, 10e9, 150.0, 100.0, geoclimatic_factor=k)) == pytest.approx(p0, rel=1e-12)
 
 
+def test_p0_of_p530_18_in_full():
+    # Worked from P.530-18 §2.3.1 as this project knows it, not from the text: d = 40, f = 7, hA = 300, hB = 400,
+    # ht = 200, dN75 = 20, K = 2e-6. It holds the code to the formula, not the formula to the world.
+    hc = 350 - 40**2 / 102 - 200
+    vsr = min(0.4**1.8 * np.exp(-hc / (2.5 * 40**0.5)), 20 * 40**1.5 * 7**0.5 / 24730)
+    exponent = -0.376 * np.tanh((hc - 147) / 125) - 0.334 * 2.5**0.39 - 0.00027 * 300 + 17.85 * vsr
+    p0 = 2e-6 * 40**3.51 * 62**0.447 * 10**exponent
+    found = occurrence_18(40e3, 7e9, 300, 400, geoclimatic_factor=2e-6, dn75_n_km=20, mean_ground_m=200)
+    assert float(found) == pytest.approx(p0, rel=1e-12)
+
+
+def test_year_conversion_in_full():
+    # Worked from P.530-17 §2.3.4: latitudes 20 and 60 (cos 40° = 0.76604, cos 120° = -0.5), 50 km, 4 mrad.
+    rest = 10.5 - 2.7 * np.log10(50) + 1.7 * np.log10(5)
+    assert float(year_conversion(50e3, 4.0, 20.0)) == pytest.approx(rest - 5.6 * np.log10(1.1 + 0.76604**0.7), abs=1e-5)
+    assert float(year_conversion(50e3, 4.0, 60.0)) == pytest.approx(rest - 5.6 * np.log10(1.1 - 0.5**0.7), abs=1e-12)
+
+
 @pytest.mark.parametrize("distance_m", [30e3, 50e3, 80e3])
 def test_methods_of_different_origin_agree_where_they_should(distance_m):
     # Flat path in an average climate (dN1 -200 N/km, hL 100 m, c = 1). P.530 states a standard deviation of its error

@@ -84,6 +84,19 @@ def test_model_is_the_published_functions():
     assert found.year_percent.multipath == pytest.approx(fade_percent(model.occurrence_percent * conversion, 20.0))
 
 
+def test_polarisation_and_signature_reach_their_methods():
+    # Flat drops take more of the horizontal (P.838-3); each phase of the signature counts by its own depth (P.530 §5.1).
+    tilted = [replace(PATH, frequency_hz=18e9, polarization=name) for name in ("horizontal", "vertical")]
+    horizontal, vertical = (outage_model(path, FULL).rain_fade_001_db for path in tilted)
+    assert horizontal > 1.1 * vertical
+
+    def selective(deep_db, other_db):
+        return outage_model(PATH, CHOICES["p530-17"], signature=Signature(30e6, deep_db, other_db)).selective_percent
+
+    assert selective(18.0, 24.0) == pytest.approx(selective(24.0, 18.0))
+    assert 2 * selective(18.0, 24.0) == pytest.approx(selective(18.0, 18.0) + selective(24.0, 24.0))
+
+
 @given(methods, diversities, signatures, rates, margins_db, st.floats(0.1, 20.0))
 def test_more_margin_never_more_outage(method, diversity, signature, rate, margin_db, more_db):
     choice = replace(CHOICES[method], diversity=diversity, rain_rate_mm_h=rate)
