@@ -85,7 +85,7 @@ def test_model_is_the_published_functions():
 
 
 def test_polarisation_and_signature_reach_their_methods():
-    # Flat drops take more of the horizontal (P.838-3); each phase of the signature counts by its own depth (P.530 §5.1).
+    # Flat drops take more of the horizontal (P.838-3); each phase of a signature has its own depth (P.530-17 §5.1).
     tilted = [replace(PATH, frequency_hz=18e9, polarization=name) for name in ("horizontal", "vertical")]
     horizontal, vertical = (outage_model(path, FULL).rain_fade_001_db for path in tilted)
     assert horizontal > 1.1 * vertical
