@@ -83,8 +83,9 @@ def _positive_or_none(value: float | None) -> bool:
 class Site:
     """One end of a hop.
 
-    ``surveyed_ground_m`` replaces the raster's ground at the site. ``position_notes`` say how the position was given
-    when that was not plain WGS 84 degrees.
+    ``surveyed_ground_m`` replaces the raster's ground at the site. Within ``clearing_m`` of the site nothing stands on
+    the ground, whatever the cover says. ``position_notes`` say how the position was given when that was not plain
+    WGS 84 degrees.
     """
 
     name: str
@@ -92,6 +93,7 @@ class Site:
     latitude: float
     antenna_m: float
     surveyed_ground_m: float | None = None
+    clearing_m: float = 0.0
     position_notes: tuple[str, ...] = ()
 
     def __post_init__(self) -> None:

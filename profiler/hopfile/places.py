@@ -89,6 +89,7 @@ def build_site(raw: Mapping[str, Any], spot: Spot, name: str) -> Site:
             latitude=latitude,
             antenna_m=table.antenna_m,
             surveyed_ground_m=table.ground_m,
+            clearing_m=table.clearing_m,
             position_notes=notes,
         )
 

@@ -92,6 +92,7 @@ class SiteTable(PlaceTable):
     name: str | None = Field(None, min_length=1)
     antenna_m: float = Field(gt=0, lt=2000)
     ground_m: float | None = Field(None, ge=-500, le=9000)
+    clearing_m: float = Field(0.0, ge=0, le=5000)
 
 
 class TerrainTable(Table):

@@ -6,7 +6,8 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from profiler.cover import cover_along
+from profiler.cover import Cover, cover_along
+from profiler.errors import InputError
 from profiler.geometry import corridor_offsets
 from profiler.models import Hop, Profile, Site, frozen_array
 from profiler.path import PathLine, across, geodesic, trace
@@ -66,7 +67,7 @@ def read_ground(
     samples = terrain.sample(line.longitude, line.latitude)
     ground_m, filled, fill_notes = _without_gaps(hop, line, samples)
     ground_m, differences = _with_surveys(hop, ground_m)
-    cover = cover_along(hop.cover, line.along_m, line.longitude, line.latitude, method=hop.terrain.method)
+    cover = _cover(hop, line, line.longitude, line.latitude)
     surveyed = np.zeros(line.points, dtype=bool)
     surveyed[[0, -1]] = [difference is not None for difference in differences]
     profile = Profile(
@@ -78,6 +79,7 @@ def read_ground(
         filled=filled,
         surveyed=surveyed,
     )
+    _require_above_cover(hop, profile)
     use = TerrainUse(
         method=hop.terrain.method,
         spacing_m=line.spacing_m,
@@ -138,6 +140,30 @@ def _with_surveys(hop: Hop, ground_m: Float) -> tuple[Float, tuple[float | None,
     return ground_m, differences
 
 
+def _cover(hop: Hop, line: PathLine, longitude: Float, latitude: Float) -> Cover:
+    """Cover at points of the path or beside it, with the clearings around the sites taken out."""
+    cover = cover_along(hop.cover, line.along_m, longitude, latitude, method=hop.terrain.method)
+    heights, notes = np.array(cover.cover_m), list(cover.notes)
+    for site, from_site_m in ((hop.site_a, line.along_m), (hop.site_b, line.distance_m - line.along_m)):
+        if site.clearing_m > 0:
+            heights[from_site_m <= site.clearing_m] = 0.0
+            notes.append(f"no cover within {site.clearing_m:g} m of {site.name}, as the hop file says")
+    return Cover(frozen_array(heights), tuple(notes))
+
+
+def _require_above_cover(hop: Hop, profile: Profile) -> None:
+    """Stop when an antenna stands inside the cover at its own site: no loss has a value there."""
+    for key, site, cover_m in (
+        ("site_a", hop.site_a, float(profile.cover_m[0])),
+        ("site_b", hop.site_b, float(profile.cover_m[-1])),
+    ):
+        if site.antenna_m <= cover_m:
+            raise InputError(
+                f"{key}.antenna_m = {site.antenna_m:g}: must be above the {cover_m:.1f} m of cover at {site.name};"
+                f" raise it, or give {key}.clearing_m if the trees around the mast are cut"
+            )
+
+
 def _corridor(hop: Hop, terrain: Terrain, profile: Profile, line: PathLine, cell_m: float) -> Corridor | None:
     """Surface across the path to the edge of the widest zone asked for; the path's own points keep their profile.
 
@@ -151,7 +177,7 @@ def _corridor(hop: Hop, terrain: Terrain, profile: Profile, line: PathLine, cell
     offset = corridor_offsets(line.along_m, hop.frequency_hz, fraction, max(0.5 * cell_m, widest / _ACROSS_STEPS))
     longitude, latitude = across(line, offset)
     ground = np.array(terrain.sample(longitude, latitude).ground_m)
-    cover = cover_along(hop.cover, line.along_m, longitude, latitude, method=hop.terrain.method)
+    cover = _cover(hop, line, longitude, latitude)
     surface = ground + cover.cover_m
     surface[:, offset.shape[1] // 2] = profile.surface_m
     return Corridor(frozen_array(offset), frozen_array(surface))
