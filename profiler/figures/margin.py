@@ -1,0 +1,165 @@
+"""The margin figure: whether the radio has enough margin, which mechanism takes it, and where the decibels go.
+
+Why these drawings. The decision is whether the fade margin meets the objective and, if not, what to change. Outage
+against margin answers the first at a glance (the margin there is, the margin that is needed) and names the mechanism to
+fight: a bigger antenna helps against one that falls with the margin, and not against one that is level. The level
+diagram answers the second: it holds every line of the budget at its size, so that what can be won shows.
+"""
+
+from __future__ import annotations
+
+from typing import TYPE_CHECKING
+
+from profiler.errors import InputError
+from profiler.figures import style
+from profiler.figures.blocks import columns_at, foot, head, heading, rows, titles
+from profiler.figures.levels import draw_levels, steps_of
+from profiler.figures.outage import draw_outage, percent_text
+from profiler.figures.page import LINE_IN, MARGIN_IN, PAGE_WIDTH_IN, Page
+from profiler.figures.scale import Scale, minus
+from profiler.figures.words import hop_facts, link_notes, outage_words
+
+if TYPE_CHECKING:
+    from matplotlib.figure import Figure
+
+    from profiler.budget import Budget, ModeBudget
+    from profiler.study.result import Study
+
+__all__ = ["margin_figure"]
+
+_LEFT_ROOM = 5.55
+_RIGHT = MARGIN_IN + _LEFT_ROOM + 0.95
+_RIGHT_ROOM = PAGE_WIDTH_IN - MARGIN_IN - _RIGHT
+
+
+def margin_figure(study: Study, *, feet: bool = False) -> Figure:
+    """Draw the level diagram and the outage of a hop against its objective.
+
+    Parameters
+    ----------
+    study
+        What to draw; it needs a budget, and shows the outage where there is one.
+    feet
+        Statute miles in place of kilometres.
+
+    Returns
+    -------
+    Figure
+
+    Raises
+    ------
+    InputError
+        If the hop has no radio, so that there is no budget to draw.
+    """
+    if study.budget is None:
+        raise InputError(
+            f"{study.hop.source}: radio = not given: must be given for the margin figure; give a [radio] or leave the "
+            "figure out"
+        )
+    way, row = _weaker(study.budget)
+    with style.defaults():
+        page = Page()
+        top = head(
+            page,
+            word=_word(study),
+            good=_met(study),
+            sentence=_sentence(study, row),
+            name=study.hop.name,
+            facts=hop_facts(study.hop, study.line.distance_m, Scale(feet)),
+        )
+        left = heading(page, MARGIN_IN, top + 0.14, f"Levels {way}{f', mode {row.name}' if row.name else ''}")
+        _, left = draw_levels(page, MARGIN_IN, left + style.SMALL * LINE_IN + 0.02, _LEFT_ROOM, steps_of(row))
+        left = _targets(page, _modes(page, left + 0.14, study), study)
+        right = top
+        if study.availability is not None and study.outage_curve is not None:
+            right = heading(page, _RIGHT, top + 0.14, "Outage against fade margin")
+            _, right = draw_outage(page, _RIGHT, right, _RIGHT_ROOM, study.availability, study.outage_curve)
+        return page.finish(foot(page, max(left, right) + 0.12, link_notes(study)))
+
+
+def _weaker(budget: Budget) -> tuple[str, ModeBudget]:
+    """Return the direction with less margin (or less level, where no threshold is known), in its first mode."""
+    both = (("A to B", budget.a_to_b.modes[0]), ("B to A", budget.b_to_a.modes[0]))
+    return min(
+        both, key=lambda pair: pair[1].received_dbm if pair[1].fade_margin_db is None else pair[1].fade_margin_db
+    )
+
+
+def _met(study: Study) -> bool | None:
+    objective = None if study.availability is None else study.availability.objective
+    return None if objective is None else objective.met
+
+
+def _word(study: Study) -> str:
+    """Give the verdict on the margin alone; the hop as a whole is judged on the profile figure."""
+    if study.availability is None or study.availability.objective is None:
+        return "NOT JUDGED"
+    return {True: "OBJECTIVE MET", False: "OBJECTIVE MISSED", None: "UNDECIDED"}[_met(study)]
+
+
+def _sentence(study: Study, row: ModeBudget) -> str:
+    """Say what margin there is, what is needed, and what limits it."""
+    if row.fade_margin_db is None:
+        return minus(f"Received level {row.received_dbm:.1f} dBm; no threshold is given, so there is no fade margin")
+    margin = minus(f"{row.fade_margin_db:.1f} dB")
+    outage = study.availability
+    if outage is None:
+        return f"Fade margin {margin}; no outage predicted, as no climate numbers are given"
+    lost = outage_words(outage)
+    if outage.objective is None:
+        return f"Fade margin {margin}; {lost}; no objective given"
+    needed = outage.objective.required_margin_db
+    if needed is None:
+        return f"Fade margin {margin}; no margin meets the objective; {lost}"
+    return f"Fade margin {margin}, needed {needed:.1f} dB; {lost}"
+
+
+def _modes(page: Page, top: float, study: Study) -> float:
+    """List every mode in both directions, with its outage in the weaker one."""
+    assert study.budget is not None
+    outages = {each.mode: each for each in study.mode_outages}
+    cells: list[tuple[str, ...]] = [
+        ("mode", "A to B", "B to A", "threshold", "margin", "worst month", "year", "objective")
+    ]
+    for there, back in zip(study.budget.a_to_b.modes, study.budget.b_to_a.modes, strict=True):
+        margins = [each.fade_margin_db for each in (there, back) if each.fade_margin_db is not None]
+        found = outages.get(there.name)
+        met = None if found is None else found.met
+        cells.append(
+            (
+                there.name or "(unnamed)",
+                minus(f"{there.received_dbm:.1f} dBm"),
+                minus(f"{back.received_dbm:.1f} dBm"),
+                "–" if there.threshold_dbm is None else minus(f"{there.threshold_dbm:.1f} dBm"),
+                minus(f"{min(margins):.1f} dB") if margins else "–",
+                "–" if found is None else percent_text(found.worst_month_percent),
+                "–" if found is None else percent_text(found.year_percent),
+                {True: "met", False: "missed", None: "–"}[met],
+            )
+        )
+    top = heading(page, MARGIN_IN, top, "Modes: received level both ways; margin and outage the weaker way")
+    columns = columns_at(MARGIN_IN, (0.82, 0.76, 0.76, 0.78, 0.66, 0.92, 0.78, 0.7))
+    names = ("mode", "A to B", "B to A", "threshold", "margin", "worst month", "year", "objective")
+    return rows(page, titles(page, top, columns, names), columns, cells)
+
+
+def _targets(page: Page, top: float, study: Study) -> float:
+    """List what was asked for, what is reached, and which margin would do."""
+    objective = None if study.availability is None else study.availability.objective
+    if objective is None:
+        return top
+    cells = [
+        (
+            each.name.replace("_", " "),
+            f"{each.required:.4g}",
+            f"{each.achieved:.3g}" if each.achieved < 1000 else f"{each.achieved:.0f}",
+            "met" if each.met else "missed",
+            "none does" if each.required_margin_db is None else f"{each.required_margin_db:.1f} dB",
+            each.limited_by,
+        )
+        for each in objective.targets
+    ]
+    top = heading(page, MARGIN_IN, top + 0.14, "Objective")
+    columns = columns_at(MARGIN_IN, (2.2, 0.7, 0.8, 0.7, 1.08, 0.8))
+    names = ("target", "asked", "reached", "", "margin needed", "limited by")
+    return rows(page, titles(page, top, columns, names), columns, cells)

@@ -1,0 +1,177 @@
+"""Outage against the fade margin, each mechanism and all together, with what was asked for drawn in."""
+
+from __future__ import annotations
+
+import math
+from typing import TYPE_CHECKING
+
+import numpy as np
+
+from profiler.availability import MECHANISMS
+from profiler.figures import style
+from profiler.figures.axes import draw_grid, label_side
+from profiler.figures.page import LINE_IN, Page
+from profiler.figures.scale import nice_ticks
+from profiler.figures.text import width_in
+
+if TYPE_CHECKING:
+    from matplotlib.axes import Axes
+
+    from profiler.availability import Availability, OutageCurve, Outages
+    from profiler.units import Float
+
+__all__ = ["draw_outage", "percent_text", "target_lines"]
+
+_LOOKS: dict[str, tuple[str, tuple[float, ...], float]] = {
+    "total": (style.INK, (), 1.8),
+    "multipath": ("#0072b2", (5, 2), 1.2),
+    "selective": ("#a0527a", (6, 1.5, 1.5, 1.5), 1.2),
+    "rain": ("#4d8a7a", (1.5, 1.5), 1.4),
+    "obstruction": ("#b8860b", (9, 3), 1.2),
+}
+_SUPERSCRIPT = str.maketrans("-0123456789", "⁻⁰¹²³⁴⁵⁶⁷⁸⁹")
+_HALF_IN = 2.0
+_RIGHT_IN = 1.02
+_PER_MINUTE = 100.0 / (365.25 * 1440.0)
+
+
+def percent_text(percent: float) -> str:
+    """Write a share of time in percent with two digits.
+
+    Examples
+    --------
+    >>> percent_text(0.0123), percent_text(4.2e-6), percent_text(0.0)
+    ('0.012 %', '4.2·10⁻⁶ %', '0 %')
+    """
+    if percent and percent < 1e-3:
+        power = math.floor(math.log10(percent))
+        return f"{percent / 10.0**power:.1f}·10{str(power).translate(_SUPERSCRIPT)} %"
+    return f"{percent:.2g} %" if percent < 99.5 else "100 %"
+
+
+def target_lines(outage: Availability, period: str) -> list[tuple[float, list[str]]]:
+    """Targets of a period, as the percentage that may be lost and the words beside its line."""
+    found: list[tuple[float, list[str]]] = []
+    for target in () if outage.objective is None else outage.objective.targets:
+        if target.name == "minutes_per_year":
+            line = (target.required * _PER_MINUTE, [f"{target.required:g} min", "a year asked"])
+        elif target.name in ("year_percent", "worst_month_percent"):
+            line = (target.required, [percent_text(target.required), "asked"])
+        else:
+            kind = "errored" if target.name == "errored_seconds_ratio" else "sev. errored"
+            line = (100.0 * target.required, [percent_text(100.0 * target.required), f"{kind} s"])
+        of_year = target.name in ("minutes_per_year", "year_percent")
+        if of_year == (period == "year"):
+            found.append(line)
+    return found
+
+
+def draw_outage(
+    page: Page, left: float, top: float, width: float, outage: Availability, curve: OutageCurve
+) -> tuple[tuple[Axes, Axes], float]:
+    """Draw the worst month above and the year below; returns both axes and how far down they reach."""
+    room = width - _RIGHT_IN
+    highest = max(float(curve.margin_db[-1]), 1.08 * outage.fade_margin_db)
+    at = max(outage.fade_margin_db, 0.0)
+    top = _key(page, left, top, width, outage)
+    top = _margin_labels(page, left, top, room, outage, at / highest)
+    pair = []
+    for period, outages in (("worst month", curve.worst_month_percent), ("year", curve.year_percent)):
+        axes = page.axes(left, top, room, _HALF_IN, label=period)
+        _curves(axes, curve.margin_db, outages, target_lines(outage, period), period, room)
+        _margins(axes, outage, at, highest)
+        _target_words(page, left + room, top, axes, target_lines(outage, period))
+        pair.append(axes)
+        top += _HALF_IN + 0.12
+    ticks = nice_ticks(0.0, highest, 8)
+    pair[1].set_xticks(ticks, labels=[f"{tick:g}" for tick in ticks])
+    bottom = top - 0.12 + 0.18
+    page.words(left + room / 2, bottom, "flat fade margin, dB", align="center", gid="margin")
+    return (pair[0], pair[1]), bottom + style.BODY * LINE_IN
+
+
+def _curves(
+    axes: Axes,
+    margin_db: Float,
+    outages: Outages[Float],
+    targets: list[tuple[float, list[str]]],
+    period: str,
+    room_in: float,
+) -> None:
+    """Draw the curves of one period, from 100 % down to a decade under what matters."""
+    lowest = min([1e-3, *(percent / 30.0 for percent, _ in targets)])
+    bottom = 10.0 ** max(math.floor(math.log10(lowest)), -8)
+    axes.set_yscale("log")
+    for name in ("total", *MECHANISMS):
+        part = outages.total if name == "total" else outages.part(name)  # type: ignore[arg-type]
+        if part is None:
+            continue
+        color, dashes, weight = _LOOKS[name]
+        shown = np.where(part > 0.0, part, np.nan)
+        axes.plot(margin_db, shown, color=color, dashes=dashes or (None, None), lw=weight, label=name)
+    axes.set_ylim(bottom, 150.0)
+    powers = range(round(math.log10(bottom)), 3)
+    axes.set_yticks(
+        [10.0**power for power in powers],
+        labels=[f"{10.0**power:g}" if power >= -3 else f"10{str(power).translate(_SUPERSCRIPT)}" for power in powers],
+    )
+    axes.minorticks_off()
+    label_side(axes, f"outage, % of the\n{'worst month' if period != 'year' else 'year'}", width_in=room_in)
+    for percent, _ in targets:
+        axes.axhline(percent, color=style.FAIL, lw=1.2, dashes=(6, 2), label="asked")
+
+
+def _margins(axes: Axes, outage: Availability, at: float, highest: float) -> None:
+    """Mark the margin there is and the one that is needed, and rule the axes."""
+    axes.set_xlim(0.0, highest)
+    axes.set_xticks([])
+    draw_grid(axes, nice_ticks(0.0, highest, 8), [float(tick) for tick in axes.get_yticks()])
+    axes.axvline(at, color=style.INK, lw=1.2, label="margin")
+    needed = None if outage.objective is None else outage.objective.required_margin_db
+    if needed is not None and needed <= highest:
+        axes.axvline(needed, color=style.FAIL, lw=1.2, dashes=(2, 1.5), label="needed")
+
+
+def _margin_labels(page: Page, left: float, top: float, room: float, outage: Availability, share: float) -> float:
+    """Name the two upright lines, each in a row of its own so that they never meet."""
+    highest = max(outage.fade_margin_db, 0.0) / share if share > 0 else 60.0
+    rows = [(f"there is: {outage.fade_margin_db:.1f} dB".replace("-", "−"), share, style.INK)]
+    needed = None if outage.objective is None else outage.objective.required_margin_db
+    if needed is not None:
+        rows.append((f"needed: {needed:.1f} dB", min(needed / highest, 1.0), style.FAIL))
+    for words, where, color in rows:
+        half = width_in(words, style.BODY, bold=True) / 2
+        x = min(max(left + where * room, left + half), left + room - half)
+        page.words(x, top, words, bold=True, color=color, align="center")
+        top += style.BODY * LINE_IN
+    return top + 0.04
+
+
+def _target_words(page: Page, left: float, top: float, axes: Axes, targets: list[tuple[float, list[str]]]) -> None:
+    """Name the level lines at their right ends, moved apart where they stand close."""
+    bottom, ceiling = np.log10(axes.get_ylim())
+    wanted = sorted((top + _HALF_IN * (ceiling - math.log10(p)) / (ceiling - bottom), words) for p, words in targets)
+    free = top
+    for y, words in wanted:
+        depth = len(words) * style.SMALL * LINE_IN
+        at = max(y - depth / 2, free)
+        page.words(left + 0.06, at, words, size=style.SMALL, color=style.FAIL)
+        free = at + depth
+
+
+def _key(page: Page, left: float, top: float, width: float, outage: Availability) -> float:
+    """Name the curves that there are, and the mechanisms that nothing was given for."""
+    x, y, depth = left, top, style.SMALL * LINE_IN
+    for name in ("total", *(each for each in MECHANISMS if each not in outage.missing)):
+        color, dashes, weight = _LOOKS[name]
+        words = name
+        page.stroke([x, x + 0.3], [y + depth / 2] * 2, color=color, dashes=dashes or (None, None), lw=weight)
+        page.words(x + 0.35, y, words, size=style.SMALL)
+        x += 0.35 + width_in(words, style.SMALL) + 0.16
+    y += depth + 0.02
+    if outage.missing:
+        words = f"not counted, nothing given for it: {', '.join(outage.missing)}"
+        page.words(left, y, words, size=style.SMALL, color=style.MUTED)
+        y += depth + 0.02
+    del width
+    return y + 0.02

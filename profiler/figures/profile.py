@@ -1,0 +1,193 @@
+"""The profile: ground over the bulged earth, what stands on it, the ray, its zone and what must be free of it."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from typing import TYPE_CHECKING
+
+import numpy as np
+from numpy.typing import NDArray
+
+from profiler.figures import style
+from profiler.figures.axes import draw_grid, label_side
+from profiler.figures.places import TightPlace, rule_position
+from profiler.figures.scale import Scale, k_text, minus, nice_ticks
+from profiler.geometry import ray_height
+from profiler.models import frozen_array
+from profiler.units import Float
+
+if TYPE_CHECKING:
+    from matplotlib.axes import Axes
+
+    from profiler.study.result import Study
+
+__all__ = ["AXES_IN", "Scene", "draw_profile", "draw_tight_places", "scene", "thinned"]
+
+_MOST_POINTS = 4000
+
+AXES_IN = 7.0
+"""Width of the profile and of the strips under it, inches."""
+
+
+def thinned(values: Float, most: int = _MOST_POINTS) -> NDArray[np.intp]:
+    """Find indices that draw a line of many points with few: the lowest and the highest of every stretch, and the ends.
+
+    Examples
+    --------
+    >>> thinned(np.array([0.0, 5.0, 1.0, -3.0, 0.0]), most=99).tolist()
+    [0, 1, 2, 3, 4]
+    >>> 0 < thinned(np.sin(np.arange(100_000.0))).size <= 4000
+    True
+    """
+    count = values.size
+    if count <= most:
+        return np.arange(count)
+    stretches = most // 2 - 1
+    width = -(-count // stretches)
+    padded = np.concatenate((values, np.full(-count % width, values[-1]))).reshape(-1, width)
+    first = np.arange(padded.shape[0]) * width
+    found = np.concatenate(([0, count - 1], first + padded.argmin(axis=1), first + padded.argmax(axis=1)))
+    return np.unique(np.minimum(found, count - 1))
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Scene:
+    """What the profile draws, in the units it shows, thinned for drawing; heights carry the bulge of the governing k.
+
+    ``low`` and ``high`` bound the surface with 5 % and 95 % confidence; None without a confidence analysis.
+    """
+
+    x: Float
+    ground: Float
+    surface: Float
+    ray: Float
+    f1: Float
+    required: Float
+    filled: NDArray[np.bool_]
+    surveyed: tuple[Float, Float]
+    reflections: tuple[Float, Float]
+    low: Float | None
+    high: Float | None
+    k: float
+
+
+def scene(study: Study, scale: Scale) -> Scene:
+    """Gather what the profile draws, over the earth bulged at the governing rule's k."""
+    profile, result = study.profile, study.governing
+    check = result.check
+    keep = np.union1d(thinned(profile.surface_m), check.tight)
+    bulged, x = profile.ground_m + check.bulge_m, profile.distance_m
+    mirrors = [each.distance_m for each in result.reflections if not each.screened]
+    band = _surface_band(study)
+
+    def shown(values: Float) -> Float:
+        return frozen_array(scale.height(values[keep]))
+
+    return Scene(
+        x=frozen_array(scale.distance(x[keep])),
+        ground=shown(bulged),
+        surface=shown(bulged + profile.cover_m),
+        ray=shown(ray_height(x, study.centre_a_m, study.centre_b_m)),
+        f1=shown(check.f1_m),
+        required=shown(check.required_m),
+        filled=profile.filled[keep],
+        surveyed=(scale.distance(x[profile.surveyed]), scale.height(bulged[profile.surveyed])),
+        reflections=(
+            scale.distance(np.array(mirrors)),
+            scale.height(np.interp(mirrors, x, bulged + profile.cover_m)),
+        ),
+        low=None if band is None else shown(band[0]),
+        high=None if band is None else shown(band[1]),
+        k=check.k,
+    )
+
+
+def _surface_band(study: Study) -> tuple[Float, Float] | None:
+    """Heights between which the bulged surface lies with 90 % confidence: what is left of the ray by the surplus."""
+    if study.confidence is None:
+        return None
+    check = study.governing.check
+    band = study.confidence.rules[rule_position(study, study.governing)].surplus
+    top = ray_height(study.profile.distance_m, study.centre_a_m, study.centre_b_m) - check.required_m
+    return top - band.high_m, top - band.low_m
+
+
+def draw_profile(
+    axes: Axes,
+    view: Scene,
+    scale: Scale,
+    *,
+    distance_limits: tuple[float, float],
+    height_limits: tuple[float, float] | None,
+) -> None:
+    """Draw the profile; the limits are in the units shown."""
+    bottom, top = _height_limits(view) if height_limits is None else height_limits
+    base = min(bottom, float(view.ground.min()))
+    axes.fill_between(view.x, view.ray - view.f1, view.ray + view.f1, fc=style.ZONE, ec=style.ZONE_EDGE, lw=0.5)
+    free = view.ray - view.required
+    axes.fill_between(view.x, free, view.ray, fc=style.ZONE_REQUIRED, lw=0)
+    axes.fill_between(view.x, base, view.ground, fc=style.GROUND, lw=0)
+    if (view.surface > view.ground).any():
+        axes.fill_between(view.x, view.ground, view.surface, fc=style.COVER, ec=style.COVER_EDGE, lw=0.4)
+    if view.filled.any():
+        axes.fill_between(
+            view.x, base, view.ground, where=_widened(view.filled), fc="none", ec=style.MUTED, hatch="xxxx", lw=0
+        )
+    if (view.surface > free).any():
+        axes.fill_between(
+            view.x, free, view.surface, where=view.surface > free, interpolate=True, fc=style.FAIL, lw=0, zorder=1.5
+        )
+    axes.plot(view.x, view.ground, color=style.GROUND_EDGE, lw=0.9, label="ground")
+    if view.low is not None and view.high is not None:
+        axes.fill_between(view.x, view.low, view.high, fc=style.INK, alpha=0.22, lw=0, zorder=2.4, label="band")
+    axes.plot(view.x, free, color=style.RAY, lw=0.8, dashes=(4, 2), label="required")
+    axes.plot(view.x, view.ray, color=style.RAY, lw=1.4, label="ray")
+    _masts(axes, view)
+    axes.plot(*view.surveyed, ls="", marker="s", ms=3.6, mfc="white", mec=style.INK, mew=0.8, label="surveyed")
+    axes.plot(*view.reflections, ls="", marker="D", ms=3.4, mfc="white", mec=style.RAY, mew=0.8, label="reflections")
+    axes.set_xlim(*distance_limits)
+    axes.set_ylim(bottom, top)
+    ticks = nice_ticks(bottom, top, 8)
+    axes.set_yticks(ticks, labels=[minus(f"{tick:g}") for tick in ticks])
+    label_side(
+        axes, f"height above datum, {scale.height_unit},\nwith the bulge at k = {k_text(view.k)}", width_in=AXES_IN
+    )
+    axes.set_xticks([])
+    draw_grid(axes, nice_ticks(*distance_limits, 12), ticks)
+
+
+def _masts(axes: Axes, view: Scene) -> None:
+    """Draw the antennas' supports from the ground to the ray at both ends."""
+    x, ground, ray = view.x[[0, -1]], view.ground[[0, -1]], view.ray[[0, -1]]
+    axes.vlines(x, ground, ray, color=style.INK, lw=2.2, clip_on=False, zorder=3)
+    axes.plot(x, ray, ls="", marker="o", ms=4.2, mfc="white", mec=style.INK, mew=1.1, clip_on=False, zorder=4)
+
+
+def _widened(filled: NDArray[np.bool_]) -> NDArray[np.bool_]:
+    """Mark filled points and their neighbours: the line between a known and a filled point is filled too."""
+    wide = filled.copy()
+    wide[1:] |= filled[:-1]
+    wide[:-1] |= filled[1:]
+    return wide
+
+
+def _height_limits(view: Scene) -> tuple[float, float]:
+    """Limits that hold ground, antennas and zone, with a strip of ground at the foot however flat it is."""
+    top = max(float((view.ray + view.f1).max()), float(view.surface.max()))
+    low = float(view.ground.min())
+    span = max(top - low, 1.0)
+    return low - 0.12 * span, top + 0.05 * span
+
+
+def draw_tight_places(
+    axes: Axes, places: tuple[TightPlace, ...], scale: Scale, *, on_surface: bool, color: str
+) -> None:
+    """Mark the tight places: a thin line down through the axes, and on the profile a mark on the surface itself."""
+    x = scale.distance(np.array([each.distance_m for each in places]))
+    y = scale.height(np.array([each.surface_m + each.bulge_m for each in places]))
+    bottom, top = axes.get_ylim()
+    axes.vlines(x, bottom, y if on_surface else top, color=style.INK, lw=0.6, linestyles=(0, (1, 1.5)), zorder=2.6)
+    if on_surface:
+        axes.plot(x[1:], y[1:], ls="", marker="o", ms=5, mfc="white", mec=style.INK, mew=1.0, zorder=5, label="tight")
+        axes.plot(x[:1], y[:1], ls="", marker="v", ms=8, mfc=color, mec="white", mew=0.8, zorder=6, label="critical")
+    axes.set_ylim(bottom, top)

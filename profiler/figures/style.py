@@ -1,0 +1,82 @@
+"""Palette, type sizes and the drawing defaults of every figure.
+
+The colours keep their order in grey print (ground light, cover darker, trouble darkest) and keep apart for the common
+kinds of colour blindness (blue, orange-red and neutral, never red against green); nothing is told by colour alone.
+"""
+
+from __future__ import annotations
+
+from contextlib import AbstractContextManager
+from typing import Any
+
+import matplotlib
+import numpy as np
+
+__all__ = [
+    "BODY",
+    "COVER",
+    "COVER_EDGE",
+    "DPI",
+    "FAIL",
+    "FAIL_TINT",
+    "GRID",
+    "GROUND",
+    "GROUND_EDGE",
+    "HEAD",
+    "INK",
+    "MUTED",
+    "PASS",
+    "RAY",
+    "RELIEF_HIGH",
+    "RELIEF_LOW",
+    "RULE_COLOURS",
+    "RULE_DASHES",
+    "SMALL",
+    "ZONE",
+    "ZONE_EDGE",
+    "ZONE_REQUIRED",
+    "defaults",
+]
+
+INK = "#1c1f24"
+MUTED = "#585f6b"
+GRID = "#d9dce1"
+GROUND = "#dccfb8"
+GROUND_EDGE = "#4a3b28"
+COVER = "#8fa486"
+COVER_EDGE = "#3f5a3c"
+RAY = "#0b3c6f"
+ZONE = "#e6eff8"
+ZONE_EDGE = "#8fb3d6"
+ZONE_REQUIRED = "#b5d0ea"
+RELIEF_LOW, RELIEF_HIGH = np.array([0.42, 0.39, 0.35]), np.array([0.98, 0.96, 0.91])
+PASS = "#00594f"
+FAIL = "#b23a00"
+FAIL_TINT = "#f6dfd2"
+
+RULE_COLOURS = ("#1c1f24", "#0072b2", "#b8860b", "#a0527a", "#4d8a7a")
+RULE_DASHES: tuple[tuple[float, ...], ...] = ((), (5, 2), (1.5, 1.5), (6, 1.5, 1.5, 1.5), (9, 3))
+"""One colour and one dash for each rule, the governing rule first; with more rules they come round again."""
+
+BODY = 7.4
+SMALL = 7.0
+HEAD = 8.4
+"""Sizes of type in points: running text, the smallest that is used anywhere, and headings of blocks."""
+
+DPI = 150
+
+
+def defaults() -> AbstractContextManager[None]:
+    """Draw with the library's own defaults and ours, whatever a user's configuration file asks for elsewhere."""
+    own: dict[Any, Any] = {
+        "font.family": ["DejaVu Sans"],
+        "font.size": BODY,
+        "text.hinting": "none",
+        "svg.hashsalt": "hopwright",
+        "svg.fonttype": "path",
+        "pdf.fonttype": 42,
+        "hatch.linewidth": 0.5,
+        "path.simplify": True,
+    }
+    plain: dict[Any, Any] = {key: value for key, value in matplotlib.rcParamsDefault.items() if "backend" not in key}
+    return matplotlib.rc_context({**plain, **own})
