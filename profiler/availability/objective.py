@@ -23,7 +23,7 @@ MINUTES_PER_YEAR = 365.25 * 1440.0
 Limit = Literal["multipath", "selective", "rain", "obstruction", "no margin"]
 
 _RAIN_MATTERS_HZ = 5e9
-_GRID = 1001
+_GRID = 65
 
 
 @dataclass(frozen=True, slots=True)
@@ -114,9 +114,9 @@ def limit_of(outages: Outages[Float], counts: tuple[Mechanism, ...] = MECHANISMS
 
 
 def _required_margin(model: OutageModel, target: _Target) -> float | None:
-    """Least fade margin that meets a target: a grid narrowed three times (outage never grows with the margin)."""
+    """Least fade margin that meets a target: a grid narrowed five times (outage never grows with the margin)."""
     low, high = 0.0, LARGEST_MARGIN_DB
-    for _ in range(3):
+    for _ in range(5):
         grid = np.linspace(low, high, _GRID)
         meets = target.achieved(model, grid) <= target.required
         if not meets.any():
