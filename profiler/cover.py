@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
+from pathlib import Path
 
 import numpy as np
 
@@ -15,10 +16,11 @@ __all__ = ["Cover", "cover_along", "obstacle_heights"]
 
 @dataclass(frozen=True, slots=True, eq=False)
 class Cover:
-    """Cover heights at the points asked for, and where they came from."""
+    """Cover heights at the points asked for, where they came from, and the files that were read for them."""
 
     cover_m: Float
     notes: tuple[str, ...]
+    files: tuple[Path, ...] = ()
 
 
 def obstacle_heights(distance_m: Float, obstacles: tuple[Obstacle, ...]) -> Float:
@@ -69,6 +71,7 @@ def cover_along(
     latitude: Float,
     *,
     method: SampleMethod = "bilinear",
+    allow_gaps: bool = False,
 ) -> Cover:
     """Cover heights at the points of a path, or of a corridor around it.
 
@@ -85,6 +88,8 @@ def cover_along(
         The points, degrees, (n,) or (n, across).
     method
         How canopy rasters are read, as for terrain.
+    allow_gaps
+        Leave NaN where nothing has data, as beside a path, where the caller counts it.
 
     Returns
     -------
@@ -93,7 +98,7 @@ def cover_along(
     Raises
     ------
     MissingGroundError
-        Where a given raster has no data and no other source covers for it.
+        Where a given raster has no data and no other source covers for it, unless gaps are allowed.
     InputError
         For a land-cover class with no height, or an obstacle beyond the path.
 
@@ -105,13 +110,16 @@ def cover_along(
     """
     heights = np.full(longitude.shape, np.nan)
     notes: list[str] = []
+    files: list[Path] = []
     if choice.canopy:
-        heights, share = _canopy(choice, longitude, latitude, method)
+        heights, share, read = _canopy(choice, longitude, latitude, method)
+        files.extend(read)
         notes.append(f"canopy heights from {', '.join(path.name for path in choice.canopy)} on {share:.0%} of the path")
     if choice.landcover is not None:
         gaps = np.isnan(heights)
         if gaps.any():
             heights[gaps] = _class_heights(choice, longitude[gaps], latitude[gaps])
+            files.extend(_files_of(choice.landcover))
             notes.append(f"class heights from {choice.landcover.name} on {gaps.mean():.0%} of the path")
     if not choice.canopy and choice.landcover is None:
         heights[:] = 0.0
@@ -120,7 +128,7 @@ def cover_along(
             if choice.obstacles
             else "no cover given: trees and buildings are not in this result"
         )
-    if np.isnan(heights).any():
+    if np.isnan(heights).any() and not allow_gaps:
         row = int(np.argwhere(np.isnan(heights))[0][0])
         raise MissingGroundError(
             f"cover: no data {distance_m[row]:.0f} m from A: must be covered; give more rasters, or cover.landcover"
@@ -130,19 +138,27 @@ def cover_along(
         standing = obstacle_heights(distance_m, choice.obstacles)
         heights = np.maximum(heights, standing.reshape(standing.shape + (1,) * (heights.ndim - 1)))
         notes.append("obstacles: " + ", ".join(f"{each.name} {each.height_m:g} m" for each in choice.obstacles))
-    return Cover(frozen_array(heights), tuple(notes))
+    return Cover(frozen_array(heights), tuple(notes), tuple(files))
 
 
-def _canopy(choice: CoverChoice, longitude: Float, latitude: Float, method: SampleMethod) -> tuple[Float, float]:
-    """Heights from the canopy rasters, NaN where they have none, and the share that they cover."""
+def _files_of(path: Path) -> list[Path]:
+    """Give the file itself, or every file of a folder."""
+    return [path] if path.is_file() else sorted(each for each in path.rglob("*") if each.is_file())
+
+
+def _canopy(
+    choice: CoverChoice, longitude: Float, latitude: Float, method: SampleMethod
+) -> tuple[Float, float, list[Path]]:
+    """Heights from the canopy rasters, NaN where they have none, the share that they cover, and which were read."""
     from profiler.terrain import open_terrain
 
     with open_terrain(choice.canopy, method=method, allow_mixed_datums=True, eight_bit=True) as canopy:
-        heights = np.array(canopy.sample(longitude, latitude).ground_m)
+        samples = canopy.sample(longitude, latitude)
+    heights = np.array(samples.ground_m)
     lowest = np.nanmin(heights, initial=0.0)
     if lowest < 0.0:
         raise InputError(f"cover.canopy = {choice.canopy[0]}: must hold heights of 0 m or more, not {lowest:g} m")
-    return heights, float(1.0 - np.isnan(heights).mean())
+    return heights, float(1.0 - np.isnan(heights).mean()), [use.info.path for use in samples.sources]
 
 
 def _class_heights(choice: CoverChoice, longitude: Float, latitude: Float) -> Float:
@@ -156,8 +172,8 @@ def _class_heights(choice: CoverChoice, longitude: Float, latitude: Float) -> Fl
     unknown = sorted(found - table.keys())
     if unknown:
         raise InputError(
-            f"cover.class_heights_m: {choice.landcover.name} holds class {unknown[0]} on the path: must list a height"
-            f" for it; give 0 for bare ground (listed: {sorted(table)})"
+            f"cover.class_heights_m: {choice.landcover.name} holds class {unknown[0]} on or beside the path: must list"
+            f" a height for it; give 0 for bare ground (listed: {sorted(table)})"
         )
     heights = np.full(classes.shape, np.nan)
     for each in found:

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
+from pathlib import Path
 
 import numpy as np
 
@@ -12,19 +13,21 @@ from profiler.geometry import corridor_offsets
 from profiler.models import Hop, Profile, Site, frozen_array
 from profiler.path import PathLine, across, geodesic, trace
 from profiler.study.result import Corridor, Relief, TerrainUse
-from profiler.terrain import Samples, Terrain, fill_missing, missing_stretches, require_ground, require_inside
+from profiler.terrain import Samples, Terrain, fill_missing, missing_stretches, require_ground
 from profiler.units import Float
 
 __all__ = ["Ground", "read_ground"]
 
 _SEARCH_STEPS = 256
+_DEFAULT_STEPS, _FEWEST_STEPS = 200, 50
+"""A short path over coarse cells still needs points enough for its bulge, its zone and the facets that reflect."""
 _RELIEF_ALONG, _RELIEF_ACROSS = 480, 81
 _ACROSS_STEPS = 10
 
 
 @dataclass(frozen=True, slots=True, eq=False)
 class Ground:
-    """Everything that the rasters say about one hop."""
+    """Everything that the rasters say about one hop; ``files`` are those that a number of the study depends on."""
 
     line: PathLine
     profile: Profile
@@ -32,6 +35,7 @@ class Ground:
     corridor: Corridor | None
     relief: Relief | None
     heights_around_m: Float | None
+    files: tuple[Path, ...]
 
 
 def read_ground(
@@ -59,10 +63,8 @@ def read_ground(
     MissingGroundError
         Where the path has no ground and the hop file does not let it be filled.
     InputError, RasterError
-        For a site off the terrain, rasters that cannot be used, or datums that do not agree.
+        For rasters that cannot be used, datums that do not agree, points too far apart, or an antenna in its own cover.
     """
-    for site in (hop.site_a, hop.site_b):
-        require_inside(terrain, site.name, site.longitude, site.latitude)
     line, cell_m = _lay_path(hop, terrain)
     samples = terrain.sample(line.longitude, line.latitude)
     ground_m, filled, fill_notes = _without_gaps(hop, line, samples)
@@ -92,22 +94,38 @@ def read_ground(
         notes=(*samples.notes, *fill_notes),
         cover_notes=cover.notes,
     )
+    corridor, files_beside = _corridor(hop, terrain, profile, line, cell_m)
+    wide = None if around is None else terrain.sample(*around, allow_mixed_datums=True)
+    files = [*_files(samples), *cover.files, *files_beside, *([] if wide is None else _files(wide))]
     return Ground(
         line=line,
         profile=profile,
         terrain=use,
-        corridor=_corridor(hop, terrain, profile, line, cell_m),
+        corridor=corridor,
         relief=_relief(terrain, line) if relief else None,
-        heights_around_m=None if around is None else terrain.sample(*around).ground_m,
+        heights_around_m=None if wide is None else wide.ground_m,
+        files=tuple(dict.fromkeys(files)),
     )
 
 
+def _files(samples: Samples) -> list[Path]:
+    return [use.info.path for use in samples.sources]
+
+
 def _lay_path(hop: Hop, terrain: Terrain) -> tuple[PathLine, float]:
-    """Trace the path with points half the finest cell apart, unless the hop file says otherwise."""
+    """Trace the path with points at most half the finest cell apart, unless the hop file says otherwise."""
     ends = (hop.site_a.longitude, hop.site_a.latitude, hop.site_b.longitude, hop.site_b.latitude)
-    coarse = trace(*ends, spacing_m=float(geodesic(*ends)[0]) / _SEARCH_STEPS)
+    length_m, spacing_m = float(geodesic(*ends)[0]), hop.terrain.spacing_m
+    coarse = trace(*ends, spacing_m=length_m / _SEARCH_STEPS)
     cell_m = terrain.finest_cell_m(coarse.longitude, coarse.latitude)
-    return trace(*ends, spacing_m=hop.terrain.spacing_m or 0.5 * cell_m), cell_m
+    if spacing_m is None:
+        spacing_m = min(0.5 * cell_m, length_m / _DEFAULT_STEPS)
+    elif spacing_m * _FEWEST_STEPS > length_m:
+        raise InputError(
+            f"terrain.spacing_m = {spacing_m:g}: must be at most one {_FEWEST_STEPS}th of this path of"
+            f" {length_m / 1e3:.2f} km; leave it out for half the finest cell"
+        )
+    return trace(*ends, spacing_m=spacing_m), cell_m
 
 
 def _without_gaps(hop: Hop, line: PathLine, samples: Samples) -> tuple[Float, np.ndarray, tuple[str, ...]]:
@@ -141,14 +159,18 @@ def _with_surveys(hop: Hop, ground_m: Float) -> tuple[Float, tuple[float | None,
 
 
 def _cover(hop: Hop, line: PathLine, longitude: Float, latitude: Float) -> Cover:
-    """Cover at points of the path or beside it, with the clearings around the sites taken out."""
-    cover = cover_along(hop.cover, line.along_m, longitude, latitude, method=hop.terrain.method)
+    """Cover at points of the path or beside it, with the clearings around the sites taken out.
+
+    On the path a gap in the cover is an error; beside it, where there are many columns, it is left and counted.
+    """
+    beside = longitude.ndim > 1
+    cover = cover_along(hop.cover, line.along_m, longitude, latitude, method=hop.terrain.method, allow_gaps=beside)
     heights, notes = np.array(cover.cover_m), list(cover.notes)
     for site, from_site_m in ((hop.site_a, line.along_m), (hop.site_b, line.distance_m - line.along_m)):
         if site.clearing_m > 0:
             heights[from_site_m <= site.clearing_m] = 0.0
             notes.append(f"no cover within {site.clearing_m:g} m of {site.name}, as the hop file says")
-    return Cover(frozen_array(heights), tuple(notes))
+    return Cover(frozen_array(heights), tuple(notes), cover.files)
 
 
 def _require_above_cover(hop: Hop, profile: Profile) -> None:
@@ -164,23 +186,27 @@ def _require_above_cover(hop: Hop, profile: Profile) -> None:
             )
 
 
-def _corridor(hop: Hop, terrain: Terrain, profile: Profile, line: PathLine, cell_m: float) -> Corridor | None:
-    """Surface across the path to the edge of the widest zone asked for; the path's own points keep their profile.
+def _corridor(
+    hop: Hop, terrain: Terrain, profile: Profile, line: PathLine, cell_m: float
+) -> tuple[Corridor | None, list[Path]]:
+    """Surface across the path to the edge of the widest zone asked for, NaN where unknown, and the files it is from.
+
+    The path's own points keep their profile.
 
     Across, points stand half a cell apart, but no closer than a tenth of the zone: what is narrower than that hides
     next to none of it.
     """
     fraction = max(rule.fresnel_fraction for rule in hop.rules)
     if fraction == 0.0:
-        return None
+        return None, []
     widest = float(np.abs(corridor_offsets(line.along_m, hop.frequency_hz, fraction, np.inf)).max())
     offset = corridor_offsets(line.along_m, hop.frequency_hz, fraction, max(0.5 * cell_m, widest / _ACROSS_STEPS))
     longitude, latitude = across(line, offset)
-    ground = np.array(terrain.sample(longitude, latitude).ground_m)
+    samples = terrain.sample(longitude, latitude)
     cover = _cover(hop, line, longitude, latitude)
-    surface = ground + cover.cover_m
+    surface = samples.ground_m + cover.cover_m
     surface[:, offset.shape[1] // 2] = profile.surface_m
-    return Corridor(frozen_array(offset), frozen_array(surface))
+    return Corridor(frozen_array(offset), frozen_array(surface)), [*_files(samples), *cover.files]
 
 
 def _relief(terrain: Terrain, line: PathLine) -> Relief:
@@ -193,5 +219,5 @@ def _relief(terrain: Terrain, line: PathLine) -> Relief:
     return Relief(
         along_m=thin.along_m,
         offset_m=frozen_array(offset),
-        ground_m=frozen_array(terrain.sample(longitude, latitude).ground_m),
+        ground_m=frozen_array(terrain.sample(longitude, latitude, allow_mixed_datums=True).ground_m),
     )

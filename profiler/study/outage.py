@@ -19,7 +19,7 @@ from profiler.availability import (
 )
 from profiler.budget import Budget, ModeBudget
 from profiler.diffraction import DiffractionLoss, losses_over_k
-from profiler.models import Hop, Profile
+from profiler.models import Hop, Objective, Profile
 from profiler.study.climate import ClimateUse
 
 __all__ = ["ModeOutage", "OutageResult", "predict_outage"]
@@ -90,7 +90,9 @@ def predict_outage(
     known = [(direction, row) for direction, row in rows if row.fade_margin_db is not None]
     if hop.radio is None or not known:
         reason = "availability not predicted: the hop file gives no radio with a threshold"
-        return OutageResult(None, None, (), (reason,), climate.warnings)
+        asked = choice.objective != Objective()
+        unjudged = ("the availability objective was not judged: no radio with a threshold",) if asked else ()
+        return OutageResult(None, None, (), (reason,), (*climate.warnings, *unjudged))
     path = _facts(hop, profile, climate, centre_a_m, centre_b_m)
     excess, low_k_excess = _excess_losses(hop, profile, climate, centre_a_m, centre_b_m, losses)
     signatures = {mode.name: mode.signature for mode in hop.radio.modes}

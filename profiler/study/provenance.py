@@ -2,14 +2,16 @@
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from datetime import UTC, datetime
 from functools import cache
 from importlib.metadata import version
+from pathlib import Path
 from platform import python_version
 
 from profiler import __version__
 from profiler.models import Hop
-from profiler.study.result import Provenance, TerrainUse
+from profiler.study.result import Provenance
 from profiler.terrain import file_hash
 
 __all__ = ["provenance"]
@@ -24,22 +26,20 @@ def _versions() -> tuple[tuple[str, str], ...]:
     return (("hopwright", __version__), ("python", python_version()), *libraries)
 
 
-def provenance(hop: Hop, terrain: TerrainUse) -> Provenance:
+def provenance(hop: Hop, files: Sequence[Path]) -> Provenance:
     """Name, size and SHA-256 of every file that the study used, and the versions that made it.
 
     Parameters
     ----------
     hop
-        The hop, for its file's hash and its cover rasters.
-    terrain
-        What terrain was used; only rasters that gave heights are listed.
+        The hop, for its file's hash.
+    files
+        The rasters that gave heights, each once.
 
     Returns
     -------
     Provenance
     """
-    covers = [*hop.cover.canopy, *([hop.cover.landcover] if hop.cover.landcover else [])]
-    files = dict.fromkeys([use.info.path for use in terrain.sources] + [path for path in covers if path.is_file()])
     return Provenance(
         created=datetime.now(UTC).isoformat(timespec="seconds"),
         versions=_versions(),

@@ -18,7 +18,7 @@ from profiler.study.link import Air, air_along, link
 from profiler.study.outage import OutageResult
 from profiler.study.provenance import provenance
 from profiler.study.result import RuleResult, Study, Verdict, least_surplus
-from profiler.terrain import Terrain, open_terrain
+from profiler.terrain import Terrain, open_terrain, require_inside
 from profiler.units import FOOT_M, STATUTE_MILE_M
 
 __all__ = ["open_hop_terrain", "run_study"]
@@ -62,8 +62,10 @@ def run_study(hop: Hop, terrain: Terrain | None = None, *, relief: bool = False)
     HopwrightError
         If anything is wrong with the input; one line says what, where, and what to do.
     """
-    climate = climate_numbers(hop)
     with open_hop_terrain(hop) if terrain is None else nullcontext(terrain) as source:
+        for site in (hop.site_a, hop.site_b):  # first of all: a swapped position also spoils the path and the climate
+            require_inside(source, site.name, site.longitude, site.latitude)
+        climate = climate_numbers(hop)
         ground = read_ground(hop, source, relief=relief, around=climate.roughness_points)
     climate = climate.with_roughness(ground.heights_around_m)
     profile = ground.profile
@@ -97,9 +99,9 @@ def run_study(hop: Hop, terrain: Terrain | None = None, *, relief: bool = False)
         climate=climate,
         relief=ground.relief,
         verdict=_verdict(hop, ground, rules, outage),
-        provenance=provenance(hop, ground.terrain),
+        provenance=provenance(hop, ground.files),
         assumptions=_assumptions(hop, ground, air, budget, outage),
-        warnings=_warnings(hop, list(losses.values()), budget, outage),
+        warnings=_warnings(hop, rules, list(losses.values()), budget, outage),
     )
 
 
@@ -220,12 +222,19 @@ def _assumptions(hop: Hop, ground: Ground, air: Air, budget: Budget | None, outa
 
 
 def _warnings(
-    hop: Hop, losses: Sequence[DiffractionLoss], budget: Budget | None, outage: OutageResult
+    hop: Hop,
+    rules: Sequence[RuleResult],
+    losses: Sequence[DiffractionLoss],
+    budget: Budget | None,
+    outage: OutageResult,
 ) -> tuple[str, ...]:
     """Every warning of every stage, each once."""
+    unseen = max((rule.corridor.missing_share for rule in rules if rule.corridor is not None), default=0.0)
+    beside = f"beside the path {unseen:.1%} of the points in the zone have no height and were not checked"
     return tuple(
         dict.fromkeys(
             [
+                *([beside] if unseen else []),
                 *(warning for loss in losses for warning in loss.warnings),
                 *atmosphere_warnings(hop.frequency_hz),
                 *(budget.warnings if budget is not None else ()),
