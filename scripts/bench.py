@@ -1,0 +1,307 @@
+"""Speed of the main jobs beside what cannot be avoided, in one run: called by scripts/bench.
+
+Machines differ and are noisy, so each job runs in turn with its floor (A B A B ...), and the ratio is the median over
+the pairs. The aims are for one core of a present machine with nothing else running; no test asserts them.
+"""
+
+from __future__ import annotations
+
+import argparse
+import os
+import statistics
+import subprocess
+import sys
+import tempfile
+import time
+import tracemalloc
+from collections.abc import Callable, Iterator
+from dataclasses import dataclass
+from pathlib import Path
+
+import numpy as np
+import rasterio
+from rasterio.transform import Affine
+from scipy.spatial import ConvexHull
+
+from profiler.confidence import assess
+from profiler.diffraction import delta_bullington
+from profiler.heights import clearing_region, least_ray
+from profiler.models import Hop, Rule, Site, TerrainChoice
+from profiler.path import PathLine, trace
+from profiler.study import run_study
+from profiler.study.ground import read_ground
+from profiler.terrain import SourceUse, open_terrain
+
+ROOT = Path(__file__).resolve().parent.parent
+SAMPLE = ROOT / "sample_dem" / "ridge_to_mill.toml"
+IMPORTS = "import numpy, rasterio, pyproj, matplotlib.figure"
+RULES = (Rule(4 / 3, 1.0), Rule(2 / 3, 0.3), Rule(1.0, 0.6, 3.0))
+FREQUENCY_HZ = 6.2e9
+
+PLAIN_HOP = """
+name = "Rules and figure only"
+frequency_ghz = 7.425
+[site_a]
+name = "Western ridge"
+position = "46.12238, -39.10549"
+antenna_m = 30
+[site_b]
+name = "Mill"
+position = "46.07878, -38.97025"
+antenna_m = 30
+[terrain]
+paths = ["{country}"]
+[rules]
+preset = "high-reliability"
+"""
+
+CHILD_READS = """
+import resource, sys
+from pathlib import Path
+from profiler.path import trace
+from profiler.terrain import open_terrain
+def resident(): return int(Path("/proc/self/statm").read_text().split()[1]) * resource.getpagesize()
+with open_terrain(Path(sys.argv[1])) as terrain:
+    line = trace(*map(float, sys.argv[2:6]), spacing_m=10.0)
+    terrain.sample(line.longitude[:2], line.latitude[:2])
+    before = resident()
+    terrain.sample(line.longitude, line.latitude)
+    print(resident() - before)
+"""
+
+
+@dataclass(frozen=True, slots=True)
+class Row:
+    """One line of the table: what a job took, what it should take, and how many times its floor that is."""
+
+    what: str
+    value: float
+    unit: str
+    aim: str = ""
+    floor: str = ""
+    ratio: float | None = None
+
+
+@dataclass(frozen=True, slots=True)
+class Paired:
+    """Medians of a job, of its floor, and of their ratio over the pairs."""
+
+    job_s: float
+    floor_s: float
+    ratio: float
+
+
+def seconds(job: Callable[[], object]) -> float:
+    start = time.perf_counter()
+    job()
+    return time.perf_counter() - start
+
+
+def paired(job: Callable[[], object], floor: Callable[[], object], pairs: int) -> Paired:
+    """Run job and floor in turn, once unmeasured and then in pairs."""
+    job(), floor()
+    times = [(seconds(job), seconds(floor)) for _ in range(pairs)]
+    return Paired(
+        statistics.median(a for a, _ in times),
+        statistics.median(b for _, b in times),
+        statistics.median(a / b for a, b in times),
+    )
+
+
+def rough(rng: np.random.Generator, side: int, slope: float) -> np.ndarray:
+    """Fractal ground of unit standard deviation: white noise with its spectrum bent to the power -slope."""
+    wave = np.hypot(*np.meshgrid(np.fft.rfftfreq(side), np.fft.fftfreq(side)))
+    wave[0, 0] = np.inf
+    noise = np.fft.irfft2(np.fft.rfft2(rng.standard_normal((side, side))) * wave ** (-slope / 2), (side, side))
+    return noise / noise.std()
+
+
+def write_tile(path: Path, side: int, west: float, south: float, cell_deg: float) -> Path:
+    """Write an invented one-degree tile of whole metres."""
+    heights = np.round(600 + 150 * rough(np.random.default_rng(1), side, 3.4)).astype("int16")
+    grid = Affine(cell_deg, 0, west, 0, -cell_deg, south + side * cell_deg)
+    shape = {"width": side, "height": side, "count": 1, "dtype": "int16", "crs": "EPSG:4326", "transform": grid}
+    with rasterio.open(path, "w", "GTiff", tiled=True, compress="deflate", **shape) as raster:
+        raster.write(heights, 1)
+    return path
+
+
+def whole_process(work: Path, pairs: int) -> Iterator[Row]:
+    """Study a hop with its figure from an empty process, beside the imports that it cannot do without."""
+    plain = work / "plain.toml"
+    plain.write_text(PLAIN_HOP.format(country=(ROOT / "sample_dem" / "country.tif").as_posix()))
+    threads = ("OMP_NUM_THREADS", "OPENBLAS_NUM_THREADS")
+    environment = {name: value for name, value in os.environ.items() if name not in threads}
+
+    def run(*arguments: str) -> None:
+        done = subprocess.run(
+            [sys.executable, *arguments], cwd=ROOT, env=environment, capture_output=True, text=True, check=False
+        )
+        if done.returncode > 1:
+            sys.exit(done.stderr)
+
+    def study(hop: Path) -> None:
+        run("-m", "profiler", "study", str(hop), "--figure", str(work / "hop.png"))
+
+    for name, hop in (("study, radio, availability, confidence, figure", SAMPLE), ("study, rules, figure", plain)):
+        took = paired(lambda hop=hop: study(hop), lambda: run("-c", IMPORTS), pairs)
+        floor = f"bare imports {1e3 * took.floor_s:.0f} ms"
+        yield Row(f"process: {name}", 1e3 * took.job_s, "ms", "1.6 x", floor, took.ratio)
+
+
+def analysis(work: Path, pairs: int) -> Iterator[Row]:
+    """Study a hop of 40 km and about 1 000 points over an open terrain, beside a gather of as many cells."""
+    tile = write_tile(work / "three_second.tif", 1201, 10 - 1 / 2400, 30 - 1 / 2400, 1 / 1200)
+    line = trace(10.3, 30.4, 10.3 + 0.3602, 30.6, spacing_m=50e3)
+    hop = Hop(
+        name="bench",
+        site_a=Site("A", 10.3, 30.4, 60.0),
+        site_b=Site("B", float(line.longitude[-1]), 30.6, 60.0),
+        frequency_hz=FREQUENCY_HZ,
+        rules=RULES,
+        terrain=TerrainChoice(paths=(tile,)),
+    )
+    rng = np.random.default_rng(1)
+    cells = rng.standard_normal((1201, 1201))
+    with open_terrain(tile) as terrain:
+        study = run_study(hop, terrain)
+        points = study.profile.distance_m.size + (0 if study.corridor is None else study.corridor.surface_m.size)
+        row, col = (rng.uniform(0, 1199, points) for _ in range(2))
+
+        def gather() -> np.ndarray:
+            i, j = row.astype(int), col.astype(int)
+            down, right = row - i, col - j
+            upper = cells[i, j] * (1 - right) + cells[i, j + 1] * right
+            lower = cells[i + 1, j] * (1 - right) + cells[i + 1, j + 1] * right
+            return upper * (1 - down) + lower * down
+
+        took = paired(lambda: run_study(hop, terrain), gather, pairs)
+        ground = paired(lambda: read_ground(hop, terrain), lambda: run_study(hop, terrain), pairs)
+    size = f"{study.line.distance_m / 1e3:.0f} km, {study.line.points} points, {points} with those beside"
+    floor = f"numpy gather of the cells {1e3 * took.floor_s:.2f} ms"
+    yield Row(f"analysis: {size}", 1e3 * took.job_s, "ms", "15 ms", floor, took.ratio)
+    yield Row("  of it reading the ground", 100 * ground.ratio, "%")
+
+
+def diffraction(pairs: int) -> Iterator[Row]:
+    """Run delta-Bullington over many hops at once, beside one pass over their heights."""
+    hops, points = 10_000, 512
+    rng = np.random.default_rng(1)
+    distance_m = np.linspace(0, 40e3, points)
+    height_m = 200 + np.cumsum(rng.normal(0, 4, (hops, points)), axis=1)
+    centre_a_m, centre_b_m = height_m[:, 0] + 30, height_m[:, -1] + 30
+
+    def job() -> object:
+        return delta_bullington(distance_m, height_m, centre_a_m, centre_b_m, FREQUENCY_HZ, 8.5e6)
+
+    took = paired(job, lambda: height_m.sum(axis=1), pairs)
+    floor = f"sum of the heights {1e6 * took.floor_s / hops:.1f} us"
+    yield Row(f"delta-Bullington, {hops} x {points}, each", 1e6 * took.job_s / hops, "us", "25 us", floor, took.ratio)
+    tracemalloc.start()
+    job()
+    peak = tracemalloc.get_traced_memory()[1]
+    tracemalloc.stop()
+    floor = f"the heights {height_m.nbytes / 2**20:.0f} MiB"
+    yield Row("  memory on top of the heights", peak / 2**20, "MiB", "", floor, peak / height_m.nbytes)
+
+
+def country(points: int) -> tuple[np.ndarray, np.ndarray]:
+    """Distances and rolling ground of one hop."""
+    distance_m = np.linspace(0, 40e3, points)
+    return distance_m, 200 + np.cumsum(np.random.default_rng(1).normal(0, 3, points))
+
+
+def heights(pairs: int) -> Iterator[Row]:
+    """Find the exact region of antenna heights, beside the convex hull of as many points by Qhull."""
+    distance_m, ground_m = country(1000)
+    ends = float(ground_m[0]), float(ground_m[-1])
+
+    def job() -> object:
+        return clearing_region(distance_m, least_ray(distance_m, ground_m, FREQUENCY_HZ, RULES), *ends)
+
+    corners = np.column_stack((distance_m, ground_m))
+    took = paired(job, lambda: ConvexHull(corners), 20 * pairs)
+    floor = f"Qhull of the points {1e3 * took.floor_s:.2f} ms"
+    yield Row("heights: exact region, 1000 points, 3 rules", 1e3 * took.job_s, "ms", "2 ms", floor, took.ratio)
+
+
+def confidence(pairs: int) -> Iterator[Row]:
+    """Draw the confidence analysis, beside drawing as many Gaussian numbers."""
+    distance_m, ground_m = country(1000)
+    cover_m = np.where(np.sin(distance_m / 700) > 0, 15.0, 0.0)
+    rules = [(rule.k, rule.fresnel_fraction, rule.margin_m) for rule in RULES]
+    doubt = {"terrain_sigma_m": 5.0, "correlation_m": 120.0, "cover_sigma_m": 4.0, "draws": 2000}
+    percentiles = ((0.1, 0.8), (50, 4 / 3), (99.9, 3.0))
+
+    def job() -> object:
+        path = (distance_m, ground_m, cover_m, 60.0, 60.0, FREQUENCY_HZ)
+        return assess(*path, rules, k_percentiles=percentiles, **doubt)
+
+    rng = np.random.default_rng(1)
+    took = paired(job, lambda: rng.standard_normal((1000, 2000), dtype=np.float32), pairs)
+    floor = f"drawing the numbers {1e3 * took.floor_s:.0f} ms"
+    yield Row("confidence: 2000 draws, 1000 points, 3 rules, k", 1e3 * took.job_s, "ms", "250 ms", floor, took.ratio)
+
+
+def reading(work: Path, pairs: int) -> Iterator[Row]:
+    """Sample paths over a large tile in blocks of 256 x 256, beside reading the tile whole."""
+    tile = write_tile(work / "one_second.tif", 3600, 10.0, 50.0, 1 / 3600)
+    size = 2 * 3600**2 / 2**20
+
+    def whole() -> None:
+        with rasterio.open(tile) as raster:
+            raster.read(1)
+
+    for name, ends in (
+        ("side to side", (10.02, 50.52, 10.98, 50.55)),
+        ("corner to corner", (10.02, 50.1, 10.98, 50.9)),
+    ):
+        line = trace(*ends, spacing_m=10.0)
+
+        def job(line: PathLine = line) -> SourceUse:
+            with open_terrain(tile) as terrain:
+                return terrain.sample(line.longitude, line.latitude).sources[0]
+
+        took = paired(job, whole, pairs)
+        floor = f"the whole tile {1e3 * took.floor_s:.0f} ms"
+        what = f"terrain: 3600 x 3600 {name}, {line.points} points"
+        yield Row(what, 1e3 * took.job_s, "ms", "", floor, took.ratio)
+        share = 100 * job().read_share
+        yield Row("  share of the tile read", share, "%", "a few %", "", share / 100)
+        if Path("/proc/self/statm").exists():
+            command = [sys.executable, "-c", CHILD_READS, str(tile), *map(str, ends)]
+            done = subprocess.run(command, cwd=ROOT, capture_output=True, text=True, check=True)
+            grown = int(done.stdout) / 2**20
+            yield Row("  memory grown by", grown, "MiB", "", f"the tile unpacked {size:.0f} MiB", grown / size)
+
+
+def show(row: Row) -> None:
+    ratio = "" if row.ratio is None else f"{row.ratio:.2f}"
+    print(f"{row.what:<56}{row.value:>9.2f} {row.unit:<4}{row.aim:>9}  {row.floor:<38}{ratio:>8}", flush=True)
+
+
+def main() -> None:
+    """Print the table, a row as soon as it is known."""
+    parser = argparse.ArgumentParser(prog="scripts/bench", description=__doc__)
+    parser.add_argument("--pairs", type=int, default=9, help="measured pairs of every job and its floor (7 or more)")
+    pairs = max(7, parser.parse_args().pairs)
+    load = f", load {os.getloadavg()[0]:.1f}" if hasattr(os, "getloadavg") else ""
+    versions = f"Python {sys.version.split()[0]}, numpy {np.__version__}"
+    print(f"{versions}, {os.cpu_count()} cores{load}; medians of {pairs} pairs")
+    print(f"{'what':<56}{'measured':>9} {'':<4}{'aim':>9}  {'floor':<38}{'x floor':>8}")
+    with tempfile.TemporaryDirectory() as folder:
+        work = Path(folder)
+        for rows in (
+            whole_process(work, pairs),
+            analysis(work, pairs),
+            diffraction(pairs),
+            heights(pairs),
+            confidence(pairs),
+            reading(work, pairs),
+        ):
+            for row in rows:
+                show(row)
+
+
+if __name__ == "__main__":
+    main()
