@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+import io
+import signal
 import sys
 from importlib import import_module
 from typing import Any, NoReturn
@@ -71,6 +73,8 @@ def main(arguments: list[str] | None = None) -> NoReturn:
         Always, with the exit code.
     """
     words = sys.argv[1:] if arguments is None else arguments
+    if arguments is None:
+        _settle_streams()
     try:
         outcome: Any = root.main(words or ["--help"], prog_name="hopwright", standalone_mode=False)
     except click.ClickException as error:
@@ -79,13 +83,24 @@ def main(arguments: list[str] | None = None) -> NoReturn:
         _stop(str(error))
     except (click.Abort, KeyboardInterrupt):
         sys.exit(130)
-    except BrokenPipeError:
-        sys.exit(0)
     except OSError as error:
-        if error.filename is None:
-            raise
-        _stop(f"{error.filename}: {error.strerror}: must be a file that can be read or written here")
+        where = "standard output" if error.filename is None else error.filename
+        _stop(f"{where}: {error.strerror or error}: must be a file that can be read or written here")
+    except MemoryError:
+        _stop("not enough memory: must be a smaller task; give coarser spacing_m or step_m, or fewer draws")
     sys.exit(outcome if isinstance(outcome, int) else 0)
+
+
+def _settle_streams() -> None:
+    """Make the process behave as others expect of it at a pipe and on a terminal that does not speak UTF-8."""
+    if hasattr(signal, "SIGPIPE"):
+        signal.signal(
+            signal.SIGPIPE, signal.SIG_DFL
+        )  # whoever stops reading ends the command, with no exit code of ours
+    if sys.stdout is None:
+        _stop("standard output: is closed: must be open; send it to a file")
+    if isinstance(sys.stdout, io.TextIOWrapper):
+        sys.stdout.reconfigure(errors="replace")
 
 
 def _stop(message: str) -> NoReturn:

@@ -8,7 +8,7 @@ from typing import TYPE_CHECKING, Any
 import click
 
 from profiler.cli.options import hop_options, named, read_hop, speech_options
-from profiler.cli.output import json_text, put, write_whole
+from profiler.cli.output import check_targets, json_text, put, write_whole
 from profiler.errors import InputError
 
 if TYPE_CHECKING:
@@ -54,6 +54,7 @@ def command(
     """
     from profiler.study import heights_document, plan_heights, run_study
 
+    check_targets(json_to, csv_to, write_to, figures=figures, hop_file=hop_given["hop_file"])
     hop = read_hop(**hop_given)
     with named(hop.source):
         plan = plan_heights(run_study(hop))
@@ -63,6 +64,8 @@ def command(
         write_whole(path, content)
     if write_to is not None and rewritten is not None:
         write_whole(write_to, rewritten)
+    elif write_to is not None:
+        click.echo(f"{write_to}: not written, since no pair of heights clears", err=True)
     if csv_to is not None:
         put(csv_to, _csv_text(plan))
     if json_to is not None:

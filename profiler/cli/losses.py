@@ -7,7 +7,7 @@ from typing import TYPE_CHECKING, Any
 import click
 
 from profiler.cli.options import hop_options, named, read_hop, speech_options
-from profiler.cli.output import console, json_text, put
+from profiler.cli.output import check_targets, console, json_text, put
 
 if TYPE_CHECKING:
     from profiler.diffraction import DiffractionLoss
@@ -25,6 +25,7 @@ def command(json_to: str | None, quiet: bool, no_color: bool, **hop_given: Any) 
     from profiler.diffraction import compare
     from profiler.study import plain, run_study
 
+    check_targets(json_to, hop_file=hop_given["hop_file"])
     hop = read_hop(**hop_given)
     with named(hop.source):
         study = run_study(hop)

@@ -36,7 +36,6 @@ def hop_options(command: Command) -> Command:
         click.option(
             "--terrain",
             multiple=True,
-            type=click.Path(path_type=Path),
             metavar="PATH",
             help="Raster or folder of rasters; may be repeated.",
         ),

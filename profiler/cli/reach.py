@@ -7,7 +7,7 @@ from typing import TYPE_CHECKING, Any
 import click
 
 from profiler.cli.options import hop_options, named, read_hop, speech_options
-from profiler.cli.output import console, json_text, put
+from profiler.cli.output import check_targets, console, json_text, put
 from profiler.errors import InputError
 
 if TYPE_CHECKING:
@@ -20,7 +20,14 @@ __all__ = ["command"]
 @hop_options
 @click.option("--mode", metavar="NAME", help="Radio mode; the first by default.")
 @click.option("--bit-error-ratio", type=float, metavar="RATIO", help="Wanted bit error ratio; the mode's by default.")
-@click.option("--fade-margin-db", type=float, default=0.0, show_default=True, metavar="DB", help="Margin to keep.")
+@click.option(
+    "--fade-margin-db",
+    type=click.FloatRange(-200.0, 200.0),
+    default=0.0,
+    show_default=True,
+    metavar="DB",
+    help="Margin to keep.",
+)
 @click.option(
     "--direction",
     type=click.Choice(["a_to_b", "b_to_a"]),
@@ -47,6 +54,7 @@ def command(
     from profiler.budget import least_power, longest_free_space_range, smallest_dish
     from profiler.study import plain, run_study
 
+    check_targets(json_to, hop_file=hop_given["hop_file"])
     hop = read_hop(**hop_given)
     if hop.radio is None:
         raise InputError(

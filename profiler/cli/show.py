@@ -116,12 +116,13 @@ def _rules(study: Study, scale: Scale) -> Table:
     losses = {loss.k: loss.loss_db for loss in study.diffraction}
     for result in study.rules:
         check, at = result.check, result.check.critical
+        beside = check.passes and not _clear_beside(result)
         table.add_row(
             check.label or "-",
             f"{check.k:.3f}",
             f"{check.fresnel_fraction:g} F1"
             + (f" + {scale.height(check.margin_m)} {height}" if check.margin_m else ""),
-            "pass" if result.passes else "FAIL",
+            "FAIL beside" if beside else "pass" if result.passes else "FAIL",
             f"{scale.height(check.surplus_m[at])}",
             scale.distance(study.profile.distance_m[at]),
             scale.height(check.f1_m[at]),
@@ -161,12 +162,18 @@ def _show_places(screen: Console, study: Study, scale: Scale) -> None:
         f"\nTight places, rule {check.label or '-'} at k = {check.k:.3f}", style="bold", markup=False, soft_wrap=True
     )
     screen.print(table)
-    beside = _beside(study, governing, scale)
-    if beside:
-        screen.print(beside, markup=False, soft_wrap=True)
+    for result in study.rules:
+        if result is governing or not _clear_beside(result):
+            beside = _beside(study, result, scale)
+            screen.print(beside, markup=False, soft_wrap=True, end="\n" if beside else "")
+
+
+def _clear_beside(result: RuleResult) -> bool:
+    return result.corridor is None or result.corridor.passes
 
 
 def _beside(study: Study, result: RuleResult, scale: Scale) -> str:
+    """Say where beside the path one rule is tightest; nothing for a rule that asks for no part of the zone."""
     corridor = result.corridor
     if corridor is None:
         return ""
@@ -176,9 +183,9 @@ def _beside(study: Study, result: RuleResult, scale: Scale) -> str:
         return f"Beside the path, {width}{seen}: nothing rises higher into the zone than the path itself."
     where = scale.distance(study.profile.distance_m[corridor.distance_index])
     return (
-        f"Beside the path, {width}{seen}: tightest {scale.height(abs(corridor.offset_m))} {scale.height_unit} to the"
-        f" {corridor.side} at {where} {scale.distance_unit}, surplus {scale.height(corridor.surplus_m)}"
-        f" {scale.height_unit}."
+        f"Beside the path, k = {result.check.k:.3f}, {width}{seen}: tightest {scale.height(abs(corridor.offset_m))}"
+        f" {scale.height_unit} to the {corridor.side} at {where} {scale.distance_unit}, surplus"
+        f" {scale.height(corridor.surplus_m)} {scale.height_unit}."
     )
 
 

@@ -8,7 +8,7 @@ from typing import TYPE_CHECKING, Any
 import click
 
 from profiler.cli.options import hop_options, named, read_hop, speech_options
-from profiler.cli.output import json_text, put, write_whole
+from profiler.cli.output import check_targets, json_text, put, write_whole
 
 if TYPE_CHECKING:
     from profiler.study import Study
@@ -60,6 +60,7 @@ def command(
     """
     from profiler.study import run_study, to_document
 
+    check_targets(json_to, csv_to, figures=(*figures, *margin_figures), hop_file=hop_given["hop_file"])
     hop = read_hop(**hop_given)
     with named(hop.source):
         study = run_study(hop, relief=bool(figures))

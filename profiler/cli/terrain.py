@@ -7,7 +7,7 @@ from typing import TYPE_CHECKING
 
 import click
 
-from profiler.cli.output import console, json_text, put
+from profiler.cli.output import check_targets, console, json_text, put
 
 if TYPE_CHECKING:
     from profiler.terrain import FolderSurvey
@@ -30,6 +30,7 @@ def command(
     from profiler.study import plain
     from profiler.terrain import survey
 
+    check_targets(json_to, hop_file=hop_file)
     found = survey(paths, read_heights=not metadata_only)
     shares = None if hop_file is None else _hop_inside(hop_file, paths)
     if json_to is not None:

@@ -92,7 +92,10 @@ def parse_hop(text: str, where: str = "hop file", base_dir: Path | str = ".") ->
 def _hop(text: str, where: str, base_dir: Path, *, source: str, source_sha256: str | None = None) -> Hop:
     from profiler.hopfile.build import build_hop
 
-    return build_hop(parse_tables(text, where), where, base_dir, source=source, source_sha256=source_sha256)
+    try:
+        return build_hop(parse_tables(text, where), where, base_dir, source=source, source_sha256=source_sha256)
+    except RecursionError:
+        raise InputError(f"{where}: must be TOML that is nested a few levels deep; it is nested too deeply") from None
 
 
 def parse_tables(text: str, where: str) -> dict[str, Any]:
@@ -119,7 +122,7 @@ declaration; text needs quotes, decimals a point
     """
     try:
         return tomllib.loads(text.removeprefix("\ufeff"))
-    except tomllib.TOMLDecodeError as error:
+    except ValueError as error:  # TOMLDecodeError, or Python's refusal of a whole number of thousands of digits
         message = str(error)
         place = _PLACE.search(message)
         line, column = text.count("\n") + 1, len(text) - (text.rfind("\n") + 1) + 1

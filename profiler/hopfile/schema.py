@@ -110,9 +110,9 @@ class RulesTable(Table):
     """``[rules]``."""
 
     preset: str | None = None
-    median_k: float | None = Field(None, gt=0, le=100)
+    median_k: float | None = Field(None, ge=0.1, le=100)
     median_gradient_n_km: float | None = Field(None, gt=-157, le=1000)
-    low_k: float | None = Field(None, gt=0, le=100)
+    low_k: float | None = Field(None, ge=0.1, le=100)
     low_gradient_n_km: float | None = Field(None, gt=-157, le=1000)
     rule: list[Raw] | None = None
 
@@ -120,7 +120,7 @@ class RulesTable(Table):
 class RuleTable(Table):
     """``[[rules.rule]]``."""
 
-    k: float | None = Field(None, gt=0, le=100)
+    k: float | None = Field(None, ge=0.1, le=100)
     gradient_n_km: float | None = Field(None, gt=-157, le=1000)
     fresnel_fraction: float = Field(ge=0, le=10)
     margin_m: float | None = Field(None, ge=-100, le=1000)
@@ -264,7 +264,7 @@ class HeightsTable(Table):
     a: Raw | None = None
     b: Raw | None = None
     loss_limit_db: float | None = Field(None, ge=0)
-    loss_k: float | None = Field(None, gt=0, le=100)
+    loss_k: float | None = Field(None, ge=0.1, le=100)
     loss_gradient_n_km: float | None = Field(None, gt=-157, le=1000)
     diversity_obstruction: Obstruction | None = None
 
@@ -274,12 +274,12 @@ class TowerTable(Table):
 
     lowest_m: float | None = Field(None, gt=0, lt=2000)
     highest_m: float | None = Field(None, gt=0, lt=2000)
-    step_m: float | None = Field(None, gt=0)
+    step_m: float | None = Field(None, ge=0.01)
     taken_m: list[Annotated[float, Field(gt=0, lt=2000)]] | None = None
     taken_clearance_m: float | None = Field(None, ge=0, lt=2000)
-    cost_per_m: float | None = Field(None, ge=0)
+    cost_per_m: float | None = Field(None, ge=0, le=1e9)
     threshold_m: float | None = Field(None, gt=0)
-    threshold_cost: float | None = Field(None, ge=0)
+    threshold_cost: float | None = Field(None, ge=0, le=1e12)
 
 
 class ConfidenceTable(Table):
