@@ -12,6 +12,7 @@ RANKS = {
     "units": 0,
     "models": 1,
     "terrain_error": 1,
+    "normal": 1,
     "terrain": 2,
     "path": 2,
     "climate": 2,
