@@ -13,7 +13,7 @@ from profiler.errors import InputError
 
 if TYPE_CHECKING:
     from profiler.models import Hop
-    from profiler.study import HeightsPlan
+    from profiler.study.plan import HeightsPlan
 
 __all__ = ["command"]
 
@@ -52,7 +52,8 @@ def command(
 
     Exit code 0: a pair exists; 1: none does, and what would have to change is said; 2: the input is wrong.
     """
-    from profiler.study import heights_document, plan_heights, run_study
+    from profiler.study import run_study
+    from profiler.study.plan import heights_document, plan_heights
 
     check_targets(json_to, csv_to, write_to, figures=figures, hop_file=hop_given["hop_file"])
     hop = read_hop(**hop_given)

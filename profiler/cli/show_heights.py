@@ -12,7 +12,7 @@ if TYPE_CHECKING:
     from rich.console import Console
 
     from profiler.heights import LimitHeights
-    from profiler.study import HeightsPlan
+    from profiler.study.plan import HeightsPlan
 
 __all__ = ["show_heights"]
 

@@ -1,9 +1,11 @@
-"""Run every stage for one hop, in one direction, and return one immutable result."""
+"""Run every stage for one hop, in one direction, and return one immutable result.
+
+The heights plan is in `profiler.study.plan`: a study does without it, and starts faster.
+"""
 
 from profiler.study.document import plain, point_table, to_document
 from profiler.study.link import Air
 from profiler.study.outage import ModeOutage
-from profiler.study.plan import HeightsPlan, heights_document, plan_heights
 from profiler.study.result import (
     Corridor,
     Place,
@@ -20,7 +22,6 @@ from profiler.study.run import open_hop_terrain, run_study
 __all__ = [
     "Air",
     "Corridor",
-    "HeightsPlan",
     "ModeOutage",
     "Place",
     "Provenance",
@@ -29,11 +30,9 @@ __all__ = [
     "Study",
     "TerrainUse",
     "Verdict",
-    "heights_document",
     "least_surplus",
     "open_hop_terrain",
     "plain",
-    "plan_heights",
     "point_table",
     "run_study",
     "to_document",

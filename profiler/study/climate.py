@@ -4,8 +4,6 @@ from __future__ import annotations
 
 from dataclasses import dataclass, replace
 
-from profiler import climate
-from profiler.availability import roughness_grid, terrain_roughness
 from profiler.models import AvailabilityChoice, Hop
 from profiler.path import geodesic, midpoint, trace
 from profiler.units import Float
@@ -42,6 +40,8 @@ class ClimateUse:
         """
         if heights_m is None or self.choice is None:
             return self
+        from profiler.availability import terrain_roughness
+
         roughness = terrain_roughness(heights_m)
         return replace(
             self,
@@ -76,7 +76,11 @@ def climate_numbers(hop: Hop) -> ClimateUse:
         choice, sources, warnings = _from_maps(choice, middle)
     wanted = choice is not None and choice.multipath_method == "p530-17"
     known = choice is not None and (choice.terrain_roughness_m is not None or choice.geoclimatic_factor is not None)
-    points = roughness_grid(*middle) if wanted and not known else None
+    points = None
+    if wanted and not known:
+        from profiler.availability import roughness_grid
+
+        points = roughness_grid(*middle)
     return ClimateUse(choice, sources, middle[1], points, warnings)
 
 
@@ -84,7 +88,9 @@ def _from_maps(
     choice: AvailabilityChoice, middle: tuple[float, float]
 ) -> tuple[AvailabilityChoice, dict[str, str], tuple[str, ...]]:
     """Fill what is None from the maps; what the hop file gives stays."""
-    found = climate.lookup(*middle)
+    from profiler.climate import lookup
+
+    found = lookup(*middle)
     named: list[str] = []
     if choice.rain_rate_mm_h is None:
         named.append("rain_rate_mm_h")

@@ -4,14 +4,15 @@ from __future__ import annotations
 
 from dataclasses import fields, is_dataclass
 from pathlib import Path
-from typing import Any
+from typing import TYPE_CHECKING, Any
 
 import numpy as np
 
-from profiler.budget import Budget, Direction
-from profiler.geometry import CorridorCheck
-from profiler.models import Site
-from profiler.study.result import RuleResult, Study
+if TYPE_CHECKING:
+    from profiler.budget import Budget, Direction
+    from profiler.geometry import CorridorCheck
+    from profiler.models import Site
+    from profiler.study.result import RuleResult, Study
 
 __all__ = ["SCHEMA", "SCHEMA_HEIGHTS", "plain", "point_table", "to_document"]
 

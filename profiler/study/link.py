@@ -3,13 +3,16 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
+from typing import TYPE_CHECKING
 
 from profiler.atmosphere import Atmosphere, gas_attenuation, local_atmosphere
-from profiler.budget import Budget, link_budget
 from profiler.diffraction import DiffractionLoss, diffract
 from profiler.models import Hop, Profile
 from profiler.study.climate import ClimateUse
 from profiler.study.outage import OutageResult, predict_outage
+
+if TYPE_CHECKING:
+    from profiler.budget import Budget
 
 __all__ = ["Air", "Link", "air_along", "link"]
 
@@ -96,6 +99,8 @@ def _budget(hop: Hop, profile: Profile, air: Air, loss: DiffractionLoss) -> Budg
     """Link budget both ways where a radio is given."""
     if hop.radio is None:
         return None
+    from profiler.budget import link_budget
+
     return link_budget(
         hop.radio,
         float(profile.distance_m[-1]),

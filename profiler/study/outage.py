@@ -4,23 +4,17 @@ from __future__ import annotations
 
 from collections.abc import Mapping
 from dataclasses import dataclass
+from typing import TYPE_CHECKING
 
 import numpy as np
 
-from profiler.availability import (
-    Availability,
-    OutageCurve,
-    OutageModel,
-    PathFacts,
-    outage_curve,
-    outage_model,
-    path_roughness,
-    predict,
-)
-from profiler.budget import Budget, ModeBudget
 from profiler.diffraction import DiffractionLoss, losses_over_k
 from profiler.models import Hop, Objective, Profile
 from profiler.study.climate import ClimateUse
+
+if TYPE_CHECKING:
+    from profiler.availability import Availability, OutageCurve, OutageModel, PathFacts
+    from profiler.budget import Budget, ModeBudget
 
 __all__ = ["ModeOutage", "OutageResult", "predict_outage"]
 
@@ -93,6 +87,8 @@ def predict_outage(
         asked = choice.objective != Objective()
         unjudged = ("the availability objective was not judged: no radio with a threshold",) if asked else ()
         return OutageResult(None, None, (), (reason,), (*climate.warnings, *unjudged))
+    from profiler.availability import outage_curve, outage_model, predict
+
     path = _facts(hop, profile, climate, centre_a_m, centre_b_m)
     excess, low_k_excess = _excess_losses(hop, profile, climate, centre_a_m, centre_b_m, losses)
     signatures = {mode.name: mode.signature for mode in hop.radio.modes}
@@ -143,6 +139,8 @@ def _weaker_rows(budget: Budget) -> tuple[tuple[str, ModeBudget], ...]:
 
 def _facts(hop: Hop, profile: Profile, climate: ClimateUse, centre_a_m: float, centre_b_m: float) -> PathFacts:
     """Put the path into the plain numbers that the outage methods take."""
+    from profiler.availability import PathFacts, path_roughness
+
     named_climate = climate.choice is not None and climate.choice.climate is not None
     return PathFacts(
         distance_m=float(profile.distance_m[-1]),

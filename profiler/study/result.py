@@ -3,19 +3,21 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
+from typing import TYPE_CHECKING
 
-from profiler.availability import Availability, OutageCurve
-from profiler.budget import Budget
-from profiler.confidence import Confidence
-from profiler.diffraction import DiffractionLoss
-from profiler.geometry import CorridorCheck, Reflection, RuleCheck
-from profiler.models import Hop, Profile
-from profiler.path import PathLine
-from profiler.study.climate import ClimateUse
-from profiler.study.link import Air
-from profiler.study.outage import ModeOutage
-from profiler.terrain import SourceUse
-from profiler.units import Float
+if TYPE_CHECKING:  # what the hop does not ask for is not loaded
+    from profiler.availability import Availability, OutageCurve
+    from profiler.budget import Budget
+    from profiler.confidence import Confidence
+    from profiler.diffraction import DiffractionLoss
+    from profiler.geometry import CorridorCheck, Reflection, RuleCheck
+    from profiler.models import Hop, Profile
+    from profiler.path import PathLine
+    from profiler.study.climate import ClimateUse
+    from profiler.study.link import Air
+    from profiler.study.outage import ModeOutage
+    from profiler.terrain import SourceUse
+    from profiler.units import Float
 
 __all__ = ["Corridor", "Place", "Provenance", "Relief", "RuleResult", "Study", "TerrainUse", "Verdict"]
 

@@ -4,10 +4,9 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 from contextlib import nullcontext
+from typing import TYPE_CHECKING
 
 from profiler.atmosphere import atmosphere_warnings
-from profiler.budget import Budget
-from profiler.confidence import Confidence, assess
 from profiler.diffraction import DiffractionLoss
 from profiler.errors import InputError
 from profiler.geometry import check_corridor, check_rule, elevation_angle, find_reflections
@@ -20,6 +19,10 @@ from profiler.study.provenance import provenance
 from profiler.study.result import RuleResult, Study, Verdict, least_surplus
 from profiler.terrain import Terrain, open_terrain, require_inside
 from profiler.units import FOOT_M, STATUTE_MILE_M
+
+if TYPE_CHECKING:
+    from profiler.budget import Budget
+    from profiler.confidence import Confidence
 
 __all__ = ["open_hop_terrain", "run_study"]
 
@@ -143,6 +146,8 @@ def _confidence(hop: Hop, ground: Ground, climate: ClimateUse) -> Confidence | N
             f"{hop.source}: confidence.vary_k = true: must come with availability.k_percentiles or the climate maps;"
             " give one of them, or set it to false"
         )
+    from profiler.confidence import assess
+
     surveyed_sigma_m = 0.0 if choice.site_sigma_m is None else choice.site_sigma_m
     return assess(
         profile.distance_m,
