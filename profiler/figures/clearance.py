@@ -33,7 +33,7 @@ __all__ = ["profile_figure"]
 Limits = tuple[float, float]
 
 _LEFT, _WIDTH = 0.92, AXES_IN
-_PROFILE_IN, _SURPLUS_IN, _RELIEF_IN = 2.55, 1.0, 0.85
+_PROFILE_IN, _SURPLUS_IN, _GAP_IN, _RELIEF_IN = 2.55, 1.0, 0.14, 0.85
 
 
 def profile_figure(
@@ -47,8 +47,8 @@ def profile_figure(
     """Draw the profile of a hop with its verdict and everything that it rests on.
 
     The ground is drawn over the earth bulged at the k of the governing rule (the one with the least surplus); the strip
-    below holds every rule at its own k. Axes have the same size on every page, so figures with the same limits can be
-    laid over each other.
+    below holds every rule at its own k. Axes have the same size on every page (with the view from above or without), so
+    figures with the same limits are at the same scale.
 
     Parameters
     ----------
@@ -68,6 +68,11 @@ def profile_figure(
     ------
     InputError
         If limits are not two finite numbers, the lower first.
+
+    Examples
+    --------
+    >>> figure = profile_figure(run_study(hop, relief=True), distance_limits=(0, 50))  # doctest: +SKIP
+    >>> size = Path("hop.pdf").write_bytes(render(figure, ".pdf"))  # doctest: +SKIP
     """
     scale = Scale(feet)
     for name, limits in (("distance", distance_limits), ("height", height_limits), ("surplus", surplus_limits)):
@@ -88,10 +93,11 @@ def profile_figure(
         view = scene(study, scale)
         below = draw_key(page, _LEFT, top + 0.12, _WIDTH, view)
         below = _site_names(page, below + 0.06, study, scale)
-        axes = page.axes(_LEFT, below, _WIDTH, _PROFILE_IN, label="profile")
+        depth = _PROFILE_IN if study.relief is not None else _PROFILE_IN + _GAP_IN + _RELIEF_IN
+        axes = page.axes(_LEFT, below, _WIDTH, depth, label="profile")
         draw_profile(axes, view, scale, distance_limits=reach, height_limits=height_limits)
         draw_tight_places(axes, places, scale, on_surface=True, color=color)
-        below = _numbers(page, below + _PROFILE_IN + 0.02, places, scale, reach, color)
+        below = _numbers(page, below + depth + 0.02, places, scale, reach, color)
         below = _critical(page, below, study, places[0], scale, reach, color)
         strip_top = below + 0.06
         below = _strips(page, strip_top, study, places, scale, reach, surplus_limits, color)
@@ -112,7 +118,7 @@ def _site_names(page: Page, top: float, study: Study, scale: Scale) -> float:
     room = _WIDTH / 2 - 0.1
     hop = study.hop
     both = [
-        wrap(f"{letter}  {site.name}, antenna {scale.height_text(site.antenna_m)} up", room, style.BODY, bold=True)
+        wrap(f"{letter}: {site.name}, antenna {scale.height_text(site.antenna_m)} up", room, style.BODY, bold=True)
         for letter, site in (("A", hop.site_a), ("B", hop.site_b))
     ]
     depth = max(map(len, both))
@@ -169,7 +175,7 @@ def _strips(
     draw_tight_places(axes, places, scale, on_surface=False, color=color)
     lowest, bottom = axes, top + _SURPLUS_IN
     if study.relief is not None:
-        top = bottom + 0.14
+        top = bottom + _GAP_IN
         lowest = page.axes(_LEFT, top, _WIDTH, _RELIEF_IN, label="relief")
         draw_relief(lowest, study.relief, study.line.distance_m, scale, distance_limits=reach)
         mark_on_relief(lowest, places, scale, color=color)

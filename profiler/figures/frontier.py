@@ -61,6 +61,10 @@ def frontier_figure(plan: HeightsPlan, *, feet: bool = False) -> Figure:
     -------
     Figure
         One axes, labelled "heights": antenna A across, antenna B up, both above their own ground.
+
+    Examples
+    --------
+    >>> size = Path("heights.png").write_bytes(render(frontier_figure(plan_heights(study)), ".png"))  # doctest: +SKIP
     """
     scale, hop = Scale(feet), plan.study.hop
     marks = _marks(plan, scale)

@@ -97,7 +97,7 @@ def draw_levels(page: Page, left: float, top: float, width: float, steps: list[S
 _FILLS = {
     "gain": style.ZONE_REQUIRED,
     "loss": style.GROUND,
-    "margin": style.PASS,
+    "margin": style.MUTED,
     "lack": style.FAIL,
 }
 

@@ -50,6 +50,10 @@ def margin_figure(study: Study, *, feet: bool = False) -> Figure:
     ------
     InputError
         If the hop has no radio, so that there is no budget to draw.
+
+    Examples
+    --------
+    >>> size = Path("margin.svg").write_bytes(render(margin_figure(study), ".svg"))  # doctest: +SKIP
     """
     if study.budget is None:
         raise InputError(
@@ -118,9 +122,7 @@ def _modes(page: Page, top: float, study: Study) -> float:
     """List every mode in both directions, with its outage in the weaker one."""
     assert study.budget is not None
     outages = {each.mode: each for each in study.mode_outages}
-    cells: list[tuple[str, ...]] = [
-        ("mode", "A to B", "B to A", "threshold", "margin", "worst month", "year", "objective")
-    ]
+    cells = []
     for there, back in zip(study.budget.a_to_b.modes, study.budget.b_to_a.modes, strict=True):
         margins = [each.fade_margin_db for each in (there, back) if each.fade_margin_db is not None]
         found = outages.get(there.name)
@@ -138,7 +140,7 @@ def _modes(page: Page, top: float, study: Study) -> float:
             )
         )
     top = heading(page, MARGIN_IN, top, "Modes: received level both ways; margin and outage the weaker way")
-    columns = columns_at(MARGIN_IN, (0.82, 0.76, 0.76, 0.78, 0.66, 0.92, 0.78, 0.7))
+    columns = columns_at(MARGIN_IN, (0.72, 0.76, 0.76, 0.78, 0.66, 0.86, 0.7, 0.66))
     names = ("mode", "A to B", "B to A", "threshold", "margin", "worst month", "year", "objective")
     return rows(page, titles(page, top, columns, names), columns, cells)
 
@@ -160,6 +162,6 @@ def _targets(page: Page, top: float, study: Study) -> float:
         for each in objective.targets
     ]
     top = heading(page, MARGIN_IN, top + 0.14, "Objective")
-    columns = columns_at(MARGIN_IN, (2.2, 0.7, 0.8, 0.7, 1.08, 0.8))
+    columns = columns_at(MARGIN_IN, (1.95, 0.62, 0.76, 0.62, 1.1, 0.85))
     names = ("target", "asked", "reached", "", "margin needed", "limited by")
     return rows(page, titles(page, top, columns, names), columns, cells)

@@ -16,10 +16,10 @@ if TYPE_CHECKING:
 __all__ = [
     "TightPlace",
     "critical_place",
-    "governing_first",
     "numbered_places",
     "place_words",
     "rule_position",
+    "rules_by_surplus",
     "spread",
     "surplus_drawn",
 ]
@@ -96,10 +96,9 @@ def numbered_places(study: Study) -> tuple[TightPlace, ...]:
     return (first, *(each for each in others if abs(each.distance_m - first.distance_m) > reach_m))
 
 
-def governing_first(study: Study) -> tuple[RuleResult, ...]:
-    """Rules in the order in which figures list them: the governing one, then the others as given."""
-    governing = study.governing
-    return (governing, *(each for each in study.rules if each is not governing))
+def rules_by_surplus(study: Study) -> tuple[RuleResult, ...]:
+    """Rules in the order in which figures list them, the governing one first."""
+    return tuple(sorted(study.rules, key=lambda result: critical_place(study, result).surplus_m))
 
 
 def rule_position(study: Study, result: RuleResult) -> int:
@@ -134,20 +133,27 @@ def place_words(study: Study, place: TightPlace, scale: Scale) -> str:
 def spread(at: list[float], apart: float, low: float, high: float) -> list[float]:
     """Move places apart along a line so that none stands closer than ``apart``, each as little as need be.
 
+    With i·apart taken from the i-th place, places in order must not descend: that is isotonic regression, which joins
+    neighbours that would into groups at their mean (from memory of the pool-adjacent-violators algorithm).
+
     Examples
     --------
     >>> [round(x, 2) for x in spread([1.0, 1.02, 3.0], 0.2, 0.0, 4.0)]
-    [0.92, 1.12, 3.0]
+    [0.91, 1.11, 3.0]
     """
-    order = np.argsort(at, kind="stable")
-    x = [at[i] for i in order]
-    for _ in range(20):
-        for i in range(len(x) - 1):
-            lack = apart - (x[i + 1] - x[i])
-            if lack > 1e-6:
-                x[i], x[i + 1] = x[i] - lack / 2, x[i + 1] + lack / 2
-        x = [min(max(each, low), high) for each in x]
+    order = [int(i) for i in np.argsort(at, kind="stable")]
+    groups: list[list[float]] = []
+    for rank, i in enumerate(order):
+        groups.append([at[i] - rank * apart])
+        while len(groups) > 1 and _mean(groups[-2]) > _mean(groups[-1]):
+            last = groups.pop()
+            groups[-1] += last
+    level = [_mean(group) for group in groups for _ in group]
     moved = [0.0] * len(at)
-    for i, each in zip(order, x, strict=True):
-        moved[i] = each
+    for rank, i in enumerate(order):
+        moved[i] = min(max(level[rank], low), high - (len(at) - 1) * apart) + rank * apart
     return moved
+
+
+def _mean(values: list[float]) -> float:
+    return sum(values) / len(values)

@@ -9,7 +9,7 @@ import numpy as np
 
 from profiler.figures import style
 from profiler.figures.axes import draw_grid, label_side
-from profiler.figures.places import TightPlace, governing_first, rule_position, surplus_drawn
+from profiler.figures.places import TightPlace, rule_position, rules_by_surplus, surplus_drawn
 from profiler.figures.profile import AXES_IN, thinned
 from profiler.figures.scale import Scale, minus, nice_ticks
 from profiler.units import Float
@@ -27,7 +27,8 @@ _MOST_ALONG, _MOST_ACROSS = 1200, 160
 def rule_look(position: int) -> tuple[str, tuple[float, ...]]:
     """Colour and dashes of a rule by its place in the hop file, the same on every figure."""
     count = len(style.RULE_COLOURS)
-    return style.RULE_COLOURS[position % count], style.RULE_DASHES[position % count]
+    # from the sixth rule on the colours meet other dashes
+    return style.RULE_COLOURS[position % count], style.RULE_DASHES[(position + position // count) % count]
 
 
 def draw_surplus(
@@ -42,7 +43,7 @@ def draw_surplus(
 
     The limits are set for the tight places; where there is much more clearance the lines leave at the top.
     """
-    results = governing_first(study)
+    results = rules_by_surplus(study)
     bottom, top = _surplus_limits(study, scale) if surplus_limits is None else surplus_limits
     axes.fill_between(distance_limits, min(bottom, 0.0), 0.0, fc=style.FAIL_TINT, lw=0, zorder=0.4)
     x = study.profile.distance_m
@@ -76,15 +77,14 @@ def draw_surplus(
 
 def _surplus_limits(study: Study, scale: Scale) -> tuple[float, float]:
     """Limits that show the tight places of every rule, whatever room there is over deep valleys."""
-    results = study.rules
-    least = min(float(surplus_drawn(each).min()) for each in results)
-    if study.confidence is not None:
-        least = min([least, *(float(each.surplus.low_m.min()) for each in study.confidence.rules)])
-    widest = max(float(each.check.f1_m.max()) for each in results)
-    tight = max(float(each.check.surplus_m[list(each.check.tight)].max()) for each in results)
-    most = max(float(surplus_drawn(each).max()) for each in results)
-    high = min(most, max(3.0 * widest, -0.8 * least, 1.3 * tight if tight < 4.0 * widest else 0.0, least + widest, 5.0))
-    low = min(least, 0.0)
+    surpluses = [surplus_drawn(each) for each in study.rules]
+    leasts, most = [float(each.min()) for each in surpluses], max(float(each.max()) for each in surpluses)
+    widest = max(float(each.check.f1_m.max()) for each in study.rules)
+    doubtful = [] if study.confidence is None else [float(each.surplus.low_m.min()) for each in study.confidence.rules]
+    low = min(0.0, *leasts, *doubtful)
+    # the tightest place of every rule, unless one rule is so easy that it would flatten all the others
+    tight = [least for least in leasts if least < min(leasts) + 6.0 * widest]
+    high = min(most, max(3.0 * widest, -0.8 * low, 1.2 * max(tight) + widest, 5.0))
     span = max(high - low, 1.0)
     return scale.height(low - 0.1 * span), scale.height(high + 0.05 * span)
 

@@ -55,8 +55,8 @@ FAIL = "#b23a00"
 FAIL_TINT = "#f6dfd2"
 
 RULE_COLOURS = ("#1c1f24", "#0072b2", "#b8860b", "#a0527a", "#4d8a7a")
-RULE_DASHES: tuple[tuple[float, ...], ...] = ((), (5, 2), (1.5, 1.5), (6, 1.5, 1.5, 1.5), (9, 3))
-"""One colour and one dash for each rule, the governing rule first; with more rules they come round again."""
+RULE_DASHES: tuple[tuple[float, ...], ...] = ((), (5, 2), (1.5, 1.5), (6, 1.5, 1.5, 1.5), (4, 1.5, 1, 1.5, 1, 1.5))
+"""One colour and one dash for each rule, in the order of the hop file."""
 
 BODY = 7.4
 SMALL = 7.0

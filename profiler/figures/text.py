@@ -31,7 +31,14 @@ def _advance(letter: str, bold: bool) -> float:
     """Advance of a letter as a share of the size of type."""
     face = get_font(str(_file(bold)))
     face.set_size(100.0, 72.0)
-    return float(face.load_char(ord(letter)).linearHoriAdvance) / 65536.0 / 100.0
+    # a letter that the font lacks has index 0, the box that stands for it
+    return float(face.load_glyph(face.get_char_index(ord(letter))).linearHoriAdvance) / 65536.0 / 100.0
+
+
+@lru_cache(maxsize=8192)
+def _ems(words: str, bold: bool) -> float:
+    """Width of a text as a share of the size of type."""
+    return sum(_advance(letter, bold) for letter in words)
 
 
 def width_in(words: str, size_pt: float, *, bold: bool = False) -> float:
@@ -42,7 +49,7 @@ def width_in(words: str, size_pt: float, *, bold: bool = False) -> float:
     >>> 0.5 < width_in("ten points", 10.0) < 0.9
     True
     """
-    return _SLACK * sum(_advance(letter, bold) for letter in words) * size_pt / 72.0
+    return _SLACK * _ems(words, bold) * size_pt / 72.0
 
 
 def wrap(words: str, room_in: float, size_pt: float, *, bold: bool = False, indent: str = "") -> list[str]:
@@ -53,30 +60,32 @@ def wrap(words: str, room_in: float, size_pt: float, *, bold: bool = False, inde
     >>> wrap("one two three", 0.5, 7.0, indent="  ")
     ['one two', '  three']
     """
+    room = room_in * 72.0 / (_SLACK * size_pt)
+    space = _ems(" ", bold)
     lines: list[str] = []
-    line = ""
+    line, used = "", 0.0
     for word in words.split():
-        trial = f"{line} {word}" if line.strip() else line + word
-        if width_in(trial, size_pt, bold=bold) <= room_in:
-            line = trial
+        width = _ems(word, bold)
+        if line.strip() and used + space + width <= room:
+            line, used = f"{line} {word}", used + space + width
             continue
         if line.strip():
             lines.append(line)
-            line = indent + word
-        else:
-            line += word
-        while width_in(line, size_pt, bold=bold) > room_in and len(line) > len(indent) + 1:
-            cut = _longest_prefix(line, room_in, size_pt, bold=bold)
+            line, used = indent, _ems(indent, bold)
+        line, used = line + word, used + width
+        while used > room and len(line) > len(indent) + 1:
+            cut = _longest_prefix(line, room, bold)
             lines.append(line[:cut])
             line = indent + line[cut:]
+            used = _ems(line, bold)
     return [*lines, line]
 
 
-def _longest_prefix(line: str, room_in: float, size_pt: float, *, bold: bool) -> int:
+def _longest_prefix(line: str, room: float, bold: bool) -> int:
     """How many letters fit, at least one beyond the indent."""
     start = len(line) - len(line.lstrip()) + 1
     for cut in range(start, len(line) + 1):
-        if width_in(line[:cut], size_pt, bold=bold) > room_in:
+        if _ems(line[:cut], bold) > room:
             return max(start, cut - 1)
     return len(line)
 
