@@ -117,7 +117,8 @@ def _lay_path(hop: Hop, terrain: Terrain) -> tuple[PathLine, float]:
     ends = (hop.site_a.longitude, hop.site_a.latitude, hop.site_b.longitude, hop.site_b.latitude)
     length_m, spacing_m = float(geodesic(*ends)[0]), hop.terrain.spacing_m
     coarse = trace(*ends, spacing_m=length_m / _SEARCH_STEPS)
-    cell_m = terrain.finest_cell_m(coarse.longitude, coarse.latitude)
+    # a cell is measured where the path meets its raster first: ask from both ends, or swapping them moves the points
+    cell_m = min(terrain.finest_cell_m(coarse.longitude[::way], coarse.latitude[::way]) for way in (1, -1))
     if spacing_m is None:
         spacing_m = min(0.5 * cell_m, length_m / _DEFAULT_STEPS)
     elif spacing_m * _FEWEST_STEPS > length_m:

@@ -1,0 +1,745 @@
+"""Whole studies on ground whose answer is known: by closed form, by symmetry, or by what must follow from a change.
+
+The ground is a strip of one-arc-second cells (31 m by 21 m) along the meridian 9° E, so that a path along it is exactly
+the meridian and its distances are those of the rows. Real ground is in test_study_real.py.
+"""
+
+import hashlib
+import json
+import math
+from dataclasses import replace
+from itertools import pairwise
+
+import numpy as np
+import pytest
+from affine import Affine
+from hypothesis import given, settings
+from hypothesis import strategies as st
+from scipy.ndimage import gaussian_filter
+
+from profiler.errors import DatumError, InputError, MissingGroundError
+from profiler.geometry import ROUNDING_M
+from profiler.models import (
+    AvailabilityChoice,
+    ConfidenceChoice,
+    CoverChoice,
+    HeightsChoice,
+    Hop,
+    Objective,
+    Obstacle,
+    Radio,
+    RadioMode,
+    Rule,
+    Site,
+    Terminal,
+    TerrainChoice,
+    TowerChoice,
+)
+from profiler.study import open_hop_terrain, point_table, run_study, to_document
+from profiler.study.plan import heights_document, plan_heights
+
+CELL = 1 / 3600
+ROWS, COLUMNS = 720, 61
+WEST, NORTH = 9.0 - 30.5 * CELL, 46.19
+LATITUDE = NORTH - CELL * (np.arange(ROWS) + 0.5)
+LONGITUDE = WEST + CELL * (np.arange(COLUMNS) + 0.5)
+CELL_EW_M, CELL_NS_M = 21.5, 30.87
+"""At 46° N on WGS 84, to the digits shown (111 320 m · cos 46° / 3600 and the meridian's 111 147 m / 3600)."""
+
+MID_ROW = 342  # the row whose centre is nearest to the middle of the path
+GROUND_M = 100.0
+
+
+def north_up(west: float, north: float, cell: float) -> Affine:
+    """Place square cells by their north-west corner."""
+    return Affine(cell, 0.0, west, 0.0, -cell, north)
+
+
+@pytest.fixture
+def land(write_raster):
+    """Write the strip with heights (rows, columns) or one height: ``land(heights, "name.tif", nodata=…)``."""
+
+    def write(heights=GROUND_M, name="ground.tif", *, crs="EPSG:4326", west=WEST, **options):
+        heights = np.broadcast_to(np.asarray(heights, dtype=float), (ROWS, COLUMNS))
+        return write_raster(name, heights, north_up(west, NORTH, CELL), crs, **options)
+
+    return write
+
+
+def hop_over(*terrain, **changes) -> Hop:
+    """Make a 20 km hop due north over rasters, 30 m up at both ends, under two rules."""
+    hop = Hop(
+        name="strip",
+        site_a=Site("south", 9.0, 46.0, 30.0),
+        site_b=Site("north", 9.0, 46.18, 30.0),
+        frequency_hz=7.5e9,
+        rules=(Rule(4 / 3, 1.0), Rule(2 / 3, 0.3)),
+        terrain=TerrainChoice(terrain),
+    )
+    return replace(hop, **changes)
+
+
+def with_terrain(hop: Hop, **changes) -> Hop:
+    return replace(hop, terrain=replace(hop.terrain, **changes))
+
+
+RADIO = Radio(
+    Terminal(power_dbm=27.0, gain_dbi=36.0, line_loss_db=1.0),
+    Terminal(power_dbm=20.0, gain_dbi=33.0, line_loss_db=2.0),
+    (RadioMode("256-QAM", threshold_dbm=-64.0), RadioMode("QPSK", threshold_dbm=-86.0)),
+    (("aging", 1.5),),
+)
+CLIMATE = AvailabilityChoice(
+    "p530-17-quick",
+    Objective(year_percent=0.01),
+    rain_rate_mm_h=30.0,
+    dn1_n_km=-300.0,
+    k_percentiles=((0.1, 0.7), (50.0, 4 / 3), (99.0, 2.2)),
+)
+
+
+def rolling(seed=1) -> np.ndarray:
+    """Smooth hills of some 30 m about 100 m."""
+    noise = np.random.default_rng(seed).standard_normal((ROWS, COLUMNS))
+    return GROUND_M + 30 * gaussian_filter(noise, 25) / 0.0112
+
+
+def ridge(height_m: float, row=MID_ROW) -> np.ndarray:
+    """Three rows of cells across the path: sharp, but wide enough that points half a cell apart find its top."""
+    heights = np.full((ROWS, COLUMNS), GROUND_M)
+    heights[row - 1 : row + 2] += height_m
+    return heights
+
+
+def surpluses(study) -> np.ndarray:
+    return np.array([result.check.surplus_m for result in study.rules])
+
+
+def swapped(hop: Hop) -> Hop:
+    """Make the same hop told from the other end."""
+    radio = hop.radio and replace(hop.radio, terminal_a=hop.radio.terminal_b, terminal_b=hop.radio.terminal_a)
+    return replace(hop, site_a=hop.site_b, site_b=hop.site_a, radio=radio)
+
+
+# Closed forms ---------------------------------------------------------------------------------------------------------
+
+
+def test_flat_ground_is_the_closed_form(land):
+    study = run_study(hop_over(land()))
+    length_km = study.line.distance_m / 1e3
+    for result, k, fraction in zip(study.rules, (4 / 3, 2 / 3), (1.0, 0.3), strict=True):
+        # the forms of the trade, d in km: bulge d1·d2/(12.742·k) and F1 17.3·sqrt(d1·d2/(f·d)), rounded to 0.3 %
+        bulge_m = length_km**2 / 4 / (12.742 * k)
+        f1_m = 17.3 * math.sqrt(length_km / 4 / 7.5)
+        check = result.check
+        assert check.bulge_m[check.critical] == pytest.approx(bulge_m, rel=1e-3)
+        assert check.f1_m[check.critical] == pytest.approx(f1_m, rel=3e-3)
+        assert check.surplus_m[check.critical] == pytest.approx(30 - bulge_m - fraction * f1_m, abs=0.06)
+        assert study.profile.distance_m[check.critical] == pytest.approx(length_km * 500, abs=study.line.spacing_m)
+        assert result.passes
+        assert result.corridor.passes
+    assert study.verdict.passes
+    assert study.verdict.headline == "clears, 10.0 m to spare 10.00 km from south (rule 1 F1 at k = 1.33)"
+    assert study.verdict.headline_feet.startswith("clears, 32.7 ft to spare 6.22 mi from south")
+
+
+def test_the_path_is_the_meridian(land):
+    study = run_study(hop_over(land()))
+    line = study.line
+    # WGS 84 meridian arc by the series in the third flattening (Rapp, Geometric Geodesy I, 1991, §3.6; from memory)
+    n = (1 / 298.257223563) / (2 - 1 / 298.257223563)
+    a0 = 6378137 / (1 + n) * (1 + n**2 / 4 + n**4 / 64)
+
+    def arc(degrees):
+        phi = math.radians(degrees)
+        waves = (-3 / 2 * n + 9 / 16 * n**3, 15 / 16 * n**2, -35 / 48 * n**3)
+        return a0 * (phi + sum(c * math.sin(2 * j * phi) for j, c in enumerate(waves, start=1)))
+
+    assert line.distance_m == pytest.approx(arc(46.18) - arc(46.0), abs=2e-3)
+    assert (line.azimuth_a_deg, line.azimuth_b_deg) == pytest.approx((0.0, 180.0), abs=1e-9)
+    assert study.terrain.finest_cell_m == pytest.approx(CELL_EW_M, rel=3e-3)
+    assert line.points == math.ceil(line.distance_m / (0.5 * study.terrain.finest_cell_m)) + 1
+
+
+def test_a_sharp_ridge_is_a_knife_edge(land):
+    hop = hop_over(land(ridge(60.0)), diffraction_method="knife-edge", rules=(Rule(4 / 3, 1.0),), radio=RADIO)
+    study = run_study(hop)
+    [loss], check = study.diffraction, study.rules[0].check
+    d1 = study.profile.distance_m[check.critical]
+    d2 = study.line.distance_m - d1
+    height = 160 + d1 * d2 / (2 * 4 / 3 * 6371e3) - 130
+    nu = height * math.sqrt(2 / (299792458 / 7.5e9) * (1 / d1 + 1 / d2))
+    # Rec. ITU-R P.526-15 §4.1, equation (31)
+    assert loss.loss_db == pytest.approx(6.9 + 20 * math.log10(math.sqrt((nu - 0.1) ** 2 + 1) + nu - 0.1), abs=0.01)
+    assert d1 == pytest.approx((46.0 - LATITUDE[MID_ROW]) * -111147, abs=1.5 * CELL_NS_M)
+    assert not study.verdict.passes
+    assert not check.line_of_sight
+    assert study.budget.a_to_b.diffraction_db == loss.loss_db
+
+
+def test_elevation_angles_on_flat_ground_look_down_by_half_the_bend(land):
+    study = run_study(hop_over(land()))
+    for result in study.rules:
+        half_bend_deg = math.degrees(study.line.distance_m / (2 * result.check.k * 6371e3))
+        assert result.elevation_a_deg == pytest.approx(-half_bend_deg, abs=1e-5)
+        assert result.elevation_b_deg == pytest.approx(-half_bend_deg, abs=1e-5)
+
+
+# Properties of whole studies ------------------------------------------------------------------------------------------
+
+
+def test_swapping_the_ends_mirrors_everything(land):
+    hop = hop_over(land(rolling()), radio=RADIO, availability=CLIMATE, site_b=Site("north", 9.0005, 46.18, 45.0))
+    there, back = run_study(hop), run_study(swapped(hop))
+    assert there.line.distance_m == pytest.approx(back.line.distance_m, abs=1e-6)
+    assert (there.line.azimuth_a_deg, there.line.azimuth_b_deg) == pytest.approx(
+        (back.line.azimuth_b_deg, back.line.azimuth_a_deg), abs=1e-9
+    )
+    assert (there.elevation_a_deg, there.elevation_b_deg) == pytest.approx(
+        (back.elevation_b_deg, back.elevation_a_deg), abs=1e-9
+    )
+    assert surpluses(there) == pytest.approx(surpluses(back)[:, ::-1], abs=1e-5)
+    assert [result.passes for result in there.rules] == [result.passes for result in back.rules]
+    for one, other in zip(there.diffraction, back.diffraction, strict=True):
+        assert one.loss_db == pytest.approx(other.loss_db, abs=1e-5)
+    for name in ("received_dbm", "threshold_dbm", "fade_margin_db", "free_space_db", "gas_db"):
+        assert getattr(there.budget.a_to_b, name) == pytest.approx(getattr(back.budget.b_to_a, name), abs=1e-5)
+        assert getattr(there.budget.b_to_a, name) == pytest.approx(getattr(back.budget.a_to_b, name), abs=1e-5)
+    assert there.availability.year_percent.total == pytest.approx(back.availability.year_percent.total, rel=1e-6)
+    assert [mode.direction for mode in there.mode_outages] != [mode.direction for mode in back.mode_outages]
+
+
+@settings(max_examples=20)
+@given(raise_m=st.floats(0.1, 80.0), end=st.sampled_from(["site_a", "site_b"]))
+def test_raising_an_antenna_lifts_the_ray_by_its_share(open_rolling, raise_m, end):
+    hop, terrain, before = open_rolling
+    site = getattr(hop, end)
+    after = run_study(replace(hop, **{end: replace(site, antenna_m=site.antenna_m + raise_m)}), terrain)
+    share = before.profile.distance_m / before.line.distance_m
+    lift = raise_m * (share if end == "site_b" else 1 - share)
+    assert surpluses(after) - surpluses(before) == pytest.approx(np.tile(lift, (2, 1)), abs=1e-6)
+
+
+@settings(max_examples=20)
+@given(k=st.floats(0.4, 3.0), factor=st.floats(1.01, 3.0))
+def test_more_k_never_takes_clearance(open_rolling, k, factor):
+    hop, terrain, _ = open_rolling
+    low, high = (run_study(replace(hop, rules=(Rule(each, 0.6),)), terrain) for each in (k, k * factor))
+    d1 = low.profile.distance_m
+    bend = d1 * (low.line.distance_m - d1) / (2 * 6371e3)
+    gain = (surpluses(high) - surpluses(low))[0]
+    assert gain == pytest.approx(bend / k - bend / (k * factor), abs=1e-6)
+
+
+@settings(max_examples=20)
+@given(frequency_ghz=st.floats(1.0, 40.0), factor=st.floats(1.01, 2.0))
+def test_more_frequency_narrows_the_zone(open_rolling, frequency_ghz, factor):
+    hop, terrain, _ = open_rolling
+    low, high = (
+        run_study(replace(hop, frequency_hz=f * 1e9), terrain) for f in (frequency_ghz, frequency_ghz * factor)
+    )
+    assert np.all(surpluses(high) >= surpluses(low) - ROUNDING_M)
+    for one, other in zip(low.rules, high.rules, strict=True):
+        assert other.check.f1_m * math.sqrt(factor) == pytest.approx(one.check.f1_m, rel=1e-9, abs=1e-9)
+
+
+@pytest.fixture(scope="module")
+def open_rolling(tmp_path_factory):
+    """Give a hop over rolling ground, its terrain left open, and its study: for properties that ask it often."""
+    import rasterio
+
+    path = tmp_path_factory.mktemp("rolling") / "ground.tif"
+    shape = {"count": 1, "height": ROWS, "width": COLUMNS, "dtype": "float64"}
+    with rasterio.open(
+        path, "w", driver="GTiff", crs="EPSG:4326", transform=north_up(WEST, NORTH, CELL), **shape
+    ) as raster:
+        raster.write(rolling(), 1)
+    hop = with_terrain(hop_over(path), spacing_m=100.0)
+    with open_hop_terrain(hop) as terrain:
+        yield hop, terrain, run_study(hop, terrain)
+
+
+def test_halving_the_spacing_keeps_every_point_and_finds_no_easier_one(land):
+    hop = with_terrain(hop_over(land(rolling())), spacing_m=200.0)
+    coarse = run_study(hop)
+    fine = run_study(with_terrain(hop, spacing_m=coarse.line.spacing_m / 2))
+    assert fine.line.points == 2 * coarse.line.points - 1
+    assert surpluses(fine)[:, ::2] == pytest.approx(surpluses(coarse), abs=1e-6)
+    assert np.all(surpluses(fine).min(axis=1) <= surpluses(coarse).min(axis=1) + 1e-6)
+
+
+def test_the_default_spacing_misses_next_to_nothing(land):
+    hop = hop_over(land(rolling()))
+    default, fine = run_study(hop), run_study(with_terrain(hop, spacing_m=2.0))
+    assert default.line.spacing_m <= 0.5 * default.terrain.finest_cell_m
+    # bilinear ground between cells: half a cell apart, a point is at most a quarter cell from any other place
+    slope = np.abs(np.gradient(fine.profile.ground_m, fine.profile.distance_m)).max()
+    assert (
+        np.abs(surpluses(default).min(axis=1) - surpluses(fine).min(axis=1)).max() < slope * default.line.spacing_m / 2
+    )
+
+
+def test_highest_of_the_cells_is_never_lower(land):
+    hop = hop_over(land(rolling()))
+    highest, bilinear = run_study(with_terrain(hop, method="highest")), run_study(hop)
+    assert np.all(highest.profile.ground_m >= bilinear.profile.ground_m - 1e-9)
+    assert "ground between cell centres: highest; a point every 10.7 m" in highest.assumptions
+
+
+# Where the ground comes from ------------------------------------------------------------------------------------------
+
+
+def test_surveyed_ground_replaces_the_raster_and_says_by_how_much(land):
+    path = land(rolling())
+    raster = run_study(hop_over(path))
+    site = replace(hop_over(path).site_a, surveyed_ground_m=93.25)
+    study = run_study(hop_over(path, site_a=site))
+    assert study.profile.ground_m[0] == 93.25
+    assert study.profile.ground_m[1:] == pytest.approx(raster.profile.ground_m[1:])
+    assert study.terrain.surveyed_difference_a_m == pytest.approx(93.25 - raster.profile.ground_m[0])
+    assert study.terrain.surveyed_difference_b_m is None
+    assert study.centre_a_m == 93.25 + 30
+    assert study.profile.surveyed.nonzero()[0].tolist() == [0]
+    assert to_document(study)["hop"]["site_a"]["ground_surveyed"]
+
+
+def void(first=300, last=340) -> np.ndarray:
+    heights = rolling().copy()
+    heights[first : last + 1] = -9999
+    return heights
+
+
+def test_missing_ground_stops_the_study_and_says_where(land):
+    with pytest.raises(MissingGroundError, match=r"no ground height at \d+ of \d+ points: from 10\.\d+ to 11\.\d+ km"):
+        run_study(hop_over(land(void(), nodata=-9999)))
+
+
+def test_missing_ground_is_filled_when_the_hop_says_so_and_marked(land):
+    hop = with_terrain(hop_over(land(void(), nodata=-9999)), missing="interpolate")
+    study = run_study(hop)
+    filled, x, z = study.profile.filled, study.profile.distance_m, study.profile.ground_m
+    # bilinear cells that touch the void are void too: 41 rows and half a row to each side
+    assert filled.sum() * study.line.spacing_m == pytest.approx(42 * CELL_NS_M, abs=2 * study.line.spacing_m)
+    first, last = filled.nonzero()[0][[0, -1]]
+    line = np.interp(x[filled], x[[first - 1, last + 1]], z[[first - 1, last + 1]])
+    assert z[filled] == pytest.approx(line, abs=1e-9)
+    assert study.terrain.filled_points == filled.sum()
+    assert any("interpolated along the path" in note for note in study.assumptions)
+    assert any("beside the path" in warning and "not checked" in warning for warning in study.warnings)
+
+
+def test_a_void_under_a_site_cannot_be_filled(land):
+    hop = with_terrain(hop_over(land(void(680, 719), nodata=-9999)), missing="interpolate")
+    with pytest.raises(MissingGroundError, match=r"from 0\.000 to"):
+        run_study(hop)
+
+
+@pytest.mark.parametrize(
+    ("change", "message"),
+    [
+        ({"site_a": Site("south", 9.0, 45.0, 30.0)}, "south: longitude 9.0.*off the terrain, about 110"),
+        ({"site_a": Site("south", 46.0, 9.0, 30.0)}, "south: .*look swapped: longitude 9.0.*would lie on it"),
+        ({"site_b": Site("north", -9.0, 46.18, 30.0)}, "north: .*sign of the longitude"),
+        ({"site_b": Site("north", 9.0, -46.18, 30.0)}, "north: .*sign of the latitude"),
+    ],
+)
+def test_a_site_off_the_terrain_is_named_with_its_slip(land, change, message):
+    with pytest.raises(InputError, match=message):
+        run_study(hop_over(land(), **change))
+
+
+def two_datums(land):
+    south, north = (np.full((ROWS, COLUMNS), GROUND_M) for _ in range(2))
+    south[:360], north[360:] = -9999, -9999
+    return (
+        land(south, "south.tif", crs="EPSG:4326+5773", nodata=-9999),
+        land(north, "north.tif", crs="EPSG:4326+3855", nodata=-9999),
+    )
+
+
+def test_two_vertical_datums_on_a_path_stop_the_study_unless_allowed(land):
+    hop = hop_over(*two_datums(land))
+    with pytest.raises(DatumError, match=r"datums meet on one path: EGM96 geoid \(.*south\.tif\), EGM2008"):
+        run_study(hop)
+    study = run_study(with_terrain(hop, missing="interpolate", allow_mixed_datums=True))
+    assert study.terrain.vertical_datum is None
+    assert any("mixed, as allowed" in note for note in study.assumptions)
+
+
+def test_another_datum_beside_the_path_does_not_stop_the_view_from_above(land):
+    east = land(GROUND_M, "east.tif", crs="EPSG:4326+3855", west=WEST + COLUMNS * CELL)
+    study = run_study(hop_over(land(crs="EPSG:4326+5773"), east), relief=True)
+    assert study.terrain.vertical_datum.startswith("EGM96")
+    assert np.isfinite(study.relief.ground_m[:, -20:]).any()
+
+
+def test_the_finest_raster_wins_and_the_shares_are_told(land, write_raster):
+    wide = write_raster("wide.tif", np.full((80, 80), 50.0), north_up(8.9, 46.3, 1 / 120), "EPSG:4326")  # 30″
+    heights = np.full((ROWS, COLUMNS), GROUND_M)
+    heights[:342] = -9999
+    study = run_study(hop_over(wide, land(heights, nodata=-9999)))
+    share = {use.info.path.name: use.share for use in study.terrain.sources}
+    assert share["ground.tif"] + share["wide.tif"] == pytest.approx(1.0)
+    assert share["ground.tif"] == pytest.approx(np.mean(study.profile.ground_m == GROUND_M), abs=0.01)
+    assert study.profile.ground_m[[0, -1]].tolist() == [GROUND_M, 50.0]
+    assert study.terrain.finest_cell_m == pytest.approx(CELL_EW_M, rel=1e-2)
+
+
+def test_a_raster_in_feet_becomes_metres_and_says_so(land):
+    study = run_study(hop_over(land(1000.0, unit="ft")))
+    assert study.profile.ground_m == pytest.approx(np.full(study.line.points, 304.8))
+    assert any("ft" in note and "ground.tif" in note for note in study.assumptions)
+
+
+def test_a_short_hop_over_coarse_cells_has_points_enough(write_raster):
+    path = write_raster("coarse.tif", np.full((6, 6), 10.0), north_up(8.97, 46.03, 0.01), "EPSG:4326")
+    study = run_study(hop_over(path, site_b=Site("north", 9.0, 46.02, 30.0)))
+    assert study.line.points == 201
+    assert study.verdict.passes
+
+
+def test_a_spacing_too_wide_for_the_path_names_its_field(land):
+    with pytest.raises(InputError, match=r"terrain\.spacing_m = 900: must be at most one 50th of this path of 20\.0"):
+        run_study(with_terrain(hop_over(land()), spacing_m=900.0))
+
+
+def test_across_the_antimeridian(write_raster):
+    cell = 1 / 120
+    west = write_raster("west.tif", np.full((24, 24), 20.0), north_up(179.8, 70.1, cell), "EPSG:4326")
+    east = write_raster("east.tif", np.full((24, 24), 20.0), north_up(-180.0, 70.1, cell), "EPSG:4326")
+    hop = hop_over(west, east, site_a=Site("west", 179.85, 70.0, 30.0), site_b=Site("east", -179.85, 70.0, 30.0))
+    study = run_study(hop)
+    # 0.3° of the parallel at 70° N: 0.3 · π/180 · a·cos φ / sqrt(1 - e²·sin² φ)
+    parallel_m = (
+        math.radians(0.3)
+        * 6378137
+        * math.cos(math.radians(70))
+        / math.sqrt(1 - 0.00669438 * math.sin(math.radians(70)) ** 2)
+    )
+    assert study.line.distance_m == pytest.approx(parallel_m, rel=1e-5)
+    assert {use.info.path.name for use in study.terrain.sources} == {"west.tif", "east.tif"}
+    assert study.profile.ground_m == pytest.approx(np.full(study.line.points, 20.0))
+
+
+# Cover, and what stands beside ----------------------------------------------------------------------------------------
+
+
+def test_canopy_raises_the_surface_by_its_height(land):
+    path = land(rolling())
+    canopy = np.zeros((ROWS, COLUMNS))
+    canopy[300:400] = 18.0
+    bare = run_study(hop_over(path))
+    wooded = run_study(hop_over(path, cover=CoverChoice(canopy=(land(canopy, "canopy.tif"),))))
+    cover = wooded.profile.cover_m
+    assert (cover.min(), cover.max()) == (0.0, 18.0)
+    assert surpluses(bare) - surpluses(wooded) == pytest.approx(np.tile(cover, (2, 1)), abs=1e-9)
+    assert wooded.profile.ground_m == pytest.approx(bare.profile.ground_m)
+
+
+def test_land_cover_gives_each_class_its_height(land, write_raster):
+    classes = np.full((ROWS, COLUMNS), 7, dtype="uint8")
+    classes[300:400] = 4
+    landcover = write_raster("classes.tif", classes, north_up(WEST, NORTH, CELL))
+    hop = hop_over(land(), cover=CoverChoice(landcover=landcover, class_heights_m=((4, 15.0), (7, 1.0))))
+    study = run_study(hop)
+    in_wood = (study.profile.latitude < NORTH - 300 * CELL) & (study.profile.latitude > NORTH - 400 * CELL)
+    assert study.profile.cover_m.tolist() == np.where(in_wood, 15.0, 1.0).tolist()
+    with pytest.raises(InputError, match=r"class_heights_m: classes\.tif holds class 4 .* must list a height for it"):
+        run_study(replace(hop, cover=replace(hop.cover, class_heights_m=((7, 1.0),))))
+
+
+def test_an_obstacle_counts_where_it_stands(land):
+    mast = Obstacle("water tower", 8000.0, 8005.0, 28.0)
+    study = run_study(hop_over(land(), cover=CoverChoice(obstacles=(mast,))))
+    [under] = study.profile.cover_m.nonzero()[0]
+    assert study.profile.distance_m[under] == pytest.approx(8000, abs=study.line.spacing_m)
+    assert [result.check.critical for result in study.rules] == [under, under]
+    assert not study.verdict.passes
+    with pytest.raises(InputError, match=r"obstacle far mast: to_m = 30000: must lie within the 200\d\d m path"):
+        run_study(hop_over(land(), cover=CoverChoice(obstacles=(Obstacle("far mast", 29990.0, 30000.0, 5.0),))))
+
+
+def test_an_antenna_in_its_own_trees_is_named_and_a_clearing_helps(land):
+    hop = hop_over(land(), cover=CoverChoice(canopy=(land(35.0, "canopy.tif"),)))
+    with pytest.raises(InputError, match=r"site_a\.antenna_m = 30: must be above the 35\.0 m of cover at south"):
+        run_study(hop)
+    cleared = replace(hop, site_a=replace(hop.site_a, clearing_m=50.0), site_b=replace(hop.site_b, clearing_m=50.0))
+    study = run_study(cleared)
+    near = np.minimum(study.profile.distance_m, study.line.distance_m - study.profile.distance_m) <= 50.0
+    assert study.profile.cover_m.tolist() == np.where(near, 0.0, 35.0).tolist()
+
+
+def wall(side: int) -> np.ndarray:
+    """Put a wall 60 m high one cell beside the path (``side`` 1 east, -1 west), 600 m along its middle."""
+    heights = np.full((ROWS, COLUMNS), GROUND_M)
+    beside = slice(31, None) if side > 0 else slice(None, 30)
+    heights[MID_ROW - 10 : MID_ROW + 10, beside] += 60.0
+    return heights
+
+
+@pytest.mark.parametrize(("side", "name"), [(1, "right"), (-1, "left")])
+def test_a_wall_beside_the_path_fails_the_rule_and_names_the_side(land, side, name):
+    """At 0.9 GHz F1 is 40.8 m amid the path, and the wall begins at its full height 21.5 m beside it."""
+    hop = hop_over(land(wall(side)), frequency_hz=0.9e9, rules=(Rule(4 / 3, 0.6),))
+    hop = replace(hop, site_a=replace(hop.site_a, antenna_m=45.0), site_b=replace(hop.site_b, antenna_m=45.0))
+    study = run_study(hop)
+    [result] = study.rules
+    corridor = result.corridor
+    assert result.check.passes
+    assert not corridor.passes
+    assert not result.passes
+    assert corridor.side == name
+    assert f"m {name} of the path" in study.verdict.headline
+    # by hand at the offset found: ray - bulge - sqrt(r² - y²) - the wall, whose flank rises over one cell
+    d1, y = study.profile.distance_m[corridor.distance_index], abs(corridor.offset_m)
+    d2 = study.line.distance_m - d1
+    flank_m = 60.0 * min(1.0, y / CELL_EW_M)
+    radius_m = 0.6 * math.sqrt(299792458 / 0.9e9 * d1 * d2 / (d1 + d2))
+    surplus_m = 45 - d1 * d2 / (2 * 4 / 3 * 6371e3) - math.sqrt(radius_m**2 - y**2) - flank_m
+    assert corridor.surplus_m == pytest.approx(surplus_m, abs=0.2)  # CELL_EW_M is rounded
+    assert corridor.half_width_m == pytest.approx(radius_m, rel=1e-3)
+    assert run_study(swapped(hop)).rules[0].corridor.side == {"right": "left", "left": "right"}[name]
+    assert to_document(study)["rules"][0]["across"]["side"] == name
+
+
+def test_ground_that_ends_beside_the_path_is_told(land):
+    heights = np.full((ROWS, COLUMNS), GROUND_M)
+    heights[:, 32:] = -9999
+    study = run_study(hop_over(land(heights, nodata=-9999), frequency_hz=0.3e9))
+    assert study.rules[0].corridor.missing_share > 0.1
+    assert any("not checked" in warning for warning in study.warnings)
+
+
+# Radio and availability -----------------------------------------------------------------------------------------------
+
+
+def test_without_a_radio_nothing_of_it_is_invented(land):
+    document = to_document(run_study(hop_over(land())))
+    assert document["budget"] is None
+    assert document["availability"] is None
+    assert document["confidence"] is None
+
+
+def test_an_objective_without_a_radio_is_not_called_met(land):
+    study = run_study(hop_over(land(), availability=CLIMATE))
+    assert study.availability is None
+    assert study.verdict.meets_objective is None
+    assert any("objective was not judged" in warning for warning in study.warnings)
+
+
+def test_the_lines_of_the_budget_add_up_both_ways(land):
+    study = run_study(hop_over(land(), radio=RADIO))
+    for way in (study.budget.a_to_b, study.budget.b_to_a):
+        for mode in way.modes:
+            assert sum(line.value for line in mode.lines) == pytest.approx(mode.received_dbm, abs=1e-9)
+    # by hand, A to B: 27 - 1 + 36 + 33 - 2 - 1.5, less 20·log10(4π·d·f/c) (Rec. ITU-R P.525), gases and diffraction
+    there = study.budget.a_to_b
+    free_db = 20 * math.log10(4 * math.pi * study.line.distance_m * 7.5e9 / 299792458)
+    assert there.free_space_db == pytest.approx(free_db, abs=1e-9)
+    assert there.received_dbm == pytest.approx(91.5 - free_db - there.gas_db - there.diffraction_db, abs=1e-9)
+    assert there.fade_margin_db == pytest.approx(there.received_dbm + 64.0)
+
+
+def test_availability_is_that_of_the_weaker_direction(land):
+    hop = hop_over(land(), radio=RADIO, availability=CLIMATE)  # B sends 7 dB less into the same losses
+    study = run_study(hop)
+    assert study.budget.b_to_a.fade_margin_db == pytest.approx(study.budget.a_to_b.fade_margin_db - 7.0)
+    assert [mode.direction for mode in study.mode_outages] == ["B to A", "B to A"]
+    assert study.availability.fade_margin_db == study.budget.b_to_a.fade_margin_db
+    stronger = replace(RADIO, terminal_b=replace(RADIO.terminal_b, power_dbm=27.0))
+    raised = run_study(replace(hop, radio=stronger))
+    assert raised.availability.year_percent.total < study.availability.year_percent.total
+    qam, qpsk = study.mode_outages
+    assert qpsk.fade_margin_db == pytest.approx(qam.fade_margin_db + 22.0)
+    assert qpsk.year_percent < qam.year_percent
+
+
+def test_a_missed_objective_fails_a_clear_hop(land):
+    climate = replace(CLIMATE, objective=Objective(year_percent=1e-9))
+    study = run_study(hop_over(land(), radio=RADIO, availability=climate))
+    assert study.verdict.clears
+    assert study.verdict.meets_objective is False
+    assert not study.verdict.passes
+    assert study.verdict.headline.endswith("misses the availability objective")
+
+
+def test_roughness_is_the_spread_of_the_raster_in_the_box(write_raster):
+    """The sa of P.530-17 against numpy: the standard deviation of 30″ cells within 55 km of the path's middle."""
+    cell = 1 / 120
+    noise = gaussian_filter(np.random.default_rng(3).standard_normal((200, 240)), 1.0)
+    heights = 300 + 80 * noise / noise.std()
+    path = write_raster("wide.tif", heights, north_up(8.0, 46.9, cell), "EPSG:4326")
+    climate = replace(CLIMATE, multipath_method="p530-17")
+    study = run_study(hop_over(path, radio=RADIO, availability=climate, site_a=Site("south", 9.0, 46.0, 900.0)))
+    [used] = [each for each in study.availability.inputs if each.name == "terrain_roughness_m"]
+    rows = np.abs(46.9 - cell * (np.arange(200) + 0.5) - 46.09) < 55 / 111.15
+    columns = np.abs(8.0 + cell * (np.arange(240) + 0.5) - 9.0) < 55 / (111.32 * math.cos(math.radians(46.09)))
+    # the grid of the method and the cells of the raster do not coincide: bilinear sampling smooths the noise
+    assert used.value == pytest.approx(heights[np.ix_(rows, columns)].std(), rel=0.12)
+    assert "roughness" in used.source or "terrain" in used.source
+
+
+# Confidence -----------------------------------------------------------------------------------------------------------
+
+DOUBT = ConfidenceChoice(4.0, "a test", correlation_m=100.0, draws=400)
+
+
+@pytest.mark.parametrize(("antenna_m", "chance"), [(90.0, 1.0), (2.0, 0.0)])
+def test_confidence_agrees_with_a_verdict_that_nothing_can_turn(land, antenna_m, chance):
+    hop = hop_over(land(rolling()), confidence=DOUBT)
+    sites = {end: replace(getattr(hop, end), antenna_m=antenna_m) for end in ("site_a", "site_b")}
+    study = run_study(replace(hop, **sites))
+    assert study.confidence.chance.value == chance
+    assert study.verdict.clears == bool(chance)
+    names, numbers = point_table(study)
+    low = numbers[:, names.index("rule1_surplus_5_percent_m")]
+    high = numbers[:, names.index("rule1_surplus_95_percent_m")]
+    surplus = numbers[:, names.index("rule1_surplus_m")]
+    assert np.all(low <= high)
+    assert np.mean((low <= surplus) & (surplus <= high)) > 0.95
+
+
+def test_confidence_is_repeatable_and_follows_its_seed(land):
+    hop = hop_over(land(rolling()), confidence=DOUBT)
+    one, again = (to_document(run_study(hop))["confidence"] for _ in range(2))
+    other = to_document(run_study(replace(hop, confidence=replace(DOUBT, seed=2))))["confidence"]
+    assert one == again
+    assert one != other
+
+
+# Heights --------------------------------------------------------------------------------------------------------------
+
+TOWERS = HeightsChoice(TowerChoice(lowest_m=5.0, highest_m=120.0, step_m=1.0), TowerChoice(lowest_m=5.0, step_m=1.5))
+
+
+def at_heights(hop: Hop, antenna_a_m: float, antenna_b_m: float) -> Hop:
+    return replace(
+        hop,
+        site_a=replace(hop.site_a, antenna_m=antenna_a_m),
+        site_b=replace(hop.site_b, antenna_m=antenna_b_m),
+    )
+
+
+@pytest.mark.parametrize("ground", ["rolling", "ridge", "wall"])
+def test_the_cheapest_pair_passes_a_study_and_one_step_less_fails(land, ground):
+    heights = {"rolling": rolling(2), "ridge": ridge(40.0, row=200), "wall": wall(1)}[ground]
+    hop = hop_over(land(heights), heights=TOWERS)
+    plan = plan_heights(run_study(hop))
+    pair = plan.cheapest.antenna_a_m, plan.cheapest.antenna_b_m
+    assert pair[1] % 1.5 == pytest.approx(0.0)
+    assert run_study(at_heights(hop, *pair)).verdict.clears
+    assert not run_study(at_heights(hop, pair[0], pair[1] - 1.5)).verdict.clears
+    if pair[0] > hop.heights.tower_a.lowest_m:
+        assert not run_study(at_heights(hop, pair[0] - 1.0, pair[1])).verdict.clears
+    least = plan.least_equal.height_m
+    assert run_study(at_heights(hop, least + 0.001, least + 0.001)).verdict.clears
+    assert not run_study(at_heights(hop, least - 0.01, least - 0.01)).verdict.clears
+
+
+def test_adding_a_rule_never_lowers_a_height(land):
+    hop = hop_over(land(rolling(2)), heights=TOWERS)
+    rules = (*hop.rules, Rule(0.8, 0.6), Rule(1.0, 0.6, 3.0))
+    plans = [plan_heights(run_study(replace(hop, rules=rules[:count]))) for count in range(1, 5)]
+    for fewer, more in pairwise(plans):
+        assert more.least_equal.height_m >= fewer.least_equal.height_m - 1e-9
+        assert more.cheapest.cost >= fewer.cheapest.cost - 1e-9
+        assert more.least_b.height_m >= fewer.least_b.height_m - 1e-9
+
+
+def test_no_feasible_pair_is_proven_and_says_what_would_have_to_change(land):
+    low = HeightsChoice(TowerChoice(highest_m=20.0), TowerChoice(highest_m=20.0))
+    hop = hop_over(land(ridge(60.0)), heights=low)
+    plan = plan_heights(run_study(hop))
+    assert not plan.feasible
+    place = plan.cheapest.lower[0]
+    check = run_study(at_heights(hop, 20.0, 20.0)).rules[place.rule].check
+    assert place.by_m == pytest.approx(-check.surplus_m[check.critical], abs=1e-6)
+    both = 20.0 + plan.cheapest.raise_both_by_m
+    assert run_study(at_heights(hop, both, both)).verdict.clears
+    assert not run_study(at_heights(hop, both - 0.01, both - 0.01)).verdict.clears
+    document = heights_document(plan)
+    assert (document["feasible"], document["cheapest_m"]) == (False, None)
+    assert document["why_not"]["remedies"]
+
+
+# The document ---------------------------------------------------------------------------------------------------------
+
+CRITICAL = {
+    "distance_m", "longitude", "latitude", "ground_m", "cover_m", "bulge_m", "f1_m", "clearance_m", "required_m",
+    "surplus_m", "ratio",
+}  # fmt: skip
+
+
+@pytest.fixture
+def full(land):
+    """Study a hop with everything in it."""
+    hop = hop_over(land(rolling()), radio=RADIO, availability=CLIMATE, confidence=DOUBT, heights=TOWERS)
+    return run_study(with_terrain(hop, spacing_m=200.0))
+
+
+def test_the_document_has_the_stable_keys(full):
+    """The names that other people script against: once published, they stay."""
+    document = to_document(full)
+    assert set(document) == {
+        "schema", "hop", "path", "terrain", "rules", "diffraction", "budget", "availability", "confidence", "verdict",
+        "provenance",
+    }  # fmt: skip
+    assert document["path"].keys() >= {
+        "distance_m", "azimuth_a_deg", "azimuth_b_deg", "elevation_a_deg", "elevation_b_deg", "points",
+    }  # fmt: skip
+    for rule in document["rules"]:
+        assert rule.keys() >= {"k", "fresnel_fraction", "margin_m", "passes", "critical"}
+        assert set(rule["critical"]) == CRITICAL
+    assert [loss["k"] for loss in document["diffraction"]] == [4 / 3, 2 / 3]
+    for loss in document["diffraction"]:
+        assert loss.keys() >= {"k", "method", "loss_db", "edges"}
+    for way in ("a_to_b", "b_to_a"):
+        assert document["budget"][way].keys() >= {
+            "free_space_db", "gas_db", "diffraction_db", "received_dbm", "threshold_dbm", "fade_margin_db", "lines",
+        }  # fmt: skip
+    for period in ("worst_month_percent", "year_percent"):
+        assert document["availability"][period].keys() >= {"multipath", "rain", "obstruction", "total"}
+    assert isinstance(document["availability"]["objective"]["met"], bool)
+
+
+def test_the_heights_document_has_the_stable_keys_and_plain_values(full):
+    document = heights_document(plan_heights(full))
+    assert json.loads(json.dumps(document))["schema"] == "hopwright-heights/1"
+    assert document.keys() >= {"least_equal_m", "frontier_m", "cheapest_m", "feasible"}
+    assert all(len(vertex) == 2 for vertex in document["frontier_m"])
+    assert len(document["cheapest_m"]) == 2
+
+
+def test_the_document_is_plain_values(full):
+    assert json.loads(json.dumps(to_document(full)))["schema"] == "hopwright-study/1"
+
+
+def test_the_critical_point_of_the_document_is_the_row_of_the_point_table(full):
+    names, numbers = point_table(full)
+    for number, (rule, result) in enumerate(zip(to_document(full)["rules"], full.rules, strict=True), start=1):
+        row = dict(zip(names, numbers[result.check.critical].tolist(), strict=True))
+        for key, value in rule["critical"].items():
+            column = key if key in row else f"rule{number}_{key}"
+            assert row[column] == pytest.approx(value, nan_ok=True), key
+        assert numbers[:, names.index(f"rule{number}_surplus_m")].min() == rule["critical"]["surplus_m"]
+    ray = numbers[:, names.index("ray_m")]
+    clearance = ray - numbers[:, names.index("ground_m")] - numbers[:, names.index("cover_m")]
+    assert clearance - numbers[:, names.index("rule1_bulge_m")] == pytest.approx(
+        numbers[:, names.index("rule1_clearance_m")], abs=1e-9
+    )
+
+
+def test_provenance_names_every_raster_that_a_number_depends_on(land):
+    """The tile to the east lies beside the path only: the corridor reads it, so the hash must be there."""
+    strip = np.full((ROWS, COLUMNS), GROUND_M)
+    strip[:, 32:] = -9999
+    ground, east = land(strip, nodata=-9999), land(GROUND_M, "east.tif", west=WEST + 32 * CELL)
+    canopy = land(3.0, "canopy.tif")
+    study = run_study(hop_over(ground, east, frequency_hz=0.3e9, cover=CoverChoice(canopy=(canopy,))))
+    assert {use.info.path.name for use in study.terrain.sources} == {"ground.tif"}
+    expected = {
+        (path.name, path.stat().st_size, hashlib.sha256(path.read_bytes()).hexdigest())
+        for path in (ground, east, canopy)
+    }
+    assert set(study.provenance.rasters) == expected
+    assert dict(study.provenance.versions).keys() >= {"hopwright", "python", "numpy", "rasterio", "pyproj"}
