@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 from datetime import UTC, datetime
-from functools import cache
+from functools import cache, lru_cache
 from importlib.metadata import version
 from pathlib import Path
 from platform import python_version
@@ -26,6 +26,18 @@ def _versions() -> tuple[tuple[str, str], ...]:
     return (("hopwright", __version__), ("python", python_version()), *libraries)
 
 
+@lru_cache(maxsize=4096)
+def _hash(path: Path, size: int, changed_ns: int) -> str:
+    """Hash a file once for all studies, as long as its size and time of change stay."""
+    del size, changed_ns
+    return file_hash(path)
+
+
+def _identity(path: Path) -> tuple[str, int, str]:
+    status = path.stat()
+    return path.name, status.st_size, _hash(path.resolve(), status.st_size, status.st_mtime_ns)
+
+
 def provenance(hop: Hop, files: Sequence[Path]) -> Provenance:
     """Name, size and SHA-256 of every file that the study used, and the versions that made it.
 
@@ -45,5 +57,5 @@ def provenance(hop: Hop, files: Sequence[Path]) -> Provenance:
         versions=_versions(),
         hop_file=hop.source,
         hop_sha256=hop.source_sha256,
-        rasters=tuple((path.name, path.stat().st_size, file_hash(path)) for path in files),
+        rasters=tuple(_identity(path) for path in files),
     )
