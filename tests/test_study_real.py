@@ -149,7 +149,7 @@ def test_a_path_that_fails_by_hand(degrees):
     assert check.bulge_m[check.critical] == pytest.approx(1.7, abs=0.05)
     assert check.f1_m[check.critical] == pytest.approx(10.3, abs=0.05)
     assert check.surplus_m[check.critical] == pytest.approx(1367 - 2352 - 1.7 - 10.3, abs=12)
-    # one sharp edge 985 m above the ray has ν = √2·985/10.3 = 135 and J(ν) = 6.9 + 20·log10(2·135) = 55.5 dB (Rec. ITU-R
+    # one sharp edge 985 m over the ray has ν = √2·985/10.3 = 135 and J(ν) = 6.9 + 20·log10(2·135) = 55.5 dB (Rec. ITU-R
     # P.526-15 §4.1); a mountain is more than one edge
     assert study.median_diffraction.loss_db > 55
 
