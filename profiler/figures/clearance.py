@@ -16,7 +16,7 @@ from profiler.figures.key import draw_key
 from profiler.figures.page import LINE_IN, Page
 from profiler.figures.places import TightPlace, numbered_places, spread
 from profiler.figures.profile import AXES_IN, draw_profile, draw_tight_places, scene
-from profiler.figures.scale import Scale, minus, nice_ticks
+from profiler.figures.scale import Scale, nice_ticks
 from profiler.figures.side import title_block
 from profiler.figures.strips import draw_relief, draw_surplus, mark_on_relief, north_on_page
 from profiler.figures.text import width_in, wrap
@@ -47,8 +47,8 @@ def profile_figure(
     """Draw the profile of a hop with its verdict and everything that it rests on.
 
     The ground is drawn over the earth bulged at the k of the governing rule (the one with the least surplus); the strip
-    below holds every rule at its own k. Axes have the same size on every page (with the view from above or without), so
-    figures with the same limits are at the same scale.
+    below holds every rule at its own k. Axes have the same size on every page that has the view from above (without it
+    the profile takes its room), so figures with the same limits are at the same scale.
 
     Parameters
     ----------
@@ -95,7 +95,7 @@ def profile_figure(
         below = _site_names(page, below + 0.06, study, scale)
         depth = _PROFILE_IN if study.relief is not None else _PROFILE_IN + _GAP_IN + _RELIEF_IN
         axes = page.axes(_LEFT, below, _WIDTH, depth, label="profile")
-        draw_profile(axes, view, scale, distance_limits=reach, height_limits=height_limits)
+        draw_profile(page, axes, view, scale, distance_limits=reach, height_limits=height_limits)
         draw_tight_places(axes, places, scale, on_surface=True, color=color)
         below = _numbers(page, below + depth + 0.02, places, scale, reach, color)
         below = _critical(page, below, study, places[0], scale, reach, color)
@@ -171,22 +171,17 @@ def _strips(
 ) -> float:
     """Draw the surplus strip and the ground from above; returns where the distance axis ends."""
     axes = page.axes(_LEFT, top, _WIDTH, _SURPLUS_IN, label="surplus")
-    draw_surplus(axes, study, scale, distance_limits=reach, surplus_limits=surplus_limits)
+    draw_surplus(page, axes, study, scale, distance_limits=reach, surplus_limits=surplus_limits)
     draw_tight_places(axes, places, scale, on_surface=False, color=color)
     lowest, bottom = axes, top + _SURPLUS_IN
     if study.relief is not None:
         top = bottom + _GAP_IN
         lowest = page.axes(_LEFT, top, _WIDTH, _RELIEF_IN, label="relief")
-        draw_relief(lowest, study.relief, study.line.distance_m, scale, distance_limits=reach)
+        draw_relief(page, lowest, study.relief, study.line.distance_m, scale, distance_limits=reach)
         mark_on_relief(lowest, places, scale, color=color)
         bottom = top + _RELIEF_IN
         _north(page, lowest, bottom, study)
-    ticks = nice_ticks(*reach, 12)
-    lowest.set_xticks(ticks, labels=[minus(f"{tick:g}") for tick in ticks])
-    page.words(
-        _LEFT + _WIDTH / 2, bottom + 0.18, f"distance from A, {scale.distance_unit}", align="center", gid="distance"
-    )
-    return bottom + 0.18 + style.BODY * LINE_IN
+    return page.scale_foot(lowest, nice_ticks(*reach, 12), f"distance from A, {scale.distance_unit}")
 
 
 def _north(page: Page, axes: Axes, bottom: float, study: Study) -> None:

@@ -88,7 +88,7 @@ def frontier_figure(plan: HeightsPlan, *, feet: bool = False) -> Figure:
         _draw_region(axes, plan, scale, reach_a, reach_b)
         _draw_stretches(axes, stretches, scale)
         _draw_marks(axes, marks, scale)
-        _label_axes(page, axes, top + 0.16 + _SIZE_IN, scale)
+        _label_axes(page, axes, scale)
         _number_stretches(page, top + 0.16, axes, stretches, scale)
         side = _mark_table(page, top + 0.14, marks, scale)
         side = _stretch_table(page, side + 0.12, plan, stretches, scale)
@@ -200,16 +200,14 @@ def _draw_marks(axes: Axes, marks: list[_Mark], scale: Scale) -> None:
             axes.plot(a, b, ls="", clip_on=False, zorder=6, label=mark.words, **{**_MARK_LOOK, **mark.look})
 
 
-def _label_axes(page: Page, axes: Axes, bottom: float, scale: Scale) -> None:
+def _label_axes(page: Page, axes: Axes, scale: Scale) -> None:
     """Write and rule both axes."""
     (_, right), (_, top) = axes.get_xlim(), axes.get_ylim()
     across, up = nice_ticks(0.0, right, 9), nice_ticks(0.0, top, 9)
-    axes.set_xticks(across, labels=[f"{tick:g}" for tick in across])
-    axes.set_yticks(up, labels=[f"{tick:g}" for tick in up])
+    page.scale_side(axes, up, [f"{tick:g}" for tick in up])
     draw_grid(axes, across, up)
     label_side(axes, f"antenna B above ground, {scale.height_unit}", width_in=_SIZE_IN)
-    words = f"antenna A above ground, {scale.height_unit}"
-    page.words(_LEFT + _SIZE_IN / 2, bottom + 0.18, words, align="center", gid="antenna A")
+    page.scale_foot(axes, across, f"antenna A above ground, {scale.height_unit}")
 
 
 def _number_stretches(page: Page, top: float, axes: Axes, stretches: tuple[Stretch, ...], scale: Scale) -> None:

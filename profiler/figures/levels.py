@@ -87,11 +87,10 @@ def draw_levels(page: Page, left: float, top: float, width: float, steps: list[S
         if step.kind not in ("margin", "lack"):
             page.words(level_at, at, minus(f"{step.end_dbm:.1f}"), bold=bold, align="right")
     _bars(axes, steps, tops)
-    bottom = top + float(tops[-1])
-    page.words(
-        left + names_in + (width - names_in - numbers_in) / 2, bottom + 0.18, "level, dBm", align="center", gid="level"
-    )
-    return axes, bottom + 0.18 + style.BODY * LINE_IN
+    low, high = axes.get_xlim()
+    ticks = nice_ticks(low, high, 7)
+    draw_grid(axes, ticks, [])
+    return axes, page.scale_foot(axes, ticks, "level, dBm")
 
 
 _FILLS = {
@@ -122,7 +121,3 @@ def _bars(axes: Axes, steps: list[Step], tops: np.ndarray) -> None:
     pad = 0.06 * (high - low)
     axes.set_xlim(low - pad, high + pad)
     axes.set_ylim(float(tops[-1]), 0.0)
-    ticks = nice_ticks(low - pad, high + pad, 7)
-    axes.set_xticks(ticks, labels=[minus(f"{tick:g}") for tick in ticks])
-    axes.set_yticks([])
-    draw_grid(axes, ticks, [])

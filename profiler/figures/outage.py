@@ -11,7 +11,7 @@ from profiler.availability import MECHANISMS
 from profiler.figures import style
 from profiler.figures.axes import draw_grid, label_side
 from profiler.figures.page import LINE_IN, Page
-from profiler.figures.scale import nice_ticks
+from profiler.figures.scale import minus, nice_ticks
 from profiler.figures.text import width_in
 
 if TYPE_CHECKING:
@@ -72,36 +72,35 @@ def draw_outage(
     """Draw the worst month above and the year below; returns both axes and how far down they reach."""
     room = width - _RIGHT_IN
     highest = max(float(curve.margin_db[-1]), 1.08 * outage.fade_margin_db)
-    at = max(outage.fade_margin_db, 0.0)
-    top = _key(page, left, top, width, outage)
-    top = _margin_labels(page, left, top, room, outage, at / highest)
+    top = _key(page, left, top, outage)
+    top = _margin_labels(page, left, top, room, outage, highest)
     pair = []
     for period, outages in (("worst month", curve.worst_month_percent), ("year", curve.year_percent)):
         axes = page.axes(left, top, room, _HALF_IN, label=period)
-        _curves(axes, curve.margin_db, outages, target_lines(outage, period), period, room)
-        _margins(axes, outage, at, highest)
-        _target_words(page, left + room, top, axes, target_lines(outage, period))
+        targets = target_lines(outage, period)
+        powers = _curves(axes, curve.margin_db, outages, targets)
+        _margins(axes, outage, highest)
+        values = [10.0**power for power in powers]
+        page.scale_side(axes, values, [_percent_label(power) for power in powers])
+        draw_grid(axes, nice_ticks(0.0, highest, 8), values)
+        label_side(axes, f"outage, % of the\n{period}", width_in=room)
+        _target_words(page, left + room, top, axes, targets)
         pair.append(axes)
         top += _HALF_IN + 0.12
-    ticks = nice_ticks(0.0, highest, 8)
-    pair[1].set_xticks(ticks, labels=[f"{tick:g}" for tick in ticks])
-    bottom = top - 0.12 + 0.18
-    page.words(left + room / 2, bottom, "flat fade margin, dB", align="center", gid="margin")
-    return (pair[0], pair[1]), bottom + style.BODY * LINE_IN
+    return (pair[0], pair[1]), page.scale_foot(pair[1], nice_ticks(0.0, highest, 8), "flat fade margin, dB")
 
 
-def _curves(
-    axes: Axes,
-    margin_db: Float,
-    outages: Outages[Float],
-    targets: list[tuple[float, list[str]]],
-    period: str,
-    room_in: float,
-) -> None:
-    """Draw the curves of one period, from 100 % down to a decade under what matters."""
+def _percent_label(power: int) -> str:
+    return f"{10.0**power:g}" if power >= -3 else f"10{str(power).translate(_SUPERSCRIPT)}"
+
+
+def _curves(axes: Axes, margin_db: Float, outages: Outages[Float], targets: list[tuple[float, list[str]]]) -> list[int]:
+    """Draw the curves of one period, from 100 % down to a decade under what matters; returns the decades."""
     lowest = min([1e-3, *(percent / 30.0 for percent, _ in targets)])
-    bottom = 10.0 ** max(math.floor(math.log10(lowest)), -8)
+    bottom = max(math.floor(math.log10(lowest)), -8)
     axes.set_yscale("log")
+    axes.set_yticks([])
+    axes.minorticks_off()
     for name in ("total", *MECHANISMS):
         part = outages.total if name == "total" else outages.part(name)  # type: ignore[arg-type]
         if part is None:
@@ -109,33 +108,25 @@ def _curves(
         color, dashes, weight = _LOOKS[name]
         shown = np.where(part > 0.0, part, np.nan)
         axes.plot(margin_db, shown, color=color, dashes=dashes or (None, None), lw=weight, label=name)
-    axes.set_ylim(bottom, 150.0)
-    powers = range(round(math.log10(bottom)), 3)
-    axes.set_yticks(
-        [10.0**power for power in powers],
-        labels=[f"{10.0**power:g}" if power >= -3 else f"10{str(power).translate(_SUPERSCRIPT)}" for power in powers],
-    )
-    axes.minorticks_off()
-    label_side(axes, f"outage, % of the\n{'worst month' if period != 'year' else 'year'}", width_in=room_in)
+    axes.set_ylim(10.0**bottom, 150.0)
     for percent, _ in targets:
         axes.axhline(percent, color=style.FAIL, lw=1.2, dashes=(6, 2), label="asked")
+    return list(range(bottom, 3))
 
 
-def _margins(axes: Axes, outage: Availability, at: float, highest: float) -> None:
-    """Mark the margin there is and the one that is needed, and rule the axes."""
+def _margins(axes: Axes, outage: Availability, highest: float) -> None:
+    """Mark the margin there is and the one that is needed."""
     axes.set_xlim(0.0, highest)
-    axes.set_xticks([])
-    draw_grid(axes, nice_ticks(0.0, highest, 8), [float(tick) for tick in axes.get_yticks()])
-    axes.axvline(at, color=style.INK, lw=1.2, label="margin")
+    axes.axvline(max(outage.fade_margin_db, 0.0), color=style.INK, lw=1.2, label="margin")
     needed = None if outage.objective is None else outage.objective.required_margin_db
     if needed is not None and needed <= highest:
         axes.axvline(needed, color=style.FAIL, lw=1.2, dashes=(2, 1.5), label="needed")
 
 
-def _margin_labels(page: Page, left: float, top: float, room: float, outage: Availability, share: float) -> float:
+def _margin_labels(page: Page, left: float, top: float, room: float, outage: Availability, highest: float) -> float:
     """Name the two upright lines, each in a row of its own so that they never meet."""
-    highest = max(outage.fade_margin_db, 0.0) / share if share > 0 else 60.0
-    rows = [(f"there is: {outage.fade_margin_db:.1f} dB".replace("-", "−"), share, style.INK)]
+    share = max(outage.fade_margin_db, 0.0) / highest
+    rows = [(minus(f"there is: {outage.fade_margin_db:.1f} dB"), share, style.INK)]
     needed = None if outage.objective is None else outage.objective.required_margin_db
     if needed is not None:
         rows.append((f"needed: {needed:.1f} dB", min(needed / highest, 1.0), style.FAIL))
@@ -159,7 +150,7 @@ def _target_words(page: Page, left: float, top: float, axes: Axes, targets: list
         free = at + depth
 
 
-def _key(page: Page, left: float, top: float, width: float, outage: Availability) -> float:
+def _key(page: Page, left: float, top: float, outage: Availability) -> float:
     """Name the curves that there are, and the mechanisms that nothing was given for."""
     x, y, depth = left, top, style.SMALL * LINE_IN
     for name in ("total", *(each for each in MECHANISMS if each not in outage.missing)):
@@ -173,5 +164,4 @@ def _key(page: Page, left: float, top: float, width: float, outage: Availability
         words = f"not counted, nothing given for it: {', '.join(outage.missing)}"
         page.words(left, y, words, size=style.SMALL, color=style.MUTED)
         y += depth + 0.02
-    del width
     return y + 0.02

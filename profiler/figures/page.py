@@ -15,6 +15,7 @@ from matplotlib.patches import Rectangle
 from matplotlib.transforms import Affine2D
 
 from profiler.figures import style
+from profiler.figures.scale import minus
 from profiler.figures.text import font, wrap
 
 if TYPE_CHECKING:
@@ -41,7 +42,7 @@ class Page:
         self.figure = Figure(figsize=(PAGE_WIDTH_IN, PAGE_HEIGHT_IN), dpi=style.DPI, facecolor="white")
         self._down = Affine2D()
         self._inches = self._down + self.figure.dpi_scale_trans
-        self._places: list[tuple[Axes, tuple[float, float, float, float]]] = []
+        self._places: dict[Axes, tuple[float, float, float, float]] = {}
 
     def axes(self, left: float, top: float, width: float, height: float, *, label: str) -> Axes:
         """Add axes; the label names them for whoever looks into the figure."""
@@ -49,9 +50,30 @@ class Page:
         axes.set_facecolor("white")
         for spine in axes.spines.values():
             spine.set(linewidth=0.6, color=style.MUTED)
-        axes.tick_params(length=2.5, width=0.6, color=style.MUTED, labelcolor=style.INK, labelsize=style.SMALL, pad=2)
-        self._places.append((axes, (left, top, width, height)))
+        axes.set_xticks([])
+        axes.set_yticks([])
+        self._places[axes] = (left, top, width, height)
         return axes
+
+    def scale_side(self, axes: Axes, values: Sequence[float], labels: Sequence[str]) -> None:
+        """Write the scale of the upright axis; the grid stands in for ticks.
+
+        The ticks of an axis take a third of the time of a whole page: here they are words like all others.
+        """
+        left, top, _, height = self._places[axes]
+        for value, label in zip(values, labels, strict=True):
+            share = axes.transLimits.transform(axes.transScale.transform((axes.get_xlim()[1], value)))[1]
+            self.words(left - 0.05, top + height * (1.0 - share) - 0.058, label, size=style.SMALL, align="right")
+
+    def scale_foot(self, axes: Axes, values: Sequence[float], title: str) -> float:
+        """Write the scale of the level axis and its title; returns where the next thing can stand."""
+        left, top, width, height = self._places[axes]
+        low, high = axes.get_xlim()
+        for value in values:
+            at = left + width * (value - low) / (high - low)
+            self.words(at, top + height + 0.04, minus(f"{value:g}"), size=style.SMALL, align="center", gid="scale")
+        self.words(left + width / 2, top + height + 0.18, title, align="center", gid="title")
+        return top + height + 0.18 + style.BODY * LINE_IN
 
     def words(
         self,
@@ -114,7 +136,7 @@ class Page:
         height = max(PAGE_HEIGHT_IN, bottom + MARGIN_IN)
         self.figure.set_size_inches(PAGE_WIDTH_IN, height)
         self._down.clear().scale(1.0, -1.0).translate(0.0, height)
-        for axes, (left, top, width, depth) in self._places:
+        for axes, (left, top, width, depth) in self._places.items():
             axes.set_position(
                 (left / PAGE_WIDTH_IN, 1.0 - (top + depth) / height, width / PAGE_WIDTH_IN, depth / height)
             )

@@ -10,6 +10,7 @@ from numpy.typing import NDArray
 
 from profiler.figures import style
 from profiler.figures.axes import draw_grid, label_side
+from profiler.figures.page import Page
 from profiler.figures.places import TightPlace, rule_position
 from profiler.figures.scale import Scale, k_text, minus, nice_ticks
 from profiler.geometry import ray_height
@@ -113,6 +114,7 @@ def _surface_band(study: Study) -> tuple[Float, Float] | None:
 
 
 def draw_profile(
+    page: Page,
     axes: Axes,
     view: Scene,
     scale: Scale,
@@ -148,11 +150,10 @@ def draw_profile(
     axes.set_xlim(*distance_limits)
     axes.set_ylim(bottom, top)
     ticks = nice_ticks(bottom, top, 8)
-    axes.set_yticks(ticks, labels=[minus(f"{tick:g}") for tick in ticks])
+    page.scale_side(axes, ticks, [minus(f"{tick:g}") for tick in ticks])
     label_side(
         axes, f"height above datum, {scale.height_unit},\nwith the bulge at k = {k_text(view.k)}", width_in=AXES_IN
     )
-    axes.set_xticks([])
     draw_grid(axes, nice_ticks(*distance_limits, 12), ticks)
 
 

@@ -9,6 +9,7 @@ import numpy as np
 
 from profiler.figures import style
 from profiler.figures.axes import draw_grid, label_side
+from profiler.figures.page import Page
 from profiler.figures.places import TightPlace, rule_position, rules_by_surplus, surplus_drawn
 from profiler.figures.profile import AXES_IN, thinned
 from profiler.figures.scale import Scale, minus, nice_ticks
@@ -32,6 +33,7 @@ def rule_look(position: int) -> tuple[str, tuple[float, ...]]:
 
 
 def draw_surplus(
+    page: Page,
     axes: Axes,
     study: Study,
     scale: Scale,
@@ -69,9 +71,8 @@ def draw_surplus(
     axes.set_xlim(*distance_limits)
     axes.set_ylim(bottom, top)
     ticks = nice_ticks(bottom, top, 5)
-    axes.set_yticks(ticks, labels=[f"{'+' if tick > 0 else ''}{minus(f'{tick:g}')}" for tick in ticks])
+    page.scale_side(axes, ticks, [f"{'+' if tick > 0 else ''}{minus(f'{tick:g}')}" for tick in ticks])
     label_side(axes, f"clearance less\nrequirement, {scale.height_unit}", width_in=AXES_IN)
-    axes.set_xticks([])
     draw_grid(axes, nice_ticks(*distance_limits, 12), ticks)
 
 
@@ -100,12 +101,12 @@ def hillshade(ground_m: Float, along_step_m: float, offset_step_m: float) -> Flo
     steepness = float(np.sqrt(np.nanmean(facing**2)))
     lit = 0.5 + 0.5 * np.tanh(0.7 * facing * min(20.0, 1.0 / max(steepness, 1e-9)))
     low, high = float(np.nanmin(ground_m)), float(np.nanmax(ground_m))
-    height = (ground_m - low) / max(high - low, 10.0)
+    height = 0.5 + (ground_m - 0.5 * (low + high)) / max(high - low, 10.0)
     return np.asarray(np.clip(0.5 * lit + 0.5 * height, 0.0, 1.0))
 
 
 def draw_relief(
-    axes: Axes, relief: Relief, length_m: float, scale: Scale, *, distance_limits: tuple[float, float]
+    page: Page, axes: Axes, relief: Relief, length_m: float, scale: Scale, *, distance_limits: tuple[float, float]
 ) -> None:
     """Draw the ground from above along the path: A left, B right, the left side of the path on top."""
     rows = np.arange(0, relief.along_m.size, max(1, relief.along_m.size // _MOST_ALONG))
@@ -123,9 +124,9 @@ def draw_relief(
     axes.set_facecolor("#ffffff")
     axes.set_xlim(*distance_limits)
     axes.set_ylim(right, left)
-    axes.set_xticks([])
     ticks = nice_ticks(left, right, 5)
-    axes.set_yticks(ticks, labels=[f"{abs(tick):g}{' L' if tick < 0 else ' R' if tick > 0 else ''}" for tick in ticks])
+    sides = [f"{abs(tick):g}{' L' if tick < 0 else ' R' if tick > 0 else ''}" for tick in ticks]
+    page.scale_side(axes, ticks, sides)
     label_side(axes, f"left or right\nof path, {scale.distance_unit}", width_in=AXES_IN)
 
 
