@@ -21,7 +21,7 @@ __all__ = ["Ground", "read_ground"]
 _SEARCH_STEPS = 256
 _DEFAULT_STEPS, _FEWEST_STEPS = 200, 50
 """A short path over coarse cells still needs points enough for its bulge, its zone and the facets that reflect."""
-_RELIEF_ALONG, _RELIEF_ACROSS = 480, 81
+_RELIEF_ALONG, _RELIEF_ACROSS = 320, 61
 _ACROSS_STEPS = 10
 
 
