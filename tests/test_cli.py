@@ -1,0 +1,589 @@
+"""The program as a user runs it: what it prints and writes, its exit codes, one line for everything that is wrong."""
+
+import csv
+import io
+import json
+import os
+import shutil
+import subprocess
+import sys
+import threading
+from pathlib import Path
+
+import numpy as np
+import pytest
+import rasterio
+from affine import Affine
+
+from profiler.cli import main
+from profiler.cli.app import COMMANDS
+from profiler.hopfile import load_hop, starter
+
+ROOT = Path(__file__).resolve().parent.parent
+
+PASSING = """\
+name = "Over the plain"
+frequency_ghz = 7.5
+polarization = "vertical"
+
+[site_a]
+name = "South"
+position = "46.0, 9.0"
+antenna_m = 40
+
+[site_b]
+name = "North"
+position = "46.18, 9.0"
+antenna_m = 40
+
+[terrain]
+paths = ["dem.tif"]
+
+[rules]
+preset = "high-reliability"
+
+[radio.a]
+power_dbm = 27
+gain_dbi = 36
+
+[radio.b]
+power_dbm = 27
+gain_dbi = 36
+
+[[radio.mode]]
+name = "QPSK"
+threshold_dbm = -86
+
+[availability]
+multipath_method = "p530-17-quick"
+dn1_n_km = -300
+rain_rate_mm_h = 30
+
+[availability.objective]
+year_percent = 0.01
+
+[confidence]
+terrain_rmse_m = 2.0
+correlation_m = 100
+draws = 200
+
+[heights.a]
+highest_m = 60
+[heights.b]
+highest_m = 60
+"""
+PLAIN = PASSING[: PASSING.index("[availability]")] + PASSING[PASSING.index("[heights.a]") :]
+FAILING = PASSING.replace("antenna_m = 40", "antenna_m = 5")
+
+
+@pytest.fixture(scope="module")
+def land(tmp_path_factory):
+    """Write a plain with rasters that are no terrain beside it, once."""
+    folder = tmp_path_factory.mktemp("land")
+    cell, shape = 1 / 600, (120, 24)
+    affine = Affine(cell, 0.0, 8.98, 0.0, -cell, 46.19)
+
+    def write(name, cells, *, crs="EPSG:4326", transform=affine, driver="GTiff", **options):
+        cells = np.atleast_3d(cells.T).T
+        size = {"count": cells.shape[0], "height": cells.shape[1], "width": cells.shape[2], "dtype": cells.dtype}
+        with rasterio.open(
+            folder / name, "w", driver=driver, crs=crs, transform=transform, **size, **options
+        ) as raster:
+            raster.write(cells)
+
+    plain = np.full(shape, 100, dtype="int16")
+    write("dem.tif", plain)
+    write("nocrs.tif", plain, crs=None)
+    write("photo.tif", np.full((3, *shape), 90, dtype="uint8"))
+    write("void.tif", np.where(np.arange(120)[:, None] == 60, -9999, plain).astype("int16"), nodata=-9999)
+    write("egm96.tif", plain[:60], crs="EPSG:4326+5773")
+    write("egm2008.tif", plain[60:], crs="EPSG:4326+3855", transform=affine @ Affine.translation(0, 60))
+    write("trees.tif", np.full(shape, 50, dtype="uint8"))
+    (folder / "cut.tif").write_bytes((folder / "dem.tif").read_bytes()[:200])
+    (folder / "text.tif").write_text("not a raster")
+    return folder
+
+
+@pytest.fixture
+def here(land, tmp_path, monkeypatch):
+    """Stand in a folder with the rasters and three hop files."""
+    for raster in land.iterdir():
+        shutil.copy(raster, tmp_path)
+    (tmp_path / "hop.toml").write_text(PASSING)
+    (tmp_path / "fails.toml").write_text(FAILING)
+    (tmp_path / "plain.toml").write_text(PLAIN)
+    monkeypatch.chdir(tmp_path)
+    return tmp_path
+
+
+@pytest.fixture
+def run(here, capfd):
+    """Run the command line in this process: exit code, standard output, standard error."""
+
+    def call(*words):
+        capfd.readouterr()
+        with pytest.raises(SystemExit) as stop:
+            main([str(word) for word in words])
+        sys.stdout.flush()
+        out, err = capfd.readouterr()
+        return stop.value.code, out, err
+
+    return call
+
+
+@pytest.fixture
+def refused(run):
+    """Run what must be refused: exit code 2, nothing on standard output, one line on standard error."""
+
+    def call(*words):
+        code, out, err = run(*words)
+        assert (code, out) == (2, "")
+        assert err.startswith("hopwright: ")
+        assert err.count("\n") == 1
+        assert err.endswith("\n")
+        return err.removeprefix("hopwright: ").rstrip()
+
+    return call
+
+
+OPTIONS = ("--a", "46.0, 9.0", "--b", "46.18N 9E", "--antenna-a", "40", "--antenna-b", "131.25 ft",
+           "--frequency-ghz", "7.5", "--terrain", "dem.tif", "--preset", "high-reliability")  # fmt: skip
+
+
+def changed(**values):
+    """Give the words of the quick hop with the values of some options replaced, ``antenna_a="5"``."""
+    words = list(OPTIONS)
+    for name, value in values.items():
+        words[words.index("--" + name.replace("_", "-")) + 1] = value
+    return words
+
+
+# What the commands print and write ------------------------------------------------------------------------------------
+
+
+def test_the_verdict_comes_first_and_sets_the_exit_code(run):
+    code, out, err = run("study", "hop.toml")
+    assert (code, err) == (0, "")
+    first, second, *_ = out.splitlines()
+    assert first == "Over the plain: PASSES"
+    assert second.startswith("clears, ")
+    code, out, _ = run("study", "fails.toml")
+    assert code == 1
+    assert out.startswith("Over the plain: DOES NOT PASS\ndoes not clear, ")
+
+
+def test_the_long_output_says_all_that_was_assumed(run):
+    _, out, _ = run("study", "hop.toml")
+    for part in ("Tight places", "Reflection points", "budget, mode QPSK", "Availability", "Confidence", "Assumed"):
+        assert part in out
+    assert "rules of preset high-reliability" in out
+    assert "no raster declares its vertical datum" in out
+    assert "A screening result, not a certificate" in out
+
+
+def test_quiet_prints_the_verdict_only(run):
+    _, out, err = run("study", "hop.toml", "--quiet")
+    assert len(out.splitlines()) == 2
+    assert err == ""
+
+
+def test_no_colour_codes_in_a_file(run):
+    for words in ((), ("--no-color",)):
+        assert "\x1b" not in run("study", "hop.toml", *words)[1]
+
+
+def test_feet_and_miles_on_request(run):
+    _, out, _ = run("study", "hop.toml", "--feet")
+    assert "12.432 mi" in out  # 20.0076 km / 1.609344
+    assert "antenna 131.2 above ground" in out
+
+
+@pytest.mark.parametrize(
+    ("command", "schema"),
+    [
+        (("study", "hop.toml"), "hopwright-study/1"),
+        (("study", "fails.toml"), "hopwright-study/1"),
+        (("heights", "plain.toml"), "hopwright-heights/1"),
+        (("losses", "hop.toml"), "hopwright-losses/1"),
+        (("reach", "hop.toml"), "hopwright-reach/1"),
+        (("terrain", "dem.tif"), "hopwright-terrain/1"),
+    ],
+)
+def test_json_to_standard_output_is_one_document_and_nothing_else(run, command, schema):
+    _, out, err = run(*command, "--json", "-")
+    assert err == ""
+    assert json.loads(out, parse_constant=pytest.fail)["schema"] == schema  # NaN and Infinity are not JSON
+
+
+def test_json_to_a_file_leaves_the_terminal_its_verdict(run, here):
+    code, out, _ = run("study", "hop.toml", "--json", "out.json", "-q")
+    assert code == 0
+    assert out.startswith("Over the plain: PASSES")
+    document = json.loads((here / "out.json").read_text(encoding="utf-8"))
+    assert document["verdict"]["passes"] is True
+    assert document["provenance"]["hop_file"] == "hop.toml"
+
+
+def test_the_same_input_gives_the_same_document(run):
+    documents = [json.loads(run("study", "hop.toml", "--json", "-")[1]) for _ in range(2)]
+    for document in documents:
+        del document["provenance"]["created"]
+    assert documents[0] == documents[1]
+
+
+def test_csv_is_the_point_table(run):
+    _, out, err = run("study", "hop.toml", "--csv", "-")
+    assert err == ""
+    rows = list(csv.DictReader(io.StringIO(out)))
+    document = json.loads(run("study", "hop.toml", "--json", "-")[1])
+    assert len(rows) == document["path"]["points"]
+    surplus = [float(row["rule1_surplus_m"]) for row in rows]
+    assert min(surplus) == document["rules"][0]["critical"]["surplus_m"]
+    assert rows[0]["rule1_ratio"] == ""  # 0/0 at the sites
+    assert float(rows[-1]["distance_m"]) == document["path"]["distance_m"]
+
+
+def test_figures_are_written_whole(run, here):
+    figures = ("A.PNG", "a.svg", "a.pdf")
+    code, _, err = run("study", "hop.toml", "-q", *(word for name in figures for word in ("--figure", name)))
+    assert (code, err) == (0, "")
+    assert (here / "A.PNG").read_bytes().startswith(b"\x89PNG\r\n")
+    assert b"IEND" in (here / "A.PNG").read_bytes()[-12:]
+    assert (here / "a.svg").read_text().rstrip().endswith("</svg>")
+    assert (here / "a.pdf").read_bytes().startswith(b"%PDF")
+    assert (here / "a.pdf").read_bytes().rstrip().endswith(b"%%EOF")
+    assert [path for path in here.iterdir() if path.name.startswith(".")] == []
+
+
+def test_the_margin_and_the_heights_figure(run, here):
+    assert run("study", "hop.toml", "-q", "--margin-figure", "margin.png")[0] == 0
+    assert run("heights", "plain.toml", "-q", "--figure", "heights.png")[0] == 0
+    for name in ("margin.png", "heights.png"):
+        assert (here / name).stat().st_size > 10_000
+
+
+def test_a_hop_without_a_file(run):
+    code, out, err = run("study", *OPTIONS)
+    assert (code, err) == (0, "")
+    assert out.startswith("A to B: PASSES")
+    assert "antenna 40.0 above ground" in out.splitlines()[3]  # 131.25 ft
+    own = [word for word in OPTIONS if word not in ("--preset", "high-reliability")]
+    assert run("study", *own, "--rule", "1", "0.6", "3", "-q")[0] == 0
+    assert run("study", *own, "--rule", "1", "0.6", "60", "-q")[0] == 1
+
+
+def test_heights_writes_the_pair_into_a_copy_that_passes(run, here):
+    code, out, _ = run("heights", "fails.toml", "--write", "raised.toml")
+    assert code == 0
+    assert "Re-checked through the rules: passes" in out
+    before, after = load_hop(here / "fails.toml"), load_hop(here / "raised.toml")
+    assert after.site_a.antenna_m > before.site_a.antenna_m
+    assert after.rules == before.rules
+    assert run("study", "fails.toml", "-q")[0] == 1
+    assert run("study", "raised.toml", "-q")[0] == 0
+
+
+def test_heights_that_cannot_be_had_end_with_1_and_say_what_would_do(run, here):
+    (here / "low.toml").write_text(PASSING.replace("highest_m = 60", "highest_m = 9"))
+    code, out, err = run("heights", "low.toml", "--write", "raised.toml")
+    assert code == 1
+    assert "no pair clears: at the highest there is, A 9.00 m and B 9.00 m" in out
+    assert "Any one of these would do" in out
+    assert not (here / "raised.toml").exists()
+    assert err == "raised.toml: not written, since no pair of heights clears\n"
+
+
+def test_heights_as_csv_names_what_governs(run):
+    _, out, _ = run("heights", "plain.toml", "--csv", "-")
+    rows = list(csv.DictReader(io.StringIO(out)))
+    assert {row["rule"] for row in rows} <= {"0", "1", "2"}
+    assert all(float(row["antenna_a_m"]) > 0 for row in rows)
+
+
+def test_losses_lists_every_method(run):
+    code, out, _ = run("losses", "fails.toml")
+    assert code == 0
+    for method in ("delta-bullington (chosen)", "knife-edge", "spherical-earth", "cascaded-edges"):
+        assert method in out
+    document = json.loads(run("losses", "fails.toml", "--json", "-")[1])
+    assert len({(loss["method"], loss["k"]) for loss in document["diffraction"]}) == 14  # 7 methods at 2 k
+
+
+def test_reach_answers_the_inverse_questions(run):
+    """27 + 36 + 36 + 86 = 185 dB of free space at 7.5 GHz: 10^((185 - 92.45)/20)/7.5 = 5 650 km."""
+    document = json.loads(run("reach", "hop.toml", "--json", "-")[1])
+    assert document["answers"]["longest range in free space"]["value"] == pytest.approx(5.65e6, rel=2e-3)
+
+
+def test_terrain_says_what_a_folder_holds(run, here):
+    code, out, _ = run("terrain", "dem.tif")
+    assert code == 0
+    assert "not stated" in out
+    assert "100 to 100" in out
+    code, out, _ = run("terrain", here)
+    assert "Cannot be used" in out
+    assert "Left out: not heights" in out
+    code, out, _ = run("terrain", "dem.tif", "--hop", "hop.toml")
+    assert code == 0
+    assert "100.0% of the path has ground" in out
+    code, out, _ = run("terrain", "void.tif", "--hop", "hop.toml")
+    assert code == 1
+    assert "NOT inside" in out
+
+
+def test_the_starter_studies_the_sample_country(run, here):
+    """The commented file is about the invented country: put its raster where the file says, and it runs."""
+    assert run("starter", "new.toml")[0] == 0
+    assert (here / "new.toml").read_text(encoding="utf-8") == starter()
+    assert run("starter", "-")[1] == starter()
+    (here / "terrain").mkdir()
+    shutil.copy(ROOT / "sample_dem" / "country.tif", here / "terrain")
+    code, out, err = run("study", "new.toml", "-q")
+    assert (code in (0, 1), err) == (True, "")
+    assert out.startswith("Western ridge to eastern ridge: ")
+
+
+@pytest.mark.parametrize(("name", "code"), [("ridge_to_mill", 0), ("quarry_to_island", 1)])
+def test_the_sample_hops(run, name, code):
+    assert run("study", ROOT / "sample_dem" / f"{name}.toml", "-q")[0] == code
+
+
+def test_every_command_has_help(run):
+    code, out, _ = run("--help")
+    assert code == 0
+    for command in COMMANDS:
+        assert command in out
+        code, text, _ = run(command, "--help")
+        assert code == 0
+        assert text.startswith(f"Usage: hopwright {command}")
+    assert run()[1] == out
+
+
+# Files: whole or not at all -------------------------------------------------------------------------------------------
+
+
+@pytest.mark.parametrize(
+    "words",
+    [
+        ("--figure", "good.png", "--json", "no/such/folder.json"),
+        ("--figure", "good.png", "--figure", "picture.gif"),
+        ("--json", "good.json", "--csv", "."),
+        ("--csv", "good.csv", "--figure", "picture.jpeg"),
+    ],
+)
+def test_nothing_is_written_when_one_output_cannot_be(refused, here, words):
+    refused("study", "hop.toml", *words)
+    assert not list(here.glob("good.*"))
+
+
+def test_a_full_disk_leaves_the_old_file_as_it_was(refused, here, monkeypatch):
+    (here / "out.json").write_text("old")
+
+    def full(*_):
+        raise OSError(28, "No space left on device")
+
+    monkeypatch.setattr("profiler.cli.output.os.fdopen", full)
+    message = refused("study", "hop.toml", "--json", "out.json", "-q")
+    assert message == "out.json: No space left on device: must be a file that can be written here; name another"
+    assert (here / "out.json").read_text() == "old"
+    assert [path for path in here.iterdir() if path.name.startswith(".")] == []
+
+
+def test_a_link_is_followed_and_a_pipe_is_not_replaced(run, here):
+    (here / "link.json").symlink_to("real.json")
+    run("study", "hop.toml", "-q", "--json", "link.json")
+    assert (here / "link.json").is_symlink()
+    assert json.loads((here / "real.json").read_text())["schema"]
+    os.mkfifo(here / "pipe")
+    got = []
+    reader = threading.Thread(target=lambda: got.append((here / "pipe").read_text()))
+    reader.start()
+    run("study", "hop.toml", "-q", "--csv", "pipe")
+    reader.join(timeout=10)
+    assert got[0].startswith("distance_m,")
+    assert (here / "pipe").is_fifo()
+
+
+@pytest.mark.parametrize(
+    ("words", "message"),
+    [
+        (("study", "hop.toml", "--json", "-", "--csv", "-"), "-: must stand once"),
+        (("study", "hop.toml", "--json", "hop.toml"), "hop.toml: must not be the hop file too"),
+        (("study", "hop.toml", "--json", "x", "--csv", "x"), "x: must not be another output too"),
+        (("study", "hop.toml", "--figure", "x.png", "--margin-figure", "x.png"), "x.png: must not be another output"),
+        (("heights", "hop.toml", "--write", "hop.toml"), "hop.toml: must not be the hop file too"),
+        (("study", "hop.toml", "--figure", "x.gif"), "x.gif: must end in one of .png, .svg, .pdf"),
+        (("study", "hop.toml", "--figure", "x"), "x: must end in one of .png"),
+        (("study", "hop.toml", "--json", "no/x.json"), "no/x.json: must be a file in a folder that exists"),
+        (("study", "hop.toml", "--json", "y" * 300), "File name too long: must be a file"),
+        (("study", "hop.toml", "--figure", "x.png", "--height-limits", "9", "3"), "height_limits = 9, 3: must be two"),
+        (("heights", *OPTIONS, "--write", "x.toml"), "--write: must have a hop file to copy"),
+        (("starter", "hop.toml"), "hop.toml: exists already: must be a new file"),
+        (("starter", "no/x.toml"), "no/x.toml: must be a file in a folder that exists"),
+        (("terrain", "dem.tif", "--json", "."), ".: must be a file in a folder that exists"),
+    ],
+)
+def test_outputs_that_cannot_be(refused, words, message):
+    assert message in refused(*words)
+
+
+# Bad input: one line that says which, where, what and what would do ---------------------------------------------------
+
+
+@pytest.mark.parametrize(
+    ("old", "new", "message"),
+    [
+        ("frequency_ghz", "frequenzy_ghz", "frequenzy_ghz = 7.5: must be a known key; did you mean frequency_ghz?"),
+        ("antenna_m = 40", "antena_m = 40", "site_a.antena_m = 40: must be a known key; did you mean antenna_m?"),
+        ("7.5", "-7.5", "frequency_ghz = -7.5: must be 0.01 to 1000 GHz"),
+        ("7.5", "nan", "frequency_ghz = nan: must be a number, 0.01 to 1000 GHz"),
+        ("7.5", "1e400", "frequency_ghz = inf: must be a number"),
+        ("7.5", "1" + "0" * 5000, "must be TOML: exceeds the limit"),
+        ("7.5", '"fast"', "frequency_ghz = 'fast': must be a number"),
+        ("antenna_m = 40", "antenna_m = 1e9", "site_a.antenna_m = 1000000000.0: must be more than 0 and under 2000 m"),
+        ("antenna_m = 40", "antenna_m = 40\nantenna_m = 41", "line 9, column 15: must be TOML: cannot overwrite"),
+        ('"46.0, 9.0"', '"9.0, 46.0"', "longitude and latitude look swapped: longitude 9.000000, latitude 46.000000"),
+        ('"46.0, 9.0"', '"40.0, 9.0"', "South: longitude 9.000000, latitude 40.000000: lies off the terrain, about"),
+        ('"46.0, 9.0"', '"46.18, 9.0"', "site_b = '46.180000, 9.000000': must be another place than site_a"),
+        ('"46.0, 9.0"', '"somewhere"', "site_a.position = 'somewhere': must be a position"),
+        ('"46.0, 9.0"', '"95, 9"', "site_a.position = '95, 9': must be a latitude of -90 to 90 degrees"),
+        ('"high-reliability"', '"high"', "rules.preset = 'high': must be one of p530-isolated,"),
+        ('preset = "high-reliability"', "", "rules.preset = (missing): must be given"),
+        ('preset = "high-reliability"', "rule = [{k = 0, fresnel_fraction = 1}]", "rules.rule[0].k = 0: must be 0.1"),
+        ("dem.tif", "gone.tif", "terrain.paths[0] = 'gone.tif': must be a raster or a folder of rasters that is there"),
+        ("dem.tif", "nocrs.tif", "nocrs.tif: has no coordinate reference system"),
+        ("dem.tif", "photo.tif", "photo.tif: is a photo (3-band colour or grey image), not heights"),
+        ("dem.tif", "cut.tif", "cut.tif: not readable as a raster"),
+        ("dem.tif", "text.tif", "text.tif: not readable as a raster"),
+        ("dem.tif", "void.tif", "no ground height at "),
+        ('"dem.tif"', '"egm96.tif", "egm2008.tif"', "heights on different vertical datums meet on one path"),
+        ("dem.tif", "trees.tif", "trees.tif: holds 8-bit cells"),
+        ('["dem.tif"]', "[]", "terrain.paths = []: must be a list with at least one text"),
+        ('["dem.tif"]', '["dem.tif"]\nspacing_m = 5000', "terrain.spacing_m = 5000: must be at most one 50th of this"),
+        ('["dem.tif"]', '["dem.tif"]\nspacing_m = 1e-9', "spacing_m = 1e-09: must be more than 0.01 m"),
+        ("[rules]", '[cover]\ncanopy = ["trees.tif"]\n[rules]', "site_a.antenna_m = 40: must be above the 50.0 m of"),
+        ("threshold_dbm = -86", "threshold_dbm = -86\nmodulation = 'FM'\nnoise_figure_db = 5\nbandwidth_mhz = 28\n"
+         "bit_error_ratio = 1e-6", "modulation = FM: must be BPSK, QPSK"),
+        ("dn1_n_km = -300\n", "", "dn1_n_km = not given: must be given for multipath_method p530-17-quick"),
+        ("draws = 200", "draws = 2", "confidence.draws = 2: must be 100 to 1000000"),
+        ("highest_m = 60\n[", "highest_m = 60\nlowest_m = 70\n[", "heights.a.highest_m = 60.0: must be at least"),
+    ],
+)  # fmt: skip
+def test_a_bad_hop_file(refused, here, old, new, message):
+    assert old in PASSING
+    (here / "bad.toml").write_text(PASSING.replace(old, new, 1))
+    line = refused("study", "bad.toml")
+    assert line.startswith("bad.toml: ")
+    assert message in line
+
+
+@pytest.mark.parametrize(
+    ("content", "message"),
+    [
+        (b"", "frequency_ghz = (missing): must be a number, 0.01 to 1000 GHz"),
+        (b"# nothing\n", "frequency_ghz = (missing)"),
+        (bytes(range(256)), "byte 0x80: must be UTF-8 text"),
+        (PASSING.encode("utf-16"), "line 1: byte 0xff: must be UTF-8 text"),
+        (b"[site_a", 'must be TOML: expected "]"'),
+        (b"a = " + b"[" * 5000, "nested too deeply"),
+        (b"a." * 3000 + b"a = 1", "nested too deeply"),
+    ],
+)
+def test_a_file_that_is_no_hop_file(refused, here, content, message):
+    (here / "bad.toml").write_bytes(content)
+    assert message in refused("study", "bad.toml")
+
+
+@pytest.mark.parametrize("command", ["study", "heights", "losses", "reach"])
+def test_a_hop_file_that_is_not_there(refused, command):
+    assert refused(command, "gone.toml") == "gone.toml: No such file or directory: must be a hop file that can be read"
+    assert refused(command, ".") == ".: Is a directory: must be a hop file that can be read"
+
+
+@pytest.mark.parametrize(
+    ("words", "message"),
+    [
+        (("study",), "--a, --b, --antenna-a, --antenna-b, --frequency-ghz, --terrain: must be given for a hop without"),
+        (("study", "hop.toml", "--frequency-ghz", "7"), "hop.toml: option for frequency_ghz: must not stand beside"),
+        (("study", "a.toml", "b.toml"), "Got unexpected extra argument (b.toml)"),
+        (("study", "--nonsense"), "No such option"),
+        (("nonsense",), "No such command 'nonsense'"),
+        (("study", *changed(frequency_ghz="-7")), "command line: frequency_ghz = -7.0: must be 0.01 to 1000 GHz"),
+        (("study", *changed(frequency_ghz="nan")), "command line: frequency_ghz = nan: must be a number"),
+        (("study", *changed(frequency_ghz="x")), "'--frequency-ghz': 'x' is not a valid float"),
+        (("study", *changed(antenna_a="tall")), "site_a.antenna = 'tall': must be a height like 30 m or 98.4 ft"),
+        (("study", *changed(antenna_b="-5")), "site_b.antenna_m = -5.0: must be more than 0 and under 2000 m"),
+        (("study", *changed(terrain="")), "terrain.paths[0] = '': must be a raster"),
+        (("study", *changed(terrain="gone")), "terrain.paths[0] = 'gone': must be a raster"),
+        (("study", *changed(a="9.0, 46.0")), "longitude and latitude look swapped"),
+        (("study", *changed(preset="none")), "rules.preset = 'none': must be one of"),
+        (("study", *OPTIONS, "--low-k", "0.8"), "rules.low_k = 0.8: must be left out beside preset"),
+        (("study", *OPTIONS, "--rule", "nan", "1", "0"), "rules.rule[0].k = nan: must be a number"),
+        (("study", "hop.toml", "--rule", "1", "1"), "'--rule' requires 3 arguments"),
+        (("reach", *OPTIONS), "command line: radio: must be given to answer from"),
+        (("reach", "hop.toml", "--mode", "64-QAM"), "hop.toml: mode = 64-QAM: must be one of QPSK"),
+        (("reach", "hop.toml", "--bit-error-ratio", "0.7"), "bit_error_ratio = 0.7: must be more than 0 and under 0.5"),
+        (("reach", "hop.toml", "--fade-margin-db", "1e300"), "'--fade-margin-db': 1e+300 is not in the range"),
+        (("reach", "hop.toml", "--fade-margin-db", "nan"), "fade margin = nan dB: must be a finite number"),
+        (("terrain",), "Missing argument 'PATH...'"),
+        (("terrain", "gone"), "gone: no such file or folder"),
+        (("terrain", "dem.tif", "--hop", "gone.toml"), "gone.toml: No such file or directory"),
+    ],
+)
+def test_bad_words(refused, words, message):
+    assert message in refused(*words)
+
+
+def test_a_margin_figure_needs_a_margin(refused, here):
+    (here / "bare.toml").write_text(PASSING[: PASSING.index("[radio.a]")])
+    assert "bare.toml: --margin-figure: must have a [radio]" in refused(
+        "study", "bare.toml", "--margin-figure", "m.png"
+    )
+
+
+# As a process ---------------------------------------------------------------------------------------------------------
+
+
+def process(*words, **options):
+    command = [sys.executable, "-m", "profiler", *words]
+    environment = {**os.environ, "PYTHONPATH": str(ROOT), **options.pop("env", {})}
+    return subprocess.run(command, capture_output=True, check=False, timeout=60, env=environment, **options)
+
+
+def test_a_process_prints_one_document(here):
+    done = process("study", "fails.toml", "--json", "-", env={"PYTHONIOENCODING": "latin-1"})
+    assert (done.returncode, done.stderr) == (1, b"")
+    assert json.loads(done.stdout.decode("utf-8"))["verdict"]["passes"] is False
+
+
+def test_a_process_ends_with_one_line_and_code_2(here):
+    done = process("study", "gone.toml")
+    assert (done.returncode, done.stdout) == (2, b"")
+    assert done.stderr == b"hopwright: gone.toml: No such file or directory: must be a hop file that can be read\n"
+
+
+def test_a_terminal_without_the_signs_gets_marks_instead(here):
+    done = process("study", "hop.toml", env={"PYTHONIOENCODING": "ascii"})
+    assert (done.returncode, done.stderr) == (0, b"")
+    assert b"azimuth 0.00? true" in done.stdout
+
+
+@pytest.mark.skipif(not Path("/dev/full").exists(), reason="no /dev/full on this system")
+def test_standard_output_that_is_full(here):
+    with Path("/dev/full").open("wb") as full:
+        command = [sys.executable, "-m", "profiler", "study", "hop.toml", "--json", "-"]
+        environment = {**os.environ, "PYTHONPATH": str(ROOT)}
+        done = subprocess.run(command, stdout=full, stderr=subprocess.PIPE, check=False, timeout=60, env=environment)
+    assert done.returncode == 2
+    assert done.stderr.startswith(b"hopwright: standard output: No space left on device")
+    assert done.stderr.count(b"\n") == 1
+
+
+@pytest.mark.skipif(sys.platform == "win32", reason="no such signal there")
+def test_a_reader_that_leaves_early_ends_the_process_quietly(here):
+    command = [sys.executable, "-m", "profiler", "study", "hop.toml", "--csv", "-"]
+    environment = {**os.environ, "PYTHONPATH": str(ROOT)}
+    with subprocess.Popen(command, stdout=subprocess.PIPE, stderr=subprocess.PIPE, env=environment) as running:
+        running.stdout.close()
+        assert running.stderr.read() == b""
+        assert running.wait(timeout=60) == -13  # ended by the signal, with no verdict in the code
