@@ -138,7 +138,7 @@ def _marks(plan: HeightsPlan, scale: Scale) -> list[_Mark]:
             marks.append(_Mark(look, *pair, name))
     sure = () if plan.study.confidence is None else plan.study.confidence.sure
     for each in sure:
-        words = f"clears with a chance of {100 * each.chance:g} %, both raised alike"
+        words = f"clears with a chance of {100 * each.chance:g} %, both ends moved alike"
         marks.append(_Mark({"marker": "D", "mfc": style.MUTED}, *each.equal_m, words))
     if isinstance(plan.cheapest, Choice):
         words = f"cheapest pair under the limits, cost {plan.cheapest.cost:g}"
