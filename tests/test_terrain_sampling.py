@@ -237,6 +237,9 @@ def test_seam_between_different_column_spacings_is_continuous(write_raster):
     at_n = np.interp((10.0101 - 10) / (1.5 * cell) - 0.5, np.arange(60), north[-1])
     at_s = np.interp((10.0101 - 10) / cell - 0.5, np.arange(90), south[0])
     assert ground[2000] == pytest.approx((at_n + at_s) / 2, abs=MILLIMETRE)
+    # a second copy of a tile, as folders collect them, pulls nothing to its side
+    write_raster("s/copy/n.tif", north, from_origin(10, 50 + 30 * cell, 1.5 * cell, cell))
+    np.testing.assert_allclose(sample(folder, np.full(4001, 10.0101), lat).ground_m, ground, atol=1e-9)
 
 
 def test_a_crack_from_rounded_cell_sizes_is_closed(write_raster):

@@ -287,7 +287,8 @@ def _coding(dataset: Any, band: int, factor: float) -> Coding:
     declared = dataset.nodatavals[band - 1]
     nodata = math.nan
     if declared is not None and kind.kind == "f":
-        nodata = float(kind.type(declared))  # stored cells hold the rounded marker, not the printed one
+        with np.errstate(over="ignore"):  # a float64 marker on float32 cells
+            nodata = float(kind.type(declared))  # stored cells hold the rounded marker, not the printed one
     elif declared is not None and np.iinfo(kind).min <= declared <= np.iinfo(kind).max:
         nodata = float(declared)
     return Coding(

@@ -142,15 +142,16 @@ def _join_lattices(
     left = group.tiles
     while left.size:
         first = left[0]
-        a, b, _, d, e, _ = affine[first]
-        ia, ib, ic, id_, ie, if_ = inverse[first]
+        a, b, c, d, e, f = affine[first]
+        ia, ib, _, id_, ie, _ = inverse[first]
         da, db, dd, de = (affine[left][:, [0, 1, 3, 4]] - [a, b, d, e]).T
         drift = np.abs([ia * da + ib * dd, ia * db + ib * de, id_ * da + ie * dd, id_ * db + ie * de])
         drift = drift.max(axis=0) * size[left].max(axis=1)
-        x, y = affine[left][:, 2], affine[left][:, 5]
-        corner = np.stack([ia * x + ib * y + ic + 0.5, id_ * x + ie * y + if_ + 0.5], axis=1)
+        dx, dy = affine[left][:, 2] - c, affine[left][:, 5] - f
+        corner = np.stack([ia * dx + ib * dy, id_ * dx + ie * dy], axis=1)
         whole = np.rint(corner)
         same = (drift < _ALIGNED_CELLS) & (np.abs(corner - whole).max(axis=1) < _ALIGNED_CELLS)
+        same[0] = True
         members = left[same]
         lattice[members] = first
         offset[members] = whole[same]
