@@ -121,8 +121,8 @@ class Rule:
 class TerrainChoice:
     """Where ground heights come from and how they are read.
 
-    ``spacing_m`` None means half the finest cell under the path; ``vertical_datum`` states the datum of rasters that
-    do not say it themselves.
+    ``spacing_m`` None means half the finest cell under the path; ``vertical_datum`` and ``height_unit``
+    ("m", "ft") are those of rasters that do not say it themselves.
     """
 
     paths: tuple[Path, ...]
@@ -131,6 +131,7 @@ class TerrainChoice:
     missing: FillPolicy = "stop"
     allow_mixed_datums: bool = False
     vertical_datum: str | None = None
+    height_unit: str | None = None
 
 
 @dataclass(frozen=True, slots=True)

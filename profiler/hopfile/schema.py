@@ -104,6 +104,7 @@ class TerrainTable(Table):
     missing: FillPolicy | None = None
     allow_mixed_datums: bool | None = None
     vertical_datum: str | None = Field(None, min_length=1)
+    height_unit: str | None = Field(None, min_length=1)
 
 
 class RulesTable(Table):

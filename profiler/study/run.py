@@ -41,6 +41,7 @@ def open_hop_terrain(hop: Hop) -> Terrain:
         method=choice.method,
         allow_mixed_datums=choice.allow_mixed_datums,
         vertical_datum=choice.vertical_datum,
+        height_unit=choice.height_unit,
     )
 
 
