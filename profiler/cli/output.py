@@ -136,4 +136,5 @@ def console(*, color: bool) -> Console:
     from rich.console import Console
 
     width = None if sys.stdout.isatty() else 110
-    return Console(no_color=not color, highlight=False, width=width, soft_wrap=False)
+    # names and labels are text: no markup and no emoji codes in them
+    return Console(no_color=not color, highlight=False, width=width, soft_wrap=False, markup=False, emoji=False)
