@@ -249,7 +249,9 @@ def test_figures_are_written_whole(run, here):
     assert (code, err) == (0, "")
     assert (here / "A.PNG").read_bytes().startswith(b"\x89PNG\r\n")
     assert b"IEND" in (here / "A.PNG").read_bytes()[-12:]
-    assert (here / "a.svg").read_text().rstrip().endswith("</svg>")
+    drawing = (here / "a.svg").read_text()
+    assert drawing.rstrip().endswith("</svg>")
+    assert "<image" in drawing  # the ground seen from above
     assert (here / "a.pdf").read_bytes().startswith(b"%PDF")
     assert (here / "a.pdf").read_bytes().rstrip().endswith(b"%%EOF")
     assert [path for path in here.iterdir() if path.name.startswith(".")] == []

@@ -303,6 +303,14 @@ def test_surveyed_ground_replaces_the_raster_and_says_by_how_much(land):
     assert to_document(study)["hop"]["site_a"]["ground_surveyed"]
 
 
+def test_a_survey_holds_across_the_path_too(land):
+    """At a site the zone has no width, so no column beside it may bring the raster's ground back."""
+    hop = hop_over(land(), site_a=Site("south", 9.0, 46.0, 60.0, surveyed_ground_m=35.0))
+    study = run_study(hop)
+    for result in study.rules:
+        assert result.corridor.least_surplus_m[0] == pytest.approx(result.check.surplus_m[0]) == 60.0
+
+
 def void(first=300, last=340) -> np.ndarray:
     heights = rolling().copy()
     heights[first : last + 1] = -9999
@@ -540,6 +548,30 @@ def test_the_lines_of_the_budget_add_up_both_ways(land):
     assert there.fade_margin_db == pytest.approx(there.received_dbm + 64.0)
 
 
+def test_the_budget_counts_diffraction_at_the_median_k(land):
+    study = run_study(hop_over(land(ridge(45.0)), radio=RADIO, median_k=1.0))
+    by_k = {loss.k: loss.loss_db for loss in study.diffraction}
+    assert by_k[4 / 3] < study.budget.a_to_b.diffraction_db < by_k[2 / 3]
+    assert study.median_diffraction.k == 1.0
+
+
+def with_threshold(threshold_dbm: float) -> Radio:
+    return replace(RADIO, modes=(RadioMode("QPSK", threshold_dbm=threshold_dbm),))
+
+
+@pytest.mark.parametrize(("margin_db", "blocked"), [(8.0, False), (0.5, True)])
+def test_obstruction_counts_what_low_k_takes_beyond_the_budget(land, margin_db, blocked):
+    """Over a ridge that costs some 25 dB at every k, it is only the difference to the median k that counts."""
+    hop = hop_over(land(ridge(50.0)), radio=with_threshold(-80.0), availability=CLIMATE)
+    received_dbm = run_study(hop).budget.b_to_a.received_dbm
+    study = run_study(replace(hop, radio=with_threshold(received_dbm - margin_db)))
+    by_k = {loss.k: loss.loss_db for loss in study.diffraction}
+    assert by_k[4 / 3] > 20
+    assert by_k[2 / 3] - by_k[4 / 3] == pytest.approx(2.5, abs=2)
+    assert study.availability.low_k_blocks is blocked
+    assert (study.availability.year_percent.obstruction > 0) is blocked
+
+
 def test_availability_is_that_of_the_weaker_direction(land):
     hop = hop_over(land(), radio=RADIO, availability=CLIMATE)  # B sends 7 dB less into the same losses
     study = run_study(hop)
@@ -607,6 +639,21 @@ def test_confidence_is_repeatable_and_follows_its_seed(land):
     assert one != other
 
 
+@pytest.mark.parametrize(("surveyed", "far_share"), [("site_a", 0.2), ("site_b", 0.8)])
+def test_a_surveyed_site_takes_its_own_doubt_away(land, surveyed, far_share):
+    """A ridge a fifth of the way out: its error and that of the unsurveyed site by its share of the ray, in quadrature.
+
+    The 5 to 95 % band of a Gaussian is 2·1.645 standard deviations wide.
+    """
+    hop = hop_over(land(ridge(60.0, row=554)), confidence=replace(DOUBT, draws=4000))
+    study = run_study(replace(hop, **{surveyed: replace(getattr(hop, surveyed), surveyed_ground_m=GROUND_M)}))
+    top = study.rules[0].check.critical
+    share = study.profile.distance_m[top] / study.line.distance_m
+    assert (share if surveyed == "site_a" else 1 - share) == pytest.approx(far_share, abs=0.01)
+    band = study.confidence.rules[0].surplus
+    assert band.high_m[top] - band.low_m[top] == pytest.approx(3.29 * 4.0 * math.hypot(1, far_share), rel=0.05)
+
+
 # Heights --------------------------------------------------------------------------------------------------------------
 
 TOWERS = HeightsChoice(TowerChoice(lowest_m=5.0, highest_m=120.0, step_m=1.0), TowerChoice(lowest_m=5.0, step_m=1.5))
@@ -634,6 +681,24 @@ def test_the_cheapest_pair_passes_a_study_and_one_step_less_fails(land, ground):
     least = plan.least_equal.height_m
     assert run_study(at_heights(hop, least + 0.001, least + 0.001)).verdict.clears
     assert not run_study(at_heights(hop, least - 0.01, least - 0.01)).verdict.clears
+
+
+def test_the_least_height_at_one_end_leaves_the_other_as_it_is(land):
+    hop = hop_over(land(ridge(40.0, row=200)), site_b=Site("north", 9.0, 46.18, 65.0))
+    plan = plan_heights(run_study(hop))
+    for less, verdict in ((0.0, True), (0.01, False)):
+        assert run_study(at_heights(hop, plan.least_a.height_m - less, 65.0)).verdict.clears is verdict
+        assert run_study(at_heights(hop, 30.0, plan.least_b.height_m - less)).verdict.clears is verdict
+
+
+def test_the_heights_for_the_objective_meet_it_and_lower_ones_do_not(land):
+    towers = HeightsChoice(TowerChoice(lowest_m=10, highest_m=60, step_m=5), TowerChoice(lowest_m=10, step_m=5))
+    hop = hop_over(land(ridge(60.0)), radio=with_threshold(-80.0), availability=CLIMATE, heights=towers)
+    hop = with_terrain(hop, spacing_m=30.0)
+    found = plan_heights(run_study(hop)).for_objective.cheapest
+    pair = found.antenna_a_m, found.antenna_b_m
+    assert run_study(at_heights(hop, *pair)).verdict.meets_objective is True
+    assert run_study(at_heights(hop, pair[0] - 5, pair[1] - 5)).verdict.meets_objective is False
 
 
 def test_adding_a_rule_never_lowers_a_height(land):

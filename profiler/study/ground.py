@@ -205,8 +205,8 @@ def _corridor(
     longitude, latitude = across(line, offset)
     samples = terrain.sample(longitude, latitude)
     cover = _cover(hop, line, longitude, latitude)
-    surface = samples.ground_m + cover.cover_m
-    surface[:, offset.shape[1] // 2] = profile.surface_m
+    # at the sites the zone has no width: what a survey or a fill says of the path holds for the whole row there
+    surface = np.where(offset == 0.0, profile.surface_m[:, None], samples.ground_m + cover.cover_m)
     return Corridor(frozen_array(offset), frozen_array(surface)), [*_files(samples), *cover.files]
 
 
