@@ -5,6 +5,7 @@ from __future__ import annotations
 import atexit
 import gc
 import io
+import os
 import signal
 import sys
 from importlib import import_module
@@ -98,9 +99,10 @@ def main(arguments: list[str] | None = None) -> NoReturn:
 
 
 def _settle_process() -> None:
-    """Fit the process to one command: little garbage to collect; at a pipe and on any terminal, what others expect."""
+    """Fit the process to one command of small arrays that live to its end, at a pipe or on any terminal."""
     gc.set_threshold(_YOUNG_OBJECTS)
     atexit.register(gc.freeze)  # the last look for garbage, at the very end, takes as long as the analysis
+    os.environ.setdefault("OPENBLAS_NUM_THREADS", "1")  # before numpy loads: over so little, threads only wait
     if hasattr(signal, "SIGPIPE"):
         signal.signal(
             signal.SIGPIPE, signal.SIG_DFL
