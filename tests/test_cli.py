@@ -4,6 +4,7 @@ import csv
 import io
 import json
 import os
+import re
 import shutil
 import subprocess
 import sys
@@ -178,7 +179,31 @@ def test_the_long_output_says_all_that_was_assumed(run):
         assert part in out
     assert "rules of preset high-reliability" in out
     assert "no raster declares its vertical datum" in out
+    assert "ground: dem.tif at 100% of the points" in out
+    assert "dn1_n_km = -300: " in out
+    assert "terrain error: RMSE 2 m (hop file)" in out
+    assert "200 draws, seed 1" in out
     assert "A screening result, not a certificate" in out
+
+
+def test_a_survey_is_told_on_the_terminal(run, here):
+    (here / "survey.toml").write_text(PASSING.replace("antenna_m = 40", "antenna_m = 40\nground_m = 97.5", 1))
+    assert "South: surveyed ground 97.50 m, -2.50 m above that of the terrain" in run("study", "survey.toml")[1]
+
+
+def test_a_rule_that_only_the_ground_beside_fails_says_so(run, here):
+    """At 0.1 GHz 0.7 F1 reaches 86 m to both sides; the wall rises from the middle of the next cell, 64 m east."""
+    with rasterio.open("dem.tif", "r+") as raster:
+        cells = raster.read(1)
+        cells[55:65, 13:] += 1000
+        raster.write(cells, 1)
+    rule = "rule = [{k = 1.3333, fresnel_fraction = 0.7}]"
+    text = PLAIN.replace("7.5", "0.1").replace('preset = "high-reliability"', rule)
+    (here / "wall.toml").write_text(text.replace("antenna_m = 40", "antenna_m = 100"))
+    code, out, _ = run("study", "wall.toml")
+    assert code == 1
+    assert "FAIL beside" in out
+    assert re.search(r"Beside the path, .*: tightest \d\d\.\d m to the right at (9|10)\.\d\d km, surplus -", out)
 
 
 def test_quiet_prints_the_verdict_only(run):

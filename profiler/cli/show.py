@@ -77,13 +77,35 @@ def show_study(study: Study, *, feet: bool, quiet: bool, color: bool) -> None:
     if study.confidence is not None:
         _show_confidence(screen, study, scale)
     show_notes(screen, "Warnings", study.warnings, "yellow")
-    show_notes(screen, "Assumed", study.assumptions)
+    show_notes(screen, "Numbers used", _numbers_used(study, scale))
+    doubt = () if study.confidence is None else study.confidence.method
+    show_notes(screen, "Assumed", (*study.assumptions, *doubt))
     screen.print(
         "\nA screening result, not a certificate: heights, clearances and exposure are for licensed practice and local"
         " codes to confirm.",
         style="dim",
         markup=False,
         soft_wrap=True,
+    )
+
+
+def _numbers_used(study: Study, scale: Scale) -> tuple[str, ...]:
+    """Say where the ground is from and by how much a survey differs, and every climate number with its source."""
+    terrain, unit = study.terrain, scale.height_unit
+    surveys = [
+        f"{site.name}: surveyed ground {scale.height(site.surveyed_ground_m or 0.0, 2)} {unit},"
+        f" {scale.height(difference, 2)} {unit} above that of the terrain"
+        for site, difference in (
+            (study.hop.site_a, terrain.surveyed_difference_a_m),
+            (study.hop.site_b, terrain.surveyed_difference_b_m),
+        )
+        if difference is not None
+    ]
+    climate = () if study.availability is None else study.availability.inputs
+    return (
+        "ground: " + ", ".join(f"{use.info.path.name} at {use.share:.0%} of the points" for use in terrain.sources),
+        *surveys,
+        *(f"{each.name} = {each.value:.4g}: {each.source}" for each in climate),
     )
 
 

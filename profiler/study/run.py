@@ -220,6 +220,7 @@ def _assumptions(hop: Hop, ground: Ground, air: Air, budget: Budget | None, outa
                 *terrain.cover_notes,
                 f"diffraction: {hop.diffraction_method} over ground and cover; budget at k = {hop.median_k:.3g}",
                 f"air: {air.source}",
+                *([f"terrain error: {hop.confidence.terrain_source}"] if hop.confidence is not None else []),
                 *(budget.assumptions if budget is not None else ()),
                 *outage.assumptions,
             ]
