@@ -1,14 +1,15 @@
 """Speed of the main jobs beside what cannot be avoided, in one run: called by scripts/bench.
 
 Machines differ and are noisy, so each job runs in turn with its floor (A B A B ...), and the ratio is the median over
-the pairs. The aims are for one core of a present machine with nothing else running; no test asserts them.
+the pairs, once by the clock on the wall and once by processor time, which other programs disturb less. The aims are for
+a present machine with nothing else running; no test asserts them.
 """
 
 from __future__ import annotations
 
 import argparse
 import os
-import statistics
+import resource
 import subprocess
 import sys
 import tempfile
@@ -70,42 +71,56 @@ with open_terrain(Path(sys.argv[1])) as terrain:
 """
 
 
+Pair = tuple[float, float]
+"""By the clock on the wall, and of processor time."""
+
+
 @dataclass(frozen=True, slots=True)
 class Row:
     """One line of the table: what a job took, what it should take, and how many times its floor that is."""
 
     what: str
     value: float
+    cpu: float | None
     unit: str
     aim: str = ""
     floor: str = ""
     ratio: float | None = None
+    cpu_ratio: float | None = None
 
 
 @dataclass(frozen=True, slots=True)
 class Paired:
-    """Medians of a job, of its floor, and of their ratio over the pairs."""
+    """Medians of a job in seconds, of its floor, and of their ratio over the pairs."""
 
-    job_s: float
-    floor_s: float
-    ratio: float
+    job: Pair
+    floor: Pair
+    ratio: Pair
+
+    def row(self, what: str, aim: str, floor: str, *, unit: str = "ms", per_second: float = 1e3) -> Row:
+        job, job_cpu = (per_second * each for each in self.job)
+        floor = f"{floor} {per_second * self.floor[0]:.4g} {unit}"
+        return Row(what, job, job_cpu, unit, aim, floor, *self.ratio)
 
 
-def seconds(job: Callable[[], object]) -> float:
-    start = time.perf_counter()
+def clocks() -> np.ndarray:
+    """Seconds on the wall, and of processor time of this process and those that it has waited for."""
+    used = [resource.getrusage(who) for who in (resource.RUSAGE_SELF, resource.RUSAGE_CHILDREN)]
+    return np.array([time.perf_counter(), sum(each.ru_utime + each.ru_stime for each in used)])
+
+
+def seconds(job: Callable[[], object]) -> np.ndarray:
+    start = clocks()
     job()
-    return time.perf_counter() - start
+    return clocks() - start
 
 
 def paired(job: Callable[[], object], floor: Callable[[], object], pairs: int) -> Paired:
     """Run job and floor in turn, once unmeasured and then in pairs."""
     job(), floor()
-    times = [(seconds(job), seconds(floor)) for _ in range(pairs)]
-    return Paired(
-        statistics.median(a for a, _ in times),
-        statistics.median(b for _, b in times),
-        statistics.median(a / b for a, b in times),
-    )
+    times = np.array([(seconds(job), seconds(floor)) for _ in range(pairs)])
+    job_s, floor_s = np.median(times, axis=0).tolist()
+    return Paired(job_s, floor_s, np.median(times[:, 0] / times[:, 1], axis=0).tolist())
 
 
 def rough(rng: np.random.Generator, side: int, slope: float) -> np.ndarray:
@@ -145,8 +160,7 @@ def whole_process(work: Path, pairs: int) -> Iterator[Row]:
 
     for name, hop in (("study, radio, availability, confidence, figure", SAMPLE), ("study, rules, figure", plain)):
         took = paired(lambda hop=hop: study(hop), lambda: run("-c", IMPORTS), pairs)
-        floor = f"bare imports {1e3 * took.floor_s:.0f} ms"
-        yield Row(f"process: {name}", 1e3 * took.job_s, "ms", "1.6 x", floor, took.ratio)
+        yield took.row(f"process: {name}", "1.6 x", "bare imports")
 
 
 def analysis(work: Path, pairs: int) -> Iterator[Row]:
@@ -178,9 +192,8 @@ def analysis(work: Path, pairs: int) -> Iterator[Row]:
         took = paired(lambda: run_study(hop, terrain), gather, pairs)
         ground = paired(lambda: read_ground(hop, terrain), lambda: run_study(hop, terrain), pairs)
     size = f"{study.line.distance_m / 1e3:.0f} km, {study.line.points} points, {points} with those beside"
-    floor = f"numpy gather of the cells {1e3 * took.floor_s:.2f} ms"
-    yield Row(f"analysis: {size}", 1e3 * took.job_s, "ms", "15 ms", floor, took.ratio)
-    yield Row("  of it reading the ground", 100 * ground.ratio, "%")
+    yield took.row(f"analysis: {size}", "15 ms", "numpy gather of the cells")
+    yield Row("  of it reading the ground", *(100 * each for each in ground.ratio), "%")
 
 
 def diffraction(pairs: int) -> Iterator[Row]:
@@ -195,14 +208,14 @@ def diffraction(pairs: int) -> Iterator[Row]:
         return delta_bullington(distance_m, height_m, centre_a_m, centre_b_m, FREQUENCY_HZ, 8.5e6)
 
     took = paired(job, lambda: height_m.sum(axis=1), pairs)
-    floor = f"sum of the heights {1e6 * took.floor_s / hops:.1f} us"
-    yield Row(f"delta-Bullington, {hops} x {points}, each", 1e6 * took.job_s / hops, "us", "25 us", floor, took.ratio)
+    what = f"delta-Bullington, {hops} x {points}, each"
+    yield took.row(what, "25 us", "sum of the heights", unit="us", per_second=1e6 / hops)
     tracemalloc.start()
     job()
     peak = tracemalloc.get_traced_memory()[1]
     tracemalloc.stop()
     floor = f"the heights {height_m.nbytes / 2**20:.0f} MiB"
-    yield Row("  memory on top of the heights", peak / 2**20, "MiB", "", floor, peak / height_m.nbytes)
+    yield Row("  memory on top of the heights", peak / 2**20, None, "MiB", "", floor, peak / height_m.nbytes)
 
 
 def country(points: int) -> tuple[np.ndarray, np.ndarray]:
@@ -221,8 +234,7 @@ def heights(pairs: int) -> Iterator[Row]:
 
     corners = np.column_stack((distance_m, ground_m))
     took = paired(job, lambda: ConvexHull(corners), 20 * pairs)
-    floor = f"Qhull of the points {1e3 * took.floor_s:.2f} ms"
-    yield Row("heights: exact region, 1000 points, 3 rules", 1e3 * took.job_s, "ms", "2 ms", floor, took.ratio)
+    yield took.row("heights: exact region, 1000 points, 3 rules", "2 ms", "Qhull of the points")
 
 
 def confidence(pairs: int) -> Iterator[Row]:
@@ -239,8 +251,7 @@ def confidence(pairs: int) -> Iterator[Row]:
 
     rng = np.random.default_rng(1)
     took = paired(job, lambda: rng.standard_normal((1000, 2000), dtype=np.float32), pairs)
-    floor = f"drawing the numbers {1e3 * took.floor_s:.0f} ms"
-    yield Row("confidence: 2000 draws, 1000 points, 3 rules, k", 1e3 * took.job_s, "ms", "250 ms", floor, took.ratio)
+    yield took.row("confidence: 2000 draws, 1000 points, 3 rules, k", "250 ms", "drawing the numbers")
 
 
 def reading(work: Path, pairs: int) -> Iterator[Row]:
@@ -263,21 +274,22 @@ def reading(work: Path, pairs: int) -> Iterator[Row]:
                 return terrain.sample(line.longitude, line.latitude).sources[0]
 
         took = paired(job, whole, pairs)
-        floor = f"the whole tile {1e3 * took.floor_s:.0f} ms"
-        what = f"terrain: 3600 x 3600 {name}, {line.points} points"
-        yield Row(what, 1e3 * took.job_s, "ms", "", floor, took.ratio)
+        yield took.row(f"terrain: 3600 x 3600 {name}, {line.points} points", "", "the whole tile")
         share = 100 * job().read_share
-        yield Row("  share of the tile read", share, "%", "a few %", "", share / 100)
+        yield Row("  share of the tile read", share, None, "%", "a few %")
         if Path("/proc/self/statm").exists():
             command = [sys.executable, "-c", CHILD_READS, str(tile), *map(str, ends)]
             done = subprocess.run(command, cwd=ROOT, capture_output=True, text=True, check=True)
             grown = int(done.stdout) / 2**20
-            yield Row("  memory grown by", grown, "MiB", "", f"the tile unpacked {size:.0f} MiB", grown / size)
+            yield Row("  memory grown by", grown, None, "MiB", "", f"the tile unpacked {size:.0f} MiB", grown / size)
 
 
 def show(row: Row) -> None:
-    ratio = "" if row.ratio is None else f"{row.ratio:.2f}"
-    print(f"{row.what:<56}{row.value:>9.2f} {row.unit:<4}{row.aim:>9}  {row.floor:<38}{ratio:>8}", flush=True)
+    def number(value: float | None) -> str:
+        return " " * 9 if value is None else f"{value:>9.2f}"
+
+    numbers, ratios = number(row.value) + number(row.cpu), number(row.ratio) + number(row.cpu_ratio)
+    print(f"{row.what:<54}{numbers} {row.unit:<4}{row.aim:>7}  {row.floor:<34}{ratios}".rstrip(), flush=True)
 
 
 def main() -> None:
@@ -288,7 +300,8 @@ def main() -> None:
     load = f", load {os.getloadavg()[0]:.1f}" if hasattr(os, "getloadavg") else ""
     versions = f"Python {sys.version.split()[0]}, numpy {np.__version__}"
     print(f"{versions}, {os.cpu_count()} cores{load}; medians of {pairs} pairs")
-    print(f"{'what':<56}{'measured':>9} {'':<4}{'aim':>9}  {'floor':<38}{'x floor':>8}")
+    head = f"{'what':<54}{'wall':>9}{'cpu':>9} {'':<4}{'aim':>7}  {'floor (wall)':<34}{'x wall':>9}{'x cpu':>9}"
+    print(head)
     with tempfile.TemporaryDirectory() as folder:
         work = Path(folder)
         for rows in (
