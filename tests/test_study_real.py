@@ -40,7 +40,7 @@ def along(hop: Hop, distance_m):
 
 
 def by_hand(hop: Hop, distance_m, ground_m, k, fraction):
-    """Surplus of a rule from its definition, in the SI forms of METHODS: d1·d2/(2kR) and sqrt(λ·d1·d2/d)."""
+    """Surplus of a rule from its definition, in SI units: bulge d1·d2/(2kR), zone sqrt(λ·d1·d2/d)."""
     total = distance_m[-1]
     d1, d2 = distance_m, total - distance_m
     start, end = ground_m[0] + hop.site_a.antenna_m, ground_m[-1] + hop.site_b.antenna_m

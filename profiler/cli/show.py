@@ -307,11 +307,14 @@ def _show_confidence(screen: Console, study: Study, scale: Scale) -> None:
         markup=False,
         soft_wrap=True,
     )
-    table = compact_table("rule", "chance", "least surplus 5 %", "50 %", "95 %", "doubt: terrain", "cover", "k")
+    table = compact_table(
+        "rule", "chance", "of time", "least surplus 5 %", "50 %", "95 %", "doubt: terrain", "cover", "k"
+    )
     for rule, doubt in zip(study.rules, found.rules, strict=True):
         table.add_row(
             rule.check.label or f"k = {doubt.k:.3f}",
             f"{doubt.chance.value:.1%}",
+            "-" if doubt.chance_with_k is None else f"{doubt.chance_with_k.value:.1%}",
             *(scale.height(value) for value in (doubt.least_low_m, doubt.least_median_m, doubt.least_high_m)),
             *(f"{share:.0%}" for share in (doubt.shares.terrain, doubt.shares.cover, doubt.shares.k)),
         )

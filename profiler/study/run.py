@@ -10,7 +10,7 @@ from profiler.atmosphere import atmosphere_warnings
 from profiler.diffraction import DiffractionLoss
 from profiler.errors import InputError
 from profiler.geometry import check_corridor, check_rule, elevation_angle, find_reflections
-from profiler.models import Hop, Rule
+from profiler.models import ConfidenceChoice, Hop, Rule
 from profiler.study.climate import ClimateUse, climate_numbers
 from profiler.study.ground import Ground, read_ground
 from profiler.study.link import Air, air_along, link
@@ -220,11 +220,18 @@ def _assumptions(hop: Hop, ground: Ground, air: Air, budget: Budget | None, outa
                 *terrain.cover_notes,
                 f"diffraction: {hop.diffraction_method} over ground and cover; budget at k = {hop.median_k:.3g}",
                 f"air: {air.source}",
-                *([f"terrain error: {hop.confidence.terrain_source}"] if hop.confidence is not None else []),
+                *(_doubt_assumptions(hop.confidence) if hop.confidence is not None else ()),
                 *(budget.assumptions if budget is not None else ()),
                 *outage.assumptions,
             ]
         )
+    )
+
+
+def _doubt_assumptions(choice: ConfidenceChoice) -> tuple[str, ...]:
+    return (
+        f"terrain error: {choice.terrain_source}",
+        "confidence is that along the path: ground beside it is not in the chances and the sure heights",
     )
 
 
