@@ -510,6 +510,17 @@ def test_a_wall_beside_the_path_fails_the_rule_and_names_the_side(land, side, na
     assert to_document(study)["rules"][0]["across"]["side"] == name
 
 
+def test_every_rule_looks_as_far_aside_as_its_own_zone(land):
+    """The narrower zone's edge is sampled too, however coarse the cells: 0.3 F1 is 4 m here and a cell 21 m."""
+    study = run_study(hop_over(land(rolling())))
+    middle = study.line.points // 2
+    f1_m = study.rules[0].check.f1_m[middle]
+    for result, fraction in zip(study.rules, (1.0, 0.3), strict=True):
+        assert np.abs(study.corridor.offset_m[middle] - fraction * f1_m).min() == pytest.approx(0.0, abs=1e-9)
+        assert result.corridor.half_width_m == pytest.approx(fraction * study.rules[0].check.f1_m.max())
+    assert np.all(np.diff(study.corridor.offset_m[middle]) > 0)
+
+
 def test_ground_that_ends_beside_the_path_is_told(land):
     heights = np.full((ROWS, COLUMNS), GROUND_M)
     heights[:, 32:] = -9999

@@ -195,13 +195,15 @@ def _corridor(
     The path's own points keep their profile.
 
     Across, points stand half a cell apart, but no closer than a tenth of the zone: what is narrower than that hides
-    next to none of it.
+    next to none of it. The edge of every rule's own zone is among them.
     """
-    fraction = max(rule.fresnel_fraction for rule in hop.rules)
+    fraction, *narrower = sorted({rule.fresnel_fraction for rule in hop.rules}, reverse=True)
     if fraction == 0.0:
         return None, []
     widest = float(np.abs(corridor_offsets(line.along_m, hop.frequency_hz, fraction, np.inf)).max())
     offset = corridor_offsets(line.along_m, hop.frequency_hz, fraction, max(0.5 * cell_m, widest / _ACROSS_STEPS))
+    edges = [corridor_offsets(line.along_m, hop.frequency_hz, each, np.inf)[:, ::2] for each in narrower if each > 0.0]
+    offset = np.sort(np.concatenate([offset, *edges], axis=1), axis=1)
     longitude, latitude = across(line, offset)
     samples = terrain.sample(longitude, latitude)
     cover = _cover(hop, line, longitude, latitude)
