@@ -116,39 +116,37 @@ def _delta_kernel(block: Block) -> tuple[NDArray[Any], ...]:
     return (*_extreme_points(block, above), smooth_a, smooth_b)
 
 
-def _greatest(hops: Hops, value_at: Callable[[Float], Float]) -> Float:
-    """Maximum over the inner points of each hop of a function of t with a single maximum, found by bisection.
+def _greatest(hops: Hops, values_at: Callable[[Float], Float], count: int) -> Float:
+    """Maxima over the inner points of each hop of functions of t with a single maximum each, found by bisection.
 
     Over smooth ground every quantity of the construction has one maximum, so that a few looks per hop replace a look
-    at every point.
+    at every point. `values_at` takes a t for each function and hop, `(count, hops)`, and gives their values there.
     """
     hop_count, points = hops.height_m.shape
-    low = np.zeros(hop_count, dtype=np.intp)
-    high = np.full(hop_count, points - 3, dtype=np.intp)
+    low = np.zeros((count, hop_count), dtype=np.intp)
+    high = np.full((count, hop_count), points - 3, dtype=np.intp)
     while (low < high).any():
         middle = (low + high) // 2
         after = np.minimum(middle + 1, points - 3)
-        rising = value_at(hops.fraction_at(after)) > value_at(hops.fraction_at(middle))
+        rising = values_at(hops.fraction_at(after)) > values_at(hops.fraction_at(middle))
         low, high = np.where(rising & (low < high), after, low), np.where(rising, high, middle)
-    return value_at(hops.fraction_at(low))
+    return values_at(hops.fraction_at(low))
 
 
 def _smooth_bullington(hops: Hops, height_a_m: Float, height_b_m: Float) -> Float:
     """Bullington's loss over smooth ground at height 0 with the same points, the antennas at the given heights."""
     bulge = hops.bulge_m
 
-    def from_a(t: Float) -> Float:
-        return np.asarray(bulge * (1.0 - t) - height_a_m * (1.0 - t) / t - height_b_m)
+    def values_at(t: Float) -> Float:
+        to_a, to_b, to_chord = t
+        bow = to_chord * (1.0 - to_chord)
+        from_a = bulge * (1.0 - to_a) - height_a_m * (1.0 - to_a) / to_a - height_b_m
+        from_b = bulge * to_b - height_b_m * to_b / (1.0 - to_b) - height_a_m
+        weighted = (bulge * bow - height_a_m * (1.0 - to_chord) - height_b_m * to_chord) / np.sqrt(bow)
+        return np.stack([from_a, from_b, weighted])
 
-    def from_b(t: Float) -> Float:
-        return np.asarray(bulge * t - height_b_m * t / (1.0 - t) - height_a_m)
-
-    def weighted(t: Float) -> Float:
-        bow = t * (1.0 - t)
-        return np.asarray((bulge * bow - height_a_m * (1.0 - t) - height_b_m * t) / np.sqrt(bow))
-
-    p, q = _greatest(hops, from_a), _greatest(hops, from_b)
-    crest = np.where((p >= 0) & (q >= 0), np.sqrt(np.maximum(p, 0.0) * np.maximum(q, 0.0)), _greatest(hops, weighted))
+    p, q, highest = _greatest(hops, values_at, 3)
+    crest = np.where((p >= 0) & (q >= 0), np.sqrt(np.maximum(p, 0.0) * np.maximum(q, 0.0)), highest)
     nu = crest * np.sqrt(2.0 / (hops.wavelength_m * hops.length_m))
     return _whole_loss(knife_edge_loss(nu), hops.length_m)
 

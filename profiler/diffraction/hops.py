@@ -230,11 +230,11 @@ class Hops:
         return tuple(np.concatenate(column) for column in zip(*parts, strict=True))
 
     def fraction_at(self, index: Index) -> Float:
-        """Fraction t of the inner point `index` of each hop, `(hops,)`; 0 is the first point after A."""
+        """Fraction t of the inner point `index` of each hop, `(..., hops)`; 0 is the first point after A."""
         if self.distance_m.ndim == 1:
             return np.asarray(self.distance_m[index + 1] / self.distance_m[-1])
         distance = np.broadcast_to(self.distance_m, self.height_m.shape)
-        return np.asarray(distance[np.arange(index.size), index + 1] / self.length_m)
+        return np.asarray(distance[np.arange(index.shape[-1]), index + 1] / self.length_m)
 
     def points_at(self, index: Index) -> Points:
         """Return the inner point `index` of each hop."""
