@@ -452,6 +452,11 @@ class Hop:
         _require(len(self.rules) > 0, "rules", "none", "at least one rule or a named preset")
         _require(0 < self.median_k < math.inf, "median_k", self.median_k, "more than 0")
 
+    @property
+    def has_objective(self) -> bool:
+        """Whether the hop must meet an availability target."""
+        return self.availability is not None and self.availability.objective != Objective()
+
 
 @dataclass(frozen=True, slots=True, eq=False)
 class Profile:

@@ -819,3 +819,48 @@ def test_provenance_names_every_raster_that_a_number_depends_on(land):
     }
     assert set(study.provenance.rasters) == expected
     assert dict(study.provenance.versions).keys() >= {"hopwright", "python", "numpy", "rasterio", "pyproj"}
+
+
+def test_heights_are_planned_though_an_antenna_stands_in_its_own_trees(land):
+    """The given heights are a first guess to a search for heights, and wrong input to a study of losses."""
+    canopy = land(18.0, "canopy.tif")
+    hop = replace(hop_over(land()), cover=CoverChoice(canopy=(canopy,)))
+    wooded = replace(hop, site_a=replace(hop.site_a, antenna_m=10.0))
+    with pytest.raises(InputError, match=r"site_a.antenna_m = 10: must be above the 18.0 m of cover at south"):
+        run_study(wooded)
+    plan = plan_heights(run_study(wooded, losses=False))
+    assert plan.feasible
+    assert plan.cheapest == plan_heights(run_study(hop, losses=False)).cheapest
+    assert not plan.study.verdict.clears
+
+
+def test_highest_cells_lift_the_path_but_not_the_sites(land):
+    slope = np.broadcast_to(GROUND_M + 2.0 * np.arange(COLUMNS), (ROWS, COLUMNS))  # 2 m a cell across the path
+    hop = hop_over(land(slope))
+    bilinear, highest = run_study(hop), run_study(with_terrain(hop, method="highest"))
+    assert highest.profile.ground_m[[0, -1]].tolist() == bilinear.profile.ground_m[[0, -1]].tolist()
+    assert (highest.profile.ground_m[1:-1] >= bilinear.profile.ground_m[1:-1]).all()
+    assert any("sites: bilinear" in line for line in highest.assumptions)
+
+
+def test_an_objective_that_cannot_be_judged_is_not_passed(land):
+    mute = replace(RADIO, modes=(RadioMode("silent"),))
+    study = run_study(hop_over(land(), radio=mute, availability=CLIMATE, rules=(Rule(4 / 3, 0.0),)))
+    assert study.verdict.clears
+    assert study.verdict.meets_objective is None
+    assert not study.verdict.passes
+    assert "cannot be held against the availability objective" in study.verdict.headline
+
+
+def test_ground_beside_the_path_counts_in_the_confidence(land):
+    """A wall beside the path is short by what the corridor says, and sure heights make that up with some to spare."""
+    doubt = ConfidenceChoice(2.0, "test", 100.0)
+    hop = hop_over(land(), confidence=doubt, rules=(Rule(4 / 3, 1.0),))
+    heights = np.full((ROWS, COLUMNS), GROUND_M)
+    heights[MID_ROW - 2 : MID_ROW + 3, COLUMNS // 2 - 1] += 50.0  # a wall one cell to the west
+    free, walled = run_study(hop), run_study(replace(hop, terrain=TerrainChoice((land(heights, "wall.tif"),))))
+    short = -walled.rules[0].corridor.surplus_m
+    assert walled.rules[0].check.passes
+    assert short > 5.0
+    assert walled.confidence.chance.value < free.confidence.chance.value
+    assert short < walled.confidence.sure[0].raise_m < short + 3 * 2.0 * 2**0.5

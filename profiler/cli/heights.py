@@ -58,7 +58,7 @@ def command(
     check_targets(json_to, csv_to, write_to, figures=figures, hop_file=hop_given["hop_file"])
     hop = read_hop(**hop_given)
     with named(hop.source):
-        plan = plan_heights(run_study(hop))
+        plan = plan_heights(run_study(hop, losses=False))
         rewritten = None if write_to is None else _rewritten(hop, hop_given["hop_file"], plan)
     drawn = _drawn(plan, figures, feet)
     for path, content in drawn:

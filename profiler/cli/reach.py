@@ -68,6 +68,7 @@ def command(
             "fade_margin_db": fade_margin_db,
             "direction": direction,
         }
+        assert study.median_diffraction is not None
         wanted_here = {**wanted, "gas_db": study.air.gas_db, "diffraction_db": study.median_diffraction.loss_db}
         distance_m = study.line.distance_m
         answers = {

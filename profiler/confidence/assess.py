@@ -44,6 +44,7 @@ def assess(
     cover_sigma_m: float = 0.0,
     cover_relative_sigma: float = 0.0,
     cover_correlation_m: float | None = None,
+    beside_m: ArrayLike = 0.0,
     k_percentiles: Sequence[tuple[float, float]] = (),
     draws: int = 2000,
     seed: int = 1,
@@ -82,6 +83,9 @@ def assess(
         not sink below 0, and where none is given none grows.
     cover_correlation_m
         Practical range of the cover's error; None is the terrain's.
+    beside_m
+        How much less surplus the ground beside the path leaves than the path itself, metres, 0 or more, (rules, n) or
+        what broadcasts to it; its error is taken to be that of the path's own point.
     k_percentiles
         (percent of the time that k is not exceeded, k) pairs, as in `draw_inverse_k`; empty: k does not vary.
     draws
@@ -126,7 +130,7 @@ def assess(
     """
     distance, ground, cover = frozen_array(distance_m), frozen_array(ground_m), frozen_array(cover_m)
     _check_rows(distance, ground, cover, draws, seed)
-    nominal = _nominal(distance, ground, cover, (antenna_a_m, antenna_b_m), frequency_hz, rules)
+    nominal = _nominal(distance, ground, cover, (antenna_a_m, antenna_b_m), frequency_hz, rules, beside_m)
     sigmas = Sigmas(
         _sigma_row(terrain_sigma_m, distance.size),
         None if site_sigma_a_m is None else float(_not_negative("site_sigma_a_m", site_sigma_a_m)),
@@ -198,6 +202,7 @@ def _nominal(
     antennas: tuple[float, float],
     frequency_hz: float,
     rules: Sequence[tuple[float, float, float]],
+    beside_m: ArrayLike,
 ) -> Nominal:
     """Hold every rule against the path as given."""
     if not rules:
@@ -211,7 +216,7 @@ def _nominal(
         for k, part, margin in rules
     ]
     return Nominal(
-        surplus_m=np.asarray(surplus),
+        surplus_m=np.asarray(surplus) - _not_negative("beside_m", beside_m),
         inverse_k=np.asarray([1.0 / k for k, _, _ in rules]),
         unit_bulge_m=earth_bulge(distance, distance[-1] - distance, 1.0),
         share=distance / distance[-1],

@@ -178,10 +178,9 @@ def link_assumptions(study: Study) -> list[str]:
 def link_notes(study: Study) -> list[tuple[str, list[str]]]:
     """Headings and paragraphs at the foot of the margin figure: what the budget and the outage rest on."""
     loss = study.median_diffraction
-    path = [
-        f"diffraction {loss.loss_db:.1f} dB by {loss.method} at k = {k_text(loss.k)}",
-        f"gases {study.air.gas_db:.2f} dB; air: {study.air.source}",
-    ]
+    path = [f"gases {study.air.gas_db:.2f} dB; air: {study.air.source}"]
+    if loss is not None:
+        path.insert(0, f"diffraction {loss.loss_db:.1f} dB by {loss.method} at k = {k_text(loss.k)}")
     inputs = [] if study.availability is None else study.availability.inputs
     numbers = [f"{each.name} = {each.value:.4g}: {each.source}" for each in inputs]
     blocks = _notes(study, [*path, *link_assumptions(study)], list(study.warnings))

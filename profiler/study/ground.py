@@ -16,7 +16,7 @@ from profiler.study.result import Corridor, Relief, TerrainUse
 from profiler.terrain import Samples, Terrain, fill_missing, missing_stretches, require_ground
 from profiler.units import Float
 
-__all__ = ["Ground", "read_ground"]
+__all__ = ["Ground", "read_ground", "require_above_cover"]
 
 _SEARCH_STEPS = 256
 _DEFAULT_STEPS, _FEWEST_STEPS = 200, 50
@@ -63,11 +63,12 @@ def read_ground(
     MissingGroundError
         Where the path has no ground and the hop file does not let it be filled.
     InputError, RasterError
-        For rasters that cannot be used, datums that do not agree, points too far apart, or an antenna in its own cover.
+        For rasters that cannot be used, datums that do not agree, or points too far apart.
     """
     line, cell_m = _lay_path(hop, terrain)
     samples = terrain.sample(line.longitude, line.latitude)
     ground_m, filled, fill_notes = _without_gaps(hop, line, samples)
+    site_notes = _with_true_sites(hop, terrain, line, ground_m)
     ground_m, differences = _with_surveys(hop, ground_m)
     cover = _cover(hop, line, line.longitude, line.latitude)
     surveyed = np.zeros(line.points, dtype=bool)
@@ -81,7 +82,6 @@ def read_ground(
         filled=filled,
         surveyed=surveyed,
     )
-    _require_above_cover(hop, profile)
     use = TerrainUse(
         method=hop.terrain.method,
         spacing_m=line.spacing_m,
@@ -91,7 +91,7 @@ def read_ground(
         filled_points=int(filled.sum()),
         surveyed_difference_a_m=differences[0],
         surveyed_difference_b_m=differences[1],
-        notes=(*samples.notes, *fill_notes),
+        notes=(*samples.notes, *fill_notes, *site_notes),
         cover_notes=cover.notes,
     )
     corridor, files_beside = _corridor(hop, terrain, profile, line, cell_m)
@@ -145,6 +145,15 @@ def _without_gaps(hop: Hop, line: PathLine, samples: Samples) -> tuple[Float, np
     return ground_m, filled, notes
 
 
+def _with_true_sites(hop: Hop, terrain: Terrain, line: PathLine, ground_m: Float) -> tuple[str, ...]:
+    """Put bilinear ground in at the sites: the highest cell around one would lift its antenna with it."""
+    if hop.terrain.method != "highest":
+        return ()
+    ends = [0, -1]
+    ground_m[ends] = terrain.sample(line.longitude[ends], line.latitude[ends], method="bilinear").ground_m
+    return ("ground at the sites: bilinear, as the highest cell around would lift the antennas",)
+
+
 def _with_surveys(hop: Hop, ground_m: Float) -> tuple[Float, tuple[float | None, float | None]]:
     """Put the surveyed ground in at the sites, and say how far the raster was from it."""
 
@@ -174,8 +183,14 @@ def _cover(hop: Hop, line: PathLine, longitude: Float, latitude: Float) -> Cover
     return Cover(frozen_array(heights), tuple(notes), cover.files)
 
 
-def _require_above_cover(hop: Hop, profile: Profile) -> None:
-    """Stop when an antenna stands inside the cover at its own site: no loss has a value there."""
+def require_above_cover(hop: Hop, profile: Profile) -> None:
+    """Stop when an antenna stands inside the cover at its own site: no loss has a value there.
+
+    Raises
+    ------
+    InputError
+        Naming the site and the cover.
+    """
     for key, site, cover_m in (
         ("site_a", hop.site_a, float(profile.cover_m[0])),
         ("site_b", hop.site_b, float(profile.cover_m[-1])),

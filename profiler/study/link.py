@@ -35,6 +35,11 @@ class Link:
     budget: Budget | None
     outage: OutageResult
 
+    @classmethod
+    def none(cls) -> Link:
+        """Give the link that was not asked for."""
+        return cls({}, None, OutageResult(None, None, (), (), ()))
+
 
 def link(hop: Hop, profile: Profile, climate: ClimateUse, air: Air, centre_a_m: float, centre_b_m: float) -> Link:
     """Give losses, budget and outage for one pair of antenna centres.

@@ -195,11 +195,14 @@ def _for_loss(study: Study) -> LimitHeights | None:
 def _for_objective(study: Study) -> LimitHeights | None:
     """Least heights that meet the availability objective, through losses, budget and outage at each pair tried."""
     hop = study.hop
-    if hop.radio is None or study.availability is None or study.availability.objective is None:
+    if hop.radio is None or not hop.has_objective:
         return None
     # the search asks hundreds of times: only the mode that is judged, and only the k that counts
     lowest = min(hop.rules, key=lambda rule: rule.k)
     judged = replace(hop, radio=replace(hop.radio, modes=hop.radio.modes[:1]), rules=(lowest,))
+    above_m = max(float(study.profile.surface_m.max()), study.centre_a_m, study.centre_b_m)
+    if link(judged, study.profile, study.climate, study.air, above_m, above_m).outage.availability is None:
+        return None  # the radio has no threshold, so that there is no margin at any height
     excess = partial(_margin_missing_db, study, judged)
     return heights_within(excess, hop.heights.tower_a, hop.heights.tower_b, what="shortage of fade margin", unit="dB")
 

@@ -111,7 +111,7 @@ class Provenance:
 
 @dataclass(frozen=True, slots=True, eq=False)
 class Study:
-    """The whole analysis of one hop. A part that the hop gives no data for is None.
+    """The whole analysis of one hop. A part that the hop gives no data for, or that was not asked for, is None.
 
     ``elevation_a_deg`` and ``elevation_b_deg`` are at the median k; every rule has its own.
     """
@@ -126,7 +126,7 @@ class Study:
     terrain: TerrainUse
     rules: tuple[RuleResult, ...]
     diffraction: tuple[DiffractionLoss, ...]
-    median_diffraction: DiffractionLoss
+    median_diffraction: DiffractionLoss | None
     air: Air
     budget: Budget | None
     availability: Availability | None

@@ -6,22 +6,22 @@ from collections.abc import Sequence
 from contextlib import nullcontext
 from typing import TYPE_CHECKING
 
+import numpy as np
+
 from profiler.atmosphere import atmosphere_warnings
-from profiler.diffraction import DiffractionLoss
 from profiler.errors import InputError
 from profiler.geometry import check_corridor, check_rule, elevation_angle, find_reflections
 from profiler.models import ConfidenceChoice, Hop, Rule
 from profiler.study.climate import ClimateUse, climate_numbers
-from profiler.study.ground import Ground, read_ground
-from profiler.study.link import Air, air_along, link
+from profiler.study.ground import Ground, read_ground, require_above_cover
+from profiler.study.link import Air, Link, air_along, link
 from profiler.study.outage import OutageResult
 from profiler.study.provenance import provenance
 from profiler.study.result import RuleResult, Study, Verdict, least_surplus
 from profiler.terrain import Terrain, open_terrain, require_inside
-from profiler.units import FOOT_M, STATUTE_MILE_M
+from profiler.units import FOOT_M, STATUTE_MILE_M, Float
 
 if TYPE_CHECKING:
-    from profiler.budget import Budget
     from profiler.confidence import Confidence
 
 __all__ = ["open_hop_terrain", "run_study"]
@@ -45,7 +45,7 @@ def open_hop_terrain(hop: Hop) -> Terrain:
     )
 
 
-def run_study(hop: Hop, terrain: Terrain | None = None, *, relief: bool = False) -> Study:
+def run_study(hop: Hop, terrain: Terrain | None = None, *, relief: bool = False, losses: bool = True) -> Study:
     """Study one hop: ground, clearance under every rule, losses, margin, availability and confidence.
 
     Parameters
@@ -56,6 +56,9 @@ def run_study(hop: Hop, terrain: Terrain | None = None, *, relief: bool = False)
         The open terrain, to use it for several hops; by default the hop's own is opened and closed.
     relief
         Whether to read the ground to both sides too, for the figure's view from above.
+    losses
+        Whether to go on to diffraction, budget and outage. Without them the result holds clearance and confidence
+        alone, and an antenna may stand in its own cover: where heights are sought, the given ones are a first guess.
 
     Returns
     -------
@@ -71,15 +74,16 @@ def run_study(hop: Hop, terrain: Terrain | None = None, *, relief: bool = False)
             require_inside(source, site.name, site.longitude, site.latitude)
         climate = climate_numbers(hop)
         ground = read_ground(hop, source, relief=relief, around=climate.roughness_points)
+    if losses:
+        require_above_cover(hop, ground.profile)
     climate = climate.with_roughness(ground.heights_around_m)
     profile = ground.profile
     centre_a_m = float(profile.ground_m[0]) + hop.site_a.antenna_m
     centre_b_m = float(profile.ground_m[-1]) + hop.site_b.antenna_m
     rules = tuple(_check(hop, ground, rule, centre_a_m, centre_b_m) for rule in hop.rules)
     air = air_along(hop, profile)
-    found = link(hop, profile, climate, air, centre_a_m, centre_b_m)
-    losses, budget, outage = found.losses, found.budget, found.outage
-    confidence = _confidence(hop, ground, climate)
+    found = link(hop, profile, climate, air, centre_a_m, centre_b_m) if losses else Link.none()
+    confidence = _confidence(hop, ground, climate, rules)
     angles = _angles(ground, centre_a_m, centre_b_m, hop.median_k)
     return Study(
         hop=hop,
@@ -91,21 +95,21 @@ def run_study(hop: Hop, terrain: Terrain | None = None, *, relief: bool = False)
         elevation_b_deg=angles[1],
         terrain=ground.terrain,
         rules=rules,
-        diffraction=tuple(losses[k] for k in dict.fromkeys(rule.k for rule in hop.rules)),
-        median_diffraction=losses[hop.median_k],
+        diffraction=tuple(found.losses[k] for k in dict.fromkeys(rule.k for rule in hop.rules) if losses),
+        median_diffraction=found.losses.get(hop.median_k),
         air=air,
-        budget=budget,
-        availability=outage.availability,
-        outage_curve=outage.curve,
-        mode_outages=outage.modes,
+        budget=found.budget,
+        availability=found.outage.availability,
+        outage_curve=found.outage.curve,
+        mode_outages=found.outage.modes,
         confidence=confidence,
         corridor=ground.corridor,
         climate=climate,
         relief=ground.relief,
-        verdict=_verdict(hop, ground, rules, outage),
+        verdict=_verdict(hop, ground, rules, found.outage),
         provenance=provenance(hop, ground.files),
-        assumptions=_assumptions(hop, ground, air, budget, outage),
-        warnings=_warnings(hop, rules, list(losses.values()), budget, outage),
+        assumptions=_assumptions(hop, ground, air, found),
+        warnings=_warnings(hop, rules, found),
     )
 
 
@@ -136,7 +140,7 @@ def _check(hop: Hop, ground: Ground, rule: Rule, centre_a_m: float, centre_b_m: 
     )
 
 
-def _confidence(hop: Hop, ground: Ground, climate: ClimateUse) -> Confidence | None:
+def _confidence(hop: Hop, ground: Ground, climate: ClimateUse, rules: Sequence[RuleResult]) -> Confidence | None:
     """How sure the clearance is, where the hop file says how wrong the terrain may be."""
     choice, profile = hop.confidence, ground.profile
     if choice is None:
@@ -166,17 +170,24 @@ def _confidence(hop: Hop, ground: Ground, climate: ClimateUse) -> Confidence | N
         cover_sigma_m=choice.cover_sigma_m,
         cover_relative_sigma=choice.cover_relative_sigma,
         cover_correlation_m=choice.cover_correlation_m,
+        beside_m=np.stack([_beside(result) for result in rules]),
         k_percentiles=percentiles,
         draws=choice.draws,
         seed=choice.seed,
     )
 
 
+def _beside(result: RuleResult) -> Float:
+    """How much less surplus the ground beside the path leaves than the path itself, metres, (n,)."""
+    along = result.check.surplus_m
+    return np.zeros_like(along) if result.corridor is None else np.maximum(along - result.corridor.least_surplus_m, 0.0)
+
+
 def _verdict(hop: Hop, ground: Ground, rules: Sequence[RuleResult], outage: OutageResult) -> Verdict:
     """Say whether the hop passes and why, worst rule first, in both unit systems."""
     clears = all(result.passes for result in rules)
     return Verdict(
-        passes=clears and outage.meets is not False,
+        passes=clears and (outage.meets is True or not hop.has_objective),
         clears=clears,
         meets_objective=outage.meets,
         headline=_headline(hop, ground, rules, outage, feet=False),
@@ -198,12 +209,13 @@ def _headline(hop: Hop, ground: Ground, rules: Sequence[RuleResult], outage: Out
     clearance = f"clears, {surplus:.1f}" if surplus >= 0 else f"does not clear, {-surplus:.1f}"
     rule = f"{check.fresnel_fraction:g} F1" + (f" + {check.margin_m / metre:.1f} {short}" if check.margin_m else "")
     place = f"{ground.profile.distance_m[at] / kilometre:.2f} {far} from {hop.site_a.name}{aside}"
-    objective = "" if outage.meets is None else f"; {'meets' if outage.meets else 'misses'} the availability objective"
+    judged = {True: "meets", False: "misses", None: "cannot be held against"}[outage.meets]
+    objective = f"; {judged} the availability objective" if hop.has_objective else ""
     sense = "to spare" if surplus >= 0 else "short"
     return f"{clearance} {short} {sense} {place} (rule {rule} at k = {check.k:.2f}){objective}"
 
 
-def _assumptions(hop: Hop, ground: Ground, air: Air, budget: Budget | None, outage: OutageResult) -> tuple[str, ...]:
+def _assumptions(hop: Hop, ground: Ground, air: Air, found: Link) -> tuple[str, ...]:
     """Everything that was assumed, in the order of the stages, each thing once."""
     terrain = ground.terrain
     sources = [f"{use.info.path.name}: {note}" for use in terrain.sources for note in use.notes]
@@ -221,8 +233,8 @@ def _assumptions(hop: Hop, ground: Ground, air: Air, budget: Budget | None, outa
                 f"diffraction: {hop.diffraction_method} over ground and cover; budget at k = {hop.median_k:.3g}",
                 f"air: {air.source}",
                 *(_doubt_assumptions(hop.confidence) if hop.confidence is not None else ()),
-                *(budget.assumptions if budget is not None else ()),
-                *outage.assumptions,
+                *(found.budget.assumptions if found.budget is not None else ()),
+                *found.outage.assumptions,
             ]
         )
     )
@@ -231,17 +243,11 @@ def _assumptions(hop: Hop, ground: Ground, air: Air, budget: Budget | None, outa
 def _doubt_assumptions(choice: ConfidenceChoice) -> tuple[str, ...]:
     return (
         f"terrain error: {choice.terrain_source}",
-        "confidence is that along the path: ground beside it is not in the chances and the sure heights",
+        "terrain error: ground beside the path has the error of the path's own point next to it",
     )
 
 
-def _warnings(
-    hop: Hop,
-    rules: Sequence[RuleResult],
-    losses: Sequence[DiffractionLoss],
-    budget: Budget | None,
-    outage: OutageResult,
-) -> tuple[str, ...]:
+def _warnings(hop: Hop, rules: Sequence[RuleResult], found: Link) -> tuple[str, ...]:
     """Every warning of every stage, each once."""
     unseen = max((rule.corridor.missing_share for rule in rules if rule.corridor is not None), default=0.0)
     beside = f"beside the path {unseen:.1%} of the points in the zone have no height and were not checked"
@@ -249,10 +255,10 @@ def _warnings(
         dict.fromkeys(
             [
                 *([beside] if unseen else []),
-                *(warning for loss in losses for warning in loss.warnings),
+                *(warning for loss in found.losses.values() for warning in loss.warnings),
                 *atmosphere_warnings(hop.frequency_hz),
-                *(budget.warnings if budget is not None else ()),
-                *outage.warnings,
+                *(found.budget.warnings if found.budget is not None else ()),
+                *found.outage.warnings,
             ]
         )
     )

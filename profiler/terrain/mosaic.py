@@ -87,7 +87,14 @@ class Terrain:
                 )
             return float(lattice_cells(self._index, hits)[1].min())
 
-    def sample(self, longitude: ArrayLike, latitude: ArrayLike, *, allow_mixed_datums: bool | None = None) -> Samples:
+    def sample(
+        self,
+        longitude: ArrayLike,
+        latitude: ArrayLike,
+        *,
+        method: SampleMethod | None = None,
+        allow_mixed_datums: bool | None = None,
+    ) -> Samples:
         """Heights of the ground at points, in metres.
 
         Bilinear between the four cell centres around a point, or the highest of those of them that carry weight. The
@@ -97,6 +104,8 @@ class Terrain:
         ----------
         longitude, latitude
             Degrees on WGS 84, any shapes that broadcast; any longitude goes (181 is -179), latitude -90 to 90.
+        method
+            How to read between cell centres, where it differs from how the terrain was opened.
         allow_mixed_datums
             What to do about rasters on different vertical datums, where it differs from how the terrain was opened:
             points beside the path need not stop a study whose path is on one datum.
@@ -117,7 +126,7 @@ class Terrain:
         """
         lon, lat, shape = as_degrees(longitude, latitude)
         with gdal_session():
-            ground = sample_ground(self._index, self._rasters, lon, lat, self._method)
+            ground = sample_ground(self._index, self._rasters, lon, lat, method or self._method)
         allow = self._allow_mixed_datums if allow_mixed_datums is None else allow_mixed_datums
         return gather_samples(self._index.tiles, ground, shape, allow_mixed_datums=allow)
 
