@@ -241,13 +241,12 @@ def confidence(pairs: int) -> Iterator[Row]:
     """Draw the confidence analysis, beside drawing as many Gaussian numbers."""
     distance_m, ground_m = country(1000)
     cover_m = np.where(np.sin(distance_m / 700) > 0, 15.0, 0.0)
-    rules = [(rule.k, rule.fresnel_fraction, rule.margin_m) for rule in RULES]
     doubt = {"terrain_sigma_m": 5.0, "correlation_m": 120.0, "cover_sigma_m": 4.0, "draws": 2000}
     percentiles = ((0.1, 0.8), (50, 4 / 3), (99.9, 3.0))
 
     def job() -> object:
         path = (distance_m, ground_m, cover_m, 60.0, 60.0, FREQUENCY_HZ)
-        return assess(*path, rules, k_percentiles=percentiles, **doubt)
+        return assess(*path, RULES, k_percentiles=percentiles, **doubt)
 
     rng = np.random.default_rng(1)
     took = paired(job, lambda: rng.standard_normal((1000, 2000), dtype=np.float32), pairs)

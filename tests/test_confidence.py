@@ -25,19 +25,18 @@ from profiler.confidence.shares import shapley_shares
 from profiler.confidence.tally import Doubt, Nominal, run_draws
 from profiler.errors import InputError, MissingGroundError
 from profiler.geometry import check_rule, earth_bulge, fresnel_radius
-from profiler.models import ConfidenceChoice
+from profiler.models import ConfidenceChoice, Rule
 
-RULE = (4 / 3, 0.6, 1.0)
+RULE = Rule(4 / 3, 0.6, 1.0)
 SURVEYED = {"site_sigma_a_m": 0.0, "site_sigma_b_m": 0.0}
 ANTENNA_M = 40.0
 
 
 def top_of(distance_m, length_m, surplus_m, rule=RULE):
     """Surface height that leaves this surplus under the rule, antennas of 40 m on ground at 100 m."""
-    k, fraction, margin = rule
     rest = length_m - distance_m
-    required = fraction * fresnel_radius(distance_m, rest, 6e9) + margin
-    return 100 + ANTENNA_M - earth_bulge(distance_m, rest, k) - required - surplus_m
+    required = rule.fresnel_fraction * fresnel_radius(distance_m, rest, 6e9) + rule.margin_m
+    return 100 + ANTENNA_M - earth_bulge(distance_m, rest, rule.k) - required - surplus_m
 
 
 def hills(surplus_m, where=(0.5,), length_m=20e3, cover_m=0.0, rules=(RULE,), **doubt):
@@ -190,7 +189,7 @@ def test_where_there_is_no_cover_none_grows():
 def test_cover_over_an_antenna_cannot_be_cleared_from_the_other_end():
     distance, ground, cover = [0, 10e3, 20e3], [100, 0, 100], [50, 0, 0]
     sure = assess(
-        distance, ground, cover, 40, 40, 6e9, [(1, 0, 0)], terrain_sigma_m=1, correlation_m=0, cover_sigma_m=2
+        distance, ground, cover, 40, 40, 6e9, [Rule(1, 0)], terrain_sigma_m=1, correlation_m=0, cover_sigma_m=2
     ).sure[1]
     assert sure.b_only_m is None
     assert sure.a_only_m == pytest.approx(50 + 1.645 * 2, abs=0.5)
@@ -201,7 +200,7 @@ def test_cover_over_an_antenna_cannot_be_cleared_from_the_other_end():
 
 def test_time_share_clear_follows_the_percentiles_of_k():
     # clear at the rule's k exactly, so clear whenever k is greater; 0.8 is the 1 % value
-    rule = (0.8, 0.0, 0.0)
+    rule = Rule(0.8, 0.0)
     distance, ground = [0, 25e3, 50e3], [0, float(top_of(25e3, 50e3, 1e-3, rule)) - 100, 0]
     settings = {"terrain_sigma_m": 0.0, "correlation_m": 0.0, "draws": 20000}
     pairs = [(1, 0.8), (50, 4 / 3), (99, 3)]
@@ -246,7 +245,7 @@ def test_band_of_a_gaussian_surplus():
         assert found.surplus.low_m[index] == pytest.approx(2 - 1.645 * 4, abs=0.24)
         assert found.surplus.median_m[index] == pytest.approx(2, abs=0.15)
         assert found.surplus.high_m[index] == pytest.approx(2 + 1.645 * 4, abs=0.24)
-    assert found.surplus.low_m[0] == found.surplus.high_m[0] == pytest.approx(ANTENNA_M - RULE[2])
+    assert found.surplus.low_m[0] == found.surplus.high_m[0] == pytest.approx(ANTENNA_M - RULE.margin_m)
     assert found.least_low_m <= found.surplus.low_m.min()
 
 
@@ -406,7 +405,7 @@ def on_path(path, antennas=(40.0, 30.0), scale=1.0, **doubt):
     distance = np.linspace(0, 30e3, ground.size)
     settings = {"terrain_sigma_m": 5.0 * scale, "cover_sigma_m": 4.0 * scale, "correlation_m": 3e3, "draws": 400}
     settings |= doubt
-    return assess(distance, ground, cover, *antennas, 6e9, [(4 / 3, 1.0, 0.0), (2 / 3, 0.3, 0.0)], **settings)
+    return assess(distance, ground, cover, *antennas, 6e9, [Rule(4 / 3, 1.0), Rule(2 / 3, 0.3)], **settings)
 
 
 @given(paths, st.floats(1.0, 3.0), st.sampled_from(["exponential", "gaussian"]))
@@ -474,9 +473,7 @@ def test_reversing_the_path_changes_nothing_but_the_draws():
 def test_median_band_and_verdict_match_the_rule_check():
     distance, ground = np.linspace(0, 30e3, 200), 40 * np.random.default_rng(3).random(200)
     found = assess(distance, ground, 0 * ground, 50, 50, 6e9, [RULE], terrain_sigma_m=0.0, correlation_m=0.0)
-    check = check_rule(
-        distance, ground, ground[0] + 50, ground[-1] + 50, 6e9, k=4 / 3, fresnel_fraction=0.6, margin_m=1
-    )
+    check = check_rule(distance, ground, ground[0] + 50, ground[-1] + 50, 6e9, RULE)
     assert found.rules[0].surplus.median_m == pytest.approx(check.surplus_m)
     assert found.chance.value == float(check.passes)
     assert int(np.argmax(found.chance_critical)) == check.critical
@@ -537,7 +534,6 @@ def test_method_states_what_was_assumed():
         ({"draws": 10**9}, r"draws = 1000000000: must be 100 to \d+ on a path of 3 points"),
         ({"seed": -1}, "seed = -1: must be 0 or more"),
         ({"rules": ()}, "rules: none given"),
-        ({"rules": ((-1.0, 0.6, 0.0),)}, "k = -1.0: must be more than 0"),
         ({"cover_m": -1.0}, "cover_m: least value -1.0 m"),
         ({"k_percentiles": [(50, 1.3)]}, "k_percentiles = .*: must be two or more pairs"),
         ({"k_percentiles": [(50, 1.3), (1, 0.8)]}, r"percent = \[50.0, 1.0\]: must ascend"),
@@ -594,7 +590,7 @@ def test_thousand_points_and_two_thousand_draws_in_a_quarter_of_a_second():
             60,
             60,
             6e9,
-            [(4 / 3, 1.0, 0.0), (2 / 3, 0.3, 0.0), (1.0, 0.6, 3.0)],
+            [Rule(4 / 3, 1.0), Rule(2 / 3, 0.3), Rule(1.0, 0.6, 3.0)],
             terrain_sigma_m=5.0,
             correlation_m=120.0,
             cover_sigma_m=4.0,

@@ -175,7 +175,7 @@ def test_ground_is_drawn_over_the_bulge_of_the_governing_rule(study):
     case = study("fails")
     drawn = line_of(axes_of(profile_figure(case), "profile"), "ground")
     x_m = case.profile.distance_m
-    bulge = earth_bulge(x_m, x_m[-1] - x_m, case.governing.check.k)
+    bulge = earth_bulge(x_m, x_m[-1] - x_m, case.governing.check.rule.k)
     assert np.allclose(drawn, np.column_stack((x_m / 1e3, case.profile.ground_m + bulge)))
 
 
@@ -321,7 +321,7 @@ def test_title_block_holds_what_a_reviewer_signs(study):
     for assumption in MANY:
         assert assumption in said
     for result in case.rules:
-        assert result.check.label in said
+        assert result.check.rule.label in said
 
 
 def test_filled_and_surveyed_ground_show(study):
@@ -706,7 +706,7 @@ def test_rules_are_listed_tightest_first_and_look_apart(study):
     case = study("long")
     said = words_of(profile_figure(case))
     least = sorted(case.rules, key=lambda each: float(each.check.surplus_m.min()))
-    places = [said.index(f"({each.check.label})") for each in least]
+    places = [said.index(f"({each.check.rule.label})") for each in least]
     assert places == sorted(places)
     assert len({rule_look(position) for position in range(25)}) == 25
 

@@ -20,6 +20,7 @@ from profiler.geometry import (
     smooth_specular_distance,
     tight_places,
 )
+from profiler.models import Rule
 
 lengths_m = st.floats(1e3, 120e3)
 shares = st.floats(0.01, 0.99)
@@ -108,17 +109,17 @@ def profile(heights: list[float]) -> tuple[np.ndarray, np.ndarray]:
 @given(hill_heights, ks)
 def test_swapping_the_ends_mirrors_the_surplus(heights, k):
     x, z = profile(heights)
-    there = check_rule(x, z, 400.0, 350.0, 6e9, k=k, fresnel_fraction=0.6, margin_m=3.0)
-    back = check_rule(x, z[::-1], 350.0, 400.0, 6e9, k=k, fresnel_fraction=0.6, margin_m=3.0)
+    there = check_rule(x, z, 400.0, 350.0, 6e9, Rule(k, 0.6, 3.0))
+    back = check_rule(x, z[::-1], 350.0, 400.0, 6e9, Rule(k, 0.6, 3.0))
     np.testing.assert_allclose(back.surplus_m[::-1], there.surplus_m, atol=1e-9)
 
 
 @given(hill_heights, ks, st.floats(0.1, 50))
 def test_raising_an_antenna_or_k_never_lowers_a_surplus(heights, k, lift):
     x, z = profile(heights)
-    base = check_rule(x, z, 320.0, 320.0, 6e9, k=k, fresnel_fraction=1.0)
-    raised = check_rule(x, z, 320.0 + lift, 320.0, 6e9, k=k, fresnel_fraction=1.0)
-    bent = check_rule(x, z, 320.0, 320.0, 6e9, k=1.2 * k, fresnel_fraction=1.0)
+    base = check_rule(x, z, 320.0, 320.0, 6e9, Rule(k, 1.0))
+    raised = check_rule(x, z, 320.0 + lift, 320.0, 6e9, Rule(k, 1.0))
+    bent = check_rule(x, z, 320.0, 320.0, 6e9, Rule(1.2 * k, 1.0))
     assert np.all(raised.surplus_m >= base.surplus_m)
     assert raised.surplus_m[0] == pytest.approx(base.surplus_m[0] + lift)
     assert np.all(bent.surplus_m >= base.surplus_m)
@@ -127,8 +128,8 @@ def test_raising_an_antenna_or_k_never_lowers_a_surplus(heights, k, lift):
 @given(hill_heights, frequencies_hz)
 def test_more_frequency_never_lowers_a_surplus(heights, frequency):
     x, z = profile(heights)
-    low = check_rule(x, z, 320.0, 320.0, frequency, k=1.0, fresnel_fraction=1.0)
-    high = check_rule(x, z, 320.0, 320.0, 2 * frequency, k=1.0, fresnel_fraction=1.0)
+    low = check_rule(x, z, 320.0, 320.0, frequency, Rule(1.0, 1.0))
+    high = check_rule(x, z, 320.0, 320.0, 2 * frequency, Rule(1.0, 1.0))
     assert np.all(high.surplus_m >= low.surplus_m)
 
 
@@ -136,7 +137,7 @@ def test_finer_steps_settle():
     def least(count: int) -> float:
         x = np.linspace(0, 30e3, count)
         z = 120 * np.exp(-(((x - 17_123) / 900) ** 2))
-        check = check_rule(x, z, 150.0, 150.0, 6e9, k=4 / 3, fresnel_fraction=1.0)
+        check = check_rule(x, z, 150.0, 150.0, 6e9, Rule(4 / 3, 1.0))
         return float(check.surplus_m[check.critical])
 
     errors = [abs(least(count) - least(24_001)) for count in (76, 301, 1201)]
@@ -146,7 +147,7 @@ def test_finer_steps_settle():
 
 def test_the_ray_ends_at_the_antennas_and_clearance_adds_up():
     x, z = profile([10, 50, 20, 90, 30])
-    check = check_rule(x, z, 130.0, 95.0, 6e9, k=1.0, fresnel_fraction=0.6, margin_m=3.0)
+    check = check_rule(x, z, 130.0, 95.0, 6e9, Rule(1.0, 0.6, 3.0))
     assert check.clearance_m[0] == 120.0
     assert check.clearance_m[-1] == 65.0
     assert np.isnan(check.ratio[[0, -1]]).all()
@@ -157,14 +158,14 @@ def test_the_ray_ends_at_the_antennas_and_clearance_adds_up():
 def test_a_knife_at_the_ray_fails_and_a_centimetre_lower_passes():
     x = np.array([0.0, 10e3, 20e3])
     bulge = float(earth_bulge(10e3, 10e3, 4 / 3))
-    touching = check_rule(x, [0, 100 - bulge + 0.005, 0], 100, 100, 6e9, k=4 / 3, fresnel_fraction=0.0)
-    free = check_rule(x, [0, 100 - bulge - 0.005, 0], 100, 100, 6e9, k=4 / 3, fresnel_fraction=0.0)
+    touching = check_rule(x, [0, 100 - bulge + 0.005, 0], 100, 100, 6e9, Rule(4 / 3, 0.0))
+    free = check_rule(x, [0, 100 - bulge - 0.005, 0], 100, 100, 6e9, Rule(4 / 3, 0.0))
     assert (touching.passes, free.passes) == (False, True)
     assert (touching.line_of_sight, free.line_of_sight) == (False, True)
 
 
 def test_an_antenna_inside_its_own_trees_fails():
-    check = check_rule([0, 5e3, 10e3], [25, 0, 0], 20.0, 60.0, 6e9, k=4 / 3, fresnel_fraction=0.0)
+    check = check_rule([0, 5e3, 10e3], [25, 0, 0], 20.0, 60.0, 6e9, Rule(4 / 3, 0.0))
     assert not check.passes
     assert check.critical == 0
 
@@ -196,8 +197,8 @@ def test_corridor_on_the_path_is_the_rule_itself():
     x, z = profile([10, 50, 20, 90, 30, 15])
     offset = corridor_offsets(x, 6e9, 0.6, 5.0)
     flat_across = np.repeat(z[:, None], offset.shape[1], axis=1)
-    check = check_rule(x, z, 110.0, 105.0, 6e9, k=1.0, fresnel_fraction=0.6, margin_m=2.0)
-    beside = check_corridor(x, offset, flat_across, 110.0, 105.0, 6e9, k=1.0, fresnel_fraction=0.6, margin_m=2.0)
+    check = check_rule(x, z, 110.0, 105.0, 6e9, Rule(1.0, 0.6, 2.0))
+    beside = check_corridor(x, offset, flat_across, 110.0, 105.0, 6e9, Rule(1.0, 0.6, 2.0))
     np.testing.assert_allclose(beside.least_surplus_m, check.surplus_m, atol=1e-9)
     assert beside.side == "centre"
 
@@ -207,7 +208,7 @@ def test_corridor_names_the_side(side, name):
     x = np.array([0.0, 10e3, 20e3])
     offset = corridor_offsets(x, 6e9, 1.0, 2.0)
     ground = np.where(side * offset > 8.0, 100.0, 0.0)
-    beside = check_corridor(x, offset, ground, 100.0, 100.0, 6e9, k=1e6, fresnel_fraction=1.0)
+    beside = check_corridor(x, offset, ground, 100.0, 100.0, 6e9, Rule(1e6, 1.0))
     assert (beside.passes, beside.side, beside.distance_index) == (False, name, 1)
     assert abs(beside.offset_m) > 8.0
 
@@ -218,9 +219,9 @@ def test_ground_outside_the_zone_or_below_its_curve_does_not_matter():
     offset = np.array([[0, 0, 0], [-1.01 * radius, 0, 0.6 * radius], [0, 0, 0]])
     below = 100 - 0.8 * radius - 0.01  # the circle's height at 0.6 r is 0.8 r: a 3-4-5 triangle
     ground = np.array([[0, 0, 0], [500, 0, below], [0, 0, 0]])
-    assert check_corridor(x, offset, ground, 100, 100, 6e9, k=1e9, fresnel_fraction=1.0).passes
+    assert check_corridor(x, offset, ground, 100, 100, 6e9, Rule(1e9, 1.0)).passes
     ground[1, 2] += 0.02
-    assert not check_corridor(x, offset, ground, 100, 100, 6e9, k=1e9, fresnel_fraction=1.0).passes
+    assert not check_corridor(x, offset, ground, 100, 100, 6e9, Rule(1e9, 1.0)).passes
 
 
 def test_corridor_counts_what_it_could_not_see():
@@ -228,7 +229,7 @@ def test_corridor_counts_what_it_could_not_see():
     offset = corridor_offsets(x, 6e9, 1.0, 11.2)
     ground = np.zeros_like(offset)
     ground[1, 0] = np.nan
-    beside = check_corridor(x, offset, ground, 100, 100, 6e9, k=1.0, fresnel_fraction=1.0)
+    beside = check_corridor(x, offset, ground, 100, 100, 6e9, Rule(1.0, 1.0))
     assert beside.missing_share == pytest.approx(1 / offset.size)
 
 
@@ -295,9 +296,9 @@ def test_elevation_angles_of_a_level_hop_are_both_down_by_half_the_arc():
         (lambda: corridor_offsets([0, 1], 6e9, 1.0, 0.0), r"cell_m = 0.0: must be more than 0 m"),
         (lambda: smooth_specular_distance(10e3, 0.0, 0.0, 1.0), "must be more than 0"),
         (lambda: find_reflections([0, 1e3], [0, 0], 9, 9, 6e9, k=1), "must span at least 3 points"),
-        (lambda: check_rule([0, 2, 1], [0, 0, 0], 9, 9, 6e9, k=1, fresnel_fraction=1), "must ascend from 0"),
-        (lambda: check_rule([0, 1], [0, 0, 0], 9, 9, 6e9, k=1, fresnel_fraction=1), "must be two equal rows"),
-        (lambda: check_corridor([0, 1], [[0]], [[0]], 9, 9, 6e9, k=1, fresnel_fraction=1), "with n points"),
+        (lambda: check_rule([0, 2, 1], [0, 0, 0], 9, 9, 6e9, Rule(1, 1)), "must ascend from 0"),
+        (lambda: check_rule([0, 1], [0, 0, 0], 9, 9, 6e9, Rule(1, 1)), "must be two equal rows"),
+        (lambda: check_corridor([0, 1], [[0]], [[0]], 9, 9, 6e9, Rule(1, 1)), "with n points"),
     ],
 )
 def test_bad_input_is_named(call, message):
@@ -307,4 +308,4 @@ def test_bad_input_is_named(call, message):
 
 def test_a_gap_is_never_zero():
     with pytest.raises(MissingGroundError, match="no ground height at 5000 m from A"):
-        check_rule([0, 5e3, 10e3], [0, np.nan, 0], 50, 50, 6e9, k=1.0, fresnel_fraction=1.0)
+        check_rule([0, 5e3, 10e3], [0, np.nan, 0], 50, 50, 6e9, Rule(1.0, 1.0))

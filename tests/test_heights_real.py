@@ -136,12 +136,7 @@ def test_every_corner_passes_the_forward_model_and_a_centimetre_less_fails(profi
     for a, b in region.vertices_m:
         for less_a, less_b in ((0, 0), (0.01, 0), (0, 0.01)):
             centres = profile[1][0] + a - less_a, profile[1][-1] + b - less_b
-            worst = min(
-                check_rule(
-                    *profile, *centres, FREQUENCY_HZ, k=r.k, fresnel_fraction=r.fresnel_fraction, margin_m=r.margin_m
-                ).surplus_m.min()
-                for r in RULES
-            )
+            worst = min(check_rule(*profile, *centres, FREQUENCY_HZ, rule).surplus_m.min() for rule in RULES)
             if less_a == less_b == 0:
                 assert worst >= -ROUNDING_M
             else:

@@ -53,9 +53,7 @@ def test_surplus_is_the_forward_models(profile, some_rules, a, b):
             ground[0] + a,
             ground[-1] + b,
             FREQUENCY_HZ,
-            k=rule.k,
-            fresnel_fraction=rule.fresnel_fraction,
-            margin_m=rule.margin_m,
+            rule,
         ).surplus_m.min()
         for rule in some_rules
     )

@@ -230,7 +230,7 @@ def test_the_sheet_rounds_up_converts_and_checks_again():
     assert a.centre_ft == pytest.approx(312.3 / FOOT_M + 155)
     assert b.ground_ft == pytest.approx(951.44, abs=0.005)  # 290/0.3048
     assert found.passes
-    assert found.checks[0].label == "full"
+    assert found.checks[0].rule.label == "full"
     assert found.checks[0].surplus_m[1] == pytest.approx((a.centre_m + 336) / 2 - 300 - 23.54 - 22.35, abs=0.01)
     assert not sheet(antenna_a_m=20, antenna_b_m=20).passes
 

@@ -180,7 +180,7 @@ def test_a_sharp_ridge_is_a_knife_edge(land):
 def test_elevation_angles_on_flat_ground_look_down_by_half_the_bend(land):
     study = run_study(hop_over(land()))
     for result in study.rules:
-        half_bend_deg = math.degrees(study.line.distance_m / (2 * result.check.k * 6371e3))
+        half_bend_deg = math.degrees(study.line.distance_m / (2 * result.check.rule.k * 6371e3))
         assert result.elevation_a_deg == pytest.approx(-half_bend_deg, abs=1e-5)
         assert result.elevation_b_deg == pytest.approx(-half_bend_deg, abs=1e-5)
 

@@ -64,7 +64,7 @@ def show_study(study: Study, *, feet: bool, quiet: bool, color: bool) -> None:
     screen.print(_sites(study, scale), markup=False, soft_wrap=True)
     screen.print()
     screen.print(_rules(study, scale))
-    for k, result in {result.check.k: result for result in study.rules}.items():
+    for k, result in {result.check.rule.k: result for result in study.rules}.items():
         angles = f"A {result.elevation_a_deg:+.3f}°, B {result.elevation_b_deg:+.3f}°"
         screen.print(f"Elevation at k = {k:.3f}: {angles}", markup=False, soft_wrap=True)
     _show_places(screen, study, scale)
@@ -137,20 +137,19 @@ def _rules(study: Study, scale: Scale) -> Table:
     )  # fmt: skip
     losses = {loss.k: loss.loss_db for loss in study.diffraction}
     for result in study.rules:
-        check, at = result.check, result.check.critical
+        rule, check, at = result.check.rule, result.check, result.check.critical
         beside = check.passes and not _clear_beside(result)
         table.add_row(
-            check.label or "-",
-            f"{check.k:.3f}",
-            f"{check.fresnel_fraction:g} F1"
-            + (f" + {scale.height(check.margin_m)} {height}" if check.margin_m else ""),
+            rule.label or "-",
+            f"{rule.k:.3f}",
+            f"{rule.fresnel_fraction:g} F1" + (f" + {scale.height(rule.margin_m)} {height}" if rule.margin_m else ""),
             "FAIL beside" if beside else "pass" if result.passes else "FAIL",
             f"{scale.height(check.surplus_m[at])}",
             scale.distance(study.profile.distance_m[at]),
             scale.height(check.f1_m[at]),
             f"{check.ratio[at]:.2f}",
             "yes" if check.line_of_sight else "no",
-            f"{losses[check.k]:.1f}",
+            f"{losses[rule.k]:.1f}",
             style="" if result.passes else "red",
         )
     return table
@@ -181,7 +180,10 @@ def _show_places(screen: Console, study: Study, scale: Scale) -> None:
             ),
         )
     screen.print(
-        f"\nTight places, rule {check.label or '-'} at k = {check.k:.3f}", style="bold", markup=False, soft_wrap=True
+        f"\nTight places, rule {check.rule.label or '-'} at k = {check.rule.k:.3f}",
+        style="bold",
+        markup=False,
+        soft_wrap=True,
     )
     screen.print(table)
     for result in study.rules:
@@ -205,7 +207,7 @@ def _beside(study: Study, result: RuleResult, scale: Scale) -> str:
         return f"Beside the path, {width}{seen}: nothing rises higher into the zone than the path itself."
     where = scale.distance(study.profile.distance_m[corridor.distance_index])
     return (
-        f"Beside the path, k = {result.check.k:.3f}, {width}{seen}: tightest {scale.height(abs(corridor.offset_m))}"
+        f"Beside the path, k = {result.check.rule.k:.3f}, {width}{seen}: tightest {scale.height(abs(corridor.offset_m))}"
         f" {scale.height_unit} to the {corridor.side} at {where} {scale.distance_unit}, surplus"
         f" {scale.height(corridor.surplus_m)} {scale.height_unit}."
     )
@@ -214,7 +216,7 @@ def _beside(study: Study, result: RuleResult, scale: Scale) -> str:
 def _show_reflections(screen: Console, study: Study, scale: Scale) -> None:
     """Print the specular points at the k of each rule, screened ones only in number."""
     lines = []
-    for k, result in {result.check.k: result for result in study.rules}.items():
+    for k, result in {result.check.rule.k: result for result in study.rules}.items():
         open_places = [place for place in result.reflections if not place.screened]
         hidden = len(result.reflections) - len(open_places)
         for place in open_places[:3]:
@@ -310,9 +312,9 @@ def _show_confidence(screen: Console, study: Study, scale: Scale) -> None:
     table = compact_table(
         "rule", "chance", "of time", "least surplus 5 %", "50 %", "95 %", "doubt: terrain", "cover", "k"
     )
-    for rule, doubt in zip(study.rules, found.rules, strict=True):
+    for doubt in found.rules:
         table.add_row(
-            rule.check.label or f"k = {doubt.k:.3f}",
+            doubt.rule.label or f"k = {doubt.rule.k:.3f}",
             f"{doubt.chance.value:.1%}",
             "-" if doubt.chance_with_k is None else f"{doubt.chance_with_k.value:.1%}",
             *(scale.height(value) for value in (doubt.least_low_m, doubt.least_median_m, doubt.least_high_m)),

@@ -15,7 +15,7 @@ from profiler.confidence.survey import rank_points
 from profiler.confidence.tally import Doubt, Nominal, run_draws
 from profiler.errors import InputError
 from profiler.geometry import check_rule, earth_bulge
-from profiler.models import frozen_array
+from profiler.models import Rule, frozen_array
 from profiler.units import Float
 
 __all__ = ["SURE_CHANCES", "assess"]
@@ -34,7 +34,7 @@ def assess(
     antenna_a_m: float,
     antenna_b_m: float,
     frequency_hz: float,
-    rules: Sequence[tuple[float, float, float]],
+    rules: Sequence[Rule],
     *,
     terrain_sigma_m: ArrayLike,
     correlation_m: float,
@@ -68,7 +68,7 @@ def assess(
     frequency_hz
         Frequency, more than 0 Hz.
     rules
-        (k, fraction of F1, margin in metres) of each rule.
+        One or more clearance rules.
     terrain_sigma_m
         Standard deviation of the ground's error, 0 m or more: a scalar, or (n,) where points differ (surveyed, filled).
     correlation_m
@@ -111,7 +111,7 @@ def assess(
     chance is Φ(1/5) = 0.579, and both antennas must rise by 1.645·5 - 1 = 7.2 m to be 95 % sure.
 
     >>> hill = 100 + 30 - float(earth_bulge(10e3, 10e3, 4 / 3)) - 1.0
-    >>> found = assess([0, 10e3, 20e3], [100, hill, 100], [0, 0, 0], 30, 30, 6e9, [(4 / 3, 0.0, 0.0)],
+    >>> found = assess([0, 10e3, 20e3], [100, hill, 100], [0, 0, 0], 30, 30, 6e9, [Rule(4 / 3, 0.0)],
     ...     terrain_sigma_m=5.0, correlation_m=100.0, site_sigma_a_m=0.0, site_sigma_b_m=0.0, draws=20000)
     >>> round(found.chance.value, 2), round(found.sure[1].raise_m, 1), found.survey[0].index
     (0.58, 7.2, 1)
@@ -201,23 +201,18 @@ def _nominal(
     cover: Float,
     antennas: tuple[float, float],
     frequency_hz: float,
-    rules: Sequence[tuple[float, float, float]],
+    rules: Sequence[Rule],
     beside_m: ArrayLike,
 ) -> Nominal:
     """Hold every rule against the path as given."""
     if not rules:
-        raise InputError("rules: none given: must be at least one (k, fraction, margin)")
+        raise InputError("rules: none given: must be at least one")
     centre_a, centre_b = float(ground[0]) + antennas[0], float(ground[-1]) + antennas[1]
-    surface = ground + cover
-    surplus = [
-        check_rule(
-            distance, surface, centre_a, centre_b, frequency_hz, k=k, fresnel_fraction=part, margin_m=margin, places=1
-        ).surplus_m
-        for k, part, margin in rules
-    ]
+    path = (distance, ground + cover, centre_a, centre_b, frequency_hz)
+    surplus = [check_rule(*path, rule, places=1).surplus_m for rule in rules]
     return Nominal(
         surplus_m=np.asarray(surplus) - _not_negative("beside_m", beside_m),
-        inverse_k=np.asarray([1.0 / k for k, _, _ in rules]),
+        inverse_k=np.asarray([1.0 / rule.k for rule in rules]),
         unit_bulge_m=earth_bulge(distance, distance[-1] - distance, 1.0),
         share=distance / distance[-1],
     )

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from dataclasses import dataclass
 
+from profiler.models import Rule
 from profiler.units import Float
 
 __all__ = ["Band", "Chance", "Confidence", "DoubtShares", "RuleConfidence", "SureHeights", "SurveyPoint"]
@@ -46,9 +47,7 @@ class RuleConfidence:
     off. ``shares`` split the variance of the least surplus, with k varying if it is on.
     """
 
-    k: float
-    fresnel_fraction: float
-    margin_m: float
+    rule: Rule
     chance: Chance
     surplus: Band
     least_low_m: float

@@ -8,6 +8,7 @@ from profiler.confidence.fields import Draws
 from profiler.confidence.result import Chance, DoubtShares, RuleConfidence, SureHeights
 from profiler.confidence.shares import shapley_shares
 from profiler.confidence.tally import BAND, Tally
+from profiler.models import Rule
 
 __all__ = ["chance_of", "rule_confidence", "sure_heights"]
 
@@ -25,7 +26,7 @@ def chance_of(least_m: Draws) -> Chance:
     return Chance(share, float(min(share, centre - half)), float(max(share, centre + half)))
 
 
-def rule_confidence(index: int, rule: tuple[float, float, float], result: Tally) -> RuleConfidence:
+def rule_confidence(index: int, rule: Rule, result: Tally) -> RuleConfidence:
     """Gather what the draws say of one rule."""
     varied = result.least_varied_m
     least = np.sort(result.least_m[index])
@@ -35,9 +36,7 @@ def rule_confidence(index: int, rule: tuple[float, float, float], result: Tally)
         {cause: mixed[index] for cause, mixed in result.mixed_m.items()},
     )
     return RuleConfidence(
-        k=float(rule[0]),
-        fresnel_fraction=float(rule[1]),
-        margin_m=float(rule[2]),
+        rule=rule,
         chance=chance_of(result.least_m[index]),
         surplus=result.fixed[index],
         least_low_m=low,

@@ -55,7 +55,7 @@ def critical_place(study: Study, result: RuleResult) -> TightPlace:
     if side is None or side.surplus_m >= place.surplus_m or side.offset_m == 0:
         return place
     check, index = result.check, side.distance_index
-    radius = check.fresnel_fraction * float(check.f1_m[index])
+    radius = check.rule.fresnel_fraction * float(check.f1_m[index])
     return TightPlace(
         index=index,
         distance_m=float(study.profile.distance_m[index]),
@@ -64,7 +64,7 @@ def critical_place(study: Study, result: RuleResult) -> TightPlace:
         cover_m=None,
         bulge_m=float(check.bulge_m[index]),
         f1_m=float(check.f1_m[index]),
-        required_m=float(np.sqrt(max(radius**2 - side.offset_m**2, 0.0))) + check.margin_m,
+        required_m=float(np.sqrt(max(radius**2 - side.offset_m**2, 0.0))) + check.rule.margin_m,
         surplus_m=side.surplus_m,
     )
 

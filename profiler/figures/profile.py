@@ -99,7 +99,7 @@ def scene(study: Study, scale: Scale) -> Scene:
         ),
         low=None if band is None else shown(band[0]),
         high=None if band is None else shown(band[1]),
-        k=check.k,
+        k=check.rule.k,
     )
 
 

@@ -7,7 +7,6 @@ from dataclasses import dataclass
 from fractions import Fraction
 from typing import overload
 
-from profiler.geometry import RuleCheck
 from profiler.models import Rule
 from profiler.units import FOOT_M, STATUTE_MILE_M, Float
 
@@ -97,7 +96,7 @@ def k_text(k: float) -> str:
     return f"{k:.3g}"
 
 
-def required_text(rule: Rule | RuleCheck, scale: Scale) -> str:
+def required_text(rule: Rule, scale: Scale) -> str:
     """Say what a rule asks for: the part of the zone, the margin and k.
 
     Examples

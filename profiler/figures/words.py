@@ -41,13 +41,13 @@ def verdict_sentence(study: Study, scale: Scale) -> str:
     place = critical_place(study, result)
     amount, where = scale.height_text(abs(place.surplus_m)), scale.distance_text(place.distance_m)
     failing = sum(not each.passes for each in study.rules)
-    count = len(study.rules)
+    count, required = len(study.rules), required_text(result.check.rule, scale)
     if failing:
         of_rules = f"; {failing} of {count} rules fail" if count > 1 else ""
-        sentence = f"{amount} short of {required_text(result.check, scale)}, {where} from A{of_rules}"
+        sentence = f"{amount} short of {required}, {where} from A{of_rules}"
     else:
         rules, more = ("every rule", " or more") if count > 1 else ("the rule", "")
-        sentence = f"Clears {rules} by {amount}{more}; tightest {where} from A ({required_text(result.check, scale)})"
+        sentence = f"Clears {rules} by {amount}{more}; tightest {where} from A ({required})"
     if study.verdict.meets_objective is not None:
         sentence += f"; outage objective {'met' if study.verdict.meets_objective else 'not met'}"
     return sentence
@@ -114,7 +114,7 @@ def site_rows(study: Study, scale: Scale) -> list[tuple[str, str, str]]:
         ("antenna above datum", scale.height_text(study.centre_a_m), scale.height_text(study.centre_b_m)),
         ("true azimuth", f"{line.azimuth_a_deg:.2f}°", f"{line.azimuth_b_deg:.2f}°"),
         (
-            f"elevation, k = {k_text(governing.check.k)}",
+            f"elevation, k = {k_text(governing.check.rule.k)}",
             f"{governing.elevation_a_deg:+.3f}°".replace("-", "−"),
             f"{governing.elevation_b_deg:+.3f}°".replace("-", "−"),
         ),
@@ -124,8 +124,8 @@ def site_rows(study: Study, scale: Scale) -> list[tuple[str, str, str]]:
 def rule_lines(study: Study, result: RuleResult, scale: Scale) -> tuple[str, str, str]:
     """Three lines of a rule: what it asks, its verdict, and the numbers behind it."""
     place = critical_place(study, result)
-    check = result.check
-    title = required_text(check, scale) + (f" ({check.label})" if check.label else "")
+    rule = result.check.rule
+    title = required_text(rule, scale) + (f" ({rule.label})" if rule.label else "")
     amount = scale.height_text(abs(place.surplus_m))
     verdict = f"passes, {amount} to spare" if result.passes else f"fails, {amount} short"
     ratio = f" = {place.clearance_m / place.f1_m:.2f} F1".replace("-", "−") if place.f1_m > 0 else ""
@@ -161,7 +161,7 @@ def profile_notes(study: Study) -> list[tuple[str, list[str]]]:
     doubt = [] if study.confidence is None else list(study.confidence.method)
     link = ["fade margin and outage: what they assume stands on their own figure"] if study.budget is not None else []
     reading = [
-        f"profile: over the earth bulged at k = {k_text(study.governing.check.k)}, that of the tightest rule",
+        f"profile: over the earth bulged at k = {k_text(study.governing.check.rule.k)}, that of the tightest rule",
         "strip below it: every rule at its own k, the least over the width of its zone; lines leave at the top where "
         "there is more clearance",
     ]

@@ -9,7 +9,7 @@ from numpy.typing import ArrayLike
 
 from profiler.errors import InputError, MissingGroundError
 from profiler.geometry.ray import earth_bulge, fresnel_radius, ray_height
-from profiler.models import frozen_array
+from profiler.models import Rule, frozen_array
 from profiler.units import Float
 
 __all__ = ["ROUNDING_M", "RuleCheck", "check_rule", "tight_places"]
@@ -27,10 +27,7 @@ class RuleCheck:
     are the indices of the separate tight places, tightest first (the first is ``critical``).
     """
 
-    k: float
-    fresnel_fraction: float
-    margin_m: float
-    label: str
+    rule: Rule
     bulge_m: Float
     f1_m: Float
     clearance_m: Float
@@ -57,11 +54,8 @@ def check_rule(
     centre_a_m: float,
     centre_b_m: float,
     frequency_hz: float,
+    rule: Rule,
     *,
-    k: float,
-    fresnel_fraction: float,
-    margin_m: float = 0.0,
-    label: str = "",
     places: int = 5,
 ) -> RuleCheck:
     """Clearance of one profile under one rule, and where it is least.
@@ -80,10 +74,8 @@ def check_rule(
         Antenna centres above the datum.
     frequency_hz
         Frequency, more than 0 Hz.
-    k, fresnel_fraction, margin_m
-        The rule: effective-earth-radius factor (above 0), fraction of F1 (0 or more), fixed margin in metres.
-    label
-        Name of the rule, carried into the result.
+    rule
+        The clearance rule, carried into the result.
     places
         How many separate tight places to look for, 1 or more.
 
@@ -102,7 +94,7 @@ def check_rule(
     --------
     A 40 km hop over flat ground at k = 4/3 and 6 GHz needs a bulge of 23.5 m and 22.3 m of F1 at the middle:
 
-    >>> check = check_rule([0, 20e3, 40e3], [0, 0, 0], 50.0, 50.0, 6e9, k=4 / 3, fresnel_fraction=1.0)
+    >>> check = check_rule([0, 20e3, 40e3], [0, 0, 0], 50.0, 50.0, 6e9, Rule(k=4 / 3, fresnel_fraction=1.0))
     >>> check.passes, check.critical, round(float(check.surplus_m[1]), 1)
     (True, 1, 4.1)
 
@@ -119,18 +111,15 @@ def check_rule(
         gap = float(distance[np.isnan(surface)][0])
         raise MissingGroundError(f"no ground height at {gap:.0f} m from A: must be known; fill it or give more terrain")
     remaining = distance[-1] - distance
-    bulge = earth_bulge(distance, remaining, k)
+    bulge = earth_bulge(distance, remaining, rule.k)
     f1 = fresnel_radius(distance, remaining, frequency_hz)
     clearance = ray_height(distance, centre_a_m, centre_b_m) - surface - bulge
-    required = fresnel_fraction * f1 + margin_m
+    required = rule.fresnel_fraction * f1 + rule.margin_m
     surplus = clearance - required
     ratio = np.divide(clearance, f1, out=np.full_like(f1, np.nan), where=f1 > 0)
     tight = tight_places(surplus, rise_m=max(2.0, 0.2 * float(f1.max())), places=places)
     return RuleCheck(
-        k=float(k),
-        fresnel_fraction=float(fresnel_fraction),
-        margin_m=float(margin_m),
-        label=label,
+        rule=rule,
         bulge_m=frozen_array(bulge),
         f1_m=frozen_array(f1),
         clearance_m=frozen_array(clearance),

@@ -10,7 +10,7 @@ from numpy.typing import ArrayLike
 from profiler.errors import InputError
 from profiler.geometry.clearance import ROUNDING_M
 from profiler.geometry.ray import earth_bulge, fresnel_radius, ray_height
-from profiler.models import frozen_array
+from profiler.models import Rule, frozen_array
 from profiler.units import Float
 
 __all__ = ["CorridorCheck", "check_corridor", "corridor_least_ray", "corridor_offsets"]
@@ -82,10 +82,7 @@ def corridor_least_ray(
     offset_m: ArrayLike,
     surface_m: ArrayLike,
     frequency_hz: float,
-    *,
-    k: float,
-    fresnel_fraction: float,
-    margin_m: float = 0.0,
+    rule: Rule,
 ) -> Float:
     """Least height of the ray above the datum that one rule asks for because of each point across the path.
 
@@ -93,7 +90,7 @@ def corridor_least_ray(
 
     Parameters
     ----------
-    distance_m, offset_m, surface_m, frequency_hz, k, fresnel_fraction, margin_m
+    distance_m, offset_m, surface_m, frequency_hz, rule
         As in `check_corridor`.
 
     Returns
@@ -108,8 +105,8 @@ def corridor_least_ray(
 
     Examples
     --------
-    >>> corridor_least_ray([0, 5e3, 10e3], [[0.0], [0.0], [0.0]], [[10.0], [20.0], [30.0]], 6e9, k=4/3,
-    ...     fresnel_fraction=0.0).ravel().round(2).tolist()
+    >>> sight = Rule(k=4 / 3, fresnel_fraction=0.0)
+    >>> corridor_least_ray([0, 5e3, 10e3], [[0.0], [0.0], [0.0]], [[10.0], [20.0], [30.0]], 6e9, sight).ravel().round(2).tolist()
     [10.0, 21.47, 30.0]
     """
     distance = np.asarray(distance_m, dtype=float)
@@ -117,9 +114,9 @@ def corridor_least_ray(
     if offset.shape != surface.shape or offset.ndim != 2 or offset.shape[0] != distance.size:
         raise InputError(f"corridor of shapes {offset.shape} and {surface.shape}: must be (n, across) with n points")
     remaining = distance[-1] - distance
-    radius = fresnel_fraction * fresnel_radius(distance, remaining, frequency_hz)[:, None]
-    least = surface + earth_bulge(distance, remaining, k)[:, None]
-    least += np.sqrt(np.maximum(radius**2 - offset**2, 0.0)) + margin_m
+    radius = rule.fresnel_fraction * fresnel_radius(distance, remaining, frequency_hz)[:, None]
+    least = surface + earth_bulge(distance, remaining, rule.k)[:, None]
+    least += np.sqrt(np.maximum(radius**2 - offset**2, 0.0)) + rule.margin_m
     asks = (np.abs(offset) <= radius * _EDGE) & ~np.isnan(surface)
     return np.asarray(np.where(asks, least, -np.inf))
 
@@ -131,10 +128,7 @@ def check_corridor(
     centre_a_m: float,
     centre_b_m: float,
     frequency_hz: float,
-    *,
-    k: float,
-    fresnel_fraction: float,
-    margin_m: float = 0.0,
+    rule: Rule,
 ) -> CorridorCheck:
     """Hold one rule against the ground across the path, out to the edge of the required zone.
 
@@ -153,8 +147,8 @@ def check_corridor(
         Antenna centres above the datum.
     frequency_hz
         Frequency, more than 0 Hz.
-    k, fresnel_fraction, margin_m
-        The rule, as in `check_rule`.
+    rule
+        The clearance rule.
 
     Returns
     -------
@@ -170,8 +164,8 @@ def check_corridor(
     A wall 5 m beside the path, level with the ray, stands in the zone though the path itself is clear:
 
     >>> wall = [[0, 0, 0], [0, 0, 90], [0, 0, 0]]
-    >>> check = check_corridor([0, 5e3, 10e3], [[0, 0, 0], [-5, 0, 5], [0, 0, 0]], wall, 90, 90, 6e9, k=4/3,
-    ...     fresnel_fraction=1.0)
+    >>> check = check_corridor([0, 5e3, 10e3], [[0, 0, 0], [-5, 0, 5], [0, 0, 0]], wall, 90, 90, 6e9,
+    ...     Rule(k=4 / 3, fresnel_fraction=1.0))
     >>> check.passes, check.side, round(check.surplus_m, 1)
     (False, 'right', -11.5)
 
@@ -180,12 +174,10 @@ def check_corridor(
     The ellipsoid is Rec. ITU-R P.526-15 §2.1; at each distance its cross-section is a circle of radius F1 to a part in
     10⁴ and better for the paths of this trade. The bulge is that of the point of the path beside it.
     """
-    least = corridor_least_ray(
-        distance_m, offset_m, surface_m, frequency_hz, k=k, fresnel_fraction=fresnel_fraction, margin_m=margin_m
-    )
+    least = corridor_least_ray(distance_m, offset_m, surface_m, frequency_hz, rule)
     distance, offset, surface = (np.asarray(each, dtype=float) for each in (distance_m, offset_m, surface_m))
     surplus = ray_height(distance, centre_a_m, centre_b_m)[:, None] - least
-    radius = fresnel_fraction * fresnel_radius(distance, distance[-1] - distance, frequency_hz)
+    radius = rule.fresnel_fraction * fresnel_radius(distance, distance[-1] - distance, frequency_hz)
     within = np.abs(offset) <= radius[:, None] * _EDGE
     # of places equally tight up to rounding the one nearest to the path counts, so that the path is not "beside" itself
     tightest = np.where(surplus <= surplus.min() + ROUNDING_M, np.abs(offset), np.inf)

@@ -128,22 +128,9 @@ def mounting_sheet(
             raise_a_to_m=antenna_a_m if mounted_a is None else None,
             raise_b_to_m=antenna_b_m if mounted_b is None else None,
         )
-    checks = tuple(
-        check_rule(
-            distance_m,
-            surface_m,
-            ground_a_m + mounted_a,
-            ground_b_m + mounted_b,
-            frequency_hz,
-            k=rule.k,
-            fresnel_fraction=rule.fresnel_fraction,
-            margin_m=rule.margin_m,
-            label=rule.label,
-        )
-        for rule in rules
-    )
+    path = (distance_m, surface_m, ground_a_m + mounted_a, ground_b_m + mounted_b, frequency_hz)
     return MountingSheet(
         end_a=EndHeights("A", antenna_a_m, mounted_a, float(ground_a_m)),
         end_b=EndHeights("B", antenna_b_m, mounted_b, float(ground_b_m)),
-        checks=checks,
+        checks=tuple(check_rule(*path, rule) for rule in rules),
     )

@@ -113,10 +113,7 @@ def _path(study: Study) -> dict[str, Any]:
 def _rule(study: Study, result: RuleResult) -> dict[str, Any]:
     check = result.check
     return {
-        "label": check.label,
-        "k": check.k,
-        "fresnel_fraction": check.fresnel_fraction,
-        "margin_m": check.margin_m,
+        **plain(check.rule),
         "passes": result.passes,
         "line_of_sight": check.line_of_sight,
         "critical": _point(study, result, check.critical),
@@ -183,8 +180,9 @@ def _confidence(study: Study) -> dict[str, Any] | None:
         return None
     document: dict[str, Any] = plain(confidence)
     del document["chance_critical"]
-    for rule in document["rules"]:
-        del rule["surplus"], rule["surplus_with_k"]
+    for row, found in zip(document["rules"], confidence.rules, strict=True):
+        del row["surplus"], row["surplus_with_k"], row["rule"]
+        row |= {"k": found.rule.k, "fresnel_fraction": found.rule.fresnel_fraction, "margin_m": found.rule.margin_m}
     return document
 
 

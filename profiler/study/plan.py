@@ -135,9 +135,7 @@ def _least_rays(study: Study) -> np.ndarray:
             corridor.offset_m,
             corridor.surface_m,
             hop.frequency_hz,
-            k=rule.k,
-            fresnel_fraction=rule.fresnel_fraction,
-            margin_m=rule.margin_m,
+            rule,
         )
         np.maximum(row, beside.max(axis=1), out=row)
     return rays

@@ -124,19 +124,19 @@ def _angles(ground: Ground, centre_a_m: float, centre_b_m: float, k: float) -> t
 
 def _check(hop: Hop, ground: Ground, rule: Rule, centre_a_m: float, centre_b_m: float) -> RuleResult:
     """Hold one rule against the path and the ground beside it."""
-    profile, k, fraction = ground.profile, rule.k, rule.fresnel_fraction
+    profile = ground.profile
     path = (profile.distance_m, profile.surface_m, centre_a_m, centre_b_m, hop.frequency_hz)
     corridor = None
-    if ground.corridor is not None and fraction > 0:
+    if ground.corridor is not None and rule.fresnel_fraction > 0:
         beside = (profile.distance_m, ground.corridor.offset_m, ground.corridor.surface_m)
-        corridor = check_corridor(*beside, *path[2:], k=k, fresnel_fraction=fraction, margin_m=rule.margin_m)
+        corridor = check_corridor(*beside, *path[2:], rule)
     elevation_a_deg, elevation_b_deg = _angles(ground, centre_a_m, centre_b_m, rule.k)
     return RuleResult(
-        check=check_rule(*path, k=k, fresnel_fraction=fraction, margin_m=rule.margin_m, label=rule.label),
+        check=check_rule(*path, rule),
         corridor=corridor,
         elevation_a_deg=elevation_a_deg,
         elevation_b_deg=elevation_b_deg,
-        reflections=find_reflections(*path, k=k),
+        reflections=find_reflections(*path, k=rule.k),
     )
 
 
@@ -161,7 +161,7 @@ def _confidence(hop: Hop, ground: Ground, climate: ClimateUse, rules: Sequence[R
         hop.site_a.antenna_m,
         hop.site_b.antenna_m,
         hop.frequency_hz,
-        [(rule.k, rule.fresnel_fraction, rule.margin_m) for rule in hop.rules],
+        hop.rules,
         terrain_sigma_m=choice.terrain_sigma_m,
         correlation_m=choice.correlation_m,
         covariance=choice.covariance,
@@ -200,19 +200,19 @@ def _headline(hop: Hop, ground: Ground, rules: Sequence[RuleResult], outage: Out
     metre, kilometre = (FOOT_M, STATUTE_MILE_M) if feet else (1.0, 1000.0)
     short, far = ("ft", "mi") if feet else ("m", "km")
     worst = min(rules, key=least_surplus)
-    check, corridor = worst.check, worst.corridor
-    at, aside = check.critical, ""
+    rule, corridor = worst.check.rule, worst.corridor
+    at, aside = worst.check.critical, ""
     if corridor is not None and corridor.offset_m != 0.0:
         at = corridor.distance_index
         aside = f", {abs(corridor.offset_m) / metre:.0f} {short} {corridor.side} of the path"
     surplus = least_surplus(worst) / metre
     clearance = f"clears, {surplus:.1f}" if surplus >= 0 else f"does not clear, {-surplus:.1f}"
-    rule = f"{check.fresnel_fraction:g} F1" + (f" + {check.margin_m / metre:.1f} {short}" if check.margin_m else "")
+    asked = f"{rule.fresnel_fraction:g} F1" + (f" + {rule.margin_m / metre:.1f} {short}" if rule.margin_m else "")
     place = f"{ground.profile.distance_m[at] / kilometre:.2f} {far} from {hop.site_a.name}{aside}"
     judged = {True: "meets", False: "misses", None: "cannot be held against"}[outage.meets]
     objective = f"; {judged} the availability objective" if hop.has_objective else ""
     sense = "to spare" if surplus >= 0 else "short"
-    return f"{clearance} {short} {sense} {place} (rule {rule} at k = {check.k:.2f}){objective}"
+    return f"{clearance} {short} {sense} {place} (rule {asked} at k = {rule.k:.2f}){objective}"
 
 
 def _assumptions(hop: Hop, ground: Ground, air: Air, found: Link) -> tuple[str, ...]:
