@@ -207,9 +207,9 @@ def _beside(study: Study, result: RuleResult, scale: Scale) -> str:
         return f"Beside the path, {width}{seen}: nothing rises higher into the zone than the path itself."
     where = scale.distance(study.profile.distance_m[corridor.distance_index])
     return (
-        f"Beside the path, k = {result.check.rule.k:.3f}, {width}{seen}: tightest {scale.height(abs(corridor.offset_m))}"
-        f" {scale.height_unit} to the {corridor.side} at {where} {scale.distance_unit}, surplus"
-        f" {scale.height(corridor.surplus_m)} {scale.height_unit}."
+        f"Beside the path, k = {result.check.rule.k:.3f}, {width}{seen}: tightest"
+        f" {scale.height(abs(corridor.offset_m))} {scale.height_unit} to the {corridor.side}"
+        f" at {where} {scale.distance_unit}, surplus {scale.height(corridor.surplus_m)} {scale.height_unit}."
     )
 
 

@@ -106,7 +106,8 @@ def corridor_least_ray(
     Examples
     --------
     >>> sight = Rule(k=4 / 3, fresnel_fraction=0.0)
-    >>> corridor_least_ray([0, 5e3, 10e3], [[0.0], [0.0], [0.0]], [[10.0], [20.0], [30.0]], 6e9, sight).ravel().round(2).tolist()
+    >>> least = corridor_least_ray([0, 5e3, 10e3], [[0.0]] * 3, [[10.0], [20.0], [30.0]], 6e9, sight)
+    >>> least.ravel().round(2).tolist()
     [10.0, 21.47, 30.0]
     """
     distance = np.asarray(distance_m, dtype=float)
