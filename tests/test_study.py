@@ -498,10 +498,15 @@ def test_a_wall_beside_the_path_fails_the_rule_and_names_the_side(land, side, na
     assert not result.passes
     assert corridor.side == name
     assert f"m {name} of the path" in study.verdict.headline
-    # by hand at the offset found: ray - bulge - sqrt(r² - y²) - the wall, whose flank rises over one cell
+    # by hand: the wall's flank rises over one cell; between the points across it is taken as straight
+    row = corridor.distance_index
+    columns_m, surface_m = study.corridor.offset_m[row], study.corridor.surface_m[row]
+    flanks_m = 60.0 * np.clip(side * columns_m / CELL_EW_M, 0.0, 1.0)
+    np.testing.assert_allclose(surface_m - GROUND_M, flanks_m, atol=0.2)  # CELL_EW_M is rounded
+    # and at the offset found: ray - bulge - sqrt(r² - y²) - that flank
     d1, y = study.profile.distance_m[corridor.distance_index], abs(corridor.offset_m)
     d2 = study.line.distance_m - d1
-    flank_m = 60.0 * min(1.0, y / CELL_EW_M)
+    flank_m = float(np.interp(corridor.offset_m, columns_m, flanks_m))
     radius_m = 0.6 * math.sqrt(299792458 / 0.9e9 * d1 * d2 / (d1 + d2))
     surplus_m = 45 - d1 * d2 / (2 * 4 / 3 * 6371e3) - math.sqrt(radius_m**2 - y**2) - flank_m
     assert corridor.surplus_m == pytest.approx(surplus_m, abs=0.2)  # CELL_EW_M is rounded

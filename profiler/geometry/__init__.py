@@ -5,24 +5,33 @@ above the ground and its cover.
 """
 
 from profiler.geometry.clearance import ROUNDING_M, RuleCheck, check_rule, tight_places
-from profiler.geometry.corridor import CorridorCheck, check_corridor, corridor_least_ray, corridor_offsets
+from profiler.geometry.corridor import (
+    CorridorCheck,
+    CorridorNeed,
+    check_corridor,
+    corridor_need,
+    corridor_offsets,
+    side_of,
+)
 from profiler.geometry.ray import earth_bulge, elevation_angle, fresnel_radius, ray_height
 from profiler.geometry.reflection import Reflection, find_reflections, smooth_specular_distance
 
 __all__ = [
     "ROUNDING_M",
     "CorridorCheck",
+    "CorridorNeed",
     "Reflection",
     "RuleCheck",
     "check_corridor",
     "check_rule",
-    "corridor_least_ray",
+    "corridor_need",
     "corridor_offsets",
     "earth_bulge",
     "elevation_angle",
     "find_reflections",
     "fresnel_radius",
     "ray_height",
+    "side_of",
     "smooth_specular_distance",
     "tight_places",
 ]

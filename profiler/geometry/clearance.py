@@ -7,7 +7,7 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import ArrayLike
 
-from profiler.errors import InputError, MissingGroundError
+from profiler.checks import check_profile
 from profiler.geometry.ray import earth_bulge, fresnel_radius, ray_height
 from profiler.models import Rule, frozen_array
 from profiler.units import Float
@@ -56,7 +56,7 @@ def check_rule(
     frequency_hz: float,
     rule: Rule,
     *,
-    places: int = 5,
+    places: int = 8,
 ) -> RuleCheck:
     """Clearance of one profile under one rule, and where it is least.
 
@@ -77,7 +77,8 @@ def check_rule(
     rule
         The clearance rule, carried into the result.
     places
-        How many separate tight places to look for, 1 or more.
+        How many separate tight places to look for, 1 or more; those with more than twice the widest F1 to spare beyond
+        the tightest are left out.
 
     Returns
     -------
@@ -102,14 +103,7 @@ def check_rule(
     -----
     The terms follow the path clearance criteria of Rec. ITU-R P.530-18 §2.2.
     """
-    distance, surface = frozen_array(distance_m), frozen_array(surface_m)
-    if distance.ndim != 1 or distance.shape != surface.shape or distance.size < 2:
-        raise InputError(f"profile of shapes {distance.shape} and {surface.shape}: must be two equal rows of 2 or more")
-    if distance[0] != 0 or np.any(np.diff(distance) <= 0):
-        raise InputError("distance_m: must ascend from 0 at site A, each point further than the one before")
-    if np.isnan(surface).any():
-        gap = float(distance[np.isnan(surface)][0])
-        raise MissingGroundError(f"no ground height at {gap:.0f} m from A: must be known; fill it or give more terrain")
+    distance, surface = check_profile(distance_m, surface_m)
     remaining = distance[-1] - distance
     bulge = earth_bulge(distance, remaining, rule.k)
     f1 = fresnel_radius(distance, remaining, frequency_hz)
@@ -117,7 +111,8 @@ def check_rule(
     required = rule.fresnel_fraction * f1 + rule.margin_m
     surplus = clearance - required
     ratio = np.divide(clearance, f1, out=np.full_like(f1, np.nan), where=f1 > 0)
-    tight = tight_places(surplus, rise_m=max(2.0, 0.2 * float(f1.max())), places=places)
+    widest = float(f1.max())
+    tight = tight_places(surplus, rise_m=max(2.0, 0.2 * widest), within_m=2.0 * widest, places=places)
     return RuleCheck(
         rule=rule,
         bulge_m=frozen_array(bulge),
@@ -131,11 +126,13 @@ def check_rule(
     )
 
 
-def tight_places(surplus_m: ArrayLike, *, rise_m: float, places: int = 5) -> tuple[int, ...]:
+def tight_places(surplus_m: ArrayLike, *, rise_m: float, within_m: float = np.inf, places: int = 8) -> tuple[int, ...]:
     """Find the separate tight places of a profile, as indices, least surplus first.
 
-    Two minima are separate obstacles when the surplus rises by at least ``rise_m`` between them; a bump on the flank of
-    a crest is part of that crest. The place of least surplus always comes first.
+    Two minima are separate obstacles when the ground between them clears though both are short, or when the surplus
+    rises between them by at least ``rise_m`` and a fifth of what the shallower one is short; a bump on the flank of a
+    crest is part of that crest. The tightest place always comes first. The ends are no obstacles: the antenna stands
+    there; they count only where the tightest place is one.
 
     Parameters
     ----------
@@ -143,6 +140,8 @@ def tight_places(surplus_m: ArrayLike, *, rise_m: float, places: int = 5) -> tup
         Surplus along the path, (n,), no gaps.
     rise_m
         Least rise of the surplus above the shallower of two places that makes them two, metres.
+    within_m
+        A place counts if its surplus is at most this much above the least surplus, or above 0 if that is short, metres.
     places
         The most places to return, 1 or more.
 
@@ -154,26 +153,29 @@ def tight_places(surplus_m: ArrayLike, *, rise_m: float, places: int = 5) -> tup
     --------
     >>> tight_places([9, 1, 2, 1.5, 9, 4, 9], rise_m=2.0)
     (1, 5)
+    >>> tight_places([9, -50, -45, -48, 1, -1, 9], rise_m=2.0)
+    (1, 5)
     """
     surplus = np.asarray(surplus_m, dtype=float)
-    padded = np.concatenate(([np.inf], surplus, [np.inf]))
-    minima = np.flatnonzero((surplus <= padded[:-2]) & (surplus < padded[2:]))
     chosen = [int(np.argmin(surplus))]
+    most = max(float(surplus[chosen[0]]), 0.0) + within_m
+    minima = 1 + np.flatnonzero((surplus[1:-1] <= surplus[:-2]) & (surplus[1:-1] < surplus[2:]))
     for index in minima[np.argsort(surplus[minima], kind="stable")]:
-        if len(chosen) >= places:
+        if len(chosen) >= places or surplus[index] > most:
             break
-        if index != chosen[0] and _rise_to_lower(surplus, int(index), chosen) >= rise_m:
+        if index != chosen[0] and _is_separate(surplus, int(index), chosen, rise_m):
             chosen.append(int(index))
     return tuple(chosen)
 
 
-def _rise_to_lower(surplus: Float, index: int, chosen: list[int]) -> float:
-    """How far the surplus must rise on the way from a minimum to a lower or chosen point, on the easier side."""
+def _is_separate(surplus: Float, index: int, chosen: list[int], rise_m: float) -> bool:
+    """Whether the way from a minimum to the nearest lower or chosen point, on either side, rises enough."""
     here = surplus[index]
     deeper = surplus < here
     deeper[chosen] = True
     lower = np.flatnonzero(deeper)
     before, after = lower[lower < index], lower[lower > index]
-    rises = [float(surplus[before[-1] : index].max() - here)] if before.size else []
-    rises += [float(surplus[index : after[0]].max() - here)] if after.size else []
-    return min(rises)
+    crests = [surplus[before[-1] : index].max()] if before.size else []
+    crests += [surplus[index : after[0]].max()] if after.size else []
+    needed = max(rise_m, 0.2 * max(-here, 0.0))
+    return all(crest - here >= needed or here < 0.0 <= crest for crest in crests)

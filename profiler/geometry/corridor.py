@@ -7,24 +7,39 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import ArrayLike
 
+from profiler.checks import positive
 from profiler.errors import InputError
 from profiler.geometry.clearance import ROUNDING_M
 from profiler.geometry.ray import earth_bulge, fresnel_radius, ray_height
 from profiler.models import Rule, frozen_array
 from profiler.units import Float
 
-__all__ = ["CorridorCheck", "check_corridor", "corridor_least_ray", "corridor_offsets"]
+__all__ = ["CorridorCheck", "CorridorNeed", "check_corridor", "corridor_need", "corridor_offsets", "side_of"]
 
 _EDGE = 1.0 + 1e-9  # a point on the edge of the zone counts, whatever the last digit of its offset
 
 
 @dataclass(frozen=True, slots=True, eq=False)
-class CorridorCheck:
-    """The place beside the path where the required zone is tightest.
+class CorridorNeed:
+    """What the ground across the path asks of the ray under one rule, at each distance; arrays (n,).
 
-    ``offset_m`` is across the path, positive to the right of A→B. ``surplus_m`` is the least surplus over the whole
-    width at the critical point; ``least_surplus_m`` (n,) is the same at every distance. ``missing_share`` is the share
-    of points beside the path that had no ground height and could not be checked.
+    ``least_ray_m`` is the least height of the ray above the datum, asked for at ``offset_m`` (positive to the right of
+    A→B, 0 on the path) by a surface of ``surface_m``. ``missing_share`` is the share of the points in the zone that had
+    no height.
+    """
+
+    least_ray_m: Float
+    offset_m: Float
+    surface_m: Float
+    missing_share: float
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class CorridorCheck:
+    """The place in the whole width of the required zone where it is tightest.
+
+    ``distance_index`` and ``offset_m`` say where (positive to the right of A→B), ``required_m`` what the rule asks
+    there, above the surface. ``least_surplus_m`` (n,) is the least surplus over the width at every distance.
     """
 
     half_width_m: float
@@ -32,6 +47,7 @@ class CorridorCheck:
     distance_index: int
     offset_m: float
     surface_m: float
+    required_m: float
     surplus_m: float
     least_surplus_m: Float
     missing_share: float
@@ -44,7 +60,18 @@ class CorridorCheck:
     @property
     def side(self) -> str:
         """Which side of the path A→B the tightest place lies on."""
-        return "centre" if self.offset_m == 0 else "right" if self.offset_m > 0 else "left"
+        return side_of(self.offset_m)
+
+
+def side_of(offset_m: float) -> str:
+    """Name the side of the path A→B of an offset.
+
+    Examples
+    --------
+    >>> side_of(-3.0), side_of(0.0)
+    ('left', 'centre')
+    """
+    return "centre" if offset_m == 0 else "right" if offset_m > 0 else "left"
 
 
 def corridor_offsets(distance_m: ArrayLike, frequency_hz: float, fresnel_fraction: float, cell_m: float) -> Float:
@@ -69,34 +96,39 @@ def corridor_offsets(distance_m: ArrayLike, frequency_hz: float, fresnel_fractio
     >>> corridor_offsets([0, 20e3, 40e3], 6e9, 1.0, 15.0)[1].round(1).tolist()
     [-22.4, -11.2, 0.0, 11.2, 22.4]
     """
-    if not cell_m > 0:
-        raise InputError(f"cell_m = {cell_m}: must be more than 0 m")
+    cell = positive("cell_m", cell_m, "m", infinite=True)
     distance = np.asarray(distance_m, dtype=float)
     radius = fresnel_fraction * fresnel_radius(distance, distance[-1] - distance, frequency_hz)
-    each_side = max(1, int(np.ceil(float(radius.max()) / cell_m)))
+    each_side = max(1, int(np.ceil(float(radius.max()) / cell)))
     return np.asarray(radius[:, None] * (np.arange(-each_side, each_side + 1) / each_side))
 
 
-def corridor_least_ray(
-    distance_m: ArrayLike,
-    offset_m: ArrayLike,
-    surface_m: ArrayLike,
-    frequency_hz: float,
-    rule: Rule,
-) -> Float:
-    """Least height of the ray above the datum that one rule asks for because of each point across the path.
+def corridor_need(
+    distance_m: ArrayLike, offset_m: ArrayLike, surface_m: ArrayLike, frequency_hz: float, rule: Rule
+) -> CorridorNeed:
+    """Find what the ground across the path asks of the ray: the greatest of surface + bulge + sqrt(r² - y²) + margin.
 
-    surface + bulge + sqrt(r² - y²) + margin, with the zone's radius r = fraction·F1 and the offset y.
+    r is the zone's radius, fraction·F1, and y the offset. Between two neighbouring points across, the surface is taken
+    as straight, and the greatest value there, at y = r·s/sqrt(1 + s²) for the slope s, counts too: on a side slope it
+    lies between the points, and leaving it out would pass ground that stands in the zone.
 
     Parameters
     ----------
-    distance_m, offset_m, surface_m, frequency_hz, rule
-        As in `check_corridor`.
+    distance_m
+        Distances from A, (n,), ascending from 0; the last is B.
+    offset_m
+        Offsets across the path, (n, across), ascending in each row, positive to the right of A→B.
+    surface_m
+        Ground plus cover at those points, (n, across); NaN where unknown (counted, and left out).
+    frequency_hz
+        Frequency, more than 0 Hz.
+    rule
+        The clearance rule.
 
     Returns
     -------
-    ndarray
-        Metres, (n, across); -inf where the point is unknown or lies beyond the zone and so asks for nothing.
+    CorridorNeed
+        Of places that ask for the same the one nearest to the path; -inf where nothing is known.
 
     Raises
     ------
@@ -105,10 +137,13 @@ def corridor_least_ray(
 
     Examples
     --------
-    >>> sight = Rule(k=4 / 3, fresnel_fraction=0.0)
-    >>> least = corridor_least_ray([0, 5e3, 10e3], [[0.0]] * 3, [[10.0], [20.0], [30.0]], 6e9, sight)
-    >>> least.ravel().round(2).tolist()
-    [10.0, 21.47, 30.0]
+    Ground that falls to the left by 1 in 1, under a zone of radius 1 m, asks for √2 m over the path, not 1 m:
+
+    >>> frequency_hz = 299_792_458.0 * 250.0  # F1 is 1 m at the middle of 1 km
+    >>> rows = [[0, 0, 0], [-1, 0, 1], [0, 0, 0]]
+    >>> need = corridor_need([0, 500, 1000], rows, rows, frequency_hz, Rule(k=1e9, fresnel_fraction=1.0))
+    >>> round(float(need.least_ray_m[1]), 3), round(float(need.offset_m[1]), 3)
+    (1.414, 0.707)
     """
     distance = np.asarray(distance_m, dtype=float)
     offset, surface = np.asarray(offset_m, dtype=float), np.asarray(surface_m, dtype=float)
@@ -116,10 +151,31 @@ def corridor_least_ray(
         raise InputError(f"corridor of shapes {offset.shape} and {surface.shape}: must be (n, across) with n points")
     remaining = distance[-1] - distance
     radius = rule.fresnel_fraction * fresnel_radius(distance, remaining, frequency_hz)[:, None]
-    least = surface + earth_bulge(distance, remaining, rule.k)[:, None]
-    least += np.sqrt(np.maximum(radius**2 - offset**2, 0.0)) + rule.margin_m
-    asks = (np.abs(offset) <= radius * _EDGE) & ~np.isnan(surface)
-    return np.asarray(np.where(asks, least, -np.inf))
+    within = np.abs(offset) <= radius * _EDGE
+    between, height = _crests(offset, surface, radius)
+    offsets, surfaces = np.hstack([offset, between]), np.hstack([surface, height])
+    rise = surfaces + np.sqrt(np.maximum(radius**2 - offsets**2, 0.0))
+    counts = np.hstack([within, np.ones_like(between, dtype=bool)]) & ~np.isnan(rise)
+    rise = np.where(counts, rise, -np.inf)
+    highest = rise.max(axis=1, keepdims=True)
+    # of places that ask for the same up to rounding the nearest one counts, so that the path is not "beside" itself
+    nearest = np.argmin(np.where(counts & (rise >= highest - ROUNDING_M), np.abs(offsets), np.inf), axis=1)[:, None]
+    return CorridorNeed(
+        least_ray_m=frozen_array(highest[:, 0] + earth_bulge(distance, remaining, rule.k) + rule.margin_m),
+        offset_m=frozen_array(np.take_along_axis(offsets, nearest, axis=1)[:, 0]),
+        surface_m=frozen_array(np.take_along_axis(surfaces, nearest, axis=1)[:, 0]),
+        missing_share=float(np.isnan(surface[within]).mean()),
+    )
+
+
+def _crests(offset: Float, surface: Float, radius: Float) -> tuple[Float, Float]:
+    """Offsets and surface of the greatest surface + circle strictly between neighbouring points; NaN where none is."""
+    step = np.diff(offset, axis=1)
+    slope = np.divide(np.diff(surface, axis=1), step, out=np.full_like(step, np.nan), where=step > 0)
+    crest = radius * slope / np.sqrt(1.0 + slope**2)
+    inside = (crest > offset[:, :-1]) & (crest < offset[:, 1:])
+    crest = np.where(inside, crest, np.nan)
+    return crest, surface[:, :-1] + slope * (crest - offset[:, :-1])
 
 
 def check_corridor(
@@ -138,18 +194,10 @@ def check_corridor(
 
     Parameters
     ----------
-    distance_m
-        Distances from A, (n,).
-    offset_m
-        Offsets across the path, (n, across), positive to the right of A→B.
-    surface_m
-        Ground plus cover at those points, (n, across); NaN where unknown (counted, and left out).
+    distance_m, offset_m, surface_m, frequency_hz, rule
+        As in `corridor_need`.
     centre_a_m, centre_b_m
         Antenna centres above the datum.
-    frequency_hz
-        Frequency, more than 0 Hz.
-    rule
-        The clearance rule.
 
     Returns
     -------
@@ -175,21 +223,20 @@ def check_corridor(
     The ellipsoid is Rec. ITU-R P.526-15 §2.1; at each distance its cross-section is a circle of radius F1 to a part in
     10⁴ and better for the paths of this trade. The bulge is that of the point of the path beside it.
     """
-    least = corridor_least_ray(distance_m, offset_m, surface_m, frequency_hz, rule)
-    distance, offset, surface = (np.asarray(each, dtype=float) for each in (distance_m, offset_m, surface_m))
-    surplus = ray_height(distance, centre_a_m, centre_b_m)[:, None] - least
+    need = corridor_need(distance_m, offset_m, surface_m, frequency_hz, rule)
+    distance = np.asarray(distance_m, dtype=float)
+    surplus = ray_height(distance, centre_a_m, centre_b_m) - need.least_ray_m
     radius = rule.fresnel_fraction * fresnel_radius(distance, distance[-1] - distance, frequency_hz)
-    within = np.abs(offset) <= radius[:, None] * _EDGE
-    # of places equally tight up to rounding the one nearest to the path counts, so that the path is not "beside" itself
-    tightest = np.where(surplus <= surplus.min() + ROUNDING_M, np.abs(offset), np.inf)
-    where = np.unravel_index(int(np.argmin(tightest)), surplus.shape)
+    at = int(np.argmin(surplus))
+    offset, half_width = float(need.offset_m[at]), float(radius[at])
     return CorridorCheck(
         half_width_m=float(radius.max()),
-        across=int(offset.shape[1]),
-        distance_index=int(where[0]),
-        offset_m=float(offset[where]),
-        surface_m=float(surface[where]),
-        surplus_m=float(surplus[where]),
-        least_surplus_m=frozen_array(surplus.min(axis=1)),
-        missing_share=float(np.isnan(surface[within]).mean()),
+        across=int(np.asarray(offset_m).shape[1]),
+        distance_index=at,
+        offset_m=offset,
+        surface_m=float(need.surface_m[at]),
+        required_m=float(np.sqrt(max(half_width**2 - offset**2, 0.0)) + rule.margin_m),
+        surplus_m=float(surplus[at]),
+        least_surplus_m=frozen_array(surplus),
+        missing_share=need.missing_share,
     )

@@ -5,6 +5,7 @@ from __future__ import annotations
 import numpy as np
 from numpy.typing import ArrayLike
 
+from profiler.checks import not_negative, positive, within
 from profiler.errors import InputError
 from profiler.units import MEAN_EARTH_RADIUS_M, Float, wavelength
 
@@ -17,10 +18,8 @@ __all__ = [
 
 
 def _lengths(d1_m: ArrayLike, d2_m: ArrayLike) -> tuple[Float, Float]:
-    d1, d2 = np.asarray(d1_m, dtype=float), np.asarray(d2_m, dtype=float)
-    if np.any(d1 < 0) or np.any(d2 < 0):
-        raise InputError("d1_m and d2_m: must be 0 m or more; a point outside the path has no bulge or Fresnel radius")
-    return d1, d2
+    """Distances to both ends; a point outside the path has no bulge and no Fresnel radius."""
+    return not_negative("d1_m", d1_m, "m"), not_negative("d2_m", d2_m, "m")
 
 
 def earth_bulge(d1_m: ArrayLike, d2_m: ArrayLike, k: ArrayLike) -> Float:
@@ -31,7 +30,8 @@ def earth_bulge(d1_m: ArrayLike, d2_m: ArrayLike, k: ArrayLike) -> Float:
     d1_m, d2_m
         Distances from the point to the two ends, 0 m or more; they broadcast.
     k
-        Effective-earth-radius factor, more than 0; infinity is the flat earth.
+        Effective-earth-radius factor, more than 0 (a negative one, past super-refraction, has no bulge); infinity is
+        the flat earth.
 
     Returns
     -------
@@ -56,10 +56,7 @@ def earth_bulge(d1_m: ArrayLike, d2_m: ArrayLike, k: ArrayLike) -> Float:
     and m it reads d1·d2/(12.742·k). Source: Rec. ITU-R P.530-18 §2.2 takes the effective earth; formula from memory.
     """
     d1, d2 = _lengths(d1_m, d2_m)
-    factor = np.asarray(k, dtype=float)
-    if np.any(~(factor > 0)):
-        raise InputError(f"k = {k!r}: must be more than 0; a negative k (super-refraction past the earth) has no bulge")
-    return np.asarray(d1 * d2 / (2.0 * factor * MEAN_EARTH_RADIUS_M))
+    return np.asarray(d1 * d2 / (2.0 * positive("k", k, infinite=True) * MEAN_EARTH_RADIUS_M))
 
 
 def fresnel_radius(d1_m: ArrayLike, d2_m: ArrayLike, frequency_hz: ArrayLike, zone: ArrayLike = 1) -> Float:
@@ -98,12 +95,9 @@ def fresnel_radius(d1_m: ArrayLike, d2_m: ArrayLike, frequency_hz: ArrayLike, zo
     d1, d2 = _lengths(d1_m, d2_m)
     if np.any(d1 + d2 <= 0):
         raise InputError("d1_m + d2_m = 0: the path has no length; give two different sites")
-    if np.any(~(np.asarray(frequency_hz, dtype=float) > 0)):
-        raise InputError(f"frequency_hz = {frequency_hz!r}: must be more than 0 Hz")
-    number = np.asarray(zone, dtype=float)
-    if np.any(~(number >= 1)):
-        raise InputError(f"zone = {zone!r}: must be 1 or more")
-    return np.asarray(np.sqrt(number * wavelength(frequency_hz) * d1 * d2 / (d1 + d2)))
+    number = within("zone", zone, 1, np.inf, "1 or more")
+    lam = wavelength(positive("frequency_hz", frequency_hz, "Hz"))
+    return np.asarray(np.sqrt(number * lam * d1 * d2 / (d1 + d2)))
 
 
 def ray_height(distance_m: ArrayLike, centre_a_m: ArrayLike, centre_b_m: ArrayLike) -> Float:

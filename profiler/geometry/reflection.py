@@ -156,8 +156,8 @@ def find_reflections(
             Reflection(
                 distance_m=where,
                 grazing_deg=float(np.degrees(grazing)),
-                screened_a=_screened(distance, bulged, 0.0, centre_a_m, where, height, 0.5 * length),
-                screened_b=_screened(distance, bulged, float(distance[-1]), centre_b_m, where, height, 0.5 * length),
+                screened_a=_screened(distance, bulged - roughness, 0.0, centre_a_m, where, height),
+                screened_b=_screened(distance, bulged - roughness, float(distance[-1]), centre_b_m, where, height),
                 delay_s=float(_excess_m(distance[-1], over_a[i], over_b[i]) / SPEED_OF_LIGHT_M_S),
                 roughness_m=roughness,
                 rough=bool(roughness > float(wavelength(frequency_hz)) / (8.0 * np.sin(grazing))),
@@ -194,10 +194,8 @@ def _facets(distance: Float, bulged: Float, length: float) -> tuple[Float, Float
     return middle, slope, np.sqrt(residual)
 
 
-def _screened(
-    distance: Float, bulged: Float, from_m: float, centre: float, to_m: float, height: float, facet: float
-) -> bool:
-    """Whether ground before the facet stands above the line from an antenna to the place on it."""
-    between = ((distance - from_m) * (distance - to_m) < 0) & (np.abs(distance - to_m) > facet)
+def _screened(distance: Float, ground: Float, from_m: float, centre: float, to_m: float, height: float) -> bool:
+    """Whether ground stands above the line from an antenna to a place on it; the place's own roughness is taken off."""
+    between = (distance - from_m) * (distance - to_m) < 0
     line = centre + (height - centre) * (distance[between] - from_m) / (to_m - from_m)
-    return bool(np.any(bulged[between] > line))
+    return bool(np.any(ground[between] > line))

@@ -10,7 +10,7 @@ from typing import Any
 import numpy as np
 
 from profiler.diffraction import diffract
-from profiler.geometry import corridor_least_ray
+from profiler.geometry import corridor_need
 from profiler.heights import (
     Choice,
     ClearingRegion,
@@ -130,14 +130,8 @@ def _least_rays(study: Study) -> np.ndarray:
     if corridor is None:
         return rays
     for row, rule in zip(rays, hop.rules, strict=True):
-        beside = corridor_least_ray(
-            profile.distance_m,
-            corridor.offset_m,
-            corridor.surface_m,
-            hop.frequency_hz,
-            rule,
-        )
-        np.maximum(row, beside.max(axis=1), out=row)
+        beside = (profile.distance_m, corridor.offset_m, corridor.surface_m, hop.frequency_hz)
+        np.maximum(row, corridor_need(*beside, rule).least_ray_m, out=row)
     return rays
 
 
