@@ -11,6 +11,7 @@ RANKS = {
     "errors": 0,
     "units": 0,
     "models": 1,
+    "checks": 1,
     "terrain_error": 1,
     "normal": 1,
     "terrain": 2,

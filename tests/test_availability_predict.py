@@ -361,7 +361,7 @@ def test_facts_and_margins_that_are_refused():
         replace(PATH, centre_a_m=np.nan)
     with pytest.raises(InputError, match="latitude = 91: must be -90 to 90 degrees"):
         replace(PATH, latitude=91)
-    with pytest.raises(InputError, match="fade_margin_db = nan: must be finite dB"):
+    with pytest.raises(InputError, match="fade_margin_db = nan: must be a finite number of dB"):
         predict(full_model(), np.nan)
     with pytest.raises(InputError, match="margin_db = -1: must be finite and 0 dB or more"):
         outage_curve(full_model(), -1.0)

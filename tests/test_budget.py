@@ -73,7 +73,7 @@ def test_free_space_broadcasts():
     ("distance", "frequency", "named"), [(0, 1e9, "distance"), (-1, 1e9, "distance"), (1, 0, "freq")]
 )
 def test_free_space_refuses_nothing_and_less(distance, frequency, named):
-    with pytest.raises(InputError, match=f"{named}.*must be more than 0"):
+    with pytest.raises(InputError, match=f"{named}.*must be finite and more than 0"):
         free_space_loss(distance, frequency)
 
 
@@ -104,7 +104,11 @@ def test_far_field_of_a_dish_is_a_textbook_value():
 
 @pytest.mark.parametrize(
     ("arguments", "message"),
-    [((0.0, 0.5, 1e9), "dish diameter = 0.0 m"), ((1.0, 55, 1e9), "efficiency = 55"), ((1.0, 0.5, -1.0), "frequency")],
+    [
+        ((0.0, 0.5, 1e9), "diameter_m = 0: must be finite and more than 0 m"),
+        ((1.0, 55, 1e9), "efficiency = 55"),
+        ((1.0, 0.5, -1.0), "frequency"),
+    ],
 )
 def test_dish_gain_refuses_impossible_values(arguments, message):
     with pytest.raises(InputError, match=message):
@@ -112,7 +116,7 @@ def test_dish_gain_refuses_impossible_values(arguments, message):
 
 
 def test_dish_diameter_refuses_an_infinite_gain():
-    with pytest.raises(InputError, match="gain = inf dBi: must be a finite number"):
+    with pytest.raises(InputError, match="gain_dbi = inf: must be a finite number of dBi"):
         dish_diameter(math.inf, 0.5, 1e9)
 
 
@@ -222,7 +226,7 @@ def test_near_field_is_a_warning_that_names_its_distance():
 
 @pytest.mark.parametrize("loss", [math.nan, math.inf])
 def test_a_loss_must_be_a_number(loss):
-    with pytest.raises(InputError, match=r"diffraction loss = .* dB: must be a finite number"):
+    with pytest.raises(InputError, match=r"diffraction loss = .*: must be a finite number of dB"):
         link_budget(RADIO, **{**PATH, "diffraction_db": loss})
 
 
@@ -364,7 +368,7 @@ def test_a_large_answer_is_warned_of_by_its_own_near_field():
 
 
 def test_a_wanted_margin_must_be_a_number():
-    with pytest.raises(InputError, match="fade margin = nan dB: must be a finite number"):
+    with pytest.raises(InputError, match="fade_margin_db = nan: must be a finite number of dB"):
         least_power(RADIO, **PATH, fade_margin_db=math.nan)
 
 

@@ -521,11 +521,11 @@ def test_method_states_what_was_assumed():
 @pytest.mark.parametrize(
     ("doubt", "message"),
     [
-        ({"terrain_sigma_m": -1.0}, "terrain_sigma_m = -1.0: must be"),
-        ({"terrain_sigma_m": [1.0, -2.0, 1.0]}, "terrain_sigma_m = -2.0: must be"),
+        ({"terrain_sigma_m": -1.0}, "terrain_sigma_m = -1: must be"),
+        ({"terrain_sigma_m": [1.0, -2.0, 1.0]}, "terrain_sigma_m = -2: must be"),
         ({"terrain_sigma_m": np.nan}, "terrain_sigma_m = nan: must be"),
-        ({"terrain_sigma_m": np.inf}, "terrain_sigma_m = inf: must be a finite number"),
-        ({"correlation_m": -5.0}, "correlation_m = -5.0: must be 0 or more"),
+        ({"terrain_sigma_m": np.inf}, "terrain_sigma_m = inf: must be finite and 0 m or more"),
+        ({"correlation_m": -5.0}, "correlation_m = -5: must be 0 m or more"),
         ({"cover_correlation_m": np.nan}, "cover_correlation_m = nan"),
         ({"site_sigma_b_m": -0.1}, "site_sigma_b_m = -0.1"),
         ({"cover_relative_sigma": -0.1}, "cover_relative_sigma = -0.1"),
@@ -552,7 +552,7 @@ def test_rows_must_fit_and_have_no_gaps():
         assess([0, 1e3], [0, 0], [0], 30, 30, 6e9, [RULE], **settings)
     with pytest.raises(InputError, match=r"terrain_sigma_m of shape .* one for each of 2 points"):
         assess([0, 1e3], [0, 0], [0, 0], 30, 30, 6e9, [RULE], **{**settings, "terrain_sigma_m": [1, 2, 3]})
-    with pytest.raises(MissingGroundError, match="no ground height at 500 m"):
+    with pytest.raises(MissingGroundError, match="no height at 500 m"):
         assess([0, 500, 1e3], [0, np.nan, 0], [0, 0, 0], 30, 30, 6e9, [RULE], **settings)
 
 

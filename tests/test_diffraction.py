@@ -429,9 +429,9 @@ BAD = [
     ({"distance_m": [0, 5e3, math.inf]}, "must be finite and rise"),
     ({"centre_a_m": 99.0}, "centre_a_m = 99: must be a number not below the surface at site A, 100 m"),
     ({"centre_b_m": math.nan}, "centre_b_m = nan: must be a number"),
-    ({"frequency_hz": 0.0}, "frequency_hz = 0: must be above 0 Hz"),
-    ({"frequency_hz": math.inf}, "frequency_hz = inf: must be above 0 Hz"),
-    ({"effective_radius_m": -8500e3}, r"effective_radius_m = -8.5e\+06: must be above 0 m"),
+    ({"frequency_hz": 0.0}, "frequency_hz = 0: must be finite and more than 0 Hz"),
+    ({"frequency_hz": math.inf}, "frequency_hz = inf: must be finite and more than 0 Hz"),
+    ({"effective_radius_m": -8500e3}, r"effective_radius_m = -8.5e\+06: must be more than 0 m"),
     ({"centre_a_m": [130.0, 130.0], "frequency_hz": [6e9] * 3}, "do not fit"),
     ({"height_m": np.zeros((0, 3))}, "no hops"),
 ]
@@ -466,7 +466,7 @@ def test_a_missing_nu_stays_missing():
 
 
 def test_an_edge_at_an_end_has_no_parameter():
-    with pytest.raises(InputError, match="d1_m = 0: must be above 0 m"):
+    with pytest.raises(InputError, match="d1_m = 0: must be finite and more than 0 m"):
         fresnel_parameter(1.0, 0.0, 10.0, 6e9)
 
 

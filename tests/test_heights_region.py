@@ -130,16 +130,16 @@ def test_stretches_follow_obstacles_and_rules():
     x = np.array([0.0, 1e3, 20e3, 40e3])
     ray = least_ray(x, [0.0, 80.0, 30.0, 0.0], 6e9, [Rule(4 / 3, 1.0), Rule(math.inf, 0.0, 15.0)])
     region = clearing_region(x, ray, 0.0, 0.0)
-    rows = [(stretch.distance_m, stretch.rule) for stretch in frontier_stretches(region)]
+    rows = [(stretch.distance_m, stretch.rule) for stretch in frontier_stretches(region, join_m=0)]
     assert rows == [(0.0, 1), (1e3, 1), (20e3, 0), (40e3, 1)]
-    assert math.isinf(frontier_stretches(region)[0].corners_m[0, 1])
-    assert math.isinf(frontier_stretches(region)[-1].corners_m[-1, 0])
+    assert math.isinf(frontier_stretches(region, join_m=0)[0].corners_m[0, 1])
+    assert math.isinf(frontier_stretches(region, join_m=0)[-1].corners_m[-1, 0])
 
 
 def test_no_stretch_under_limits_that_no_pair_meets():
     region = clearing_region([0, 5e3, 10e3], [0, 60, 0], 0, 0)
-    assert frontier_stretches(region, highest_a_m=50, highest_b_m=50) == ()
-    [only] = frontier_stretches(region, highest_a_m=60, highest_b_m=60)
+    assert frontier_stretches(region, highest_a_m=50, highest_b_m=50, join_m=0) == ()
+    [only] = frontier_stretches(region, highest_a_m=60, highest_b_m=60, join_m=0)
     assert only.corners_m.tolist() == [[60, 60], [60, 60]]
 
 
@@ -204,5 +204,5 @@ def test_missing_rules_grounds_and_negative_joins_are_refused():
         least_ray([0, 1e3], [0, 0], 6e9, [])
     with pytest.raises(MissingGroundError, match="ground at the sites = nan, 0 m"):
         clearing_region([0, 1e3], [0, 0], math.nan, 0)
-    with pytest.raises(InputError, match="join_m = -1: must be 0 m or more"):
+    with pytest.raises(InputError, match="join_m = -1: must be finite and 0 m or more"):
         frontier_stretches(clearing_region([0, 1e3], [0, 0], 0, 0), join_m=-1)

@@ -8,7 +8,7 @@ from typing import Literal
 import numpy as np
 from numpy.typing import ArrayLike
 
-from profiler.atmosphere.checks import not_negative, positive, within
+from profiler.checks import not_negative, positive, within
 from profiler.errors import InputError
 from profiler.models import frozen_array
 from profiler.units import Float

@@ -11,7 +11,7 @@ import numpy as np
 from numpy.typing import ArrayLike
 
 from profiler.atmosphere.air import vapour_pressure
-from profiler.atmosphere.checks import positive
+from profiler.checks import positive
 from profiler.models import frozen_array
 from profiler.units import Float
 

@@ -7,8 +7,8 @@ from typing import NamedTuple
 import numpy as np
 from numpy.typing import ArrayLike
 
-from profiler.atmosphere.checks import not_negative, positive, within
 from profiler.atmosphere.ranges import FREQUENCY_RANGE_GHZ
+from profiler.checks import not_negative, positive, within
 from profiler.units import Float
 
 __all__ = [

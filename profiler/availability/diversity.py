@@ -5,7 +5,7 @@ from __future__ import annotations
 import numpy as np
 from numpy.typing import ArrayLike
 
-from profiler.atmosphere.checks import not_negative, positive
+from profiler.checks import not_negative, positive
 from profiler.units import Float
 
 __all__ = ["add_diversity_outages", "amplitude_correlation", "improvement_p530", "protected_selective"]

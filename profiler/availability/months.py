@@ -5,7 +5,7 @@ from __future__ import annotations
 import numpy as np
 from numpy.typing import ArrayLike
 
-from profiler.atmosphere.checks import within
+from profiler.checks import within
 from profiler.units import Float
 
 __all__ = ["worst_month_from_year", "year_from_worst_month"]

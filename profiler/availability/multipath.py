@@ -5,7 +5,7 @@ from __future__ import annotations
 import numpy as np
 from numpy.typing import ArrayLike
 
-from profiler.atmosphere.checks import not_negative, positive, within
+from profiler.checks import not_negative, positive, within
 from profiler.units import Float
 
 __all__ = [

@@ -5,7 +5,7 @@ from __future__ import annotations
 import numpy as np
 from numpy.typing import ArrayLike
 
-from profiler.atmosphere.checks import not_negative
+from profiler.checks import not_negative
 from profiler.errors import InputError
 from profiler.normal import normal_quantile, normal_tail
 from profiler.units import Float

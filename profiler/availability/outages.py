@@ -8,13 +8,13 @@ from typing import Generic, Literal, TypeVar
 import numpy as np
 from numpy.typing import ArrayLike
 
-from profiler.atmosphere.checks import not_negative
 from profiler.availability.diversity import add_diversity_outages
 from profiler.availability.model import OutageModel
 from profiler.availability.months import worst_month_from_year, year_from_worst_month
 from profiler.availability.multipath import fade_percent
 from profiler.availability.obstruction import obstruction_percent
 from profiler.availability.rain import rain_percent
+from profiler.checks import not_negative
 from profiler.models import frozen_array
 from profiler.units import Float
 

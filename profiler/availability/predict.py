@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-import math
 from dataclasses import dataclass
 
 import numpy as np
@@ -13,7 +12,7 @@ from profiler.availability.notes import InputUsed, Notes
 from profiler.availability.objective import LARGEST_MARGIN_DB, MINUTES_PER_YEAR, Limit, ObjectiveResult, judge, limit_of
 from profiler.availability.outages import MECHANISMS, Mechanism, Outages, outages_at
 from profiler.availability.rain import PERCENT_RANGE
-from profiler.errors import InputError
+from profiler.checks import finite
 from profiler.models import MultipathMethod, frozen_array
 from profiler.units import Float
 
@@ -213,8 +212,7 @@ def predict(model: OutageModel, fade_margin_db: float) -> Availability:
     -----
     Source: Rec. ITU-R P.530-17 and -18, P.838-3, P.841-6; each number's own source is in ``inputs``.
     """
-    if not math.isfinite(fade_margin_db):
-        raise InputError(f"fade_margin_db = {fade_margin_db}: must be finite dB")
+    finite("fade_margin_db", fade_margin_db, "dB")
     down = fade_margin_db < 0.0
     month, year = outages_at(model, np.maximum(fade_margin_db, 0.0))
     missing = tuple(mechanism for mechanism in MECHANISMS if year.part(mechanism) is None)

@@ -5,7 +5,7 @@ from __future__ import annotations
 import numpy as np
 from numpy.typing import ArrayLike
 
-from profiler.atmosphere.checks import positive
+from profiler.checks import positive
 from profiler.units import Float
 
 __all__ = ["mean_delay", "multipath_activity", "selective_percent"]

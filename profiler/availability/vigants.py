@@ -7,7 +7,7 @@ from typing import get_args
 import numpy as np
 from numpy.typing import ArrayLike
 
-from profiler.atmosphere.checks import not_negative, positive
+from profiler.checks import not_negative, positive
 from profiler.errors import InputError
 from profiler.models import VigantsClimate
 from profiler.units import FOOT_M, STATUTE_MILE_M, Float

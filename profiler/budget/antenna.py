@@ -5,6 +5,7 @@ from __future__ import annotations
 import numpy as np
 from numpy.typing import ArrayLike
 
+from profiler.checks import finite, positive, within
 from profiler.errors import InputError
 from profiler.models import Terminal
 from profiler.receiver import Line
@@ -50,8 +51,8 @@ def dish_gain(diameter_m: ArrayLike, efficiency: ArrayLike, frequency_hz: ArrayL
     Source: Friis, Proceedings of the IRE 34(5), 1946 (effective area); Rec. ITU-R F.699-8 rounds it, at η = 0.6, to
     20·log10(D/λ) + 7.7 (from memory).
     """
-    diameter, factor, frequency = _checked(diameter_m, efficiency, frequency_hz)
-    return db_from_ratio(factor * (np.pi * diameter / wavelength(frequency)) ** 2)
+    widths = positive("diameter_m", diameter_m, "m") / wavelength(positive("frequency_hz", frequency_hz, "Hz"))
+    return db_from_ratio(_efficiency(efficiency) * (np.pi * widths) ** 2)
 
 
 def dish_diameter(gain_dbi: ArrayLike, efficiency: ArrayLike, frequency_hz: ArrayLike) -> Float:
@@ -79,11 +80,12 @@ def dish_diameter(gain_dbi: ArrayLike, efficiency: ArrayLike, frequency_hz: Arra
     >>> round(float(dish_diameter(38.7, 0.55, 6.175e9)), 2)
     1.79
     """
-    gain = np.asarray(gain_dbi, dtype=float)
-    if not np.all(np.isfinite(gain)):
-        raise InputError(f"gain = {gain_dbi!r} dBi: must be a finite number")
-    _, factor, frequency = _checked(1.0, efficiency, frequency_hz)
-    return np.asarray(wavelength(frequency) / np.pi * np.sqrt(ratio_from_db(gain) / factor))
+    gain, frequency = finite("gain_dbi", gain_dbi, "dBi"), positive("frequency_hz", frequency_hz, "Hz")
+    return np.asarray(wavelength(frequency) / np.pi * np.sqrt(ratio_from_db(gain) / _efficiency(efficiency)))
+
+
+def _efficiency(efficiency: ArrayLike) -> Float:
+    return within("efficiency", efficiency, 0, 1, "more than 0 and at most 1", above=True)
 
 
 def far_field_distance(diameter_m: ArrayLike, frequency_hz: ArrayLike) -> Float:
@@ -113,7 +115,7 @@ def far_field_distance(diameter_m: ArrayLike, frequency_hz: ArrayLike) -> Float:
     -----
     Source: IEEE Std 145-2013, "far-field region" (from memory).
     """
-    diameter, _, frequency = _checked(diameter_m, 1.0, frequency_hz)
+    diameter, frequency = positive("diameter_m", diameter_m, "m"), positive("frequency_hz", frequency_hz, "Hz")
     return np.asarray(2.0 * diameter**2 / wavelength(frequency))
 
 
@@ -191,14 +193,3 @@ def _require_possible(
             f"terminal {end}: gain {gain_dbi:g} dBi as given and {dish_dbi:.2f} dBi from the {diameter_m:g} m dish at "
             f"efficiency {efficiency:g}: must agree within {AGREEMENT_DB:g} dB; leave the gain or the efficiency out"
         )
-
-
-def _checked(diameter_m: ArrayLike, efficiency: ArrayLike, frequency_hz: ArrayLike) -> tuple[Float, Float, Float]:
-    diameter, factor, frequency = (np.asarray(v, dtype=float) for v in (diameter_m, efficiency, frequency_hz))
-    if not np.all((diameter > 0) & np.isfinite(diameter)):
-        raise InputError(f"dish diameter = {diameter_m!r} m: must be more than 0 m")
-    if not np.all((factor > 0) & (factor <= 1)):
-        raise InputError(f"antenna efficiency = {efficiency!r}: must be more than 0 and at most 1")
-    if not np.all((frequency > 0) & np.isfinite(frequency)):
-        raise InputError(f"frequency = {frequency_hz!r} Hz: must be more than 0 Hz")
-    return diameter, factor, frequency

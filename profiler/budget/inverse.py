@@ -9,6 +9,7 @@ from typing import Literal
 
 from profiler.budget.antenna import dish_diameter, near_field_warnings
 from profiler.budget.link import AIMED, free_space_loss, path_lines, table, total
+from profiler.checks import finite
 from profiler.errors import InputError
 from profiler.models import Radio, RadioMode, Terminal
 from profiler.receiver import Line, Threshold, mode_threshold
@@ -243,8 +244,7 @@ def _wanted(
     radio: Radio, name: str | None, bit_error_ratio: float | None, fade_margin_db: float
 ) -> tuple[RadioMode, Threshold, tuple[Line, Line]]:
     """Find the mode, its threshold, and the lines of the level that must arrive."""
-    if not math.isfinite(fade_margin_db):
-        raise InputError(f"fade margin = {fade_margin_db} dB: must be a finite number")
+    finite("fade_margin_db", fade_margin_db, "dB")
     mode = _mode(radio, name)
     if bit_error_ratio is not None:
         mode = replace(mode, threshold_dbm=None, bit_error_ratio=bit_error_ratio)

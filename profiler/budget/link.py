@@ -9,7 +9,7 @@ import numpy as np
 from numpy.typing import ArrayLike
 
 from profiler.budget.antenna import antenna_gain, near_field_warnings
-from profiler.errors import InputError
+from profiler.checks import finite, positive
 from profiler.models import Radio, RadioMode
 from profiler.receiver import Line, Threshold, mode_threshold
 from profiler.units import Float, wavelength
@@ -91,11 +91,7 @@ def free_space_loss(distance_m: ArrayLike, frequency_hz: ArrayLike) -> Float:
     -----
     Source: Rec. ITU-R P.525-4 §2.3 (from memory of the section); Friis, Proceedings of the IRE 34(5), 1946.
     """
-    distance, frequency = np.asarray(distance_m, dtype=float), np.asarray(frequency_hz, dtype=float)
-    if not np.all((distance > 0) & np.isfinite(distance)):
-        raise InputError(f"distance = {distance_m!r} m: must be more than 0 m")
-    if not np.all((frequency > 0) & np.isfinite(frequency)):
-        raise InputError(f"frequency = {frequency_hz!r} Hz: must be more than 0 Hz")
+    distance, frequency = positive("distance_m", distance_m, "m"), positive("frequency_hz", frequency_hz, "Hz")
     return np.asarray(20.0 * np.log10(4.0 * np.pi * distance / wavelength(frequency)))
 
 
@@ -219,9 +215,7 @@ def path_lines(
 
 def loss_line(name: str, loss_db: float, note: str) -> Line:
     """Enter a loss as a negative line (0, not −0, for none)."""
-    if not math.isfinite(loss_db):
-        raise InputError(f"{name} loss = {loss_db} dB: must be a finite number")
-    return Line(name, 0.0 - float(loss_db), "dB", note)
+    return Line(name, 0.0 - float(finite(f"{name} loss", loss_db, "dB")), "dB", note)
 
 
 def total(lines: tuple[Line, ...]) -> float:

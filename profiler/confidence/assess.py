@@ -7,6 +7,7 @@ from collections.abc import Sequence
 import numpy as np
 from numpy.typing import ArrayLike
 
+from profiler.checks import not_negative
 from profiler.confidence.fields import Covariance, Draws, draw_field, draw_inverse_k
 from profiler.confidence.method import Sigmas, describe
 from profiler.confidence.result import Confidence
@@ -133,16 +134,16 @@ def assess(
     nominal = _nominal(distance, ground, cover, (antenna_a_m, antenna_b_m), frequency_hz, rules, beside_m)
     sigmas = Sigmas(
         _sigma_row(terrain_sigma_m, distance.size),
-        None if site_sigma_a_m is None else float(_not_negative("site_sigma_a_m", site_sigma_a_m)),
-        None if site_sigma_b_m is None else float(_not_negative("site_sigma_b_m", site_sigma_b_m)),
+        None if site_sigma_a_m is None else float(not_negative("site_sigma_a_m", site_sigma_a_m, "m")),
+        None if site_sigma_b_m is None else float(not_negative("site_sigma_b_m", site_sigma_b_m, "m")),
         np.hypot(
-            _not_negative("cover_sigma_m", cover_sigma_m),
-            _not_negative("cover_relative_sigma", cover_relative_sigma) * cover,
+            not_negative("cover_sigma_m", cover_sigma_m, "m"),
+            not_negative("cover_relative_sigma", cover_relative_sigma) * cover,
         ),
     )
     cover_range = correlation_m if cover_correlation_m is None else cover_correlation_m
     for name, value in (("correlation_m", correlation_m), ("cover_correlation_m", cover_range)):
-        _not_negative(name, value, infinite=True)
+        not_negative(name, value, "m", infinite=True)
     if covariance not in ("exponential", "gaussian"):
         raise InputError(f"covariance = {covariance!r}: must be 'exponential' or 'gaussian'")
     doubt = _draw(distance, cover, sigmas, (correlation_m, cover_range), covariance, k_percentiles, draws, seed)
@@ -160,20 +161,9 @@ def assess(
     )
 
 
-def _not_negative(name: str, value: ArrayLike, *, infinite: bool = False) -> Float:
-    """Pass on a value that is 0 or more (and finite unless allowed), or stop."""
-    array = np.asarray(value, dtype=float)
-    bad = ~((array >= 0) & (np.isfinite(array) | infinite))
-    if bad.any():
-        raise InputError(
-            f"{name} = {array[bad].flat[0]}: must be {'0 or more' if infinite else 'a finite number, 0 or more'}"
-        )
-    return array
-
-
 def _sigma_row(terrain_sigma_m: ArrayLike, points: int) -> Float:
     """Spread the sigma of the ground over the points, or stop if it does not fit."""
-    sigma = _not_negative("terrain_sigma_m", terrain_sigma_m)
+    sigma = not_negative("terrain_sigma_m", terrain_sigma_m, "m")
     if sigma.shape not in ((), (1,), (points,)):
         raise InputError(
             f"terrain_sigma_m of shape {sigma.shape}: must be one number or one for each of {points} points"
@@ -211,7 +201,7 @@ def _nominal(
     path = (distance, ground + cover, centre_a, centre_b, frequency_hz)
     surplus = [check_rule(*path, rule, places=1).surplus_m for rule in rules]
     return Nominal(
-        surplus_m=np.asarray(surplus) - _not_negative("beside_m", beside_m),
+        surplus_m=np.asarray(surplus) - not_negative("beside_m", beside_m, "m"),
         inverse_k=np.asarray([1.0 / rule.k for rule in rules]),
         unit_bulge_m=earth_bulge(distance, distance[-1] - distance, 1.0),
         share=distance / distance[-1],

@@ -7,7 +7,7 @@ from typing import NamedTuple
 import numpy as np
 from numpy.typing import ArrayLike
 
-from profiler.errors import InputError
+from profiler.checks import not_negative, positive
 from profiler.units import Float, wavelength
 
 __all__ = [
@@ -26,15 +26,6 @@ NU_NO_LOSS = -0.78
 
 MOST_ROUND = 10.0
 """Above this m the published fit of the rounding loss turns over and falls, which no obstacle does."""
-
-
-def positive(name: str, value: ArrayLike, allowed: str, *, zero: bool = False, infinite: bool = False) -> Float:
-    """Return `value` as float64 once every entry is above 0 and finite, or else let in; otherwise raise InputError."""
-    array = np.asarray(value, dtype=float)
-    wrong = ~((array > 0) | (zero & (array == 0))) | (~np.array(infinite) & np.isinf(array))
-    if wrong.any():
-        raise InputError(f"{name} = {array[wrong].flat[0]:g}: must be {allowed}")
-    return array
 
 
 def fresnel_parameter(obstruction_m: ArrayLike, d1_m: ArrayLike, d2_m: ArrayLike, frequency_hz: ArrayLike) -> Float:
@@ -70,9 +61,9 @@ def fresnel_parameter(obstruction_m: ArrayLike, d1_m: ArrayLike, d2_m: ArrayLike
     -----
     Source: Rec. ITU-R P.526-15 §4.1 (from memory of the text). ν = √2 · h / F1, F1 the first Fresnel radius.
     """
-    d1 = positive("d1_m", d1_m, "above 0 m")
-    d2 = positive("d2_m", d2_m, "above 0 m")
-    lam = wavelength(positive("frequency_hz", frequency_hz, "above 0 Hz"))
+    d1 = positive("d1_m", d1_m, "m")
+    d2 = positive("d2_m", d2_m, "m")
+    lam = wavelength(positive("frequency_hz", frequency_hz, "Hz"))
     return np.asarray(np.asarray(obstruction_m, dtype=float) * np.sqrt(2.0 / lam * (1.0 / d1 + 1.0 / d2)))
 
 
@@ -119,10 +110,10 @@ def rounding(d1_m: ArrayLike, d2_m: ArrayLike, radius_m: ArrayLike, frequency_hz
     -----
     Source: Rec. ITU-R P.526-15 §4.2 (from memory of the text). Written with R^(2/3), so that R = 0 is no exception.
     """
-    d1 = positive("d1_m", d1_m, "above 0 m")
-    d2 = positive("d2_m", d2_m, "above 0 m")
-    radius = positive("radius_m", radius_m, "0 m or more", zero=True)
-    lam = wavelength(positive("frequency_hz", frequency_hz, "above 0 Hz"))
+    d1 = positive("d1_m", d1_m, "m")
+    d2 = positive("d2_m", d2_m, "m")
+    radius = not_negative("radius_m", radius_m, "m")
+    lam = wavelength(positive("frequency_hz", frequency_hz, "Hz"))
     return np.asarray(np.cbrt(radius * radius * lam / np.pi) * (1.0 / d1 + 1.0 / d2))
 
 
@@ -203,7 +194,7 @@ def double_edge_terms(
 ) -> DoubleEdgeTerms:
     """Terms of the two-edge loss; parameters, formula and source as in `double_edge_loss`."""
     h1, h2 = np.asarray(obstruction_1_m, dtype=float), np.asarray(obstruction_2_m, dtype=float)
-    a, b, c = (positive("spacings_m", spacing, "above 0 m") for spacing in spacings_m)
+    a, b, c = (positive("spacings_m", spacing, "m") for spacing in spacings_m)
     successive_1 = fresnel_parameter(h1 - h2 * a / (a + b), a, b, frequency_hz)
     successive_2 = fresnel_parameter(h2 - h1 * c / (b + c), b, c, frequency_hz)
     direct_1 = fresnel_parameter(h1, a, b + c, frequency_hz)

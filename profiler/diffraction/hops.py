@@ -13,7 +13,7 @@ from typing import Any
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
-from profiler.diffraction.formulas import positive
+from profiler.checks import positive
 from profiler.errors import InputError, MissingGroundError
 from profiler.units import Float, wavelength
 
@@ -154,8 +154,8 @@ class Hops:
         per_hop = [
             np.asarray(centre_a_m, dtype=float),
             np.asarray(centre_b_m, dtype=float),
-            positive("frequency_hz", frequency_hz, "above 0 Hz"),
-            positive("effective_radius_m", effective_radius_m, "above 0 m (infinity is allowed)", infinite=True),
+            positive("frequency_hz", frequency_hz, "Hz"),
+            positive("effective_radius_m", effective_radius_m, "m", infinite=True),
         ]
         try:
             shape = np.broadcast_shapes(distance.shape[:-1], height.shape[:-1], *(value.shape for value in per_hop))
@@ -190,7 +190,7 @@ class Hops:
 
     def with_radius(self, radius_m: ArrayLike) -> Hops:
         """Return the same hops over another effective radius."""
-        radius = positive("edges_radius_m", radius_m, "above 0 m (infinity is allowed)", infinite=True)
+        radius = positive("edges_radius_m", radius_m, "m", infinite=True)
         columns = (self.distance_m, self.height_m, self.centre_a_m, self.centre_b_m, self.frequency_hz)
         return Hops(*columns, np.broadcast_to(radius, self.radius_m.shape), self.length_m, self.single)
 

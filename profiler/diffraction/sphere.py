@@ -7,7 +7,7 @@ from typing import NamedTuple
 import numpy as np
 from numpy.typing import ArrayLike
 
-from profiler.diffraction.formulas import positive
+from profiler.checks import not_negative, positive, within
 from profiler.errors import InputError
 from profiler.units import Float, wavelength
 
@@ -40,11 +40,7 @@ def check_surface(polarization: str, sea_fraction: ArrayLike) -> Float:
     """Return `sea_fraction` as float64 once it and the polarization are allowed; else raise InputError."""
     if polarization not in ("horizontal", "vertical"):
         raise InputError(f"polarization = {polarization!r}: must be 'horizontal' or 'vertical'")
-    sea = np.asarray(sea_fraction, dtype=float)
-    wrong = ~((sea >= 0) & (sea <= 1))
-    if wrong.any():
-        raise InputError(f"sea_fraction = {sea[wrong].flat[0]:g}: must be 0 (all land) to 1 (all sea)")
-    return sea
+    return within("sea_fraction", sea_fraction, 0, 1, "0 (all land) to 1 (all sea)")
 
 
 def _height_gain(reduced: Float, admittance: Float) -> Float:
@@ -167,11 +163,11 @@ def spherical_earth(
     §3.1.1 allows, and as the published validation examples do, β is 1 for horizontal polarization, and for vertical
     above 20 MHz over land and 300 MHz over sea; P.452 takes it from K there too, which adds 0.02 dB at 150 MHz.
     """
-    distance = positive("distance_m", distance_m, "above 0 m")
-    height_a = positive("height_a_m", height_a_m, "0 m or more above the smooth earth", zero=True)
-    height_b = positive("height_b_m", height_b_m, "0 m or more above the smooth earth", zero=True)
-    frequency = positive("frequency_hz", frequency_hz, "above 0 Hz")
-    radius = positive("effective_radius_m", effective_radius_m, "above 0 m (infinity is allowed)", infinite=True)
+    distance = positive("distance_m", distance_m, "m")
+    height_a = not_negative("height_a_m", height_a_m, "m")
+    height_b = not_negative("height_b_m", height_b_m, "m")
+    frequency = positive("frequency_hz", frequency_hz, "Hz")
+    radius = positive("effective_radius_m", effective_radius_m, "m", infinite=True)
     sea = check_surface(polarization, sea_fraction)
 
     roots = np.sqrt(height_a) + np.sqrt(height_b)

@@ -7,7 +7,7 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from profiler.errors import InputError
+from profiler.checks import not_negative
 from profiler.heights.region import ClearingRegion
 from profiler.models import frozen_array
 from profiler.units import Float
@@ -35,7 +35,7 @@ class Stretch:
 
 
 def frontier_stretches(
-    region: ClearingRegion, *, highest_a_m: float = math.inf, highest_b_m: float = math.inf, join_m: float = 0.0
+    region: ClearingRegion, *, highest_a_m: float = math.inf, highest_b_m: float = math.inf, join_m: float
 ) -> tuple[Stretch, ...]:
     """List the stretches of the frontier from low A and high B to high A and low B.
 
@@ -63,13 +63,12 @@ def frontier_stretches(
     --------
     >>> from profiler.heights import clearing_region
     >>> region = clearing_region([0, 2e3, 8e3, 10e3], [100, 160, 160, 100], 100, 100)
-    >>> for stretch in frontier_stretches(region, highest_a_m=90, highest_b_m=90):
+    >>> for stretch in frontier_stretches(region, highest_a_m=90, highest_b_m=90, join_m=0):
     ...     print(stretch.distance_m, stretch.corners_m.round(1).tolist())
     2000.0 [[52.5, 90.0], [60.0, 60.0]]
     8000.0 [[60.0, 60.0], [90.0, 52.5]]
     """
-    if not join_m >= 0:
-        raise InputError(f"join_m = {join_m}: must be 0 m or more")
+    not_negative("join_m", join_m, "m")
     vertices = region.vertices_m
     start = np.array([[vertices[0, 0], max(highest_b_m, vertices[0, 1])]])
     end = np.array([[max(highest_a_m, vertices[-1, 0]), vertices[-1, 1]]])

@@ -13,6 +13,7 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
+from profiler.checks import check_profile
 from profiler.errors import InputError, MissingGroundError
 from profiler.geometry import ROUNDING_M, earth_bulge, fresnel_radius
 from profiler.models import Rule, frozen_array
@@ -120,7 +121,7 @@ def least_ray(distance_m: ArrayLike, surface_m: ArrayLike, frequency_hz: float, 
     -----
     The terms are the path clearance criteria of Rec. ITU-R P.530-18 §2.2.
     """
-    distance, surface = _profile(distance_m, surface_m)
+    distance, surface = check_profile(distance_m, surface_m)
     if not rules:
         raise InputError("rules: none given; give at least one rule")
     k, fraction, margin = np.array([(rule.k, rule.fresnel_fraction, rule.margin_m) for rule in rules]).T[:, :, None]
@@ -172,7 +173,7 @@ def clearing_region(
     """
     required = np.atleast_2d(np.asarray(least_ray_m, dtype=float))
     rule = required.argmax(axis=0)
-    distance, greatest = _profile(distance_m, required.max(axis=0))
+    distance, greatest = check_profile(distance_m, required.max(axis=0))
     if not np.isfinite([ground_a_m, ground_b_m]).all():
         raise MissingGroundError(f"ground at the sites = {ground_a_m}, {ground_b_m} m: must be known")
     for end, ground in ((0, ground_a_m), (-1, ground_b_m)):
@@ -280,20 +281,6 @@ def _frozen_index(values: Index) -> Index:
     array = np.array(values, dtype=np.intp)
     array.setflags(write=False)
     return array
-
-
-def _profile(distance_m: ArrayLike, height_m: ArrayLike) -> tuple[Float, Float]:
-    """Hold a profile to its contract: two equal rows, ascending from 0, no gaps."""
-    distance, height = np.asarray(distance_m, dtype=float), np.array(height_m, dtype=float)
-    if distance.ndim != 1 or distance.shape != height.shape or distance.size < 2:
-        raise InputError(f"profile of shapes {distance.shape} and {height.shape}: must be two equal rows of 2 or more")
-    if distance[0] != 0 or not np.all(np.diff(distance) > 0):
-        raise InputError("distance_m: must ascend from 0 at site A, each point further than the one before")
-    gaps = ~np.isfinite(height)
-    if gaps.any():
-        where = float(distance[gaps][0])
-        raise MissingGroundError(f"no height at {where:.0f} m from A: must be known; fill it or give more terrain")
-    return distance, height
 
 
 def _upper_hull(x: Float, y: Float) -> Index:

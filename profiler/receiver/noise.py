@@ -5,7 +5,7 @@ from __future__ import annotations
 import numpy as np
 from numpy.typing import ArrayLike
 
-from profiler.errors import InputError
+from profiler.checks import not_negative, positive
 from profiler.units import BOLTZMANN_J_K, Float, db_from_ratio, dbm_from_watts, ratio_from_db
 
 __all__ = [
@@ -50,7 +50,7 @@ def noise_density_dbm_hz(temperature_k: ArrayLike = NOISE_REFERENCE_K) -> Float:
     Source: Nyquist, Physical Review 32, 1928; k_B from the BIPM SI Brochure, 9th edition, 2019. The Rayleigh-Jeans
     form: it holds while h·f is small against k_B·T (at 290 K, 1 % high at 121 GHz).
     """
-    temperature = _above_zero(temperature_k, "noise temperature", "K")
+    temperature = positive("temperature_k", temperature_k, "K")
     return dbm_from_watts(BOLTZMANN_J_K * temperature)
 
 
@@ -85,8 +85,8 @@ def noise_power_dbm(bandwidth_hz: ArrayLike, noise_figure_db: ArrayLike = 0.0) -
     -----
     Source: Friis, Proceedings of the IRE 32(7), 1944.
     """
-    bandwidth = _above_zero(bandwidth_hz, "noise bandwidth", "Hz")
-    figure = _not_negative(noise_figure_db, "noise figure", "dB")
+    bandwidth = positive("bandwidth_hz", bandwidth_hz, "Hz")
+    figure = not_negative("noise_figure_db", noise_figure_db, "dB")
     return np.asarray(noise_density_dbm_hz() + db_from_ratio(bandwidth) + figure)
 
 
@@ -121,7 +121,7 @@ def effective_temperature(noise_figure_db: ArrayLike) -> Float:
     -----
     Source: Rec. ITU-R P.372-16 §2, Friis 1944 (from memory).
     """
-    return np.asarray(NOISE_REFERENCE_K * (ratio_from_db(_not_negative(noise_figure_db, "noise figure", "dB")) - 1.0))
+    return np.asarray(NOISE_REFERENCE_K * (ratio_from_db(not_negative("noise_figure_db", noise_figure_db, "dB")) - 1.0))
 
 
 def noise_figure(temperature_k: ArrayLike) -> Float:
@@ -147,18 +147,4 @@ def noise_figure(temperature_k: ArrayLike) -> Float:
     >>> round(float(noise_figure(290.0)), 2)
     3.01
     """
-    return db_from_ratio(1.0 + _not_negative(temperature_k, "noise temperature", "K") / NOISE_REFERENCE_K)
-
-
-def _above_zero(values: ArrayLike, name: str, unit: str) -> Float:
-    array = np.asarray(values, dtype=float)
-    if not np.all(array > 0):
-        raise InputError(f"{name} = {values!r} {unit}: must be more than 0 {unit}")
-    return array
-
-
-def _not_negative(values: ArrayLike, name: str, unit: str) -> Float:
-    array = np.asarray(values, dtype=float)
-    if not np.all(array >= 0):
-        raise InputError(f"{name} = {values!r} {unit}: must be 0 {unit} or more")
-    return array
+    return db_from_ratio(1.0 + not_negative("temperature_k", temperature_k, "K") / NOISE_REFERENCE_K)
