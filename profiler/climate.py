@@ -46,8 +46,8 @@ class Climate:
     gradient_percentiles_n_km
         Pairs (percent of the year that the gradient is not exceeded, gradient in the lowest kilometre in N/km), both
         ascending and complete. A gradient not exceeded for p % is a k not exceeded for 100 − p %.
-    source
-        Recommendations, editions and the package that gave the maps.
+    rain_source, dn1_source, k_source
+        Recommendation, edition, layer and the package that gave the map behind the rain rate, dN1 and every k.
     warnings
         One line each on what a reader must know; empty if nothing.
     """
@@ -59,7 +59,9 @@ class Climate:
     k_median: float
     k_percentiles: tuple[tuple[float, float], ...]
     gradient_percentiles_n_km: tuple[tuple[float, float], ...]
-    source: str
+    rain_source: str
+    dn1_source: str
+    k_source: str
     warnings: tuple[str, ...] = ()
 
 
@@ -152,10 +154,9 @@ def lookup(longitude: float, latitude: float) -> Climate:
         rain_rate = float(itu837.rainfall_rate(latitude, longitude, 0.01).value)
         dn1 = float(itu453.DN65(latitude, longitude, 1).value)
         gradients = tuple((float(p), float(itu453.DN1(latitude, longitude, p).value)) for p in _PERCENTS)
-        source = (
-            f"R0.01 from Rec. ITU-R P.837-{itu837.get_version()}; dN1 (lowest 65 m, 1 %) and k (lowest 1 km) from Rec. "
-            f"ITU-R P.453-{itu453.get_version()}; maps of itur {metadata.version('itur')}"
-        )
+        package = f"map of itur {metadata.version('itur')}"
+        gradients_by = f"Rec. ITU-R P.453-{itu453.get_version()}"
+        rain_source = f"R0.01 of Rec. ITU-R P.837-{itu837.get_version()}, {package}"
     return Climate(
         longitude=float(longitude),
         latitude=float(latitude),
@@ -164,6 +165,8 @@ def lookup(longitude: float, latitude: float) -> Climate:
         k_median=float(k_from_gradient(dict(gradients)[50.0])),
         k_percentiles=_k_percentiles(gradients),
         gradient_percentiles_n_km=gradients,
-        source=source,
+        rain_source=rain_source,
+        dn1_source=f"gradient in the lowest 65 m at 1 % of the year, {gradients_by}, {package}",
+        k_source=f"gradients in the lowest kilometre over the year, {gradients_by}, {package}",
         warnings=_trapping_warning(gradients),
     )

@@ -425,7 +425,11 @@ class ConfidenceChoice:
 
 @dataclass(frozen=True, slots=True)
 class Hop:
-    """All that a user says about one hop. Built by `profiler.hopfile` or in code; `profiler.study` runs it."""
+    """All that a user says about one hop. Built by `profiler.hopfile` or in code; `profiler.study` runs it.
+
+    ``median_k`` is for losses, budget and angles; None means that of the climate maps where they are used, else 4/3.
+    The rules have their own k.
+    """
 
     name: str
     site_a: Site
@@ -434,7 +438,7 @@ class Hop:
     rules: tuple[Rule, ...]
     terrain: TerrainChoice
     polarization: Polarization = "vertical"
-    median_k: float = K_MEDIAN
+    median_k: float | None = None
     diffraction_method: str = "delta-bullington"
     sea_fraction: float = 0.0
     cover: CoverChoice = CoverChoice()
@@ -450,7 +454,7 @@ class Hop:
     def __post_init__(self) -> None:
         _require(1e7 <= self.frequency_hz <= 1e12, "frequency_hz", self.frequency_hz, "1e7 to 1e12 Hz")
         _require(len(self.rules) > 0, "rules", "none", "at least one rule or a named preset")
-        _require(0 < self.median_k < math.inf, "median_k", self.median_k, "more than 0")
+        _require(_positive_or_none(self.median_k), "median_k", self.median_k, "more than 0")
 
     @property
     def has_objective(self) -> bool:

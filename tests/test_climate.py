@@ -99,10 +99,16 @@ def test_both_names_of_the_date_line():
 
 
 @needs_itur
-def test_source_names_recommendations_and_package():
-    source = lookup(-0.14, 51.5).source
-    for words in ("R0.01 from Rec. ITU-R P.837-7", "P.453-13", "maps of itur 0."):
-        assert words in source
+def test_each_source_names_its_own_map_and_the_package():
+    place = lookup(-0.14, 51.5)
+    assert "R0.01 of Rec. ITU-R P.837-7" in place.rain_source
+    assert "lowest 65 m" in place.dn1_source
+    assert "lowest kilometre" in place.k_source
+    assert "P.453" not in place.rain_source
+    for source in (place.dn1_source, place.k_source):
+        assert "P.453-13" in source
+        assert "P.837" not in source
+    assert all("map of itur 0." in source for source in (place.rain_source, place.dn1_source, place.k_source))
 
 
 @pytest.mark.parametrize(

@@ -91,7 +91,6 @@ def test_small_hop(folder):
     assert hop.source == "hop.toml"
     assert hop.assumptions == (
         "positions: no datum is given for A and B, WGS 84 is taken",
-        "median k: none is given, 4/3 is taken (Rec. ITU-R P.530-18 §2.2, where unknown)",
         "rules of preset light-route (lightly loaded routes): 0.6 F1 + 3 m at k = 1; common practice, no source",
         "polarization: none is given, vertical is taken",
     )

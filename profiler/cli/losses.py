@@ -33,7 +33,7 @@ def command(json_to: str | None, quiet: bool, no_color: bool, **hop_given: Any) 
     path = (profile.distance_m, profile.surface_m, study.centre_a_m, study.centre_b_m, hop.frequency_hz)
     by_k = {
         k: compare(*path, k, polarization=hop.polarization, sea_fraction=hop.sea_fraction)
-        for k in dict.fromkeys([hop.median_k, *(rule.k for rule in hop.rules)])
+        for k in dict.fromkeys([study.climate.median_k, *(rule.k for rule in hop.rules)])
     }
     if json_to is not None:
         losses = [plain(loss) for found in by_k.values() for loss in found]

@@ -173,8 +173,8 @@ def _diffraction(raw: Raw | None, spot: Spot) -> dict[str, Any]:
     return values
 
 
-def _rules(raw: Raw | None, spot: Spot, sites: tuple[Site, Site]) -> tuple[tuple[Rule, ...], float, Notes]:
-    """Rules of the preset and the file's own, the median k, and what was taken."""
+def _rules(raw: Raw | None, spot: Spot, sites: tuple[Site, Site]) -> tuple[tuple[Rule, ...], float | None, Notes]:
+    """Rules of the preset and the file's own, the median k if given, and what was taken."""
     from profiler.hopfile.schema import RulesTable
 
     names = ", ".join(f"{name} ({preset.label})" for name, preset in PRESETS.items())
@@ -189,8 +189,6 @@ def _rules(raw: Raw | None, spot: Spot, sites: tuple[Site, Site]) -> tuple[tuple
     low_k = pick_k(table, spot, "low_k", "low_gradient_n_km")
     rules: tuple[Rule, ...] = ()
     notes: Notes = ()
-    if median_k is None:
-        notes += ("median k: none is given, 4/3 is taken (Rec. ITU-R P.530-18 §2.2, where unknown)",)
     if table.preset is not None:
         with spot.blame():
             rules = expand_preset(table.preset, median_k=median_k or K_MEDIAN, low_k=low_k)
@@ -198,7 +196,7 @@ def _rules(raw: Raw | None, spot: Spot, sites: tuple[Site, Site]) -> tuple[tuple
     elif low_k is not None:
         raise spot.error("low_k", low_k, "left out without a preset that uses it")
     own = tuple(_rule(rule, spot.into(f"rule[{index}]")) for index, rule in enumerate(table.rule or []))
-    return rules + own, median_k or K_MEDIAN, notes
+    return rules + own, median_k, notes
 
 
 def _preset_notes(name: str, rules: tuple[Rule, ...], sites: tuple[Site, Site]) -> Notes:

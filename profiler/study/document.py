@@ -94,7 +94,7 @@ def _hop(study: Study) -> dict[str, Any]:
         "site_b": _site(hop.site_b, float(ground[-1]), study.centre_b_m),
         "frequency_hz": hop.frequency_hz,
         "polarization": hop.polarization,
-        "median_k": hop.median_k,
+        "median_k": study.climate.median_k,
     }
 
 

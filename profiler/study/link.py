@@ -55,8 +55,8 @@ def link(hop: Hop, profile: Profile, climate: ClimateUse, air: Air, centre_a_m: 
     -------
     Link
     """
-    losses = _diffraction(hop, profile, centre_a_m, centre_b_m)
-    budget = _budget(hop, profile, air, losses[hop.median_k])
+    losses = _diffraction(hop, profile, climate.median_k, centre_a_m, centre_b_m)
+    budget = _budget(hop, profile, air, losses[climate.median_k])
     outage = predict_outage(hop, profile, climate, budget, centre_a_m, centre_b_m, losses)
     return Link(losses, budget, outage)
 
@@ -91,12 +91,14 @@ def air_along(hop: Hop, profile: Profile) -> Air:
     return Air(atmosphere, per_km, per_km * float(profile.distance_m[-1]) / 1e3, source)
 
 
-def _diffraction(hop: Hop, profile: Profile, centre_a_m: float, centre_b_m: float) -> dict[float, DiffractionLoss]:
+def _diffraction(
+    hop: Hop, profile: Profile, median_k: float, centre_a_m: float, centre_b_m: float
+) -> dict[float, DiffractionLoss]:
     """Loss by the chosen method at every k of the rules and at the median k, each k once."""
     path = (profile.distance_m, profile.surface_m, centre_a_m, centre_b_m, hop.frequency_hz)
     return {
         k: diffract(hop.diffraction_method, *path, k, polarization=hop.polarization, sea_fraction=hop.sea_fraction)
-        for k in dict.fromkeys([*(rule.k for rule in hop.rules), hop.median_k])
+        for k in dict.fromkeys([*(rule.k for rule in hop.rules), median_k])
     }
 
 

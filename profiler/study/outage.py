@@ -163,7 +163,7 @@ def _excess_losses(
     losses: Mapping[float, DiffractionLoss],
 ) -> tuple[list[float], float]:
     """Diffraction loss over the budget's, at every percentile of k and at the lowest k of the rules."""
-    counted_db = losses[hop.median_k].loss_db
+    counted_db = losses[climate.median_k].loss_db
     path = (profile.distance_m, profile.surface_m, centre_a_m, centre_b_m, hop.frequency_hz)
     ks = [k for _, k in climate.k_percentiles]
     excess = np.empty(0)

@@ -117,7 +117,7 @@ def plan_heights(study: Study) -> HeightsPlan:
         least_b=least_other(region, fixed_a_m=hop.site_a.antenna_m),
         cheapest=choice,
         sheet=sheet,
-        diversity=_diversity(hop, path, choice),
+        diversity=_diversity(study, path, choice),
         for_loss=_for_loss(study),
         for_objective=_for_objective(study),
     )
@@ -135,8 +135,9 @@ def _least_rays(study: Study) -> np.ndarray:
     return rays
 
 
-def _diversity(hop: Hop, path: tuple[Any, ...], choice: Choice | NoPair) -> tuple[DiversityEnd, ...]:
+def _diversity(study: Study, path: tuple[Any, ...], choice: Choice | NoPair) -> tuple[DiversityEnd, ...]:
     """Check the lower antennas of a diversity pair, below the chosen pair where there is one."""
+    hop = study.hop
     pair = None if hop.availability is None else hop.availability.diversity
     if pair is None:
         return ()
@@ -150,7 +151,7 @@ def _diversity(hop: Hop, path: tuple[Any, ...], choice: Choice | NoPair) -> tupl
             antenna_b_m=heights[1],
             spacing_m=pair.spacing_m,
             obstruction=hop.heights.diversity_obstruction,
-            median_k=hop.median_k,
+            median_k=study.climate.median_k,
         )
     )
 

@@ -84,7 +84,7 @@ def run_study(hop: Hop, terrain: Terrain | None = None, *, relief: bool = False,
     air = air_along(hop, profile)
     found = link(hop, profile, climate, air, centre_a_m, centre_b_m) if losses else Link.none()
     confidence = _confidence(hop, ground, climate, rules)
-    angles = _angles(ground, centre_a_m, centre_b_m, hop.median_k)
+    angles = _angles(ground, centre_a_m, centre_b_m, climate.median_k)
     return Study(
         hop=hop,
         line=ground.line,
@@ -96,7 +96,7 @@ def run_study(hop: Hop, terrain: Terrain | None = None, *, relief: bool = False,
         terrain=ground.terrain,
         rules=rules,
         diffraction=tuple(found.losses[k] for k in dict.fromkeys(rule.k for rule in hop.rules) if losses),
-        median_diffraction=found.losses.get(hop.median_k),
+        median_diffraction=found.losses.get(climate.median_k),
         air=air,
         budget=found.budget,
         availability=found.outage.availability,
@@ -108,7 +108,7 @@ def run_study(hop: Hop, terrain: Terrain | None = None, *, relief: bool = False,
         relief=ground.relief,
         verdict=_verdict(hop, ground, rules, found.outage),
         provenance=provenance(hop, ground.files),
-        assumptions=_assumptions(hop, ground, air, found),
+        assumptions=_assumptions(hop, ground, climate, air, found),
         warnings=_warnings(hop, rules, found),
     )
 
@@ -215,7 +215,7 @@ def _headline(hop: Hop, ground: Ground, rules: Sequence[RuleResult], outage: Out
     return f"{clearance} {short} {sense} {place} (rule {asked} at k = {rule.k:.2f}){objective}"
 
 
-def _assumptions(hop: Hop, ground: Ground, air: Air, found: Link) -> tuple[str, ...]:
+def _assumptions(hop: Hop, ground: Ground, climate: ClimateUse, air: Air, found: Link) -> tuple[str, ...]:
     """Everything that was assumed, in the order of the stages, each thing once."""
     terrain = ground.terrain
     sources = [f"{use.info.path.name}: {note}" for use in terrain.sources for note in use.notes]
@@ -224,13 +224,14 @@ def _assumptions(hop: Hop, ground: Ground, air: Air, found: Link) -> tuple[str, 
         dict.fromkeys(
             [
                 *hop.assumptions,
+                *climate.assumptions,
                 *(f"{site.name}: {note}" for site in (hop.site_a, hop.site_b) for note in site.position_notes),
                 f"ground between cell centres: {terrain.method}; a point every {terrain.spacing_m:.1f} m",
                 f"vertical datum: {datum}",
                 *sources,
                 *terrain.notes,
                 *terrain.cover_notes,
-                f"diffraction: {hop.diffraction_method} over ground and cover; budget at k = {hop.median_k:.3g}",
+                f"diffraction: {hop.diffraction_method} over ground and cover; budget at k = {climate.median_k:.3g}",
                 f"air: {air.source}",
                 *(_doubt_assumptions(hop.confidence) if hop.confidence is not None else ()),
                 *(found.budget.assumptions if found.budget is not None else ()),
