@@ -3,18 +3,18 @@
 from __future__ import annotations
 
 import math
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 
 from profiler.errors import InputError
 from profiler.geometry import ROUNDING_M, tight_places
-from profiler.heights.positions import all_positions, free_positions, height_cost
+from profiler.heights.positions import both_free, free_positions, height_cost
 from profiler.heights.region import ClearingRegion, Least, least_a_for, least_b_for, surplus
 from profiler.models import TowerChoice
 from profiler.units import Float
 
-__all__ = ["Choice", "Lowering", "NoPair", "cheapest", "cheapest_exact", "cheapest_of", "least_other"]
+__all__ = ["Choice", "Lowering", "NoPair", "cheapest", "cheapest_exact", "cheapest_of", "least_other", "no_position"]
 
 _TALLEST_M = 2000.0
 """Above this no antenna is mounted (the models refuse it), so it is no remedy."""
@@ -141,12 +141,14 @@ def least_other(
     return Least(height, point, float(region.distance_m[point]), int(region.rule[point]))
 
 
-def cheapest(region: ClearingRegion, tower_a: TowerChoice, tower_b: TowerChoice) -> Choice | NoPair:
+def cheapest(
+    region: ClearingRegion, tower_a: TowerChoice, tower_b: TowerChoice, *, spacing_m: float = 0.0
+) -> Choice | NoPair:
     """Find the cheapest pair of free positions that clears, or prove that none does.
 
     Every free position of A is taken with the least free position of B that clears with it; costs never fall with
     height, so the cheapest pair is among these. Of equally cheap pairs the one with the least sum is taken, then the
-    one with the least taller antenna.
+    one with the least taller antenna. A diversity pair costs what its main antenna does, which decides the tower.
 
     Parameters
     ----------
@@ -154,6 +156,9 @@ def cheapest(region: ClearingRegion, tower_a: TowerChoice, tower_b: TowerChoice)
         From `profiler.heights.clearing_region`.
     tower_a, tower_b
         Limits, steps, taken positions and costs.
+    spacing_m
+        How far each tower's lower antenna of a diversity pair is below the main one; it must stand on a free position
+        too. What it must clear is the region's to say (`profiler.heights.lower_rays`). 0: no diversity.
 
     Returns
     -------
@@ -162,7 +167,7 @@ def cheapest(region: ClearingRegion, tower_a: TowerChoice, tower_b: TowerChoice)
     Raises
     ------
     InputError
-        If a tower's limits hold no whole step.
+        If a tower's limits hold no whole step, or the spacing is no whole number of steps.
 
     Examples
     --------
@@ -176,14 +181,14 @@ def cheapest(region: ClearingRegion, tower_a: TowerChoice, tower_b: TowerChoice)
     >>> print(cheapest(region, TowerChoice(highest_m=40), tower_b).reason)
     no pair clears: at the highest there is, A 40.00 m and B 70.00 m, the ray is still 5.00 m short at 5.000 km
     """
-    free_a, free_b = free_positions(tower_a), free_positions(tower_b)
+    free_a, free_b = both_free(tower_a, tower_b, spacing_m=spacing_m)
     if not (free_a.size and free_b.size):
-        return _tower_full(free_a, free_b, taken_to_blame=_clears_without_taken(region, tower_a, tower_b))
+        return no_position(tower_a, tower_b, free_a, free_b, spacing_m, region)
     # one micrometre of grace: a requirement that meets a position up to rounding is met
     index = np.searchsorted(free_b, least_b_for(region, free_a) - ROUNDING_M)
     found = index < free_b.size
     if not found.any():
-        blame = _clears_without_taken(region, tower_a, tower_b)
+        blame = _clears_without_taken(region, tower_a, tower_b, spacing_m)
         return _no_pair(region, float(free_a[-1]), float(free_b[-1]), taken_to_blame=blame)
     return cheapest_of(free_a[found], free_b[index[found]], tower_a, tower_b)
 
@@ -270,17 +275,38 @@ def _no_pair(region: ClearingRegion, best_a: float, best_b: float, *, taken_to_b
     )
 
 
-def _tower_full(free_a: Float, free_b: Float, *, taken_to_blame: bool) -> NoPair:
-    """State that a tower has no free position."""
+def no_position(
+    tower_a: TowerChoice,
+    tower_b: TowerChoice,
+    free_a: Float,
+    free_b: Float,
+    spacing_m: float,
+    region: ClearingRegion | None = None,
+) -> NoPair:
+    """State that a tower has no free position; with a region, whether its taken positions are to blame for no pair."""
     full = " and ".join(name for name, free in (("A", free_a), ("B", free_b)) if not free.size)
+    narrow = [
+        f"tower {name} offers no two positions {spacing_m:g} m apart for the diversity pair, "
+        f"{tower.lowest_m:g} to {tower.highest_m:g} m"
+        for name, tower in (("A", tower_a), ("B", tower_b))
+        if not _bare(tower, spacing_m).size
+    ]
+    pairs = f", or the one {spacing_m:g} m below it is" if spacing_m else ""
+    taken = f"every position of tower {full} is taken, or too close to a taken one{pairs}"
     return NoPair(
-        reason=f"no pair clears: every position of tower {full} is taken, or too close to a taken one",
+        reason="no pair: " + ("; ".join(narrow) or taken),
         best_a_m=float(free_a[-1]) if free_a.size else math.nan,
         best_b_m=float(free_b[-1]) if free_b.size else math.nan,
-        taken_to_blame=taken_to_blame,
+        taken_to_blame=region is not None and _clears_without_taken(region, tower_a, tower_b, spacing_m),
     )
 
 
-def _clears_without_taken(region: ClearingRegion, tower_a: TowerChoice, tower_b: TowerChoice) -> bool:
+def _bare(tower: TowerChoice, spacing_m: float) -> Float:
+    """Positions of a tower if none were taken."""
+    return free_positions(replace(tower, taken_m=()), spacing_m=spacing_m)
+
+
+def _clears_without_taken(region: ClearingRegion, tower_a: TowerChoice, tower_b: TowerChoice, spacing_m: float) -> bool:
     """Tell whether the highest positions would clear if none were taken."""
-    return bool(surplus(region, all_positions(tower_a)[-1], all_positions(tower_b)[-1]) >= -ROUNDING_M)
+    bare_a, bare_b = _bare(tower_a, spacing_m), _bare(tower_b, spacing_m)
+    return bool(bare_a.size and bare_b.size and surplus(region, bare_a[-1], bare_b[-1]) >= -ROUNDING_M)

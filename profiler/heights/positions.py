@@ -52,8 +52,8 @@ def all_positions(tower: TowerChoice, *, field: str = "") -> Float:
         )
     if last - first >= MOST_POSITIONS:
         raise InputError(
-            f"{name}step_m = {tower.step_m:g}: must leave at most {MOST_POSITIONS} positions from {tower.lowest_m:g} to "
-            f"{tower.highest_m:g} m; give a greater step, or a narrower range"
+            f"{name}step_m = {tower.step_m:g}: must leave at most {MOST_POSITIONS} positions from "
+            f"{tower.lowest_m:g} to {tower.highest_m:g} m; give a greater step, or a narrower range"
         )
     return np.asarray(np.arange(first, last + 1) * tower.step_m)
 
