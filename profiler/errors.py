@@ -1,5 +1,10 @@
 """The error tree. Every message is one line: what is wrong, the value, what is allowed, and what to do."""
 
+from __future__ import annotations
+
+from collections.abc import Collection, Iterator
+from contextlib import contextmanager
+
 __all__ = [
     "DatumError",
     "HopwrightError",
@@ -8,6 +13,7 @@ __all__ = [
     "MissingGroundError",
     "RasterError",
     "field_error",
+    "under",
 ]
 
 
@@ -65,3 +71,32 @@ def field_error(where: str, field: str, value: object, allowed: str, remedy: str
     """
     line = f"{where}: {field} = {value}: must be {allowed}"
     return InputError(f"{line}; {remedy}" if remedy else line)
+
+
+@contextmanager
+def under(table: str, keys: Collection[str] = ()) -> Iterator[None]:
+    """Put the name of a hop file's table before the message of every error that is raised inside.
+
+    Stages that take plain numbers do not know where those stand in a hop file; whoever hands them on does.
+
+    Parameters
+    ----------
+    table
+        Dotted name of the table.
+    keys
+        Its keys: a message that begins with one goes on from the table's name with a point.
+
+    Examples
+    --------
+    >>> with under("confidence", ("draws", "seed")):
+    ...     raise InputError("draws = 3: must be 100 or more")
+    Traceback (most recent call last):
+    ...
+    profiler.errors.InputError: confidence.draws = 3: must be 100 or more
+    """
+    try:
+        yield
+    except HopwrightError as error:
+        text = str(error)
+        joint = "." if text.partition(" ")[0].rstrip(":") in keys else ": "
+        raise type(error)(f"{table}{joint}{text}") from error

@@ -17,6 +17,7 @@ from profiler.hopfile.options import (
 )
 from profiler.hopfile.places import build_obstacle, build_site
 from profiler.hopfile.presets import PRESETS, expand_preset
+from profiler.hopfile.schema import CoverTable, DiffractionTable, HopTable, RulesTable, RuleTable, TerrainTable
 from profiler.hopfile.spot import MISSING, Spot
 from profiler.models import CoverChoice, Hop, Rule, Site, TerrainChoice
 from profiler.path import geodesic
@@ -28,7 +29,7 @@ Raw = Mapping[str, Any]
 Notes = tuple[str, ...]
 
 
-def build_hop(raw: Raw, where: str, base_dir: Path, *, source: str, source_sha256: str | None = None) -> Hop:
+def build_hop(raw: Raw, where: str, base_dir: Path, *, source_sha256: str | None = None) -> Hop:
     """Build a hop from the tables of a file.
 
     Parameters
@@ -36,11 +37,11 @@ def build_hop(raw: Raw, where: str, base_dir: Path, *, source: str, source_sha25
     raw
         The file as TOML gives it.
     where
-        What messages call the file.
+        What messages call the file, and the hop its source.
     base_dir
         Folder that paths in the file start from.
-    source, source_sha256
-        Name and hash of the file, for the provenance.
+    source_sha256
+        Hash of the file, for the provenance.
 
     Returns
     -------
@@ -51,8 +52,6 @@ def build_hop(raw: Raw, where: str, base_dir: Path, *, source: str, source_sha25
     InputError
         For the first thing that is wrong, in one line.
     """
-    from profiler.hopfile.schema import HopTable
-
     spot = Spot(where)
     top = check(HopTable, raw, spot)
     sites = build_site(top.site_a, spot.into("site_a"), "A"), build_site(top.site_b, spot.into("site_b"), "B")
@@ -86,7 +85,7 @@ def build_hop(raw: Raw, where: str, base_dir: Path, *, source: str, source_sha25
             median_k=median_k,
             cover=cover,
             assumptions=notes,
-            source=source,
+            source=where,
             source_sha256=source_sha256,
             **values,
         )
@@ -109,8 +108,6 @@ def _datum_notes(*sites: Raw) -> Notes:
 
 
 def _terrain(raw: Raw, spot: Spot, base_dir: Path) -> TerrainChoice:
-    from profiler.hopfile.schema import TerrainTable
-
     values = given(check(TerrainTable, raw, spot))
     values["paths"] = tuple(
         _path(path, f"paths[{index}]", spot, base_dir) for index, path in enumerate(values["paths"])
@@ -122,7 +119,7 @@ def _terrain(raw: Raw, spot: Spot, base_dir: Path) -> TerrainChoice:
 def _path(text: str, name: str, spot: Spot, base_dir: Path) -> Path:
     """Path of a raster or a folder, relative to the file's folder; it must be there."""
     path = base_dir / text
-    if not text or not path.exists():
+    if not path.exists():
         remedy = "paths start from the folder of the hop file"
         raise spot.error(name, text, "a raster or a folder of rasters that is there", remedy)
     return path
@@ -131,8 +128,6 @@ def _path(text: str, name: str, spot: Spot, base_dir: Path) -> Path:
 def _cover(raw: Raw | None, spot: Spot, base_dir: Path, sites: tuple[Site, Site]) -> tuple[CoverChoice, Notes]:
     if raw is None:
         return CoverChoice(), ()
-    from profiler.hopfile.schema import CoverTable
-
     table = check(CoverTable, raw, spot)
     obstacles = [
         build_obstacle(obstacle, spot.into(f"obstacle[{index}]"), sites)
@@ -165,8 +160,6 @@ def _class_heights(heights: Mapping[str, float], spot: Spot) -> tuple[tuple[int,
 def _diffraction(raw: Raw | None, spot: Spot) -> dict[str, Any]:
     if raw is None:
         return {}
-    from profiler.hopfile.schema import DiffractionTable
-
     values = given(check(DiffractionTable, raw, spot))
     if "method" in values:
         values["diffraction_method"] = values.pop("method")
@@ -175,8 +168,6 @@ def _diffraction(raw: Raw | None, spot: Spot) -> dict[str, Any]:
 
 def _rules(raw: Raw | None, spot: Spot, sites: tuple[Site, Site]) -> tuple[tuple[Rule, ...], float | None, Notes]:
     """Rules of the preset and the file's own, the median k if given, and what was taken."""
-    from profiler.hopfile.schema import RulesTable
-
     names = ", ".join(f"{name} ({preset.label})" for name, preset in PRESETS.items())
     wanted = ("given: rules.preset, or [[rules.rule]] tables with k and fresnel_fraction", f"presets: {names}")
     if raw is None:
@@ -218,8 +209,6 @@ def _preset_notes(name: str, rules: tuple[Rule, ...], sites: tuple[Site, Site]) 
 
 
 def _rule(raw: Raw, spot: Spot) -> Rule:
-    from profiler.hopfile.schema import RuleTable
-
     table = check(RuleTable, raw, spot)
     k = pick_k(table, spot, "k", "gradient_n_km")
     if k is None:

@@ -10,68 +10,22 @@ import difflib
 import math
 import types
 from collections.abc import Mapping
-from functools import lru_cache
-from typing import TYPE_CHECKING, Annotated, Any, Literal, TypeVar, Union, get_args, get_origin
+from typing import Annotated, Any, Literal, TypeVar, Union, get_args, get_origin
+
+from pydantic import ValidationError
+from pydantic.fields import FieldInfo
 
 from profiler.errors import InputError
+from profiler.hopfile.keys import printed_unit, usual, ways
+from profiler.hopfile.schema import HopTable, Table
 from profiler.hopfile.spot import MISSING, Spot, show
-from profiler.units import FOOT_M, STATUTE_MILE_M
 
-if TYPE_CHECKING:
-    from pydantic.fields import FieldInfo
+__all__ = ["check", "given"]
 
-    from profiler.hopfile.schema import Table
-
-__all__ = ["LENGTHS_M", "check", "given"]
-
-LENGTHS_M: Mapping[str, float] = {"m": 1.0, "ft": FOOT_M, "km": 1e3, "mi": STATUTE_MILE_M}
-"""Endings of a key that holds a length, and their size."""
-
-_SCALES: Mapping[str, Mapping[str, float]] = {
-    "m": LENGTHS_M,
-    "hz": {"hz": 1.0, "khz": 1e3, "mhz": 1e6, "ghz": 1e9},
-    "bps": {"bps": 1.0, "kbps": 1e3, "mbps": 1e6, "gbps": 1e9},
-    "s": {"s": 1.0, "ns": 1e-9},
-}
-_USUAL = {
-    "frequency_hz": "frequency_ghz",
-    "bandwidth_hz": "bandwidth_mhz",
-    "width_hz": "width_mhz",
-    "bit_rate_bps": "bit_rate_mbps",
-    "delay_s": "delay_ns",
-}
-_PRINTED = {
-    "_n_km": "N/km",
-    "_g_m3": "g/m³",
-    "_mm_h": "mm/h",
-    "_m": "m",
-    "_ft": "ft",
-    "_km": "km",
-    "_mi": "mi",
-    "_hz": "Hz",
-    "_khz": "kHz",
-    "_mhz": "MHz",
-    "_ghz": "GHz",
-    "_bps": "bit/s",
-    "_kbps": "kbit/s",
-    "_mbps": "Mbit/s",
-    "_gbps": "Gbit/s",
-    "_s": "s",
-    "_ns": "ns",
-    "_db": "dB",
-    "_dbm": "dBm",
-    "_dbi": "dBi",
-    "losses": "dB",
-    "_hpa": "hPa",
-    "_c": "°C",
-    "_percent": "%",
-    "temperature_k": "K",
-    "latitude": "degrees",
-    "longitude": "degrees",
-}
+_PRINTABLE = "text on one line without control characters"
 _RANGE_ERRORS = frozenset({"greater_than", "greater_than_equal", "less_than", "less_than_equal"})
 
-TableT = TypeVar("TableT", bound="Table")
+TableT = TypeVar("TableT", bound=Table)
 
 
 def given(table: Table) -> dict[str, Any]:
@@ -79,15 +33,8 @@ def given(table: Table) -> dict[str, Any]:
     return {key: value for key, value in table if value is not None}
 
 
-@lru_cache(maxsize=64)
-def _ways(model: type[Table]) -> dict[str, tuple[str, float]]:
-    """Every key that a table knows, unit variants among them: the key of the schema and the factor to its unit."""
-    ways: dict[str, tuple[str, float]] = {}
-    for field in model.model_fields:
-        stem, _, unit = field.rpartition("_")
-        for written, factor in _SCALES.get(unit, {}).items():
-            ways[f"{stem}_{written}"] = (field, 1.0 / factor if stem.endswith("_per") else factor)
-    return ways | {field: (field, 1.0) for field in model.model_fields}
+def _ways(model: type[Table]) -> Mapping[str, tuple[str, float]]:
+    return ways(tuple(model.model_fields))
 
 
 def _scaled(value: Any, factor: float) -> Any:
@@ -135,15 +82,13 @@ def check(model: type[TableT], raw: Mapping[str, Any], spot: Spot) -> TableT:
     Traceback (most recent call last):
     profiler.errors.InputError: hop.toml: heights.a.lowest_fr = 100: must be a known key; did you mean lowest_ft?
     """
-    from pydantic import ValidationError
-
-    ways = _ways(model)
+    known = _ways(model)
     values: dict[str, Any] = {}
     written: dict[str, str] = {}
     for key, value in raw.items():
-        if key not in ways:
+        if key not in known:
             raise _unknown(model, key, value, spot)
-        field, factor = ways[key]
+        field, factor = known[key]
         if field in written:
             raise spot.error(key, value, f"left out beside {written[field]} = {show(raw[written[field]])}", "give one")
         values[field], written[field] = _scaled(value, factor) if key != field else value, key
@@ -156,15 +101,13 @@ def check(model: type[TableT], raw: Mapping[str, Any], spot: Spot) -> TableT:
 
 def _unknown(model: type[Table], key: str, value: object, spot: Spot) -> InputError:
     """Offer the nearest known key, or all of them."""
-    from profiler.hopfile.schema import HopTable
-
     near = difflib.get_close_matches(key.lower(), _ways(model), n=1)
     if near:
-        remedy = f"did you mean {near[0]}?"
+        remedy = f"did you mean {usual(near[0])}?"
     elif spot.at and key in _ways(HopTable):
         remedy = "it belongs at the top of the file, before the first [table]"
     else:
-        remedy = f"known here: {', '.join(_USUAL.get(field, field) for field in model.model_fields)}"
+        remedy = f"known here: {', '.join(map(usual, model.model_fields))}"
     return spot.error(key, value, "a known key", remedy)
 
 
@@ -178,11 +121,11 @@ def _reworded(
 ) -> InputError:
     """Word a complaint of the schema for the person who wrote the file."""
     field, steps = str(location[0]), location[1:]
-    key = written.get(field, _USUAL.get(field, field))
-    factor = _ways(model)[key][1]
+    key = written.get(field, usual(field))
+    if steps and steps[-1] == "[key]":
+        return spot.error(key, str(steps[-2]), f"a table of keys that are {_PRINTABLE}")
     annotation, bounds = _inner(model.model_fields[field], len(steps))
-    unit = next((printed for end, printed in _PRINTED.items() if key.endswith(end)), "")
-    allowed = _allowed(annotation, bounds, unit, 1.0 if key == field else factor, kind in _RANGE_ERRORS, spot.key(key))
+    allowed = _allowed(annotation, bounds, key, _ways(model)[key][1], kind, spot)
     if kind == "missing":
         return spot.error(key, MISSING, allowed)
     value: Any = raw[key]
@@ -196,44 +139,55 @@ def _reworded(
 
 def _inner(field: FieldInfo, depth: int) -> tuple[Any, dict[str, float]]:
     """Type and bounds of a field, or of what stands ``depth`` lists or tables inside it."""
-    annotation, notes = _plain(field.annotation), list(field.metadata)
+    annotation, notes = _plain(field.annotation)
+    notes += field.metadata
     for _ in range(depth):
-        annotation, notes = _plain(get_args(annotation)[-1]), []
-        if get_origin(annotation) is Annotated:
-            annotation, *extra = get_args(annotation)
-            notes = [note for each in extra for note in each.metadata]
+        annotation, notes = _plain(get_args(annotation)[-1])
     bounds = {name: getattr(note, name) for note in notes for name in ("gt", "ge", "lt", "le") if hasattr(note, name)}
     return annotation, bounds
 
 
-def _plain(annotation: Any) -> Any:
-    """Take the None out of an optional type."""
+def _plain(annotation: Any) -> tuple[Any, list[Any]]:
+    """Take the None out of an optional type, and its notes out of an annotated one."""
     if get_origin(annotation) in (Union, types.UnionType):
-        return next(each for each in get_args(annotation) if each is not type(None))
-    return annotation
+        annotation = next(each for each in get_args(annotation) if each is not type(None))
+    if get_origin(annotation) is not Annotated:
+        return annotation, []
+    annotation, *extra = get_args(annotation)
+    return annotation, [note for each in extra for note in each.metadata]
 
 
-def _allowed(
-    annotation: Any, bounds: Mapping[str, float], unit: str, factor: float, is_number: bool, dotted: str
-) -> str:
+def _allowed(annotation: Any, bounds: Mapping[str, float], key: str, factor: float, kind: str, spot: Spot) -> str:
     """Say what a key may hold, its bounds in the unit that the user writes."""
-    origin = get_origin(annotation)
+    unit, origin = printed_unit(key), get_origin(annotation)
     if annotation in (float, int):
         limits = _range({name: bound / factor for name, bound in bounds.items()}, unit)
         sort = ("a number" if annotation is float else "a whole number") + (
             f" of {unit}" if unit and not limits else ""
         )
-        return limits if is_number else ", ".join(filter(None, (sort, limits)))
+        return limits if kind in _RANGE_ERRORS else ", ".join(filter(None, (sort, limits)))
     if origin is Literal:
         return f"one of {', '.join(map(repr, get_args(annotation)))}"
     if origin is list:
-        inner = _plain(get_args(annotation)[0])
+        inner, _ = _plain(get_args(annotation)[0])
         if get_origin(inner) is dict:
-            return f"a list of tables, each headed [[{dotted}]]"
+            return f"a list of tables, each headed [[{spot.key(key)}]]"
         return 'a list with at least one text, like ["a.tif"]' if inner is str else f"a list of numbers {unit}".strip()
     if origin is dict:
-        return f"a table, headed [{dotted}]"
-    return {bool: "true or false", str: "text in quotes, not empty"}[annotation]
+        return f"a table, headed [{spot.key(key)}]"
+    text = _PRINTABLE if kind == "string_pattern_mismatch" else "text in quotes, not empty"
+    return "true or false" if annotation is bool else text
+
+
+def _number(value: float) -> str:
+    """Write a bound to seven digits, whole numbers in full.
+
+    Examples
+    --------
+    >>> _number(1e9), _number(6561.67979), _number(0.1)
+    ('1000000000', '6561.68', '0.1')
+    """
+    return f"{value:.0f}" if float(f"{value:.7g}").is_integer() and abs(value) < 1e15 else f"{value:.7g}"
 
 
 def _range(bounds: Mapping[str, float], unit: str) -> str:
@@ -247,7 +201,7 @@ def _range(bounds: Mapping[str, float], unit: str) -> str:
     low = bounds.get("ge", bounds.get("gt", -math.inf))
     high = bounds.get("le", bounds.get("lt", math.inf))
     end = f" {unit}" if unit else ""
-    lowest, highest = f"{low:.7g}", f"{high:.7g}"
+    lowest, highest = _number(low), _number(high)
     if math.isinf(low) and math.isinf(high):
         return ""
     if math.isinf(high):

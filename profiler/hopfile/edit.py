@@ -7,7 +7,7 @@ from copy import deepcopy
 from typing import Any
 
 from profiler.errors import InputError
-from profiler.hopfile.check import LENGTHS_M
+from profiler.hopfile.keys import LENGTHS_M
 from profiler.hopfile.reader import parse_tables
 
 __all__ = ["with_antennas"]
@@ -91,6 +91,6 @@ def _compare(before: dict[str, Any], after: dict[str, Any], heights_m: dict[str,
 def _by_hand(site: str, *heights_m: float) -> InputError:
     heights = " and ".join(f"{height_m:g} m" for height_m in heights_m)
     return InputError(
-        f"hop file: {site}: antenna_m (or antenna_ft): must stand on a line of its own under its [table] to be "
+        f"{site}: antenna_m (or antenna_ft): must stand on a line of its own under its [table] to be "
         f"replaced; write {heights} there by hand"
     )

@@ -4,9 +4,23 @@ from __future__ import annotations
 
 from collections.abc import Mapping
 from itertools import pairwise
-from typing import TYPE_CHECKING, Any
+from typing import Any
 
 from profiler.hopfile.check import check, given
+from profiler.hopfile.schema import (
+    AirTable,
+    AvailabilityTable,
+    ConfidenceTable,
+    DiversityTable,
+    HeightsTable,
+    ModeTable,
+    ObjectiveTable,
+    RadioTable,
+    SignatureTable,
+    Table,
+    TerminalTable,
+    TowerTable,
+)
 from profiler.hopfile.spot import MISSING, Spot
 from profiler.models import (
     AirChoice,
@@ -23,9 +37,6 @@ from profiler.models import (
 )
 from profiler.terrain_error import TERRAIN_ERRORS, sigma_from_le90, sigma_from_rmse
 from profiler.units import k_from_gradient
-
-if TYPE_CHECKING:
-    from profiler.hopfile.schema import ConfidenceTable, Table
 
 __all__ = ["build_air", "build_availability", "build_confidence", "build_heights", "build_radio", "pick_k"]
 
@@ -53,18 +64,20 @@ def _kelvin(values: dict[str, Any], name: str, spot: Spot) -> dict[str, Any]:
 
 def build_radio(raw: Raw, spot: Spot) -> Radio:
     """Build both terminals, the modes and the named losses of ``[radio]``."""
-    from profiler.hopfile.schema import RadioTable
-
     table = check(RadioTable, raw, spot)
     modes = tuple(_mode(mode, spot.into(f"mode[{index}]")) for index, mode in enumerate(table.mode or []))
+    names = [mode.name for mode in modes]
+    for index, name in enumerate(names):
+        if name in names[:index]:
+            raise spot.into(f"mode[{index}]").error(
+                "name", name, f"another name than that of {spot.at}.mode[{names.index(name)}]"
+            )
     terminal_a, terminal_b = _terminal(table.a, spot.into("a")), _terminal(table.b, spot.into("b"))
     with spot.blame():
         return Radio(terminal_a, terminal_b, modes, tuple((table.losses or {}).items()))
 
 
 def _terminal(raw: Raw, spot: Spot) -> Terminal:
-    from profiler.hopfile.schema import TerminalTable
-
     values = given(check(TerminalTable, raw, spot))
     if "gain_dbi" not in values:
         for name in ("diameter_m", "efficiency"):
@@ -75,8 +88,6 @@ def _terminal(raw: Raw, spot: Spot) -> Terminal:
 
 
 def _mode(raw: Raw, spot: Spot) -> RadioMode:
-    from profiler.hopfile.schema import ModeTable, SignatureTable
-
     values = given(check(ModeTable, raw, spot))
     if "signature" in values:
         inside = spot.into("signature")
@@ -89,15 +100,11 @@ def _mode(raw: Raw, spot: Spot) -> RadioMode:
 
 def build_air(raw: Raw, spot: Spot) -> AirChoice:
     """Build ``[air]``."""
-    from profiler.hopfile.schema import AirTable
-
     return AirChoice(**_kelvin(given(check(AirTable, raw, spot)), "temperature", spot))
 
 
 def build_availability(raw: Raw, spot: Spot) -> AvailabilityChoice:
     """Build ``[availability]`` with its objective and diversity."""
-    from profiler.hopfile.schema import AvailabilityTable, DiversityTable, ObjectiveTable
-
     values = _kelvin(given(check(AvailabilityTable, raw, spot)), "annual_temperature", spot)
     if "objective" in values:
         inside = spot.into("objective")
@@ -129,8 +136,6 @@ def _percentiles(pairs: list[list[float]], spot: Spot) -> tuple[tuple[float, flo
 
 def build_heights(raw: Raw, spot: Spot) -> HeightsChoice:
     """Build ``[heights]`` with what each tower allows."""
-    from profiler.hopfile.schema import HeightsTable, TowerTable
-
     table = check(HeightsTable, raw, spot)
     values = given(table)
     loss_k = pick_k(table, spot, "loss_k", "loss_gradient_n_km")
@@ -149,8 +154,6 @@ def build_heights(raw: Raw, spot: Spot) -> HeightsChoice:
 
 def build_confidence(raw: Raw, spot: Spot, availability: AvailabilityChoice | None) -> ConfidenceChoice:
     """Build ``[confidence]``: the terrain's error by kind of source, sigma, RMSE or LE90, and how it is drawn."""
-    from profiler.hopfile.schema import ConfidenceTable
-
     table = check(ConfidenceTable, raw, spot)
     sigma_m, source = _terrain_sigma(table, spot)
     values = given(table)

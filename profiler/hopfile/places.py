@@ -2,25 +2,33 @@
 
 from __future__ import annotations
 
-from typing import TYPE_CHECKING, Any
+from collections.abc import Mapping
+from typing import Any, TypeVar
 
 from profiler.errors import InputError
 from profiler.hopfile.check import check, given
 from profiler.hopfile.positions import parse_position
+from profiler.hopfile.schema import ObstacleTable, PlaceTable, SiteTable
 from profiler.hopfile.spot import MISSING, Spot
 from profiler.models import Obstacle, Site
 from profiler.path import locate, to_wgs84, trace
-
-if TYPE_CHECKING:
-    from collections.abc import Mapping
-
-    from profiler.hopfile.schema import ObstacleTable, PlaceTable
 
 __all__ = ["build_obstacle", "build_site"]
 
 _FORMS = (("position",), ("latitude", "longitude"), ("easting", "northing"))
 _FARTHEST_ASIDE_M = 200.0
 """A thing further beside the path stands outside the first Fresnel zone of any hop of this trade."""
+
+PlaceT = TypeVar("PlaceT", bound=PlaceTable)
+
+
+def _checked(model: type[PlaceT], raw: Mapping[str, Any], spot: Spot) -> PlaceT:
+    """Check a table that holds a position; where its two angles would fit the other way round, say so."""
+    angles = [raw[name] for name in ("latitude", "longitude") if isinstance(raw.get(name), int | float)]
+    if len(angles) == 2 and 90 < abs(angles[0]) <= 180 and abs(angles[1]) <= 90:
+        remedy = f"latitude and longitude look swapped: give latitude = {angles[1]}, longitude = {angles[0]}"
+        raise spot.error("latitude", angles[0], "-90 to 90 degrees", remedy)
+    return check(model, raw, spot)
 
 
 def _form(table: PlaceTable, spot: Spot) -> tuple[str, ...]:
@@ -78,9 +86,7 @@ def _place(table: PlaceTable, spot: Spot) -> tuple[float, float, tuple[str, ...]
 
 def build_site(raw: Mapping[str, Any], spot: Spot, name: str) -> Site:
     """Build a site; ``name`` is what it is called where the file gives it none."""
-    from profiler.hopfile.schema import SiteTable
-
-    table = check(SiteTable, raw, spot)
+    table = _checked(SiteTable, raw, spot)
     longitude, latitude, notes = _place(table, spot)
     with spot.blame():
         return Site(
@@ -89,16 +95,14 @@ def build_site(raw: Mapping[str, Any], spot: Spot, name: str) -> Site:
             latitude=latitude,
             antenna_m=table.antenna_m,
             surveyed_ground_m=table.ground_m,
-            clearing_m=table.clearing_m,
+            clearing_m=table.clearing_m or 0.0,
             position_notes=notes,
         )
 
 
 def build_obstacle(raw: Mapping[str, Any], spot: Spot, sites: tuple[Site, Site]) -> tuple[Obstacle, tuple[str, ...]]:
     """Build an obstacle on the path between two sites, with what has to be said about where it stands."""
-    from profiler.hopfile.schema import ObstacleTable
-
-    table = check(ObstacleTable, raw, spot)
+    table = _checked(ObstacleTable, raw, spot)
     name = table.name or spot.at
     start, end, notes = _extent(table, spot, sites, name)
     with spot.blame():

@@ -25,10 +25,10 @@ _PLAIN: Final = str.maketrans(
     }
 )
 _WORDS: Final = {
-    **dict.fromkeys(("n", "north"), ("letter", "N")),
-    **dict.fromkeys(("south",), ("letter", "S")),
-    **dict.fromkeys(("e", "east"), ("letter", "E")),
-    **dict.fromkeys(("w", "west"), ("letter", "W")),
+    **dict.fromkeys(("n", "north", "nord", "norte"), ("letter", "N")),
+    **dict.fromkeys(("south", "süd", "sud", "sur", "sul"), ("letter", "S")),
+    **dict.fromkeys(("e", "east", "ost", "est", "este"), ("letter", "E")),
+    **dict.fromkeys(("w", "west", "ouest", "ovest", "oeste"), ("letter", "W")),
     **dict.fromkeys(("d", "deg", "degs", "degree", "degrees"), ("mark", "°")),
     **dict.fromkeys(("m", "min", "mins", "minute", "minutes"), ("mark", "'")),
     **dict.fromkeys(("sec", "secs", "second", "seconds"), ("mark", '"')),
@@ -36,6 +36,7 @@ _WORDS: Final = {
     **dict.fromkeys(("lon", "lng", "long", "longitude"), ("label", "lon")),
 }
 _TOKEN: Final = re.compile(r"""\s*(?:(\d+(?:\.\d*)?|\.\d+)|([^\W\d_]+)|(''|[°'"])|([-+:=,]))""")
+_DECIMAL_COMMA: Final = re.compile(r"(?<=\d),(?=\d)")
 _MARKS: Final = ("°", "'", '"')
 _ISO_6709: Final = re.compile(r"([-+])((?:\d{2}){1,3}(?:\.\d+)?)([-+])(\d(?:\d{2}){1,3}(?:\.\d+)?)/?")
 _LIMITS: Final = {"lat": 90, "lon": 180}
@@ -75,7 +76,8 @@ def parse_position(text: str) -> tuple[float, float]:
     Decimal degrees, degrees and decimal minutes, or degrees, minutes and seconds, with the usual marks (° ' " and
     their typographic kin), words (``deg``, ``min``, ``north``), colons, hyphens or blanks between them; letters N, S,
     E, W before or after; signs instead of letters; packed digits with letters (``402646.3N 0795856.1W``) and ISO 6709
-    (``+40.4462-079.9822/``).
+    (``+40.4462-079.9822/``). Decimals may follow a comma (``40,4462 N 79,9822 W``) where letters, a semicolon or a
+    slash say what belongs together.
 
     Parameters
     ----------
@@ -109,18 +111,42 @@ def parse_position(text: str) -> tuple[float, float]:
     Letters and layouts after common practice; packed digits as in aeronautical publications (ICAO Annex 15) and ISO
     6709:2008 annex H (both from memory).
     """
-    plain = text.translate(_PLAIN).strip()
     try:
         iso = _ISO_6709.fullmatch(text.strip())
         if iso:
             return _both_degrees(_iso_angle(iso[1], iso[2], "lat"), _iso_angle(iso[3], iso[4], "lon"))
-        return _both_degrees(*_split(_tokens(plain)))
+        return _both_degrees(*_only_pair(text))
     except _UnreadableError as problem:
         raise InputError(f"position = {' '.join(text.split())!r}: must be {problem}") from None
 
 
 def _iso_angle(sign: str, digits: str, axis: str) -> _Angle:
     return _Angle(_unpack(digits, axis) or (digits,), False, sign, "", axis)
+
+
+def _only_pair(text: str) -> tuple[_Angle, _Angle]:
+    """Find the one way to read the text as two angles, with commas between them or before decimals."""
+    tokens = _tokens(text.translate(_PLAIN).strip())
+    found = _pairs(tokens)
+    decimal = _DECIMAL_COMMA.sub(".", text)
+    if decimal != text:
+        parted = ";" in text or "/" in text
+        found += [
+            pair for pair in _pairs(_tokens(decimal.translate(_PLAIN).strip())) if parted or all(a.letter for a in pair)
+        ]
+    if not found and [token.kind for token in tokens].count("comma") > 1:
+        raise _UnreadableError(
+            "with one comma, between latitude and longitude, and decimals after a point; or with letters N, S, E, W"
+        )
+    if not found:
+        raise _UnreadableError(f"a latitude and a longitude; {_WAYS}")
+    both_or_neither = [pair for pair in found if bool(pair[0].letter) == bool(pair[1].letter)]
+    if not both_or_neither:
+        raise _UnreadableError("with letters on both angles or on neither")
+    if len(both_or_neither) > 1:
+        ways = " or ".join(f"{first}, {second}" for first, second in both_or_neither)
+        raise _UnreadableError(f"readable in one way, not as {ways}; put a comma between the two, or use letters")
+    return both_or_neither[0]
 
 
 def _tokens(text: str) -> list[_Token]:
@@ -150,6 +176,11 @@ def _word(word: str, tokens: list[_Token]) -> _Token:
         after_minutes = len(tokens) > 1 and tokens[-1].kind == "number" and tokens[-2].text == "'"
         seconds = after_minutes and tokens[-2].raw != "" and tokens[-2].raw[0].isupper() == word.isupper()
         return _Token("mark", '"', word) if seconds else _Token("letter", "S", word)
+    if word in ("o", "O"):
+        raise _UnreadableError(
+            f"with E or W, not {word!r}: in some languages that is the west (Ouest, Ovest, Oeste), in others the east "
+            "(Ost); write degrees as ° or deg"
+        )
     if word.lower() not in _WORDS:
         raise _UnreadableError(f"a position, and {word!r} has no meaning in one; {_WAYS}")
     return _Token(*_WORDS[word.lower()], word)
@@ -167,30 +198,18 @@ def _sign(sign: str, tokens: list[_Token], blank_before: bool, blank_after: bool
     return _Token("sign", sign)
 
 
-def _split(tokens: list[_Token]) -> tuple[_Angle, _Angle]:
-    """Find the one way to cut the tokens into two angles."""
+def _pairs(tokens: list[_Token]) -> list[tuple[_Angle, _Angle]]:
+    """Find every way to cut the tokens into two angles, at the comma where there is one."""
     kinds = [token.kind for token in tokens]
     if kinds.count("comma") > 1:
-        raise _UnreadableError("with one comma, between latitude and longitude, and decimals after a point")
+        return []
     if "comma" in kinds:
         middle = kinds.index("comma")
         cuts = [(tokens[:middle], tokens[middle + 1 :])]
     else:
         cuts = [(tokens[:cut], tokens[cut:]) for cut in range(1, len(tokens))]
-    found: list[tuple[_Angle, _Angle]] = []
-    for one, other in cuts:
-        first, second = _angle(one), _angle(other)
-        if first and second:
-            found.append((first, second))
-    if not found:
-        raise _UnreadableError(f"a latitude and a longitude; {_WAYS}")
-    both_or_neither = [pair for pair in found if bool(pair[0].letter) == bool(pair[1].letter)]
-    if not both_or_neither:
-        raise _UnreadableError("with letters on both angles or on neither")
-    if len(both_or_neither) > 1:
-        ways = " or ".join(f"{first}, {second}" for first, second in both_or_neither)
-        raise _UnreadableError(f"readable in one way, not as {ways}; put a comma between the two, or use letters")
-    return both_or_neither[0]
+    both = ((_angle(one), _angle(other)) for one, other in cuts)
+    return [(first, second) for first, second in both if first and second]
 
 
 def _angle(tokens: list[_Token]) -> _Angle | None:
@@ -224,8 +243,23 @@ def _both_degrees(first: _Angle, second: _Angle) -> tuple[float, float]:
     axes = [axis or ("lon" if axes[1 - index] == "lat" else "lat") for index, axis in enumerate(axes)]
     if axes[0] == axes[1]:
         raise _UnreadableError(f"a latitude and a longitude, not two {_NAMES[axes[0]]}s")
+    _require_not_swapped(first, second, axes)
     by_axis = {axis: _degrees(angle, axis) for axis, angle in zip(axes, (first, second), strict=True)}
     return by_axis["lat"], by_axis["lon"]
+
+
+def _size(numbers: tuple[str, ...]) -> float:
+    """Degrees of up to three numbers, without a sign."""
+    in_seconds = sum(float(part) * scale for part, scale in zip(numbers, (3600.0, 60.0, 1.0), strict=False))
+    return in_seconds / 3600.0 if len(numbers) > 1 else float(numbers[0])
+
+
+def _require_not_swapped(first: _Angle, second: _Angle, axes: list[str]) -> None:
+    """Offer the other order where, without letters, only that is a place on the globe."""
+    if axes == ["lat", "lon"] and not first.letter and 90 < _size(first.numbers) <= 180 and _size(second.numbers) <= 90:
+        raise _UnreadableError(
+            f"a latitude of -90 to 90 degrees, not {first}; latitude and longitude look swapped: give {second}, {first}"
+        )
 
 
 def _axis(angle: _Angle) -> str:
@@ -262,8 +296,7 @@ def _degrees(angle: _Angle, axis: str) -> float:
     for name, part in zip(("minutes", "seconds"), numbers[1:], strict=False):
         if float(part) >= 60:
             raise _UnreadableError(f"with {name} under 60, not {part}")
-    in_seconds = sum(float(part) * scale for part, scale in zip(numbers, (3600.0, 60.0, 1.0), strict=False))
-    size = in_seconds / 3600.0 if len(numbers) > 1 else float(numbers[0])
+    size = _size(numbers)
     if size > _LIMITS[axis]:
         swap = "; latitude comes first, or use letters" if axis == "lat" and size <= 180 and not angle.letter else ""
         raise _UnreadableError(f"a {_NAMES[axis]} of -{_LIMITS[axis]} to {_LIMITS[axis]} degrees, not {angle}{swap}")

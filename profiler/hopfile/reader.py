@@ -31,7 +31,7 @@ def load_hop(path: Path | str) -> Hop:
     Returns
     -------
     Hop
-        With the file's name as ``source`` and the hash of its bytes.
+        With the file as named here for its ``source``, and the hash of its bytes.
 
     Raises
     ------
@@ -55,8 +55,7 @@ def load_hop(path: Path | str) -> Hop:
         ) from None
     except OSError as error:
         raise InputError(f"{path}: {error.strerror}: must be a hop file that can be read") from None
-    digest = hashlib.sha256(content).hexdigest()
-    return _hop(text, str(path), path.parent, source=path.name, source_sha256=digest)
+    return _hop(text, str(path), path.parent, source_sha256=hashlib.sha256(content).hexdigest())
 
 
 def parse_hop(text: str, where: str = "hop file", base_dir: Path | str = ".") -> Hop:
@@ -86,14 +85,14 @@ def parse_hop(text: str, where: str = "hop file", base_dir: Path | str = ".") ->
     Traceback (most recent call last):
     profiler.errors.InputError: hop file: site_a = 5: must be a table, headed [site_a]
     """
-    return _hop(text, where, Path(base_dir), source=where)
+    return _hop(text, where, Path(base_dir))
 
 
-def _hop(text: str, where: str, base_dir: Path, *, source: str, source_sha256: str | None = None) -> Hop:
+def _hop(text: str, where: str, base_dir: Path, *, source_sha256: str | None = None) -> Hop:
     from profiler.hopfile.build import build_hop
 
     try:
-        return build_hop(parse_tables(text, where), where, base_dir, source=source, source_sha256=source_sha256)
+        return build_hop(parse_tables(text, where), where, base_dir, source_sha256=source_sha256)
     except RecursionError:
         raise InputError(f"{where}: must be TOML that is nested a few levels deep; it is nested too deeply") from None
 
@@ -202,7 +201,7 @@ def quick_hop(
     }
     if name is not None:
         raw["name"] = name
-    return build_hop(raw, where, Path(base_dir), source=where)
+    return build_hop(raw, where, Path(base_dir))
 
 
 def _height(value: float | str, table: str, where: str) -> dict[str, float]:

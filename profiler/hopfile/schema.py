@@ -46,6 +46,8 @@ __all__ = [
 ]
 
 Raw = dict[str, Any]
+Text = Annotated[str, Field(min_length=1, pattern=r"^[^\p{Cc}\p{Zl}\p{Zp}\u202a-\u202e\u2066-\u2069]+$")]
+"""Text that is printed as it stands: nothing in it may steer a terminal, begin a line or turn the writing around."""
 Height = Annotated[float, Field(ge=0, lt=2000)]
 
 
@@ -58,7 +60,7 @@ class Table(BaseModel):
 class HopTable(Table):
     """The top of the file."""
 
-    name: str | None = Field(None, min_length=1)
+    name: Text | None = None
     frequency_hz: float = Field(ge=1e7, le=1e12)
     polarization: Polarization | None = None
     site_a: Raw
@@ -80,7 +82,7 @@ class PlaceTable(Table):
     position: str | None = None
     latitude: float | None = Field(None, ge=-90, le=90)
     longitude: float | None = Field(None, ge=-180, le=180)
-    datum: str | None = None
+    datum: Text | None = None
     easting: float | None = None
     northing: float | None = None
     epsg: int | None = Field(None, gt=0)
@@ -89,28 +91,28 @@ class PlaceTable(Table):
 class SiteTable(PlaceTable):
     """``[site_a]``, ``[site_b]``."""
 
-    name: str | None = Field(None, min_length=1)
+    name: Text | None = None
     antenna_m: float = Field(gt=0, lt=2000)
     ground_m: float | None = Field(None, ge=-500, le=9000)
-    clearing_m: float = Field(0.0, ge=0, le=5000)
+    clearing_m: float | None = Field(None, ge=0, le=5000)
 
 
 class TerrainTable(Table):
     """``[terrain]``."""
 
-    paths: list[str] = Field(min_length=1)
+    paths: list[Text] = Field(min_length=1)
     method: SampleMethod | None = None
     spacing_m: float | None = Field(None, gt=0)
     missing: FillPolicy | None = None
     allow_mixed_datums: bool | None = None
-    vertical_datum: str | None = Field(None, min_length=1)
-    height_unit: str | None = Field(None, min_length=1)
+    vertical_datum: Text | None = None
+    height_unit: Text | None = None
 
 
 class RulesTable(Table):
     """``[rules]``."""
 
-    preset: str | None = None
+    preset: Text | None = None
     median_k: float | None = Field(None, ge=0.1, le=100)
     median_gradient_n_km: float | None = Field(None, gt=-157, le=1000)
     low_k: float | None = Field(None, ge=0.1, le=100)
@@ -125,7 +127,7 @@ class RuleTable(Table):
     gradient_n_km: float | None = Field(None, gt=-157, le=1000)
     fresnel_fraction: float = Field(ge=0, le=10)
     margin_m: float | None = Field(None, ge=-100, le=1000)
-    label: str | None = None
+    label: Text | None = None
 
 
 class DiffractionTable(Table):
@@ -149,8 +151,8 @@ class DiffractionTable(Table):
 class CoverTable(Table):
     """``[cover]``."""
 
-    canopy: list[str] | None = None
-    landcover: str | None = None
+    canopy: list[Text] | None = None
+    landcover: Text | None = None
     class_heights_m: dict[str, Height] | None = None
     obstacle: list[Raw] | None = None
 
@@ -158,7 +160,7 @@ class CoverTable(Table):
 class ObstacleTable(PlaceTable):
     """``[[cover.obstacle]]``: where along the path, or at which position, and how tall."""
 
-    name: str | None = Field(None, min_length=1)
+    name: Text | None = None
     at_m: float | None = Field(None, ge=0)
     from_m: float | None = Field(None, ge=0)
     to_m: float | None = Field(None, ge=0)
@@ -172,7 +174,7 @@ class RadioTable(Table):
     a: Raw
     b: Raw
     mode: list[Raw] | None = None
-    losses: dict[str, Annotated[float, Field(ge=0)]] | None = None
+    losses: dict[Text, Annotated[float, Field(ge=0)]] | None = None
 
 
 class TerminalTable(Table):
@@ -183,20 +185,20 @@ class TerminalTable(Table):
     gain_dbi: float | None = None
     diameter_m: float | None = Field(None, gt=0)
     efficiency: float | None = Field(None, gt=0, le=1)
-    model: str | None = None
+    model: Text | None = None
 
 
 class ModeTable(Table):
     """``[[radio.mode]]``."""
 
-    name: str = Field(min_length=1)
+    name: Text
     threshold_dbm: float | None = None
     power_dbm: float | None = None
     noise_figure_db: float | None = Field(None, ge=0)
     noise_temperature_k: float | None = Field(None, gt=0)
     bandwidth_hz: float | None = Field(None, gt=0)
     bit_rate_bps: float | None = Field(None, gt=0)
-    modulation: str | None = None
+    modulation: Text | None = None
     bit_error_ratio: float | None = Field(None, gt=0, lt=0.5)
     coding_gain_db: float | None = Field(None, ge=0)
     implementation_loss_db: float | None = Field(None, ge=0)
@@ -286,11 +288,11 @@ class TowerTable(Table):
 class ConfidenceTable(Table):
     """``[confidence]``."""
 
-    terrain_kind: str | None = None
+    terrain_kind: Text | None = None
     terrain_sigma_m: float | None = Field(None, ge=0, le=100)
     terrain_rmse_m: float | None = Field(None, ge=0, le=100)
     terrain_le90_m: float | None = Field(None, ge=0, le=150)
-    terrain_source: str | None = Field(None, min_length=1)
+    terrain_source: Text | None = None
     correlation_m: float | None = Field(None, ge=0, allow_inf_nan=True)
     covariance: Literal["exponential", "gaussian"] | None = None
     site_sigma_m: float | None = Field(None, ge=0, le=100)

@@ -24,7 +24,8 @@ class Spot:
     at: str = ""
 
     def key(self, name: str) -> str:
-        """Dotted name of a key of this table."""
+        """Dotted name of a key of this table, with what does not print escaped."""
+        name = name if name.isprintable() else repr(name)[1:-1]
         return f"{self.at}.{name}" if self.at else name
 
     def into(self, name: str) -> Spot:
@@ -41,7 +42,8 @@ class Spot:
         try:
             yield
         except InputError as error:
-            raise InputError(f"{self.where}: {self.key(str(error))}") from None
+            at = f"{self.at}." if self.at else ""
+            raise InputError(f"{self.where}: {at}{error}") from None
 
 
 def show(value: object) -> str:
