@@ -4,7 +4,7 @@ Heights are metres above the ground of their own site unless a name says ``centr
 """
 
 from profiler.heights.choose import Choice, Lowering, NoPair, cheapest, cheapest_exact, cheapest_of, least_other
-from profiler.heights.diversity import DiversityEnd, check_diversity
+from profiler.heights.diversity import DiversityEnd, check_diversity, lower_rays, lower_rules
 from profiler.heights.frontier import Stretch, frontier_stretches
 from profiler.heights.positions import all_positions, free_positions, height_cost, round_up
 from profiler.heights.region import (
@@ -47,6 +47,8 @@ __all__ = [
     "least_equal",
     "least_other",
     "least_ray",
+    "lower_rays",
+    "lower_rules",
     "mounting_sheet",
     "round_up",
     "surplus",

@@ -6,15 +6,17 @@ import math
 from dataclasses import dataclass
 from typing import Literal
 
+import numpy as np
 from numpy.typing import ArrayLike
 
+from profiler.checks import positive
 from profiler.errors import InputError
 from profiler.geometry import ROUNDING_M
-from profiler.heights.region import clearing_region, least_a_for, least_b_for, least_ray
+from profiler.heights.region import clearing_region, least_a_for, least_b_for
 from profiler.models import Obstruction, Rule
-from profiler.units import wavelength
+from profiler.units import Float, wavelength
 
-__all__ = ["DiversityEnd", "check_diversity"]
+__all__ = ["DiversityEnd", "check_diversity", "lower_rays", "lower_rules"]
 
 _FRACTIONS: dict[Obstruction, tuple[float, float]] = {"isolated": (0.0, 0.3), "extended": (0.3, 0.6)}
 """Rec. ITU-R P.530-18 §2.2.2.2, step 2 (from memory): the range of F1 that the lower antenna clears at the median k."""
@@ -31,9 +33,9 @@ class DiversityEnd:
     """One end's diversity pair; heights above ground in metres.
 
     ``lower_m`` is the planned lower antenna, ``spacing_m`` below the main one. ``least_m`` and ``full_m`` are the least
-    heights for the lower and the upper end of P.530's range of clearance (``fractions`` of F1 at the median k);
-    infinite where the far antenna is so low that no height helps. ``main_for_spacing_m`` is how high the main antenna
-    must stand for the lower one to keep ``least_m`` at this spacing.
+    heights for the lower and the upper end of P.530's range of clearance (``fractions`` of F1 at the median k), not
+    under the tower's lowest position; infinite where the far antenna is so low that no height helps.
+    ``main_for_spacing_m`` is how high the main antenna must stand for the lower one to keep ``least_m``.
     """
 
     end: Literal["A", "B"]
@@ -98,9 +100,66 @@ class DiversityEnd:
         return f"{raising}, or space them by {closer:.2f} m" if closer > 0 else raising
 
 
+def lower_rules(obstruction: Obstruction, median_k: float) -> tuple[Rule, Rule]:
+    """Give the two ends of the range of clearance that P.530 wants for a lower antenna, least first.
+
+    Parameters
+    ----------
+    obstruction
+        "isolated" (one or two obstacles: 0 to 0.3 F1) or "extended" (0.3 to 0.6 F1).
+    median_k
+        Median effective-earth-radius factor, more than 0.
+
+    Raises
+    ------
+    InputError
+        For an obstruction that is neither.
+
+    Examples
+    --------
+    >>> [rule.fresnel_fraction for rule in lower_rules("extended", 4 / 3)]
+    [0.3, 0.6]
+
+    Notes
+    -----
+    Rec. ITU-R P.530-18 §2.2.2.2 (from memory of the text): enough for a loss of some 3 to 6 dB, and not so much that
+    the ground's reflection reaches the lower antenna in full. The choice within the range is the designer's.
+    """
+    if obstruction not in _FRACTIONS:
+        raise InputError(f'obstruction = {obstruction!r}: must be "isolated" or "extended"')
+    least, full = (Rule(k=median_k, fresnel_fraction=fraction, label="lower") for fraction in _FRACTIONS[obstruction])
+    return least, full
+
+
+def lower_rays(distance_m: ArrayLike, least_ray_m: ArrayLike, spacing_m: float) -> Float:
+    """Least height of the main antennas' ray for which the rays to and from the lower antennas clear, (2, n): A's, B's.
+
+    A ray from the lower antenna at A runs (1 - t)·spacing under the one from the main antenna, t being the share of the
+    way to B; a ray to the lower antenna at B runs t·spacing under it. Rays between two lower antennas are not used.
+
+    Parameters
+    ----------
+    distance_m
+        Distances from A, (n,), ascending from 0; the last is B.
+    least_ray_m
+        Least height of a lower antenna's own ray above the datum, (n,).
+    spacing_m
+        How far the lower antennas are below the main ones, more than 0 m.
+
+    Examples
+    --------
+    >>> lower_rays([0, 5e3, 10e3], [100, 150, 100], 8.0).tolist()
+    [[108.0, 154.0, 100.0], [100.0, 154.0, 108.0]]
+    """
+    distance, ray = np.asarray(distance_m, dtype=float), np.asarray(least_ray_m, dtype=float)
+    share = distance / distance[-1]
+    below = float(positive("spacing_m", spacing_m, "m"))
+    return np.stack((ray + (1.0 - share) * below, ray + share * below))
+
+
 def check_diversity(
     distance_m: ArrayLike,
-    surface_m: ArrayLike,
+    least_rays_m: ArrayLike,
     ground_a_m: float,
     ground_b_m: float,
     frequency_hz: float,
@@ -109,19 +168,21 @@ def check_diversity(
     antenna_b_m: float,
     spacing_m: float,
     obstruction: Obstruction,
-    median_k: float,
+    lowest_m: tuple[float, float] = (0.0, 0.0),
 ) -> tuple[DiversityEnd, DiversityEnd]:
     """Hold the lower antennas of a space-diversity hop to P.530's clearance, and check their spacing.
 
     Each lower antenna receives from the far end's main antenna. At the median k it should clear 0.3 to 0.6 F1 over an
-    extended obstruction, 0 to 0.3 F1 over one or two isolated obstacles: enough for a loss of some 3 to 6 dB, and not
-    so much that the ground's reflection reaches it in full. Points at the sites themselves count, so an antenna inside
-    its own cover fails.
+    extended obstruction, 0 to 0.3 F1 over one or two isolated obstacles. Points at the sites themselves count, so an
+    antenna inside its own cover fails.
 
     Parameters
     ----------
-    distance_m, surface_m
-        The profile, (n,), metres from A and metres above the datum, no gaps.
+    distance_m
+        Distances from A, (n,), ascending from 0; the last is B.
+    least_rays_m
+        Least height of a lower antenna's ray above the datum under the two rules of `lower_rules`, (2, n), as
+        `profiler.heights.least_ray` gives it, raised where ground beside the path asks for more.
     ground_a_m, ground_b_m
         Ground at the sites above the datum.
     frequency_hz
@@ -132,9 +193,9 @@ def check_diversity(
         How far the lower antenna is below the main one, more than 0 m. A spacing that would put it into the ground
         does not clear, and the notes say how high the main antenna must go.
     obstruction
-        "isolated" (one or two obstacles) or "extended".
-    median_k
-        Median effective-earth-radius factor, more than 0.
+        "isolated" or "extended", as the rays were asked for.
+    lowest_m
+        Lowest position that each tower offers, 0 m or more.
 
     Returns
     -------
@@ -148,39 +209,35 @@ def check_diversity(
 
     Examples
     --------
-    >>> ends = check_diversity([0, 20e3, 40e3], [0, 20, 0], 0, 0, 6e9, antenna_a_m=70, antenna_b_m=70, spacing_m=10,
-    ...     obstruction="isolated", median_k=4 / 3)
+    >>> from profiler.heights import least_ray
+    >>> profile = [0, 20e3, 40e3], [0, 20, 0]
+    >>> rays = least_ray(*profile, 6e9, lower_rules("isolated", 4 / 3))
+    >>> ends = check_diversity(profile[0], rays, 0, 0, 6e9, antenna_a_m=70, antenna_b_m=70, spacing_m=10,
+    ...     obstruction="isolated")
     >>> ends[0].clears, round(ends[0].least_m, 2), round(ends[0].full_m, 2), round(ends[0].spacing_wavelengths)
     (True, 17.09, 30.5, 200)
     >>> print(ends[0].notes[0].partition(",")[0])
     A: the lower antenna at 60.00 m clears more than 0.3 F1 (30.50 m would do)
-
-    Notes
-    -----
-    Rec. ITU-R P.530-18 §2.2.2.2 (from memory of the text). The choice within the range is the designer's.
     """
-    if obstruction not in _FRACTIONS:
-        raise InputError(f'obstruction = {obstruction!r}: must be "isolated" or "extended"')
-    if not 0 < spacing_m < math.inf:
-        raise InputError(f"spacing_m = {spacing_m}: must be more than 0 m, main antenna to lower antenna")
-    fractions = _FRACTIONS[obstruction]
+    fractions = tuple(rule.fresnel_fraction for rule in lower_rules(obstruction, 1.0))
+    spacing = float(positive("spacing_m", spacing_m, "m"))
     needed = []
-    for fraction in fractions:
-        ray = least_ray(distance_m, surface_m, frequency_hz, [Rule(k=median_k, fresnel_fraction=fraction)])
+    for ray in np.asarray(least_rays_m, dtype=float):
         region = clearing_region(distance_m, ray, ground_a_m, ground_b_m)
-        needed.append((float(least_a_for(region, antenna_b_m)), float(least_b_for(region, antenna_a_m))))
+        least = (float(least_a_for(region, antenna_b_m)), float(least_b_for(region, antenna_a_m)))
+        needed.append([max(height, lowest) for height, lowest in zip(least, lowest_m, strict=True)])
     ends: tuple[tuple[Literal["A", "B"], float], ...] = (("A", antenna_a_m), ("B", antenna_b_m))
     a, b = (
         DiversityEnd(
             end=end,
             main_m=main,
-            lower_m=main - spacing_m,
-            spacing_m=spacing_m,
-            spacing_wavelengths=float(spacing_m / wavelength(frequency_hz)),
-            fractions=fractions,
+            lower_m=main - spacing,
+            spacing_m=spacing,
+            spacing_wavelengths=spacing / float(wavelength(frequency_hz)),
+            fractions=(fractions[0], fractions[1]),
             least_m=needed[0][i],
             full_m=needed[1][i],
-            main_for_spacing_m=needed[0][i] + spacing_m,
+            main_for_spacing_m=needed[0][i] + spacing,
         )
         for i, (end, main) in enumerate(ends)
     )
