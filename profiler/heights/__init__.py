@@ -6,7 +6,7 @@ Heights are metres above the ground of their own site unless a name says ``centr
 from profiler.heights.choose import Choice, Lowering, NoPair, cheapest, cheapest_exact, cheapest_of, least_other
 from profiler.heights.diversity import DiversityEnd, check_diversity, lower_rays, lower_rules
 from profiler.heights.frontier import Stretch, frontier_stretches
-from profiler.heights.positions import all_positions, free_positions, height_cost, round_up
+from profiler.heights.positions import all_positions, both_free, free_positions, height_cost, round_up
 from profiler.heights.region import (
     ClearingRegion,
     Least,
@@ -18,13 +18,14 @@ from profiler.heights.region import (
     surplus,
 )
 from profiler.heights.search import LimitHeights, heights_for_loss, heights_within
-from profiler.heights.sheet import EndHeights, MountingSheet, mounting_sheet
+from profiler.heights.sheet import EndHeights, Held, MountingSheet, mounting_sheet
 
 __all__ = [
     "Choice",
     "ClearingRegion",
     "DiversityEnd",
     "EndHeights",
+    "Held",
     "Least",
     "LimitHeights",
     "Lowering",
@@ -32,6 +33,7 @@ __all__ = [
     "NoPair",
     "Stretch",
     "all_positions",
+    "both_free",
     "cheapest",
     "cheapest_exact",
     "cheapest_of",

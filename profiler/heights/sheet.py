@@ -10,27 +10,29 @@ from typing import Literal
 from numpy.typing import ArrayLike
 
 from profiler.errors import InputError
-from profiler.geometry import ROUNDING_M, RuleCheck, check_rule
+from profiler.geometry import ROUNDING_M, CorridorCheck, RuleCheck, check_corridor, check_rule
 from profiler.heights.choose import NoPair
-from profiler.heights.positions import free_positions, round_up
+from profiler.heights.positions import both_free, round_up
 from profiler.models import Rule, TowerChoice
 from profiler.units import FOOT_M
 
-__all__ = ["EndHeights", "MountingSheet", "mounting_sheet"]
+__all__ = ["EndHeights", "Held", "MountingSheet", "mounting_sheet"]
 
 
 @dataclass(frozen=True, slots=True)
 class EndHeights:
     """One end's antenna: ``needed_m`` is what was asked for, ``antenna_m`` the position above ground that it gets.
 
-    ``ground_m`` and ``centre_m`` are above the vertical datum of the terrain (mean sea level where that is the datum).
-    Feet are international feet, 0.3048 m exactly.
+    ``lower_m`` is the lower antenna of a diversity pair, None without one. ``ground_m`` and ``centre_m`` are above the
+    vertical datum of the terrain (mean sea level where that is the datum). Feet are international feet, 0.3048 m
+    exactly.
     """
 
     end: Literal["A", "B"]
     needed_m: float
     antenna_m: float
     ground_m: float
+    lower_m: float | None = None
 
     @property
     def centre_m(self) -> float:
@@ -54,17 +56,45 @@ class EndHeights:
 
 
 @dataclass(frozen=True, slots=True, eq=False)
+class Held:
+    """One rule held against one mounted ray, along the path and, where it asks for some of the zone, beside it.
+
+    ``ray`` says which: between the main antennas, or from a lower antenna to the far main one.
+    """
+
+    ray: Literal["main", "lower A", "lower B"]
+    check: RuleCheck
+    across: CorridorCheck | None
+
+    @property
+    def surplus_m(self) -> float:
+        """Least surplus, metres; on the path the surplus counts even where beside it no ground is known."""
+        along = float(self.check.surplus_m.min())
+        return along if self.across is None else min(along, self.across.surplus_m)
+
+    @property
+    def passes(self) -> bool:
+        """Whether the rule is met everywhere, up to rounding."""
+        return self.surplus_m >= -ROUNDING_M
+
+
+@dataclass(frozen=True, slots=True, eq=False)
 class MountingSheet:
     """Both ends' antennas as mounted, and every rule held against them again."""
 
     end_a: EndHeights
     end_b: EndHeights
-    checks: tuple[RuleCheck, ...]
+    held: tuple[Held, ...]
 
     @property
     def passes(self) -> bool:
-        """Whether the mounted heights pass every rule, up to rounding."""
-        return all(float(check.surplus_m[check.critical]) >= -ROUNDING_M for check in self.checks)
+        """Whether the mounted heights pass every rule."""
+        return all(each.passes for each in self.held)
+
+    @property
+    def beside(self) -> bool:
+        """Whether the ground beside the path was looked at too."""
+        return any(each.across is not None for each in self.held)
 
 
 def mounting_sheet(
@@ -79,6 +109,9 @@ def mounting_sheet(
     antenna_b_m: float,
     tower_a: TowerChoice,
     tower_b: TowerChoice,
+    corridor: tuple[ArrayLike, ArrayLike] | None = None,
+    spacing_m: float = 0.0,
+    lower_rule: Rule | None = None,
 ) -> MountingSheet | NoPair:
     """Round antenna heights up to free positions and hold every rule against the result.
 
@@ -96,6 +129,12 @@ def mounting_sheet(
         Heights above ground that are asked for.
     tower_a, tower_b
         Steps, limits and taken positions.
+    corridor
+        Offsets across the path and the surface there, (n, across) each, as `profiler.geometry.check_corridor` takes
+        them; None: the path alone is looked at.
+    spacing_m, lower_rule
+        How far the lower antenna of a diversity pair is below the main one, and the rule that its ray to the far main
+        antenna must meet (`profiler.heights.lower_rules`); 0 and None without diversity.
 
     Returns
     -------
@@ -118,19 +157,34 @@ def mounting_sheet(
     """
     if not rules:
         raise InputError("rules: none given; give at least one rule")
-    mounted_a, mounted_b = round_up(antenna_a_m, tower_a), round_up(antenna_b_m, tower_b)
+    mounted_a = round_up(antenna_a_m, tower_a, spacing_m=spacing_m, field="heights.a")
+    mounted_b = round_up(antenna_b_m, tower_b, spacing_m=spacing_m, field="heights.b")
     if mounted_a is None or mounted_b is None:
         end, height = ("A", antenna_a_m) if mounted_a is None else ("B", antenna_b_m)
+        free_a, free_b = both_free(tower_a, tower_b, spacing_m=spacing_m)
         return NoPair(
             reason=f"antenna {end}: no free position at or above {height:.2f} m; raise the limit, or free a position",
-            best_a_m=max(free_positions(tower_a), default=math.nan),
-            best_b_m=max(free_positions(tower_b), default=math.nan),
+            best_a_m=max(free_a, default=math.nan),
+            best_b_m=max(free_b, default=math.nan),
             raise_a_to_m=antenna_a_m if mounted_a is None else None,
             raise_b_to_m=antenna_b_m if mounted_b is None else None,
         )
-    path = (distance_m, surface_m, ground_a_m + mounted_a, ground_b_m + mounted_b, frequency_hz)
+    centres = ground_a_m + mounted_a, ground_b_m + mounted_b
+
+    def hold(ray: Literal["main", "lower A", "lower B"], down_a_m: float, down_b_m: float, rule: Rule) -> Held:
+        path = (centres[0] - down_a_m, centres[1] - down_b_m, frequency_hz, rule)
+        across = None
+        if corridor is not None and rule.fresnel_fraction > 0:
+            offset_m, beside_m = corridor
+            across = check_corridor(distance_m, offset_m, beside_m, *path)
+        return Held(ray, check_rule(distance_m, surface_m, *path), across)
+
+    held = [hold("main", 0.0, 0.0, rule) for rule in rules]
+    if lower_rule is not None:
+        held += [hold("lower A", spacing_m, 0.0, lower_rule), hold("lower B", 0.0, spacing_m, lower_rule)]
+    lower_a, lower_b = (mounted - spacing_m if spacing_m else None for mounted in (mounted_a, mounted_b))
     return MountingSheet(
-        end_a=EndHeights("A", antenna_a_m, mounted_a, float(ground_a_m)),
-        end_b=EndHeights("B", antenna_b_m, mounted_b, float(ground_b_m)),
-        checks=tuple(check_rule(*path, rule) for rule in rules),
+        end_a=EndHeights("A", antenna_a_m, mounted_a, float(ground_a_m), lower_a),
+        end_b=EndHeights("B", antenna_b_m, mounted_b, float(ground_b_m), lower_b),
+        held=tuple(held),
     )
