@@ -130,9 +130,9 @@ def test_nothing_there(tmp_path):
 
 def test_unknown_choices(write_raster):
     path = write_raster("a.tif", FLAT, GRID)
-    with pytest.raises(InputError, match="terrain method 'cubic': must be bilinear or highest"):
+    with pytest.raises(InputError, match=r"terrain\.method = 'cubic': must be bilinear or highest"):
         open_terrain(path, method="cubic")
-    with pytest.raises(InputError, match="height unit 'league' is not a known length"):
+    with pytest.raises(InputError, match=r"terrain\.height_unit: height unit 'league' is not a known length"):
         open_terrain(path, height_unit="league")
 
 

@@ -145,7 +145,9 @@ def test_unit_of_the_vertical_crs(write_raster):
 
 def test_plane_in_feet_without_height_unit_is_not_guessed(write_raster):
     path = write_raster("p.tif", FLAT, Affine(30, 0, 1968000, 0, -30, 200000), "EPSG:2272")
-    with pytest.raises(RasterError, match=r"p\.tif: declares no height unit .* may be metres or feet; state"):
+    with pytest.raises(
+        RasterError, match=r"p\.tif: declares no height unit .* may be metres or feet; state terrain\.height_unit"
+    ):
         open_terrain(path)
     assert info(path, height_unit="ft").unit_factor_m == 0.3048
     assert "declares no height unit: taken as ft, as stated by the user" in info(path, height_unit="ft").notes

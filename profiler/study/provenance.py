@@ -55,7 +55,7 @@ def provenance(hop: Hop, files: Sequence[Path]) -> Provenance:
     return Provenance(
         created=datetime.now(UTC).isoformat(timespec="seconds"),
         versions=_versions(),
-        hop_file=hop.source,
+        hop_file=Path(hop.source).name,
         hop_sha256=hop.source_sha256,
         rasters=tuple(_identity(path) for path in files),
     )

@@ -261,7 +261,7 @@ def _unit(
     if reference.plane_unit_m is not None and reference.plane_unit_m != 1.0:
         raise RasterError(
             f"{file.name}: declares no height unit and its map plane is in units of {reference.plane_unit_m:.9g} m, so "
-            "heights may be metres or feet; state the height unit"
+            "heights may be metres or feet; state terrain.height_unit in the hop file"
         )
     notes.append("declares no height unit: taken as metres")
     return "m", 1.0

@@ -63,7 +63,7 @@ def require_ground(distance_m: ArrayLike, longitude: ArrayLike, latitude: ArrayL
     count = sum(last - first + 1 for first, last in gaps)
     raise MissingGroundError(
         f"no ground height at {count} of {distance.size} points: {', '.join(told)}{more}; give terrain that covers "
-        "them, or say in the hop file how to fill missing ground"
+        'them, or set terrain.missing = "interpolate" in the hop file'
     )
 
 

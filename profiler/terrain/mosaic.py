@@ -10,7 +10,7 @@ from typing import Self
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
-from profiler.errors import InputError, MissingGroundError, RasterError
+from profiler.errors import InputError, MissingGroundError, RasterError, under
 from profiler.models import SampleMethod
 from profiler.terrain.describe import NotHeightsError, RasterInfo, Reading, Tile, describe
 from profiler.terrain.files import find_rasters
@@ -188,10 +188,12 @@ def open_terrain(
     0.5
     """
     if method not in ("bilinear", "highest"):
-        raise InputError(f"terrain method {method!r}: must be bilinear or highest")
+        raise InputError(f"terrain.method = {method!r}: must be bilinear or highest")
     if height_unit is not None:
-        unit_factor(height_unit)
-    datum = None if vertical_datum is None else resolve_datum(vertical_datum)
+        with under("terrain.height_unit"):
+            unit_factor(height_unit)
+    with under("terrain.vertical_datum"):
+        datum = None if vertical_datum is None else resolve_datum(vertical_datum)
     reading = Reading(vertical_datum=datum, height_unit=height_unit, eight_bit=eight_bit)
     tiles, skipped = describe_all([paths] if isinstance(paths, Path) else paths, reading)
     return Terrain(tiles, skipped, method=method, allow_mixed_datums=allow_mixed_datums)

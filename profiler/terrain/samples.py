@@ -139,7 +139,7 @@ def _one_datum(sources: tuple[SourceUse, ...], *, allow_mixed: bool) -> tuple[st
         if not allow_mixed:
             raise DatumError(
                 f"heights on different vertical datums meet on one path: {found}; bring the rasters to one datum, "
-                "leave one out, or allow mixed datums and live with the step between them"
+                "leave one out, or set terrain.allow_mixed_datums = true and live with the step between them"
             )
         return None, (f"heights on different vertical datums are mixed, as allowed: {found}",)
     if not seen:
