@@ -223,7 +223,7 @@ def test_corridor_names_the_side(side, name):
     offset = corridor_offsets(x, 6e9, 1.0, 2.0)
     ground = np.where(side * offset > 8.0, 100.0, 0.0)
     beside = check_corridor(x, offset, ground, 100.0, 100.0, 6e9, Rule(1e6, 1.0))
-    assert (beside.passes, beside.side, beside.distance_index) == (False, name, 1)
+    assert (beside.passes, beside.side, beside.critical) == (False, name, 1)
     assert abs(beside.offset_m) > 8.0
 
 
@@ -244,7 +244,7 @@ def test_corridor_counts_what_it_could_not_see():
     ground = np.zeros_like(offset)
     ground[1, 0] = np.nan
     beside = check_corridor(x, offset, ground, 100, 100, 6e9, Rule(1.0, 1.0))
-    assert beside.missing_share == pytest.approx(1 / offset.size)
+    assert beside.need.missing_share == pytest.approx(1 / offset.size)
 
 
 @pytest.mark.parametrize("slope", [0.5, 1.0, -1.0, 2.0])

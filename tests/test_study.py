@@ -499,12 +499,12 @@ def test_a_wall_beside_the_path_fails_the_rule_and_names_the_side(land, side, na
     assert corridor.side == name
     assert f"m {name} of the path" in study.verdict.headline
     # by hand: the wall's flank rises over one cell; between the points across it is taken as straight
-    row = corridor.distance_index
+    row = corridor.critical
     columns_m, surface_m = study.corridor.offset_m[row], study.corridor.surface_m[row]
     flanks_m = 60.0 * np.clip(side * columns_m / CELL_EW_M, 0.0, 1.0)
     np.testing.assert_allclose(surface_m - GROUND_M, flanks_m, atol=0.2)  # CELL_EW_M is rounded
     # and at the offset found: ray - bulge - sqrt(r² - y²) - that flank
-    d1, y = study.profile.distance_m[corridor.distance_index], abs(corridor.offset_m)
+    d1, y = study.profile.distance_m[corridor.critical], abs(corridor.offset_m)
     d2 = study.line.distance_m - d1
     flank_m = float(np.interp(corridor.offset_m, columns_m, flanks_m))
     radius_m = 0.6 * math.sqrt(299792458 / 0.9e9 * d1 * d2 / (d1 + d2))
@@ -530,7 +530,7 @@ def test_ground_that_ends_beside_the_path_is_told(land):
     heights = np.full((ROWS, COLUMNS), GROUND_M)
     heights[:, 32:] = -9999
     study = run_study(hop_over(land(heights, nodata=-9999), frequency_hz=0.3e9))
-    assert study.rules[0].corridor.missing_share > 0.1
+    assert study.rules[0].corridor.need.missing_share > 0.1
     assert any("not checked" in warning for warning in study.warnings)
 
 

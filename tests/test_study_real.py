@@ -129,7 +129,7 @@ def test_a_path_that_clears_by_hand(degrees):
         assert check.f1_m[at] == pytest.approx(19.9, rel=0.02)
         assert check.surplus_m[at] == pytest.approx(surplus_m, abs=4.0)
     # both mesas are listed as places of their own, not as one crest
-    assert np.all(np.diff(sorted(study.profile.distance_m[list(low.check.tight)])) > 300)
+    assert np.all(np.diff(sorted([place.distance_m for place in low.places])) > 300)
 
 
 def test_a_path_that_fails_by_hand(degrees):

@@ -12,7 +12,7 @@ if TYPE_CHECKING:
     from rich.table import Table
 
     from profiler.confidence import Confidence
-    from profiler.study import RuleResult, Study
+    from profiler.study import Study
 
 __all__ = ["Scale", "compact_table", "show_notes", "show_study", "show_sure_heights"]
 
@@ -137,18 +137,17 @@ def _rules(study: Study, scale: Scale) -> Table:
     )  # fmt: skip
     losses = {loss.k: loss.loss_db for loss in study.diffraction}
     for result in study.rules:
-        rule, check, at = result.check.rule, result.check, result.check.critical
-        beside = check.passes and not _clear_beside(result)
+        rule, place = result.check.rule, result.critical
         table.add_row(
             rule.label or "-",
             f"{rule.k:.3f}",
             f"{rule.fresnel_fraction:g} F1" + (f" + {scale.height(rule.margin_m)} {height}" if rule.margin_m else ""),
-            "FAIL beside" if beside else "pass" if result.passes else "FAIL",
-            f"{scale.height(check.surplus_m[at])}",
-            scale.distance(study.profile.distance_m[at]),
-            scale.height(check.f1_m[at]),
-            f"{check.ratio[at]:.2f}",
-            "yes" if check.line_of_sight else "no",
+            "pass" if result.passes else "FAIL beside" if result.check.passes else "FAIL",
+            scale.height(place.surplus_m),
+            scale.distance(place.distance_m),
+            scale.height(place.f1_m),
+            f"{place.ratio:.2f}",
+            "yes" if result.check.line_of_sight else "no",
             f"{losses[rule.k]:.1f}",
             style="" if result.passes else "red",
         )
@@ -156,61 +155,31 @@ def _rules(study: Study, scale: Scale) -> Table:
 
 
 def _show_places(screen: Console, study: Study, scale: Scale) -> None:
-    """Print the tight places of the governing rule, and what stands beside the path."""
+    """Print the tight places of the governing rule, on the path or beside it, and how wide each rule was checked."""
     governing = study.governing
-    profile, check = study.profile, governing.check
     table = compact_table(
-        "tight place", f"at {scale.distance_unit}", "latitude, longitude", f"ground {scale.height_unit}", "cover",
-        "clearance", "needs", "surplus",
+        "tight place", f"at {scale.distance_unit}", "aside", "latitude, longitude", f"ground {scale.height_unit}",
+        "cover", "clearance", "needs", "surplus",
     )  # fmt: skip
-    for number, index in enumerate(check.tight, start=1):
+    for number, place in enumerate(governing.places, start=1):
+        heights = (place.ground_m, place.cover_m, place.clearance_m, place.required_m, place.surplus_m)
         table.add_row(
             f"{number}",
-            scale.distance(profile.distance_m[index]),
-            f"{profile.latitude[index]:.5f}, {profile.longitude[index]:.5f}",
-            *(
-                scale.height(values[index])
-                for values in (
-                    profile.ground_m,
-                    profile.cover_m,
-                    check.clearance_m,
-                    check.required_m,
-                    check.surplus_m,
-                )
-            ),
+            scale.distance(place.distance_m),
+            f"{scale.height(abs(place.offset_m), 0)} {place.side}" if round(place.offset_m) else "-",
+            f"{place.latitude:.5f}, {place.longitude:.5f}",
+            *(scale.height(height) for height in heights),
         )
-    screen.print(
-        f"\nTight places, rule {check.rule.label or '-'} at k = {check.rule.k:.3f}",
-        style="bold",
-        markup=False,
-        soft_wrap=True,
-    )
+    rule = governing.check.rule
+    screen.print(f"\nTight places, rule {rule.label or '-'} at k = {rule.k:.3f}", style="bold", soft_wrap=True)
     screen.print(table)
-    for result in study.rules:
-        if result is governing or not _clear_beside(result):
-            beside = _beside(study, result, scale)
-            screen.print(beside, markup=False, soft_wrap=True, end="\n" if beside else "")
-
-
-def _clear_beside(result: RuleResult) -> bool:
-    return result.corridor is None or result.corridor.passes
-
-
-def _beside(study: Study, result: RuleResult, scale: Scale) -> str:
-    """Say where beside the path one rule is tightest; nothing for a rule that asks for no part of the zone."""
-    corridor = result.corridor
-    if corridor is None:
-        return ""
-    width = f"{scale.height(corridor.half_width_m)} {scale.height_unit} to each side"
-    seen = f" ({corridor.missing_share:.0%} of it without ground)" if corridor.missing_share else ""
-    if corridor.offset_m == 0.0:
-        return f"Beside the path, {width}{seen}: nothing rises higher into the zone than the path itself."
-    where = scale.distance(study.profile.distance_m[corridor.distance_index])
-    return (
-        f"Beside the path, k = {result.check.rule.k:.3f}, {width}{seen}: tightest"
-        f" {scale.height(abs(corridor.offset_m))} {scale.height_unit} to the {corridor.side}"
-        f" at {where} {scale.distance_unit}, surplus {scale.height(corridor.surplus_m)} {scale.height_unit}."
-    )
+    for corridor in (result.corridor for result in study.rules):
+        if corridor is not None:
+            width = f"{scale.height(corridor.half_width_m)} {scale.height_unit} to each side"
+            seen = corridor.need.missing_share
+            unseen = f", {seen:.0%} of it without ground" if seen else ""
+            screen.print(f"Checked across the path too: {width}{unseen}.", soft_wrap=True)
+            break
 
 
 def _show_reflections(screen: Console, study: Study, scale: Scale) -> None:

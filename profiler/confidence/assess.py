@@ -199,7 +199,7 @@ def _nominal(
         raise InputError("rules: none given: must be at least one")
     centre_a, centre_b = float(ground[0]) + antennas[0], float(ground[-1]) + antennas[1]
     path = (distance, ground + cover, centre_a, centre_b, frequency_hz)
-    surplus = [check_rule(*path, rule, places=1).surplus_m for rule in rules]
+    surplus = [check_rule(*path, rule).surplus_m for rule in rules]
     return Nominal(
         surplus_m=np.asarray(surplus) - not_negative("beside_m", beside_m, "m"),
         inverse_k=np.asarray([1.0 / rule.k for rule in rules]),

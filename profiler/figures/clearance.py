@@ -14,7 +14,7 @@ from profiler.figures import style
 from profiler.figures.blocks import foot, head
 from profiler.figures.key import draw_key
 from profiler.figures.page import LINE_IN, Page
-from profiler.figures.places import TightPlace, numbered_places, spread
+from profiler.figures.places import spread
 from profiler.figures.profile import AXES_IN, draw_profile, draw_tight_places, scene
 from profiler.figures.scale import Scale, nice_ticks
 from profiler.figures.side import title_block
@@ -26,7 +26,7 @@ if TYPE_CHECKING:
     from matplotlib.axes import Axes
     from matplotlib.figure import Figure
 
-    from profiler.study.result import Study
+    from profiler.study.result import Place, Study
 
 __all__ = ["profile_figure"]
 
@@ -78,7 +78,7 @@ def profile_figure(
     for name, limits in (("distance", distance_limits), ("height", height_limits), ("surplus", surplus_limits)):
         _check_limits(name, limits)
     reach = (0.0, scale.distance(study.line.distance_m)) if distance_limits is None else distance_limits
-    places = numbered_places(study)
+    places = study.governing.places
     color = style.FAIL if places[0].surplus_m < 0 else style.PASS
     with style.defaults():
         page = Page()
@@ -127,7 +127,7 @@ def _site_names(page: Page, top: float, study: Study, scale: Scale) -> float:
     return top + depth * style.BODY * LINE_IN + 0.05
 
 
-def _numbers(page: Page, top: float, places: tuple[TightPlace, ...], scale: Scale, reach: Limits, color: str) -> float:
+def _numbers(page: Page, top: float, places: tuple[Place, ...], scale: Scale, reach: Limits, color: str) -> float:
     """Write the numbers of the tight places under the profile, moved apart where they stand close."""
     shown = [(i, each) for i, each in enumerate(places) if reach[0] <= scale.distance(each.distance_m) <= reach[1]]
     at = [_LEFT + _WIDTH * (scale.distance(each.distance_m) - reach[0]) / (reach[1] - reach[0]) for _, each in shown]
@@ -143,9 +143,7 @@ def _numbers(page: Page, top: float, places: tuple[TightPlace, ...], scale: Scal
     return top + style.BODY * LINE_IN
 
 
-def _critical(
-    page: Page, top: float, study: Study, place: TightPlace, scale: Scale, reach: Limits, color: str
-) -> float:
+def _critical(page: Page, top: float, study: Study, place: Place, scale: Scale, reach: Limits, color: str) -> float:
     """Label the critical point in words, under it as far as the room allows."""
     words = critical_words(study, scale)
     x = scale.distance(place.distance_m)
@@ -163,7 +161,7 @@ def _strips(
     page: Page,
     top: float,
     study: Study,
-    places: tuple[TightPlace, ...],
+    places: tuple[Place, ...],
     scale: Scale,
     reach: Limits,
     surplus_limits: Limits | None,

@@ -11,7 +11,7 @@ from numpy.typing import NDArray
 from profiler.figures import style
 from profiler.figures.axes import draw_grid, label_side
 from profiler.figures.page import Page
-from profiler.figures.places import TightPlace, rule_position
+from profiler.figures.places import rule_position
 from profiler.figures.scale import Scale, k_text, minus, nice_ticks
 from profiler.geometry import ray_height
 from profiler.models import frozen_array
@@ -20,7 +20,7 @@ from profiler.units import Float
 if TYPE_CHECKING:
     from matplotlib.axes import Axes
 
-    from profiler.study.result import Study
+    from profiler.study.result import Place, Study
 
 __all__ = ["AXES_IN", "Scene", "draw_profile", "draw_tight_places", "scene", "thinned"]
 
@@ -76,7 +76,7 @@ def scene(study: Study, scale: Scale) -> Scene:
     """Gather what the profile draws, over the earth bulged at the governing rule's k."""
     profile, result = study.profile, study.governing
     check = result.check
-    keep = np.union1d(thinned(profile.surface_m), check.tight)
+    keep = np.union1d(thinned(profile.surface_m), [place.index for place in result.places])
     bulged, x = profile.ground_m + check.bulge_m, profile.distance_m
     mirrors = [each.distance_m for each in result.reflections if not each.screened]
     band = _surface_band(study)
@@ -180,9 +180,7 @@ def _height_limits(view: Scene) -> tuple[float, float]:
     return low - 0.12 * span, top + 0.05 * span
 
 
-def draw_tight_places(
-    axes: Axes, places: tuple[TightPlace, ...], scale: Scale, *, on_surface: bool, color: str
-) -> None:
+def draw_tight_places(axes: Axes, places: tuple[Place, ...], scale: Scale, *, on_surface: bool, color: str) -> None:
     """Mark the tight places: a thin line down through the axes, and on the profile a mark on the surface itself."""
     x = scale.distance(np.array([each.distance_m for each in places]))
     y = scale.height(np.array([each.surface_m + each.bulge_m for each in places]))

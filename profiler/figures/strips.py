@@ -10,7 +10,7 @@ import numpy as np
 from profiler.figures import style
 from profiler.figures.axes import draw_grid, label_side
 from profiler.figures.page import Page
-from profiler.figures.places import TightPlace, rule_position, rules_by_surplus, surplus_drawn
+from profiler.figures.places import rule_position, rules_by_surplus, surplus_drawn
 from profiler.figures.profile import AXES_IN, thinned
 from profiler.figures.scale import Scale, minus, nice_ticks
 from profiler.units import Float
@@ -18,7 +18,7 @@ from profiler.units import Float
 if TYPE_CHECKING:
     from matplotlib.axes import Axes
 
-    from profiler.study.result import Relief, Study
+    from profiler.study.result import Place, Relief, Study
 
 __all__ = ["draw_relief", "draw_surplus", "hillshade", "mark_on_relief", "north_on_page", "rule_look"]
 
@@ -27,9 +27,9 @@ _MOST_ALONG, _MOST_ACROSS = 1200, 160
 
 def rule_look(position: int) -> tuple[str, tuple[float, ...]]:
     """Colour and dashes of a rule by its place in the hop file, the same on every figure."""
-    count = len(style.RULE_COLOURS)
+    count = len(style.RULE_COLORS)
     # from the sixth rule on the colours meet other dashes
-    return style.RULE_COLOURS[position % count], style.RULE_DASHES[(position + position // count) % count]
+    return style.RULE_COLORS[position % count], style.RULE_DASHES[(position + position // count) % count]
 
 
 def draw_surplus(
@@ -130,7 +130,7 @@ def draw_relief(
     label_side(axes, f"left or right\nof path, {scale.distance_unit}", width_in=AXES_IN)
 
 
-def mark_on_relief(axes: Axes, places: tuple[TightPlace, ...], scale: Scale, *, color: str) -> None:
+def mark_on_relief(axes: Axes, places: tuple[Place, ...], scale: Scale, *, color: str) -> None:
     """Mark the tight places on the ground seen from above."""
     x = scale.distance(np.array([each.distance_m for each in places]))
     y = scale.distance(np.array([each.offset_m for each in places]))

@@ -4,10 +4,11 @@ from __future__ import annotations
 
 from typing import TYPE_CHECKING
 
-from profiler.figures.places import critical_place, place_words
+from profiler.figures.places import place_words
 from profiler.figures.scale import Scale, k_text, minus, position_text, required_text
 from profiler.figures.text import missing_letters
 from profiler.models import Hop, Site
+from profiler.units import MINUTES_PER_YEAR
 
 if TYPE_CHECKING:
     from profiler.availability import Availability
@@ -38,7 +39,7 @@ def verdict_word(passes: bool) -> str:
 def verdict_sentence(study: Study, scale: Scale) -> str:
     """Say why: the least surplus, where and under which rule, and whether the objective is met."""
     result = study.governing
-    place = critical_place(study, result)
+    place = result.critical
     amount, where = scale.height_text(abs(place.surplus_m)), scale.distance_text(place.distance_m)
     failing = sum(not each.passes for each in study.rules)
     count, required = len(study.rules), required_text(result.check.rule, scale)
@@ -121,9 +122,9 @@ def site_rows(study: Study, scale: Scale) -> list[tuple[str, str, str]]:
     ]
 
 
-def rule_lines(study: Study, result: RuleResult, scale: Scale) -> tuple[str, str, str]:
+def rule_lines(result: RuleResult, scale: Scale) -> tuple[str, str, str]:
     """Three lines of a rule: what it asks, its verdict, and the numbers behind it."""
-    place = critical_place(study, result)
+    place = result.critical
     rule = result.check.rule
     title = required_text(rule, scale) + (f" ({rule.label})" if rule.label else "")
     amount = scale.height_text(abs(place.surplus_m))
@@ -135,9 +136,9 @@ def rule_lines(study: Study, result: RuleResult, scale: Scale) -> tuple[str, str
 
 def critical_words(study: Study, scale: Scale) -> str:
     """Label of the critical point."""
-    place = critical_place(study, study.governing)
+    place = study.governing.critical
     state = f"{scale.height_text(abs(place.surplus_m))} {'short' if place.surplus_m < 0 else 'to spare'}"
-    return f"Tightest: {place_words(study, place, scale)}, {state}"
+    return f"Tightest: {place_words(place, scale)}, {state}"
 
 
 def ground_notes(study: Study, scale: Scale) -> list[str]:
@@ -202,7 +203,7 @@ def minutes_text(minutes: float) -> str:
     >>> minutes_text(0.012), minutes_text(53.2), minutes_text(3000.0), minutes_text(525_960.0)
     ('0.72 s a year', '53 min a year', '50 h a year', 'all the time')
     """
-    if minutes >= 525_000.0:
+    if minutes > 0.998 * MINUTES_PER_YEAR:
         return "all the time"
     value, unit = (minutes, "min") if minutes < 600.0 else (minutes / 60.0, "h")
     if minutes < 1.0:

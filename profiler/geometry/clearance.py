@@ -23,8 +23,7 @@ misses by less is met."""
 class RuleCheck:
     """One rule held against one profile; arrays are (n,) along the path.
 
-    ``ratio`` is clearance/F1, NaN at the ends where F1 is 0. ``critical`` is the index of least surplus; ``tight``
-    are the indices of the separate tight places, tightest first (the first is ``critical``).
+    ``ratio`` is clearance/F1, NaN at the ends where F1 is 0. ``critical`` is the index of least surplus.
     """
 
     rule: Rule
@@ -35,7 +34,6 @@ class RuleCheck:
     surplus_m: Float
     ratio: Float
     critical: int
-    tight: tuple[int, ...]
 
     @property
     def passes(self) -> bool:
@@ -55,8 +53,6 @@ def check_rule(
     centre_b_m: float,
     frequency_hz: float,
     rule: Rule,
-    *,
-    places: int = 8,
 ) -> RuleCheck:
     """Clearance of one profile under one rule, and where it is least.
 
@@ -76,9 +72,6 @@ def check_rule(
         Frequency, more than 0 Hz.
     rule
         The clearance rule, carried into the result.
-    places
-        How many separate tight places to look for, 1 or more; those with more than twice the widest F1 to spare beyond
-        the tightest are left out.
 
     Returns
     -------
@@ -111,8 +104,6 @@ def check_rule(
     required = rule.fresnel_fraction * f1 + rule.margin_m
     surplus = clearance - required
     ratio = np.divide(clearance, f1, out=np.full_like(f1, np.nan), where=f1 > 0)
-    widest = float(f1.max())
-    tight = tight_places(surplus, rise_m=max(2.0, 0.2 * widest), within_m=2.0 * widest, places=places)
     return RuleCheck(
         rule=rule,
         bulge_m=frozen_array(bulge),
@@ -121,8 +112,7 @@ def check_rule(
         required_m=frozen_array(required),
         surplus_m=frozen_array(surplus),
         ratio=frozen_array(ratio),
-        critical=tight[0],
-        tight=tight,
+        critical=int(np.argmin(surplus)),
     )
 
 

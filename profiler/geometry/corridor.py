@@ -36,25 +36,31 @@ class CorridorNeed:
 
 @dataclass(frozen=True, slots=True, eq=False)
 class CorridorCheck:
-    """The place in the whole width of the required zone where it is tightest.
+    """One rule held against the whole width of its zone.
 
-    ``distance_index`` and ``offset_m`` say where (positive to the right of A→B), ``required_m`` what the rule asks
-    there, above the surface. ``least_surplus_m`` (n,) is the least surplus over the width at every distance.
+    ``least_surplus_m`` (n,) is the least surplus over the width at every distance, and ``critical`` the index of the
+    least of all; ``need`` says where across the path it is. ``across`` is the number of points across.
     """
 
+    need: CorridorNeed
     half_width_m: float
     across: int
-    distance_index: int
-    offset_m: float
-    surface_m: float
-    required_m: float
-    surplus_m: float
     least_surplus_m: Float
-    missing_share: float
+    critical: int
+
+    @property
+    def surplus_m(self) -> float:
+        """Least surplus over length and width."""
+        return float(self.least_surplus_m[self.critical])
+
+    @property
+    def offset_m(self) -> float:
+        """Where across the path the tightest place is, positive to the right of A→B."""
+        return float(self.need.offset_m[self.critical])
 
     @property
     def passes(self) -> bool:
-        """Whether no ground beside the path rises into the required zone."""
+        """Whether no ground on the path or beside it rises into the required zone."""
         return self.surplus_m >= -ROUNDING_M
 
     @property
@@ -227,16 +233,10 @@ def check_corridor(
     distance = np.asarray(distance_m, dtype=float)
     surplus = ray_height(distance, centre_a_m, centre_b_m) - need.least_ray_m
     radius = rule.fresnel_fraction * fresnel_radius(distance, distance[-1] - distance, frequency_hz)
-    at = int(np.argmin(surplus))
-    offset, half_width = float(need.offset_m[at]), float(radius[at])
     return CorridorCheck(
+        need=need,
         half_width_m=float(radius.max()),
         across=int(np.asarray(offset_m).shape[1]),
-        distance_index=at,
-        offset_m=offset,
-        surface_m=float(need.surface_m[at]),
-        required_m=float(np.sqrt(max(half_width**2 - offset**2, 0.0)) + rule.margin_m),
-        surplus_m=float(surplus[at]),
         least_surplus_m=frozen_array(surplus),
-        missing_share=need.missing_share,
+        critical=int(np.argmin(surplus)),
     )

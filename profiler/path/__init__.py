@@ -4,6 +4,6 @@ The only user of pyproj, which is imported inside the functions that need it: it
 """
 
 from profiler.path.datum import DATUMS, to_wgs84
-from profiler.path.line import LONGEST_M, PathLine, across, geodesic, locate, midpoint, trace
+from profiler.path.line import LONGEST_M, PathLine, across, beside, geodesic, locate, midpoint, trace
 
-__all__ = ["DATUMS", "LONGEST_M", "PathLine", "across", "geodesic", "locate", "midpoint", "to_wgs84", "trace"]
+__all__ = ["DATUMS", "LONGEST_M", "PathLine", "across", "beside", "geodesic", "locate", "midpoint", "to_wgs84", "trace"]

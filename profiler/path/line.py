@@ -24,6 +24,7 @@ __all__ = [
     "LONGEST_M",
     "PathLine",
     "across",
+    "beside",
     "check_positions",
     "geodesic",
     "locate",
@@ -259,6 +260,20 @@ def across(line: PathLine, offset_m: ArrayLike) -> tuple[Float, Float]:
     longitude, latitude, azimuth, offset = (array.ravel() for array in arrays)
     lon, lat, _ = _geod().fwd(longitude, latitude, azimuth + 90.0, offset)
     return np.asarray(lon).reshape(arrays[0].shape), np.asarray(lat).reshape(arrays[0].shape)
+
+
+def beside(line: PathLine, index: int, offset_m: float) -> tuple[float, float]:
+    """Longitude and latitude of one place beside the path: `across` for a single point.
+
+    Examples
+    --------
+    >>> line = trace(0, 0, 0, 0.1, spacing_m=20e3)
+    >>> [round(each, 6) for each in beside(line, 0, 50.0)]
+    [0.000449, 0.0]
+    """
+    start = (float(line.longitude[index]), float(line.latitude[index]), float(line.azimuth_deg[index]) + 90.0)
+    longitude, latitude, _ = _geod().fwd(*start, offset_m)
+    return float(longitude), float(latitude)
 
 
 def locate(line: PathLine, longitude: ArrayLike, latitude: ArrayLike) -> tuple[Float, Float]:

@@ -15,7 +15,6 @@ from profiler.study.result import (
     Study,
     TerrainUse,
     Verdict,
-    least_surplus,
 )
 from profiler.study.run import open_hop_terrain, run_study
 
@@ -30,7 +29,6 @@ __all__ = [
     "Study",
     "TerrainUse",
     "Verdict",
-    "least_surplus",
     "open_hop_terrain",
     "plain",
     "point_table",

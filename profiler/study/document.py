@@ -59,7 +59,7 @@ def to_document(study: Study) -> dict[str, Any]:
         "hop": _hop(study),
         "path": _path(study),
         "terrain": plain(study.terrain),
-        "rules": [_rule(study, result) for result in study.rules],
+        "rules": [_rule(result) for result in study.rules],
         "diffraction": plain(study.diffraction),
         "budget": None if study.budget is None else _budget(study.budget),
         "availability": _availability(study),
@@ -110,51 +110,29 @@ def _path(study: Study) -> dict[str, Any]:
     }
 
 
-def _rule(study: Study, result: RuleResult) -> dict[str, Any]:
+def _rule(result: RuleResult) -> dict[str, Any]:
     check = result.check
     return {
         **plain(check.rule),
         "passes": result.passes,
         "line_of_sight": check.line_of_sight,
-        "critical": _point(study, result, check.critical),
-        "tight": [_point(study, result, index) for index in check.tight],
-        "across": None if result.corridor is None else _across(study, result.corridor),
+        "critical": plain(result.critical),
+        "tight": plain(result.places),
+        "across": None if result.corridor is None else _across(result.corridor),
         "elevation_a_deg": result.elevation_a_deg,
         "elevation_b_deg": result.elevation_b_deg,
         "reflections": [{**plain(place), "screened": place.screened} for place in result.reflections],
     }
 
 
-def _point(study: Study, result: RuleResult, index: int) -> dict[str, Any]:
-    """Give one point of the profile under one rule."""
-    check, profile = result.check, study.profile
-    return {
-        "distance_m": float(profile.distance_m[index]),
-        "longitude": float(profile.longitude[index]),
-        "latitude": float(profile.latitude[index]),
-        "ground_m": float(profile.ground_m[index]),
-        "cover_m": float(profile.cover_m[index]),
-        "bulge_m": float(check.bulge_m[index]),
-        "f1_m": float(check.f1_m[index]),
-        "clearance_m": float(check.clearance_m[index]),
-        "required_m": float(check.required_m[index]),
-        "surplus_m": float(check.surplus_m[index]),
-        "ratio": float(check.ratio[index]),
-    }
-
-
-def _across(study: Study, corridor: CorridorCheck) -> dict[str, Any]:
-    """Give the tightest place beside the path under one rule."""
+def _across(corridor: CorridorCheck) -> dict[str, Any]:
+    """Say how wide one rule was checked, and what was not seen."""
     return {
         "passes": corridor.passes,
-        "distance_m": float(study.profile.distance_m[corridor.distance_index]),
-        "offset_m": corridor.offset_m,
-        "side": corridor.side,
-        "surface_m": corridor.surface_m,
         "surplus_m": corridor.surplus_m,
         "half_width_m": corridor.half_width_m,
         "points_across": corridor.across,
-        "missing_share": corridor.missing_share,
+        "missing_share": corridor.need.missing_share,
     }
 
 

@@ -67,9 +67,10 @@ def read_ground(
     """
     line, cell_m = _lay_path(hop, terrain)
     samples = terrain.sample(line.longitude, line.latitude)
-    ground_m, filled, fill_notes = _without_gaps(hop, line, samples)
+    ground_m = np.array(samples.ground_m)
     site_notes = _with_true_sites(hop, terrain, line, ground_m)
-    ground_m, differences = _with_surveys(hop, ground_m)
+    differences = _with_surveys(hop, ground_m)
+    ground_m, filled, fill_notes = _without_gaps(hop, line, ground_m)
     cover = _cover(hop, line, line.longitude, line.latitude)
     surveyed = np.zeros(line.points, dtype=bool)
     surveyed[[0, -1]] = [difference is not None for difference in differences]
@@ -79,8 +80,8 @@ def read_ground(
         latitude=line.latitude,
         ground_m=frozen_array(ground_m),
         cover_m=cover.cover_m,
-        filled=filled,
-        surveyed=surveyed,
+        filled=frozen_array(filled, np.bool_),
+        surveyed=frozen_array(surveyed, np.bool_),
     )
     use = TerrainUse(
         method=hop.terrain.method,
@@ -129,9 +130,9 @@ def _lay_path(hop: Hop, terrain: Terrain) -> tuple[PathLine, float]:
     return trace(*ends, spacing_m=spacing_m), cell_m
 
 
-def _without_gaps(hop: Hop, line: PathLine, samples: Samples) -> tuple[Float, np.ndarray, tuple[str, ...]]:
+def _without_gaps(hop: Hop, line: PathLine, ground_m: Float) -> tuple[Float, np.ndarray, tuple[str, ...]]:
     """Ground with its gaps filled where the hop file allows it; otherwise a gap is an error that says where."""
-    ground_m, filled = np.array(samples.ground_m), np.zeros(line.points, dtype=bool)
+    filled = np.zeros(line.points, dtype=bool)
     notes: tuple[str, ...] = ()
     if hop.terrain.missing == "interpolate":
         ground_m, filled = fill_missing(line.along_m, ground_m)
@@ -154,18 +155,19 @@ def _with_true_sites(hop: Hop, terrain: Terrain, line: PathLine, ground_m: Float
     return ("ground at the sites: bilinear, as the highest cell around would lift the antennas",)
 
 
-def _with_surveys(hop: Hop, ground_m: Float) -> tuple[Float, tuple[float | None, float | None]]:
+def _with_surveys(hop: Hop, ground_m: Float) -> tuple[float | None, float | None]:
     """Put the surveyed ground in at the sites, and say how far the raster was from it."""
 
     def difference(site: Site, raster_m: float) -> float | None:
-        return None if site.surveyed_ground_m is None else site.surveyed_ground_m - raster_m
+        survey_m = site.surveyed_ground_m
+        return None if survey_m is None or np.isnan(raster_m) else survey_m - raster_m
 
     differences = difference(hop.site_a, float(ground_m[0])), difference(hop.site_b, float(ground_m[-1]))
     if hop.site_a.surveyed_ground_m is not None:
         ground_m[0] = hop.site_a.surveyed_ground_m
     if hop.site_b.surveyed_ground_m is not None:
         ground_m[-1] = hop.site_b.surveyed_ground_m
-    return ground_m, differences
+    return differences
 
 
 def _cover(hop: Hop, line: PathLine, longitude: Float, latitude: Float) -> Cover:
@@ -224,7 +226,7 @@ def _corridor(
     cover = _cover(hop, line, longitude, latitude)
     # at the sites the zone has no width: what a survey or a fill says of the path holds for the whole row there
     surface = np.where(offset == 0.0, profile.surface_m[:, None], samples.ground_m + cover.cover_m)
-    return Corridor(frozen_array(offset), frozen_array(surface)), [*_files(samples), *cover.files]
+    return Corridor(frozen_array(offset), frozen_array(surface), cover.cover_m), [*_files(samples), *cover.files]
 
 
 def _relief(terrain: Terrain, line: PathLine) -> Relief:

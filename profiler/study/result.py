@@ -22,15 +22,47 @@ if TYPE_CHECKING:  # what the hop does not ask for is not loaded
 __all__ = ["Corridor", "Place", "Provenance", "Relief", "RuleResult", "Study", "TerrainUse", "Verdict"]
 
 
+@dataclass(frozen=True, slots=True)
+class Place:
+    """Where a rule is tight: ``distance_m`` from A, ``offset_m`` across the path (positive to the right of A→B).
+
+    ``index`` is the point of the profile there; position, ground and cover are those of the place itself, and
+    ``required_m`` is what the rule asks above its surface. ``filled``: the ground was missing and interpolated.
+    """
+
+    index: int
+    distance_m: float
+    offset_m: float
+    side: str
+    longitude: float
+    latitude: float
+    ground_m: float
+    cover_m: float
+    filled: bool
+    bulge_m: float
+    f1_m: float
+    clearance_m: float
+    required_m: float
+    surplus_m: float
+    ratio: float
+
+    @property
+    def surface_m(self) -> float:
+        """Ground plus cover, above the vertical datum."""
+        return self.ground_m + self.cover_m
+
+
 @dataclass(frozen=True, slots=True, eq=False)
 class RuleResult:
     """One rule along the path and across it, with the angles and the reflections at its k.
 
     ``corridor`` is None for a rule that asks for no part of the Fresnel zone: nothing beside the path matters to it.
+    ``places`` are the separate tight places, on the path or beside it, tightest first.
     """
 
     check: RuleCheck
     corridor: CorridorCheck | None
+    places: tuple[Place, ...]
     elevation_a_deg: float
     elevation_b_deg: float
     reflections: tuple[Reflection, ...]
@@ -39,6 +71,11 @@ class RuleResult:
     def passes(self) -> bool:
         """Whether the rule is met along the path and across it."""
         return self.check.passes and (self.corridor is None or self.corridor.passes)
+
+    @property
+    def critical(self) -> Place:
+        """The place of least surplus."""
+        return self.places[0]
 
 
 @dataclass(frozen=True, slots=True)
@@ -59,10 +96,11 @@ class TerrainUse:
 
 @dataclass(frozen=True, slots=True, eq=False)
 class Corridor:
-    """Surface beside the path, (n, across), out to the edge of the widest zone that a rule asks for."""
+    """Surface and cover beside the path, (n, across), out to the edge of the widest zone that a rule asks for."""
 
     offset_m: Float
     surface_m: Float
+    cover_m: Float
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -75,24 +113,16 @@ class Relief:
 
 
 @dataclass(frozen=True, slots=True)
-class Place:
-    """A point of the path with its position."""
-
-    index: int
-    distance_m: float
-    longitude: float
-    latitude: float
-
-
-@dataclass(frozen=True, slots=True)
 class Verdict:
     """Whether the hop passes, and the sentence that says why, in metres and in feet.
 
-    ``passes`` needs every rule met and, where an objective is given, the objective met too.
+    ``passes`` needs every rule met, a fade margin of 0 dB or more where one is known, and the objective met where one
+    is set. ``has_margin`` is None without a radio that has a threshold.
     """
 
     passes: bool
     clears: bool
+    has_margin: bool | None
     meets_objective: bool | None
     headline: str
     headline_feet: str
@@ -141,23 +171,7 @@ class Study:
     assumptions: tuple[str, ...]
     warnings: tuple[str, ...]
 
-    def place(self, index: int) -> Place:
-        """Give the position of a point of the profile."""
-        profile = self.profile
-        return Place(
-            index, float(profile.distance_m[index]), float(profile.longitude[index]), float(profile.latitude[index])
-        )
-
     @property
     def governing(self) -> RuleResult:
-        """The rule with the least surplus at its critical point, along the path or across it."""
-        return min(self.rules, key=least_surplus)
-
-
-def least_surplus(result: RuleResult) -> float:
-    """Least surplus of a rule, along the path and across it, metres.
-
-    The corridor includes the points of the path itself, so it is never the greater of the two where it exists.
-    """
-    along = float(result.check.surplus_m[result.check.critical])
-    return along if result.corridor is None else min(along, result.corridor.surplus_m)
+        """The rule with the least surplus at its critical place."""
+        return min(self.rules, key=lambda result: result.critical.surplus_m)

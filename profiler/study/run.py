@@ -15,11 +15,12 @@ from profiler.models import ConfidenceChoice, Hop, Rule
 from profiler.study.climate import ClimateUse, climate_numbers
 from profiler.study.ground import Ground, read_ground, require_above_cover
 from profiler.study.link import Air, Link, air_along, link
-from profiler.study.outage import OutageResult
+from profiler.study.places import find_places
 from profiler.study.provenance import provenance
-from profiler.study.result import RuleResult, Study, Verdict, least_surplus
+from profiler.study.result import RuleResult, Study
+from profiler.study.verdict import ground_warnings, judge
 from profiler.terrain import Terrain, open_terrain, require_inside
-from profiler.units import FOOT_M, STATUTE_MILE_M, Float
+from profiler.units import Float
 
 if TYPE_CHECKING:
     from profiler.confidence import Confidence
@@ -106,10 +107,10 @@ def run_study(hop: Hop, terrain: Terrain | None = None, *, relief: bool = False,
         corridor=ground.corridor,
         climate=climate,
         relief=ground.relief,
-        verdict=_verdict(hop, ground, rules, found.outage),
+        verdict=judge(hop, rules, found.budget, found.outage.meets),
         provenance=provenance(hop, ground.files),
         assumptions=_assumptions(hop, ground, climate, air, found),
-        warnings=_warnings(hop, rules, found),
+        warnings=_warnings(hop, ground, rules, found),
     )
 
 
@@ -131,9 +132,11 @@ def _check(hop: Hop, ground: Ground, rule: Rule, centre_a_m: float, centre_b_m: 
         beside = (profile.distance_m, ground.corridor.offset_m, ground.corridor.surface_m)
         corridor = check_corridor(*beside, *path[2:], rule)
     elevation_a_deg, elevation_b_deg = _angles(ground, centre_a_m, centre_b_m, rule.k)
+    check = check_rule(*path, rule)
     return RuleResult(
-        check=check_rule(*path, rule),
+        check=check,
         corridor=corridor,
+        places=find_places(check, corridor, profile, ground.corridor, ground.line),
         elevation_a_deg=elevation_a_deg,
         elevation_b_deg=elevation_b_deg,
         reflections=find_reflections(*path, k=rule.k),
@@ -183,38 +186,6 @@ def _beside(result: RuleResult) -> Float:
     return np.zeros_like(along) if result.corridor is None else np.maximum(along - result.corridor.least_surplus_m, 0.0)
 
 
-def _verdict(hop: Hop, ground: Ground, rules: Sequence[RuleResult], outage: OutageResult) -> Verdict:
-    """Say whether the hop passes and why, worst rule first, in both unit systems."""
-    clears = all(result.passes for result in rules)
-    return Verdict(
-        passes=clears and (outage.meets is True or not hop.has_objective),
-        clears=clears,
-        meets_objective=outage.meets,
-        headline=_headline(hop, ground, rules, outage, feet=False),
-        headline_feet=_headline(hop, ground, rules, outage, feet=True),
-    )
-
-
-def _headline(hop: Hop, ground: Ground, rules: Sequence[RuleResult], outage: OutageResult, *, feet: bool) -> str:
-    """Say in one sentence by how much, where and under which rule the hop clears or fails."""
-    metre, kilometre = (FOOT_M, STATUTE_MILE_M) if feet else (1.0, 1000.0)
-    short, far = ("ft", "mi") if feet else ("m", "km")
-    worst = min(rules, key=least_surplus)
-    rule, corridor = worst.check.rule, worst.corridor
-    at, aside = worst.check.critical, ""
-    if corridor is not None and corridor.offset_m != 0.0:
-        at = corridor.distance_index
-        aside = f", {abs(corridor.offset_m) / metre:.0f} {short} {corridor.side} of the path"
-    surplus = least_surplus(worst) / metre
-    clearance = f"clears, {surplus:.1f}" if surplus >= 0 else f"does not clear, {-surplus:.1f}"
-    asked = f"{rule.fresnel_fraction:g} F1" + (f" + {rule.margin_m / metre:.1f} {short}" if rule.margin_m else "")
-    place = f"{ground.profile.distance_m[at] / kilometre:.2f} {far} from {hop.site_a.name}{aside}"
-    judged = {True: "meets", False: "misses", None: "cannot be held against"}[outage.meets]
-    objective = f"; {judged} the availability objective" if hop.has_objective else ""
-    sense = "to spare" if surplus >= 0 else "short"
-    return f"{clearance} {short} {sense} {place} (rule {asked} at k = {rule.k:.2f}){objective}"
-
-
 def _assumptions(hop: Hop, ground: Ground, climate: ClimateUse, air: Air, found: Link) -> tuple[str, ...]:
     """Everything that was assumed, in the order of the stages, each thing once."""
     terrain = ground.terrain
@@ -248,14 +219,12 @@ def _doubt_assumptions(choice: ConfidenceChoice) -> tuple[str, ...]:
     )
 
 
-def _warnings(hop: Hop, rules: Sequence[RuleResult], found: Link) -> tuple[str, ...]:
+def _warnings(hop: Hop, ground: Ground, rules: Sequence[RuleResult], found: Link) -> tuple[str, ...]:
     """Every warning of every stage, each once."""
-    unseen = max((rule.corridor.missing_share for rule in rules if rule.corridor is not None), default=0.0)
-    beside = f"beside the path {unseen:.1%} of the points in the zone have no height and were not checked"
     return tuple(
         dict.fromkeys(
             [
-                *([beside] if unseen else []),
+                *ground_warnings(hop, ground.terrain, rules, ground.line.points),
                 *(warning for loss in found.losses.values() for warning in loss.warnings),
                 *atmosphere_warnings(hop.frequency_hz),
                 *(found.budget.warnings if found.budget is not None else ()),
