@@ -512,7 +512,12 @@ def test_a_wall_beside_the_path_fails_the_rule_and_names_the_side(land, side, na
     assert corridor.surplus_m == pytest.approx(surplus_m, abs=0.2)  # CELL_EW_M is rounded
     assert corridor.half_width_m == pytest.approx(radius_m, rel=1e-3)
     assert run_study(swapped(hop)).rules[0].corridor.side == {"right": "left", "left": "right"}[name]
-    assert to_document(study)["rules"][0]["across"]["side"] == name
+    critical = to_document(study)["rules"][0]["critical"]
+    assert (critical["side"], critical["surplus_m"]) == (name, corridor.surplus_m)
+    assert critical["ground_m"] - GROUND_M == pytest.approx(flank_m, abs=0.2)
+    assert critical["clearance_m"] - critical["required_m"] == pytest.approx(critical["surplus_m"])
+    east_m = (critical["longitude"] - 9.0) * 111_320 * math.cos(math.radians(46.09))
+    assert east_m == pytest.approx(corridor.offset_m, abs=0.2)
 
 
 def test_every_rule_looks_as_far_aside_as_its_own_zone(land):
@@ -869,3 +874,39 @@ def test_ground_beside_the_path_counts_in_the_confidence(land):
     assert short > 5.0
     assert walled.confidence.chance.value < free.confidence.chance.value
     assert short < walled.confidence.sure[0].raise_m < short + 3 * 2.0 * 2**0.5
+
+
+def test_a_link_without_margin_does_not_pass(land):
+    """Clear ground does not help a radio that is too weak."""
+    weak = replace(RADIO, terminal_a=replace(RADIO.terminal_a, power_dbm=-60.0))
+    study = run_study(hop_over(land(), radio=weak, rules=(Rule(4 / 3, 0.0),)))
+    assert study.verdict.clears
+    assert study.verdict.has_margin is False
+    assert not study.verdict.passes
+    assert "no fade margin (-" in study.verdict.headline
+
+
+def test_invented_coarse_and_doubtful_ground_is_warned_of(land, write_raster):
+    heights = np.full((ROWS, COLUMNS), GROUND_M)
+    heights[MID_ROW - 20 : MID_ROW + 20] = -9999
+    holed = land(heights, "holed.tif", nodata=-9999)
+    filled = run_study(with_terrain(hop_over(holed, rules=(Rule(4 / 3, 1.0),)), missing="interpolate"))
+    assert any("ground is interpolated at" in line for line in filled.warnings)
+    assert filled.rules[0].critical.filled
+    assert "where the ground is interpolated" in filled.verdict.headline
+    hop = hop_over(land())
+    surveyed = replace(hop, site_a=replace(hop.site_a, surveyed_ground_m=GROUND_M - 40.0))
+    assert any("surveyed ground at south is 40.0 m below the terrain" in line for line in run_study(surveyed).warnings)
+    assert any("points stand 100 m apart" in line for line in run_study(with_terrain(hop, spacing_m=100.0)).warnings)
+    coarse = write_raster("coarse.tif", np.full((60, 60), 100.0), north_up(8.7, 46.4, 0.01), "EPSG:4326")
+    assert any("hills narrower than that" in line for line in run_study(hop_over(coarse)).warnings)
+
+
+def test_a_survey_stands_for_missing_ground_at_its_site(land):
+    heights = np.full((ROWS, COLUMNS), GROUND_M)
+    heights[-60:] = -9999  # the south end, where site A is
+    hop = hop_over(land(heights, "cut.tif", nodata=-9999))
+    known = replace(hop, site_a=replace(hop.site_a, surveyed_ground_m=GROUND_M))
+    study = run_study(with_terrain(known, missing="interpolate"))
+    assert study.profile.filled[1]
+    assert not study.profile.filled[0]
