@@ -10,13 +10,13 @@ from __future__ import annotations
 import math
 from dataclasses import dataclass, field
 from pathlib import Path
-from typing import Literal
+from typing import Any, Literal, TypeVar, overload
 
 import numpy as np
-from numpy.typing import ArrayLike
+from numpy.typing import ArrayLike, NDArray
 
 from profiler.errors import InputError
-from profiler.units import K_MEDIAN, Float
+from profiler.units import K_MEDIAN, MINUTES_PER_YEAR, Float
 
 __all__ = [
     "AirChoice",
@@ -56,15 +56,24 @@ VigantsClimate = Literal["humid", "average", "dry"]
 KPeriod = Literal["year", "worst-month"]
 
 
-def frozen_array(values: ArrayLike) -> Float:
-    """Copy values into a read-only float64 array.
+_Kind = TypeVar("_Kind", bound=np.generic)
+
+
+@overload
+def frozen_array(values: ArrayLike) -> Float: ...
+@overload
+def frozen_array(values: ArrayLike, dtype: type[_Kind]) -> NDArray[_Kind]: ...
+def frozen_array(values: ArrayLike, dtype: type[np.generic] = np.float64) -> NDArray[Any]:
+    """Copy values into a read-only array, of float64 unless another kind is given.
 
     Examples
     --------
-    >>> frozen_array([1, 2]).flags.writeable
+    >>> frozen_array([1, 2])
+    array([1., 2.])
+    >>> frozen_array([True, False], np.bool_).flags.writeable
     False
     """
-    array = np.array(values, dtype=np.float64)
+    array = np.array(values, dtype=dtype)
     array.setflags(write=False)
     return array
 
@@ -294,7 +303,12 @@ class Objective:
             value = getattr(self, name)
             _require(value is None or 0 < value < 100, name, value, "more than 0 and under 100 %")
         minutes = self.minutes_per_year
-        _require(minutes is None or 0 < minutes < 525_960, "minutes_per_year", minutes, "more than 0 and under 525960")
+        _require(
+            minutes is None or 0 < minutes < MINUTES_PER_YEAR,
+            "minutes_per_year",
+            minutes,
+            f"more than 0 and under {MINUTES_PER_YEAR:g}",
+        )
         for name in ("severely_errored_seconds_ratio", "errored_seconds_ratio"):
             value = getattr(self, name)
             _require(value is None or 0 < value < 1, name, value, "more than 0 and under 1")
@@ -466,8 +480,7 @@ class Hop:
 class Profile:
     """Ground and cover from A to B, all arrays (n,) and read-only.
 
-    ``source`` indexes the raster that gave each ground height (-1: none). ``filled`` marks ground that was
-    interpolated by the user's leave. ``surveyed`` marks ground that a survey replaced.
+    ``filled`` marks ground that was interpolated by the user's leave, ``surveyed`` ground that a survey replaced.
     """
 
     distance_m: Float
@@ -475,8 +488,8 @@ class Profile:
     latitude: Float
     ground_m: Float
     cover_m: Float
-    filled: np.ndarray = field(repr=False)
-    surveyed: np.ndarray = field(repr=False)
+    filled: NDArray[np.bool_] = field(repr=False)
+    surveyed: NDArray[np.bool_] = field(repr=False)
 
     @property
     def surface_m(self) -> Float:

@@ -6,10 +6,12 @@ import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
 __all__ = [
+    "AGREEMENT_DB",
     "BOLTZMANN_J_K",
     "FOOT_M",
     "K_MEDIAN",
     "MEAN_EARTH_RADIUS_M",
+    "MINUTES_PER_YEAR",
     "SPEED_OF_LIGHT_M_S",
     "STATUTE_MILE_M",
     "US_SURVEY_FOOT_M",
@@ -19,7 +21,6 @@ __all__ = [
     "gradient_from_k",
     "k_from_gradient",
     "ratio_from_db",
-    "watts_from_dbm",
     "wavelength",
 ]
 
@@ -42,6 +43,12 @@ US_SURVEY_FOOT_M = 1200.0 / 3937.0
 
 STATUTE_MILE_M = 5280 * FOOT_M
 """Exact: statute mile of international feet."""
+
+MINUTES_PER_YEAR = 365.25 * 1440.0
+"""Minutes of a year of 365.25 days (the Julian year of the IAU)."""
+
+AGREEMENT_DB = 0.05
+"""Two statements of one quantity agree within half the last digit of a data sheet's tenth of a decibel."""
 
 K_MEDIAN = 4.0 / 3.0
 """Effective-earth-radius factor of the median temperate atmosphere (Rec. ITU-R P.310; P.530-18 §2.2 where unknown)."""
@@ -121,17 +128,6 @@ def dbm_from_watts(power_w: ArrayLike) -> Float:
     30.0
     """
     return np.asarray(db_from_ratio(power_w) + 30.0)
-
-
-def watts_from_dbm(level_dbm: ArrayLike) -> Float:
-    """Return the power in watts of a level in dBm.
-
-    Examples
-    --------
-    >>> float(watts_from_dbm(30.0))
-    1.0
-    """
-    return ratio_from_db(np.asarray(level_dbm, dtype=float) - 30.0)
 
 
 def wavelength(frequency_hz: ArrayLike) -> Float:

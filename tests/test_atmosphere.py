@@ -210,7 +210,7 @@ def test_rain_second_opinion():
 
 @given(st.floats(6e9, 4e10), st.floats(10.0, 200.0))
 def test_flat_drops_take_more_of_the_horizontal(frequency_hz, rain_mm_h):
-    # Falling drops are oblate: horizontal polarisation loses more, circular lies between (Oguchi; P.838-3 itself).
+    # Falling drops are oblate: horizontal polarization loses more, circular lies between (Oguchi; P.838-3 itself).
     horizontal, circular, vertical = rain_attenuation(frequency_hz, rain_mm_h, tilt_deg=[0, 45, 90])
     assert horizontal > circular > vertical
 

@@ -84,7 +84,7 @@ def test_model_is_the_published_functions():
     assert found.year_percent.multipath == pytest.approx(fade_percent(model.occurrence_percent * conversion, 20.0))
 
 
-def test_polarisation_and_signature_reach_their_methods():
+def test_polarization_and_signature_reach_their_methods():
     # Flat drops take more of the horizontal (P.838-3); each phase of a signature has its own depth (P.530-17 §5.1).
     tilted = [replace(PATH, frequency_hz=18e9, polarization=name) for name in ("horizontal", "vertical")]
     horizontal, vertical = (outage_model(path, FULL).rain_fade_001_db for path in tilted)

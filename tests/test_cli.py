@@ -212,7 +212,7 @@ def test_quiet_prints_the_verdict_only(run):
     assert err == ""
 
 
-def test_no_colour_codes_in_a_file(run):
+def test_no_color_codes_in_a_file(run):
     for words in ((), ("--no-color",)):
         assert "\x1b" not in run("study", "hop.toml", *words)[1]
 
@@ -540,7 +540,7 @@ def test_a_hop_file_that_is_not_there(refused, command):
         (("study", *changed(frequency_ghz="x")), "'--frequency-ghz': 'x' is not a valid float"),
         (("study", *changed(antenna_a="tall")), "site_a.antenna = 'tall': must be a height like 30 m or 98.4 ft"),
         (("study", *changed(antenna_b="-5")), "site_b.antenna_m = -5.0: must be more than 0 and under 2000 m"),
-        (("study", *changed(terrain="")), "terrain.paths[0] = '': must be a raster"),
+        (("study", *changed(terrain="")), "terrain.paths[0] = '': must be text in quotes, not empty"),
         (("study", *changed(terrain="gone")), "terrain.paths[0] = 'gone': must be a raster"),
         (("study", *changed(a="9.0, 46.0")), "longitude and latitude look swapped"),
         (("study", *changed(preset="none")), "rules.preset = 'none': must be one of"),

@@ -64,7 +64,7 @@ PLAIN_MODES = (RadioMode("128QAM", threshold_dbm=-70.0), RadioMode("QPSK", thres
 
 def radio(power_dbm=28.0, modes=PLAIN_MODES):
     end = Terminal(power_dbm, 1.5, gain_dbi=38.2)
-    return Radio(end, end, modes, (("polarisation mismatch by tolerance of installation", 1.0),))
+    return Radio(end, end, modes, (("polarization mismatch by tolerance of installation", 1.0),))
 
 
 def sample_hop(name="Kestrel to Gull", a=150.0, b=165.0, rules=TWO, names=("Kestrel Ridge", "Gull Head"), **more):
@@ -622,7 +622,7 @@ def test_names_are_never_taken_for_mathematics_and_missing_letters_are_told(stud
 
 
 def luminance(color):
-    """Relative luminance of a colour (WCAG 2.1, definition of relative luminance)."""
+    """Relative luminance of a color (WCAG 2.1, definition of relative luminance)."""
     parts = np.array([int(color[i : i + 2], 16) for i in (1, 3, 5)]) / 255
     linear = np.where(parts <= 0.03928, parts / 12.92, ((parts + 0.055) / 1.055) ** 2.4)
     return float(linear @ [0.2126, 0.7152, 0.0722])
@@ -637,7 +637,7 @@ def test_contrast_of_words_and_lines():
     """WCAG 2.1: 4.5 to 1 for words (1.4.3), 3 to 1 for graphics that must be told apart (1.4.11)."""
     for color in (style.INK, style.MUTED, style.PASS, style.FAIL):
         assert contrast(color, "#ffffff") >= 4.5
-    for color in (*style.RULE_COLOURS, style.RAY, style.GROUND_EDGE, style.COVER_EDGE):
+    for color in (*style.RULE_COLORS, style.RAY, style.GROUND_EDGE, style.COVER_EDGE):
         assert contrast(color, "#ffffff") >= 3.0
     assert contrast(style.GROUND_EDGE, style.GROUND) >= 3.0
 

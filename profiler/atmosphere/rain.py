@@ -67,7 +67,7 @@ def rain_coefficients(
     """Coefficients k and α of the rain attenuation γ = k·R^α (dB/km, R in mm/h).
 
     k = [kH + kV + (kH − kV)·cos²θ·cos 2τ]/2 and α = [kH·αH + kV·αV + (kH·αH − kV·αV)·cos²θ·cos 2τ]/(2k), with the
-    path's elevation θ, the polarisation's tilt τ, and kH, kV, αH, αV from the curves of P.838-3 Tables 1 to 4.
+    path's elevation θ, the polarization's tilt τ, and kH, kV, αH, αV from the curves of P.838-3 Tables 1 to 4.
 
     Parameters
     ----------
@@ -78,7 +78,7 @@ def rain_coefficients(
     elevation_deg
         Elevation of the path above the horizontal, -90 to 90 degrees; the sign does not matter.
     tilt_deg
-        Tilt of the polarisation from the horizontal, -180 to 180 degrees: 0 horizontal, 90 vertical, 45 circular.
+        Tilt of the polarization from the horizontal, -180 to 180 degrees: 0 horizontal, 90 vertical, 45 circular.
 
     Returns
     -------
@@ -127,7 +127,7 @@ def rain_attenuation(
     rain_mm_h
         Rain rate at a point, 0 mm/h or more.
     elevation_deg, tilt_deg
-        As for `rain_coefficients`: tilt 0 is horizontal, 90 vertical, 45 circular polarisation.
+        As for `rain_coefficients`: tilt 0 is horizontal, 90 vertical, 45 circular polarization.
 
     Returns
     -------

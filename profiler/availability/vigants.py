@@ -10,7 +10,7 @@ from numpy.typing import ArrayLike
 from profiler.checks import not_negative, positive
 from profiler.errors import InputError
 from profiler.models import VigantsClimate
-from profiler.units import FOOT_M, STATUTE_MILE_M, Float
+from profiler.units import FOOT_M, MINUTES_PER_YEAR, STATUTE_MILE_M, Float
 
 __all__ = [
     "ROUGHNESS_RANGE_M",
@@ -29,7 +29,6 @@ SEASON_TEMPERATURE_RANGE_K = ((35 + 459.67) / 1.8, (75 + 459.67) / 1.8)
 """Vigants's range of mean annual temperature, 35 to 75 °F (from memory)."""
 
 _SEASON_S = 8.0e6
-_YEAR_S = 365.25 * 86400.0
 _CLIMATES = {"humid": 2.0, "average": 1.0, "dry": 0.5}
 _FEWEST_SAMPLES = 3
 
@@ -170,9 +169,9 @@ def season_share(annual_temperature_k: ArrayLike | None = None) -> Float:
     Source: Vigants, BSTJ 54(1), 1975; from memory.
     """
     if annual_temperature_k is None:
-        return np.asarray(_SEASON_S / _YEAR_S)
+        return np.asarray(_SEASON_S / (60.0 * MINUTES_PER_YEAR))
     kelvin = np.clip(positive("annual_temperature_k", annual_temperature_k, "K"), *SEASON_TEMPERATURE_RANGE_K)
-    return np.asarray((kelvin * 1.8 - 459.67) / 50.0 * _SEASON_S / _YEAR_S)
+    return np.asarray((kelvin * 1.8 - 459.67) / 50.0 * _SEASON_S / (60.0 * MINUTES_PER_YEAR))
 
 
 def improvement_vigants(

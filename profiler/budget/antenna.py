@@ -9,12 +9,9 @@ from profiler.checks import finite, positive, within
 from profiler.errors import InputError
 from profiler.models import Terminal
 from profiler.receiver import Line
-from profiler.units import Float, db_from_ratio, ratio_from_db, wavelength
+from profiler.units import AGREEMENT_DB, Float, db_from_ratio, ratio_from_db, wavelength
 
 __all__ = ["antenna_gain", "dish_diameter", "dish_gain", "far_field_distance", "near_field_warnings"]
-
-AGREEMENT_DB = 0.05
-"""A given gain and that of the given dish agree within half the last digit of a data sheet's tenth of a decibel."""
 
 
 def dish_gain(diameter_m: ArrayLike, efficiency: ArrayLike, frequency_hz: ArrayLike) -> Float:

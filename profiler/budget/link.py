@@ -17,7 +17,7 @@ from profiler.units import Float, wavelength
 __all__ = ["Budget", "Direction", "ModeBudget", "free_space_loss", "link_budget", "path_lines", "table", "total"]
 
 FREE_SPACE_NOTE = "20·log10(4π·d/λ), Rec. ITU-R P.525-4 §2.3"
-AIMED = "antennas aimed at each other and matched in polarisation: full gain at both ends"
+AIMED = "antennas aimed at each other and matched in polarization: full gain at both ends"
 
 
 @dataclass(frozen=True, slots=True)

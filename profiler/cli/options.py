@@ -57,7 +57,7 @@ def hop_options(command: Command) -> Command:
 
 def speech_options(command: Command) -> Command:
     """Add the options that say how much and how to print."""
-    command = click.option("--no-color", is_flag=True, help="Print without colour.")(command)
+    command = click.option("--no-color", is_flag=True, help="Print without color.")(command)
     return click.option("-q", "--quiet", is_flag=True, help="Print the verdict only.")(command)
 
 

@@ -132,7 +132,7 @@ def _finite(value: Any) -> Any:
 
 
 def console(*, color: bool) -> Console:
-    """Open the terminal for tables; width and colour follow the terminal unless colour is refused."""
+    """Open the terminal for tables; width and color follow the terminal unless color is refused."""
     from rich.console import Console
 
     width = None if sys.stdout.isatty() else 110

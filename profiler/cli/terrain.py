@@ -22,7 +22,7 @@ __all__ = ["command"]
 )
 @click.option("--metadata-only", is_flag=True, help="Do not read the cells: no voids and heights, but fast.")
 @click.option("--json", "json_to", metavar="FILE", help="Write what was found as JSON; - for standard output.")
-@click.option("--no-color", is_flag=True, help="Print without colour.")
+@click.option("--no-color", is_flag=True, help="Print without color.")
 def command(
     paths: tuple[Path, ...], hop_file: Path | None, metadata_only: bool, json_to: str | None, no_color: bool
 ) -> int:

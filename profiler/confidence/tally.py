@@ -8,6 +8,7 @@ import numpy as np
 
 from profiler.confidence.fields import Draws
 from profiler.confidence.result import Band
+from profiler.models import frozen_array
 from profiler.units import Float
 
 __all__ = ["BAND", "Doubt", "Nominal", "Tally", "run_draws"]
@@ -185,9 +186,4 @@ def _quantiles(random: Draws) -> Draws:
 
 def _bands(surplus_m: Float, quantiles: Float) -> tuple[Band, ...]:
     """Add to each rule's own surplus the quantiles of the random part that all rules share."""
-    return tuple(Band(*(_frozen(row + part) for part in quantiles.T)) for row in surplus_m)
-
-
-def _frozen(values: Float) -> Float:
-    values.setflags(write=False)
-    return values
+    return tuple(Band(*(frozen_array(row + part) for part in quantiles.T)) for row in surplus_m)

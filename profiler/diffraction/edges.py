@@ -9,6 +9,7 @@ from numpy.typing import NDArray
 
 from profiler.diffraction.formulas import fresnel_parameter
 from profiler.diffraction.hops import Hops
+from profiler.models import frozen_array
 from profiler.units import Float
 
 __all__ = ["EdgeLosses", "edge_losses", "nu_at", "sealed"]
@@ -33,9 +34,7 @@ class EdgeLosses:
 
 def sealed(hops: Hops, values: Float) -> Float:
     """Read-only `values`, without the axis of hops where all inputs were for one hop."""
-    out = np.array(values[0] if hops.single else values, dtype=float)
-    out.setflags(write=False)
-    return out
+    return frozen_array(values[0] if hops.single else values)
 
 
 def nu_at(hops: Hops, t: Float, rise_m: Float) -> Float:

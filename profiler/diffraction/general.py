@@ -13,6 +13,7 @@ from profiler.diffraction.edges import EdgeLosses, edge_losses, nu_at, sealed
 from profiler.diffraction.formulas import NU_NO_LOSS, knife_edge_loss
 from profiler.diffraction.hops import Block, Hops, Index
 from profiler.diffraction.sphere import check_surface, spherical_earth
+from profiler.models import frozen_array
 from profiler.units import Float
 
 __all__ = ["DeltaBullington", "bullington", "bullington_points", "delta_bullington"]
@@ -268,8 +269,7 @@ def delta_bullington(
     smooth = sealed(hops, _smooth_bullington(hops, above_a, above_b))
     sphere = spherical_earth(hops.length_m, above_a, above_b, hops.frequency_hz, hops.radius_m, polarization, sea)
     spherical = sealed(hops, sphere)
-    total = np.asarray(actual.loss_db + np.maximum(spherical - smooth, 0.0))
-    total.setflags(write=False)
+    total = frozen_array(actual.loss_db + np.maximum(spherical - smooth, 0.0))
     return DeltaBullington(
         total, actual.loss_db, smooth, spherical, sealed(hops, above_a), sealed(hops, above_b), actual
     )

@@ -53,7 +53,7 @@ def heading(page: Page, left: float, top: float, words: str) -> float:
 
 
 def rows(page: Page, top: float, columns: list[tuple[float, float, str]], cells: Sequence[Sequence[str]]) -> float:
-    """Set a table: columns are (left, room, colour), a cell that is too long for its room takes more lines.
+    """Set a table: columns are (left, room, color), a cell that is too long for its room takes more lines.
 
     Returns where the next thing can stand.
     """

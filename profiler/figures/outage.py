@@ -13,6 +13,7 @@ from profiler.figures.axes import draw_grid, label_side
 from profiler.figures.page import LINE_IN, Page
 from profiler.figures.scale import minus, nice_ticks
 from profiler.figures.text import width_in
+from profiler.units import MINUTES_PER_YEAR
 
 if TYPE_CHECKING:
     from matplotlib.axes import Axes
@@ -32,7 +33,6 @@ _LOOKS: dict[str, tuple[str, tuple[float, ...], float]] = {
 _SUPERSCRIPT = str.maketrans("-0123456789", "⁻⁰¹²³⁴⁵⁶⁷⁸⁹")
 _HALF_IN = 2.0
 _RIGHT_IN = 1.02
-_PER_MINUTE = 100.0 / (365.25 * 1440.0)
 
 
 def percent_text(percent: float) -> str:
@@ -54,7 +54,7 @@ def target_lines(outage: Availability, period: str) -> list[tuple[float, list[st
     found: list[tuple[float, list[str]]] = []
     for target in () if outage.objective is None else outage.objective.targets:
         if target.name == "minutes_per_year":
-            line = (target.required * _PER_MINUTE, [f"{target.required:g} min", "a year asked"])
+            line = (100.0 * target.required / MINUTES_PER_YEAR, [f"{target.required:g} min", "a year asked"])
         elif target.name in ("year_percent", "worst_month_percent"):
             line = (target.required, [percent_text(target.required), "asked"])
         else:

@@ -1,7 +1,7 @@
 """Palette, type sizes and the drawing defaults of every figure.
 
-The colours keep their order in grey print (ground light, cover darker, trouble darkest) and keep apart for the common
-kinds of colour blindness (blue, orange-red and neutral, never red against green); nothing is told by colour alone.
+The colors keep their order in grey print (ground light, cover darker, trouble darkest) and keep apart for the common
+kinds of color blindness (blue, orange-red and neutral, never red against green); nothing is told by color alone.
 """
 
 from __future__ import annotations
@@ -29,7 +29,7 @@ __all__ = [
     "RAY",
     "RELIEF_HIGH",
     "RELIEF_LOW",
-    "RULE_COLOURS",
+    "RULE_COLORS",
     "RULE_DASHES",
     "SMALL",
     "ZONE",
@@ -54,9 +54,9 @@ PASS = "#00594f"
 FAIL = "#b23a00"
 FAIL_TINT = "#f6dfd2"
 
-RULE_COLOURS = ("#1c1f24", "#0072b2", "#b8860b", "#a0527a", "#4d8a7a")
+RULE_COLORS = ("#1c1f24", "#0072b2", "#b8860b", "#a0527a", "#4d8a7a")
 RULE_DASHES: tuple[tuple[float, ...], ...] = ((), (5, 2), (1.5, 1.5), (6, 1.5, 1.5, 1.5), (4, 1.5, 1, 1.5, 1, 1.5))
-"""One colour and one dash for each rule, in the order of the hop file."""
+"""One color and one dash for each rule, in the order of the hop file."""
 
 BODY = 7.4
 SMALL = 7.0

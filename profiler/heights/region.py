@@ -186,11 +186,11 @@ def clearing_region(
     return ClearingRegion(
         distance_m=frozen_array(distance),
         least_ray_m=frozen_array(greatest),
-        rule=_frozen_index(rule),
+        rule=frozen_array(rule, np.intp),
         ground_a_m=float(ground_a_m),
         ground_b_m=float(ground_b_m),
         vertices_m=frozen_array(np.column_stack((at_a - ground_a_m, at_b - ground_b_m))),
-        governing_point=_frozen_index(hull),
+        governing_point=frozen_array(hull, np.intp),
     )
 
 
@@ -275,12 +275,6 @@ def _hull(region: ClearingRegion) -> tuple[Float, Float]:
     """Share of the path from A and least ray of the governing points; no other point can be the tightest."""
     chosen = region.governing_point
     return region.distance_m[chosen] / region.distance_m[-1], region.least_ray_m[chosen]
-
-
-def _frozen_index(values: Index) -> Index:
-    array = np.array(values, dtype=np.intp)
-    array.setflags(write=False)
-    return array
 
 
 def _upper_hull(x: Float, y: Float) -> Index:

@@ -10,11 +10,9 @@ from profiler.errors import InputError
 from profiler.models import RadioMode
 from profiler.receiver.modulation import Modulation, parse_modulation, required_eb_n0_db
 from profiler.receiver.noise import NOISE_REFERENCE_K, noise_density_dbm_hz
+from profiler.units import AGREEMENT_DB
 
 __all__ = ["Line", "Threshold", "mode_threshold"]
-
-AGREEMENT_DB = 0.05
-"""Two statements of the same level agree within half the last digit of a data sheet's tenth of a decibel."""
 
 
 @dataclass(frozen=True, slots=True)
