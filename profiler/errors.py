@@ -2,8 +2,10 @@
 
 from __future__ import annotations
 
-from collections.abc import Collection, Iterator
+from collections.abc import Iterator
 from contextlib import contextmanager
+from dataclasses import fields
+from typing import Any
 
 __all__ = [
     "DatumError",
@@ -74,7 +76,7 @@ def field_error(where: str, field: str, value: object, allowed: str, remedy: str
 
 
 @contextmanager
-def under(table: str, keys: Collection[str] = ()) -> Iterator[None]:
+def under(table: str, choice: Any = None) -> Iterator[None]:
     """Put the name of a hop file's table before the message of every error that is raised inside.
 
     Stages that take plain numbers do not know where those stand in a hop file; whoever hands them on does.
@@ -83,12 +85,13 @@ def under(table: str, keys: Collection[str] = ()) -> Iterator[None]:
     ----------
     table
         Dotted name of the table.
-    keys
-        Its keys: a message that begins with one goes on from the table's name with a point.
+    choice
+        Dataclass of the table, if it has one: a message that begins with one of its fields goes on with a point.
 
     Examples
     --------
-    >>> with under("confidence", ("draws", "seed")):
+    >>> from profiler.models import ConfidenceChoice
+    >>> with under("confidence", ConfidenceChoice):
     ...     raise InputError("draws = 3: must be 100 or more")
     Traceback (most recent call last):
     ...
@@ -98,5 +101,6 @@ def under(table: str, keys: Collection[str] = ()) -> Iterator[None]:
         yield
     except HopwrightError as error:
         text = str(error)
+        keys = () if choice is None else [each.name for each in fields(choice)]
         joint = "." if text.partition(" ")[0].rstrip(":") in keys else ": "
         raise type(error)(f"{table}{joint}{text}") from error

@@ -5,7 +5,7 @@ from __future__ import annotations
 from dataclasses import dataclass, replace
 from typing import Any
 
-from profiler.errors import InputError
+from profiler.errors import InputError, under
 from profiler.models import AvailabilityChoice, Hop
 from profiler.path import geodesic, midpoint, trace
 from profiler.units import K_MEDIAN, Float
@@ -121,4 +121,5 @@ def _roughness_points(choice: AvailabilityChoice | None, middle: tuple[float, fl
         return None
     from profiler.availability import roughness_grid
 
-    return roughness_grid(*middle)
+    with under("availability"):
+        return roughness_grid(*middle)

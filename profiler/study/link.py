@@ -7,7 +7,8 @@ from typing import TYPE_CHECKING
 
 from profiler.atmosphere import Atmosphere, gas_attenuation, local_atmosphere
 from profiler.diffraction import DiffractionLoss, diffract
-from profiler.models import Hop, Profile
+from profiler.errors import under
+from profiler.models import AvailabilityChoice, Hop, Profile
 from profiler.study.climate import ClimateUse
 from profiler.study.outage import OutageResult, predict_outage
 
@@ -57,7 +58,8 @@ def link(hop: Hop, profile: Profile, climate: ClimateUse, air: Air, centre_a_m: 
     """
     losses = _diffraction(hop, profile, climate.median_k, centre_a_m, centre_b_m)
     budget = _budget(hop, profile, air, losses[climate.median_k])
-    outage = predict_outage(hop, profile, climate, budget, centre_a_m, centre_b_m, losses)
+    with under("availability", AvailabilityChoice):
+        outage = predict_outage(hop, profile, climate, budget, centre_a_m, centre_b_m, losses)
     return Link(losses, budget, outage)
 
 
@@ -75,12 +77,13 @@ def air_along(hop: Hop, profile: Profile) -> Air:
     """
     height_m = float(profile.ground_m.mean()) + 0.5 * (hop.site_a.antenna_m + hop.site_b.antenna_m)
     given = hop.air
-    atmosphere = local_atmosphere(
-        height_m,
-        total_pressure_hpa=given.pressure_hpa,
-        temperature_k=given.temperature_k,
-        vapour_g_m3=given.vapour_g_m3,
-    )
+    with under("air"):
+        atmosphere = local_atmosphere(
+            height_m,
+            total_pressure_hpa=given.pressure_hpa,
+            temperature_k=given.temperature_k,
+            vapour_g_m3=given.vapour_g_m3,
+        )
     per_km = float(
         gas_attenuation(hop.frequency_hz, atmosphere.pressure_hpa, atmosphere.temperature_k, atmosphere.vapour_g_m3)
     )
@@ -108,12 +111,13 @@ def _budget(hop: Hop, profile: Profile, air: Air, loss: DiffractionLoss) -> Budg
         return None
     from profiler.budget import link_budget
 
-    return link_budget(
-        hop.radio,
-        float(profile.distance_m[-1]),
-        hop.frequency_hz,
-        gas_db=air.gas_db,
-        diffraction_db=loss.loss_db,
-        gas_note=f"Rec. ITU-R P.676-13; {air.source}",
-        diffraction_note=f"{loss.method} at k = {loss.k:.3g}",
-    )
+    with under("radio"):
+        return link_budget(
+            hop.radio,
+            float(profile.distance_m[-1]),
+            hop.frequency_hz,
+            gas_db=air.gas_db,
+            diffraction_db=loss.loss_db,
+            gas_note=f"Rec. ITU-R P.676-13; {air.source}",
+            diffraction_note=f"{loss.method} at k = {loss.k:.3g}",
+        )
