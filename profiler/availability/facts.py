@@ -83,7 +83,7 @@ class PathFacts:
 
     @property
     def tilt_deg(self) -> float:
-        """Tilt of the polarisation from the horizontal, degrees (Rec. ITU-R P.838-3)."""
+        """Tilt of the polarization from the horizontal, degrees (Rec. ITU-R P.838-3)."""
         return 90.0 if self.polarization == "vertical" else 0.0
 
     @property

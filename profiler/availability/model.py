@@ -121,8 +121,8 @@ def _rain(path: PathFacts, choice: AvailabilityChoice, sources: Mapping[str, str
     fade_db = specific_db_km * length_m / 1e3
     used = (
         InputUsed("rain_rate_mm_h", rate, sources.get("rain_rate_mm_h", GIVEN)),
-        InputUsed("rain_k", float(k), f"Rec. ITU-R P.838-3, {path.polarization} polarisation"),
-        InputUsed("rain_alpha", float(alpha), f"Rec. ITU-R P.838-3, {path.polarization} polarisation"),
+        InputUsed("rain_k", float(k), f"Rec. ITU-R P.838-3, {path.polarization} polarization"),
+        InputUsed("rain_alpha", float(alpha), f"Rec. ITU-R P.838-3, {path.polarization} polarization"),
         InputUsed("rain_effective_distance_m", length_m, "Rec. ITU-R P.530-18 §2.4.1"),
         InputUsed("rain_fade_001_db", fade_db, "Rec. ITU-R P.530-18 §2.4.1"),
     )

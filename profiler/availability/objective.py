@@ -11,14 +11,12 @@ from numpy.typing import ArrayLike
 from profiler.availability.model import OutageModel
 from profiler.availability.outages import MECHANISMS, Mechanism, Outages, outages_at
 from profiler.models import Objective
-from profiler.units import Float
+from profiler.units import MINUTES_PER_YEAR, Float
 
-__all__ = ["LARGEST_MARGIN_DB", "MINUTES_PER_YEAR", "Limit", "ObjectiveResult", "TargetResult", "judge", "limit_of"]
+__all__ = ["LARGEST_MARGIN_DB", "Limit", "ObjectiveResult", "TargetResult", "judge", "limit_of"]
 
 LARGEST_MARGIN_DB = 200.0
 """How far the fade margin that meets a target is searched for."""
-
-MINUTES_PER_YEAR = 365.25 * 1440.0
 
 Limit = Literal["multipath", "selective", "rain", "obstruction", "no margin"]
 

@@ -9,12 +9,12 @@ from numpy.typing import ArrayLike
 
 from profiler.availability.model import OutageModel
 from profiler.availability.notes import InputUsed, Notes
-from profiler.availability.objective import LARGEST_MARGIN_DB, MINUTES_PER_YEAR, Limit, ObjectiveResult, judge, limit_of
+from profiler.availability.objective import LARGEST_MARGIN_DB, Limit, ObjectiveResult, judge, limit_of
 from profiler.availability.outages import MECHANISMS, Mechanism, Outages, outages_at
 from profiler.availability.rain import PERCENT_RANGE
 from profiler.checks import finite
 from profiler.models import MultipathMethod, frozen_array
-from profiler.units import Float
+from profiler.units import MINUTES_PER_YEAR, Float
 
 __all__ = ["Availability", "OutageCurve", "outage_curve", "predict"]
 
