@@ -17,7 +17,7 @@ from profiler.heights.region import (
     least_ray,
     surplus,
 )
-from profiler.heights.search import LimitHeights, heights_for_loss, heights_within
+from profiler.heights.search import LimitHeights, cheapest_by_trial, heights_for_loss, heights_within
 from profiler.heights.sheet import EndHeights, Held, MountingSheet, mounting_sheet
 
 __all__ = [
@@ -35,6 +35,7 @@ __all__ = [
     "all_positions",
     "both_free",
     "cheapest",
+    "cheapest_by_trial",
     "cheapest_exact",
     "cheapest_of",
     "check_diversity",
