@@ -70,6 +70,7 @@ def cover_along(
     longitude: Float,
     latitude: Float,
     *,
+    rows: slice = slice(None),
     method: SampleMethod = "bilinear",
     allow_gaps: bool = False,
 ) -> Cover:
@@ -83,9 +84,11 @@ def cover_along(
     choice
         What the hop file says about cover; with nothing in it the cover is 0 everywhere, and the notes say so.
     distance_m
-        Distances from A, (n,).
+        Distances from A of the whole path, (n,): an obstacle narrower than the step stands at one of them.
     longitude, latitude
-        The points, degrees, (n,) or (n, across).
+        The points, degrees, a row or more for each distance of ``rows``: (m,) or (m, across).
+    rows
+        Which of the distances the points are at; all by default.
     method
         How canopy rasters are read, as for terrain.
     allow_gaps
@@ -131,11 +134,11 @@ def cover_along(
     if np.isnan(heights).any() and not allow_gaps:
         row = int(np.argwhere(np.isnan(heights))[0][0])
         raise MissingGroundError(
-            f"cover: no data {distance_m[row]:.0f} m from A: must be covered; give more rasters, or cover.landcover"
-            " with cover.class_heights_m for the rest"
+            f"cover: no data {distance_m[rows][row]:.0f} m from A: must be covered; give more rasters, or"
+            " cover.landcover with cover.class_heights_m for the rest"
         )
     if choice.obstacles:
-        standing = obstacle_heights(distance_m, choice.obstacles)
+        standing = obstacle_heights(distance_m, choice.obstacles)[rows]
         heights = np.maximum(heights, standing.reshape(standing.shape + (1,) * (heights.ndim - 1)))
         notes.append("obstacles: " + ", ".join(f"{each.name} {each.height_m:g} m" for each in choice.obstacles))
     return Cover(frozen_array(heights), tuple(notes), tuple(files))

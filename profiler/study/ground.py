@@ -23,6 +23,8 @@ _DEFAULT_STEPS, _FEWEST_STEPS = 200, 50
 """A short path over coarse cells still needs points enough for its bulge, its zone and the facets that reflect."""
 _RELIEF_ALONG, _RELIEF_ACROSS = 320, 61
 _ACROSS_STEPS = 10
+_POINTS_AT_ONCE = 200_000
+"""Points beside the path that are read together: it bounds the memory of a long path over fine cells."""
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -170,15 +172,17 @@ def _with_surveys(hop: Hop, ground_m: Float) -> tuple[float | None, float | None
     return differences
 
 
-def _cover(hop: Hop, line: PathLine, longitude: Float, latitude: Float) -> Cover:
-    """Cover at points of the path or beside it, with the clearings around the sites taken out.
+def _cover(hop: Hop, line: PathLine, longitude: Float, latitude: Float, part: slice = slice(None)) -> Cover:
+    """Cover at points of a part of the path or beside it, with the clearings around the sites taken out.
 
     On the path a gap in the cover is an error; beside it, where there are many columns, it is left and counted.
     """
-    beside = longitude.ndim > 1
-    cover = cover_along(hop.cover, line.along_m, longitude, latitude, method=hop.terrain.method, allow_gaps=beside)
+    beside, along_m = longitude.ndim > 1, line.along_m[part]
+    cover = cover_along(
+        hop.cover, line.along_m, longitude, latitude, rows=part, method=hop.terrain.method, allow_gaps=beside
+    )
     heights, notes = np.array(cover.cover_m), list(cover.notes)
-    for site, from_site_m in ((hop.site_a, line.along_m), (hop.site_b, line.distance_m - line.along_m)):
+    for site, from_site_m in ((hop.site_a, along_m), (hop.site_b, line.distance_m - along_m)):
         if site.clearing_m > 0:
             heights[from_site_m <= site.clearing_m] = 0.0
             notes.append(f"no cover within {site.clearing_m:g} m of {site.name}, as the hop file says")
@@ -209,24 +213,25 @@ def _corridor(
 ) -> tuple[Corridor | None, list[Path]]:
     """Surface across the path to the edge of the widest zone asked for, NaN where unknown, and the files it is from.
 
-    The path's own points keep their profile.
-
-    Across, points stand half a cell apart, but no closer than a tenth of the zone: what is narrower than that hides
-    next to none of it. The edge of every rule's own zone is among them.
+    The path's own points keep their profile. Across, points stand half a cell apart, but no closer than a tenth of the
+    zone: what is narrower than that hides next to none of it.
     """
-    fraction, *narrower = sorted({rule.fresnel_fraction for rule in hop.rules}, reverse=True)
+    fraction = max(rule.fresnel_fraction for rule in hop.rules)
     if fraction == 0.0:
         return None, []
     widest = float(np.abs(corridor_offsets(line.along_m, hop.frequency_hz, fraction, np.inf)).max())
     offset = corridor_offsets(line.along_m, hop.frequency_hz, fraction, max(0.5 * cell_m, widest / _ACROSS_STEPS))
-    edges = [corridor_offsets(line.along_m, hop.frequency_hz, each, np.inf)[:, ::2] for each in narrower if each > 0.0]
-    offset = np.sort(np.concatenate([offset, *edges], axis=1), axis=1)
     longitude, latitude = across(line, offset)
-    samples = terrain.sample(longitude, latitude)
-    cover = _cover(hop, line, longitude, latitude)
+    surface, cover_m, files = np.empty_like(offset), np.empty_like(offset), []
+    rows = max(1, _POINTS_AT_ONCE // offset.shape[1])
+    for part in (slice(first, first + rows) for first in range(0, line.points, rows)):
+        samples = terrain.sample(longitude[part], latitude[part])
+        cover = _cover(hop, line, longitude[part], latitude[part], part)
+        surface[part], cover_m[part] = samples.ground_m + cover.cover_m, cover.cover_m
+        files += [*_files(samples), *cover.files]
     # at the sites the zone has no width: what a survey or a fill says of the path holds for the whole row there
-    surface = np.where(offset == 0.0, profile.surface_m[:, None], samples.ground_m + cover.cover_m)
-    return Corridor(frozen_array(offset), frozen_array(surface), cover.cover_m), [*_files(samples), *cover.files]
+    surface = np.where(offset == 0.0, profile.surface_m[:, None], surface)
+    return Corridor(frozen_array(offset), frozen_array(surface), frozen_array(cover_m)), files
 
 
 def _relief(terrain: Terrain, line: PathLine) -> Relief:
