@@ -4,6 +4,7 @@ Errors are true minus given height, in metres; ranges of correlation are practic
 """
 
 from profiler.confidence.assess import SURE_CHANCES, assess
+from profiler.confidence.doubt import draw_doubt, surplus_errors
 from profiler.confidence.fields import Covariance, correlation, draw_field, draw_inverse_k
 from profiler.confidence.result import (
     Band,
@@ -14,6 +15,7 @@ from profiler.confidence.result import (
     SureHeights,
     SurveyPoint,
 )
+from profiler.confidence.summary import chance_of
 from profiler.terrain_error import TERRAIN_ERRORS, TerrainError, sigma_from_le90, sigma_from_rmse
 
 __all__ = [
@@ -29,9 +31,12 @@ __all__ = [
     "SurveyPoint",
     "TerrainError",
     "assess",
+    "chance_of",
     "correlation",
+    "draw_doubt",
     "draw_field",
     "draw_inverse_k",
     "sigma_from_le90",
     "sigma_from_rmse",
+    "surplus_errors",
 ]

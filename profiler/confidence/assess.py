@@ -8,8 +8,9 @@ import numpy as np
 from numpy.typing import ArrayLike
 
 from profiler.checks import not_negative
-from profiler.confidence.fields import Covariance, Draws, draw_field, draw_inverse_k
-from profiler.confidence.method import Sigmas, describe
+from profiler.confidence.doubt import draw_doubt
+from profiler.confidence.fields import Covariance, Draws
+from profiler.confidence.method import describe
 from profiler.confidence.result import Confidence
 from profiler.confidence.summary import chance_of, rule_confidence, sure_heights
 from profiler.confidence.survey import rank_points
@@ -23,9 +24,6 @@ __all__ = ["SURE_CHANCES", "assess"]
 
 SURE_CHANCES = (0.90, 0.95)
 """How sure the sure heights are."""
-
-_FEWEST_DRAWS = 100
-_MOST_CELLS = 250_000_000
 
 
 def assess(
@@ -130,24 +128,27 @@ def assess(
     the raster's error, correlation with nearby ground cancels besides.
     """
     distance, ground, cover = frozen_array(distance_m), frozen_array(ground_m), frozen_array(cover_m)
-    _check_rows(distance, ground, cover, draws, seed)
+    if not distance.shape == ground.shape == cover.shape:
+        shapes = f"{distance.shape}, {ground.shape} and {cover.shape}"
+        raise InputError(f"distance, ground and cover of shapes {shapes}: must be three equal rows")
     nominal = _nominal(distance, ground, cover, (antenna_a_m, antenna_b_m), frequency_hz, rules, beside_m)
-    sigmas = Sigmas(
-        _sigma_row(terrain_sigma_m, distance.size),
-        None if site_sigma_a_m is None else float(not_negative("site_sigma_a_m", site_sigma_a_m, "m")),
-        None if site_sigma_b_m is None else float(not_negative("site_sigma_b_m", site_sigma_b_m, "m")),
-        np.hypot(
-            not_negative("cover_sigma_m", cover_sigma_m, "m"),
-            not_negative("cover_relative_sigma", cover_relative_sigma) * cover,
-        ),
+    doubt, sigmas = draw_doubt(
+        distance,
+        cover,
+        terrain_sigma_m=terrain_sigma_m,
+        correlation_m=correlation_m,
+        covariance=covariance,
+        site_sigma_a_m=site_sigma_a_m,
+        site_sigma_b_m=site_sigma_b_m,
+        cover_sigma_m=cover_sigma_m,
+        cover_relative_sigma=cover_relative_sigma,
+        cover_correlation_m=cover_correlation_m,
+        k_percentiles=k_percentiles,
+        draws=draws,
+        seed=seed,
     )
-    cover_range = correlation_m if cover_correlation_m is None else cover_correlation_m
-    for name, value in (("correlation_m", correlation_m), ("cover_correlation_m", cover_range)):
-        not_negative(name, value, "m", infinite=True)
-    if covariance not in ("exponential", "gaussian"):
-        raise InputError(f"covariance = {covariance!r}: must be 'exponential' or 'gaussian'")
-    doubt = _draw(distance, cover, sigmas, (correlation_m, cover_range), covariance, k_percentiles, draws, seed)
     result = run_draws(nominal, doubt)
+    ranges_m = (correlation_m, correlation_m if cover_correlation_m is None else cover_correlation_m)
     chance_critical = np.bincount(result.critical, minlength=distance.size) / draws
     return Confidence(
         rules=tuple(rule_confidence(i, rule, result) for i, rule in enumerate(rules)),
@@ -157,32 +158,8 @@ def assess(
         chance_critical=frozen_array(chance_critical),
         draws=draws,
         seed=seed,
-        method=describe(sigmas, (correlation_m, cover_range), covariance, k_percentiles, draws, seed),
+        method=describe(sigmas, ranges_m, covariance, k_percentiles, draws, seed),
     )
-
-
-def _sigma_row(terrain_sigma_m: ArrayLike, points: int) -> Float:
-    """Spread the sigma of the ground over the points, or stop if it does not fit."""
-    sigma = not_negative("terrain_sigma_m", terrain_sigma_m, "m")
-    if sigma.shape not in ((), (1,), (points,)):
-        raise InputError(
-            f"terrain_sigma_m of shape {sigma.shape}: must be one number or one for each of {points} points"
-        )
-    return np.broadcast_to(sigma, (points,))
-
-
-def _check_rows(distance: Float, ground: Float, cover: Float, draws: int, seed: int) -> None:
-    """Stop if the rows do not fit each other, or the draws do not fit in memory."""
-    if not distance.shape == ground.shape == cover.shape:
-        shapes = f"{distance.shape}, {ground.shape} and {cover.shape}"
-        raise InputError(f"distance, ground and cover of shapes {shapes}: must be three equal rows")
-    if not np.all(cover >= 0):
-        raise InputError(f"cover_m: least value {float(cover.min())} m: must be 0 m or more everywhere, no gaps")
-    if draws < _FEWEST_DRAWS or draws * distance.size > _MOST_CELLS:
-        most = _MOST_CELLS // distance.size
-        raise InputError(f"draws = {draws}: must be {_FEWEST_DRAWS} to {most} on a path of {distance.size} points")
-    if seed < 0:
-        raise InputError(f"seed = {seed}: must be 0 or more")
 
 
 def _nominal(
@@ -206,39 +183,6 @@ def _nominal(
         unit_bulge_m=earth_bulge(distance, distance[-1] - distance, 1.0),
         share=distance / distance[-1],
     )
-
-
-def _draw(
-    distance: Float,
-    cover: Float,
-    sigmas: Sigmas,
-    ranges_m: tuple[float, float],
-    covariance: Covariance,
-    k_percentiles: Sequence[tuple[float, float]],
-    draws: int,
-    seed: int,
-) -> Doubt:
-    """Draw all errors. Every cause has its own stream of unit draws, which its sigma scales."""
-    terrain_rng, site_rng, cover_rng, k_rng = (
-        np.random.default_rng(child) for child in np.random.SeedSequence(seed).spawn(4)
-    )
-    ground_error: Draws = np.zeros((distance.size, draws), dtype=np.float32)
-    if sigmas.ground_m.any():
-        ground_error = draw_field(distance, ranges_m[0], covariance, draws, terrain_rng)
-        ground_error *= sigmas.ground_m[:, None].astype(np.float32)
-    for end, sigma in ((0, sigmas.site_a_m), (-1, sigmas.site_b_m)):
-        unit = site_rng.standard_normal(draws, dtype=np.float32)
-        if sigma is not None:
-            ground_error[end] = np.float32(sigma) * unit
-    covered = np.flatnonzero((cover > 0) & (sigmas.cover_m > 0))
-    cover_error: Draws | None = None
-    if covered.size:
-        given = cover[covered, None].astype(np.float32)
-        cover_error = draw_field(distance[covered], ranges_m[1], covariance, draws, cover_rng)
-        cover_error *= sigmas.cover_m[covered, None].astype(np.float32)
-        np.maximum(cover_error, -given, out=cover_error)
-    inverse_k = draw_inverse_k(k_percentiles, draws, k_rng) if len(k_percentiles) else None
-    return Doubt(ground_error, cover_error, covered, inverse_k)
 
 
 def _surface_error(doubt: Doubt) -> Draws:
