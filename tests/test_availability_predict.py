@@ -41,9 +41,15 @@ rates = st.none() | st.floats(0.0, 120.0)
 
 
 def full_model(**changes):
-    return outage_model(
-        PATH, replace(FULL, **changes), signature=RADIO, k_excess_db=(45.0, 20.0, 0.0), low_k_excess_db=50.0
-    )
+    choice, excess_db = replace(FULL, **changes), (45.0, 20.0, 0.0)
+    return outage_model(PATH, choice, signature=RADIO, k_excess_db=excess_db, low_k=0.5, low_k_excess_db=50.0)
+
+
+def model_of(year_percent, *, frequency_ghz=4.0, **given):
+    """Make a model without rain, which matters little at 4 GHz, against a target for the year."""
+    choice = replace(CHOICES["p530-17"], objective=Objective(year_percent=year_percent))
+    choice = replace(choice, k_percentiles=given.pop("k_percentiles", ()))
+    return outage_model(replace(PATH, frequency_hz=frequency_ghz * 1e9), choice, **given)
 
 
 @pytest.mark.parametrize("method", sorted(CHOICES))
@@ -180,7 +186,12 @@ def test_no_margin_meets_a_target_under_the_selective_floor():
     (target,) = found.objective.targets
     assert (target.met, target.required_margin_db, found.objective.required_margin_db) == (False, None, None)
     assert found.limited_by == target.limited_by
-    assert "worst_month_percent = 1e-07: no fade margin up to 200 dB meets it" in found.warnings
+    assert target.margin_set_by == found.objective.margin_set_by == "selective"
+    assert any(
+        line.startswith("worst_month_percent = 1e-07: no fade margin up to 200 dB is sure to meet it; most of what is")
+        and line.endswith("selective")
+        for line in found.warnings
+    )
     assert predict(model, 199.0).limited_by == "selective"
 
 
@@ -225,18 +236,132 @@ def test_objective_stays_open_where_what_matters_is_unknown():
     assert any(warning.startswith("rain is not counted, and above 5 GHz") for warning in dry.warnings)
     low = replace(PATH, frequency_hz=4e9)
     assert predict(outage_model(low, loose), 40.0).objective.met is True
-    cut = predict(outage_model(low, loose, low_k_excess_db=41.0), 40.0)
+    cut = predict(outage_model(low, loose, low_k=0.7, low_k_excess_db=41.0), 40.0)
     assert (cut.low_k_blocks, cut.objective.met, cut.year_percent.obstruction) == (True, None, None)
-    assert any("over the fade margin of 40.0 dB: the hop is cut off" in warning for warning in cut.warnings)
-    free = predict(outage_model(low, loose, low_k_excess_db=39.0), 40.0)
+    free = predict(outage_model(low, loose, low_k=0.7, low_k_excess_db=39.0), 40.0)
     assert (free.low_k_blocks, free.objective.met) == (False, True)
     tight = replace(loose, objective=Objective(year_percent=1e-9))
-    assert predict(outage_model(low, tight, low_k_excess_db=41.0), 40.0).objective.met is False
+    assert predict(outage_model(low, tight, low_k=0.7, low_k_excess_db=41.0), 40.0).objective.met is False
+
+
+@pytest.mark.parametrize("k_percentiles", [(), ((0.1, 1.1), (50.0, 1.333)), ((0.001, 0.71), (50.0, 1.333))])
+def test_a_cut_off_at_a_low_k_that_the_statistics_do_not_reach_leaves_the_objective_open(k_percentiles):
+    """At k = 0.7 diffraction takes 23.6 dB more than the budget counts: a margin of 13.6 dB does not hold that."""
+    excess = {"k_excess_db": tuple(0.0 for _ in k_percentiles), "k_percentiles": k_percentiles}
+    model = model_of(20.0, low_k=0.7, low_k_excess_db=23.6, **excess)
+    found = predict(model, 13.6)
+    assert (found.low_k_blocks, found.objective.met, found.objective.targets[0].met) == (True, None, None)
+    [line] = [warning for warning in found.warnings if "low k" in warning]
+    assert "0.7, takes 23.6 dB more than the budget counts, over the fade margin of 13.6 dB: the hop is cut" in line
+    assert found.objective.undecided == (line,)
+    target = found.objective.targets[0]
+    assert (target.margin_set_by, target.limited_by) == ("obstruction", "multipath")
+    assert target.required_margin_db == pytest.approx(23.6, abs=1e-6)
+    held = predict(model, 23.7)
+    assert (held.low_k_blocks, held.objective.met) == (False, True)
+    assert not any("low k" in warning for warning in held.warnings)
+
+
+def test_statistics_that_reach_the_low_k_count_it():
+    model = model_of(
+        20.0, low_k=0.7, low_k_excess_db=23.6, k_percentiles=((0.1, 0.7), (50.0, 4 / 3)), k_excess_db=(23.6, 0.0)
+    )
+    found = predict(model, 13.6)
+    assert (found.low_k_blocks, found.objective.met, found.objective.undecided) == (True, True, ())
+    assert found.year_percent.obstruction > 0.1
+    assert found.warnings == ()
+
+
+FINE = {"k_percentiles": ((0.01, 0.6), (50.0, 4 / 3)), "k_excess_db": (51.2, 0.0)}
+"""Statistics that end at 0.01 % of the year, under a target of 5 minutes, 0.00095 %."""
+
+
+def test_an_unknown_tail_above_the_target_leaves_it_open():
+    model = model_of(5 / 525960 * 100, low_k=0.7, low_k_excess_db=40.0, **FINE)
+    found = predict(model, 51.7)
+    year, [target] = found.year_percent, found.objective.targets
+    assert (year.obstruction, year.obstruction_up_to) == (0.0, pytest.approx(0.01))
+    assert year.total_up_to == pytest.approx(year.total + 0.01)
+    assert target.achieved < target.required < target.achieved_up_to == pytest.approx(year.total_up_to)
+    assert (target.met, found.objective.met) == (None, None)
+    assert (target.required_margin_db, target.margin_set_by) == (None, "obstruction")
+    assert any("obstruction below the lowest k given could make it 0.01" in line for line in found.objective.undecided)
+    assert any("and it could be up to 0.01 %" in line for line in found.assumptions)
+    # a target that the whole tail fits into is decided, and the margin for it is that which ends the cut-off
+    easy = predict(model_of(0.011, low_k=0.7, low_k_excess_db=40.0, **FINE), 51.7).objective
+    assert (easy.met, easy.margin_set_by) == (True, "obstruction")
+    assert easy.required_margin_db < 51.2
+
+
+def test_holding_at_a_lower_k_ends_the_unknown_tail():
+    model = model_of(5 / 525960 * 100, low_k=0.5, low_k_excess_db=56.0, **FINE)
+    short, held = predict(model, 51.7), predict(model, 56.1)
+    assert (short.year_percent.obstruction_up_to, held.year_percent.obstruction_up_to) == (pytest.approx(0.01), 0.0)
+    assert (short.objective.met, held.objective.met) == (None, True)
+    assert short.objective.required_margin_db == pytest.approx(56.0, abs=1e-6)
+    assert any("nor at the low k of the rules, 0.5; below that counted as 0" in line for line in held.assumptions)
+
+
+@given(margins_db, st.floats(0.0, 20.0), st.floats(0.3, 1.3), st.floats(0.0, 70.0))
+def test_what_could_be_is_never_less_than_what_is_counted(margin_db, more_db, low_k, excess_db):
+    curve = outage_curve(
+        model_of(0.01, low_k=low_k, low_k_excess_db=excess_db, **FINE), [margin_db, margin_db + more_db]
+    )
+    for period in (curve.worst_month_percent, curve.year_percent):
+        assert (period.obstruction <= period.obstruction_up_to).all()
+        assert (period.total <= period.total_up_to).all()
+        assert period.obstruction_up_to[1] <= period.obstruction_up_to[0]
+
+
+@given(st.floats(1e-4, 10.0), st.floats(0.3, 1.3), st.floats(0.0, 70.0))
+def test_the_margin_asked_for_is_sure_and_less_is_not(year_percent, low_k, excess_db):
+    model = model_of(year_percent, low_k=low_k, low_k_excess_db=excess_db, **FINE)
+    wanted = predict(model, 30.0).objective.required_margin_db
+    if wanted is not None:
+        assert predict(model, wanted).objective.met is True
+    if wanted is None or wanted > 0.01:
+        assert predict(model, 199.0 if wanted is None else wanted - 0.001).objective.met is not True
+
+
+def test_the_mechanism_that_sets_the_margin_is_not_always_the_one_that_limits():
+    """At 55 dB multipath is all there is, but without obstruction, 51.2 dB over at 0.01 %, 43 dB would do."""
+    found = predict(model_of(1e-3, low_k=0.5, low_k_excess_db=54.0, **FINE), 55.0).objective
+    assert (found.targets[0].limited_by, found.margin_set_by) == ("multipath", "obstruction")
+    without = predict(model_of(1e-3), 55.0).objective
+    assert (without.margin_set_by, found.required_margin_db) == ("multipath", pytest.approx(54.0, abs=1e-6))
+    assert without.required_margin_db < 45.0
+
+
+def test_every_target_has_its_unit():
+    asked = Objective(0.1, 0.1, 50.0, 1e-3, 1e-3, 3.0)
+    targets = predict(full_model(objective=asked), 35.0).objective.targets
+    assert [(target.name, target.unit) for target in targets] == [
+        ("worst_month_percent", "%"),
+        ("year_percent", "%"),
+        ("minutes_per_year", "min"),
+        ("severely_errored_seconds_ratio", "ratio"),
+        ("errored_seconds_ratio", "ratio"),
+    ]
+
+
+@pytest.mark.parametrize("method", sorted(CHOICES))
+def test_multipath_over_a_blocked_path_is_warned_of(method):
+    # An edge that touches the ray takes 6.0 dB (Rec. ITU-R P.526-15 §4.1, J(0) = 6.03).
+    def warned(loss_db):
+        model = outage_model(replace(PATH, median_k=4 / 3, median_loss_db=loss_db), CHOICES[method])
+        return [line for line in predict(model, 30.0).warnings if "for paths clear of the ground" in line]
+
+    assert warned(5.9) == warned(None) == []
+    [line] = warned(24.1)
+    assert line.startswith("diffraction at the median k = 24.1 dB: more than the 6 dB")
 
 
 def test_no_margin_at_all():
     found = predict(full_model(objective=Objective(year_percent=0.1)), -3.0)
-    assert found.worst_month_percent.total == found.year_percent.total == 100.0
+    for outages in (found.worst_month_percent, found.year_percent):
+        assert (outages.total, outages.total_up_to) == (100.0, 100.0)
+        assert all(outages.part(mechanism) is None for mechanism in MECHANISMS)
+        assert outages.clear_air is outages.obstruction_up_to is None
     assert (found.limited_by, found.objective.met, found.objective.targets[0].achieved) == ("no margin", False, 100.0)
     assert found.objective.required_margin_db > 0
     assert "fade margin = -3.0 dB: the hop is below its threshold without any fading" in found.warnings
@@ -308,13 +433,18 @@ def test_extreme_multipath_is_warned_of_and_stays_whole():
 
 
 def test_every_number_has_a_source():
-    sources = {"rain_rate_mm_h": "map of P.837-7", "terrain_roughness_m": "terrain"}
-    model = outage_model(PATH, FULL, signature=RADIO, sources=sources)
+    sources = {"rain_rate_mm_h": "map of P.837-7", "terrain_roughness_m": "terrain", "median_k": "the map of k"}
+    given = {"k_excess_db": (45.0, 20.0, 0.0), "low_k": 0.7, "low_k_excess_db": 25.0}
+    model = outage_model(replace(PATH, median_k=1.31), FULL, signature=RADIO, sources=sources, **given)
     used = {given.name: given for given in predict(model, 30.0).inputs}
     assert all(given.source for given in used.values())
     assert used["rain_rate_mm_h"].source == "map of P.837-7"
     assert used["terrain_roughness_m"].source == "terrain"
-    assert used["dn1_n_km"].source == "given"
+    assert used["dn1_n_km"].source == used["k_percentiles"].source == "given"
+    assert used["k_percentiles"].value == "0.6 at 0.1 %, 0.8 at 1 %, 1.33 at 50 %"
+    assert used["k_percentiles"].line == "k_percentiles = 0.6 at 0.1 %, 0.8 at 1 %, 1.33 at 50 %: given"
+    assert (used["median_k"].value, used["median_k"].source) == (1.31, "the map of k")
+    assert (used["low_k"].value, used["low_k_excess_db"].value) == (0.7, 25.0)
     assert used["multipath_occurrence_percent"].value == model.occurrence_percent
     assert "P.530-17 §2.3.1, detailed design" in used["geoclimatic_factor"].source
 
@@ -355,6 +485,8 @@ def test_facts_and_margins_that_are_refused():
         outage_model(replace(PATH, mean_ground_m=None), CHOICES["p530-18"])
     with pytest.raises(InputError, match="k_excess_db has 1 values: must have one for each of the 3 k_percentiles"):
         outage_model(PATH, FULL, k_excess_db=(1.0,))
+    with pytest.raises(InputError, match=r"low_k = 0\.7: must be given together with low_k_excess_db = None"):
+        outage_model(PATH, FULL, low_k=0.7)
     with pytest.raises(InputError, match="distance_m = 0: must be finite and more than 0 m"):
         replace(PATH, distance_m=0)
     with pytest.raises(InputError, match="centre_a_m = nan: must be a height in metres"):

@@ -26,7 +26,7 @@ from profiler.availability.multipath import (
 )
 from profiler.availability.notes import InputUsed
 from profiler.availability.objective import ObjectiveResult, TargetResult
-from profiler.availability.obstruction import obstruction_percent
+from profiler.availability.obstruction import obstruction_percent, unknown_percent
 from profiler.availability.outages import MECHANISMS, Mechanism, Outages, outages_at
 from profiler.availability.predict import Availability, OutageCurve, outage_curve, predict
 from profiler.availability.rain import effective_distance, rain_fade, rain_percent
@@ -81,6 +81,7 @@ __all__ = [
     "selective_percent",
     "terrain_roughness",
     "transition_fade",
+    "unknown_percent",
     "worst_month_from_year",
     "year_conversion",
     "year_from_worst_month",

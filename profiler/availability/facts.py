@@ -32,6 +32,9 @@ class PathFacts:
     ground_roughness_m
         Roughness of the path's own ground from `path_roughness`; needed by Vigants-Barnett where only the climate is
         named.
+    median_k, median_loss_db
+        The k at which the budget counts diffraction, and the loss that it counts; for the record, and to warn where the
+        path is blocked.
 
     Examples
     --------
@@ -48,6 +51,8 @@ class PathFacts:
     polarization: Polarization = "vertical"
     mean_ground_m: float | None = None
     ground_roughness_m: float | None = None
+    median_k: float | None = None
+    median_loss_db: float | None = None
 
     def __post_init__(self) -> None:
         for name, unit in (("distance_m", "m"), ("frequency_hz", "Hz")):

@@ -41,8 +41,8 @@ class OutageModel:
         A0.01, or None without a rain rate.
     k_percent, k_excess_db
         Statistics of k with the diffraction loss over the budget's, or None; ``choice.k_period`` says of which period.
-    low_k_excess_db
-        Diffraction loss at the low k of the rules over the budget's, or None.
+    low_k, low_k_excess_db
+        Lowest k of the rules, and the diffraction loss there over the budget's, or None.
     notes
         Numbers used with their sources, assumptions, warnings.
     """
@@ -56,8 +56,20 @@ class OutageModel:
     rain_fade_001_db: float | None
     k_percent: Float | None
     k_excess_db: Float | None
+    low_k: float | None
     low_k_excess_db: float | None
     notes: Notes
+
+    @property
+    def beyond_db(self) -> float | None:
+        """Diffraction loss over the budget's at the low k of the rules, if that lies below every k of the statistics.
+
+        None where the statistics of k reach the low k, and count the time of it.
+        """
+        if self.k_percent is not None and self.low_k is not None:
+            reached = min(k for _, k in self.choice.k_percentiles)
+            return self.low_k_excess_db if self.low_k < reached else None
+        return self.low_k_excess_db
 
 
 def _selective(
@@ -130,7 +142,9 @@ def _rain(path: PathFacts, choice: AvailabilityChoice, sources: Mapping[str, str
     return fade_db, Notes(used, (assumption,), rain_warnings(path))
 
 
-def _k_statistics(choice: AvailabilityChoice, k_excess_db: Sequence[float]) -> tuple[Float | None, Float | None, Notes]:
+def _k_statistics(
+    choice: AvailabilityChoice, k_excess_db: Sequence[float], sources: Mapping[str, str]
+) -> tuple[Float | None, Float | None, Notes]:
     """Percentiles of k beside the excess loss at each, and what they cannot say."""
     if len(k_excess_db) == 0:
         return None, None, Notes()
@@ -148,7 +162,24 @@ def _k_statistics(choice: AvailabilityChoice, k_excess_db: Sequence[float]) -> t
     ]
     if percent[-1] < 50.0:
         assumptions.append("obstruction fading: no excess loss at 50 %, where the budget's median k holds")
-    return frozen_array(percent), frozen_array(k_excess_db), Notes(assumptions=tuple(assumptions))
+    text = ", ".join(f"{k:.4g} at {share:g} %" for share, k in choice.k_percentiles)
+    used = InputUsed("k_percentiles", text, sources.get("k_percentiles", GIVEN))
+    return frozen_array(percent), frozen_array(k_excess_db), Notes((used,), tuple(assumptions))
+
+
+def _diffraction(
+    path: PathFacts, low_k: float | None, low_k_excess_db: float | None, sources: Mapping[str, str]
+) -> Notes:
+    """Note what diffraction takes at the median k and at the low k of the rules."""
+    if (low_k is None) != (low_k_excess_db is None):
+        raise InputError(f"low_k = {low_k}: must be given together with low_k_excess_db = {low_k_excess_db}")
+    numbers = (
+        ("median_k", path.median_k, sources.get("median_k", GIVEN)),
+        ("median_diffraction_db", path.median_loss_db, "diffraction in the budget, at median_k"),
+        ("low_k", low_k, "lowest k of the rules"),
+        ("low_k_excess_db", low_k_excess_db, "diffraction at low_k less that in the budget"),
+    )
+    return Notes(tuple(InputUsed(name, value, source) for name, value, source in numbers if value is not None))
 
 
 def outage_model(
@@ -157,6 +188,7 @@ def outage_model(
     *,
     signature: Signature | None = None,
     k_excess_db: Sequence[float] = (),
+    low_k: float | None = None,
     low_k_excess_db: float | None = None,
     sources: Mapping[str, str] | None = None,
 ) -> OutageModel:
@@ -174,8 +206,8 @@ def outage_model(
     k_excess_db
         Diffraction loss at the k of each of ``choice.k_percentiles`` less the diffraction loss in the budget, dB, in
         their order; empty leaves obstruction fading out.
-    low_k_excess_db
-        The same at the lowest k of the rules. It gives no percentage, only whether the hop is cut off there.
+    low_k, low_k_excess_db
+        The lowest k of the rules, and the same there. It gives no percentage, only whether the hop is cut off there.
     sources
         Where numbers came from, by field name of the choice or the path, for the result; ``"given"`` for the rest.
 
@@ -207,7 +239,8 @@ def outage_model(
     if signature is not None:
         selective, selective_notes = _selective(path, fading, signature, improvement)
     rain_fade, rain_notes = _rain(path, choice, sources or {})
-    k_percent, k_excess, k_notes = _k_statistics(choice, k_excess_db)
+    k_percent, k_excess, k_notes = _k_statistics(choice, k_excess_db, sources or {})
+    losses = _diffraction(path, low_k, low_k_excess_db, sources or {})
     general = Notes(
         assumptions=(
             "antenna heights above the terrain's datum are taken as above mean sea level",
@@ -231,6 +264,7 @@ def outage_model(
         rain_fade_001_db=rain_fade,
         k_percent=k_percent,
         k_excess_db=k_excess,
+        low_k=low_k,
         low_k_excess_db=low_k_excess_db,
-        notes=fading.notes + selective_notes + diversity_notes + rain_notes + k_notes + general,
+        notes=fading.notes + selective_notes + diversity_notes + rain_notes + losses + k_notes + general,
     )

@@ -9,11 +9,25 @@ __all__ = ["InputUsed", "Notes"]
 
 @dataclass(frozen=True, slots=True)
 class InputUsed:
-    """One number behind a result; the unit is in the name, ``source`` says who gave it or which method made it."""
+    """One number behind a result; the unit is in the name, ``source`` says who gave it or which method made it.
+
+    A list of numbers, as the statistics of k are, has its text for its value.
+
+    Examples
+    --------
+    >>> InputUsed("rain_rate_mm_h", 42.0, "given").line
+    'rain_rate_mm_h = 42: given'
+    """
 
     name: str
-    value: float
+    value: float | str
     source: str
+
+    @property
+    def line(self) -> str:
+        """The number with its source, in words."""
+        value = self.value if isinstance(self.value, str) else f"{self.value:.4g}"
+        return f"{self.name} = {value}: {self.source}"
 
 
 @dataclass(frozen=True, slots=True)

@@ -2,12 +2,14 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+import math
+from dataclasses import dataclass, replace
 from typing import Literal
 
 import numpy as np
-from numpy.typing import ArrayLike
+from numpy.typing import ArrayLike, NDArray
 
+from profiler.availability.gaps import not_cut_off, reasons_open
 from profiler.availability.model import OutageModel
 from profiler.availability.outages import MECHANISMS, Mechanism, Outages, outages_at
 from profiler.models import Objective
@@ -19,26 +21,33 @@ LARGEST_MARGIN_DB = 200.0
 """How far the fade margin that meets a target is searched for."""
 
 Limit = Literal["multipath", "selective", "rain", "obstruction", "no margin"]
+Unit = Literal["%", "min", "ratio"]
+BoolArray = NDArray[np.bool_]
 
-_RAIN_MATTERS_HZ = 5e9
 _GRID = 65
 
 
 @dataclass(frozen=True, slots=True)
 class TargetResult:
-    """One target. ``required`` and ``achieved`` are in the unit of its name; ``counts`` says what was counted.
+    """One target. ``required`` and ``achieved`` are in its ``unit``; ``counts`` says what was counted.
 
-    ``limited_by`` is the mechanism with the most outage of those counted, or ``"no margin"`` where the received level
-    is below the threshold without any fading. ``required_margin_db`` is the least fade margin that meets the target;
-    None if none up to 200 dB does.
+    ``achieved_up_to`` is what the outage could be at most, with what obstruction may hide below the statistics of k;
+    ``met`` is None where that, or something that could not be computed, leaves it open. ``limited_by`` is the mechanism
+    with the most outage of those counted, or ``"no margin"`` where the received level is below the threshold without
+    any fading. ``required_margin_db`` is the least fade margin that is sure to meet the target, at most of the outage
+    and with the hop not cut off at the low k of the rules; None if none up to 200 dB is. ``margin_set_by`` is the
+    mechanism that asks for it: the one with the most outage, counted or possible, right below that margin.
     """
 
     name: str
+    unit: Unit
     required: float
     achieved: float
-    met: bool
+    achieved_up_to: float
+    met: bool | None
     limited_by: Limit
     required_margin_db: float | None
+    margin_set_by: Limit
     counts: tuple[Mechanism, ...]
 
 
@@ -46,8 +55,9 @@ class TargetResult:
 class ObjectiveResult:
     """All targets together, judged by what was computed.
 
-    ``met`` is None where every target holds so far but something that matters could not be computed; ``undecided`` says
-    what. ``limited_by`` is that of the target that is missed most, or met with least to spare.
+    ``met`` is None where no target is missed but one or more are open; ``undecided`` says why. ``limited_by`` is that
+    of the target that is missed most, or met with least to spare; ``required_margin_db`` and ``margin_set_by`` are
+    those of the target that asks for most.
     """
 
     targets: tuple[TargetResult, ...]
@@ -55,6 +65,7 @@ class ObjectiveResult:
     undecided: tuple[str, ...]
     limited_by: Limit
     required_margin_db: float | None
+    margin_set_by: Limit
 
 
 @dataclass(frozen=True, slots=True)
@@ -62,6 +73,7 @@ class _Target:
     """One target before it is judged: which period and mechanisms, and what one percent is in its unit."""
 
     name: str
+    unit: Unit
     required: float
     period: Literal["worst-month", "year"]
     per_percent: float = 1.0
@@ -76,25 +88,47 @@ class _Target:
         month, year = outages_at(model, np.maximum(np.asarray(margin_db) - self.offset_db, 0.0))
         return month if self.period == "worst-month" else year
 
-    def achieved(self, model: OutageModel, margin_db: ArrayLike) -> Float:
-        margin = np.asarray(margin_db, dtype=float)
-        outages = self.outages(model, margin)
-        percent = outages.clear_air if self.clear_air_only else outages.total
-        return np.asarray(np.where(margin < self.offset_db, 100.0, percent) * self.per_percent)
+    def achieved(self, model: OutageModel, margin_db: ArrayLike) -> tuple[Float, Float]:
+        """Give what is counted, and what it could be at most."""
+        outages, margin = self.outages(model, margin_db), np.asarray(margin_db, dtype=float)
+        both = (outages.total, outages.total_up_to)
+        if self.clear_air_only:
+            assert outages.clear_air is not None  # only a hop without any margin has none
+            both = (outages.clear_air, outages.clear_air)
+        counted, most = (np.where(margin < self.offset_db, 100.0, part) * self.per_percent for part in both)
+        return counted, most
+
+    def is_sure(self, model: OutageModel, margin_db: Float) -> BoolArray:
+        """Whether a margin meets the target whatever is unknown."""
+        sure = self.achieved(model, margin_db)[1] <= self.required
+        return sure & (self.clear_air_only or not_cut_off(model, margin_db))
+
+    def limit(self, model: OutageModel, margin_db: float) -> Limit:
+        """Mechanism with the most outage at a margin, of what is counted."""
+        return "no margin" if margin_db < self.offset_db else limit_of(self.outages(model, margin_db), self.counts)
+
+    def limit_at_most(self, model: OutageModel, margin_db: float) -> Limit:
+        """Mechanism with the most outage at a margin, of what is possible."""
+        if margin_db < self.offset_db:
+            return "no margin"
+        if not self.clear_air_only and not not_cut_off(model, np.asarray(margin_db)):
+            return "obstruction"
+        outages = self.outages(model, margin_db)
+        return limit_of(replace(outages, obstruction=outages.obstruction_up_to), self.counts)
 
 
 def _targets(objective: Objective) -> tuple[_Target, ...]:
     """Every target that is asked for."""
     asked = (
-        ("worst_month_percent", "worst-month", 1.0, False, 0.0),
-        ("year_percent", "year", 1.0, False, 0.0),
-        ("minutes_per_year", "year", MINUTES_PER_YEAR / 100.0, False, 0.0),
-        ("severely_errored_seconds_ratio", "worst-month", 0.01, True, 0.0),
-        ("errored_seconds_ratio", "worst-month", 0.01, True, objective.errored_threshold_offset_db or 0.0),
+        ("worst_month_percent", "%", "worst-month", 1.0, False, 0.0),
+        ("year_percent", "%", "year", 1.0, False, 0.0),
+        ("minutes_per_year", "min", "year", MINUTES_PER_YEAR / 100.0, False, 0.0),
+        ("severely_errored_seconds_ratio", "ratio", "worst-month", 0.01, True, 0.0),
+        ("errored_seconds_ratio", "ratio", "worst-month", 0.01, True, objective.errored_threshold_offset_db or 0.0),
     )
     return tuple(
-        _Target(name, getattr(objective, name), period, *rest)  # type: ignore[arg-type]
-        for name, period, *rest in asked
+        _Target(name, unit, getattr(objective, name), *rest)  # type: ignore[arg-type]
+        for name, unit, *rest in asked
         if getattr(objective, name) is not None
     )
 
@@ -104,58 +138,53 @@ def limit_of(outages: Outages[Float], counts: tuple[Mechanism, ...] = MECHANISMS
 
     Examples
     --------
-    >>> limit_of(Outages(*(np.asarray(part) for part in (1.0, 0.1, 2.0)), None, np.asarray(1.1), np.asarray(3.1)))
+    >>> parts = (1.0, 0.1, 2.0, 0.5, 1.1, 3.6, 0.5, 3.6)
+    >>> limit_of(Outages(*(np.asarray(part) for part in parts)))
     'rain'
     """
     computed = {name: float(part) for name in counts if (part := outages.part(name)) is not None}
     return max(computed, key=lambda name: computed[name])
 
 
-def _required_margin(model: OutageModel, target: _Target) -> float | None:
-    """Least fade margin that meets a target: a grid narrowed five times (outage never grows with the margin)."""
+def _required_margin(model: OutageModel, target: _Target) -> tuple[float | None, Limit]:
+    """Least fade margin sure to meet a target, and what sets it: a grid narrowed five times.
+
+    Outage never grows with the margin, counted or possible.
+    """
     low, high = 0.0, LARGEST_MARGIN_DB
     for _ in range(5):
         grid = np.linspace(low, high, _GRID)
-        meets = target.achieved(model, grid) <= target.required
+        meets = target.is_sure(model, grid)
         if not meets.any():
-            return None
+            return None, target.limit_at_most(model, LARGEST_MARGIN_DB)
         first = int(meets.argmax())
         low, high = float(grid[max(first - 1, 0)]), float(grid[first])
-    return high
+    return high, target.limit_at_most(model, low)
 
 
-def _judge_target(model: OutageModel, target: _Target, fade_margin_db: float) -> TargetResult:
-    """Judge one target at the hop's fade margin."""
-    achieved = float(target.achieved(model, fade_margin_db))
-    limited_by: Limit = "no margin"
-    if fade_margin_db >= target.offset_db:
-        limited_by = limit_of(target.outages(model, fade_margin_db), target.counts)
-    return TargetResult(
+def _judge_target(model: OutageModel, target: _Target, fade_margin_db: float) -> tuple[TargetResult, tuple[str, ...]]:
+    """Judge one target at the hop's fade margin, and say what leaves it open."""
+    achieved, most = (float(part) for part in target.achieved(model, fade_margin_db))
+    reasons = () if target.clear_air_only else reasons_open(model, fade_margin_db)
+    if achieved <= target.required < most:
+        reasons += (
+            f"{target.name} = {target.required:g}: obstruction below the lowest k given could make it {most:.3g}; give "
+            "k_percentiles for rarer times",
+        )
+    required_margin_db, margin_set_by = _required_margin(model, target)
+    result = TargetResult(
         name=target.name,
+        unit=target.unit,
         required=target.required,
         achieved=achieved,
-        met=achieved <= target.required,
-        limited_by=limited_by,
-        required_margin_db=_required_margin(model, target),
+        achieved_up_to=most,
+        met=False if achieved > target.required else None if reasons else True,
+        limited_by=target.limit(model, fade_margin_db),
+        required_margin_db=required_margin_db,
+        margin_set_by=margin_set_by,
         counts=target.counts,
     )
-
-
-def _undecided(model: OutageModel, targets: tuple[_Target, ...], fade_margin_db: float) -> tuple[str, ...]:
-    """Name what matters to a target and could not be computed."""
-    if all(target.clear_air_only for target in targets):
-        return ()
-    reasons = []
-    if model.rain_fade_001_db is None and model.path.frequency_hz > _RAIN_MATTERS_HZ:
-        reasons.append(
-            "rain is not counted, and above 5 GHz Rec. ITU-R P.530 §2.4 wants it in the design: give rain_rate_mm_h"
-        )
-    low_k = model.low_k_excess_db
-    if model.k_percent is None and low_k is not None and low_k > fade_margin_db:
-        reasons.append(
-            "diffraction at the low k takes more than the fade margin, for an unknown time: give k_percentiles"
-        )
-    return tuple(reasons)
+    return result, reasons
 
 
 def judge(model: OutageModel, fade_margin_db: float) -> ObjectiveResult | None:
@@ -193,18 +222,21 @@ def judge(model: OutageModel, fade_margin_db: float) -> ObjectiveResult | None:
     Source: ITU-T G.826 (unavailable time, severely errored seconds) and Rec. ITU-R F.1668 (targets hold for any month),
     from memory; the outage ratio of the worst month is taken as the ratio of seconds. A year is 365.25 days.
     """
-    targets = _targets(model.choice.objective)
-    if not targets:
+    judged = [_judge_target(model, target, fade_margin_db) for target in _targets(model.choice.objective)]
+    if not judged:
         return None
-    results = tuple(_judge_target(model, target, fade_margin_db) for target in targets)
-    undecided = _undecided(model, targets, fade_margin_db)
-    margins = [result.required_margin_db for result in results]
-    known = [margin for margin in margins if margin is not None]
-    met: bool | None = all(result.met for result in results)
+    results = tuple(result for result, _ in judged)
+    verdicts = {result.met for result in results}
+    hardest = max(results, key=_margin_asked)
     return ObjectiveResult(
         targets=results,
-        met=None if met and undecided else met,
-        undecided=undecided,
+        met=False if False in verdicts else None if None in verdicts else True,
+        undecided=tuple(dict.fromkeys(reason for _, reasons in judged for reason in reasons)),
         limited_by=max(results, key=lambda result: result.achieved / result.required).limited_by,
-        required_margin_db=max(known) if len(known) == len(margins) else None,
+        required_margin_db=hardest.required_margin_db,
+        margin_set_by=hardest.margin_set_by,
     )
+
+
+def _margin_asked(result: TargetResult) -> float:
+    return math.inf if result.required_margin_db is None else result.required_margin_db

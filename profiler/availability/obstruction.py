@@ -10,7 +10,7 @@ from profiler.errors import InputError
 from profiler.normal import normal_quantile, normal_tail
 from profiler.units import Float
 
-__all__ = ["obstruction_percent"]
+__all__ = ["obstruction_percent", "unknown_percent"]
 
 _MEDIAN_PERCENT = 50.0
 
@@ -81,3 +81,43 @@ def obstruction_percent(k_percent: ArrayLike, excess_loss_db: ArrayLike, fade_db
     within = np.where(blocked[..., :-1] | blocked[..., 1:], stop - start, 0.0).sum(axis=-1)
     tails = blocked[..., 0] * percent[0] + blocked[..., -1] * (100.0 - percent[-1])
     return np.asarray(within + tails)
+
+
+def unknown_percent(
+    k_percent: ArrayLike, excess_loss_db: ArrayLike, fade_db: ArrayLike, *, beyond_db: float | None = None
+) -> Float:
+    """Percent of time that may be lost below the lowest percentile of k, besides what `obstruction_percent` counts.
+
+    That is the whole of the lowest percentage where the hop is not cut off at its k, as nothing is known of the k below
+    it; and nothing where the hop is not cut off at a lower k either, the one that it was designed for.
+
+    Parameters
+    ----------
+    k_percent, excess_loss_db, fade_db
+        As for `obstruction_percent`.
+    beyond_db
+        Diffraction loss over the budget's at a k below all of the statistics; None if no such k was looked at.
+
+    Returns
+    -------
+    ndarray
+        Percent of the period that ``k_percent`` is for, the shape of ``fade_db``.
+
+    Examples
+    --------
+    >>> unknown_percent([0.1, 1.0, 50.0], [40.0, 20.0, 0.0], [30.0, 45.0]).tolist()
+    [0.0, 0.1]
+    >>> unknown_percent([0.1, 1.0, 50.0], [40.0, 20.0, 0.0], [45.0, 60.0], beyond_db=50.0).tolist()
+    [0.1, 0.0]
+
+    Notes
+    -----
+    That a path which is clear at the low k of its rules counts as free of obstruction is how Rec. ITU-R P.530-18 §2.2
+    plans antenna heights.
+    """
+    percent, excess = _statistics(k_percent, excess_loss_db)
+    margin = not_negative("fade_db", fade_db, "dB")
+    unknown = excess[0] <= margin
+    if beyond_db is not None:
+        unknown &= beyond_db > margin
+    return np.where(unknown, percent[0], 0.0)

@@ -12,7 +12,7 @@ from profiler.availability.diversity import add_diversity_outages
 from profiler.availability.model import OutageModel
 from profiler.availability.months import worst_month_from_year, year_from_worst_month
 from profiler.availability.multipath import fade_percent
-from profiler.availability.obstruction import obstruction_percent
+from profiler.availability.obstruction import obstruction_percent, unknown_percent
 from profiler.availability.rain import rain_percent
 from profiler.checks import not_negative
 from profiler.models import frozen_array
@@ -32,15 +32,18 @@ class Outages(Generic[T]):
 
     ``multipath`` is flat fading, ``selective`` the distortion by the same echoes, ``clear_air`` both together: their
     sum, or with diversity the 3/4-power law of Rec. ITU-R P.530-17 §6.2. ``total`` is clear air, rain and obstruction
-    added in time, at most 100.
+    added in time, at most 100. ``obstruction_up_to`` is what obstruction could be at most, as the statistics of k end,
+    and ``total_up_to`` the total with it. A hop without any margin is down without fading: it has totals only.
     """
 
-    multipath: T
+    multipath: T | None
     selective: T | None
     rain: T | None
     obstruction: T | None
-    clear_air: T
+    clear_air: T | None
     total: T
+    obstruction_up_to: T | None
+    total_up_to: T
 
     def part(self, mechanism: Mechanism) -> T | None:
         """Outage by one mechanism."""
@@ -49,36 +52,50 @@ class Outages(Generic[T]):
 
 
 def _joined(
-    model: OutageModel, multipath: Float, selective: Float | None, rain: Float | None, obstruction: Float | None
+    model: OutageModel,
+    multipath: Float,
+    selective: Float | None,
+    rain: Float | None,
+    obstruction: tuple[Float, Float] | None,
 ) -> Outages[Float]:
-    """Outages of one period with their total."""
+    """Outages of one period with their total; of obstruction what is counted, and what it could be at most."""
     clear_air = multipath
     if selective is not None:
         diverse = model.improvement_at_0_db is not None
         clear_air = add_diversity_outages(multipath, selective) if diverse else multipath + selective
-    total = clear_air + (0.0 if rain is None else rain) + (0.0 if obstruction is None else obstruction)
+    fading = clear_air if rain is None else clear_air + rain
+    counted, most = (None, None) if obstruction is None else obstruction
 
     def frozen(part: Float | None) -> Float | None:
         return None if part is None else frozen_array(part)
+
+    def total(part: Float | None) -> Float:
+        return frozen_array(np.minimum(fading if part is None else fading + part, 100.0))
 
     return Outages(
         multipath=frozen_array(multipath),
         selective=frozen(selective),
         rain=frozen(rain),
-        obstruction=frozen(obstruction),
+        obstruction=frozen(counted),
         clear_air=frozen_array(np.minimum(clear_air, 100.0)),
-        total=frozen_array(np.minimum(total, 100.0)),
+        total=total(counted),
+        obstruction_up_to=frozen(most),
+        total_up_to=total(most),
     )
 
 
-def _periods_of_obstruction(model: OutageModel, margin_db: Float) -> tuple[Float | None, Float | None]:
-    """Obstruction outage of the worst month and of the year."""
+def _periods_of_obstruction(
+    model: OutageModel, margin_db: Float
+) -> tuple[tuple[Float, Float] | None, tuple[Float, Float] | None]:
+    """Obstruction outage of the worst month and of the year: counted, and at most."""
     if model.k_percent is None or model.k_excess_db is None:
         return None, None
-    percent = obstruction_percent(model.k_percent, model.k_excess_db, margin_db)
+    statistics = (model.k_percent, model.k_excess_db, margin_db)
+    counted = obstruction_percent(*statistics)
+    most = counted + unknown_percent(*statistics, beyond_db=model.beyond_db)
     if model.choice.k_period == "year":
-        return worst_month_from_year(percent), percent
-    return percent, year_from_worst_month(percent)
+        return (worst_month_from_year(counted), worst_month_from_year(most)), (counted, most)
+    return (counted, most), (year_from_worst_month(counted), year_from_worst_month(most))
 
 
 def outages_at(model: OutageModel, margin_db: ArrayLike) -> tuple[Outages[Float], Outages[Float]]:

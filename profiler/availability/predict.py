@@ -7,6 +7,7 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import ArrayLike
 
+from profiler.availability.gaps import obstruction_notes
 from profiler.availability.model import OutageModel
 from profiler.availability.notes import InputUsed, Notes
 from profiler.availability.objective import LARGEST_MARGIN_DB, Limit, ObjectiveResult, judge, limit_of
@@ -26,7 +27,7 @@ class Availability:
     Attributes
     ----------
     fade_margin_db
-        The margin it is for. Below 0 dB the totals are 100 and the mechanisms are those at 0 dB.
+        The margin it is for. Below 0 dB the totals are 100 and no mechanism has a share.
     method
         Multipath method by name.
     worst_month_percent, year_percent
@@ -34,7 +35,8 @@ class Availability:
     missing
         Mechanisms that were not computed, as nothing was given for them; the totals do not hold them.
     low_k_blocks
-        Whether diffraction at the low k of the rules takes more than the margin; None if it was not given.
+        Whether diffraction at the low k of the rules takes more than the margin; None if it was not given. The time of
+        it is counted only where the statistics of k reach that k.
     objective
         The targets judged, or None if none was set.
     limited_by
@@ -109,18 +111,20 @@ def outage_curve(model: OutageModel, margin_db: ArrayLike) -> OutageCurve:
 
 
 def _point(outages: Outages[Float], down: bool) -> Outages[float]:
-    """Outages at one margin as plain floats; with no margin at all the hop is always down."""
+    """Outages at one margin as plain floats; with no margin at all the hop is always down, by no mechanism."""
 
     def number(part: Float | None) -> float | None:
-        return None if part is None else float(part)
+        return None if part is None or down else float(part)
 
     return Outages(
-        multipath=float(outages.multipath),
+        multipath=number(outages.multipath),
         selective=number(outages.selective),
         rain=number(outages.rain),
         obstruction=number(outages.obstruction),
-        clear_air=100.0 if down else float(outages.clear_air),
+        clear_air=number(outages.clear_air),
         total=100.0 if down else float(outages.total),
+        obstruction_up_to=number(outages.obstruction_up_to),
+        total_up_to=100.0 if down else float(outages.total_up_to),
     )
 
 
@@ -138,30 +142,6 @@ def _rain_notes(year: Outages[Float]) -> Notes:
     return Notes()
 
 
-def _obstruction_notes(model: OutageModel, margin_db: float) -> Notes:
-    """Say what the statistics of k, or the lack of them, leave open."""
-    if model.k_percent is None or model.k_excess_db is None:
-        low_k = model.low_k_excess_db
-        if low_k is None or low_k <= margin_db:
-            return Notes()
-        line = (
-            f"diffraction at the low k takes {low_k:.1f} dB more than the budget counts, over the fade margin of "
-            f"{margin_db:.1f} dB: the hop is cut off then, for a time not counted; give k_percentiles"
-        )
-        return Notes(warnings=(line,))
-    lowest, highest = float(model.k_percent[0]), float(model.k_percent[-1])
-    if model.k_excess_db[-1] > margin_db:
-        line = f"obstruction: cut off at the highest k given, {highest:g} %; counted as cut off at every k above it too"
-        return Notes(warnings=(line,))
-    if model.k_excess_db[0] > margin_db:
-        return Notes()
-    line = (
-        f"obstruction: not cut off at the lowest k given, not exceeded {lowest:g} % of the time; below it counted as "
-        f"0, and it could be up to {lowest:g} %"
-    )
-    return Notes(assumptions=(line,))
-
-
 def _other_notes(fade_margin_db: float, missing: tuple[Mechanism, ...], objective: ObjectiveResult | None) -> Notes:
     """Note no margin, what is not counted, and targets that no margin meets."""
     warnings = []
@@ -169,8 +149,10 @@ def _other_notes(fade_margin_db: float, missing: tuple[Mechanism, ...], objectiv
         warnings.append(f"fade margin = {fade_margin_db:.1f} dB: the hop is below its threshold without any fading")
     for target in () if objective is None else objective.targets:
         if target.required_margin_db is None:
+            asked = f"{target.name} = {target.required:g}"
             warnings.append(
-                f"{target.name} = {target.required:g}: no fade margin up to {LARGEST_MARGIN_DB:g} dB meets it"
+                f"{asked}: no fade margin up to {LARGEST_MARGIN_DB:g} dB is sure to meet it; most of what is left, or "
+                f"may be, is {target.margin_set_by}"
             )
     warnings += [] if objective is None else list(objective.undecided)
     assumptions = (f"not counted, as nothing was given for it: {', '.join(missing)}",) if missing else ()
@@ -218,12 +200,9 @@ def predict(model: OutageModel, fade_margin_db: float) -> Availability:
     missing = tuple(mechanism for mechanism in MECHANISMS if year.part(mechanism) is None)
     objective = judge(model, fade_margin_db)
     limited_by: Limit = "no margin" if down else limit_of(year)
-    notes = (
-        model.notes
-        + _rain_notes(year)
-        + _obstruction_notes(model, fade_margin_db)
-        + _other_notes(fade_margin_db, missing, objective)
-    )
+    notes = model.notes + _other_notes(fade_margin_db, missing, objective)
+    if not down:
+        notes += _rain_notes(year) + obstruction_notes(model, fade_margin_db)
     return Availability(
         fade_margin_db=float(fade_margin_db),
         method=model.choice.multipath_method,

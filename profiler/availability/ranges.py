@@ -8,6 +8,9 @@ from profiler.models import AvailabilityChoice, DiversityChoice
 
 __all__ = ["diversity_warnings", "p530_warnings", "rain_warnings", "vigants_warnings"]
 
+_GRAZING_DB = 6.0
+"""Loss over a knife edge that touches the ray, Rec. ITU-R P.526-15 §4.1."""
+
 
 def _outside(what: str, value: float, low: float, high: float, unit: str, source: str) -> tuple[str, ...]:
     """One line if the value is outside the range, none if inside."""
@@ -15,6 +18,17 @@ def _outside(what: str, value: float, low: float, high: float, unit: str, source
         return ()
     return (
         f"{what} = {value:g} {unit}: outside the {low:g} to {high:g} {unit} of {source}; its formula was carried on",
+    )
+
+
+def _blocked(path: PathFacts, law: str) -> tuple[str, ...]:
+    """Warn where the ground stands in the ray at the median k: the methods are fits to links that are clear of it."""
+    loss_db = path.median_loss_db
+    if loss_db is None or loss_db <= _GRAZING_DB:
+        return ()
+    return (
+        f"diffraction at the median k = {loss_db:.1f} dB: more than the {_GRAZING_DB:g} dB of an edge that touches the "
+        f"ray, and {law} is for paths clear of the ground; do not rely on its outage",
     )
 
 
@@ -34,6 +48,7 @@ def p530_warnings(path: PathFacts, choice: AvailabilityChoice) -> tuple[str, ...
     if path.distance_km <= 5.0:
         distance = (f"{distance[0]}; §2.3 lets multipath on paths of 5 km or less count as zero, which was not done",)
     warnings = (
+        *_blocked(path, law),
         *distance,
         *_outside("frequency", path.frequency_ghz, 0.45, 45.0, "GHz", law),
         *_outside("path inclination", path.inclination_mrad, 0.0, 37.0, "mrad", law),
@@ -62,6 +77,7 @@ def vigants_warnings(path: PathFacts, choice: AvailabilityChoice) -> tuple[str, 
     """
     law = "Vigants-Barnett (from memory of CCIR Report 338)"
     warnings = (
+        *_blocked(path, law),
         *_outside("distance", path.distance_km, 24.0, 70.0, "km", law),
         *_outside("frequency", path.frequency_ghz, 2.0, 11.0, "GHz", law),
     )

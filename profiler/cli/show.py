@@ -105,7 +105,7 @@ def _numbers_used(study: Study, scale: Scale) -> tuple[str, ...]:
     return (
         "ground: " + ", ".join(f"{use.info.path.name} at {use.share:.0%} of the points" for use in terrain.sources),
         *surveys,
-        *(f"{each.name} = {each.value:.4g}: {each.source}" for each in climate),
+        *(each.line for each in climate),
     )
 
 
@@ -244,11 +244,11 @@ def _show_availability(screen: Console, study: Study) -> None:
     )
     for target in found.objective.targets if found.objective is not None else ():
         margin = "no margin" if target.required_margin_db is None else f"{target.required_margin_db:.1f} dB"
-        outcome = "met" if target.met else "MISSED"
+        outcome = {True: "met", False: "MISSED", None: "undecided"}[target.met]
         screen.print(
             f"Objective {target.name} {target.required:g}: {outcome} at {target.achieved:.3g};"
             f" {margin} of fade margin would do.",
-            style="" if target.met else "red",
+            style={True: "", False: "red", None: "yellow"}[target.met],
             markup=False,
             soft_wrap=True,
         )

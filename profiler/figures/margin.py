@@ -155,7 +155,7 @@ def _targets(page: Page, top: float, study: Study) -> float:
             each.name.replace("_", " "),
             f"{each.required:.4g}",
             f"{each.achieved:.3g}" if each.achieved < 1000 else f"{each.achieved:.0f}",
-            "met" if each.met else "missed",
+            {True: "met", False: "missed", None: "open"}[each.met],
             "none does" if each.required_margin_db is None else f"{each.required_margin_db:.1f} dB",
             each.limited_by,
         )

@@ -183,7 +183,7 @@ def link_notes(study: Study) -> list[tuple[str, list[str]]]:
     if loss is not None:
         path.insert(0, f"diffraction {loss.loss_db:.1f} dB by {loss.method} at k = {k_text(loss.k)}")
     inputs = [] if study.availability is None else study.availability.inputs
-    numbers = [f"{each.name} = {each.value:.4g}: {each.source}" for each in inputs]
+    numbers = [each.line for each in inputs]
     blocks = _notes(study, [*path, *link_assumptions(study)], list(study.warnings))
     return [("Numbers used", numbers), *blocks] if numbers else blocks
 

@@ -75,7 +75,7 @@ def predict_outage(
     Returns
     -------
     OutageResult
-        Empty, with the reason among the assumptions, where there is no margin or no climate to predict from.
+        Empty, with the reason in words, where there is no margin or no climate to predict from.
     """
     choice = climate.choice
     if choice is None:
@@ -87,9 +87,14 @@ def predict_outage(
         asked = choice.objective != Objective()
         unjudged = ("the availability objective was not judged: no radio with a threshold",) if asked else ()
         return OutageResult(None, None, (), (reason,), (*climate.warnings, *unjudged))
+    if climate.gap is not None:
+        judged = ", and the objective not judged" if hop.has_objective else ""
+        reason = f"availability was not predicted{judged}: {climate.gap}"
+        return OutageResult(None, None, (), (), (*climate.warnings, reason))
     from profiler.availability import outage_curve, outage_model, predict
 
-    path = _facts(hop, profile, climate, centre_a_m, centre_b_m)
+    path = _facts(hop, profile, climate, centre_a_m, centre_b_m, losses)
+    low_k = min(rule.k for rule in hop.rules)
     excess, low_k_excess = _excess_losses(hop, profile, climate, centre_a_m, centre_b_m, losses)
     signatures = {mode.name: mode.signature for mode in hop.radio.modes}
     models: dict[str, OutageModel] = {}
@@ -100,6 +105,7 @@ def predict_outage(
             choice,
             signature=signatures[row.name],
             k_excess_db=excess,
+            low_k=low_k,
             low_k_excess_db=low_k_excess,
             sources=climate.sources,
         )
@@ -137,7 +143,14 @@ def _weaker_rows(budget: Budget) -> tuple[tuple[str, ModeBudget], ...]:
     return tuple(min((("A to B", there), ("B to A", back)), key=margin) for there, back in both)
 
 
-def _facts(hop: Hop, profile: Profile, climate: ClimateUse, centre_a_m: float, centre_b_m: float) -> PathFacts:
+def _facts(
+    hop: Hop,
+    profile: Profile,
+    climate: ClimateUse,
+    centre_a_m: float,
+    centre_b_m: float,
+    losses: Mapping[float, DiffractionLoss],
+) -> PathFacts:
     """Put the path into the plain numbers that the outage methods take."""
     from profiler.availability import PathFacts, path_roughness
 
@@ -151,6 +164,8 @@ def _facts(hop: Hop, profile: Profile, climate: ClimateUse, centre_a_m: float, c
         polarization=hop.polarization,
         mean_ground_m=float(profile.ground_m.mean()),
         ground_roughness_m=path_roughness(profile.distance_m, profile.ground_m) if named_climate else None,
+        median_k=climate.median_k,
+        median_loss_db=losses[climate.median_k].loss_db,
     )
 
 

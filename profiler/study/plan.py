@@ -195,7 +195,7 @@ def _for_objective(study: Study) -> LimitHeights | None:
     judged = replace(hop, radio=replace(hop.radio, modes=hop.radio.modes[:1]), rules=(lowest,))
     above_m = max(float(study.profile.surface_m.max()), study.centre_a_m, study.centre_b_m)
     if link(judged, study.profile, study.climate, study.air, above_m, above_m).outage.availability is None:
-        return None  # the radio has no threshold, so that there is no margin at any height
+        return None  # no threshold, or no climate to predict from: that is so at any height
     excess = partial(_margin_missing_db, study, judged)
     return heights_within(excess, hop.heights.tower_a, hop.heights.tower_b, what="shortage of fade margin", unit="dB")
 
