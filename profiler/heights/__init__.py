@@ -19,11 +19,13 @@ from profiler.heights.region import (
 )
 from profiler.heights.search import LimitHeights, cheapest_by_trial, heights_for_loss, heights_within
 from profiler.heights.sheet import EndHeights, Held, MountingSheet, mounting_sheet
+from profiler.heights.sure import DrawnRegions, drawn_regions, least_b_sure, least_surplus_drawn
 
 __all__ = [
     "Choice",
     "ClearingRegion",
     "DiversityEnd",
+    "DrawnRegions",
     "EndHeights",
     "Held",
     "Least",
@@ -40,6 +42,7 @@ __all__ = [
     "cheapest_of",
     "check_diversity",
     "clearing_region",
+    "drawn_regions",
     "free_positions",
     "frontier_stretches",
     "height_cost",
@@ -47,9 +50,11 @@ __all__ = [
     "heights_within",
     "least_a_for",
     "least_b_for",
+    "least_b_sure",
     "least_equal",
     "least_other",
     "least_ray",
+    "least_surplus_drawn",
     "lower_rays",
     "lower_rules",
     "mounting_sheet",
