@@ -9,7 +9,7 @@ from typing import TYPE_CHECKING
 import numpy as np
 
 from profiler.atmosphere import atmosphere_warnings
-from profiler.errors import InputError
+from profiler.errors import InputError, under
 from profiler.geometry import check_corridor, check_rule, elevation_angle, find_reflections
 from profiler.models import ConfidenceChoice, Hop, Rule
 from profiler.study.climate import ClimateUse, climate_numbers
@@ -151,33 +151,34 @@ def _confidence(hop: Hop, ground: Ground, climate: ClimateUse, rules: Sequence[R
     percentiles = climate.k_percentiles if choice.vary_k else ()
     if choice.vary_k and not percentiles:
         raise InputError(
-            f"{hop.source}: confidence.vary_k = true: must come with availability.k_percentiles or the climate maps;"
-            " give one of them, or set it to false"
+            "confidence.vary_k = true: must come with availability.k_percentiles or the climate maps; give one of them,"
+            " or set it to false"
         )
     from profiler.confidence import assess
 
     surveyed_sigma_m = 0.0 if choice.site_sigma_m is None else choice.site_sigma_m
-    return assess(
-        profile.distance_m,
-        profile.ground_m,
-        profile.cover_m,
-        hop.site_a.antenna_m,
-        hop.site_b.antenna_m,
-        hop.frequency_hz,
-        hop.rules,
-        terrain_sigma_m=choice.terrain_sigma_m,
-        correlation_m=choice.correlation_m,
-        covariance=choice.covariance,
-        site_sigma_a_m=surveyed_sigma_m if profile.surveyed[0] else choice.site_sigma_m,
-        site_sigma_b_m=surveyed_sigma_m if profile.surveyed[-1] else choice.site_sigma_m,
-        cover_sigma_m=choice.cover_sigma_m,
-        cover_relative_sigma=choice.cover_relative_sigma,
-        cover_correlation_m=choice.cover_correlation_m,
-        beside_m=np.stack([_beside(result) for result in rules]),
-        k_percentiles=percentiles,
-        draws=choice.draws,
-        seed=choice.seed,
-    )
+    with under("confidence", ConfidenceChoice):
+        return assess(
+            profile.distance_m,
+            profile.ground_m,
+            profile.cover_m,
+            hop.site_a.antenna_m,
+            hop.site_b.antenna_m,
+            hop.frequency_hz,
+            hop.rules,
+            terrain_sigma_m=choice.terrain_sigma_m,
+            correlation_m=choice.correlation_m,
+            covariance=choice.covariance,
+            site_sigma_a_m=surveyed_sigma_m if profile.surveyed[0] else choice.site_sigma_m,
+            site_sigma_b_m=surveyed_sigma_m if profile.surveyed[-1] else choice.site_sigma_m,
+            cover_sigma_m=choice.cover_sigma_m,
+            cover_relative_sigma=choice.cover_relative_sigma,
+            cover_correlation_m=choice.cover_correlation_m,
+            beside_m=np.stack([_beside(result) for result in rules]),
+            k_percentiles=percentiles,
+            draws=choice.draws,
+            seed=choice.seed,
+        )
 
 
 def _beside(result: RuleResult) -> Float:
