@@ -96,6 +96,11 @@ def test_small_hop(folder):
     )
 
 
+def test_a_median_k_is_what_the_file_says_or_left_to_the_study(folder):
+    assert read(folder, SMALL).median_k is None
+    assert read(folder, small(rules__preset='preset = "light-route"\nmedian_k = 1.25')).median_k == 1.25
+
+
 def test_load_hop_takes_paths_from_its_folder_and_hashes_the_bytes(folder):
     file = folder / "hop.toml"
     file.write_bytes(b"\xef\xbb\xbf" + SMALL.replace("\n", "\r\n").encode())

@@ -8,6 +8,7 @@ import hashlib
 import json
 import math
 from dataclasses import replace
+from importlib.util import find_spec
 from itertools import pairwise
 
 import numpy as np
@@ -17,6 +18,7 @@ from hypothesis import given, settings
 from hypothesis import strategies as st
 from scipy.ndimage import gaussian_filter
 
+from profiler.climate import lookup
 from profiler.errors import DatumError, InputError, MissingGroundError
 from profiler.geometry import ROUNDING_M
 from profiler.models import (
@@ -601,6 +603,75 @@ def test_obstruction_counts_what_low_k_takes_beyond_the_budget(land, margin_db, 
     assert by_k[2 / 3] - by_k[4 / 3] == pytest.approx(2.5, abs=2)
     assert study.availability.low_k_blocks is blocked
     assert (study.availability.year_percent.obstruction > 0) is blocked
+
+
+@pytest.mark.parametrize("k_percentiles", [(), ((0.1, 1.1), (50.0, 4 / 3))])
+def test_statistics_that_end_above_the_low_k_do_not_hide_that_it_cuts_the_hop_off(land, k_percentiles):
+    climate = replace(CLIMATE, k_percentiles=k_percentiles, objective=Objective(year_percent=50.0))
+    hop = hop_over(land(ridge(50.0)), radio=RADIO, availability=climate)
+    received_dbm = run_study(hop).budget.b_to_a.received_dbm
+    study = run_study(replace(hop, radio=with_threshold(received_dbm - 1.0)))
+    assert (study.availability.low_k_blocks, study.verdict.meets_objective) == (True, None)
+    assert not study.verdict.passes
+    assert sum("low k of the rules, 0.6667, takes" in warning for warning in study.warnings) == 1
+
+
+def test_multipath_over_a_path_blocked_at_the_median_k_is_warned_of(land):
+    def warned(height_m):
+        study = run_study(hop_over(land(ridge(height_m)), radio=RADIO, availability=CLIMATE))
+        return study.median_diffraction.loss_db, [line for line in study.warnings if "clear of the ground" in line]
+
+    assert warned(0.0) == (pytest.approx(0.0, abs=1.0), [])
+    loss_db, [line] = warned(60.0)
+    assert line.startswith(f"diffraction at the median k = {loss_db:.1f} dB")
+
+
+@pytest.mark.parametrize("objective", [Objective(), Objective(year_percent=0.01)])
+def test_too_little_terrain_for_the_roughness_leaves_out_the_outage_and_nothing_else(land, objective):
+    climate = replace(CLIMATE, multipath_method="p530-17", objective=objective)
+    study = run_study(hop_over(land(), radio=RADIO, availability=climate))
+    assert study.availability is None
+    assert (study.verdict.clears, study.verdict.passes) == (True, not study.hop.has_objective)
+    assert study.budget.a_to_b.fade_margin_db > 0
+    [line] = [warning for warning in study.warnings if "availability was not predicted" in warning]
+    assert ("objective not judged" in line) == study.hop.has_objective
+    assert "110 km x 110 km box" in line
+    assert line.endswith("give terrain_roughness_m, more terrain, or choose p530-17-quick")
+    given = run_study(replace(study.hop, availability=replace(climate, terrain_roughness_m=60.0)))
+    assert given.availability is not None
+
+
+@pytest.mark.skipif(find_spec("itur") is None, reason='the maps need pip install "hopwright[climate]"')
+def test_the_maps_give_the_median_k_where_the_hop_does_not(land):
+    """Beside the library's own reading of P.453-13: the budget takes its k at 50 %, the rules keep theirs."""
+    place = lookup(9.0, 46.09)
+    maps = AvailabilityChoice("p530-17-quick", Objective(year_percent=0.01), use_maps=True)
+    hop = hop_over(land(ridge(40.0)), radio=RADIO, availability=maps)
+    study = run_study(hop)
+    assert study.climate.median_k == pytest.approx(place.k_median, rel=1e-3)
+    assert study.climate.median_k != pytest.approx(4 / 3, rel=1e-3)
+    assert study.median_diffraction.k == to_document(study)["hop"]["median_k"] == study.climate.median_k
+    assert study.budget.a_to_b.diffraction_db == study.median_diffraction.loss_db
+    assert [result.check.rule.k for result in study.rules] == [4 / 3, 2 / 3]
+    [line] = [assumption for assumption in study.assumptions if assumption.startswith("median k")]
+    assert "P.453-13" in line
+    assert "4/3" not in line
+    used = {each.name: each for each in study.availability.inputs}
+    assert used["median_k"].value == study.climate.median_k
+    assert used["median_k"].source == used["k_percentiles"].source == place.k_source
+    assert (used["rain_rate_mm_h"].source, used["dn1_n_km"].source) == (place.rain_source, place.dn1_source)
+    assert f"{study.climate.median_k:.4g} at 50 %" in used["k_percentiles"].value
+    stated = run_study(replace(hop, median_k=1.2))
+    assert stated.median_diffraction.k == 1.2
+    assert not any(assumption.startswith("median k") for assumption in stated.assumptions)
+
+
+def test_without_maps_a_median_k_that_is_not_given_is_four_thirds_and_said(land):
+    study = run_study(hop_over(land(), radio=RADIO, availability=CLIMATE))
+    note = "median k: none is given, 4/3 is taken (Rec. ITU-R P.530-18 §2.2, where unknown)"
+    assert study.median_diffraction.k == 4 / 3
+    assert study.assumptions.count(note) == 1
+    assert note not in run_study(hop_over(land(), median_k=4 / 3)).assumptions
 
 
 def test_availability_is_that_of_the_weaker_direction(land):
