@@ -13,6 +13,7 @@ from profiler.errors import InputError, under
 from profiler.geometry import check_corridor, check_rule, elevation_angle, find_reflections
 from profiler.models import ConfidenceChoice, Hop, Rule
 from profiler.study.climate import ClimateUse, climate_numbers
+from profiler.study.doubt import doubt_given
 from profiler.study.ground import Ground, read_ground, require_above_cover
 from profiler.study.link import Air, Link, air_along, link
 from profiler.study.places import find_places
@@ -156,7 +157,6 @@ def _confidence(hop: Hop, ground: Ground, climate: ClimateUse, rules: Sequence[R
         )
     from profiler.confidence import assess
 
-    surveyed_sigma_m = 0.0 if choice.site_sigma_m is None else choice.site_sigma_m
     with under("confidence", ConfidenceChoice):
         return assess(
             profile.distance_m,
@@ -166,18 +166,9 @@ def _confidence(hop: Hop, ground: Ground, climate: ClimateUse, rules: Sequence[R
             hop.site_b.antenna_m,
             hop.frequency_hz,
             hop.rules,
-            terrain_sigma_m=choice.terrain_sigma_m,
-            correlation_m=choice.correlation_m,
-            covariance=choice.covariance,
-            site_sigma_a_m=surveyed_sigma_m if profile.surveyed[0] else choice.site_sigma_m,
-            site_sigma_b_m=surveyed_sigma_m if profile.surveyed[-1] else choice.site_sigma_m,
-            cover_sigma_m=choice.cover_sigma_m,
-            cover_relative_sigma=choice.cover_relative_sigma,
-            cover_correlation_m=choice.cover_correlation_m,
             beside_m=np.stack([_beside(result) for result in rules]),
             k_percentiles=percentiles,
-            draws=choice.draws,
-            seed=choice.seed,
+            **doubt_given(choice, profile),
         )
 
 
