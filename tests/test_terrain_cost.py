@@ -130,8 +130,8 @@ def test_memory_does_not_grow_with_the_mosaic(write_raster):
     assert float(done.stdout) < 90.0
 
 
-def test_importing_costs_no_rasterio():
-    """`hopwright --help` must not wait for GDAL."""
-    code = "import sys, profiler.terrain; print('rasterio' in sys.modules)"
+def test_importing_costs_neither_rasterio_nor_pyproj():
+    """`hopwright --help` must not wait for GDAL or PROJ."""
+    code = "import sys, profiler.terrain; print('rasterio' in sys.modules, 'pyproj' in sys.modules)"
     done = subprocess.run([sys.executable, "-c", code], capture_output=True, text=True, check=True)
-    assert done.stdout.strip() == "False"
+    assert done.stdout.strip() == "False False"

@@ -266,13 +266,32 @@ def test_ellipsoidal_heights_are_told_apart(write_raster):
 
 
 def test_horizontal_datum_shift_moves_the_place_not_the_height(write_raster):
-    """NAD27 in Utah lies some 70 m from WGS 84 in longitude; pyproj, which knows the shift by itself, says where."""
+    """NAD27 in Utah lies some 70 m from WGS 84 in longitude; GDAL, with a PROJ of its own, says where."""
+    from rasterio.warp import transform
+
     lon, lat = -113.1, 37.3
-    there = Transformer.from_crs(4326, 4267, always_xy=True).transform(lon, lat)
+    there = [values[0] for values in transform("EPSG:4326", "EPSG:4267", [lon], [lat])]
     heights = np.tile(np.arange(200.0), (200, 1))
     found = sample(write_raster("n.tif", heights, Affine(0.0001, 0, -113.11, 0, -0.0001, 37.31), "EPSG:4267"), lon, lat)
     assert abs(there[0] - lon) > 5e-4
     assert found.ground_m == pytest.approx((there[0] + 113.11) / 0.0001 - 0.5, abs=1e-3)
+
+
+def test_longitudes_from_another_prime_meridian(tmp_path):
+    """Degrees on WGS 84 counted from Paris, 2.337229° east of Greenwich (EPSG prime meridian 8903: 2.5969213 grads)."""
+    (tmp_path / "p.asc").write_text("ncols 3\nnrows 1\nxllcorner 10\nyllcorner 50\ncellsize 1\n0 1 2\n")
+    (tmp_path / "p.prj").write_text(WGS84.replace("UNIT", 'PRIMEM["Paris",2.337229],UNIT', 1))
+    assert sample(tmp_path, 2.337229 + 11.75, 50.5).ground_m == pytest.approx(1.25, abs=1e-6)
+
+
+@pytest.mark.parametrize("degree", ["degree", "Degree"])
+def test_degrees_on_wgs84_need_no_transformation(write_raster, monkeypatch, degree):
+    """As ESRI's .prj files spell the unit too."""
+    import profiler.terrain.proj as proj
+
+    monkeypatch.setattr(proj, "_transform", None)
+    path = write_raster("w.tif", FLAT, GRID, WGS84.replace("degree", degree))
+    assert sample(path, 10.05, 49.95).ground_m == 1000
 
 
 @pytest.mark.parametrize("datum", ["EPSG:4326", "EPSG:999999"])

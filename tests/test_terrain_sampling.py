@@ -38,6 +38,14 @@ def by_scipy(heights, first_lon, first_lat, cell_lon, cell_lat, lon, lat):
     return grid(np.stack([lat, lon], axis=-1))
 
 
+def on_map(epsg, lon, lat):
+    """Map coordinates by GDAL, whose PROJ is not the one that terrain asks."""
+    from rasterio.warp import transform
+
+    x, y = transform("EPSG:4326", f"EPSG:{epsg}", np.atleast_1d(lon).tolist(), np.atleast_1d(lat).tolist())
+    return np.squeeze(x), np.squeeze(y)
+
+
 @pytest.mark.parametrize("kind", ["Area", "Point"])
 def test_area_and_point_agree_with_scipy_to_a_millimetre(write_raster, kind):
     heights, cell = rough(60, 80), 1 / 1200
@@ -71,7 +79,7 @@ def test_geotiff_point_convention_from_raw_tags(tmp_path):
     assert np.abs(found.ground_m - expected).max() < MILLIMETRE
 
 
-def test_real_ground_in_two_crs_against_scipy_and_pyproj(real_terrain):
+def test_real_ground_in_two_crs_against_scipy_and_gdal(real_terrain):
     lon, lat = np.linspace(-113.2, -112.9, 1500), np.linspace(37.17, 37.47, 1500)
     found = {}
     for name, crs in (("canyon_srtm_3arcsec.tif", 4326), ("canyon_srtm_utm12.tif", 32612)):
@@ -79,7 +87,7 @@ def test_real_ground_in_two_crs_against_scipy_and_pyproj(real_terrain):
 
         with rasterio.open(real_terrain / name) as raster:
             heights, affine = raster.read(1).astype(float), raster.transform
-        x, y = Transformer.from_crs(4326, crs, always_xy=True).transform(lon, lat)
+        x, y = on_map(crs, lon, lat)
         expected = map_coordinates(heights, [(y - affine.f) / affine.e - 0.5, (x - affine.c) / affine.a - 0.5], order=1)
         found[crs] = sample(real_terrain / name, lon, lat).ground_m
         assert np.abs(found[crs] - expected).max() < MILLIMETRE
@@ -176,21 +184,31 @@ def test_bilinear_gives_a_plane_back_on_any_grid(tmp_path_factory, turn, stretch
         (32601, -179.99, 66.0, 30.0),  # UTM zone 1, at the antimeridian
     ],
 )
-def test_any_crs_agrees_with_pyproj(write_raster, epsg, lon, lat, cell):
-    """A plane of 10 m a cell in map coordinates, at points whose map coordinates pyproj finds by itself."""
-    to_map = Transformer.from_crs(4326, epsg, always_xy=True)
-    x0, y0 = to_map.transform(lon, lat)
+def test_any_crs_agrees_with_gdal(write_raster, epsg, lon, lat, cell):
+    """A plane of 10 m a cell in map coordinates, at points whose map coordinates GDAL finds with its own PROJ."""
+    x0, y0 = on_map(epsg, lon, lat)
     heights = np.add.outer(np.arange(60.0), np.arange(60.0)) * 10
     path = write_raster("p.tif", heights, from_origin(x0 - 30 * cell, y0 + 30 * cell, cell, cell), f"EPSG:{epsg}")
     spread = 20 * (cell if cell > 1 else cell * 111_000) / 111_000
     rng = np.random.default_rng(epsg)
     lons = (lon + spread * rng.uniform(-1, 1, 50) + 180) % 360 - 180
     lats = np.minimum(lat + spread * rng.uniform(-1, 1, 50), 90.0)
-    x, y = to_map.transform(lons, lats)
+    x, y = on_map(epsg, lons, lats)
     expected = 10 * ((x - x0 + y0 - y) / cell + 59)
     found = sample(path, lons, lats)
     assert np.abs(found.ground_m - expected).max() < MILLIMETRE
     assert found.sources[0].info.crs == f"EPSG:{epsg}"
+
+
+def test_points_that_a_projection_does_not_reach_cost_the_others_nothing(write_raster):
+    """Orthographic: the far side of the earth has no place on the map. By hand: x = R·cos(lat)·sin(lon - lon0)."""
+    sphere = "+proj=ortho +lat_0=0 +lon_0=20 +R=6371000"
+    path = write_raster("o.tif", np.tile(np.arange(100.0), (100, 1)), from_origin(-5e6, 5e6, 1e5, 1e5), sphere)
+    lon = np.array([20.0, 200.0, 25.0, -160.0, 0.0, 170.0])
+    found = sample(path, lon, np.zeros(6))
+    expected = (6_371_000 * np.sin(np.radians(lon - 20)) + 5e6) / 1e5 - 0.5
+    np.testing.assert_allclose(found.ground_m, np.where(np.abs(lon - 10) < 90, expected, np.nan), atol=1e-6)
+    assert found.covered.tolist() == [True, False, True, False, True, False]
 
 
 @given(st.lists(st.integers(1, 59), max_size=3, unique=True), st.lists(st.integers(1, 59), max_size=3, unique=True),

@@ -1,6 +1,6 @@
 """Where the path runs on the WGS 84 ellipsoid.
 
-The only user of pyproj, which is imported inside the functions that need it: its import alone costs some 50 ms.
+pyproj is imported inside the functions that need it: its import alone costs some 50 ms.
 """
 
 from profiler.path.datum import DATUMS, to_wgs84

@@ -1,4 +1,4 @@
-"""The edge to GDAL: one environment, quiet opening, its failures as one-line errors, coordinates in and out."""
+"""The edge to GDAL: one environment, quiet opening, its failures as one-line errors."""
 
 from __future__ import annotations
 
@@ -7,18 +7,14 @@ import warnings
 from collections import OrderedDict
 from collections.abc import Iterator
 from pathlib import Path
-from typing import TYPE_CHECKING, Any
+from typing import Any
 
 import numpy as np
 from numpy.typing import NDArray
 
 from profiler.errors import RasterError
-from profiler.units import Float
 
-if TYPE_CHECKING:
-    from rasterio.crs import CRS
-
-__all__ = ["OpenRasters", "from_lonlat", "gdal_session", "open_raster", "read_window", "to_lonlat"]
+__all__ = ["OpenRasters", "gdal_session", "open_raster", "read_window"]
 
 _OPTIONS = {
     "GDAL_CACHEMAX": 64_000_000,  # bytes; the default is 5 % of the machine, which grows with the mosaic
@@ -106,36 +102,3 @@ class OpenRasters:
         """Close everything; a later `get` opens again."""
         while self._datasets:
             self._datasets.popitem()[1].close()
-
-
-def from_lonlat(crs: CRS, longitude: Float, latitude: Float) -> tuple[Float, Float]:
-    """Easting-like and northing-like coordinates in `crs` of WGS 84 degrees; NaN where the projection has no answer."""
-    return _transform("EPSG:4326", crs, longitude, latitude)
-
-
-def to_lonlat(crs: CRS, x: Float, y: Float) -> tuple[Float, Float]:
-    """WGS 84 longitude and latitude of coordinates in `crs`; NaN where the projection has no answer."""
-    return _transform(crs, "EPSG:4326", x, y)
-
-
-def _transform(source: CRS | str, target: CRS | str, x: Float, y: Float) -> tuple[Float, Float]:
-    """Transform point by point; one point that PROJ refuses must not cost the others.
-
-    GDAL fails a whole batch over one bad point, so a failing batch is halved until the bad points stand alone.
-    """
-    from rasterio._err import CPLE_BaseError
-    from rasterio.warp import transform
-
-    try:
-        out = transform(source, target, x.tolist(), y.tolist())  # it loops over them: lists are quicker
-    except CPLE_BaseError:
-        if x.size <= 1:
-            return np.full(x.shape, np.nan), np.full(x.shape, np.nan)
-        middle = x.size // 2
-        low = _transform(source, target, x[:middle], y[:middle])
-        high = _transform(source, target, x[middle:], y[middle:])
-        return np.concatenate([low[0], high[0]]), np.concatenate([low[1], high[1]])
-    new_x, new_y = np.asarray(out[0], dtype=float), np.asarray(out[1], dtype=float)
-    bad = ~(np.isfinite(new_x) & np.isfinite(new_y))
-    new_x[bad] = new_y[bad] = np.nan
-    return new_x, new_y

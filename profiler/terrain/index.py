@@ -13,8 +13,8 @@ import numpy as np
 from numpy.typing import NDArray
 
 from profiler.terrain.describe import Tile
-from profiler.terrain.gdal import from_lonlat
 from profiler.terrain.placing import by_crs
+from profiler.terrain.proj import from_lonlat
 from profiler.terrain.reference import Reference
 from profiler.units import Float
 

@@ -1,6 +1,6 @@
 """Where rasters lie in degrees and how large their cells are in metres, for all rasters of a CRS in one go.
 
-One call to PROJ costs as much as transforming a hundred points, and a folder may hold thousands of tiles.
+A call to PROJ costs as much as transforming a dozen points, and a folder may hold thousands of tiles.
 """
 
 from __future__ import annotations
@@ -13,7 +13,7 @@ from numpy.typing import NDArray
 
 from profiler.errors import RasterError
 from profiler.terrain.describe import Bounds, Tile
-from profiler.terrain.gdal import from_lonlat, to_lonlat
+from profiler.terrain.proj import distance_between, from_lonlat, to_lonlat
 from profiler.terrain.reference import Reference
 from profiler.units import Float
 
@@ -24,7 +24,7 @@ def by_crs(tiles: Sequence[Tile]) -> list[NDArray[np.int64]]:
     """Positions of the tiles in the sequence, gathered by horizontal CRS, in order of appearance."""
     groups: dict[str, list[int]] = {}
     for i, tile in enumerate(tiles):
-        groups.setdefault(tile.reference.horizontal.wkt, []).append(i)
+        groups.setdefault(tile.reference.horizontal, []).append(i)
     return [np.array(members, dtype=np.int64) for members in groups.values()]
 
 
@@ -53,32 +53,20 @@ def require_placed(tile: Tile) -> None:
 def cells_on_ground(reference: Reference, affine: Float, col: Float, row: Float) -> Float:
     """Metres on the ground along the row and along the column of the cell centred at (col, row), one line a tile.
 
-    Chords between the middles of opposite sides of the cell, on the WGS 84 ellipsoid: right at any latitude, over the
-    antimeridian and at a pole, where differences of longitude are not.
+    Geodesics between the middles of opposite sides of the cell: right at any latitude, over the antimeridian and near a
+    pole, where differences of longitude are not.
     """
     u = np.stack([col, col + 1.0, col + 0.5, col + 0.5], axis=1)
     v = np.stack([row + 0.5, row + 0.5, row, row + 1.0], axis=1)
-    point = _geocentric(*_lonlat(reference, affine, u, v))
-    return np.asarray(np.linalg.norm(point[:, 1::2] - point[:, ::2], axis=2))
+    longitude, latitude = _lonlat(reference, affine, u, v)
+    return distance_between(longitude[:, ::2], latitude[:, ::2], longitude[:, 1::2], latitude[:, 1::2])
 
 
 def _lonlat(reference: Reference, affine: Float, u: Float, v: Float) -> tuple[Float, Float]:
     """Degrees of column and row (counted from the corner), one line a tile."""
     a, b, c, d, e, f = affine.T[:, :, None]
     x, y = a * u + b * v + c, d * u + e * v + f
-    if reference.is_wgs84:
-        return x, y
-    longitude, latitude = to_lonlat(reference.horizontal, x.ravel(), y.ravel())
-    return longitude.reshape(x.shape), latitude.reshape(x.shape)
-
-
-def _geocentric(longitude: Float, latitude: Float) -> Float:
-    """Geocentric metres on the WGS 84 ellipsoid (a = 6 378 137 m, 1/f = 298.257 223 563), last axis x, y, z."""
-    a, e2 = 6_378_137.0, 0.006_694_379_990_141_3
-    lam, phi = np.radians(longitude), np.radians(latitude)
-    normal = a / np.sqrt(1.0 - e2 * np.sin(phi) ** 2)
-    across = normal * np.cos(phi)
-    return np.stack([across * np.cos(lam), across * np.sin(lam), normal * (1.0 - e2) * np.sin(phi)], axis=-1)
+    return (x, y) if reference.is_wgs84 else to_lonlat(reference.horizontal, x, y)
 
 
 def _bounds(reference: Reference, affine: Float, size: Float) -> list[Bounds]:

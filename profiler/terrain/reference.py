@@ -2,16 +2,17 @@
 
 from __future__ import annotations
 
+import math
 import re
 from dataclasses import dataclass
 from functools import lru_cache
-from typing import TYPE_CHECKING, Any
+from typing import TYPE_CHECKING
 
 from profiler.errors import InputError
 from profiler.units import FOOT_M, US_SURVEY_FOOT_M
 
 if TYPE_CHECKING:
-    from rasterio.crs import CRS
+    from pyproj import CRS
 
 __all__ = ["Reference", "datum_key", "parse_reference", "resolve_datum", "unit_factor"]
 
@@ -44,7 +45,7 @@ class Reference:
     name
         ``EPSG:32612``, or the name of the CRS when it is in no register.
     horizontal
-        The CRS without its vertical part.
+        The CRS without its vertical part, as WKT.
     is_wgs84
         Longitude and latitude in degrees on WGS 84: nothing to transform.
     period
@@ -58,7 +59,7 @@ class Reference:
     """
 
     name: str
-    horizontal: CRS
+    horizontal: str
     is_wgs84: bool
     period: float
     plane_unit_m: float | None
@@ -77,78 +78,70 @@ def parse_reference(wkt: str) -> Reference:
 
     Examples
     --------
-    >>> from rasterio.crs import CRS
-    >>> found = parse_reference(CRS.from_user_input("EPSG:32612+5773").to_wkt())
+    >>> from pyproj import CRS
+    >>> found = parse_reference(CRS("EPSG:32612+5773").to_wkt())
     >>> found.name, found.vertical_datum, found.vertical_unit_m
     ('EPSG:32612', 'EGM96 geoid', 1.0)
     """
-    from rasterio.crs import CRS
+    from pyproj import CRS
+    from pyproj.exceptions import CRSError
 
-    crs = CRS.from_wkt(wkt)
-    tree = crs.to_dict(projjson=True)
-    plane, vertical = _split(tree)
-    kind = _unbound(plane)["type"]
-    if kind not in ("GeographicCRS", "GeodeticCRS", "ProjectedCRS", "DerivedGeographicCRS", "DerivedProjectedCRS") or (
-        not crs.is_geographic and not crs.is_projected
-    ):
-        raise InputError(
-            f"its CRS ({_unbound(plane).get('name', kind)}) is local or geocentric, with no place on a map"
-        )
-    horizontal = CRS.from_user_input(plane) if vertical is not None else crs
-    epsg = horizontal.to_epsg()
+    try:
+        whole = CRS.from_wkt(wkt)
+    except CRSError as error:
+        raise InputError(f"its CRS is none that PROJ understands ({' '.join(str(error).split())})") from error
+    parts = _unbound(whole).sub_crs_list
+    plane, vertical = (parts[0], _unbound(parts[1])) if parts else (whole, None)
     base = _unbound(plane)
-    datum, unit_m = _vertical_part(base, vertical)
-    geographic = bool(horizontal.is_geographic)
+    if not (base.is_geographic or base.is_projected):
+        raise InputError(f"its CRS ({base.name}) is local or geocentric, with no place on a map")
+    axes = base.axis_info
+    plane_unit = axes[0].unit_conversion_factor
+    if vertical is not None:
+        datum, unit_m = _datum_name(vertical), vertical.axis_info[-1].unit_conversion_factor
+    elif len(axes) == 3:
+        datum, unit_m = f"ellipsoid of {_datum_name(base)}", axes[2].unit_conversion_factor
+    else:
+        datum, unit_m = None, None
     return Reference(
-        name=f"EPSG:{epsg}" if epsg else str(base.get("name", "unnamed CRS")),
-        horizontal=horizontal,
+        name=_registered_name(base),
+        horizontal=plane.to_wkt(),
         is_wgs84=_is_wgs84(plane),
-        period=6.283185307179586 / float(horizontal.units_factor[1]) if geographic else 0.0,
-        plane_unit_m=None if geographic else float(horizontal.units_factor[1]),
+        period=2.0 * math.pi / plane_unit if base.is_geographic else 0.0,
+        plane_unit_m=None if base.is_geographic else plane_unit,
         vertical_datum=datum,
         vertical_unit_m=unit_m,
     )
 
 
-def _split(tree: dict[str, Any]) -> tuple[dict[str, Any], dict[str, Any] | None]:
-    """Horizontal and vertical part of a CRS in PROJJSON."""
-    whole = _unbound(tree)
-    if whole["type"] == "CompoundCRS":
-        return whole["components"][0], _unbound(whole["components"][1])
-    return tree, None
-
-
-def _unbound(tree: dict[str, Any]) -> dict[str, Any]:
+def _unbound(crs: CRS) -> CRS:
     """Return the CRS itself when it comes bound to a datum shift (TOWGS84)."""
-    return tree["source_crs"] if tree["type"] == "BoundCRS" else tree
+    return crs.source_crs if crs.is_bound and crs.source_crs is not None else crs
 
 
-def _axes(crs: dict[str, Any]) -> list[dict[str, Any]]:
-    return list(crs.get("coordinate_system", {}).get("axis", []))
+def _datum_name(crs: CRS) -> str:
+    return "unknown" if crs.datum is None else crs.datum.name.removesuffix(" ensemble")
 
 
-def _frame(crs: dict[str, Any]) -> str:
-    return str((crs.get("datum") or crs.get("datum_ensemble") or {}).get("name", "unknown"))
+def _registered_name(crs: CRS) -> str:
+    """Code by which the CRS goes: what it states, which holds whatever edition of the register is installed."""
+    stated = crs.to_json_dict().get("id")
+    if stated is not None:
+        return f"{stated['authority']}:{stated['code']}"
+    epsg = crs.to_epsg()
+    return f"EPSG:{epsg}" if epsg else crs.name
 
 
-def _vertical_part(base: dict[str, Any], vertical: dict[str, Any] | None) -> tuple[str | None, float | None]:
-    if vertical is not None:
-        return _frame(vertical), _axis_unit_m(vertical, -1)
-    if len(_axes(base)) == 3:
-        return f"ellipsoid of {_frame(base.get('base_crs', base)).removesuffix(' ensemble')}", _axis_unit_m(base, 2)
-    return None, None
-
-
-def _axis_unit_m(crs: dict[str, Any], axis: int) -> float:
-    unit = _axes(crs)[axis]["unit"]
-    return unit_factor(unit) if isinstance(unit, str) else float(unit["conversion_factor"])
-
-
-def _is_wgs84(plane: dict[str, Any]) -> bool:
+def _is_wgs84(plane: CRS) -> bool:
+    """Whether x and y are degrees on WGS 84 as they stand, east of Greenwich."""
     return (
-        plane["type"] == "GeographicCRS"
-        and _frame(plane).startswith("World Geodetic System 1984")
-        and all(axis["unit"] == "degree" for axis in _axes(plane)[:2])
+        plane.is_geographic
+        and not plane.is_bound
+        and not plane.is_derived
+        and _datum_name(plane).startswith("World Geodetic System 1984")
+        and plane.prime_meridian is not None
+        and plane.prime_meridian.longitude == 0.0
+        and all(math.isclose(axis.unit_conversion_factor, math.pi / 180.0) for axis in plane.axis_info[:2])
     )
 
 
@@ -204,19 +197,16 @@ def resolve_datum(name: str) -> str:
     """
     if not name.upper().startswith("EPSG:"):
         return name
-    from rasterio.crs import CRS
-    from rasterio.errors import CRSError
+    from pyproj import CRS
+    from pyproj.exceptions import CRSError
 
     try:
-        datum = _vertical_part({}, _vertical_of(CRS.from_user_input(name).to_dict(projjson=True)))[0]
+        crs = CRS(name)
     except CRSError:
-        datum = None
-    if datum is None:
+        crs = None
+    vertical = None if crs is None else crs.sub_crs_list[1] if crs.sub_crs_list else crs
+    if vertical is None or not vertical.is_vertical:
         raise InputError(
             f"vertical datum {name}: must be the EPSG code of a vertical CRS (such as EPSG:5773) or a name"
         )
-    return datum
-
-
-def _vertical_of(tree: dict[str, Any]) -> dict[str, Any] | None:
-    return tree if tree["type"] == "VerticalCRS" else _split(tree)[1]
+    return _datum_name(_unbound(vertical))
