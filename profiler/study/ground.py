@@ -8,9 +8,9 @@ from pathlib import Path
 import numpy as np
 
 from profiler.cover import Cover, cover_along
-from profiler.errors import InputError
+from profiler.errors import InputError, under
 from profiler.geometry import corridor_offsets
-from profiler.models import Hop, Profile, Site, frozen_array
+from profiler.models import Hop, Profile, Site, TerrainChoice, frozen_array
 from profiler.path import PathLine, across, geodesic, trace
 from profiler.study.result import Corridor, Relief, TerrainUse
 from profiler.terrain import Samples, Terrain, fill_missing, missing_stretches, require_ground
@@ -129,7 +129,8 @@ def _lay_path(hop: Hop, terrain: Terrain) -> tuple[PathLine, float]:
             f"terrain.spacing_m = {spacing_m:g}: must be at most one {_FEWEST_STEPS}th of this path of"
             f" {length_m / 1e3:.2f} km; leave it out for half the finest cell"
         )
-    return trace(*ends, spacing_m=spacing_m), cell_m
+    with under("terrain", TerrainChoice):
+        return trace(*ends, spacing_m=spacing_m), cell_m
 
 
 def _without_gaps(hop: Hop, line: PathLine, ground_m: Float) -> tuple[Float, np.ndarray, tuple[str, ...]]:
