@@ -229,25 +229,33 @@ def _percent(value: float | None) -> str:
     return "-" if value is None else f"{value:.3g}"
 
 
+def _span(value: float | None, most: float | None) -> str:
+    """Write an outage, with what it could be at most where that is more."""
+    return _percent(value) if value == most else f"{_percent(value)} to {_percent(most)}"
+
+
 def _show_availability(screen: Console, study: Study) -> None:
     """Print outage by mechanism, the objective, and the total of every mode."""
     found = study.availability
     assert found is not None
     table = compact_table("outage %", "multipath", "selective", "rain", "obstruction", "total")
     for period, outages in (("worst month", found.worst_month_percent), ("year", found.year_percent)):
-        parts = (outages.multipath, outages.selective, outages.rain, outages.obstruction, outages.total)
-        table.add_row(period, *(_percent(part) for part in parts))
+        parts = (outages.multipath, outages.selective, outages.rain)
+        obstruction = _span(outages.obstruction, outages.obstruction_up_to)
+        table.add_row(period, *(_percent(part) for part in parts), obstruction, _span(outages.total, outages.total_up_to))
     screen.print(f"\nAvailability ({found.method}), fade margin {found.fade_margin_db:.1f} dB", style="bold")
     screen.print(table)
     screen.print(
         f"Out of service {found.year_minutes:.3g} minutes a year, limited by {found.limited_by}.", markup=False
     )
     for target in found.objective.targets if found.objective is not None else ():
-        margin = "no margin" if target.required_margin_db is None else f"{target.required_margin_db:.1f} dB"
+        margin = "no" if target.required_margin_db is None else f"{target.required_margin_db:.1f} dB of"
         outcome = {True: "met", False: "MISSED", None: "undecided"}[target.met]
+        unit = "" if target.unit == "ratio" else f" {target.unit}"
         screen.print(
-            f"Objective {target.name} {target.required:g}: {outcome} at {target.achieved:.3g};"
-            f" {margin} of fade margin would do.",
+            f"Objective {target.name} {target.required:g}{unit}: {outcome} at"
+            f" {_span(target.achieved, target.achieved_up_to)}{unit}; {margin} fade margin is sure to meet it"
+            f" (set by {target.margin_set_by}).",
             style={True: "", False: "red", None: "yellow"}[target.met],
             markup=False,
             soft_wrap=True,
