@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 from dataclasses import fields, is_dataclass
 from pathlib import Path
 from typing import TYPE_CHECKING, Any
@@ -23,11 +24,13 @@ SCHEMA_HEIGHTS = "hopwright-heights/1"
 def plain(value: Any) -> Any:
     """Turn dataclasses into dictionaries, arrays and tuples into lists, paths into text, however deep.
 
+    A number that is not finite becomes None, since JSON has no word for it.
+
     Examples
     --------
     >>> from profiler.models import Rule
-    >>> plain({"rule": Rule(k=1.0, fresnel_fraction=0.6), "at_m": np.array([0.0, 5.0])})
-    {'rule': {'k': 1.0, 'fresnel_fraction': 0.6, 'margin_m': 0.0, 'label': ''}, 'at_m': [0.0, 5.0]}
+    >>> plain({"rule": Rule(k=1.0, fresnel_fraction=0.6), "at_m": np.array([0.0, np.nan])})
+    {'rule': {'k': 1.0, 'fresnel_fraction': 0.6, 'margin_m': 0.0, 'label': ''}, 'at_m': [0.0, None]}
     """
     if is_dataclass(value) and not isinstance(value, type):
         return {each.name: plain(getattr(value, each.name)) for each in fields(value)}
@@ -36,7 +39,9 @@ def plain(value: Any) -> Any:
     if isinstance(value, tuple | list):
         return [plain(each) for each in value]
     if isinstance(value, np.ndarray | np.generic):
-        return value.tolist()
+        return plain(value.tolist())
+    if isinstance(value, float) and not math.isfinite(value):
+        return None
     return str(value) if isinstance(value, Path) else value
 
 
