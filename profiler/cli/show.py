@@ -240,9 +240,9 @@ def _show_availability(screen: Console, study: Study) -> None:
     assert found is not None
     table = compact_table("outage %", "multipath", "selective", "rain", "obstruction", "total")
     for period, outages in (("worst month", found.worst_month_percent), ("year", found.year_percent)):
-        parts = (outages.multipath, outages.selective, outages.rain)
+        parts = (_percent(part) for part in (outages.multipath, outages.selective, outages.rain))
         obstruction = _span(outages.obstruction, outages.obstruction_up_to)
-        table.add_row(period, *(_percent(part) for part in parts), obstruction, _span(outages.total, outages.total_up_to))
+        table.add_row(period, *parts, obstruction, _span(outages.total, outages.total_up_to))
     screen.print(f"\nAvailability ({found.method}), fade margin {found.fade_margin_db:.1f} dB", style="bold")
     screen.print(table)
     screen.print(
