@@ -6,7 +6,7 @@ import math
 from dataclasses import dataclass
 from typing import Literal
 
-from profiler.errors import InputError
+from profiler.errors import InputError, under
 from profiler.models import RadioMode
 from profiler.receiver.modulation import Modulation, parse_modulation, required_eb_n0_db
 from profiler.receiver.noise import NOISE_REFERENCE_K, noise_density_dbm_hz
@@ -112,9 +112,10 @@ def _noise_threshold(mode: RadioMode) -> Threshold:
     """Threshold of a mode that lacks nothing for it."""
     assert mode.modulation is not None
     assert mode.bit_error_ratio is not None
-    modulation = parse_modulation(mode.modulation)
+    with under(f"mode {mode.name}"):
+        modulation = parse_modulation(mode.modulation)
+        eb_n0_db = float(required_eb_n0_db(modulation, mode.bit_error_ratio))
     rate_bps, rate_note, rate_assumptions = _bit_rate(mode, modulation)
-    eb_n0_db = float(required_eb_n0_db(modulation, mode.bit_error_ratio))
     wanted = f"{modulation.name} at bit error ratio {mode.bit_error_ratio:g}; {modulation.method}"
     lines = [
         *_noise_lines(mode),
