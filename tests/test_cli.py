@@ -380,7 +380,7 @@ def test_every_command_has_help(run):
     assert code == 0
     for name, command in root.commands.items():
         first = command.help.partition("\n")[0]
-        assert re.search(rf"  {name} +{re.escape(first[:-1])}\n", out)  # whole, not cut short
+        assert re.search(rf"  {name} +{re.escape(first)}\n", out)  # whole, not cut short
         code, text, _ = run(name, "--help")
         assert code == 0
         assert text.startswith(f"Usage: hopwright {name}")
@@ -504,6 +504,28 @@ def test_a_bad_hop_file(refused, here, old, new, message):
     line = refused("study", "bad.toml")
     assert line.startswith("bad.toml: ")
     assert message in line
+
+
+@pytest.mark.parametrize(
+    ("old", "new", "remedy"),
+    [
+        ('"dem.tif"', '"../void.tif"', 'set terrain.missing = "interpolate"'),
+        ('"dem.tif"', '"../egm96.tif", "../egm2008.tif"', "set terrain.allow_mixed_datums = true"),
+        ('["dem.tif"]', '["../dem.tif"]\nheight_unit = "furlong"', "terrain.height_unit: height unit 'furlong' is not"),
+        (
+            '["dem.tif"]',
+            '["../dem.tif"]\nvertical_datum = "EPSG:1"',
+            "terrain.vertical_datum: vertical datum EPSG:1: must",
+        ),
+    ],
+)
+def test_the_file_is_named_as_it_was_typed_and_the_remedy_by_its_key(refused, here, old, new, remedy):
+    (here / "sub").mkdir()
+    (here / "sub" / "bad.toml").write_text(PASSING.replace(old, new, 1))
+    line = refused("study", "sub/bad.toml")
+    assert line.startswith("sub/bad.toml: ")
+    assert line.count("bad.toml") == 1
+    assert remedy in line
 
 
 @pytest.mark.parametrize(

@@ -48,7 +48,9 @@ def command(
     no_color: bool,
     **hop_given: Any,
 ) -> int:
-    """Find antenna heights: the exact region that clears every rule, and the cheapest pair that the towers allow.
+    """Find the antenna heights that clear every rule, and the cheapest.
+
+    The region of the pairs that clear is exact; the cheapest of them is the cheapest that the towers allow.
 
     Exit code 0: a pair exists; 1: none does, and what would have to change is said; 2: the input is wrong.
     """

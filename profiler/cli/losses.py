@@ -21,7 +21,10 @@ __all__ = ["command"]
 @click.option("--json", "json_to", metavar="FILE", help="Write the losses as JSON; - for standard output.")
 @speech_options
 def command(json_to: str | None, quiet: bool, no_color: bool, **hop_given: Any) -> int:
-    """List the diffraction loss by every method, at every k of the rules and at the median k, with the edges used."""
+    """List the diffraction loss of one hop by every method.
+
+    At every k of the rules and at the median k, with the edges that each method used.
+    """
     from profiler.diffraction import compare
     from profiler.study import plain, run_study
 

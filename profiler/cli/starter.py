@@ -16,7 +16,10 @@ __all__ = ["command"]
 @click.argument("file", metavar="FILE.toml")
 @click.option("--force", is_flag=True, help="Replace the file if it exists.")
 def command(file: str, force: bool) -> int:
-    """Write a commented hop file with every key in it; - for standard output."""
+    """Write a commented hop file to start from, with every key in it.
+
+    Give - for standard output.
+    """
     from profiler.hopfile import starter
 
     if file != "-" and Path(file).exists() and not force:

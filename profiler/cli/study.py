@@ -54,7 +54,7 @@ def command(
     no_color: bool,
     **hop_given: Any,
 ) -> int:
-    """Study one hop: whether it clears, where it is tightest, what it loses, whether it meets its objective.
+    """Study one hop: clearance, losses, fade margin and objective.
 
     Give a HOP.toml, or the sites in options. Exit code 0: the hop passes; 1: it does not; 2: the input is wrong.
     """

@@ -26,7 +26,9 @@ __all__ = ["command"]
 def command(
     paths: tuple[Path, ...], hop_file: Path | None, metadata_only: bool, json_to: str | None, no_color: bool
 ) -> int:
-    """Show coverage, resolution, datum and voids of terrain. Exit code 1: the hop does not lie inside."""
+    """Show what rasters hold, and whether a hop lies on them.
+
+    Exit code 1: the hop does not lie on them."""
     from profiler.study import plain
     from profiler.terrain import survey
 
