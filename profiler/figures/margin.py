@@ -114,7 +114,7 @@ def _sentence(study: Study, row: ModeBudget) -> str:
         return f"Fade margin {margin}; {lost}; no objective given"
     needed = outage.objective.required_margin_db
     if needed is None:
-        return f"Fade margin {margin}; no margin meets the objective; {lost}"
+        return f"Fade margin {margin}; no margin is sure to meet the objective; {lost}"
     return f"Fade margin {margin}, needed {needed:.1f} dB; {lost}"
 
 
@@ -156,12 +156,13 @@ def _targets(page: Page, top: float, study: Study) -> float:
             f"{each.required:.4g}",
             f"{each.achieved:.3g}" if each.achieved < 1000 else f"{each.achieved:.0f}",
             {True: "met", False: "missed", None: "open"}[each.met],
-            "none does" if each.required_margin_db is None else f"{each.required_margin_db:.1f} dB",
+            "none is sure" if each.required_margin_db is None else f"{each.required_margin_db:.1f} dB",
+            each.margin_set_by,
             each.limited_by,
         )
         for each in objective.targets
     ]
     top = heading(page, MARGIN_IN, top + 0.14, "Objective")
-    columns = columns_at(MARGIN_IN, (1.95, 0.62, 0.76, 0.62, 1.1, 0.85))
-    names = ("target", "asked", "reached", "", "margin needed", "limited by")
+    columns = columns_at(MARGIN_IN, (1.68, 0.48, 0.6, 0.5, 0.95, 0.8, 0.7))
+    names = ("target", "asked", "reached", "", "margin needed", "for", "limited by")
     return rows(page, titles(page, top, columns, names), columns, cells)
