@@ -23,6 +23,7 @@ __all__ = [
     "AvailabilityChoice",
     "ConfidenceChoice",
     "CoverChoice",
+    "DiffractionMethod",
     "DiversityChoice",
     "FillPolicy",
     "HeightsChoice",
@@ -51,6 +52,15 @@ Polarization = Literal["vertical", "horizontal"]
 SampleMethod = Literal["bilinear", "highest"]
 FillPolicy = Literal["stop", "interpolate"]
 Obstruction = Literal["isolated", "extended"]
+DiffractionMethod = Literal[
+    "delta-bullington",
+    "bullington",
+    "spherical-earth",
+    "knife-edge",
+    "rounded-obstacle",
+    "double-edge",
+    "cascaded-edges",
+]
 MultipathMethod = Literal["p530-17", "p530-17-quick", "p530-18", "vigants-barnett"]
 VigantsClimate = Literal["humid", "average", "dry"]
 KPeriod = Literal["year", "worst-month"]
@@ -453,7 +463,7 @@ class Hop:
     terrain: TerrainChoice
     polarization: Polarization = "vertical"
     median_k: float | None = None
-    diffraction_method: str = "delta-bullington"
+    diffraction_method: DiffractionMethod = "delta-bullington"
     sea_fraction: float = 0.0
     cover: CoverChoice = CoverChoice()
     radio: Radio | None = None
@@ -469,6 +479,11 @@ class Hop:
         _require(1e7 <= self.frequency_hz <= 1e12, "frequency_hz", self.frequency_hz, "1e7 to 1e12 Hz")
         _require(len(self.rules) > 0, "rules", "none", "at least one rule or a named preset")
         _require(_positive_or_none(self.median_k), "median_k", self.median_k, "more than 0")
+
+    @property
+    def ends(self) -> tuple[float, float, float, float]:
+        """Longitude and latitude of A, then of B."""
+        return self.site_a.longitude, self.site_a.latitude, self.site_b.longitude, self.site_b.latitude
 
     @property
     def has_objective(self) -> bool:

@@ -580,7 +580,7 @@ def test_a_hop_file_that_is_not_there(refused, command):
         (("reach", "hop.toml", "--mode", "64-QAM"), "hop.toml: mode = 64-QAM: must be one of QPSK"),
         (("reach", "hop.toml", "--bit-error-ratio", "0.7"), "bit_error_ratio = 0.7: must be more than 0 and under 0.5"),
         (("reach", "hop.toml", "--fade-margin-db", "1e300"), "'--fade-margin-db': 1e+300 is not in the range"),
-        (("reach", "hop.toml", "--fade-margin-db", "nan"), "fade margin = nan dB: must be a finite number"),
+        (("reach", "hop.toml", "--fade-margin-db", "nan"), "fade_margin_db = nan: must be a finite number of dB"),
         (("terrain",), "Missing argument 'PATH...'"),
         (("terrain", "gone"), "gone: no such file or folder"),
         (("terrain", "dem.tif", "--hop", "gone.toml"), "gone.toml: No such file or directory"),

@@ -25,19 +25,17 @@ def command(json_to: str | None, quiet: bool, no_color: bool, **hop_given: Any) 
 
     At every k of the rules and at the median k, with the edges that each method used.
     """
-    from profiler.diffraction import compare
-    from profiler.study import plain, run_study
+    from profiler.diffraction import METHODS
+    from profiler.study import losses_at, plain, run_study
 
     check_targets(json_to, hop_file=hop_given["hop_file"])
     hop = read_hop(**hop_given)
     with named(hop.source):
         study = run_study(hop)
-    profile = study.profile
-    path = (profile.distance_m, profile.surface_m, study.centre_a_m, study.centre_b_m, hop.frequency_hz)
-    by_k = {
-        k: compare(*path, k, polarization=hop.polarization, sea_fraction=hop.sea_fraction)
-        for k in dict.fromkeys([study.climate.median_k, *(rule.k for rule in hop.rules)])
-    }
+    ks = (study.climate.median_k, *(rule.k for rule in hop.rules))
+    centres = (study.centre_a_m, study.centre_b_m)
+    by_method = [losses_at(hop, study.profile, ks, *centres, method=each.name) for each in METHODS.values()]
+    by_k = {k: tuple(losses[k] for losses in by_method) for k in dict.fromkeys(ks)}
     if json_to is not None:
         losses = [plain(loss) for found in by_k.values() for loss in found]
         put(json_to, json_text({"schema": "hopwright-losses/1", "hop": hop.name, "diffraction": losses}))

@@ -54,8 +54,7 @@ def _hop_inside(hop_file: Path, paths: tuple[Path, ...]) -> float:
     from profiler.terrain import open_terrain
 
     hop = load_hop(hop_file)
-    ends = (hop.site_a.longitude, hop.site_a.latitude, hop.site_b.longitude, hop.site_b.latitude)
-    line = trace(*ends, spacing_m=float(geodesic(*ends)[0]) / 1000.0)
+    line = trace(*hop.ends, spacing_m=float(geodesic(*hop.ends)[0]) / 1000.0)
     with open_terrain(paths, allow_mixed_datums=True) as terrain:
         ground_m = terrain.sample(line.longitude, line.latitude).ground_m
     return float(1.0 - np.isnan(ground_m).mean())

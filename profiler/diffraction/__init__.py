@@ -10,21 +10,18 @@ from profiler.diffraction.formulas import (
 )
 from profiler.diffraction.general import DeltaBullington, bullington, delta_bullington
 from profiler.diffraction.methods import (
-    DEFAULT_METHOD,
     METHODS,
     DiffractionLoss,
     Edge,
     Method,
-    compare,
     diffract,
-    losses_over_k,
+    diffract_over_k,
 )
 from profiler.diffraction.obstacles import cascaded_knife_edges, double_edge, single_knife_edge
 from profiler.diffraction.rounded import RoundedLosses, rounded_obstacle
 from profiler.diffraction.sphere import spherical_earth
 
 __all__ = [
-    "DEFAULT_METHOD",
     "METHODS",
     "DeltaBullington",
     "DiffractionLoss",
@@ -34,14 +31,13 @@ __all__ = [
     "RoundedLosses",
     "bullington",
     "cascaded_knife_edges",
-    "compare",
     "delta_bullington",
     "diffract",
+    "diffract_over_k",
     "double_edge",
     "double_edge_loss",
     "fresnel_parameter",
     "knife_edge_loss",
-    "losses_over_k",
     "rounded_obstacle",
     "rounded_obstacle_loss",
     "rounding",

@@ -2,7 +2,8 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, fields, replace
+from typing import Self
 
 import numpy as np
 from numpy.typing import NDArray
@@ -30,6 +31,10 @@ class EdgeLosses:
     nu: Float
     edge_loss_db: Float
     """What this edge was charged; NaN for a point that shapes the construction and is charged nothing itself."""
+
+    def of_hop(self, index: int) -> Self:
+        """Return the part of one hop of many, as if it alone had been asked for."""
+        return replace(self, **{each.name: getattr(self, each.name)[index] for each in fields(self)})
 
 
 def sealed(hops: Hops, values: Float) -> Float:

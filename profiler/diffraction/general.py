@@ -37,16 +37,9 @@ class DeltaBullington:
 
 def bullington_points(block: Block) -> tuple[Index, Index, Index]:
     """Inner points of each hop that A's horizon ray touches, that B's touches, and of greatest ν."""
-    return _extreme_points(block, block.rise())
-
-
-def _extreme_points(block: Block, rise: Float) -> tuple[Index, Index, Index]:
-    grid, scratch = block.grid, block.scratch
-    return (
-        np.multiply(rise, grid.from_a, out=scratch).argmax(axis=1),
-        np.multiply(rise, grid.from_b, out=scratch).argmax(axis=1),
-        np.multiply(rise, grid.weight, out=scratch).argmax(axis=1),
-    )
+    rise, grid = block.rise(), block.grid
+    from_a, from_b, most = ((rise * factor).argmax(axis=1) for factor in (grid.from_a, grid.from_b, grid.weight))
+    return from_a, from_b, most
 
 
 def _whole_loss(knife_db: Float, length_m: Float) -> Float:
@@ -105,16 +98,12 @@ def _weighted_sum(height_m: Float, weights: Float) -> Float:
 
 def _delta_kernel(block: Block) -> tuple[NDArray[Any], ...]:
     """Find the three points of the construction of each hop, and the smooth surface under its ends."""
-    grid, scratch = block.grid, block.scratch
-    above = block.above_chord()
-    highest = above.max(axis=1)
-    steep_a = np.multiply(above, grid.from_a, out=scratch).max(axis=1)
-    steep_b = np.multiply(above, grid.from_b, out=scratch).max(axis=1)
+    grid, above = block.grid, block.above_chord()
+    highest, steep_a, steep_b = above.max(axis=1), (above * grid.from_a).max(axis=1), (above * grid.from_b).max(axis=1)
     lower = np.maximum(highest, 0.0) / np.where(highest > 0, steep_a + steep_b, 1.0)
     smooth_a = _weighted_sum(block.height_m, grid.under_a) - lower * steep_a
     smooth_b = _weighted_sum(block.height_m, grid.under_b) - lower * steep_b
-    above += np.multiply(block.bulge_m[:, None], grid.bow, out=scratch)
-    return (*_extreme_points(block, above), smooth_a, smooth_b)
+    return (*bullington_points(block), smooth_a, smooth_b)
 
 
 def _greatest(hops: Hops, values_at: Callable[[Float], Float], count: int) -> Float:

@@ -89,29 +89,15 @@ class Block:
     """d²/(2·a): four times the bulge at mid-path."""
     length_m: Float
     wavelength_m: Float
-    main: Float
-    """Holds what `above_chord` and `rise` return, and is overwritten by the next call, of the next block too.
-
-    Fresh arrays of this size go back to the system when they are dropped, and cost as much again as the computing.
-    """
-    scratch: Float
-    """As large, and free for a kernel to use between calls."""
 
     def above_chord(self) -> Float:
         """Heights of the inner points above the line between the antennas, without the bulge, `(rows, n - 2)`."""
-        t, a, b = self.grid.t, self.centre_a_m[:, None], self.centre_b_m[:, None]
-        if t.ndim == 1:
-            np.matmul(np.concatenate([a, b], axis=1), np.stack([1.0 - t, t]), out=self.main)
-        else:
-            np.multiply(b - a, t, out=self.main)
-            np.add(self.main, a, out=self.main)
-        return np.subtract(self.height_m[:, 1:-1], self.main, out=self.main)
+        a, b = self.centre_a_m[:, None], self.centre_b_m[:, None]
+        return np.asarray(self.height_m[:, 1:-1] - (a + (b - a) * self.grid.t))
 
     def rise(self) -> Float:
         """Rise of the inner points over the ray on the bulged earth, m, `(rows, n - 2)`."""
-        above = self.above_chord()
-        above += np.multiply(self.bulge_m[:, None], self.grid.bow, out=self.scratch)
-        return above
+        return np.asarray(self.above_chord() + self.bulge_m[:, None] * self.grid.bow)
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -202,7 +188,6 @@ class Hops:
         first = self.distance_m if self.distance_m.ndim == 1 else self.distance_m[0]
         common = first / first[-1]
         common_grid = Grid.of(common)
-        work = np.empty((2, rows, points - 2))
         for start in range(0, hops, rows):
             part = slice(start, start + rows)
             height = np.ascontiguousarray(self.height_m[part], dtype=float)
@@ -221,7 +206,6 @@ class Hops:
                 bulge[part],
                 self.length_m[part],
                 lam[part],
-                *work[:, : height.shape[0]],
             )
 
     def run(self, kernel: Callable[[Block], tuple[NDArray[Any], ...]]) -> tuple[NDArray[Any], ...]:

@@ -13,6 +13,7 @@ from typing import Annotated, Any, Literal
 from pydantic import BaseModel, ConfigDict, Field
 
 from profiler.models import (
+    DiffractionMethod,
     FillPolicy,
     KPeriod,
     MultipathMethod,
@@ -21,6 +22,7 @@ from profiler.models import (
     SampleMethod,
     VigantsClimate,
 )
+from profiler.units import MINUTES_PER_YEAR
 
 __all__ = [
     "AirTable",
@@ -133,18 +135,7 @@ class RuleTable(Table):
 class DiffractionTable(Table):
     """``[diffraction]``."""
 
-    method: (
-        Literal[
-            "delta-bullington",
-            "bullington",
-            "spherical-earth",
-            "knife-edge",
-            "rounded-obstacle",
-            "double-edge",
-            "cascaded-edges",
-        ]
-        | None
-    ) = None
+    method: DiffractionMethod | None = None
     sea_fraction: float | None = Field(None, ge=0, le=1)
 
 
@@ -248,7 +239,7 @@ class ObjectiveTable(Table):
 
     worst_month_percent: float | None = Field(None, gt=0, lt=100)
     year_percent: float | None = Field(None, gt=0, lt=100)
-    minutes_per_year: float | None = Field(None, gt=0, lt=525_960)
+    minutes_per_year: float | None = Field(None, gt=0, lt=MINUTES_PER_YEAR)
     severely_errored_seconds_ratio: float | None = Field(None, gt=0, lt=1)
     errored_seconds_ratio: float | None = Field(None, gt=0, lt=1)
     errored_threshold_offset_db: float | None = Field(None, ge=0, lt=100)

@@ -334,14 +334,14 @@ def _aside(line: PathLine, along_m: Float, longitude: Float, latitude: Float) ->
     return step, distance, np.sin(turn)
 
 
-def midpoint(line: PathLine) -> tuple[float, float]:
-    """Longitude and latitude of the point halfway between the sites.
+def midpoint(longitude_a: float, latitude_a: float, longitude_b: float, latitude_b: float) -> tuple[float, float]:
+    """Longitude and latitude of the point halfway between two positions.
 
     Examples
     --------
-    >>> midpoint(trace(0.0, 0.0, 1.0, 0.0, spacing_m=50e3))
+    >>> midpoint(0.0, 0.0, 1.0, 0.0)
     (0.5, 0.0)
     """
-    start = (float(line.longitude[0]), float(line.latitude[0]), line.azimuth_a_deg)
-    longitude, latitude, _ = _geod().fwd(*start, line.distance_m / 2.0)
+    distance_m, azimuth_deg, _ = geodesic(longitude_a, latitude_a, longitude_b, latitude_b)
+    longitude, latitude, _ = _geod().fwd(longitude_a, latitude_a, float(azimuth_deg), float(distance_m) / 2.0)
     return float(longitude), float(latitude)

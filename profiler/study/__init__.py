@@ -4,7 +4,7 @@ The heights plan is in `profiler.study.plan`: a study does without it, and start
 """
 
 from profiler.study.document import plain, point_table, to_document
-from profiler.study.link import Air
+from profiler.study.link import Air, losses_at
 from profiler.study.outage import ModeOutage
 from profiler.study.result import (
     Corridor,
@@ -29,6 +29,7 @@ __all__ = [
     "Study",
     "TerrainUse",
     "Verdict",
+    "losses_at",
     "open_hop_terrain",
     "plain",
     "point_table",

@@ -7,7 +7,7 @@ from typing import Any
 
 from profiler.errors import InputError, under
 from profiler.models import AvailabilityChoice, Hop
-from profiler.path import geodesic, midpoint, trace
+from profiler.path import midpoint
 from profiler.units import K_MEDIAN, Float
 
 __all__ = ["ClimateUse", "climate_numbers"]
@@ -69,8 +69,7 @@ def climate_numbers(hop: Hop) -> ClimateUse:
     MissingExtraError
         If the maps are asked for and the climate extra is not installed.
     """
-    ends = (hop.site_a.longitude, hop.site_a.latitude, hop.site_b.longitude, hop.site_b.latitude)
-    middle = midpoint(trace(*ends, spacing_m=float(geodesic(*ends)[0])))
+    middle = midpoint(*hop.ends)
     climate = _as_given(hop, middle[1])
     if hop.availability is not None and hop.availability.use_maps:
         climate = _from_maps(climate, hop.availability, middle, wants_median=hop.median_k is None)

@@ -117,9 +117,8 @@ def _files(samples: Samples) -> list[Path]:
 
 def _lay_path(hop: Hop, terrain: Terrain) -> tuple[PathLine, float]:
     """Trace the path with points at most half the finest cell apart, unless the hop file says otherwise."""
-    ends = (hop.site_a.longitude, hop.site_a.latitude, hop.site_b.longitude, hop.site_b.latitude)
-    length_m, spacing_m = float(geodesic(*ends)[0]), hop.terrain.spacing_m
-    coarse = trace(*ends, spacing_m=length_m / _SEARCH_STEPS)
+    length_m, spacing_m = float(geodesic(*hop.ends)[0]), hop.terrain.spacing_m
+    coarse = trace(*hop.ends, spacing_m=length_m / _SEARCH_STEPS)
     # a cell is measured where the path meets its raster first: ask from both ends, or swapping them moves the points
     cell_m = min(terrain.finest_cell_m(coarse.longitude[::way], coarse.latitude[::way]) for way in (1, -1))
     if spacing_m is None:
@@ -130,7 +129,7 @@ def _lay_path(hop: Hop, terrain: Terrain) -> tuple[PathLine, float]:
             f" {length_m / 1e3:.2f} km; leave it out for half the finest cell"
         )
     with under("terrain", TerrainChoice):
-        return trace(*ends, spacing_m=spacing_m), cell_m
+        return trace(*hop.ends, spacing_m=spacing_m), cell_m
 
 
 def _without_gaps(hop: Hop, line: PathLine, ground_m: Float) -> tuple[Float, np.ndarray, tuple[str, ...]]:

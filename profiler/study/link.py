@@ -2,20 +2,21 @@
 
 from __future__ import annotations
 
+from collections.abc import Iterable
 from dataclasses import dataclass
 from typing import TYPE_CHECKING
 
 from profiler.atmosphere import Atmosphere, gas_attenuation, local_atmosphere
-from profiler.diffraction import DiffractionLoss, diffract
+from profiler.diffraction import DiffractionLoss, diffract_over_k
 from profiler.errors import under
-from profiler.models import AvailabilityChoice, Hop, Profile
+from profiler.models import AvailabilityChoice, DiffractionMethod, Hop, Profile
 from profiler.study.climate import ClimateUse
 from profiler.study.outage import OutageResult, predict_outage
 
 if TYPE_CHECKING:
     from profiler.budget import Budget
 
-__all__ = ["Air", "Link", "air_along", "link"]
+__all__ = ["Air", "Link", "air_along", "link", "losses_at"]
 
 
 @dataclass(frozen=True, slots=True)
@@ -30,7 +31,7 @@ class Air:
 
 @dataclass(frozen=True, slots=True, eq=False)
 class Link:
-    """What one pair of antenna centres gives: diffraction by k, the budget and the outage."""
+    """What one pair of antenna centres gives: diffraction at the k of the rules and the median k, budget and outage."""
 
     losses: dict[float, DiffractionLoss]
     budget: Budget | None
@@ -56,11 +57,37 @@ def link(hop: Hop, profile: Profile, climate: ClimateUse, air: Air, centre_a_m: 
     -------
     Link
     """
-    losses = _diffraction(hop, profile, climate.median_k, centre_a_m, centre_b_m)
+    stated = (*(rule.k for rule in hop.rules), climate.median_k)
+    losses = losses_at(hop, profile, (*stated, *(k for _, k in climate.k_percentiles)), centre_a_m, centre_b_m)
     budget = _budget(hop, profile, air, losses[climate.median_k])
     with under("availability", AvailabilityChoice):
         outage = predict_outage(hop, profile, climate, budget, centre_a_m, centre_b_m, losses)
-    return Link(losses, budget, outage)
+    return Link({k: losses[k] for k in stated}, budget, outage)
+
+
+def losses_at(
+    hop: Hop,
+    profile: Profile,
+    ks: Iterable[float],
+    centre_a_m: float,
+    centre_b_m: float,
+    *,
+    method: DiffractionMethod | None = None,
+) -> dict[float, DiffractionLoss]:
+    """Diffraction loss of a hop at each k, each k once, by the hop's own method unless another is named."""
+    once = tuple(dict.fromkeys(ks))
+    losses = diffract_over_k(
+        hop.diffraction_method if method is None else method,
+        profile.distance_m,
+        profile.surface_m,
+        centre_a_m,
+        centre_b_m,
+        hop.frequency_hz,
+        once,
+        polarization=hop.polarization,
+        sea_fraction=hop.sea_fraction,
+    )
+    return dict(zip(once, losses, strict=True))
 
 
 def air_along(hop: Hop, profile: Profile) -> Air:
@@ -92,17 +119,6 @@ def air_along(hop: Hop, profile: Profile) -> Air:
     reference = f"Rec. ITU-R P.835-6 mean annual reference atmosphere at {height_m:.0f} m"
     source = f"{', '.join(assumed)}: {reference}" if assumed else "given"
     return Air(atmosphere, per_km, per_km * float(profile.distance_m[-1]) / 1e3, source)
-
-
-def _diffraction(
-    hop: Hop, profile: Profile, median_k: float, centre_a_m: float, centre_b_m: float
-) -> dict[float, DiffractionLoss]:
-    """Loss by the chosen method at every k of the rules and at the median k, each k once."""
-    path = (profile.distance_m, profile.surface_m, centre_a_m, centre_b_m, hop.frequency_hz)
-    return {
-        k: diffract(hop.diffraction_method, *path, k, polarization=hop.polarization, sea_fraction=hop.sea_fraction)
-        for k in dict.fromkeys([*(rule.k for rule in hop.rules), median_k])
-    }
 
 
 def _budget(hop: Hop, profile: Profile, air: Air, loss: DiffractionLoss) -> Budget | None:

@@ -8,7 +8,7 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 
-from profiler.diffraction import DiffractionLoss, losses_over_k
+from profiler.diffraction import DiffractionLoss
 from profiler.models import Hop, Objective, Profile
 from profiler.study.climate import ClimateUse
 
@@ -70,7 +70,7 @@ def predict_outage(
     centre_a_m, centre_b_m
         Antenna centres above the datum.
     losses
-        Diffraction loss by k, the median k and those of the rules among them.
+        Diffraction loss by k: the median k, those of the rules and the percentiles.
 
     Returns
     -------
@@ -95,7 +95,7 @@ def predict_outage(
 
     path = _facts(hop, profile, climate, centre_a_m, centre_b_m, losses)
     low_k = min(rule.k for rule in hop.rules)
-    excess, low_k_excess = _excess_losses(hop, profile, climate, centre_a_m, centre_b_m, losses)
+    counted_db = losses[climate.median_k].loss_db
     signatures = {mode.name: mode.signature for mode in hop.radio.modes}
     models: dict[str, OutageModel] = {}
     found: list[tuple[str, str, Availability]] = []
@@ -104,9 +104,9 @@ def predict_outage(
             path,
             choice,
             signature=signatures[row.name],
-            k_excess_db=excess,
+            k_excess_db=[losses[k].loss_db - counted_db for _, k in climate.k_percentiles],
             low_k=low_k,
-            low_k_excess_db=low_k_excess,
+            low_k_excess_db=losses[low_k].loss_db - counted_db,
             sources=climate.sources,
         )
         assert row.fade_margin_db is not None
@@ -167,24 +167,3 @@ def _facts(
         median_k=climate.median_k,
         median_loss_db=losses[climate.median_k].loss_db,
     )
-
-
-def _excess_losses(
-    hop: Hop,
-    profile: Profile,
-    climate: ClimateUse,
-    centre_a_m: float,
-    centre_b_m: float,
-    losses: Mapping[float, DiffractionLoss],
-) -> tuple[list[float], float]:
-    """Diffraction loss over the budget's, at every percentile of k and at the lowest k of the rules."""
-    counted_db = losses[climate.median_k].loss_db
-    path = (profile.distance_m, profile.surface_m, centre_a_m, centre_b_m, hop.frequency_hz)
-    ks = [k for _, k in climate.k_percentiles]
-    excess = np.empty(0)
-    if ks:
-        excess = losses_over_k(
-            hop.diffraction_method, *path, ks, polarization=hop.polarization, sea_fraction=hop.sea_fraction
-        )
-    lowest = min(rule.k for rule in hop.rules)
-    return (excess - counted_db).tolist(), losses[lowest].loss_db - counted_db

@@ -9,7 +9,6 @@ from typing import Any
 
 import numpy as np
 
-from profiler.diffraction import diffract
 from profiler.geometry import corridor_need
 from profiler.heights import (
     Choice,
@@ -33,7 +32,7 @@ from profiler.heights import (
 )
 from profiler.models import Hop
 from profiler.study.document import SCHEMA_HEIGHTS, plain
-from profiler.study.link import link
+from profiler.study.link import link, losses_at
 from profiler.study.result import Study
 
 __all__ = ["HeightsPlan", "heights_document", "plan_heights"]
@@ -163,17 +162,8 @@ def _for_loss(study: Study) -> LimitHeights | None:
         return None
 
     def loss_db(centre_a_m: float, centre_b_m: float) -> float:
-        return diffract(
-            hop.diffraction_method,
-            profile.distance_m,
-            profile.surface_m,
-            centre_a_m,
-            centre_b_m,
-            hop.frequency_hz,
-            hop.heights.loss_k,
-            polarization=hop.polarization,
-            sea_fraction=hop.sea_fraction,
-        ).loss_db
+        k = hop.heights.loss_k
+        return losses_at(hop, profile, [k], centre_a_m, centre_b_m)[k].loss_db
 
     return heights_for_loss(
         loss_db,
