@@ -8,10 +8,11 @@ from typing import TYPE_CHECKING, Any
 import click
 
 from profiler.cli.options import hop_options, named, read_hop, speech_options
-from profiler.cli.output import check_targets, json_text, put, write_whole
+from profiler.cli.output import check_targets, csv_text, deliver, rendered
 from profiler.errors import InputError
 
 if TYPE_CHECKING:
+    from profiler.heights import Choice
     from profiler.models import Hop
     from profiler.study.plan import HeightsPlan
 
@@ -34,7 +35,14 @@ __all__ = ["command"]
     "write_to",
     type=click.Path(path_type=Path),
     metavar="FILE.toml",
-    help="Write a copy of the hop file with the cheapest pair in it.",
+    help="Write a copy of the hop file with the pair that meets everything in it.",
+)
+@click.option(
+    "--sure",
+    "sure_percent",
+    type=float,
+    metavar="PERCENT",
+    help="Let the pair clear with this chance, by [confidence]: 50 to 99.9.",
 )
 @click.option("--feet", is_flag=True, help="Print and draw in feet and miles.")
 @speech_options
@@ -43,6 +51,7 @@ def command(
     csv_to: str | None,
     figures: tuple[Path, ...],
     write_to: Path | None,
+    sure_percent: float | None,
     feet: bool,
     quiet: bool,
     no_color: bool,
@@ -50,69 +59,81 @@ def command(
 ) -> int:
     """Find the antenna heights that clear every rule, and the cheapest.
 
-    The region of the pairs that clear is exact; the cheapest of them is the cheapest that the towers allow.
+    The region of the pairs that clear is exact; the cheapest of them is the cheapest that the towers allow. The pair
+    given first also meets what else the hop file asks for: a fade margin, the objective, a loss limit; and the chance
+    given by --sure.
 
-    Exit code 0: a pair exists; 1: none does, and what would have to change is said; 2: the input is wrong.
+    Exit code 0: such a pair exists; 1: none does, and why is said; 2: the input is wrong.
     """
     from profiler.study import run_study
-    from profiler.study.plan import heights_document, plan_heights
+    from profiler.study.plan import plan_heights
+    from profiler.study.plan_document import heights_document
 
     check_targets(json_to, csv_to, write_to, figures=figures, hop_file=hop_given["hop_file"])
     hop = read_hop(**hop_given)
     with named(hop.source):
-        plan = plan_heights(run_study(hop, losses=False))
+        sure = None if sure_percent is None else _share(sure_percent)
+        plan = plan_heights(run_study(hop, losses=False), sure=sure)
         rewritten = None if write_to is None else _rewritten(hop, hop_given["hop_file"], plan)
-    drawn = _drawn(plan, figures, feet)
-    for path, content in drawn:
-        write_whole(path, content)
+    files: list[tuple[Path, bytes | str]] = [*rendered(figures, lambda: _frontier(plan, feet))]
     if write_to is not None and rewritten is not None:
-        write_whole(write_to, rewritten)
-    elif write_to is not None:
-        click.echo(f"{write_to}: not written, since no pair of heights clears", err=True)
-    if csv_to is not None:
-        put(csv_to, _csv_text(plan))
-    if json_to is not None:
-        put(json_to, json_text(heights_document(plan)))
-    if "-" not in (json_to, csv_to):
+        files.append((write_to, rewritten))
+    if deliver(
+        files,
+        csv_to=csv_to,
+        table=lambda: _csv_text(plan),
+        json_to=json_to,
+        document=lambda: heights_document(plan),
+    ):
         from profiler.cli.show_heights import show_heights
 
         show_heights(plan, feet=feet, quiet=quiet, color=not no_color)
-    return 0 if plan.feasible else 1
+    if write_to is not None and rewritten is None:
+        click.echo(f"{write_to}: not written, since no pair of heights does all that is asked", err=True)
+    return 0 if _pair(plan) is not None else 1
 
 
-def _drawn(plan: HeightsPlan, paths: tuple[Path, ...], feet: bool) -> list[tuple[Path, bytes]]:
-    """Draw the frontier once and render it for every file asked for."""
-    if not paths:
-        return []
-    from profiler.figures import frontier_figure, render
+def _share(percent: float) -> float:
+    """Turn the chance asked for into a share."""
+    if not 50.0 <= percent <= 99.9:
+        raise InputError(f"--sure = {percent:g}: must be a chance of 50 to 99.9 %")
+    return percent / 100.0
 
-    figure = frontier_figure(plan, feet=feet)
-    return [(path, render(figure, path.suffix)) for path in paths]
+
+def _pair(plan: HeightsPlan) -> Choice | None:
+    """Give the pair that meets everything, if there is one."""
+    from profiler.heights import NoPair
+
+    pair = plan.answer.pair
+    return None if isinstance(pair, NoPair) else pair
+
+
+def _frontier(plan: HeightsPlan, feet: bool) -> Any:
+    from profiler.figures import frontier_figure
+
+    return frontier_figure(plan, feet=feet)
 
 
 def _rewritten(hop: Hop, hop_file: Path | None, plan: HeightsPlan) -> str | None:
-    """Give the hop file's text with the cheapest pair in it, or None where there is no pair."""
-    from profiler.heights import Choice
+    """Give the hop file's text with the pair that meets everything in it, or None where there is none."""
     from profiler.hopfile import with_antennas
 
     if hop_file is None:
         raise InputError(f"{hop.source}: --write: must have a hop file to copy; give one instead of options")
-    if not isinstance(plan.cheapest, Choice):
+    pair = _pair(plan)
+    if pair is None:
         return None
-    return with_antennas(hop_file.read_text(encoding="utf-8"), plan.cheapest.antenna_a_m, plan.cheapest.antenna_b_m)
+    return with_antennas(hop_file.read_text(encoding="utf-8"), pair.antenna_a_m, pair.antenna_b_m)
 
 
 def _csv_text(plan: HeightsPlan) -> str:
-    """Write the frontier's corners as CSV, each with the obstacle and the rule that govern up to the next corner."""
-    import csv
-    import io
-
-    text = io.StringIO()
-    writer = csv.writer(text, lineterminator="\n")
-    writer.writerow(["stretch", "antenna_a_m", "antenna_b_m", "obstacle_distance_m", "least_ray_m", "rule"])
+    """Write the frontier's corners as CSV, each with what governs up to the next: where it stands and its rule."""
+    names = ["stretch", "antenna_a_m", "antenna_b_m", "obstacle_distance_m", "least_ray_m", "rule"]
+    names += ["obstacle_offset_m", "latitude", "longitude", "ground_m", "cover_m"]
+    rows = []
     for number, stretch in enumerate(plan.stretches, start=1):
-        for antenna_a_m, antenna_b_m in stretch.corners_m.tolist():
-            writer.writerow(
-                [number, antenna_a_m, antenna_b_m, stretch.distance_m, stretch.least_ray_m, stretch.rule + 1]
-            )
-    return text.getvalue()
+        place = plan.source(stretch.point, stretch.rule)
+        asks = (stretch.distance_m, stretch.least_ray_m, stretch.rule + 1)
+        where = (place.offset_m, place.latitude, place.longitude, place.ground_m, place.cover_m)
+        rows += [(number, *corner, *asks, *where) for corner in stretch.corners_m.tolist()]
+    return csv_text(names, rows)

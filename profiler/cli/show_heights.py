@@ -2,17 +2,19 @@
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from typing import TYPE_CHECKING
 
-from profiler.cli.output import console
-from profiler.cli.show import Scale, compact_table, show_notes
-from profiler.heights import Choice, Least, NoPair
+from profiler.cli.screen import Scale, compact_table, console, say, show_notes, show_table
+from profiler.heights import Least, NoPair, round_up
 
 if TYPE_CHECKING:
     from rich.console import Console
 
-    from profiler.heights import LimitHeights
+    from profiler.heights import LimitHeights, Stretch
+    from profiler.models import Rule, TowerChoice
     from profiler.study.plan import HeightsPlan
+    from profiler.study.requirements import Source
 
 __all__ = ["show_heights"]
 
@@ -20,20 +22,19 @@ __all__ = ["show_heights"]
 def show_heights(plan: HeightsPlan, *, feet: bool, quiet: bool, color: bool) -> None:
     """Print a heights plan."""
     screen, scale = console(color=color), Scale(feet=feet)
-    _show_pair(screen, plan, scale)
+    _show_answer(screen, plan, scale)
     if quiet:
         return
-    _show_sheet(screen, plan, scale)
-    screen.print(f"\nLeast equal heights: {_least(plan, plan.least_equal, scale)}", markup=False)
+    _show_sheet(screen, plan)
+    say(screen, f"\nLeast equal heights: {_least(plan, plan.least_equal, scale, 'AB')}")
     site_a, site_b = plan.study.hop.site_a, plan.study.hop.site_b
     for fixed, other, height_m, found in (
         ("B", "A", site_b.antenna_m, plan.least_a),
         ("A", "B", site_a.antenna_m, plan.least_b),
     ):
-        text = _least(plan, found, scale) if isinstance(found, Least) else found.reason
-        screen.print(
-            f"Least {other} with {fixed} at {scale.height(height_m)} {scale.height_unit}: {text}", markup=False
-        )
+        text = _least(plan, found, scale, other) if isinstance(found, Least) else found.reason
+        beginning = f"Least {other} with {fixed} at {scale.height(height_m)} {scale.height_unit}"
+        say(screen, f"{beginning}: {text}")
     _show_frontier(screen, plan, scale)
     if plan.for_loss is not None:
         asked = plan.study.hop.heights
@@ -42,98 +43,169 @@ def show_heights(plan: HeightsPlan, *, feet: bool, quiet: bool, color: bool) -> 
     if plan.for_objective is not None:
         _show_limit(screen, "Availability objective", plan.for_objective, scale)
     _show_diversity(screen, plan, scale)
-    if plan.study.confidence is not None:
-        from profiler.cli.show import show_sure_heights
-
-        show_sure_heights(screen, plan.study.confidence, scale)
+    _show_sure(screen, plan, scale)
     show_notes(screen, "Assumed", plan.study.assumptions)
-    screen.print(
+    say(
+        screen,
         "\nA screening result: tower loading, lighting, aircraft notice and exposure are for licensed practice and"
         " local codes. A height threshold here counts the antenna's centre, not the top of the structure.",
         style="dim",
-        markup=False,
-        soft_wrap=True,
     )
 
 
-def _show_pair(screen: Console, plan: HeightsPlan, scale: Scale) -> None:
-    """Print the cheapest pair, or why there is none and what would have to change."""
-    choice, unit = plan.cheapest, scale.height_unit
-    if isinstance(choice, Choice):
-        screen.print(
-            f"{plan.study.hop.name}: A {scale.height(choice.antenna_a_m)} {unit}, B {scale.height(choice.antenna_b_m)}"
-            f" {unit} above ground clear every rule, cost {choice.cost:g}",
-            style="bold green",
-            markup=False,
-            soft_wrap=True,
-        )
-        return
-    screen.print(f"{plan.study.hop.name}: {choice.reason}", style="bold red", markup=False, soft_wrap=True)
-    show_notes(screen, "Any one of these would do", choice.remedies)
-
-
-def _least(plan: HeightsPlan, least: Least, scale: Scale) -> str:
-    """Give a least height with what asks for it."""
-    rule = "its own ground" if least.rule < 0 else _rule(plan, least.rule)
-    return (
-        f"{scale.height(least.height_m, 2)} {scale.height_unit}, for the ground at {scale.distance(least.distance_m)}"
-        f" {scale.distance_unit} under {rule}"
-    )
-
-
-def _rule(plan: HeightsPlan, number: int) -> str:
-    rule = plan.study.hop.rules[number]
+def _rule(rules: Sequence[Rule], number: int) -> str:
+    """Say what a requirement asks for, by its index; -1 is the bare ground of a site."""
+    if number < 0:
+        return "site's own ground"
+    rule = rules[number]
     margin = f" + {rule.margin_m:g} m" if rule.margin_m else ""
-    return f"{rule.fresnel_fraction:g} F1{margin} at k = {rule.k:.3f}"
+    lower = f", {rule.label}" if rule.label.startswith("lower antenna") else ""
+    return f"{rule.fresnel_fraction:g} F1{margin} at k = {rule.k:.3f}{lower}"
 
 
-def _show_sheet(screen: Console, plan: HeightsPlan, scale: Scale) -> None:
-    """Print both ends' mounted heights in both unit systems."""
+def _show_answer(screen: Console, plan: HeightsPlan, scale: Scale) -> None:
+    """Print the pair that meets everything, or why there is none and what would have to change."""
+    answer, name, unit = plan.answer, plan.study.hop.name, scale.height_unit
+    *most, last = answer.asked
+    asked = f"{', '.join(most)} and {last}" if most else last
+    if not isinstance(answer.pair, NoPair):
+        pair = f"A {scale.height(answer.pair.antenna_a_m)} {unit}, B {scale.height(answer.pair.antenna_b_m)} {unit}"
+        text = f"{name}: {pair} above ground {asked}, cost {answer.pair.cost:g}"
+        say(screen, text, style="bold green")
+    else:
+        say(screen, f"{name}: {answer.pair.reason}", style="bold red")
+        if answer.pair.lower:
+            worst = answer.pair.lower[0]
+            text = f"In the way: {_where(plan.source(worst.point, worst.rule), scale)}, under"
+            say(screen, f"{text} {_rule(plan.rules, worst.rule)}")
+        show_notes(screen, "Any one of these would do", answer.pair.remedies)
+        if not isinstance(plan.cheapest, NoPair):
+            pair = f"A {scale.height(plan.cheapest.antenna_a_m)}, B {scale.height(plan.cheapest.antenna_b_m)} {unit}"
+            text = f"Cheapest pair that {_third(answer.asked[0])}: {pair}, cost {plan.cheapest.cost:g}"
+            say(screen, text)
+    if answer.chance is not None:
+        doubt = f"{answer.chance.value:.1%} ({answer.chance.low:.1%} to {answer.chance.high:.1%} by the draws)"
+        say(screen, f"Chance of clearing: {doubt}")
+    if answer.by_trial:
+        say(screen, "Found by trial of losses and outage: a cheaper pair is not ruled out.")
+    show_notes(screen, "Not judged", answer.unjudged, "yellow")
+
+
+def _third(words: str) -> str:
+    """Put 'clear every rule' into the third person."""
+    verb, _, rest = words.partition(" ")
+    return f"{verb}s {rest}"
+
+
+def _where(place: Source, scale: Scale) -> str:
+    """Say where what asks for a height stands, and how high."""
+    unit = scale.height_unit
+    aside = f", {_offset(place, scale)} {unit} {place.side} of the path" if _aside(place) else ""
+    cover = f" + cover {scale.height(place.cover_m)}" if place.cover_m else ""
+    return (
+        f"{scale.distance(place.distance_m)} {scale.distance_unit}{aside}"
+        f" ({place.latitude:.5f}, {place.longitude:.5f}; ground {scale.height(place.ground_m)}{cover} {unit})"
+    )
+
+
+def _aside(place: Source) -> bool:
+    """Tell whether a place is far enough from the path for somebody who stands there to notice."""
+    return abs(place.offset_m) >= 0.5
+
+
+def _offset(place: Source, scale: Scale) -> str:
+    return scale.height(abs(place.offset_m))
+
+
+def _least(plan: HeightsPlan, least: Least, scale: Scale, ends: str) -> str:
+    """Give a least height with the positions it takes and what asks for it."""
+    towers = {"A": plan.study.hop.heights.tower_a, "B": plan.study.hop.heights.tower_b}
+    positions = ", ".join(f"{end} {_position(least.height_m, towers[end], plan.spacing_m, scale)}" for end in ends)
+    return (
+        f"{scale.height(least.height_m, 2)} {scale.height_unit} ({positions}), for"
+        f" {_where(plan.source(least.point, least.rule), scale)}, under {_rule(plan.rules, least.rule)}"
+    )
+
+
+def _position(height_m: float | None, tower: TowerChoice, spacing_m: float, scale: Scale) -> str:
+    """Give the position that a height takes on a tower, or why there is none."""
+    if height_m is None:
+        return "none alone"
+    position_m = round_up(height_m, tower, spacing_m=spacing_m)
+    if position_m is not None:
+        return f"at {scale.height(position_m)}"
+    if height_m > tower.highest_m:
+        return f"above the tower's {scale.height(tower.highest_m)} {scale.height_unit}"
+    return f"no free position from {scale.height(height_m)} {scale.height_unit} up"
+
+
+def _show_sheet(screen: Console, plan: HeightsPlan) -> None:
+    """Print both ends' mounted heights, always in both unit systems, and how the rules fare with them."""
     sheet = plan.sheet
     if sheet is None:
         return
-    del scale  # a mounting sheet always gives both unit systems
+    feet = Scale(feet=True)
     table = compact_table("mounted", "above ground m", "ft", "ground m", "ft", "above sea level m", "ft")
     for end, name in ((sheet.end_a, plan.study.hop.site_a.name), (sheet.end_b, plan.study.hop.site_b.name)):
-        heights = (end.antenna_m, end.antenna_ft, end.ground_m, end.ground_ft, end.centre_m, end.centre_ft)
-        table.add_row(f"{end.end}  {name}", *(f"{height:.1f}" for height in heights))
+        antennas = [(f"{end.end}  {name}", end.antenna_m)]
+        antennas += [] if end.lower_m is None else [(f"{end.end}  lower antenna", end.lower_m)]
+        for label, antenna_m in antennas:
+            heights = (antenna_m, end.ground_m, end.ground_m + antenna_m)
+            table.add_row(label, *(text for height in heights for text in (f"{height:.1f}", feet.height(height))))
     screen.print()
-    screen.print(table)
-    screen.print("Re-checked through the rules: " + ("passes" if sheet.passes else "FAILS"), markup=False)
+    show_table(screen, table)
+    width = "along the path and beside it" if sheet.beside else "along the path"
+    worst = min(sheet.held, key=lambda held: held.surplus_m)
+    verdict = f"passes, {worst.surplus_m:.2f} m to spare" if sheet.passes else f"FAILS, {-worst.surplus_m:.2f} m short"
+    say(screen, f"Re-checked through every rule, {width}: {verdict}")
 
 
 def _show_frontier(screen: Console, plan: HeightsPlan, scale: Scale) -> None:
     """Print the frontier within the towers' limits, a row for each stretch."""
+    if not plan.stretches:
+        say(screen, "\nFrontier: none of it lies within the towers' limits.")
+        return
     unit = scale.height_unit
-    table = compact_table(f"frontier, {unit}", "A from", "B from", "A to", "B to", f"obstacle at {scale.distance_unit}",
-                          "rule", words=("rule",))  # fmt: skip
+    titles = (f"frontier\n{unit}", "A", "B", f"for\n{scale.distance_unit}", f"beside\n{unit}", "latitude, longitude",
+              f"ground + cover\n{unit}", "rule")  # fmt: skip
+    table = compact_table(*titles, wraps="rule")
     for number, stretch in enumerate(plan.stretches, start=1):
-        first, last = stretch.corners_m[0], stretch.corners_m[-1]
-        heights = (scale.height(value) for value in (*first, *last))
-        rule = "site's own ground" if stretch.rule < 0 else _rule(plan, stretch.rule)
-        table.add_row(str(number), *heights, scale.distance(stretch.distance_m), rule)
+        place = plan.source(stretch.point, stretch.rule)
+        table.add_row(
+            str(number),
+            *_spans(stretch, scale),
+            scale.distance(place.distance_m),
+            f"{_offset(place, scale)} {place.side}" if _aside(place) else "-",
+            f"{place.latitude:.5f}, {place.longitude:.5f}",
+            f"{scale.height(place.ground_m)} + {scale.height(place.cover_m)}",
+            _rule(plan.rules, stretch.rule),
+        )
     screen.print()
-    if plan.stretches:
-        screen.print(table)
-    else:
-        screen.print("Frontier: none of it lies within the towers' limits.")
+    show_table(screen, table)
+
+
+def _spans(stretch: Stretch, scale: Scale) -> tuple[str, str]:
+    """Give the heights of A and of B along a stretch, from its first corner to its last."""
+    first, last = stretch.corners_m[0], stretch.corners_m[-1]
+    a, b = (f"{scale.height(first[end])} to {scale.height(last[end])}" for end in (0, 1))
+    return a, b
 
 
 def _show_limit(screen: Console, title: str, found: LimitHeights, scale: Scale) -> None:
     """Print the heights for a limit on loss or outage."""
     unit = scale.height_unit
-    screen.print(f"\n{title}:", style="bold", markup=False)
+    say(screen, f"\n{title}, by trial of {found.trials} pairs of heights:", "bold")
     if found.least_equal_m is not None:
         caution = "" if found.holds_above else "; not at every greater height: the loss is not monotone here"
-        screen.print(f"  least equal heights {scale.height(found.least_equal_m, 2)} {unit}{caution}", markup=False)
+        say(screen, f"  least equal heights {scale.height(found.least_equal_m, 2)} {unit}{caution}")
     choice = found.cheapest
     if isinstance(choice, NoPair):
-        screen.print(f"  {choice.reason}", markup=False, soft_wrap=True)
+        say(screen, f"  {choice.reason}")
     else:
-        screen.print(
+        say(
+            screen,
             f"  cheapest pair found: A {scale.height(choice.antenna_a_m)}, B {scale.height(choice.antenna_b_m)} {unit},"
             f" cost {choice.cost:g}",
-            markup=False,
         )
 
 
@@ -141,12 +213,30 @@ def _show_diversity(screen: Console, plan: HeightsPlan, scale: Scale) -> None:
     """Print the lower antennas of a diversity pair."""
     unit = scale.height_unit
     for end in plan.diversity:
-        screen.print(
+        say(
+            screen,
             f"\nDiversity at {end.end}: lower antenna {scale.height(end.lower_m)} {unit}, {scale.height(end.spacing_m)}"
             f" {unit} ({end.spacing_wavelengths:.0f} wavelengths) below the main one; it needs"
             f" {scale.height(end.least_m)} to {scale.height(end.full_m)} {unit}",
-            markup=False,
-            soft_wrap=True,
         )
         for note in end.notes:
-            screen.print(f"  - {note}", markup=False, soft_wrap=True)
+            say(screen, f"  - {note}", hang=4)
+
+
+def _show_sure(screen: Console, plan: HeightsPlan, scale: Scale) -> None:
+    """Print the heights that are sure enough, from the hop file's, on the positions of the towers."""
+    towers, unit = plan.study.hop.heights, scale.height_unit
+    for found in plan.sure:
+        sure = found.sure
+        change = f"{scale.height(abs(sure.raise_m))} {unit} {'higher' if sure.raise_m > 0 else 'lower'}"
+        a, b, a_only, b_only = (
+            _position(height_m, tower, plan.spacing_m, scale)
+            for height_m, tower in (
+                (sure.equal_m[0], towers.tower_a),
+                (sure.equal_m[1], towers.tower_b),
+                (sure.a_only_m, towers.tower_a),
+                (sure.b_only_m, towers.tower_b),
+            )
+        )
+        ways = f"both antennas {change} (A {a}, B {b}), or A alone {a_only}, or B alone {b_only}"
+        say(screen, f"\n{sure.chance:.0%} sure of every rule: {ways}")

@@ -17,7 +17,7 @@ from profiler.heights.region import (
     least_ray,
     surplus,
 )
-from profiler.heights.search import LimitHeights, cheapest_by_trial, heights_for_loss, heights_within
+from profiler.heights.search import LimitHeights, cheapest_by_trial, heights_within, loss_excess
 from profiler.heights.sheet import EndHeights, Held, MountingSheet, mounting_sheet
 from profiler.heights.sure import DrawnRegions, drawn_regions, least_b_sure, least_surplus_drawn
 
@@ -46,7 +46,6 @@ __all__ = [
     "free_positions",
     "frontier_stretches",
     "height_cost",
-    "heights_for_loss",
     "heights_within",
     "least_a_for",
     "least_b_for",
@@ -55,6 +54,7 @@ __all__ = [
     "least_other",
     "least_ray",
     "least_surplus_drawn",
+    "loss_excess",
     "lower_rays",
     "lower_rules",
     "mounting_sheet",

@@ -10,14 +10,14 @@ from functools import cache
 import numpy as np
 from numpy.typing import NDArray
 
-from profiler.errors import InputError
+from profiler.checks import not_negative
 from profiler.geometry import ROUNDING_M
 from profiler.heights.choose import Choice, NoPair, cheapest_of, no_position
 from profiler.heights.positions import both_free
 from profiler.models import TowerChoice, frozen_array
 from profiler.units import Float
 
-__all__ = ["LimitHeights", "cheapest_by_trial", "heights_for_loss", "heights_within"]
+__all__ = ["LimitHeights", "cheapest_by_trial", "heights_within", "loss_excess"]
 
 _RESOLUTION_M = 0.01
 _AT_ONCE = 24
@@ -116,17 +116,14 @@ def heights_within(
     return LimitHeights(equal, holds, frozen_array(pairs), choice, tried.cache_info().misses)
 
 
-def heights_for_loss(
+def loss_excess(
     loss_db: Callable[[float, float], float],
     limit_db: float,
     *,
     grounds_m: tuple[float, float],
     surfaces_m: tuple[float, float],
-    tower_a: TowerChoice,
-    tower_b: TowerChoice,
-    spacing_m: float = 0.0,
-) -> LimitHeights:
-    """Find the least heights for which the diffraction loss stays within a limit; see `heights_within`.
+) -> Callable[[float, float], float]:
+    """Give the forward model of `heights_within` that holds a diffraction loss to a limit.
 
     Parameters
     ----------
@@ -136,15 +133,18 @@ def heights_for_loss(
     limit_db
         Greatest loss, 0 dB or more.
     grounds_m, surfaces_m
-        Ground, and ground plus cover, at A and B above the datum. An antenna below the surface of its own site is bad
-        whatever the loss, and ``loss_db`` is not asked about it.
-    tower_a, tower_b, spacing_m
-        As in `heights_within`.
+        Ground, and ground plus cover, at A and B above the datum. An antenna that is not above the surface of its own
+        site is bad whatever the loss, and ``loss_db`` is not asked about it.
+
+    Returns
+    -------
+    callable
+        By how many dB antenna heights A and B above ground exceed the limit.
 
     Raises
     ------
     InputError
-        For a limit below 0, or a tower's limits that hold no whole step.
+        For a limit below 0.
 
     Examples
     --------
@@ -153,20 +153,19 @@ def heights_for_loss(
 
     >>> from profiler.diffraction import knife_edge_loss
     >>> edge = lambda a, b: float(knife_edge_loss(0.1265 * (30 - (a + b) / 2)))
-    >>> found = heights_for_loss(edge, 6.04, grounds_m=(0, 0), surfaces_m=(0, 8), tower_a=TowerChoice(),
-    ...     tower_b=TowerChoice())
+    >>> excess = loss_excess(edge, 6.04, grounds_m=(0, 0), surfaces_m=(0, 8))
+    >>> found = heights_within(excess, TowerChoice(), TowerChoice())
     >>> round(found.least_equal_m, 1), found.cheapest
     (30.0, Choice(antenna_a_m=30.0, antenna_b_m=30.0, cost=60.0))
     """
-    if not 0 <= limit_db < math.inf:
-        raise InputError(f"limit_db = {limit_db}: must be 0 dB or more")
+    not_negative("limit_db", limit_db, "dB")
 
     def excess(antenna_a_m: float, antenna_b_m: float) -> float:
         centres = grounds_m[0] + antenna_a_m, grounds_m[1] + antenna_b_m
-        inside = any(centre < surface for centre, surface in zip(centres, surfaces_m, strict=True))
+        inside = any(centre <= surface for centre, surface in zip(centres, surfaces_m, strict=True))
         return math.inf if inside else loss_db(*centres) - limit_db
 
-    return heights_within(excess, tower_a, tower_b, spacing_m=spacing_m)
+    return excess
 
 
 def cheapest_by_trial(

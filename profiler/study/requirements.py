@@ -16,6 +16,9 @@ from profiler.units import Float
 
 __all__ = ["Requirements", "Source", "lower_antennas", "requirements", "source_of", "spacing_of"]
 
+_ABOVE_COVER_M = 1e-5
+"""More than rounding, and less than anybody means."""
+
 
 @dataclass(frozen=True, slots=True, eq=False)
 class Requirements:
@@ -165,9 +168,12 @@ def source_of(
 
 
 def _rays(hop: Hop, profile: Profile, corridor: Corridor | None, rules: Sequence[Rule]) -> tuple[Float, Float, Float]:
-    """Least ray under each rule, raised where ground beside the path asks for more, and what asks for it: (rules, n)."""
+    """Least ray under each rule, raised where ground beside the path asks for more, and what asks: (rules, n) each."""
     rays = least_ray(profile.distance_m, profile.surface_m, hop.frequency_hz, rules)
     offsets, surfaces = np.zeros_like(rays), np.tile(profile.surface_m, (len(rules), 1))
+    # an antenna exactly at the top of its own cover is not above it, and a study would refuse it
+    ends = [end for end in (0, -1) if profile.cover_m[end] > 0]
+    rays[:, ends] = np.maximum(rays[:, ends], profile.surface_m[ends] + _ABOVE_COVER_M)
     if corridor is None:
         return rays, offsets, surfaces
     beside_path = (profile.distance_m, corridor.offset_m, corridor.surface_m, hop.frequency_hz)

@@ -1,0 +1,195 @@
+"""One pair of antenna heights that meets all that a hop is asked for at once, the cheapest there is."""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Mapping
+from dataclasses import dataclass
+from typing import TYPE_CHECKING
+
+import numpy as np
+from numpy.typing import NDArray
+
+from profiler.checks import within
+from profiler.errors import InputError
+from profiler.geometry import ROUNDING_M
+from profiler.heights import (
+    Choice,
+    ClearingRegion,
+    DrawnRegions,
+    NoPair,
+    both_free,
+    cheapest_by_trial,
+    cheapest_of,
+    drawn_regions,
+    least_b_for,
+    least_b_sure,
+    least_surplus_drawn,
+)
+from profiler.study.doubt import doubt_given
+from profiler.study.limits import Excess
+from profiler.study.requirements import spacing_of
+from profiler.study.result import Study
+from profiler.units import Float
+
+if TYPE_CHECKING:
+    from profiler.confidence import Chance
+
+__all__ = ["Answer", "find_answer"]
+
+_FEWEST_BEYOND = 10
+"""Draws that must be left beyond a chance, or their number says nothing about it."""
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Answer:
+    """The cheapest pair that meets everything asked for at once.
+
+    ``asked`` says what, each in words that follow "the antennas", and ``unjudged`` what was set but cannot be judged.
+    ``chance`` is that of clearing every rule and, with a diversity pair, the lower antennas, over the draws of the
+    errors; None unless a chance was asked for. ``by_trial`` says that the pair was found by trial of losses and outage,
+    so that a cheaper one elsewhere is not ruled out; otherwise there is none.
+    """
+
+    pair: Choice | NoPair
+    asked: tuple[str, ...]
+    unjudged: tuple[str, ...]
+    chance: Chance | None
+    by_trial: bool
+
+
+def find_answer(
+    study: Study,
+    region: ClearingRegion,
+    clearing: Choice | NoPair,
+    limits: Mapping[str, Excess],
+    *,
+    unjudged: tuple[str, ...] = (),
+    sure: float | None = None,
+) -> Answer:
+    """Find the cheapest pair of free positions that clears, is sure enough and keeps every limit.
+
+    Clearance and chance are held exactly: raising an antenna never lowers either, so for each position of A the least
+    position of B follows. The limits are tried from the cheapest such pair on.
+
+    Parameters
+    ----------
+    study, region
+        The study and the region that clears.
+    clearing
+        The cheapest pair that clears, or why there is none.
+    limits
+        What else must hold, by the words for it: forward models that give how far a pair is over.
+    unjudged
+        What cannot be judged, to be told.
+    sure
+        Chance of clearing that is asked for, 0.5 to under 1, by the draws of the hop file's ``[confidence]``; None:
+        the ground is taken as given.
+
+    Returns
+    -------
+    Answer
+
+    Raises
+    ------
+    InputError
+        If a chance is asked for and the hop file does not say how wrong the ground may be, or draws too little.
+    """
+    towers = study.hop.heights
+    asked = ["clear every rule", *(["hold their lower antennas clear"] if spacing_of(study.hop) else []), *limits]
+    drawn = None if sure is None else _drawn(study, region, sure)
+    if sure is not None:
+        asked.append(f"clear with {100 * sure:g} % chance")
+    if isinstance(clearing, NoPair):
+        return Answer(clearing, tuple(asked), unjudged, None, by_trial=False)
+    free_a, free_b = both_free(towers.tower_a, towers.tower_b, spacing_m=spacing_of(study.hop))
+    least_b = least_b_for(region, free_a)
+    if drawn is not None and sure is not None:
+        least_b = np.maximum(least_b, least_b_sure(drawn, free_a, sure))
+    floor = np.asarray(np.searchsorted(free_b, least_b - ROUNDING_M), dtype=np.intp)
+    pair: Choice | NoPair = _cheapest(study, free_a, free_b, floor, drawn, sure)
+    by_trial = False
+    if isinstance(pair, Choice) and any(excess(pair.antenna_a_m, pair.antenna_b_m) > 0 for excess in limits.values()):
+        pair, by_trial = _by_trial(study, free_a, free_b, floor, limits), True
+    return Answer(pair, tuple(asked), unjudged, _chance(drawn, pair), by_trial)
+
+
+def _drawn(study: Study, region: ClearingRegion, sure: float) -> DrawnRegions:
+    """Draw the errors that the hop file speaks of, and move the region by them."""
+    choice, profile = study.hop.confidence, study.profile
+    within("sure", sure, 0.5, 0.999, "a chance of 0.5 to 0.999")
+    if choice is None:
+        raise InputError("confidence = (missing): must say how wrong the terrain may be where a chance is asked for")
+    if choice.draws * (1.0 - sure) < _FEWEST_BEYOND - 1e-6:
+        raise InputError(
+            f"confidence.draws = {choice.draws}: must be at least {math.ceil(_FEWEST_BEYOND / (1.0 - sure) - 1e-6)} for"
+            f" a chance of {100 * sure:g} %, to leave {_FEWEST_BEYOND} draws beyond it"
+        )
+    from profiler.confidence import draw_doubt, surplus_errors
+
+    doubt, _ = draw_doubt(profile.distance_m, profile.cover_m, **doubt_given(choice, profile))
+    return drawn_regions(region, surplus_errors(profile.distance_m, doubt))
+
+
+def _chance(drawn: DrawnRegions | None, pair: Choice | NoPair) -> Chance | None:
+    """Chance that a pair clears."""
+    if drawn is None or not isinstance(pair, Choice):
+        return None
+    from profiler.confidence import chance_of
+
+    return chance_of(least_surplus_drawn(drawn, pair.antenna_a_m, pair.antenna_b_m))
+
+
+def _cheapest(
+    study: Study, free_a: Float, free_b: Float, floor: NDArray[np.intp], drawn: DrawnRegions | None, sure: float | None
+) -> Choice | NoPair:
+    """Cheapest of the pairs of each A with its least B; ``floor`` holds the index of that and is raised to be sure."""
+    towers = study.hop.heights
+    while True:
+        found = floor < free_b.size
+        if not found.any():
+            break
+        pair = cheapest_of(free_a[found], free_b[floor[found]], towers.tower_a, towers.tower_b)
+        chance = _chance(drawn, pair)
+        if chance is None or sure is None or chance.value >= sure:
+            return pair
+        floor[np.searchsorted(free_a, pair.antenna_a_m)] += 1  # single precision left the least B a hair too low
+    best = Choice(float(free_a[-1]), float(free_b[-1]), math.nan)
+    chance = _chance(drawn, best)
+    assert chance is not None  # where none is asked for, the clearing pair is there
+    assert sure is not None
+    return NoPair(
+        reason=f"no pair clears with {100 * sure:g} % chance: at the highest there is, A {best.antenna_a_m:.2f} m and "
+        f"B {best.antenna_b_m:.2f} m, the chance is {chance.value:.1%}",
+        best_a_m=best.antenna_a_m,
+        best_b_m=best.antenna_b_m,
+    )
+
+
+def _by_trial(
+    study: Study, free_a: Float, free_b: Float, floor: NDArray[np.intp], limits: Mapping[str, Excess]
+) -> Choice | NoPair:
+    """Cheapest pair found, at or above the floor, that keeps the limits."""
+    towers = study.hop.heights
+
+    def excess(antenna_a_m: float, antenna_b_m: float) -> float:
+        lowest = floor[np.searchsorted(free_a, antenna_a_m)]
+        if lowest == free_b.size or antenna_b_m < free_b[lowest]:
+            return math.inf
+        return max(each(antenna_a_m, antenna_b_m) for each in limits.values())
+
+    choice, _ = cheapest_by_trial(excess, free_a, free_b, towers.tower_a, towers.tower_b)
+    if choice is not None:
+        return choice
+    best_a, best_b = float(free_a[-1]), float(free_b[-1])
+    over = {name: each(best_a, best_b) for name, each in limits.items()}
+    missed = [f"{name} by {db:.2f} dB" for name, db in over.items() if 0 < db < math.inf]
+    missed += [f"{name} at any fade margin" for name, db in over.items() if db == math.inf]
+    failing = f", A {best_a:.2f} m and B {best_b:.2f} m, the antennas fail to {', and to '.join(missed)}"
+    return NoPair(
+        reason="no pair found that does all that is asked"
+        + (f": at the highest there is{failing}" if missed else ": what helps one limit spoils another"),
+        best_a_m=best_a,
+        best_b_m=best_b,
+        proven=False,
+    )

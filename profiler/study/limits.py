@@ -1,0 +1,157 @@
+"""What is no straight line in the antenna heights: diffraction loss, fade margin and objective, at any pair of them."""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Callable
+from dataclasses import dataclass, replace
+from functools import cache, partial
+
+from profiler.diffraction import diffract
+from profiler.heights import LimitHeights, heights_within, loss_excess
+from profiler.models import Hop
+from profiler.study.link import Link, air_along, link
+from profiler.study.requirements import spacing_of
+from profiler.study.result import Study
+
+__all__ = ["Excess", "LinkLimits", "for_loss", "for_objective", "link_limits", "loss_limit"]
+
+Excess = Callable[[float, float], float]
+"""By how many dB antenna heights A and B exceed a limit; 0 or less is good, infinity has no value."""
+
+
+@dataclass(frozen=True, slots=True)
+class LinkLimits:
+    """What budget and outage ask of a pair of heights; None where the hop file gives too little, or asks for nothing.
+
+    ``margin`` is the shortage of fade margin against 0 dB, ``objective`` that against the objective. ``unjudged`` says
+    why an objective that is set cannot be judged at any height.
+    """
+
+    margin: Excess | None
+    objective: Excess | None
+    unjudged: tuple[str, ...] = ()
+
+
+def link_limits(study: Study) -> LinkLimits:
+    """Prepare the judgement of pairs of heights by the budget and the objective, as a study of them would judge.
+
+    Every pair is put through losses, budget and outage once, however often it is asked about.
+
+    Parameters
+    ----------
+    study
+        The study, with or without losses.
+
+    Returns
+    -------
+    LinkLimits
+    """
+    hop = study.hop
+    if hop.radio is None:
+        why = ("the availability objective cannot be judged: the hop file gives no radio",) if hop.has_objective else ()
+        return LinkLimits(None, None, why)
+    above_m = max(float(study.profile.surface_m.max()), study.centre_a_m, study.centre_b_m)
+    probe = link(hop, study.profile, study.climate, study.air, above_m, above_m)
+    found = probe.outage.availability
+    with_margin = _margin(probe) is not None
+    # the search asks often: only the modes that are judged, and only the k that counts
+    judged = {hop.radio.modes[0].name, *(mode.mode for mode in probe.outage.modes[:1])} if hop.radio.modes else set()
+    modes = tuple(mode for mode in hop.radio.modes if mode.name in judged)
+    lean = replace(hop, radio=replace(hop.radio, modes=modes), rules=(min(hop.rules, key=lambda rule: rule.k),))
+    at = cache(lambda a, b: _link_at(study, lean, a, b))
+    margin = (lambda a, b: _margin_missing_db(at(a, b))) if with_margin else None
+    if not hop.has_objective:
+        return LinkLimits(margin, None)
+    if found is None or found.objective is None:
+        return LinkLimits(margin, None, probe.outage.warnings[-1:] or ("the availability objective cannot be judged",))
+    required = found.objective.required_margin_db
+    if found.objective.met is None and required is not None and found.fade_margin_db >= required:
+        return LinkLimits(margin, None, found.objective.undecided)
+    return LinkLimits(margin, lambda a, b: _objective_missing_db(at(a, b)))
+
+
+def _link_at(study: Study, hop: Hop, antenna_a_m: float, antenna_b_m: float) -> Link | None:
+    """Losses, budget and outage of one pair; None where an antenna, or a lower one, stands in its own cover."""
+    profile, down_m = study.profile, spacing_of(hop)
+    for antenna_m, cover_m in ((antenna_a_m, profile.cover_m[0]), (antenna_b_m, profile.cover_m[-1])):
+        if antenna_m - down_m <= cover_m:
+            return None
+    centres = float(profile.ground_m[0]) + antenna_a_m, float(profile.ground_m[-1]) + antenna_b_m
+    raised = replace(
+        hop,
+        site_a=replace(hop.site_a, antenna_m=antenna_a_m),
+        site_b=replace(hop.site_b, antenna_m=antenna_b_m),
+    )
+    return link(raised, profile, study.climate, air_along(raised, profile), *centres)
+
+
+def _margin(found: Link) -> float | None:
+    """Fade margin of the first mode in the direction that has less, as the study's verdict takes it."""
+    if found.budget is None:
+        return None
+    margins = [way.fade_margin_db for way in (found.budget.a_to_b, found.budget.b_to_a)]
+    return min((margin for margin in margins if margin is not None), default=None)
+
+
+def _margin_missing_db(found: Link | None) -> float:
+    margin_db = None if found is None else _margin(found)
+    return math.inf if margin_db is None else -margin_db
+
+
+def _objective_missing_db(found: Link | None) -> float:
+    """How much fade margin is missing to meet the objective for sure; infinite where no margin would do."""
+    judged = None if found is None else found.outage.availability
+    if judged is None or judged.objective is None or judged.objective.required_margin_db is None:
+        return math.inf
+    missing_db = judged.objective.required_margin_db - judged.fade_margin_db
+    return missing_db if judged.objective.met is True or missing_db > 0 else math.inf
+
+
+def loss_limit(study: Study) -> Excess | None:
+    """Diffraction loss over its limit at the stated k, or None where the hop file sets no limit."""
+    limit_db, profile = study.hop.heights.loss_limit_db, study.profile
+    if limit_db is None:
+        return None
+    ground, surface = profile.ground_m, profile.surface_m
+    return cache(
+        loss_excess(
+            partial(_loss_db, study),
+            limit_db,
+            grounds_m=(float(ground[0]), float(ground[-1])),
+            surfaces_m=(float(surface[0]), float(surface[-1])),
+        )
+    )
+
+
+def _loss_db(study: Study, centre_a_m: float, centre_b_m: float) -> float:
+    hop, profile = study.hop, study.profile
+    return diffract(
+        hop.diffraction_method,
+        profile.distance_m,
+        profile.surface_m,
+        centre_a_m,
+        centre_b_m,
+        hop.frequency_hz,
+        hop.heights.loss_k,
+        polarization=hop.polarization,
+        sea_fraction=hop.sea_fraction,
+    ).loss_db
+
+
+def for_loss(study: Study, excess: Excess | None) -> LimitHeights | None:
+    """Least heights that keep the diffraction loss at the stated k within its limit; None where there is none."""
+    towers = study.hop.heights
+    if excess is None:
+        return None
+    return heights_within(excess, towers.tower_a, towers.tower_b, spacing_m=spacing_of(study.hop))
+
+
+def for_objective(study: Study, excess: Excess | None) -> LimitHeights | None:
+    """Least heights that meet the availability objective; None where there is none to judge."""
+    towers, spacing_m = study.hop.heights, spacing_of(study.hop)
+    if excess is None:
+        return None
+    return heights_within(
+        excess, towers.tower_a, towers.tower_b, spacing_m=spacing_m, what="shortage of fade margin", unit="dB"
+    )
