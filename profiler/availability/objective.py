@@ -169,7 +169,7 @@ def _judge_target(model: OutageModel, target: _Target, fade_margin_db: float) ->
     if achieved <= target.required < most:
         reasons += (
             f"{target.name} = {target.required:g}: obstruction below the lowest k given could make it {most:.3g}; give "
-            "k_percentiles for rarer times",
+            "k_percentiles for rarer times, or a rule at a lower k",
         )
     required_margin_db, margin_set_by = _required_margin(model, target)
     result = TargetResult(
