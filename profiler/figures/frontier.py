@@ -271,18 +271,20 @@ def _stretch_table(page: Page, top: float, plan: HeightsPlan, stretches: tuple[S
 def _stretch_cells(plan: HeightsPlan, stretch: Stretch, scale: Scale) -> tuple[str, str, str, str]:
     """Cells of one stretch: the range of A, the range of B, where the obstacle is, what it is."""
     first, last = stretch.corners_m[0], stretch.corners_m[-1]
-    profile, point = plan.study.profile, stretch.point
+    place = plan.source(stretch.point, stretch.rule)
 
     def span(low: float, high: float) -> str:
         ends = [minus(f"{scale.height(float(each)):.1f}") if np.isfinite(each) else "∞" for each in (low, high)]
         return ends[0] if ends[0] == ends[1] else f"{ends[0]} to {ends[1]}"
 
-    spot = position_text(float(profile.longitude[point]), float(profile.latitude[point]))
-    ground, cover = float(profile.ground_m[point]), float(profile.cover_m[point])
-    stands = f"ground {scale.height_text(ground)}" + (f" + cover {scale.height_text(cover)}" if cover > 0 else "")
-    rules = plan.study.hop.rules
-    rule = rules[stretch.rule] if stretch.rule >= 0 else None
+    spot = position_text(place.longitude, place.latitude)
+    cover = f" + cover {scale.height_text(place.cover_m)}" if place.cover_m > 0 else ""
+    aside = f" {scale.height_text(abs(place.offset_m))} {place.side} of the path" if abs(place.offset_m) >= 0.5 else ""
+    stands = f"ground {scale.height_text(place.ground_m)}{cover}{aside}"
+    rule = plan.rules[stretch.rule] if stretch.rule >= 0 else None
     asks = "the site's own ground" if rule is None else required_text(rule, scale)
+    if rule is not None and stretch.rule >= len(plan.study.hop.rules):
+        asks = f"{asks}, {rule.label.partition(',')[0]}"
     return (
         span(first[0], last[0]),
         span(last[1], first[1]),
