@@ -7,7 +7,7 @@ from typing import TYPE_CHECKING, Any
 import click
 
 from profiler.cli.options import hop_options, named, read_hop, speech_options
-from profiler.cli.output import check_targets, console, json_text, put
+from profiler.cli.output import check_targets, json_text, put
 
 if TYPE_CHECKING:
     from profiler.diffraction import DiffractionLoss
@@ -26,7 +26,7 @@ def command(json_to: str | None, quiet: bool, no_color: bool, **hop_given: Any) 
     At every k of the rules and at the median k, with the edges that each method used.
     """
     from profiler.diffraction import METHODS
-    from profiler.study import losses_at, plain, run_study
+    from profiler.study import losses_at, run_study
 
     check_targets(json_to, hop_file=hop_given["hop_file"])
     hop = read_hop(**hop_given)
@@ -37,7 +37,7 @@ def command(json_to: str | None, quiet: bool, no_color: bool, **hop_given: Any) 
     by_method = [losses_at(hop, study.profile, ks, *centres, method=each.name) for each in METHODS.values()]
     by_k = {k: tuple(losses[k] for losses in by_method) for k in dict.fromkeys(ks)}
     if json_to is not None:
-        losses = [plain(loss) for found in by_k.values() for loss in found]
+        losses = [loss for found in by_k.values() for loss in found]
         put(json_to, json_text({"schema": "hopwright-losses/1", "hop": hop.name, "diffraction": losses}))
     if json_to != "-":
         _show(study, by_k, quiet=quiet, color=not no_color)
@@ -46,7 +46,7 @@ def command(json_to: str | None, quiet: bool, no_color: bool, **hop_given: Any) 
 
 def _show(study: Study, by_k: dict[float, tuple[DiffractionLoss, ...]], *, quiet: bool, color: bool) -> None:
     """Print a row for each method and a column for each k, then the edges and the doubts."""
-    from profiler.cli.show import compact_table, show_notes
+    from profiler.cli.screen import compact_table, console, say, show_notes, show_table
 
     screen = console(color=color)
     table = compact_table("diffraction loss, dB", *(f"k = {k:.3f}" for k in by_k))
@@ -54,17 +54,17 @@ def _show(study: Study, by_k: dict[float, tuple[DiffractionLoss, ...]], *, quiet
         chosen = rows[0].method == study.hop.diffraction_method
         name = rows[0].method + (" (chosen)" if chosen else "")
         table.add_row(name, *(f"{loss.loss_db:.2f}" for loss in rows), style="bold" if chosen else "")
-    screen.print(table)
+    show_table(screen, table)
     if quiet:
         return
-    edges = compact_table("edge", "k", "method", "km from A", "height m", "nu", "loss dB")
+    edges = compact_table("edge", "k", "method", "km from A", "height m", "nu", "loss dB", words=("method",))
     for k, losses in by_k.items():
         for loss in losses:
             for number, edge in enumerate(loss.edges, start=1):
                 charged = "-" if edge.loss_db is None else f"{edge.loss_db:.2f}"
                 where = (f"{edge.distance_m / 1e3:.3f}", f"{edge.height_m:.1f}", f"{edge.nu:.2f}")
                 edges.add_row(str(number), f"{k:.3f}", loss.method, *where, charged)
-    screen.print()
-    screen.print(edges)
+    say(screen, "")
+    show_table(screen, edges)
     doubts = dict.fromkeys(warning for losses in by_k.values() for loss in losses for warning in loss.warnings)
     show_notes(screen, "Warnings", tuple(doubts), "yellow")

@@ -1,25 +1,24 @@
-"""What the commands share: writing files whole or not at all, and the terminal."""
+"""What the commands share: figures, tables and documents, written whole or not at all."""
 
 from __future__ import annotations
 
+import csv
+import io
 import json
 import math
 import os
-import sys
 import tempfile
-from collections.abc import Sequence
+from collections.abc import Callable, Iterable, Sequence
 from contextlib import suppress
 from pathlib import Path
-from typing import TYPE_CHECKING, Any
+from typing import Any
 
 import click
 
+from profiler.cli.screen import console
 from profiler.errors import InputError
 
-if TYPE_CHECKING:
-    from rich.console import Console
-
-__all__ = ["check_targets", "console", "json_text", "put", "write_whole"]
+__all__ = ["check_targets", "console", "csv_text", "deliver", "json_text", "put", "rendered", "write_whole"]
 
 
 def check_targets(*targets: str | Path | None, figures: Sequence[Path] = (), hop_file: Path | None = None) -> None:
@@ -115,26 +114,55 @@ def put(target: str, text: str) -> None:
         write_whole(Path(target), data)
 
 
-def json_text(document: dict[str, Any]) -> str:
-    """One JSON document; numbers that are not finite become null, since JSON has no word for them."""
-    return json.dumps(_finite(document), indent=2, ensure_ascii=False, allow_nan=False)
+def json_text(document: Any) -> str:
+    """One JSON document of whatever `profiler.study.plain` can turn into one."""
+    from profiler.study import plain
+
+    return json.dumps(plain(document), indent=2, ensure_ascii=False, allow_nan=False)
 
 
-def _finite(value: Any) -> Any:
-    """Replace every number that is not finite, however deep, by None."""
-    if isinstance(value, float):
-        return value if math.isfinite(value) else None
-    if isinstance(value, dict):
-        return {key: _finite(each) for key, each in value.items()}
-    if isinstance(value, list | tuple):
-        return [_finite(each) for each in value]
-    return value
+def csv_text(names: Sequence[str], rows: Iterable[Iterable[float]]) -> str:
+    """One header row and numbers in full precision; what is not known stays empty."""
+    text = io.StringIO()
+    writer = csv.writer(text, lineterminator="\n")
+    writer.writerow(names)
+    writer.writerows([["" if math.isnan(value) else value for value in row] for row in rows])
+    return text.getvalue()
 
 
-def console(*, color: bool) -> Console:
-    """Open the terminal for tables; width and color follow the terminal unless color is refused."""
-    from rich.console import Console
+def rendered(paths: Sequence[Path], draw: Callable[[], Any]) -> list[tuple[Path, bytes]]:
+    """Draw a figure of `profiler.figures` once and render it for every file asked for; for none, draw nothing."""
+    if not paths:
+        return []
+    from profiler.figures import render
 
-    width = None if sys.stdout.isatty() else 110
-    # names and labels are text: no markup and no emoji codes in them
-    return Console(no_color=not color, highlight=False, width=width, soft_wrap=False, markup=False, emoji=False)
+    figure = draw()
+    return [(path, render(figure, path.suffix)) for path in paths]
+
+
+def deliver(
+    files: Sequence[tuple[Path, bytes | str]],
+    *,
+    csv_to: str | None,
+    table: Callable[[], str],
+    json_to: str | None,
+    document: Callable[[], dict[str, Any]],
+) -> bool:
+    """Write all that was asked for, and say whether standard output is still free for the terminal's tables.
+
+    Parameters
+    ----------
+    files
+        Files and what goes into them, made before the first is written.
+    csv_to, json_to
+        Files, ``-`` for standard output, or None.
+    table, document
+        Make what goes there.
+    """
+    for path, content in files:
+        write_whole(path, content)
+    if csv_to is not None:
+        put(csv_to, table())
+    if json_to is not None:
+        put(json_to, json_text(document()))
+    return "-" not in (csv_to, json_to)

@@ -49,7 +49,8 @@ def command(
 ) -> int:
     """Find the longest range, the least power and the smallest dishes.
 
-    The range is in free space; power and dishes are for this hop, with the losses of its path. Needs a [radio] with a threshold, or the noise and modulation that give one.
+    The range is in free space; power and dishes are for this hop, with the losses of its path. Needs a [radio] with a
+    threshold, or the noise and modulation that give one.
     """
     from profiler.budget import least_power, longest_free_space_range, smallest_dish
     from profiler.study import plain, run_study

@@ -8,7 +8,8 @@ from typing import TYPE_CHECKING, Any
 import click
 
 from profiler.cli.options import hop_options, named, read_hop, speech_options
-from profiler.cli.output import check_targets, json_text, put, write_whole
+from profiler.cli.output import check_targets, csv_text, deliver, rendered
+from profiler.errors import InputError
 
 if TYPE_CHECKING:
     from profiler.study import Study
@@ -58,66 +59,41 @@ def command(
 
     Give a HOP.toml, or the sites in options. Exit code 0: the hop passes; 1: it does not; 2: the input is wrong.
     """
-    from profiler.study import run_study, to_document
+    from profiler.study import point_table, run_study, to_document
 
     check_targets(json_to, csv_to, figures=(*figures, *margin_figures), hop_file=hop_given["hop_file"])
     hop = read_hop(**hop_given)
     with named(hop.source):
         study = run_study(hop, relief=bool(figures))
+    axes = {"feet": feet, "distance_limits": distance_limits, "height_limits": height_limits}
     drawn = [
-        *_drawn_profiles(study, figures, feet, distance_limits, height_limits),
-        *_drawn_margins(study, margin_figures),
+        *rendered(figures, lambda: _profile(study, **axes)),
+        *rendered(margin_figures, lambda: _margins(study)),
     ]
-    for path, content in drawn:
-        write_whole(path, content)
-    if csv_to is not None:
-        put(csv_to, _csv_text(study))
-    if json_to is not None:
-        put(json_to, json_text(to_document(study)))
-    if "-" not in (json_to, csv_to):
+    if deliver(
+        drawn,
+        csv_to=csv_to,
+        table=lambda: csv_text(*point_table(study)),
+        json_to=json_to,
+        document=lambda: to_document(study),
+    ):
         from profiler.cli.show import show_study
 
         show_study(study, feet=feet, quiet=quiet, color=not no_color)
     return 0 if study.verdict.passes else 1
 
 
-def _drawn_profiles(
-    study: Study, paths: tuple[Path, ...], feet: bool, distance_limits: Limits, height_limits: Limits
-) -> list[tuple[Path, bytes]]:
-    """Draw the profile once and render it for every file asked for."""
-    if not paths:
-        return []
-    from profiler.figures import profile_figure, render
+def _profile(study: Study, **axes: Any) -> Any:
+    from profiler.figures import profile_figure
 
-    figure = profile_figure(study, feet=feet, distance_limits=distance_limits, height_limits=height_limits)
-    return [(path, render(figure, path.suffix)) for path in paths]
+    return profile_figure(study, **axes)
 
 
-def _drawn_margins(study: Study, paths: tuple[Path, ...]) -> list[tuple[Path, bytes]]:
-    """Draw margin against outage once and render it for every file asked for."""
-    if not paths:
-        return []
-    from profiler.errors import InputError
-    from profiler.figures import margin_figure, render
+def _margins(study: Study) -> Any:
+    from profiler.figures import margin_figure
 
     if study.outage_curve is None:
         raise InputError(
             f"{study.hop.source}: --margin-figure: must have a [radio] with a threshold and [availability] to draw"
         )
-    figure = margin_figure(study)
-    return [(path, render(figure, path.suffix)) for path in paths]
-
-
-def _csv_text(study: Study) -> str:
-    """Write the point table as CSV, full precision, one header row with units in the names."""
-    import csv
-    import io
-
-    from profiler.study import point_table
-
-    names, numbers = point_table(study)
-    text = io.StringIO()
-    writer = csv.writer(text, lineterminator="\n")
-    writer.writerow(names)
-    writer.writerows([["" if value != value else repr(value) for value in row] for row in numbers.tolist()])  # noqa: PLR0124 - NaN
-    return text.getvalue()
+    return margin_figure(study)

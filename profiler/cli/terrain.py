@@ -28,7 +28,8 @@ def command(
 ) -> int:
     """Show what rasters hold, and whether a hop lies on them.
 
-    Exit code 1: the hop does not lie on them."""
+    Exit code 1: the hop does not lie on them.
+    """
     from profiler.study import plain
     from profiler.terrain import survey
 
