@@ -9,12 +9,12 @@ from profiler.availability.model import OutageModel
 from profiler.availability.notes import Notes
 from profiler.units import Float
 
-__all__ = ["not_cut_off", "obstruction_notes", "reasons_open"]
+__all__ = ["holds_at_low_k", "obstruction_notes", "reasons_open"]
 
 _RAIN_MATTERS_HZ = 5e9
 
 
-def not_cut_off(model: OutageModel, margin_db: Float) -> NDArray[np.bool_]:
+def holds_at_low_k(model: OutageModel, margin_db: Float) -> NDArray[np.bool_]:
     """Whether each margin holds the hop at the low k of the rules, or the statistics of k count the time of it."""
     beyond_db = -np.inf if model.beyond_db is None else model.beyond_db
     return np.asarray(beyond_db <= margin_db)
@@ -22,7 +22,7 @@ def not_cut_off(model: OutageModel, margin_db: Float) -> NDArray[np.bool_]:
 
 def _cut_off(model: OutageModel, margin_db: float) -> tuple[str, ...]:
     """Say that the hop is cut off at the low k of the rules, for a time that nobody gave."""
-    if margin_db < 0.0 or not_cut_off(model, np.asarray(margin_db)):
+    if margin_db < 0.0 or holds_at_low_k(model, np.asarray(margin_db)):
         return ()
     return (
         f"diffraction at the low k of the rules, {model.low_k:.4g}, takes {model.beyond_db:.1f} dB more than the "

@@ -9,7 +9,7 @@ from typing import Literal
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
-from profiler.availability.gaps import not_cut_off, reasons_open
+from profiler.availability.gaps import holds_at_low_k, reasons_open
 from profiler.availability.model import OutageModel
 from profiler.availability.outages import MECHANISMS, Mechanism, Outages, outages_at
 from profiler.models import Objective
@@ -101,7 +101,7 @@ class _Target:
     def is_sure(self, model: OutageModel, margin_db: Float) -> BoolArray:
         """Whether a margin meets the target whatever is unknown."""
         sure = self.achieved(model, margin_db)[1] <= self.required
-        return sure & (self.clear_air_only or not_cut_off(model, margin_db))
+        return sure & (self.clear_air_only or holds_at_low_k(model, margin_db))
 
     def limit(self, model: OutageModel, margin_db: float) -> Limit:
         """Mechanism with the most outage at a margin, of what is counted."""
@@ -111,7 +111,7 @@ class _Target:
         """Mechanism with the most outage at a margin, of what is possible."""
         if margin_db < self.offset_db:
             return "no margin"
-        if not self.clear_air_only and not not_cut_off(model, np.asarray(margin_db)):
+        if not self.clear_air_only and not holds_at_low_k(model, np.asarray(margin_db)):
             return "obstruction"
         outages = self.outages(model, margin_db)
         return limit_of(replace(outages, obstruction=outages.obstruction_up_to), self.counts)
