@@ -10,7 +10,7 @@ import numpy as np
 from profiler.cover import Cover, cover_along
 from profiler.errors import InputError, under
 from profiler.geometry import corridor_offsets
-from profiler.models import Hop, Profile, Site, TerrainChoice, frozen_array
+from profiler.models import Hop, Profile, Rule, Site, TerrainChoice, frozen_array
 from profiler.path import PathLine, across, geodesic, trace
 from profiler.study.result import Corridor, Relief, TerrainUse
 from profiler.terrain import Samples, Terrain, fill_missing, missing_stretches, require_ground
@@ -192,11 +192,14 @@ def _cover(hop: Hop, line: PathLine, longitude: Float, latitude: Float, part: sl
 def require_above_cover(hop: Hop, profile: Profile) -> None:
     """Stop when an antenna stands inside the cover at its own site: no loss has a value there.
 
+    The same goes for the lower antennas of a diversity pair, in the cover or under the ground: no credit is due there.
+
     Raises
     ------
     InputError
-        Naming the site and the cover.
+        Naming the site and the cover, or the spacing.
     """
+    pair = None if hop.availability is None else hop.availability.diversity
     for key, site, cover_m in (
         ("site_a", hop.site_a, float(profile.cover_m[0])),
         ("site_b", hop.site_b, float(profile.cover_m[-1])),
@@ -206,6 +209,22 @@ def require_above_cover(hop: Hop, profile: Profile) -> None:
                 f"{key}.antenna_m = {site.antenna_m:g}: must be above the {cover_m:.1f} m of cover at {site.name};"
                 f" raise it, or give {key}.clearing_m if the trees around the mast are cut"
             )
+        if pair is not None and site.antenna_m - pair.spacing_m <= cover_m:
+            stands = f"the {cover_m:.1f} m of cover" if cover_m > 0 else "the ground"
+            raise InputError(
+                f"availability.diversity.spacing_m = {pair.spacing_m:g}: must be under {site.antenna_m - cover_m:g} m,"
+                f" to keep the lower antenna above {stands} at {site.name}; space them closer, or raise"
+                f" {key}.antenna_m = {site.antenna_m:g}"
+            )
+
+
+def _lower_rules(hop: Hop) -> tuple[Rule, ...]:
+    """Rule of a diversity pair's lower antennas; its k has no part in the width of the zone."""
+    if hop.availability is None or hop.availability.diversity is None:
+        return ()
+    from profiler.heights import lower_rules
+
+    return lower_rules(hop.heights.diversity_obstruction, 1.0)[:1]
 
 
 def _corridor(
@@ -216,7 +235,7 @@ def _corridor(
     The path's own points keep their profile. Across, points stand half a cell apart, but no closer than a tenth of the
     zone: what is narrower than that hides next to none of it.
     """
-    fraction = max(rule.fresnel_fraction for rule in hop.rules)
+    fraction = max(rule.fresnel_fraction for rule in (*hop.rules, *_lower_rules(hop)))
     if fraction == 0.0:
         return None, []
     widest = float(np.abs(corridor_offsets(line.along_m, hop.frequency_hz, fraction, np.inf)).max())

@@ -111,7 +111,7 @@ def run_study(hop: Hop, terrain: Terrain | None = None, *, relief: bool = False,
         verdict=judge(hop, rules, found.budget, found.outage.meets),
         provenance=provenance(hop, ground.files),
         assumptions=_assumptions(hop, ground, climate, air, found),
-        warnings=_warnings(hop, ground, rules, found),
+        warnings=(*_lower_warnings(hop, ground, climate.median_k), *_warnings(hop, ground, rules, found)),
     )
 
 
@@ -209,6 +209,24 @@ def _doubt_assumptions(choice: ConfidenceChoice) -> tuple[str, ...]:
         f"terrain error: {choice.terrain_source}",
         "terrain error: ground beside the path has the error of the path's own point next to it",
     )
+
+
+def _lower_warnings(hop: Hop, ground: Ground, median_k: float) -> tuple[str, ...]:
+    """Warn of lower antennas of a diversity pair that lack the clearance under which their improvement is credited."""
+    if hop.availability is None or hop.availability.diversity is None:
+        return ()
+    from profiler.study.requirements import lower_antennas
+
+    ends = lower_antennas(
+        hop,
+        ground.profile,
+        ground.corridor,
+        median_k,
+        antenna_a_m=hop.site_a.antenna_m,
+        antenna_b_m=hop.site_b.antenna_m,
+    )
+    short = [end.notes[0] for end in ends if not end.clears]
+    return tuple(f"diversity at {note}; the outage counts its improvement all the same" for note in short)
 
 
 def _warnings(hop: Hop, ground: Ground, rules: Sequence[RuleResult], found: Link) -> tuple[str, ...]:
