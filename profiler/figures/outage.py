@@ -32,6 +32,7 @@ _LOOKS: dict[str, tuple[str, tuple[float, ...], float]] = {
 }
 _SUPERSCRIPT = str.maketrans("-0123456789", "⁻⁰¹²³⁴⁵⁶⁷⁸⁹")
 _HALF_IN = 2.0
+_LOWEST_POWER = -12
 _RIGHT_IN = 1.02
 
 
@@ -75,11 +76,15 @@ def draw_outage(
     top = _key(page, left, top, outage)
     top = _margin_labels(page, left, top, room, outage, highest)
     pair = []
-    for period, outages in (("worst month", curve.worst_month_percent), ("year", curve.year_percent)):
+    for period, outages, here in (
+        ("worst month", curve.worst_month_percent, outage.worst_month_percent.total),
+        ("year", curve.year_percent, outage.year_percent.total),
+    ):
         axes = page.axes(left, top, room, _HALF_IN, label=period)
         targets = target_lines(outage, period)
-        powers = _curves(axes, curve.margin_db, outages, targets)
+        powers = _curves(axes, curve.margin_db, outages, targets, here)
         _margins(axes, outage, highest)
+        axes.plot(max(outage.fade_margin_db, 0.0), here, "o", color=style.INK, ms=4, label="reached", zorder=4)
         values = [10.0**power for power in powers]
         page.scale_side(axes, values, [_percent_label(power) for power in powers])
         draw_grid(axes, nice_ticks(0.0, highest, 8), values)
@@ -94,10 +99,12 @@ def _percent_label(power: int) -> str:
     return f"{10.0**power:g}" if power >= -3 else f"10{str(power).translate(_SUPERSCRIPT)}"
 
 
-def _curves(axes: Axes, margin_db: Float, outages: Outages[Float], targets: list[tuple[float, list[str]]]) -> list[int]:
-    """Draw the curves of one period, from 100 % down to a decade under what matters; returns the decades."""
-    lowest = min([1e-3, *(percent / 30.0 for percent, _ in targets)])
-    bottom = max(math.floor(math.log10(lowest)), -8)
+def _curves(
+    axes: Axes, margin_db: Float, outages: Outages[Float], targets: list[tuple[float, list[str]]], here: float
+) -> list[int]:
+    """Draw the curves of one period, from 100 % to below what is asked and what is reached; returns the decades."""
+    lowest = min([1e-3, *(percent / 30.0 for percent, _ in targets), *([here / 3.0] if here > 0 else [])])
+    bottom = max(math.floor(math.log10(lowest)), _LOWEST_POWER)
     axes.set_yscale("log")
     axes.set_yticks([])
     axes.minorticks_off()
@@ -110,8 +117,8 @@ def _curves(axes: Axes, margin_db: Float, outages: Outages[Float], targets: list
         axes.plot(margin_db, shown, color=color, dashes=dashes or (None, None), lw=weight, label=name)
     axes.set_ylim(10.0**bottom, 150.0)
     for percent, _ in targets:
-        axes.axhline(percent, color=style.FAIL, lw=1.2, dashes=(6, 2), label="asked")
-    return list(range(bottom, 3))
+        axes.axhline(percent, color=style.FAIL, lw=1.6, label="asked")
+    return list(range(bottom, 3, 1 if bottom > -6 else 2))
 
 
 def _margins(axes: Axes, outage: Availability, highest: float) -> None:
