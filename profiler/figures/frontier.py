@@ -284,7 +284,7 @@ def _stretch_cells(plan: HeightsPlan, stretch: Stretch, scale: Scale) -> tuple[s
     rule = plan.rules[stretch.rule] if stretch.rule >= 0 else None
     asks = "the site's own ground" if rule is None else required_text(rule, scale)
     if rule is not None and stretch.rule >= len(plan.study.hop.rules):
-        asks = f"{asks}, {rule.label.partition(',')[0]}"
+        asks = f"{asks}, {rule.label}"
     return (
         span(first[0], last[0]),
         span(last[1], first[1]),

@@ -81,10 +81,7 @@ def requirements(hop: Hop, profile: Profile, corridor: Corridor | None, median_k
         rays = np.concatenate((rays, lower_rays(profile.distance_m, own[0], spacing_m)))
         offsets = np.concatenate((offsets, own_offset, own_offset))
         surfaces = np.concatenate((surfaces, own_surface, own_surface))
-        rules += tuple(
-            Rule(least.k, least.fresnel_fraction, label=f"lower antenna at {end}, {spacing_m:g} m below the main one")
-            for end in ("A", "B")
-        )
+        rules += tuple(Rule(least.k, least.fresnel_fraction, label=f"lower antenna at {end}") for end in ("A", "B"))
     return Requirements(rules, frozen_array(rays), frozen_array(offsets), frozen_array(surfaces))
 
 
