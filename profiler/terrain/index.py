@@ -25,9 +25,6 @@ Ints = NDArray[np.int64]
 _ALIGNED_CELLS = 1e-3
 """Tiles whose corners miss a common grid by less are one grid: printed cell sizes round, real shifts are larger."""
 
-_RUNS = 64
-"""Points are tested against the tiles in this many runs, which follow the path: tiles beside it are not looked at."""
-
 _SNAP_CELLS = 1e-6
 """A point this near a line of cell centres or an edge is on it: coordinates do not carry more digits."""
 
@@ -83,9 +80,12 @@ class Hits:
 
 def build_index(tiles: Sequence[Tile]) -> Index:
     """Arrange described tiles for look-up."""
+    from rasterio.transform import Affine
+
     affine = np.array([tile.affine for tile in tiles])
     size = np.array([(tile.info.width, tile.info.height) for tile in tiles], dtype=np.int64)
-    inverse = np.array([_inverse(tile.affine) for tile in tiles])
+    inverse = np.array([(~Affine(*tile.affine))[:6] for tile in tiles])
+    inverse[:, [2, 5]] -= 0.5
     groups = tuple(_group(tiles, members) for members in by_crs(tiles))
     lattice = np.full(len(tiles), -1, dtype=np.int64)
     offset = np.zeros((len(tiles), 2), dtype=np.int64)
@@ -102,12 +102,6 @@ def build_index(tiles: Sequence[Tile]) -> Index:
         offset=offset,
         around=around,
     )
-
-
-def _inverse(affine: tuple[float, ...]) -> tuple[float, ...]:
-    a, b, c, d, e, f = affine
-    det = a * e - b * d
-    return (e / det, -b / det, (b * f - e * c) / det - 0.5, -d / det, a / det, (d * c - a * f) / det - 0.5)
 
 
 def _boxes(affine: Float, size: Ints) -> Float:
@@ -169,7 +163,7 @@ def find_hits(index: Index, longitude: Float, latitude: Float) -> Hits:
     index
         The tiles.
     longitude, latitude
-        Degrees on WGS 84, shape (n,), in the order they lie along the ground (any order is right, this one is fast).
+        Degrees on WGS 84, shape (n,).
     """
     found: list[Hits] = []
     for group in index.groups:
@@ -199,29 +193,21 @@ def find_hits(index: Index, longitude: Float, latitude: Float) -> Hits:
 
 
 def _hits_in_group(index: Index, group: Group, point: Ints, x: Float, y: Float) -> list[Hits]:
-    period = group.reference.period
-    run = max(16, -(-x.size // _RUNS))
-    starts = np.arange(0, x.size, run)
-    first_x = np.repeat(x[starts], np.diff(np.append(starts, x.size)))
-    turn = _turned(x - first_x, period)
-    low_x, high_x = np.minimum.reduceat(turn, starts), np.maximum.reduceat(turn, starts)
-    low_y, high_y = np.minimum.reduceat(y, starts), np.maximum.reduceat(y, starts)
-    middle_x, middle_y = x[starts] + (low_x + high_x) / 2, (low_y + high_y) / 2
-    box = index.box[group.tiles]
-    meets = (np.abs(_turned(middle_x[:, None] - box[:, 0], period)) <= ((high_x - low_x) / 2)[:, None] + box[:, 2]) & (
-        np.abs(middle_y[:, None] - box[:, 1]) <= ((high_y - low_y) / 2)[:, None] + box[:, 3]
+    """Test the box around all the points against each tile's, and in those that meet it each point."""
+    period, box = group.reference.period, index.box[group.tiles]
+    turn = _turned(x - x[0], period)
+    half_x, half_y = np.ptp(turn) / 2, np.ptp(y) / 2
+    middle_x, middle_y = x[0] + turn.min() + half_x, y.min() + half_y
+    meets = (np.abs(_turned(middle_x - box[:, 0], period)) <= half_x + box[:, 2]) & (
+        np.abs(middle_y - box[:, 1]) <= half_y + box[:, 3]
     )
     found = []
-    for column in np.flatnonzero(meets.any(axis=0)):
-        tile = group.tiles[column]
-        runs = np.flatnonzero(meets[:, column])
-        if runs.size == starts.size:
-            chosen, tx, ty = point, x, y
-        else:
-            which = (starts[runs][:, None] + np.arange(run)).ravel()
-            which = which[which < x.size]
-            chosen, tx, ty = point[which], x[which], y[which]
-        found.append(_hits_on_tile(index, int(tile), chosen, tx, ty, period))
+    for tile in group.tiles[meets]:
+        tile_x, tile_y, wide, high = index.box[tile]
+        reach = np.flatnonzero(np.abs(y - tile_y) <= high)
+        reach = reach[np.abs(_turned(x[reach] - tile_x, period)) <= wide]
+        if reach.size:
+            found.append(_hits_on_tile(index, int(tile), point[reach], x[reach], y[reach], period))
     return found
 
 
