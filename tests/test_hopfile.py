@@ -437,6 +437,18 @@ def test_celsius(folder):
             "[availability]\nmultipath_method = 'p530-17'\n[availability.objective]\nerrored_seconds_ratio = 1e-4",
             "availability.objective.errored_threshold_offset_db = not given: must be given together",
         ),
+        ({}, "[heights.a]\ntaken_ft = 10", "heights.a.taken_ft = 10: must be a list of numbers in ft"),
+        (
+            {},
+            "[availability]\nmultipath_method = 'p530-17'\nk_percentiles = [50, 1.3]",
+            "availability.k_percentiles[0] = 50: must be pairs of numbers, like [[0.1, 0.8], [50, 1.3333]]",
+        ),
+        (
+            {},
+            "[availability]\nmultipath_method = 'p530-17'\nk_percentiles = [[50, 1.3]]\n"
+            "[confidence]\nterrain_kind = 'srtm-1'\nvary_k = true",
+            "confidence.vary_k = true: must be false where nothing says how k varies; give two or more availability",
+        ),
         ({}, "[heights.a]\ncost_per_m = -1", "heights.a.cost_per_m = -1: must be 0 to 1000000000"),
         (
             {},
@@ -462,7 +474,7 @@ def test_celsius(folder):
         (
             {},
             "[confidence]\nterrain_kind = 'srtm-1'\nvary_k = true",
-            "confidence.vary_k = true: must be false where nothing says how k varies; give availability.k_percentiles",
+            "confidence.vary_k = true: must be false where nothing says how k varies; give two or more availability.k_",
         ),
         (
             {},

@@ -172,7 +172,8 @@ def _allowed(annotation: Any, bounds: Mapping[str, float], key: str, factor: flo
         inner, _ = _plain(get_args(annotation)[0])
         if get_origin(inner) is dict:
             return f"a list of tables, each headed [[{spot.key(key)}]]"
-        return 'a list with at least one text, like ["a.tif"]' if inner is str else f"a list of numbers {unit}".strip()
+        numbers = f"a list of numbers in {unit}" if unit else "pairs of numbers, like [[0.1, 0.8], [50, 1.3333]]"
+        return 'a list with at least one text, like ["a.tif"]' if inner is str else numbers
     if origin is dict:
         return f"a table, headed [{spot.key(key)}]"
     text = _PRINTABLE if kind == "string_pattern_mismatch" else "text in quotes, not empty"

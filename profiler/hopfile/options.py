@@ -167,8 +167,10 @@ def build_confidence(raw: Raw, spot: Spot, availability: AvailabilityChoice | No
         kind = TERRAIN_ERRORS[table.terrain_kind]
         values["correlation_m"] = kind.correlation_m
         values["terrain_source"] += f"; correlated over {kind.correlation_m:g} m: {kind.correlation_source}"
-    if table.vary_k and not (availability and (availability.k_percentiles or availability.use_maps)):
-        remedy = "give availability.k_percentiles, or availability.use_maps = true"
+    percentiles = () if availability is None else availability.k_percentiles
+    by_maps = availability is not None and availability.use_maps and not percentiles
+    if table.vary_k and len(percentiles) < 2 and not by_maps:
+        remedy = "give two or more availability.k_percentiles, or availability.use_maps = true"
         raise spot.error("vary_k", True, "false where nothing says how k varies", remedy)
     with spot.blame():
         return ConfidenceChoice(**values)
