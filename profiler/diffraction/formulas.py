@@ -176,7 +176,7 @@ def rounded_obstacle_loss(
 
 
 class DoubleEdgeTerms(NamedTuple):
-    """The parts of the two-edge loss, each an array of the broadcast shape; the loss is their sum, never below 0."""
+    """The parts of the two-edge loss, each an array of the broadcast shape: J(ν1) + J(ν2) + correction + floor."""
 
     nu_1: Float
     """ν by which the edge nearer to A was charged."""
@@ -184,6 +184,8 @@ class DoubleEdgeTerms(NamedTuple):
     """ν by which the edge nearer to B was charged."""
     correction_db: Float
     """+Lc where the two edges were taken one after the other, −Tc where one was taken as predominant."""
+    floor_db: Float
+    """What it takes to reach the loss of the greater edge alone; 0 where the published terms do by themselves."""
 
 
 def double_edge_terms(
@@ -211,11 +213,11 @@ def double_edge_terms(
     grazing = (main == 0) & (other == 0)
     weight = np.where(grazing, 1.0, np.where(both_obstruct, ratio ** (2.0 * np.maximum(main, 0.0)), 0.0))
     tc = (12.0 - 20.0 * np.log10(2.0 / (1.0 - alpha / np.pi))) * weight
-    return DoubleEdgeTerms(
-        np.asarray(np.where(similar | ~first_leads, successive_1, direct_1)),
-        np.asarray(np.where(similar | first_leads, successive_2, direct_2)),
-        np.asarray(np.where(similar, lc, -tc)),
-    )
+    nu_1 = np.asarray(np.where(similar | ~first_leads, successive_1, direct_1))
+    nu_2 = np.asarray(np.where(similar | first_leads, successive_2, direct_2))
+    correction = np.asarray(np.where(similar, lc, -tc))
+    published = knife_edge_loss(nu_1) + knife_edge_loss(nu_2) + correction
+    return DoubleEdgeTerms(nu_1, nu_2, correction, np.maximum(knife_edge_loss(main) - published, 0.0))
 
 
 def double_edge_loss(
@@ -233,7 +235,8 @@ def double_edge_loss(
     * one predominant: L = J(p) + J(ν') − Tc, the edge of greater ν (p) seen from the ends, the other seen from it and
       the far end (ν') and from both ends (q), Tc = (12 − 20·log10(2/(1 − α/π)))·(q/p)^(2p), tan²α = b(a + b + c)/(ac).
 
-    The first is used where each of its losses exceeds 15 dB, the second everywhere else.
+    The first is used where each of its losses exceeds 15 dB, the second everywhere else. The loss is never less than
+    that of the greater edge alone, J(p), to which a second one can only add.
 
     Parameters
     ----------
@@ -247,7 +250,7 @@ def double_edge_loss(
     Returns
     -------
     ndarray
-        Loss over free space, dB, never below 0, the broadcast shape of the inputs.
+        Loss over free space, dB, never below that of the greater edge alone, the broadcast shape of the inputs.
 
     Raises
     ------
@@ -263,12 +266,20 @@ def double_edge_loss(
     >>> round(float(double_edge_loss(40.0, 40.0, (10e3, 10e3, 10e3), 6e9)), 2)
     37.55
 
+    Two close edges of unlike height lose little more than the greater one, here 14.23 dB; the exact value is 14.33 dB.
+
+    >>> round(float(double_edge_loss(20.0, 19.0, (30e3, 100.0, 30e3), 6.175e9)), 2)
+    14.23
+
     Notes
     -----
     Source: Rec. ITU-R P.526-15 §4.3 (from memory of the text, which calls the first useful for similar losses; the
-    switch at 15 dB is its stated validity). Against the exact double Fresnel integral, with both edges above the line,
-    the first stays within 0.5 dB and the second within 1.5 dB. Where the lesser edge is below the line, Tc is taken
-    as 0.
+    switch at 15 dB is its stated validity). Where the lesser edge is below the line, Tc is taken as 0.
+
+    The floor is this project's own: Tc of two close edges is near 6 dB even if the lesser hides behind the other and is
+    charged less than that. Against the exact double Fresnel integral, for edges above the line and 30 m to 20 km apart,
+    the published terms alone fall up to 4.3 dB short; with the floor the loss stays within 2.3 dB below and 1.5 dB
+    above, 0.6 dB in the root mean square, and within 0.6 dB where each edge is charged more than 15 dB.
     """
-    nu_1, nu_2, correction = double_edge_terms(obstruction_1_m, obstruction_2_m, spacings_m, frequency_hz)
-    return np.asarray(np.maximum(knife_edge_loss(nu_1) + knife_edge_loss(nu_2) + correction, 0.0))
+    nu_1, nu_2, correction, floor = double_edge_terms(obstruction_1_m, obstruction_2_m, spacings_m, frequency_hz)
+    return np.asarray(knife_edge_loss(nu_1) + knife_edge_loss(nu_2) + correction + floor)
