@@ -17,7 +17,7 @@ from rasterio.transform import Affine
 
 from profiler.errors import InputError
 from profiler.figures import FORMATS, frontier_figure, margin_figure, profile_figure, render, style
-from profiler.figures.places import critical_place, numbered_places, spread
+from profiler.figures.places import spread
 from profiler.figures.profile import thinned
 from profiler.figures.scale import Scale, nice_ticks
 from profiler.figures.strips import hillshade, rule_look
@@ -184,9 +184,8 @@ def test_ray_ends_at_the_antenna_centres_and_the_mark_is_at_the_critical_point(s
     axes = axes_of(profile_figure(case), "profile")
     ray = line_of(axes, "ray")
     assert ray[[0, -1], 1].tolist() == pytest.approx([case.centre_a_m, case.centre_b_m])
-    check = case.governing.check
-    at = check.critical
-    expected = [case.profile.distance_m[at] / 1e3, case.profile.surface_m[at] + check.bulge_m[at]]
+    place = case.governing.critical
+    expected = [place.distance_m / 1e3, place.surface_m + place.bulge_m]
     assert line_of(axes, "critical")[0].tolist() == pytest.approx(expected)
 
 
@@ -237,7 +236,7 @@ def test_relief_shows_the_ground_and_marks_the_places(study):
     # the left side of the path is on top
     assert (top, bottom) == pytest.approx((case.relief.offset_m[0] / 1e3, case.relief.offset_m[-1] / 1e3))
     assert axes.yaxis_inverted()
-    place = critical_place(case, case.governing)
+    place = case.governing.critical
     assert line_of(axes, "critical")[0].tolist() == pytest.approx([place.distance_m / 1e3, place.offset_m / 1e3])
 
 
@@ -290,14 +289,13 @@ def test_a_critical_point_outside_the_distances_is_said_to_be_there(study):
 def test_a_failing_rule_is_said_to_fail_by_how_much_where_and_which(study):
     case = study("fails")
     figure = profile_figure(case)
-    check = case.governing.check
-    place = case.place(check.critical)
+    place = case.governing.critical
     assert text_by_gid(figure, "verdict") == "FAILS"
-    short, where = f"{-check.surplus_m[check.critical]:.1f} m short", f"{place.distance_m / 1e3:.2f} km from A"
+    short, where = f"{-place.surplus_m:.1f} m short", f"{place.distance_m / 1e3:.2f} km from A"
     sentence = text_by_gid(figure, "sentence").replace("\n", " ")
     assert sentence.startswith(f"{short} of 1.0 F1 at k = 4/3, {where}; 2 of 2 rules fail")
     label = text_by_gid(figure, "critical").replace("\n", " ")
-    ground, cover = (float(each[check.critical]) for each in (case.profile.ground_m, case.profile.cover_m))
+    ground, cover = place.ground_m, place.cover_m
     assert f"{where} ({place.latitude:.5f}° N, {-place.longitude:.5f}° W)" in label
     assert f"ground {ground:.1f} m + cover {cover:.1f} m, {short}" in label
 
@@ -346,24 +344,18 @@ def test_filled_and_surveyed_ground_show(study):
 def test_a_critical_place_beside_the_path_is_marked_there_and_said_so(study):
     case = study("bare")
     [result] = case.rules
-    corridor = dataclasses.replace(result.corridor, distance_index=300, offset_m=7.0, surface_m=640.0, surplus_m=-4.0)
-    beside = dataclasses.replace(case, rules=(dataclasses.replace(result, corridor=corridor),))
+    aside = dataclasses.replace(
+        result.critical, index=300, distance_m=float(case.profile.distance_m[300]), offset_m=7.0, side="right",
+        ground_m=640.0, cover_m=0.0, bulge_m=float(result.check.bulge_m[300]), surplus_m=-4.0,
+    )  # fmt: skip
+    beside = dataclasses.replace(case, rules=(dataclasses.replace(result, places=(aside,)),))
     figure = profile_figure(beside)
     axes = axes_of(figure, "profile")
     bulged = 640.0 + float(result.check.bulge_m[300])
     assert line_of(axes, "critical")[0].tolist() == pytest.approx([case.profile.distance_m[300] / 1e3, bulged])
-    assert "7.0 m to the right of the path" in text_by_gid(figure, "critical").replace("\n", " ")
-    assert "surface 640.0 m" in text_by_gid(figure, "critical").replace("\n", " ")
+    assert "7.0 m right of the path" in text_by_gid(figure, "critical").replace("\n", " ")
+    assert "ground 640.0 m" in text_by_gid(figure, "critical").replace("\n", " ")
     assert line_of(axes_of(figure, "relief"), "critical")[0, 1] == pytest.approx(0.007)
-
-
-def test_clearance_of_a_place_beside_the_path_is_what_the_zone_leaves_there(study):
-    case = study("bare")
-    [result] = case.rules
-    corridor = dataclasses.replace(result.corridor, distance_index=300, offset_m=3.0, surface_m=640.0, surplus_m=-4.0)
-    place = critical_place(case, dataclasses.replace(result, corridor=corridor))
-    assert place.required_m**2 + 3.0**2 == pytest.approx(float(result.check.f1_m[300]) ** 2)
-    assert place.clearance_m == pytest.approx(place.required_m - 4.0)
 
 
 def test_without_relief_or_confidence_the_rest_stands(study):
@@ -374,13 +366,6 @@ def test_without_relief_or_confidence_the_rest_stands(study):
         f"{km}" for km in range(0, 21, 2)
     ]
     assert "not examined" in words_of(figure)
-
-
-def test_places_that_have_room_to_spare_are_not_called_tight(study):
-    for name in CASES[:3]:
-        first, *others = numbered_places(study(name))
-        widest = float(study(name).governing.check.f1_m.max())
-        assert all(each.surplus_m <= max(first.surplus_m + max(3 * widest, 10.0), 0.0) for each in others)
 
 
 # --- margin and heights -----------------------------------------------------------------------------------------------
@@ -539,8 +524,9 @@ def test_no_words_of_the_page_lie_on_the_drawings(drawn, name):
 
 def test_tight_places_side_by_side_keep_their_numbers_apart(study):
     case = study("fails")
-    check = dataclasses.replace(case.governing.check, tight=(126, 127, 128, 129, 130))
-    rules = [dataclasses.replace(each, check=check) if each is case.governing else each for each in case.rules]
+    first, where = case.governing.critical, case.profile.distance_m
+    places = tuple(dataclasses.replace(first, index=i, distance_m=float(where[i])) for i in range(126, 131))
+    rules = [dataclasses.replace(each, places=places) if each is case.governing else each for each in case.rules]
     crowded = dataclasses.replace(case, rules=tuple(rules))
     found = boxes(profile_figure(crowded))
     assert [(a[4], b[4]) for i, a in enumerate(found) for b in found[:i] if meet(a, b)] == []
