@@ -146,7 +146,8 @@ def test_unit_of_the_vertical_crs(write_raster):
 def test_plane_in_feet_without_height_unit_is_not_guessed(write_raster):
     path = write_raster("p.tif", FLAT, Affine(30, 0, 1968000, 0, -30, 200000), "EPSG:2272")
     with pytest.raises(
-        RasterError, match=r"p\.tif: declares no height unit .* may be metres or feet; state terrain\.height_unit"
+        RasterError,
+        match=r"p\.tif: declares no height unit .* may be metres or feet; set the unit of the band, or terrain\.",
     ):
         open_terrain(path)
     assert info(path, height_unit="ft").unit_factor_m == 0.3048

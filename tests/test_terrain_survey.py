@@ -1,6 +1,7 @@
 """Folder survey, classes, missing stretches and their filling, and the hash of a file."""
 
 import hashlib
+import zipfile
 
 import numpy as np
 import pytest
@@ -23,15 +24,23 @@ def test_survey_of_a_mixed_folder(write_raster):
     write_raster("f/mask.tif", np.zeros((10, 10), "uint8"), GRID)
     write_raster("f/lost.tif", heights, GRID, None)
     (folder / "bad.tif").write_bytes(b"junk")
+    (folder / "bad.zip").write_bytes(b"PK but no")
+    with zipfile.ZipFile(folder / "good.zip", "w") as archive:
+        archive.write(folder / "mask.tif", "in/mask.tif")
+        archive.writestr("in/worse.tif", b"junk")
     found = survey(folder)
     a, b = found.rasters
     assert (a.void_share, a.min_m, a.max_m) == (0.05, 5.0, 99.0)
     assert (b.void_share, b.min_m, b.max_m) == (0.0, pytest.approx(1000.05, abs=0.01), pytest.approx(1000.05, abs=0.01))
-    assert sorted(problem.split(": ")[1].split(",")[0].split(" (")[0] for problem in found.problems) == [
-        "has no coordinate reference system",
-        "not readable as a raster",
+    unreadable = "not readable as a raster (not recognized as being in a supported file format)"
+    assert [problem.removeprefix(f"{folder}/").split(";")[0].split(",")[0] for problem in found.problems] == [
+        f"bad.tif: {unreadable}",
+        f"bad.zip: {unreadable}",
+        f"good.zip/in/worse.tif: {unreadable}",
+        "lost.tif: has no coordinate reference system",
     ]
-    assert [skipped.path.name for skipped in found.skipped] == ["mask.tif"]
+    assert [skipped.name for skipped in found.skipped] == [f"{folder}/good.zip/in/mask.tif", f"{folder}/mask.tif"]
+    assert all(skipped.reason.startswith("holds 8-bit cells") for skipped in found.skipped)
     assert found.bounds == pytest.approx((10.0, 49.8, 10.2, 50.0))
     assert found.covered_share == pytest.approx(0.5, abs=0.01)  # two of the four quarters
     assert found.vertical_datums == ("EGM96 geoid", None)

@@ -91,5 +91,5 @@ def _show(found: FolderSurvey, *, color: bool) -> None:
         )
     notes = {note: None for raster in found.rasters for note in raster.info.notes}
     show_notes(screen, "Noted", tuple(notes))
-    show_notes(screen, "Left out: not heights", tuple(f"{each.path}: {each.reason}" for each in found.skipped))
+    show_notes(screen, "Left out: not heights", tuple(f"{each.name}: {each.reason}" for each in found.skipped))
     show_notes(screen, "Cannot be used", found.problems, "red")

@@ -69,15 +69,15 @@ def fetch(
     """
     raw = np.empty(col.size)
     valid = np.ones(col.size, dtype=bool) if tile.coding.masked else None
-    key = (row // tile.unit[0] << 32) | (col // tile.unit[1])
+    key = (row // tile.read_cells[0] << 32) | (col // tile.read_cells[1])
     order = np.argsort(key, kind="stable")  # wanted cells come nearly in order: this is quick
     starts = np.flatnonzero(np.diff(key[order])) + 1
     for which in np.split(order, starts) if starts.size else [slice(None)]:
         part_col, part_row = col[which], row[which]
         rows, cols = _span(part_row), _span(part_col)
-        dataset = rasters.get(tile.file.source, tile.file.path)
+        dataset = rasters.get(tile.file)
         cells, cells_valid = read_window(
-            dataset, tile.coding.band, rows, cols, path=tile.file.path, masked=tile.coding.masked
+            dataset, tile.coding.band, rows, cols, name=tile.file.name, masked=tile.coding.masked
         )
         tally.count(number, tile, rows, cols)
         at = (part_row - rows[0]) * (cols[1] - cols[0]) + (part_col - cols[0])

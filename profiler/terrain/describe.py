@@ -9,7 +9,7 @@ from typing import Any, NamedTuple
 
 import numpy as np
 
-from profiler.errors import InputError, RasterError
+from profiler.errors import InputError, RasterError, under
 from profiler.terrain.files import RasterFile
 from profiler.terrain.gdal import open_raster
 from profiler.terrain.reference import Reference, parse_reference, unit_factor
@@ -17,7 +17,7 @@ from profiler.terrain.reference import Reference, parse_reference, unit_factor
 __all__ = ["Bounds", "Coding", "NotHeightsError", "RasterInfo", "Reading", "Tile", "describe"]
 
 _PHOTO_DRIVERS = frozenset({"JPEG", "GIF", "WEBP", "BMP"})
-_SMALL_BLOCK, _UNIT_CELLS = 64, 256
+_SMALL_BLOCK, _READ_CELLS = 64, 256
 """Sides of blocks under 64 cells (strips of rows) are read together, up to about 256: each call costs 20 µs."""
 
 Affine = tuple[float, float, float, float, float, float]
@@ -118,7 +118,10 @@ class Coding:
 
 @dataclass(frozen=True, slots=True, eq=False)
 class Tile:
-    """One indexed raster: its description, and all that sampling needs without opening it again."""
+    """One indexed raster: its description, and all that sampling needs without opening it again.
+
+    `block` is rows and columns of the blocks that it is stored in, `read_cells` of the groups of them read together.
+    """
 
     info: RasterInfo
     file: RasterFile
@@ -126,7 +129,7 @@ class Tile:
     affine: Affine
     coding: Coding
     block: tuple[int, int]
-    unit: tuple[int, int]
+    read_cells: tuple[int, int]
 
 
 def describe(file: RasterFile, reading: Reading) -> Tile:
@@ -139,13 +142,12 @@ def describe(file: RasterFile, reading: Reading) -> Tile:
     RasterError
         When it is unreadable, has no CRS or no place, is a photo or classes instead of heights, or its unit is unknown.
     """
-    with open_raster(file.source, file.path) as dataset:
-        band = _band(dataset, file, reading)
-        reference = _reference(dataset, file)
-        affine = _affine(dataset, file)
-        notes: list[str] = []
-        unit, factor = ("", 1.0) if reading.classes else _unit(dataset, band, reference, file, reading, notes)
-        datum = None if reading.classes else _datum(reference, reading, notes)
+    with open_raster(file) as dataset, under(file.name):
+        band = _band(dataset, reading)
+        reference = _reference(dataset)
+        affine = _affine(dataset)
+        unit, factor, unit_notes = ("", 1.0, ()) if reading.classes else _unit(dataset, band, reference, reading)
+        datum, datum_notes = (None, ()) if reading.classes else _datum(reference, reading)
         size = (dataset.width, dataset.height)
         info = RasterInfo(
             path=file.path,
@@ -163,120 +165,112 @@ def describe(file: RasterFile, reading: Reading) -> Tile:
             vertical_datum=datum,
             pixel_is_point=dataset.tags().get("AREA_OR_POINT") == "Point",
             size_bytes=file.path.stat().st_size,
-            notes=tuple(notes),
+            notes=(*unit_notes, *datum_notes),
         )
         block = dataset.block_shapes[band - 1]
-        return Tile(info, file, reference, affine, _coding(dataset, band, factor), block, _read_unit(block))
+        return Tile(info, file, reference, affine, _coding(dataset, band, factor), block, _read_cells(block))
 
 
-def _read_unit(block: tuple[int, int]) -> tuple[int, int]:
-    rows, cols = (side if side >= _SMALL_BLOCK else side * (_UNIT_CELLS // side) for side in block)
+def _read_cells(block: tuple[int, int]) -> tuple[int, int]:
+    rows, cols = (side if side >= _SMALL_BLOCK else side * (_READ_CELLS // side) for side in block)
     return rows, cols
 
 
-def _band(dataset: Any, file: RasterFile, reading: Reading) -> int:
+def _band(dataset: Any, reading: Reading) -> int:
     """Band that holds the heights, refusing what cannot be heights."""
     from rasterio.enums import ColorInterp
 
     remedy = "give a raster of classes" if reading.classes else "give a raster of elevations"
     colours = dataset.colorinterp
     if not dataset.count:
-        raise RasterError(
-            f"{file.name}: holds {len(dataset.subdatasets)} subdatasets; extract the one with the heights"
-        )
+        raise RasterError(f"holds {len(dataset.subdatasets)} subdatasets; extract the one with the heights")
     bands = [i for i, colour in zip(dataset.indexes, colours, strict=True) if colour != ColorInterp.alpha]
     if dataset.driver in _PHOTO_DRIVERS or {ColorInterp.red, ColorInterp.green, ColorInterp.blue} & set(colours):
-        raise NotHeightsError(
-            f"{file.name}: is a photo ({len(bands)}-band colour or grey image), not heights; {remedy}"
-        )
+        raise NotHeightsError(f"is a photo ({len(bands)}-band colour or grey image), not heights; {remedy}")
     if len(bands) > 1:
         named = [
             i for i in bands if (dataset.descriptions[i - 1] or "").lower() in ("elevation", "height", "dem", "dtm")
         ]
         if len(named) != 1:
-            raise NotHeightsError(f"{file.name}: has {len(bands)} bands where one was expected; {remedy} of one band")
+            raise NotHeightsError(f"has {len(bands)} bands where one was expected; {remedy} of one band")
         bands = named
     band = bands[0]
     kind = np.dtype(dataset.dtypes[band - 1])
     if kind.kind not in "iuf":
-        raise NotHeightsError(f"{file.name}: holds {kind} cells, not real numbers; {remedy}")
+        raise NotHeightsError(f"holds {kind} cells, not real numbers; {remedy}")
     if not reading.classes:
         if colours[band - 1] == ColorInterp.palette:
-            raise NotHeightsError(f"{file.name}: holds classes or colours (it has a palette), not heights; {remedy}")
+            raise NotHeightsError(f"holds classes or colours (it has a palette), not heights; {remedy}")
         if kind.itemsize == 1 and not reading.eight_bit:
-            raise NotHeightsError(f"{file.name}: holds 8-bit cells (a photo, mask or class map), not heights; {remedy}")
+            raise NotHeightsError(f"holds 8-bit cells (a photo, mask or class map), not heights; {remedy}")
     return int(band)
 
 
-def _reference(dataset: Any, file: RasterFile) -> Reference:
+def _reference(dataset: Any) -> Reference:
     if not dataset.crs:
         raise RasterError(
-            f"{file.name}: has no coordinate reference system, so nobody can tell where it lies; assign the right one "
+            "has no coordinate reference system, so nobody can tell where it lies; assign the right one "
             "(a .prj file beside an ASCII grid, gdal_edit -a_srs for a GeoTIFF)"
         )
     try:
         return parse_reference(dataset.crs.wkt)
     except InputError as error:
-        raise RasterError(f"{file.name}: {error}; reproject it") from None
+        raise RasterError(f"{error}; reproject it") from None
 
 
-def _affine(dataset: Any, file: RasterFile) -> Affine:
-    a, b, c, d, e, f = dataset.transform[:6]
-    placed = dataset.transform[:6] != (1.0, 0.0, 0.0, 0.0, 1.0, 0.0)
-    if not placed or not math.isfinite(a + b + c + d + e + f) or a * e - b * d == 0.0:
+def _affine(dataset: Any) -> Affine:
+    a, b, c, d, e, f = affine = dataset.transform[:6]
+    if affine == (1.0, 0.0, 0.0, 0.0, 1.0, 0.0) or not math.isfinite(a + b + c + d + e + f) or a * e - b * d == 0.0:
         raise RasterError(
-            f"{file.name}: has a CRS but no corner coordinates and cell size; georeference it (a world file, gdal_edit "
+            "has a CRS but no corner coordinates and cell size; georeference it (a world file, gdal_edit "
             "-a_ullr), or warp it if it has ground control points"
         )
     return a, b, c, d, e, f
 
 
-def _unit(
-    dataset: Any, band: int, reference: Reference, file: RasterFile, reading: Reading, notes: list[str]
-) -> tuple[str, float]:
-    """Find the unit of height and its metres: what the band says, else the vertical CRS, else the user, else metres."""
+def _unit(dataset: Any, band: int, reference: Reference, reading: Reading) -> tuple[str, float, tuple[str, ...]]:
+    """Find the unit of height, its metres, and what was assumed or converted.
+
+    What the band says holds, else the vertical CRS, else the user, else metres.
+    """
     declared = (dataset.units[band - 1] or "").strip()
     try:
         factor = unit_factor(declared) if declared else reference.vertical_unit_m
     except InputError as error:
-        raise RasterError(f"{file.name}: {error}; correct the unit of the band") from None
+        raise RasterError(f"{error}; correct the unit of the band") from None
     if (
         declared
         and reference.vertical_unit_m is not None
         and not math.isclose(factor or 0.0, reference.vertical_unit_m)
     ):
         raise RasterError(
-            f"{file.name}: the band's unit is {declared} but its vertical CRS counts in units of "
+            f"the band's unit is {declared} but its vertical CRS counts in units of "
             f"{reference.vertical_unit_m:g} m; correct the one that is wrong"
         )
     if factor is not None:
         name = declared or {1.0: "m", 0.3048: "ft"}.get(factor, f"unit of {factor:.9g} m")
-        if factor != 1.0:
-            notes.append(f"heights in {name} converted to metres (1 = {factor:.9g} m)")
-        return name, factor
+        notes = () if factor == 1.0 else (f"heights in {name} converted to metres (1 = {factor:.9g} m)",)
+        return name, factor, notes
     if reading.height_unit is not None:
-        factor = unit_factor(reading.height_unit)
-        notes.append(f"declares no height unit: taken as {reading.height_unit}, as stated by the user")
-        return reading.height_unit, factor
+        note = f"declares no height unit: taken as {reading.height_unit}, as stated by the user"
+        return reading.height_unit, unit_factor(reading.height_unit), (note,)
     if reference.plane_unit_m is not None and reference.plane_unit_m != 1.0:
         raise RasterError(
-            f"{file.name}: declares no height unit and its map plane is in units of {reference.plane_unit_m:.9g} m, so "
-            "heights may be metres or feet; state terrain.height_unit in the hop file"
+            f"declares no height unit and its map plane is in units of {reference.plane_unit_m:.9g} m, so "
+            "heights may be metres or feet; set the unit of the band, or terrain.height_unit in the hop file"
         )
-    notes.append("declares no height unit: taken as metres")
-    return "m", 1.0
+    return "m", 1.0, ("declares no height unit: taken as metres",)
 
 
-def _datum(reference: Reference, reading: Reading, notes: list[str]) -> str | None:
+def _datum(reference: Reference, reading: Reading) -> tuple[str | None, tuple[str, ...]]:
+    """Find what heights count from, and what was assumed."""
     if reference.vertical_datum is not None:
-        if reference.vertical_datum.startswith("ellipsoid"):
-            notes.append(f"heights above the {reference.vertical_datum}, not above sea level")
-        return reference.vertical_datum
+        above = f"heights above the {reference.vertical_datum}, not above sea level"
+        return reference.vertical_datum, (above,) if reference.vertical_datum.startswith("ellipsoid") else ()
     if reading.vertical_datum is not None:
-        notes.append(f"declares no vertical datum: taken as {reading.vertical_datum}, as stated by the user")
-        return reading.vertical_datum
-    notes.append("declares no vertical datum")
-    return None
+        note = f"declares no vertical datum: taken as {reading.vertical_datum}, as stated by the user"
+        return reading.vertical_datum, (note,)
+    return None, ("declares no vertical datum",)
 
 
 def _coding(dataset: Any, band: int, factor: float) -> Coding:

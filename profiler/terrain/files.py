@@ -39,24 +39,28 @@ class RasterFile:
 def find_rasters(paths: Sequence[Path]) -> list[RasterFile]:
     """List the rasters that files, folders (walked to the bottom) and zip archives hold, in a stable order.
 
+    An archive that cannot be listed is given as a raster itself: whoever opens it says what is wrong with it.
+
     Raises
     ------
     InputError
         When a path does not exist, or none is given.
     RasterError
-        When a named archive cannot be listed, or nothing in the paths looks like a raster.
+        When nothing in the paths looks like a raster.
     """
+    if not paths:
+        raise InputError("no path given: give a raster, or a folder of rasters")
     found: dict[str, RasterFile] = {}
     for path in paths:
         if not path.exists():
-            raise InputError(f"terrain path {path}: no such file or folder; give a raster, or a folder of rasters")
+            raise InputError(f"{path}: no such file or folder; give a raster, or a folder of rasters")
         files = _walk(path) if path.is_dir() else iter([path])
         for file in files:
             for raster in _rasters_in(file, named=not path.is_dir()):
                 found.setdefault(raster.source, raster)
     if not found:
-        where = ", ".join(str(path) for path in paths) or "no path given"
-        raise RasterError(f"terrain: {where}: holds no raster (GeoTIFF, .hgt, DTED, .asc, .vrt, …); give one that does")
+        where = ", ".join(str(path) for path in paths)
+        raise RasterError(f"{where}: holds no raster (GeoTIFF, .hgt, DTED, .asc, .vrt, …); give one that does")
     return list(found.values())
 
 
@@ -70,12 +74,8 @@ def _walk(folder: Path) -> Iterator[Path]:
 
 def _rasters_in(path: Path, *, named: bool) -> Iterator[RasterFile]:
     suffix = path.suffix.lower()
-    if suffix == ".zip":
-        try:
-            with zipfile.ZipFile(path) as archive:
-                members = sorted(archive.namelist())
-        except (zipfile.BadZipFile, OSError) as error:
-            raise RasterError(f"{path}: not a readable zip archive ({error}); get it again, or leave it out") from error
+    members = _members(path) if suffix == ".zip" else None
+    if members is not None:
         for member in members:
             name = Path(member)
             if not name.name.startswith(".") and name.suffix.lower() in _SUFFIXES - {".zip", ".gz"}:
@@ -85,6 +85,15 @@ def _rasters_in(path: Path, *, named: bool) -> Iterator[RasterFile]:
             yield RasterFile(path, "", f"/vsigzip/{path.as_posix()}", named)
     else:
         yield RasterFile(path, "", str(path), named)
+
+
+def _members(archive: Path) -> list[str] | None:
+    """Names in a zip archive, sorted; None when it cannot be listed."""
+    try:
+        with zipfile.ZipFile(archive) as opened:
+            return sorted(opened.namelist())
+    except (zipfile.BadZipFile, OSError):
+        return None
 
 
 def file_hash(path: Path) -> str:

@@ -6,13 +6,13 @@ import contextlib
 import warnings
 from collections import OrderedDict
 from collections.abc import Iterator
-from pathlib import Path
 from typing import Any
 
 import numpy as np
 from numpy.typing import NDArray
 
 from profiler.errors import RasterError
+from profiler.terrain.files import RasterFile
 
 __all__ = ["OpenRasters", "gdal_session", "open_raster", "read_window"]
 
@@ -36,8 +36,8 @@ def gdal_session() -> Iterator[None]:
         yield
 
 
-def open_raster(source: str, path: Path) -> Any:
-    """Open what GDAL calls `source`; `path` is the file to name if it cannot be read.
+def open_raster(file: RasterFile) -> Any:
+    """Open a raster.
 
     Raises
     ------
@@ -50,16 +50,17 @@ def open_raster(source: str, path: Path) -> Any:
     try:
         with warnings.catch_warnings():
             warnings.simplefilter("ignore", NotGeoreferencedWarning)
-            return rasterio.open(source)
+            return rasterio.open(file.source)
     except (RasterioError, ValueError) as error:
+        reason = _first_line(error).removeprefix(f"'{file.source}' ").rstrip(".")
         raise RasterError(
-            f"{path}: not readable as a raster ({_first_line(error)}); the file is damaged or in a format that "
-            "GDAL does not read: get it again, or leave it out"
+            f"{file.name}: not readable as a raster ({reason}); the file is damaged or in a format that GDAL does not "
+            "read: get it again, or leave it out"
         ) from error
 
 
 def read_window(
-    dataset: Any, band: int, rows: tuple[int, int], cols: tuple[int, int], *, path: Path, masked: bool
+    dataset: Any, band: int, rows: tuple[int, int], cols: tuple[int, int], *, name: str, masked: bool
 ) -> tuple[NDArray[Any], NDArray[np.bool_] | None]:
     """Raw cells of rows[0]:rows[1], cols[0]:cols[1], and where the raster's own mask band is valid (None: no mask)."""
     from rasterio.errors import RasterioError
@@ -70,7 +71,7 @@ def read_window(
         valid = dataset.read_masks(band, window=window) != 0 if masked else None
     except RasterioError as error:
         raise RasterError(
-            f"{path}: cannot be read at rows {rows[0]} to {rows[1] - 1}, columns {cols[0]} to {cols[1] - 1} "
+            f"{name}: cannot be read at rows {rows[0]} to {rows[1] - 1}, columns {cols[0]} to {cols[1] - 1} "
             f"({_first_line(error.__cause__ or error)}); the file is damaged or cut short: get it again"
         ) from error
     return cells, valid
@@ -81,21 +82,21 @@ def _first_line(error: BaseException) -> str:
 
 
 class OpenRasters:
-    """Open datasets by GDAL name, the least recently used closed first, so that thousands of tiles need few handles."""
+    """Open datasets, the least recently used closed first, so that thousands of tiles need few handles."""
 
     __slots__ = ("_datasets",)
 
     def __init__(self) -> None:
-        self._datasets: OrderedDict[str, Any] = OrderedDict()
+        self._datasets: OrderedDict[RasterFile, Any] = OrderedDict()
 
-    def get(self, source: str, path: Path) -> Any:
+    def get(self, file: RasterFile) -> Any:
         """Return the open dataset, opening it if need be."""
-        dataset = self._datasets.get(source)
+        dataset = self._datasets.get(file)
         if dataset is None:
-            dataset = self._datasets[source] = open_raster(source, path)
+            dataset = self._datasets[file] = open_raster(file)
             if len(self._datasets) > _HANDLES:
                 self._datasets.popitem(last=False)[1].close()
-        self._datasets.move_to_end(source)
+        self._datasets.move_to_end(file)
         return dataset
 
     def close(self) -> None:

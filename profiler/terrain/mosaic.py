@@ -212,7 +212,7 @@ def describe_all(paths: Sequence[Path], reading: Reading) -> tuple[list[Tile], l
                 if file.named:
                     raise
                 refused = refused or error
-                skipped.append(Skipped(file.path, str(error)))
+                skipped.append(Skipped.because(file, error))
         tiles = place(tiles)
     if not tiles and refused is not None:
         raise refused

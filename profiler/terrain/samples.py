@@ -5,12 +5,14 @@ from __future__ import annotations
 from collections.abc import Sequence
 from dataclasses import dataclass
 from pathlib import Path
+from typing import Self
 
 import numpy as np
 from numpy.typing import NDArray
 
 from profiler.errors import DatumError
-from profiler.terrain.describe import RasterInfo, Tile
+from profiler.terrain.describe import NotHeightsError, RasterInfo, Tile
+from profiler.terrain.files import RasterFile
 from profiler.terrain.index import Ints
 from profiler.terrain.reference import datum_key
 from profiler.terrain.sampling import Ground
@@ -21,10 +23,21 @@ __all__ = ["Samples", "Skipped", "SourceUse", "gather_samples"]
 
 @dataclass(frozen=True, slots=True)
 class Skipped:
-    """A file in a folder that was left out, and why: it holds something other than heights."""
+    """A file in a folder (or a member of an archive) that was left out, and why: it holds no heights."""
 
     path: Path
+    member: str
     reason: str
+
+    @classmethod
+    def because(cls, file: RasterFile, error: NotHeightsError) -> Self:
+        """Take the reason from the error that describing the file raised, without its name."""
+        return cls(file.path, file.member, str(error).removeprefix(f"{file.name}: "))
+
+    @property
+    def name(self) -> str:
+        """What messages call it."""
+        return f"{self.path}/{self.member}" if self.member else str(self.path)
 
 
 @dataclass(frozen=True, slots=True)

@@ -78,7 +78,7 @@ class FolderSurvey:
     size_bytes: int
 
 
-def survey(paths: Sequence[Path] | Path, *, read_heights: bool = True, eight_bit: bool = False) -> FolderSurvey:
+def survey(paths: Sequence[Path] | Path, *, read_heights: bool = True) -> FolderSurvey:
     r"""Describe every raster under the paths without stopping at a bad one.
 
     Parameters
@@ -87,8 +87,6 @@ def survey(paths: Sequence[Path] | Path, *, read_heights: bool = True, eight_bit
         Rasters, archives, folders.
     read_heights
         Read every cell, for voids and heights; without, only metadata is read.
-    eight_bit
-        Take 8-bit cells for heights, as in `open_terrain`.
 
     Raises
     ------
@@ -109,7 +107,6 @@ def survey(paths: Sequence[Path] | Path, *, read_heights: bool = True, eight_bit
     >>> found.problems[0].split("/")[-1].split(",")[0]
     'lost.asc: has no coordinate reference system'
     """
-    reading = Reading(eight_bit=eight_bit, height_unit=None)
     found: list[Tile] = []
     tiles: list[Tile] = []
     rasters: list[RasterSurvey] = []
@@ -118,9 +115,9 @@ def survey(paths: Sequence[Path] | Path, *, read_heights: bool = True, eight_bit
     with gdal_session():
         for file in find_rasters([paths] if isinstance(paths, Path) else paths):
             try:
-                found.append(describe(file, reading))
+                found.append(describe(file, Reading()))
             except NotHeightsError as error:
-                skipped.append(Skipped(file.path, str(error)))
+                skipped.append(Skipped.because(file, error))
             except RasterError as error:
                 problems.append(str(error))
         for tile in place(found):
@@ -138,13 +135,13 @@ def survey(paths: Sequence[Path] | Path, *, read_heights: bool = True, eight_bit
 def _survey_tile(tile: Tile) -> RasterSurvey:
     """Read all cells in bands of whole blocks."""
     info, coding = tile.info, tile.coding
-    rows = max(1, _PIECE_CELLS // (info.width * tile.unit[0])) * tile.unit[0]
+    rows = max(1, _PIECE_CELLS // (info.width * tile.read_cells[0])) * tile.read_cells[0]
     lowest, highest, known, tally = math.inf, -math.inf, 0, Tally()
-    with open_raster(tile.file.source, info.path) as dataset:
+    with open_raster(tile.file) as dataset:
         for top in range(0, info.height, rows):
             span = (top, min(top + rows, info.height))
             cells, valid = read_window(
-                dataset, coding.band, span, (0, info.width), path=info.path, masked=coding.masked
+                dataset, coding.band, span, (0, info.width), name=info.name, masked=coding.masked
             )
             height = to_metres(
                 tile,
