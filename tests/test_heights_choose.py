@@ -113,6 +113,54 @@ def test_a_notice_threshold_is_worth_a_taller_other_tower():
     assert without.antenna_a_m / FOOT_M == pytest.approx(405)
 
 
+def test_towers_with_absurdly_many_positions_are_refused_by_name():
+    fine = TowerChoice(highest_m=1999, step_m=0.01)
+    with pytest.raises(
+        InputError, match=r"^heights\.b\.step_m = 0\.01: must leave at most 5000 positions from 1 to 1999 m"
+    ):
+        cheapest(HILL, TowerChoice(), fine)
+    assert cheapest(HILL, TowerChoice(), TowerChoice(step_m=0.1)).cost > 0
+
+
+@given(regions(), towers(), towers(), st.sampled_from([3.0, 6.0, 12.0, 4.5, 6.096]))
+def test_with_diversity_both_antennas_of_a_tower_stand_on_free_positions(region, tower_a, tower_b, spacing):
+    """Brute force over all pairs of main positions whose lower position is free too is the second opinion."""
+    whole = [abs(spacing / tower.step_m - round(spacing / tower.step_m)) < 1e-7 for tower in (tower_a, tower_b)]
+    if not all(whole):
+        with pytest.raises(
+            InputError, match=r"^availability\.diversity\.spacing_m = .* whole number of steps of heights"
+        ):
+            cheapest(region, tower_a, tower_b, spacing_m=spacing)
+        return
+    mains = [
+        [height for height in free_positions(tower) if np.abs(free_positions(tower) - height + spacing).min() < 1e-6]
+        for tower in (tower_a, tower_b)
+    ]
+    good = [pair for pair in itertools.product(*mains) if surplus(region, *pair) >= -ROUNDING_M]
+    found = cheapest(region, tower_a, tower_b, spacing_m=spacing)
+    if isinstance(found, NoPair):
+        assert not good
+        return
+    least = min(float(height_cost(tower_a, a) + height_cost(tower_b, b)) for a, b in good)
+    assert found.cost == pytest.approx(least, abs=1e-6)
+    for main, tower in ((found.antenna_a_m, tower_a), (found.antenna_b_m, tower_b)):
+        assert main - spacing >= tower.lowest_m - ROUNDING_M
+        assert np.abs(free_positions(tower) - (main - spacing)).min() < ROUNDING_M
+
+
+def test_a_tower_too_short_for_the_spacing_is_said_to_be():
+    """Positions of 20 to 28 m hold no two that are 10 m apart."""
+    short = TowerChoice(lowest_m=20, highest_m=28)
+    found = cheapest(HILL, TowerChoice(), short, spacing_m=10)
+    assert found.reason == "no pair: tower B offers no two positions 10 m apart for the diversity pair, 20 to 28 m"
+    assert not found.taken_to_blame
+    taken = cheapest(HILL, TowerChoice(highest_m=90), TowerChoice(taken_m=(75,), taken_clearance_m=70), spacing_m=10)
+    assert taken.reason == (
+        "no pair: every position of tower B is taken, or too close to a taken one, or the one 10 m below it is"
+    )
+    assert taken.taken_to_blame
+
+
 def test_equally_cheap_pairs_give_the_least_taller_antenna():
     region = clearing_region([0, 5e3, 10e3], [0, 30, 0], 0, 0)
     assert cheapest(region, TowerChoice(), TowerChoice()) == Choice(30.0, 30.0, 60.0)
@@ -135,7 +183,7 @@ def test_taken_positions_push_the_antenna_up_or_block_the_tower():
     assert blocked.best_a_m == 66
     assert blocked.remedies[-1] == "free taken positions: the towers are high enough without them"
     full = cheapest(HILL, TowerChoice(highest_m=3, taken_m=(2,), taken_clearance_m=5), fixed)
-    assert full.reason == "no pair clears: every position of tower A is taken, or too close to a taken one"
+    assert full.reason == "no pair: every position of tower A is taken, or too close to a taken one"
     assert math.isnan(full.best_a_m)
     assert not full.taken_to_blame
 
@@ -211,8 +259,10 @@ def test_positions_are_whole_steps_and_a_zero_range_is_one_height():
 
 def test_contradictory_limits_are_refused():
     narrow = TowerChoice(lowest_m=30.2, highest_m=30.8)
-    with pytest.raises(InputError, match=r"lowest_m = 30\.2, highest_m = 30\.8: must hold a whole step of 1 m"):
-        cheapest(HILL, narrow, TowerChoice())
+    for towers, end in (((narrow, TowerChoice()), "a"), ((TowerChoice(), narrow), "b")):
+        limits = rf"^heights\.{end}\.lowest_m = 30\.2, heights\.{end}\.highest_m = 30\.8: must hold a whole step of 1 m"
+        with pytest.raises(InputError, match=limits):
+            cheapest(HILL, *towers)
     assert isinstance(cheapest_exact(HILL, narrow, TowerChoice(highest_m=20)), NoPair)  # needs no step
     with pytest.raises(InputError, match="highest_m = 5: must be at least lowest_m = 10"):
         TowerChoice(lowest_m=10, highest_m=5)

@@ -5,20 +5,27 @@ from functools import partial
 
 import numpy as np
 import pytest
+from hypothesis import given
+from hypothesis import strategies as st
 
 from profiler.diffraction import delta_bullington, knife_edge_loss
 from profiler.errors import InputError
-from profiler.geometry import fresnel_radius
+from profiler.geometry import check_rule, fresnel_radius
 from profiler.heights import (
     Choice,
     NoPair,
+    cheapest,
+    cheapest_by_trial,
     check_diversity,
     clearing_region,
-    heights_for_loss,
     heights_within,
     least_equal,
     least_ray,
+    loss_excess,
+    lower_rays,
+    lower_rules,
     mounting_sheet,
+    surplus,
 )
 from profiler.models import Rule, TowerChoice
 from profiler.units import MEAN_EARTH_RADIUS_M
@@ -33,34 +40,71 @@ def edge_loss(centre_a, centre_b):
     return float(knife_edge_loss((160 - ray) * math.sqrt(2 / 0.049965 * (1 / 4e3 + 1 / 6e3))))
 
 
+def bare_edge(limit_db, surfaces_m=(100, 100)):
+    """Hold the loss over the knife edge to a limit, sites at 100 m."""
+    return loss_excess(edge_loss, limit_db, grounds_m=(100, 100), surfaces_m=surfaces_m)
+
+
 def test_grazing_a_knife_edge_is_the_heights_for_its_published_loss():
     """J(0) = 6.03 dB (Rec. ITU-R P.526-15 §4.1), so a limit of 6.03 dB asks for the grazing ray, to 0.02 m.
 
     J falls by 7.9 dB per unit of ν there, and ν by 0.129 per metre: the third digit of 6.03 is 0.005 dB, 5 mm.
     """
     tower = TowerChoice(lowest_m=1, highest_m=150)
-    found = heights_for_loss(edge_loss, 6.03, grounds_m=(100, 100), surfaces_m=(100, 100), tower_a=tower, tower_b=tower)
+    found = heights_within(bare_edge(6.03), tower, tower)
     grazing = clearing_region(EDGE_X, [100, 160, 100], 100, 100)
     assert found.least_equal_m == pytest.approx(least_equal(grazing).height_m, abs=0.02)
     assert found.holds_above
     assert isinstance(found.cheapest, Choice)
 
 
-def test_every_pair_of_the_staircase_is_good_and_a_step_less_is_not():
-    tower_a, tower_b = TowerChoice(step_m=5 * FOOT_M), TowerChoice(taken_m=(61,), cost_per_m=3)
-    found = heights_for_loss(
-        edge_loss, 3.0, grounds_m=(100, 100), surfaces_m=(100, 112), tower_a=tower_a, tower_b=tower_b
-    )
-    loss = np.array([edge_loss(100 + a, 100 + b) for a, b in found.frontier_m])
-    assert np.all(loss <= 3.0)
-    lower = [edge_loss(100 + a, 100 + b - 1) for a, b in found.frontier_m if b not in (12, 61 + 1)]
-    assert min(lower) > 3.0
+@pytest.mark.parametrize("surface_b_m", [100, 112])
+@pytest.mark.parametrize("step_m", [0.1, 1.0, 5 * FOOT_M])
+def test_every_pair_found_is_good_and_no_pair_around_the_cheapest_is_cheaper(step_m, surface_b_m):
+    """Loss over an edge falls strictly with either height, so around the cheapest pair all cheaper ones are bad."""
+    tower_a, tower_b = TowerChoice(step_m=step_m), TowerChoice(taken_m=(61,), cost_per_m=3)
+    found = heights_within(bare_edge(3.0, (100, surface_b_m)), tower_a, tower_b)
+    assert max(edge_loss(100 + a, 100 + b) for a, b in found.frontier_m) <= 3.0
     assert np.all(np.diff(found.frontier_m[:, 0]) > 0)
     assert np.all(np.diff(found.frontier_m[:, 1]) < 0)
-    assert found.frontier_m[:, 1].min() == 12  # the surface at B, never asked below it
-    assert 61 not in found.frontier_m[:, 1]
-    cost = found.frontier_m @ [1, 3]
-    assert found.cheapest.cost == pytest.approx(cost.min())
+    assert found.frontier_m[:, 1].min() > surface_b_m - 100  # never inside the cover
+    best = found.cheapest
+    for a in best.antenna_a_m + step_m * np.arange(-20, 21):
+        for b in best.antenna_b_m + np.arange(-6, 7):
+            good = 1 <= a <= 150 and b > surface_b_m - 100 and b != 61 and edge_loss(100 + a, 100 + b) <= 3.0
+            assert not good or a + 3 * b >= best.cost - 1e-6
+
+
+@pytest.mark.parametrize(("step_m", "highest_m"), [(1.0, 60), (0.1, 300), (1.0, 1999)])
+def test_the_number_of_trials_is_bounded_and_counted(step_m, highest_m):
+    asked = []
+
+    def excess(a, b):
+        asked.append((a, b))
+        return edge_loss(100 + a, 100 + b) - 3.0
+
+    tower = TowerChoice(step_m=step_m, highest_m=highest_m)
+    found = heights_within(excess, tower, tower)
+    assert found.trials == len(asked) == len(set(asked)) < 260
+
+
+def test_the_step_just_below_a_cost_threshold_is_among_the_pairs_tried_first():
+    """14 CFR 77.9(a) as an example: what stands above 60.96 m costs more, so A takes the last step under it."""
+    notice = TowerChoice(cost_per_m=10, step_m=0.1, threshold_m=60.96, threshold_cost=4000)
+    found = heights_within(bare_edge(3.0), notice, TowerChoice(cost_per_m=15, step_m=0.1))
+    assert found.cheapest.antenna_a_m == pytest.approx(60.9)
+    lower = edge_loss(100 + 60.9, 100 + found.cheapest.antenna_b_m - 0.1)
+    assert lower > 3.0 >= edge_loss(160.9, 100 + found.cheapest.antenna_b_m)
+
+
+def test_trial_agrees_with_the_exact_choice_where_the_limit_is_a_straight_line():
+    """The cheapest of the clearing region, found by trial: the same pair, or one dearer by less than a coarse step."""
+    region = clearing_region(EDGE_X, [100, 160, 100], 100, 100)
+    towers = TowerChoice(cost_per_m=2, step_m=0.5), TowerChoice(cost_per_m=1.1, step_m=0.5)
+    free = [np.arange(2, 301) * 0.5] * 2
+    choice, _ = cheapest_by_trial(lambda a, b: -float(surplus(region, a, b)), *free, *towers)
+    exact = cheapest(region, *towers)
+    assert exact.cost <= choice.cost <= exact.cost + (2 + 1.1) * 150 / 23
 
 
 def test_loss_limit_on_a_real_profile(reference):
@@ -75,12 +119,12 @@ def test_loss_limit_on_a_real_profile(reference):
 
     ends = float(ground[0]), float(ground[-1])
     tower = TowerChoice(lowest_m=2, highest_m=80, step_m=2)
-    found = heights_for_loss(loss, 6.0, grounds_m=ends, surfaces_m=ends, tower_a=tower, tower_b=tower)
+    found = heights_within(loss_excess(loss, 6.0, grounds_m=ends, surfaces_m=ends), tower, tower)
     h = found.least_equal_m
     assert loss(ends[0] + h, ends[1] + h) <= 6.0 < loss(ends[0] + h - 0.02, ends[1] + h - 0.02)
     for a, b in found.frontier_m:
         assert loss(ends[0] + a, ends[1] + b) <= 6.0
-    stricter = heights_for_loss(loss, 1.0, grounds_m=ends, surfaces_m=ends, tower_a=tower, tower_b=tower)
+    stricter = heights_within(loss_excess(loss, 1.0, grounds_m=ends, surfaces_m=ends), tower, tower)
     assert stricter.least_equal_m > h
     # 6 dB is about grazing, the full first zone costs nothing: the clearance rule asks for more than 6 dB does
     zone = clearing_region(distance, least_ray(distance, ground, 6e9, [Rule(4 / 3, 1.0)]), *ends)
@@ -89,7 +133,7 @@ def test_loss_limit_on_a_real_profile(reference):
 
 def test_a_limit_that_cannot_be_met_says_by_how_much():
     tower = TowerChoice(highest_m=20)
-    found = heights_for_loss(edge_loss, 5.0, grounds_m=(100, 100), surfaces_m=(100, 100), tower_a=tower, tower_b=tower)
+    found = heights_within(bare_edge(5.0), tower, tower)
     over = edge_loss(120, 120) - 5.0
     assert found.least_equal_m is None
     assert found.frontier_m.shape == (0, 2)
@@ -102,7 +146,7 @@ def test_a_limit_that_cannot_be_met_says_by_how_much():
 
 def test_an_antenna_in_its_own_cover_is_said_to_be():
     tower = TowerChoice(highest_m=20)
-    found = heights_for_loss(edge_loss, 50.0, grounds_m=(100, 100), surfaces_m=(130, 100), tower_a=tower, tower_b=tower)
+    found = heights_within(bare_edge(50.0, (130, 100)), tower, tower)
     assert "an antenna stands inside its own cover" in found.cheapest.reason
 
 
@@ -117,18 +161,24 @@ def test_an_objective_that_is_not_monotone_is_reported():
 def test_searches_with_nothing_to_search():
     full = TowerChoice(highest_m=3, taken_m=(2,), taken_clearance_m=9)
     found = heights_within(lambda a, b: -1.0, full, TowerChoice())
-    assert found.cheapest.reason == "no pair: every position of tower A is taken, or too close to one"
+    assert found.cheapest.reason == "no pair: every position of tower A is taken, or too close to a taken one"
     apart = heights_within(lambda a, b: -1.0, TowerChoice(highest_m=10), TowerChoice(lowest_m=20, highest_m=40))
     assert apart.least_equal_m is None  # no height is in both ranges
     assert apart.cheapest == Choice(1.0, 20.0, 21.0)
     assert math.isclose(heights_within(lambda a, b: -1.0, *[TowerChoice()] * 2).least_equal_m, 1.0)
-    with pytest.raises(InputError, match=r"limit_db = -1: must be 0 dB or more"):
-        heights_for_loss(edge_loss, -1, grounds_m=(0, 0), surfaces_m=(0, 0), tower_a=full, tower_b=full)
+    with pytest.raises(InputError, match=r"limit_db = -1: must be finite and 0 dB or more"):
+        bare_edge(-1)
 
 
 def diversity(**changes):
-    given = {"antenna_a_m": 70, "antenna_b_m": 60, "spacing_m": 10, "obstruction": "isolated", "median_k": 4 / 3}
-    return check_diversity([0, 15e3, 40e3], [0, 40, 0], 0, 0, 6e9, **(given | changes))
+    given = {"antenna_a_m": 70, "antenna_b_m": 60, "spacing_m": 10, "obstruction": "isolated"} | changes
+    return check_lower([0, 15e3, 40e3], [0, 40, 0], **given)
+
+
+def check_lower(distance, surface, *, obstruction, **given):
+    """Hold lower antennas against a bare profile at k = 4/3 and 6 GHz, sites at 0 m."""
+    rays = least_ray(distance, surface, 6e9, lower_rules(obstruction, 4 / 3))
+    return check_diversity(distance, rays, 0, 0, 6e9, obstruction=obstruction, **given)
 
 
 @pytest.mark.parametrize(
@@ -175,44 +225,55 @@ def test_raising_the_main_antenna_as_told_clears_the_lower_one():
 
 
 def test_diversity_with_no_way_out_says_so():
-    trees = check_diversity(
-        [0, 15e3, 40e3],
-        [0, 0, 80],
-        0,
-        0,
-        6e9,
-        antenna_a_m=70,
-        antenna_b_m=60,
-        spacing_m=10,
-        obstruction="extended",
-        median_k=4 / 3,
+    trees = check_lower(
+        [0, 15e3, 40e3], [0, 0, 80], antenna_a_m=70, antenna_b_m=60, spacing_m=10, obstruction="extended"
     )
     assert "cannot be helped by height" in trees[0].notes[0]
     assert "space them" not in trees[1].notes[0]
     with pytest.raises(InputError, match='obstruction = \'hill\': must be "isolated" or "extended"'):
         diversity(obstruction="hill")
-    with pytest.raises(InputError, match="spacing_m = 0: must be more than 0 m"):
+    with pytest.raises(InputError, match="spacing_m = 0: must be finite and more than 0 m"):
         diversity(spacing_m=0)
 
 
 def test_a_lower_antenna_in_the_ground_is_a_finding_not_an_error():
     """Main antennas too short for the spacing, over a valley that asks for nothing: the ground itself is the limit."""
-    ends = check_diversity(
-        [0, 5e3, 10e3],
-        [0, -200, 0],
-        0,
-        0,
-        6e9,
-        antenna_a_m=8,
-        antenna_b_m=12,
-        spacing_m=10,
-        obstruction="isolated",
-        median_k=4 / 3,
-    )
+    valley = {"antenna_a_m": 8, "antenna_b_m": 12, "spacing_m": 10, "obstruction": "isolated"}
+    ends = check_lower([0, 5e3, 10e3], [0, -200, 0], **valley)
     assert [end.clears for end in ends] == [False, True]
     assert ends[0].notes[0] == (
         "A: the lower antenna at -2.00 m needs 0.00 m: raise the main antenna to 10.00 m, or space them by 8.00 m"
     )
+    on_tower = check_lower([0, 5e3, 10e3], [0, -200, 0], **valley, lowest_m=(5.0, 5.0))
+    assert [(end.clears, end.least_m) for end in on_tower] == [(False, 5.0), (False, 5.0)]
+    assert on_tower[1].main_for_spacing_m == 15.0
+
+
+heights = st.floats(0, 150)
+
+
+@given(
+    st.lists(st.floats(0, 80), min_size=3, max_size=12),
+    st.sampled_from(["isolated", "extended"]),
+    heights,
+    heights,
+    st.floats(1, 30),
+)
+def test_the_region_with_lower_rays_is_where_both_lower_antennas_clear(surface, obstruction, a, b, spacing):
+    """The rays from each lower antenna to the far main one, held by the forward model, against the region."""
+    distance = np.linspace(0, 30e3, len(surface))
+    rule = lower_rules(obstruction, 4 / 3)[0]
+    ray = least_ray(distance, surface, 6e9, [rule])
+    region = clearing_region(distance, lower_rays(distance, ray[0], spacing), 0, 0)
+    forward = [
+        float(check_rule(distance, surface, a - down_a, b - down_b, 6e9, rule).surplus_m.min())
+        for down_a, down_b in ((spacing, 0), (0, spacing))
+    ]
+    assert float(surplus(region, a, b)) == pytest.approx(min(forward), abs=1e-8)
+    ends = check_lower(distance, surface, obstruction=obstruction, antenna_a_m=a, antenna_b_m=b, spacing_m=spacing)
+    if abs(min(forward)) > 1e-4:
+        above_own = a >= surface[0] and b >= surface[-1]
+        assert (min(forward) >= 0) == (above_own and all(end.clears for end in ends))
 
 
 def sheet(**changes):
@@ -230,8 +291,9 @@ def test_the_sheet_rounds_up_converts_and_checks_again():
     assert a.centre_ft == pytest.approx(312.3 / FOOT_M + 155)
     assert b.ground_ft == pytest.approx(951.44, abs=0.005)  # 290/0.3048
     assert found.passes
-    assert found.checks[0].rule.label == "full"
-    assert found.checks[0].surplus_m[1] == pytest.approx((a.centre_m + 336) / 2 - 300 - 23.54 - 22.35, abs=0.01)
+    assert found.held[0].check.rule.label == "full"
+    assert not found.beside
+    assert found.held[0].check.surplus_m[1] == pytest.approx((a.centre_m + 336) / 2 - 300 - 23.54 - 22.35, abs=0.01)
     assert not sheet(antenna_a_m=20, antenna_b_m=20).passes
 
 
@@ -257,3 +319,29 @@ def test_exactly_at_the_cover_passes_up_to_rounding():
         tower_b=TowerChoice(),
     )
     assert found.passes
+
+
+def test_the_sheet_looks_beside_the_path_and_down_to_the_lower_antennas():
+    """A wall of 20 m stands 10 m to the right at the middle: on the path nothing, beside it less than F1 is left."""
+    offset = np.array([[0, 0, 0], [-10, 0, 10], [0, 0, 0]])
+    beside = np.array([[0, 0, 0], [0, 0, 20], [0, 0, 0]])
+    bare = {"tower_a": TowerChoice(), "tower_b": TowerChoice(), "antenna_a_m": 50, "antenna_b_m": 50}
+    path = ([0, 20e3, 40e3], [0, 0, 0], 0, 0, 6e9, [Rule(4 / 3, 1.0)])
+    assert mounting_sheet(*path, **bare).passes  # 50 m over 23.54 m of bulge and 22.35 m of F1
+    walled = mounting_sheet(*path, **bare, corridor=(offset, beside))
+    assert walled.beside
+    assert not walled.passes
+    # ray 50 - bulge 23.54 - wall 20 - sqrt(22.35² - 10²) = -13.53 m
+    assert walled.held[0].surplus_m == pytest.approx(-13.53, abs=0.02)
+    lower = lower_rules("extended", 4 / 3)[0]
+    pair = mounting_sheet(*path, **bare, spacing_m=12, lower_rule=lower)
+    assert (pair.end_a.lower_m, pair.end_b.lower_m) == (38, 38)
+    assert [held.ray for held in pair.held] == ["main", "lower A", "lower B"]
+    # the middle of a ray from 38 m to 50 m: 44 - 23.54 - 0.3 x 22.35 = 13.76 m
+    assert pair.held[1].check.surplus_m[1] == pytest.approx(13.76, abs=0.02)
+    assert pair.passes
+    # 56 m apart both go up to 57 m, the lower ones to 1 m: 29 - 23.54 is 5.46 m, where 0.3 F1 is 6.70 m
+    deep = mounting_sheet(*path, **bare, spacing_m=56, lower_rule=lower)
+    assert (deep.end_a.antenna_m, deep.end_a.lower_m) == (57, 1)
+    assert deep.held[0].passes
+    assert not deep.passes

@@ -86,7 +86,7 @@ def _show_answer(screen: Console, plan: HeightsPlan, scale: Scale) -> None:
     if answer.chance is not None:
         doubt = f"{answer.chance.value:.1%} ({answer.chance.low:.1%} to {answer.chance.high:.1%} by the draws)"
         say(screen, f"Chance of clearing: {doubt}")
-    if answer.by_trial:
+    if answer.by_trial and not isinstance(answer.pair, NoPair):
         say(screen, "Found by trial of losses and outage: a cheaper pair is not ruled out.")
     show_notes(screen, "Not judged", answer.unjudged, "yellow")
 

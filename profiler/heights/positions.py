@@ -55,7 +55,7 @@ def all_positions(tower: TowerChoice, *, field: str = "") -> Float:
             f"{name}step_m = {tower.step_m:g}: must leave at most {MOST_POSITIONS} positions from "
             f"{tower.lowest_m:g} to {tower.highest_m:g} m; give a greater step, or a narrower range"
         )
-    return np.asarray(np.arange(first, last + 1) * tower.step_m)
+    return np.asarray((np.arange(first, last + 1) * tower.step_m).round(9))  # 22.2 m, not 22.200000000000003
 
 
 def free_positions(tower: TowerChoice, *, spacing_m: float = 0.0, field: str = "") -> Float:
