@@ -14,6 +14,7 @@ from profiler.budget import (
     dish_gain,
     far_field_distance,
     free_space_loss,
+    least_gain,
     least_power,
     link_budget,
     longest_free_space_range,
@@ -348,6 +349,29 @@ def test_smallest_dish_has_exactly_the_wanted_margin(direction, mode, resized, m
     gains = [line for line in link_budget(asked, **PATH).a_to_b.modes[0].lines if line.unit == "dBi"]
     new = [line.value for line, is_new in zip(gains, (resized_a, resized_b), strict=True) if is_new]
     assert math.fsum(line.value for line in answer.lines) == pytest.approx(sum(new), abs=1e-9)
+
+
+@given(WAYS, st.sampled_from(["both", "transmitter", "receiver"]), st.floats(0, 60))
+def test_least_gain_has_exactly_the_wanted_margin(direction, resized, margin_db):
+    answer = least_gain(RADIO, **PATH, direction=direction, resized=resized, fade_margin_db=margin_db)
+    sender, receiver = ("terminal_a", "terminal_b") if direction == "a_to_b" else ("terminal_b", "terminal_a")
+    ends = {"both": (sender, receiver), "transmitter": (sender,), "receiver": (receiver,)}[resized]
+    new = {"gain_dbi": answer.value, "diameter_m": None, "efficiency": None}
+    asked = replace(RADIO, **{end: replace(getattr(RADIO, end), **new) for end in ends})
+    assert row_of(asked, direction, RADIO.modes[0].name, **PATH).fade_margin_db == pytest.approx(margin_db, abs=1e-9)
+    assert math.fsum(line.value for line in answer.lines) == pytest.approx(answer.value * len(ends), abs=1e-9)
+
+
+def test_what_stands_on_the_other_side_of_the_budget_says_so():
+    """A received level is power less losses plus gains: solved for one of them, the others change sign."""
+    answer = least_power(RADIO, **PATH, fade_margin_db=30.0)
+    assert [line.name for line in answer.lines if not line.name.startswith("less ")] == ["threshold", "fade margin"]
+    answer = longest_free_space_range(RADIO, 10e9, fade_margin_db=30.0)
+    turned = {line.name: line.value for line in answer.lines if line.name.startswith("less ")}
+    assert turned == {
+        "less threshold": -math.fsum(line.value for line in answer.threshold_lines),
+        "less fade margin": -30.0,
+    }
 
 
 def test_smallest_dish_needs_no_gain_but_an_efficiency():

@@ -4,7 +4,7 @@ Tables add up: every loss is a negative line, every gain a positive one, and the
 """
 
 from profiler.budget.antenna import antenna_gain, dish_diameter, dish_gain, far_field_distance
-from profiler.budget.inverse import Answer, least_power, longest_free_space_range, smallest_dish
+from profiler.budget.inverse import Answer, least_gain, least_power, longest_free_space_range, smallest_dish
 from profiler.budget.link import Budget, Direction, ModeBudget, free_space_loss, link_budget
 
 __all__ = [
@@ -17,6 +17,7 @@ __all__ = [
     "dish_gain",
     "far_field_distance",
     "free_space_loss",
+    "least_gain",
     "least_power",
     "link_budget",
     "longest_free_space_range",

@@ -15,7 +15,7 @@ from profiler.models import Radio, RadioMode, Terminal
 from profiler.receiver import Line, Threshold, mode_threshold
 from profiler.units import wavelength
 
-__all__ = ["Answer", "least_power", "longest_free_space_range", "smallest_dish"]
+__all__ = ["Answer", "least_gain", "least_power", "longest_free_space_range", "smallest_dish"]
 
 Way = Literal["a_to_b", "b_to_a"]
 Resized = Literal["both", "transmitter", "receiver"]
@@ -26,12 +26,12 @@ _WAYS = {"a_to_b": "AB", "b_to_a": "BA"}
 class Answer:
     """Answer to an inverse question: ``value`` in ``unit``.
 
-    ``lines`` add up to what was solved for, named by ``solved_for``, in dB, dBm or dBi; ``threshold_lines`` to the
-    threshold among them.
+    ``lines`` add up to what was solved for, named by ``solved_for``, in dB, dBm or dBi; one that stands on the other
+    side of the budget has its sign turned and is named "less …". ``threshold_lines`` add up to the threshold.
     """
 
     value: float
-    unit: Literal["m", "dBm"]
+    unit: Literal["m", "dBm", "dBi"]
     solved_for: str
     lines: tuple[Line, ...]
     threshold_lines: tuple[Line, ...]
@@ -163,6 +163,73 @@ def least_power(
     )
 
 
+def least_gain(
+    radio: Radio,
+    distance_m: float,
+    frequency_hz: float,
+    *,
+    gas_db: float,
+    diffraction_db: float,
+    resized: Resized = "both",
+    direction: Way = "a_to_b",
+    mode: str | None = None,
+    bit_error_ratio: float | None = None,
+    fade_margin_db: float = 0.0,
+) -> Answer:
+    """Least antenna gain, the same at both ends or at one of them, that leaves a mode the wanted fade margin.
+
+    Parameters
+    ----------
+    radio
+        Terminals, modes and other losses; the antennas to be resized give no gain here.
+    distance_m, frequency_hz, gas_db, diffraction_db
+        The path, as `link_budget`.
+    resized
+        Which antennas get the new gain.
+    direction, mode, bit_error_ratio, fade_margin_db
+        The question, as `longest_free_space_range`.
+
+    Returns
+    -------
+    Answer
+        Gain of one antenna in dBi; its lines add up to what the resized antennas need together.
+
+    Raises
+    ------
+    InputError
+        As `longest_free_space_range`.
+
+    Examples
+    --------
+    >>> end = Terminal(power_dbm=28.0, line_loss_db=1.5, gain_dbi=38.7)
+    >>> radio = Radio(end, end, (RadioMode("QPSK", threshold_dbm=-85.0),))
+    >>> path = {"distance_m": 40e3, "frequency_hz": 6.175e9, "gas_db": 0.4, "diffraction_db": 0.0}
+    >>> round(least_gain(radio, **path, fade_margin_db=40.0).value, 2)
+    35.35
+    >>> round(least_gain(radio, **path, fade_margin_db=40.0, resized="receiver").value, 2)
+    32.0
+
+    Notes
+    -----
+    Source: as `link_budget`.
+    """
+    chosen, threshold, wanted = _wanted(radio, mode, bit_error_ratio, fade_margin_db)
+    way = _WAYS[direction]
+    new = _new(way, resized)
+    path = path_lines(distance_m, frequency_hz, gas_db, diffraction_db)
+    forward = table(_isotropic(radio, new), way, chosen, frequency_hz, path)
+    lines = (*wanted, *_negated(line for line in forward if line.unit != "dBi" or line.name[-1] not in new))
+    return Answer(
+        total(lines) / len(new),
+        "dBi",
+        "gain of both antennas together" if resized == "both" else f"antenna gain {new}",
+        lines,
+        threshold.lines,
+        (AIMED, *threshold.assumptions),
+        near_field_warnings(_diameters(radio) | dict.fromkeys(new), distance_m, frequency_hz),
+    )
+
+
 def smallest_dish(
     radio: Radio,
     distance_m: float,
@@ -181,16 +248,10 @@ def smallest_dish(
 
     Parameters
     ----------
-    radio
-        Terminals, modes and other losses; the antennas to be resized give no gain here.
-    distance_m, frequency_hz, gas_db, diffraction_db
-        The path, as `link_budget`.
-    resized
-        Which antennas get the new dish.
     efficiency
-        Its efficiency, above 0 and at most 1; None takes that of each terminal.
-    direction, mode, bit_error_ratio, fade_margin_db
-        The question, as `longest_free_space_range`.
+        Of the dish, above 0 and at most 1; None takes that of each terminal.
+    radio, distance_m, frequency_hz, gas_db, diffraction_db, resized, direction, mode, bit_error_ratio, fade_margin_db
+        As `least_gain`.
 
     Returns
     -------
@@ -216,28 +277,37 @@ def smallest_dish(
     -----
     Source: as `link_budget` and `dish_gain`.
     """
-    chosen, threshold, wanted = _wanted(radio, mode, bit_error_ratio, fade_margin_db)
-    way = _WAYS[direction]
-    new = {"both": way, "transmitter": way[0], "receiver": way[1]}[resized]
-    path = path_lines(distance_m, frequency_hz, gas_db, diffraction_db)
-    forward = table(_isotropic(radio, new), way, chosen, frequency_hz, path)
-    known = [line for line in forward if line.unit != "dBi" or line.name[-1] not in new]
-    lines = (*wanted, *_negated(known))
+    gain = least_gain(
+        radio,
+        distance_m,
+        frequency_hz,
+        gas_db=gas_db,
+        diffraction_db=diffraction_db,
+        resized=resized,
+        direction=direction,
+        mode=mode,
+        bit_error_ratio=bit_error_ratio,
+        fade_margin_db=fade_margin_db,
+    )
     # Equal dishes differ by their efficiencies alone: each counts as one of mean gain and of mean efficiency in dB.
+    new = _new(_WAYS[direction], resized)
     efficiencies = [_efficiency(radio, end, efficiency) for end in new]
     mean_efficiency = math.prod(efficiencies) ** (1.0 / len(efficiencies))
-    diameter_m = float(dish_diameter(total(lines) / len(new), mean_efficiency, frequency_hz))
+    diameter_m = float(dish_diameter(gain.value, mean_efficiency, frequency_hz))
     across = diameter_m / float(wavelength(frequency_hz))
     aperture = f"gain of a dish many wavelengths across, 10·log10(η·(π·D/λ)²); this one is {across:.3g} wavelengths"
-    return Answer(
-        diameter_m,
-        "m",
-        "gain of both antennas together" if resized == "both" else f"antenna gain {new}",
-        lines,
-        threshold.lines,
-        (AIMED, aperture, *threshold.assumptions),
-        near_field_warnings(_diameters(radio) | dict.fromkeys(new, diameter_m), distance_m, frequency_hz),
+    return replace(
+        gain,
+        value=diameter_m,
+        unit="m",
+        assumptions=(AIMED, aperture, *gain.assumptions[1:]),
+        warnings=near_field_warnings(_diameters(radio) | dict.fromkeys(new, diameter_m), distance_m, frequency_hz),
     )
+
+
+def _new(way: str, resized: Resized) -> str:
+    """Give the ends that get a new antenna."""
+    return {"both": way, "transmitter": way[0], "receiver": way[1]}[resized]
 
 
 def _wanted(
@@ -299,4 +369,4 @@ def _diameters(radio: Radio) -> dict[str, float | None]:
 
 def _negated(lines: Iterable[Line]) -> tuple[Line, ...]:
     """Move lines to the other side of the equation."""
-    return tuple(replace(line, value=0.0 - line.value) for line in lines)
+    return tuple(replace(line, name=f"less {line.name}", value=0.0 - line.value) for line in lines)

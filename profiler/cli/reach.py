@@ -2,18 +2,29 @@
 
 from __future__ import annotations
 
-from typing import TYPE_CHECKING, Any
+import math
+from collections.abc import Sequence
+from typing import TYPE_CHECKING, Any, Literal
 
 import click
 
+from profiler.cli.lines import lines_table, seen_from
 from profiler.cli.options import hop_options, named, read_hop, speech_options
-from profiler.cli.output import check_targets, console, json_text, put
+from profiler.cli.output import check_targets, json_text, put
 from profiler.errors import InputError
 
 if TYPE_CHECKING:
+    from rich.table import Table
+
     from profiler.budget import Answer
+    from profiler.cli.screen import Scale
+    from profiler.receiver import Line
+    from profiler.study import Study
 
 __all__ = ["command"]
+
+Way = Literal["a_to_b", "b_to_a"]
+_WAYS: dict[Way, str] = {"a_to_b": "A to B", "b_to_a": "B to A"}
 
 
 @click.command("reach")
@@ -28,21 +39,27 @@ __all__ = ["command"]
     metavar="DB",
     help="Margin to keep.",
 )
+@click.option("--direction", type=click.Choice(["a_to_b", "b_to_a"]), help="Direction to answer for; both by default.")
 @click.option(
-    "--direction",
-    type=click.Choice(["a_to_b", "b_to_a"]),
-    default="a_to_b",
+    "--resize",
+    type=click.Choice(["both", "a", "b"]),
+    default="both",
     show_default=True,
-    help="Direction to answer for.",
+    help="Sites whose antennas are to be found; the other keeps its own.",
 )
+@click.option("--efficiency", type=float, metavar="RATIO", help="Of the dish asked for; the hop file's by default.")
 @click.option("--json", "json_to", metavar="FILE", help="Write the answers as JSON; - for standard output.")
+@click.option("--feet", is_flag=True, help="Print in feet and miles.")
 @speech_options
 def command(
     mode: str | None,
     bit_error_ratio: float | None,
     fade_margin_db: float,
-    direction: str,
+    direction: Way | None,
+    resize: str,
+    efficiency: float | None,
     json_to: str | None,
+    feet: bool,
     quiet: bool,
     no_color: bool,
     **hop_given: Any,
@@ -50,10 +67,9 @@ def command(
     """Find the longest range, the least power and the smallest dishes.
 
     The range is in free space; power and dishes are for this hop, with the losses of its path. Needs a [radio] with a
-    threshold, or the noise and modulation that give one.
+    threshold, or the noise and modulation that give one. Where no efficiency of a dish is known, its gain is found.
     """
-    from profiler.budget import least_power, longest_free_space_range, smallest_dish
-    from profiler.study import plain, run_study
+    from profiler.study import run_study
 
     check_targets(json_to, hop_file=hop_given["hop_file"])
     hop = read_hop(**hop_given)
@@ -61,47 +77,102 @@ def command(
         raise InputError(
             f"{hop.source}: radio: must be given to answer from; add [radio.a], [radio.b] and [[radio.mode]]"
         )
+    wanted = {"mode": mode, "bit_error_ratio": bit_error_ratio, "fade_margin_db": fade_margin_db}
+    ways: tuple[Way, ...] = tuple(_WAYS) if direction is None else (direction,)
     with named(hop.source):
         study = run_study(hop)
-        wanted: dict[str, Any] = {
-            "mode": mode,
-            "bit_error_ratio": bit_error_ratio,
-            "fade_margin_db": fade_margin_db,
-            "direction": direction,
-        }
-        assert study.median_diffraction is not None
-        wanted_here = {**wanted, "gas_db": study.air.gas_db, "diffraction_db": study.median_diffraction.loss_db}
-        distance_m = study.line.distance_m
-        answers = {
-            "longest range in free space": longest_free_space_range(hop.radio, hop.frequency_hz, **wanted),
-            "least power on this hop": least_power(hop.radio, distance_m, hop.frequency_hz, **wanted_here),
-        }
-        if all(end.diameter_m is not None for end in (hop.radio.terminal_a, hop.radio.terminal_b)):
-            answers["smallest equal dishes on this hop"] = smallest_dish(
-                hop.radio, distance_m, hop.frequency_hz, **wanted_here
-            )
+        answers = {way: _answers(study, way, resize, efficiency, wanted) for way in ways}
     if json_to is not None:
-        found = {name: plain(answer) for name, answer in answers.items()}
-        put(json_to, json_text({"schema": "hopwright-reach/1", "hop": hop.name, "answers": found}))
+        put(json_to, json_text({"schema": "hopwright-reach/1", "hop": hop.name, "answers": answers}))
     if json_to != "-":
-        _show(answers, quiet=quiet, color=not no_color)
+        _show(answers, feet=feet, quiet=quiet, color=not no_color)
     return 0
 
 
-def _show(answers: dict[str, Answer], *, quiet: bool, color: bool) -> None:
-    """Print each answer, then the lines that it stands on."""
-    from profiler.cli.show import compact_table, show_notes
+def _answers(
+    study: Study, way: Way, resize: str, efficiency: float | None, wanted: dict[str, Any]
+) -> dict[str, Answer]:
+    """Answer every question for one direction."""
+    from profiler.budget import least_gain, least_power, longest_free_space_range, smallest_dish
 
-    screen = console(color=color)
-    for name, answer in answers.items():
-        value = f"{answer.value / 1e3:.2f} km" if answer.value >= 1e3 else f"{answer.value:.2f} {answer.unit}"
-        screen.print(f"{name}: {value}", style="bold", markup=False)
-        if quiet:
-            continue
-        table = compact_table("line", "value", "unit", "by", words=("unit", "by"))
-        for line in (*answer.lines, *answer.threshold_lines):
-            table.add_row(line.name, f"{line.value:.2f}", line.unit, line.note)
-        screen.print(table)
-        show_notes(screen, "Assumed", answer.assumptions)
-        show_notes(screen, "Warnings", answer.warnings, "yellow")
-        screen.print()
+    hop, losses = study.hop, study.median_diffraction
+    assert hop.radio is not None
+    assert losses is not None
+    wanted = {**wanted, "direction": way}
+    path = (hop.radio, study.line.distance_m, hop.frequency_hz)
+    here = {**wanted, "gas_db": study.air.gas_db, "diffraction_db": losses.loss_db}
+    answers = {
+        "longest range in free space": longest_free_space_range(hop.radio, hop.frequency_hz, **wanted),
+        "least power on this hop": least_power(*path, **here),
+    }
+    ends = {"a": hop.radio.terminal_a, "b": hop.radio.terminal_b}
+    resized: Literal["both", "transmitter", "receiver"] = "both"
+    dish, gain = "equal dishes", "equal antenna gains"
+    if resize != "both":
+        ends = {resize: ends[resize]}
+        resized = "transmitter" if way.startswith(resize) else "receiver"
+        dish, gain = f"dish at {resize.upper()}", f"antenna gain at {resize.upper()}"
+    if efficiency is not None or all(end.efficiency is not None for end in ends.values()):
+        answers[f"smallest {dish} on this hop"] = smallest_dish(*path, **here, resized=resized, efficiency=efficiency)
+    else:
+        answers[f"least {gain} on this hop"] = least_gain(*path, **here, resized=resized)
+    return answers
+
+
+def _show(answers: dict[Way, dict[str, Answer]], *, feet: bool, quiet: bool, color: bool) -> None:
+    """Print the answers, then the lines that each stands on."""
+    from profiler.cli.screen import Scale, console, say, show_notes, show_table
+
+    screen, scale = console(color=color), Scale(feet=feet)
+    questions = {
+        name: {_WAYS[way]: found[name] for way, found in answers.items()} for name in next(iter(answers.values()))
+    }
+    for name, found in questions.items():
+        values = ", ".join(f"{_value(answer, scale)} {way}" for way, answer in found.items())
+        say(screen, f"{name}: {values}", "bold")
+    if quiet:
+        return
+    for name, found in questions.items():
+        for part in _alike(found):
+            say(screen, "")
+            show_table(screen, _sum_table(name, part))
+    each = [(name, answer) for name, found in questions.items() for answer in found.values()]
+    threshold = each[0][1].threshold_lines  # of the mode, so the same for every answer
+    if len(threshold) > 1:
+        say(screen, "")
+        show_table(screen, _threshold_table(threshold))
+    warnings = dict.fromkeys(f"{name}: {warning}" for name, answer in each for warning in answer.warnings)
+    show_notes(screen, "Warnings", tuple(warnings), "yellow")
+    show_notes(screen, "Assumed", tuple(dict.fromkeys(note for _, answer in each for note in answer.assumptions)))
+
+
+def _value(answer: Answer, scale: Scale) -> str:
+    if answer.unit != "m":
+        return f"{answer.value:.2f} {answer.unit}"
+    if answer.value >= 1000.0:
+        return f"{scale.distance(answer.value)} {scale.distance_unit}"
+    return f"{scale.height(answer.value, 2)} {scale.height_unit}"
+
+
+def _alike(found: dict[str, Answer]) -> list[dict[str, Answer]]:
+    """Put the directions side by side where their lines have the same names, else one after the other."""
+    names = [[seen_from(line.name, way) for line in answer.lines] for way, answer in found.items()]
+    return [found] if names.count(names[0]) == len(names) else [{way: answer} for way, answer in found.items()]
+
+
+def _sum_table(name: str, found: dict[str, Answer]) -> Table:
+    """Tabulate the terms of an answer, and below them what they add up to."""
+    table = lines_table(name, {way: answer.lines for way, answer in found.items()})
+    way, answer = next(iter(found.items()))
+    sums = (f"{math.fsum(line.value for line in each.lines):.2f}" for each in found.values())
+    unit = "dBi" if "gain" in answer.solved_for else "dBm" if answer.unit == "dBm" else "dB"
+    table.add_section()
+    table.add_row(seen_from(answer.solved_for, way), *sums, unit, "", style="bold")
+    return table
+
+
+def _threshold_table(lines: Sequence[Line]) -> Table:
+    table = lines_table("threshold", {"both ways": lines})
+    table.add_section()
+    table.add_row("threshold", f"{math.fsum(line.value for line in lines):.2f}", "dBm", "", style="bold")
+    return table

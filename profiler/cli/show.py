@@ -5,6 +5,7 @@ from __future__ import annotations
 import math
 from typing import TYPE_CHECKING
 
+from profiler.cli.lines import lines_table
 from profiler.cli.screen import Scale, compact_table, console, say, show_notes, show_table
 
 if TYPE_CHECKING:
@@ -182,13 +183,8 @@ def _budget(study: Study) -> Table:
     """Tabulate the budget of the first mode line by line both ways, then a row for every further mode."""
     assert study.budget is not None
     there, back = study.budget.a_to_b, study.budget.b_to_a
-    title = f"budget, mode {there.modes[0].name}"
-    table = compact_table(title, "A to B", "B to A", "unit", "by", words=("unit",), wraps="by")
-    ends = {" A": " at the sender", " B": " at the receiver"}
-    for one, other in zip(there.modes[0].lines, back.modes[0].lines, strict=True):
-        name = one.name[:-2] + ends[one.name[-2:]] if one.name[-2:] in ends else one.name
-        note = one.note if one.note == other.note else f"A to B {one.note}; B to A {other.note}"
-        table.add_row(name, f"{one.value:.2f}", f"{other.value:.2f}", one.unit, note)
+    lines = {"A to B": there.modes[0].lines, "B to A": back.modes[0].lines}
+    table = lines_table(f"budget, mode {there.modes[0].name}", lines)
     table.add_section()
     for name, part in (("received level", "received_dbm"), ("threshold", "threshold_dbm")):
         table.add_row(name, *(_number(getattr(way, part)) for way in (there, back)), "dBm", "")
