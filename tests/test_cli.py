@@ -202,8 +202,9 @@ def test_a_rule_that_only_the_ground_beside_fails_says_so(run, here):
     (here / "wall.toml").write_text(text.replace("antenna_m = 40", "antenna_m = 100"))
     code, out, _ = run("study", "wall.toml")
     assert code == 1
-    assert "FAIL beside" in out
-    assert re.search(r"Beside the path, .*: tightest \d\d\.\d m to the right at (9|10)\.\d\d km, surplus -", out)
+    place = r"(9|10)\.\d\d km, \d\d m right"
+    assert re.search(rf"0\.7 F1 at k = 1\.333 +FAIL +-\d+\.\d  {place}", out)  # in the table of rules
+    assert re.search(rf"\n{place} +\d+\.\d +0\.0 ", out)  # among the tight places
 
 
 def test_quiet_prints_the_verdict_only(run):
@@ -220,7 +221,9 @@ def test_no_color_codes_in_a_file(run):
 def test_feet_and_miles_on_request(run):
     _, out, _ = run("study", "hop.toml", "--feet")
     assert "12.432 mi" in out  # 20.0076 km / 1.609344
-    assert "antenna 131.2 above ground" in out
+    heights = r"328\.1 +131\.2 +459\.3"  # 100 m, 40 m and 140 m / 0.3048
+    assert re.search(rf"ground +antenna +centre.*\n.* ft +ft +ft .*\n.*\nA  South .* {heights} ", out)
+    assert re.search(r" points \d+\.\d ft apart", out)
 
 
 @pytest.mark.parametrize(
@@ -293,7 +296,7 @@ def test_a_hop_without_a_file(run):
     code, out, err = run("study", *OPTIONS)
     assert (code, err) == (0, "")
     assert out.startswith("A to B: PASSES")
-    assert "antenna 40.0 above ground" in out.splitlines()[3]  # 131.25 ft
+    assert re.search(r"\nB  B  +46\.180000   9\.000000 +100\.0 +40\.0 +140\.0 ", out)  # 131.25 ft
     own = [word for word in OPTIONS if word not in ("--preset", "high-reliability")]
     assert run("study", *own, "--rule", "1", "0.6", "3", "-q")[0] == 0
     assert run("study", *own, "--rule", "1", "0.6", "60", "-q")[0] == 1
@@ -302,7 +305,8 @@ def test_a_hop_without_a_file(run):
 def test_heights_writes_the_pair_into_a_copy_that_passes(run, here):
     code, out, _ = run("heights", "fails.toml", "--write", "raised.toml")
     assert code == 0
-    assert "Re-checked through the rules: passes" in out
+    assert "keep a fade margin and meet the availability objective" in out.splitlines()[0]
+    assert "Re-checked through every rule, along the path and beside it: passes" in out
     before, after = load_hop(here / "fails.toml"), load_hop(here / "raised.toml")
     assert after.site_a.antenna_m > before.site_a.antenna_m
     assert after.rules == before.rules
@@ -317,7 +321,7 @@ def test_heights_that_cannot_be_had_end_with_1_and_say_what_would_do(run, here):
     assert "no pair clears: at the highest there is, A 9.00 m and B 9.00 m" in out
     assert "Any one of these would do" in out
     assert not (here / "raised.toml").exists()
-    assert err == "raised.toml: not written, since no pair of heights clears\n"
+    assert err == "raised.toml: not written, since no pair of heights does all that is asked\n"
 
 
 def test_heights_as_csv_names_what_governs(run):
@@ -336,10 +340,28 @@ def test_losses_lists_every_method(run):
     assert len({(loss["method"], loss["k"]) for loss in document["diffraction"]}) == 14  # 7 methods at 2 k
 
 
-def test_reach_answers_the_inverse_questions(run):
+def test_reach_answers_both_ways(run):
     """27 + 36 + 36 + 86 = 185 dB of free space at 7.5 GHz: 10^((185 - 92.45)/20)/7.5 = 5 650 km."""
-    document = json.loads(run("reach", "hop.toml", "--json", "-")[1])
-    assert document["answers"]["longest range in free space"]["value"] == pytest.approx(5.65e6, rel=2e-3)
+    answers = json.loads(run("reach", "hop.toml", "--json", "-")[1])["answers"]
+    for way in ("a_to_b", "b_to_a"):
+        assert answers[way]["longest range in free space"]["value"] == pytest.approx(5.65e6, rel=2e-3)
+        # 135.9 dB of free space over 20.0 km, and 0.2 dB of gases: 185 - 136.1 = 48.9 dB less power would do
+        assert answers[way]["least power on this hop"]["value"] == pytest.approx(27 - 48.9, abs=0.1)
+        assert answers[way]["least equal antenna gains on this hop"]["value"] == pytest.approx(36 - 48.9 / 2, abs=0.1)
+    assert list(json.loads(run("reach", "hop.toml", "--direction", "b_to_a", "--json", "-")[1])["answers"]) == ["b_to_a"]
+
+
+def test_reach_adds_up_on_the_terminal(run):
+    """Every table is of signed terms and ends with their sum."""
+    _, out, _ = run("reach", "hop.toml", "--fade-margin-db", "10", "--resize", "b", "--efficiency", "0.6")
+    assert re.search(r"smallest dish at B on this hop: 0\.\d\d m A to B, 0\.\d\d m B to A", out)
+    assert re.search(r"less threshold +\+86\.00 +\+86\.00  dBm", out)
+    assert re.search(r"less fade margin +-10\.00", out)
+    tables = [table for table in out.split("\n\n") if " unit  by" in table]
+    assert len(tables) == 4  # the range and the power for both ways, and the dish for each
+    for table in tables:
+        *terms, total = (float(row[1]) for row in re.finditer(r" ([+-]?\d+\.\d\d) .*dB", table.replace("- ", "")))
+        assert sum(terms) == pytest.approx(total, abs=0.06)
 
 
 def test_terrain_says_what_a_folder_holds(run, here):
@@ -621,7 +643,7 @@ def test_a_process_ends_with_one_line_and_code_2(here):
 def test_a_terminal_without_the_signs_gets_marks_instead(here):
     done = process("study", "hop.toml", env={"PYTHONIOENCODING": "ascii"})
     assert (done.returncode, done.stderr) == (0, b"")
-    assert b"azimuth 0.00? true" in done.stdout
+    assert b" 140.0 |  0.00?\n" in done.stdout
 
 
 @pytest.mark.skipif(not Path("/dev/full").exists(), reason="no /dev/full on this system")
