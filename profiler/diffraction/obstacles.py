@@ -7,14 +7,23 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
-from profiler.diffraction.edges import EdgeLosses, edge_losses, nu_at
+from profiler.diffraction.edges import EdgeLosses, edge_losses, nu_at, sealed
 from profiler.diffraction.formulas import NU_NO_LOSS, double_edge_terms, fresnel_parameter, knife_edge_loss
 from profiler.diffraction.hops import Block, Hops, Index, Points
 from profiler.units import Float
 
-__all__ = ["cascaded_knife_edges", "double_edge", "single_knife_edge"]
+__all__ = ["DoubleLosses", "cascaded_knife_edges", "double_edge", "single_knife_edge"]
 
 _NO_POINT = -1
+
+_APART_M = 250.0
+"""Nearer points on a string over the profile are one obstruction in Rec. ITU-R P.526-15 §4.4.1 (from memory)."""
+
+_APART_SHARE = 0.1
+"""The same as a share of the way to the nearer end, where less: two edges on the line then lose 1 dB more than one."""
+
+_CLEAR = 0.6
+"""Part of the first Fresnel radius that must be clear for a path without loss (Rec. ITU-R P.526-15 §2, from memory)."""
 
 
 def _main_point(block: Block) -> tuple[Index]:
@@ -65,28 +74,58 @@ def single_knife_edge(
 
 
 def _three_points(block: Block) -> tuple[Index, Index, Index]:
-    """Inner points of greatest ν: of the whole path, and of the sections from it to A and to B; −1 for none."""
-    rise, t = block.rise(), block.grid.t
+    """Inner points of greatest ν: of the whole path, and of the other obstacles towards A and B; −1 for none."""
+    rise = block.rise()
+    t = np.broadcast_to(block.grid.t, rise.shape)
     main = (rise * block.grid.weight).argmax(axis=1)
-    rows = np.arange(rise.shape[0])
-    t_main = np.broadcast_to(t, rise.shape)[rows, main][:, None]
-    rise_main = rise[rows, main][:, None]
-    index = np.arange(rise.shape[1])
+    rows = np.arange(main.size)
+    t_main, rise_main = t[rows, main][:, None], rise[rows, main][:, None]
+    left = np.arange(rise.shape[1]) < main[:, None]
+    share, share_main = np.where(left, t, 1.0 - t), np.where(left, t_main, 1.0 - t_main)
+    away = np.abs(t - t_main)
+    away[rows, main] = 1.0  # of the whole path: the principal edge is no distance from itself to divide by
+    over = rise - share * (rise_main / share_main)
+    other = _on_another_obstacle(over, away, left, main, block)
+    near = np.minimum(_APART_M / block.length_m[:, None], _APART_SHARE * np.minimum(t_main, 1.0 - t_main))
+    weighted = np.where(other & (away >= near), over * np.sqrt(share_main / (share * away)), -np.inf)
+    return main, _greatest(np.where(left, weighted, -np.inf)), _greatest(np.where(left, -np.inf, weighted))
 
-    def best(share: Float, share_main: Float, side: NDArray[np.bool_]) -> Index:
-        """Point of greatest ν among those on one side; shares count from that side's end."""
-        room = np.where(side, share_main - share, 1.0)
-        weighted = (rise - rise_main * share / share_main) * np.sqrt(share_main / (share * room))
-        return np.where(side.any(axis=1), np.where(side, weighted, -np.inf).argmax(axis=1), _NO_POINT)
 
-    to_a = best(t, t_main, index < main[:, None])
-    to_b = best(1.0 - t, 1.0 - t_main, index > main[:, None])
-    return main, to_a, to_b
+def _on_another_obstacle(
+    over: Float, away: Float, left: NDArray[np.bool_], main: Index, block: Block
+) -> NDArray[np.bool_]:
+    """Whether the line from the principal edge to each point is clear of some ground between.
+
+    `over` is the rise over the line from the principal edge to the end beyond the point, `away` the share of the path
+    between the principal edge and the point, `left` whether it is on the side of A. With slopes seen from the principal
+    edge, the clearance is a running minimum away from it.
+    """
+    slope = over / away
+    fresnel = np.sqrt((block.wavelength_m * block.length_m)[:, None] / away)  # radius near an end, over the distance
+    cleared = slope + _CLEAR * fresnel
+    cleared[np.arange(main.size), main] = np.inf
+    to_a = np.minimum.accumulate(np.where(left, cleared, np.inf)[:, ::-1], axis=1)[:, ::-1]
+    to_b = np.minimum.accumulate(np.where(left, np.inf, cleared), axis=1)
+    return np.asarray(slope >= np.where(left, to_a, to_b))
+
+
+def _greatest(values: Float) -> Index:
+    """Place of the greatest value of each row; −1 where all are −inf."""
+    place = values.argmax(axis=1)
+    return np.where(np.isneginf(values[np.arange(place.size), place]), _NO_POINT, place)
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class DoubleLosses(EdgeLosses):
+    """Loss over the two main edges."""
+
+    floor_db: Float
+    """What was added, `(hops,)`, so that the loss is not below that of the principal edge alone; nearly always 0."""
 
 
 @dataclass(frozen=True, slots=True, eq=False)
 class _Trio:
-    """The principal edge of each hop and the main one on either side, with their ν; −inf where a side has no point."""
+    """The principal edge of each hop and the main one on either side, with their ν; −inf where a side has none."""
 
     main: Points
     to_a: Points
@@ -126,7 +165,8 @@ def cascaded_knife_edges(
     """Loss of up to three knife edges in cascade: the principal edge, and the main one on either side of it.
 
     L = J(νp) + T·(J(νt) + J(νr) + C) dB for νp > −0.78, else 0, with T = 1 − e^(−J(νp)/6) and C = 10 + 0.04·D, D in km.
-    νt is the greatest of the section from A to the principal edge, νr of the section from there to B.
+    νt is the greatest of the section from A to the principal edge, νr of the section from there to B, among the points
+    that belong to other obstacles than the principal edge.
 
     Parameters
     ----------
@@ -148,13 +188,20 @@ def cascaded_knife_edges(
 
     Examples
     --------
-    >>> two = cascaded_knife_edges([0, 4e3, 6e3, 10e3], [0, 120, 110, 0], 100, 100, 6e9, 8500e3)
+    >>> two = cascaded_knife_edges([0, 4e3, 5e3, 6e3, 10e3], [0, 120, 0, 110, 0], 100, 100, 6e9, 8500e3)
     >>> round(float(two.loss_db), 2), two.distance_m.tolist()
     (33.78, [nan, 4000.0, 6000.0])
 
     Notes
     -----
     Source: Rec. ITU-R P.526-15 §4.4.2, the cascaded knife edge method (from memory of the text).
+
+    That text lets any point of the sections be an edge, so that one hill counts up to three times, and the more the
+    finer its points. What belongs to the principal edge's hill is this project's own rule. A point is on another
+    obstacle if the line from the principal edge to it clears some ground between, u metres from that edge, by
+    0.6·sqrt(λ·u), the part of a Fresnel radius that leaves a path without loss; and if it is at least 250 m away, or a
+    tenth of the way from the principal edge to the nearer end where that is less. The loss over a hill then hangs on
+    the spacing of its points little more than that of the knife edge.
     """
     hops = Hops.of(distance_m, height_m, centre_a_m, centre_b_m, frequency_hz, effective_radius_m)
     finder = hops if edges_radius_m is None else hops.with_radius(edges_radius_m)
@@ -183,11 +230,11 @@ def double_edge(
     centre_b_m: ArrayLike,
     frequency_hz: ArrayLike,
     effective_radius_m: ArrayLike,
-) -> EdgeLosses:
+) -> DoubleLosses:
     """Loss of the profile's two main edges, by `double_edge_loss`.
 
-    The first is the principal edge; the second has the greatest ν of the two sections from it to the ends. Where no
-    second one has ν > −0.78, the loss is that of the principal edge alone.
+    The first is the principal edge; the second has the greatest ν of the two sections from it to the ends, among the
+    points of other obstacles. Where no second one has ν > −0.78, the loss is that of the principal edge alone.
 
     Parameters
     ----------
@@ -196,9 +243,9 @@ def double_edge(
 
     Returns
     -------
-    EdgeLosses
+    DoubleLosses
         The loss and two slots in the order of the path; a single edge takes the first. The edges' own losses leave
-        out the correction between them.
+        out the correction between them, and the floor.
 
     Raises
     ------
@@ -207,13 +254,14 @@ def double_edge(
 
     Examples
     --------
-    >>> two = double_edge([0, 10e3, 20e3, 30e3], [0, 140, 140, 0], 100, 100, 6e9, float("inf"))
+    >>> two = double_edge([0, 10e3, 15e3, 20e3, 30e3], [0, 140, 0, 140, 0], 100, 100, 6e9, float("inf"))
     >>> round(float(two.loss_db), 2), two.distance_m.tolist()
     (37.55, [10000.0, 20000.0])
 
     Notes
     -----
-    Source: Rec. ITU-R P.526-15 §4.3 for the loss (from memory of the text). The choice of edges is that of §4.4.2.
+    Source: Rec. ITU-R P.526-15 §4.3 for the loss (from memory of the text). The choice of edges is that of
+    `cascaded_knife_edges`.
     """
     hops = Hops.of(distance_m, height_m, centre_a_m, centre_b_m, frequency_hz, effective_radius_m)
     trio = _Trio.of(hops, hops)
@@ -226,9 +274,11 @@ def double_edge(
     terms = double_edge_terms(first.rise_m, last.rise_m, spacings, hops.frequency_hz)
     alone = knife_edge_loss(trio.nu)
     j_1, j_2 = np.where(pair, knife_edge_loss(terms.nu_1), alone), knife_edge_loss(terms.nu_2)
-    loss = np.where(pair, np.maximum(j_1 + j_2 + terms.correction_db, 0.0), alone)
+    loss = np.where(pair, j_1 + j_2 + terms.correction_db + terms.floor_db, alone)
     slots = [
         (counts, first.t, first.height_m, np.where(pair, terms.nu_1, trio.nu), j_1),
         (pair, last.t, last.height_m, terms.nu_2, j_2),
     ]
-    return edge_losses(hops, loss, slots)
+    base = edge_losses(hops, loss, slots)
+    floor = sealed(hops, np.where(pair, terms.floor_db, 0.0))
+    return DoubleLosses(base.loss_db, base.distance_m, base.height_m, base.nu, base.edge_loss_db, floor)
