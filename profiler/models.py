@@ -262,6 +262,11 @@ class Radio:
     modes: tuple[RadioMode, ...]
     other_losses_db: tuple[tuple[str, float], ...] = ()
 
+    @property
+    def terminals(self) -> dict[str, Terminal]:
+        """Both terminals by the letter of their end."""
+        return {"A": self.terminal_a, "B": self.terminal_b}
+
     def __post_init__(self) -> None:
         for name, loss_db in self.other_losses_db:
             _require(0 <= loss_db < math.inf, f"other loss {name}", loss_db, "0 dB or more (a loss is positive)")

@@ -40,7 +40,7 @@ from profiler.models import (
     TerrainChoice,
     TowerChoice,
 )
-from profiler.study import run_study
+from profiler.study import OutageResult, run_study
 from profiler.study.plan import plan_heights
 from profiler.units import FOOT_M, STATUTE_MILE_M
 
@@ -146,7 +146,7 @@ CASES = ("fails", "passes", "bare", "long", "flat 8 km", "flat 80 km", "canyon")
 @pytest.fixture(scope="module")
 def plan(study):
     """Plan the heights of a case by name; the search for the objective is not drawn and takes seconds."""
-    return functools.cache(lambda name: plan_heights(dataclasses.replace(study(name), availability=None)))
+    return functools.cache(lambda name: plan_heights(study(name)))
 
 
 def axes_of(figure, label):
@@ -386,13 +386,13 @@ def test_level_diagram_adds_up_to_the_received_level_and_the_margin(study):
 def test_outage_curves_and_objective_are_drawn_as_computed(study):
     case = study("flat 80 km")
     figure = margin_figure(case)
-    for period, outages in (("worst month", case.outage_curve.worst_month_percent),
-                            ("year", case.outage_curve.year_percent)):  # fmt: skip
+    for period, outages in (("worst month", case.outage.curve.worst_month_percent),
+                            ("year", case.outage.curve.year_percent)):  # fmt: skip
         axes = axes_of(figure, period)
         assert np.allclose(line_of(axes, "total")[:, 1], outages.total)
         assert np.allclose(line_of(axes, "multipath")[:, 1], outages.multipath)
-        assert line_of(axes, "margin")[0, 0] == pytest.approx(case.availability.fade_margin_db)
-        assert line_of(axes, "needed")[0, 0] == pytest.approx(case.availability.objective.required_margin_db)
+        assert line_of(axes, "margin")[0, 0] == pytest.approx(case.outage.availability.fade_margin_db)
+        assert line_of(axes, "needed")[0, 0] == pytest.approx(case.outage.availability.objective.required_margin_db)
         assert axes.get_yscale() == "log"
         assert "%" in axes.get_ylabel()
     asked = [line.get_ydata()[0] for line in axes_of(figure, "worst month").lines if line.get_label() == "asked"]
@@ -413,7 +413,7 @@ def test_margin_figure_needs_a_radio_and_says_so(study):
 
 def test_margin_figure_without_outage_or_threshold(study):
     case = study("passes")
-    no_outage = dataclasses.replace(case, availability=None, outage_curve=None, mode_outages=())
+    no_outage = dataclasses.replace(case, outage=OutageResult())
     assert [each.get_label() for each in margin_figure(no_outage).axes] == ["levels"]
     open_modes = [dataclasses.replace(each, threshold_dbm=None, fade_margin_db=None) for each in
                   case.budget.a_to_b.modes]  # fmt: skip

@@ -208,8 +208,10 @@ def test_swapping_the_ends_mirrors_everything(land):
     for name in ("received_dbm", "threshold_dbm", "fade_margin_db", "free_space_db", "gas_db"):
         assert getattr(there.budget.a_to_b, name) == pytest.approx(getattr(back.budget.b_to_a, name), abs=1e-5)
         assert getattr(there.budget.b_to_a, name) == pytest.approx(getattr(back.budget.a_to_b, name), abs=1e-5)
-    assert there.availability.year_percent.total == pytest.approx(back.availability.year_percent.total, rel=1e-6)
-    assert [mode.direction for mode in there.mode_outages] != [mode.direction for mode in back.mode_outages]
+    assert there.outage.availability.year_percent.total == pytest.approx(
+        back.outage.availability.year_percent.total, rel=1e-6
+    )
+    assert [mode.direction for mode in there.outage.modes] != [mode.direction for mode in back.outage.modes]
 
 
 @settings(max_examples=20)
@@ -564,7 +566,7 @@ def test_without_a_radio_nothing_of_it_is_invented(land):
 
 def test_an_objective_without_a_radio_is_not_called_met(land):
     study = run_study(hop_over(land(), availability=CLIMATE))
-    assert study.availability is None
+    assert study.outage.availability is None
     assert study.verdict.meets_objective is None
     assert any("objective was not judged" in warning for warning in study.warnings)
 
@@ -602,8 +604,8 @@ def test_obstruction_counts_what_low_k_takes_beyond_the_budget(land, margin_db, 
     by_k = {loss.k: loss.loss_db for loss in study.diffraction}
     assert by_k[4 / 3] > 20
     assert by_k[2 / 3] - by_k[4 / 3] == pytest.approx(2.5, abs=2)
-    assert study.availability.low_k_blocks is blocked
-    assert (study.availability.year_percent.obstruction > 0) is blocked
+    assert study.outage.availability.low_k_blocks is blocked
+    assert (study.outage.availability.year_percent.obstruction > 0) is blocked
 
 
 @pytest.mark.parametrize("k_percentiles", [(), ((0.1, 1.1), (50.0, 4 / 3))])
@@ -612,7 +614,7 @@ def test_statistics_that_end_above_the_low_k_do_not_hide_that_it_cuts_the_hop_of
     hop = hop_over(land(ridge(50.0)), radio=RADIO, availability=climate)
     received_dbm = run_study(hop).budget.b_to_a.received_dbm
     study = run_study(replace(hop, radio=with_threshold(received_dbm - 1.0)))
-    assert (study.availability.low_k_blocks, study.verdict.meets_objective) == (True, None)
+    assert (study.outage.availability.low_k_blocks, study.verdict.meets_objective) == (True, None)
     assert not study.verdict.passes
     assert sum("low k of the rules, 0.6667, takes" in warning for warning in study.warnings) == 1
 
@@ -631,7 +633,7 @@ def test_multipath_over_a_path_blocked_at_the_median_k_is_warned_of(land):
 def test_too_little_terrain_for_the_roughness_leaves_out_the_outage_and_nothing_else(land, objective):
     climate = replace(CLIMATE, multipath_method="p530-17", objective=objective)
     study = run_study(hop_over(land(), radio=RADIO, availability=climate))
-    assert study.availability is None
+    assert study.outage.availability is None
     assert (study.verdict.clears, study.verdict.passes) == (True, not study.hop.has_objective)
     assert study.budget.a_to_b.fade_margin_db > 0
     [line] = [warning for warning in study.warnings if "availability was not predicted" in warning]
@@ -639,7 +641,7 @@ def test_too_little_terrain_for_the_roughness_leaves_out_the_outage_and_nothing_
     assert "110 km x 110 km box" in line
     assert line.endswith("give terrain_roughness_m, more terrain, or choose p530-17-quick")
     given = run_study(replace(study.hop, availability=replace(climate, terrain_roughness_m=60.0)))
-    assert given.availability is not None
+    assert given.outage.availability is not None
 
 
 @pytest.mark.skipif(find_spec("itur") is None, reason='the maps need pip install "hopwright[climate]"')
@@ -657,7 +659,7 @@ def test_the_maps_give_the_median_k_where_the_hop_does_not(land):
     [line] = [assumption for assumption in study.assumptions if assumption.startswith("median k")]
     assert "P.453-13" in line
     assert "4/3" not in line
-    used = {each.name: each for each in study.availability.inputs}
+    used = {each.name: each for each in study.outage.availability.inputs}
     assert used["median_k"].value == study.climate.median_k
     assert used["median_k"].source == used["k_percentiles"].source == place.k_source
     assert (used["rain_rate_mm_h"].source, used["dn1_n_km"].source) == (place.rain_source, place.dn1_source)
@@ -679,12 +681,12 @@ def test_availability_is_that_of_the_weaker_direction(land):
     hop = hop_over(land(), radio=RADIO, availability=CLIMATE)  # B sends 7 dB less into the same losses
     study = run_study(hop)
     assert study.budget.b_to_a.fade_margin_db == pytest.approx(study.budget.a_to_b.fade_margin_db - 7.0)
-    assert [mode.direction for mode in study.mode_outages] == ["B to A", "B to A"]
-    assert study.availability.fade_margin_db == study.budget.b_to_a.fade_margin_db
+    assert [mode.direction for mode in study.outage.modes] == ["b_to_a", "b_to_a"]
+    assert study.outage.availability.fade_margin_db == study.budget.b_to_a.fade_margin_db
     stronger = replace(RADIO, terminal_b=replace(RADIO.terminal_b, power_dbm=27.0))
     raised = run_study(replace(hop, radio=stronger))
-    assert raised.availability.year_percent.total < study.availability.year_percent.total
-    qam, qpsk = study.mode_outages
+    assert raised.outage.availability.year_percent.total < study.outage.availability.year_percent.total
+    qam, qpsk = study.outage.modes
     assert qpsk.fade_margin_db == pytest.approx(qam.fade_margin_db + 22.0)
     assert qpsk.year_percent < qam.year_percent
 
@@ -706,7 +708,7 @@ def test_roughness_is_the_spread_of_the_raster_in_the_box(write_raster):
     path = write_raster("wide.tif", heights, north_up(8.0, 46.9, cell), "EPSG:4326")
     climate = replace(CLIMATE, multipath_method="p530-17")
     study = run_study(hop_over(path, radio=RADIO, availability=climate, site_a=Site("south", 9.0, 46.0, 900.0)))
-    [used] = [each for each in study.availability.inputs if each.name == "terrain_roughness_m"]
+    [used] = [each for each in study.outage.availability.inputs if each.name == "terrain_roughness_m"]
     rows = np.abs(46.9 - cell * (np.arange(200) + 0.5) - 46.09) < 55 / 111.15
     columns = np.abs(8.0 + cell * (np.arange(240) + 0.5) - 9.0) < 55 / (111.32 * math.cos(math.radians(46.09)))
     # the grid of the method and the cells of the raster do not coincide: bilinear sampling smooths the noise

@@ -5,13 +5,14 @@ Tables add up: every loss is a negative line, every gain a positive one, and the
 
 from profiler.budget.antenna import antenna_gain, dish_diameter, dish_gain, far_field_distance
 from profiler.budget.inverse import Answer, least_gain, least_power, longest_free_space_range, smallest_dish
-from profiler.budget.link import Budget, Direction, ModeBudget, free_space_loss, link_budget
+from profiler.budget.link import Budget, Direction, ModeBudget, Way, free_space_loss, link_budget, way_name
 
 __all__ = [
     "Answer",
     "Budget",
     "Direction",
     "ModeBudget",
+    "Way",
     "antenna_gain",
     "dish_diameter",
     "dish_gain",
@@ -22,4 +23,5 @@ __all__ = [
     "link_budget",
     "longest_free_space_range",
     "smallest_dish",
+    "way_name",
 ]

@@ -8,7 +8,7 @@ from dataclasses import dataclass, replace
 from typing import Literal
 
 from profiler.budget.antenna import dish_diameter, near_field_warnings
-from profiler.budget.link import AIMED, free_space_loss, path_lines, table, total
+from profiler.budget.link import AIMED, Way, diameters, ends_of, free_space_loss, path_lines, table, total
 from profiler.checks import finite
 from profiler.errors import InputError
 from profiler.models import Radio, RadioMode, Terminal
@@ -17,9 +17,7 @@ from profiler.units import wavelength
 
 __all__ = ["Answer", "least_gain", "least_power", "longest_free_space_range", "smallest_dish"]
 
-Way = Literal["a_to_b", "b_to_a"]
 Resized = Literal["both", "transmitter", "receiver"]
-_WAYS = {"a_to_b": "AB", "b_to_a": "BA"}
 
 
 @dataclass(frozen=True, slots=True)
@@ -90,7 +88,7 @@ def longest_free_space_range(
     Source: Rec. ITU-R P.525-4 §2.3, and those of `mode_threshold`.
     """
     chosen, threshold, wanted = _wanted(radio, mode, bit_error_ratio, fade_margin_db)
-    lines = (*table(radio, _WAYS[direction], chosen, frequency_hz, ()), *_negated(wanted))
+    lines = (*table(radio, direction, chosen, frequency_hz, ()), *_negated(wanted))
     per_metre_db = float(free_space_loss(1.0, frequency_hz))
     distance_m = float(10.0 ** ((total(lines) - per_metre_db) / 20.0))
     return Answer(
@@ -100,7 +98,7 @@ def longest_free_space_range(
         lines,
         threshold.lines,
         (AIMED, "free space: no gases, no obstacles", *threshold.assumptions),
-        near_field_warnings(_diameters(radio), distance_m, frequency_hz),
+        near_field_warnings(diameters(radio), distance_m, frequency_hz),
     )
 
 
@@ -150,16 +148,16 @@ def least_power(
     """
     chosen, threshold, wanted = _wanted(radio, mode, bit_error_ratio, fade_margin_db)
     path = path_lines(distance_m, frequency_hz, gas_db, diffraction_db)
-    known = [line for line in table(radio, _WAYS[direction], chosen, frequency_hz, path) if line.unit != "dBm"]
+    known = [line for line in table(radio, direction, chosen, frequency_hz, path) if line.unit != "dBm"]
     lines = (*wanted, *_negated(known))
     return Answer(
         total(lines),
         "dBm",
-        f"transmit power {_WAYS[direction][0]}",
+        f"transmit power {ends_of(direction)[0]}",
         lines,
         threshold.lines,
         (AIMED, *threshold.assumptions),
-        near_field_warnings(_diameters(radio), distance_m, frequency_hz),
+        near_field_warnings(diameters(radio), distance_m, frequency_hz),
     )
 
 
@@ -214,19 +212,18 @@ def least_gain(
     Source: as `link_budget`.
     """
     chosen, threshold, wanted = _wanted(radio, mode, bit_error_ratio, fade_margin_db)
-    way = _WAYS[direction]
-    new = _new(way, resized)
+    new = _new(direction, resized)
     path = path_lines(distance_m, frequency_hz, gas_db, diffraction_db)
-    forward = table(_isotropic(radio, new), way, chosen, frequency_hz, path)
+    forward = table(_isotropic(radio, new), direction, chosen, frequency_hz, path)
     lines = (*wanted, *_negated(line for line in forward if line.unit != "dBi" or line.name[-1] not in new))
     return Answer(
         total(lines) / len(new),
         "dBi",
-        "gain of both antennas together" if resized == "both" else f"antenna gain {new}",
+        "gain of both antennas together" if resized == "both" else f"antenna gain {new[0]}",
         lines,
         threshold.lines,
         (AIMED, *threshold.assumptions),
-        near_field_warnings(_diameters(radio) | dict.fromkeys(new), distance_m, frequency_hz),
+        near_field_warnings(diameters(radio) | dict.fromkeys(new), distance_m, frequency_hz),
     )
 
 
@@ -290,7 +287,7 @@ def smallest_dish(
         fade_margin_db=fade_margin_db,
     )
     # Equal dishes differ by their efficiencies alone: each counts as one of mean gain and of mean efficiency in dB.
-    new = _new(_WAYS[direction], resized)
+    new = _new(direction, resized)
     efficiencies = [_efficiency(radio, end, efficiency) for end in new]
     mean_efficiency = math.prod(efficiencies) ** (1.0 / len(efficiencies))
     diameter_m = float(dish_diameter(gain.value, mean_efficiency, frequency_hz))
@@ -301,13 +298,14 @@ def smallest_dish(
         value=diameter_m,
         unit="m",
         assumptions=(AIMED, aperture, *gain.assumptions[1:]),
-        warnings=near_field_warnings(_diameters(radio) | dict.fromkeys(new, diameter_m), distance_m, frequency_hz),
+        warnings=near_field_warnings(diameters(radio) | dict.fromkeys(new, diameter_m), distance_m, frequency_hz),
     )
 
 
-def _new(way: str, resized: Resized) -> str:
+def _new(way: Way, resized: Resized) -> tuple[str, ...]:
     """Give the ends that get a new antenna."""
-    return {"both": way, "transmitter": way[0], "receiver": way[1]}[resized]
+    sender, receiver = ends_of(way)
+    return {"both": (sender, receiver), "transmitter": (sender,), "receiver": (receiver,)}[resized]
 
 
 def _wanted(
@@ -342,29 +340,21 @@ def _mode(radio: Radio, name: str | None) -> RadioMode:
     raise InputError(f"mode = {name}: must be one of {', '.join(mode.name for mode in radio.modes)}")
 
 
-def _terminal(radio: Radio, end: str) -> Terminal:
-    return radio.terminal_a if end == "A" else radio.terminal_b
-
-
-def _isotropic(radio: Radio, ends: str) -> Radio:
+def _isotropic(radio: Radio, ends: tuple[str, ...]) -> Radio:
     """Put an isotropic antenna at each of the ends, a stand-in for an unknown one whose line is then left out."""
 
     def blank(end: str) -> Terminal:
-        terminal = _terminal(radio, end)
+        terminal = radio.terminals[end]
         return replace(terminal, gain_dbi=0.0, diameter_m=None, efficiency=None) if end in ends else terminal
 
     return replace(radio, terminal_a=blank("A"), terminal_b=blank("B"))
 
 
 def _efficiency(radio: Radio, end: str, given: float | None) -> float:
-    efficiency = _terminal(radio, end).efficiency if given is None else given
+    efficiency = radio.terminals[end].efficiency if given is None else given
     if efficiency is None:
         raise InputError(f"terminal {end}: no antenna efficiency: give it (0 to 1), the diameter follows from it")
     return efficiency
-
-
-def _diameters(radio: Radio) -> dict[str, float | None]:
-    return {"A": radio.terminal_a.diameter_m, "B": radio.terminal_b.diameter_m}
 
 
 def _negated(lines: Iterable[Line]) -> tuple[Line, ...]:

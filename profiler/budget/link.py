@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import math
 from dataclasses import dataclass
+from typing import Literal, get_args
 
 import numpy as np
 from numpy.typing import ArrayLike
@@ -14,7 +15,24 @@ from profiler.models import Radio, RadioMode
 from profiler.receiver import Line, Threshold, mode_threshold
 from profiler.units import Float, wavelength
 
-__all__ = ["Budget", "Direction", "ModeBudget", "free_space_loss", "link_budget", "path_lines", "table", "total"]
+__all__ = [
+    "AIMED",
+    "Budget",
+    "Direction",
+    "ModeBudget",
+    "Way",
+    "diameters",
+    "ends_of",
+    "free_space_loss",
+    "link_budget",
+    "path_lines",
+    "table",
+    "total",
+    "way_name",
+]
+
+Way = Literal["a_to_b", "b_to_a"]
+"""A direction of the hop, by the end that sends and the end that receives."""
 
 FREE_SPACE_NOTE = "20·log10(4π·d/λ), Rec. ITU-R P.525-4 §2.3"
 AIMED = "antennas aimed at each other and matched in polarization: full gain at both ends"
@@ -58,6 +76,30 @@ class Budget:
     b_to_a: Direction
     assumptions: tuple[str, ...]
     warnings: tuple[str, ...]
+
+    def weaker(self, mode: int = 0) -> tuple[Way, ModeBudget]:
+        """Give the direction in which a mode has less level, and so less fade margin, and the mode's row there."""
+        rows: tuple[tuple[Way, ModeBudget], ...] = (
+            ("a_to_b", self.a_to_b.modes[mode]),
+            ("b_to_a", self.b_to_a.modes[mode]),
+        )
+        return min(rows, key=lambda each: each[1].received_dbm)
+
+
+def way_name(way: Way) -> str:
+    """Write a direction as people read it.
+
+    Examples
+    --------
+    >>> way_name("b_to_a")
+    'B to A'
+    """
+    return " to ".join(ends_of(way))
+
+
+def ends_of(way: Way) -> tuple[str, str]:
+    """Name the end that sends and the end that receives."""
+    return ("A", "B") if way == "a_to_b" else ("B", "A")
 
 
 def free_space_loss(distance_m: ArrayLike, frequency_hz: ArrayLike) -> Float:
@@ -169,21 +211,16 @@ def link_budget(
                 for mode, threshold in zip(modes, thresholds, strict=True)
             ),
         )
-        for way in ("AB", "BA")
+        for way in get_args(Way)
     )
-    warnings = near_field_warnings(
-        {"A": radio.terminal_a.diameter_m, "B": radio.terminal_b.diameter_m}, distance_m, frequency_hz
-    )
+    warnings = near_field_warnings(diameters(radio), distance_m, frequency_hz)
     return Budget(a_to_b, b_to_a, _assumptions(modes, thresholds), warnings)
 
 
-def table(radio: Radio, way: str, mode: RadioMode, frequency_hz: float, path: tuple[Line, ...]) -> tuple[Line, ...]:
-    """Lines of one direction from power to received level, the ``path``'s and the other losses between the antennas.
-
-    ``way`` is the end that sends and the end that receives: "AB" or "BA".
-    """
-    sender, receiver = way[0], way[1]
-    ends = {"A": radio.terminal_a, "B": radio.terminal_b}
+def table(radio: Radio, way: Way, mode: RadioMode, frequency_hz: float, path: tuple[Line, ...]) -> tuple[Line, ...]:
+    """Lines of one direction from power to received level, the ``path``'s and the other losses between the antennas."""
+    sender, receiver = ends_of(way)
+    ends = radio.terminals
     power_dbm = ends[sender].power_dbm if mode.power_dbm is None else mode.power_dbm
     power_note = "as given" if mode.power_dbm is None else f"as given for mode {mode.name}"
     return (
@@ -223,12 +260,17 @@ def total(lines: tuple[Line, ...]) -> float:
     return math.fsum(line.value for line in lines)
 
 
-def _direction(way: str, path: tuple[Line, Line, Line], rows: tuple[ModeBudget, ...]) -> Direction:
-    first = rows[0]
+def diameters(radio: Radio) -> dict[str, float | None]:
+    """Dish diameter of each end, where it is given."""
+    return {end: terminal.diameter_m for end, terminal in radio.terminals.items()}
+
+
+def _direction(way: Way, path: tuple[Line, Line, Line], rows: tuple[ModeBudget, ...]) -> Direction:
+    first, (sender, receiver) = rows[0], ends_of(way)
     free_space_db, gas_db, diffraction_db = (0.0 - line.value for line in path)
     return Direction(
-        transmitter=way[0],
-        receiver=way[1],
+        transmitter=sender,
+        receiver=receiver,
         free_space_db=free_space_db,
         gas_db=gas_db,
         diffraction_db=diffraction_db,

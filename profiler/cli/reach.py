@@ -16,15 +16,14 @@ from profiler.errors import InputError
 if TYPE_CHECKING:
     from rich.table import Table
 
-    from profiler.budget import Answer
+    from profiler.budget import Answer, Way
     from profiler.cli.screen import Scale
     from profiler.receiver import Line
     from profiler.study import Study
 
 __all__ = ["command"]
 
-Way = Literal["a_to_b", "b_to_a"]
-_WAYS: dict[Way, str] = {"a_to_b": "A to B", "b_to_a": "B to A"}
+_WAYS: tuple[Way, ...] = ("a_to_b", "b_to_a")
 
 
 @click.command("reach")
@@ -39,7 +38,7 @@ _WAYS: dict[Way, str] = {"a_to_b": "A to B", "b_to_a": "B to A"}
     metavar="DB",
     help="Margin to keep.",
 )
-@click.option("--direction", type=click.Choice(["a_to_b", "b_to_a"]), help="Direction to answer for; both by default.")
+@click.option("--direction", type=click.Choice(_WAYS), help="Direction to answer for; both by default.")
 @click.option(
     "--resize",
     type=click.Choice(["both", "a", "b"]),
@@ -78,7 +77,7 @@ def command(
             f"{hop.source}: radio: must be given to answer from; add [radio.a], [radio.b] and [[radio.mode]]"
         )
     wanted = {"mode": mode, "bit_error_ratio": bit_error_ratio, "fade_margin_db": fade_margin_db}
-    ways: tuple[Way, ...] = tuple(_WAYS) if direction is None else (direction,)
+    ways = _WAYS if direction is None else (direction,)
     with named(hop.source):
         study = run_study(hop)
         answers = {way: _answers(study, way, resize, efficiency, wanted) for way in ways}
@@ -121,11 +120,12 @@ def _answers(
 
 def _show(answers: dict[Way, dict[str, Answer]], *, feet: bool, quiet: bool, color: bool) -> None:
     """Print the answers, then the lines that each stands on."""
+    from profiler.budget import way_name
     from profiler.cli.screen import Scale, console, say, show_notes, show_table
 
     screen, scale = console(color=color), Scale(feet=feet)
     questions = {
-        name: {_WAYS[way]: found[name] for way, found in answers.items()} for name in next(iter(answers.values()))
+        name: {way_name(way): found[name] for way, found in answers.items()} for name in next(iter(answers.values()))
     }
     for name, found in questions.items():
         values = ", ".join(f"{_value(answer, scale)} {way}" for way, answer in found.items())

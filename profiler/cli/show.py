@@ -38,7 +38,7 @@ def show_study(study: Study, *, feet: bool, quiet: bool, color: bool) -> None:
     if study.budget is not None:
         say(screen, "")
         show_table(screen, _budget(study))
-    if study.availability is not None:
+    if study.outage.availability is not None:
         _show_availability(screen, study)
     if study.confidence is not None:
         _show_confidence(screen, study, scale)
@@ -65,7 +65,7 @@ def _numbers_used(study: Study, scale: Scale) -> tuple[str, ...]:
         )
         if difference is not None
     ]
-    climate = () if study.availability is None else study.availability.inputs
+    climate = () if study.outage.availability is None else study.outage.availability.inputs
     named = [f"{use.info.path.name} at {use.share:.0%} of the points" for use in terrain.sources[:_MOST_NAMED]]
     unnamed = len(terrain.sources) - len(named)
     more = f", and {unnamed} more" if unnamed else ""
@@ -210,7 +210,9 @@ def _span(value: float | None, most: float | None) -> str:
 
 def _show_availability(screen: Console, study: Study) -> None:
     """Print outage by mechanism, the objective, and the total of every mode."""
-    found = study.availability
+    from profiler.budget import way_name
+
+    found = study.outage.availability
     assert found is not None
     table = compact_table("outage %", "multipath", "selective", "rain", "obstruction", "total")
     for period, outages in (("worst month", found.worst_month_percent), ("year", found.year_percent)):
@@ -231,14 +233,14 @@ def _show_availability(screen: Console, study: Study) -> None:
             f" (set by {target.margin_set_by}).",
             {True: "", False: "red", None: "yellow"}[target.met],
         )
-    if len(study.mode_outages) > 1:
+    if len(study.outage.modes) > 1:
         headers = ("weaker\nway", "fade margin\ndB", "worst month\n%", "year\n%", "objective")
         modes = compact_table("mode", *headers, wraps="mode")
-        for mode in study.mode_outages:
+        for mode in study.outage.modes:
             met = "-" if mode.met is None else "met" if mode.met else "missed"
             modes.add_row(
                 mode.mode,
-                mode.direction,
+                way_name(mode.direction),
                 f"{mode.fade_margin_db:.2f}",
                 _percent(mode.worst_month_percent),
                 _percent(mode.year_percent),

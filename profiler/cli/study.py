@@ -92,7 +92,7 @@ def _profile(study: Study, **axes: Any) -> Any:
 def _margins(study: Study) -> Any:
     from profiler.figures import margin_figure
 
-    if study.outage_curve is None:
+    if study.outage.curve is None:
         raise InputError(
             f"{study.hop.source}: --margin-figure: must have a [radio] with a threshold and [availability] to draw"
         )

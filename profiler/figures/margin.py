@@ -10,6 +10,7 @@ from __future__ import annotations
 
 from typing import TYPE_CHECKING
 
+from profiler.budget import way_name
 from profiler.errors import InputError
 from profiler.figures import style
 from profiler.figures.blocks import columns_at, foot, head, heading, rows, titles
@@ -22,7 +23,7 @@ from profiler.figures.words import hop_facts, link_notes, outage_words
 if TYPE_CHECKING:
     from matplotlib.figure import Figure
 
-    from profiler.budget import Budget, ModeBudget
+    from profiler.budget import ModeBudget
     from profiler.study.result import Study
 
 __all__ = ["margin_figure"]
@@ -60,7 +61,7 @@ def margin_figure(study: Study, *, feet: bool = False) -> Figure:
             f"{study.hop.source}: radio = not given: must be given for the margin figure; give a [radio] or leave the "
             "figure out"
         )
-    way, row = _weaker(study.budget)
+    way, row = study.budget.weaker()
     with style.defaults():
         page = Page()
         top = head(
@@ -71,32 +72,24 @@ def margin_figure(study: Study, *, feet: bool = False) -> Figure:
             name=study.hop.name,
             facts=hop_facts(study.hop, study.line.distance_m, Scale(feet)),
         )
-        left = heading(page, MARGIN_IN, top + 0.14, f"Levels {way}{f', mode {row.name}' if row.name else ''}")
+        left = heading(page, MARGIN_IN, top + 0.14, f"Levels {way_name(way)}{f', mode {row.name}' if row.name else ''}")
         _, left = draw_levels(page, MARGIN_IN, left + style.SMALL * LINE_IN + 0.02, _LEFT_ROOM, steps_of(row))
         left = _targets(page, _modes(page, left + 0.14, study), study)
         right = top
-        if study.availability is not None and study.outage_curve is not None:
+        if study.outage.availability is not None and study.outage.curve is not None:
             right = heading(page, _RIGHT, top + 0.14, "Outage against fade margin")
-            _, right = draw_outage(page, _RIGHT, right, _RIGHT_ROOM, study.availability, study.outage_curve)
+            _, right = draw_outage(page, _RIGHT, right, _RIGHT_ROOM, study.outage.availability, study.outage.curve)
         return page.finish(foot(page, max(left, right) + 0.12, link_notes(study)))
 
 
-def _weaker(budget: Budget) -> tuple[str, ModeBudget]:
-    """Return the direction with less margin (or less level, where no threshold is known), in its first mode."""
-    both = (("A to B", budget.a_to_b.modes[0]), ("B to A", budget.b_to_a.modes[0]))
-    return min(
-        both, key=lambda pair: pair[1].received_dbm if pair[1].fade_margin_db is None else pair[1].fade_margin_db
-    )
-
-
 def _met(study: Study) -> bool | None:
-    objective = None if study.availability is None else study.availability.objective
+    objective = None if study.outage.availability is None else study.outage.availability.objective
     return None if objective is None else objective.met
 
 
 def _word(study: Study) -> str:
     """Give the verdict on the margin alone; the hop as a whole is judged on the profile figure."""
-    if study.availability is None or study.availability.objective is None:
+    if study.outage.availability is None or study.outage.availability.objective is None:
         return "NOT JUDGED"
     return {True: "OBJECTIVE MET", False: "OBJECTIVE MISSED", None: "UNDECIDED"}[_met(study)]
 
@@ -106,7 +99,7 @@ def _sentence(study: Study, row: ModeBudget) -> str:
     if row.fade_margin_db is None:
         return minus(f"Received level {row.received_dbm:.1f} dBm; no threshold is given, so there is no fade margin")
     margin = minus(f"{row.fade_margin_db:.1f} dB")
-    outage = study.availability
+    outage = study.outage.availability
     if outage is None:
         return f"Fade margin {margin}; no outage predicted, as no climate numbers are given"
     lost = outage_words(outage)
@@ -121,10 +114,10 @@ def _sentence(study: Study, row: ModeBudget) -> str:
 def _modes(page: Page, top: float, study: Study) -> float:
     """List every mode in both directions, with its outage in the weaker one."""
     assert study.budget is not None
-    outages = {each.mode: each for each in study.mode_outages}
+    outages = {each.mode: each for each in study.outage.modes}
     cells = []
-    for there, back in zip(study.budget.a_to_b.modes, study.budget.b_to_a.modes, strict=True):
-        margins = [each.fade_margin_db for each in (there, back) if each.fade_margin_db is not None]
+    for number, there in enumerate(study.budget.a_to_b.modes):
+        back, margin_db = study.budget.b_to_a.modes[number], study.budget.weaker(number)[1].fade_margin_db
         found = outages.get(there.name)
         met = None if found is None else found.met
         cells.append(
@@ -133,7 +126,7 @@ def _modes(page: Page, top: float, study: Study) -> float:
                 minus(f"{there.received_dbm:.1f} dBm"),
                 minus(f"{back.received_dbm:.1f} dBm"),
                 "–" if there.threshold_dbm is None else minus(f"{there.threshold_dbm:.1f} dBm"),
-                minus(f"{min(margins):.1f} dB") if margins else "–",
+                "–" if margin_db is None else minus(f"{margin_db:.1f} dB"),
                 "–" if found is None else percent_text(found.worst_month_percent),
                 "–" if found is None else percent_text(found.year_percent),
                 {True: "met", False: "missed", None: "–"}[met],
@@ -147,7 +140,7 @@ def _modes(page: Page, top: float, study: Study) -> float:
 
 def _targets(page: Page, top: float, study: Study) -> float:
     """List what was asked for, what is reached, and which margin would do."""
-    objective = None if study.availability is None else study.availability.objective
+    objective = None if study.outage.availability is None else study.outage.availability.objective
     if objective is None:
         return top
     cells = [

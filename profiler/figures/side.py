@@ -47,7 +47,7 @@ def title_block(page: Page, top: float, study: Study, scale: Scale) -> float:
             lw=1.8 if result is study.governing else 1.0,
             dashes=dashes or (None, None),
         )
-        title, verdict, numbers = rule_lines(study, result, scale)
+        title, verdict, numbers = rule_lines(result, scale)
         left, room = _SIDE + 0.38, _SIDE_ROOM - 0.38
         top = page.paragraph(left, top, title, room)
         color = style.PASS if result.passes else style.FAIL

@@ -83,11 +83,10 @@ def hop_rows(study: Study, scale: Scale) -> list[tuple[str, str]]:
 def link_rows(study: Study) -> list[tuple[str, str]]:
     """Fade margin and outage in a row each; what is not known has none."""
     rows = []
-    outage = study.availability
-    margins = [] if study.budget is None else [study.budget.a_to_b.fade_margin_db, study.budget.b_to_a.fade_margin_db]
-    known = [margin for margin in margins if margin is not None]
-    if known:
-        rows.append(("fade margin", minus(f"{min(known):.1f} dB")))
+    outage = study.outage.availability
+    margin_db = None if study.budget is None else study.budget.weaker()[1].fade_margin_db
+    if margin_db is not None:
+        rows.append(("fade margin", minus(f"{margin_db:.1f} dB")))
     if outage is not None:
         rows.append(("outage", outage_words(outage)))
     return rows
@@ -172,7 +171,7 @@ def profile_notes(study: Study) -> list[tuple[str, list[str]]]:
 def link_assumptions(study: Study) -> list[str]:
     """Collect what only the budget and the outage assume."""
     budget = () if study.budget is None else study.budget.assumptions
-    outage = () if study.availability is None else study.availability.assumptions
+    outage = () if study.outage.availability is None else study.outage.availability.assumptions
     return list(dict.fromkeys([*budget, *outage]))
 
 
@@ -182,7 +181,7 @@ def link_notes(study: Study) -> list[tuple[str, list[str]]]:
     path = [f"gases {study.air.gas_db:.2f} dB; air: {study.air.source}"]
     if loss is not None:
         path.insert(0, f"diffraction {loss.loss_db:.1f} dB by {loss.method} at k = {k_text(loss.k)}")
-    inputs = [] if study.availability is None else study.availability.inputs
+    inputs = [] if study.outage.availability is None else study.outage.availability.inputs
     numbers = [each.line for each in inputs]
     blocks = _notes(study, [*path, *link_assumptions(study)], list(study.warnings))
     return [("Numbers used", numbers), *blocks] if numbers else blocks

@@ -5,7 +5,7 @@ The heights plan is in `profiler.study.plan`: a study does without it, and start
 
 from profiler.study.document import plain, point_table, to_document
 from profiler.study.link import Air, losses_at
-from profiler.study.outage import ModeOutage
+from profiler.study.outage import ModeOutage, OutageResult
 from profiler.study.result import (
     Corridor,
     Place,
@@ -22,6 +22,7 @@ __all__ = [
     "Air",
     "Corridor",
     "ModeOutage",
+    "OutageResult",
     "Place",
     "Provenance",
     "Relief",

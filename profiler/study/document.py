@@ -152,8 +152,8 @@ def _budget(budget: Budget) -> dict[str, Any]:
 
 def _availability(study: Study) -> dict[str, Any] | None:
     """Give the outage of the reference mode, with the totals of every mode beside it."""
-    found = study.availability
-    return None if found is None else {**plain(found), "modes": plain(study.mode_outages)}
+    found = study.outage.availability
+    return None if found is None else {**plain(found), "modes": plain(study.outage.modes)}
 
 
 def _confidence(study: Study) -> dict[str, Any] | None:

@@ -40,7 +40,7 @@ class Link:
     @classmethod
     def none(cls) -> Link:
         """Give the link that was not asked for."""
-        return cls({}, None, OutageResult(None, None, (), (), ()))
+        return cls({}, None, OutageResult())
 
 
 def link(hop: Hop, profile: Profile, climate: ClimateUse, air: Air, centre_a_m: float, centre_b_m: float) -> Link:

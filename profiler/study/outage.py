@@ -14,7 +14,7 @@ from profiler.study.climate import ClimateUse
 
 if TYPE_CHECKING:
     from profiler.availability import Availability, OutageCurve, OutageModel, PathFacts
-    from profiler.budget import Budget, ModeBudget
+    from profiler.budget import Budget, Way
 
 __all__ = ["ModeOutage", "OutageResult", "predict_outage"]
 
@@ -26,7 +26,7 @@ class ModeOutage:
     """Outage of one mode in its weaker direction."""
 
     mode: str
-    direction: str
+    direction: Way
     fade_margin_db: float
     worst_month_percent: float
     year_percent: float
@@ -37,11 +37,11 @@ class ModeOutage:
 class OutageResult:
     """Outage of the reference mode, its curve over the margin, and the totals of every mode; or nothing and why."""
 
-    availability: Availability | None
-    curve: OutageCurve | None
-    modes: tuple[ModeOutage, ...]
-    assumptions: tuple[str, ...]
-    warnings: tuple[str, ...]
+    availability: Availability | None = None
+    curve: OutageCurve | None = None
+    modes: tuple[ModeOutage, ...] = ()
+    assumptions: tuple[str, ...] = ()
+    warnings: tuple[str, ...] = ()
 
     @property
     def meets(self) -> bool | None:
@@ -79,27 +79,28 @@ def predict_outage(
     """
     choice = climate.choice
     if choice is None:
-        return OutageResult(None, None, (), (), climate.warnings)
-    rows = () if budget is None else _weaker_rows(budget)
-    known = [(direction, row) for direction, row in rows if row.fade_margin_db is not None]
+        return OutageResult(warnings=climate.warnings)
+    rows = [] if budget is None else [budget.weaker(mode) for mode in range(len(budget.a_to_b.modes))]
+    known = [(way, row) for way, row in rows if row.fade_margin_db is not None]
     if hop.radio is None or not known:
         reason = "availability not predicted: the hop file gives no radio with a threshold"
         asked = choice.objective != Objective()
         unjudged = ("the availability objective was not judged: no radio with a threshold",) if asked else ()
-        return OutageResult(None, None, (), (reason,), (*climate.warnings, *unjudged))
+        return OutageResult(assumptions=(reason,), warnings=(*climate.warnings, *unjudged))
     if climate.gap is not None:
         judged = ", and the objective not judged" if hop.has_objective else ""
         reason = f"availability was not predicted{judged}: {climate.gap}"
-        return OutageResult(None, None, (), (), (*climate.warnings, reason))
+        return OutageResult(warnings=(*climate.warnings, reason))
     from profiler.availability import outage_curve, outage_model, predict
+    from profiler.budget import way_name
 
     path = _facts(hop, profile, climate, centre_a_m, centre_b_m, losses)
     low_k = min(rule.k for rule in hop.rules)
     counted_db = losses[climate.median_k].loss_db
     signatures = {mode.name: mode.signature for mode in hop.radio.modes}
     models: dict[str, OutageModel] = {}
-    found: list[tuple[str, str, Availability]] = []
-    for direction, row in known:
+    found: list[tuple[str, Way, Availability]] = []
+    for way, row in known:
         models[row.name] = outage_model(
             path,
             choice,
@@ -110,9 +111,9 @@ def predict_outage(
             sources=climate.sources,
         )
         assert row.fade_margin_db is not None
-        found.append((row.name, direction, predict(models[row.name], row.fade_margin_db)))
-    name, direction, first = found[0]
-    assumption = f"availability is that of mode {name}, {direction}: the direction with less fade margin"
+        found.append((row.name, way, predict(models[row.name], row.fade_margin_db)))
+    name, way, first = found[0]
+    assumption = f"availability is that of mode {name}, {way_name(way)}: the direction with less fade margin"
     return OutageResult(
         availability=first,
         curve=outage_curve(models[name], _CURVE_MARGINS_DB),
@@ -122,7 +123,7 @@ def predict_outage(
     )
 
 
-def _summary(mode: str, direction: str, availability: Availability) -> ModeOutage:
+def _summary(mode: str, direction: Way, availability: Availability) -> ModeOutage:
     return ModeOutage(
         mode=mode,
         direction=direction,
@@ -131,16 +132,6 @@ def _summary(mode: str, direction: str, availability: Availability) -> ModeOutag
         year_percent=availability.year_percent.total,
         met=None if availability.objective is None else availability.objective.met,
     )
-
-
-def _weaker_rows(budget: Budget) -> tuple[tuple[str, ModeBudget], ...]:
-    """Each mode with the direction that has less fade margin."""
-
-    def margin(pair: tuple[str, ModeBudget]) -> float:
-        return np.inf if pair[1].fade_margin_db is None else pair[1].fade_margin_db
-
-    both = zip(budget.a_to_b.modes, budget.b_to_a.modes, strict=True)
-    return tuple(min((("A to B", there), ("B to A", back)), key=margin) for there, back in both)
 
 
 def _facts(

@@ -6,7 +6,6 @@ from dataclasses import dataclass
 from typing import TYPE_CHECKING
 
 if TYPE_CHECKING:  # what the hop does not ask for is not loaded
-    from profiler.availability import Availability, OutageCurve
     from profiler.budget import Budget
     from profiler.confidence import Confidence
     from profiler.diffraction import DiffractionLoss
@@ -15,7 +14,7 @@ if TYPE_CHECKING:  # what the hop does not ask for is not loaded
     from profiler.path import PathLine
     from profiler.study.climate import ClimateUse
     from profiler.study.link import Air
-    from profiler.study.outage import ModeOutage
+    from profiler.study.outage import OutageResult
     from profiler.terrain import SourceUse
     from profiler.units import Float
 
@@ -159,9 +158,7 @@ class Study:
     median_diffraction: DiffractionLoss | None
     air: Air
     budget: Budget | None
-    availability: Availability | None
-    outage_curve: OutageCurve | None
-    mode_outages: tuple[ModeOutage, ...]
+    outage: OutageResult
     confidence: Confidence | None
     corridor: Corridor | None
     climate: ClimateUse

@@ -37,7 +37,7 @@ def judge(hop: Hop, rules: Sequence[RuleResult], budget: Budget | None, meets_ob
     Verdict
     """
     clears = all(result.passes for result in rules)
-    margin_db = _weaker_margin(budget)
+    margin_db = None if budget is None else budget.weaker()[1].fade_margin_db
     works = None if margin_db is None else margin_db >= 0.0
     return Verdict(
         passes=clears and works is not False and (meets_objective is True or not hop.has_objective),
@@ -47,15 +47,6 @@ def judge(hop: Hop, rules: Sequence[RuleResult], budget: Budget | None, meets_ob
         headline=_headline(hop, rules, margin_db, meets_objective, feet=False),
         headline_feet=_headline(hop, rules, margin_db, meets_objective, feet=True),
     )
-
-
-def _weaker_margin(budget: Budget | None) -> float | None:
-    """Fade margin of the reference mode in the direction that has less."""
-    if budget is None:
-        return None
-    margins = [way.fade_margin_db for way in (budget.a_to_b, budget.b_to_a)]
-    known = [margin for margin in margins if margin is not None]
-    return min(known, default=None)
 
 
 def _headline(
