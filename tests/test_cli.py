@@ -1,5 +1,6 @@
 """The program as a user runs it: what it prints and writes, its exit codes, one line for everything that is wrong."""
 
+import contextlib
 import csv
 import io
 import json
@@ -213,9 +214,82 @@ def test_quiet_prints_the_verdict_only(run):
     assert err == ""
 
 
-def test_no_color_codes_in_a_file(run):
-    for words in ((), ("--no-color",)):
-        assert "\x1b" not in run("study", "hop.toml", *words)[1]
+EVERY_TABLE = [
+    ("study", "hop.toml"),
+    ("study", "fails.toml", "--feet"),
+    ("heights", "fails.toml"),
+    ("losses", "fails.toml"),
+    ("reach", "hop.toml"),
+    ("terrain", "egm96.tif", "egm2008.tif", "dem.tif", "cut.tif"),
+]
+
+
+@pytest.fixture
+def terminal(run, monkeypatch):
+    """Run the command line as at a terminal of some width that has colors, whatever this test itself runs at."""
+
+    def call(*words, width=80, **environment):
+        monkeypatch.delenv("NO_COLOR", raising=False)
+        for name, value in {"FORCE_COLOR": "1", "TERM": "xterm", "COLUMNS": str(width), **environment}.items():
+            monkeypatch.setenv(name, value)
+        return run(*words)[1]
+
+    return call
+
+
+@pytest.mark.parametrize("words", EVERY_TABLE)
+def test_a_terminal_gets_colors_unless_they_are_refused(terminal, run, words):
+    """By the option or by NO_COLOR, set and not empty (https://no-color.org); bold is an escape too."""
+    assert "\x1b[1" in terminal(*words)
+    assert "\x1b[1" in terminal(*words, NO_COLOR="")
+    assert "\x1b" not in terminal(*words, NO_COLOR="1")
+    assert "\x1b" not in terminal(*words, "--no-color")
+
+
+@pytest.mark.parametrize("words", EVERY_TABLE)
+def test_a_file_gets_no_colors(run, words):
+    assert "\x1b" not in run(*words)[1]
+
+
+@pytest.mark.parametrize("words", EVERY_TABLE)
+def test_no_word_and_no_number_is_split(terminal, words):
+    """At every width each word is one that stands in the widest output, and no line is wider but for a long word."""
+
+    def tokens(text):
+        return set(re.findall(r"[^\s;:,|─]+", text))
+
+    whole = tokens(terminal(*words, "--no-color", width=1000))
+    for width in (40, 60, 80, 110, 160):
+        out = terminal(*words, "--no-color", width=width)
+        assert tokens(out) <= whole
+        wide = [line for line in out.splitlines() if len(line.rstrip()) > width]
+        assert [line for line in wide if len(line.strip(" -").split()) > 1] == []
+
+
+@pytest.mark.skipif(sys.platform == "win32", reason="no pseudo-terminals there")
+def test_a_real_terminal_is_measured(here):
+    import fcntl
+    import pty
+    import struct
+    import termios
+
+    main_end, terminal_end = pty.openpty()
+    fcntl.ioctl(terminal_end, termios.TIOCSWINSZ, struct.pack("HHHH", 50, 60, 0, 0))
+    unset = ("COLUMNS", "LINES", "NO_COLOR", "FORCE_COLOR", "TTY_COMPATIBLE")
+    environment = {name: value for name, value in os.environ.items() if name not in unset}
+    command = [sys.executable, "-m", "profiler", "study", "hop.toml"]
+    environment |= {"PYTHONPATH": str(ROOT), "TERM": "xterm"}
+    with subprocess.Popen(command, stdin=terminal_end, stdout=terminal_end, env=environment) as running:
+        os.close(terminal_end)
+        text = b""
+        with contextlib.suppress(OSError):  # how Linux says that the other end is closed
+            while piece := os.read(main_end, 4096):
+                text += piece
+        assert running.wait(timeout=60) == 0
+    os.close(main_end)
+    assert b"\x1b[1;32mOver the plain: PASSES\x1b[0m" in text
+    lines = re.sub(r"\x1b\[[\d;]*m", "", text.decode()).splitlines()
+    assert 50 < max(len(line) for line in lines) <= 60
 
 
 def test_feet_and_miles_on_request(run):
@@ -348,7 +422,9 @@ def test_reach_answers_both_ways(run):
         # 135.9 dB of free space over 20.0 km, and 0.2 dB of gases: 185 - 136.1 = 48.9 dB less power would do
         assert answers[way]["least power on this hop"]["value"] == pytest.approx(27 - 48.9, abs=0.1)
         assert answers[way]["least equal antenna gains on this hop"]["value"] == pytest.approx(36 - 48.9 / 2, abs=0.1)
-    assert list(json.loads(run("reach", "hop.toml", "--direction", "b_to_a", "--json", "-")[1])["answers"]) == ["b_to_a"]
+    assert list(json.loads(run("reach", "hop.toml", "--direction", "b_to_a", "--json", "-")[1])["answers"]) == [
+        "b_to_a"
+    ]
 
 
 def test_reach_adds_up_on_the_terminal(run):
