@@ -13,7 +13,6 @@ RANKS = {
     "models": 1,
     "checks": 1,
     "terrain_error": 1,
-    "normal": 1,
     "terrain": 2,
     "path": 2,
     "climate": 2,

@@ -7,7 +7,6 @@ from numpy.typing import ArrayLike
 
 from profiler.checks import not_negative
 from profiler.errors import InputError
-from profiler.normal import normal_quantile, normal_tail
 from profiler.units import Float
 
 __all__ = ["obstruction_percent", "unknown_percent"]
@@ -68,14 +67,16 @@ def obstruction_percent(k_percent: ArrayLike, excess_loss_db: ArrayLike, fade_db
     The principle, diffraction fading by the variation of the refractivity gradient, is that of Rec. ITU-R P.530-18
     §2.2; the interpolation is this project's own.
     """
+    from scipy.special import ndtr, ndtri
+
     percent, excess = _statistics(k_percent, excess_loss_db)
     margin = not_negative("fade_db", fade_db, "dB")[..., np.newaxis]
     blocked = excess > margin
     first, last = excess[:-1], excess[1:]
     crosses = blocked[..., :-1] != blocked[..., 1:]
     share = np.where(crosses, (first - margin) / np.where(first == last, 1.0, first - last), 0.0)
-    quantile = normal_quantile(percent / 100.0)
-    crossing = 100.0 * normal_tail(-quantile[:-1] - share * np.diff(quantile))
+    quantile = ndtri(percent / 100.0)
+    crossing = 100.0 * ndtr(quantile[:-1] + share * np.diff(quantile))
     start = np.where(blocked[..., :-1], percent[:-1], crossing)
     stop = np.where(blocked[..., 1:], percent[1:], crossing)
     within = np.where(blocked[..., :-1] | blocked[..., 1:], stop - start, 0.0).sum(axis=-1)

@@ -12,7 +12,6 @@ import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
 from profiler.errors import InputError
-from profiler.normal import normal_quantile
 from profiler.units import Float
 
 __all__ = ["Covariance", "Draws", "correlation", "draw_field", "draw_inverse_k"]
@@ -165,6 +164,8 @@ def draw_inverse_k(k_percentiles: Sequence[tuple[float, float]], draws: int, rng
     >>> round(float(np.median(inverse)), 2), round(float(inverse.max()), 2)
     (0.75, 1.25)
     """
+    from scipy.special import ndtri
+
     pairs = np.asarray(k_percentiles, dtype=float)
     if pairs.ndim != 2 or pairs.shape[0] < 2 or pairs.shape[1] != 2:
         raise InputError(f"k_percentiles = {k_percentiles!r}: must be two or more pairs (percent not exceeded, k)")
@@ -174,5 +175,5 @@ def draw_inverse_k(k_percentiles: Sequence[tuple[float, float]], draws: int, rng
     if not (np.all(np.diff(k) >= 0) and k[0] > 0):
         raise InputError(f"k_percentiles: k = {k.tolist()}: must be above 0 and not fall as the percentage rises")
     score = rng.standard_normal(draws)
-    inverse_k: Draws = np.interp(score, normal_quantile(percent / 100.0), 1.0 / k).astype(np.float32)
+    inverse_k: Draws = np.interp(score, ndtri(percent / 100.0), 1.0 / k).astype(np.float32)
     return inverse_k
