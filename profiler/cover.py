@@ -7,7 +7,7 @@ from pathlib import Path
 
 import numpy as np
 
-from profiler.errors import InputError, MissingGroundError
+from profiler.errors import InputError, MissingGroundError, under
 from profiler.models import CoverChoice, Obstacle, SampleMethod, frozen_array
 from profiler.units import Float
 
@@ -121,8 +121,8 @@ def cover_along(
     if choice.landcover is not None:
         gaps = np.isnan(heights)
         if gaps.any():
-            heights[gaps] = _class_heights(choice, longitude[gaps], latitude[gaps])
-            files.extend(_files_of(choice.landcover))
+            heights[gaps], read = _class_heights(choice, longitude[gaps], latitude[gaps])
+            files.extend(read)
             notes.append(f"class heights from {choice.landcover.name} on {gaps.mean():.0%} of the path")
     if not choice.canopy and choice.landcover is None:
         heights[:] = 0.0
@@ -144,32 +144,31 @@ def cover_along(
     return Cover(frozen_array(heights), tuple(notes), tuple(files))
 
 
-def _files_of(path: Path) -> list[Path]:
-    """Give the file itself, or every file of a folder."""
-    return [path] if path.is_file() else sorted(each for each in path.rglob("*") if each.is_file())
-
-
 def _canopy(
     choice: CoverChoice, longitude: Float, latitude: Float, method: SampleMethod
-) -> tuple[Float, float, list[Path]]:
-    """Heights from the canopy rasters, NaN where they have none, the share that they cover, and which were read."""
+) -> tuple[Float, float, tuple[Path, ...]]:
+    """Heights from the canopy rasters, NaN where they have none, the share that they cover, and the files read."""
     from profiler.terrain import open_terrain
 
-    with open_terrain(choice.canopy, method=method, allow_mixed_datums=True, eight_bit=True) as canopy:
+    with (
+        under("cover.canopy"),
+        open_terrain(choice.canopy, method=method, allow_mixed_datums=True, eight_bit=True) as canopy,
+    ):
         samples = canopy.sample(longitude, latitude)
     heights = np.array(samples.ground_m)
     lowest = np.nanmin(heights, initial=0.0)
     if lowest < 0.0:
         raise InputError(f"cover.canopy = {choice.canopy[0]}: must hold heights of 0 m or more, not {lowest:g} m")
-    return heights, float(1.0 - np.isnan(heights).mean()), [use.info.path for use in samples.sources]
+    return heights, float(1.0 - np.isnan(heights).mean()), tuple(path for use in samples.sources for path in use.files)
 
 
-def _class_heights(choice: CoverChoice, longitude: Float, latitude: Float) -> Float:
-    """Height of the land-cover class under each point, NaN where the raster has no class."""
+def _class_heights(choice: CoverChoice, longitude: Float, latitude: Float) -> tuple[Float, tuple[Path, ...]]:
+    """Height of the land-cover class under each point, NaN where the raster has no class, and the files read."""
     from profiler.terrain import sample_classes
 
     assert choice.landcover is not None
-    classes = sample_classes(choice.landcover, longitude, latitude)
+    with under("cover.landcover"):
+        classes, files = sample_classes(choice.landcover, longitude, latitude)
     table = dict(choice.class_heights_m)
     found = {int(each) for each in np.unique(classes[classes >= 0])}
     unknown = sorted(found - table.keys())
@@ -181,4 +180,4 @@ def _class_heights(choice: CoverChoice, longitude: Float, latitude: Float) -> Fl
     heights = np.full(classes.shape, np.nan)
     for each in found:
         heights[classes == each] = table[each]
-    return heights
+    return heights, files

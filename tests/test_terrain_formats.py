@@ -90,25 +90,65 @@ def test_ascii_grid_by_corner_and_by_centre(tmp_path, header, west):
     assert found.sources[0].info.bounds.west == pytest.approx(west)
 
 
-def test_vrt_mosaic_reads_as_its_tiles(tmp_path, write_raster):
-    heights = np.arange(200.0).reshape(10, 20)
-    left, right = (
-        write_raster(f"v/{i}.tif", heights[:, 10 * i : 10 * i + 10], GRID @ Affine.translation(10 * i, 0))
-        for i in (0, 1)
-    )
-    sources = "".join(
-        f'<SimpleSource><SourceFilename relativeToVRT="1">v/{path.name}</SourceFilename><SourceBand>1</SourceBand>'
-        f'<SrcRect xOff="0" yOff="0" xSize="10" ySize="10"/><DstRect xOff="{10 * i}" yOff="0" xSize="10" ySize="10"/>'
-        "</SimpleSource>"
-        for i, path in enumerate((left, right))
-    )
-    (tmp_path / "m.vrt").write_text(
-        f'<VRTDataset rasterXSize="20" rasterYSize="10"><SRS>EPSG:4326</SRS>'
+@pytest.fixture
+def vrt(tmp_path, write_raster):
+    """Three tiles side by side and the VRT over them, in a folder each."""
+    heights, sources = np.arange(300.0).reshape(10, 30), ""
+    for i in range(3):
+        write_raster(f"tiles/{i}.tif", heights[:, 10 * i : 10 * i + 10], GRID @ Affine.translation(10 * i, 0))
+        sources += (
+            f'<SimpleSource><SourceFilename relativeToVRT="1">../tiles/{i}.tif</SourceFilename>'
+            '<SourceBand>1</SourceBand><SrcRect xOff="0" yOff="0" xSize="10" ySize="10"/>'
+            f'<DstRect xOff="{10 * i}" yOff="0" xSize="10" ySize="10"/></SimpleSource>'
+        )
+    path = tmp_path / "vrt" / "m.vrt"
+    path.parent.mkdir()
+    path.write_text(
+        f'<VRTDataset rasterXSize="30" rasterYSize="10"><SRS>EPSG:4326</SRS>'
         f"<GeoTransform>10, 0.01, 0, 50, 0, -0.01</GeoTransform>"
         f'<VRTRasterBand dataType="Float64" band="1">{sources}</VRTRasterBand></VRTDataset>'
     )
-    lon, lat = np.linspace(10.0, 10.2, 41), np.full(41, 49.95)
-    np.testing.assert_allclose(sample(tmp_path / "m.vrt", lon, lat).ground_m, sample(left.parent, lon, lat).ground_m)
+    return path
+
+
+def test_vrt_mosaic_reads_as_its_tiles(vrt, tmp_path):
+    lon, lat = np.linspace(10.0, 10.3, 61), np.full(61, 49.95)
+    tiles = sample(tmp_path / "tiles", lon, lat).ground_m
+    np.testing.assert_allclose(sample(vrt, lon, lat).ground_m, tiles)
+    np.testing.assert_allclose(sample(tmp_path, lon, lat).ground_m, tiles)  # the VRT and its tiles together
+
+
+def names(use):
+    return [str(path).partition("/tiles/")[2] or path.name for path in use.files]
+
+
+def test_a_source_names_the_pieces_of_a_vrt_that_it_was_read_from(vrt):
+    """Cells are 0.01°: up to 10.0949 the middle tile has no part in the blend, from 10.0951 it has."""
+    assert names(sample(vrt, [10.0, 10.0949], 49.95).sources[0]) == ["m.vrt", "0.tif"]
+    assert names(sample(vrt, [10.0, 10.0951], 49.95).sources[0]) == ["m.vrt", "0.tif", "1.tif"]
+    assert names(sample(vrt, [10.25], 49.95).sources[0]) == ["m.vrt", "2.tif"]
+
+
+def test_a_warped_vrt_names_all_that_it_is_made_from(tmp_path, write_raster):
+    import rasterio
+    from rasterio.shutil import copy
+    from rasterio.vrt import WarpedVRT
+
+    path = write_raster("plain.tif", FLAT, GRID)
+    with rasterio.open(path) as raster, WarpedVRT(raster, crs="EPSG:32632") as warped:
+        copy(warped, tmp_path / "w.vrt", driver="VRT")
+    assert names(sample(tmp_path / "w.vrt", 10.05, 49.95).sources[0]) == ["w.vrt", "plain.tif"]
+
+
+def test_a_source_names_the_files_beside_it_and_its_archive(tmp_path):
+    (tmp_path / "g.asc").write_text("ncols 2\nnrows 2\nxllcorner 10\nyllcorner 50\ncellsize 0.5\n1 2\n3 4\n")
+    (tmp_path / "g.prj").write_text(WGS84)
+    assert sample(tmp_path, 10.5, 50.5).sources[0].files == (tmp_path / "g.asc", tmp_path / "g.prj")
+    packed = tmp_path / "packed.zip"
+    with zipfile.ZipFile(packed, "w") as archive:
+        for name in ("g.asc", "g.prj"):
+            archive.write(tmp_path / name, f"in/{name}")
+    assert sample(packed, 10.5, 50.5).sources[0].files == (packed,)
 
 
 def test_cloud_optimized_geotiff(write_raster):

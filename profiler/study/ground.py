@@ -112,7 +112,7 @@ def read_ground(
 
 
 def _files(samples: Samples) -> list[Path]:
-    return [use.info.path for use in samples.sources]
+    return [path for use in samples.sources for path in use.files]
 
 
 def _lay_path(hop: Hop, terrain: Terrain) -> tuple[PathLine, float]:

@@ -13,6 +13,7 @@ from profiler.errors import RasterError
 from profiler.terrain.describe import Tile
 from profiler.terrain.gdal import OpenRasters, read_window
 from profiler.terrain.index import Index, Ints
+from profiler.terrain.pieces import Window
 from profiler.units import Float
 
 __all__ = ["Tally", "fetch", "fetch_heights", "to_metres"]
@@ -28,13 +29,15 @@ _LOWEST_GROUND_M, _LOWEST_SEABED_M, _HIGHEST_M = -500.0, -12_000.0, 9_000.0
 class Tally:
     """What reading cost and met, by tile."""
 
+    windows: dict[int, list[Window]] = field(default_factory=dict)
     blocks: dict[int, int] = field(default_factory=dict)
     read_bytes: dict[int, int] = field(default_factory=dict)
     undeclared: dict[int, dict[float, int]] = field(default_factory=dict)
     seabed: set[int] = field(default_factory=set)
 
     def count(self, number: int, tile: Tile, rows: tuple[int, int], cols: tuple[int, int]) -> None:
-        """Add the blocks that the window rows[0]:rows[1], cols[0]:cols[1] touches, and the cells in them."""
+        """Add the window rows[0]:rows[1], cols[0]:cols[1], the blocks that it touches, and the cells in them."""
+        self.windows.setdefault(number, []).append((*rows, *cols))
         block_rows, block_cols = tile.block
         first_row, last_row = rows[0] // block_rows, (rows[1] - 1) // block_rows
         first_col, last_col = cols[0] // block_cols, (cols[1] - 1) // block_cols

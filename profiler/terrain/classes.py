@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-from collections.abc import Sequence
 from pathlib import Path
 
 import numpy as np
@@ -10,28 +9,28 @@ from numpy.typing import ArrayLike, NDArray
 
 from profiler.errors import RasterError
 from profiler.terrain.cells import Tally, fetch
-from profiler.terrain.describe import Reading
+from profiler.terrain.describe import Reading, Tile
 from profiler.terrain.gdal import OpenRasters, gdal_session
-from profiler.terrain.index import Ints, build_index, find_hits
+from profiler.terrain.index import Hits, Ints, build_index, find_hits
 from profiler.terrain.mosaic import as_degrees, describe_all
 
 __all__ = ["sample_classes"]
 
 
-def sample_classes(paths: Sequence[Path] | Path, longitude: ArrayLike, latitude: ArrayLike) -> Ints:
+def sample_classes(path: Path, longitude: ArrayLike, latitude: ArrayLike) -> tuple[Ints, tuple[Path, ...]]:
     r"""Class number of the cell that each point lies in.
 
     Parameters
     ----------
-    paths
-        A raster of whole numbers, or several (files, folders): the first that has a class at a point answers.
+    path
+        A raster of whole numbers, or a folder of them: the first that has a class at a point answers.
     longitude, latitude
         Degrees on WGS 84, any shapes that broadcast.
 
     Returns
     -------
-    ndarray of int
-        Classes; -1 where no raster has one (outside, nodata).
+    classes, files
+        Classes, -1 where no raster has one (outside, nodata), and the files that were read for them.
 
     Raises
     ------
@@ -45,37 +44,41 @@ def sample_classes(paths: Sequence[Path] | Path, longitude: ArrayLike, latitude:
     >>> with tempfile.TemporaryDirectory() as folder:
     ...     _ = Path(folder, "cover.prj").write_text("Projection GEOGRAPHIC\nDatum WGS84\nUnits DD\n")
     ...     _ = Path(folder, "cover.asc").write_text(grid)
-    ...     print(sample_classes(Path(folder), [10.02, 10.09, 10.15, 11.0], 50.05))
-    [ 4  4 -1 -1]
+    ...     classes, files = sample_classes(Path(folder), [10.02, 10.09, 10.15, 11.0], 50.05)
+    >>> classes.tolist(), [path.name for path in files]
+    ([4, 4, -1, -1], ['cover.asc', 'cover.prj'])
     """
     lon, lat, shape = as_degrees(longitude, latitude)
-    tiles, _ = describe_all([paths] if isinstance(paths, Path) else paths, Reading(classes=True))
-    index, rasters = build_index(tiles), OpenRasters()
-    classes = np.full(lon.size, -1, dtype=np.int64)
+    tiles, _ = describe_all([path], Reading(classes=True))
+    index, rasters, tally = build_index(tiles), OpenRasters(), Tally()
+    classes, files = np.full(lon.size, -1, dtype=np.int64), dict[Path, None]()
     with gdal_session():
         hits = find_hits(index, lon, lat)
         hits = hits.take(hits.inside)
         try:
             for number in np.unique(hits.tile):
                 mine = hits.take((hits.tile == number) & (classes[hits.point] < 0))
-                col, row = (
-                    np.clip(
-                        np.floor(at + 0.5).astype(np.int64), 0, side - 1
-                    )  # a point on the outer edge is in the last cell
-                    for at, side in zip((mine.u, mine.v), index.size[number], strict=True)
-                )
-                if not mine.point.size:
-                    continue
-                tile = index.tiles[number]
-                raw, valid = fetch(tile, int(number), rasters, col, row, Tally())
-                there = (raw != tile.coding.nodata) & ~np.isnan(raw)
-                if valid is not None:
-                    there &= valid
-                _require_whole(raw[there], tile.info.name)
-                classes[mine.point[there]] = raw[there].astype(np.int64)
+                if mine.point.size:
+                    tile = index.tiles[number]
+                    classes[mine.point] = _classes_on_tile(tile, int(number), rasters, mine, tally)
+                    files |= dict.fromkeys(rasters.pieces(tile.file).under(tally.windows[int(number)]))
         finally:
             rasters.close()
-    return classes.reshape(shape)
+    return classes.reshape(shape), tuple(files)
+
+
+def _classes_on_tile(tile: Tile, number: int, rasters: OpenRasters, hits: Hits, tally: Tally) -> Ints:
+    """Class of the cell under each hit, -1 where it has none; a point on the outer edge is in the last cell."""
+    col, row = (
+        np.clip(np.floor(at + 0.5).astype(np.int64), 0, side - 1)
+        for at, side in ((hits.u, tile.info.width), (hits.v, tile.info.height))
+    )
+    raw, valid = fetch(tile, number, rasters, col, row, tally)
+    there = (raw != tile.coding.nodata) & ~np.isnan(raw)
+    if valid is not None:
+        there &= valid
+    _require_whole(raw[there], tile.info.name)
+    return np.where(there, raw, -1.0).astype(np.int64)
 
 
 def _require_whole(values: NDArray[np.float64], name: str) -> None:

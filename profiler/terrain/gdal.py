@@ -13,6 +13,7 @@ from numpy.typing import NDArray
 
 from profiler.errors import RasterError
 from profiler.terrain.files import RasterFile
+from profiler.terrain.pieces import Pieces, find_pieces
 
 __all__ = ["OpenRasters", "gdal_session", "open_raster", "read_window"]
 
@@ -84,10 +85,11 @@ def _first_line(error: BaseException) -> str:
 class OpenRasters:
     """Open datasets, the least recently used closed first, so that thousands of tiles need few handles."""
 
-    __slots__ = ("_datasets",)
+    __slots__ = ("_datasets", "_pieces")
 
     def __init__(self) -> None:
         self._datasets: OrderedDict[RasterFile, Any] = OrderedDict()
+        self._pieces: dict[RasterFile, Pieces] = {}
 
     def get(self, file: RasterFile) -> Any:
         """Return the open dataset, opening it if need be."""
@@ -98,6 +100,12 @@ class OpenRasters:
                 self._datasets.popitem(last=False)[1].close()
         self._datasets.move_to_end(file)
         return dataset
+
+    def pieces(self, file: RasterFile) -> Pieces:
+        """Return the files that the raster is read from."""
+        if file not in self._pieces:
+            self._pieces[file] = find_pieces(self.get(file))
+        return self._pieces[file]
 
     def close(self) -> None:
         """Close everything; a later `get` opens again."""

@@ -127,8 +127,8 @@ class Terrain:
         lon, lat, shape = as_degrees(longitude, latitude)
         with gdal_session():
             ground = sample_ground(self._index, self._rasters, lon, lat, method or self._method)
-        allow = self._allow_mixed_datums if allow_mixed_datums is None else allow_mixed_datums
-        return gather_samples(self._index.tiles, ground, shape, allow_mixed_datums=allow)
+            allow = self._allow_mixed_datums if allow_mixed_datums is None else allow_mixed_datums
+            return gather_samples(self._index.tiles, self._rasters, ground, shape, allow_mixed_datums=allow)
 
 
 def open_terrain(

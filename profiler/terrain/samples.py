@@ -13,6 +13,7 @@ from numpy.typing import NDArray
 from profiler.errors import DatumError
 from profiler.terrain.describe import NotHeightsError, RasterInfo, Tile
 from profiler.terrain.files import RasterFile
+from profiler.terrain.gdal import OpenRasters
 from profiler.terrain.index import Ints
 from profiler.terrain.reference import datum_key
 from profiler.terrain.sampling import Ground
@@ -48,6 +49,8 @@ class SourceUse:
     ----------
     info
         The raster.
+    files
+        The files that it was read from at these points: itself, those beside it (.prj, .aux.xml), the pieces of a VRT.
     share
         Share of all the points whose height came from it, 0 to 1.
     blocks_read, bytes_read
@@ -59,6 +62,7 @@ class SourceUse:
     """
 
     info: RasterInfo
+    files: tuple[Path, ...]
     share: float
     blocks_read: int
     bytes_read: int
@@ -95,7 +99,7 @@ class Samples:
 
 
 def gather_samples(
-    tiles: Sequence[Tile], ground: Ground, shape: tuple[int, ...], *, allow_mixed_datums: bool
+    tiles: Sequence[Tile], rasters: OpenRasters, ground: Ground, shape: tuple[int, ...], *, allow_mixed_datums: bool
 ) -> Samples:
     """Turn heights by tile into heights by source, the greatest share first, and settle the vertical datum.
 
@@ -109,7 +113,7 @@ def gather_samples(
     order = order[numbers[order] >= 0]
     rank = np.full(numbers.size, -1, dtype=np.int64)
     rank[order] = np.arange(order.size)
-    sources = tuple(_use(tiles, int(numbers[k]), int(counts[k]), ground) for k in order)
+    sources = tuple(_use(tiles[numbers[k]], rasters, int(numbers[k]), int(counts[k]), ground) for k in order)
     datum, notes = _one_datum(sources, allow_mixed=allow_mixed_datums)
     unused = sorted(set(ground.tally.undeclared) - set(numbers.tolist()))
     notes += tuple(f"{tiles[k].info.name}: {note}" for k in unused for note in ground.tally.notes(k))
@@ -126,8 +130,8 @@ def gather_samples(
     return result
 
 
-def _use(tiles: Sequence[Tile], number: int, count: int, ground: Ground) -> SourceUse:
-    tile, tally = tiles[number], ground.tally
+def _use(tile: Tile, rasters: OpenRasters, number: int, count: int, ground: Ground) -> SourceUse:
+    tally = ground.tally
     notes = tile.info.notes + tally.notes(number)
     edge = int(np.count_nonzero(ground.edge & (ground.tile == number)))
     if edge:
@@ -135,7 +139,8 @@ def _use(tiles: Sequence[Tile], number: int, count: int, ground: Ground) -> Sour
     read = tally.read_bytes.get(number, 0)
     whole = tile.info.width * tile.info.height * tile.coding.item_bytes
     share = count / ground.tile.size
-    return SourceUse(tile.info, share, tally.blocks.get(number, 0), read, read / whole, notes)
+    files = rasters.pieces(tile.file).under(tally.windows.get(number, ()))
+    return SourceUse(tile.info, files, share, tally.blocks.get(number, 0), read, read / whole, notes)
 
 
 def _one_datum(sources: tuple[SourceUse, ...], *, allow_mixed: bool) -> tuple[str | None, tuple[str, ...]]:
