@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import re
 from collections.abc import Callable, Iterator
 from contextlib import contextmanager
 from pathlib import Path
@@ -19,7 +20,21 @@ __all__ = ["hop_options", "named", "read_hop", "speech_options"]
 Command = Callable[..., Any]
 
 _COMMAND_LINE = "command line"
-_SPELLING = {"position_a": "--a", "position_b": "--b"}
+_SPELLING = {"position_a": "--a", "position_b": "--b", "rules": "--rule"}
+_OPTION_OF = (
+    (r"\[\[rules\.rule\]\] tables with k and fresnel_fraction", "--rule"),
+    (r"rules\.rule\[\d+\]\.k", "--rule K"),
+    (r"rules\.rule\[\d+\]\.fresnel_fraction", "--rule FRACTION"),
+    (r"rules\.rule\[\d+\]\.margin_m", "--rule MARGIN_M"),
+    (r"rules\.preset|rules(?= = \()", "--preset"),
+    (r"rules\.low_k", "--low-k"),
+    (r"site_([ab])\.antenna(?:_m|_ft)?", r"--antenna-\1"),
+    (r"site_([ab])(?:\.position)?", r"--\1"),
+    (r"frequency_ghz", "--frequency-ghz"),
+    (r"terrain\.paths\[\d+\]", "--terrain"),
+    (r"paths start from the folder of the hop file", "paths start from the folder that you are in"),
+)
+"""How messages about keys of a hop file read where options stand for them: pattern, replacement."""
 
 
 def hop_options(command: Command) -> Command:
@@ -75,11 +90,11 @@ def read_hop(hop_file: Path | None, **options: Any) -> Hop:
     if hop_file is not None:
         if given:
             raise InputError(
-                f"{hop_file}: option for {given[0]}: must not stand beside a hop file; change the file instead"
+                f"{hop_file}: {_option(given[0])}: must not stand beside a hop file; change the file instead"
             )
         return load_hop(hop_file)
     needed = ("position_a", "position_b", "antenna_a", "antenna_b", "frequency_ghz", "terrain")
-    missing = [_SPELLING.get(name, "--" + name.replace("_", "-")) for name in needed if name not in given]
+    missing = [_option(name) for name in needed if name not in given]
     if missing:
         raise InputError(
             f"{_COMMAND_LINE}: {', '.join(missing)}: must be given for a hop without a file; or name a hop file"
@@ -87,7 +102,13 @@ def read_hop(hop_file: Path | None, **options: Any) -> Hop:
         )
     for end in ("antenna_a", "antenna_b"):
         options[end] = _number_or_text(options[end])
-    return quick_hop(options.pop("position_a"), options.pop("position_b"), **options)
+    with named(_COMMAND_LINE):
+        return quick_hop(options.pop("position_a"), options.pop("position_b"), **options)
+
+
+def _option(name: str) -> str:
+    """Spell an option as it is typed."""
+    return _SPELLING.get(name, "--" + name.replace("_", "-"))
 
 
 def _number_or_text(text: str) -> float | str:
@@ -100,11 +121,14 @@ def _number_or_text(text: str) -> float | str:
 
 @contextmanager
 def named(source: str) -> Iterator[None]:
-    """Put the hop file's name before an error that a stage raised without knowing it."""
+    """Put the hop file's name before an error that a stage raised without knowing it, or name options for keys."""
     try:
         yield
     except HopwrightError as error:
         text = str(error)
-        if text.startswith(source):
-            raise
-        raise InputError(f"{source}: {text}") from error
+        if not text.startswith(source):
+            text = f"{source}: {text}"
+        if source == _COMMAND_LINE:
+            for key, option in _OPTION_OF:
+                text = re.sub(rf"(?<![\w/.'\"-]){key}(?![\w/.])", option, text)
+        raise InputError(text) from error
