@@ -126,13 +126,6 @@ def test_filling_is_linear_between_neighbours_and_leaves_the_ends(ground):
             assert np.isnan(filled[first : last + 1]).all()
 
 
-def test_filling_a_corridor_fills_each_line_by_itself():
-    ground = np.array([[1.0, np.nan], [np.nan, 5.0], [3.0, np.nan], [np.nan, 9.0]])
-    filled, mask = fill_missing([0, 10, 20, 30], ground)
-    np.testing.assert_allclose(filled, [[1, np.nan], [2, 5], [3, 7], [np.nan, 9]])
-    assert mask.tolist() == [[False, False], [True, False], [False, True], [False, False]]
-
-
 def test_missing_ground_says_where():
     distance = np.arange(12) * 1000.0
     ground = np.zeros(12)

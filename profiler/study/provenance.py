@@ -12,7 +12,7 @@ from platform import python_version
 from profiler import __version__
 from profiler.models import Hop
 from profiler.study.result import Provenance
-from profiler.terrain import file_hash
+from profiler.terrain import file_hash, library_versions
 
 __all__ = ["provenance"]
 
@@ -21,9 +21,9 @@ _LIBRARIES = ("numpy", "scipy", "rasterio", "pyproj", "matplotlib", "pydantic")
 
 @cache
 def _versions() -> tuple[tuple[str, str], ...]:
-    """Versions of hopwright, Python and the libraries that numbers pass through."""
+    """Versions of hopwright, Python and the libraries that numbers pass through, with what stands behind them."""
     libraries = tuple((name, version(name)) for name in _LIBRARIES)
-    return (("hopwright", __version__), ("python", python_version()), *libraries)
+    return (("hopwright", __version__), ("python", python_version()), *libraries, *library_versions())
 
 
 @lru_cache(maxsize=4096)

@@ -8,6 +8,7 @@ from profiler.terrain.classes import sample_classes
 from profiler.terrain.describe import Bounds, RasterInfo
 from profiler.terrain.files import file_hash
 from profiler.terrain.gaps import fill_missing, missing_stretches, require_ground
+from profiler.terrain.gdal import library_versions
 from profiler.terrain.mosaic import Terrain, open_terrain
 from profiler.terrain.samples import Samples, Skipped, SourceUse
 from profiler.terrain.sites import require_inside
@@ -24,6 +25,7 @@ __all__ = [
     "Terrain",
     "file_hash",
     "fill_missing",
+    "library_versions",
     "missing_stretches",
     "open_terrain",
     "require_ground",

@@ -75,7 +75,7 @@ def fill_missing(distance_m: ArrayLike, ground_m: ArrayLike) -> tuple[Float, NDA
     distance_m
         Distances from site A, metres, increasing, shape (n,).
     ground_m
-        Ground heights, metres, NaN where missing, shape (n,) or (n, across); each column is filled by itself.
+        Ground heights, metres, NaN where missing, shape (n,).
 
     Returns
     -------
@@ -88,16 +88,9 @@ def fill_missing(distance_m: ArrayLike, ground_m: ArrayLike) -> tuple[Float, NDA
     >>> ground.tolist(), filled.tolist()
     ([nan, 100.0, 110.0, 130.0, nan], [False, False, True, False, False])
     """
-    distance = np.asarray(distance_m, dtype=float)
-    ground = np.array(ground_m, dtype=float)
-    columns = ground.reshape(distance.size, -1)
-    filled = np.zeros(columns.shape, dtype=bool)
-    for column, mark in zip(columns.T, filled.T, strict=True):
-        known = np.flatnonzero(~np.isnan(column))
-        if not known.size:
-            continue
-        gap = np.isnan(column)
-        gap[: known[0]] = gap[known[-1] :] = False
-        mark[:] = gap
-        column[gap] = np.interp(distance[gap], distance[known], column[known])
-    return ground, filled.reshape(ground.shape)
+    distance, ground = np.asarray(distance_m, dtype=float), np.array(ground_m, dtype=float)
+    missing = np.isnan(ground)
+    filled = missing & np.logical_or.accumulate(~missing) & np.logical_or.accumulate(~missing[::-1])[::-1]
+    if filled.any():
+        ground[filled] = np.interp(distance[filled], distance[~missing], ground[~missing])
+    return ground, filled

@@ -15,7 +15,7 @@ from profiler.errors import RasterError
 from profiler.terrain.files import RasterFile
 from profiler.terrain.pieces import Pieces, find_pieces
 
-__all__ = ["OpenRasters", "gdal_session", "open_raster", "read_window"]
+__all__ = ["OpenRasters", "gdal_session", "library_versions", "open_raster", "read_window"]
 
 _OPTIONS = {
     "GDAL_CACHEMAX": 64_000_000,  # bytes; the default is 5 % of the machine, which grows with the mosaic
@@ -26,6 +26,22 @@ _OPTIONS = {
 
 _HANDLES = 128
 """Rasters kept open at once: a path crosses few, and the limit on open files of a process is low."""
+
+
+def library_versions() -> tuple[tuple[str, str], ...]:
+    """Versions of what stands behind rasterio and pyproj: GDAL, PROJ, and PROJ's copy of the EPSG register.
+
+    Examples
+    --------
+    >>> [name for name, _ in library_versions()]
+    ['GDAL', 'PROJ', 'EPSG']
+    """
+    import pyproj
+    import rasterio
+    from pyproj.database import get_database_metadata
+
+    register = get_database_metadata("EPSG.VERSION") or "unknown"
+    return ("GDAL", rasterio.__gdal_version__), ("PROJ", pyproj.proj_version_str), ("EPSG", register)
 
 
 @contextlib.contextmanager
