@@ -5,6 +5,7 @@ The heights plan is in `profiler.study.plan`: a study does without it, and start
 
 from profiler.study.document import plain, point_table, to_document
 from profiler.study.link import Air, losses_at
+from profiler.study.notes import gathered
 from profiler.study.outage import ModeOutage, OutageResult
 from profiler.study.result import (
     Corridor,
@@ -30,6 +31,7 @@ __all__ = [
     "Study",
     "TerrainUse",
     "Verdict",
+    "gathered",
     "losses_at",
     "open_hop_terrain",
     "plain",

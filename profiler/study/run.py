@@ -16,6 +16,7 @@ from profiler.study.climate import ClimateUse, climate_numbers
 from profiler.study.doubt import doubt_given
 from profiler.study.ground import Ground, read_ground, require_above_cover
 from profiler.study.link import Air, Link, air_along, link
+from profiler.study.notes import gathered
 from profiler.study.places import find_places
 from profiler.study.provenance import provenance
 from profiler.study.result import RuleResult, Study
@@ -179,7 +180,7 @@ def _beside(result: RuleResult) -> Float:
 def _assumptions(hop: Hop, ground: Ground, climate: ClimateUse, air: Air, found: Link) -> tuple[str, ...]:
     """Everything that was assumed, in the order of the stages, each thing once."""
     terrain = ground.terrain
-    sources = [f"{use.info.path.name}: {note}" for use in terrain.sources for note in use.notes]
+    sources = gathered((use.info.path.name, note) for use in terrain.sources for note in use.notes)
     datum = terrain.vertical_datum or "not stated; heights are taken to share one datum"
     return tuple(
         dict.fromkeys(

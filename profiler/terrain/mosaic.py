@@ -22,7 +22,7 @@ from profiler.terrain.samples import Samples, Skipped, gather_samples
 from profiler.terrain.sampling import lattice_cells, sample_ground
 from profiler.units import Float
 
-__all__ = ["Terrain", "as_degrees", "describe_all", "open_terrain"]
+__all__ = ["Terrain", "as_degrees", "as_reading", "describe_all", "open_terrain"]
 
 
 class Terrain:
@@ -189,14 +189,25 @@ def open_terrain(
     """
     if method not in ("bilinear", "highest"):
         raise InputError(f"terrain.method = {method!r}: must be bilinear or highest")
+    reading = as_reading(vertical_datum, height_unit, eight_bit=eight_bit)
+    tiles, skipped = describe_all([paths] if isinstance(paths, Path) else paths, reading)
+    return Terrain(tiles, skipped, method=method, allow_mixed_datums=allow_mixed_datums)
+
+
+def as_reading(vertical_datum: str | None, height_unit: str | None, *, eight_bit: bool = False) -> Reading:
+    """Check what a user says about rasters that do not say it themselves.
+
+    Raises
+    ------
+    InputError
+        For an unknown unit or datum.
+    """
     if height_unit is not None:
         with under("terrain.height_unit"):
             unit_factor(height_unit)
     with under("terrain.vertical_datum"):
         datum = None if vertical_datum is None else resolve_datum(vertical_datum)
-    reading = Reading(vertical_datum=datum, height_unit=height_unit, eight_bit=eight_bit)
-    tiles, skipped = describe_all([paths] if isinstance(paths, Path) else paths, reading)
-    return Terrain(tiles, skipped, method=method, allow_mixed_datums=allow_mixed_datums)
+    return Reading(vertical_datum=datum, height_unit=height_unit, eight_bit=eight_bit)
 
 
 def describe_all(paths: Sequence[Path], reading: Reading) -> tuple[list[Tile], list[Skipped]]:

@@ -11,10 +11,11 @@ import numpy as np
 
 from profiler.errors import RasterError
 from profiler.terrain.cells import Tally, to_metres
-from profiler.terrain.describe import Bounds, NotHeightsError, RasterInfo, Reading, Tile, describe
+from profiler.terrain.describe import Bounds, NotHeightsError, RasterInfo, Tile, describe
 from profiler.terrain.files import find_rasters
 from profiler.terrain.gdal import gdal_session, open_raster, read_window
 from profiler.terrain.index import build_index, find_hits
+from profiler.terrain.mosaic import as_reading
 from profiler.terrain.placing import place, require_placed
 from profiler.terrain.samples import Skipped
 
@@ -78,7 +79,13 @@ class FolderSurvey:
     size_bytes: int
 
 
-def survey(paths: Sequence[Path] | Path, *, read_heights: bool = True) -> FolderSurvey:
+def survey(
+    paths: Sequence[Path] | Path,
+    *,
+    read_heights: bool = True,
+    vertical_datum: str | None = None,
+    height_unit: str | None = None,
+) -> FolderSurvey:
     r"""Describe every raster under the paths without stopping at a bad one.
 
     Parameters
@@ -87,11 +94,13 @@ def survey(paths: Sequence[Path] | Path, *, read_heights: bool = True) -> Folder
         Rasters, archives, folders.
     read_heights
         Read every cell, for voids and heights; without, only metadata is read.
+    vertical_datum, height_unit
+        Of the rasters that declare none, as in `open_terrain`.
 
     Raises
     ------
     InputError, RasterError
-        When a path does not exist, or the paths hold nothing like a raster.
+        When a path does not exist, the paths hold nothing like a raster, or the unit or the datum is unknown.
 
     Examples
     --------
@@ -107,6 +116,7 @@ def survey(paths: Sequence[Path] | Path, *, read_heights: bool = True) -> Folder
     >>> found.problems[0].split("/")[-1].split(",")[0]
     'lost.asc: has no coordinate reference system'
     """
+    reading = as_reading(vertical_datum, height_unit)
     found: list[Tile] = []
     tiles: list[Tile] = []
     rasters: list[RasterSurvey] = []
@@ -115,7 +125,7 @@ def survey(paths: Sequence[Path] | Path, *, read_heights: bool = True) -> Folder
     with gdal_session():
         for file in find_rasters([paths] if isinstance(paths, Path) else paths):
             try:
-                found.append(describe(file, Reading()))
+                found.append(describe(file, reading))
             except NotHeightsError as error:
                 skipped.append(Skipped.because(file, error))
             except RasterError as error:
