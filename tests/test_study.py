@@ -372,11 +372,29 @@ def two_datums(land):
 
 def test_two_vertical_datums_on_a_path_stop_the_study_unless_allowed(land):
     hop = hop_over(*two_datums(land))
-    with pytest.raises(DatumError, match=r"datums meet on one path: EGM96 geoid \(.*south\.tif\), EGM2008"):
+    with pytest.raises(DatumError, match=r"datums meet on or beside one path: EGM96 geoid \(.*south\.tif\), EGM2008"):
         run_study(hop)
     study = run_study(with_terrain(hop, missing="interpolate", allow_mixed_datums=True))
     assert study.terrain.vertical_datum is None
     assert any("mixed, as allowed" in note for note in study.assumptions)
+
+
+def test_another_datum_beside_the_path_stops_the_study_unless_allowed(land):
+    """The path runs over the one column that the first raster holds; the second begins half a cell to the east."""
+    on, east = (np.full((ROWS, COLUMNS), GROUND_M) for _ in range(2))
+    on[:, :30], on[:, 31:], east[:, :30] = -9999, -9999, -9999
+    hop = hop_over(
+        land(on, "on.tif", crs="EPSG:4326+5773", nodata=-9999),
+        land(east, "east.tif", crs="EPSG:4326+3855", nodata=-9999, west=WEST + CELL / 2),
+    )
+    with pytest.raises(
+        DatumError, match=r"meet on or beside one path: EGM96 geoid \(.*on\.tif\), EGM2008 geoid \(.*east"
+    ):
+        run_study(hop)
+    study = run_study(with_terrain(hop, allow_mixed_datums=True))
+    assert study.terrain.vertical_datum == "EGM96 geoid"  # the path's own
+    assert [use.info.path.name for use in study.terrain.sources] == ["on.tif"]
+    assert any("mixed, as allowed: EGM96 geoid" in note for note in study.assumptions)
 
 
 def test_another_datum_beside_the_path_does_not_stop_the_view_from_above(land):

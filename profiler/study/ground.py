@@ -13,7 +13,7 @@ from profiler.geometry import corridor_offsets
 from profiler.models import Hop, Profile, Rule, Site, TerrainChoice, frozen_array
 from profiler.path import PathLine, across, geodesic, trace
 from profiler.study.result import Corridor, Relief, TerrainUse
-from profiler.terrain import Samples, Terrain, fill_missing, missing_stretches, require_ground
+from profiler.terrain import SourceUse, Terrain, common_datum, fill_missing, missing_stretches, require_ground
 from profiler.units import Float
 
 __all__ = ["Ground", "read_ground", "require_above_cover"]
@@ -85,6 +85,8 @@ def read_ground(
         filled=frozen_array(filled, np.bool_),
         surveyed=frozen_array(surveyed, np.bool_),
     )
+    corridor, beside, cover_files = _corridor(hop, terrain, profile, line, cell_m)
+    datum, datum_notes = common_datum([*samples.sources, *beside], allow_mixed=hop.terrain.allow_mixed_datums)
     use = TerrainUse(
         method=hop.terrain.method,
         spacing_m=line.spacing_m,
@@ -94,12 +96,12 @@ def read_ground(
         filled_points=int(filled.sum()),
         surveyed_difference_a_m=differences[0],
         surveyed_difference_b_m=differences[1],
-        notes=(*samples.notes, *fill_notes, *site_notes),
+        notes=(*samples.notes, *(datum_notes if datum != samples.vertical_datum else ()), *fill_notes, *site_notes),
         cover_notes=cover.notes,
     )
-    corridor, files_beside = _corridor(hop, terrain, profile, line, cell_m)
     wide = None if around is None else terrain.sample(*around, allow_mixed_datums=True)
-    files = [*_files(samples), *cover.files, *files_beside, *([] if wide is None else _files(wide))]
+    sources = [*samples.sources, *beside, *(() if wide is None else wide.sources)]
+    files = [*(path for source in sources for path in source.files), *cover.files, *cover_files]
     return Ground(
         line=line,
         profile=profile,
@@ -109,10 +111,6 @@ def read_ground(
         heights_around_m=None if wide is None else wide.ground_m,
         files=tuple(dict.fromkeys(files)),
     )
-
-
-def _files(samples: Samples) -> list[Path]:
-    return [path for use in samples.sources for path in use.files]
 
 
 def _lay_path(hop: Hop, terrain: Terrain) -> tuple[PathLine, float]:
@@ -229,28 +227,31 @@ def _lower_rules(hop: Hop) -> tuple[Rule, ...]:
 
 def _corridor(
     hop: Hop, terrain: Terrain, profile: Profile, line: PathLine, cell_m: float
-) -> tuple[Corridor | None, list[Path]]:
-    """Surface across the path to the edge of the widest zone asked for, NaN where unknown, and the files it is from.
+) -> tuple[Corridor | None, list[SourceUse], list[Path]]:
+    """Surface across the path to the edge of the widest zone asked for, NaN where unknown, and what it is from.
 
     The path's own points keep their profile. Across, points stand half a cell apart, but no closer than a tenth of the
     zone: what is narrower than that hides next to none of it.
     """
     fraction = max(rule.fresnel_fraction for rule in (*hop.rules, *_lower_rules(hop)))
     if fraction == 0.0:
-        return None, []
+        return None, [], []
     widest = float(np.abs(corridor_offsets(line.along_m, hop.frequency_hz, fraction, np.inf)).max())
     offset = corridor_offsets(line.along_m, hop.frequency_hz, fraction, max(0.5 * cell_m, widest / _ACROSS_STEPS))
     longitude, latitude = across(line, offset)
-    surface, cover_m, files = np.empty_like(offset), np.empty_like(offset), []
+    surface, cover_m = np.empty_like(offset), np.empty_like(offset)
+    sources: list[SourceUse] = []
+    files: list[Path] = []
     rows = max(1, _POINTS_AT_ONCE // offset.shape[1])
     for part in (slice(first, first + rows) for first in range(0, line.points, rows)):
         samples = terrain.sample(longitude[part], latitude[part])
         cover = _cover(hop, line, longitude[part], latitude[part], part)
         surface[part], cover_m[part] = samples.ground_m + cover.cover_m, cover.cover_m
-        files += [*_files(samples), *cover.files]
+        sources += samples.sources
+        files += cover.files
     # at the sites the zone has no width: what a survey or a fill says of the path holds for the whole row there
     surface = np.where(offset == 0.0, profile.surface_m[:, None], surface)
-    return Corridor(frozen_array(offset), frozen_array(surface), frozen_array(cover_m)), files
+    return Corridor(frozen_array(offset), frozen_array(surface), frozen_array(cover_m)), sources, files
 
 
 def _relief(terrain: Terrain, line: PathLine) -> Relief:

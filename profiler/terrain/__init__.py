@@ -10,7 +10,7 @@ from profiler.terrain.files import file_hash
 from profiler.terrain.gaps import fill_missing, missing_stretches, require_ground
 from profiler.terrain.gdal import library_versions
 from profiler.terrain.mosaic import Terrain, open_terrain
-from profiler.terrain.samples import Samples, Skipped, SourceUse
+from profiler.terrain.samples import Samples, Skipped, SourceUse, common_datum
 from profiler.terrain.sites import require_inside
 from profiler.terrain.survey import FolderSurvey, RasterSurvey, survey
 
@@ -23,6 +23,7 @@ __all__ = [
     "Skipped",
     "SourceUse",
     "Terrain",
+    "common_datum",
     "file_hash",
     "fill_missing",
     "library_versions",

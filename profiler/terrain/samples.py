@@ -19,7 +19,7 @@ from profiler.terrain.reference import datum_key
 from profiler.terrain.sampling import Ground
 from profiler.units import Float
 
-__all__ = ["Samples", "Skipped", "SourceUse", "gather_samples"]
+__all__ = ["Samples", "Skipped", "SourceUse", "common_datum", "gather_samples"]
 
 
 @dataclass(frozen=True, slots=True)
@@ -114,7 +114,7 @@ def gather_samples(
     rank = np.full(numbers.size, -1, dtype=np.int64)
     rank[order] = np.arange(order.size)
     sources = tuple(_use(tiles[numbers[k]], rasters, int(numbers[k]), int(counts[k]), ground) for k in order)
-    datum, notes = _one_datum(sources, allow_mixed=allow_mixed_datums)
+    datum, notes = common_datum(sources, allow_mixed=allow_mixed_datums)
     unused = sorted(set(ground.tally.undeclared) - set(numbers.tolist()))
     notes += tuple(f"{tiles[k].info.name}: {note}" for k in unused for note in ground.tally.notes(k))
     result = Samples(
@@ -143,28 +143,32 @@ def _use(tile: Tile, rasters: OpenRasters, number: int, count: int, ground: Grou
     return SourceUse(tile.info, files, share, tally.blocks.get(number, 0), read, read / whole, notes)
 
 
-def _one_datum(sources: tuple[SourceUse, ...], *, allow_mixed: bool) -> tuple[str | None, tuple[str, ...]]:
-    """Find the vertical datum of all sources; an undeclared one proves no difference, so it is noted, not refused."""
+def common_datum(sources: Sequence[SourceUse], *, allow_mixed: bool) -> tuple[str | None, tuple[str, ...]]:
+    """Find the vertical datum that all sources share, and what has to be said about it.
+
+    An undeclared datum proves no difference, so it is noted, not refused.
+
+    Raises
+    ------
+    DatumError
+        When sources are on different vertical datums and that is not allowed.
+    """
+    rasters = list(dict.fromkeys(use.info for use in sources))
     seen: dict[str, RasterInfo] = {}
-    silent = 0
-    for use in sources:
-        if use.info.vertical_datum is None:
-            silent += 1
-        else:
-            seen.setdefault(datum_key(use.info.vertical_datum), use.info)
+    for info in rasters:
+        if info.vertical_datum is not None:
+            seen.setdefault(datum_key(info.vertical_datum), info)
     if len(seen) > 1:
         found = ", ".join(f"{info.vertical_datum} ({info.name})" for info in seen.values())
         if not allow_mixed:
             raise DatumError(
-                f"heights on different vertical datums meet on one path: {found}; bring the rasters to one datum, "
-                "leave one out, or set terrain.allow_mixed_datums = true and live with the step between them"
+                f"heights on different vertical datums meet on or beside one path: {found}; bring the rasters to one "
+                "datum, leave one out, or set terrain.allow_mixed_datums = true and live with the step between them"
             )
         return None, (f"heights on different vertical datums are mixed, as allowed: {found}",)
+    silent = sum(info.vertical_datum is None for info in rasters)
     if not seen:
         return None, ("no raster declares its vertical datum",) if silent else ()
     datum = next(iter(seen.values())).vertical_datum
-    if silent:
-        return datum, (
-            f"{silent} of {len(sources)} rasters declare no vertical datum: taken as {datum}, like the rest",
-        )
-    return datum, ()
+    note = f"{silent} of {len(rasters)} rasters declare no vertical datum: taken as {datum}, like the rest"
+    return datum, (note,) if silent else ()
