@@ -87,7 +87,8 @@ def _show_answer(screen: Console, plan: HeightsPlan, scale: Scale) -> None:
         doubt = f"{answer.chance.value:.1%} ({answer.chance.low:.1%} to {answer.chance.high:.1%} by the draws)"
         say(screen, f"Chance of clearing: {doubt}")
     if answer.by_trial and not isinstance(answer.pair, NoPair):
-        say(screen, "Found by trial of losses and outage: a cheaper pair is not ruled out.")
+        slack = _slack(answer.cheaper_by_at_most)
+        say(screen, f"Found by trial of losses and outage: if height only helps those, {slack}.")
     show_notes(screen, "Not judged", answer.unjudged, "yellow")
 
 
@@ -205,8 +206,13 @@ def _show_limit(screen: Console, title: str, found: LimitHeights, scale: Scale) 
         say(
             screen,
             f"  cheapest pair found: A {scale.height(choice.antenna_a_m)}, B {scale.height(choice.antenna_b_m)} {unit},"
-            f" cost {choice.cost:g}",
+            f" cost {choice.cost:g}; if height only helps, {_slack(found.cheaper_by_at_most)}",
         )
+
+
+def _slack(cheaper_by_at_most: float) -> str:
+    """Say how much cheaper a pair can be that a search did not find."""
+    return f"none is cheaper by more than {cheaper_by_at_most:.3g}" if cheaper_by_at_most > 1e-6 else "none is cheaper"
 
 
 def _show_diversity(screen: Console, plan: HeightsPlan, scale: Scale) -> None:

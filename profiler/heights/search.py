@@ -2,27 +2,27 @@
 
 from __future__ import annotations
 
+import heapq
 import math
 from collections.abc import Callable
 from dataclasses import dataclass
 from functools import cache
 
 import numpy as np
-from numpy.typing import NDArray
 
 from profiler.checks import not_negative
-from profiler.geometry import ROUNDING_M
 from profiler.heights.choose import Choice, NoPair, cheapest_of, no_position
-from profiler.heights.positions import both_free
+from profiler.heights.positions import both_free, height_cost
 from profiler.models import TowerChoice, frozen_array
 from profiler.units import Float
 
 __all__ = ["LimitHeights", "cheapest_by_trial", "heights_within", "loss_excess"]
 
 _RESOLUTION_M = 0.01
-_AT_ONCE = 24
-"""Positions of a tower looked at in one pass: a pass tries at most twice as many pairs, and each shrinks the steps
-between them twelvefold, so that three passes do for the most positions there are."""
+_MOST_TRIALS = 160
+"""Pairs tried for the cheapest one: a second on a path of 500 points, some ten on one of 12 000."""
+
+_EQUAL_TRIED = 24
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -31,13 +31,15 @@ class LimitHeights:
 
     ``least_equal_m`` is the least equal height within both towers' limits, to a centimetre; None where none was found.
     ``holds_above`` says whether every greater equal height that was tried is good too. ``frontier_m`` (m, 2) are good
-    pairs of free positions, A rising and B falling. ``trials`` is how many pairs of heights were tried.
+    pairs of free positions, A rising and B falling. Where heights only ever help, no pair is cheaper than ``cheapest``
+    by more than ``cheaper_by_at_most``. ``trials`` is how many pairs of heights were tried.
     """
 
     least_equal_m: float | None
     holds_above: bool
     frontier_m: Float
     cheapest: Choice | NoPair
+    cheaper_by_at_most: float
     trials: int
 
 
@@ -56,8 +58,8 @@ def heights_within(
     pairs are those of `cheapest_by_trial`. Every answer was tried and is good.
 
     Neither diffraction loss nor outage falls strictly with height (the smooth-earth heights of delta-Bullington move
-    with the antennas; a steeper path has less multipath fading), so a good pair away from the staircase can be
-    overlooked; `LimitHeights.holds_above` tells whether the equal heights behave.
+    with the antennas; a steeper path has less multipath fading), so a good pair can be overlooked;
+    `LimitHeights.holds_above` tells whether the equal heights behave.
 
     Parameters
     ----------
@@ -89,14 +91,14 @@ def heights_within(
     >>> found = heights_within(lambda a, b: 20 - 0.1 * (a + b) - 12.54, tower, tower)
     >>> round(found.least_equal_m, 1), found.holds_above
     (37.3, True)
-    >>> found.frontier_m.tolist()
-    [[20.0, 55.0], [25.0, 50.0], [30.0, 45.0], [35.0, 40.0], [40.0, 35.0], [45.0, 30.0], [50.0, 25.0], [55.0, 20.0]]
+    >>> found.frontier_m[:4].tolist(), found.trials
+    ([[20.0, 55.0], [25.0, 50.0], [30.0, 45.0], [35.0, 40.0]], 35)
     >>> found.cheapest
     Choice(antenna_a_m=35.0, antenna_b_m=40.0, cost=75.0)
     """
     tried = cache(excess)
     free_a, free_b = both_free(tower_a, tower_b, spacing_m=spacing_m)
-    found, pairs = cheapest_by_trial(tried, free_a, free_b, tower_a, tower_b)
+    found, pairs, slack = cheapest_by_trial(tried, free_a, free_b, tower_a, tower_b)
     equal, holds = _least_equal(tried, tower_a, tower_b)
     choice: Choice | NoPair
     if found is not None:
@@ -113,7 +115,7 @@ def heights_within(
         )
         reason = f"no pair found: at the highest there is, A {best_a:.2f} m and B {best_b:.2f} m, {verdict}"
         choice = NoPair(reason, best_a, best_b, proven=False)
-    return LimitHeights(equal, holds, frozen_array(pairs), choice, tried.cache_info().misses)
+    return LimitHeights(equal, holds, frozen_array(pairs), choice, slack, tried.cache_info().misses)
 
 
 def loss_excess(
@@ -170,13 +172,12 @@ def loss_excess(
 
 def cheapest_by_trial(
     excess: Callable[[float, float], float], free_a: Float, free_b: Float, tower_a: TowerChoice, tower_b: TowerChoice
-) -> tuple[Choice | None, Float]:
+) -> tuple[Choice | None, Float, float]:
     """Find the cheapest pair of positions that is good, in a bounded number of trials.
 
-    In one pass a staircase is walked over some positions of each tower, spread evenly: from the lowest A and the
-    highest B, B comes down while the pair is good, then A goes up. The next pass looks more finely around the cheapest
-    pair found, until no position there is left out. Where heights only ever help, no pair nearby is cheaper; on towers
-    of more than some two dozen positions a pair elsewhere can be, by no more than a step of the first pass costs.
+    If heights only ever help, the least good B falls as A rises. So between two positions of A whose least B are known
+    every pair costs at least the next position of A with the least B of the higher one. The gap where that is least is
+    halved next, until no gap can hold a cheaper pair, or the trials are used up.
 
     Parameters
     ----------
@@ -189,72 +190,84 @@ def cheapest_by_trial(
 
     Returns
     -------
-    choice, pairs
-        The cheapest pair, or None; all good pairs found of which none is higher than another at both ends, (m, 2).
+    choice
+        The cheapest pair found, or None.
+    pairs
+        Good pairs found, A rising and B falling, (m, 2).
+    cheaper_by_at_most
+        How much cheaper a pair that was not found can be, if heights only ever help; 0 where none is.
 
     Examples
     --------
     >>> free, tower = np.arange(1.0, 1001.0), TowerChoice()
-    >>> cheapest_by_trial(lambda a, b: 700.5 - a - 2 * b, free, free, tower, tower)[0]
-    Choice(antenna_a_m=1.0, antenna_b_m=350.0, cost=351.0)
+    >>> choice, pairs, slack = cheapest_by_trial(lambda a, b: 700.5 - a - 2 * b, free, free, tower, tower)
+    >>> choice, slack
+    (Choice(antenna_a_m=1.0, antenna_b_m=350.0, cost=351.0), 0.0)
     """
-    span_a, span_b = (0, free_a.size - 1), (0, free_b.size - 1)
-    kept_a, kept_b = [tower_a.threshold_m], [tower_b.threshold_m]
-    found = np.empty((0, 2))
-    choice: Choice | None = None
-    while min(span_a[1], span_b[1]) >= 0:
-        some_a, some_b = _some(free_a, span_a, kept_a), _some(free_b, span_b, kept_b)
-        found = np.concatenate((found, _staircase(excess, free_a[some_a], free_b[some_b])))
-        if not found.size:
-            break
-        choice = cheapest_of(found[:, 0], found[:, 1], tower_a, tower_b)
-        step_a, step_b = (int(np.diff(some).max(initial=1)) for some in (some_a, some_b))
-        if step_a == step_b == 1:
-            break
-        kept_a, kept_b = [choice.antenna_a_m], [choice.antenna_b_m]
-        span_a, span_b = _around(free_a, choice.antenna_a_m, step_a), _around(free_b, choice.antenna_b_m, step_b)
-    return choice, _undominated(found)
+    stairs = _Stairs(excess, free_a, free_b)
+    top_a = stairs.top()
+    if top_a is None:
+        return None, np.empty((0, 2)), 0.0
+    cost_a = height_cost(tower_a, free_a)
+    cost_b = np.append(height_cost(tower_b, free_b), np.inf)
+
+    def gap(low: int, high: int) -> tuple[float, int, int]:
+        cheapest_between = np.inf if high - low < 2 else float(cost_a[low + 1] + cost_b[stairs.least[high]])
+        return cheapest_between, low, high
+
+    stairs.resolve(0, -1, free_b.size)
+    stairs.resolve(top_a, -1, stairs.least[0])
+    gaps = [gap(0, top_a)]
+    while gaps[0][0] < stairs.cheapest(cost_a, cost_b) and len(stairs.tried) < _MOST_TRIALS:
+        _, low, high = heapq.heappop(gaps)
+        middle = (low + high) // 2
+        stairs.resolve(middle, stairs.least[high] - 1, stairs.least[low])
+        heapq.heappush(gaps, gap(low, middle))
+        heapq.heappush(gaps, gap(middle, high))
+    pairs = stairs.pairs()
+    choice = cheapest_of(pairs[:, 0], pairs[:, 1], tower_a, tower_b)
+    return choice, pairs, max(0.0, choice.cost - gaps[0][0])
 
 
-def _some(free: Float, span: tuple[int, int], kept_m: list[float | None]) -> NDArray[np.intp]:
-    """Spread indices evenly over a span, with both ends and the positions just at or under some heights."""
-    spread = np.linspace(*span, min(_AT_ONCE, span[1] - span[0] + 1)).round()
-    under = np.searchsorted(free, [height + ROUNDING_M for height in kept_m if height is not None]) - 1
-    kept = under[(under >= span[0]) & (under <= span[1])]
-    return np.unique(np.concatenate((spread, kept)).astype(np.intp))
+class _Stairs:
+    """Least good positions of B for some positions of A, by their indices; the number of B's where there is none."""
 
+    def __init__(self, excess: Callable[[float, float], float], free_a: Float, free_b: Float) -> None:
+        self._excess, self._free_a, self._free_b = excess, free_a, free_b
+        self.tried: dict[tuple[int, int], bool] = {}
+        self.least: dict[int, int] = {}
 
-def _around(free: Float, height_m: float, step: int) -> tuple[int, int]:
-    """Span of indices a step to each side of a position."""
-    at = int(np.searchsorted(free, height_m))
-    return max(0, at - step), min(free.size - 1, at + step)
+    def good(self, a: int, b: int) -> bool:
+        if (a, b) not in self.tried:
+            self.tried[a, b] = self._excess(float(self._free_a[a]), float(self._free_b[b])) <= 0
+        return self.tried[a, b]
 
+    def top(self) -> int | None:
+        """Highest A that is good with the highest B, of some spread evenly; None where none is."""
+        highest = self._free_b.size - 1
+        spread = np.linspace(self._free_a.size - 1, 0, min(_EQUAL_TRIED, self._free_a.size)).round().astype(int)
+        return next((int(a) for a in spread if highest >= 0 and self.good(int(a), highest)), None)
 
-def _undominated(pairs: Float) -> Float:
-    """Pairs with A rising and B falling: each is lower than every other at one end."""
-    ordered = pairs[np.lexsort((pairs[:, 1], pairs[:, 0]))]
-    lowest_before = np.minimum.accumulate(np.concatenate(([np.inf], ordered[:, 1])))[:-1]
-    return np.asarray(ordered[ordered[:, 1] < lowest_before])
+    def resolve(self, a: int, bad: int, good: int) -> None:
+        """Halve the positions of B between one that is bad with this A and one that is good."""
+        if bad < 0 < good and self.good(a, 0):
+            good = 0
+        while good - bad > 1 and good > 0:
+            middle = (bad + good) // 2
+            bad, good = (bad, middle) if self.good(a, middle) else (middle, good)
+        self.least[a] = good
 
+    def cheapest(self, cost_a: Float, cost_b: Float) -> float:
+        return min(float(cost_a[a] + cost_b[b]) for a, b in self.least.items())
 
-def _staircase(excess: Callable[[float, float], float], free_a: Float, free_b: Float) -> Float:
-    """Pairs of positions, (m, 2): least B for each A, walked so that each step tries one pair."""
-    if excess(float(free_a[0]), float(free_b[0])) <= 0:
-        return np.array([[free_a[0], free_b[0]]])
-    pairs = []
-    last = free_b.size
-    for a in free_a:
-        index = min(last, free_b.size - 1)
-        if not excess(float(a), float(free_b[index])) <= 0:
-            continue
-        while index > 0 and excess(float(a), float(free_b[index - 1])) <= 0:
-            index -= 1
-        if index < last:
-            pairs.append((float(a), float(free_b[index])))
-            last = index
-        if index == 0:
-            break
-    return np.array(pairs, dtype=float).reshape(-1, 2)
+    def pairs(self) -> Float:
+        """Pairs with A rising and B falling, heights; what no trial saw good at this A, a lower A has as well."""
+        good = np.array(sorted(pair for pair in self.least.items() if self.tried.get(pair)), dtype=np.intp).reshape(
+            -1, 2
+        )
+        lowest_before = np.minimum.accumulate(np.append(self._free_b.size, good[:, 1]))[:-1]
+        good = good[good[:, 1] < lowest_before]
+        return np.column_stack((self._free_a[good[:, 0]], self._free_b[good[:, 1]]))
 
 
 def _least_equal(
@@ -265,7 +278,7 @@ def _least_equal(
     if lowest > highest:
         return None, False
     steps = math.ceil((highest - lowest) / max(tower_a.step_m, tower_b.step_m))
-    tried = np.unique(np.linspace(lowest, highest, min(_AT_ONCE, steps) + 1))
+    tried = np.unique(np.linspace(lowest, highest, min(_EQUAL_TRIED, steps) + 1))
     good = np.array([excess(float(height), float(height)) <= 0 for height in tried])
     if not good.any():
         return None, False

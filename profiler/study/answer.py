@@ -47,15 +47,16 @@ class Answer:
 
     ``asked`` says what, each in words that follow "the antennas", and ``unjudged`` what was set but cannot be judged.
     ``chance`` is that of clearing every rule and, with a diversity pair, the lower antennas, over the draws of the
-    errors; None unless a chance was asked for. ``by_trial`` says that the pair was found by trial of losses and outage,
-    so that a cheaper one elsewhere is not ruled out; otherwise there is none.
+    errors; None unless a chance was asked for. ``by_trial`` says that the pair was found by trial of losses and outage:
+    where heights only ever help these, none is cheaper by more than ``cheaper_by_at_most``. Otherwise none is cheaper.
     """
 
     pair: Choice | NoPair
     asked: tuple[str, ...]
     unjudged: tuple[str, ...]
     chance: Chance | None
-    by_trial: bool
+    by_trial: bool = False
+    cheaper_by_at_most: float = 0.0
 
 
 def find_answer(
@@ -101,17 +102,17 @@ def find_answer(
     if sure is not None:
         asked.append(f"clear with {100 * sure:g} % chance")
     if isinstance(clearing, NoPair):
-        return Answer(clearing, tuple(asked), unjudged, None, by_trial=False)
+        return Answer(clearing, tuple(asked), unjudged, None)
     free_a, free_b = both_free(towers.tower_a, towers.tower_b, spacing_m=spacing_of(study.hop))
     least_b = least_b_for(region, free_a)
     if drawn is not None and sure is not None:
         least_b = np.maximum(least_b, least_b_sure(drawn, free_a, sure))
     floor = np.asarray(np.searchsorted(free_b, least_b - ROUNDING_M), dtype=np.intp)
     pair: Choice | NoPair = _cheapest(study, free_a, free_b, floor, drawn, sure)
-    by_trial = False
-    if isinstance(pair, Choice) and any(excess(pair.antenna_a_m, pair.antenna_b_m) > 0 for excess in limits.values()):
-        pair, by_trial = _by_trial(study, free_a, free_b, floor, limits), True
-    return Answer(pair, tuple(asked), unjudged, _chance(drawn, pair), by_trial)
+    if isinstance(pair, NoPair) or all(excess(pair.antenna_a_m, pair.antenna_b_m) <= 0 for excess in limits.values()):
+        return Answer(pair, tuple(asked), unjudged, _chance(drawn, pair))
+    pair, slack = _by_trial(study, free_a, free_b, floor, limits)
+    return Answer(pair, tuple(asked), unjudged, _chance(drawn, pair), by_trial=True, cheaper_by_at_most=slack)
 
 
 def _drawn(study: Study, region: ClearingRegion, sure: float) -> DrawnRegions:
@@ -168,8 +169,8 @@ def _cheapest(
 
 def _by_trial(
     study: Study, free_a: Float, free_b: Float, floor: NDArray[np.intp], limits: Mapping[str, Excess]
-) -> Choice | NoPair:
-    """Cheapest pair found, at or above the floor, that keeps the limits."""
+) -> tuple[Choice | NoPair, float]:
+    """Cheapest pair found, at or above the floor, that keeps the limits, and how much cheaper another can be."""
     towers = study.hop.heights
 
     def excess(antenna_a_m: float, antenna_b_m: float) -> float:
@@ -178,18 +179,13 @@ def _by_trial(
             return math.inf
         return max(each(antenna_a_m, antenna_b_m) for each in limits.values())
 
-    choice, _ = cheapest_by_trial(excess, free_a, free_b, towers.tower_a, towers.tower_b)
+    choice, _, slack = cheapest_by_trial(excess, free_a, free_b, towers.tower_a, towers.tower_b)
     if choice is not None:
-        return choice
+        return choice, slack
     best_a, best_b = float(free_a[-1]), float(free_b[-1])
     over = {name: each(best_a, best_b) for name, each in limits.items()}
     missed = [f"{name} by {db:.2f} dB" for name, db in over.items() if 0 < db < math.inf]
     missed += [f"{name} at any fade margin" for name, db in over.items() if db == math.inf]
     failing = f", A {best_a:.2f} m and B {best_b:.2f} m, the antennas fail to {', and to '.join(missed)}"
-    return NoPair(
-        reason="no pair found that does all that is asked"
-        + (f": at the highest there is{failing}" if missed else ": what helps one limit spoils another"),
-        best_a_m=best_a,
-        best_b_m=best_b,
-        proven=False,
-    )
+    why = f"at the highest there is{failing}" if missed else "what helps one limit spoils another"
+    return NoPair(f"no pair found that does all that is asked: {why}", best_a, best_b, proven=False), 0.0

@@ -84,6 +84,7 @@ def _answer(plan: HeightsPlan, answer: Answer) -> dict[str, Any]:
         "unjudged": list(answer.unjudged),
         "chance": plain(answer.chance),
         "by_trial": answer.by_trial,
+        "cheaper_by_at_most": answer.cheaper_by_at_most,
     }
 
 
