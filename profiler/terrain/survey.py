@@ -19,7 +19,7 @@ from profiler.terrain.mosaic import as_reading
 from profiler.terrain.placing import place, require_placed
 from profiler.terrain.samples import Skipped
 
-__all__ = ["FolderSurvey", "RasterSurvey", "survey"]
+__all__ = ["FolderSurvey", "RasterSurvey", "bounds_around", "survey"]
 
 _PIECE_CELLS = 1_000_000
 
@@ -176,7 +176,7 @@ def _summary(
 ) -> FolderSurvey:
     infos = [raster.info for raster in rasters]
     sides = [side for info in infos for side in (info.cell_x_m, info.cell_y_m)]
-    bounds = _around([info.bounds for info in infos]) if infos else None
+    bounds = bounds_around([info.bounds for info in infos]) if infos else None
     read = [raster for raster in rasters if raster.void_share is not None]
     cells = sum(raster.info.width * raster.info.height for raster in read)
     void = sum((raster.void_share or 0.0) * raster.info.width * raster.info.height for raster in read)
@@ -196,7 +196,7 @@ def _summary(
     )
 
 
-def _around(bounds: Sequence[Bounds]) -> Bounds:
+def bounds_around(bounds: Sequence[Bounds]) -> Bounds:
     """Bounds around bounds: the circle of longitudes is cut in its widest gap."""
     south, north = min(bound.south for bound in bounds), max(bound.north for bound in bounds)
     spans = sorted((bound.west, bound.west + (bound.east - bound.west) % 360.0) for bound in bounds)
