@@ -443,17 +443,69 @@ def test_reach_adds_up_on_the_terminal(run):
 def test_terrain_says_what_a_folder_holds(run, here):
     code, out, _ = run("terrain", "dem.tif")
     assert code == 0
-    assert "not stated" in out
-    assert "100 to 100" in out
+    assert out.startswith("dem.tif\n  24 x 120 cells of 128.9 x 185.3 m, EPSG:4326, vertical datum not stated\n")
+    assert "longitude 8.980 to 9.020, latitude 45.990 to 46.190; heights 100 to 100 m, no voids" in out
+    assert out.count("declares no vertical datum") == 1
+    code, out, _ = run("terrain", "dem.tif", "void.tif", "--metadata-only")
+    assert code == 0
+    assert "heights" not in out
     code, out, _ = run("terrain", here)
-    assert "Cannot be used" in out
+    assert code == 1  # a study on the folder would stop
+    assert "Cannot be used: a study on this terrain stops\n" in out
     assert "Left out: not heights" in out
+    assert re.search(r"\n\n4 rasters, .*; heights 100 to 100 m, voids 0\.28%\n", out)  # 24 of 8640 cells
+
+
+def test_terrain_says_that_datums_differ(run):
+    _, out, _ = run("terrain", "egm96.tif", "egm2008.tif", "dem.tif")
+    assert "Vertical datums MIXED: EGM96 geoid, EGM2008 geoid, 1 not stated" in out
+    _, out, _ = run("terrain", "egm96.tif", "dem.tif")
+    assert "Vertical datums in part not stated: EGM96 geoid, 1 not stated" in out
+
+
+def test_terrain_says_whether_and_where_a_hop_leaves_it(run, here):
+    """The void row is from 46.0883 to 46.0900 degrees north, 9.82 to 10.00 km from A; half a cell more is unknown."""
     code, out, _ = run("terrain", "dem.tif", "--hop", "hop.toml")
     assert code == 0
-    assert "100.0% of the path has ground" in out
+    assert "hop.toml: 100.0% of the path has ground" in out
     code, out, _ = run("terrain", "void.tif", "--hop", "hop.toml")
     assert code == 1
-    assert "NOT inside" in out
+    assert "hop.toml: cannot be studied on this terrain: 98.2% of the path has ground" in out
+    assert re.search(r"from 9\.7\d\d to 10\.0\d\d km \(longitude 9\.00000, latitude 46\.08", out)
+    code, out, _ = run("terrain", "egm96.tif", "--hop", "hop.toml")
+    assert code == 1
+    assert "South: longitude 9.000000, latitude 46.000000: lies off the terrain, about" in out
+    (here / "filled.toml").write_text(PASSING.replace('["dem.tif"]', '["dem.tif"]\nmissing = "interpolate"'))
+    code, out, _ = run("terrain", "void.tif", "--hop", "filled.toml")
+    assert code == 0
+    assert "98.2% of the path has ground, the rest is interpolated, as the hop file allows" in out
+
+
+def test_terrain_is_read_as_the_hop_says(run, here):
+    settings = 'height_unit = "ft"\nvertical_datum = "EGM96"\nallow_mixed_datums = true'
+    (here / "own.toml").write_text(PASSING.replace('["dem.tif"]', f'["dem.tif"]\n{settings}'))
+    code, out, _ = run("terrain", "dem.tif", "--hop", "own.toml")
+    assert code == 0
+    assert "heights 30 to 30 m" in out  # 100 ft
+    assert "vertical datum EGM96" in out
+    both = ("terrain", "egm96.tif", "egm2008.tif", "--hop")
+    assert run(*both, "own.toml")[0] == 0
+    code, out, _ = run(*both, "hop.toml")
+    assert code == 1
+    assert "\nheights on different vertical datums meet on " in out
+
+
+def test_many_rasters_are_told_by_kind(run, here):
+    for number in range(14):
+        shutil.copy("dem.tif", here / f"copy{number:02}.tif")
+    words = ("terrain", "egm96.tif", *(f"copy{number:02}.tif" for number in range(14)))
+    _, out, _ = run(*words)
+    assert re.search(r"\n\.: 14 rasters \(GTiff\)\n  cells of 128\.9 x 185\.3 m, ", out)
+    assert out.startswith("egm96.tif\n")
+    assert out.count("declares no vertical datum") == 1
+    _, out, _ = run(*words, "--all")
+    assert out.count("declares no vertical datum") == 14
+    assert "\ncopy07.tif\n" in out
 
 
 def test_the_starter_studies_the_sample_country(run, here):
