@@ -43,9 +43,6 @@ class Climate:
     k_percentiles
         Pairs (percent of the year that k is *not* exceeded, k), both ascending: the first pair is the low k, exceeded
         for 99.9 %. Percentages at which the gradient traps the ray are left out, as no k describes them.
-    gradient_percentiles_n_km
-        Pairs (percent of the year that the gradient is not exceeded, gradient in the lowest kilometre in N/km), both
-        ascending and complete. A gradient not exceeded for p % is a k not exceeded for 100 − p %.
     rain_source, dn1_source, k_source
         Recommendation, edition, layer and the package that gave the map behind the rain rate, dN1 and every k.
     warnings
@@ -58,7 +55,6 @@ class Climate:
     dn1_n_km: float
     k_median: float
     k_percentiles: tuple[tuple[float, float], ...]
-    gradient_percentiles_n_km: tuple[tuple[float, float], ...]
     rain_source: str
     dn1_source: str
     k_source: str
@@ -164,7 +160,6 @@ def lookup(longitude: float, latitude: float) -> Climate:
         dn1_n_km=dn1,
         k_median=float(k_from_gradient(dict(gradients)[50.0])),
         k_percentiles=_k_percentiles(gradients),
-        gradient_percentiles_n_km=gradients,
         rain_source=rain_source,
         dn1_source=f"gradient in the lowest 65 m at 1 % of the year, {gradients_by}, {package}",
         k_source=f"gradients in the lowest kilometre over the year, {gradients_by}, {package}",

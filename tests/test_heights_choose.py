@@ -15,7 +15,6 @@ from profiler.heights import (
     NoPair,
     all_positions,
     cheapest,
-    cheapest_exact,
     clearing_region,
     free_positions,
     height_cost,
@@ -65,24 +64,6 @@ def test_cheapest_is_the_cheapest_of_all_pairs(region, tower_a, tower_b):
         assert surplus(region, found.antenna_a_m, found.antenna_b_m) >= -ROUNDING_M
         least = min(float(height_cost(tower_a, a) + height_cost(tower_b, b)) for a, b in good)
         assert found.cost == pytest.approx(least, abs=1e-6)
-
-
-@given(regions(), towers(), towers())
-def test_steps_and_taken_positions_never_make_it_cheaper(region, tower_a, tower_b):
-    exact, stepped = cheapest_exact(region, tower_a, tower_b), cheapest(region, tower_a, tower_b)
-    if isinstance(stepped, Choice):
-        assert isinstance(exact, Choice)
-        assert exact.cost <= stepped.cost + 1e-4
-        assert surplus(region, exact.antenna_a_m, exact.antenna_b_m) >= -ROUNDING_M
-
-
-@given(regions(), towers(), towers())
-def test_exact_beats_a_fine_grid(region, tower_a, tower_b):
-    a, b = (np.linspace(tower.lowest_m, tower.highest_m, 60) for tower in (tower_a, tower_b))
-    cost = height_cost(tower_a, a)[:, None] + height_cost(tower_b, b)
-    cost[surplus(region, a[:, None], b) < 0] = math.inf
-    found = cheapest_exact(region, tower_a, tower_b)
-    assert (found.cost if isinstance(found, Choice) else math.inf) <= cost.min() + 1e-4
 
 
 @given(regions(), towers(), towers())
@@ -263,7 +244,6 @@ def test_contradictory_limits_are_refused():
         limits = rf"^heights\.{end}\.lowest_m = 30\.2, heights\.{end}\.highest_m = 30\.8: must hold a whole step of 1 m"
         with pytest.raises(InputError, match=limits):
             cheapest(HILL, *towers)
-    assert isinstance(cheapest_exact(HILL, narrow, TowerChoice(highest_m=20)), NoPair)  # needs no step
     with pytest.raises(InputError, match="highest_m = 5: must be at least lowest_m = 10"):
         TowerChoice(lowest_m=10, highest_m=5)
     with pytest.raises(InputError, match="cost_per_m = -1: must be 0 or more"):

@@ -16,7 +16,6 @@ from profiler.heights import (
     Choice,
     NoPair,
     cheapest,
-    cheapest_exact,
     clearing_region,
     frontier_stretches,
     least_a_for,
@@ -101,14 +100,14 @@ def test_least_height_of_the_other_end_is_the_solvers(profile, ray, region, fixe
 def test_limits_agree_with_the_solver_or_are_proven_hopeless(profile, ray, region, lowest_m, highest_m):
     rows, right = constraints(profile, ray)
     solved = linprog([2, 3], A_ub=rows, b_ub=right, bounds=[(lowest_m, highest_m)] * 2)
-    found = cheapest_exact(
+    found = cheapest(
         region,
         TowerChoice(lowest_m=lowest_m, highest_m=highest_m, cost_per_m=2),
         TowerChoice(lowest_m=lowest_m, highest_m=highest_m, cost_per_m=3),
     )
     assert isinstance(found, NoPair) == (solved.status == 2)  # 2: linprog says infeasible
-    if isinstance(found, Choice):
-        assert found.cost == pytest.approx(solved.fun, abs=1e-4)
+    if isinstance(found, Choice):  # the solver knows no steps of 1 m: at most one more at either end
+        assert solved.fun - 1e-4 <= found.cost <= solved.fun + 2 + 3
 
 
 def test_steps_and_thresholds_agree_with_an_integer_solver(profile, ray, region):

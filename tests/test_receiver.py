@@ -13,11 +13,8 @@ from profiler.errors import InputError
 from profiler.models import RadioMode
 from profiler.receiver import (
     bit_error_ratio,
-    effective_temperature,
     mode_threshold,
     noise_density_dbm_hz,
-    noise_figure,
-    noise_power_dbm,
     parse_modulation,
     required_eb_n0_db,
 )
@@ -48,34 +45,10 @@ def test_noise_density_at_290_kelvin_is_minus_174_dbm_per_hertz():
     assert printed_close(float(noise_density_dbm_hz(1.0)) - 30.0, "-228.6")
 
 
-def test_noise_power_of_a_megahertz_adds_60_db_and_the_noise_figure():
-    assert float(noise_power_dbm(1e6, 7.0) - noise_density_dbm_hz()) == pytest.approx(67.0, abs=1e-12)
-
-
-@pytest.mark.parametrize(("figure_db", "kelvin"), [("1.0", "75"), ("2.0", "170"), ("3.0", "289"), ("10.0", "2610")])
-def test_noise_figure_and_temperature_table(figure_db, kelvin):
-    # Te = 290 (F - 1): conversion table of any receiver handbook (e.g. Pozar, Microwave Engineering), from memory.
-    assert printed_close(float(effective_temperature(float(figure_db))), kelvin)
-
-
-@given(st.floats(0.0, 30.0))
-def test_noise_figure_inverts_temperature(figure_db):
-    assert float(noise_figure(effective_temperature(figure_db))) == pytest.approx(figure_db, abs=1e-9)
-
-
 @pytest.mark.parametrize("kelvin", [0.0, -1.0, math.nan])
 def test_noise_needs_a_temperature(kelvin):
     with pytest.raises(InputError, match=r"temperature_k = .*: must be finite and more than 0 K"):
         noise_density_dbm_hz(kelvin)
-
-
-def test_noise_refuses_impossible_bandwidth_figure_and_temperature():
-    with pytest.raises(InputError, match="bandwidth_hz = 0: must be finite and more than 0 Hz"):
-        noise_power_dbm(0.0)
-    with pytest.raises(InputError, match="noise_figure_db = -1: must be finite and 0 dB or more"):
-        effective_temperature(-1.0)
-    with pytest.raises(InputError, match="temperature_k = -3: must be finite and 0 K or more"):
-        noise_figure(-3.0)
 
 
 # --- bit error ratios
@@ -283,7 +256,7 @@ def test_method_says_which_count_is_an_approximation():
 @pytest.mark.parametrize("name", S_N_AT_1E_MINUS_6)
 def test_threshold_from_bandwidth_is_noise_power_plus_s_n(name):
     threshold = mode_threshold(changed(modulation=name)).level_dbm
-    s_n = threshold - float(noise_power_dbm(28e6, 5.0))
+    s_n = threshold - (float(noise_density_dbm_hz()) + 10 * math.log10(28e6) + 5.0)  # N = k_B·T0·B·F (Friis 1944)
     assert abs(s_n - float(S_N_AT_1E_MINUS_6[name])) <= 0.1  # Rec. ITU-R F.1101 Table 1, as above
 
 

@@ -2,12 +2,11 @@
 
 "Pressure" of `gas_attenuation` and of an `Atmosphere` is that of the *dry* air, p, as Rec. ITU-R P.676 has it. A
 barometer reads the total, p + e with e the vapour pressure: names with ``total`` mean that, and `dry_pressure` and
-`local_atmosphere` convert. Outside the published ranges there are still numbers; `atmosphere_warnings` says which.
+`local_atmosphere` convert. Outside the published ranges there are still numbers; `gas_warnings` says which.
 """
 
 from profiler.atmosphere.air import (
     Atmosphere,
-    Season,
     dry_pressure,
     local_atmosphere,
     reference_atmosphere,
@@ -15,16 +14,15 @@ from profiler.atmosphere.air import (
 )
 from profiler.atmosphere.gases import GasAttenuation, gas_attenuation, gas_attenuation_parts
 from profiler.atmosphere.rain import rain_attenuation, rain_coefficients
-from profiler.atmosphere.ranges import atmosphere_warnings
+from profiler.atmosphere.ranges import gas_warnings
 
 __all__ = [
     "Atmosphere",
     "GasAttenuation",
-    "Season",
-    "atmosphere_warnings",
     "dry_pressure",
     "gas_attenuation",
     "gas_attenuation_parts",
+    "gas_warnings",
     "local_atmosphere",
     "rain_attenuation",
     "rain_coefficients",

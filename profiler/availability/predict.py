@@ -62,11 +62,6 @@ class Availability:
         """Total outage in minutes of an average year of 365.25 days."""
         return self.year_percent.total * MINUTES_PER_YEAR / 100.0
 
-    @property
-    def available_year_percent(self) -> float:
-        """Share of the year without outage, percent."""
-        return 100.0 - self.year_percent.total
-
 
 @dataclass(frozen=True, slots=True, eq=False)
 class OutageCurve:

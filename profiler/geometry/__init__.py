@@ -14,7 +14,7 @@ from profiler.geometry.corridor import (
     side_of,
 )
 from profiler.geometry.ray import earth_bulge, elevation_angle, fresnel_radius, ray_height
-from profiler.geometry.reflection import Reflection, find_reflections, smooth_specular_distance
+from profiler.geometry.reflection import Reflection, find_reflections
 
 __all__ = [
     "ROUNDING_M",
@@ -32,6 +32,5 @@ __all__ = [
     "fresnel_radius",
     "ray_height",
     "side_of",
-    "smooth_specular_distance",
     "tight_places",
 ]

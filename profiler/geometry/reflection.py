@@ -9,10 +9,12 @@ from numpy.typing import ArrayLike
 
 from profiler.errors import InputError
 from profiler.geometry.ray import earth_bulge
-from profiler.units import MEAN_EARTH_RADIUS_M, SPEED_OF_LIGHT_M_S, Float, wavelength
+from profiler.units import SPEED_OF_LIGHT_M_S, Float, wavelength
 
-__all__ = ["Reflection", "find_reflections", "smooth_specular_distance"]
+__all__ = ["Reflection", "find_reflections"]
 
+_FACET = 1.0 / 20.0
+"""Length of a facet over that of the path."""
 _FEWEST_FACET_POINTS = 3
 
 
@@ -39,55 +41,6 @@ class Reflection:
         return self.screened_a or self.screened_b
 
 
-def smooth_specular_distance(distance_m: float, height_a_m: float, height_b_m: float, k: float) -> float:
-    """Distance from A to the specular point on a smooth curved earth.
-
-    With m = d²/(4·k·R·(h1 + h2)) and c = (h1 - h2)/(h1 + h2) (the taller end first) the reflection lies at
-    d1 = d/2·(1 + b), b = 2·sqrt((m + 1)/(3m))·cos(π/3 + arccos(3c/2·sqrt(3m/(m + 1)³))/3).
-
-    Parameters
-    ----------
-    distance_m
-        Length of the path, more than 0 m.
-    height_a_m, height_b_m
-        Antenna centres above the smooth surface, 0 m or more, not both 0.
-    k
-        Effective-earth-radius factor, more than 0.
-
-    Returns
-    -------
-    float
-        Metres from A.
-
-    Raises
-    ------
-    InputError
-        For a length, heights or k outside those ranges.
-
-    Examples
-    --------
-    >>> round(smooth_specular_distance(40e3, 50.0, 50.0, 4 / 3))
-    20000
-    >>> round(smooth_specular_distance(40e3, 100.0, 50.0, 4 / 3))
-    25156
-
-    Notes
-    -----
-    Source: Rec. ITU-R P.530-18 §6.1.2.3 and P.526-15 §3.2 use this closed form (from memory of the text).
-    """
-    if not (distance_m > 0 and k > 0 and min(height_a_m, height_b_m) >= 0 and height_a_m + height_b_m > 0):
-        raise InputError(
-            f"path of {distance_m} m, antennas {height_a_m} and {height_b_m} m, k {k}: must be more than 0"
-        )
-    total = height_a_m + height_b_m
-    c = abs(height_a_m - height_b_m) / total
-    m = distance_m**2 / (4.0 * k * MEAN_EARTH_RADIUS_M * total)
-    angle = np.arccos(1.5 * c * np.sqrt(3.0 * m / (m + 1.0) ** 3))
-    b = 2.0 * np.sqrt((m + 1.0) / (3.0 * m)) * np.cos(np.pi / 3.0 + angle / 3.0)
-    from_taller = 0.5 * distance_m * (1.0 + b)
-    return float(from_taller if height_a_m >= height_b_m else distance_m - from_taller)
-
-
 def find_reflections(
     distance_m: ArrayLike,
     surface_m: ArrayLike,
@@ -96,13 +49,12 @@ def find_reflections(
     frequency_hz: float,
     *,
     k: float,
-    facet_m: float | None = None,
 ) -> tuple[Reflection, ...]:
     """Specular points of a profile: places whose facet of bulged ground mirrors one antenna into the other.
 
     Around every point a straight facet is fitted to the bulged surface by least squares; the image of B in the facet
     tells where the mirrored ray would meet it. The places that meet themselves are the specular points. On a smooth
-    earth that is the one point of `smooth_specular_distance`; rough country may have several or none.
+    earth that is one point; rough country may have several or none.
 
     Parameters
     ----------
@@ -114,8 +66,6 @@ def find_reflections(
         Frequency, more than 0 Hz; it sets how rough is rough.
     k
         Effective-earth-radius factor, more than 0.
-    facet_m
-        Length of a facet, metres; by default a twentieth of the path.
 
     Returns
     -------
@@ -136,7 +86,7 @@ def find_reflections(
     """
     distance, surface = np.asarray(distance_m, dtype=float), np.asarray(surface_m, dtype=float)
     bulged = surface + earth_bulge(distance, distance[-1] - distance, k)
-    length = 0.05 * float(distance[-1]) if facet_m is None else facet_m
+    length = _FACET * float(distance[-1])
     mean, slope, rms = _facets(distance, bulged, length)
     # heights of both antennas over each facet's line, and where the mirrored ray meets that line
     over_a = centre_a_m - (mean + slope * (0.0 - distance))
@@ -179,7 +129,10 @@ def _facets(distance: Float, bulged: Float, length: float) -> tuple[Float, Float
     last = np.searchsorted(distance, distance + 0.5 * length, side="right")
     count = last - first
     if count.max() < _FEWEST_FACET_POINTS:
-        raise InputError(f"facet_m = {length:.0f}: must span at least {_FEWEST_FACET_POINTS} points of the profile")
+        raise InputError(
+            f"profile of {distance.size} points: must have {_FEWEST_FACET_POINTS} or more in every {length:.0f} m, "
+            "the length of a facet"
+        )
     x, z = distance - distance.mean(), bulged - bulged.mean()
 
     def window(values: Float) -> Float:

@@ -3,7 +3,7 @@
 Heights are metres above the ground of their own site unless a name says ``centre`` (above the vertical datum).
 """
 
-from profiler.heights.choose import Choice, Lowering, NoPair, cheapest, cheapest_exact, cheapest_of, least_other
+from profiler.heights.choose import Choice, Lowering, NoPair, cheapest, cheapest_of, least_other
 from profiler.heights.diversity import DiversityEnd, check_diversity, lower_rays, lower_rules
 from profiler.heights.frontier import Stretch, frontier_stretches
 from profiler.heights.positions import all_positions, both_free, free_positions, height_cost, round_up
@@ -38,7 +38,6 @@ __all__ = [
     "both_free",
     "cheapest",
     "cheapest_by_trial",
-    "cheapest_exact",
     "cheapest_of",
     "check_diversity",
     "clearing_region",

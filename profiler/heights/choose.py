@@ -14,7 +14,7 @@ from profiler.heights.region import ClearingRegion, Least, least_a_for, least_b_
 from profiler.models import TowerChoice
 from profiler.units import Float
 
-__all__ = ["Choice", "Lowering", "NoPair", "cheapest", "cheapest_exact", "cheapest_of", "least_other", "no_position"]
+__all__ = ["Choice", "Lowering", "NoPair", "cheapest", "cheapest_of", "least_other", "no_position"]
 
 _TALLEST_M = 2000.0
 """Above this no antenna is mounted (the models refuse it), so it is no remedy."""
@@ -191,41 +191,6 @@ def cheapest(
         blame = _clears_without_taken(region, tower_a, tower_b, spacing_m)
         return _no_pair(region, float(free_a[-1]), float(free_b[-1]), taken_to_blame=blame)
     return cheapest_of(free_a[found], free_b[index[found]], tower_a, tower_b)
-
-
-def cheapest_exact(region: ClearingRegion, tower_a: TowerChoice, tower_b: TowerChoice) -> Choice | NoPair:
-    """Find the cheapest pair of any heights between the towers' limits, regardless of steps and taken positions.
-
-    Along the frontier the cost is straight between its corners, except where a height passes a threshold; so the
-    cheapest pair is at a corner, a threshold or a limit, and looking at those is exact.
-
-    Parameters
-    ----------
-    region
-        From `profiler.heights.clearing_region`.
-    tower_a, tower_b
-        Limits and costs.
-
-    Returns
-    -------
-    Choice or NoPair
-
-    Examples
-    --------
-    >>> from profiler.heights import clearing_region
-    >>> region = clearing_region([0, 2e3, 8e3, 10e3], [100, 160, 160, 100], 100, 100)
-    >>> cheapest_exact(region, TowerChoice(cost_per_m=5), TowerChoice())
-    Choice(antenna_a_m=37.5, antenna_b_m=150.0, cost=337.5)
-    """
-    marks_b = [tower_b.lowest_m, tower_b.highest_m, *([] if tower_b.threshold_m is None else [tower_b.threshold_m])]
-    marks_a = [tower_a.lowest_m, tower_a.highest_m, *([] if tower_a.threshold_m is None else [tower_a.threshold_m])]
-    a = np.concatenate((region.vertices_m[:, 0], marks_a, least_a_for(region, marks_b)))
-    a = np.unique(np.clip(a, tower_a.lowest_m, tower_a.highest_m))
-    b = np.maximum(least_b_for(region, a), tower_b.lowest_m)
-    found = b <= tower_b.highest_m + ROUNDING_M
-    if not found.any():
-        return _no_pair(region, tower_a.highest_m, tower_b.highest_m)
-    return cheapest_of(a[found], b[found], tower_a, tower_b)
 
 
 def cheapest_of(antenna_a_m: Float, antenna_b_m: Float, tower_a: TowerChoice, tower_b: TowerChoice) -> Choice:

@@ -32,8 +32,6 @@ __all__ = [
 
 Index = NDArray[np.intp]
 
-_FILTER_PASSES = 8
-
 
 @dataclass(frozen=True, slots=True, eq=False)
 class ClearingRegion:
@@ -53,16 +51,6 @@ class ClearingRegion:
     ground_b_m: float
     vertices_m: Float
     governing_point: Index
-
-    @property
-    def governing_rule(self) -> Index:
-        """Index of the rule that governs each stretch, (v + 1,)."""
-        return self.rule[self.governing_point]
-
-    @property
-    def governing_distance_m(self) -> Float:
-        """Distance from A of the point that governs each stretch, (v + 1,)."""
-        return self.distance_m[self.governing_point]
 
     @property
     def lowest_a_m(self) -> float:
@@ -163,7 +151,7 @@ def clearing_region(
     >>> region = clearing_region([0, 5e3, 10e3], [100, 160, 100], 100, 100)
     >>> region.vertices_m.tolist()
     [[0.0, 120.0], [120.0, 0.0]]
-    >>> region.governing_distance_m.tolist()
+    >>> region.distance_m[region.governing_point].tolist()
     [0.0, 5000.0, 10000.0]
 
     Notes
@@ -278,29 +266,14 @@ def _hull(region: ClearingRegion) -> tuple[Float, Float]:
 
 
 def _upper_hull(x: Float, y: Float) -> Index:
-    """Find the corners of the upper convex hull, x ascending, both ends among them, as indices.
-
-    A point on or below the chord of its neighbours is no corner; dropping all such at once, a few times over, leaves
-    few points of rough country for the exact chain. When a pass drops none, what is left is the hull.
-    """
-    kept = np.arange(x.size)
-    for _ in range(_FILTER_PASSES):
-        run, rise = np.diff(x[kept]), np.diff(y[kept])
-        above = rise[:-1] * run[1:] > rise[1:] * run[:-1]
-        if above.all():
-            return kept
-        kept = np.concatenate((kept[:1], kept[1:-1][above], kept[-1:]))
-    return kept[_chain(x[kept].tolist(), y[kept].tolist())]
-
-
-def _chain(x: list[float], y: list[float]) -> list[int]:
-    """Monotone chain: upper hull of points with ascending x, as indices."""
+    """Find the corners of the upper convex hull, x ascending, both ends among them, as indices: the monotone chain."""
     hull: list[int] = []
-    for i in range(len(x)):
+    along, up = x.tolist(), y.tolist()  # plain numbers: a loop over arrays takes many times as long
+    for i in range(len(along)):
         while len(hull) >= 2:
             p, q = hull[-2], hull[-1]
-            if (y[q] - y[p]) * (x[i] - x[q]) > (y[i] - y[q]) * (x[q] - x[p]):
+            if (up[q] - up[p]) * (along[i] - along[q]) > (up[i] - up[q]) * (along[q] - along[p]):
                 break
             hull.pop()
         hull.append(i)
-    return hull
+    return np.array(hull, dtype=np.intp)

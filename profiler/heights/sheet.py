@@ -21,7 +21,7 @@ __all__ = ["EndHeights", "Held", "MountingSheet", "mounting_sheet"]
 
 @dataclass(frozen=True, slots=True)
 class EndHeights:
-    """One end's antenna: ``needed_m`` is what was asked for, ``antenna_m`` the position above ground that it gets.
+    """One end's antenna: ``antenna_m`` is the position above ground that it gets.
 
     ``lower_m`` is the lower antenna of a diversity pair, None without one. ``ground_m`` and ``centre_m`` are above the
     vertical datum of the terrain (mean sea level where that is the datum). Feet are international feet, 0.3048 m
@@ -29,7 +29,6 @@ class EndHeights:
     """
 
     end: Literal["A", "B"]
-    needed_m: float
     antenna_m: float
     ground_m: float
     lower_m: float | None = None
@@ -184,7 +183,7 @@ def mounting_sheet(
         held += [hold("lower A", spacing_m, 0.0, lower_rule), hold("lower B", 0.0, spacing_m, lower_rule)]
     lower_a, lower_b = (mounted - spacing_m if spacing_m else None for mounted in (mounted_a, mounted_b))
     return MountingSheet(
-        end_a=EndHeights("A", antenna_a_m, mounted_a, float(ground_a_m), lower_a),
-        end_b=EndHeights("B", antenna_b_m, mounted_b, float(ground_b_m), lower_b),
+        end_a=EndHeights("A", mounted_a, float(ground_a_m), lower_a),
+        end_b=EndHeights("B", mounted_b, float(ground_b_m), lower_b),
         held=tuple(held),
     )

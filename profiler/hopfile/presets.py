@@ -37,11 +37,6 @@ class Preset:
         """Whether the hop file must give the low k too."""
         return any(rule.k == "low" for rule in self.rules)
 
-    @property
-    def uses_median_k(self) -> bool:
-        """Whether the median k of the hop file matters."""
-        return any(rule.k == "median" for rule in self.rules)
-
 
 _P530 = "Rec. ITU-R P.530-18 §2.2 (from memory)"
 _COMMON = "common practice, no source"

@@ -7,10 +7,7 @@ ratios are inverted exactly (in closed form or by a bracketed root), never from 
 from profiler.receiver.modulation import Modulation, bit_error_ratio, parse_modulation, required_eb_n0_db
 from profiler.receiver.noise import (
     NOISE_REFERENCE_K,
-    effective_temperature,
     noise_density_dbm_hz,
-    noise_figure,
-    noise_power_dbm,
 )
 from profiler.receiver.threshold import Line, Threshold, mode_threshold
 
@@ -20,11 +17,8 @@ __all__ = [
     "Modulation",
     "Threshold",
     "bit_error_ratio",
-    "effective_temperature",
     "mode_threshold",
     "noise_density_dbm_hz",
-    "noise_figure",
-    "noise_power_dbm",
     "parse_modulation",
     "required_eb_n0_db",
 ]

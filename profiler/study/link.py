@@ -6,7 +6,7 @@ from collections.abc import Iterable
 from dataclasses import dataclass
 from typing import TYPE_CHECKING
 
-from profiler.atmosphere import Atmosphere, gas_attenuation, local_atmosphere
+from profiler.atmosphere import Atmosphere, gas_attenuation, gas_warnings, local_atmosphere
 from profiler.diffraction import DiffractionLoss, diffract_over_k
 from profiler.errors import under
 from profiler.models import AvailabilityChoice, DiffractionMethod, Hop, Profile
@@ -21,12 +21,12 @@ __all__ = ["Air", "Link", "air_along", "link", "losses_at"]
 
 @dataclass(frozen=True, slots=True)
 class Air:
-    """The air that the gas attenuation assumes, and where each number comes from."""
+    """The air that the gas attenuation assumes, where each number comes from, and where a published range is left."""
 
     atmosphere: Atmosphere
-    gas_db_per_km: float
     gas_db: float
     source: str
+    warnings: tuple[str, ...]
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -118,7 +118,8 @@ def air_along(hop: Hop, profile: Profile) -> Air:
     assumed = [name for name, value in fields.items() if value is None]
     reference = f"Rec. ITU-R P.835-6 mean annual reference atmosphere at {height_m:.0f} m"
     source = f"{', '.join(assumed)}: {reference}" if assumed else "given"
-    return Air(atmosphere, per_km, per_km * float(profile.distance_m[-1]) / 1e3, source)
+    gas_db = per_km * float(profile.distance_m[-1]) / 1e3
+    return Air(atmosphere, gas_db, source, gas_warnings(hop.frequency_hz, height_m if assumed else None))
 
 
 def _budget(hop: Hop, profile: Profile, air: Air, loss: DiffractionLoss) -> Budget | None:

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 from datetime import UTC, datetime
-from functools import cache, lru_cache
+from functools import cache
 from importlib.metadata import version
 from pathlib import Path
 from platform import python_version
@@ -26,16 +26,10 @@ def _versions() -> tuple[tuple[str, str], ...]:
     return (("hopwright", __version__), ("python", python_version()), *libraries, *library_versions())
 
 
-@lru_cache(maxsize=4096)
-def _hash(path: Path, size: int, changed_ns: int) -> str:
-    """Hash a file once for all studies, as long as its size and time of change stay."""
-    del size, changed_ns
-    return file_hash(path)
-
-
-def _identity(path: Path) -> tuple[str, int, str]:
-    status = path.stat()
-    return path.name, status.st_size, _hash(path.resolve(), status.st_size, status.st_mtime_ns)
+@cache
+def _identity(path: Path, size: int, _changed_ns: int) -> tuple[str, int, str]:
+    """Name, size and hash of a file, read once for all studies while its size and time of change stay."""
+    return path.name, size, file_hash(path)
 
 
 def provenance(hop: Hop, files: Sequence[Path]) -> Provenance:
@@ -52,10 +46,11 @@ def provenance(hop: Hop, files: Sequence[Path]) -> Provenance:
     -------
     Provenance
     """
+    states = ((path.absolute(), path.stat()) for path in files)
     return Provenance(
         created=datetime.now(UTC).isoformat(timespec="seconds"),
         versions=_versions(),
         hop_file=Path(hop.source).name,
         hop_sha256=hop.source_sha256,
-        rasters=tuple(_identity(path) for path in files),
+        rasters=tuple(_identity(path, state.st_size, state.st_mtime_ns) for path, state in states),
     )

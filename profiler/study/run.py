@@ -8,7 +8,6 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 
-from profiler.atmosphere import atmosphere_warnings
 from profiler.errors import InputError, under
 from profiler.geometry import check_corridor, check_rule, elevation_angle, find_reflections
 from profiler.models import ConfidenceChoice, Hop, Rule
@@ -110,7 +109,7 @@ def run_study(hop: Hop, terrain: Terrain | None = None, *, relief: bool = False,
         verdict=judge(hop, rules, found.budget, found.outage.meets),
         provenance=provenance(hop, ground.files),
         assumptions=_assumptions(hop, ground, climate, air, found),
-        warnings=(*_lower_warnings(hop, ground, climate.median_k), *_warnings(hop, ground, rules, found)),
+        warnings=(*_lower_warnings(hop, ground, climate.median_k), *_warnings(hop, ground, rules, air, found)),
     )
 
 
@@ -228,14 +227,14 @@ def _lower_warnings(hop: Hop, ground: Ground, median_k: float) -> tuple[str, ...
     return tuple(f"diversity at {note}; the outage counts its improvement all the same" for note in short)
 
 
-def _warnings(hop: Hop, ground: Ground, rules: Sequence[RuleResult], found: Link) -> tuple[str, ...]:
+def _warnings(hop: Hop, ground: Ground, rules: Sequence[RuleResult], air: Air, found: Link) -> tuple[str, ...]:
     """Every warning of every stage, each once."""
     return tuple(
         dict.fromkeys(
             [
                 *ground_warnings(hop, ground.terrain, rules, ground.line.points),
                 *(warning for loss in found.losses.values() for warning in loss.warnings),
-                *atmosphere_warnings(hop.frequency_hz),
+                *air.warnings,
                 *(found.budget.warnings if found.budget is not None else ()),
                 *found.outage.warnings,
             ]
