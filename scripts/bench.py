@@ -16,7 +16,7 @@ import tempfile
 import time
 import tracemalloc
 from collections.abc import Callable, Iterator
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from pathlib import Path
 
 import numpy as np
@@ -27,10 +27,12 @@ from scipy.spatial import ConvexHull
 from profiler.confidence import assess
 from profiler.diffraction import delta_bullington
 from profiler.heights import clearing_region, least_ray
+from profiler.hopfile import load_hop
 from profiler.models import Hop, Rule, Site, TerrainChoice
 from profiler.path import PathLine, trace
-from profiler.study import run_study
+from profiler.study import Study, run_study
 from profiler.study.ground import read_ground
+from profiler.study.plan import plan_heights
 from profiler.terrain import SourceUse, open_terrain
 
 ROOT = Path(__file__).resolve().parent.parent
@@ -237,6 +239,27 @@ def heights(pairs: int) -> Iterator[Row]:
     yield took.row("heights: exact region, 1000 points, 3 rules", "2 ms", "Qhull of the points")
 
 
+def heights_plan(pairs: int) -> Iterator[Row]:
+    """Plan the sample hop's heights, objective and all, beside the study of its ground; then with steps of 0.1 m."""
+    hop = load_hop(SAMPLE)
+    fine = replace(
+        hop,
+        heights=replace(
+            hop.heights,
+            tower_a=replace(hop.heights.tower_a, step_m=0.1),
+            tower_b=replace(hop.heights.tower_b, step_m=0.1),
+        ),
+    )
+    for name, each in (("", hop), (", steps of 0.1 m", fine)):
+        study = run_study(each, losses=False)
+
+        def job(study: Study = study) -> object:
+            return plan_heights(study, sure=0.95)
+
+        took = paired(job, lambda: run_study(hop, losses=False), pairs)
+        yield took.row(f"heights: plan of the sample hop, 95 % sure{name}", "1 s", "its study, no losses")
+
+
 def confidence(pairs: int) -> Iterator[Row]:
     """Draw the confidence analysis, beside drawing as many Gaussian numbers."""
     distance_m, ground_m = country(1000)
@@ -308,6 +331,7 @@ def main() -> None:
             analysis(work, pairs),
             diffraction(pairs),
             heights(pairs),
+            heights_plan(pairs),
             confidence(pairs),
             reading(work, pairs),
         ):
