@@ -257,7 +257,7 @@ def heights_plan(pairs: int) -> Iterator[Row]:
             return plan_heights(study, sure=0.95)
 
         took = paired(job, lambda: run_study(hop, losses=False), pairs)
-        yield took.row(f"heights: plan of the sample hop, 95 % sure{name}", "1 s", "its study, no losses")
+        yield took.row(f"heights: sample hop, 95 % sure{name}", "1 s", "its study, no losses")
 
 
 def confidence(pairs: int) -> Iterator[Row]:
