@@ -16,14 +16,14 @@ __all__ = ["DoubleLosses", "cascaded_knife_edges", "double_edge", "single_knife_
 
 _NO_POINT = -1
 
-_APART_M = 250.0
-"""Nearer points on a string over the profile are one obstruction in Rec. ITU-R P.526-15 §4.4.1 (from memory)."""
+_APART_M = 500.0
+"""Twice the 250 m of Rec. ITU-R P.526-15 §4.4.1: there, neighbouring points up to 250 m apart are one obstruction."""
 
 _APART_SHARE = 0.1
 """The same as a share of the way to the nearer end, where less: two edges on the line then lose 1 dB more than one."""
 
-_CLEAR = 0.6
-"""Part of the first Fresnel radius that must be clear for a path without loss (Rec. ITU-R P.526-15 §2, from memory)."""
+_ROUNDING = 1.0 - 1e-9
+"""Points are often a round part of 500 m apart, and must count, or not, alike from both ends."""
 
 
 def _main_point(block: Block) -> tuple[Index]:
@@ -74,7 +74,7 @@ def single_knife_edge(
 
 
 def _three_points(block: Block) -> tuple[Index, Index, Index]:
-    """Inner points of greatest ν: of the whole path, and of the other obstacles towards A and B; −1 for none."""
+    """Inner points of greatest ν: of the whole path, and of what is far enough from it towards A and B; −1 for none."""
     rise = block.rise()
     t = np.broadcast_to(block.grid.t, rise.shape)
     main = (rise * block.grid.weight).argmax(axis=1)
@@ -83,30 +83,11 @@ def _three_points(block: Block) -> tuple[Index, Index, Index]:
     left = np.arange(rise.shape[1]) < main[:, None]
     share, share_main = np.where(left, t, 1.0 - t), np.where(left, t_main, 1.0 - t_main)
     away = np.abs(t - t_main)
-    away[rows, main] = 1.0  # of the whole path: the principal edge is no distance from itself to divide by
-    over = rise - share * (rise_main / share_main)
-    other = _on_another_obstacle(over, away, left, main, block)
     near = np.minimum(_APART_M / block.length_m[:, None], _APART_SHARE * np.minimum(t_main, 1.0 - t_main))
-    weighted = np.where(other & (away >= near), over * np.sqrt(share_main / (share * away)), -np.inf)
+    other = away >= near * _ROUNDING
+    over = rise - share * (rise_main / share_main)
+    weighted = np.where(other, over * np.sqrt(share_main / (share * np.where(other, away, 1.0))), -np.inf)
     return main, _greatest(np.where(left, weighted, -np.inf)), _greatest(np.where(left, -np.inf, weighted))
-
-
-def _on_another_obstacle(
-    over: Float, away: Float, left: NDArray[np.bool_], main: Index, block: Block
-) -> NDArray[np.bool_]:
-    """Whether the line from the principal edge to each point is clear of some ground between.
-
-    `over` is the rise over the line from the principal edge to the end beyond the point, `away` the share of the path
-    between the principal edge and the point, `left` whether it is on the side of A. With slopes seen from the principal
-    edge, the clearance is a running minimum away from it.
-    """
-    slope = over / away
-    fresnel = np.sqrt((block.wavelength_m * block.length_m)[:, None] / away)  # radius near an end, over the distance
-    cleared = slope + _CLEAR * fresnel
-    cleared[np.arange(main.size), main] = np.inf
-    to_a = np.minimum.accumulate(np.where(left, cleared, np.inf)[:, ::-1], axis=1)[:, ::-1]
-    to_b = np.minimum.accumulate(np.where(left, np.inf, cleared), axis=1)
-    return np.asarray(slope >= np.where(left, to_a, to_b))
 
 
 def _greatest(values: Float) -> Index:
@@ -166,7 +147,7 @@ def cascaded_knife_edges(
 
     L = J(νp) + T·(J(νt) + J(νr) + C) dB for νp > −0.78, else 0, with T = 1 − e^(−J(νp)/6) and C = 10 + 0.04·D, D in km.
     νt is the greatest of the section from A to the principal edge, νr of the section from there to B, among the points
-    that belong to other obstacles than the principal edge.
+    at least 500 m from that edge, or a tenth of its way to the nearer end where that is less.
 
     Parameters
     ----------
@@ -196,12 +177,11 @@ def cascaded_knife_edges(
     -----
     Source: Rec. ITU-R P.526-15 §4.4.2, the cascaded knife edge method (from memory of the text).
 
-    That text lets any point of the sections be an edge, so that one hill counts up to three times, and the more the
-    finer its points. What belongs to the principal edge's hill is this project's own rule. A point is on another
-    obstacle if the line from the principal edge to it clears some ground between, u metres from that edge, by
-    0.6·sqrt(λ·u), the part of a Fresnel radius that leaves a path without loss; and if it is at least 250 m away, or a
-    tenth of the way from the principal edge to the nearer end where that is less. The loss over a hill then hangs on
-    the spacing of its points little more than that of the knife edge.
+    That text lets any point of the sections be an edge, so that one hill counts up to three times, the more the finer
+    its points. The least distance between edges is this project's own rule: in §4.4.1 neighbouring points up to 250 m
+    apart are one obstruction, so that the nearest other one is 500 m away; nearer to an end it shrinks with the way to
+    that end, which alone says how far two edges act as one (α of §4.3). A top wider than that counts as two or three
+    edges, as it should: waves lose more over it than over one edge.
     """
     hops = Hops.of(distance_m, height_m, centre_a_m, centre_b_m, frequency_hz, effective_radius_m)
     finder = hops if edges_radius_m is None else hops.with_radius(edges_radius_m)
@@ -234,7 +214,8 @@ def double_edge(
     """Loss of the profile's two main edges, by `double_edge_loss`.
 
     The first is the principal edge; the second has the greatest ν of the two sections from it to the ends, among the
-    points of other obstacles. Where no second one has ν > −0.78, the loss is that of the principal edge alone.
+    points that are far enough from it to be another edge. Where none of these has ν > −0.78, the loss is that of the
+    principal edge alone.
 
     Parameters
     ----------
