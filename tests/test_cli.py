@@ -634,7 +634,7 @@ def test_outputs_that_cannot_be(refused, words, message):
         ("dem.tif", "cut.tif", "cut.tif: not readable as a raster"),
         ("dem.tif", "text.tif", "text.tif: not readable as a raster"),
         ("dem.tif", "void.tif", "no ground height at "),
-        ('"dem.tif"', '"egm96.tif", "egm2008.tif"', "heights on different vertical datums meet on one path"),
+        ('"dem.tif"', '"egm96.tif", "egm2008.tif"', "heights on different vertical datums meet on"),
         ("dem.tif", "trees.tif", "trees.tif: holds 8-bit cells"),
         ('["dem.tif"]', "[]", "terrain.paths = []: must be a list with at least one text"),
         ('["dem.tif"]', '["dem.tif"]\nspacing_m = 5000', "terrain.spacing_m = 5000: must be at most one 50th of this"),

@@ -15,10 +15,9 @@ from typing import Any
 
 import click
 
-from profiler.cli.screen import console
 from profiler.errors import InputError
 
-__all__ = ["check_targets", "console", "csv_text", "deliver", "json_text", "put", "rendered", "write_whole"]
+__all__ = ["check_targets", "csv_text", "deliver", "json_text", "put", "rendered", "write_whole"]
 
 
 def check_targets(*targets: str | Path | None, figures: Sequence[Path] = (), hop_file: Path | None = None) -> None:

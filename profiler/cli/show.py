@@ -16,7 +16,7 @@ if TYPE_CHECKING:
     from profiler.models import Rule
     from profiler.study import Place, Study
 
-__all__ = ["Scale", "compact_table", "show_notes", "show_study", "show_sure_heights"]
+__all__ = ["show_study"]
 
 _MOST_NAMED = 3
 """Rasters that are named, those that gave most first; the document has them all."""
@@ -275,7 +275,7 @@ def _show_confidence(screen: Console, study: Study, scale: Scale) -> None:
             *(f"{share:.0%}" for share in (doubt.shares.terrain, doubt.shares.cover, doubt.shares.k)),
         )
     show_table(screen, table)
-    show_sure_heights(screen, found, scale)
+    _show_sure_heights(screen, found, scale)
     places = ", ".join(
         f"{scale.distance(point.distance_m)} {scale.distance_unit} ({point.share_of_doubt:.0%} of the doubt)"
         for point in found.survey
@@ -284,7 +284,7 @@ def _show_confidence(screen: Console, study: Study, scale: Scale) -> None:
         say(screen, f"Survey first: {places}")
 
 
-def show_sure_heights(screen: Console, found: Confidence, scale: Scale) -> None:
+def _show_sure_heights(screen: Console, found: Confidence, scale: Scale) -> None:
     """Print the antenna heights that are sure enough, by raising both or one."""
     for sure in found.sure:
         alone = [

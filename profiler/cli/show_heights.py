@@ -25,7 +25,7 @@ def show_heights(plan: HeightsPlan, *, feet: bool, quiet: bool, color: bool) -> 
     _show_answer(screen, plan, scale)
     if quiet:
         return
-    _show_sheet(screen, plan)
+    _show_sheet(screen, plan, scale)
     say(screen, f"\nLeast equal heights: {_least(plan, plan.least_equal, scale, 'AB')}")
     site_a, site_b = plan.study.hop.site_a, plan.study.hop.site_b
     for fixed, other, height_m, found in (
@@ -53,12 +53,12 @@ def show_heights(plan: HeightsPlan, *, feet: bool, quiet: bool, color: bool) -> 
     )
 
 
-def _rule(rules: Sequence[Rule], number: int) -> str:
+def _rule(rules: Sequence[Rule], number: int, scale: Scale) -> str:
     """Say what a requirement asks for, by its index; -1 is the bare ground of a site."""
     if number < 0:
         return "site's own ground"
     rule = rules[number]
-    margin = f" + {rule.margin_m:g} m" if rule.margin_m else ""
+    margin = f" + {scale.height(rule.margin_m)} {scale.height_unit}" if rule.margin_m else ""
     lower = f", {rule.label}" if rule.label.startswith("lower antenna") else ""
     return f"{rule.fresnel_fraction:g} F1{margin} at k = {rule.k:.3f}{lower}"
 
@@ -77,7 +77,7 @@ def _show_answer(screen: Console, plan: HeightsPlan, scale: Scale) -> None:
         if answer.pair.lower:
             worst = answer.pair.lower[0]
             text = f"In the way: {_where(plan.source(worst.point, worst.rule), scale)}, under"
-            say(screen, f"{text} {_rule(plan.rules, worst.rule)}")
+            say(screen, f"{text} {_rule(plan.rules, worst.rule, scale)}")
         show_notes(screen, "Any one of these would do", answer.pair.remedies)
         if not isinstance(plan.cheapest, NoPair):
             pair = f"A {scale.height(plan.cheapest.antenna_a_m)}, B {scale.height(plan.cheapest.antenna_b_m)} {unit}"
@@ -124,7 +124,7 @@ def _least(plan: HeightsPlan, least: Least, scale: Scale, ends: str) -> str:
     positions = ", ".join(f"{end} {_position(least.height_m, towers[end], plan.spacing_m, scale)}" for end in ends)
     return (
         f"{scale.height(least.height_m, 2)} {scale.height_unit} ({positions}), for"
-        f" {_where(plan.source(least.point, least.rule), scale)}, under {_rule(plan.rules, least.rule)}"
+        f" {_where(plan.source(least.point, least.rule), scale)}, under {_rule(plan.rules, least.rule, scale)}"
     )
 
 
@@ -140,24 +140,26 @@ def _position(height_m: float | None, tower: TowerChoice, spacing_m: float, scal
     return f"no free position from {scale.height(height_m)} {scale.height_unit} up"
 
 
-def _show_sheet(screen: Console, plan: HeightsPlan) -> None:
+def _show_sheet(screen: Console, plan: HeightsPlan, scale: Scale) -> None:
     """Print both ends' mounted heights, always in both unit systems, and how the rules fare with them."""
     sheet = plan.sheet
     if sheet is None:
         return
     feet = Scale(feet=True)
-    table = compact_table("mounted", "above ground m", "ft", "ground m", "ft", "above sea level m", "ft")
+    headers = ("above ground\nm", "\nft", "ground\nm", "\nft", "above sea\nm", "\nft")
+    table = compact_table("mounted", *headers, wraps="mounted")
     for end, name in ((sheet.end_a, plan.study.hop.site_a.name), (sheet.end_b, plan.study.hop.site_b.name)):
         antennas = [(f"{end.end}  {name}", end.antenna_m)]
         antennas += [] if end.lower_m is None else [(f"{end.end}  lower antenna", end.lower_m)]
         for label, antenna_m in antennas:
             heights = (antenna_m, end.ground_m, end.ground_m + antenna_m)
             table.add_row(label, *(text for height in heights for text in (f"{height:.1f}", feet.height(height))))
-    screen.print()
+    say(screen, "")
     show_table(screen, table)
     width = "along the path and beside it" if sheet.beside else "along the path"
     worst = min(sheet.held, key=lambda held: held.surplus_m)
-    verdict = f"passes, {worst.surplus_m:.2f} m to spare" if sheet.passes else f"FAILS, {-worst.surplus_m:.2f} m short"
+    surplus = f"{scale.height(abs(worst.surplus_m), 2)} {scale.height_unit}"
+    verdict = f"passes, {surplus} to spare" if sheet.passes else f"FAILS, {surplus} short"
     say(screen, f"Re-checked through every rule, {width}: {verdict}")
 
 
@@ -167,21 +169,19 @@ def _show_frontier(screen: Console, plan: HeightsPlan, scale: Scale) -> None:
         say(screen, "\nFrontier: none of it lies within the towers' limits.")
         return
     unit = scale.height_unit
-    titles = (f"frontier\n{unit}", "A", "B", f"for\n{scale.distance_unit}", f"beside\n{unit}", "latitude, longitude",
-              f"ground + cover\n{unit}", "rule")  # fmt: skip
-    table = compact_table(*titles, wraps="rule")
-    for number, stretch in enumerate(plan.stretches, start=1):
+    titles = (f"frontier: A\n{unit}", f"B\n{unit}", "for", f"ground + cover\n{unit}", "rule")
+    table = compact_table(*titles, words=("for",), wraps="rule")
+    for stretch in plan.stretches:
         place = plan.source(stretch.point, stretch.rule)
+        aside = f", {_offset(place, scale)} {unit} {place.side}" if _aside(place) else ""
         table.add_row(
-            str(number),
             *_spans(stretch, scale),
-            scale.distance(place.distance_m),
-            f"{_offset(place, scale)} {place.side}" if _aside(place) else "-",
+            f"{scale.distance(place.distance_m)} {scale.distance_unit}{aside}\n"
             f"{place.latitude:.5f}, {place.longitude:.5f}",
             f"{scale.height(place.ground_m)} + {scale.height(place.cover_m)}",
-            _rule(plan.rules, stretch.rule),
+            _rule(plan.rules, stretch.rule, scale),
         )
-    screen.print()
+    say(screen, "")
     show_table(screen, table)
 
 
@@ -198,7 +198,7 @@ def _show_limit(screen: Console, title: str, found: LimitHeights, scale: Scale) 
     say(screen, f"\n{title}, by trial of {found.trials} pairs of heights:", "bold")
     if found.least_equal_m is not None:
         caution = "" if found.holds_above else "; not at every greater height: the loss is not monotone here"
-        say(screen, f"  least equal heights {scale.height(found.least_equal_m, 2)} {unit}{caution}")
+        say(screen, f"  least equal heights {scale.height(found.least_equal_m, 2)} {unit}{caution}", hang=2)
     choice = found.cheapest
     if isinstance(choice, NoPair):
         say(screen, f"  {choice.reason}")
@@ -207,6 +207,7 @@ def _show_limit(screen: Console, title: str, found: LimitHeights, scale: Scale) 
             screen,
             f"  cheapest pair found: A {scale.height(choice.antenna_a_m)}, B {scale.height(choice.antenna_b_m)} {unit},"
             f" cost {choice.cost:g}; if height only helps, {_slack(found.cheaper_by_at_most)}",
+            hang=2,
         )
 
 
