@@ -179,7 +179,10 @@ class CoverChoice:
 
 @dataclass(frozen=True, slots=True)
 class Terminal:
-    """The radio and antenna of one end. The gain is given, or follows from dish diameter and efficiency."""
+    """The radio and antenna of one end: the gain is given, or follows from dish diameter and efficiency.
+
+    ``model`` names the antenna, for the note of its gain.
+    """
 
     power_dbm: float
     line_loss_db: float = 0.0

@@ -131,7 +131,7 @@ def antenna_gain(terminal: Terminal, frequency_hz: float, end: str) -> Line:
     Returns
     -------
     Line
-        In dBi, with a note that says where the gain comes from.
+        In dBi, with a note that names the antenna where it has a name, and says where the gain comes from.
 
     Raises
     ------
@@ -142,19 +142,19 @@ def antenna_gain(terminal: Terminal, frequency_hz: float, end: str) -> Line:
     --------
     >>> antenna_gain(Terminal(power_dbm=30, diameter_m=1.8, efficiency=0.55), 6.175e9, "A").note
     'dish 1.8 m, efficiency 0.55: 10·log10(η·(π·D/λ)²), Friis 1946'
-    >>> antenna_gain(Terminal(power_dbm=30, gain_dbi=38.9), 6.175e9, "A").value
-    38.9
+    >>> antenna_gain(Terminal(power_dbm=30, gain_dbi=38.9, model="6 ft, shielded"), 6.175e9, "A").note
+    '6 ft, shielded: as given'
     """
     gain, diameter, efficiency = terminal.gain_dbi, terminal.diameter_m, terminal.efficiency
-    name = f"antenna gain {end}"
+    name, model = f"antenna gain {end}", f"{terminal.model}: " if terminal.model else ""
     if gain is None:
         if diameter is None or efficiency is None:
             raise InputError(f"terminal {end}: no antenna gain: give the gain in dBi, or dish diameter and efficiency")
-        note = f"dish {diameter:g} m, efficiency {efficiency:g}: 10·log10(η·(π·D/λ)²), Friis 1946"
+        note = f"{model}dish {diameter:g} m, efficiency {efficiency:g}: 10·log10(η·(π·D/λ)²), Friis 1946"
         return Line(name, float(dish_gain(diameter, efficiency, frequency_hz)), "dBi", note)
     if diameter is not None:
         _require_possible(gain, diameter, efficiency, frequency_hz, end)
-    return Line(name, float(gain), "dBi", "as given")
+    return Line(name, float(gain), "dBi", f"{model}as given")
 
 
 def near_field_warnings(ends: dict[str, float | None], distance_m: float, frequency_hz: float) -> tuple[str, ...]:
