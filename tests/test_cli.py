@@ -187,6 +187,21 @@ def test_the_long_output_says_all_that_was_assumed(run):
     assert "A screening result, not a certificate" in out
 
 
+def test_what_many_rasters_have_in_common_is_said_once(run, here):
+    with rasterio.open("dem.tif") as whole:
+        profile, cells = whole.profile, whole.read()
+    for number in range(5):
+        transform = profile["transform"] @ Affine.translation(0, 24 * number)
+        with rasterio.open(f"band{number}.tif", "w", **{**profile, "height": 24, "transform": transform}) as raster:
+            raster.write(cells[:, 24 * number : 24 * (number + 1)])
+    paths = ", ".join(f'"band{number}.tif"' for number in range(5))
+    (here / "bands.toml").write_text(PASSING.replace('"dem.tif"', paths))
+    _, out, _ = run("study", "bands.toml")
+    assert "\n  - 5 rasters: declares no vertical datum\n" in out
+    assert out.count("declares no vertical datum") == 1
+    assert re.search(r"ground: (band\d\.tif at \d+% of the points, ){3}and 2 more\n", out)
+
+
 def test_a_survey_is_told_on_the_terminal(run, here):
     (here / "survey.toml").write_text(PASSING.replace("antenna_m = 40", "antenna_m = 40\nground_m = 97.5", 1))
     assert "South: surveyed ground 97.50 m, -2.50 m above that of the terrain" in run("study", "survey.toml")[1]
