@@ -108,18 +108,17 @@ def gather_samples(
     DatumError
         When sources are on different vertical datums and that is not allowed.
     """
-    numbers, place, counts = np.unique(ground.tile, return_inverse=True, return_counts=True)
-    order = np.lexsort((numbers, -counts))
-    order = order[numbers[order] >= 0]
-    rank = np.full(numbers.size, -1, dtype=np.int64)
-    rank[order] = np.arange(order.size)
-    sources = tuple(_use(tiles[numbers[k]], rasters, int(numbers[k]), int(counts[k]), ground) for k in order)
+    counts = np.bincount(ground.tile + 1, minlength=len(tiles) + 1)[1:]
+    numbers = np.argsort(-counts, kind="stable")[: np.count_nonzero(counts)]
+    rank = np.full(len(tiles) + 1, -1, dtype=np.int64)  # the last is for the tile -1, which is none
+    rank[numbers] = np.arange(numbers.size)
+    sources = tuple(_use(tiles[k], rasters, int(k), int(counts[k]), ground) for k in numbers)
     datum, notes = common_datum(sources, allow_mixed=allow_mixed_datums)
     unused = sorted(set(ground.tally.undeclared) - set(numbers.tolist()))
     notes += tuple(f"{tiles[k].info.name}: {note}" for k in unused for note in ground.tally.notes(k))
     result = Samples(
         ground_m=ground.height_m.reshape(shape),
-        source=rank[place].reshape(shape),
+        source=rank[ground.tile].reshape(shape),
         covered=ground.covered.reshape(shape),
         sources=sources,
         vertical_datum=datum,

@@ -49,8 +49,13 @@ class _Around:
 
 
 def lattice_cells(index: Index, hits: Hits) -> tuple[Ints, Float]:
-    """Lattices among the hits, and the two sides of their cells on the ground (metres) about where they are hit."""
-    names, first = np.unique(index.lattice[hits.tile], return_index=True)
+    """Lattices among the hits, and the two sides of their cells on the ground (metres) about where they are hit.
+
+    The hits are ordered by tile, as they are found.
+    """
+    starts = np.flatnonzero(np.diff(hits.tile, prepend=-1))
+    names, which = np.unique(index.lattice[hits.tile[starts]], return_index=True)
+    first = starts[which]
     sides = np.empty((names.size, 2))
     tiles = [index.tiles[k] for k in hits.tile[first]]
     for members in by_crs(tiles):
@@ -71,7 +76,7 @@ def sample_ground(
     size = sizes[np.searchsorted(names, index.lattice[hits.tile])]
     order = np.lexsort((hits.tile, size, hits.point))
     hits, size = hits.take(order), size[order]
-    candidates = np.unique(hits.tile)
+    candidates = np.flatnonzero(np.bincount(hits.tile, minlength=len(index.tiles)))
 
     n, tally = longitude.size, Tally()
     height, tile, finest = np.full(n, np.nan), np.full(n, -1, dtype=np.int64), np.full(n, _NONE)
