@@ -78,8 +78,8 @@ def frontier_figure(plan: HeightsPlan, *, feet: bool = False) -> Figure:
         page = Page()
         top = head(
             page,
-            word="FEASIBLE" if plan.feasible else "NO PAIR",
-            good=plan.feasible,
+            word="FEASIBLE" if isinstance(plan.answer.pair, Choice) else "NO PAIR",
+            good=isinstance(plan.answer.pair, Choice),
             sentence=_sentence(plan, scale),
             name=hop.name,
             facts=hop_facts(hop, plan.study.line.distance_m, scale),
@@ -104,10 +104,12 @@ def _reach(highest_m: float, marked_m: list[float]) -> float:
 
 def _sentence(plan: HeightsPlan, scale: Scale) -> str:
     """Say which pair to build, or what is in the way."""
-    choice = plan.cheapest
+    choice = plan.answer.pair
     if isinstance(choice, Choice):
         a, b = scale.height_text(choice.antenna_a_m), scale.height_text(choice.antenna_b_m)
         return f"Cheapest pair under the limits: antenna A at {a}, antenna B at {b} above ground"
+    if plan.feasible:
+        return "Pairs clear every rule, but none that was found does all else that is asked"
     if not choice.lower:
         return "Every position of a tower is taken, or too close to a taken one"
     worst = choice.lower[0]
@@ -141,7 +143,8 @@ def _marks(plan: HeightsPlan, scale: Scale) -> list[_Mark]:
         words = f"clears with a chance of {100 * each.chance:g} %, both ends moved alike"
         marks.append(_Mark({"marker": "D", "mfc": style.MUTED}, *each.equal_m, words))
     if isinstance(plan.cheapest, Choice):
-        words = f"cheapest pair under the limits, cost {plan.cheapest.cost:g}"
+        all_asked = plan.answer.pair == plan.cheapest
+        words = f"cheapest {'pair under the limits' if all_asked else 'that clears'}, cost {plan.cheapest.cost:g}"
         marks.append(
             _Mark(
                 {"marker": "*", "mfc": style.PASS, "ms": 13},
@@ -150,6 +153,10 @@ def _marks(plan: HeightsPlan, scale: Scale) -> list[_Mark]:
                 words,
             )
         )
+    answer = plan.answer.pair
+    if isinstance(answer, Choice) and answer != plan.cheapest:
+        words = f"cheapest that does all that is asked, cost {answer.cost:g}"
+        marks.append(_Mark({"marker": "H", "mfc": style.PASS, "ms": 10}, answer.antenna_a_m, answer.antenna_b_m, words))
     return marks
 
 
