@@ -9,9 +9,11 @@ from typing import TYPE_CHECKING, Any
 
 import numpy as np
 
+from profiler.geometry import ray_height
+
 if TYPE_CHECKING:
     from profiler.budget import Budget, Direction
-    from profiler.geometry import CorridorCheck, ray_height
+    from profiler.geometry import CorridorCheck
     from profiler.models import Site
     from profiler.study.result import RuleResult, Study
 
