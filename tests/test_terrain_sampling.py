@@ -400,6 +400,16 @@ def test_around_the_pole(write_raster):
     np.testing.assert_allclose(ring, radius / 100, atol=0.05)
 
 
+def test_posts_on_the_poles(write_raster):
+    """A global grid of posts has its outermost cells half beyond the poles; they end there."""
+    heights = np.tile(np.arange(181.0)[:, None], (1, 361))
+    with open_terrain(write_raster("posts.tif", heights, from_origin(-180.5, 90.5, 1, 1))) as terrain:
+        found = terrain.sample(10.0, [90.0, 89.8, -89.8, -90.0]).ground_m
+        # 0.2° from the pole a degree of longitude is the 111.69 km of a degree of meridian there · 0.2 · π/180
+        assert terrain.finest_cell_m(10.0, 89.8) == pytest.approx(111_694 * 0.2 * np.pi / 180, rel=1e-4)
+    np.testing.assert_allclose(found, [0.0, 0.2, 179.8, 180.0])
+
+
 @given(st.integers(0, 30), st.integers(1, 40))
 def test_shape_and_order_of_points_change_nothing(tmp_path_factory, seed, across):
     import rasterio
