@@ -71,6 +71,28 @@ def test_imports_go_only_to_a_lower_rank():
     assert wrong == []
 
 
+def public_names(name: str) -> set[str]:
+    """Give what a module of the package lists in its ``__all__``, and the modules beside it."""
+    path = PACKAGE.parent.joinpath(*name.split("."))
+    path = path / "__init__.py" if path.is_dir() else path.with_suffix(".py")
+    for node in ast.parse(path.read_text()).body:
+        if isinstance(node, ast.Assign) and [target.id for target in node.targets] == ["__all__"]:
+            return set(ast.literal_eval(node.value)) | {inner.stem for inner in path.parent.glob("*.py")}
+    return set()
+
+
+def test_modules_take_only_public_names_from_each_other():
+    hidden = [
+        f"{path.relative_to(PACKAGE)} takes {alias.name} from {node.module}"
+        for path in sorted(PACKAGE.rglob("*.py"))
+        for node in ast.walk(ast.parse(path.read_text()))
+        if isinstance(node, ast.ImportFrom) and (node.module or "").startswith("profiler.")
+        for alias in node.names
+        if alias.name not in public_names(node.module)
+    ]
+    assert hidden == []
+
+
 def test_every_module_has_a_rank():
     modules = {module_of(path) for path in PACKAGE.rglob("*.py")} - {"__init__", "__main__"}
     assert modules == set(RANKS)

@@ -12,14 +12,14 @@ from hypothesis import strategies as st
 from profiler.atmosphere import (
     dry_pressure,
     gas_attenuation,
-    gas_attenuation_parts,
     gas_warnings,
     local_atmosphere,
     rain_attenuation,
     rain_coefficients,
     reference_atmosphere,
-    vapour_pressure,
 )
+from profiler.atmosphere.air import vapour_pressure
+from profiler.atmosphere.gases import gas_attenuation_parts
 from profiler.errors import InputError
 
 needs_itur = pytest.mark.skipif(find_spec("itur") is None, reason="the second opinion needs the itur package")

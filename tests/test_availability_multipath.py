@@ -8,21 +8,18 @@ import pytest
 from hypothesis import given
 from hypothesis import strategies as st
 
-from profiler.availability import (
-    climate_factor,
+from profiler.availability import path_roughness
+from profiler.availability.multipath import (
     fade_percent,
     geoclimatic_factor_17,
     geoclimatic_factor_17_quick,
-    improvement_vigants,
     occurrence_17,
     occurrence_17_quick,
     occurrence_18,
-    occurrence_vigants,
-    path_roughness,
-    season_share,
     transition_fade,
     year_conversion,
 )
+from profiler.availability.vigants import climate_factor, improvement_vigants, occurrence_vigants, season_share
 from profiler.errors import InputError
 from profiler.units import STATUTE_MILE_M
 

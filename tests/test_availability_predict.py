@@ -7,16 +7,10 @@ import pytest
 from hypothesis import given
 from hypothesis import strategies as st
 
-from profiler.availability import (
-    MECHANISMS,
-    PathFacts,
-    fade_percent,
-    outage_curve,
-    outage_model,
-    predict,
-    rain_percent,
-    worst_month_from_year,
-)
+from profiler.availability import MECHANISMS, PathFacts, outage_curve, outage_model, predict
+from profiler.availability.months import worst_month_from_year
+from profiler.availability.multipath import fade_percent
+from profiler.availability.rain import rain_percent
 from profiler.errors import InputError
 from profiler.models import AvailabilityChoice, DiversityChoice, Objective, Signature
 

@@ -5,15 +5,13 @@ import pytest
 from hypothesis import given
 from hypothesis import strategies as st
 
-from profiler.availability import (
+from profiler.availability.diversity import (
     add_diversity_outages,
     amplitude_correlation,
     improvement_p530,
-    mean_delay,
-    multipath_activity,
     protected_selective,
-    selective_percent,
 )
+from profiler.availability.selective import mean_delay, multipath_activity, selective_percent
 from profiler.errors import InputError
 
 occurrences = st.floats(1e-3, 1000.0)

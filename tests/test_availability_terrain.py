@@ -8,7 +8,8 @@ import pytest
 from hypothesis import given
 from hypothesis import strategies as st
 
-from profiler.availability import obstruction_percent, roughness_grid, terrain_roughness
+from profiler.availability import roughness_grid, terrain_roughness
+from profiler.availability.obstruction import obstruction_percent
 from profiler.errors import InputError
 
 needs_itur = pytest.mark.skipif(find_spec("itur") is None, reason="the second opinion needs the itur package")

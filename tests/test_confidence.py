@@ -12,20 +12,14 @@ from hypothesis import given
 from hypothesis import strategies as st
 from scipy.special import ndtr, ndtri
 
-from profiler.confidence import (
-    TERRAIN_ERRORS,
-    assess,
-    correlation,
-    draw_field,
-    draw_inverse_k,
-    sigma_from_le90,
-    sigma_from_rmse,
-)
+from profiler.confidence import assess
+from profiler.confidence.fields import correlation, draw_field, draw_inverse_k
 from profiler.confidence.shares import shapley_shares
 from profiler.confidence.tally import Doubt, Nominal, run_draws
 from profiler.errors import InputError, MissingGroundError
 from profiler.geometry import check_rule, earth_bulge, fresnel_radius
 from profiler.models import ConfidenceChoice, Rule
+from profiler.terrain_error import TERRAIN_ERRORS, sigma_from_le90, sigma_from_rmse
 
 RULE = Rule(4 / 3, 0.6, 1.0)
 SURVEYED = {"site_sigma_a_m": 0.0, "site_sigma_b_m": 0.0}

@@ -16,12 +16,12 @@ from profiler.diffraction import (
     cascaded_knife_edges,
     delta_bullington,
     double_edge,
-    fresnel_parameter,
     knife_edge_loss,
     rounded_obstacle,
     single_knife_edge,
     spherical_earth,
 )
+from profiler.diffraction.formulas import fresnel_parameter
 from profiler.errors import InputError, MissingGroundError
 from profiler.units import SPEED_OF_LIGHT_M_S
 

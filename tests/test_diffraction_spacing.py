@@ -5,14 +5,8 @@ import math
 import numpy as np
 import pytest
 
-from profiler.diffraction import (
-    cascaded_knife_edges,
-    delta_bullington,
-    double_edge,
-    fresnel_parameter,
-    knife_edge_loss,
-    single_knife_edge,
-)
+from profiler.diffraction import cascaded_knife_edges, delta_bullington, double_edge, knife_edge_loss, single_knife_edge
+from profiler.diffraction.formulas import fresnel_parameter
 from profiler.path import trace
 from profiler.terrain import open_terrain
 from profiler.units import SPEED_OF_LIGHT_M_S

@@ -8,14 +8,8 @@ from hypothesis import given
 from hypothesis import strategies as st
 from scipy.special import ai_zeros, airy
 
-from profiler.diffraction import (
-    double_edge_loss,
-    fresnel_parameter,
-    knife_edge_loss,
-    rounded_obstacle_loss,
-    rounding,
-    spherical_earth,
-)
+from profiler.diffraction import knife_edge_loss, spherical_earth
+from profiler.diffraction.formulas import double_edge_loss, fresnel_parameter, rounded_obstacle_loss, rounding
 from profiler.units import SPEED_OF_LIGHT_M_S
 
 F6 = SPEED_OF_LIGHT_M_S / 0.05

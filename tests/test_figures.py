@@ -40,7 +40,8 @@ from profiler.models import (
     TerrainChoice,
     TowerChoice,
 )
-from profiler.study import OutageResult, run_study
+from profiler.study import run_study
+from profiler.study.outage import OutageResult
 from profiler.study.plan import plan_heights
 from profiler.units import FOOT_M, STATUTE_MILE_M
 

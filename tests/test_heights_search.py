@@ -18,7 +18,6 @@ from profiler.heights import (
     cheapest_by_trial,
     check_diversity,
     clearing_region,
-    free_positions,
     heights_within,
     least_equal,
     least_ray,
@@ -28,6 +27,7 @@ from profiler.heights import (
     mounting_sheet,
     surplus,
 )
+from profiler.heights.positions import free_positions
 from profiler.models import Rule, TowerChoice
 from profiler.units import MEAN_EARTH_RADIUS_M
 

@@ -16,9 +16,10 @@ from hypothesis import strategies as st
 from profiler import models
 from profiler.diffraction import METHODS
 from profiler.errors import InputError
-from profiler.hopfile import PRESETS, expand_preset, load_hop, parse_hop, quick_hop, starter, with_antennas
+from profiler.hopfile import PRESETS, load_hop, parse_hop, quick_hop, starter, with_antennas
 from profiler.hopfile import schema as tables
 from profiler.hopfile.keys import LENGTHS_M, ways
+from profiler.hopfile.presets import expand_preset
 from profiler.path import geodesic
 from profiler.terrain_error import TERRAIN_ERRORS
 

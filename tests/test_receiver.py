@@ -11,13 +11,8 @@ from scipy.special import erfc, ndtr
 
 from profiler.errors import InputError
 from profiler.models import RadioMode
-from profiler.receiver import (
-    bit_error_ratio,
-    mode_threshold,
-    noise_density_dbm_hz,
-    parse_modulation,
-    required_eb_n0_db,
-)
+from profiler.receiver import bit_error_ratio, mode_threshold, noise_density_dbm_hz, required_eb_n0_db
+from profiler.receiver.modulation import parse_modulation
 
 SQUARE = [4, 16, 64, 256, 1024, 4096]
 SCHEMES = ["BPSK", "QPSK", "8-PSK", "16-PSK", "32-PSK", "16-QAM", "32-QAM", "64-QAM", "128-QAM", "256-QAM", "2048-QAM"]

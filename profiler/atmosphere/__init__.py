@@ -5,27 +5,18 @@ barometer reads the total, p + e with e the vapour pressure: names with ``total`
 `local_atmosphere` convert. Outside the published ranges there are still numbers; `gas_warnings` says which.
 """
 
-from profiler.atmosphere.air import (
-    Atmosphere,
-    dry_pressure,
-    local_atmosphere,
-    reference_atmosphere,
-    vapour_pressure,
-)
-from profiler.atmosphere.gases import GasAttenuation, gas_attenuation, gas_attenuation_parts
+from profiler.atmosphere.air import Atmosphere, dry_pressure, local_atmosphere, reference_atmosphere
+from profiler.atmosphere.gases import gas_attenuation
 from profiler.atmosphere.rain import rain_attenuation, rain_coefficients
 from profiler.atmosphere.ranges import gas_warnings
 
 __all__ = [
     "Atmosphere",
-    "GasAttenuation",
     "dry_pressure",
     "gas_attenuation",
-    "gas_attenuation_parts",
     "gas_warnings",
     "local_atmosphere",
     "rain_attenuation",
     "rain_coefficients",
     "reference_atmosphere",
-    "vapour_pressure",
 ]

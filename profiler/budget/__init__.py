@@ -3,7 +3,7 @@
 Tables add up: every loss is a negative line, every gain a positive one, and the sum is the received level.
 """
 
-from profiler.budget.antenna import antenna_gain, dish_diameter, dish_gain, far_field_distance
+from profiler.budget.antenna import dish_diameter, dish_gain, far_field_distance
 from profiler.budget.inverse import Answer, least_gain, least_power, longest_free_space_range, smallest_dish
 from profiler.budget.link import Budget, Direction, ModeBudget, Way, free_space_loss, link_budget, way_name
 
@@ -13,7 +13,6 @@ __all__ = [
     "Direction",
     "ModeBudget",
     "Way",
-    "antenna_gain",
     "dish_diameter",
     "dish_gain",
     "far_field_distance",

@@ -1,13 +1,7 @@
 """Diffraction over a profile (Rec. ITU-R P.526-15): each method for batches of hops, and one front door by name."""
 
 from profiler.diffraction.edges import EdgeLosses
-from profiler.diffraction.formulas import (
-    double_edge_loss,
-    fresnel_parameter,
-    knife_edge_loss,
-    rounded_obstacle_loss,
-    rounding,
-)
+from profiler.diffraction.formulas import knife_edge_loss
 from profiler.diffraction.general import DeltaBullington, bullington, delta_bullington
 from profiler.diffraction.methods import (
     METHODS,
@@ -35,12 +29,8 @@ __all__ = [
     "diffract",
     "diffract_over_k",
     "double_edge",
-    "double_edge_loss",
-    "fresnel_parameter",
     "knife_edge_loss",
     "rounded_obstacle",
-    "rounded_obstacle_loss",
-    "rounding",
     "single_knife_edge",
     "spherical_earth",
 ]

@@ -11,6 +11,7 @@ from profiler.checks import not_negative, positive
 from profiler.units import Float, wavelength
 
 __all__ = [
+    "MOST_ROUND",
     "NU_NO_LOSS",
     "DoubleEdgeTerms",
     "double_edge_loss",

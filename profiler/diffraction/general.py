@@ -16,7 +16,7 @@ from profiler.diffraction.sphere import check_surface, spherical_earth
 from profiler.models import frozen_array
 from profiler.units import Float
 
-__all__ = ["DeltaBullington", "bullington", "bullington_points", "delta_bullington"]
+__all__ = ["DeltaBullington", "bullington", "bullington_points", "delta_bullington", "vertex"]
 
 
 @dataclass(frozen=True, slots=True, eq=False)

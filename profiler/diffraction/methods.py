@@ -247,7 +247,9 @@ def diffract_over_k(
     losses = []
     for i, factor in enumerate(factors.tolist()):
         edges = None if found is None else found.of_hop(i)
-        doubts = [] if edges is None or chosen.doubts is None else chosen.doubts(replace(inputs, radius_m=inputs.radius_m[i]), edges)
+        doubts = []
+        if edges is not None and chosen.doubts is not None:
+            doubts = chosen.doubts(replace(inputs, radius_m=inputs.radius_m[i]), edges)
         warnings = tuple(f"{method}: {line}" for line in (*ranges, *doubts))
         losses.append(DiffractionLoss(factor, chosen.name, float(loss_db[i]), _edges(edges), warnings))
     return tuple(losses)

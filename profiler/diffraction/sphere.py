@@ -11,7 +11,7 @@ from profiler.checks import not_negative, positive, within
 from profiler.errors import InputError
 from profiler.units import Float, wavelength
 
-__all__ = ["spherical_earth"]
+__all__ = ["check_surface", "spherical_earth"]
 
 
 class _Surface(NamedTuple):

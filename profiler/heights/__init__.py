@@ -3,10 +3,10 @@
 Heights are metres above the ground of their own site unless a name says ``centre`` (above the vertical datum).
 """
 
-from profiler.heights.choose import Choice, Lowering, NoPair, cheapest, cheapest_of, least_other
+from profiler.heights.choose import Choice, NoPair, cheapest, cheapest_of, least_other
 from profiler.heights.diversity import DiversityEnd, check_diversity, lower_rays, lower_rules
 from profiler.heights.frontier import Stretch, frontier_stretches
-from profiler.heights.positions import all_positions, both_free, free_positions, height_cost, round_up
+from profiler.heights.positions import both_free, round_up
 from profiler.heights.region import (
     ClearingRegion,
     Least,
@@ -18,7 +18,7 @@ from profiler.heights.region import (
     surplus,
 )
 from profiler.heights.search import LimitHeights, cheapest_by_trial, heights_within, loss_excess
-from profiler.heights.sheet import EndHeights, Held, MountingSheet, mounting_sheet
+from profiler.heights.sheet import MountingSheet, mounting_sheet
 from profiler.heights.sure import DrawnRegions, drawn_regions, least_b_sure, least_surplus_drawn
 
 __all__ = [
@@ -26,15 +26,11 @@ __all__ = [
     "ClearingRegion",
     "DiversityEnd",
     "DrawnRegions",
-    "EndHeights",
-    "Held",
     "Least",
     "LimitHeights",
-    "Lowering",
     "MountingSheet",
     "NoPair",
     "Stretch",
-    "all_positions",
     "both_free",
     "cheapest",
     "cheapest_by_trial",
@@ -42,9 +38,7 @@ __all__ = [
     "check_diversity",
     "clearing_region",
     "drawn_regions",
-    "free_positions",
     "frontier_stretches",
-    "height_cost",
     "heights_within",
     "least_a_for",
     "least_b_for",

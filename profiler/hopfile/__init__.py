@@ -4,17 +4,14 @@ The only user of pydantic, which is imported when a hop is read, not before.
 """
 
 from profiler.hopfile.edit import with_antennas
-from profiler.hopfile.positions import parse_position
-from profiler.hopfile.presets import PRESETS, expand_preset
+from profiler.hopfile.presets import PRESETS
 from profiler.hopfile.reader import load_hop, parse_hop, quick_hop
 from profiler.hopfile.starter import starter
 
 __all__ = [
     "PRESETS",
-    "expand_preset",
     "load_hop",
     "parse_hop",
-    "parse_position",
     "quick_hop",
     "starter",
     "with_antennas",

@@ -36,6 +36,7 @@ __all__ = [
     "ModeTable",
     "ObjectiveTable",
     "ObstacleTable",
+    "PlaceTable",
     "RadioTable",
     "RuleTable",
     "RulesTable",

@@ -4,21 +4,15 @@ Coherent detection in additive white Gaussian noise throughout: no fading, no in
 ratios are inverted exactly (in closed form or by a bracketed root), never from a table.
 """
 
-from profiler.receiver.modulation import Modulation, bit_error_ratio, parse_modulation, required_eb_n0_db
-from profiler.receiver.noise import (
-    NOISE_REFERENCE_K,
-    noise_density_dbm_hz,
-)
+from profiler.receiver.modulation import bit_error_ratio, required_eb_n0_db
+from profiler.receiver.noise import noise_density_dbm_hz
 from profiler.receiver.threshold import Line, Threshold, mode_threshold
 
 __all__ = [
-    "NOISE_REFERENCE_K",
     "Line",
-    "Modulation",
     "Threshold",
     "bit_error_ratio",
     "mode_threshold",
     "noise_density_dbm_hz",
-    "parse_modulation",
     "required_eb_n0_db",
 ]

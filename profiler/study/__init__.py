@@ -4,33 +4,14 @@ The heights plan is in `profiler.study.plan`: a study does without it, and start
 """
 
 from profiler.study.document import plain, point_table, to_document
-from profiler.study.link import Air, losses_at
+from profiler.study.link import losses_at
 from profiler.study.notes import gathered
-from profiler.study.outage import ModeOutage, OutageResult
-from profiler.study.result import (
-    Corridor,
-    Place,
-    Provenance,
-    Relief,
-    RuleResult,
-    Study,
-    TerrainUse,
-    Verdict,
-)
+from profiler.study.result import Place, Study
 from profiler.study.run import open_hop_terrain, run_study
 
 __all__ = [
-    "Air",
-    "Corridor",
-    "ModeOutage",
-    "OutageResult",
     "Place",
-    "Provenance",
-    "Relief",
-    "RuleResult",
     "Study",
-    "TerrainUse",
-    "Verdict",
     "gathered",
     "losses_at",
     "open_hop_terrain",
