@@ -158,7 +158,7 @@ def test_two_similar_high_edges_stay_within_half_a_decibel(nu, ratio, leg):
     assert float(double_edge_loss(h1, h2, spacings, F6)) == pytest.approx(exact, abs=0.5)
 
 
-# heights over the line, m, and spacings, m, of close edges: the terms of §4.3 alone are 1.5 to 4.5 dB short of the exact
+# heights over the line, m, and spacings, m, of close edges: §4.3 alone is 1.5 to 4.5 dB short of the exact
 CLOSE_EDGES = [
     (20, 19, (30e3, 100, 30e3)),
     (10, 9, (5e3, 50, 20e3)),
