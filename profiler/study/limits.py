@@ -7,10 +7,9 @@ from collections.abc import Callable
 from dataclasses import dataclass, replace
 from functools import cache, partial
 
-from profiler.diffraction import diffract
 from profiler.heights import LimitHeights, heights_within, loss_excess
 from profiler.models import Hop
-from profiler.study.link import Link, air_along, link
+from profiler.study.link import Link, air_along, link, losses_at
 from profiler.study.requirements import spacing_of
 from profiler.study.result import Study
 
@@ -88,10 +87,7 @@ def _link_at(study: Study, hop: Hop, antenna_a_m: float, antenna_b_m: float) -> 
 
 def _margin(found: Link) -> float | None:
     """Fade margin of the first mode in the direction that has less, as the study's verdict takes it."""
-    if found.budget is None:
-        return None
-    margins = [way.fade_margin_db for way in (found.budget.a_to_b, found.budget.b_to_a)]
-    return min((margin for margin in margins if margin is not None), default=None)
+    return None if found.budget is None else found.budget.weaker()[1].fade_margin_db
 
 
 def _margin_missing_db(found: Link | None) -> float:
@@ -125,18 +121,8 @@ def loss_limit(study: Study) -> Excess | None:
 
 
 def _loss_db(study: Study, centre_a_m: float, centre_b_m: float) -> float:
-    hop, profile = study.hop, study.profile
-    return diffract(
-        hop.diffraction_method,
-        profile.distance_m,
-        profile.surface_m,
-        centre_a_m,
-        centre_b_m,
-        hop.frequency_hz,
-        hop.heights.loss_k,
-        polarization=hop.polarization,
-        sea_fraction=hop.sea_fraction,
-    ).loss_db
+    k = study.hop.heights.loss_k
+    return losses_at(study.hop, study.profile, [k], centre_a_m, centre_b_m)[k].loss_db
 
 
 def for_loss(study: Study, excess: Excess | None) -> LimitHeights | None:
