@@ -51,8 +51,7 @@ def command(
     """
     from profiler.hopfile import load_hop
     from profiler.study import plain
-    from profiler.terrain import survey
-    from profiler.terrain.mosaic import as_reading
+    from profiler.terrain import as_reading, survey
 
     check_targets(json_to, hop_file=hop_file)
     hop = None if hop_file is None else load_hop(hop_file)
@@ -143,7 +142,7 @@ def _show_group(screen: Console, title: str, rasters: Sequence[RasterSurvey]) ->
     """Print what one raster, or several that are alike, declare and hold, and the notes about them."""
     from profiler.cli.screen import say
     from profiler.study import gathered
-    from profiler.terrain.survey import bounds_around
+    from profiler.terrain import bounds_around
 
     infos = [raster.info for raster in rasters]
     first = infos[0]
@@ -161,7 +160,7 @@ def _show_group(screen: Console, title: str, rasters: Sequence[RasterSurvey]) ->
 def _show_whole(screen: Console, found: FolderSurvey) -> None:
     """Print what all rasters make together, and whether their heights count from one datum."""
     from profiler.cli.screen import say
-    from profiler.terrain.reference import datum_key
+    from profiler.terrain import datum_key
 
     if len(found.rasters) > 1 and found.bounds is not None:
         say(

@@ -9,10 +9,11 @@ from profiler.terrain.describe import Bounds, RasterInfo
 from profiler.terrain.files import file_hash
 from profiler.terrain.gaps import fill_missing, missing_stretches, require_ground
 from profiler.terrain.gdal import library_versions
-from profiler.terrain.mosaic import Terrain, open_terrain
+from profiler.terrain.mosaic import Terrain, as_reading, open_terrain
+from profiler.terrain.reference import datum_key
 from profiler.terrain.samples import Samples, Skipped, SourceUse, common_datum
 from profiler.terrain.sites import require_inside
-from profiler.terrain.survey import FolderSurvey, RasterSurvey, survey
+from profiler.terrain.survey import FolderSurvey, RasterSurvey, bounds_around, survey
 
 __all__ = [
     "Bounds",
@@ -23,7 +24,10 @@ __all__ = [
     "Skipped",
     "SourceUse",
     "Terrain",
+    "as_reading",
+    "bounds_around",
     "common_datum",
+    "datum_key",
     "file_hash",
     "fill_missing",
     "library_versions",
