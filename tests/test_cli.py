@@ -645,7 +645,7 @@ def test_outputs_that_cannot_be(refused, words, message):
         ('preset = "high-reliability"', "rule = [{k = 0, fresnel_fraction = 1}]", "rules.rule[0].k = 0: must be 0.1"),
         ("dem.tif", "gone.tif", "terrain.paths[0] = 'gone.tif': must be a raster or a folder of rasters that is there"),
         ("dem.tif", "nocrs.tif", "nocrs.tif: has no coordinate reference system"),
-        ("dem.tif", "photo.tif", "photo.tif: is a photo (3-band colour or grey image), not heights"),
+        ("dem.tif", "photo.tif", "photo.tif: is a photo (3-band color or grey image), not heights"),
         ("dem.tif", "cut.tif", "cut.tif: not readable as a raster"),
         ("dem.tif", "text.tif", "text.tif: not readable as a raster"),
         ("dem.tif", "void.tif", "no ground height at "),

@@ -62,7 +62,7 @@ def test_corners_off_the_earth(write_raster):
 def test_photos_and_masks_and_classes(write_raster):
     rgb = np.zeros((3, 10, 10), "uint8")
     text = message(lambda: open_terrain(write_raster("p.tif", rgb, GRID, photometric="RGB")))
-    assert "p.tif: is a photo (3-band colour or grey image), not heights; give a raster of elevations" in text
+    assert "p.tif: is a photo (3-band color or grey image), not heights; give a raster of elevations" in text
     text = message(lambda: open_terrain(write_raster("m.tif", rgb[0], GRID)))
     assert "m.tif: holds 8-bit cells (a photo, mask or class map), not heights" in text
     text = message(lambda: open_terrain(write_raster("b.tif", np.zeros((2, 10, 10), "int16"), GRID)))
@@ -80,7 +80,7 @@ def test_photo_without_a_crs_is_first_of_all_a_photo(tmp_path):
 
 def test_land_cover_is_not_ground(real_terrain):
     text = message(lambda: open_terrain(real_terrain / "canyon_landcover_utm12.tif"))
-    assert "canyon_landcover_utm12.tif: holds classes or colours (it has a palette), not heights" in text
+    assert "canyon_landcover_utm12.tif: holds classes or colors (it has a palette), not heights" in text
 
 
 def test_folder_sets_aside_what_is_not_heights(write_raster):

@@ -112,7 +112,7 @@ def _set_words(image: Image, words: list[Text], dpi: float) -> None:
 
 
 def _packed(pixels: NDArray[np.uint8], dpi: float) -> bytes:
-    """Pack RGB pixels as a PNG file (ISO/IEC 15948) of unfiltered rows: flat colours pack as well, and much faster."""
+    """Pack RGB pixels as a PNG file (ISO/IEC 15948) of unfiltered rows: flat colors pack as well, and much faster."""
     height, width, _ = pixels.shape
     rows = np.zeros((height, 1 + 3 * width), dtype=np.uint8)
     rows[:, 1:] = pixels.reshape(height, 3 * width)

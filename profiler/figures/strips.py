@@ -26,9 +26,9 @@ _MOST_ALONG, _MOST_ACROSS = 1200, 160
 
 
 def rule_look(position: int) -> tuple[str, tuple[float, ...]]:
-    """Colour and dashes of a rule by its place in the hop file, the same on every figure."""
+    """Color and dashes of a rule by its place in the hop file, the same on every figure."""
     count = len(style.RULE_COLORS)
-    # from the sixth rule on the colours meet other dashes
+    # from the sixth rule on the colors meet other dashes
     return style.RULE_COLORS[position % count], style.RULE_DASHES[(position + position // count) % count]
 
 

@@ -181,12 +181,12 @@ def _band(dataset: Any, reading: Reading) -> int:
     from rasterio.enums import ColorInterp
 
     remedy = "give a raster of classes" if reading.classes else "give a raster of elevations"
-    colours = dataset.colorinterp
+    colors = dataset.colorinterp
     if not dataset.count:
         raise RasterError(f"holds {len(dataset.subdatasets)} subdatasets; extract the one with the heights")
-    bands = [i for i, colour in zip(dataset.indexes, colours, strict=True) if colour != ColorInterp.alpha]
-    if dataset.driver in _PHOTO_DRIVERS or {ColorInterp.red, ColorInterp.green, ColorInterp.blue} & set(colours):
-        raise NotHeightsError(f"is a photo ({len(bands)}-band colour or grey image), not heights; {remedy}")
+    bands = [i for i, color in zip(dataset.indexes, colors, strict=True) if color != ColorInterp.alpha]
+    if dataset.driver in _PHOTO_DRIVERS or {ColorInterp.red, ColorInterp.green, ColorInterp.blue} & set(colors):
+        raise NotHeightsError(f"is a photo ({len(bands)}-band color or grey image), not heights; {remedy}")
     if len(bands) > 1:
         named = [
             i for i in bands if (dataset.descriptions[i - 1] or "").lower() in ("elevation", "height", "dem", "dtm")
@@ -199,8 +199,8 @@ def _band(dataset: Any, reading: Reading) -> int:
     if kind.kind not in "iuf":
         raise NotHeightsError(f"holds {kind} cells, not real numbers; {remedy}")
     if not reading.classes:
-        if colours[band - 1] == ColorInterp.palette:
-            raise NotHeightsError(f"holds classes or colours (it has a palette), not heights; {remedy}")
+        if colors[band - 1] == ColorInterp.palette:
+            raise NotHeightsError(f"holds classes or colors (it has a palette), not heights; {remedy}")
         if kind.itemsize == 1 and not reading.eight_bit:
             raise NotHeightsError(f"holds 8-bit cells (a photo, mask or class map), not heights; {remedy}")
     return int(band)
