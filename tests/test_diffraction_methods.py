@@ -18,7 +18,7 @@ from profiler.diffraction import (
 )
 from profiler.errors import InputError
 from profiler.models import DiffractionMethod
-from profiler.units import MEAN_EARTH_RADIUS_M
+from profiler.units import MEAN_EARTH_RADIUS_M, SPEED_OF_LIGHT_M_S
 
 K = 4 / 3
 RADIUS = K * MEAN_EARTH_RADIUS_M
@@ -128,6 +128,29 @@ def test_two_edges_warn_of_a_third():
     (line,) = diffract("double-edge", *HOP).warnings
     assert line == "double-edge: a third edge, 24.000 km from A, is left out: cascaded-edges counts it"
     assert diffract("double-edge", D, peak(15e3, 190), 100.0, 100.0, 6e9, K).warnings == ()
+
+
+def test_two_edges_say_so_when_the_greater_alone_loses_more_than_their_formula_gives():
+    ground = np.maximum(peak(15e3, 120), peak(15.5e3, 118))
+    loss = diffract("double-edge", D, ground, 100.0, 100.0, 6e9, math.inf)
+    assert loss.loss_db == pytest.approx(diffract("knife-edge", D, ground, 100.0, 100.0, 6e9, math.inf).loss_db)
+    (line,) = loss.warnings
+    assert line.startswith("double-edge: Rec. ITU-R P.526-15 §4.3 gives ")
+    assert line.endswith(" dB, less than the greater edge alone loses, which is taken instead")
+
+
+def test_the_rounded_obstacle_shows_the_top_that_it_fits():
+    hill = np.maximum(150 - (D - 15e3) ** 2 / (2 * 20e3), 0)
+    top = diffract("rounded-obstacle", D, hill, 100.0, 100.0, 6e9, math.inf).top
+    assert top.radius_m == pytest.approx(20e3)
+    # the run of points no more than F1 below the apex: x²/(2·R) = F1 at mid-path, points 100 m apart
+    half = math.sqrt(2 * 20e3 * math.sqrt(SPEED_OF_LIGHT_M_S / 6e9 * 7.5e3))
+    assert (top.from_m, top.to_m) == pytest.approx((15e3 - half, 15e3 + half), abs=100)
+    assert 0 < top.roundness < 1
+    plateau = np.where(np.abs(D - 15e3) < 500, 120.0, 0.0)
+    assert diffract("rounded-obstacle", D, plateau, 100.0, 100.0, 6e9, math.inf).top.radius_m is None
+    assert diffract("rounded-obstacle", D, 0 * D, 100.0, 100.0, 6e9, math.inf).top is None
+    assert diffract("knife-edge", D, hill, 100.0, 100.0, 6e9, math.inf).top is None
 
 
 def test_the_rounded_obstacle_warns_of_a_profile_that_is_not_one_round_top():

@@ -8,10 +8,11 @@ from profiler.diffraction.methods import (
     DiffractionLoss,
     Edge,
     Method,
+    RoundTop,
     diffract,
     diffract_over_k,
 )
-from profiler.diffraction.obstacles import cascaded_knife_edges, double_edge, single_knife_edge
+from profiler.diffraction.obstacles import DoubleLosses, cascaded_knife_edges, double_edge, single_knife_edge
 from profiler.diffraction.rounded import RoundedLosses, rounded_obstacle
 from profiler.diffraction.sphere import spherical_earth
 
@@ -19,9 +20,11 @@ __all__ = [
     "METHODS",
     "DeltaBullington",
     "DiffractionLoss",
+    "DoubleLosses",
     "Edge",
     "EdgeLosses",
     "Method",
+    "RoundTop",
     "RoundedLosses",
     "bullington",
     "cascaded_knife_edges",

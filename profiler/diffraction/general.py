@@ -246,8 +246,12 @@ def delta_bullington(
     surface under the antennas, and so raises them.
 
     Source: Rec. ITU-R P.526-15 §4.5, as in P.452 and P.1812. The wavelength is c/f with the exact c, where the source
-    rounds to 0.2998/f: at most 0.006 dB in the
-    published validation examples.
+    rounds to 0.2998/f: at most 0.006 dB in the published validation examples.
+
+    The loss converges as the points come closer. On 60 obstructed paths of 4 to 37 km over a canyon, at 6 GHz and in
+    ground of 3″ cells, it differs from that with points 5 m apart by 0.4, 0.6 and 1.4 dB (root mean square; 4 dB at
+    most) with points 10, 25 and 100 m apart: the top of a ridge may lie between two points. L_smooth converges last,
+    where an antenna has next to no height above the smooth surface.
     """
     sea = check_surface(polarization, sea_fraction)
     hops = Hops.of(distance_m, height_m, centre_a_m, centre_b_m, frequency_hz, effective_radius_m)

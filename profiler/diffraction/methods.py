@@ -15,13 +15,13 @@ from profiler.checks import positive
 from profiler.diffraction.edges import EdgeLosses
 from profiler.diffraction.formulas import MOST_ROUND
 from profiler.diffraction.general import bullington, delta_bullington
-from profiler.diffraction.obstacles import cascaded_knife_edges, double_edge, single_knife_edge
+from profiler.diffraction.obstacles import DoubleLosses, cascaded_knife_edges, double_edge, single_knife_edge
 from profiler.diffraction.rounded import RoundedLosses, rounded_obstacle
 from profiler.errors import InputError
 from profiler.models import DiffractionMethod, Polarization
 from profiler.units import K_MEDIAN, MEAN_EARTH_RADIUS_M, Float
 
-__all__ = ["METHODS", "DiffractionLoss", "Edge", "Inputs", "Method", "diffract", "diffract_over_k"]
+__all__ = ["METHODS", "DiffractionLoss", "Edge", "Inputs", "Method", "RoundTop", "diffract", "diffract_over_k"]
 
 
 @dataclass(frozen=True, slots=True)
@@ -39,6 +39,19 @@ class Edge:
 
 
 @dataclass(frozen=True, slots=True)
+class RoundTop:
+    """The top of the main obstacle, as the method of the rounded obstacle fits it."""
+
+    radius_m: float | None
+    """On the bulged earth; 0 where fewer than 3 points are on the top, None where it is not convex."""
+    roundness: float | None
+    """The m of Rec. ITU-R P.526-15 §4.2; None where the radius is."""
+    from_m: float
+    """Its extent, from A."""
+    to_m: float
+
+
+@dataclass(frozen=True, slots=True)
 class DiffractionLoss:
     """Diffraction loss of one hop at one k by one method."""
 
@@ -48,6 +61,8 @@ class DiffractionLoss:
     edges: tuple[Edge, ...]
     """In the order of the path; empty where nothing is near enough to the ray to cost anything."""
     warnings: tuple[str, ...]
+    top: RoundTop | None = None
+    """Of the rounded obstacle alone, where it costs anything."""
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -142,10 +157,17 @@ def _rounded_doubts(inputs: Inputs, found: RoundedLosses) -> list[str]:
     return lines
 
 
-def _double_doubts(inputs: Inputs, found: EdgeLosses) -> list[str]:
+def _double_doubts(inputs: Inputs, found: DoubleLosses) -> list[str]:
     others = cascaded_knife_edges(*inputs.path).distance_m
     left_out = set(others[~np.isnan(others)].tolist()) - set(found.distance_m.tolist())
-    return [f"a third edge, {at / 1000:.3f} km from A, is left out: cascaded-edges counts it" for at in left_out]
+    lines = [f"a third edge, {at / 1000:.3f} km from A, is left out: cascaded-edges counts it" for at in left_out]
+    if found.floor_db > 0:
+        published_db = float(found.loss_db - found.floor_db)
+        lines.append(
+            f"Rec. ITU-R P.526-15 §4.3 gives {published_db:.2f} dB, less than the greater edge alone loses, which is "
+            "taken instead"
+        )
+    return lines
 
 
 def _cascaded_doubts(inputs: Inputs, found: EdgeLosses) -> list[str]:
@@ -247,11 +269,11 @@ def diffract_over_k(
     losses = []
     for i, factor in enumerate(factors.tolist()):
         edges = None if found is None else found.of_hop(i)
-        doubts = []
+        doubts: list[str] = []
         if edges is not None and chosen.doubts is not None:
             doubts = chosen.doubts(replace(inputs, radius_m=inputs.radius_m[i]), edges)
         warnings = tuple(f"{method}: {line}" for line in (*ranges, *doubts))
-        losses.append(DiffractionLoss(factor, chosen.name, float(loss_db[i]), _edges(edges), warnings))
+        losses.append(DiffractionLoss(factor, chosen.name, float(loss_db[i]), _edges(edges), warnings, _top(edges)))
     return tuple(losses)
 
 
@@ -331,3 +353,11 @@ def _edges(found: EdgeLosses | None) -> tuple[Edge, ...]:
     columns = (found.distance_m, found.height_m, found.nu, found.edge_loss_db)
     rows = zip(*(column.tolist() for column in columns), strict=True)
     return tuple(Edge(d, h, nu, None if np.isnan(loss) else loss) for d, h, nu, loss in rows if not np.isnan(d))
+
+
+def _top(found: EdgeLosses | None) -> RoundTop | None:
+    """Return the fitted top of a single hop, if its method fits one and it costs anything."""
+    if not isinstance(found, RoundedLosses) or not found.loss_db > 0:
+        return None
+    fit = None if np.isnan(found.radius_m) else float(found.radius_m)
+    return RoundTop(fit, None if fit is None else float(found.roundness), *found.top_m.tolist())
