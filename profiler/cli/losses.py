@@ -45,7 +45,7 @@ def command(json_to: str | None, quiet: bool, no_color: bool, **hop_given: Any) 
 
 
 def _show(study: Study, by_k: dict[float, tuple[DiffractionLoss, ...]], *, quiet: bool, color: bool) -> None:
-    """Print a row for each method and a column for each k, then the edges and the doubts."""
+    """Print a row for each method and a column for each k, then the edges, the rounded tops and the doubts."""
     from profiler.cli.screen import compact_table, console, say, show_notes, show_table
 
     screen = console(color=color)
@@ -64,7 +64,14 @@ def _show(study: Study, by_k: dict[float, tuple[DiffractionLoss, ...]], *, quiet
                 charged = "-" if edge.loss_db is None else f"{edge.loss_db:.2f}"
                 where = (f"{edge.distance_m / 1e3:.3f}", f"{edge.height_m:.1f}", f"{edge.nu:.2f}")
                 edges.add_row(str(number), f"{k:.3f}", loss.method, *where, charged)
-    say(screen, "")
-    show_table(screen, edges)
+    tops = compact_table("rounded top", "radius m", "roundness m", "from km", "to km")
+    for k, losses in by_k.items():
+        for top in (loss.top for loss in losses if loss.top is not None):
+            fit = ("not convex", "-") if top.radius_m is None else (f"{top.radius_m:.0f}", f"{top.roundness:.3f}")
+            tops.add_row(f"k = {k:.3f}", *fit, f"{top.from_m / 1e3:.3f}", f"{top.to_m / 1e3:.3f}")
+    for each in (edges, tops):
+        if each.rows:
+            say(screen, "")
+            show_table(screen, each)
     doubts = dict.fromkeys(warning for losses in by_k.values() for loss in losses for warning in loss.warnings)
     show_notes(screen, "Warnings", tuple(doubts), "yellow")

@@ -13,6 +13,7 @@ if TYPE_CHECKING:
     from rich.table import Table
 
     from profiler.confidence import Confidence
+    from profiler.diffraction import DiffractionLoss
     from profiler.models import Rule
     from profiler.study import Place, Study
 
@@ -123,6 +124,19 @@ def _show_rules(screen: Console, study: Study, scale: Scale) -> None:
     for each in (table, by_k):
         say(screen, "")
         show_table(screen, each)
+    for loss in study.diffraction:
+        say(screen, _edges(loss, scale), hang=2)
+
+
+def _edges(loss: DiffractionLoss, scale: Scale) -> str:
+    """Say by which method and over which edges a diffraction loss came about."""
+    charged, touched = (
+        [scale.distance(edge.distance_m) for edge in loss.edges if (edge.loss_db is None) == shape]
+        for shape in (False, True)
+    )
+    over = f", edge{'s' if len(charged) > 1 else ''} at {', '.join(charged)} {scale.distance_unit}" if charged else ""
+    horizons = f" between horizons at {' and '.join(touched)} {scale.distance_unit}" if touched else ""
+    return f"Diffraction at k = {loss.k:.3f}: {loss.loss_db:.1f} dB by {loss.method}{over}{horizons}"
 
 
 def _rule_name(rule: Rule, scale: Scale) -> str:
