@@ -16,6 +16,7 @@ from profiler.units import Float
 
 __all__ = ["CorridorCheck", "CorridorNeed", "check_corridor", "corridor_need", "corridor_offsets", "side_of"]
 
+_SAME_M = 0.01  # no terrain is known to a centimetre
 _EDGE = 1.0 + 1e-9  # a point on the edge of the zone counts, whatever the last digit of its offset
 
 
@@ -134,7 +135,7 @@ def corridor_need(
     Returns
     -------
     CorridorNeed
-        Of places that ask for the same the one nearest to the path; -inf where nothing is known.
+        Of places that ask for the same to a centimetre the one nearest to the path; -inf where nothing is known.
 
     Raises
     ------
@@ -164,8 +165,8 @@ def corridor_need(
     counts = np.hstack([within, np.ones_like(between, dtype=bool)]) & ~np.isnan(rise)
     rise = np.where(counts, rise, -np.inf)
     highest = rise.max(axis=1, keepdims=True)
-    # of places that ask for the same up to rounding the nearest one counts, so that the path is not "beside" itself
-    nearest = np.argmin(np.where(counts & (rise >= highest - ROUNDING_M), np.abs(offsets), np.inf), axis=1)[:, None]
+    # of places that ask for the same the nearest is named: a gentle slope does not put the path beside itself
+    nearest = np.argmin(np.where(counts & (rise >= highest - _SAME_M), np.abs(offsets), np.inf), axis=1)[:, None]
     return CorridorNeed(
         least_ray_m=frozen_array(highest[:, 0] + earth_bulge(distance, remaining, rule.k) + rule.margin_m),
         offset_m=frozen_array(np.take_along_axis(offsets, nearest, axis=1)[:, 0]),

@@ -47,8 +47,10 @@ def _place(
     offset_m, surplus_m = 0.0, float(check.surplus_m[index])
     longitude, latitude = float(profile.longitude[index]), float(profile.latitude[index])
     surface_m, cover_m = float(profile.surface_m[index]), float(profile.cover_m[index])
+    if across is not None:
+        surplus_m = min(surplus_m, float(across.least_surplus_m[index]))
     if across is not None and corridor is not None and across.need.offset_m[index] != 0.0:
-        offset_m, surplus_m = float(across.need.offset_m[index]), float(across.least_surplus_m[index])
+        offset_m = float(across.need.offset_m[index])
         longitude, latitude = beside(line, index, offset_m)
         surface_m = float(across.need.surface_m[index])
         cover_m = float(np.interp(offset_m, corridor.offset_m[index], corridor.cover_m[index]))
