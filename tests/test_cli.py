@@ -427,6 +427,21 @@ def test_losses_lists_every_method(run):
         assert method in out
     document = json.loads(run("losses", "fails.toml", "--json", "-")[1])
     assert len({(loss["method"], loss["k"]) for loss in document["diffraction"]}) == 14  # 7 methods at 2 k
+    rows = [line.split() for line in out.splitlines()]
+    for loss in document["diffraction"]:
+        if loss["method"] == "rounded-obstacle":
+            top = loss["top"]
+            shown = f"{top['radius_m']:.0f} {top['roundness']:.3f} {top['from_m'] / 1e3:.3f} {top['to_m'] / 1e3:.3f}"
+            assert ["k", "=", f"{loss['k']:.3f}", *shown.split()] in rows
+
+
+def test_a_study_says_by_which_edges_a_loss_came_about(run):
+    _, out, _ = run("study", "fails.toml")
+    document = json.loads(run("study", "fails.toml", "--json", "-")[1])
+    for loss in document["diffraction"]:
+        places = [f"{edge['distance_m'] / 1000:.2f}" for edge in loss["edges"] if edge["loss_db"] is not None]
+        line = f"Diffraction at k = {loss['k']:.3f}: {loss['loss_db']:.1f} dB by {loss['method']}"
+        assert f"{line}, edge at {' '.join(places)} km" in out
 
 
 def test_reach_answers_both_ways(run):
