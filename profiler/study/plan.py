@@ -54,17 +54,20 @@ class SurePositions:
 class HeightsPlan:
     """Antenna heights for one hop, all above ground.
 
-    ``cheapest`` is the cheapest pair that clears every rule and holds the lower antennas of a diversity pair clear;
-    ``answer`` is the one that meets everything else too. ``least_a`` and ``least_b`` are the least height at one end
-    with the other as the hop file has it. ``sheet`` is the answer's pair, or failing that the cheapest, mounted and
-    re-checked; None where there is no pair. ``for_loss`` and ``for_objective`` are None where the hop file sets no such
-    limit, ``diversity`` and ``sure`` empty where it asks for neither.
+    ``stretches`` are the frontier within the towers' limits, ``beyond`` what lies above them where nothing under them
+    clears, up to somewhat over the least equal heights. ``cheapest`` is the cheapest pair that clears every rule and
+    holds the lower antennas of a diversity pair clear; ``answer`` is the one that meets everything else too.
+    ``least_a`` and ``least_b`` are the least height at one end with the other as the hop file has it. ``sheet`` is the
+    answer's pair, or failing that the cheapest, mounted and re-checked; None where there is no pair. ``for_loss`` and
+    ``for_objective`` are None where the hop file sets no such limit, ``diversity`` and ``sure`` empty where it asks for
+    neither.
     """
 
     study: Study
     needs: Requirements
     region: ClearingRegion
     stretches: tuple[Stretch, ...]
+    beyond: tuple[Stretch, ...]
     least_equal: Least
     least_a: Least | NoPair
     least_b: Least | NoPair
@@ -142,12 +145,15 @@ def plan_heights(study: Study, *, sure: float | None = None) -> HeightsPlan:
     stretches = frontier_stretches(
         region, highest_a_m=towers.tower_a.highest_m, highest_b_m=towers.tower_b.highest_m, join_m=_JOIN_M
     )
+    equal = least_equal(region)
+    above = max(towers.tower_a.highest_m, towers.tower_b.highest_m, 1.25 * equal.height_m)
     return HeightsPlan(
         study=study,
         needs=needs,
         region=region,
         stretches=stretches,
-        least_equal=least_equal(region),
+        beyond=() if stretches else frontier_stretches(region, highest_a_m=above, highest_b_m=above, join_m=_JOIN_M),
+        least_equal=equal,
         least_a=least_other(region, fixed_b_m=hop.site_b.antenna_m),
         least_b=least_other(region, fixed_a_m=hop.site_a.antenna_m),
         cheapest=clearing,
