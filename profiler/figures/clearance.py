@@ -13,10 +13,10 @@ from profiler.errors import InputError
 from profiler.figures import style
 from profiler.figures.blocks import foot, head
 from profiler.figures.key import draw_key
-from profiler.figures.page import LINE_IN, Page
+from profiler.figures.page import FOOT_IN, LINE_IN, Page
 from profiler.figures.places import spread
 from profiler.figures.profile import AXES_IN, draw_profile, draw_tight_places, scene
-from profiler.figures.scale import Scale, nice_ticks
+from profiler.figures.scale import Scale
 from profiler.figures.side import title_block
 from profiler.figures.strips import draw_relief, draw_surplus, mark_on_relief, north_on_page
 from profiler.figures.text import width_in, wrap
@@ -34,6 +34,7 @@ Limits = tuple[float, float]
 
 _LEFT, _WIDTH = 0.92, AXES_IN
 _PROFILE_IN, _SURPLUS_IN, _GAP_IN, _RELIEF_IN = 2.55, 1.0, 0.14, 0.85
+_MOST_ACROSS = 8
 
 
 def profile_figure(
@@ -94,15 +95,15 @@ def profile_figure(
         below = draw_key(page, _LEFT, top + 0.12, _WIDTH, view)
         below = _site_names(page, below + 0.06, study, scale)
         depth = _PROFILE_IN if study.relief is not None else _PROFILE_IN + _GAP_IN + _RELIEF_IN
-        axes = page.axes(_LEFT, below, _WIDTH, depth, label="profile")
-        draw_profile(page, axes, view, scale, distance_limits=reach, height_limits=height_limits)
+        axes = page.axes(_LEFT, below, _WIDTH, depth, label="profile", most=(_MOST_ACROSS, 7))
+        draw_profile(axes, view, scale, distance_limits=reach, height_limits=height_limits)
         draw_tight_places(axes, places, scale, on_surface=True, color=color)
         below = _numbers(page, below + depth + 0.02, places, scale, reach, color)
         below = _critical(page, below, study, places[0], scale, reach, color)
         strip_top = below + 0.06
         below = _strips(page, strip_top, study, places, scale, reach, surplus_limits, color)
         side = title_block(page, top + 0.12, study, scale)
-        return page.finish(foot(page, max(below, side) + 0.1, profile_notes(study)))
+        return page.finish(foot(page, max(below, side) + 0.1, profile_notes(study, scale)))
 
 
 def _check_limits(name: str, limits: Limits | None) -> None:
@@ -168,18 +169,20 @@ def _strips(
     color: str,
 ) -> float:
     """Draw the surplus strip and the ground from above; returns where the distance axis ends."""
-    axes = page.axes(_LEFT, top, _WIDTH, _SURPLUS_IN, label="surplus")
-    draw_surplus(page, axes, study, scale, distance_limits=reach, surplus_limits=surplus_limits)
+    axes = page.axes(_LEFT, top, _WIDTH, _SURPLUS_IN, label="surplus", most=(_MOST_ACROSS, 4))
+    draw_surplus(axes, study, scale, distance_limits=reach, surplus_limits=surplus_limits)
     draw_tight_places(axes, places, scale, on_surface=False, color=color)
     lowest, bottom = axes, top + _SURPLUS_IN
     if study.relief is not None:
+        axes.tick_params(labelbottom=False)
         top = bottom + _GAP_IN
-        lowest = page.axes(_LEFT, top, _WIDTH, _RELIEF_IN, label="relief")
-        draw_relief(page, lowest, study.relief, study.line.distance_m, scale, distance_limits=reach)
+        lowest = page.axes(_LEFT, top, _WIDTH, _RELIEF_IN, label="relief", most=(_MOST_ACROSS, 4))
+        draw_relief(lowest, study.relief, study.line.distance_m, scale, distance_limits=reach)
         mark_on_relief(lowest, places, scale, color=color)
         bottom = top + _RELIEF_IN
         _north(page, lowest, bottom, study)
-    return page.scale_foot(lowest, nice_ticks(*reach, 12), f"distance from A, {scale.distance_unit}")
+    lowest.set_xlabel(f"distance from A, {scale.distance_unit}")
+    return bottom + FOOT_IN
 
 
 def _north(page: Page, axes: Axes, bottom: float, study: Study) -> None:
@@ -193,4 +196,4 @@ def _north(page: Page, axes: Axes, bottom: float, study: Study) -> None:
     wing = [(tip[0] - 0.09 * dx + side * 0.035 * dy, tip[1] - 0.09 * dy - side * 0.035 * dx) for side in (-1, 1)]
     page.stroke([tail[0], tip[0]], [tail[1], tip[1]], color=style.INK, lw=0.8)
     page.stroke([wing[0][0], tip[0], wing[1][0]], [wing[0][1], tip[1], wing[1][1]], color=style.INK, lw=0.8)
-    page.words(x, bottom - 0.14, "north", size=style.SMALL, align="center")
+    page.words(x, bottom - 0.14, "N", size=style.SMALL, align="center")

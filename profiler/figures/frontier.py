@@ -1,8 +1,8 @@
 """The heights figure: every pair of antenna heights that clears, and which obstacle and rule draws each stretch of it.
 
 The decision is which pair to build. The figure holds the two heights against each other, so that a metre more at one
-end reads off as metres less at the other; the towers' limits are drawn in, and the pair of the hop file, the cheapest
-pair and the least equal heights are marked. The table beside it names the obstacle behind each numbered stretch.
+end reads off as metres less at the other; the towers' limits are drawn in, and the pair of the hop file, the answer
+and the least equal heights are marked. The table beside it names the obstacle behind each numbered stretch.
 """
 
 from __future__ import annotations
@@ -13,20 +13,18 @@ from typing import TYPE_CHECKING, Any
 import numpy as np
 
 from profiler.figures import style
-from profiler.figures.axes import draw_grid, label_side
 from profiler.figures.blocks import columns_at, foot, head, heading, rows, titles
-from profiler.figures.page import LINE_IN, MARGIN_IN, PAGE_WIDTH_IN, Page
+from profiler.figures.page import FOOT_IN, LINE_IN, MARGIN_IN, PAGE_WIDTH_IN, Page
 from profiler.figures.places import spread
-from profiler.figures.scale import Scale, minus, nice_ticks, position_text, required_text
+from profiler.figures.scale import Scale, minus, position_text, required_text
 from profiler.figures.strips import rule_look
 from profiler.figures.words import hop_facts, profile_notes
-from profiler.heights import Choice, Least, NoPair, frontier_stretches, least_a_for, least_b_for, surplus
 
 if TYPE_CHECKING:
     from matplotlib.axes import Axes
     from matplotlib.figure import Figure
 
-    from profiler.heights import Stretch
+    from profiler.heights import NoPair, Stretch
     from profiler.study.plan import HeightsPlan
 
 __all__ = ["frontier_figure"]
@@ -66,33 +64,42 @@ def frontier_figure(plan: HeightsPlan, *, feet: bool = False) -> Figure:
     --------
     >>> size = Path("heights.png").write_bytes(render(frontier_figure(plan_heights(study)), ".png"))  # doctest: +SKIP
     """
+    from profiler.heights import Choice
+
     scale, hop = Scale(feet), plan.study.hop
+    found = isinstance(plan.answer.pair, Choice)
     marks = _marks(plan, scale)
-    reach_a = _reach(hop.heights.tower_a.highest_m, [mark.antenna_a_m for mark in marks])
-    reach_b = _reach(hop.heights.tower_b.highest_m, [mark.antenna_b_m for mark in marks])
-    # where nothing under the towers' limits clears, show what would clear above them
-    stretches = plan.stretches or frontier_stretches(
-        plan.region, highest_a_m=reach_a, highest_b_m=reach_b, join_m=0.02 * plan.study.line.distance_m
-    )
+    stretches = plan.stretches or plan.beyond
+    highest_a, highest_b = hop.heights.tower_a.highest_m, hop.heights.tower_b.highest_m
+    if stretches:
+        highest_a, highest_b = (
+            max(highest_a, stretches[-1].corners_m[-1, 0]),
+            max(highest_b, stretches[0].corners_m[0, 1]),
+        )
+    reach_a = _reach(highest_a, [mark.antenna_a_m for mark in marks])
+    reach_b = _reach(highest_b, [mark.antenna_b_m for mark in marks])
     with style.defaults():
         page = Page()
         top = head(
             page,
-            word="FEASIBLE" if isinstance(plan.answer.pair, Choice) else "NO PAIR",
-            good=isinstance(plan.answer.pair, Choice),
+            word="FEASIBLE" if found else "NO PAIR",
+            good=found,
             sentence=_sentence(plan, scale),
             name=hop.name,
             facts=hop_facts(hop, plan.study.line.distance_m, scale),
         )
-        axes = page.axes(_LEFT, top + 0.16, _SIZE_IN, _SIZE_IN, label="heights")
-        _draw_region(axes, plan, scale, reach_a, reach_b)
+        axes = page.axes(_LEFT, top + 0.16, _SIZE_IN, _SIZE_IN, label="heights", most=(9, 9))
+        _draw_region(axes, plan, stretches, scale)
+        axes.set_xlim(0.0, scale.height(reach_a))
+        axes.set_ylim(0.0, scale.height(reach_b))
         _draw_stretches(axes, stretches, scale)
         _draw_marks(axes, marks, scale)
-        _label_axes(page, axes, scale)
+        axes.set_xlabel(f"antenna A above ground, {scale.height_unit}")
+        axes.set_ylabel(f"antenna B above ground, {scale.height_unit}")
         _number_stretches(page, top + 0.16, axes, stretches, scale)
-        side = _mark_table(page, top + 0.14, marks, scale)
+        side = _mark_table(page, top + 0.14, plan, marks, scale)
         side = _stretch_table(page, side + 0.12, plan, stretches, scale)
-        bottom = max(top + 0.16 + _SIZE_IN + 0.36, side)
+        bottom = max(top + 0.16 + _SIZE_IN + FOOT_IN, side)
         return page.finish(foot(page, bottom + 0.1, _notes(plan, scale)))
 
 
@@ -104,70 +111,56 @@ def _reach(highest_m: float, marked_m: list[float]) -> float:
 
 def _sentence(plan: HeightsPlan, scale: Scale) -> str:
     """Say which pair to build, or what is in the way."""
-    choice = plan.answer.pair
-    if isinstance(choice, Choice):
-        a, b = scale.height_text(choice.antenna_a_m), scale.height_text(choice.antenna_b_m)
-        return f"Cheapest pair under the limits: antenna A at {a}, antenna B at {b} above ground"
-    if plan.feasible:
-        return "Pairs clear every rule, but none that was found does all else that is asked"
-    if not choice.lower:
-        return "Every position of a tower is taken, or too close to a taken one"
-    worst = choice.lower[0]
-    a, b = scale.height_text(choice.best_a_m), scale.height_text(choice.best_b_m)
+    from profiler.heights import Choice
+
+    pair = plan.answer.pair
+    if isinstance(pair, Choice):
+        a, b = scale.height_text(pair.antenna_a_m), scale.height_text(pair.antenna_b_m)
+        does = "clears every rule" if len(plan.answer.asked) == 1 else "does all that is asked"
+        return f"Cheapest pair that {does}: antenna A at {a}, antenna B at {b} above ground"
+    if not pair.lower:
+        return f"{pair.reason[0].upper()}{pair.reason[1:]}"
+    worst = pair.lower[0]
+    a, b = scale.height_text(pair.best_a_m), scale.height_text(pair.best_b_m)
     short, where = scale.height_text(worst.by_m), scale.distance_text(worst.distance_m)
     return f"Even at the highest there is, A {a} and B {b}, the ray is {short} short {where} from A"
 
 
 def _marks(plan: HeightsPlan, scale: Scale) -> list[_Mark]:
     """Pairs worth a mark, the most wanted last so that it lies on top."""
-    hop = plan.study.hop
-    spare = float(surplus(plan.region, hop.site_a.antenna_m, hop.site_b.antenna_m))
+    from profiler.heights import Choice, Least
+
+    a, b = plan.study.hop.site_a.antenna_m, plan.study.hop.site_b.antenna_m
+    spare, equal = plan.study.governing.critical.surplus_m, plan.least_equal.height_m
     state = f"{scale.height_text(abs(spare))} {'short' if spare < 0 else 'to spare'}"
-    equal = plan.least_equal.height_m
     marks = [
-        _Mark(
-            {"marker": "s", "mfc": "white"}, hop.site_a.antenna_m, hop.site_b.antenna_m, f"as in the hop file: {state}"
-        ),
+        _Mark({"marker": "s", "mfc": "white"}, a, b, f"as in the hop file: {state}"),
         _Mark({"marker": "^", "mfc": style.ZONE_REQUIRED}, equal, equal, "least equal heights"),
     ]
-    for least, other, name in (
-        (plan.least_a, hop.site_b.antenna_m, "least A with B as it is"),
-        (plan.least_b, hop.site_a.antenna_m, "least B with A as it is"),
-    ):
-        if isinstance(least, Least):
-            pair = (least.height_m, other) if name.startswith("least A") else (other, least.height_m)
-            look = {"marker": ">" if name.startswith("least A") else "v", "mfc": style.GROUND}
-            marks.append(_Mark(look, *pair, name))
-    sure = () if plan.study.confidence is None else plan.study.confidence.sure
-    for each in sure:
+    if isinstance(plan.least_a, Least):
+        look = {"marker": ">", "mfc": style.GROUND}
+        marks.append(_Mark(look, plan.least_a.height_m, b, "least A with B as it is"))
+    if isinstance(plan.least_b, Least):
+        look = {"marker": "v", "mfc": style.GROUND}
+        marks.append(_Mark(look, a, plan.least_b.height_m, "least B with A as it is"))
+    for each in () if plan.study.confidence is None else plan.study.confidence.sure:
         words = f"clears with a chance of {100 * each.chance:g} %, both ends moved alike"
         marks.append(_Mark({"marker": "D", "mfc": style.MUTED}, *each.equal_m, words))
-    if isinstance(plan.cheapest, Choice):
-        all_asked = plan.answer.pair == plan.cheapest
-        words = f"cheapest {'pair under the limits' if all_asked else 'that clears'}, cost {plan.cheapest.cost:g}"
-        marks.append(
-            _Mark(
-                {"marker": "*", "mfc": style.PASS, "ms": 13},
-                plan.cheapest.antenna_a_m,
-                plan.cheapest.antenna_b_m,
-                words,
-            )
-        )
-    answer = plan.answer.pair
-    if isinstance(answer, Choice) and answer != plan.cheapest:
-        words = f"cheapest that does all that is asked, cost {answer.cost:g}"
-        marks.append(_Mark({"marker": "H", "mfc": style.PASS, "ms": 10}, answer.antenna_a_m, answer.antenna_b_m, words))
+    stars = [(plan.answer.pair, style.PASS, plan.answer.asked)]
+    if plan.cheapest != plan.answer.pair:
+        stars.insert(0, (plan.cheapest, "white", plan.answer.asked[:1]))
+    for pair, fill, asked in stars:
+        if isinstance(pair, Choice):
+            words = f"cheapest pair to {' and '.join(asked)}, cost {pair.cost:g}"
+            marks.append(_Mark({"marker": "*", "mfc": fill, "ms": 13}, pair.antenna_a_m, pair.antenna_b_m, words))
     return marks
 
 
-def _draw_region(axes: Axes, plan: HeightsPlan, scale: Scale, reach_a: float, reach_b: float) -> None:
-    """Shade what clears, and outline what the towers allow."""
-    start = max(0.0, float(least_a_for(plan.region, reach_b)))
-    if start < reach_a:
-        corners = plan.region.vertices_m[:, 0]
-        a = np.concatenate(([start], corners[(corners > start) & (corners < reach_a)], [reach_a]))
-        b = np.clip(least_b_for(plan.region, a), 0.0, reach_b)
-        axes.fill_between(scale.height(a), scale.height(b), scale.height(reach_b), fc=style.ZONE, lw=0, label="clears")
+def _draw_region(axes: Axes, plan: HeightsPlan, stretches: tuple[Stretch, ...], scale: Scale) -> None:
+    """Shade what clears as far as the stretches reach, and outline what the towers allow."""
+    if stretches:
+        a, b = scale.height(np.concatenate([stretch.corners_m for stretch in stretches])).T
+        axes.fill_between(a, b, b[0], fc=style.ZONE, lw=0, label="clears")
     tower_a, tower_b = plan.study.hop.heights.tower_a, plan.study.hop.heights.tower_b
     low_a, high_a = scale.height(tower_a.lowest_m), scale.height(tower_a.highest_m)
     low_b, high_b = scale.height(tower_b.lowest_m), scale.height(tower_b.highest_m)
@@ -179,10 +172,7 @@ def _draw_region(axes: Axes, plan: HeightsPlan, scale: Scale, reach_a: float, re
         dashes=(6, 2, 1.5, 2),
         label="limits",
     )
-    end = min(scale.height(reach_a), scale.height(reach_b))
-    axes.plot([0.0, end], [0.0, end], color=style.MUTED, lw=0.6, dashes=(1.5, 2), label="equal")
-    axes.set_xlim(0.0, scale.height(reach_a))
-    axes.set_ylim(0.0, scale.height(reach_b))
+    axes.axline((0.0, 0.0), slope=1.0, color=style.MUTED, lw=0.6, dashes=(1.5, 2), label="equal")
 
 
 def _draw_stretches(axes: Axes, stretches: tuple[Stretch, ...], scale: Scale) -> None:
@@ -205,16 +195,6 @@ def _draw_marks(axes: Axes, marks: list[_Mark], scale: Scale) -> None:
         a, b = scale.height(mark.antenna_a_m), scale.height(mark.antenna_b_m)
         if a <= right and b <= top:
             axes.plot(a, b, ls="", clip_on=False, zorder=6, label=mark.words, **{**_MARK_LOOK, **mark.look})
-
-
-def _label_axes(page: Page, axes: Axes, scale: Scale) -> None:
-    """Write and rule both axes."""
-    (_, right), (_, top) = axes.get_xlim(), axes.get_ylim()
-    across, up = nice_ticks(0.0, right, 9), nice_ticks(0.0, top, 9)
-    page.scale_side(axes, up, [f"{tick:g}" for tick in up])
-    draw_grid(axes, across, up)
-    label_side(axes, f"antenna B above ground, {scale.height_unit}", width_in=_SIZE_IN)
-    page.scale_foot(axes, across, f"antenna A above ground, {scale.height_unit}")
 
 
 def _number_stretches(page: Page, top: float, axes: Axes, stretches: tuple[Stretch, ...], scale: Scale) -> None:
@@ -242,7 +222,7 @@ def _number_stretches(page: Page, top: float, axes: Axes, stretches: tuple[Stret
         page.words(_LEFT + x, top + y - 0.062, f"{number + 1}", bold=True, align="center")
 
 
-def _mark_table(page: Page, top: float, marks: list[_Mark], scale: Scale) -> float:
+def _mark_table(page: Page, top: float, plan: HeightsPlan, marks: list[_Mark], scale: Scale) -> float:
     """Name the marks with their heights."""
     top = heading(page, _SIDE, top, "Pairs of heights above ground")
     columns = columns_at(_SIDE + 0.25, (0.68, 0.68, _SIDE_ROOM - 1.61))
@@ -252,7 +232,14 @@ def _mark_table(page: Page, top: float, marks: list[_Mark], scale: Scale) -> flo
         cells = (scale.height_text(mark.antenna_a_m), scale.height_text(mark.antenna_b_m), mark.words)
         top = rows(page, top, columns, [cells]) + 0.02
     page.stroke([_SIDE, _SIDE + 0.2], [top + 0.065] * 2, color=style.INK, lw=1.0, dashes=(6, 2, 1.5, 2))
-    page.words(_SIDE + 0.25, top, "limits of the towers; shaded: clears every rule", color=style.MUTED)
+    page.words(
+        _SIDE + 0.25,
+        top,
+        "limits of the towers; shaded: clears every rule under them"
+        if plan.stretches
+        else "limits of the towers; shaded: clears, but above them",
+        color=style.MUTED,
+    )
     return top + style.BODY * LINE_IN
 
 
@@ -302,10 +289,13 @@ def _stretch_cells(plan: HeightsPlan, stretch: Stretch, scale: Scale) -> tuple[s
 
 def _notes(plan: HeightsPlan, scale: Scale) -> list[tuple[str, list[str]]]:
     """Put together the notes at the foot: how to read the figure, ways out, and what the study assumed."""
+    from profiler.heights import NoPair
+
     reading = ["every pair in the shaded region clears every rule at every point; on its edge one point is just met"]
-    if isinstance(plan.cheapest, NoPair):
-        reading += [f"one way out: {way}" for way in _remedies(plan.cheapest, scale)]
-    return [("Reading", reading), *(block for block in profile_notes(plan.study) if block[0] != "Reading")]
+    if isinstance(plan.answer.pair, NoPair):
+        reading += [f"one way out: {way}" for way in _remedies(plan.answer.pair, scale)]
+    beware = [f"not judged: {each}" for each in plan.answer.unjudged]
+    return [("Reading", [*reading, *beware]), *profile_notes(plan.study, scale)]
 
 
 def _remedies(found: NoPair, scale: Scale) -> list[str]:

@@ -8,9 +8,8 @@ from typing import TYPE_CHECKING
 import numpy as np
 
 from profiler.figures import style
-from profiler.figures.axes import draw_grid
-from profiler.figures.page import LINE_IN, Page
-from profiler.figures.scale import minus, nice_ticks
+from profiler.figures.page import FOOT_IN, LINE_IN, Page
+from profiler.figures.scale import minus
 from profiler.figures.text import wrap
 
 if TYPE_CHECKING:
@@ -74,7 +73,7 @@ def draw_levels(page: Page, left: float, top: float, width: float, steps: list[S
     names = [wrap(step.name, names_in - 0.1, style.BODY) for step in steps]
     depths = [len(lines) * style.BODY * LINE_IN + _PAD_IN for lines in names]
     tops = np.concatenate(([0.0], np.cumsum(depths)))
-    axes = page.axes(left + names_in, top, width - names_in - numbers_in, float(tops[-1]), label="levels")
+    axes = page.axes(left + names_in, top, width - names_in - numbers_in, float(tops[-1]), label="levels", most=(7, 1))
     change_at, level_at = left + width - 0.62, left + width
     page.words(change_at, top - style.SMALL * LINE_IN - 0.03, "dB", size=style.SMALL, color=style.MUTED, align="right")
     page.words(level_at, top - style.SMALL * LINE_IN - 0.03, "dBm", size=style.SMALL, color=style.MUTED, align="right")
@@ -87,10 +86,9 @@ def draw_levels(page: Page, left: float, top: float, width: float, steps: list[S
         if step.kind not in ("margin", "lack"):
             page.words(level_at, at, minus(f"{step.end_dbm:.1f}"), bold=bold, align="right")
     _bars(axes, steps, tops)
-    low, high = axes.get_xlim()
-    ticks = nice_ticks(low, high, 7)
-    draw_grid(axes, ticks, [])
-    return axes, page.scale_foot(axes, ticks, "level, dBm")
+    axes.set_xlabel("level, dBm")
+    axes.set_yticks([])
+    return axes, top + float(tops[-1]) + FOOT_IN
 
 
 _FILLS = {

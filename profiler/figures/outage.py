@@ -7,11 +7,10 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 
-from profiler.availability import MECHANISMS
 from profiler.figures import style
-from profiler.figures.axes import draw_grid, label_side
-from profiler.figures.page import LINE_IN, Page
-from profiler.figures.scale import minus, nice_ticks
+from profiler.figures.page import FOOT_IN, LINE_IN, Page
+from profiler.figures.places import spread
+from profiler.figures.scale import minus
 from profiler.figures.text import width_in
 from profiler.units import MINUTES_PER_YEAR
 
@@ -80,45 +79,43 @@ def draw_outage(
         ("worst month", curve.worst_month_percent, outage.worst_month_percent.total),
         ("year", curve.year_percent, outage.year_percent.total),
     ):
-        axes = page.axes(left, top, room, _HALF_IN, label=period)
+        axes = page.axes(left, top, room, _HALF_IN, label=period, most=(8, 8))
         targets = target_lines(outage, period)
-        powers = _curves(axes, curve.margin_db, outages, targets, here)
+        _curves(axes, curve.margin_db, outages, targets, here)
         _margins(axes, outage, highest)
         axes.plot(max(outage.fade_margin_db, 0.0), here, "o", color=style.INK, ms=4, label="reached", zorder=4)
-        values = [10.0**power for power in powers]
-        page.scale_side(axes, values, [_percent_label(power) for power in powers])
-        draw_grid(axes, nice_ticks(0.0, highest, 8), values)
-        label_side(axes, f"outage, % of the\n{period}", width_in=room)
+        axes.set_ylabel(f"outage, % of the\n{period}")
         _target_words(page, left + room, top, axes, targets)
         pair.append(axes)
         top += _HALF_IN + 0.12
-    return (pair[0], pair[1]), page.scale_foot(pair[1], nice_ticks(0.0, highest, 8), "flat fade margin, dB")
+    pair[0].tick_params(labelbottom=False)
+    pair[1].set_xlabel("flat fade margin, dB")
+    return (pair[0], pair[1]), top - 0.12 + FOOT_IN
 
 
-def _percent_label(power: int) -> str:
-    return f"{10.0**power:g}" if power >= -3 else f"10{str(power).translate(_SUPERSCRIPT)}"
+def _percent_label(percent: float, _: object) -> str:
+    power = round(math.log10(percent))
+    return f"{percent:g}" if power >= -3 else f"10{str(power).translate(_SUPERSCRIPT)}"
 
 
 def _curves(
     axes: Axes, margin_db: Float, outages: Outages[Float], targets: list[tuple[float, list[str]]], here: float
-) -> list[int]:
-    """Draw the curves of one period, from 100 % to below what is asked and what is reached; returns the decades."""
+) -> None:
+    """Draw the curves of one period, from 100 % to below what is asked and what is reached."""
     lowest = min([1e-3, *(percent / 30.0 for percent, _ in targets), *([here / 3.0] if here > 0 else [])])
     bottom = max(math.floor(math.log10(lowest)), _LOWEST_POWER)
     axes.set_yscale("log")
-    axes.set_yticks([])
     axes.minorticks_off()
-    for name in ("total", *MECHANISMS):
+    axes.yaxis.set_major_formatter(_percent_label)
+    for name, (color, dashes, weight) in _LOOKS.items():
         part = outages.total if name == "total" else outages.part(name)  # type: ignore[arg-type]
         if part is None:
             continue
-        color, dashes, weight = _LOOKS[name]
         shown = np.where(part > 0.0, part, np.nan)
         axes.plot(margin_db, shown, color=color, dashes=dashes or (None, None), lw=weight, label=name)
     axes.set_ylim(10.0**bottom, 150.0)
     for percent, _ in targets:
         axes.axhline(percent, color=style.FAIL, lw=1.6, label="asked")
-    return list(range(bottom, 3, 1 if bottom > -6 else 2))
 
 
 def _margins(axes: Axes, outage: Availability, highest: float) -> None:
@@ -148,24 +145,21 @@ def _margin_labels(page: Page, left: float, top: float, room: float, outage: Ava
 def _target_words(page: Page, left: float, top: float, axes: Axes, targets: list[tuple[float, list[str]]]) -> None:
     """Name the level lines at their right ends, moved apart where they stand close."""
     bottom, ceiling = np.log10(axes.get_ylim())
-    wanted = sorted((top + _HALF_IN * (ceiling - math.log10(p)) / (ceiling - bottom), words) for p, words in targets)
-    free = top
-    for y, words in wanted:
-        depth = len(words) * style.SMALL * LINE_IN
-        at = max(y - depth / 2, free)
-        page.words(left + 0.06, at, words, size=style.SMALL, color=style.FAIL)
-        free = at + depth
+    depth = 2 * style.SMALL * LINE_IN
+    wanted = [_HALF_IN * (ceiling - math.log10(percent)) / (ceiling - bottom) - depth / 2 for percent, _ in targets]
+    for at, (_, words) in zip(spread(wanted, depth, 0.0, _HALF_IN - depth), targets, strict=True):
+        page.words(left + 0.06, top + at, words, size=style.SMALL, color=style.FAIL)
 
 
 def _key(page: Page, left: float, top: float, outage: Availability) -> float:
     """Name the curves that there are, and the mechanisms that nothing was given for."""
     x, y, depth = left, top, style.SMALL * LINE_IN
-    for name in ("total", *(each for each in MECHANISMS if each not in outage.missing)):
-        color, dashes, weight = _LOOKS[name]
-        words = name
+    for name, (color, dashes, weight) in _LOOKS.items():
+        if name in outage.missing:
+            continue
         page.stroke([x, x + 0.3], [y + depth / 2] * 2, color=color, dashes=dashes or (None, None), lw=weight)
-        page.words(x + 0.35, y, words, size=style.SMALL)
-        x += 0.35 + width_in(words, style.SMALL) + 0.16
+        page.words(x + 0.35, y, name, size=style.SMALL)
+        x += 0.35 + width_in(name, style.SMALL) + 0.16
     y += depth + 0.02
     if outage.missing:
         words = f"not counted, nothing given for it: {', '.join(outage.missing)}"

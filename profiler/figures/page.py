@@ -12,27 +12,30 @@ from typing import TYPE_CHECKING, Any
 from matplotlib.figure import Figure
 from matplotlib.lines import Line2D
 from matplotlib.patches import Rectangle
+from matplotlib.ticker import MaxNLocator
 from matplotlib.transforms import Affine2D
 
 from profiler.figures import style
-from profiler.figures.scale import minus
 from profiler.figures.text import font, wrap
 
 if TYPE_CHECKING:
     from matplotlib.axes import Axes
     from matplotlib.text import Text
 
-__all__ = ["ASCENT", "LEADING", "LINE_IN", "MARGIN_IN", "PAGE_HEIGHT_IN", "PAGE_WIDTH_IN", "Page"]
+__all__ = ["FOOT_IN", "LINE_IN", "MARGIN_IN", "PAGE_HEIGHT_IN", "PAGE_WIDTH_IN", "Page"]
 
 PAGE_WIDTH_IN, PAGE_HEIGHT_IN = 11.69, 8.27
 """A4 landscape; it prints on Letter at 94 %."""
 
 MARGIN_IN = 0.36
-ASCENT, LEADING = 0.86, 1.2
+_ASCENT, _LEADING = 0.86, 1.2
 """From the top of a line to its baseline, and from one baseline to the next, as shares of the size of type."""
 
-LINE_IN = LEADING / 72.0
+LINE_IN = _LEADING / 72.0
 """Depth of a line of text, inches for each point of its size."""
+
+FOOT_IN = 0.22 + style.BODY * LINE_IN
+"""Depth of the scale of a level axis with its title."""
 
 
 class Page:
@@ -44,36 +47,16 @@ class Page:
         self._inches = self._down + self.figure.dpi_scale_trans
         self._places: dict[Axes, tuple[float, float, float, float]] = {}
 
-    def axes(self, left: float, top: float, width: float, height: float, *, label: str) -> Axes:
-        """Add axes; the label names them for whoever looks into the figure."""
+    def axes(self, left: float, top: float, width: float, height: float, *, label: str, most: tuple[int, int]) -> Axes:
+        """Add axes with at most so many steps across and up; the label names them for whoever looks into the figure."""
         axes = self.figure.add_axes((0.0, 0.0, 1.0, 1.0), label=label)
-        axes.set_facecolor("white")
-        for spine in axes.spines.values():
-            spine.set(linewidth=0.6, color=style.MUTED)
-        axes.set_xticks([])
-        axes.set_yticks([])
+        for axis, steps in zip((axes.xaxis, axes.yaxis), most, strict=True):
+            axis.set_major_locator(MaxNLocator(steps, steps=[1, 2, 5, 10]))
+        # the titles of the axes at the same distance on every page
+        axes.xaxis.set_label_coords(0.5, -0.22 / height)
+        axes.yaxis.set_label_coords(-0.43 / width, 0.5)
         self._places[axes] = (left, top, width, height)
         return axes
-
-    def scale_side(self, axes: Axes, values: Sequence[float], labels: Sequence[str]) -> None:
-        """Write the scale of the upright axis; the grid stands in for ticks.
-
-        The ticks of an axis take a third of the time of a whole page: here they are words like all others.
-        """
-        left, top, _, height = self._places[axes]
-        for value, label in zip(values, labels, strict=True):
-            share = axes.transLimits.transform(axes.transScale.transform((axes.get_xlim()[1], value)))[1]
-            self.words(left - 0.05, top + height * (1.0 - share) - 0.058, label, size=style.SMALL, align="right")
-
-    def scale_foot(self, axes: Axes, values: Sequence[float], title: str) -> float:
-        """Write the scale of the level axis and its title; returns where the next thing can stand."""
-        left, top, width, height = self._places[axes]
-        low, high = axes.get_xlim()
-        for value in values:
-            at = left + width * (value - low) / (high - low)
-            self.words(at, top + height + 0.04, minus(f"{value:g}"), size=style.SMALL, align="center", gid="scale")
-        self.words(left + width / 2, top + height + 0.18, title, align="center", gid="title")
-        return top + height + 0.18 + style.BODY * LINE_IN
 
     def words(
         self,
@@ -89,7 +72,7 @@ class Page:
     ) -> Text:
         """Write one line or several, the first one's top at ``top``; nothing in them is taken for mathematics."""
         string = lines if isinstance(lines, str) else "\n".join(lines)
-        baseline = top + (ASCENT + string.count("\n") * LEADING) * size / 72.0
+        baseline = top + (_ASCENT + string.count("\n") * _LEADING) * size / 72.0
         return self.figure.text(
             left,
             baseline,
@@ -99,7 +82,6 @@ class Page:
             color=color,
             ha=align,
             va="baseline",
-            parse_math=False,
             **more,
         )
 

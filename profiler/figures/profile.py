@@ -9,10 +9,8 @@ import numpy as np
 from numpy.typing import NDArray
 
 from profiler.figures import style
-from profiler.figures.axes import draw_grid, label_side
-from profiler.figures.page import Page
 from profiler.figures.places import rule_position
-from profiler.figures.scale import Scale, k_text, minus, nice_ticks
+from profiler.figures.scale import Scale, k_text
 from profiler.geometry import ray_height
 from profiler.models import frozen_array
 from profiler.units import Float
@@ -114,7 +112,6 @@ def _surface_band(study: Study) -> tuple[Float, Float] | None:
 
 
 def draw_profile(
-    page: Page,
     axes: Axes,
     view: Scene,
     scale: Scale,
@@ -149,12 +146,8 @@ def draw_profile(
     axes.plot(*view.reflections, ls="", marker="D", ms=3.4, mfc="white", mec=style.RAY, mew=0.8, label="reflections")
     axes.set_xlim(*distance_limits)
     axes.set_ylim(bottom, top)
-    ticks = nice_ticks(bottom, top, 8)
-    page.scale_side(axes, ticks, [minus(f"{tick:g}") for tick in ticks])
-    label_side(
-        axes, f"height above datum, {scale.height_unit},\nwith the bulge at k = {k_text(view.k)}", width_in=AXES_IN
-    )
-    draw_grid(axes, nice_ticks(*distance_limits, 12), ticks)
+    axes.set_ylabel(f"height above datum, {scale.height_unit},\nwith the bulge at k = {k_text(view.k)}")
+    axes.tick_params(labelbottom=False)
 
 
 def _masts(axes: Axes, view: Scene) -> None:

@@ -10,7 +10,7 @@ from typing import overload
 from profiler.models import Rule
 from profiler.units import FOOT_M, STATUTE_MILE_M, Float
 
-__all__ = ["Scale", "k_text", "minus", "nice_ticks", "position_text", "required_text"]
+__all__ = ["Scale", "k_text", "minus", "position_text", "required_text"]
 
 
 @dataclass(frozen=True, slots=True)
@@ -125,21 +125,3 @@ def position_text(longitude: float, latitude: float) -> str:
     """
     north, east = "N" if latitude >= 0 else "S", "E" if longitude >= 0 else "W"
     return f"{abs(latitude):.5f}° {north}, {abs(longitude):.5f}° {east}"
-
-
-def nice_ticks(low: float, high: float, most: int) -> list[float]:
-    """Round numbers from low to high, a step of 1, 2 or 5 times a power of ten apart, at most ``most`` of them.
-
-    Examples
-    --------
-    >>> nice_ticks(0.0, 31.2, 8)
-    [0.0, 5.0, 10.0, 15.0, 20.0, 25.0, 30.0]
-    """
-    span = high - low
-    power = 10.0 ** math.floor(math.log10(span / most))
-    for factor in (1.0, 2.0, 5.0, 10.0, 20.0):
-        step = factor * power
-        first, last = math.ceil(low / step - 1e-9), math.floor(high / step + 1e-9)
-        if last - first + 1 <= most:
-            break
-    return [round(i * step, 10) for i in range(first, last + 1)]

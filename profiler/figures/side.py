@@ -37,7 +37,7 @@ def title_block(page: Page, top: float, study: Study, scale: Scale) -> float:
     top = heading(page, _SIDE, top + 0.1, "Hop")
     columns = [(_SIDE, label - 0.05, style.MUTED), (_SIDE + label, 2 * each, style.INK)]
     top = rows(page, top, columns, hop_rows(study, scale))
-    top = heading(page, _SIDE, top + 0.1, "Rules, the tightest first")
+    top = heading(page, _SIDE, top + 0.1, "Rules, each at its own k, the tightest first")
     for result in rules_by_surplus(study):
         color, dashes = rule_look(rule_position(study, result))
         page.stroke(

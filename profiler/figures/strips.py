@@ -6,13 +6,12 @@ import math
 from typing import TYPE_CHECKING
 
 import numpy as np
+from matplotlib.colors import LightSource
 
 from profiler.figures import style
-from profiler.figures.axes import draw_grid, label_side
-from profiler.figures.page import Page
 from profiler.figures.places import rule_position, rules_by_surplus, surplus_drawn
-from profiler.figures.profile import AXES_IN, thinned
-from profiler.figures.scale import Scale, minus, nice_ticks
+from profiler.figures.profile import thinned
+from profiler.figures.scale import Scale
 from profiler.units import Float
 
 if TYPE_CHECKING:
@@ -20,9 +19,10 @@ if TYPE_CHECKING:
 
     from profiler.study.result import Place, Relief, Study
 
-__all__ = ["draw_relief", "draw_surplus", "hillshade", "mark_on_relief", "north_on_page", "rule_look"]
+__all__ = ["brightness", "draw_relief", "draw_surplus", "mark_on_relief", "north_on_page", "rule_look"]
 
-_MOST_ALONG, _MOST_ACROSS = 1200, 160
+_MOST_ALONG, _MOST_ACROSS = 600, 80
+_FLAT_M = 30.0
 
 
 def rule_look(position: int) -> tuple[str, tuple[float, ...]]:
@@ -33,7 +33,6 @@ def rule_look(position: int) -> tuple[str, tuple[float, ...]]:
 
 
 def draw_surplus(
-    page: Page,
     axes: Axes,
     study: Study,
     scale: Scale,
@@ -70,10 +69,7 @@ def draw_surplus(
     axes.axhline(0.0, color=style.INK, lw=1.0)
     axes.set_xlim(*distance_limits)
     axes.set_ylim(bottom, top)
-    ticks = nice_ticks(bottom, top, 5)
-    page.scale_side(axes, ticks, [f"{'+' if tick > 0 else ''}{minus(f'{tick:g}')}" for tick in ticks])
-    label_side(axes, f"clearance less\nrequirement, {scale.height_unit}", width_in=AXES_IN)
-    draw_grid(axes, nice_ticks(*distance_limits, 12), ticks)
+    axes.set_ylabel(f"clearance less\nrequirement, {scale.height_unit}")
 
 
 def _surplus_limits(study: Study, scale: Scale) -> tuple[float, float]:
@@ -90,44 +86,39 @@ def _surplus_limits(study: Study, scale: Scale) -> tuple[float, float]:
     return scale.height(low - 0.1 * span), scale.height(high + 0.05 * span)
 
 
-def hillshade(ground_m: Float, along_step_m: float, offset_step_m: float) -> Float:
-    """Brightness 0 to 1 of the ground lit from the upper left of the page, higher ground a little brighter.
+def brightness(ground_m: Float, along_step_m: float, offset_step_m: float) -> Float:
+    """Brightness 0 to 1 of the ground on the page, (across, n): half by height, half by light from the upper left.
 
-    ``ground_m`` is (n, across), A to B and left to right of the path, which is the page's left to right and top to
-    bottom. Slopes are exaggerated until they show, up to twentyfold, so that noise of flat ground stays noise.
+    The light is stretched until it shows, whatever the slopes; over flat country it fades, so that noise stays noise.
     """
-    along, aside = np.gradient(ground_m, along_step_m, offset_step_m)
-    facing = (along + aside) / math.sqrt(2.0)  # ground that rises to the lower right of the page faces the light
-    steepness = float(np.sqrt(np.nanmean(facing**2)))
-    lit = 0.5 + 0.5 * np.tanh(0.7 * facing * min(20.0, 1.0 / max(steepness, 1e-9)))
-    low, high = float(np.nanmin(ground_m)), float(np.nanmax(ground_m))
-    height = 0.5 + (ground_m - 0.5 * (low + high)) / max(high - low, 10.0)
-    return np.asarray(np.clip(0.5 * lit + 0.5 * height, 0.0, 1.0))
+    heights_m = ground_m.T
+    low_m, high_m = float(np.nanmin(heights_m)), float(np.nanmax(heights_m))
+    light = LightSource(315.0, 45.0).hillshade(heights_m, dx=along_step_m, dy=offset_step_m)
+    height = (heights_m - low_m) / max(high_m - low_m, 1e-9)
+    return np.asarray(0.5 + min((high_m - low_m) / _FLAT_M, 1.0) * (0.5 * (light + height) - 0.5))
 
 
 def draw_relief(
-    page: Page, axes: Axes, relief: Relief, length_m: float, scale: Scale, *, distance_limits: tuple[float, float]
+    axes: Axes, relief: Relief, length_m: float, scale: Scale, *, distance_limits: tuple[float, float]
 ) -> None:
     """Draw the ground from above along the path: A left, B right, the left side of the path on top."""
-    rows = np.arange(0, relief.along_m.size, max(1, relief.along_m.size // _MOST_ALONG))
-    columns = np.arange(0, relief.offset_m.size, max(1, relief.offset_m.size // _MOST_ACROSS))
-    along, offset, ground = relief.along_m[rows], relief.offset_m[columns], relief.ground_m[np.ix_(rows, columns)]
+    rows = slice(None, None, max(1, relief.along_m.size // _MOST_ALONG))
+    columns = slice(None, None, max(1, relief.offset_m.size // _MOST_ACROSS))
+    along, offset, ground = relief.along_m[rows], relief.offset_m[columns], relief.ground_m[rows, columns]
     left, right = scale.distance(float(offset[0])), scale.distance(float(offset[-1]))
     if np.isfinite(ground).any():
-        shade = hillshade(ground, float(along[1] - along[0]), float(offset[1] - offset[0]))
-        image = style.RELIEF_LOW + shade.T[..., None] * (style.RELIEF_HIGH - style.RELIEF_LOW)
-        image[np.isnan(image)] = 1.0
+        shade = brightness(ground, float(along[1] - along[0]), float(offset[1] - offset[0]))
         extent = (scale.distance(float(along[0])), scale.distance(float(along[-1])), right, left)
-        axes.imshow(image, extent=extent, aspect="auto", interpolation="bilinear")
+        axes.imshow(
+            shade, cmap=style.RELIEF, vmin=0.0, vmax=1.0, extent=extent, aspect="auto", interpolation="bilinear"
+        )
     axes.plot([0.0, scale.distance(length_m)], [0.0, 0.0], color="white", lw=3.0, solid_capstyle="butt")
     axes.plot([0.0, scale.distance(length_m)], [0.0, 0.0], color=style.RAY, lw=1.4, label="path")
-    axes.set_facecolor("#ffffff")
     axes.set_xlim(*distance_limits)
     axes.set_ylim(right, left)
-    ticks = nice_ticks(left, right, 5)
-    sides = [f"{abs(tick):g}{' L' if tick < 0 else ' R' if tick > 0 else ''}" for tick in ticks]
-    page.scale_side(axes, ticks, sides)
-    label_side(axes, f"left or right\nof path, {scale.distance_unit}", width_in=AXES_IN)
+    axes.grid(visible=False)
+    axes.yaxis.set_major_formatter(lambda value, _: f"{abs(value):g}{' L' if value < 0 else ' R' if value > 0 else ''}")
+    axes.set_ylabel(f"left or right\nof path, {scale.distance_unit}")
 
 
 def mark_on_relief(axes: Axes, places: tuple[Place, ...], scale: Scale, *, color: str) -> None:

@@ -10,7 +10,7 @@ from contextlib import AbstractContextManager
 from typing import Any
 
 import matplotlib
-import numpy as np
+from matplotlib.colors import LinearSegmentedColormap
 
 __all__ = [
     "BODY",
@@ -27,8 +27,7 @@ __all__ = [
     "MUTED",
     "PASS",
     "RAY",
-    "RELIEF_HIGH",
-    "RELIEF_LOW",
+    "RELIEF",
     "RULE_COLORS",
     "RULE_DASHES",
     "SMALL",
@@ -49,7 +48,7 @@ RAY = "#0b3c6f"
 ZONE = "#e6eff8"
 ZONE_EDGE = "#8fb3d6"
 ZONE_REQUIRED = "#b5d0ea"
-RELIEF_LOW, RELIEF_HIGH = np.array([0.42, 0.39, 0.35]), np.array([0.98, 0.96, 0.91])
+RELIEF = LinearSegmentedColormap.from_list("relief", ["#6b6359", "#faf5e8"])
 PASS = "#00594f"
 FAIL = "#b23a00"
 FAIL_TINT = "#f6dfd2"
@@ -63,7 +62,8 @@ SMALL = 7.0
 HEAD = 8.4
 """Sizes of type in points: running text, the smallest that is used anywhere, and headings of blocks."""
 
-DPI = 150
+DPI = 120
+"""Dots per inch of a PNG: the smallest type has 14 of them from line to line."""
 
 
 def defaults() -> AbstractContextManager[None]:
@@ -71,12 +71,27 @@ def defaults() -> AbstractContextManager[None]:
     own: dict[Any, Any] = {
         "font.family": ["DejaVu Sans"],
         "font.size": BODY,
+        "text.color": INK,
         "text.hinting": "none",
+        "text.parse_math": False,
+        "axes.edgecolor": MUTED,
+        "axes.linewidth": 0.6,
+        "axes.labelsize": BODY,
+        "axes.grid": True,
+        "axes.axisbelow": True,
+        "axes.formatter.useoffset": False,
+        "grid.color": GRID,
+        "grid.linewidth": 0.5,
+        "xtick.bottom": False,
+        "xtick.labelsize": SMALL,
+        "xtick.major.pad": 3.0,
+        "ytick.left": False,
+        "ytick.labelsize": SMALL,
+        "ytick.major.pad": 3.0,
         "svg.hashsalt": "hopwright",
         "svg.fonttype": "path",
         "pdf.fonttype": 42,
         "hatch.linewidth": 0.5,
-        "path.simplify": True,
     }
     plain: dict[Any, Any] = {key: value for key, value in matplotlib.rcParamsDefault.items() if "backend" not in key}
     return matplotlib.rc_context({**plain, **own})

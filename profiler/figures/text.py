@@ -2,54 +2,50 @@
 
 from __future__ import annotations
 
-from functools import lru_cache
-from pathlib import Path
+from functools import cache
 
 import matplotlib
 from matplotlib.font_manager import FontProperties, get_font
+from matplotlib.ft2font import FT2Font, LoadFlags
 
 __all__ = ["fitted", "font", "missing_letters", "width_in", "wrap"]
 
-_SLACK = 1.03
-"""Hinting moves letters to whole pixels: a line may come out a little wider than its letters add up to."""
 
-
-@lru_cache(maxsize=16)
+@cache
 def font(size_pt: float, bold: bool = False) -> FontProperties:
-    """Return the font that comes with the drawing library, by file, so that every machine draws the same."""
+    """Return the font that comes with the drawing library, by file: no search among those of the machine."""
     return FontProperties(fname=_file(bold), size=size_pt)
 
 
-@lru_cache(maxsize=2)
-def _file(bold: bool) -> Path:
-    name = "DejaVuSans-Bold.ttf" if bold else "DejaVuSans.ttf"
-    return Path(matplotlib.get_data_path()) / "fonts" / "ttf" / name
+def _file(bold: bool) -> str:
+    return f"{matplotlib.get_data_path()}/fonts/ttf/DejaVuSans{'-Bold' if bold else ''}.ttf"
 
 
-@lru_cache(maxsize=4096)
+def _face(bold: bool = False) -> FT2Font:
+    return get_font(_file(bold))
+
+
+@cache
 def _advance(letter: str, bold: bool) -> float:
-    """Advance of a letter as a share of the size of type."""
-    face = get_font(str(_file(bold)))
+    """Advance of a letter as a share of the size of type; that of an empty box for one that the font lacks."""
+    face = _face(bold)
     face.set_size(100.0, 72.0)
-    # a letter that the font lacks has index 0, the box that stands for it
-    return float(face.load_glyph(face.get_char_index(ord(letter))).linearHoriAdvance) / 65536.0 / 100.0
-
-
-@lru_cache(maxsize=8192)
-def _ems(words: str, bold: bool) -> float:
-    """Width of a text as a share of the size of type."""
-    return sum(_advance(letter, bold) for letter in words)
+    glyph = face.load_glyph(face.get_char_index(ord(letter)), flags=LoadFlags.NO_HINTING)
+    return float(glyph.linearHoriAdvance) / 65536.0 / 100.0
 
 
 def width_in(words: str, size_pt: float, *, bold: bool = False) -> float:
     """Width of one line, inches.
+
+    The sum over the letters leaves out kerning, which only draws them closer (up to 1.5 % of a line). Laying out every
+    word with the font library instead takes eighty times as long, some 50 ms a page.
 
     Examples
     --------
     >>> 0.5 < width_in("ten points", 10.0) < 0.9
     True
     """
-    return _SLACK * _ems(words, bold) * size_pt / 72.0
+    return sum(_advance(letter, bold) for letter in words) * size_pt / 72.0
 
 
 def wrap(words: str, room_in: float, size_pt: float, *, bold: bool = False, indent: str = "") -> list[str]:
@@ -60,34 +56,20 @@ def wrap(words: str, room_in: float, size_pt: float, *, bold: bool = False, inde
     >>> wrap("one two three", 0.5, 7.0, indent="  ")
     ['one two', '  three']
     """
-    room = room_in * 72.0 / (_SLACK * size_pt)
-    space = _ems(" ", bold)
     lines: list[str] = []
-    line, used = "", 0.0
+    line = ""
     for word in words.split():
-        width = _ems(word, bold)
-        if line.strip() and used + space + width <= room:
-            line, used = f"{line} {word}", used + space + width
-            continue
-        if line.strip():
+        longer = f"{line} {word}" if line else word
+        if line and width_in(longer, size_pt, bold=bold) > room_in:
             lines.append(line)
-            line, used = indent, _ems(indent, bold)
-        line, used = line + word, used + width
-        while used > room and len(line) > len(indent) + 1:
-            cut = _longest_prefix(line, room, bold)
+            longer = indent + word
+        line = longer
+        while width_in(line, size_pt, bold=bold) > room_in and len(line) > len(indent) + 1:
+            cuts = range(len(line) - 1, len(indent) + 1, -1)
+            cut = next((cut for cut in cuts if width_in(line[:cut], size_pt, bold=bold) <= room_in), len(indent) + 1)
             lines.append(line[:cut])
             line = indent + line[cut:]
-            used = _ems(line, bold)
     return [*lines, line]
-
-
-def _longest_prefix(line: str, room: float, bold: bool) -> int:
-    """How many letters fit, at least one beyond the indent."""
-    start = len(line) - len(line.lstrip()) + 1
-    for cut in range(start, len(line) + 1):
-        if _ems(line[:cut], bold) > room:
-            return max(start, cut - 1)
-    return len(line)
 
 
 def fitted(words: str, room_in: float, sizes_pt: tuple[float, ...], *, bold: bool = False) -> tuple[list[str], float]:
@@ -106,5 +88,5 @@ def missing_letters(words: str) -> str:
     >>> missing_letters("Łódź ν → ∞")
     ''
     """
-    face = get_font(str(_file(False)))
+    face = _face()
     return "".join(dict.fromkeys(letter for letter in words if letter > " " and not face.get_char_index(ord(letter))))

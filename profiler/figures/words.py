@@ -2,12 +2,13 @@
 
 from __future__ import annotations
 
+import math
 from typing import TYPE_CHECKING
 
 from profiler.figures.places import place_words
 from profiler.figures.scale import Scale, k_text, minus, position_text, required_text
 from profiler.figures.text import missing_letters
-from profiler.models import Hop, Site
+from profiler.models import ConfidenceChoice, Hop, Site
 from profiler.units import MINUTES_PER_YEAR
 
 if TYPE_CHECKING:
@@ -49,14 +50,16 @@ def verdict_sentence(study: Study, scale: Scale) -> str:
     else:
         rules, more = ("every rule", " or more") if count > 1 else ("the rule", "")
         sentence = f"Clears {rules} by {amount}{more}; tightest {where} from A ({required})"
-    if study.verdict.meets_objective is not None:
+    if study.verdict.has_margin is False:
+        sentence += "; no fade margin"
+    elif study.verdict.meets_objective is not None:
         sentence += f"; outage objective {'met' if study.verdict.meets_objective else 'not met'}"
     return sentence
 
 
 def hop_facts(hop: Hop, length_m: float, scale: Scale) -> str:
     """Give the hop in a line: frequency, polarization and length."""
-    return f"{hop.frequency_hz / 1e9:g} GHz {hop.polarization} · {scale.distance_text(length_m)}"
+    return f"{hop.frequency_hz / 1e9:g} GHz, {hop.polarization} polarization · {scale.distance_text(length_m)}"
 
 
 def chance_words(study: Study) -> str:
@@ -68,14 +71,43 @@ def chance_words(study: Study) -> str:
     return f"{value:.1f} % that all rules hold ({low:.1f} to {high:.1f} % by the draws)"
 
 
+def doubt_words(choice: ConfidenceChoice, scale: Scale) -> str:
+    """How wrong ground and cover are taken to be, and by what draws.
+
+    Examples
+    --------
+    >>> choice = ConfidenceChoice(4.0, "a guess", 150.0, cover_sigma_m=2.0, draws=500)
+    >>> doubt_words(choice, Scale())
+    'errors: ground sigma 4.0 m (a guess), cover sigma 2.0 m, exponential over 150.0 m; 500 draws, seed 1'
+    """
+    cover = [scale.height_text(choice.cover_sigma_m)] if choice.cover_sigma_m else []
+    cover += [f"{choice.cover_relative_sigma:.0%} of its height"] if choice.cover_relative_sigma else []
+    reach = choice.correlation_m
+    parts = [
+        f"ground sigma {scale.height_text(choice.terrain_sigma_m)} ({choice.terrain_source})",
+        *([f"cover sigma {' and '.join(cover)}"] if cover else []),
+        "alike along the path" if math.isinf(reach) else f"{choice.covariance} over {scale.height_text(reach)}",
+    ]
+    k = "; k by its percentiles" if choice.vary_k else ""
+    return f"errors: {', '.join(parts)}{k}; {choice.draws} draws, seed {choice.seed}"
+
+
+def survey_words(study: Study, scale: Scale) -> str:
+    """Where a survey removes the most doubt, the most useful place first; empty where nothing is to be gained."""
+    places = () if study.confidence is None else study.confidence.survey
+    texts = [f"{scale.distance(place.distance_m):.2f}" for place in places]
+    return f"{', '.join(texts)} {scale.distance_unit} from A" if texts else ""
+
+
 def hop_rows(study: Study, scale: Scale) -> list[tuple[str, str]]:
     """Rows of the hop in the title block."""
-    hop, line, terrain = study.hop, study.line, study.terrain
+    survey = survey_words(study, scale)
+    losses = [f"{each.loss_db:.1f} dB at {k_text(each.k)}" for each in study.diffraction]
     return [
-        ("frequency", f"{hop.frequency_hz / 1e9:g} GHz, {hop.polarization} polarization"),
-        ("distance", f"{scale.distance_text(line.distance_m)}, a point every {scale.height_text(line.spacing_m)}"),
-        ("heights above", terrain.vertical_datum or "a datum that the terrain does not state"),
+        ("heights above", study.terrain.vertical_datum or "a datum that the terrain does not state"),
         ("how sure", chance_words(study)),
+        *([("survey first", survey)] if survey else []),
+        *([("diffraction at k", ", ".join(losses))] if losses else []),
         *link_rows(study),
     ]
 
@@ -142,7 +174,7 @@ def critical_words(study: Study, scale: Scale) -> str:
 
 def ground_notes(study: Study, scale: Scale) -> list[str]:
     """Where ground and cover come from, and what was done to them."""
-    terrain = study.terrain
+    terrain, spacing = study.terrain, scale.height_text(study.line.spacing_m)
     names = [f"{each.info.path.name} ({each.share:.0%} of the points)" for each in terrain.sources]
     count = terrain.filled_points
     filled = [f"{count} points without data were interpolated between their neighbours (hatched)"] if count else []
@@ -151,21 +183,31 @@ def ground_notes(study: Study, scale: Scale) -> list[str]:
         for site, value in (("A", terrain.surveyed_difference_a_m), ("B", terrain.surveyed_difference_b_m))
         if value is not None
     ]
-    return [f"ground: {', '.join(names)}", *filled, *differences, *terrain.cover_notes]
+    ground = f"ground: {', '.join(names)}, {terrain.method}, a point every {spacing}"
+    corridor = study.governing.corridor
+    width = [] if corridor is None else [f"zone checked to {scale.height_text(corridor.half_width_m)} beside the path"]
+    return [ground, *filled, *differences, *terrain.cover_notes, *width]
 
 
-def profile_notes(study: Study) -> list[tuple[str, list[str]]]:
+_SAID_ELSEWHERE = (
+    "vertical datum: ",
+    "ground between cell centres: ",
+    "terrain error: ",
+    "air: ",
+    "availability is that of mode",
+)
+"""How assumptions begin that the page states in other words, or that concern the link alone."""
+
+
+def profile_notes(study: Study, scale: Scale) -> list[tuple[str, list[str]]]:
     """Headings and paragraphs at the foot of the profile: what clearance rests on, what to beware of, the maker."""
-    elsewhere = set(link_assumptions(study)) | set(study.terrain.cover_notes)
-    assumed = [each for each in study.assumptions if each not in elsewhere]
-    doubt = [] if study.confidence is None else list(study.confidence.method)
-    link = ["fade margin and outage: what they assume stands on their own figure"] if study.budget is not None else []
-    reading = [
-        f"profile: over the earth bulged at k = {k_text(study.governing.check.rule.k)}, that of the tightest rule",
-        "strip below it: every rule at its own k, the least over the width of its zone; lines leave at the top where "
-        "there is more clearance",
-    ]
-    return [("Reading", reading), *_notes(study, [*assumed, *doubt, *link], list(study.warnings))]
+    sites = (study.hop.site_a, study.hop.site_b)
+    given = {f"{site.name}: {note}" for site in sites for note in site.position_notes if note.startswith("given as")}
+    elsewhere = {*link_assumptions(study), *study.terrain.cover_notes, *given}
+    assumed = [each for each in study.assumptions if each not in elsewhere and not each.startswith(_SAID_ELSEWHERE)]
+    if study.hop.confidence is not None:
+        assumed.append(doubt_words(study.hop.confidence, scale))
+    return _notes(study, assumed, list(study.warnings))
 
 
 def link_assumptions(study: Study) -> list[str]:
@@ -219,9 +261,9 @@ def _notes(study: Study, assumed: list[str], beware: list[str]) -> list[tuple[st
 
 
 def provenance_words(study: Study) -> list[str]:
-    """Date, versions, hop file and rasters with the beginnings of their hashes."""
+    """Date, version, hop file and rasters with the beginnings of their hashes; the JSON document has all of it."""
     made = study.provenance
-    versions = ", ".join(f"{name} {version}" for name, version in made.versions)
+    maker = " ".join(made.versions[0])
     digest = f" (SHA-256 {made.hop_sha256[:12]}…)" if made.hop_sha256 else ""
     rasters = ", ".join(f"{name} {digest[:12]}…" for name, _, digest in made.rasters)
-    return [f"{made.created}; {versions}; hop file {made.hop_file}{digest}; rasters by SHA-256: {rasters}"]
+    return [f"{made.created}; {maker}; hop file {made.hop_file}{digest}; rasters by SHA-256: {rasters}"]
