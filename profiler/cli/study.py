@@ -68,7 +68,7 @@ def command(
     axes = {"feet": feet, "distance_limits": distance_limits, "height_limits": height_limits}
     drawn = [
         *rendered(figures, lambda: _profile(study, **axes)),
-        *rendered(margin_figures, lambda: _margins(study)),
+        *rendered(margin_figures, lambda: _margins(study, feet=feet)),
     ]
     if deliver(
         drawn,
@@ -89,11 +89,11 @@ def _profile(study: Study, **axes: Any) -> Any:
     return profile_figure(study, **axes)
 
 
-def _margins(study: Study) -> Any:
+def _margins(study: Study, *, feet: bool) -> Any:
     from profiler.figures import margin_figure
 
     if study.outage.curve is None:
         raise InputError(
             f"{study.hop.source}: --margin-figure: must have a [radio] with a threshold and [availability] to draw"
         )
-    return margin_figure(study)
+    return margin_figure(study, feet=feet)
