@@ -160,6 +160,15 @@ def test_the_rounded_obstacle_warns_of_a_profile_that_is_not_one_round_top():
     assert any("take spherical-earth or delta-bullington" in line for line in plain.warnings)
 
 
+def test_the_rounded_obstacle_warns_of_a_flat_top_whose_corners_bend_the_ray():
+    # little but the bulge of the earth rounds it: a radius of some 1000 km, over which 10 mrad take 10 km of the 3 there
+    mesa = np.interp(D, [0, 13.4e3, 13.5e3, 16.5e3, 16.6e3, 30e3], [0, 0, 150, 150, 0, 0])
+    (line,) = diffract("rounded-obstacle", D, mesa, 100.0, 100.0, 6e9, K).warnings
+    assert "the top from 13.500 to 16.500 km is too short for its radius" in line
+    hill = np.maximum(150 - (D - 15e3) ** 2 / (2 * 20e3), 0)
+    assert diffract("rounded-obstacle", D, hill, 100.0, 100.0, 6e9, K).warnings == ()
+
+
 def test_a_top_that_is_level_on_a_flat_earth_has_no_radius():
     plateau = np.where(np.abs(D - 15e3) < 500, 120.0, 0.0)
     (line,) = diffract("rounded-obstacle", D, plateau, 100.0, 100.0, 6e9, math.inf).warnings

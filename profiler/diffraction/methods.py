@@ -149,8 +149,13 @@ def _rounded_doubts(inputs: Inputs, found: RoundedLosses) -> list[str]:
             f"roundness m = {float(found.roundness):.1f} is above {MOST_ROUND:g}, where the fit of "
             "Rec. ITU-R P.526-15 §4.2 turns over: take spherical-earth or delta-bullington"
         )
+    first, last = (float(x) / 1000 for x in found.top_m)
+    if found.arc_m / 1000 > last - first:
+        lines.append(
+            f"the top from {first:.3f} to {last:.3f} km is too short for its radius, which bends the ray over "
+            f"{float(found.arc_m) / 1000:.3f} km: its corners count, and the loss is too high"
+        )
     if not found.isolated:
-        first, last = (float(x) / 1000 for x in found.top_m)
         lines.append(
             f"more than one obstacle: the horizon rays do not both touch the top from {first:.3f} to {last:.3f} km"
         )

@@ -27,6 +27,8 @@ class RoundedLosses(EdgeLosses):
     """The m of `rounding`; NaN where the radius is."""
     top_m: Float
     """Distances from A of the first and last point of the fitted top, `(hops, 2)`."""
+    arc_m: Float
+    """Length of the arc of that radius which turns one horizon ray into the other; NaN where the radius is."""
     isolated: NDArray[np.bool_]
     """Both horizon rays touch the fitted top, so that the path has this one obstacle only."""
 
@@ -135,5 +137,6 @@ def rounded_obstacle(
         sealed(hops, np.where(convex, radius, np.nan)),
         sealed(hops, np.where(convex, rounding(*ends, radius, hops.frequency_hz), np.nan)),
         sealed(hops, extent),
+        sealed(hops, np.where(convex, radius * np.maximum(top.rise_m, 0.0) * (1.0 / ends[0] + 1.0 / ends[1]), np.nan)),
         alone,
     )
