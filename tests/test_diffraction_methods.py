@@ -161,7 +161,7 @@ def test_the_rounded_obstacle_warns_of_a_profile_that_is_not_one_round_top():
 
 
 def test_the_rounded_obstacle_warns_of_a_flat_top_whose_corners_bend_the_ray():
-    # little but the bulge of the earth rounds it: a radius of some 1000 km, over which 10 mrad take 10 km of the 3 there
+    # little but the bulge of the earth rounds it: a radius of some 1000 km, over which 10 mrad take 10 km; 3 are there
     mesa = np.interp(D, [0, 13.4e3, 13.5e3, 16.5e3, 16.6e3, 30e3], [0, 0, 150, 150, 0, 0])
     (line,) = diffract("rounded-obstacle", D, mesa, 100.0, 100.0, 6e9, K).warnings
     assert "the top from 13.500 to 16.500 km is too short for its radius" in line
