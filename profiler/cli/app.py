@@ -92,7 +92,7 @@ def _settle_process() -> None:
     The shares are of the processor time of a study with its figure, each setting alone, by medians of 25 runs; the
     three together save 27 %.
     """
-    gc.set_threshold(200_000)  # 5 %: loading makes as many objects, all to stay; every 700 it would look through them
+    gc.set_threshold(500_000)  # 5 %: loading and figures make 250 000, to stay; every 700 it would look through them
     atexit.register(gc.freeze)  # 14 %: the last look for garbage, at the very end
     os.environ.setdefault("OPENBLAS_NUM_THREADS", "1")  # 10 %; before numpy loads: over so little, threads only wait
     if hasattr(signal, "SIGPIPE"):  # whoever stops reading ends the command, with no exit code of ours
