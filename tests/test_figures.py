@@ -304,7 +304,9 @@ def test_limits_that_are_none_are_refused(study, limits):
 
 
 def test_a_critical_point_outside_the_distances_is_said_to_be_there(study):
-    figure = profile_figure(study("fails"), distance_limits=(10.0, 20.0))
+    figure = profile_figure(study("fails"), distance_limits=(10.0, 30.0))
+    [masts] = [line for line in axes_of(figure, "profile").lines if line.get_label() == "antennas"]
+    assert masts.get_clip_on()  # that of A lies outside
     assert text_by_gid(figure, "critical").replace("\n", " ").endswith("It lies outside the distances drawn.")
 
 

@@ -1,4 +1,4 @@
-"""Figures of a study: results in, pictures out, nothing computed here."""
+"""Figures of a study: results in, pictures out; nothing about the hop is computed here."""
 
 from profiler.figures.clearance import profile_figure
 from profiler.figures.frontier import frontier_figure

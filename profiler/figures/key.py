@@ -51,7 +51,7 @@ def _entries(view: Scene) -> list[tuple[str, Sample]]:
         ("first Fresnel zone", _swatch(fc=style.ZONE, ec=style.ZONE_EDGE, lw=0.5)),
         ("must be free", _swatch(fc=style.ZONE_REQUIRED, ec=style.RAY, lw=0.7, ls=(0, (3, 1.5)))),
     ]
-    if (view.surface > view.ray - view.required).any():
+    if (view.surface > view.free).any():
         entries.append(("not free", _swatch(fc=style.FAIL, lw=0)))
     entries.append((f"ground at k = {k_text(view.k)}", _swatch(fc=style.GROUND, ec=style.GROUND_EDGE, lw=0.7)))
     if (view.surface > view.ground).any():

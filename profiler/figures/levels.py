@@ -73,7 +73,7 @@ def draw_levels(page: Page, left: float, top: float, width: float, steps: list[S
     names = [wrap(step.name, names_in - 0.1, style.BODY) for step in steps]
     depths = [len(lines) * style.BODY * LINE_IN + _PAD_IN for lines in names]
     tops = np.concatenate(([0.0], np.cumsum(depths)))
-    axes = page.axes(left + names_in, top, width - names_in - numbers_in, float(tops[-1]), label="levels", most=(7, 1))
+    axes = page.axes(left + names_in, top, width - names_in - numbers_in, float(tops[-1]), label="levels", most=(9, 1))
     change_at, level_at = left + width - 0.62, left + width
     page.words(change_at, top - style.SMALL * LINE_IN - 0.03, "dB", size=style.SMALL, color=style.MUTED, align="right")
     page.words(level_at, top - style.SMALL * LINE_IN - 0.03, "dBm", size=style.SMALL, color=style.MUTED, align="right")

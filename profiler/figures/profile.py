@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
-from typing import TYPE_CHECKING
+from typing import TYPE_CHECKING, Any
 
 import numpy as np
 from numpy.typing import NDArray
@@ -11,7 +11,6 @@ from numpy.typing import NDArray
 from profiler.figures import style
 from profiler.figures.places import rule_position
 from profiler.figures.scale import Scale, k_text
-from profiler.geometry import ray_height
 from profiler.models import frozen_array
 from profiler.units import Float
 
@@ -53,7 +52,8 @@ def thinned(values: Float, most: int = _MOST_POINTS) -> NDArray[np.intp]:
 class Scene:
     """What the profile draws, in the units it shows, thinned for drawing; heights carry the bulge of the governing k.
 
-    ``low`` and ``high`` bound the surface with 5 % and 95 % confidence; None without a confidence analysis.
+    Above ``free`` nothing may stand. ``low`` and ``high`` bound the surface with 5 % and 95 % confidence; None without
+    a confidence analysis.
     """
 
     x: Float
@@ -61,7 +61,7 @@ class Scene:
     surface: Float
     ray: Float
     f1: Float
-    required: Float
+    free: Float
     filled: NDArray[np.bool_]
     surveyed: tuple[Float, Float]
     reflections: tuple[Float, Float]
@@ -75,40 +75,29 @@ def scene(study: Study, scale: Scale) -> Scene:
     profile, result = study.profile, study.governing
     check = result.check
     keep = np.union1d(thinned(profile.surface_m), [place.index for place in result.places])
-    bulged, x = profile.ground_m + check.bulge_m, profile.distance_m
+    x, ground = profile.distance_m, profile.ground_m + check.bulge_m
+    surface = ground + profile.cover_m
+    free = surface + check.surplus_m
     mirrors = [each.distance_m for each in result.reflections if not each.screened]
-    band = _surface_band(study)
+    doubt = None if study.confidence is None else study.confidence.rules[rule_position(study, result)].surplus
 
     def shown(values: Float) -> Float:
         return frozen_array(scale.height(values[keep]))
 
     return Scene(
         x=frozen_array(scale.distance(x[keep])),
-        ground=shown(bulged),
-        surface=shown(bulged + profile.cover_m),
-        ray=shown(ray_height(x, study.centre_a_m, study.centre_b_m)),
+        ground=shown(ground),
+        surface=shown(surface),
+        ray=shown(surface + check.clearance_m),
         f1=shown(check.f1_m),
-        required=shown(check.required_m),
+        free=shown(free),
         filled=profile.filled[keep],
-        surveyed=(scale.distance(x[profile.surveyed]), scale.height(bulged[profile.surveyed])),
-        reflections=(
-            scale.distance(np.array(mirrors)),
-            scale.height(np.interp(mirrors, x, bulged + profile.cover_m)),
-        ),
-        low=None if band is None else shown(band[0]),
-        high=None if band is None else shown(band[1]),
+        surveyed=(scale.distance(x[profile.surveyed]), scale.height(ground[profile.surveyed])),
+        reflections=(scale.distance(np.array(mirrors)), scale.height(np.interp(mirrors, x, surface))),
+        low=None if doubt is None else shown(free - doubt.high_m),
+        high=None if doubt is None else shown(free - doubt.low_m),
         k=check.rule.k,
     )
-
-
-def _surface_band(study: Study) -> tuple[Float, Float] | None:
-    """Heights between which the bulged surface lies with 90 % confidence: what is left of the ray by the surplus."""
-    if study.confidence is None:
-        return None
-    check = study.governing.check
-    band = study.confidence.rules[rule_position(study, study.governing)].surplus
-    top = ray_height(study.profile.distance_m, study.centre_a_m, study.centre_b_m) - check.required_m
-    return top - band.high_m, top - band.low_m
 
 
 def draw_profile(
@@ -123,8 +112,7 @@ def draw_profile(
     bottom, top = _height_limits(view) if height_limits is None else height_limits
     base = min(bottom, float(view.ground.min()))
     axes.fill_between(view.x, view.ray - view.f1, view.ray + view.f1, fc=style.ZONE, ec=style.ZONE_EDGE, lw=0.5)
-    free = view.ray - view.required
-    axes.fill_between(view.x, free, view.ray, fc=style.ZONE_REQUIRED, lw=0)
+    axes.fill_between(view.x, view.free, view.ray, fc=style.ZONE_REQUIRED, lw=0)
     axes.fill_between(view.x, base, view.ground, fc=style.GROUND, lw=0)
     if (view.surface > view.ground).any():
         axes.fill_between(view.x, view.ground, view.surface, fc=style.COVER, ec=style.COVER_EDGE, lw=0.4)
@@ -132,29 +120,39 @@ def draw_profile(
         axes.fill_between(
             view.x, base, view.ground, where=_widened(view.filled), fc="none", ec=style.MUTED, hatch="xxxx", lw=0
         )
-    if (view.surface > free).any():
+    if (view.surface > view.free).any():
         axes.fill_between(
-            view.x, free, view.surface, where=view.surface > free, interpolate=True, fc=style.FAIL, lw=0, zorder=1.5
+            view.x,
+            view.free,
+            view.surface,
+            where=view.surface > view.free,
+            interpolate=True,
+            fc=style.FAIL,
+            lw=0,
+            zorder=1.5,
         )
     axes.plot(view.x, view.ground, color=style.GROUND_EDGE, lw=0.9, label="ground")
     if view.low is not None and view.high is not None:
         axes.fill_between(view.x, view.low, view.high, fc=style.INK, alpha=0.22, lw=0, zorder=2.4, label="band")
-    axes.plot(view.x, free, color=style.RAY, lw=0.8, dashes=(4, 2), label="required")
+    axes.plot(view.x, view.free, color=style.RAY, lw=0.8, dashes=(4, 2), label="required")
     axes.plot(view.x, view.ray, color=style.RAY, lw=1.4, label="ray")
-    _masts(axes, view)
     axes.plot(*view.surveyed, ls="", marker="s", ms=3.6, mfc="white", mec=style.INK, mew=0.8, label="surveyed")
     axes.plot(*view.reflections, ls="", marker="D", ms=3.4, mfc="white", mec=style.RAY, mew=0.8, label="reflections")
     axes.set_xlim(*distance_limits)
     axes.set_ylim(bottom, top)
+    _masts(axes, view)
     axes.set_ylabel(f"height above datum, {scale.height_unit},\nwith the bulge at k = {k_text(view.k)}")
     axes.tick_params(labelbottom=False)
 
 
 def _masts(axes: Axes, view: Scene) -> None:
-    """Draw the antennas' supports from the ground to the ray at both ends."""
+    """Draw the antennas' supports from the ground to the ray at both ends, over the edges where the limits hold all."""
     x, ground, ray = view.x[[0, -1]], view.ground[[0, -1]], view.ray[[0, -1]]
-    axes.vlines(x, ground, ray, color=style.INK, lw=2.2, clip_on=False, zorder=3)
-    axes.plot(x, ray, ls="", marker="o", ms=4.2, mfc="white", mec=style.INK, mew=1.1, clip_on=False, zorder=4)
+    (left, right), (bottom, top) = axes.get_xlim(), axes.get_ylim()
+    cut = bool(left > x[0] or right < x[1] or bottom > ground.min() or top < ray.max())
+    axes.vlines(x, ground, ray, color=style.INK, lw=2.2, clip_on=cut, zorder=3)
+    look: dict[str, Any] = {"marker": "o", "ms": 4.2, "mfc": "white", "mec": style.INK, "mew": 1.1}
+    axes.plot(x, ray, ls="", clip_on=cut, zorder=4, label="antennas", **look)
 
 
 def _widened(filled: NDArray[np.bool_]) -> NDArray[np.bool_]:
