@@ -141,7 +141,8 @@ class TerrainChoice:
     """Where ground heights come from and how they are read.
 
     ``spacing_m`` None means half the finest cell under the path; ``vertical_datum`` and ``height_unit``
-    ("m", "ft") are those of rasters that do not say it themselves.
+    ("m", "ft") are those of rasters that do not say it themselves. Of rasters of one resolution the one whose path
+    stands first answers. ``voids_are_sea`` takes cells without a height for the sea, at 0 m.
     """
 
     paths: tuple[Path, ...]
@@ -151,6 +152,8 @@ class TerrainChoice:
     allow_mixed_datums: bool = False
     vertical_datum: str | None = None
     height_unit: str | None = None
+    allow_network: bool = False
+    voids_are_sea: bool = False
 
 
 @dataclass(frozen=True, slots=True)
@@ -225,7 +228,8 @@ class RadioMode:
 
     ``noise_temperature_k`` is that of the whole receiving system (antenna and receiver), so N0 = k_B·T; a noise figure
     F means 290 K·F. ``bit_rate_bps`` is the rate of information bits and ``coding_gain_db`` is in Eb/N0 of those bits.
-    ``power_dbm`` replaces the power of both terminals in this mode.
+    ``power_dbm`` replaces the power of both terminals in this mode. ``objective`` is what this mode must meet, in place
+    of the hop's.
     """
 
     name: str
@@ -240,6 +244,7 @@ class RadioMode:
     coding_gain_db: float = 0.0
     implementation_loss_db: float = 0.0
     signature: Signature | None = None
+    objective: Objective | None = None
 
     def __post_init__(self) -> None:
         for name in ("threshold_dbm", "power_dbm"):
@@ -428,6 +433,9 @@ class ConfidenceChoice:
     the whole path. ``cover_correlation_m`` is the same for the cover, None meaning the terrain's. ``site_sigma_m`` is
     the error of the ground at sites known better than the raster, None meaning that they share the raster's error.
     The cover's error is ``cover_sigma_m`` and ``cover_relative_sigma`` times its height, added in quadrature.
+    ``terrain_offset_sigma_m`` is the part of the terrain's error that a whole neighbourhood shares, beside the local
+    ``terrain_sigma_m``. ``step_m`` is the step at which local errors are drawn, None meaning the raster's cell.
+    ``minimum_chance`` is the chance of clearing under which a hop that clears on the map is not sure to pass.
     """
 
     terrain_sigma_m: float
@@ -438,11 +446,18 @@ class ConfidenceChoice:
     cover_sigma_m: float = 0.0
     cover_relative_sigma: float = 0.0
     cover_correlation_m: float | None = None
+    minimum_chance: float = 0.9
+    terrain_offset_sigma_m: float = 0.0
+    step_m: float | None = None
     vary_k: bool = False
     draws: int = 2000
     seed: int = 1
 
     def __post_init__(self) -> None:
+        _require(0.5 <= self.minimum_chance < 1, "minimum_chance", self.minimum_chance, "0.5 to under 1")
+        offset, step = self.terrain_offset_sigma_m, self.step_m
+        _require(0 <= offset <= 100, "terrain_offset_sigma_m", offset, "0 to 100 m")
+        _require(_positive_or_none(step), "step_m", step, "more than 0 m")
         _require(0 <= self.terrain_sigma_m <= 100, "terrain_sigma_m", self.terrain_sigma_m, "0 to 100 m")
         _require(self.correlation_m >= 0, "correlation_m", self.correlation_m, "0 m or more")
         site = 0.0 if self.site_sigma_m is None else self.site_sigma_m
@@ -518,3 +533,9 @@ class Profile:
     def surface_m(self) -> Float:
         """Ground plus cover, above the vertical datum."""
         return self.ground_m + self.cover_m
+
+    @property
+    def weight_m(self) -> Float:
+        """Length of the path that each point stands for, metres: points are not equally spaced, so means need it."""
+        step = np.diff(self.distance_m)
+        return np.asarray(0.5 * (np.append(step, 0.0) + np.append(0.0, step)))

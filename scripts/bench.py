@@ -30,9 +30,9 @@ from profiler.heights import clearing_region, least_ray
 from profiler.hopfile import load_hop
 from profiler.models import Hop, Rule, Site, TerrainChoice
 from profiler.path import PathLine, trace
+from profiler.plan import plan_heights
 from profiler.study import Study, run_study
 from profiler.study.ground import read_ground
-from profiler.study.plan import plan_heights
 from profiler.terrain import SourceUse, open_terrain
 
 ROOT = Path(__file__).resolve().parent.parent

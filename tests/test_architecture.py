@@ -27,6 +27,7 @@ RANKS = {
     "heights": 7,
     "confidence": 7,
     "study": 8,
+    "plan": 9,
     "figures": 10,
     "cli": 11,
 }

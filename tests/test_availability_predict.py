@@ -10,7 +10,7 @@ from hypothesis import strategies as st
 from profiler.availability import MECHANISMS, PathFacts, outage_curve, outage_model, predict
 from profiler.availability.months import worst_month_from_year
 from profiler.availability.multipath import fade_percent
-from profiler.availability.rain import rain_percent
+from profiler.availability.rain_outage import rain_percent
 from profiler.errors import InputError
 from profiler.models import AvailabilityChoice, DiversityChoice, Objective, Signature
 

@@ -10,7 +10,7 @@ from hypothesis import strategies as st
 
 from profiler.atmosphere import rain_attenuation, rain_coefficients
 from profiler.availability.months import worst_month_from_year, year_from_worst_month
-from profiler.availability.rain import effective_distance, rain_fade, rain_percent
+from profiler.availability.rain_outage import effective_distance, rain_fade, rain_percent
 from profiler.errors import InputError
 
 needs_itur = pytest.mark.skipif(find_spec("itur") is None, reason="the second opinion needs the itur package")

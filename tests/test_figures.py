@@ -16,7 +16,7 @@ from rasterio.transform import Affine
 
 from profiler.errors import InputError
 from profiler.figures import FORMATS, frontier_figure, margin_figure, profile_figure, render, style
-from profiler.figures.places import spread
+from profiler.figures.place_labels import spread
 from profiler.figures.profile import thinned
 from profiler.figures.scale import Scale
 from profiler.figures.strips import brightness, rule_look
@@ -39,9 +39,9 @@ from profiler.models import (
     TerrainChoice,
     TowerChoice,
 )
+from profiler.plan import plan_heights
 from profiler.study import run_study
 from profiler.study.outage import OutageResult
-from profiler.study.plan import plan_heights
 from profiler.units import FOOT_M, STATUTE_MILE_M
 
 SAMPLE = Path(__file__).resolve().parent.parent / "sample_dem"

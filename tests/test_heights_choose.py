@@ -11,7 +11,7 @@ from hypothesis import strategies as st
 from profiler.errors import InputError
 from profiler.geometry import ROUNDING_M
 from profiler.heights import Choice, NoPair, cheapest, clearing_region, least_other, round_up, surplus
-from profiler.heights.positions import all_positions, free_positions, height_cost
+from profiler.heights.tower_positions import all_positions, free_positions, height_cost
 from profiler.models import TowerChoice
 
 FOOT_M = 0.3048

@@ -27,7 +27,7 @@ from profiler.heights import (
     mounting_sheet,
     surplus,
 )
-from profiler.heights.positions import free_positions
+from profiler.heights.tower_positions import free_positions
 from profiler.models import Rule, TowerChoice
 from profiler.units import MEAN_EARTH_RADIUS_M
 

@@ -777,7 +777,7 @@ def test_starter_sites_stand_in_the_sample_country():
         (models.DiversityChoice, tables.DiversityTable, set()),
         (models.HeightsChoice, tables.HeightsTable, {"tower_a", "tower_b"}),
         (models.TowerChoice, tables.TowerTable, set()),
-        (models.ConfidenceChoice, tables.ConfidenceTable, set()),
+        (models.ConfidenceChoice, tables.ConfidenceTable, {"minimum_chance"}),
         (models.Rule, tables.RuleTable, set()),
         (models.Site, tables.SiteTable, {"surveyed_ground_m", "position_notes"}),
         (

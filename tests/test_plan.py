@@ -30,9 +30,8 @@ from profiler.models import (
     TerrainChoice,
     TowerChoice,
 )
+from profiler.plan import heights_document, plan_heights
 from profiler.study import run_study
-from profiler.study.plan import plan_heights
-from profiler.study.plan_document import heights_document
 from profiler.study.requirements import lower_antennas
 
 CELL = 1 / 3600

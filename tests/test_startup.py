@@ -50,7 +50,7 @@ def plain(tmp_path_factory):
 def test_a_hop_of_rules_loads_no_other_stage_and_no_figure(plain):
     _, modules = plain
     stages = {f"profiler.{name}" for name in ("budget", "receiver", "availability", "confidence", "heights", "climate")}
-    assert modules.isdisjoint(stages | {"profiler.figures", "profiler.study.plan", "matplotlib", "scipy", "itur"})
+    assert modules.isdisjoint(stages | {"profiler.figures", "profiler.plan.compose", "matplotlib", "scipy", "itur"})
     assert {"profiler.study.run", "profiler.terrain", "rasterio", "pyproj"} <= modules
 
 

@@ -37,9 +37,8 @@ from profiler.models import (
     TerrainChoice,
     TowerChoice,
 )
+from profiler.plan import heights_document, plan_heights
 from profiler.study import open_hop_terrain, point_table, run_study, to_document
-from profiler.study.plan import plan_heights
-from profiler.study.plan_document import heights_document
 
 CELL = 1 / 3600
 ROWS, COLUMNS = 720, 61

@@ -7,6 +7,7 @@ from dataclasses import dataclass
 from typing import get_args
 
 from profiler.availability.facts import PathFacts
+from profiler.availability.fitted_ranges import p530_warnings, vigants_warnings
 from profiler.availability.multipath import (
     geoclimatic_factor_17,
     geoclimatic_factor_17_quick,
@@ -16,7 +17,6 @@ from profiler.availability.multipath import (
     year_conversion,
 )
 from profiler.availability.notes import InputUsed, Notes
-from profiler.availability.ranges import p530_warnings, vigants_warnings
 from profiler.availability.vigants import climate_factor, occurrence_vigants, season_share
 from profiler.errors import InputError
 from profiler.models import AvailabilityChoice, MultipathMethod

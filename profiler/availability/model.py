@@ -9,11 +9,11 @@ from profiler.atmosphere import rain_attenuation, rain_coefficients
 from profiler.availability.diversity import improvement_p530, protected_selective
 from profiler.availability.facts import PathFacts
 from profiler.availability.fading import GIVEN, MultipathFading, multipath_fading
+from profiler.availability.fitted_ranges import diversity_warnings, rain_warnings
 from profiler.availability.multipath import OCCURRENCE_LIMIT_PERCENT
 from profiler.availability.notes import InputUsed, Notes
 from profiler.availability.obstruction import obstruction_percent
-from profiler.availability.rain import effective_distance
-from profiler.availability.ranges import diversity_warnings, rain_warnings
+from profiler.availability.rain_outage import effective_distance
 from profiler.availability.selective import multipath_activity, selective_percent
 from profiler.availability.vigants import improvement_vigants
 from profiler.errors import InputError

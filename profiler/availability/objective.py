@@ -9,7 +9,7 @@ from typing import Literal
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
-from profiler.availability.gaps import holds_at_low_k, reasons_open
+from profiler.availability.missing_inputs import holds_at_low_k, reasons_open
 from profiler.availability.model import OutageModel
 from profiler.availability.outages import MECHANISMS, Mechanism, Outages, outages_at
 from profiler.models import Objective

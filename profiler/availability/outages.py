@@ -13,7 +13,7 @@ from profiler.availability.model import OutageModel
 from profiler.availability.months import worst_month_from_year, year_from_worst_month
 from profiler.availability.multipath import fade_percent
 from profiler.availability.obstruction import obstruction_percent, unknown_percent
-from profiler.availability.rain import rain_percent
+from profiler.availability.rain_outage import rain_percent
 from profiler.checks import not_negative
 from profiler.models import frozen_array
 from profiler.units import Float

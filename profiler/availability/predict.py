@@ -7,12 +7,12 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import ArrayLike
 
-from profiler.availability.gaps import obstruction_notes
+from profiler.availability.missing_inputs import obstruction_notes
 from profiler.availability.model import OutageModel
 from profiler.availability.notes import InputUsed, Notes
 from profiler.availability.objective import LARGEST_MARGIN_DB, Limit, ObjectiveResult, judge, limit_of
 from profiler.availability.outages import MECHANISMS, Mechanism, Outages, outages_at
-from profiler.availability.rain import PERCENT_RANGE
+from profiler.availability.rain_outage import PERCENT_RANGE
 from profiler.checks import finite
 from profiler.models import MultipathMethod, frozen_array
 from profiler.units import MINUTES_PER_YEAR, Float

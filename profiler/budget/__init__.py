@@ -4,13 +4,13 @@ Tables add up: every loss is a negative line, every gain a positive one, and the
 """
 
 from profiler.budget.antenna import dish_diameter, dish_gain, far_field_distance
-from profiler.budget.inverse import Answer, least_gain, least_power, longest_free_space_range, smallest_dish
-from profiler.budget.link import Budget, Direction, ModeBudget, Way, free_space_loss, link_budget, way_name
+from profiler.budget.budget_lines import Budget, Direction, ModeBudget, Way, free_space_loss, link_budget, way_name
+from profiler.budget.inverse import InverseAnswer, least_gain, least_power, longest_free_space_range, smallest_dish
 
 __all__ = [
-    "Answer",
     "Budget",
     "Direction",
+    "InverseAnswer",
     "ModeBudget",
     "Way",
     "dish_diameter",

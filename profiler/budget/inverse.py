@@ -8,21 +8,21 @@ from dataclasses import dataclass, replace
 from typing import Literal
 
 from profiler.budget.antenna import dish_diameter, near_field_warnings
-from profiler.budget.link import AIMED, Way, diameters, ends_of, free_space_loss, path_lines, table, total
+from profiler.budget.budget_lines import AIMED, Way, diameters, ends_of, free_space_loss, path_lines, table, total
 from profiler.checks import finite
 from profiler.errors import InputError
 from profiler.models import Radio, RadioMode, Terminal
 from profiler.receiver import Line, Threshold, mode_threshold
 from profiler.units import wavelength
 
-__all__ = ["Answer", "least_gain", "least_power", "longest_free_space_range", "smallest_dish"]
+__all__ = ["InverseAnswer", "least_gain", "least_power", "longest_free_space_range", "smallest_dish"]
 
 Resized = Literal["both", "transmitter", "receiver"]
 
 
 @dataclass(frozen=True, slots=True)
-class Answer:
-    """Answer to an inverse question: ``value`` in ``unit``.
+class InverseAnswer:
+    """InverseAnswer to an inverse question: ``value`` in ``unit``.
 
     ``lines`` add up to what was solved for, named by ``solved_for``, in dB, dBm or dBi; one that stands on the other
     side of the budget has its sign turned and is named "less …". ``threshold_lines`` add up to the threshold.
@@ -45,7 +45,7 @@ def longest_free_space_range(
     mode: str | None = None,
     bit_error_ratio: float | None = None,
     fade_margin_db: float = 0.0,
-) -> Answer:
+) -> InverseAnswer:
     """Longest distance over which a mode still works in free space: no gases, no obstacles.
 
     Bit error ratio → Eb/N0 → C/N0 → received level → free-space loss → distance, d = λ/(4π)·10^(loss/20).
@@ -67,7 +67,7 @@ def longest_free_space_range(
 
     Returns
     -------
-    Answer
+    InverseAnswer
         In m; its lines add up to the free-space loss that may be spent.
 
     Raises
@@ -91,7 +91,7 @@ def longest_free_space_range(
     lines = (*table(radio, direction, chosen, frequency_hz, ()), *_negated(wanted))
     per_metre_db = float(free_space_loss(1.0, frequency_hz))
     distance_m = float(10.0 ** ((total(lines) - per_metre_db) / 20.0))
-    return Answer(
+    return InverseAnswer(
         distance_m,
         "m",
         "free-space loss that may be spent",
@@ -113,7 +113,7 @@ def least_power(
     mode: str | None = None,
     bit_error_ratio: float | None = None,
     fade_margin_db: float = 0.0,
-) -> Answer:
+) -> InverseAnswer:
     """Least transmit power that leaves a mode the wanted fade margin.
 
     Parameters
@@ -127,7 +127,7 @@ def least_power(
 
     Returns
     -------
-    Answer
+    InverseAnswer
         In dBm; its lines add up to it.
 
     Raises
@@ -150,7 +150,7 @@ def least_power(
     path = path_lines(distance_m, frequency_hz, gas_db, diffraction_db)
     known = [line for line in table(radio, direction, chosen, frequency_hz, path) if line.unit != "dBm"]
     lines = (*wanted, *_negated(known))
-    return Answer(
+    return InverseAnswer(
         total(lines),
         "dBm",
         f"transmit power {ends_of(direction)[0]}",
@@ -173,7 +173,7 @@ def least_gain(
     mode: str | None = None,
     bit_error_ratio: float | None = None,
     fade_margin_db: float = 0.0,
-) -> Answer:
+) -> InverseAnswer:
     """Least antenna gain, the same at both ends or at one of them, that leaves a mode the wanted fade margin.
 
     Parameters
@@ -189,7 +189,7 @@ def least_gain(
 
     Returns
     -------
-    Answer
+    InverseAnswer
         Gain of one antenna in dBi; its lines add up to what the resized antennas need together.
 
     Raises
@@ -216,7 +216,7 @@ def least_gain(
     path = path_lines(distance_m, frequency_hz, gas_db, diffraction_db)
     forward = table(_isotropic(radio, new), direction, chosen, frequency_hz, path)
     lines = (*wanted, *_negated(line for line in forward if line.unit != "dBi" or line.name[-1] not in new))
-    return Answer(
+    return InverseAnswer(
         total(lines) / len(new),
         "dBi",
         "gain of both antennas together" if resized == "both" else f"antenna gain {new[0]}",
@@ -240,7 +240,7 @@ def smallest_dish(
     mode: str | None = None,
     bit_error_ratio: float | None = None,
     fade_margin_db: float = 0.0,
-) -> Answer:
+) -> InverseAnswer:
     """Smallest dish, the same at both ends or at one of them, that leaves a mode the wanted fade margin.
 
     Parameters
@@ -252,7 +252,7 @@ def smallest_dish(
 
     Returns
     -------
-    Answer
+    InverseAnswer
         Diameter in m; its lines add up to the gain in dBi that the resized antennas need together.
 
     Raises

@@ -14,7 +14,14 @@ from typing import Any, NoReturn
 import click
 
 from profiler import __version__
-from profiler.cli import heights, losses, reach, starter, study, terrain
+from profiler.cli import (
+    heights_command,
+    losses_command,
+    reach_command,
+    starter_command,
+    study_command,
+    terrain_command,
+)
 from profiler.errors import HopwrightError
 
 __all__ = ["main", "root"]
@@ -50,7 +57,14 @@ def root() -> None:
     """
 
 
-for _module in (study, heights, losses, reach, terrain, starter):  # each loads what it needs when it runs
+for _module in (
+    study_command,
+    heights_command,
+    losses_command,
+    reach_command,
+    terrain_command,
+    starter_command,
+):  # each loads what it needs when it runs
     root.add_command(_module.command)
 
 

@@ -13,7 +13,7 @@ if TYPE_CHECKING:
 
     from profiler.heights import LimitHeights, Stretch
     from profiler.models import Rule, TowerChoice
-    from profiler.study.plan import HeightsPlan
+    from profiler.plan import HeightsPlan
     from profiler.study.requirements import Source
 
 __all__ = ["show_heights"]

@@ -4,8 +4,8 @@ Errors are true minus given height, in metres; ranges of correlation are practic
 """
 
 from profiler.confidence.assess import assess
-from profiler.confidence.doubt import draw_doubt, surplus_errors
-from profiler.confidence.result import Chance, Confidence, SureHeights
+from profiler.confidence.draws import draw_doubt, surplus_errors
+from profiler.confidence.findings import Chance, Confidence, SureHeights
 from profiler.confidence.summary import chance_of
 
 __all__ = [

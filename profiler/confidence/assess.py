@@ -8,10 +8,10 @@ import numpy as np
 from numpy.typing import ArrayLike
 
 from profiler.checks import not_negative
-from profiler.confidence.doubt import draw_doubt
+from profiler.confidence.draws import draw_doubt
 from profiler.confidence.fields import Covariance, Draws
+from profiler.confidence.findings import Confidence
 from profiler.confidence.method import describe
-from profiler.confidence.result import Confidence
 from profiler.confidence.summary import chance_of, rule_confidence, sure_heights
 from profiler.confidence.survey import rank_points
 from profiler.confidence.tally import Doubt, Nominal, run_draws

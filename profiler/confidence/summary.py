@@ -5,9 +5,9 @@ from __future__ import annotations
 import numpy as np
 
 from profiler.confidence.fields import Draws
-from profiler.confidence.result import Chance, DoubtShares, RuleConfidence, SureHeights
+from profiler.confidence.findings import Chance, DoubtShares, RuleConfidence, SureHeights
 from profiler.confidence.shares import shapley_shares
-from profiler.confidence.tally import BAND, Tally
+from profiler.confidence.tally import BAND, DrawTally
 from profiler.models import Rule
 
 __all__ = ["chance_of", "rule_confidence", "sure_heights"]
@@ -26,7 +26,7 @@ def chance_of(least_m: Draws) -> Chance:
     return Chance(share, float(min(share, centre - half)), float(max(share, centre + half)))
 
 
-def rule_confidence(index: int, rule: Rule, result: Tally) -> RuleConfidence:
+def rule_confidence(index: int, rule: Rule, result: DrawTally) -> RuleConfidence:
     """Gather what the draws say of one rule."""
     varied = result.least_varied_m
     least = np.sort(result.least_m[index])
@@ -48,7 +48,7 @@ def rule_confidence(index: int, rule: Rule, result: Tally) -> RuleConfidence:
     )
 
 
-def sure_heights(chance: float, result: Tally, antenna_a_m: float, antenna_b_m: float) -> SureHeights:
+def sure_heights(chance: float, result: DrawTally, antenna_a_m: float, antenna_b_m: float) -> SureHeights:
     """Order statistics of what the draws need: the least raise that meets the rules in at least that share of them."""
     draws = result.all_m.size
     rank = int(np.ceil(chance * draws)) - 1

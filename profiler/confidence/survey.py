@@ -5,7 +5,7 @@ from __future__ import annotations
 import numpy as np
 
 from profiler.confidence.fields import Draws
-from profiler.confidence.result import SurveyPoint
+from profiler.confidence.findings import SurveyPoint
 from profiler.confidence.shares import NO_VARIANCE_M2
 from profiler.units import Float
 

@@ -7,11 +7,11 @@ from dataclasses import dataclass
 import numpy as np
 
 from profiler.confidence.fields import Draws
-from profiler.confidence.result import Band
+from profiler.confidence.findings import Band
 from profiler.models import frozen_array
 from profiler.units import Float
 
-__all__ = ["BAND", "Doubt", "Nominal", "Tally", "run_draws"]
+__all__ = ["BAND", "Doubt", "DrawTally", "Nominal", "run_draws"]
 
 BAND = (0.05, 0.5, 0.95)
 
@@ -44,7 +44,7 @@ class Doubt:
 
 
 @dataclass(frozen=True, slots=True, eq=False)
-class Tally:
+class DrawTally:
     """What the draws gave.
 
     ``fixed`` are the bands of each rule at its own k, ``varied`` with k varying. ``least_m`` and ``least_varied_m``
@@ -65,7 +65,7 @@ class Tally:
     mixed_m: dict[str, Draws]
 
 
-def run_draws(nominal: Nominal, doubt: Doubt) -> Tally:
+def run_draws(nominal: Nominal, doubt: Doubt) -> DrawTally:
     """Fold every draw over the path.
 
     The surplus of a draw at a point is the nominal one plus (1 - t)·eA + t·eB - e - c: the antennas stand on the
@@ -100,7 +100,7 @@ def run_draws(nominal: Nominal, doubt: Doubt) -> Tally:
             _fold(least_varied, moving, varied[:, block])
         for name, folded in mixed.items():
             _fold(folded, _mix(parts, name), (varied if with_k else surplus)[:, block])
-    return Tally(
+    return DrawTally(
         fixed=_bands(nominal.surplus_m, band),
         varied=_bands(varied.astype(float), band_varied) if with_k else (),
         least_m=least,

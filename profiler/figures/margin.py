@@ -15,7 +15,7 @@ from profiler.errors import InputError
 from profiler.figures import style
 from profiler.figures.blocks import columns_at, foot, head, heading, rows, titles
 from profiler.figures.levels import draw_levels, steps_of
-from profiler.figures.outage import draw_outage, percent_text
+from profiler.figures.outage_panel import draw_outage, percent_text
 from profiler.figures.page import LINE_IN, MARGIN_IN, PAGE_WIDTH_IN, Page
 from profiler.figures.scale import Scale, minus
 from profiler.figures.words import hop_facts, link_notes, outage_words

@@ -9,7 +9,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from profiler.figures import style
-from profiler.figures.places import rule_position
+from profiler.figures.place_labels import rule_position
 from profiler.figures.scale import Scale, k_text
 from profiler.models import frozen_array
 from profiler.units import Float

@@ -7,7 +7,7 @@ from typing import TYPE_CHECKING
 from profiler.figures import style
 from profiler.figures.blocks import heading, rows
 from profiler.figures.page import LINE_IN, MARGIN_IN, PAGE_WIDTH_IN, Page
-from profiler.figures.places import rule_position, rules_by_surplus
+from profiler.figures.place_labels import rule_position, rules_by_surplus
 from profiler.figures.scale import Scale
 from profiler.figures.strips import rule_look
 from profiler.figures.words import ground_notes, hop_rows, rule_lines, site_rows

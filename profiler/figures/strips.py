@@ -9,7 +9,7 @@ import numpy as np
 from matplotlib.colors import LightSource
 
 from profiler.figures import style
-from profiler.figures.places import rule_position, rules_by_surplus, surplus_drawn
+from profiler.figures.place_labels import rule_position, rules_by_surplus, surplus_drawn
 from profiler.figures.profile import thinned
 from profiler.figures.scale import Scale
 from profiler.units import Float

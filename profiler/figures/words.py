@@ -5,7 +5,7 @@ from __future__ import annotations
 import math
 from typing import TYPE_CHECKING
 
-from profiler.figures.places import place_words
+from profiler.figures.place_labels import place_words
 from profiler.figures.scale import Scale, k_text, minus, position_text, required_text
 from profiler.figures.text import missing_letters
 from profiler.models import ConfidenceChoice, Hop, Site

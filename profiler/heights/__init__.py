@@ -4,9 +4,8 @@ Heights are metres above the ground of their own site unless a name says ``centr
 """
 
 from profiler.heights.choose import Choice, NoPair, cheapest, cheapest_of, least_other
-from profiler.heights.diversity import DiversityEnd, check_diversity, lower_rays, lower_rules
 from profiler.heights.frontier import Stretch, frontier_stretches
-from profiler.heights.positions import both_free, round_up
+from profiler.heights.lower_antenna import DiversityEnd, check_diversity, lower_rays, lower_rules
 from profiler.heights.region import (
     ClearingRegion,
     Least,
@@ -20,6 +19,7 @@ from profiler.heights.region import (
 from profiler.heights.search import LimitHeights, cheapest_by_trial, heights_within, loss_excess
 from profiler.heights.sheet import MountingSheet, mounting_sheet
 from profiler.heights.sure import DrawnRegions, drawn_regions, least_b_sure, least_surplus_drawn
+from profiler.heights.tower_positions import both_free, round_up
 
 __all__ = [
     "Choice",

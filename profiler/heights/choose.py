@@ -9,8 +9,8 @@ import numpy as np
 
 from profiler.errors import InputError
 from profiler.geometry import ROUNDING_M, tight_places
-from profiler.heights.positions import both_free, free_positions, height_cost
 from profiler.heights.region import ClearingRegion, Least, least_a_for, least_b_for, surplus
+from profiler.heights.tower_positions import both_free, free_positions, height_cost
 from profiler.models import TowerChoice
 from profiler.units import Float
 

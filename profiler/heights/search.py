@@ -12,7 +12,7 @@ import numpy as np
 
 from profiler.checks import not_negative
 from profiler.heights.choose import Choice, NoPair, cheapest_of, no_position
-from profiler.heights.positions import both_free, height_cost
+from profiler.heights.tower_positions import both_free, height_cost
 from profiler.models import TowerChoice, frozen_array
 from profiler.units import Float
 

@@ -12,7 +12,7 @@ from numpy.typing import ArrayLike
 from profiler.errors import InputError
 from profiler.geometry import ROUNDING_M, CorridorCheck, RuleCheck, check_corridor, check_rule
 from profiler.heights.choose import NoPair
-from profiler.heights.positions import both_free, round_up
+from profiler.heights.tower_positions import both_free, round_up
 from profiler.models import Rule, TowerChoice
 from profiler.units import FOOT_M
 

@@ -6,7 +6,7 @@ The only user of pydantic, which is imported when a hop is read, not before.
 from profiler.hopfile.edit import with_antennas
 from profiler.hopfile.presets import PRESETS
 from profiler.hopfile.reader import load_hop, parse_hop, quick_hop
-from profiler.hopfile.starter import starter
+from profiler.hopfile.starter_file import starter
 
 __all__ = [
     "PRESETS",

@@ -15,7 +15,7 @@ from profiler.hopfile.options import (
     build_radio,
     pick_k,
 )
-from profiler.hopfile.places import build_obstacle, build_site
+from profiler.hopfile.placed import build_obstacle, build_site
 from profiler.hopfile.presets import PRESETS, expand_preset
 from profiler.hopfile.schema import CoverTable, DiffractionTable, HopTable, RulesTable, RuleTable, TerrainTable
 from profiler.hopfile.spot import MISSING, Spot

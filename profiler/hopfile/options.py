@@ -94,8 +94,16 @@ def _mode(raw: Raw, spot: Spot) -> RadioMode:
         signature = given(check(SignatureTable, values["signature"], inside))
         with inside.blame():
             values["signature"] = Signature(**signature)
+    if "objective" in values:
+        values["objective"] = _objective(values["objective"], spot.into("objective"))
     with spot.blame():
         return RadioMode(**values)
+
+
+def _objective(raw: Raw, spot: Spot) -> Objective:
+    values = given(check(ObjectiveTable, raw, spot))
+    with spot.blame():
+        return Objective(**values)
 
 
 def build_air(raw: Raw, spot: Spot) -> AirChoice:
@@ -107,10 +115,7 @@ def build_availability(raw: Raw, spot: Spot) -> AvailabilityChoice:
     """Build ``[availability]`` with its objective and diversity."""
     values = _kelvin(given(check(AvailabilityTable, raw, spot)), "annual_temperature", spot)
     if "objective" in values:
-        inside = spot.into("objective")
-        objective = given(check(ObjectiveTable, values["objective"], inside))
-        with inside.blame():
-            values["objective"] = Objective(**objective)
+        values["objective"] = _objective(values["objective"], spot.into("objective"))
     if "diversity" in values:
         inside = spot.into("diversity")
         diversity = given(check(DiversityTable, values["diversity"], inside))
@@ -160,6 +165,8 @@ def build_confidence(raw: Raw, spot: Spot, availability: AvailabilityChoice | No
     for name in ("terrain_kind", "terrain_rmse_m", "terrain_le90_m"):
         values.pop(name, None)
     values |= {"terrain_sigma_m": sigma_m, "terrain_source": source}
+    if table.minimum_chance_percent is not None:
+        values["minimum_chance"] = values.pop("minimum_chance_percent") / 100.0
     if table.correlation_m is None:
         if table.terrain_kind is None:
             remedy = "0 is error without correlation, inf one error for the whole path; common models: 30 to 300 m"

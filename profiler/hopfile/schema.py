@@ -110,6 +110,8 @@ class TerrainTable(Table):
     allow_mixed_datums: bool | None = None
     vertical_datum: Text | None = None
     height_unit: Text | None = None
+    allow_network: bool | None = None
+    voids_are_sea: bool | None = None
 
 
 class RulesTable(Table):
@@ -195,6 +197,7 @@ class ModeTable(Table):
     coding_gain_db: float | None = Field(None, ge=0)
     implementation_loss_db: float | None = Field(None, ge=0)
     signature: Raw | None = None
+    objective: Raw | None = None
 
 
 class SignatureTable(Table):
@@ -291,6 +294,9 @@ class ConfidenceTable(Table):
     cover_sigma_m: float | None = Field(None, ge=0, le=100)
     cover_relative_sigma: float | None = Field(None, ge=0, le=1)
     cover_correlation_m: float | None = Field(None, ge=0, allow_inf_nan=True)
+    minimum_chance_percent: float | None = Field(None, ge=50, lt=100)
+    terrain_offset_sigma_m: float | None = Field(None, ge=0, le=100)
+    step_m: float | None = Field(None, gt=0)
     vary_k: bool | None = None
     draws: int | None = Field(None, ge=100, le=1_000_000)
     seed: int | None = Field(None, ge=0)

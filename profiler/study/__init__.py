@@ -1,13 +1,13 @@
 """Run every stage for one hop, in one direction, and return one immutable result.
 
-The heights plan is in `profiler.study.plan`: a study does without it, and starts faster.
+The heights plan is in `profiler.plan`: a study does without it, and starts faster.
 """
 
 from profiler.study.document import plain, point_table, to_document
 from profiler.study.link import losses_at
-from profiler.study.notes import gathered
 from profiler.study.result import Place, Study
 from profiler.study.run import open_hop_terrain, run_study
+from profiler.study.said_once import gathered
 
 __all__ = [
     "Place",

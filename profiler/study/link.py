@@ -10,7 +10,7 @@ from profiler.atmosphere import Atmosphere, gas_attenuation, gas_warnings, local
 from profiler.diffraction import DiffractionLoss, diffract_over_k
 from profiler.errors import under
 from profiler.models import AvailabilityChoice, DiffractionMethod, Hop, Profile
-from profiler.study.climate import ClimateUse
+from profiler.study.climate_numbers import ClimateUse
 from profiler.study.outage import OutageResult, predict_outage
 
 if TYPE_CHECKING:

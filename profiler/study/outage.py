@@ -10,7 +10,7 @@ import numpy as np
 
 from profiler.diffraction import DiffractionLoss
 from profiler.models import Hop, Objective, Profile
-from profiler.study.climate import ClimateUse
+from profiler.study.climate_numbers import ClimateUse
 
 if TYPE_CHECKING:
     from profiler.availability import Availability, OutageCurve, OutageModel, PathFacts

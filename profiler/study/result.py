@@ -12,7 +12,7 @@ if TYPE_CHECKING:  # what the hop does not ask for is not loaded
     from profiler.geometry import CorridorCheck, Reflection, RuleCheck
     from profiler.models import Hop, Profile
     from profiler.path import PathLine
-    from profiler.study.climate import ClimateUse
+    from profiler.study.climate_numbers import ClimateUse
     from profiler.study.link import Air
     from profiler.study.outage import OutageResult
     from profiler.terrain import SourceUse

@@ -11,14 +11,14 @@ import numpy as np
 from profiler.errors import InputError, under
 from profiler.geometry import check_corridor, check_rule, elevation_angle, find_reflections
 from profiler.models import ConfidenceChoice, Hop, Rule
-from profiler.study.climate import ClimateUse, climate_numbers
+from profiler.study.climate_numbers import ClimateUse, climate_numbers
 from profiler.study.doubt import doubt_given
 from profiler.study.ground import Ground, read_ground, require_above_cover
 from profiler.study.link import Air, Link, air_along, link
-from profiler.study.notes import gathered
 from profiler.study.places import find_places
 from profiler.study.provenance import provenance
 from profiler.study.result import RuleResult, Study
+from profiler.study.said_once import gathered
 from profiler.study.verdict import ground_warnings, judge
 from profiler.terrain import Terrain, open_terrain, require_inside
 from profiler.units import Float

@@ -9,11 +9,11 @@ from profiler.terrain.describe import Bounds, RasterInfo
 from profiler.terrain.files import file_hash
 from profiler.terrain.gaps import fill_missing, missing_stretches, require_ground
 from profiler.terrain.gdal import library_versions
+from profiler.terrain.inventory import FolderSurvey, RasterSurvey, bounds_around, survey
 from profiler.terrain.mosaic import Terrain, as_reading, open_terrain
 from profiler.terrain.reference import datum_key
 from profiler.terrain.samples import Samples, Skipped, SourceUse, common_datum
 from profiler.terrain.sites import require_inside
-from profiler.terrain.survey import FolderSurvey, RasterSurvey, bounds_around, survey
 
 __all__ = [
     "Bounds",

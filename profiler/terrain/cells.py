@@ -16,7 +16,7 @@ from profiler.terrain.index import Index, Ints
 from profiler.terrain.pieces import Window
 from profiler.units import Float
 
-__all__ = ["Tally", "fetch", "fetch_heights", "to_metres"]
+__all__ = ["ReadTally", "fetch", "fetch_heights", "to_metres"]
 
 _MARKERS = (-32768.0, -32767.0, -9999.0, -99999.0, 9999.0, 32767.0, 65535.0, 99999.0)
 """What rasters write for "no height" when they forget to declare it (common practice, no source)."""
@@ -26,7 +26,7 @@ _LOWEST_GROUND_M, _LOWEST_SEABED_M, _HIGHEST_M = -500.0, -12_000.0, 9_000.0
 
 
 @dataclass(slots=True)
-class Tally:
+class ReadTally:
     """What reading cost and met, by tile."""
 
     windows: dict[int, list[Window]] = field(default_factory=dict)
@@ -63,7 +63,7 @@ class Tally:
 
 
 def fetch(
-    tile: Tile, number: int, rasters: OpenRasters, col: Ints, row: Ints, tally: Tally
+    tile: Tile, number: int, rasters: OpenRasters, col: Ints, row: Ints, tally: ReadTally
 ) -> tuple[Float, NDArray[np.bool_] | None]:
     """Fetch stored values of single cells (float64, exact for 32-bit types), and where a mask band holds them valid.
 
@@ -94,7 +94,7 @@ def _span(numbers: Ints) -> tuple[int, int]:
     return int(numbers.min()), int(numbers.max()) + 1
 
 
-def fetch_heights(index: Index, rasters: OpenRasters, tile: Ints, col: Ints, row: Ints, tally: Tally) -> Float:
+def fetch_heights(index: Index, rasters: OpenRasters, tile: Ints, col: Ints, row: Ints, tally: ReadTally) -> Float:
     """Heights of single cells in metres, NaN where missing.
 
     Raises
@@ -113,7 +113,7 @@ def fetch_heights(index: Index, rasters: OpenRasters, tile: Ints, col: Ints, row
     return height
 
 
-def _heights_on_tile(index: Index, number: int, rasters: OpenRasters, col: Ints, row: Ints, tally: Tally) -> Float:
+def _heights_on_tile(index: Index, number: int, rasters: OpenRasters, col: Ints, row: Ints, tally: ReadTally) -> Float:
     tile = index.tiles[number]
     raw, valid = fetch(tile, number, rasters, col, row, tally)
     return to_metres(tile, number, raw, valid, tally, lambda i: (int(col[i]), int(row[i])))
@@ -124,7 +124,7 @@ def to_metres(
     number: int,
     raw: Float,
     valid: NDArray[np.bool_] | None,
-    tally: Tally,
+    tally: ReadTally,
     place: Callable[[int], tuple[int, int]],
 ) -> Float:
     """Heights in metres of stored values (n,), NaN where missing; `place` tells the column and row of the i-th.

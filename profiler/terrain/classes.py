@@ -8,7 +8,7 @@ import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
 from profiler.errors import RasterError
-from profiler.terrain.cells import Tally, fetch
+from profiler.terrain.cells import ReadTally, fetch
 from profiler.terrain.describe import Reading, Tile
 from profiler.terrain.gdal import OpenRasters, gdal_session
 from profiler.terrain.index import Hits, Ints, build_index, find_hits
@@ -50,7 +50,7 @@ def sample_classes(path: Path, longitude: ArrayLike, latitude: ArrayLike) -> tup
     """
     lon, lat, shape = as_degrees(longitude, latitude)
     tiles, _ = describe_all([path], Reading(classes=True))
-    index, rasters, tally = build_index(tiles), OpenRasters(), Tally()
+    index, rasters, tally = build_index(tiles), OpenRasters(), ReadTally()
     classes, files = np.full(lon.size, -1, dtype=np.int64), dict[Path, None]()
     with gdal_session():
         hits = find_hits(index, lon, lat)
@@ -67,7 +67,7 @@ def sample_classes(path: Path, longitude: ArrayLike, latitude: ArrayLike) -> tup
     return classes.reshape(shape), tuple(files)
 
 
-def _classes_on_tile(tile: Tile, number: int, rasters: OpenRasters, hits: Hits, tally: Tally) -> Ints:
+def _classes_on_tile(tile: Tile, number: int, rasters: OpenRasters, hits: Hits, tally: ReadTally) -> Ints:
     """Class of the cell under each hit, -1 where it has none; a point on the outer edge is in the last cell."""
     col, row = (
         np.clip(np.floor(at + 0.5).astype(np.int64), 0, side - 1)

@@ -16,7 +16,7 @@ from profiler.terrain.files import RasterFile
 from profiler.terrain.gdal import OpenRasters
 from profiler.terrain.index import Ints
 from profiler.terrain.reference import datum_key
-from profiler.terrain.sampling import Ground
+from profiler.terrain.sampling import SampledGround
 from profiler.units import Float
 
 __all__ = ["Samples", "Skipped", "SourceUse", "common_datum", "gather_samples"]
@@ -72,7 +72,7 @@ class SourceUse:
 
 @dataclass(frozen=True, slots=True, eq=False)
 class Samples:
-    """Ground heights at points; arrays have the shape of the points asked for, and are read-only.
+    """SampledGround heights at points; arrays have the shape of the points asked for, and are read-only.
 
     Attributes
     ----------
@@ -99,7 +99,12 @@ class Samples:
 
 
 def gather_samples(
-    tiles: Sequence[Tile], rasters: OpenRasters, ground: Ground, shape: tuple[int, ...], *, allow_mixed_datums: bool
+    tiles: Sequence[Tile],
+    rasters: OpenRasters,
+    ground: SampledGround,
+    shape: tuple[int, ...],
+    *,
+    allow_mixed_datums: bool,
 ) -> Samples:
     """Turn heights by tile into heights by source, the greatest share first, and settle the vertical datum.
 
@@ -129,7 +134,7 @@ def gather_samples(
     return result
 
 
-def _use(tile: Tile, rasters: OpenRasters, number: int, count: int, ground: Ground) -> SourceUse:
+def _use(tile: Tile, rasters: OpenRasters, number: int, count: int, ground: SampledGround) -> SourceUse:
     tally = ground.tally
     notes = tile.info.notes + tally.notes(number)
     edge = int(np.count_nonzero(ground.edge & (ground.tile == number)))

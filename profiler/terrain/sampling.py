@@ -16,27 +16,27 @@ import numpy as np
 from numpy.typing import NDArray
 
 from profiler.models import SampleMethod
-from profiler.terrain.cells import Tally, fetch_heights
+from profiler.terrain.cells import ReadTally, fetch_heights
 from profiler.terrain.gdal import OpenRasters
 from profiler.terrain.index import Hits, Index, Ints, find_hits, locate_cells
 from profiler.terrain.placing import by_crs, cells_on_ground
 from profiler.units import Float
 
-__all__ = ["Ground", "lattice_cells", "sample_ground"]
+__all__ = ["SampledGround", "lattice_cells", "sample_ground"]
 
 _FULL = 1.0 - 1e-9
 _NONE = np.iinfo(np.int64).max
 
 
 @dataclass(frozen=True, slots=True, eq=False)
-class Ground:
+class SampledGround:
     """Heights at points (NaN missing), the tile each came from (-1 none), where an edge was settled, and the cost."""
 
     height_m: Float
     tile: Ints
     edge: NDArray[np.bool_]
     covered: NDArray[np.bool_]
-    tally: Tally
+    tally: ReadTally
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -67,7 +67,7 @@ def lattice_cells(index: Index, hits: Hits) -> tuple[Ints, Float]:
 
 def sample_ground(
     index: Index, rasters: OpenRasters, longitude: Float, latitude: Float, method: SampleMethod
-) -> Ground:
+) -> SampledGround:
     """Heights in metres at points (n,) in degrees on WGS 84; NaN where no raster has one."""
     hits = find_hits(index, longitude, latitude)
     names, sides = lattice_cells(index, hits)
@@ -78,7 +78,7 @@ def sample_ground(
     hits, size = hits.take(order), size[order]
     candidates = np.flatnonzero(np.bincount(hits.tile, minlength=len(index.tiles)))
 
-    n, tally = longitude.size, Tally()
+    n, tally = longitude.size, ReadTally()
     height, tile, finest = np.full(n, np.nan), np.full(n, -1, dtype=np.int64), np.full(n, _NONE)
     edges: list[tuple[Ints, _Around]] = []
     todo = np.flatnonzero(hits.inside)
@@ -99,7 +99,7 @@ def sample_ground(
     if near.size:
         edges.append((near, _around(index, rasters, hits.take(near), candidates, tally, method)))
     edge = _settle_edges(index, hits, size, edges, height, tile, finest, method)
-    return Ground(height, tile, edge, covered, tally)
+    return SampledGround(height, tile, edge, covered, tally)
 
 
 def _pick(around: _Around, which: NDArray[np.bool_]) -> _Around:
@@ -107,7 +107,7 @@ def _pick(around: _Around, which: NDArray[np.bool_]) -> _Around:
 
 
 def _around(
-    index: Index, rasters: OpenRasters, hits: Hits, candidates: Ints, tally: Tally, method: SampleMethod
+    index: Index, rasters: OpenRasters, hits: Hits, candidates: Ints, tally: ReadTally, method: SampleMethod
 ) -> _Around:
     """Combine the cells around each hit; a cell of no weight is not looked at."""
     col, row = np.floor(hits.u), np.floor(hits.v)

@@ -24,8 +24,8 @@ from profiler.heights import (
     round_up,
 )
 from profiler.models import Hop, Rule
-from profiler.study.answer import Answer, find_answer
-from profiler.study.limits import for_loss, for_objective, link_limits, loss_limit
+from profiler.plan.cheapest_answer import Answer, find_answer
+from profiler.plan.link_limits import for_loss, for_objective, link_limits, loss_limit
 from profiler.study.requirements import Requirements, Source, lower_antennas, requirements, source_of, spacing_of
 from profiler.study.result import Study
 

@@ -10,7 +10,7 @@ from pathlib import Path
 import numpy as np
 
 from profiler.errors import RasterError
-from profiler.terrain.cells import Tally, to_metres
+from profiler.terrain.cells import ReadTally, to_metres
 from profiler.terrain.describe import Bounds, NotHeightsError, RasterInfo, Tile, describe
 from profiler.terrain.files import find_rasters
 from profiler.terrain.gdal import gdal_session, open_raster, read_window
@@ -146,7 +146,7 @@ def _survey_tile(tile: Tile) -> RasterSurvey:
     """Read all cells in bands of whole blocks."""
     info, coding = tile.info, tile.coding
     rows = max(1, _PIECE_CELLS // (info.width * tile.read_cells[0])) * tile.read_cells[0]
-    lowest, highest, known, tally = math.inf, -math.inf, 0, Tally()
+    lowest, highest, known, tally = math.inf, -math.inf, 0, ReadTally()
     with open_raster(tile.file) as dataset:
         for top in range(0, info.height, rows):
             span = (top, min(top + rows, info.height))

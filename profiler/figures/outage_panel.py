@@ -9,7 +9,7 @@ import numpy as np
 
 from profiler.figures import style
 from profiler.figures.page import FOOT_IN, LINE_IN, Page
-from profiler.figures.places import spread
+from profiler.figures.place_labels import spread
 from profiler.figures.scale import minus
 from profiler.figures.text import width_in
 from profiler.units import MINUTES_PER_YEAR

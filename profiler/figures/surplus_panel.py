@@ -14,7 +14,7 @@ from profiler.figures import style
 from profiler.figures.blocks import foot, head
 from profiler.figures.key import draw_key
 from profiler.figures.page import FOOT_IN, LINE_IN, Page
-from profiler.figures.places import spread
+from profiler.figures.place_labels import spread
 from profiler.figures.profile import AXES_IN, draw_profile, draw_tight_places, scene
 from profiler.figures.scale import Scale
 from profiler.figures.side import title_block

@@ -5,9 +5,9 @@ from __future__ import annotations
 from typing import Any
 
 from profiler.heights import Choice, Least, MountingSheet, NoPair, Stretch
-from profiler.study.answer import Answer
+from profiler.plan.cheapest_answer import Answer
+from profiler.plan.compose import HeightsPlan, SurePositions
 from profiler.study.document import SCHEMA_HEIGHTS, plain
-from profiler.study.plan import HeightsPlan, SurePositions
 
 __all__ = ["heights_document"]
 

@@ -26,8 +26,8 @@ from profiler.heights import (
     least_b_sure,
     least_surplus_drawn,
 )
+from profiler.plan.link_limits import Excess
 from profiler.study.doubt import doubt_given
-from profiler.study.limits import Excess
 from profiler.study.requirements import spacing_of
 from profiler.study.result import Study
 from profiler.units import Float

@@ -7,14 +7,14 @@ from typing import TYPE_CHECKING, Any
 
 import click
 
-from profiler.cli.options import hop_options, named, read_hop, speech_options
+from profiler.cli.hop_options import hop_options, named, read_hop, speech_options
 from profiler.cli.output import check_targets, csv_text, deliver, rendered
 from profiler.errors import InputError
 
 if TYPE_CHECKING:
     from profiler.heights import Choice
     from profiler.models import Hop
-    from profiler.study.plan import HeightsPlan
+    from profiler.plan import HeightsPlan
 
 __all__ = ["command"]
 
@@ -65,9 +65,8 @@ def command(
 
     Exit code 0: such a pair exists; 1: none does, and why is said; 2: the input is wrong.
     """
+    from profiler.plan import heights_document, plan_heights
     from profiler.study import run_study
-    from profiler.study.plan import plan_heights
-    from profiler.study.plan_document import heights_document
 
     check_targets(json_to, csv_to, write_to, figures=figures, hop_file=hop_given["hop_file"])
     hop = read_hop(**hop_given)

@@ -15,7 +15,7 @@ import numpy as np
 from profiler.figures import style
 from profiler.figures.blocks import columns_at, foot, head, heading, rows, titles
 from profiler.figures.page import FOOT_IN, LINE_IN, MARGIN_IN, PAGE_WIDTH_IN, Page
-from profiler.figures.places import spread
+from profiler.figures.place_labels import spread
 from profiler.figures.scale import Scale, minus, position_text, required_text
 from profiler.figures.strips import rule_look
 from profiler.figures.words import hop_facts, profile_notes
@@ -25,7 +25,7 @@ if TYPE_CHECKING:
     from matplotlib.figure import Figure
 
     from profiler.heights import NoPair, Stretch
-    from profiler.study.plan import HeightsPlan
+    from profiler.plan import HeightsPlan
 
 __all__ = ["frontier_figure"]
 

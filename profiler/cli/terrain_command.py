@@ -9,7 +9,7 @@ from typing import TYPE_CHECKING
 
 import click
 
-from profiler.cli.options import named
+from profiler.cli.hop_options import named
 from profiler.cli.output import check_targets, json_text, put
 from profiler.errors import HopwrightError
 

@@ -6,7 +6,7 @@ from typing import TYPE_CHECKING, Any
 
 import click
 
-from profiler.cli.options import hop_options, named, read_hop, speech_options
+from profiler.cli.hop_options import hop_options, named, read_hop, speech_options
 from profiler.cli.output import check_targets, json_text, put
 
 if TYPE_CHECKING:

@@ -8,15 +8,15 @@ from typing import TYPE_CHECKING, Any, Literal
 
 import click
 
+from profiler.cli.hop_options import hop_options, named, read_hop, speech_options
 from profiler.cli.lines import lines_table, seen_from
-from profiler.cli.options import hop_options, named, read_hop, speech_options
 from profiler.cli.output import check_targets, json_text, put
 from profiler.errors import InputError
 
 if TYPE_CHECKING:
     from rich.table import Table
 
-    from profiler.budget import Answer, Way
+    from profiler.budget import InverseAnswer, Way
     from profiler.cli.screen import Scale
     from profiler.receiver import Line
     from profiler.study import Study
@@ -90,8 +90,8 @@ def command(
 
 def _answers(
     study: Study, way: Way, resize: str, efficiency: float | None, wanted: dict[str, Any]
-) -> dict[str, Answer]:
-    """Answer every question for one direction."""
+) -> dict[str, InverseAnswer]:
+    """InverseAnswer every question for one direction."""
     from profiler.budget import least_gain, least_power, longest_free_space_range, smallest_dish
 
     hop, losses = study.hop, study.median_diffraction
@@ -118,7 +118,7 @@ def _answers(
     return answers
 
 
-def _show(answers: dict[Way, dict[str, Answer]], *, feet: bool, quiet: bool, color: bool) -> None:
+def _show(answers: dict[Way, dict[str, InverseAnswer]], *, feet: bool, quiet: bool, color: bool) -> None:
     """Print the answers, then the lines that each stands on."""
     from profiler.budget import way_name
     from profiler.cli.screen import Scale, console, say, show_notes, show_table
@@ -146,7 +146,7 @@ def _show(answers: dict[Way, dict[str, Answer]], *, feet: bool, quiet: bool, col
     show_notes(screen, "Assumed", tuple(dict.fromkeys(note for _, answer in each for note in answer.assumptions)))
 
 
-def _value(answer: Answer, scale: Scale) -> str:
+def _value(answer: InverseAnswer, scale: Scale) -> str:
     if answer.unit != "m":
         return f"{answer.value:.2f} {answer.unit}"
     if answer.value >= 1000.0:
@@ -154,13 +154,13 @@ def _value(answer: Answer, scale: Scale) -> str:
     return f"{scale.height(answer.value, 2)} {scale.height_unit}"
 
 
-def _alike(found: dict[str, Answer]) -> list[dict[str, Answer]]:
+def _alike(found: dict[str, InverseAnswer]) -> list[dict[str, InverseAnswer]]:
     """Put the directions side by side where their lines have the same names, else one after the other."""
     names = [[seen_from(line.name, way) for line in answer.lines] for way, answer in found.items()]
     return [found] if names.count(names[0]) == len(names) else [{way: answer} for way, answer in found.items()]
 
 
-def _sum_table(name: str, found: dict[str, Answer]) -> Table:
+def _sum_table(name: str, found: dict[str, InverseAnswer]) -> Table:
     """Tabulate the terms of an answer, and below them what they add up to."""
     table = lines_table(name, {way: answer.lines for way, answer in found.items()})
     way, answer = next(iter(found.items()))
