@@ -10,26 +10,19 @@ from hypothesis import settings
 settings.register_profile("repeatable", derandomize=True, deadline=None, max_examples=60)
 settings.load_profile("repeatable")
 
-ROOT = Path(__file__).resolve().parent.parent
+HERE = Path(__file__).resolve().parent
 
 
-def _data(folder: str) -> Path:
-    path = ROOT.parent / "shared" / folder
-    if not path.is_dir():
-        pytest.skip(f"no {folder} data beside the project (../shared/{folder})")
-    return path
-
-
-@pytest.fixture
+@pytest.fixture(scope="session")
 def reference() -> Path:
-    """Find the published values: ../shared/reference from the project's root."""
-    return _data("reference")
+    """Find the published values; their sources are in the folder's README."""
+    return HERE / "reference"
 
 
-@pytest.fixture
+@pytest.fixture(scope="session")
 def real_terrain() -> Path:
-    """Find the real terrain: ../shared/terrain from the project's root."""
-    return _data("terrain")
+    """Find the real terrain; its sources are in the folder's README."""
+    return HERE / "terrain"
 
 
 @pytest.fixture

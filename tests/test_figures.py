@@ -105,10 +105,9 @@ SILO = CoverChoice(canopy=(SAMPLE / "canopy.tif",), obstacles=(Obstacle("silo at
 
 
 @pytest.fixture(scope="module")
-def study(tmp_path_factory):
+def study(tmp_path_factory, real_terrain):
     """Study a case by name, once for all tests."""
     folder = tmp_path_factory.mktemp("plains")
-    real = Path(__file__).resolve().parent.parent.parent / "shared" / "terrain"
     tall = HeightsChoice(TowerChoice(highest_m=230), TowerChoice(highest_m=230))
 
     def rolling(x):
@@ -126,13 +125,11 @@ def study(tmp_path_factory):
             radio=radio(modes=MODES), availability=OUTAGE, confidence=SURE,
         ),
         "flat 80 km": lambda: plain_hop(folder, 80e3, rolling, 4e9, 200, 205, **full),
-        "canyon": lambda: canyon_hop(real, **full),
+        "canyon": lambda: canyon_hop(real_terrain, **full),
     }  # fmt: skip
 
     @functools.cache
     def find(name):
-        if name == "canyon" and not real.is_dir():
-            pytest.skip("no terrain data beside the project (../shared/terrain)")
         return run_study(cases[name](), relief=True)
 
     return find

@@ -1,6 +1,6 @@
 """Whole studies on real ground, argued by hand and held against rasterio, scipy, pyproj and geographiclib.
 
-The canyon (NASA SRTM, 3″, Utah) lies at ../shared/terrain; the fault (3″, Tennessee) ships with matplotlib.
+The canyon (NASA SRTM, 3″, Utah) lies in tests/terrain; the fault (3″, Tennessee) ships with matplotlib.
 """
 
 import math
@@ -81,7 +81,7 @@ def degrees(real_terrain):
 
 @pytest.fixture
 def utm(real_terrain):
-    return real_terrain / "canyon_srtm_utm12.tif"
+    return real_terrain / "canyon_srtm_utm12.vrt"
 
 
 @pytest.mark.parametrize("make", [rim_to_rim, through_the_mountain])

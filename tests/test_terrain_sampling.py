@@ -82,7 +82,7 @@ def test_geotiff_point_convention_from_raw_tags(tmp_path):
 def test_real_ground_in_two_crs_against_scipy_and_gdal(real_terrain):
     lon, lat = np.linspace(-113.2, -112.9, 1500), np.linspace(37.17, 37.47, 1500)
     found = {}
-    for name, crs in (("canyon_srtm_3arcsec.tif", 4326), ("canyon_srtm_utm12.tif", 32612)):
+    for name, crs in (("canyon_srtm_3arcsec.tif", 4326), ("canyon_srtm_utm12.vrt", 32612)):
         import rasterio
 
         with rasterio.open(real_terrain / name) as raster:

@@ -55,12 +55,12 @@ def test_survey_of_a_mixed_folder(write_raster):
 def test_survey_of_real_ground(real_terrain):
     found = survey(real_terrain)
     by_name = {raster.info.path.name: raster for raster in found.rasters}
-    assert set(by_name) == {"canyon_srtm_3arcsec.tif", "canyon_srtm_utm12.tif"}
+    assert set(by_name) == {"canyon_srtm_3arcsec.tif", "canyon_srtm_utm12.vrt"}
     degrees = by_name["canyon_srtm_3arcsec.tif"]
     assert (degrees.min_m, degrees.max_m) == (1024.0, 2892.0)  # as the data's own README states
     assert degrees.info.bounds == pytest.approx((-113.24, 37.13, -112.85, 37.51), abs=0.005)
-    assert by_name["canyon_srtm_utm12.tif"].info.cell_x_m == pytest.approx(83.5, abs=0.1)
-    assert by_name["canyon_srtm_utm12.tif"].void_share > 0  # its nodata corners
+    assert by_name["canyon_srtm_utm12.vrt"].info.cell_x_m == pytest.approx(83.5, abs=0.1)
+    assert by_name["canyon_srtm_utm12.vrt"].void_share > 0  # its nodata corners
     assert [skipped.path.name for skipped in found.skipped] == ["canyon_landcover_utm12.tif"]
 
 
