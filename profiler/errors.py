@@ -7,6 +7,8 @@ from contextlib import contextmanager
 from dataclasses import fields
 from typing import Any
 
+from profiler.printable import printable
+
 __all__ = [
     "DatumError",
     "HopwrightError",
@@ -20,7 +22,13 @@ __all__ = [
 
 
 class HopwrightError(Exception):
-    """Root of every error that hopwright raises on purpose; the command line turns it into exit code 2."""
+    """Root of every error that hopwright raises on purpose; the command line turns it into exit code 2.
+
+    Whatever a file, its name or an argument put into the message is made safe to print here, once for all.
+    """
+
+    def __init__(self, message: str) -> None:
+        super().__init__(printable(message))
 
 
 class InputError(HopwrightError, ValueError):

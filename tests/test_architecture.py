@@ -8,6 +8,7 @@ import pytest
 PACKAGE = Path(__file__).resolve().parent.parent / "profiler"
 
 RANKS = {
+    "printable": -1,  # below even the errors, which are made of it
     "errors": 0,
     "units": 0,
     "models": 1,

@@ -10,6 +10,7 @@ import shutil
 import subprocess
 import sys
 import threading
+import time
 from pathlib import Path
 
 import numpy as np
@@ -717,12 +718,34 @@ def test_the_file_is_named_as_it_was_typed_and_the_remedy_by_its_key(refused, he
         (PASSING.encode("utf-16"), "line 1: byte 0xff: must be UTF-8 text"),
         (b"[site_a", 'must be TOML: expected "]"'),
         (b"a = " + b"[" * 5000, "nested too deeply"),
-        (b"a." * 3000 + b"a = 1", "nested too deeply"),
+        (b"a." * 30_000 + b"a = 1", "line 1: must be TOML that is nested a few levels deep"),
+        (b"\n\n[" + b'"a" . ' * 30_000 + b"a]", "line 3: must be TOML that is nested a few levels deep"),
+        (b"x = {" + b"'a'." * 30_000 + b"a = 1}", "line 1: must be TOML that is nested a few levels deep"),
+        (b"#" * 1_000_001, "must be a hop file of at most 1 MB"),
+        (b"a" * 1_000_000, "must be TOML"),
+        (
+            b"name = '" + b"x" * 40_000 + b"'",
+            "name = xxxxxxxxxxxxxxxxxxxx…: must be at most 1000 characters, not 40000",
+        ),
+        (b"x" * 10_000 + b" = 1", "the key xxxxxxxxxxxxxxxxxxxx…: must be at most 1000 characters, not 10000"),
+        (b"[site_a]\nposition = '" + b"1 " * 20_000 + b"'", "site_a.position = 1 1 1"),
+        (b'x = {"\\u001b[2J\\u202e" = 1}', "x = {\\x1b[2J\\u202e = 1}: must be a known key"),
     ],
 )
 def test_a_file_that_is_no_hop_file(refused, here, content, message):
     (here / "bad.toml").write_bytes(content)
-    assert message in refused("study", "bad.toml")
+    started = time.monotonic()
+    line = refused("study", "bad.toml")
+    assert time.monotonic() - started < 2.0
+    assert message in line
+    assert len(line) < 1000
+
+
+def test_a_pipe_or_a_device_is_no_hop_file(refused, here):
+    """Neither is opened: the one would wait for a writer, the other never end."""
+    os.mkfifo(here / "pipe.toml")
+    for file in ("pipe.toml", "/dev/zero"):
+        assert refused("study", file).startswith(f"{file}: must be a regular file, not a pipe or a device")
 
 
 @pytest.mark.parametrize("command", ["study", "heights", "losses", "reach"])

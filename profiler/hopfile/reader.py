@@ -10,6 +10,7 @@ from pathlib import Path
 from typing import TYPE_CHECKING, Any
 
 from profiler.errors import InputError
+from profiler.hopfile.limits import read_limited, require_bounded, require_shallow
 
 if TYPE_CHECKING:
     from profiler.models import Hop
@@ -46,7 +47,7 @@ def load_hop(path: Path | str) -> Hop:
     """
     path = Path(path)
     try:
-        content = path.read_bytes()
+        content = read_limited(path)
         text = content.decode("utf-8-sig")
     except UnicodeDecodeError as error:
         line = content[: error.start].count(b"\n") + 1
@@ -119,8 +120,9 @@ def parse_tables(text: str, where: str) -> dict[str, Any]:
     profiler.errors.InputError: hop.toml: line 1, column 8: must be TOML: expected "]" at the end of a table \
 declaration; text needs quotes, decimals a point
     """
+    require_shallow(text, where)
     try:
-        return tomllib.loads(text.removeprefix("\ufeff"))
+        tables = tomllib.loads(text.removeprefix("\ufeff"))
     except ValueError as error:  # TOMLDecodeError, or Python's refusal of a whole number of thousands of digits
         message = str(error)
         place = _PLACE.search(message)
@@ -134,6 +136,8 @@ declaration; text needs quotes, decimals a point
         raise InputError(
             f"{where}: line {line}, column {column}: must be TOML: {' '.join(reason.split())}; {remedy}"
         ) from None
+    require_bounded(tables, where)
+    return tables
 
 
 def quick_hop(
@@ -201,6 +205,7 @@ def quick_hop(
     }
     if name is not None:
         raw["name"] = name
+    require_bounded(raw, where)
     return build_hop(raw, where, Path(base_dir))
 
 
