@@ -591,7 +591,7 @@ def test_a_full_disk_leaves_the_old_file_as_it_was(refused, here, monkeypatch):
     def full(*_):
         raise OSError(28, "No space left on device")
 
-    monkeypatch.setattr("profiler.cli.output.os.fdopen", full)
+    monkeypatch.setattr("profiler.cli.files.os.fsync", full)
     message = refused("study", "hop.toml", "--json", "out.json", "-q")
     assert message == "out.json: No space left on device: must be a file that can be written here; name another"
     assert (here / "out.json").read_text() == "old"

@@ -1,5 +1,31 @@
 """The `hopwright` command: one subcommand a module, each of which parses, runs, writes and sets the exit code."""
 
-from profiler.cli.app import main
+from __future__ import annotations
+
+import sys
+from typing import NoReturn
 
 __all__ = ["main"]
+
+
+def main(arguments: list[str] | None = None) -> NoReturn:
+    """Run the command line.
+
+    Parameters
+    ----------
+    arguments
+        The words after ``hopwright``. By default those of the process, which is then fitted to the one command before
+        anything else is loaded.
+
+    Raises
+    ------
+    SystemExit
+        Always, with the exit code.
+    """
+    if arguments is None:
+        from profiler.cli.process import settle_process
+
+        settle_process()
+    from profiler.cli.app import run
+
+    run(sys.argv[1:] if arguments is None else arguments)

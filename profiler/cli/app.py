@@ -2,12 +2,9 @@
 
 from __future__ import annotations
 
-import atexit
-import gc
-import io
 import os
-import signal
 import sys
+from contextlib import suppress
 from difflib import get_close_matches
 from typing import Any, NoReturn
 
@@ -22,9 +19,17 @@ from profiler.cli import (
     study_command,
     terrain_command,
 )
+from profiler.cli.process import drop_unwritten
 from profiler.errors import HopwrightError
+from profiler.printable import printable
 
-__all__ = ["main", "root"]
+__all__ = ["root", "run"]
+
+_FAULT = 70
+"""Exit code for a fault of the program: EX_SOFTWARE of BSD's sysexits.h."""
+
+_SHOW_TRACEBACK = "HOPWRIGHT_TRACEBACK"
+_LONGEST_LINE = 2000
 
 
 class Commands(click.Group):
@@ -51,9 +56,11 @@ class Commands(click.Group):
 def root() -> None:
     """Study fixed microwave hops: clearance, antenna heights, loss, margin and availability.
 
-    Exit codes: 0 done and the hop passes; 1 done and it does not pass; 2 the input is wrong. hopwright screens and
-    documents; it does not certify. Towers, radio exposure and aircraft hazards are matters of local codes and
-    licensed practice.
+    Exit codes: 0 done and the hop passes; 1 done and it does not pass; 2 the input is wrong; 70 a fault of hopwright
+    itself.
+
+    hopwright screens and documents; it does not certify. Towers, radio exposure and aircraft hazards are matters of
+    local codes and licensed practice.
     """
 
 
@@ -68,56 +75,39 @@ for _module in (
     root.add_command(_module.command)
 
 
-def main(arguments: list[str] | None = None) -> NoReturn:
-    """Run the command line; the only place where an error becomes text and an exit code.
-
-    Parameters
-    ----------
-    arguments
-        The words after ``hopwright``; the process's own by default.
-
-    Raises
-    ------
-    SystemExit
-        Always, with the exit code.
-    """
-    words = sys.argv[1:] if arguments is None else arguments
-    if arguments is None:
-        _settle_process()
+def run(words: list[str]) -> NoReturn:
+    """Run one command and leave with its exit code; the only place where an error becomes text and a code."""
     try:
         outcome: Any = root.main(words or ["--help"], prog_name="hopwright", standalone_mode=False)
+        sys.stdout.flush()
     except click.ClickException as error:
         _stop(error.format_message())
     except HopwrightError as error:
         _stop(str(error))
     except (click.Abort, KeyboardInterrupt):
         sys.exit(130)
-    except OSError as error:
-        where = "standard output" if error.filename is None else error.filename
-        _stop(f"{where}: {error.strerror or error}: must be a file that can be read or written here")
     except MemoryError:
         _stop("not enough memory: must be a smaller task; give coarser spacing_m or step_m, or fewer draws")
+    except Exception as error:
+        if isinstance(error, OSError) and error.errno is not None:
+            where = error.filename or "standard output"
+            _stop(f"{where}: {error.strerror}: must be a file that can be read or written here")
+        if os.environ.get(_SHOW_TRACEBACK):
+            raise
+        _stop(
+            f"a fault of hopwright {__version__} itself, not of your input ({type(error).__name__}: {error}): please "
+            f"report it with the command and the hop file; {_SHOW_TRACEBACK}=1 before the command shows where it is",
+            _FAULT,
+        )
     sys.exit(outcome if isinstance(outcome, int) else 0)
 
 
-def _settle_process() -> None:
-    """Fit the process to one command of small arrays that live to its end, at a pipe or on any terminal.
-
-    The shares are of the processor time of a study with its figure, each setting alone, by medians of 25 runs; the
-    three together save 27 %.
-    """
-    gc.set_threshold(500_000)  # 5 %: loading and figures make 250 000, to stay; every 700 it would look through them
-    atexit.register(gc.freeze)  # 14 %: the last look for garbage, at the very end
-    os.environ.setdefault("OPENBLAS_NUM_THREADS", "1")  # 10 %; before numpy loads: over so little, threads only wait
-    if hasattr(signal, "SIGPIPE"):  # whoever stops reading ends the command, with no exit code of ours
-        signal.signal(signal.SIGPIPE, signal.SIG_DFL)
-    if sys.stdout is None:
-        _stop("standard output: is closed: must be open; send it to a file")
-    if isinstance(sys.stdout, io.TextIOWrapper):
-        sys.stdout.reconfigure(errors="replace")
-
-
-def _stop(message: str) -> NoReturn:
-    """Print one line on standard error and leave with exit code 2."""
-    click.echo("hopwright: " + " ".join(message.split()), err=True)
-    sys.exit(2)
+def _stop(message: str, code: int = 2) -> NoReturn:
+    """Print one line on standard error and leave."""
+    line = printable(" ".join(message.split()))
+    if len(line) > _LONGEST_LINE:
+        line = f"{line[: _LONGEST_LINE // 2]} … {line[-_LONGEST_LINE // 2 :]}"
+    with suppress(OSError):  # where standard error is full too, the code says it
+        click.echo(f"hopwright: {line}", err=True)
+    drop_unwritten()
+    sys.exit(code)

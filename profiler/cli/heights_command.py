@@ -8,7 +8,7 @@ from typing import TYPE_CHECKING, Any
 import click
 
 from profiler.cli.hop_options import hop_options, named, read_hop, speech_options
-from profiler.cli.output import check_targets, csv_text, deliver, rendered
+from profiler.cli.output import check_targets, csv_text, deliver, rendered, tell
 from profiler.errors import InputError
 
 if TYPE_CHECKING:
@@ -68,12 +68,12 @@ def command(
     from profiler.plan import heights_document, plan_heights
     from profiler.study import run_study
 
-    check_targets(json_to, csv_to, write_to, figures=figures, hop_file=hop_given["hop_file"])
     hop = read_hop(**hop_given)
+    check_targets(json_to, csv_to, write_to, figures=figures, reads=hop)
     with named(hop.source):
         sure = None if sure_percent is None else _share(sure_percent)
         plan = plan_heights(run_study(hop, losses=False), sure=sure)
-        rewritten = None if write_to is None else _rewritten(hop, hop_given["hop_file"], plan)
+        rewritten = None if write_to is None else _rewritten(hop, hop_given["hop_file"], plan, write_to)
     files: list[tuple[Path, bytes | str]] = [*rendered(figures, lambda: _frontier(plan, feet))]
     if write_to is not None and rewritten is not None:
         files.append((write_to, rewritten))
@@ -88,7 +88,7 @@ def command(
 
         show_heights(plan, feet=feet, quiet=quiet, color=not no_color)
     if write_to is not None and rewritten is None:
-        click.echo(f"{write_to}: not written, since no pair of heights does all that is asked", err=True)
+        tell(f"{write_to}: not written, since no pair of heights does all that is asked", err=True)
     return 0 if _pair(plan) is not None else 1
 
 
@@ -113,16 +113,18 @@ def _frontier(plan: HeightsPlan, feet: bool) -> Any:
     return frontier_figure(plan, feet=feet)
 
 
-def _rewritten(hop: Hop, hop_file: Path | None, plan: HeightsPlan) -> str | None:
-    """Give the hop file's text with the pair that meets everything in it, or None where there is none."""
-    from profiler.hopfile import with_antennas
+def _rewritten(hop: Hop, hop_file: Path | None, plan: HeightsPlan, write_to: Path) -> bytes | None:
+    """Give the hop file with the pair that meets everything in it, or None where there is none."""
+    from profiler.hopfile import with_antennas, with_paths_from
 
     if hop_file is None:
         raise InputError(f"{hop.source}: --write: must have a hop file to copy; give one instead of options")
     pair = _pair(plan)
     if pair is None:
         return None
-    return with_antennas(hop_file.read_text(encoding="utf-8"), pair.antenna_a_m, pair.antenna_b_m)
+    text = hop_file.read_bytes().decode()  # with its line ends
+    copy = with_antennas(text, pair.antenna_a_m, pair.antenna_b_m)
+    return with_paths_from(copy, hop_file.parent, write_to.parent).encode()
 
 
 def _csv_text(plan: HeightsPlan) -> str:

@@ -28,8 +28,8 @@ def command(json_to: str | None, quiet: bool, no_color: bool, **hop_given: Any) 
     from profiler.diffraction import METHODS
     from profiler.study import losses_at, run_study
 
-    check_targets(json_to, hop_file=hop_given["hop_file"])
     hop = read_hop(**hop_given)
+    check_targets(json_to, reads=hop)
     with named(hop.source):
         study = run_study(hop)
     ks = (study.climate.median_k, *(rule.k for rule in hop.rules))

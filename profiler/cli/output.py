@@ -1,4 +1,4 @@
-"""What the commands share: figures, tables and documents, written whole or not at all."""
+"""What the commands share: where outputs may go, and figures, tables and documents to put there."""
 
 from __future__ import annotations
 
@@ -6,21 +6,23 @@ import csv
 import io
 import json
 import math
-import os
-import tempfile
-from collections.abc import Callable, Iterable, Sequence
-from contextlib import suppress
+import re
+from collections.abc import Callable, Iterable, Iterator, Sequence
+from dataclasses import fields, is_dataclass
 from pathlib import Path
 from typing import Any
 
 import click
 
+from profiler.cli.files import real_path, require_writable, write_all
 from profiler.errors import InputError
+from profiler.models import Hop
+from profiler.printable import printable
 
-__all__ = ["check_targets", "csv_text", "deliver", "json_text", "put", "rendered", "write_whole"]
+__all__ = ["check_targets", "csv_text", "deliver", "json_text", "put", "rendered", "tell"]
 
 
-def check_targets(*targets: str | Path | None, figures: Sequence[Path] = (), hop_file: Path | None = None) -> None:
+def check_targets(*targets: str | Path | None, figures: Sequence[Path] = (), reads: Any = ()) -> None:
     """Stop before any work, and before any file is written, when the outputs asked for cannot all be written.
 
     Parameters
@@ -29,16 +31,15 @@ def check_targets(*targets: str | Path | None, figures: Sequence[Path] = (), hop
         Files, ``-`` for standard output, or None.
     figures
         Files whose ending must be that of a picture.
-    hop_file
-        The input, which no output may replace.
+    reads
+        What the command reads, which no output may replace: a hop, paths of rasters, or several of these.
 
     Raises
     ------
     InputError
-        For two documents on standard output, an ending that is no picture's, a folder that is not there, or a file
-        named twice.
+        For two documents on standard output, an ending that is no picture's, a folder that is not there, a file that
+        is protected, named twice, or read.
     """
-    files = [Path(target) for target in targets if target not in (None, "-")]
     if sum(target == "-" for target in targets) > 1:
         raise InputError("command line: -: must stand once, since standard output takes one document; name a file")
     if figures:
@@ -47,77 +48,96 @@ def check_targets(*targets: str | Path | None, figures: Sequence[Path] = (), hop
         for figure in figures:
             if figure.suffix.lower() not in FORMATS:
                 raise InputError(f"{figure}: must end in one of {', '.join(FORMATS)} to be a figure")
-    taken = {} if hop_file is None else {_real(hop_file): "the hop file"}
-    for file in (*files, *figures):
-        _require_folder(file)
-        real = _real(file)
-        if real in taken:
-            raise InputError(f"{file}: must not be {taken[real]} too; name another file")
-        if real.is_file() or not real.exists():  # a device takes any number of outputs
-            taken[real] = "another output"
+    files = [Path(target) for target in targets if target not in (None, "-")] + list(figures)
+    taken: dict[object, Path] = {}
+    for file in files:
+        require_writable(file)
+        if file.is_file() or not file.exists():  # a device takes any number of outputs
+            if (same := _identity(file)) in taken:
+                raise InputError(f"{file}: must not be another output too; name another file")
+            taken[same] = file
+    if any(file.exists() for file in taken.values()):  # what is not there yet is not read either
+        _require_unread(taken, reads)
 
 
-def _real(path: Path) -> Path:
-    return Path(os.path.realpath(path))  # unlike Path.resolve, it does not stop at a link to itself
-
-
-def _require_folder(path: Path) -> None:
-    if path.is_dir() or not path.parent.is_dir():
-        raise InputError(f"{path}: must be a file in a folder that exists; make the folder first or name another")
-
-
-def write_whole(path: Path, content: bytes | str) -> None:
-    """Write a file whole or not at all: into a temporary file beside it, which then replaces it.
-
-    A link is followed; a device or a pipe is written to, never replaced.
-
-    Raises
-    ------
-    InputError
-        If the folder or the file cannot be written.
-    """
-    data = content.encode() if isinstance(content, str) else content
-    _require_folder(path)
-    target = _real(path)
+def _identity(path: Path) -> object:
+    """Give what is the same for all names of a file, links of either kind among them."""
     try:
-        if target.exists() and not target.is_file():
-            target.write_bytes(data)
-        else:
-            _replace(target, data)
-    except OSError as error:
-        raise InputError(f"{path}: {error.strerror}: must be a file that can be written here; name another") from error
+        state = path.stat()
+    except OSError:
+        return real_path(path)
+    return state.st_dev, state.st_ino
 
 
-def _replace(path: Path, data: bytes) -> None:
-    """Put a new file in the place of the old one."""
-    handle, name = tempfile.mkstemp(prefix=f".{path.name}.", dir=path.parent)
-    try:
-        with os.fdopen(handle, "wb") as temporary:
-            temporary.write(data)
-        umask = os.umask(0)
-        os.umask(umask)
-        Path(name).chmod(0o666 & ~umask)
-        Path(name).replace(path)
-    except BaseException:
-        with suppress(OSError):
-            Path(name).unlink()
-        raise
+def _require_unread(taken: dict[object, Path], reads: Any) -> None:
+    from profiler.terrain import files_behind
+
+    named = list(_named_in(reads))
+    for file in (hop_file for hop_file, is_raster in named if not is_raster):
+        if (output := taken.get(_identity(file))) is not None:
+            raise InputError(f"{output}: must not be the hop file too; name another file")
+    for file in files_behind(path for path, is_raster in named if is_raster):
+        if (output := taken.get(_identity(file))) is not None:
+            same = "" if output == file else f" ({file})"
+            raise InputError(f"{output}: must not be a raster that is read{same} too; name another file")
+
+
+def _named_in(reads: Any) -> Iterator[tuple[Path, bool]]:
+    """Every path in a value, however deep, and whether it is one of rasters; the other is the hop file."""
+    if isinstance(reads, Path):
+        yield reads, True
+    elif isinstance(reads, tuple | list):
+        for each in reads:
+            yield from _named_in(each)
+    elif is_dataclass(reads):
+        if isinstance(reads, Hop) and reads.source_sha256 is not None:
+            yield Path(reads.source), False
+        for field in fields(reads):
+            yield from _named_in(getattr(reads, field.name))
 
 
 def put(target: str, text: str) -> None:
     """Send text to a file, or to standard output when the target is ``-``; UTF-8 whatever the terminal speaks."""
-    data = (text if text.endswith("\n") else text + "\n").encode()
-    if target == "-":
-        click.echo(data, nl=False)
-    else:
-        write_whole(Path(target), data)
+    _put_all([(target, text)])
+
+
+def _put_all(outputs: Sequence[tuple[str | Path, bytes | str]]) -> None:
+    """Write all outputs or none: standard output first, which may be full or read slowly; then the files."""
+    ready = [(target, _bytes(content)) for target, content in outputs]
+    for target, data in ready:
+        if target == "-":
+            click.echo(data, nl=False)
+    write_all([(Path(target), data) for target, data in ready if target != "-"])
+
+
+def _bytes(content: bytes | str) -> bytes:
+    if isinstance(content, bytes):
+        return content
+    return (content if content.endswith("\n") else content + "\n").encode()
+
+
+def tell(message: str, *, err: bool = False) -> None:
+    """Print one line; names in it are made safe to print."""
+    click.echo(printable(message), err=err)
 
 
 def json_text(document: Any) -> str:
-    """One JSON document of whatever `profiler.study.plain` can turn into one."""
+    r"""One JSON document of whatever `profiler.study.plain` takes; what could steer a terminal is escaped.
+
+    Examples
+    --------
+    >>> print(json_text("\x1b\x9b \u202e \udcff \U000e0001 é"))
+    "\u001b\u009b \u202e \udcff \udb40\udc01 é"
+    """
     from profiler.study import plain
 
-    return json.dumps(plain(document), indent=2, ensure_ascii=False, allow_nan=False)
+    text = json.dumps(plain(document), indent=2, ensure_ascii=False, allow_nan=False)
+    return re.sub(r"[^ -~\n]", lambda found: found[0] if printable(found[0]) == found[0] else _code(found[0]), text)
+
+
+def _code(letter: str) -> str:
+    """Write a character as JSON's escape of it."""
+    return json.dumps(letter)[1:-1]
 
 
 def csv_text(names: Sequence[str], rows: Iterable[Iterable[float]]) -> str:
@@ -147,7 +167,7 @@ def deliver(
     json_to: str | None,
     document: Callable[[], dict[str, Any]],
 ) -> bool:
-    """Write all that was asked for, and say whether standard output is still free for the terminal's tables.
+    """Write all that was asked for or nothing, and say whether standard output is still free for the terminal's tables.
 
     Parameters
     ----------
@@ -158,10 +178,10 @@ def deliver(
     table, document
         Make what goes there.
     """
-    for path, content in files:
-        write_whole(path, content)
+    outputs: list[tuple[str | Path, bytes | str]] = list(files)
     if csv_to is not None:
-        put(csv_to, table())
+        outputs.append((csv_to, table()))
     if json_to is not None:
-        put(json_to, json_text(document()))
+        outputs.append((json_to, json_text(document())))
+    _put_all(outputs)
     return "-" not in (csv_to, json_to)

@@ -70,8 +70,8 @@ def command(
     """
     from profiler.study import run_study
 
-    check_targets(json_to, hop_file=hop_given["hop_file"])
     hop = read_hop(**hop_given)
+    check_targets(json_to, reads=hop)
     if hop.radio is None:
         raise InputError(
             f"{hop.source}: radio: must be given to answer from; add [radio.a], [radio.b] and [[radio.mode]]"

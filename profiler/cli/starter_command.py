@@ -6,7 +6,7 @@ from pathlib import Path
 
 import click
 
-from profiler.cli.output import put
+from profiler.cli.output import put, tell
 from profiler.errors import InputError
 
 __all__ = ["command"]
@@ -26,5 +26,5 @@ def command(file: str, force: bool) -> int:
         raise InputError(f"{file}: exists already: must be a new file; name another, or replace it with --force")
     put(file, starter())
     if file != "-":
-        click.echo(f"Wrote {file}: put in your sites and terrain, then run: hopwright study {file}")
+        tell(f"Wrote {file}: put in your sites and terrain, then run: hopwright study {file}")
     return 0

@@ -61,8 +61,8 @@ def command(
     """
     from profiler.study import point_table, run_study, to_document
 
-    check_targets(json_to, csv_to, figures=(*figures, *margin_figures), hop_file=hop_given["hop_file"])
     hop = read_hop(**hop_given)
+    check_targets(json_to, csv_to, figures=(*figures, *margin_figures), reads=hop)
     with named(hop.source):
         study = run_study(hop, relief=bool(figures))
     axes = {"feet": feet, "distance_limits": distance_limits, "height_limits": height_limits}

@@ -53,8 +53,8 @@ def command(
     from profiler.study import plain
     from profiler.terrain import as_reading, survey
 
-    check_targets(json_to, hop_file=hop_file)
     hop = None if hop_file is None else load_hop(hop_file)
+    check_targets(json_to, reads=(paths, hop))
     datum, unit = (None, None) if hop is None else (hop.terrain.vertical_datum, hop.terrain.height_unit)
     with named("command line" if hop is None else hop.source):
         as_reading(datum, unit)  # what a hop file says must be right before it is used on rasters named elsewhere

@@ -4,6 +4,7 @@ The only user of pydantic, which is imported when a hop is read, not before.
 """
 
 from profiler.hopfile.edit import with_antennas
+from profiler.hopfile.moved import with_paths_from
 from profiler.hopfile.presets import PRESETS
 from profiler.hopfile.reader import load_hop, parse_hop, quick_hop
 from profiler.hopfile.starter_file import starter
@@ -15,4 +16,5 @@ __all__ = [
     "quick_hop",
     "starter",
     "with_antennas",
+    "with_paths_from",
 ]

@@ -4,6 +4,7 @@ Coordinates are longitude, latitude in degrees on WGS 84; heights are metres abo
 is. Missing ground is NaN, never 0.
 """
 
+from profiler.terrain.behind import files_behind
 from profiler.terrain.classes import sample_classes
 from profiler.terrain.describe import Bounds, RasterInfo
 from profiler.terrain.files import file_hash
@@ -29,6 +30,7 @@ __all__ = [
     "common_datum",
     "datum_key",
     "file_hash",
+    "files_behind",
     "fill_missing",
     "library_versions",
     "missing_stretches",
