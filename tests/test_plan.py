@@ -10,7 +10,7 @@ import numpy as np
 import pytest
 from affine import Affine
 
-from profiler.cli.app import main
+from profiler.cli import main
 from profiler.errors import InputError
 from profiler.geometry import ROUNDING_M
 from profiler.heights import Choice
