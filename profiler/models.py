@@ -510,8 +510,10 @@ class Hop:
 
     @property
     def has_objective(self) -> bool:
-        """Whether the hop must meet an availability target."""
-        return self.availability is not None and self.availability.objective != Objective()
+        """Whether the hop, or one of its modes, must meet an availability target."""
+        asked = [] if self.availability is None else [self.availability.objective]
+        asked += [] if self.radio is None else [mode.objective or Objective() for mode in self.radio.modes]
+        return any(objective != Objective() for objective in asked)
 
 
 @dataclass(frozen=True, slots=True, eq=False)

@@ -11,6 +11,7 @@ from hypothesis import strategies as st
 
 from profiler.atmosphere import (
     dry_pressure,
+    gas_along_ray,
     gas_attenuation,
     gas_warnings,
     local_atmosphere,
@@ -329,7 +330,7 @@ def test_all_measured_needs_no_reference_height():
 @pytest.mark.parametrize(
     ("height_m", "message"),
     [
-        (9000.0, "height_m = 9000: must be -500 to 8500 m; else give the air in the hop file"),
+        (9000.0, "height_m = 9000: must be -500 to 8500 m above sea level"),
         (-501.0, "height_m = -501: must be -500 to 8500 m"),
     ],
 )
@@ -343,6 +344,91 @@ def test_vapour_alone_cannot_be_the_pressure():
         InputError, match="total_pressure_hpa = 5: must be more than the pressure of its vapour_g_m3 alone"
     ):
         dry_pressure([1013.25, 5.0], 288.15, 7.5)
+
+
+# --- Along the ray ---
+
+
+STEEP = np.array([0, 3e3, 9e3, 20e3]), np.array([150.0, 20.0, 700.0, 2600.0])
+
+
+def by_parts(frequency_hz, centre_a_m, centre_b_m, k, parts=4000, **given):
+    """Cut the ray into short parts, each in the air at its middle: P.676 by P.835, as the definition has it."""
+    share = (np.arange(parts) + 0.5) / parts
+    length_m = STEEP[0][-1]
+    bulge = length_m**2 * share * (1 - share) / (2 * k * 6_371_000)
+    air = reference_atmosphere(centre_a_m + (centre_b_m - centre_a_m) * share - bulge)
+    per_km = gas_attenuation(frequency_hz, air.pressure_hpa, air.temperature_k, air.vapour_g_m3)
+    return float(per_km.mean() * length_m / 1e3)
+
+
+@pytest.mark.parametrize("frequency_hz", [7e9, 22.235e9, 60e9, 118.75e9, 183.31e9])
+@pytest.mark.parametrize("ends", [(200.0, 2700.0), (2800.0, 2700.0)])
+def test_gases_are_summed_at_the_height_of_the_ray(frequency_hz, ends):
+    found = gas_along_ray(frequency_hz, *STEEP, *ends, 4 / 3)
+    assert found.loss_db == pytest.approx(by_parts(frequency_hz, *ends, 4 / 3), rel=1e-6)
+    turned = gas_along_ray(frequency_hz, STEEP[0][-1] - STEEP[0][::-1], STEEP[1][::-1], *ends[::-1], 4 / 3)
+    assert turned.loss_db == pytest.approx(found.loss_db, rel=1e-12)
+    assert found.lowest_m < found.mean_m < found.highest_m
+
+
+def test_gases_of_the_ray_are_not_those_of_the_mean_ground():
+    """From rim to rim over a canyon at 60 GHz: at the ground's height between them it would be 18 dB more."""
+    canyon = np.array([0, 500.0, 10e3, 19.5e3, 20e3]), np.array([2390.0, 1000, 900, 1000, 2290])
+    rim, ground = (
+        20 * float(gas_attenuation(60e9, air.pressure_hpa, air.temperature_k, air.vapour_g_m3))
+        for air in (reference_atmosphere(2350.0 - 2 / 3 * 5.9), reference_atmosphere(1000.0))
+    )
+    assert gas_along_ray(60e9, *canyon, 2400.0, 2300.0, 4 / 3).loss_db == pytest.approx(rim, rel=1e-4)
+    assert ground - rim > 17
+
+
+def test_the_bulge_lowers_the_ray_and_the_ground_holds_it_up():
+    flat = np.array([0, 40e3, 80e3]), np.array([0.0, 0, 0])
+    straight, bent = (gas_along_ray(22e9, *flat, 300.0, 300.0, k) for k in (np.inf, 4 / 3))
+    assert bent.loss_db > 1.005 * straight.loss_db
+    # d²/(8·k·R) = 80²/(8 · 8495) km: 94.2 m of bulge in the middle, of which two thirds on the mean (a parabola)
+    assert straight.mean_m - bent.mean_m == pytest.approx(2 / 3 * 94.2, abs=0.1)
+    over = gas_along_ray(22e9, flat[0], np.array([0.0, 3000, 0]), 300.0, 300.0, 4 / 3)
+    assert over.loss_db < straight.loss_db
+    assert over.highest_m > 2500
+
+
+def test_measured_air_holds_at_the_mean_height_and_changes_with_height():
+    ends = 200.0, 2700.0
+    mean_m = gas_along_ray(60e9, *STEEP, *ends, 4 / 3).mean_m
+    mean = reference_atmosphere(mean_m)
+    same = {
+        "total_pressure_hpa": float(mean.total_pressure_hpa),
+        "temperature_k": float(mean.temperature_k),
+        "vapour_g_m3": float(mean.vapour_g_m3),
+    }
+    assert gas_along_ray(60e9, *STEEP, *ends, 4 / 3, **same).loss_db == pytest.approx(
+        gas_along_ray(60e9, *STEEP, *ends, 4 / 3).loss_db, rel=1e-12
+    )
+    wet = gas_along_ray(22e9, *STEEP, *ends, 4 / 3, vapour_g_m3=2 * same["vapour_g_m3"])
+    assert wet.atmosphere.vapour_g_m3 == pytest.approx(2 * mean.vapour_g_m3)
+    assert wet.loss_db > 1.8 * gas_along_ray(22e9, *STEEP, *ends, 4 / 3).loss_db
+
+
+@needs_itur
+def test_gases_along_the_ray_second_opinion():
+    with warnings.catch_warnings(), np.errstate():
+        warnings.simplefilter("ignore")
+        from itur.models import itu676, itu835
+    ends = (200.0, 2700.0)
+    share = (np.arange(60) + 0.5) / 60
+    height_km = (ends[0] + (ends[1] - ends[0]) * share - 20e3**2 * share * (1 - share) / (2 * 6_371_000 * 4 / 3)) / 1e3
+    total = np.array([itu835.standard_pressure(each).value for each in height_km])
+    kelvin = np.array([itu835.standard_temperature(each).value for each in height_km])
+    vapour = np.array([itu835.standard_water_vapour_density(each).value for each in height_km])
+    dry = total - vapour * kelvin / 216.7
+    rows = zip(dry, vapour, kelvin, strict=True)
+    per_km = [
+        itu676.gamma0_exact(60.0, p, rho, t).value + itu676.gammaw_exact(60.0, p, rho, t).value for p, rho, t in rows
+    ]
+    theirs = 20 * float(np.mean(per_km))
+    assert gas_along_ray(60e9, *STEEP, *ends, 4 / 3).loss_db == pytest.approx(theirs, rel=1e-4)
 
 
 # --- Ranges ---

@@ -7,7 +7,7 @@ import pytest
 from hypothesis import given
 from hypothesis import strategies as st
 
-from profiler.availability import MECHANISMS, PathFacts, outage_curve, outage_model, predict
+from profiler.availability import MECHANISMS, KStatistics, PathFacts, outage_curve, outage_model, predict
 from profiler.availability.months import worst_month_from_year
 from profiler.availability.multipath import fade_percent
 from profiler.availability.rain_outage import rain_percent
@@ -34,9 +34,14 @@ signatures = st.none() | st.builds(Signature, st.floats(5e6, 60e6), st.floats(10
 rates = st.none() | st.floats(0.0, 120.0)
 
 
+def losing(*excess_db, k_percentiles=K_PERCENTILES):
+    """Losses over those of the budget at the percentages of the percentiles, as the statistics of k take them."""
+    return KStatistics([percent for percent, _ in k_percentiles], excess_db) if k_percentiles else None
+
+
 def full_model(**changes):
-    choice, excess_db = replace(FULL, **changes), (45.0, 20.0, 0.0)
-    return outage_model(PATH, choice, signature=RADIO, k_excess_db=excess_db, low_k=0.5, low_k_excess_db=50.0)
+    choice, statistics = replace(FULL, **changes), losing(45.0, 20.0, 0.0)
+    return outage_model(PATH, choice, signature=RADIO, k_statistics=statistics, low_k=0.5, low_k_excess_db=50.0)
 
 
 def model_of(year_percent, *, frequency_ghz=4.0, **given):
@@ -51,7 +56,7 @@ def test_every_method_by_name(method):
     model = outage_model(PATH, CHOICES[method])
     found = predict(model, 40.0)
     assert found.method == method
-    assert found.worst_month_percent.multipath == pytest.approx(model.occurrence_percent * 1e-4)
+    assert found.worst_month_percent.multipath == pytest.approx(model.fading.occurrence_percent * 1e-4)
     assert 0 < found.year_percent.total < found.worst_month_percent.total < 0.1
     assert found.missing == ("selective", "rain", "obstruction")
     assert "not counted, as nothing was given for it: selective, rain, obstruction" in found.assumptions
@@ -75,12 +80,14 @@ def test_mechanisms_add_up():
 def test_model_is_the_published_functions():
     model = full_model(diversity=None)
     found = predict(model, 20.0)
-    assert found.worst_month_percent.multipath == float(fade_percent(model.occurrence_percent, 20.0))
+    assert found.worst_month_percent.multipath == float(fade_percent(model.fading.occurrence_percent, 20.0))
     assert found.year_percent.rain == float(rain_percent(model.rain_fade_001_db, 6.7e9, 20.0))
     used = {given.name: given for given in found.inputs}
     assert used["rain_rate_mm_h"].value == 42.0
     conversion = 10 ** (-used["year_conversion_db"].value / 10)
-    assert found.year_percent.multipath == pytest.approx(fade_percent(model.occurrence_percent * conversion, 20.0))
+    assert found.year_percent.multipath == pytest.approx(
+        fade_percent(model.fading.occurrence_percent * conversion, 20.0)
+    )
 
 
 def test_polarization_and_signature_reach_their_methods():
@@ -218,7 +225,7 @@ def test_limited_by_names_the_mechanism():
 
     assert limit(replace(PATH, distance_m=90e3), rain_rate_mm_h=10.0) == "multipath"
     assert limit(replace(PATH, distance_m=8e3, frequency_hz=38e9), rain_rate_mm_h=60.0) == "rain"
-    blocked = outage_model(PATH, replace(FULL, objective=objective), k_excess_db=(90.0, 80.0, 0.0))
+    blocked = outage_model(PATH, replace(FULL, objective=objective), k_statistics=losing(90.0, 80.0, 0.0))
     assert predict(blocked, 30.0).limited_by == "obstruction"
 
 
@@ -240,7 +247,8 @@ def test_objective_stays_open_where_what_matters_is_unknown():
 @pytest.mark.parametrize("k_percentiles", [(), ((0.1, 1.1), (50.0, 1.333)), ((0.001, 0.71), (50.0, 1.333))])
 def test_a_cut_off_at_a_low_k_that_the_statistics_do_not_reach_leaves_the_objective_open(k_percentiles):
     """At k = 0.7 diffraction takes 23.6 dB more than the budget counts: a margin of 13.6 dB does not hold that."""
-    excess = {"k_excess_db": tuple(0.0 for _ in k_percentiles), "k_percentiles": k_percentiles}
+    free = losing(*(0.0 for _ in k_percentiles), k_percentiles=k_percentiles)
+    excess = {"k_statistics": free, "k_percentiles": k_percentiles}
     model = model_of(20.0, low_k=0.7, low_k_excess_db=23.6, **excess)
     found = predict(model, 13.6)
     assert (found.low_k_blocks, found.objective.met, found.objective.targets[0].met) == (True, None, None)
@@ -256,16 +264,16 @@ def test_a_cut_off_at_a_low_k_that_the_statistics_do_not_reach_leaves_the_object
 
 
 def test_statistics_that_reach_the_low_k_count_it():
-    model = model_of(
-        20.0, low_k=0.7, low_k_excess_db=23.6, k_percentiles=((0.1, 0.7), (50.0, 4 / 3)), k_excess_db=(23.6, 0.0)
-    )
+    pairs = ((0.1, 0.7), (50.0, 4 / 3))
+    statistics = losing(23.6, 0.0, k_percentiles=pairs)
+    model = model_of(20.0, low_k=0.7, low_k_excess_db=23.6, k_percentiles=pairs, k_statistics=statistics)
     found = predict(model, 13.6)
     assert (found.low_k_blocks, found.objective.met, found.objective.undecided) == (True, True, ())
     assert found.year_percent.obstruction > 0.1
     assert found.warnings == ()
 
 
-FINE = {"k_percentiles": ((0.01, 0.6), (50.0, 4 / 3)), "k_excess_db": (51.2, 0.0)}
+FINE = {"k_percentiles": ((0.01, 0.6), (50.0, 4 / 3)), "k_statistics": KStatistics([0.01, 50.0], [51.2, 0.0])}
 """Statistics that end at 0.01 % of the year, under a target of 5 minutes, 0.00095 %."""
 
 
@@ -384,7 +392,7 @@ def test_obstruction_of_the_year_and_of_the_month():
     ],
 )
 def test_ranges_are_named(changes, warning):
-    found = predict(outage_model(replace(PATH, **changes), FULL, k_excess_db=(0.0, 0.0, 0.0)), 30.0)
+    found = predict(outage_model(replace(PATH, **changes), FULL, k_statistics=losing(0.0, 0.0, 0.0)), 30.0)
     assert any(warning in line for line in found.warnings), found.warnings
     assert all(line.count("\n") == 0 for line in found.warnings)
 
@@ -427,7 +435,7 @@ def test_extreme_multipath_is_warned_of_and_stays_whole():
 
 def test_every_number_has_a_source():
     sources = {"rain_rate_mm_h": "map of P.837-7", "terrain_roughness_m": "terrain", "median_k": "the map of k"}
-    given = {"k_excess_db": (45.0, 20.0, 0.0), "low_k": 0.7, "low_k_excess_db": 25.0}
+    given = {"k_statistics": losing(45.0, 20.0, 0.0), "low_k": 0.7, "low_k_excess_db": 25.0}
     model = outage_model(replace(PATH, median_k=1.31), FULL, signature=RADIO, sources=sources, **given)
     used = {given.name: given for given in predict(model, 30.0).inputs}
     assert all(given.source for given in used.values())
@@ -438,14 +446,14 @@ def test_every_number_has_a_source():
     assert used["k_percentiles"].line == "k_percentiles = 0.6 at 0.1 %, 0.8 at 1 %, 1.33 at 50 %: given"
     assert (used["median_k"].value, used["median_k"].source) == (1.31, "the map of k")
     assert (used["low_k"].value, used["low_k_excess_db"].value) == (0.7, 25.0)
-    assert used["multipath_occurrence_percent"].value == model.occurrence_percent
+    assert used["multipath_occurrence_percent"].value == model.fading.occurrence_percent
     assert "P.530-17 §2.3.1, detailed design" in used["geoclimatic_factor"].source
 
 
 def test_geoclimatic_factor_given_replaces_its_formula():
     given = outage_model(PATH, AvailabilityChoice("p530-17", geoclimatic_factor=1e-5))
     more = outage_model(PATH, AvailabilityChoice("p530-17", geoclimatic_factor=2e-5, dn1_n_km=-300.0))
-    assert more.occurrence_percent == pytest.approx(2 * given.occurrence_percent)
+    assert more.fading.occurrence_percent == pytest.approx(2 * given.fading.occurrence_percent)
     assert "dn1_n_km" not in {used.name for used in more.notes.inputs}
 
 
@@ -476,8 +484,6 @@ def test_what_is_refused(choice, message):
 def test_facts_and_margins_that_are_refused():
     with pytest.raises(InputError, match="mean_ground_m = not given: must be given for multipath_method p530-18"):
         outage_model(replace(PATH, mean_ground_m=None), CHOICES["p530-18"])
-    with pytest.raises(InputError, match="k_excess_db has 1 values: must have one for each of the 3 k_percentiles"):
-        outage_model(PATH, FULL, k_excess_db=(1.0,))
     with pytest.raises(InputError, match=r"low_k = 0\.7: must be given together with low_k_excess_db = None"):
         outage_model(PATH, FULL, low_k=0.7)
     with pytest.raises(InputError, match="distance_m = 0: must be finite and more than 0 m"):

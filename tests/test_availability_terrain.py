@@ -8,7 +8,7 @@ import pytest
 from hypothesis import given
 from hypothesis import strategies as st
 
-from profiler.availability import roughness_grid, terrain_roughness
+from profiler.availability import KStatistics, k_statistics, roughness_grid, terrain_roughness
 from profiler.availability.obstruction import obstruction_percent
 from profiler.errors import InputError
 
@@ -24,7 +24,7 @@ def test_gaussian_loss_gives_gaussian_tails():
 
     percent = np.array([0.1, 5.0, 50.0, 99.0])
     excess = -10.0 * ndtri(percent / 100)
-    found = obstruction_percent(percent, excess, [0.0, 10.0, 20.0, 40.0])
+    found = obstruction_percent(KStatistics(percent, excess), [0.0, 10.0, 20.0, 40.0])
     assert found == pytest.approx([50.0, 15.8655, 2.2750, 0.0], abs=0.5e-4)
 
 
@@ -34,42 +34,68 @@ def test_against_many_draws(percent, data, margin_db):
     from scipy.special import ndtri
 
     excess = data.draw(st.lists(st.floats(-20.0, 60.0), min_size=len(percent), max_size=len(percent)))
-    found = float(obstruction_percent(percent, excess, margin_db))
-    closed = (percent, excess) if percent[-1] >= 50 else ([*percent, 50.0], [*excess, 0.0])
+    found = float(obstruction_percent(KStatistics(percent, excess), margin_db))
     draws = (np.arange(20_000) + 0.5) / 20_000
-    loss = np.interp(ndtri(draws), ndtri(np.array(closed[0]) / 100), closed[1])
+    loss = np.interp(ndtri(draws), ndtri(np.array(percent) / 100), excess)
     assert found == pytest.approx(100 * np.mean(loss > margin_db), abs=0.05)
 
 
 @given(percentiles, st.lists(st.floats(-20.0, 60.0), min_size=6, max_size=6))
 def test_more_margin_less_obstruction(percent, excess):
-    found = obstruction_percent(percent, excess[: len(percent)], np.linspace(0.0, 70.0, 141))
+    found = obstruction_percent(KStatistics(percent, excess[: len(percent)]), np.linspace(0.0, 70.0, 141))
     assert (np.diff(found) <= 1e-9).all()
     assert found[0] <= 100.0 + 1e-9
     assert found[-1] == 0.0
 
 
 def test_one_low_k_bounds_the_outage():
-    # Cut off at the k that is not exceeded for 0.1 %: at least that; free there: nothing is counted.
-    # Between, the quantile runs from -3.0902 (0.1 %) to 0 (50 %): at 15 of 30 dB it is -1.5451, and Φ = 6.117 %.
-    assert float(obstruction_percent(0.1, 30.0, 29.9999)) == pytest.approx(0.1, abs=1e-4)
-    assert float(obstruction_percent(0.1, 30.0, 15.0)) == pytest.approx(6.117, abs=0.005)
-    assert float(obstruction_percent(0.1, 30.0, 30.0)) == 0.0
-    assert float(obstruction_percent([50.0, 90.0], [10.0, 5.0], 1.0)) == 100.0
+    # Cut off at the k that is not exceeded for 0.1 %: at least that; free there: nothing is counted. A loss that is
+    # linear in 1/k runs from 30 dB at the normal score -3.0902 (0.1 %) to 0 (50 %): 15 dB at -1.5451, Φ = 6.117 %.
+    one = k_statistics([(0.1, 0.5)], 4 / 3, lambda k: 30.0 * (1 / k - 0.75) / (2 - 0.75))
+    assert float(obstruction_percent(one, 29.9999)) == pytest.approx(0.1, abs=1e-4)
+    assert float(obstruction_percent(one, 15.0)) == pytest.approx(6.117, abs=0.005)
+    assert float(obstruction_percent(one, 30.0)) == 0.0
+    assert one.assumptions == ("obstruction fading: the k given end below 50 %; there k = 1.333, the median",)
+    assert float(obstruction_percent(KStatistics([50.0, 90.0], [10.0, 5.0]), 1.0)) == 100.0
+
+
+RIDGE = np.array([0, 6e3, 8e3, 20e3, 40e3]), np.array([100.0, 140.0, 100.0, 190.0, 100.0])
+SPREAD = ((0.1, 0.55), (1.0, 0.75), (10.0, 1.05), (50.0, 1.4), (90.0, 2.2))
+
+
+@pytest.mark.parametrize("margin_db", [3.0, 8.0, 14.0, 20.0])
+@pytest.mark.parametrize("spread", [SPREAD, SPREAD[:1], SPREAD[:2], SPREAD[1:3]])
+def test_obstruction_is_that_of_many_draws_of_k(spread, margin_db):
+    """Draw k as the confidence analysis does, take the loss of each, count; the loss is far from linear in between."""
+    from scipy.special import ndtr, ndtri
+
+    from profiler.diffraction import losses_over_k
+
+    def excess_at(k):
+        losses = losses_over_k("delta-bullington", *RIDGE, 210.0, 230.0, 7e9, np.append(k, 1.4))
+        return losses[:-1] - losses[-1]
+
+    found = float(obstruction_percent(k_statistics(spread, 1.4, excess_at), margin_db))
+    percent, k = np.array(spread if spread[-1][0] >= 50 else (*spread, (50.0, 1.4))).T
+    score = np.linspace(-6, 6, 24_001)
+    loss = excess_at(1 / np.interp(score, ndtri(percent / 100), 1 / k))
+    loss[score < ndtri(percent[0] / 100)] = excess_at(k[:1])[0]  # below the lowest k it counts as there
+    density = np.diff(ndtr(np.append(score, 9.0)))
+    assert found == pytest.approx(100 * density[loss > margin_db].sum(), rel=0.01, abs=1e-5)
 
 
 @pytest.mark.parametrize(
     ("percent", "excess", "message"),
     [
-        ([1.0, 0.1], [1.0, 2.0], r"k_percent = \[1.0, 0.1\]: must ascend within 0 to 100 %"),
-        ([0.0, 1.0], [1.0, 2.0], r"k_percent = \[0.0, 1.0\]: must ascend within 0 to 100 %"),
-        ([1.0, 2.0], [1.0], r"excess_loss_db of shape \(1,\): must be one value for each of the 2 k_percent"),
-        ([1.0], [np.nan], r"excess_loss_db = \[nan\]: must be finite dB"),
+        ([1.0, 0.1], [1.0, 2.0], r"percent = \[1.0, 0.1\]: must ascend within 0 to 100 %"),
+        ([0.0, 1.0], [1.0, 2.0], r"percent = \[0.0, 1.0\]: must ascend within 0 to 100 %"),
+        ([1.0, 2.0], [1.0], r"excess_db of shape \(1,\): must be one value for each of 2 percent"),
+        ([1.0], [np.nan], r"excess_db = \[nan\]: must be finite dB"),
     ],
 )
 def test_statistics_that_are_refused(percent, excess, message):
     with pytest.raises(InputError, match=message):
-        obstruction_percent(percent, excess, 10.0)
+        KStatistics(percent, excess)
 
 
 @given(st.floats(-180.0, 180.0), st.floats(-85.0, 85.0))

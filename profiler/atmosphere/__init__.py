@@ -6,13 +6,16 @@ barometer reads the total, p + e with e the vapour pressure: names with ``total`
 """
 
 from profiler.atmosphere.air import Atmosphere, dry_pressure, local_atmosphere, reference_atmosphere
+from profiler.atmosphere.along_ray import GasLoss, gas_along_ray
 from profiler.atmosphere.gases import gas_attenuation
 from profiler.atmosphere.rain import rain_attenuation, rain_coefficients
 from profiler.atmosphere.ranges import gas_warnings
 
 __all__ = [
     "Atmosphere",
+    "GasLoss",
     "dry_pressure",
+    "gas_along_ray",
     "gas_attenuation",
     "gas_warnings",
     "local_atmosphere",

@@ -115,8 +115,7 @@ def dry_pressure(total_pressure_hpa: ArrayLike, temperature_k: ArrayLike, vapour
 def _reference(height_m: ArrayLike) -> tuple[Float, Float, Float]:
     """Total pressure, temperature and vapour of the mean annual global profile, P.835-6 Annex 1 §1, lowest layer."""
     low, high = HEIGHT_RANGE_M
-    allowed = f"{low:g} to {high:g} m; else give the air in the hop file"
-    height_km = within("height_m", height_m, low, high, allowed) / 1e3
+    height_km = within("height_m", height_m, low, high, f"{low:g} to {high:g} m above sea level") / 1e3
     geopotential_km = 6356.766 * height_km / (6356.766 + height_km)
     temperature = 288.15 - 6.5 * geopotential_km
     pressure = 1013.25 * (288.15 / temperature) ** (-34.1632 / 6.5)
@@ -129,6 +128,7 @@ def local_atmosphere(
     total_pressure_hpa: ArrayLike | None = None,
     temperature_k: ArrayLike | None = None,
     vapour_g_m3: ArrayLike | None = None,
+    given_at_m: ArrayLike | None = None,
 ) -> Atmosphere:
     """Air with what was measured, and the reference atmosphere at the height for what was not.
 
@@ -137,11 +137,14 @@ def local_atmosphere(
     height_m
         Height above mean sea level, -500 to 8500 m unless all the rest is given; all arguments broadcast.
     total_pressure_hpa
-        Barometric pressure at that height (dry air plus vapour, not reduced to sea level), above 0 hPa, or None.
+        Barometric pressure (dry air plus vapour, not reduced to sea level), above 0 hPa, or None.
     temperature_k
         Temperature, above 0 K, or None.
     vapour_g_m3
         Water-vapour density, 0 g/m³ or more, or None.
+    given_at_m
+        Height at which the given numbers hold, -500 to 8500 m, if not ``height_m``: from there temperature changes by
+        the difference, pressure and vapour by the ratio that the reference atmosphere has between the two heights.
 
     Returns
     -------
@@ -158,6 +161,8 @@ def local_atmosphere(
     >>> air = local_atmosphere(0.0, vapour_g_m3=20.0)
     >>> round(float(air.pressure_hpa), 2), round(float(air.total_pressure_hpa), 2), float(air.temperature_k)
     (986.66, 1013.25, 288.15)
+    >>> float(local_atmosphere(1000.0, temperature_k=300.0, given_at_m=0.0).temperature_k.round(2))
+    293.5
 
     Notes
     -----
@@ -165,6 +170,11 @@ def local_atmosphere(
     United States Standard Atmosphere 1976 behind it tabulates.
     """
     total, temperature, vapour = total_pressure_hpa, temperature_k, vapour_g_m3
+    if given_at_m is not None:
+        (here_total, here_temperature, here_vapour), there = _reference(height_m), _reference(given_at_m)
+        total = None if total is None else np.asarray(total) * here_total / there[0]
+        temperature = None if temperature is None else np.asarray(temperature) + here_temperature - there[1]
+        vapour = None if vapour is None else np.asarray(vapour) * here_vapour / there[2]
     if total is None or temperature is None or vapour is None:
         mean_total, mean_temperature, mean_vapour = _reference(height_m)
         total = mean_total if total is None else total

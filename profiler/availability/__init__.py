@@ -7,18 +7,24 @@ formula, with its source.
 
 from profiler.availability.facts import PathFacts
 from profiler.availability.model import OutageModel, outage_model
+from profiler.availability.objective import ObjectiveResult
+from profiler.availability.obstruction import KStatistics, k_statistics
 from profiler.availability.outages import MECHANISMS, Outages
-from profiler.availability.predict import Availability, OutageCurve, outage_curve, predict
+from profiler.availability.predict import Availability, MultipathEstimate, OutageCurve, outage_curve, predict
 from profiler.availability.roughness import roughness_grid, terrain_roughness
 from profiler.availability.vigants import path_roughness
 
 __all__ = [
     "MECHANISMS",
     "Availability",
+    "KStatistics",
+    "MultipathEstimate",
+    "ObjectiveResult",
     "OutageCurve",
     "OutageModel",
     "Outages",
     "PathFacts",
+    "k_statistics",
     "outage_curve",
     "outage_model",
     "path_roughness",

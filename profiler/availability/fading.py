@@ -3,7 +3,8 @@
 from __future__ import annotations
 
 from collections.abc import Mapping
-from dataclasses import dataclass
+from contextlib import suppress
+from dataclasses import dataclass, replace
 from typing import get_args
 
 from profiler.availability.facts import PathFacts
@@ -21,7 +22,12 @@ from profiler.availability.vigants import climate_factor, occurrence_vigants, se
 from profiler.errors import InputError
 from profiler.models import AvailabilityChoice, MultipathMethod
 
-__all__ = ["GIVEN", "MultipathFading", "multipath_fading"]
+__all__ = ["GIVEN", "MultipathFading", "NumberNotGivenError", "fadings_side_by_side", "multipath_fading"]
+
+
+class NumberNotGivenError(InputError):
+    """A number that the multipath method cannot do without is not there."""
+
 
 GIVEN = "given"
 """Source of a number for which the caller names none."""
@@ -42,7 +48,7 @@ def _needed(choice: AvailabilityChoice, field: str, method: str, remedy: str) ->
     """Give the number of the choice that the method cannot do without."""
     value = getattr(choice, field)
     if value is None:
-        raise InputError(f"{field} = not given: must be given for multipath_method {method}; {remedy}")
+        raise NumberNotGivenError(f"{field} = not given: must be given for multipath_method {method}; {remedy}")
     return float(value)
 
 
@@ -81,7 +87,7 @@ def _fading_17(path: PathFacts, choice: AvailabilityChoice, sources: Mapping[str
     )
     source = f"Rec. ITU-R P.530-17 §2.3.1, {'detailed design' if occurrence is occurrence_17 else 'quick planning'}"
     share, year = _p530_year(path)
-    notes += Notes((InputUsed("multipath_occurrence_percent", p0, source),), warnings=p530_warnings(path, choice))
+    notes += Notes((InputUsed("multipath_occurrence_percent", p0, source),), outside_fit=p530_warnings(path, choice))
     return MultipathFading(p0, share, notes + year)
 
 
@@ -91,7 +97,7 @@ def _fading_18(path: PathFacts, choice: AvailabilityChoice, sources: Mapping[str
     factor = _needed(choice, "geoclimatic_factor", "p530-18", remedy)
     dn75 = _needed(choice, "dn75_n_km", "p530-18", remedy)
     if path.mean_ground_m is None:
-        raise InputError("mean_ground_m = not given: must be given for multipath_method p530-18")
+        raise NumberNotGivenError("mean_ground_m = not given: must be given for multipath_method p530-18")
     p0 = float(
         occurrence_18(
             path.distance_m,
@@ -115,7 +121,7 @@ def _fading_18(path: PathFacts, choice: AvailabilityChoice, sources: Mapping[str
     )
     kept = "P.530-18 is taken to keep the shallow fading (§2.3.2) and the year conversion (§2.3.4) of P.530-17"
     share, year = _p530_year(path)
-    return MultipathFading(p0, share, Notes(used, (kept,), (untested, *p530_warnings(path, choice))) + year)
+    return MultipathFading(p0, share, Notes(used, (kept,), (untested,), p530_warnings(path, choice)) + year)
 
 
 def _vigants_factor(
@@ -127,7 +133,7 @@ def _vigants_factor(
             InputUsed("climate_factor", choice.climate_factor, sources.get("climate_factor", GIVEN)),
         )
     if choice.climate is None or path.ground_roughness_m is None:
-        raise InputError(
+        raise NumberNotGivenError(
             "climate_factor = not given: must be given for multipath_method vigants-barnett; give it, or the climate "
             "(humid, average, dry) with the roughness of the path's ground"
         )
@@ -155,7 +161,7 @@ def _fading_vigants(path: PathFacts, choice: AvailabilityChoice, sources: Mappin
         InputUsed("multipath_occurrence_percent", p0, "Barnett (BSTJ 1972), 100 x 6.0e-7·c·f·d³"),
         InputUsed("season_share", share, "Vigants (BSTJ 1975), T0 = (t/50 °F)·8e6 s over the year"),
     )
-    notes = Notes((*used, *temperature, *found), tuple(assumptions), vigants_warnings(path, choice))
+    notes = Notes((*used, *temperature, *found), tuple(assumptions), outside_fit=vigants_warnings(path, choice))
     return MultipathFading(p0, share, notes)
 
 
@@ -198,3 +204,42 @@ def multipath_fading(path: PathFacts, choice: AvailabilityChoice, sources: Mappi
         allowed = ", ".join(get_args(MultipathMethod))
         raise InputError(f"multipath_method = {choice.multipath_method}: must be {allowed}")
     return methods[choice.multipath_method](path, choice, sources)
+
+
+def fadings_side_by_side(
+    path: PathFacts, choice: AvailabilityChoice, sources: Mapping[str, str]
+) -> dict[MultipathMethod, MultipathFading]:
+    """Occurrence of multipath by every method whose numbers are known; that of the choice must be among them.
+
+    A geoclimatic factor that is given is that of the chosen method: no other takes it.
+
+    Parameters
+    ----------
+    path, choice, sources
+        As in `multipath_fading`.
+
+    Returns
+    -------
+    dict
+        By the name of the method, that of the choice first.
+
+    Raises
+    ------
+    InputError
+        As `multipath_fading` for the method of the choice.
+
+    Examples
+    --------
+    >>> path = PathFacts(40e3, 7e9, 300.0, 400.0, latitude=45.0)
+    >>> choice = AvailabilityChoice("p530-17", dn1_n_km=-300.0, terrain_roughness_m=90.0, climate_factor=1.0)
+    >>> found = fadings_side_by_side(path, choice, {})
+    >>> {method: round(fading.occurrence_percent, 2) for method, fading in found.items()}
+    {'p530-17': 6.68, 'p530-17-quick': 7.65, 'vigants-barnett': 26.88}
+    """
+    found = {choice.multipath_method: multipath_fading(path, choice, sources)}
+    for method in get_args(MultipathMethod):
+        if method not in found:
+            with suppress(NumberNotGivenError):
+                other = replace(choice, multipath_method=method, geoclimatic_factor=None)
+                found[method] = multipath_fading(path, other, sources)
+    return found

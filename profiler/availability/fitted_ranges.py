@@ -1,12 +1,12 @@
-"""Warnings where a method's published range is left; the number is given all the same."""
+"""Where a method's published range is left: a line that says so, and what was done about it."""
 
 from __future__ import annotations
 
 from profiler.availability.facts import PathFacts
 from profiler.availability.vigants import ROUGHNESS_RANGE_M, SEASON_TEMPERATURE_RANGE_K
-from profiler.models import AvailabilityChoice, DiversityChoice
+from profiler.models import AvailabilityChoice
 
-__all__ = ["diversity_warnings", "p530_warnings", "rain_warnings", "vigants_warnings"]
+__all__ = ["diversity_within_fit", "p530_warnings", "rain_warnings", "vigants_warnings"]
 
 _GRAZING_DB = 6.0
 """Loss over a knife edge that touches the ray, Rec. ITU-R P.526-15 §4.1."""
@@ -108,19 +108,35 @@ def rain_warnings(path: PathFacts) -> tuple[str, ...]:
     )
 
 
-def diversity_warnings(path: PathFacts, choice: AvailabilityChoice, diversity: DiversityChoice) -> tuple[str, ...]:
-    """Ranges of the space-diversity improvement that goes with the multipath method.
+def diversity_within_fit(
+    path: PathFacts, choice: AvailabilityChoice, spacing_m: float
+) -> tuple[tuple[float, float, float], tuple[str, ...]]:
+    """Distance, frequency and spacing by which space diversity is credited, and a line for each that leaves the fit.
+
+    Where the formula of the multipath method carried on beyond its range would promise more than at the range's edge,
+    the value of the edge stands; where it promises less, it is carried on.
 
     Notes
     -----
-    Source: Rec. ITU-R P.530-17 §6.2; CCIR Report 338 beside Vigants (BSTJ 1975); both from memory.
+    Source of the ranges: Rec. ITU-R P.530-17 §6.2; CCIR Report 338 beside Vigants (BSTJ 1975); both from memory. Both
+    laws grow with the spacing; P.530's grows with the distance and falls with the frequency, Vigants's the other way.
     """
     if choice.multipath_method == "vigants-barnett":
-        law, distance, spacing = "space diversity by Vigants (BSTJ 1975)", (24.0, 70.0), (5.0, 15.0)
+        law, distance, spacing, farther_is_more = "Vigants (BSTJ 1975)", (24.0, 70.0), (5.0, 15.0), False
     else:
-        law, distance, spacing = "space diversity by Rec. ITU-R P.530-17 §6.2", (43.0, 240.0), (3.0, 23.0)
-    return (
-        *_outside("distance", path.distance_km, *distance, "km", law),
-        *_outside("frequency", path.frequency_ghz, 2.0, 11.0, "GHz", law),
-        *_outside("diversity spacing", diversity.spacing_m, *spacing, "m", law),
+        law, distance, spacing, farther_is_more = "Rec. ITU-R P.530-17 §6.2", (43.0, 240.0), (3.0, 23.0), True
+    rows = (
+        ("distance", path.distance_km, distance, "km", farther_is_more),
+        ("frequency", path.frequency_ghz, (2.0, 11.0), "GHz", not farther_is_more),
+        ("diversity spacing", spacing_m, spacing, "m", True),
     )
+    credited, lines = [], []
+    for what, value, (low, high), unit, more in rows:
+        held = min(value, high) if more else max(value, low)
+        credited.append(held)
+        if not low <= value <= high:
+            done = "its formula was carried on, which promises less" if held == value else f"taken as {held:g} {unit}"
+            lines.append(
+                f"{what} = {value:g} {unit}: outside the {low:g} to {high:g} {unit} of space diversity by {law}; {done}"
+            )
+    return (credited[0] * 1e3, credited[1] * 1e9, credited[2]), tuple(lines)

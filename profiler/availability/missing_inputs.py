@@ -56,13 +56,14 @@ def reasons_open(model: OutageModel, margin_db: float) -> tuple[str, ...]:
 def obstruction_notes(model: OutageModel, margin_db: float) -> Notes:
     """Say what the statistics of k, or the lack of them, leave open at a margin of 0 dB or more."""
     notes = Notes(warnings=_cut_off(model, margin_db))
-    if model.k_percent is None or model.k_excess_db is None:
+    statistics = model.k_statistics
+    if statistics is None:
         return notes
-    lowest, highest = float(model.k_percent[0]), float(model.k_percent[-1])
-    if model.k_excess_db[-1] > margin_db:
+    lowest, highest = float(statistics.percent[0]), float(statistics.percent[-1])
+    if statistics.excess_db[-1] > margin_db:
         line = f"obstruction: cut off at the highest k given, {highest:g} %; counted as cut off at every k above it too"
         return notes + Notes(warnings=(line,))
-    if model.k_excess_db[0] > margin_db:
+    if statistics.excess_db[0] > margin_db:
         return notes
     held = f"obstruction: not cut off at the lowest k given, not exceeded {lowest:g} % of the time"
     if model.beyond_db is not None and model.beyond_db <= margin_db:

@@ -2,23 +2,22 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping, Sequence
+from collections.abc import Mapping
 from dataclasses import dataclass
 
 from profiler.atmosphere import rain_attenuation, rain_coefficients
 from profiler.availability.diversity import improvement_p530, protected_selective
 from profiler.availability.facts import PathFacts
-from profiler.availability.fading import GIVEN, MultipathFading, multipath_fading
-from profiler.availability.fitted_ranges import diversity_warnings, rain_warnings
+from profiler.availability.fading import GIVEN, MultipathFading, fadings_side_by_side
+from profiler.availability.fitted_ranges import diversity_within_fit, rain_warnings
 from profiler.availability.multipath import OCCURRENCE_LIMIT_PERCENT
 from profiler.availability.notes import InputUsed, Notes
-from profiler.availability.obstruction import obstruction_percent
+from profiler.availability.obstruction import KStatistics
 from profiler.availability.rain_outage import effective_distance
 from profiler.availability.selective import multipath_activity, selective_percent
 from profiler.availability.vigants import improvement_vigants
 from profiler.errors import InputError
-from profiler.models import AvailabilityChoice, KPeriod, Signature, frozen_array
-from profiler.units import Float
+from profiler.models import AvailabilityChoice, KPeriod, MultipathMethod, Signature
 
 __all__ = ["OutageModel", "outage_model"]
 
@@ -31,16 +30,16 @@ class OutageModel:
     ----------
     path, choice
         What it was built from.
-    occurrence_percent
-        p0 of the worst month; ``year_share`` is what the year has of it.
+    fadings
+        Occurrence of multipath by every method whose numbers are known, that of the choice first: it decides.
     improvement_at_0_db
         The diversity improvement law at a fade of 0 dB, or None without diversity; it grows as 10^(A/10).
     selective_percent
         Selective outage of the worst month, diversity included; None without a signature.
     rain_fade_001_db
         A0.01, or None without a rain rate.
-    k_percent, k_excess_db
-        Statistics of k with the diffraction loss over the budget's, or None; ``choice.k_period`` says of which period.
+    k_statistics
+        Diffraction loss over the budget's by the percent of the time that ``choice.k_period`` names, or None.
     low_k, low_k_excess_db
         Lowest k of the rules, and the diffraction loss there over the budget's, or None.
     notes
@@ -49,16 +48,19 @@ class OutageModel:
 
     path: PathFacts
     choice: AvailabilityChoice
-    occurrence_percent: float
-    year_share: float
+    fadings: Mapping[MultipathMethod, MultipathFading]
     improvement_at_0_db: float | None
     selective_percent: float | None
     rain_fade_001_db: float | None
-    k_percent: Float | None
-    k_excess_db: Float | None
+    k_statistics: KStatistics | None
     low_k: float | None
     low_k_excess_db: float | None
     notes: Notes
+
+    @property
+    def fading(self) -> MultipathFading:
+        """Occurrence of multipath by the method of the choice."""
+        return self.fadings[self.choice.multipath_method]
 
     @property
     def beyond_db(self) -> float | None:
@@ -66,7 +68,7 @@ class OutageModel:
 
         None where the statistics of k reach the low k, and count the time of it.
         """
-        if self.k_percent is not None and self.low_k is not None:
+        if self.k_statistics is not None and self.low_k is not None:
             reached = min(k for _, k in self.choice.k_percentiles)
             return self.low_k_excess_db if self.low_k < reached else None
         return self.low_k_excess_db
@@ -104,7 +106,8 @@ def _improvement(path: PathFacts, choice: AvailabilityChoice, occurrence_percent
     diversity = choice.diversity
     if diversity is None:
         return None, Notes()
-    where = (path.distance_m, path.frequency_hz, diversity.spacing_m, 0.0)
+    within, outside_fit = diversity_within_fit(path, choice, diversity.spacing_m)
+    where = (*within, 0.0)
     if choice.multipath_method == "vigants-barnett":
         improvement = improvement_vigants(*where, gain_difference_db=diversity.gain_difference_db)
         source = "Vigants (BSTJ 1975)"
@@ -119,7 +122,7 @@ def _improvement(path: PathFacts, choice: AvailabilityChoice, occurrence_percent
         "space diversity: flat and selective outage join as (flat^0.75 + selective^0.75)^(4/3), so the total is a "
         "little more than their sum (Rec. ITU-R P.530-17 §6.2)",
     )
-    return float(improvement), Notes((used,), assumptions, diversity_warnings(path, choice, diversity))
+    return float(improvement), Notes((used,), assumptions, outside_fit=outside_fit)
 
 
 def _rain(path: PathFacts, choice: AvailabilityChoice, sources: Mapping[str, str]) -> tuple[float | None, Notes]:
@@ -139,32 +142,21 @@ def _rain(path: PathFacts, choice: AvailabilityChoice, sources: Mapping[str, str
         InputUsed("rain_fade_001_db", fade_db, "Rec. ITU-R P.530-18 §2.4.1"),
     )
     assumption = "rain in the worst month from the year by Rec. ITU-R P.841-6, global values (Q1 2.85, β 0.13)"
-    return fade_db, Notes(used, (assumption,), rain_warnings(path))
+    return fade_db, Notes(used, (assumption,), outside_fit=rain_warnings(path))
 
 
-def _k_statistics(
-    choice: AvailabilityChoice, k_excess_db: Sequence[float], sources: Mapping[str, str]
-) -> tuple[Float | None, Float | None, Notes]:
-    """Percentiles of k beside the excess loss at each, and what they cannot say."""
-    if len(k_excess_db) == 0:
-        return None, None, Notes()
-    if len(k_excess_db) != len(choice.k_percentiles):
-        raise InputError(
-            f"k_excess_db has {len(k_excess_db)} values: must have one for each of the "
-            f"{len(choice.k_percentiles)} k_percentiles"
-        )
-    percent = [pair[0] for pair in choice.k_percentiles]
-    obstruction_percent(percent, k_excess_db, 0.0)  # stop here, not at the first margin, if they are unusable
+def _k_notes(choice: AvailabilityChoice, statistics: KStatistics | None, sources: Mapping[str, str]) -> Notes:
+    """Say what the statistics of k are, and what they cannot say."""
+    if statistics is None:
+        return Notes()
     other: dict[KPeriod, str] = {"year": "worst month from the year", "worst-month": "year from the worst month"}
-    assumptions = [
+    assumption = (
         f"obstruction fading: k statistics are of the {choice.k_period.replace('-', ' ')}; {other[choice.k_period]} by "
-        "Rec. ITU-R P.841-6, global values (Q1 2.85, β 0.13); loss is linear in the normal quantile between percentiles"
-    ]
-    if percent[-1] < 50.0:
-        assumptions.append("obstruction fading: no excess loss at 50 %, where the budget's median k holds")
+        "Rec. ITU-R P.841-6, global values (Q1 2.85, β 0.13); 1/k is linear in the normal score between percentiles"
+    )
+    assumptions = [assumption, *statistics.assumptions]
     text = ", ".join(f"{k:.4g} at {share:g} %" for share, k in choice.k_percentiles)
-    used = InputUsed("k_percentiles", text, sources.get("k_percentiles", GIVEN))
-    return frozen_array(percent), frozen_array(k_excess_db), Notes((used,), tuple(assumptions))
+    return Notes((InputUsed("k_percentiles", text, sources.get("k_percentiles", GIVEN)),), tuple(assumptions))
 
 
 def _diffraction(
@@ -187,7 +179,7 @@ def outage_model(
     choice: AvailabilityChoice,
     *,
     signature: Signature | None = None,
-    k_excess_db: Sequence[float] = (),
+    k_statistics: KStatistics | None = None,
     low_k: float | None = None,
     low_k_excess_db: float | None = None,
     sources: Mapping[str, str] | None = None,
@@ -203,11 +195,12 @@ def outage_model(
         ``rain_rate_mm_h`` there is no rain outage, and the result says so.
     signature
         The radio's selective-fading signature; None leaves selective fading out.
-    k_excess_db
-        Diffraction loss at the k of each of ``choice.k_percentiles`` less the diffraction loss in the budget, dB, in
-        their order; empty leaves obstruction fading out.
+    k_statistics
+        Diffraction loss over that of the budget by the percent of ``choice.k_period``, from `k_statistics`; None leaves
+        obstruction fading out.
     low_k, low_k_excess_db
-        The lowest k of the rules, and the same there. It gives no percentage, only whether the hop is cut off there.
+        The lowest k of the rules, and the diffraction loss there over that of the budget. It gives no percentage, only
+        whether the hop is cut off there.
     sources
         Where numbers came from, by field name of the choice or the path, for the result; ``"given"`` for the rest.
 
@@ -219,27 +212,28 @@ def outage_model(
     Raises
     ------
     InputError
-        If the method is unknown, lacks a number, or the statistics of k and their losses do not match.
+        If the method is unknown or lacks a number.
 
     Examples
     --------
     >>> path = PathFacts(40e3, 7e9, 300.0, 400.0, latitude=45.0)
     >>> choice = AvailabilityChoice("p530-17-quick", dn1_n_km=-300.0, rain_rate_mm_h=42.0)
     >>> model = outage_model(path, choice)
-    >>> round(model.occurrence_percent, 2), round(model.rain_fade_001_db, 2)
+    >>> round(model.fading.occurrence_percent, 2), round(model.rain_fade_001_db, 2)
     (7.65, 4.98)
 
     Notes
     -----
     Source: the modules of this package, each with its own.
     """
-    fading = multipath_fading(path, choice, sources or {})
+    fadings = fadings_side_by_side(path, choice, sources or {})
+    fading = fadings[choice.multipath_method]
     improvement, diversity_notes = _improvement(path, choice, fading.occurrence_percent)
     selective, selective_notes = None, Notes()
     if signature is not None:
         selective, selective_notes = _selective(path, fading, signature, improvement)
     rain_fade, rain_notes = _rain(path, choice, sources or {})
-    k_percent, k_excess, k_notes = _k_statistics(choice, k_excess_db, sources or {})
+    k_notes = _k_notes(choice, k_statistics, sources or {})
     losses = _diffraction(path, low_k, low_k_excess_db, sources or {})
     general = Notes(
         assumptions=(
@@ -249,7 +243,7 @@ def outage_model(
     )
     if fading.occurrence_percent >= OCCURRENCE_LIMIT_PERCENT:
         general += Notes(
-            warnings=(
+            outside_fit=(
                 f"multipath occurrence = {fading.occurrence_percent:.4g} %: outside the 0 to 2000 % of the shallow "
                 "fading of Rec. ITU-R P.530-17 §2.3.2; the deep-fade law was used at every depth",
             )
@@ -257,13 +251,11 @@ def outage_model(
     return OutageModel(
         path=path,
         choice=choice,
-        occurrence_percent=fading.occurrence_percent,
-        year_share=fading.year_share,
+        fadings=fadings,
         improvement_at_0_db=improvement,
         selective_percent=selective,
         rain_fade_001_db=rain_fade,
-        k_percent=k_percent,
-        k_excess_db=k_excess,
+        k_statistics=k_statistics,
         low_k=low_k,
         low_k_excess_db=low_k_excess_db,
         notes=fading.notes + selective_notes + diversity_notes + rain_notes + losses + k_notes + general,

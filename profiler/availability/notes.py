@@ -34,6 +34,8 @@ class InputUsed:
 class Notes:
     """Numbers used, assumptions and warnings, one plain line each; notes add up in order, none twice.
 
+    ``outside_fit`` are the warnings that a formula is used outside the data it was fitted to.
+
     Examples
     --------
     >>> (Notes(warnings=("a", "b")) + Notes(warnings=("b",))).warnings
@@ -43,6 +45,7 @@ class Notes:
     inputs: tuple[InputUsed, ...] = ()
     assumptions: tuple[str, ...] = ()
     warnings: tuple[str, ...] = ()
+    outside_fit: tuple[str, ...] = ()
 
     def __add__(self, other: Notes) -> Notes:
         """Both sets of notes, in order, without repeats."""
@@ -50,4 +53,5 @@ class Notes:
             tuple(dict.fromkeys(self.inputs + other.inputs)),
             tuple(dict.fromkeys(self.assumptions + other.assumptions)),
             tuple(dict.fromkeys(self.warnings + other.warnings)),
+            tuple(dict.fromkeys(self.outside_fit + other.outside_fit)),
         )

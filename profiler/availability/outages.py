@@ -88,11 +88,11 @@ def _periods_of_obstruction(
     model: OutageModel, margin_db: Float
 ) -> tuple[tuple[Float, Float] | None, tuple[Float, Float] | None]:
     """Obstruction outage of the worst month and of the year: counted, and at most."""
-    if model.k_percent is None or model.k_excess_db is None:
+    statistics = model.k_statistics
+    if statistics is None:
         return None, None
-    statistics = (model.k_percent, model.k_excess_db, margin_db)
-    counted = obstruction_percent(*statistics)
-    most = counted + unknown_percent(*statistics, beyond_db=model.beyond_db)
+    counted = obstruction_percent(statistics, margin_db)
+    most = counted + unknown_percent(statistics, margin_db, beyond_db=model.beyond_db)
     if model.choice.k_period == "year":
         return (worst_month_from_year(counted), worst_month_from_year(most)), (counted, most)
     return (counted, most), (year_from_worst_month(counted), year_from_worst_month(most))
@@ -129,7 +129,7 @@ def outages_at(model: OutageModel, margin_db: ArrayLike) -> tuple[Outages[Float]
     ([0.00765, 0.00076], True, True)
     """
     margin = not_negative("margin_db", margin_db, "dB")
-    p0, share = model.occurrence_percent, model.year_share
+    p0, share = model.fading.occurrence_percent, model.fading.year_share
     improvement = np.asarray(1.0)
     if model.improvement_at_0_db is not None:
         improvement = np.maximum(model.improvement_at_0_db * 10.0 ** (margin / 10.0), 1.0)

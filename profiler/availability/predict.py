@@ -9,6 +9,7 @@ from numpy.typing import ArrayLike
 
 from profiler.availability.missing_inputs import obstruction_notes
 from profiler.availability.model import OutageModel
+from profiler.availability.multipath import fade_percent
 from profiler.availability.notes import InputUsed, Notes
 from profiler.availability.objective import LARGEST_MARGIN_DB, Limit, ObjectiveResult, judge, limit_of
 from profiler.availability.outages import MECHANISMS, Mechanism, Outages, outages_at
@@ -17,7 +18,25 @@ from profiler.checks import finite
 from profiler.models import MultipathMethod, frozen_array
 from profiler.units import MINUTES_PER_YEAR, Float
 
-__all__ = ["Availability", "OutageCurve", "outage_curve", "predict"]
+__all__ = ["Availability", "MultipathEstimate", "OutageCurve", "outage_curve", "predict"]
+
+
+_WIDE_SPREAD = 3.0
+"""Multipath methods that differ by more than this factor are worth a warning."""
+
+
+@dataclass(frozen=True, slots=True)
+class MultipathEstimate:
+    """Outage by flat multipath at the hop's fade margin, without diversity, by one method.
+
+    ``chosen`` is the method that decides; ``outside_fit`` says where it is used outside the data it was fitted to.
+    """
+
+    method: MultipathMethod
+    chosen: bool
+    worst_month_percent: float
+    year_percent: float
+    outside_fit: tuple[str, ...]
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -39,6 +58,12 @@ class Availability:
         it is counted only where the statistics of k reach that k.
     objective
         The targets judged, or None if none was set.
+    multipath
+        Flat fading by every multipath method whose numbers are known, without diversity; the chosen one, which decides,
+        stands first.
+    outside_fit
+        Lines that say where a formula of the outage is used outside the data it was fitted to; empty where none is.
+        They are among the warnings too.
     limited_by
         What limits the hop: of the objective, or without one the mechanism with the most outage in the year.
     inputs, assumptions, warnings
@@ -53,6 +78,8 @@ class Availability:
     low_k_blocks: bool | None
     objective: ObjectiveResult | None
     limited_by: Limit
+    multipath: tuple[MultipathEstimate, ...]
+    outside_fit: tuple[str, ...]
     inputs: tuple[InputUsed, ...]
     assumptions: tuple[str, ...]
     warnings: tuple[str, ...]
@@ -123,6 +150,31 @@ def _point(outages: Outages[Float], down: bool) -> Outages[float]:
     )
 
 
+def _side_by_side(model: OutageModel, fade_margin_db: float) -> tuple[MultipathEstimate, ...]:
+    """Flat multipath by every method whose numbers are known, the chosen one first."""
+    rows = []
+    for method, fading in model.fadings.items():
+        p0 = fading.occurrence_percent
+        month, year = fade_percent([p0, p0 * fading.year_share], max(fade_margin_db, 0.0)).tolist()
+        chosen = method == model.choice.multipath_method
+        rows.append(MultipathEstimate(method, chosen, month, year, fading.notes.outside_fit))
+    return tuple(rows)
+
+
+def _spread_notes(rows: tuple[MultipathEstimate, ...]) -> Notes:
+    """Warn where the multipath methods differ by more than a factor of three, naming both ends."""
+    least, most = (end(rows, key=lambda row: row.worst_month_percent) for end in (min, max))
+    if most.worst_month_percent <= _WIDE_SPREAD * least.worst_month_percent:
+        return Notes()
+    factor = most.worst_month_percent / least.worst_month_percent
+    ends = " to ".join(f"{row.worst_month_percent:.2g} % ({row.method})" for row in (least, most))
+    line = (
+        f"multipath methods differ by a factor of {factor:.2g}, {ends} of the worst month without diversity; "
+        f"{rows[0].method} is the one that was chosen, and decides"
+    )
+    return Notes(warnings=(line,))
+
+
 def _rain_notes(year: Outages[Float]) -> Notes:
     """Whether the rain outage left the percentages that its method is published for."""
     if year.rain is None or float(year.rain) == 0.0:
@@ -133,7 +185,7 @@ def _rain_notes(year: Outages[Float]) -> Notes:
     if float(year.rain) < rarest:
         return Notes(assumptions=(f"rain outage = {float(year.rain):.2g} % of the year: {span}",))
     if float(year.rain) > most:
-        return Notes(warnings=(f"rain outage = {float(year.rain):.2g} % of the year: {span}",))
+        return Notes(outside_fit=(f"rain outage = {float(year.rain):.2g} % of the year: {span}",))
     return Notes()
 
 
@@ -196,8 +248,9 @@ def predict(model: OutageModel, fade_margin_db: float) -> Availability:
     objective = judge(model, fade_margin_db)
     limited_by: Limit = "no margin" if down else limit_of(year)
     notes = model.notes + _other_notes(fade_margin_db, missing, objective)
+    multipath = _side_by_side(model, fade_margin_db)
     if not down:
-        notes += _rain_notes(year) + obstruction_notes(model, fade_margin_db)
+        notes += _spread_notes(multipath) + _rain_notes(year) + obstruction_notes(model, fade_margin_db)
     return Availability(
         fade_margin_db=float(fade_margin_db),
         method=model.choice.multipath_method,
@@ -207,7 +260,9 @@ def predict(model: OutageModel, fade_margin_db: float) -> Availability:
         low_k_blocks=None if model.low_k_excess_db is None else model.low_k_excess_db > fade_margin_db,
         objective=objective,
         limited_by=limited_by if objective is None else objective.limited_by,
+        multipath=multipath,
+        outside_fit=notes.outside_fit,
         inputs=notes.inputs,
         assumptions=notes.assumptions,
-        warnings=notes.warnings,
+        warnings=(*notes.outside_fit, *notes.warnings),
     )

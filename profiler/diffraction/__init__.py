@@ -11,6 +11,7 @@ from profiler.diffraction.methods import (
     RoundTop,
     diffract,
     diffract_over_k,
+    losses_over_k,
 )
 from profiler.diffraction.obstacles import DoubleLosses, cascaded_knife_edges, double_edge, single_knife_edge
 from profiler.diffraction.rounded import RoundedLosses, rounded_obstacle
@@ -33,6 +34,7 @@ __all__ = [
     "diffract_over_k",
     "double_edge",
     "knife_edge_loss",
+    "losses_over_k",
     "rounded_obstacle",
     "single_knife_edge",
     "spherical_earth",

@@ -21,7 +21,17 @@ from profiler.errors import InputError
 from profiler.models import DiffractionMethod, Polarization
 from profiler.units import K_MEDIAN, MEAN_EARTH_RADIUS_M, Float
 
-__all__ = ["METHODS", "DiffractionLoss", "Edge", "Inputs", "Method", "RoundTop", "diffract", "diffract_over_k"]
+__all__ = [
+    "METHODS",
+    "DiffractionLoss",
+    "Edge",
+    "Inputs",
+    "Method",
+    "RoundTop",
+    "diffract",
+    "diffract_over_k",
+    "losses_over_k",
+]
 
 
 @dataclass(frozen=True, slots=True)
@@ -223,6 +233,53 @@ METHODS: Mapping[str, Method] = MappingProxyType({method.name: method for method
 """Every method by its name, the default first."""
 
 
+def _prepared(
+    method: str,
+    distance_m: ArrayLike,
+    height_m: ArrayLike,
+    centre_a_m: float,
+    centre_b_m: float,
+    frequency_hz: float,
+    k: ArrayLike,
+    polarization: Polarization,
+    sea_fraction: float,
+) -> tuple[Method, Inputs]:
+    """Find the method by its name, and put one profile over several effective radii before it."""
+    if method not in METHODS:
+        raise InputError(f"diffraction method = {method!r}: must be one of {', '.join(METHODS)}")
+    radius = np.atleast_1d(positive("k", k, infinite=True)) * MEAN_EARTH_RADIUS_M
+    distance, height = np.asarray(distance_m, dtype=float), np.asarray(height_m, dtype=float)
+    if height.ndim != 1 or distance.ndim != 1:
+        raise InputError("height_m must be one profile, (points,): call the method's own function for a batch")
+    site = (distance, height, centre_a_m, centre_b_m, frequency_hz)
+    return METHODS[method], Inputs(*site, radius, polarization, sea_fraction)
+
+
+def losses_over_k(
+    method: str,
+    distance_m: ArrayLike,
+    height_m: ArrayLike,
+    centre_a_m: float,
+    centre_b_m: float,
+    frequency_hz: float,
+    k: ArrayLike,
+    *,
+    polarization: Polarization = "vertical",
+    sea_fraction: float = 0.0,
+) -> Float:
+    """Diffraction losses of one hop at many k, dB, `(k,)`: those of `diffract_over_k`, without edges and doubts.
+
+    Examples
+    --------
+    >>> hop = ([0, 5e3, 10e3], [100, 130, 100], 130, 130, 6e9)
+    >>> losses_over_k("knife-edge", *hop, [0.6, 4 / 3]).round(2).tolist()
+    [9.58, 7.65]
+    """
+    site = (distance_m, height_m, centre_a_m, centre_b_m, frequency_hz)
+    chosen, inputs = _prepared(method, *site, k, polarization, sea_fraction)
+    return chosen.run(inputs)[0]
+
+
 def diffract_over_k(
     method: str,
     distance_m: ArrayLike,
@@ -260,25 +317,20 @@ def diffract_over_k(
     >>> [round(loss.loss_db, 2) for loss in diffract_over_k("knife-edge", *hop, [0.6, 4 / 3])]
     [9.58, 7.65]
     """
-    if method not in METHODS:
-        raise InputError(f"diffraction method = {method!r}: must be one of {', '.join(METHODS)}")
-    factors = positive("k", k, infinite=True)
-    distance, height = np.asarray(distance_m, dtype=float), np.asarray(height_m, dtype=float)
-    if height.ndim != 1 or distance.ndim != 1:
-        raise InputError("height_m must be one profile, (points,): call the method's own function for a batch")
-    chosen = METHODS[method]
-    site = (distance, height, centre_a_m, centre_b_m, frequency_hz)
-    inputs = Inputs(*site, factors * MEAN_EARTH_RADIUS_M, polarization, sea_fraction)
+    site = (distance_m, height_m, centre_a_m, centre_b_m, frequency_hz)
+    chosen, inputs = _prepared(method, *site, k, polarization, sea_fraction)
     loss_db, found = chosen.run(inputs)
-    ranges = chosen.range_warnings(float(distance[-1]), frequency_hz)
+    ranges = chosen.range_warnings(float(inputs.distance_m[-1]), frequency_hz)
     losses = []
-    for i, factor in enumerate(factors.tolist()):
+    for i, factor in enumerate(k):
         edges = None if found is None else found.of_hop(i)
         doubts: list[str] = []
         if edges is not None and chosen.doubts is not None:
             doubts = chosen.doubts(replace(inputs, radius_m=inputs.radius_m[i]), edges)
         warnings = tuple(f"{method}: {line}" for line in (*ranges, *doubts))
-        losses.append(DiffractionLoss(factor, chosen.name, float(loss_db[i]), _edges(edges), warnings, _top(edges)))
+        losses.append(
+            DiffractionLoss(float(factor), chosen.name, float(loss_db[i]), _edges(edges), warnings, _top(edges))
+        )
     return tuple(losses)
 
 

@@ -10,7 +10,8 @@ from functools import cache, partial
 from profiler.heights import LimitHeights, heights_within, loss_excess
 from profiler.models import Hop
 from profiler.study.link import Link, air_along, link, losses_at
-from profiler.study.requirements import spacing_of
+from profiler.study.outage import ModeOutage
+from profiler.study.requirements import lower_antennas, spacing_of
 from profiler.study.result import Study
 
 __all__ = ["Excess", "LinkLimits", "for_loss", "for_objective", "link_limits", "loss_limit"]
@@ -52,27 +53,27 @@ def link_limits(study: Study) -> LinkLimits:
         return LinkLimits(None, None, why)
     above_m = max(float(study.profile.surface_m.max()), study.centre_a_m, study.centre_b_m)
     probe = link(hop, study.profile, study.climate, study.air, above_m, above_m)
-    found = probe.outage.availability
+    asked = probe.outage.asked
     with_margin = _margin(probe) is not None
     # the search asks often: only the modes that are judged, and only the k that counts
-    judged = {hop.radio.modes[0].name, *(mode.mode for mode in probe.outage.modes[:1])} if hop.radio.modes else set()
-    modes = tuple(mode for mode in hop.radio.modes if mode.name in judged)
+    judged = {mode.mode for mode in (*probe.outage.modes[:1], *asked)}
+    modes = tuple(mode for i, mode in enumerate(hop.radio.modes) if i == 0 or mode.name in judged)
     lean = replace(hop, radio=replace(hop.radio, modes=modes), rules=(min(hop.rules, key=lambda rule: rule.k),))
     at = cache(lambda a, b: _link_at(study, lean, a, b))
     margin = (lambda a, b: _margin_missing_db(at(a, b))) if with_margin else None
     if not hop.has_objective:
         return LinkLimits(margin, None)
-    if found is None or found.objective is None:
+    if not asked or probe.outage.unjudged:
         return LinkLimits(margin, None, probe.outage.warnings[-1:] or ("the availability objective cannot be judged",))
-    required = found.objective.required_margin_db
-    if found.objective.met is None and required is not None and found.fade_margin_db >= required:
-        return LinkLimits(margin, None, found.objective.undecided)
+    open_for_good = tuple(reason for mode in asked for reason in _reasons_open(mode))
+    if open_for_good:
+        return LinkLimits(margin, None, tuple(dict.fromkeys(open_for_good)))
     return LinkLimits(margin, lambda a, b: _objective_missing_db(at(a, b)))
 
 
 def _link_at(study: Study, hop: Hop, antenna_a_m: float, antenna_b_m: float) -> Link | None:
     """Losses, budget and outage of one pair; None where an antenna, or a lower one, stands in its own cover."""
-    profile, down_m = study.profile, spacing_of(hop)
+    profile, down_m, median_k = study.profile, spacing_of(hop), study.climate.median_k
     for antenna_m, cover_m in ((antenna_a_m, profile.cover_m[0]), (antenna_b_m, profile.cover_m[-1])):
         if antenna_m - down_m <= cover_m:
             return None
@@ -82,7 +83,12 @@ def _link_at(study: Study, hop: Hop, antenna_a_m: float, antenna_b_m: float) -> 
         site_a=replace(hop.site_a, antenna_m=antenna_a_m),
         site_b=replace(hop.site_b, antenna_m=antenna_b_m),
     )
-    return link(raised, profile, study.climate, air_along(raised, profile), *centres)
+    lower = lower_antennas(
+        study.hop, profile, study.corridor, median_k, antenna_a_m=antenna_a_m, antenna_b_m=antenna_b_m
+    )
+    clears = (lower[0].clears, lower[1].clears) if lower else (True, True)
+    air = air_along(raised, profile, median_k, *centres)
+    return link(raised, profile, study.climate, air, *centres, lower_clears=clears)
 
 
 def _margin(found: Link) -> float | None:
@@ -96,12 +102,24 @@ def _margin_missing_db(found: Link | None) -> float:
 
 
 def _objective_missing_db(found: Link | None) -> float:
-    """How much fade margin is missing to meet the objective for sure; infinite where no margin would do."""
-    judged = None if found is None else found.outage.availability
-    if judged is None or judged.objective is None or judged.objective.required_margin_db is None:
+    """How much fade margin is missing to meet every objective for sure; infinite where no margin would do."""
+    return math.inf if found is None else max(map(_missing_db, found.outage.asked), default=math.inf)
+
+
+def _missing_db(mode: ModeOutage) -> float:
+    """How much fade margin one mode lacks to meet its objective for sure; infinite where no margin would do."""
+    if mode.objective is None or mode.objective.required_margin_db is None:
         return math.inf
-    missing_db = judged.objective.required_margin_db - judged.fade_margin_db
-    return missing_db if judged.objective.met is True or missing_db > 0 else math.inf
+    missing_db = mode.objective.required_margin_db - mode.fade_margin_db
+    return missing_db if mode.met is True or missing_db > 0 else math.inf
+
+
+def _reasons_open(mode: ModeOutage) -> tuple[str, ...]:
+    """Say what leaves a mode's objective open although its fade margin is the one it takes: no height mends that."""
+    objective = mode.objective
+    if objective is None or objective.met is not None or objective.required_margin_db is None:
+        return ()
+    return objective.undecided if mode.fade_margin_db >= objective.required_margin_db else ()
 
 
 def loss_limit(study: Study) -> Excess | None:

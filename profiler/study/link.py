@@ -4,14 +4,16 @@ from __future__ import annotations
 
 from collections.abc import Iterable
 from dataclasses import dataclass
+from functools import partial
 from typing import TYPE_CHECKING
 
-from profiler.atmosphere import Atmosphere, gas_attenuation, gas_warnings, local_atmosphere
-from profiler.diffraction import DiffractionLoss, diffract_over_k
+from profiler.atmosphere import Atmosphere, gas_along_ray, gas_warnings
+from profiler.diffraction import DiffractionLoss, diffract_over_k, losses_over_k
 from profiler.errors import under
 from profiler.models import AvailabilityChoice, DiffractionMethod, Hop, Profile
 from profiler.study.climate_numbers import ClimateUse
-from profiler.study.outage import OutageResult, predict_outage
+from profiler.study.outage import OutageResult, PathState, predict_outage
+from profiler.units import Float
 
 if TYPE_CHECKING:
     from profiler.budget import Budget
@@ -21,7 +23,7 @@ __all__ = ["Air", "Link", "air_along", "link", "losses_at"]
 
 @dataclass(frozen=True, slots=True)
 class Air:
-    """The air that the gas attenuation assumes, where each number comes from, and where a published range is left."""
+    """The air at the ray's mean height, what the gases take along the ray, and where each number comes from."""
 
     atmosphere: Atmosphere
     gas_db: float
@@ -43,7 +45,16 @@ class Link:
         return cls({}, None, OutageResult())
 
 
-def link(hop: Hop, profile: Profile, climate: ClimateUse, air: Air, centre_a_m: float, centre_b_m: float) -> Link:
+def link(
+    hop: Hop,
+    profile: Profile,
+    climate: ClimateUse,
+    air: Air,
+    centre_a_m: float,
+    centre_b_m: float,
+    *,
+    lower_clears: tuple[bool, bool] = (True, True),
+) -> Link:
     """Give losses, budget and outage for one pair of antenna centres.
 
     Parameters
@@ -52,17 +63,27 @@ def link(hop: Hop, profile: Profile, climate: ClimateUse, air: Air, centre_a_m: 
         The hop and what is known of its ground, climate and air.
     centre_a_m, centre_b_m
         Antenna centres above the datum.
+    lower_clears
+        Whether the lower antenna of a diversity pair has its clearance, at A and at B.
 
     Returns
     -------
     Link
     """
     stated = (*(rule.k for rule in hop.rules), climate.median_k)
-    losses = losses_at(hop, profile, (*stated, *(k for _, k in climate.k_percentiles)), centre_a_m, centre_b_m)
+    losses = losses_at(hop, profile, stated, centre_a_m, centre_b_m)
     budget = _budget(hop, profile, air, losses[climate.median_k])
     with under("availability", AvailabilityChoice):
-        outage = predict_outage(hop, profile, climate, budget, centre_a_m, centre_b_m, losses)
-    return Link({k: losses[k] for k in stated}, budget, outage)
+        path = PathState(
+            profile,
+            centre_a_m,
+            centre_b_m,
+            losses,
+            partial(_loss_over_k, hop, profile, centre_a_m, centre_b_m),
+            lower_clears,
+        )
+        outage = predict_outage(hop, climate, budget, path)
+    return Link(losses, budget, outage)
 
 
 def losses_at(
@@ -90,36 +111,62 @@ def losses_at(
     return dict(zip(once, losses, strict=True))
 
 
-def air_along(hop: Hop, profile: Profile) -> Air:
-    """Gas attenuation in the air that was given, or the reference atmosphere at the path's mean height.
+def _loss_over_k(hop: Hop, profile: Profile, centre_a_m: float, centre_b_m: float, k: Float) -> Float:
+    """Diffraction loss of a hop at many k, by its own method."""
+    return losses_over_k(
+        hop.diffraction_method,
+        profile.distance_m,
+        profile.surface_m,
+        centre_a_m,
+        centre_b_m,
+        hop.frequency_hz,
+        k,
+        polarization=hop.polarization,
+        sea_fraction=hop.sea_fraction,
+    )
+
+
+def air_along(hop: Hop, profile: Profile, median_k: float, centre_a_m: float, centre_b_m: float) -> Air:
+    """Gas attenuation along the ray, in the air that was given or the reference atmosphere, at the ray's own height.
 
     Parameters
     ----------
     hop, profile
-        The hop and its profile; the height is that of the mean ground plus the mean antenna height.
+        The hop and its profile.
+    median_k
+        Median effective-earth-radius factor: the ray's height over the curved earth.
+    centre_a_m, centre_b_m
+        Antenna centres above the datum, which is taken as sea level.
 
     Returns
     -------
     Air
     """
-    height_m = float(profile.ground_m.mean()) + 0.5 * (hop.site_a.antenna_m + hop.site_b.antenna_m)
     given = hop.air
     with under("air"):
-        atmosphere = local_atmosphere(
-            height_m,
+        found = gas_along_ray(
+            hop.frequency_hz,
+            profile.distance_m,
+            profile.ground_m,
+            centre_a_m,
+            centre_b_m,
+            median_k,
             total_pressure_hpa=given.pressure_hpa,
             temperature_k=given.temperature_k,
             vapour_g_m3=given.vapour_g_m3,
         )
-    per_km = float(
-        gas_attenuation(hop.frequency_hz, atmosphere.pressure_hpa, atmosphere.temperature_k, atmosphere.vapour_g_m3)
-    )
     fields = {"pressure": given.pressure_hpa, "temperature": given.temperature_k, "vapour": given.vapour_g_m3}
-    assumed = [name for name, value in fields.items() if value is None]
-    reference = f"Rec. ITU-R P.835-6 mean annual reference atmosphere at {height_m:.0f} m"
-    source = f"{', '.join(assumed)}: {reference}" if assumed else "given"
-    gas_db = per_km * float(profile.distance_m[-1]) / 1e3
-    return Air(atmosphere, gas_db, source, gas_warnings(hop.frequency_hz, height_m if assumed else None))
+    reference = ", ".join(name for name, value in fields.items() if value is None)
+    measured = ", ".join(name for name, value in fields.items() if value is not None)
+    parts = []
+    if measured:
+        parts.append(
+            f"{measured} as given for the ray's mean height of {found.mean_m:.0f} m, carried along its heights"
+        )
+    if reference:
+        parts.append(f"{reference}: Rec. ITU-R P.835-6 mean annual reference atmosphere along the ray")
+    source = f"{'; '.join(parts)}, {found.lowest_m:.0f} to {found.highest_m:.0f} m"
+    return Air(found.atmosphere, found.loss_db, source, gas_warnings(hop.frequency_hz, found.lowest_m))
 
 
 def _budget(hop: Hop, profile: Profile, air: Air, loss: DiffractionLoss) -> Budget | None:

@@ -17,6 +17,7 @@ from profiler.study.ground import Ground, read_ground, require_above_cover
 from profiler.study.link import Air, Link, air_along, link
 from profiler.study.places import find_places
 from profiler.study.provenance import provenance
+from profiler.study.requirements import lower_antennas
 from profiler.study.result import RuleResult, Study
 from profiler.study.said_once import gathered
 from profiler.study.verdict import ground_warnings, judge
@@ -25,6 +26,7 @@ from profiler.units import Float
 
 if TYPE_CHECKING:
     from profiler.confidence import Confidence
+    from profiler.heights import DiversityEnd
 
 __all__ = ["open_hop_terrain", "run_study"]
 
@@ -83,8 +85,17 @@ def run_study(hop: Hop, terrain: Terrain | None = None, *, relief: bool = False,
     centre_a_m = float(profile.ground_m[0]) + hop.site_a.antenna_m
     centre_b_m = float(profile.ground_m[-1]) + hop.site_b.antenna_m
     rules = tuple(_check(hop, ground, rule, centre_a_m, centre_b_m) for rule in hop.rules)
-    air = air_along(hop, profile)
-    found = link(hop, profile, climate, air, centre_a_m, centre_b_m) if losses else Link.none()
+    air = air_along(hop, profile, climate.median_k, centre_a_m, centre_b_m)
+    lower = lower_antennas(
+        hop,
+        profile,
+        ground.corridor,
+        climate.median_k,
+        antenna_a_m=hop.site_a.antenna_m,
+        antenna_b_m=hop.site_b.antenna_m,
+    )
+    clears = (lower[0].clears, lower[1].clears) if lower else (True, True)
+    found = link(hop, profile, climate, air, centre_a_m, centre_b_m, lower_clears=clears) if losses else Link.none()
     confidence = _confidence(hop, ground, climate, rules)
     angles = _angles(ground, centre_a_m, centre_b_m, climate.median_k)
     return Study(
@@ -109,7 +120,7 @@ def run_study(hop: Hop, terrain: Terrain | None = None, *, relief: bool = False,
         verdict=judge(hop, rules, found.budget, found.outage.meets),
         provenance=provenance(hop, ground.files),
         assumptions=_assumptions(hop, ground, climate, air, found),
-        warnings=(*_lower_warnings(hop, ground, climate.median_k), *_warnings(hop, ground, rules, air, found)),
+        warnings=(*_lower_warnings(lower), *_warnings(hop, ground, rules, air, found)),
     )
 
 
@@ -209,22 +220,11 @@ def _doubt_assumptions(choice: ConfidenceChoice) -> tuple[str, ...]:
     )
 
 
-def _lower_warnings(hop: Hop, ground: Ground, median_k: float) -> tuple[str, ...]:
+def _lower_warnings(ends: Sequence[DiversityEnd]) -> tuple[str, ...]:
     """Warn of lower antennas of a diversity pair that lack the clearance under which their improvement is credited."""
-    if hop.availability is None or hop.availability.diversity is None:
-        return ()
-    from profiler.study.requirements import lower_antennas
-
-    ends = lower_antennas(
-        hop,
-        ground.profile,
-        ground.corridor,
-        median_k,
-        antenna_a_m=hop.site_a.antenna_m,
-        antenna_b_m=hop.site_b.antenna_m,
+    return tuple(
+        f"diversity at {end.notes[0]}; no improvement is credited to what it receives" for end in ends if not end.clears
     )
-    short = [end.notes[0] for end in ends if not end.clears]
-    return tuple(f"diversity at {note}; the outage counts its improvement all the same" for note in short)
 
 
 def _warnings(hop: Hop, ground: Ground, rules: Sequence[RuleResult], air: Air, found: Link) -> tuple[str, ...]:
