@@ -162,7 +162,7 @@ def test_no_improvement_is_credited_to_a_lower_antenna_without_its_clearance(lan
         if power_b_dbm == 24.0:
             assert found.outage.modes[0].worst_month_percent == single.outage.modes[0].worst_month_percent
     clear = run_study(replace(hop, terrain=TerrainChoice((land(),))))
-    assert clear.outage.availability.worst_month_percent.multipath < 0.1 * (
+    assert clear.outage.availability.worst_month_percent.multipath < 0.2 * (
         alone.outage.availability.worst_month_percent.multipath
     )
 

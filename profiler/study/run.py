@@ -17,7 +17,6 @@ from profiler.study.ground import Ground, read_ground, require_above_cover
 from profiler.study.link import Air, Link, air_along, link
 from profiler.study.places import find_places
 from profiler.study.provenance import provenance
-from profiler.study.requirements import lower_antennas
 from profiler.study.result import RuleResult, Study
 from profiler.study.said_once import gathered
 from profiler.study.verdict import ground_warnings, judge
@@ -86,14 +85,7 @@ def run_study(hop: Hop, terrain: Terrain | None = None, *, relief: bool = False,
     centre_b_m = float(profile.ground_m[-1]) + hop.site_b.antenna_m
     rules = tuple(_check(hop, ground, rule, centre_a_m, centre_b_m) for rule in hop.rules)
     air = air_along(hop, profile, climate.median_k, centre_a_m, centre_b_m)
-    lower = lower_antennas(
-        hop,
-        profile,
-        ground.corridor,
-        climate.median_k,
-        antenna_a_m=hop.site_a.antenna_m,
-        antenna_b_m=hop.site_b.antenna_m,
-    )
+    lower = _lower_antennas(hop, ground, climate.median_k)
     clears = (lower[0].clears, lower[1].clears) if lower else (True, True)
     found = link(hop, profile, climate, air, centre_a_m, centre_b_m, lower_clears=clears) if losses else Link.none()
     confidence = _confidence(hop, ground, climate, rules)
@@ -218,6 +210,16 @@ def _doubt_assumptions(choice: ConfidenceChoice) -> tuple[str, ...]:
         f"terrain error: {choice.terrain_source}",
         "terrain error: ground beside the path has the error of the path's own point next to it",
     )
+
+
+def _lower_antennas(hop: Hop, ground: Ground, median_k: float) -> tuple[DiversityEnd, ...]:
+    """Hold the lower antennas of a diversity pair to their clearance; empty without diversity."""
+    if hop.availability is None or hop.availability.diversity is None:
+        return ()
+    from profiler.study.requirements import lower_antennas
+
+    heights = {"antenna_a_m": hop.site_a.antenna_m, "antenna_b_m": hop.site_b.antenna_m}
+    return lower_antennas(hop, ground.profile, ground.corridor, median_k, **heights)
 
 
 def _lower_warnings(ends: Sequence[DiversityEnd]) -> tuple[str, ...]:
