@@ -218,8 +218,8 @@ def _lower_antennas(hop: Hop, ground: Ground, median_k: float) -> tuple[Diversit
         return ()
     from profiler.study.requirements import lower_antennas
 
-    heights = {"antenna_a_m": hop.site_a.antenna_m, "antenna_b_m": hop.site_b.antenna_m}
-    return lower_antennas(hop, ground.profile, ground.corridor, median_k, **heights)
+    a_m, b_m = hop.site_a.antenna_m, hop.site_b.antenna_m
+    return lower_antennas(hop, ground.profile, ground.corridor, median_k, antenna_a_m=a_m, antenna_b_m=b_m)
 
 
 def _lower_warnings(ends: Sequence[DiversityEnd]) -> tuple[str, ...]:
