@@ -460,6 +460,8 @@ class ConfidenceChoice:
         _require(_positive_or_none(step), "step_m", step, "more than 0 m")
         _require(0 <= self.terrain_sigma_m <= 100, "terrain_sigma_m", self.terrain_sigma_m, "0 to 100 m")
         _require(self.correlation_m >= 0, "correlation_m", self.correlation_m, "0 m or more")
+        kinds = ("exponential", "gaussian")
+        _require(self.covariance in kinds, "covariance", repr(self.covariance), "'exponential' or 'gaussian'")
         site = 0.0 if self.site_sigma_m is None else self.site_sigma_m
         _require(0 <= site <= 100, "site_sigma_m", site, "0 to 100 m")
         _require(0 <= self.cover_sigma_m <= 100, "cover_sigma_m", self.cover_sigma_m, "0 to 100 m")

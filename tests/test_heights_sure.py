@@ -5,7 +5,7 @@ import pytest
 from hypothesis import given
 from hypothesis import strategies as st
 
-from profiler.confidence import assess, draw_doubt, surplus_errors
+from profiler.confidence import assess, draw_doubt
 from profiler.errors import InputError
 from profiler.heights import (
     clearing_region,
@@ -16,7 +16,7 @@ from profiler.heights import (
     least_surplus_drawn,
     surplus,
 )
-from profiler.models import Rule
+from profiler.models import ConfidenceChoice, Rule
 
 DRAWS = 60
 
@@ -42,7 +42,7 @@ def surplus_of_all_points(region, error, a, b):
 @given(moved_regions(), st.floats(0, 200), st.floats(0, 200))
 def test_no_point_that_was_left_out_is_ever_the_tightest(moved, a, b):
     region, error = moved
-    drawn = drawn_regions(region, error)
+    drawn = drawn_regions(region, error.__getitem__)
     np.testing.assert_allclose(
         least_surplus_drawn(drawn, a, b), surplus_of_all_points(region, error, a, b), atol=2e-4, rtol=1e-5
     )
@@ -51,7 +51,7 @@ def test_no_point_that_was_left_out_is_ever_the_tightest(moved, a, b):
 @given(moved_regions(), st.floats(5, 200), st.sampled_from([0.5, 0.9, 0.95, 1.0]))
 def test_the_least_b_is_sure_enough_and_a_little_less_is_not(moved, a, chance):
     region, error = moved
-    b = float(least_b_sure(drawn_regions(region, error), [a], chance)[0])
+    b = float(least_b_sure(drawn_regions(region, error.__getitem__), [a], chance)[0])
     at_a = region.ground_a_m + a + error[0] - region.least_ray_m[0]
     if np.isinf(b):  # what stands at A itself is too high in too many draws, and no B helps
         assert np.mean(at_a >= 1e-4) < chance
@@ -66,7 +66,7 @@ def test_without_errors_the_sure_heights_are_those_of_the_region():
     x = np.linspace(0, 30e3, 200)
     ground = 40 * np.sin(x / 2e3)
     region = clearing_region(x, least_ray(x, ground, 6e9, [Rule(4 / 3, 1.0)]), ground[0], ground[-1])
-    drawn = drawn_regions(region, np.zeros((200, DRAWS), dtype=np.float32))
+    drawn = drawn_regions(region, np.zeros((200, DRAWS), dtype=np.float32).__getitem__)
     a = np.arange(1.0, 200.0, 7)
     np.testing.assert_allclose(least_b_sure(drawn, a, 0.95), least_b_for(region, a), atol=2e-3)
     assert drawn.share.size <= region.governing_point.size + 40  # of 200 points few can matter
@@ -78,20 +78,20 @@ def test_the_chance_is_that_of_the_confidence_analysis():
     x = np.linspace(0, 30e3, 300)
     ground, cover = 40 * np.sin(x / 2e3), np.where(np.sin(x / 5e3) > 0, 12.0, 0.0)
     rules = [Rule(4 / 3, 1.0), Rule(2 / 3, 0.3)]
-    doubt = {"terrain_sigma_m": 4.0, "correlation_m": 300.0, "cover_sigma_m": 2.0, "draws": 500, "seed": 3}
-    region = clearing_region(x, least_ray(x, ground + cover, 6e9, rules), ground[0], ground[-1])
-    drawn = drawn_regions(region, surplus_errors(x, draw_doubt(x, cover, **doubt)[0]))
+    choice = ConfidenceChoice(4.0, "test", 300.0, cover_sigma_m=2.0, draws=500, seed=3)
+    doubt = draw_doubt(x, cover, choice, cell_m=90.0)
+    ray = doubt.places.carry(least_ray(x, ground + cover, 6e9, rules).max(axis=0))
+    region = clearing_region(doubt.places.distance_m, ray, ground[0], ground[-1])
+    drawn = drawn_regions(region, doubt.surplus_errors)
     for a, b in ((70, 75), (80, 72), (95, 90)):
-        whole = assess(x, ground, cover, a, b, 6e9, rules, **doubt)
+        whole = assess(x, ground, cover, a, b, 6e9, rules, choice, cell_m=90.0)
         share = np.mean(least_surplus_drawn(drawn, a, b) >= 0)
         assert share == pytest.approx(whole.chance.value, abs=1.01 / 500)  # a draw on the edge may fall either way
         assert float(least_b_sure(drawn, [a], 0.9)[0]) == pytest.approx(whole.sure[0].b_only_m, abs=0.01)
 
 
-def test_errors_that_do_not_fit_and_chances_out_of_range_are_refused():
+def test_chances_out_of_range_are_refused():
     region = clearing_region([0, 5e3, 10e3], [0, 60, 0], 0, 0)
-    with pytest.raises(InputError, match=r"error_m of shape \(2, 5\): must be a row of draws for each of the points"):
-        drawn_regions(region, np.zeros((2, 5), dtype=np.float32))
-    drawn = drawn_regions(region, np.zeros((3, 5), dtype=np.float32))
+    drawn = drawn_regions(region, np.zeros((3, 5), dtype=np.float32).__getitem__)
     with pytest.raises(InputError, match="chance = 0: must be more than 0 and at most 1"):
         least_b_sure(drawn, [30.0], 0.0)

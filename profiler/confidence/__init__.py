@@ -4,16 +4,16 @@ Errors are true minus given height, in metres; ranges of correlation are practic
 """
 
 from profiler.confidence.assess import assess
-from profiler.confidence.draws import draw_doubt, surplus_errors
+from profiler.confidence.draws import Doubt, draw_doubt
 from profiler.confidence.findings import Chance, Confidence, SureHeights
 from profiler.confidence.summary import chance_of
 
 __all__ = [
     "Chance",
     "Confidence",
+    "Doubt",
     "SureHeights",
     "assess",
     "chance_of",
     "draw_doubt",
-    "surplus_errors",
 ]

@@ -3,11 +3,12 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
+from typing import Literal
 
 from profiler.models import Rule
 from profiler.units import Float
 
-__all__ = ["Band", "Chance", "Confidence", "DoubtShares", "RuleConfidence", "SureHeights", "SurveyPoint"]
+__all__ = ["Band", "Chance", "Confidence", "DoubtShares", "RuleConfidence", "SureHeights", "SurveyPlace"]
 
 
 @dataclass(frozen=True, slots=True)
@@ -42,7 +43,7 @@ class RuleConfidence:
     """How sure one rule is.
 
     ``chance`` and ``surplus`` are at the rule's own k, over terrain and cover. ``least_*_m`` are the 5 %, 50 % and
-    95 % points of the least surplus along the path. ``chance_with_k`` and ``surplus_with_k`` let k vary in time as its
+    95 % points of the least surplus along the path. ``chance_with_k`` lets k vary in time as its
     percentiles say, against the rule's fraction and margin: the expected share of time clear; None when k's spread is
     off. ``shares`` split the variance of the least surplus, with k varying if it is on.
     """
@@ -55,7 +56,6 @@ class RuleConfidence:
     least_high_m: float
     shares: DoubtShares
     chance_with_k: Chance | None
-    surplus_with_k: Band | None
 
 
 @dataclass(frozen=True, slots=True)
@@ -77,23 +77,26 @@ class SureHeights:
 
 
 @dataclass(frozen=True, slots=True)
-class SurveyPoint:
-    """A place worth measuring: index 0 and the last are the ground at the sites.
+class SurveyPlace:
+    """A place worth measuring, as a crew would tell places apart: its most useful point, and from where to where.
 
-    ``share_of_doubt`` is the share of the variance of the least surplus that its height removes once the places before
-    it in the list are measured. ``chance_critical`` is how often the critical point lies here, within one practical
-    range of the terrain error.
+    ``index`` is that point of the path, and ``site`` is "A" or "B" where the place is a site's own ground.
+    ``share_of_doubt`` is the share of the variance of the least surplus that the heights there remove once the places
+    before it in the list are measured. ``chance_critical`` is how often the critical point lies here.
     """
 
     index: int
     distance_m: float
+    from_m: float
+    to_m: float
+    site: Literal["A", "B"] | None
     share_of_doubt: float
     chance_critical: float
 
 
 @dataclass(frozen=True, slots=True, eq=False)
 class Confidence:
-    """The whole analysis. ``chance`` is that of all rules together; ``chance_critical`` (n,) that a point is critical.
+    """The whole analysis. ``chance`` is that of all rules together.
 
     ``method`` states what was assumed, in sentences for the reader of a data sheet.
     """
@@ -101,8 +104,7 @@ class Confidence:
     rules: tuple[RuleConfidence, ...]
     chance: Chance
     sure: tuple[SureHeights, ...]
-    survey: tuple[SurveyPoint, ...]
-    chance_critical: Float
+    survey: tuple[SurveyPlace, ...]
     draws: int
     seed: int
     method: tuple[str, ...]

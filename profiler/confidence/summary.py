@@ -38,13 +38,12 @@ def rule_confidence(index: int, rule: Rule, result: DrawTally) -> RuleConfidence
     return RuleConfidence(
         rule=rule,
         chance=chance_of(result.least_m[index]),
-        surplus=result.fixed[index],
+        surplus=result.bands[index],
         least_low_m=low,
         least_median_m=median,
         least_high_m=high,
         shares=DoubtShares(shares.get("terrain", 0.0), shares.get("cover", 0.0), shares.get("k", 0.0)),
         chance_with_k=None if varied is None else chance_of(varied[index]),
-        surplus_with_k=None if varied is None else result.varied[index],
     )
 
 

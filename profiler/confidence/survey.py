@@ -1,24 +1,88 @@
-"""Which points along a path are worth measuring, because the verdict hangs on their height."""
+"""Which places along a path are worth measuring, because the verdict hangs on their height."""
 
 from __future__ import annotations
 
+from typing import Literal
+
 import numpy as np
 
+from profiler.confidence.draws import Doubt
 from profiler.confidence.fields import Draws
-from profiler.confidence.findings import SurveyPoint
+from profiler.confidence.findings import SurveyPlace
 from profiler.confidence.shares import NO_VARIANCE_M2
+from profiler.confidence.tally import DrawTally
 from profiler.units import Float
 
-__all__ = ["rank_points"]
+__all__ = ["rank_points", "survey_places"]
 
 _LEAST_SHARE = 0.02
 _CHANCE_SHARE = 20.0
 """Over the number of draws: what the luckiest of 1 000 useless points may reach (a normal score of 4.5, squared)."""
 
+_MOST_PLACES = 5
+_MOST_POINTS = 15
 
-def rank_points(
-    distance_m: Float, error_m: Draws, least_m: Draws, chance_critical: Float, *, reach_m: float, places: int = 5
-) -> tuple[SurveyPoint, ...]:
+_ONE_PLACE_M = (100.0, 500.0)
+"""A crew that measures a point measures what is nearer than this with it: a correlation length, within these limits."""
+
+
+def survey_places(
+    distance_m: Float, doubt: Doubt, tally: DrawTally, *, correlation_m: float
+) -> tuple[SurveyPlace, ...]:
+    """Choose the places to survey, the most useful first: points that lie within one place of each other are one.
+
+    Points that are critical in some draw, and the ground at the sites, are ranked by `rank_points`; a point within a
+    correlation length of the first of a place, but 100 to 500 m, belongs to that place, and its share to the place's.
+
+    Parameters
+    ----------
+    distance_m
+        Points of the path, (n,).
+    doubt, tally
+        The draws, and what came of them.
+    correlation_m
+        Practical range of the terrain's error.
+
+    Returns
+    -------
+    tuple of SurveyPlace
+        Five at the most; the ones that remove less than 2 % of the variance, or no more than chance could show, are
+        left out.
+    """
+    last = distance_m.size - 1
+    critical = np.bincount(doubt.places.nearest[tally.critical], minlength=distance_m.size) / doubt.draws
+    point = np.union1d(np.flatnonzero(critical), (0, last))
+    error = doubt.surface_error(np.flatnonzero(doubt.places.own)[point])
+    reach_m = float(np.clip(correlation_m, *_ONE_PLACE_M))
+    members: dict[int, list[tuple[int, float]]] = {}
+    for row, share in rank_points(error, tally.all_m):
+        index = int(point[row])
+        first = next((each for each in members if abs(distance_m[each] - distance_m[index]) <= reach_m), index)
+        members.setdefault(first, []).append((index, share))
+    places = []
+    for first, found in members.items():
+        at_m = [float(distance_m[index]) for index, _ in found]
+        near = np.abs(distance_m - distance_m[first]) <= reach_m
+        places.append(
+            SurveyPlace(
+                index=first,
+                distance_m=float(distance_m[first]),
+                from_m=min(at_m),
+                to_m=max(at_m),
+                site=_site({index for index, _ in found}, last),
+                share_of_doubt=sum(share for _, share in found),
+                chance_critical=float(critical[near].sum()),
+            )
+        )
+    return tuple(sorted(places, key=lambda place: -place.share_of_doubt)[:_MOST_PLACES])
+
+
+def _site(points: set[int], last: int) -> Literal["A", "B"] | None:
+    """Name the site whose own ground is among the points, if one is."""
+    return "A" if 0 in points else "B" if last in points else None
+
+
+def rank_points(error_m: Draws, least_m: Draws) -> list[tuple[int, float]]:
     """Choose points to survey, one after the other, by how much of the doubt their height removes.
 
     Measuring the error u at a point leaves Var(Y)·(1 - corr²(Y, u)) of the variance of the least surplus Y, by the best
@@ -27,30 +91,20 @@ def rank_points(
 
     Parameters
     ----------
-    distance_m
-        Points of the path, (n,).
     error_m
         Error of the surface at each point, (n, draws); of the ground at the two ends.
     least_m
         Least surplus of each draw, (draws,).
-    chance_critical
-        Share of the draws in which a point is critical, (n,).
-    reach_m
-        How far from a point a critical point still counts as this place, metres.
-    places
-        The most points to list.
 
     Returns
     -------
-    tuple of SurveyPoint
-        The most useful first; those that remove less than 2 % of the variance, or no more than
-        chance could show, are left out.
+    list of (int, float)
+        Row of the point, and the share of the variance that it removes once those before it are measured.
 
     Examples
     --------
     >>> u = np.random.default_rng(1).standard_normal((3, 4000), dtype=np.float32)
-    >>> points = rank_points(np.array([0.0, 50.0, 100.0]), u, 3 * u[1] + u[2], np.array([0, 1, 0]), reach_m=10.0)
-    >>> [(point.index, round(point.share_of_doubt, 1)) for point in points]
+    >>> [(row, round(share, 1)) for row, share in rank_points(u, 3 * u[1] + u[2])]
     [(1, 0.9), (2, 0.1)]
 
     Notes
@@ -64,21 +118,18 @@ def rank_points(
     mean = error_m.mean(axis=1)
     left = np.einsum("ij,ij->i", error_m, error_m).astype(float) / draws - mean.astype(float) ** 2
     if variance < NO_VARIANCE_M2 or not left.max() > 0:
-        return ()
+        return []
     shared = (error_m @ result).astype(float) / draws
     floor = 1e-6 * left.max()
     learned: list[Draws] = []
-    found: list[SurveyPoint] = []
-    while len(found) < places:
+    found: list[tuple[int, float]] = []
+    while len(found) < _MOST_POINTS:
         gain = np.where(left > floor, shared**2 / np.maximum(left, floor), 0.0) / variance
-        index = int(np.argmax(gain))
-        if gain[index] < max(_LEAST_SHARE, _CHANCE_SHARE / draws):
+        row = int(np.argmax(gain))
+        if gain[row] < max(_LEAST_SHARE, _CHANCE_SHARE / draws):
             break
-        near = np.abs(distance_m - distance_m[index]) <= reach_m
-        found.append(
-            SurveyPoint(index, float(distance_m[index]), float(gain[index]), float(chance_critical[near].sum()))
-        )
-        fresh = error_m[index] - mean[index]
+        found.append((row, float(gain[row])))
+        fresh = error_m[row] - mean[row]
         for known in learned:
             fresh = fresh - known * (known @ fresh / (known @ known))
         learned.append(fresh)
@@ -86,4 +137,4 @@ def rank_points(
         slope = (error_m @ fresh).astype(float) / draws / spread
         shared = shared - slope * (float(fresh @ result) / draws)
         left = left - slope**2 * spread
-    return tuple(found)
+    return found

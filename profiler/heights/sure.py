@@ -6,17 +6,19 @@ its own. The draws do not depend on the antenna heights: one set answers for eve
 
 from __future__ import annotations
 
+from collections.abc import Callable
 from dataclasses import dataclass
 
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
 from profiler.checks import within
-from profiler.errors import InputError
 from profiler.heights.region import ClearingRegion, clearing_region
 from profiler.units import Float
 
 __all__ = ["DrawnRegions", "drawn_regions", "least_b_sure", "least_surplus_drawn"]
+
+_BLOCK = 64
 
 _SINGLE_M = 2e-5
 """Rounding of heights of some 100 m in single precision."""
@@ -34,16 +36,16 @@ class DrawnRegions:
     needed_m: NDArray[np.float32]
 
 
-def drawn_regions(region: ClearingRegion, error_m: NDArray[np.float32]) -> DrawnRegions:
+def drawn_regions(region: ClearingRegion, errors: Callable[[NDArray[np.intp]], NDArray[np.float32]]) -> DrawnRegions:
     """Move a clearing region by every draw of the errors.
 
     Parameters
     ----------
     region
         From `profiler.heights.clearing_region`: what the ray must reach on the given ground.
-    error_m
-        What each draw adds to the surplus of the ray at each point, (n, draws), as
-        `profiler.confidence.surplus_errors` gives it.
+    errors
+        Gives what each draw adds to the surplus of the ray at some of the points, (k, draws) for k indices. It is asked
+        for a block of points at a time: all of them at once would fill the memory.
 
     Returns
     -------
@@ -51,30 +53,28 @@ def drawn_regions(region: ClearingRegion, error_m: NDArray[np.float32]) -> Drawn
         Without the points that cannot be the tightest in any draw: those whose greatest need over the draws stays
         under the hull of the least needs.
 
-    Raises
-    ------
-    InputError
-        If the errors do not fit the points.
-
     Examples
     --------
     >>> region = clearing_region([0, 5e3, 10e3], [100, 160, 100], 100, 100)
-    >>> drawn = drawn_regions(region, np.array([[0, 0], [-4, 4], [0, 0]], dtype=np.float32))
+    >>> drawn = drawn_regions(region, np.array([[0, 0], [-4, 4], [0, 0]], dtype=np.float32).__getitem__)
     >>> drawn.share.tolist(), drawn.needed_m.tolist()
     ([0.0, 0.5, 1.0], [[0.0, 0.0], [64.0, 56.0], [0.0, 0.0]])
     """
-    if error_m.ndim != 2 or error_m.shape[0] != region.distance_m.size or not error_m.shape[1]:
-        raise InputError(f"error_m of shape {error_m.shape}: must be a row of draws for each of the points")
     share = region.distance_m / region.distance_m[-1]
     above_line = region.least_ray_m - (1.0 - share) * region.ground_a_m - share * region.ground_b_m
-    greatest, least = above_line - error_m.min(axis=1), above_line - error_m.max(axis=1)
+    greatest, least = above_line.copy(), above_line.copy()
+    for first in range(0, share.size, _BLOCK):
+        index = np.arange(first, min(first + _BLOCK, share.size))
+        drawn = errors(index)
+        greatest[index] -= drawn.min(axis=1)
+        least[index] -= drawn.max(axis=1)
     # only the hull is wanted: the sites' own ground is far below
     hull = clearing_region(region.distance_m, least, float(least[0]), float(least[-1]))
     corners = hull.governing_point
     kept = np.flatnonzero(greatest >= np.interp(share, share[corners], least[corners]) - _SINGLE_M)
     return DrawnRegions(
         share=share[kept].astype(np.float32),
-        needed_m=above_line[kept, None].astype(np.float32) - error_m[kept],
+        needed_m=above_line[kept, None].astype(np.float32) - errors(kept),
     )
 
 
@@ -84,7 +84,7 @@ def least_surplus_drawn(drawn: DrawnRegions, antenna_a_m: float, antenna_b_m: fl
     Examples
     --------
     >>> region = clearing_region([0, 5e3, 10e3], [100, 160, 100], 100, 100)
-    >>> drawn = drawn_regions(region, np.array([[0, 0], [-4, 4], [0, 0]], dtype=np.float32))
+    >>> drawn = drawn_regions(region, np.array([[0, 0], [-4, 4], [0, 0]], dtype=np.float32).__getitem__)
     >>> least_surplus_drawn(drawn, 61, 61).tolist()
     [-3.0, 5.0]
     """
@@ -121,7 +121,7 @@ def least_b_sure(drawn: DrawnRegions, antenna_a_m: ArrayLike, chance: float) -> 
     Examples
     --------
     >>> region = clearing_region([0, 5e3, 10e3], [100, 160, 100], 100, 100)
-    >>> drawn = drawn_regions(region, np.array([[0, 0], [-4, 4], [0, 0]], dtype=np.float32))
+    >>> drawn = drawn_regions(region, np.array([[0, 0], [-4, 4], [0, 0]], dtype=np.float32).__getitem__)
     >>> least_b_sure(drawn, [-1.0, 60.0, 70.0], 0.5).tolist(), least_b_sure(drawn, [60.0], 1.0).tolist()
     ([inf, 52.0, 42.0], [68.0])
     """

@@ -21,13 +21,13 @@ from profiler.heights import (
     both_free,
     cheapest_by_trial,
     cheapest_of,
+    clearing_region,
     drawn_regions,
     least_b_for,
     least_b_sure,
     least_surplus_drawn,
 )
 from profiler.plan.link_limits import Excess
-from profiler.study.doubt import doubt_given
 from profiler.study.requirements import spacing_of
 from profiler.study.result import Study
 from profiler.units import Float
@@ -126,10 +126,19 @@ def _drawn(study: Study, region: ClearingRegion, sure: float) -> DrawnRegions:
             f"confidence.draws = {choice.draws}: must be at least {math.ceil(_FEWEST_BEYOND / (1.0 - sure) - 1e-6)} for"
             f" a chance of {100 * sure:g} %, to leave {_FEWEST_BEYOND} draws beyond it"
         )
-    from profiler.confidence import draw_doubt, surplus_errors
+    from profiler.confidence import draw_doubt
 
-    doubt, _ = draw_doubt(profile.distance_m, profile.cover_m, **doubt_given(choice, profile))
-    return drawn_regions(region, surplus_errors(profile.distance_m, doubt))
+    doubt = draw_doubt(
+        profile.distance_m,
+        profile.cover_m,
+        choice,
+        cell_m=study.terrain.finest_cell_m,
+        surveyed=(bool(profile.surveyed[0]), bool(profile.surveyed[-1])),
+    )
+    between = clearing_region(
+        doubt.places.distance_m, doubt.places.carry(region.least_ray_m), region.ground_a_m, region.ground_b_m
+    )
+    return drawn_regions(between, doubt.surplus_errors)
 
 
 def _chance(drawn: DrawnRegions | None, pair: Choice | NoPair) -> Chance | None:

@@ -164,9 +164,8 @@ def _confidence(study: Study) -> dict[str, Any] | None:
     if confidence is None:
         return None
     document: dict[str, Any] = plain(confidence)
-    del document["chance_critical"]
     for row, found in zip(document["rules"], confidence.rules, strict=True):
-        del row["surplus"], row["surplus_with_k"], row["rule"]
+        del row["surplus"], row["rule"]
         row |= {"k": found.rule.k, "fresnel_fraction": found.rule.fresnel_fraction, "margin_m": found.rule.margin_m}
     return document
 

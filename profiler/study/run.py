@@ -12,7 +12,6 @@ from profiler.errors import InputError, under
 from profiler.geometry import check_corridor, check_rule, elevation_angle, find_reflections
 from profiler.models import ConfidenceChoice, Hop, Rule
 from profiler.study.climate_numbers import ClimateUse, climate_numbers
-from profiler.study.doubt import doubt_given
 from profiler.study.ground import Ground, read_ground, require_above_cover
 from profiler.study.link import Air, Link, air_along, link
 from profiler.study.places import find_places
@@ -167,9 +166,11 @@ def _confidence(hop: Hop, ground: Ground, climate: ClimateUse, rules: Sequence[R
             hop.site_b.antenna_m,
             hop.frequency_hz,
             hop.rules,
+            choice,
+            cell_m=ground.terrain.finest_cell_m,
+            surveyed=(bool(profile.surveyed[0]), bool(profile.surveyed[-1])),
             beside_m=np.stack([_beside(result) for result in rules]),
             k_percentiles=percentiles,
-            **doubt_given(choice, profile),
         )
 
 
