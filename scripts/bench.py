@@ -55,7 +55,7 @@ antenna_m = 30
 [terrain]
 paths = ["{country}"]
 [rules]
-preset = "high-reliability"
+preset = "1.0-and-0.3-f1"
 """
 
 CHILD_READS = """

@@ -43,7 +43,7 @@ antenna_m = 40
 paths = ["dem.tif"]
 
 [rules]
-preset = "high-reliability"
+preset = "1.0-and-0.3-f1"
 
 [radio.a]
 power_dbm = 27
@@ -150,7 +150,7 @@ def refused(run):
 
 
 OPTIONS = ("--a", "46.0, 9.0", "--b", "46.18N 9E", "--antenna-a", "40", "--antenna-b", "131.25 ft",
-           "--frequency-ghz", "7.5", "--terrain", "dem.tif", "--preset", "high-reliability")  # fmt: skip
+           "--frequency-ghz", "7.5", "--terrain", "dem.tif", "--preset", "1.0-and-0.3-f1")  # fmt: skip
 
 
 def changed(**values):
@@ -179,7 +179,7 @@ def test_the_long_output_says_all_that_was_assumed(run):
     _, out, _ = run("study", "hop.toml")
     for part in ("Tight places", "Reflection points", "budget, mode QPSK", "Availability", "Confidence", "Assumed"):
         assert part in out
-    assert "rules of preset high-reliability" in out
+    assert "rules of preset 1.0-and-0.3-f1" in out
     assert "no raster declares its vertical datum" in out
     assert "ground: dem.tif at 100% of the points" in out
     assert "dn1_n_km = -300: " in out
@@ -215,7 +215,7 @@ def test_a_rule_that_only_the_ground_beside_fails_says_so(run, here):
         cells[55:65, 13:] += 1000
         raster.write(cells, 1)
     rule = "rule = [{k = 1.3333, fresnel_fraction = 0.7}]"
-    text = PLAIN.replace("7.5", "0.1").replace('preset = "high-reliability"', rule)
+    text = PLAIN.replace("7.5", "0.1").replace('preset = "1.0-and-0.3-f1"', rule)
     (here / "wall.toml").write_text(text.replace("antenna_m = 40", "antenna_m = 100"))
     code, out, _ = run("study", "wall.toml")
     assert code == 1
@@ -387,7 +387,7 @@ def test_a_hop_without_a_file(run):
     assert (code, err) == (0, "")
     assert out.startswith("A to B: PASSES")
     assert re.search(r"\nB  B  +46\.180000   9\.000000 +100\.0 +40\.0 +140\.0 ", out)  # 131.25 ft
-    own = [word for word in OPTIONS if word not in ("--preset", "high-reliability")]
+    own = [word for word in OPTIONS if word not in ("--preset", "1.0-and-0.3-f1")]
     assert run("study", *own, "--rule", "1", "0.6", "3", "-q")[0] == 0
     assert run("study", *own, "--rule", "1", "0.6", "60", "-q")[0] == 1
 
@@ -656,9 +656,9 @@ def test_outputs_that_cannot_be(refused, words, message):
         ('"46.0, 9.0"', '"46.18, 9.0"', "site_b = '46.180000, 9.000000': must be another place than site_a"),
         ('"46.0, 9.0"', '"somewhere"', "site_a.position = 'somewhere': must be a position"),
         ('"46.0, 9.0"', '"95, 9"', "site_a.position = '95, 9': must be a latitude of -90 to 90 degrees"),
-        ('"high-reliability"', '"high"', "rules.preset = 'high': must be one of p530-isolated,"),
-        ('preset = "high-reliability"', "", "rules.preset = (missing): must be given"),
-        ('preset = "high-reliability"', "rule = [{k = 0, fresnel_fraction = 1}]", "rules.rule[0].k = 0: must be 0.1"),
+        ('"1.0-and-0.3-f1"', '"high"', "rules.preset = 'high': must be one of p530-isolated,"),
+        ('preset = "1.0-and-0.3-f1"', "", "rules.preset = (missing): must be given"),
+        ('preset = "1.0-and-0.3-f1"', "rule = [{k = 0, fresnel_fraction = 1}]", "rules.rule[0].k = 0: must be 0.1"),
         ("dem.tif", "gone.tif", "terrain.paths[0] = 'gone.tif': must be a raster or a folder of rasters that is there"),
         ("dem.tif", "nocrs.tif", "nocrs.tif: has no coordinate reference system"),
         ("dem.tif", "photo.tif", "photo.tif: is a photo (3-band color or grey image), not heights"),

@@ -34,7 +34,7 @@ antenna_m = 30
 [terrain]
 paths = ["dem"]
 [rules]
-preset = "light-route"
+preset = "0.6-f1-plus-3m"
 """
 
 RADIO = """
@@ -86,20 +86,21 @@ def test_small_hop(folder):
     assert (hop.site_a.latitude, hop.site_a.longitude, hop.site_a.antenna_m) == (46.049, -39.1005, 35)
     assert hop.frequency_hz == 7.5e9
     assert hop.terrain == models.TerrainChoice((folder / "dem",))
-    assert hop.rules == (models.Rule(1.0, 0.6, 3.0, "light-route"),)
+    assert hop.rules == (models.Rule(1.0, 0.6, 3.0, "0.6-f1-plus-3m"),)
     assert (hop.radio, hop.availability, hop.confidence, hop.air) == (None, None, None, models.AirChoice())
     assert hop.name == "A to B"
     assert hop.source == "hop.toml"
     assert hop.assumptions == (
         "positions: no datum is given for A and B, WGS 84 is taken",
-        "rules of preset light-route (lightly loaded routes): 0.6 F1 + 3 m at k = 1; common practice, no source",
+        "rules of preset 0.6-f1-plus-3m (fixed k, whatever the climate): 0.6 F1 + 3 m at k = 1; handbooks of the 1970s,"
+        " from memory: no edition is at hand to cite",
         "polarization: none is given, vertical is taken",
     )
 
 
 def test_a_median_k_is_what_the_file_says_or_left_to_the_study(folder):
     assert read(folder, SMALL).median_k is None
-    assert read(folder, small(rules__preset='preset = "light-route"\nmedian_k = 1.25')).median_k == 1.25
+    assert read(folder, small(rules__preset='preset = "0.6-f1-plus-3m"\nmedian_k = 1.25')).median_k == 1.25
 
 
 def test_load_hop_takes_paths_from_its_folder_and_hashes_the_bytes(folder):
@@ -190,10 +191,15 @@ def test_terrain_error_in_each_of_its_ways(folder):
     named = confidence("terrain_kind = 'srtm-1'")
     assert named.terrain_sigma_m == TERRAIN_ERRORS["srtm-1"].sigma_m
     assert named.correlation_m == TERRAIN_ERRORS["srtm-1"].correlation_m
+    assert named.terrain_offset_sigma_m == TERRAIN_ERRORS["srtm-1"].offset_sigma_m
     assert "Oksanen" in named.terrain_source
     le90 = confidence("terrain_le90_m = 16\ncorrelation_m = 100\nterrain_source = 'producer'")
     assert le90.terrain_sigma_m == pytest.approx(16 / 1.645, rel=1e-3)  # LE90 = 1.645 σ of a Gaussian
-    assert le90.terrain_source == "LE90 16 m / 1.645 (producer)"
+    local = "; all of it local, as no terrain_offset_sigma_m is given: the cautious way"
+    assert le90.terrain_source == "LE90 16 m / 1.645 (producer)" + local
+    split = confidence("terrain_sigma_m = 3\nterrain_offset_sigma_m = 2\ncorrelation_m = 100")
+    assert (split.terrain_sigma_m, split.terrain_offset_sigma_m) == (3, 2)
+    assert split.terrain_source == "sigma 3 m (hop file)"
     rmse = confidence("terrain_rmse_m = 5\ncorrelation_m = inf")
     assert (rmse.terrain_sigma_m, rmse.correlation_m, rmse.vary_k) == (5, float("inf"), False)
 
@@ -346,9 +352,9 @@ def test_celsius(folder):
             "rules.low_k = 1.4: must be below the median k of 1.333",
         ),
         (
-            {"preset": "preset = 'light-route'\nlow_k = 0.8"},
+            {"preset": "preset = '0.6-f1-plus-3m'\nlow_k = 0.8"},
             "",
-            "rules.low_k = 0.8: must be left out beside preset 'light-route', which fixes its k",
+            "rules.low_k = 0.8: must be left out beside preset '0.6-f1-plus-3m', which fixes its k",
         ),
         (
             {"preset": "low_k = 0.8\n[[rules.rule]]\nk = 1\nfresnel_fraction = 1"},
@@ -466,6 +472,11 @@ def test_celsius(folder):
             {},
             "[confidence]\nterrain_kind = 'srtm'",
             "confidence.terrain_kind = 'srtm': must be one of srtm-1, srtm-3,",
+        ),
+        (
+            {},
+            "[confidence]\nterrain_kind = 'merit'\nterrain_offset_sigma_m = 2",
+            "confidence.terrain_offset_sigma_m = 2.0: must be left out beside terrain_kind, which has its own",
         ),
         (
             {},
@@ -600,16 +611,24 @@ def test_any_value_at_any_key_is_taken_or_refused_in_one_line(data):
         ("p530-isolated", 0.8, [(4 / 3, 1.0, 0.0), (0.8, 0.0, 0.0)]),
         ("p530-extended", 0.8, [(4 / 3, 1.0, 0.0), (0.8, 0.3, 0.0)]),
         ("p530-tropical", 0.8, [(4 / 3, 1.0, 0.0), (0.8, 0.6, 0.0)]),
-        # Common practice, no source.
-        ("high-reliability", None, [(4 / 3, 1.0, 0.0), (2 / 3, 0.3, 0.0)]),
-        ("light-route", None, [(1.0, 0.6, 3.0)]),
+        # Handbooks of the 1970s, from memory.
+        ("1.0-and-0.3-f1", None, [(4 / 3, 1.0, 0.0), (2 / 3, 0.3, 0.0)]),
+        ("0.6-f1-plus-3m", None, [(1.0, 0.6, 3.0)]),
     ],
 )
 def test_presets(name, low_k, expected):
     rules = expand_preset(name, low_k=low_k)
     assert [(rule.k, rule.fresnel_fraction, rule.margin_m) for rule in rules] == expected
     assert all(rule.label.startswith(name) for rule in rules)
-    assert set(PRESETS) == {"p530-isolated", "p530-extended", "p530-tropical", "high-reliability", "light-route"}
+    assert set(PRESETS) == {"p530-isolated", "p530-extended", "p530-tropical", "1.0-and-0.3-f1", "0.6-f1-plus-3m"}
+
+
+@pytest.mark.parametrize(("old", "new"), [("high-reliability", "1.0-and-0.3-f1"), ("light-route", "0.6-f1-plus-3m")])
+def test_a_preset_by_its_former_name_is_refused_with_its_name_of_now(folder, old, new):
+    with pytest.raises(
+        InputError, match=f"hop.toml: rules.preset = '{old}': is called '{new}' now, with the same rules"
+    ):
+        read(folder, small(preset=f"preset = '{old}'"))
 
 
 def test_a_preset_for_longer_paths_says_so(folder):
@@ -619,7 +638,7 @@ def test_a_preset_for_longer_paths_says_so(folder):
 
 def test_preset_and_own_rules_add_up(folder):
     hop = read(folder, SMALL + "[[rules.rule]]\nk = 0.9\nfresnel_fraction = 0\nlabel = 'mine'\n")
-    assert [rule.label for rule in hop.rules] == ["light-route", "mine"]
+    assert [rule.label for rule in hop.rules] == ["0.6-f1-plus-3m", "mine"]
 
 
 # Without a file -------------------------------------------------------------------------------------------------------
@@ -633,7 +652,7 @@ def quick(folder, **changes):
         "antenna_b": "98.4 ft",
         "frequency_ghz": 7.5,
         "terrain": ["dem"],
-        "preset": "light-route",
+        "preset": "0.6-f1-plus-3m",
         "base_dir": folder,
     }
     return quick_hop(**values | changes)

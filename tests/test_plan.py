@@ -373,7 +373,7 @@ antenna_m = 5
 [terrain]
 paths = ["ground.tif"]
 [rules]
-preset = "high-reliability"
+preset = "1.0-and-0.3-f1"
 [confidence]
 terrain_rmse_m = 3.0
 correlation_m = 100

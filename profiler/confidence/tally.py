@@ -5,6 +5,7 @@ from __future__ import annotations
 from dataclasses import dataclass
 
 import numpy as np
+from numpy.typing import NDArray
 
 from profiler.confidence.draws import Doubt
 from profiler.confidence.fields import Draws
@@ -18,6 +19,9 @@ BAND = (0.05, 0.5, 0.95)
 
 _BLOCK = 64
 """Points handled together: 64 × 2 000 float32 draws stay in a core's cache."""
+
+
+_FAR_M = np.float32(1e30)
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -70,22 +74,26 @@ def run_draws(nominal: Nominal, doubt: Doubt) -> DrawTally:
     with_k = doubt.inverse_k is not None
     all_rules = _AllRules(surplus.min(axis=0), nominal.share.astype(np.float32), draws)
     least, least_varied = _unbounded(len(surplus), draws), _unbounded(len(surplus), draws)
-    mixed: dict[str, Draws] = {}
+    causes = [name for name, here in _causes(doubt).items() if here]
+    mixed = {name: _unbounded(len(surplus), draws - 1) for name in causes}
     band = np.empty((own.size, len(BAND)))
-    for low in range(0, own.size, _BLOCK):
-        block = slice(low, min(low + _BLOCK, own.size))
+    starts = np.arange(0, own.size, _BLOCK)
+    # tightest first: then few places of the later blocks can still be the tightest in any draw; only those are folded
+    for start in starts[np.argsort(np.minimum.reduceat(surplus.min(axis=0), starts))]:
+        block = slice(start, min(start + _BLOCK, own.size))
         index = np.arange(block.start, block.stop)
         parts = doubt.parts(index)
-        fixed = parts["terrain"] + parts["cover"] if "cover" in parts else parts["terrain"]
+        fixed = _mix(parts)
         band[index[own[block]]] = _quantiles(fixed[own[block]])
-        _fold(least, fixed, surplus[:, block])
-        all_rules.fold(fixed, block)
+        lowest = fixed.min(axis=1)
+        _fold(least, surplus[:, block], lowest, parts)
+        all_rules.fold(fixed, lowest, index)
         if doubt.inverse_k is not None:
             parts["k"] = -nominal.unit_bulge_m[block, None].astype(np.float32) * doubt.inverse_k
-            _fold(least_varied, fixed + parts["k"], varied[:, block])
-        for name in parts if doubt.moves_ground else [name for name in parts if name != "terrain"]:
-            mixed.setdefault(name, _unbounded(len(surplus), draws - 1))
-            _fold(mixed[name], _mix(parts, name), (varied if with_k else surplus)[:, block])
+            _fold(least_varied, varied[:, block], lowest + parts["k"].min(axis=1), parts)
+        lowest = sum((part.min(axis=1) for part in parts.values()), start=np.zeros(index.size, np.float32))
+        for name, folded in mixed.items():
+            _fold(folded, (varied if with_k else surplus)[:, block], lowest, parts, name)
     return DrawTally(
         bands=tuple(Band(*(frozen_array(row + part) for part in band[own].T)) for row in nominal.surplus_m[:, own]),
         least_m=least,
@@ -108,15 +116,23 @@ class _AllRules:
         self.need_a_m = np.full(draws, -np.inf, dtype=np.float32)
         self.need_b_m = np.full(draws, -np.inf, dtype=np.float32)
 
-    def fold(self, random: Draws, block: slice) -> None:
-        surplus = random + self.surplus_m[block, None]
+    def fold(self, random: Draws, lowest: Draws, index: NDArray[np.intp]) -> None:
+        lift_a, lift_b = 1.0 - self.share[index], self.share[index]
+        floor = self.surplus_m[index] + lowest
+        open_ = floor < self.least_m.max()
+        for need, lift in ((self.need_a_m, lift_a), (self.need_b_m, lift_b)):
+            open_ |= -floor > np.clip(need.min(), -_FAR_M, _FAR_M) * lift
+        rows = np.flatnonzero(open_)
+        if not rows.size:
+            return
+        surplus = random[rows] + self.surplus_m[index[rows], None]
         where = surplus.argmin(axis=0)
         least = np.take_along_axis(surplus, where[None], axis=0)[0]
         lower = least < self.least_m
-        self.critical[lower] = block.start + where[lower]
+        self.critical[lower] = index[rows[where[lower]]]
         np.minimum(self.least_m, least, out=self.least_m)
-        self._need(self.need_a_m, surplus, 1.0 - self.share[block])
-        self._need(self.need_b_m, surplus, self.share[block])
+        self._need(self.need_a_m, surplus, lift_a[rows])
+        self._need(self.need_b_m, surplus, lift_b[rows])
 
     @staticmethod
     def _need(need: Draws, surplus: Draws, lift: Draws) -> None:
@@ -126,9 +142,15 @@ class _AllRules:
         need[(surplus[~lifted] < 0).any(axis=0)] = np.inf
 
 
-def _mix(parts: dict[str, Draws], cause: str) -> Draws:
-    """Sum the parts with one cause taken from the next draw."""
-    total, *rest = (part[:, 1:] if name == cause else part[:, :-1] for name, part in parts.items())
+def _causes(doubt: Doubt) -> dict[str, bool]:
+    """Say which causes of doubt are present."""
+    return {"terrain": doubt.moves_ground, "cover": doubt.cover is not None, "k": doubt.inverse_k is not None}
+
+
+def _mix(parts: dict[str, Draws], cause: str | None = None) -> Draws:
+    """Sum the parts, one cause taken from the next draw if one is named."""
+    ahead, behind = (slice(None), slice(None)) if cause is None else (slice(1, None), slice(None, -1))
+    total, *rest = (part[:, ahead if name == cause else behind] for name, part in parts.items())
     for part in rest:
         total = total + part
     return total
@@ -138,9 +160,13 @@ def _unbounded(rules: int, draws: int) -> Draws:
     return np.full((rules, draws), np.inf, dtype=np.float32)
 
 
-def _fold(least: Draws, random: Draws, surplus: Draws) -> None:
-    """Lower each rule's least surplus by a block of points."""
-    for rule, nominal in enumerate(surplus):
+def _fold(least: Draws, surplus: Draws, lowest: Draws, parts: dict[str, Draws], cause: str | None = None) -> None:
+    """Lower each rule's least surplus by those places of a block whose lowest random part can lower it in some draw."""
+    rows = np.flatnonzero((surplus + lowest < least.max(axis=1, keepdims=True)).any(axis=0))
+    if not rows.size:
+        return
+    random = _mix({name: part[rows] for name, part in parts.items()}, cause)
+    for rule, nominal in enumerate(surplus[:, rows]):
         np.minimum(least[rule], (random + nominal[:, None]).min(axis=0), out=least[rule])
 
 

@@ -165,6 +165,10 @@ def build_confidence(raw: Raw, spot: Spot, availability: AvailabilityChoice | No
     for name in ("terrain_kind", "terrain_rmse_m", "terrain_le90_m"):
         values.pop(name, None)
     values |= {"terrain_sigma_m": sigma_m, "terrain_source": source}
+    if table.terrain_kind is not None:
+        values["terrain_offset_sigma_m"] = TERRAIN_ERRORS[table.terrain_kind].offset_sigma_m
+    elif table.terrain_offset_sigma_m is None:
+        values["terrain_source"] += "; all of it local, as no terrain_offset_sigma_m is given: the cautious way"
     if table.minimum_chance_percent is not None:
         values["minimum_chance"] = values.pop("minimum_chance_percent") / 100.0
     if table.correlation_m is None:
@@ -195,8 +199,9 @@ def _terrain_sigma(table: ConfidenceTable, spot: Spot) -> tuple[float, str]:
     if table.terrain_kind is not None:
         if table.terrain_kind not in TERRAIN_ERRORS:
             raise spot.error("terrain_kind", table.terrain_kind, f"one of {kinds}", "or give terrain_rmse_m")
-        if table.terrain_source is not None:
-            raise spot.error("terrain_source", table.terrain_source, "left out beside terrain_kind, which has its own")
+        for name in ("terrain_source", "terrain_offset_sigma_m"):
+            if (value := getattr(table, name)) is not None:
+                raise spot.error(name, value, "left out beside terrain_kind, which has its own")
         kind = TERRAIN_ERRORS[table.terrain_kind]
         return kind.sigma_m, kind.source
     stated = table.terrain_source or "hop file"

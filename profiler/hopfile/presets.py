@@ -1,4 +1,4 @@
-"""Named sets of clearance rules. A user picks one by name; nothing is taken when none is named."""
+"""Named sets of clearance rules, named by their source or by what they ask; nothing is taken when none is named."""
 
 from __future__ import annotations
 
@@ -39,7 +39,7 @@ class Preset:
 
 
 _P530 = "Rec. ITU-R P.530-18 §2.2 (from memory)"
-_COMMON = "common practice, no source"
+_HANDBOOKS = "handbooks of the 1970s, from memory: no edition is at hand to cite"
 
 PRESETS: Mapping[str, Preset] = MappingProxyType(
     {
@@ -59,15 +59,17 @@ PRESETS: Mapping[str, Preset] = MappingProxyType(
             (PresetRule("median", 1.0), PresetRule("low", 0.6)),
             shortest_m=30e3,
         ),
-        "high-reliability": Preset(
-            "heavily loaded routes",
-            _COMMON,
-            (PresetRule(4.0 / 3.0, 1.0), PresetRule(2.0 / 3.0, 0.3)),
+        "1.0-and-0.3-f1": Preset(
+            "fixed k, whatever the climate", _HANDBOOKS, (PresetRule(4.0 / 3.0, 1.0), PresetRule(2.0 / 3.0, 0.3))
         ),
-        "light-route": Preset("lightly loaded routes", _COMMON, (PresetRule(1.0, 0.6, 3.0),)),
+        "0.6-f1-plus-3m": Preset("fixed k, whatever the climate", _HANDBOOKS, (PresetRule(1.0, 0.6, 3.0),)),
     }
 )
 """The presets by name; `expand_preset` turns one into rules."""
+
+
+_SUCCESSORS = {"high-reliability": "1.0-and-0.3-f1", "light-route": "0.6-f1-plus-3m"}
+"""Names that presets had before."""
 
 
 def expand_preset(name: str, *, median_k: float = K_MEDIAN, low_k: float | None = None) -> tuple[Rule, ...]:
@@ -104,6 +106,8 @@ def expand_preset(name: str, *, median_k: float = K_MEDIAN, low_k: float | None 
     -----
     Sources: in the table; P.530 asks for the greater height of its two rules, which is what holding both does.
     """
+    if name in _SUCCESSORS:
+        raise InputError(f"preset = {name!r}: is called {_SUCCESSORS[name]!r} now, with the same rules")
     if name not in PRESETS:
         raise InputError(f"preset = {name!r}: must be one of {', '.join(PRESETS)}")
     preset = PRESETS[name]

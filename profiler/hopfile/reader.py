@@ -188,7 +188,7 @@ def quick_hop(
     Examples
     --------
     >>> hop = quick_hop("46.05N 39.15W", "46.05N 38.87W", antenna_a="100 ft", antenna_b=25, frequency_ghz=7.5,
-    ...     terrain=["."], preset="light-route")
+    ...     terrain=["."], preset="0.6-f1-plus-3m")
     >>> hop.site_a.antenna_m, hop.rules[0].fresnel_fraction, hop.rules[0].margin_m
     (30.48, 0.6, 3.0)
     """
