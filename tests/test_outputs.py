@@ -42,7 +42,7 @@ paths = ["dem.tif"]
 canopy = ["trees.tif"]
 
 [rules]
-preset = "high-reliability"
+preset = "1.0-and-0.3-f1"
 """
 COMMANDS = ("study", "heights", "losses", "reach")
 RADIO = """
