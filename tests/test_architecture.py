@@ -29,6 +29,7 @@ RANKS = {
     "confidence": 7,
     "study": 8,
     "plan": 9,
+    "screen": 9,
     "figures": 10,
     "cli": 11,
 }

@@ -4,6 +4,18 @@ pyproj is imported inside the functions that need it: its import alone costs som
 """
 
 from profiler.path.datum import DATUMS, to_wgs84
-from profiler.path.line import LONGEST_M, PathLine, across, beside, geodesic, locate, midpoint, trace
+from profiler.path.line import LONGEST_M, PathLine, across, beside, geodesic, locate, midpoint, points_along, trace
 
-__all__ = ["DATUMS", "LONGEST_M", "PathLine", "across", "beside", "geodesic", "locate", "midpoint", "to_wgs84", "trace"]
+__all__ = [
+    "DATUMS",
+    "LONGEST_M",
+    "PathLine",
+    "across",
+    "beside",
+    "geodesic",
+    "locate",
+    "midpoint",
+    "points_along",
+    "to_wgs84",
+    "trace",
+]

@@ -29,6 +29,7 @@ __all__ = [
     "geodesic",
     "locate",
     "midpoint",
+    "points_along",
     "trace",
 ]
 
@@ -155,6 +156,38 @@ def _forward(start: tuple[float, float, float], along_m: Float) -> tuple[Float, 
     longitude, latitude, azimuth = (np.full_like(along_m, value) for value in start)
     longitude, latitude, back = _geod().fwd(longitude, latitude, azimuth, along_m)
     return np.asarray(longitude), np.asarray(latitude), np.asarray(back)
+
+
+def points_along(
+    longitude: ArrayLike, latitude: ArrayLike, azimuth_deg: ArrayLike, along_m: ArrayLike
+) -> tuple[Float, Float]:
+    """Positions at distances along geodesics.
+
+    Parameters
+    ----------
+    longitude, latitude
+        Where each geodesic starts, WGS 84 degrees.
+    azimuth_deg
+        True azimuth there.
+    along_m
+        Distances from the start, metres; all broadcast.
+
+    Returns
+    -------
+    longitude, latitude
+        WGS 84 degrees.
+
+    Examples
+    --------
+    >>> longitude, latitude = points_along([0.0, 5.0], [0.0, 0.0], 90.0, [[0.0], [111319.49079327358]])
+    >>> longitude.round(9).tolist(), latitude.round(9).tolist()
+    ([[0.0, 5.0], [1.0, 6.0]], [[0.0, 0.0], [0.0, 0.0]])
+    """
+    lon, lat, azimuth, along = np.broadcast_arrays(
+        *(np.asarray(each, dtype=float) for each in (longitude, latitude, azimuth_deg, along_m))
+    )
+    there_lon, there_lat, _ = _geod().fwd(lon.ravel(), lat.ravel(), azimuth.ravel(), along.ravel())
+    return np.asarray(there_lon).reshape(lon.shape), np.asarray(there_lat).reshape(lon.shape)
 
 
 def _intervals(distance_m: float, spacing_m: float) -> int:
