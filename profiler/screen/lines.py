@@ -23,6 +23,9 @@ Ints = NDArray[np.int64]
 _NODES = 5
 """Good to a micrometre for 40 km at up to 65° latitude, and to 0.1 mm for 100 km."""
 
+_SNAP_CELLS = 1e-6
+"""As for single points: coordinates do not carry more digits."""
+
 
 @dataclass(frozen=True, slots=True, eq=False)
 class GridLines:
@@ -111,7 +114,7 @@ def grid_lines(
     share = 0.5 - 0.5 * np.cos(np.pi * np.arange(_NODES) / (_NODES - 1))
     along_m = share[:, None] * distance_m
     longitude, latitude = points_along(longitude_a, latitude_a, azimuth_a_deg, along_m)
-    column, row = to_cells(longitude, latitude)
+    column, row = (_snapped(each) for each in to_cells(longitude, latitude))
     turned = np.abs(column[-1] - column[0]) < np.abs(row[-1] - row[0])
     main, cross = np.where(turned, row, column), np.where(turned, column, row)
     return GridLines(
@@ -127,6 +130,12 @@ def grid_lines(
         cross_by_main=_divided_differences(main, cross),
         metres_by_main=_divided_differences(main, along_m),
     )
+
+
+def _snapped(count: Float) -> Float:
+    """Put a place on a line of cell centres that it misses by rounding: at the grid's edge there is nothing beyond."""
+    whole = np.rint(count)
+    return np.where(np.abs(count - whole) < _SNAP_CELLS, whole, count)
 
 
 def _divided_differences(x: Float, y: Float) -> Float:

@@ -1,0 +1,101 @@
+"""One grid of cells out of many rasters: for whoever looks at so many places that single cells would be slow."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from typing import Any
+
+import numpy as np
+from numpy.typing import NDArray
+
+from profiler.terrain.cells import ReadTally, to_metres
+from profiler.terrain.gdal import OpenRasters, read_window
+from profiler.terrain.index import Index, find_hits
+from profiler.terrain.proj import from_lonlat
+from profiler.terrain.reference import Reference
+from profiler.terrain.sampling import lattice_cells
+from profiler.units import Float
+
+__all__ = ["Lattice", "finest_lattice", "lattice_window"]
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Lattice:
+    """Tiles cut from one grid, as a plane of columns and rows that count from the first cell centre of one of them.
+
+    ``number`` is that tile's, and ``longitude`` a place near which it is used, so that a path over the antimeridian
+    stays in one piece. ``alone`` says that no other lattice has cells at the places it was asked for: what is missing
+    in it is missing.
+    """
+
+    number: int
+    reference: Reference
+    inverse: Float
+    longitude: float
+    alone: bool
+
+    def to_cells(self, longitude: Float, latitude: Float) -> tuple[Float, Float]:
+        """Give column and row of positions, WGS 84 degrees, of any shape."""
+        x, y = self.longitude + (longitude - self.longitude + 180.0) % 360.0 - 180.0, latitude
+        if not self.reference.is_wgs84:
+            x, y = from_lonlat(self.reference.horizontal, x, y)
+        ia, ib, ic, id_, ie, if_ = self.inverse
+        return ia * x + ib * y + ic, id_ * x + ie * y + if_
+
+
+def finest_lattice(index: Index, longitude: Float, latitude: Float) -> Lattice | None:
+    """Find the lattice with the smallest cells under any of the positions, degrees, (n,); None where there is none."""
+    hits = find_hits(index, longitude, latitude)
+    hits = hits.take(hits.inside)
+    if not hits.point.size:
+        return None
+    names, sides = lattice_cells(index, hits)
+    number = int(names[np.argmin(sides.prod(axis=1))])
+    return Lattice(number, index.tiles[number].reference, index.inverse[number], float(longitude[0]), names.size == 1)
+
+
+def lattice_window(
+    index: Index, rasters: OpenRasters, lattice: Lattice, rows: tuple[int, int], columns: tuple[int, int]
+) -> tuple[NDArray[np.float32], ReadTally]:
+    """Read the cells rows[0]:rows[1], columns[0]:columns[1] of a lattice in metres, NaN where there are none.
+
+    Each tile is read once, only where the window covers it.
+    """
+    height, tally = np.full((rows[1] - rows[0], columns[1] - columns[0]), np.nan, dtype=np.float32), ReadTally()
+    for number in np.flatnonzero(index.lattice == index.lattice[lattice.number]):
+        right, down = index.offset[number] - index.offset[lattice.number]
+        around = int(index.around[number])
+        width, tall = index.size[number]
+        top, bottom = max(rows[0], down), min(rows[1], down + tall)
+        for turn in _turns(right, width, columns, around):
+            left, end = max(columns[0], turn), min(columns[1], turn + width)
+            if top < bottom and left < end:
+                part = _read(index, rasters, int(number), (top - down, bottom - down), (left - turn, end - turn), tally)
+                height[top - rows[0] : bottom - rows[0], left - columns[0] : end - columns[0]] = part
+    return height, tally
+
+
+def _turns(right: int, width: int, columns: tuple[int, int], around: int) -> list[int]:
+    """First columns of a tile, once for each turn round the globe that the window meets."""
+    if not around:
+        return [int(right)]
+    first = -(-(columns[0] - right - width + 1) // around)
+    last = (columns[1] - 1 - right) // around
+    return [int(right + turn * around) for turn in range(first, last + 1)]
+
+
+def _read(
+    index: Index, rasters: OpenRasters, number: int, rows: tuple[int, int], columns: tuple[int, int], tally: ReadTally
+) -> Float:
+    """Read a window of one tile in metres."""
+    tile = index.tiles[number]
+    dataset: Any = rasters.get(tile.file)
+    cells, valid = read_window(dataset, tile.coding.band, rows, columns, name=tile.file.name, masked=tile.coding.masked)
+    tally.count(number, tile, rows, columns)
+    width = columns[1] - columns[0]
+
+    def place(at: int) -> tuple[int, int]:
+        return columns[0] + at % width, rows[0] + at // width
+
+    found = to_metres(tile, number, cells.ravel().astype(float), None if valid is None else valid.ravel(), tally, place)
+    return found.reshape(cells.shape)
