@@ -2,16 +2,26 @@
 
 from __future__ import annotations
 
+from collections.abc import Iterator
+from contextlib import ExitStack, contextmanager
 from dataclasses import dataclass
 from pathlib import Path
+from typing import TYPE_CHECKING
 
 import numpy as np
+from numpy.typing import ArrayLike
 
 from profiler.errors import InputError, MissingGroundError, under
 from profiler.models import CoverChoice, Obstacle, SampleMethod, frozen_array
 from profiler.units import Float
 
-__all__ = ["Cover", "cover_along", "obstacle_heights"]
+if TYPE_CHECKING:
+    from profiler.terrain import Classes, Terrain
+
+__all__ = ["Cover", "CoverRasters", "obstacle_edges", "obstacle_heights", "open_cover"]
+
+_NARROWEST_M = 0.01
+"""An obstacle that is narrower, such as one given by a single distance, is taken to be so wide."""
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -23,23 +33,21 @@ class Cover:
     files: tuple[Path, ...] = ()
 
 
-def obstacle_heights(distance_m: Float, obstacles: tuple[Obstacle, ...]) -> Float:
-    """Height of the tallest obstacle at each distance, 0 where none stands.
+def _extent(obstacle: Obstacle) -> tuple[float, float]:
+    """Where an obstacle begins and ends, metres from A."""
+    wider = max(0.0, 0.5 * (_NARROWEST_M - (obstacle.to_m - obstacle.from_m)))
+    return obstacle.from_m - wider, obstacle.to_m + wider
 
-    An obstacle narrower than the step between points counts at the point nearest to its middle, so that none slips
-    between two points.
+
+def obstacle_edges(obstacles: tuple[Obstacle, ...], length_m: float) -> Float:
+    """Distances from A, inside the path, at which an obstacle begins or ends.
 
     Parameters
     ----------
-    distance_m
-        Distances from A, (n,), ascending.
     obstacles
-        The obstacles; each must lie within the path.
-
-    Returns
-    -------
-    ndarray
-        Heights above ground, metres, (n,).
+        The obstacles.
+    length_m
+        Length of the path, metres.
 
     Raises
     ------
@@ -48,133 +56,192 @@ def obstacle_heights(distance_m: Float, obstacles: tuple[Obstacle, ...]) -> Floa
 
     Examples
     --------
-    >>> x = np.array([0.0, 100.0, 200.0, 300.0])
-    >>> obstacle_heights(x, (Obstacle("mast", 190.0, 195.0, 30.0), Obstacle("barn", 90.0, 210.0, 8.0))).tolist()
-    [0.0, 8.0, 30.0, 0.0]
+    >>> obstacle_edges((Obstacle("barn", 90.0, 210.0, 8.0), Obstacle("mast", 0.0, 0.0, 30.0)), 300.0).tolist()
+    [90.0, 210.0, 0.005]
     """
-    heights = np.zeros_like(distance_m)
-    for obstacle in obstacles:
-        if obstacle.to_m > distance_m[-1]:
-            raise InputError(
-                f"obstacle {obstacle.name}: to_m = {obstacle.to_m:.0f}: must lie within the {distance_m[-1]:.0f} m path"
-            )
-        under = (distance_m >= obstacle.from_m) & (distance_m <= obstacle.to_m)
-        under[np.argmin(np.abs(distance_m - 0.5 * (obstacle.from_m + obstacle.to_m)))] = True
-        heights[under] = np.maximum(heights[under], obstacle.height_m)
+    for each in obstacles:
+        if each.to_m > length_m:
+            raise InputError(f"obstacle {each.name}: to_m = {each.to_m:.0f}: must lie within the {length_m:.0f} m path")
+    edges = np.array([edge for each in obstacles for edge in _extent(each)])
+    return edges[(edges > 0.0) & (edges < length_m)]
+
+
+def obstacle_heights(distance_m: ArrayLike, obstacles: tuple[Obstacle, ...]) -> Float:
+    """Height of the tallest obstacle at each distance, 0 where none stands; its edges belong to an obstacle.
+
+    Parameters
+    ----------
+    distance_m
+        Distances from A, any shape.
+    obstacles
+        The obstacles.
+
+    Returns
+    -------
+    ndarray
+        Heights above ground, metres, the shape of the distances.
+
+    Examples
+    --------
+    >>> obstacle_heights([0.0, 100.0, 200.0], (Obstacle("mast", 200, 200, 30), Obstacle("barn", 90, 210, 8))).tolist()
+    [0.0, 8.0, 30.0]
+    """
+    distance = np.asarray(distance_m, dtype=float)
+    heights = np.zeros_like(distance)
+    for each in obstacles:
+        first, last = _extent(each)
+        stands = (distance >= first) & (distance <= last)
+        heights[stands] = np.maximum(heights[stands], each.height_m)
     return heights
 
 
-def cover_along(
-    choice: CoverChoice,
-    distance_m: Float,
-    longitude: Float,
-    latitude: Float,
-    *,
-    rows: slice = slice(None),
-    method: SampleMethod = "bilinear",
-    allow_gaps: bool = False,
-) -> Cover:
-    """Cover heights at the points of a path, or of a corridor around it.
+@dataclass(frozen=True, slots=True)
+class CoverRasters:
+    """The rasters of one choice of cover, open; made by `open_cover`, which closes them."""
 
-    Canopy rasters come first; where they have no data the land-cover class gives the height; obstacles stand on top of
-    neither: the taller of cover and obstacle counts. Where a raster was given and neither has data, it is an error.
+    choice: CoverChoice
+    canopy: Terrain | None
+    classes: Classes | None
+
+    def crossings(self, longitude: ArrayLike, latitude: ArrayLike) -> Float:
+        """Fractions of the way along a path between which the cover is one parabola: as `Terrain.crossings`."""
+        rasters = [each for each in (self.canopy, self.classes) if each is not None]
+        return np.concatenate([np.zeros(0), *(each.crossings(longitude, latitude) for each in rasters)])
+
+    def sample(
+        self,
+        distance_m: Float,
+        longitude: Float,
+        latitude: Float,
+        *,
+        weight_m: Float | None = None,
+        allow_gaps: bool = False,
+    ) -> Cover:
+        """Cover heights at the points of a path, or of a corridor around it, from the rasters; obstacles come on top.
+
+        Canopy rasters come first; where they have no data the land-cover class gives the height. Where a raster was
+        given and neither has data, it is an error.
+
+        Parameters
+        ----------
+        distance_m
+            Distances from A, (m,), for the message.
+        longitude, latitude
+            The points, degrees, a row or more for each distance: (m,) or (m, across).
+        weight_m
+            Length of the path that each point stands for, for the shares in the notes; equal by default.
+        allow_gaps
+            Leave NaN where nothing has data, as beside a path, where the caller counts it.
+
+        Returns
+        -------
+        Cover
+
+        Raises
+        ------
+        MissingGroundError
+            Where a given raster has no data and no other source covers for it, unless gaps are allowed.
+        InputError
+            For a land-cover class with no height, or a canopy below the ground.
+        """
+        choice = self.choice
+        weight = np.ones(longitude.shape) if weight_m is None else weight_m
+        heights, notes, files = np.full(longitude.shape, np.nan), list[str](), list[Path]()
+        if self.canopy is not None:
+            heights, read = _canopy_heights(self.canopy, choice, longitude, latitude)
+            files += read
+            share = 1.0 - weight[np.isnan(heights)].sum() / weight.sum()
+            names = ", ".join(path.name for path in choice.canopy)
+            notes.append(f"canopy heights from {names} on {share:.0%} of the path")
+        gaps = np.isnan(heights)
+        if self.classes is not None and gaps.any():
+            heights[gaps], read = _class_heights(self.classes, choice, longitude[gaps], latitude[gaps])
+            files += read
+            share, name = weight[gaps].sum() / weight.sum(), "" if choice.landcover is None else choice.landcover.name
+            notes.append(f"class heights from {name} on {share:.0%} of the path")
+        if self.canopy is None and self.classes is None:
+            heights[:] = 0.0
+            notes.append(
+                "cover from the listed obstacles only"
+                if choice.obstacles
+                else "no cover given: trees and buildings are not in this result"
+            )
+        if not allow_gaps and np.isnan(heights).any():
+            row = int(np.argwhere(np.isnan(heights))[0][0])
+            raise MissingGroundError(
+                f"cover: no data {distance_m[row]:.0f} m from A: must be covered; give more rasters, or"
+                " cover.landcover with cover.class_heights_m for the rest"
+            )
+        if choice.obstacles:
+            notes.append("obstacles: " + ", ".join(f"{each.name} {each.height_m:g} m" for each in choice.obstacles))
+        return Cover(frozen_array(heights), tuple(notes), tuple(files))
+
+
+@contextmanager
+def open_cover(choice: CoverChoice, method: SampleMethod = "bilinear") -> Iterator[CoverRasters]:
+    """Open the cover rasters of a choice, if it has any, and close them after.
 
     Parameters
     ----------
     choice
         What the hop file says about cover; with nothing in it the cover is 0 everywhere, and the notes say so.
-    distance_m
-        Distances from A of the whole path, (n,): an obstacle narrower than the step stands at one of them.
-    longitude, latitude
-        The points, degrees, a row or more for each distance of ``rows``: (m,) or (m, across).
-    rows
-        Which of the distances the points are at; all by default.
     method
         How canopy rasters are read, as for terrain.
-    allow_gaps
-        Leave NaN where nothing has data, as beside a path, where the caller counts it.
-
-    Returns
-    -------
-    Cover
 
     Raises
     ------
-    MissingGroundError
-        Where a given raster has no data and no other source covers for it, unless gaps are allowed.
-    InputError
-        For a land-cover class with no height, or an obstacle beyond the path.
+    InputError, RasterError
+        For rasters that do not exist or cannot be used.
 
     Examples
     --------
     >>> x = np.array([0.0, 100.0])
-    >>> cover_along(CoverChoice(), x, x, x).notes
+    >>> with open_cover(CoverChoice()) as cover:
+    ...     cover.sample(x, x, x).notes
     ('no cover given: trees and buildings are not in this result',)
     """
-    heights = np.full(longitude.shape, np.nan)
-    notes: list[str] = []
-    files: list[Path] = []
-    if choice.canopy:
-        heights, share, read = _canopy(choice, longitude, latitude, method)
-        files.extend(read)
-        notes.append(f"canopy heights from {', '.join(path.name for path in choice.canopy)} on {share:.0%} of the path")
-    if choice.landcover is not None:
-        gaps = np.isnan(heights)
-        if gaps.any():
-            heights[gaps], read = _class_heights(choice, longitude[gaps], latitude[gaps])
-            files.extend(read)
-            notes.append(f"class heights from {choice.landcover.name} on {gaps.mean():.0%} of the path")
-    if not choice.canopy and choice.landcover is None:
-        heights[:] = 0.0
-        notes.append(
-            "cover from the listed obstacles only"
-            if choice.obstacles
-            else "no cover given: trees and buildings are not in this result"
-        )
-    if np.isnan(heights).any() and not allow_gaps:
-        row = int(np.argwhere(np.isnan(heights))[0][0])
-        raise MissingGroundError(
-            f"cover: no data {distance_m[rows][row]:.0f} m from A: must be covered; give more rasters, or"
-            " cover.landcover with cover.class_heights_m for the rest"
-        )
-    if choice.obstacles:
-        standing = obstacle_heights(distance_m, choice.obstacles)[rows]
-        heights = np.maximum(heights, standing.reshape(standing.shape + (1,) * (heights.ndim - 1)))
-        notes.append("obstacles: " + ", ".join(f"{each.name} {each.height_m:g} m" for each in choice.obstacles))
-    return Cover(frozen_array(heights), tuple(notes), tuple(files))
+    with ExitStack() as stack:
+        canopy = classes = None
+        if choice.canopy:
+            from profiler.terrain import open_terrain
+
+            with under("cover.canopy"):
+                canopy = stack.enter_context(
+                    open_terrain(choice.canopy, method=method, allow_mixed_datums=True, eight_bit=True)
+                )
+        if choice.landcover is not None:
+            from profiler.terrain import open_classes
+
+            with under("cover.landcover"):
+                classes = stack.enter_context(open_classes(choice.landcover))
+        yield CoverRasters(choice, canopy, classes)
 
 
-def _canopy(
-    choice: CoverChoice, longitude: Float, latitude: Float, method: SampleMethod
-) -> tuple[Float, float, tuple[Path, ...]]:
-    """Heights from the canopy rasters, NaN where they have none, the share that they cover, and the files read."""
-    from profiler.terrain import open_terrain
-
-    with (
-        under("cover.canopy"),
-        open_terrain(choice.canopy, method=method, allow_mixed_datums=True, eight_bit=True) as canopy,
-    ):
+def _canopy_heights(
+    canopy: Terrain, choice: CoverChoice, longitude: Float, latitude: Float
+) -> tuple[Float, tuple[Path, ...]]:
+    """Heights from the canopy rasters, NaN where they have none, and the files read."""
+    with under("cover.canopy"):
         samples = canopy.sample(longitude, latitude)
     heights = np.array(samples.ground_m)
     lowest = np.nanmin(heights, initial=0.0)
     if lowest < 0.0:
         raise InputError(f"cover.canopy = {choice.canopy[0]}: must hold heights of 0 m or more, not {lowest:g} m")
-    return heights, float(1.0 - np.isnan(heights).mean()), tuple(path for use in samples.sources for path in use.files)
+    return heights, tuple(path for use in samples.sources for path in use.files)
 
 
-def _class_heights(choice: CoverChoice, longitude: Float, latitude: Float) -> tuple[Float, tuple[Path, ...]]:
+def _class_heights(
+    rasters: Classes, choice: CoverChoice, longitude: Float, latitude: Float
+) -> tuple[Float, tuple[Path, ...]]:
     """Height of the land-cover class under each point, NaN where the raster has no class, and the files read."""
-    from profiler.terrain import sample_classes
-
-    assert choice.landcover is not None
     with under("cover.landcover"):
-        classes, files = sample_classes(choice.landcover, longitude, latitude)
-    table = dict(choice.class_heights_m)
+        classes, files = rasters.sample(longitude, latitude)
+    table, name = dict(choice.class_heights_m), "" if choice.landcover is None else choice.landcover.name
     found = {int(each) for each in np.unique(classes[classes >= 0])}
     unknown = sorted(found - table.keys())
     if unknown:
         raise InputError(
-            f"cover.class_heights_m: {choice.landcover.name} holds class {unknown[0]} on or beside the path: must list"
+            f"cover.class_heights_m: {name} holds class {unknown[0]} on or beside the path: must list"
             f" a height for it; give 0 for bare ground (listed: {sorted(table)})"
         )
     heights = np.full(classes.shape, np.nan)

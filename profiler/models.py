@@ -46,6 +46,7 @@ __all__ = [
     "TowerChoice",
     "VigantsClimate",
     "frozen_array",
+    "lengths_between",
 ]
 
 Polarization = Literal["vertical", "horizontal"]
@@ -86,6 +87,18 @@ def frozen_array(values: ArrayLike, dtype: type[np.generic] = np.float64) -> NDA
     array = np.array(values, dtype=dtype)
     array.setflags(write=False)
     return array
+
+
+def lengths_between(distance_m: ArrayLike) -> Float:
+    """Length of the path that each point stands for, half of it to either neighbour: weights of a mean along the path.
+
+    Examples
+    --------
+    >>> lengths_between([0.0, 10.0, 40.0]).tolist()
+    [5.0, 20.0, 15.0]
+    """
+    half = 0.5 * np.diff(distance_m)
+    return np.asarray(np.append(half, 0.0) + np.append(0.0, half))
 
 
 def _require(ok: bool, name: str, value: object, allowed: str) -> None:
@@ -541,5 +554,9 @@ class Profile:
     @property
     def weight_m(self) -> Float:
         """Length of the path that each point stands for, metres: points are not equally spaced, so means need it."""
-        step = np.diff(self.distance_m)
-        return np.asarray(0.5 * (np.append(step, 0.0) + np.append(0.0, step)))
+        return lengths_between(self.distance_m)
+
+    @property
+    def mean_ground_m(self) -> float:
+        """Mean ground along the path, above the vertical datum."""
+        return float(np.average(self.ground_m, weights=self.weight_m))

@@ -313,7 +313,7 @@ def test_feet_and_miles_on_request(run):
     assert "12.432 mi" in out  # 20.0076 km / 1.609344
     heights = r"328\.1 +131\.2 +459\.3"  # 100 m, 40 m and 140 m / 0.3048
     assert re.search(rf"ground +antenna +centre.*\n.* ft +ft +ft .*\n.*\nA  South .* {heights} ", out)
-    assert re.search(r" points \d+\.\d ft apart", out)
+    assert re.search(r" points at most \d+\.\d ft\s+apart", out)
 
 
 @pytest.mark.parametrize(

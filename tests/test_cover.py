@@ -6,7 +6,7 @@ from affine import Affine
 from hypothesis import given
 from hypothesis import strategies as st
 
-from profiler.cover import cover_along, obstacle_heights
+from profiler.cover import obstacle_edges, obstacle_heights, open_cover
 from profiler.errors import InputError, MissingGroundError, RasterError
 from profiler.models import CoverChoice, Obstacle
 
@@ -30,8 +30,9 @@ def grid(write_raster):
     return write
 
 
-def cover(choice, **options):
-    return cover_along(choice, X, LONGITUDE, LATITUDE, **options)
+def cover(choice, longitude=LONGITUDE, latitude=LATITUDE, *, method="bilinear", **options):
+    with open_cover(choice, method) as rasters:
+        return rasters.sample(X, longitude, latitude, **options)
 
 
 def test_canopy_comes_first_and_classes_fill_its_gaps(grid):
@@ -57,7 +58,7 @@ def test_a_class_is_never_blended_with_its_neighbour(grid):
     classes = grid("classes.tif", 3, {30: 41}, dtype="uint8")
     choice = CoverChoice(landcover=classes, class_heights_m=((3, 0.0), (41, 17.0)))
     longitude = np.array([10.02999, 10.03001, 10.03099, 10.03101])  # either side of both edges of column 30
-    assert cover_along(choice, X, longitude, LATITUDE).cover_m.tolist() == [0.0, 17.0, 17.0, 0.0]
+    assert cover(choice, longitude).cover_m.tolist() == [0.0, 17.0, 17.0, 0.0]
 
 
 def test_eight_bit_canopy_is_heights_and_no_photo(grid):
@@ -68,7 +69,7 @@ def test_canopy_is_read_like_the_terrain(grid):
     canopy = grid("canopy.tif", 0.0, {30: 20.0})
     between = np.array([10.031, 10.031, 10.031, 10.031])  # halfway from column 30 to column 31
     for method, height in (("bilinear", 10.0), ("highest", 20.0)):
-        found = cover_along(CoverChoice(canopy=(canopy,)), X, between, LATITUDE, method=method)
+        found = cover(CoverChoice(canopy=(canopy,)), between, method=method)
         assert found.cover_m == pytest.approx(np.full(4, height), abs=1e-6)
 
 
@@ -90,17 +91,17 @@ def test_a_gap_in_what_was_given_is_an_error_that_says_where(grid):
 def test_a_corridor_has_columns(grid):
     canopy = grid("canopy.tif", 4.0)
     shape = (4, 3)
-    choice = CoverChoice(canopy=(canopy,), obstacles=(Obstacle("barn", 900.0, 1100.0, 9.0),))
+    choice = CoverChoice(canopy=(canopy,))
     longitude, latitude = np.broadcast_to(LONGITUDE[:, None], shape), np.broadcast_to(LATITUDE[:, None], shape)
-    found = cover_along(choice, X, longitude, latitude)
-    assert found.cover_m.tolist() == [[4.0] * 3, [9.0] * 3, [4.0] * 3, [4.0] * 3]
+    found = cover(choice, longitude, latitude)
+    assert found.cover_m.tolist() == [[4.0] * 3] * 4
 
 
-def test_the_taller_of_cover_and_obstacle_counts(grid):
-    obstacles = (Obstacle("hut", 900.0, 1100.0, 2.0), Obstacle("tower", 2000.0, 2000.0, 40.0))
-    found = cover(CoverChoice(canopy=(grid("canopy.tif", 5.0),), obstacles=obstacles))
-    assert found.cover_m.tolist() == [5.0, 5.0, 40.0, 5.0]
-    assert found.notes[-1] == "obstacles: hut 2 m, tower 40 m"
+def test_shares_are_of_the_length_not_of_the_points(grid):
+    classes, canopy = grid("classes.tif", 3, dtype="uint8"), grid("canopy.tif", 5.0, {30: -1.0}, nodata=-1.0)
+    choice = CoverChoice(canopy=(canopy,), landcover=classes, class_heights_m=((3, 0.0),))
+    notes = cover(choice, weight_m=np.array([500.0, 100.0, 200.0, 200.0])).notes
+    assert [note.split(" on ")[1] for note in notes] == ["90% of the path", "10% of the path"]
 
 
 def test_an_unlisted_class_is_named_with_those_that_are(grid):
@@ -125,19 +126,13 @@ def test_a_folder_of_land_cover_lists_the_files_that_were_read(grid):
     assert cover(CoverChoice(landcover=first.parent, class_heights_m=((3, 1.0),))).files == (first,)
 
 
-@given(
-    start=st.floats(0.0, 2999.0),
-    width=st.floats(0.0, 1000.0),
-    height=st.floats(0.5, 100.0),
-    steps=st.integers(1, 200),
-)
-def test_no_obstacle_slips_between_two_points(start, width, height, steps):
-    distance = np.linspace(0.0, 3000.0, steps + 1)
-    heights = obstacle_heights(distance, (Obstacle("any", start, min(start + width, 3000.0), height),))
-    assert heights.max() == height
-    marked = distance[heights > 0]
-    step = 3000.0 / steps
-    assert np.all((marked >= start - step / 2) & (marked <= start + width + step / 2))
+@given(start=st.floats(0.0, 2999.0), width=st.floats(0.0, 1000.0), height=st.floats(0.5, 100.0))
+def test_an_obstacle_stands_between_its_edges(start, width, height):
+    obstacle = Obstacle("any", start, min(start + width, 3000.0), height)
+    inner = np.array([0.5 * (obstacle.from_m + obstacle.to_m)])
+    assert obstacle_heights(inner, (obstacle,)).tolist() == [height]
+    beyond = np.array([obstacle.from_m - 0.006, obstacle.to_m + 0.006])
+    assert obstacle_heights(beyond, (obstacle,)).tolist() == [0.0, 0.0]
 
 
 def test_overlapping_obstacles_do_not_stack():
@@ -148,4 +143,4 @@ def test_overlapping_obstacles_do_not_stack():
 
 def test_an_obstacle_beyond_the_path_is_refused():
     with pytest.raises(InputError, match=r"obstacle mast: to_m = 3001: must lie within the 3000 m path"):
-        obstacle_heights(X, (Obstacle("mast", 2990.0, 3001.0, 30.0),))
+        obstacle_edges((Obstacle("mast", 2990.0, 3001.0, 30.0),), 3000.0)

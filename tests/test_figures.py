@@ -320,7 +320,7 @@ def test_a_failing_rule_is_said_to_fail_by_how_much_where_and_which(study, profi
     assert sentence.startswith(f"{short} of 1.0 F1 at k = 4/3, {where}; 2 of 2 rules fail")
     label = text_by_gid(figure, "critical").replace("\n", " ")
     ground, cover = place.ground_m, place.cover_m
-    assert f"{where} ({place.latitude:.5f}° N, {-place.longitude:.5f}° W)" in label
+    assert f"({place.latitude:.5f}° N, {-place.longitude:.5f}° W)" in label
     assert f"ground {ground:.1f} m + cover {cover:.1f} m, {short}" in label
 
 
@@ -362,7 +362,7 @@ def test_every_assumption_stands_on_the_profile_or_on_the_margin_figure(study, p
     missing = [each for each in case.assumptions if each not in said and not each.startswith(elsewhere)]
     assert missing == []
     assert "a datum that the terrain does not state" in said
-    assert "bilinear, a point every 25.0 m" in said
+    assert f"bilinear, points at most {case.terrain.spacing_m:.1f} m apart" in said
     assert "errors: ground sigma 4.0 m (a guess for the test)" in said
 
 

@@ -100,34 +100,32 @@ def test_a_path_that_clears_by_hand(degrees):
     """Read from the raster with scipy, then worked with a pocket calculator.
 
     A stands on 1659 m and B on 2489 m, 42.34 km apart, antennas 30 m up: the ray climbs from 1689 m to 2519 m. Of the
-    mesas on the way the one 26.46 km out comes nearest: 2139 m, 15.88 km from B.
+    mesas on the way the one 27.254 km out comes nearest: 2159.7 m where the path crosses the line between two rows of
+    cell centres, 15.088 km from B.
 
-    - ray there: 1689 + 830 · 26.46/42.34 = 2207.7 m
-    - bulge at k = 4/3: 26.46 · 15.88/(12.742 · 4/3) = 24.7 m; at k = 2/3: 49.5 m
-    - F1 at 7.5 GHz: 17.3 · sqrt(26.46 · 15.88/(7.5 · 42.34)) = 19.9 m
-    - k = 4/3: 2207.7 - 2139 - 24.7 = 44 m clear, 24 m more than F1
-    - k = 2/3: 2207.7 - 2139 - 49.5 = 19 m clear, 13 m more than 0.3 F1
-
-    Ground that rises 20 m per cell makes a metre or two out of where exactly a point falls, and a second mesa 0.8 km on
-    is as near within that; so: both rules pass, least under the second, with some 11 m to spare, 26 to 28 km out.
+    - ray there: 1689 + 830 · 27.254/42.342 = 2223.2 m
+    - bulge at k = 4/3: 27.254 · 15.088/(12.742 · 4/3) = 24.2 m; at k = 2/3: 48.4 m
+    - F1 at 7.5 GHz: 17.3 · sqrt(27.254 · 15.088/(7.5 · 42.342)) = 19.7 m
+    - k = 4/3: 2223.2 - 2159.7 - 24.2 = 39.3 m clear, 19.6 m more than F1
+    - k = 2/3: 2223.2 - 2159.7 - 48.4 = 15.1 m clear, 9.2 m more than 0.3 F1
     """
     ground = interpolator(degrees)
     assert ground([(37.13917, -113.22917), (37.40833, -112.89083)]) == pytest.approx([1659, 2489], abs=0.5)
-    _, [mesa] = along(rim_to_rim(degrees), [26_460.0])
-    assert ground([mesa]) == pytest.approx(2139, abs=2)
+    _, [mesa] = along(rim_to_rim(degrees), [27_254.1])
+    assert ground([mesa]) == pytest.approx(2159.7, abs=0.05)
     study = run_study(rim_to_rim(degrees))
     assert study.line.distance_m == pytest.approx(42_340, abs=5)
     median, low = study.rules
     assert study.verdict.passes
     assert study.governing is low
-    for result, bulge_m, surplus_m in ((median, 24.7, 24.0), (low, 49.5, 13.0)):
+    for result, bulge_m, surplus_m in ((median, 24.2, 19.6), (low, 48.4, 9.2)):
         check, at = result.check, result.check.critical
         assert result.passes
         assert check.line_of_sight
-        assert 26_000 < study.profile.distance_m[at] < 28_000
-        assert check.bulge_m[at] == pytest.approx(bulge_m, rel=0.03)
-        assert check.f1_m[at] == pytest.approx(19.9, rel=0.02)
-        assert check.surplus_m[at] == pytest.approx(surplus_m, abs=4.0)
+        assert study.profile.distance_m[at] == pytest.approx(27_254.1, abs=0.5)
+        assert check.bulge_m[at] == pytest.approx(bulge_m, abs=0.05)
+        assert check.f1_m[at] == pytest.approx(19.7, abs=0.05)
+        assert check.surplus_m[at] == pytest.approx(surplus_m, abs=0.1)
     # both mesas are listed as places of their own, not as one crest
     assert np.all(np.diff(sorted([place.distance_m for place in low.places])) > 300)
 
@@ -158,22 +156,21 @@ def test_the_same_ground_in_two_systems_differs_by_the_warp_and_no_more(degrees,
     """Both rasters hold the same SRTM heights; whoever made the second resampled them to 83.5 m cells.
 
     What that costs is measured without the project, by scipy on both rasters at the points of the path: 5.1 m rms
-    and up to 91 m on these cliffs. The studies differ by exactly that, point by point; the surplus at the critical
-    point differs by 5.0 m, and the verdicts agree.
+    and up to 91 m on these cliffs. The studies differ by exactly that, at every point that both have.
     """
     hop = replace(rim_to_rim(degrees), terrain=TerrainChoice((degrees,), spacing_m=40.0))
     one = run_study(hop)
     other = run_study(replace(hop, terrain=TerrainChoice((utm,), spacing_m=40.0)))
-    places = np.column_stack((one.profile.latitude, one.profile.longitude))
+    _, here, there = np.intersect1d(one.profile.distance_m, other.profile.distance_m, return_indices=True)
+    assert here.size > 1000  # the regular points
+    places = np.column_stack((one.profile.latitude, one.profile.longitude))[here]
     easting, northing = Transformer.from_crs("EPSG:4326", "EPSG:32612").transform(*places.T)
     warp_m = interpolator(utm)(np.column_stack((northing, easting))) - interpolator(degrees)(places)
-    assert other.profile.ground_m - one.profile.ground_m == pytest.approx(warp_m, abs=0.01)
+    assert other.profile.ground_m[there] - one.profile.ground_m[here] == pytest.approx(warp_m, abs=0.01)
     assert warp_m.std() == pytest.approx(5.1, abs=0.05)
     assert np.abs(warp_m).max() == pytest.approx(91, abs=0.5)
     for first, second in zip(one.rules, other.rules, strict=True):
         assert first.passes == second.passes
-        difference = second.check.surplus_m[second.check.critical] - first.check.surplus_m[first.check.critical]
-        assert difference == pytest.approx(-5.0, abs=0.05)
     assert other.verdict.passes
     assert not run_study(through_the_mountain(utm)).verdict.passes
 
@@ -193,8 +190,11 @@ def test_land_cover_stands_where_its_raster_says(degrees, real_terrain):
     expected = np.array([heights_m[each] for each in classes.tolist()])
     assert study.profile.cover_m == pytest.approx(expected)
     assert {0.0, 2.0, 14.0} <= set(expected)
+    # the cover steps on the edges of cells, and there the profile has a point to either side
+    step = np.flatnonzero(np.diff(expected))
+    assert np.all(np.diff(study.profile.distance_m)[step] < 0.0011)
     for with_cover, without in zip(study.rules, bare.rules, strict=True):
-        assert np.all(with_cover.check.surplus_m <= without.check.surplus_m + 1e-9)
+        assert with_cover.check.surplus_m.min() <= without.check.surplus_m.min()
 
 
 def test_matplotlibs_fault(tmp_path):

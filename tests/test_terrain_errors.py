@@ -8,7 +8,7 @@ import pytest
 from rasterio.transform import Affine
 
 from profiler.errors import InputError, MissingGroundError, RasterError
-from profiler.terrain import open_terrain, require_inside, sample_classes
+from profiler.terrain import open_classes, open_terrain, require_inside
 
 GRID = Affine(0.01, 0, 10, 0, -0.01, 50)
 FLAT = np.full((10, 10), 1000, "float32")
@@ -185,8 +185,11 @@ def test_no_raster_under_the_path_has_no_cell_size(write_raster):
 
 
 def test_classes_must_be_whole(write_raster):
-    with pytest.raises(RasterError, match=r"a\.tif: holds 0\.5, and a class is a whole number from 0"):
-        sample_classes(write_raster("a.tif", FLAT * 0 + 0.5, GRID), 10.05, 49.95)
+    with (
+        open_classes(write_raster("a.tif", FLAT * 0 + 0.5, GRID)) as rasters,
+        pytest.raises(RasterError, match=r"a\.tif: holds 0\.5, and a class is a whole number from 0"),
+    ):
+        rasters.sample(10.05, 49.95)
 
 
 def test_gdal_says_nothing_of_its_own(tmp_path, write_raster):

@@ -10,7 +10,7 @@ from hypothesis import strategies as st
 from rasterio.transform import Affine
 
 from profiler.errors import MissingGroundError
-from profiler.terrain import fill_missing, missing_stretches, open_terrain, require_ground, sample_classes, survey
+from profiler.terrain import fill_missing, missing_stretches, open_classes, open_terrain, require_ground, survey
 from profiler.terrain.files import file_hash
 
 GRID = Affine(0.01, 0, 10, 0, -0.01, 50)
@@ -84,7 +84,8 @@ def test_classes_are_the_cell_a_point_lies_in(write_raster):
     classes[9, 9] = 255
     path = write_raster("c.tif", classes, GRID, nodata=255)
     lon = [10.001, 10.0099, 10.0101, 10.1, 10.095, 10.5]
-    found, files = sample_classes(path, lon, [49.999, 49.999, 49.999, 49.999, 49.905, 49.95])
+    with open_classes(path) as rasters:
+        found, files = rasters.sample(lon, [49.999, 49.999, 49.999, 49.999, 49.905, 49.95])
     assert found.tolist() == [1, 1, 2, 10, -1, -1]
     assert found.dtype == np.int64
     assert files == (path,)
@@ -96,7 +97,8 @@ def test_classes_of_real_land_cover_against_rasterio(real_terrain):
 
     path = real_terrain / "canyon_landcover_utm12.tif"
     lon, lat = np.random.default_rng(0).uniform((-113.2, 37.2), (-112.9, 37.45), (400, 2)).T
-    found, _ = sample_classes(path, lon.reshape(20, 20), lat.reshape(20, 20))
+    with open_classes(path) as rasters:
+        found, _ = rasters.sample(lon.reshape(20, 20), lat.reshape(20, 20))
     x, y = transform("EPSG:4326", "EPSG:26912", lon.tolist(), lat.tolist())
     with rasterio.open(path) as raster:
         expected = [int(value[0]) for value in raster.sample(zip(x, y, strict=True))]

@@ -94,8 +94,8 @@ def _show_sites(screen: Console, study: Study, scale: Scale) -> None:
     say(
         screen,
         f"{scale.distance(line.distance_m, 3)} {scale.distance_unit}, {hop.frequency_hz / 1e9:g} GHz,"
-        f" {hop.polarization} polarization, {line.points} points {scale.height(line.spacing_m)} {unit} apart;"
-        " antennas above ground, centres above the datum of the ground",
+        f" {hop.polarization} polarization, {line.points} points at most {scale.height(study.terrain.spacing_m)} {unit}"
+        " apart; antennas above ground, centres above the datum of the ground",
     )
 
 

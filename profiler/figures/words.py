@@ -174,8 +174,8 @@ def critical_words(study: Study, scale: Scale) -> str:
 
 def ground_notes(study: Study, scale: Scale) -> list[str]:
     """Where ground and cover come from, and what was done to them."""
-    terrain, spacing = study.terrain, scale.height_text(study.line.spacing_m)
-    names = [f"{each.info.path.name} ({each.share:.0%} of the points)" for each in terrain.sources]
+    terrain, spacing = study.terrain, scale.height_text(study.terrain.spacing_m)
+    names = [f"{each.info.path.name} ({each.share:.0%} of the path)" for each in terrain.sources]
     count = terrain.filled_points
     filled = [f"{count} points without data were interpolated between their neighbours (hatched)"] if count else []
     differences = [
@@ -183,7 +183,7 @@ def ground_notes(study: Study, scale: Scale) -> list[str]:
         for site, value in (("A", terrain.surveyed_difference_a_m), ("B", terrain.surveyed_difference_b_m))
         if value is not None
     ]
-    ground = f"ground: {', '.join(names)}, {terrain.method}, a point every {spacing}"
+    ground = f"ground: {', '.join(names)}, {terrain.method}, points at most {spacing} apart"
     corridor = study.governing.corridor
     width = [] if corridor is None else [f"zone checked to {scale.height_text(corridor.half_width_m)} beside the path"]
     return [ground, *filled, *differences, *terrain.cover_notes, *width]

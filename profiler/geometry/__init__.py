@@ -13,6 +13,7 @@ from profiler.geometry.corridor import (
     corridor_offsets,
     side_of,
 )
+from profiler.geometry.pieces import Least, Parabolas, PathZone, inside_places, least_surplus, zone_places
 from profiler.geometry.ray import earth_bulge, elevation_angle, fresnel_radius, ray_height
 from profiler.geometry.reflection import Reflection, find_reflections
 
@@ -20,6 +21,9 @@ __all__ = [
     "ROUNDING_M",
     "CorridorCheck",
     "CorridorNeed",
+    "Least",
+    "Parabolas",
+    "PathZone",
     "Reflection",
     "RuleCheck",
     "check_corridor",
@@ -30,7 +34,10 @@ __all__ = [
     "elevation_angle",
     "find_reflections",
     "fresnel_radius",
+    "inside_places",
+    "least_surplus",
     "ray_height",
     "side_of",
     "tight_places",
+    "zone_places",
 ]

@@ -9,6 +9,7 @@ from numpy.typing import ArrayLike
 
 from profiler.errors import InputError
 from profiler.geometry.ray import earth_bulge
+from profiler.models import lengths_between
 from profiler.units import SPEED_OF_LIGHT_M_S, Float, wavelength
 
 __all__ = ["Reflection", "find_reflections"]
@@ -52,7 +53,8 @@ def find_reflections(
 ) -> tuple[Reflection, ...]:
     """Specular points of a profile: places whose facet of bulged ground mirrors one antenna into the other.
 
-    Around every point a straight facet is fitted to the bulged surface by least squares; the image of B in the facet
+    Around every point a straight facet is fitted to the bulged surface by least squares, each point with the length of
+    the path that it stands for; the image of B in the facet
     tells where the mirrored ray would meet it. The places that meet themselves are the specular points. On a smooth
     earth that is one point; rough country may have several or none.
 
@@ -133,17 +135,24 @@ def _facets(distance: Float, bulged: Float, length: float) -> tuple[Float, Float
             f"profile of {distance.size} points: must have {_FEWEST_FACET_POINTS} or more in every {length:.0f} m, "
             "the length of a facet"
         )
-    x, z = distance - distance.mean(), bulged - bulged.mean()
+    weight = lengths_between(distance)
+    level = float(np.average(bulged, weights=weight))
+    x, z = distance - 0.5 * distance[-1], bulged - level
+
+    def total(values: Float) -> Float:
+        running = np.concatenate(([0.0], np.cumsum(values)))
+        return np.asarray(running[last] - running[first])
+
+    whole = total(weight)
 
     def window(values: Float) -> Float:
-        running = np.concatenate(([0.0], np.cumsum(values)))
-        return np.asarray((running[last] - running[first]) / count)
+        return total(weight * values) / whole
 
     mean_x, mean_z = window(x), window(z)
     spread = np.maximum(window(x * x) - mean_x**2, np.finfo(float).tiny)
     slope = np.where(count >= _FEWEST_FACET_POINTS, (window(x * z) - mean_x * mean_z) / spread, 0.0)
     residual = np.maximum(window(z * z) - mean_z**2 - slope**2 * spread, 0.0)
-    middle = bulged.mean() + mean_z + slope * (x - mean_x)
+    middle = level + mean_z + slope * (x - mean_x)
     return middle, slope, np.sqrt(residual)
 
 

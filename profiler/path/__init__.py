@@ -4,7 +4,19 @@ pyproj is imported inside the functions that need it: its import alone costs som
 """
 
 from profiler.path.datum import DATUMS, to_wgs84
-from profiler.path.line import LONGEST_M, PathLine, across, beside, geodesic, locate, midpoint, points_along, trace
+from profiler.path.line import (
+    LONGEST_M,
+    PathLine,
+    across,
+    beside,
+    equal_steps,
+    geodesic,
+    locate,
+    midpoint,
+    points_along,
+    trace,
+    with_points,
+)
 
 __all__ = [
     "DATUMS",
@@ -12,10 +24,12 @@ __all__ = [
     "PathLine",
     "across",
     "beside",
+    "equal_steps",
     "geodesic",
     "locate",
     "midpoint",
     "points_along",
     "to_wgs84",
     "trace",
+    "with_points",
 ]

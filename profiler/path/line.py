@@ -6,7 +6,7 @@ Longitude comes before latitude, in degrees, east and north positive; azimuths a
 from __future__ import annotations
 
 import math
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from functools import lru_cache
 from typing import TYPE_CHECKING
 
@@ -26,11 +26,13 @@ __all__ = [
     "across",
     "beside",
     "check_positions",
+    "equal_steps",
     "geodesic",
     "locate",
     "midpoint",
     "points_along",
     "trace",
+    "with_points",
 ]
 
 LONGEST_M = 1_000_000.0
@@ -42,7 +44,10 @@ _SHORTEST_M = 1.0
 
 @dataclass(frozen=True, slots=True, eq=False)
 class PathLine:
-    """Equally spaced points of the geodesic from A to B; arrays (n,), read-only, the first is A and the last is B.
+    """Points of the geodesic from A to B, in order; arrays (n,), read-only, the first is A and the last is B.
+
+    The points of `trace` are equally far apart, those of `with_points` wherever they were asked for: the distances
+    are in ``along_m``, and whoever takes a mean over points weights them by length.
 
     ``azimuth_a_deg`` points from A to B, ``azimuth_b_deg`` from B to A; ``azimuth_deg`` is the direction of travel
     toward B at each point.
@@ -60,11 +65,6 @@ class PathLine:
     def points(self) -> int:
         """How many points the path has, both sites among them."""
         return int(self.along_m.size)
-
-    @property
-    def spacing_m(self) -> float:
-        """Distance between neighbouring points."""
-        return self.distance_m / (self.points - 1)
 
 
 @lru_cache(maxsize=1)
@@ -190,17 +190,29 @@ def points_along(
     return np.asarray(there_lon).reshape(lon.shape), np.asarray(there_lat).reshape(lon.shape)
 
 
-def _intervals(distance_m: float, spacing_m: float) -> int:
-    """How many equal steps of at most ``spacing_m`` the path needs; a billionth too long is rounding, not a step."""
+def equal_steps(distance_m: float, spacing_m: float) -> Float:
+    """Distances from A, both ends included, in the fewest equal steps of at most ``spacing_m``.
+
+    Raises
+    ------
+    InputError
+        For a spacing that is not above 0 m or asks for more than two million points.
+
+    Examples
+    --------
+    >>> equal_steps(10.0, 4.0).round(2).tolist()
+    [0.0, 3.33, 6.67, 10.0]
+    """
     if not 0 < spacing_m < math.inf:
         raise InputError(f"spacing_m = {spacing_m:g}: must be more than 0 m")
+    # a billionth too long is rounding, not a step
     intervals = max(1.0, math.ceil(distance_m / spacing_m * (1.0 - 1e-9)))
     if intervals >= _MOST_POINTS:
         raise InputError(
             f"spacing_m = {spacing_m:g}: must be more than {distance_m / _MOST_POINTS:.3g} m on this path of "
-            f"{distance_m / 1e3:.1f} km; half a terrain cell is enough"
+            f"{distance_m / 1e3:.1f} km; a 200th of the path is enough"
         )
-    return int(intervals)
+    return np.linspace(0.0, distance_m, int(intervals) + 1)
 
 
 def trace(longitude_a: float, latitude_a: float, longitude_b: float, latitude_b: float, spacing_m: float) -> PathLine:
@@ -211,7 +223,7 @@ def trace(longitude_a: float, latitude_a: float, longitude_b: float, latitude_b:
     longitude_a, latitude_a, longitude_b, latitude_b
         The sites, WGS 84 degrees.
     spacing_m
-        Greatest distance between points, more than 0 m; half the finest terrain cell misses no cell on the way.
+        Greatest distance between points, more than 0 m.
 
     Returns
     -------
@@ -238,21 +250,56 @@ def trace(longitude_a: float, latitude_a: float, longitude_b: float, latitude_b:
             f"the sites are {distance / 1e3:.0f} km apart: must be at most {LONGEST_M / 1e3:.0f} km; "
             "check the signs and letters of both positions"
         )
-    along = np.linspace(0.0, distance, _intervals(distance, spacing_m) + 1)
-    longitude, latitude, back = _forward((longitude_a, latitude_a, azimuth_a), along)
-    longitude[0], latitude[0] = longitude_a, latitude_a
-    longitude[-1], latitude[-1] = longitude_b, latitude_b
+    points = [0.0, distance], [longitude_a, longitude_b], [latitude_a, latitude_b], [azimuth_a, azimuth_b + 180.0]
+    ends = PathLine(distance, azimuth_a, azimuth_b, *map(frozen_array, points))
+    return with_points(ends, equal_steps(distance, spacing_m))
+
+
+def with_points(line: PathLine, along_m: ArrayLike) -> PathLine:
+    """Return the same path with its points at other distances from A.
+
+    Parameters
+    ----------
+    line
+        The path.
+    along_m
+        Distances from A, ascending from 0 to the path's length, (n,).
+
+    Returns
+    -------
+    PathLine
+        Its ends are exactly the sites.
+
+    Raises
+    ------
+    InputError
+        If the distances do not ascend from 0 to the path's length.
+
+    Examples
+    --------
+    >>> line = trace(0.0, 0.0, 0.0, 0.1, spacing_m=5e3)
+    >>> with_points(line, [0.0, 1.0, line.distance_m]).latitude.round(8).tolist()
+    [0.0, 9.04e-06, 0.1]
+    """
+    distance = frozen_array(along_m)
+    if distance[0] != 0.0 or distance[-1] != line.distance_m or not np.all(np.diff(distance) > 0.0):
+        raise InputError(f"along_m: must ascend from 0 to the {line.distance_m:.3f} m of the path")
+    longitude, latitude, back = _forward(_start(line), distance)
+    longitude[[0, -1]], latitude[[0, -1]] = line.longitude[[0, -1]], line.latitude[[0, -1]]
     azimuth = np.mod(back + 180.0, 360.0)
-    azimuth[0], azimuth[-1] = azimuth_a, math.fmod(azimuth_b + 180.0, 360.0)
-    return PathLine(
-        distance_m=distance,
-        azimuth_a_deg=azimuth_a,
-        azimuth_b_deg=azimuth_b,
-        along_m=frozen_array(along),
+    azimuth[[0, -1]] = line.azimuth_a_deg, math.fmod(line.azimuth_b_deg + 180.0, 360.0)
+    return replace(
+        line,
+        along_m=distance,
         longitude=frozen_array(longitude),
         latitude=frozen_array(latitude),
         azimuth_deg=frozen_array(azimuth),
     )
+
+
+def _start(line: PathLine) -> tuple[float, float, float]:
+    """Site A and the direction in which the path leaves it."""
+    return float(line.longitude[0]), float(line.latitude[0]), line.azimuth_a_deg
 
 
 def across(line: PathLine, offset_m: ArrayLike) -> tuple[Float, Float]:
@@ -358,8 +405,7 @@ def locate(line: PathLine, longitude: ArrayLike, latitude: ArrayLike) -> tuple[F
 
 def _aside(line: PathLine, along_m: Float, longitude: Float, latitude: Float) -> tuple[Float, Float, Float]:
     """From points of the path: step along it toward the foot of each position, its distance, and sin of its bearing."""
-    start = (float(line.longitude[0]), float(line.latitude[0]), line.azimuth_a_deg)
-    foot_longitude, foot_latitude, back = _forward(start, along_m)
+    foot_longitude, foot_latitude, back = _forward(_start(line), along_m)
     distance, bearing, _ = geodesic(foot_longitude, foot_latitude, longitude, latitude)
     turn = np.radians(bearing - (back + 180.0))
     angle = distance / MEAN_EARTH_RADIUS_M

@@ -113,7 +113,7 @@ def _path(study: Study) -> dict[str, Any]:
         "elevation_a_deg": study.elevation_a_deg,
         "elevation_b_deg": study.elevation_b_deg,
         "points": study.line.points,
-        "spacing_m": study.line.spacing_m,
+        "spacing_m": study.terrain.spacing_m,
     }
 
 

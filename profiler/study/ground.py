@@ -7,20 +7,18 @@ from pathlib import Path
 
 import numpy as np
 
-from profiler.cover import Cover, cover_along
-from profiler.errors import InputError, under
+from profiler.cover import Cover, CoverRasters, open_cover
+from profiler.errors import InputError
 from profiler.geometry import corridor_offsets
-from profiler.models import Hop, Profile, Rule, Site, TerrainChoice, frozen_array
-from profiler.path import PathLine, across, geodesic, trace
+from profiler.models import Hop, Profile, Rule, Site, frozen_array
+from profiler.path import PathLine, across, trace
+from profiler.study.along_path import lay_profile, standing_heights
 from profiler.study.result import Corridor, Relief, TerrainUse
 from profiler.terrain import SourceUse, Terrain, common_datum, fill_missing, missing_stretches, require_ground
 from profiler.units import Float
 
 __all__ = ["Ground", "read_ground", "require_above_cover"]
 
-_SEARCH_STEPS = 256
-_DEFAULT_STEPS, _FEWEST_STEPS = 200, 50
-"""A short path over coarse cells still needs points enough for its bulge, its zone and the facets that reflect."""
 _RELIEF_ALONG, _RELIEF_ACROSS = 320, 61
 _ACROSS_STEPS = 10
 _POINTS_AT_ONCE = 200_000
@@ -67,41 +65,40 @@ def read_ground(
     InputError, RasterError
         For rasters that cannot be used, datums that do not agree, or points too far apart.
     """
-    line, cell_m = _lay_path(hop, terrain)
-    samples = terrain.sample(line.longitude, line.latitude)
-    ground_m = np.array(samples.ground_m)
-    site_notes = _with_true_sites(hop, terrain, line, ground_m)
-    differences = _with_surveys(hop, ground_m)
-    ground_m, filled, fill_notes = _without_gaps(hop, line, ground_m)
-    cover = _cover(hop, line, line.longitude, line.latitude)
-    surveyed = np.zeros(line.points, dtype=bool)
-    surveyed[[0, -1]] = [difference is not None for difference in differences]
-    profile = Profile(
-        distance_m=line.along_m,
-        longitude=line.longitude,
-        latitude=line.latitude,
-        ground_m=frozen_array(ground_m),
-        cover_m=cover.cover_m,
-        filled=frozen_array(filled, np.bool_),
-        surveyed=frozen_array(surveyed, np.bool_),
-    )
-    corridor, beside, cover_files = _corridor(hop, terrain, profile, line, cell_m)
-    datum, datum_notes = common_datum([*samples.sources, *beside], allow_mixed=hop.terrain.allow_mixed_datums)
+    with open_cover(hop.cover, hop.terrain.method) as cover:
+        along = lay_profile(hop, terrain, cover)
+        line = along.line
+        ground_m, filled, fill_notes = _without_gaps(hop, line, along.ground_m)
+        surveyed = np.zeros(line.points, dtype=bool)
+        surveyed[[0, -1]] = [site.surveyed_ground_m is not None for site in (hop.site_a, hop.site_b)]
+        profile = Profile(
+            distance_m=line.along_m,
+            longitude=line.longitude,
+            latitude=line.latitude,
+            ground_m=frozen_array(ground_m),
+            cover_m=frozen_array(along.cover_m),
+            filled=frozen_array(filled, np.bool_),
+            surveyed=frozen_array(surveyed, np.bool_),
+        )
+        corridor, beside, cover_files = _corridor(hop, terrain, cover, profile, line, along.finest_cell_m)
+    datum, datum_notes = common_datum([*along.sources, *beside], allow_mixed=hop.terrain.allow_mixed_datums)
+    differences = _survey_differences(hop, along.raster_ends_m)
     use = TerrainUse(
         method=hop.terrain.method,
-        spacing_m=line.spacing_m,
-        finest_cell_m=cell_m,
-        vertical_datum=samples.vertical_datum,
-        sources=samples.sources,
+        spacing_m=along.spacing_m,
+        finest_cell_m=along.finest_cell_m,
+        vertical_datum=along.vertical_datum,
+        sources=along.sources,
         filled_points=int(filled.sum()),
+        filled_share=float(profile.weight_m[filled].sum() / line.distance_m),
         surveyed_difference_a_m=differences[0],
         surveyed_difference_b_m=differences[1],
-        notes=(*samples.notes, *(datum_notes if datum != samples.vertical_datum else ()), *fill_notes, *site_notes),
-        cover_notes=cover.notes,
+        notes=(*along.notes, *(datum_notes if datum != along.vertical_datum else ()), *fill_notes),
+        cover_notes=along.cover_notes,
     )
     wide = None if around is None else terrain.sample(*around, allow_mixed_datums=True)
-    sources = [*samples.sources, *beside, *(() if wide is None else wide.sources)]
-    files = [*(path for source in sources for path in source.files), *cover.files, *cover_files]
+    sources = [*along.sources, *beside, *(() if wide is None else wide.sources)]
+    files = [*(path for source in sources for path in source.files), *along.cover_files, *cover_files]
     return Ground(
         line=line,
         profile=profile,
@@ -111,23 +108,6 @@ def read_ground(
         heights_around_m=None if wide is None else wide.ground_m,
         files=tuple(dict.fromkeys(files)),
     )
-
-
-def _lay_path(hop: Hop, terrain: Terrain) -> tuple[PathLine, float]:
-    """Trace the path with points at most half the finest cell apart, unless the hop file says otherwise."""
-    length_m, spacing_m = float(geodesic(*hop.ends)[0]), hop.terrain.spacing_m
-    coarse = trace(*hop.ends, spacing_m=length_m / _SEARCH_STEPS)
-    # a cell is measured where the path meets its raster first: ask from both ends, or swapping them moves the points
-    cell_m = min(terrain.finest_cell_m(coarse.longitude[::way], coarse.latitude[::way]) for way in (1, -1))
-    if spacing_m is None:
-        spacing_m = min(0.5 * cell_m, length_m / _DEFAULT_STEPS)
-    elif spacing_m * _FEWEST_STEPS > length_m:
-        raise InputError(
-            f"terrain.spacing_m = {spacing_m:g}: must be at most one {_FEWEST_STEPS}th of this path of"
-            f" {length_m / 1e3:.2f} km; leave it out for half the finest cell"
-        )
-    with under("terrain", TerrainChoice):
-        return trace(*hop.ends, spacing_m=spacing_m), cell_m
 
 
 def _without_gaps(hop: Hop, line: PathLine, ground_m: Float) -> tuple[Float, np.ndarray, tuple[str, ...]]:
@@ -146,45 +126,22 @@ def _without_gaps(hop: Hop, line: PathLine, ground_m: Float) -> tuple[Float, np.
     return ground_m, filled, notes
 
 
-def _with_true_sites(hop: Hop, terrain: Terrain, line: PathLine, ground_m: Float) -> tuple[str, ...]:
-    """Put bilinear ground in at the sites: the highest cell around one would lift its antenna with it."""
-    if hop.terrain.method != "highest":
-        return ()
-    ends = [0, -1]
-    ground_m[ends] = terrain.sample(line.longitude[ends], line.latitude[ends], method="bilinear").ground_m
-    return ("ground at the sites: bilinear, as the highest cell around would lift the antennas",)
-
-
-def _with_surveys(hop: Hop, ground_m: Float) -> tuple[float | None, float | None]:
-    """Put the surveyed ground in at the sites, and say how far the raster was from it."""
+def _survey_differences(hop: Hop, raster_ends_m: tuple[float, float]) -> tuple[float | None, float | None]:
+    """How far the surveyed ground at A and B is from the raster's."""
 
     def difference(site: Site, raster_m: float) -> float | None:
         survey_m = site.surveyed_ground_m
         return None if survey_m is None or np.isnan(raster_m) else survey_m - raster_m
 
-    differences = difference(hop.site_a, float(ground_m[0])), difference(hop.site_b, float(ground_m[-1]))
-    if hop.site_a.surveyed_ground_m is not None:
-        ground_m[0] = hop.site_a.surveyed_ground_m
-    if hop.site_b.surveyed_ground_m is not None:
-        ground_m[-1] = hop.site_b.surveyed_ground_m
-    return differences
+    return difference(hop.site_a, raster_ends_m[0]), difference(hop.site_b, raster_ends_m[1])
 
 
-def _cover(hop: Hop, line: PathLine, longitude: Float, latitude: Float, part: slice = slice(None)) -> Cover:
-    """Cover at points of a part of the path or beside it, with the clearings around the sites taken out.
-
-    On the path a gap in the cover is an error; beside it, where there are many columns, it is left and counted.
-    """
-    beside, along_m = longitude.ndim > 1, line.along_m[part]
-    cover = cover_along(
-        hop.cover, line.along_m, longitude, latitude, rows=part, method=hop.terrain.method, allow_gaps=beside
-    )
-    heights, notes = np.array(cover.cover_m), list(cover.notes)
-    for site, from_site_m in ((hop.site_a, along_m), (hop.site_b, line.distance_m - along_m)):
-        if site.clearing_m > 0:
-            heights[from_site_m <= site.clearing_m] = 0.0
-            notes.append(f"no cover within {site.clearing_m:g} m of {site.name}, as the hop file says")
-    return Cover(frozen_array(heights), tuple(notes), cover.files)
+def _cover(hop: Hop, cover: CoverRasters, line: PathLine, longitude: Float, latitude: Float, part: slice) -> Cover:
+    """Cover beside a part of the path, with obstacles and clearings; a gap is left there, and counted."""
+    along_m = line.along_m[part]
+    found = cover.sample(along_m, longitude, latitude, allow_gaps=True)
+    heights = standing_heights(hop, line.distance_m, along_m[:, None], found.cover_m)
+    return Cover(frozen_array(heights), found.notes, found.files)
 
 
 def require_above_cover(hop: Hop, profile: Profile) -> None:
@@ -226,7 +183,7 @@ def _lower_rules(hop: Hop) -> tuple[Rule, ...]:
 
 
 def _corridor(
-    hop: Hop, terrain: Terrain, profile: Profile, line: PathLine, cell_m: float
+    hop: Hop, terrain: Terrain, cover: CoverRasters, profile: Profile, line: PathLine, cell_m: float
 ) -> tuple[Corridor | None, list[SourceUse], list[Path]]:
     """Surface across the path to the edge of the widest zone asked for, NaN where unknown, and what it is from.
 
@@ -245,10 +202,10 @@ def _corridor(
     rows = max(1, _POINTS_AT_ONCE // offset.shape[1])
     for part in (slice(first, first + rows) for first in range(0, line.points, rows)):
         samples = terrain.sample(longitude[part], latitude[part])
-        cover = _cover(hop, line, longitude[part], latitude[part], part)
-        surface[part], cover_m[part] = samples.ground_m + cover.cover_m, cover.cover_m
+        standing = _cover(hop, cover, line, longitude[part], latitude[part], part)
+        surface[part], cover_m[part] = samples.ground_m + standing.cover_m, standing.cover_m
         sources += samples.sources
-        files += cover.files
+        files += standing.files
     # at the sites the zone has no width: what a survey or a fill says of the path holds for the whole row there
     surface = np.where(offset == 0.0, profile.surface_m[:, None], surface)
     return Corridor(frozen_array(offset), frozen_array(surface), frozen_array(cover_m)), sources, files

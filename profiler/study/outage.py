@@ -246,7 +246,7 @@ def _facts(hop: Hop, climate: ClimateUse, choice: AvailabilityChoice, path: Path
         centre_b_m=path.centre_b_m,
         latitude=climate.latitude,
         polarization=hop.polarization,
-        mean_ground_m=float(np.average(profile.ground_m, weights=profile.weight_m)),
+        mean_ground_m=profile.mean_ground_m,
         ground_roughness_m=path_roughness(profile.distance_m, profile.ground_m) if rough else None,
         median_k=climate.median_k,
         median_loss_db=path.losses[climate.median_k].loss_db,

@@ -79,7 +79,10 @@ class RuleResult:
 
 @dataclass(frozen=True, slots=True)
 class TerrainUse:
-    """Where the ground came from and what was done to it."""
+    """Where the ground came from and what was done to it; ``filled_share`` is of the path's length.
+
+    ``spacing_m`` is the most that neighbouring points of the profile are apart; it has no say in what is found.
+    """
 
     method: str
     spacing_m: float
@@ -87,6 +90,7 @@ class TerrainUse:
     vertical_datum: str | None
     sources: tuple[SourceUse, ...]
     filled_points: int
+    filled_share: float
     surveyed_difference_a_m: float | None
     surveyed_difference_b_m: float | None
     notes: tuple[str, ...]

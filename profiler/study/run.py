@@ -191,7 +191,7 @@ def _assumptions(hop: Hop, ground: Ground, climate: ClimateUse, air: Air, found:
                 *hop.assumptions,
                 *climate.assumptions,
                 *(f"{site.name}: {note}" for site in (hop.site_a, hop.site_b) for note in site.position_notes),
-                f"ground between cell centres: {terrain.method}; a point every {terrain.spacing_m:.1f} m",
+                f"ground between cell centres: {terrain.method}, exact along the path however densely it is listed",
                 f"vertical datum: {datum}",
                 *sources,
                 *terrain.notes,
@@ -235,7 +235,7 @@ def _warnings(hop: Hop, ground: Ground, rules: Sequence[RuleResult], air: Air, f
     return tuple(
         dict.fromkeys(
             [
-                *ground_warnings(hop, ground.terrain, rules, ground.line.points),
+                *ground_warnings(hop, ground.terrain, rules),
                 *(warning for loss in found.losses.values() for warning in loss.warnings),
                 *air.warnings,
                 *(found.budget.warnings if found.budget is not None else ()),

@@ -79,7 +79,7 @@ def _where(hop: Hop, place: Place, *, feet: bool) -> str:
     return f"{place.distance_m / far_m:.2f} {far} from {hop.site_a.name}{aside}{invented}"
 
 
-def ground_warnings(hop: Hop, terrain: TerrainUse, rules: Sequence[RuleResult], points: int) -> tuple[str, ...]:
+def ground_warnings(hop: Hop, terrain: TerrainUse, rules: Sequence[RuleResult]) -> tuple[str, ...]:
     """Warn of ground that is coarse, interpolated, far from a survey, or not seen.
 
     Parameters
@@ -90,8 +90,6 @@ def ground_warnings(hop: Hop, terrain: TerrainUse, rules: Sequence[RuleResult], 
         The terrain as it was used.
     rules
         Every rule held against it.
-    points
-        How many points the path has.
 
     Returns
     -------
@@ -99,19 +97,13 @@ def ground_warnings(hop: Hop, terrain: TerrainUse, rules: Sequence[RuleResult], 
     """
     found = []
     if terrain.filled_points:
-        share = terrain.filled_points / points
         found.append(
-            f"ground is interpolated at {terrain.filled_points} points, {share:.0%} of the path: what stands there is"
-            " unknown"
+            f"ground is interpolated at {terrain.filled_points} points, {terrain.filled_share:.0%} of the path: what"
+            " stands there is unknown"
         )
     if terrain.finest_cell_m > _COARSE_CELL_M:
         found.append(
             f"the finest terrain has cells of {terrain.finest_cell_m:.0f} m: hills narrower than that are not in it"
-        )
-    if terrain.spacing_m > terrain.finest_cell_m:
-        found.append(
-            f"points stand {terrain.spacing_m:.0f} m apart over cells of {terrain.finest_cell_m:.0f} m, as the hop file"
-            " says: ground between them is not looked at"
         )
     differences = ((hop.site_a, terrain.surveyed_difference_a_m), (hop.site_b, terrain.surveyed_difference_b_m))
     for site, difference_m in differences:

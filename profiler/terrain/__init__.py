@@ -5,7 +5,7 @@ is. Missing ground is NaN, never 0.
 """
 
 from profiler.terrain.behind import files_behind
-from profiler.terrain.classes import sample_classes
+from profiler.terrain.classes import Classes, open_classes
 from profiler.terrain.describe import Bounds, RasterInfo
 from profiler.terrain.files import file_hash
 from profiler.terrain.gaps import fill_missing, missing_stretches, require_ground
@@ -18,6 +18,7 @@ from profiler.terrain.sites import require_inside
 
 __all__ = [
     "Bounds",
+    "Classes",
     "FolderSurvey",
     "RasterInfo",
     "RasterSurvey",
@@ -34,9 +35,9 @@ __all__ = [
     "fill_missing",
     "library_versions",
     "missing_stretches",
+    "open_classes",
     "open_terrain",
     "require_ground",
     "require_inside",
-    "sample_classes",
     "survey",
 ]

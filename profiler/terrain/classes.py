@@ -2,40 +2,95 @@
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from pathlib import Path
+from types import TracebackType
+from typing import Self
 
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
 from profiler.errors import RasterError
 from profiler.terrain.cells import ReadTally, fetch
+from profiler.terrain.crossings import find_crossings
 from profiler.terrain.describe import Reading, Tile
 from profiler.terrain.gdal import OpenRasters, gdal_session
 from profiler.terrain.index import Hits, Ints, build_index, find_hits
 from profiler.terrain.mosaic import as_degrees, describe_all
+from profiler.units import Float
 
-__all__ = ["sample_classes"]
+__all__ = ["Classes", "open_classes"]
 
 
-def sample_classes(path: Path, longitude: ArrayLike, latitude: ArrayLike) -> tuple[Ints, tuple[Path, ...]]:
-    r"""Class number of the cell that each point lies in.
+class Classes:
+    """Class rasters opened together; a context manager that closes the files it opened. Made by `open_classes`."""
+
+    __slots__ = ("_index", "_rasters")
+
+    def __init__(self, tiles: Sequence[Tile]) -> None:
+        self._index, self._rasters = build_index(tiles), OpenRasters()
+
+    def __enter__(self) -> Self:
+        return self
+
+    def __exit__(
+        self, kind: type[BaseException] | None, error: BaseException | None, trace: TracebackType | None
+    ) -> None:
+        self._rasters.close()
+
+    def crossings(self, longitude: ArrayLike, latitude: ArrayLike) -> Float:
+        """Fractions of the way along a path at which the class may change: `Terrain.crossings`, of the cells' edges."""
+        return find_crossings(self._index, *as_degrees(longitude, latitude)[:2], cell_edges=True)
+
+    def sample(self, longitude: ArrayLike, latitude: ArrayLike) -> tuple[Ints, tuple[Path, ...]]:
+        """Class number of the cell that each point lies in.
+
+        Parameters
+        ----------
+        longitude, latitude
+            Degrees on WGS 84, any shapes that broadcast.
+
+        Returns
+        -------
+        classes, files
+            Classes, -1 where no raster has one (outside, nodata), and the files that were read for them.
+
+        Raises
+        ------
+        RasterError
+            When a raster is unreadable, or holds numbers that are not whole.
+        """
+        lon, lat, shape = as_degrees(longitude, latitude)
+        classes, files, tally = np.full(lon.size, -1, dtype=np.int64), dict[Path, None](), ReadTally()
+        with gdal_session():
+            hits = find_hits(self._index, lon, lat)
+            hits = hits.take(hits.inside)
+            for number in np.unique(hits.tile):
+                mine = hits.take((hits.tile == number) & (classes[hits.point] < 0))
+                if mine.point.size:
+                    tile = self._index.tiles[number]
+                    classes[mine.point] = _classes_on_tile(tile, int(number), self._rasters, mine, tally)
+                    files |= dict.fromkeys(self._rasters.pieces(tile.file).under(tally.windows[int(number)]))
+        return classes.reshape(shape), tuple(files)
+
+
+def open_classes(path: Path) -> Classes:
+    r"""Index class rasters for sampling; only their metadata is read.
 
     Parameters
     ----------
     path
         A raster of whole numbers, or a folder of them: the first that has a class at a point answers.
-    longitude, latitude
-        Degrees on WGS 84, any shapes that broadcast.
 
     Returns
     -------
-    classes, files
-        Classes, -1 where no raster has one (outside, nodata), and the files that were read for them.
+    Classes
+        A context manager.
 
     Raises
     ------
     RasterError
-        When a raster is unreadable, a photo, without a CRS, or holds numbers that are not whole.
+        When a raster is a photo, without a CRS, or cannot be read.
 
     Examples
     --------
@@ -44,27 +99,12 @@ def sample_classes(path: Path, longitude: ArrayLike, latitude: ArrayLike) -> tup
     >>> with tempfile.TemporaryDirectory() as folder:
     ...     _ = Path(folder, "cover.prj").write_text("Projection GEOGRAPHIC\nDatum WGS84\nUnits DD\n")
     ...     _ = Path(folder, "cover.asc").write_text(grid)
-    ...     classes, files = sample_classes(Path(folder), [10.02, 10.09, 10.15, 11.0], 50.05)
+    ...     with open_classes(Path(folder)) as rasters:
+    ...         classes, files = rasters.sample([10.02, 10.09, 10.15, 11.0], 50.05)
     >>> classes.tolist(), [path.name for path in files]
     ([4, 4, -1, -1], ['cover.asc', 'cover.prj'])
     """
-    lon, lat, shape = as_degrees(longitude, latitude)
-    tiles, _ = describe_all([path], Reading(classes=True))
-    index, rasters, tally = build_index(tiles), OpenRasters(), ReadTally()
-    classes, files = np.full(lon.size, -1, dtype=np.int64), dict[Path, None]()
-    with gdal_session():
-        hits = find_hits(index, lon, lat)
-        hits = hits.take(hits.inside)
-        try:
-            for number in np.unique(hits.tile):
-                mine = hits.take((hits.tile == number) & (classes[hits.point] < 0))
-                if mine.point.size:
-                    tile = index.tiles[number]
-                    classes[mine.point] = _classes_on_tile(tile, int(number), rasters, mine, tally)
-                    files |= dict.fromkeys(rasters.pieces(tile.file).under(tally.windows[int(number)]))
-        finally:
-            rasters.close()
-    return classes.reshape(shape), tuple(files)
+    return Classes(describe_all([path], Reading(classes=True))[0])
 
 
 def _classes_on_tile(tile: Tile, number: int, rasters: OpenRasters, hits: Hits, tally: ReadTally) -> Ints:

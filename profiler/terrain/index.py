@@ -18,7 +18,7 @@ from profiler.terrain.proj import from_lonlat
 from profiler.terrain.reference import Reference
 from profiler.units import Float
 
-__all__ = ["Hits", "Index", "Ints", "build_index", "find_hits", "locate_cells"]
+__all__ = ["Group", "Hits", "Index", "Ints", "build_index", "find_hits", "locate_cells", "turned"]
 
 Ints = NDArray[np.int64]
 
@@ -195,17 +195,17 @@ def find_hits(index: Index, longitude: Float, latitude: Float) -> Hits:
 def _hits_in_group(index: Index, group: Group, point: Ints, x: Float, y: Float) -> list[Hits]:
     """Test the box around all the points against each tile's, and in those that meet it each point."""
     period, box = group.reference.period, index.box[group.tiles]
-    turn = _turned(x - x[0], period)
+    turn = turned(x - x[0], period)
     half_x, half_y = np.ptp(turn) / 2, np.ptp(y) / 2
     middle_x, middle_y = x[0] + turn.min() + half_x, y.min() + half_y
-    meets = (np.abs(_turned(middle_x - box[:, 0], period)) <= half_x + box[:, 2]) & (
+    meets = (np.abs(turned(middle_x - box[:, 0], period)) <= half_x + box[:, 2]) & (
         np.abs(middle_y - box[:, 1]) <= half_y + box[:, 3]
     )
     found = []
     for tile in group.tiles[meets]:
         tile_x, tile_y, wide, high = index.box[tile]
         reach = np.flatnonzero(np.abs(y - tile_y) <= high)
-        reach = reach[np.abs(_turned(x[reach] - tile_x, period)) <= wide]
+        reach = reach[np.abs(turned(x[reach] - tile_x, period)) <= wide]
         if reach.size:
             found.append(_hits_on_tile(index, int(tile), point[reach], x[reach], y[reach], period))
     return found
@@ -213,7 +213,7 @@ def _hits_in_group(index: Index, group: Group, point: Ints, x: Float, y: Float) 
 
 def _hits_on_tile(index: Index, tile: int, point: Ints, x: Float, y: Float, period: float) -> Hits:
     if period:
-        x = index.box[tile, 0] + _turned(x - index.box[tile, 0], period)
+        x = index.box[tile, 0] + turned(x - index.box[tile, 0], period)
     ia, ib, ic, id_, ie, if_ = index.inverse[tile]
     u, v = _snapped(ia * x + ib * y + ic), _snapped(id_ * x + ie * y + if_)
     width, height = index.size[tile]
@@ -224,7 +224,7 @@ def _hits_on_tile(index: Index, tile: int, point: Ints, x: Float, y: Float, peri
     return Hits(point[reached], np.full(reached.size, tile, dtype=np.int64), u, v, inside)
 
 
-def _turned(difference: Float, period: float) -> Float:
+def turned(difference: Float, period: float) -> Float:
     """Differences of longitude the short way round; as they are where x is no longitude."""
     return difference - period * np.rint(difference / period) if period else difference
 

@@ -12,6 +12,7 @@ from numpy.typing import ArrayLike, NDArray
 
 from profiler.errors import InputError, MissingGroundError, RasterError, under
 from profiler.models import SampleMethod
+from profiler.terrain.crossings import find_crossings
 from profiler.terrain.describe import NotHeightsError, RasterInfo, Reading, Tile, describe
 from profiler.terrain.files import find_rasters
 from profiler.terrain.gdal import OpenRasters, gdal_session
@@ -86,6 +87,20 @@ class Terrain:
                     f"{lat.max():.6f}; give terrain that does"
                 )
             return float(lattice_cells(self._index, hits)[1].min())
+
+    def crossings(self, longitude: ArrayLike, latitude: ArrayLike) -> Float:
+        """Fractions of the way along a path at which it crosses the lines through cell centres, 0 to 1, in no order.
+
+        Between two neighbouring ones, of all the rasters that the path meets, the ground is one parabola in the
+        distance along it (one height, for the highest of the cells around) and comes from one raster.
+
+        Parameters
+        ----------
+        longitude, latitude
+            Degrees on WGS 84 of points equally far apart along the path, an odd number of them, (n,); 257 serve for
+            any path that is a radio hop.
+        """
+        return find_crossings(self._index, *as_degrees(longitude, latitude)[:2], cell_edges=False)
 
     def sample(
         self,
