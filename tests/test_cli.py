@@ -769,7 +769,7 @@ def test_a_hop_file_that_is_not_there(refused, command):
         ),
         (("study", *changed(frequency_ghz="-7")), "command line: --frequency-ghz = -7.0: must be 0.01 to 1000 GHz"),
         (("study", *changed(frequency_ghz="nan")), "command line: --frequency-ghz = nan: must be a number"),
-        (("study", *changed(frequency_ghz="x")), "'--frequency-ghz': 'x' is not a valid float"),
+        (("study", *changed(frequency_ghz="x")), "'--frequency-ghz': 'x' must be a number, like 7.5"),
         (("study", *changed(antenna_a="tall")), "--antenna-a = 'tall': must be a height like 30 m or 98.4 ft"),
         (("study", *changed(antenna_b="-5")), "--antenna-b = -5.0: must be more than 0 and under 2000 m"),
         (("study", *changed(terrain="")), "--terrain = '': must be text in quotes, not empty"),

@@ -42,7 +42,7 @@ paths = ["dem.tif"]
 canopy = ["trees.tif"]
 
 [rules]
-preset = "1.0-and-0.3-f1"
+rule = [{ k = 1.333, fresnel_fraction = 1.0 }, { k = 0.667, fresnel_fraction = 0.3 }]
 """
 COMMANDS = ("study", "heights", "losses", "reach")
 RADIO = """

@@ -8,6 +8,7 @@ from typing import TYPE_CHECKING, Any
 import click
 
 from profiler.cli.hop_options import hop_options, named, read_hop, speech_options
+from profiler.cli.number import NUMBER
 from profiler.cli.output import check_targets, csv_text, deliver, rendered, tell
 from profiler.errors import InputError
 
@@ -40,7 +41,7 @@ __all__ = ["command"]
 @click.option(
     "--sure",
     "sure_percent",
-    type=float,
+    type=NUMBER,
     metavar="PERCENT",
     help="Let the pair clear with this chance, by [confidence]: 50 to 99.9.",
 )

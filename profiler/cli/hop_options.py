@@ -10,6 +10,7 @@ from typing import TYPE_CHECKING, Any
 
 import click
 
+from profiler.cli.number import NUMBER, is_number
 from profiler.errors import HopwrightError, InputError
 
 if TYPE_CHECKING:
@@ -47,7 +48,7 @@ def hop_options(command: Command) -> Command:
         click.option("--b", "position_b", metavar="POSITION", help="Site B, likewise."),
         click.option("--antenna-a", metavar="HEIGHT", help='Antenna A above ground: metres, or "98 ft".'),
         click.option("--antenna-b", metavar="HEIGHT", help="Antenna B, likewise."),
-        click.option("--frequency-ghz", type=float, metavar="GHZ", help="Frequency."),
+        click.option("--frequency-ghz", type=NUMBER, metavar="GHZ", help="Frequency."),
         click.option(
             "--terrain",
             multiple=True,
@@ -55,12 +56,12 @@ def hop_options(command: Command) -> Command:
             help="Raster or folder of rasters; may be repeated.",
         ),
         click.option("--preset", metavar="NAME", help="Named clearance rules; an unknown name lists them."),
-        click.option("--low-k", type=float, metavar="K", help="Low k for presets that ask for one."),
+        click.option("--low-k", type=NUMBER, metavar="K", help="Low k for presets that ask for one."),
         click.option(
             "--rule",
             "rules",
             multiple=True,
-            type=(float, float, float),
+            type=(NUMBER, NUMBER, NUMBER),
             metavar="K FRACTION MARGIN_M",
             help="A rule of your own: k, fraction of F1, margin in metres; may be repeated.",
         ),
@@ -113,10 +114,7 @@ def _option(name: str) -> str:
 
 def _number_or_text(text: str) -> float | str:
     """Read a bare number as metres, and leave text with a unit to the hop file's reader."""
-    try:
-        return float(text)
-    except ValueError:
-        return text
+    return float(text) if is_number(text) else text
 
 
 @contextmanager

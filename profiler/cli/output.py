@@ -15,6 +15,7 @@ from typing import Any
 import click
 
 from profiler.cli.files import real_path, require_writable, write_all
+from profiler.cli.process import load_matplotlib
 from profiler.errors import InputError
 from profiler.models import Hop
 from profiler.printable import printable
@@ -43,6 +44,7 @@ def check_targets(*targets: str | Path | None, figures: Sequence[Path] = (), rea
     if sum(target == "-" for target in targets) > 1:
         raise InputError("command line: -: must stand once, since standard output takes one document; name a file")
     if figures:
+        load_matplotlib()
         from profiler.figures import FORMATS
 
         for figure in figures:

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import atexit
 import gc
+import importlib
 import io
 import logging
 import os
@@ -11,8 +12,9 @@ import signal
 import sys
 import warnings
 from contextlib import suppress
+from pathlib import Path
 
-__all__ = ["drop_unwritten", "settle_process"]
+__all__ = ["drop_unwritten", "load_matplotlib", "settle_process"]
 
 
 def settle_process() -> None:
@@ -61,6 +63,26 @@ def _open_streams() -> None:
         sys.exit(2)
     if isinstance(sys.stdout, io.TextIOWrapper):
         sys.stdout.reconfigure(errors="replace")
+
+
+def load_matplotlib() -> None:
+    """Load the drawing library with its own settings, before `profiler.figures` does.
+
+    As it loads, it reads a settings file in the folder that one is in, whatever lies there, then one that MATPLOTLIBRC
+    names, and the backend of MPLBACKEND, which a notebook sets for its children and which stops it where it is unknown.
+    """
+    os.environ.pop("MPLBACKEND", None)
+    os.environ["MATPLOTLIBRC"] = os.devnull
+    if not Path("matplotlibrc").exists():
+        importlib.import_module("matplotlib")
+        return
+    here = os.open(".", getattr(os, "O_PATH", os.O_RDONLY))
+    try:
+        os.chdir(Path(os.__file__).parent)
+        importlib.import_module("matplotlib")
+    finally:
+        os.fchdir(here)
+        os.close(here)
 
 
 def drop_unwritten() -> None:

@@ -10,6 +10,7 @@ import click
 
 from profiler.cli.hop_options import hop_options, named, read_hop, speech_options
 from profiler.cli.lines import lines_table, seen_from
+from profiler.cli.number import NUMBER, NumberRange
 from profiler.cli.output import check_targets, json_text, put
 from profiler.errors import InputError
 
@@ -29,10 +30,10 @@ _WAYS: tuple[Way, ...] = ("a_to_b", "b_to_a")
 @click.command("reach")
 @hop_options
 @click.option("--mode", metavar="NAME", help="Radio mode; the first by default.")
-@click.option("--bit-error-ratio", type=float, metavar="RATIO", help="Wanted bit error ratio; the mode's by default.")
+@click.option("--bit-error-ratio", type=NUMBER, metavar="RATIO", help="Wanted bit error ratio; the mode's by default.")
 @click.option(
     "--fade-margin-db",
-    type=click.FloatRange(-200.0, 200.0),
+    type=NumberRange(-200.0, 200.0),
     default=0.0,
     show_default=True,
     metavar="DB",
@@ -46,7 +47,7 @@ _WAYS: tuple[Way, ...] = ("a_to_b", "b_to_a")
     show_default=True,
     help="Sites whose antennas are to be found; the other keeps its own.",
 )
-@click.option("--efficiency", type=float, metavar="RATIO", help="Of the dish asked for; the hop file's by default.")
+@click.option("--efficiency", type=NUMBER, metavar="RATIO", help="Of the dish asked for; the hop file's by default.")
 @click.option("--json", "json_to", metavar="FILE", help="Write the answers as JSON; - for standard output.")
 @click.option("--feet", is_flag=True, help="Print in feet and miles.")
 @speech_options

@@ -6,6 +6,8 @@ import os
 from textwrap import TextWrapper
 from typing import TYPE_CHECKING, Literal
 
+from profiler.cli.safe_screen import safe_hook
+
 if TYPE_CHECKING:
     from rich.console import Console
     from rich.table import Table
@@ -13,6 +15,9 @@ if TYPE_CHECKING:
 __all__ = ["Scale", "compact_table", "console", "say", "show_notes", "show_table"]
 
 _FILE_WIDTH = 110
+_NARROWEST, _WIDEST = 20, 1000
+"""What COLUMNS says beyond these is no width of a terminal."""
+
 _GAP = 2
 """Columns of space between two columns of a table."""
 
@@ -49,8 +54,8 @@ def console(*, color: bool) -> Console:
     system: Literal["auto"] | None = "auto" if color and not os.environ.get("NO_COLOR") else None
     # names and labels are text: no markup and no emoji codes in them
     screen = Console(color_system=system, highlight=False, markup=False, emoji=False)
-    if not screen.is_terminal:
-        screen.width = _FILE_WIDTH
+    screen.width = min(max(screen.width, _NARROWEST), _WIDEST) if screen.is_terminal else _FILE_WIDTH
+    screen.push_render_hook(safe_hook())
     return screen
 
 

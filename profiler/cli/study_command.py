@@ -8,6 +8,7 @@ from typing import TYPE_CHECKING, Any
 import click
 
 from profiler.cli.hop_options import hop_options, named, read_hop, speech_options
+from profiler.cli.number import NUMBER
 from profiler.cli.output import check_targets, csv_text, deliver, rendered
 from profiler.errors import InputError
 
@@ -39,9 +40,9 @@ Limits = tuple[float, float] | None
 )
 @click.option("--feet", is_flag=True, help="Print and draw in feet and miles.")
 @click.option(
-    "--distance-limits", type=(float, float), metavar="FROM TO", help="Fix the figure's distance axis, km (mi)."
+    "--distance-limits", type=(NUMBER, NUMBER), metavar="FROM TO", help="Fix the figure's distance axis, km (mi)."
 )
-@click.option("--height-limits", type=(float, float), metavar="FROM TO", help="Fix the figure's height axis, m (ft).")
+@click.option("--height-limits", type=(NUMBER, NUMBER), metavar="FROM TO", help="Fix the figure's height axis, m (ft).")
 @speech_options
 def command(
     json_to: str | None,

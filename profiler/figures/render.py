@@ -8,6 +8,7 @@ from typing import TYPE_CHECKING, Any
 
 from profiler.errors import InputError
 from profiler.figures import style
+from profiler.printable import printable
 
 if TYPE_CHECKING:
     from matplotlib.figure import Figure
@@ -24,7 +25,7 @@ FORMATS = tuple(_OPTIONS)
 
 
 def render(figure: Figure, path_suffix: str) -> bytes:
-    """Write a figure in the format of a file ending; no clock time goes into the file.
+    """Write a figure in the format of a file ending; no clock time and no character that XML forbids goes into it.
 
     Parameters
     ----------
@@ -51,6 +52,10 @@ def render(figure: Figure, path_suffix: str) -> bytes:
     suffix = path_suffix.lower()
     if suffix not in FORMATS:
         raise InputError(f"figure file ending {path_suffix or 'none'}: must be one of {', '.join(FORMATS)}")
+    from matplotlib.text import Text
+
+    for words in figure.findobj(Text):
+        words.set_text("\n".join(map(printable, words.get_text().split("\n"))))
     stream = io.BytesIO()
     with style.defaults(), warnings.catch_warnings():
         # letters that the font lacks: the figure itself says so

@@ -6,7 +6,6 @@ along the path; the ground from above; and what the numbers rest on. All three d
 
 from __future__ import annotations
 
-import math
 from typing import TYPE_CHECKING
 
 from profiler.errors import InputError
@@ -68,7 +67,7 @@ def profile_figure(
     Raises
     ------
     InputError
-        If limits are not two finite numbers, the lower first.
+        If limits are not two numbers that an axis can carry, the lower first.
 
     Examples
     --------
@@ -106,12 +105,19 @@ def profile_figure(
         return page.finish(foot(page, max(below, side) + 0.1, profile_notes(study, scale)))
 
 
+_FARTHEST, _SHORTEST = 1e6, 0.01
+"""Of the limits of axes, in any unit shown: past these the numbers on a scale no longer tell its steps apart."""
+
+
 def _check_limits(name: str, limits: Limits | None) -> None:
     if limits is None:
         return
     low, high = limits
-    if not (math.isfinite(low) and math.isfinite(high) and low < high):
-        raise InputError(f"{name}_limits = {low:g}, {high:g}: must be two finite numbers, the lower first")
+    if not (-_FARTHEST <= low < high <= _FARTHEST and high - low >= _SHORTEST):  # not a number is none of these
+        raise InputError(
+            f"{name}_limits = {low:g}, {high:g}: must be two numbers of {-_FARTHEST:g} to {_FARTHEST:g}, the lower"
+            f" first, {_SHORTEST:g} or more apart"
+        )
 
 
 def _site_names(page: Page, top: float, study: Study, scale: Scale) -> float:
