@@ -296,7 +296,7 @@ def test_limits_are_as_asked_on_all_three_drawings(study):
 
 @pytest.mark.parametrize("limits", [(5.0, 5.0), (9.0, 1.0), (math.nan, 1.0), (0.0, math.inf)])
 def test_limits_that_are_none_are_refused(study, limits):
-    with pytest.raises(InputError, match=r"height_limits = .*: must be two numbers of -1e+06 to 1e+06"):
+    with pytest.raises(InputError, match=r"height_limits = .*: must be two numbers of -1e\+06 to 1e\+06"):
         profile_figure(study("bare"), height_limits=limits)
 
 

@@ -242,6 +242,14 @@ main()
 """
 
 
+@pytest.fixture(autouse=True)
+def interruptible():
+    """Let children be interrupted, though this process may run in the background, where Ctrl-C is ignored."""
+    before = signal.signal(signal.SIGINT, signal.default_int_handler)
+    yield
+    signal.signal(signal.SIGINT, before)
+
+
 @pytest.mark.parametrize("number", [signal.SIGTERM, signal.SIGINT, signal.SIGHUP])
 def test_a_signal_while_files_take_their_places_waits_for_them(here, number):
     (here / "a.json").write_text("old")
