@@ -49,11 +49,9 @@ def rough(seed, size_m):
 
 @pytest.mark.parametrize("name", HILLS)
 @pytest.mark.parametrize("method", [cascaded_knife_edges, double_edge])
-def test_a_smooth_hill_is_one_edge_and_loses_the_same_at_every_spacing(method, name):
-    found = [over(method, HILLS[name], spacing) for spacing in (*SPACINGS, 250)]
-    assert all(np.count_nonzero(~np.isnan(each.distance_m)) == 1 for each in found)
-    losses = [float(each.loss_db) for each in found]
-    assert max(losses) - min(losses) < 0.5
+def test_a_smooth_hill_loses_the_same_at_every_spacing(method, name):
+    losses = [float(over(method, HILLS[name], spacing).loss_db) for spacing in SPACINGS]
+    assert max(losses) - min(losses) < 0.3
 
 
 @pytest.mark.parametrize("seed", range(8))
@@ -79,7 +77,8 @@ def test_the_corners_of_a_broad_flat_top_are_two_edges_at_every_spacing():
 def test_two_hills_are_two_edges_at_every_spacing(spacing):
     ground = np.maximum(gauss(7e3, 150, 500), gauss(11e3, 150, 500))
     cascade, double = (over(method, ground, spacing, math.inf) for method in (cascaded_knife_edges, double_edge))
-    assert cascade.distance_m.tolist() == pytest.approx([math.nan, 7e3, 11e3], nan_ok=True, abs=10)
+    assert cascade.distance_m[1:].tolist() == pytest.approx([7e3, 11e3], abs=10)
+    assert not cascade.edge_loss_db[0] > 1.5
     assert double.distance_m.tolist() == pytest.approx([7e3, 11e3], abs=10)
     # Rec. ITU-R P.526-15 §4.3 by hand, one after the other: the tops rise 50 m, each seen from its neighbours
     seen = (50 * (1 - 7 / 11), 7e3, 4e3), (50 * (1 - 9 / 13), 4e3, 9e3)
@@ -94,16 +93,55 @@ def two_tops(at_m, apart_m):
     return np.interp(FINE, [0, near - 50, near, at_m + apart_m / 2, far, far + 50, LENGTH], [0, 0, 150.1, 0, 150, 0, 0])
 
 
-@pytest.mark.parametrize(
-    ("at_m", "apart_m", "edges"),
-    [(9e3, 490, 1), (9e3, 500, 2), (1e3, 90, 1), (1e3, 100, 2), (18e3, 160, 1), (18e3, 190, 2)],
-)
-def test_edges_are_500_m_apart_or_a_tenth_of_the_way_to_the_nearer_end(at_m, apart_m, edges):
-    ground = two_tops(at_m, apart_m)
-    for profile in (ground, ground[::-1]):
-        found = over(double_edge, profile, radius=math.inf)
-        assert np.count_nonzero(~np.isnan(found.distance_m)) == edges
-        assert np.count_nonzero(over(cascaded_knife_edges, profile, radius=math.inf).edge_loss_db > 6) == edges
+@pytest.mark.parametrize(("at_m", "whole_m"), [(9e3, 500.0), (1e3, 100.0), (18e3, 175.0)])
+@pytest.mark.parametrize("part", [0.2, 0.5, 0.9, 1.0, 3.0])
+def test_an_edge_counts_in_full_from_500_m_or_a_tenth_of_the_way_to_the_nearer_end(at_m, whole_m, part):
+    """The principal edge is the near top, or where that is farther from its end the far one; a tenth of its own way."""
+    apart_m = 10 * round(part * whole_m / 10)
+    whole_m = whole_m if at_m < 17e3 else 0.1 * (LENGTH - at_m - apart_m)  # of the far top, which obstructs more there
+    share = min(apart_m / whole_m, 1.0)
+    for profile in (two_tops(at_m, apart_m), two_tops(at_m, apart_m)[::-1]):
+        cascade, double = (over(method, profile, radius=math.inf) for method in (cascaded_knife_edges, double_edge))
+        beside = np.nanmax(cascade.edge_loss_db[[0, 2]])
+        seen = np.nanmax(np.where(cascade.edge_loss_db == beside, cascade.nu, np.nan))
+        assert beside == pytest.approx(share * float(knife_edge_loss(seen)))
+        alone = float(single_knife_edge(FINE, profile, 100.0, 100.0, F6, math.inf).loss_db)
+        assert np.nansum(double.edge_loss_db) > alone
+
+
+MOVES = {
+    "level with the other": (lambda x: np.maximum(gauss(9e3, 150, 300), gauss(x, 150, 300)), 9e3),
+    "lower": (lambda x: np.maximum(gauss(9e3, 150, 300), gauss(x, 146, 200)), 9e3),
+    "by the end": (lambda x: np.maximum(gauss(1e3, 150, 60), gauss(x, 148, 60)), 1e3),
+    "between two": (
+        lambda x: np.maximum.reduce([gauss(6e3, 140, 200), gauss(13e3, 150, 200), gauss(x, 145, 150)]),
+        6e3,
+    ),
+}
+
+
+@pytest.mark.parametrize("name", MOVES)
+@pytest.mark.parametrize("method", [cascaded_knife_edges, double_edge])
+def test_no_loss_jumps_when_a_hill_moves(method, name):
+    """A hill moves past another in steps of 10 m: 40 m made a difference of 12 to 30 dB where edges were cut off."""
+    ground, start = MOVES[name]
+    at = start + np.arange(0, 1500, 10.0)
+    losses = method(FINE, np.stack([ground(x) for x in at]), 100.0, 100.0, F6, RADIUS).loss_db
+    assert np.abs(np.diff(losses)).max() < 1.3
+    assert np.ptp(losses) > 1.5
+
+
+@pytest.mark.parametrize("method", [cascaded_knife_edges, double_edge])
+def test_points_a_millimetre_apart_add_nothing(method):
+    """Steps of land cover put two points a millimetre apart: twice the points on a slope, and a wall, lose the same."""
+    ground = HILLS["bell"]
+    twice = np.sort(np.concatenate([FINE, FINE[1:] - 1e-3]))
+    fine = method(twice, np.interp(twice, FINE, ground), 100.0, 100.0, F6, RADIUS)
+    assert float(fine.loss_db) == pytest.approx(float(over(method, ground).loss_db), abs=1e-3)
+    wall = np.where((FINE >= 9e3) & (FINE <= 9.6e3), 150.0, 0.0)
+    sharp = np.array([0, 9e3 - 1e-3, 9e3, 9.6e3, 9.6e3 + 1e-3, LENGTH]), np.array([0, 0, 150.0, 150, 0, 0])
+    few, many = method(*sharp, 100.0, 100.0, F6, RADIUS), over(method, wall)
+    assert float(few.loss_db) == pytest.approx(float(many.loss_db), abs=0.3)
 
 
 def waves(ground, step_m=25.0, grid_m=0.4):

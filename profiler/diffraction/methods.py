@@ -13,7 +13,7 @@ from numpy.typing import ArrayLike
 
 from profiler.checks import positive
 from profiler.diffraction.edges import EdgeLosses
-from profiler.diffraction.formulas import MOST_ROUND
+from profiler.diffraction.formulas import MOST_ROUND, knife_edge_loss
 from profiler.diffraction.general import bullington, delta_bullington
 from profiler.diffraction.obstacles import DoubleLosses, cascaded_knife_edges, double_edge, single_knife_edge
 from profiler.diffraction.rounded import RoundedLosses, rounded_obstacle
@@ -172,10 +172,29 @@ def _rounded_doubts(inputs: Inputs, found: RoundedLosses) -> list[str]:
     return lines
 
 
+_MATTERS_DB = 3.0
+"""Loss of an edge left out, or counted in part, that is worth a line."""
+
+
+def _faded(found: EdgeLosses) -> list[str]:
+    """Say which edges of a cascade count in part only, where that makes a difference."""
+    gap_db = knife_edge_loss(found.nu) - found.edge_loss_db
+    rows = zip(found.distance_m.tolist(), gap_db.tolist(), strict=True)
+    return [
+        f"the edge {at / 1000:.3f} km from A stands near the principal one and counts in part: in full it would cost "
+        f"{gap:.1f} dB more. That an edge counts in full from 500 m, or a tenth of the way to the nearer end, is this "
+        "project's own rule"
+        for at, gap in rows
+        if gap > _MATTERS_DB
+    ]
+
+
 def _double_doubts(inputs: Inputs, found: DoubleLosses) -> list[str]:
-    others = cascaded_knife_edges(*inputs.path).distance_m
-    left_out = set(others[~np.isnan(others)].tolist()) - set(found.distance_m.tolist())
-    lines = [f"a third edge, {at / 1000:.3f} km from A, is left out: cascaded-edges counts it" for at in left_out]
+    cascade = cascaded_knife_edges(*inputs.path)
+    lines = _faded(cascade)
+    for at, loss_db in zip(cascade.distance_m.tolist(), cascade.edge_loss_db.tolist(), strict=True):
+        if loss_db > _MATTERS_DB and at not in found.distance_m:
+            lines.append(f"a third edge, {at / 1000:.3f} km from A, is left out: cascaded-edges counts it")
     if found.floor_db > 0:
         published_db = float(found.loss_db - found.floor_db)
         lines.append(
@@ -188,10 +207,11 @@ def _double_doubts(inputs: Inputs, found: DoubleLosses) -> list[str]:
 def _cascaded_doubts(inputs: Inputs, found: EdgeLosses) -> list[str]:
     worst, kept = single_knife_edge(*inputs.path), np.nan_to_num(found.nu[1], nan=-np.inf)
     if not worst.nu[0] > kept:
-        return []
+        return _faded(found)
     return [
+        *_faded(found),
         f"the edges are those of k = 4/3, as Rec. ITU-R P.526-15 §4.4.2 recommends; at this k the ground "
-        f"{float(worst.distance_m[0]) / 1000:.3f} km from A obstructs more, ν = {float(worst.nu[0]):.2f}"
+        f"{float(worst.distance_m[0]) / 1000:.3f} km from A obstructs more, ν = {float(worst.nu[0]):.2f}",
     ]
 
 
