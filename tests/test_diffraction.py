@@ -524,8 +524,8 @@ def test_the_fitted_radius_is_that_of_the_hill(radius, shift, top, tilt):
     x = d - 10e3 - shift
     hill = 500 + top + tilt * d / 20e3 - np.minimum(x**2 / (2 * radius), 400)
     result = rounded_obstacle(d, hill, 500.0, 500.0 + tilt, 6e9, math.inf)
-    # four or more points of 2.5 m spacing on the narrowest top
-    assert float(result.radius_m) == pytest.approx(radius, rel=1e-6)
+    # straight lines between points 2.5 m apart take a little of the narrowest top
+    assert float(result.radius_m) == pytest.approx(radius, rel=1e-4)
     assert bool(result.isolated)
 
 
@@ -533,7 +533,7 @@ def test_the_bulge_of_the_earth_is_part_of_the_radius():
     d = np.linspace(0, 20e3, 2001)
     hill = 500 - np.minimum((d - 10e3) ** 2 / (2 * 50e3), 400)
     result = rounded_obstacle(d, hill, 480.0, 480.0, 6e9, 8500e3)
-    assert float(result.radius_m) == pytest.approx(1 / (1 / 50e3 + 1 / 8500e3), rel=1e-6)
+    assert float(result.radius_m) == pytest.approx(1 / (1 / 50e3 + 1 / 8500e3), rel=1e-5)
 
 
 def test_the_loss_of_a_rounding_top_rises_from_the_knife_edge():

@@ -34,7 +34,10 @@ def command(json_to: str | None, quiet: bool, no_color: bool, **hop_given: Any) 
         study = run_study(hop)
     ks = (study.climate.median_k, *(rule.k for rule in hop.rules))
     centres = (study.centre_a_m, study.centre_b_m)
-    by_method = [losses_at(hop, study.profile, ks, *centres, method=each.name) for each in METHODS.values()]
+    cell_m = study.terrain.finest_cell_m
+    by_method = [
+        losses_at(hop, study.profile, ks, *centres, cell_m=cell_m, method=each.name) for each in METHODS.values()
+    ]
     by_k = {k: tuple(losses[k] for losses in by_method) for k in dict.fromkeys(ks)}
     if json_to is not None:
         losses = [loss for found in by_k.values() for loss in found]

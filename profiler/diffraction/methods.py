@@ -77,7 +77,7 @@ class DiffractionLoss:
 
 @dataclass(frozen=True, slots=True, eq=False)
 class Inputs:
-    """One profile at one frequency over one effective radius or many, and what only the spherical earth needs."""
+    """One profile at one frequency over one effective radius or many, and what only one method needs."""
 
     distance_m: Float
     height_m: Float
@@ -87,6 +87,7 @@ class Inputs:
     radius_m: Float
     polarization: Polarization
     sea_fraction: float
+    cell_m: float
 
     @property
     def path(self) -> tuple[Float, Float, float, float, float, Float]:
@@ -135,6 +136,11 @@ def _sphere(inputs: Inputs) -> Found:
     return delta_bullington(*inputs.path, inputs.polarization, inputs.sea_fraction).spherical_db, None
 
 
+def _rounded(inputs: Inputs) -> Found:
+    found = rounded_obstacle(*inputs.path, inputs.cell_m)
+    return found.loss_db, found
+
+
 def _over_edges(method: Callable[..., EdgeLosses]) -> Callable[[Inputs], Found]:
     """Run a method that takes nothing but the path and gives its edges with the loss."""
 
@@ -146,13 +152,18 @@ def _over_edges(method: Callable[..., EdgeLosses]) -> Callable[[Inputs], Found]:
 
 
 def _rounded_doubts(inputs: Inputs, found: RoundedLosses) -> list[str]:
-    del inputs  # the result itself says all
     lines: list[str] = []
     if not found.loss_db > 0:
         return lines
     if np.isnan(found.radius_m):
         lines.append(
             "the top of the main obstacle is not convex, so no radius fits it: the loss is that of a knife edge"
+        )
+    if found.narrow:
+        knife_db = float(single_knife_edge(*inputs.path).loss_db)
+        lines.append(
+            f"the top is narrower than the {(found.top_m[1] - found.top_m[0]).item():.0f} m over which its radius is "
+            f"fitted, as cells of {inputs.cell_m:.0f} m do not show it: a sharp edge would lose {knife_db:.1f} dB"
         )
     if found.roundness > MOST_ROUND:
         lines.append(
@@ -162,8 +173,8 @@ def _rounded_doubts(inputs: Inputs, found: RoundedLosses) -> list[str]:
     first, last = (float(x) / 1000 for x in found.top_m)
     if found.arc_m / 1000 > last - first:
         lines.append(
-            f"the top from {first:.3f} to {last:.3f} km is too short for its radius, which bends the ray over "
-            f"{float(found.arc_m) / 1000:.3f} km: its corners count, and the loss is too high"
+            f"the top from {first:.3f} to {last:.3f} km is too short for the radius that fits it, which would bend the "
+            f"ray over {float(found.arc_m) / 1000:.3f} km: the most that has room is taken, and the loss is too high"
         )
     if not found.isolated:
         lines.append(
@@ -225,7 +236,6 @@ _GENERAL_RANGE = (
 _SPHERE_RANGE = ((10e6, float("inf")), "Rec. ITU-R P.526-15 §3.2")
 
 _knife = _over_edges(single_knife_edge)
-_rounded = _over_edges(rounded_obstacle)
 _double = _over_edges(double_edge)
 _cascaded = _over_edges(partial(cascaded_knife_edges, edges_radius_m=K_MEDIAN * MEAN_EARTH_RADIUS_M))
 
@@ -263,6 +273,7 @@ def _prepared(
     k: ArrayLike,
     polarization: Polarization,
     sea_fraction: float,
+    cell_m: float,
 ) -> tuple[Method, Inputs]:
     """Find the method by its name, and put one profile over several effective radii before it."""
     if method not in METHODS:
@@ -272,7 +283,7 @@ def _prepared(
     if height.ndim != 1 or distance.ndim != 1:
         raise InputError("height_m must be one profile, (points,): call the method's own function for a batch")
     site = (distance, height, centre_a_m, centre_b_m, frequency_hz)
-    return METHODS[method], Inputs(*site, radius, polarization, sea_fraction)
+    return METHODS[method], Inputs(*site, radius, polarization, sea_fraction, cell_m)
 
 
 def losses_over_k(
@@ -286,6 +297,7 @@ def losses_over_k(
     *,
     polarization: Polarization = "vertical",
     sea_fraction: float = 0.0,
+    cell_m: float = 0.0,
 ) -> Float:
     """Diffraction losses of one hop at many k, dB, `(k,)`: those of `diffract_over_k`, without edges and doubts.
 
@@ -296,7 +308,7 @@ def losses_over_k(
     [9.58, 7.65]
     """
     site = (distance_m, height_m, centre_a_m, centre_b_m, frequency_hz)
-    chosen, inputs = _prepared(method, *site, k, polarization, sea_fraction)
+    chosen, inputs = _prepared(method, *site, k, polarization, sea_fraction, cell_m)
     return chosen.run(inputs)[0]
 
 
@@ -311,12 +323,13 @@ def diffract_over_k(
     *,
     polarization: Polarization = "vertical",
     sea_fraction: float = 0.0,
+    cell_m: float = 0.0,
 ) -> tuple[DiffractionLoss, ...]:
     """Diffraction losses of one hop at several k in one go, by a method chosen by name.
 
     Parameters
     ----------
-    method, distance_m, height_m, centre_a_m, centre_b_m, frequency_hz, polarization, sea_fraction
+    method, distance_m, height_m, centre_a_m, centre_b_m, frequency_hz, polarization, sea_fraction, cell_m
         As in `diffract`.
     k
         Effective-earth-radius factors, each above 0; infinity is allowed.
@@ -338,7 +351,7 @@ def diffract_over_k(
     [9.58, 7.65]
     """
     site = (distance_m, height_m, centre_a_m, centre_b_m, frequency_hz)
-    chosen, inputs = _prepared(method, *site, k, polarization, sea_fraction)
+    chosen, inputs = _prepared(method, *site, k, polarization, sea_fraction, cell_m)
     loss_db, found = chosen.run(inputs)
     ranges = chosen.range_warnings(float(inputs.distance_m[-1]), frequency_hz)
     losses = []
@@ -365,6 +378,7 @@ def diffract(
     *,
     polarization: Polarization = "vertical",
     sea_fraction: float = 0.0,
+    cell_m: float = 0.0,
 ) -> DiffractionLoss:
     """Diffraction loss of one hop by a method chosen by name.
 
@@ -383,6 +397,8 @@ def diffract(
         Effective-earth-radius factor, above 0; may be infinite.
     polarization, sea_fraction
         As in `delta_bullington`; only the spherical earth depends on them.
+    cell_m
+        Length of a cell of the terrain, as in `rounded_obstacle`, which alone depends on it.
 
     Returns
     -------
@@ -419,6 +435,7 @@ def diffract(
         only,
         polarization=polarization,
         sea_fraction=sea_fraction,
+        cell_m=cell_m,
     )
     return loss
 

@@ -52,7 +52,8 @@ def link_limits(study: Study) -> LinkLimits:
         why = ("the availability objective cannot be judged: the hop file gives no radio",) if hop.has_objective else ()
         return LinkLimits(None, None, why)
     above_m = max(float(study.profile.surface_m.max()), study.centre_a_m, study.centre_b_m)
-    probe = link(hop, study.profile, study.climate, study.air, above_m, above_m)
+    cell_m = study.terrain.finest_cell_m
+    probe = link(hop, study.profile, study.climate, study.air, above_m, above_m, cell_m=cell_m)
     asked = probe.outage.asked
     with_margin = _margin(probe) is not None
     # the search asks often: only the modes that are judged, and only the k that counts
@@ -88,7 +89,8 @@ def _link_at(study: Study, hop: Hop, antenna_a_m: float, antenna_b_m: float) -> 
     )
     clears = (lower[0].clears, lower[1].clears) if lower else (True, True)
     air = air_along(raised, profile, median_k, *centres)
-    return link(raised, profile, study.climate, air, *centres, lower_clears=clears)
+    cell_m = study.terrain.finest_cell_m
+    return link(raised, profile, study.climate, air, *centres, cell_m=cell_m, lower_clears=clears)
 
 
 def _margin(found: Link) -> float | None:
@@ -140,7 +142,8 @@ def loss_limit(study: Study) -> Excess | None:
 
 def _loss_db(study: Study, centre_a_m: float, centre_b_m: float) -> float:
     k = study.hop.heights.loss_k
-    return losses_at(study.hop, study.profile, [k], centre_a_m, centre_b_m)[k].loss_db
+    cell_m = study.terrain.finest_cell_m
+    return losses_at(study.hop, study.profile, [k], centre_a_m, centre_b_m, cell_m=cell_m)[k].loss_db
 
 
 def for_loss(study: Study, excess: Excess | None) -> LimitHeights | None:

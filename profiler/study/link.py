@@ -53,6 +53,7 @@ def link(
     centre_a_m: float,
     centre_b_m: float,
     *,
+    cell_m: float,
     lower_clears: tuple[bool, bool] = (True, True),
 ) -> Link:
     """Give losses, budget and outage for one pair of antenna centres.
@@ -63,6 +64,8 @@ def link(
         The hop and what is known of its ground, climate and air.
     centre_a_m, centre_b_m
         Antenna centres above the datum.
+    cell_m
+        Length of the terrain's finest cell.
     lower_clears
         Whether the lower antenna of a diversity pair has its clearance, at A and at B.
 
@@ -71,7 +74,7 @@ def link(
     Link
     """
     stated = (*(rule.k for rule in hop.rules), climate.median_k)
-    losses = losses_at(hop, profile, stated, centre_a_m, centre_b_m)
+    losses = losses_at(hop, profile, stated, centre_a_m, centre_b_m, cell_m=cell_m)
     budget = _budget(hop, profile, air, losses[climate.median_k])
     with under("availability", AvailabilityChoice):
         path = PathState(
@@ -79,7 +82,7 @@ def link(
             centre_a_m,
             centre_b_m,
             losses,
-            partial(_loss_over_k, hop, profile, centre_a_m, centre_b_m),
+            partial(_loss_over_k, hop, profile, centre_a_m, centre_b_m, cell_m),
             lower_clears,
         )
         outage = predict_outage(hop, climate, budget, path)
@@ -93,6 +96,7 @@ def losses_at(
     centre_a_m: float,
     centre_b_m: float,
     *,
+    cell_m: float,
     method: DiffractionMethod | None = None,
 ) -> dict[float, DiffractionLoss]:
     """Diffraction loss of a hop at each k, each k once, by the hop's own method unless another is named."""
@@ -107,11 +111,12 @@ def losses_at(
         once,
         polarization=hop.polarization,
         sea_fraction=hop.sea_fraction,
+        cell_m=cell_m,
     )
     return dict(zip(once, losses, strict=True))
 
 
-def _loss_over_k(hop: Hop, profile: Profile, centre_a_m: float, centre_b_m: float, k: Float) -> Float:
+def _loss_over_k(hop: Hop, profile: Profile, centre_a_m: float, centre_b_m: float, cell_m: float, k: Float) -> Float:
     """Diffraction loss of a hop at many k, by its own method."""
     return losses_over_k(
         hop.diffraction_method,
@@ -123,6 +128,7 @@ def _loss_over_k(hop: Hop, profile: Profile, centre_a_m: float, centre_b_m: floa
         k,
         polarization=hop.polarization,
         sea_fraction=hop.sea_fraction,
+        cell_m=cell_m,
     )
 
 

@@ -86,7 +86,10 @@ def run_study(hop: Hop, terrain: Terrain | None = None, *, relief: bool = False,
     air = air_along(hop, profile, climate.median_k, centre_a_m, centre_b_m)
     lower = _lower_antennas(hop, ground, climate.median_k)
     clears = (lower[0].clears, lower[1].clears) if lower else (True, True)
-    found = link(hop, profile, climate, air, centre_a_m, centre_b_m, lower_clears=clears) if losses else Link.none()
+    found = Link.none()
+    if losses:
+        cell_m = ground.terrain.finest_cell_m
+        found = link(hop, profile, climate, air, centre_a_m, centre_b_m, cell_m=cell_m, lower_clears=clears)
     confidence = _confidence(hop, ground, climate, rules)
     angles = _angles(ground, centre_a_m, centre_b_m, climate.median_k)
     return Study(
