@@ -395,7 +395,7 @@ def test_a_hop_without_a_file(run):
 def test_heights_writes_the_pair_into_a_copy_that_passes(run, here):
     code, out, _ = run("heights", "fails.toml", "--write", "raised.toml")
     assert code == 0
-    assert "keep a fade margin and meet the availability objective" in out.splitlines()[0]
+    assert "keep a fade margin, meet the availability objective and clear with 90 % chance" in out.splitlines()[0]
     assert "Re-checked through every rule, along the path and beside it: passes" in out
     before, after = load_hop(here / "fails.toml"), load_hop(here / "raised.toml")
     assert after.site_a.antenna_m > before.site_a.antenna_m

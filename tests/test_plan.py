@@ -12,7 +12,6 @@ from affine import Affine
 
 from profiler.cli import main
 from profiler.errors import InputError
-from profiler.geometry import ROUNDING_M
 from profiler.heights import Choice
 from profiler.models import (
     AvailabilityChoice,
@@ -39,7 +38,7 @@ ROWS, COLUMNS, MID = 720, 61, 342
 WEST, NORTH = 9.0 - 30.5 * CELL, 46.19
 TOWERS = HeightsChoice(TowerChoice(lowest_m=5, highest_m=120), TowerChoice(lowest_m=5, highest_m=120, step_m=1.5))
 DIVERSE = AvailabilityChoice("p530-17-quick", dn1_n_km=-300.0, diversity=DiversityChoice(9.0))
-DOUBT = ConfidenceChoice(3.0, "test", 300.0, draws=1000)
+DOUBT = ConfidenceChoice(3.0, "test", 300.0, draws=1000, step_m=150.0)
 
 
 @pytest.fixture
@@ -333,14 +332,54 @@ def test_a_chance_out_of_reach_says_what_the_highest_pair_has(land):
     )
 
 
-def test_sure_heights_are_rounded_up_to_positions_or_above_the_tower(land):
+def test_the_plan_is_the_same_whatever_the_heights_in_the_file_were(land):
+    """Its sure pairs and its answer have the chances that a study of them gives, and pass there."""
     hop = hop_over(land(ridge(20.0)), confidence=DOUBT)
-    found = plan_heights(run_study(hop, losses=False)).sure[1]
-    for exact, position, step in zip(found.sure.equal_m, found.both_m, (1.0, 1.5), strict=True):
-        assert exact - ROUNDING_M <= position < exact + step
-    assert run_study(at(hop, found.both_m), losses=False).confidence.chance.value >= 0.95
-    short = replace(hop, heights=HeightsChoice(TOWERS.tower_a, TowerChoice(highest_m=found.sure.equal_m[1] - 1)))
-    assert plan_heights(run_study(short, losses=False)).sure[1].both_m[1] is None
+    plans = [plan_heights(run_study(at(hop, heights), losses=False)) for heights in ((8.0, 110.0), (100.0, 12.0))]
+    for plan in plans:
+        assert pair_of(plan) == pair_of(plans[0])
+        assert plan.answer.chance == plans[0].answer.chance
+        assert [each.pair for each in plan.sure] == [each.pair for each in plans[0].sure]
+    for each in plan.sure:
+        heights = each.pair.antenna_a_m, each.pair.antenna_b_m
+        assert each.chance.value >= each.asked
+        again = run_study(at(hop, heights), losses=False).confidence.chance.value
+        assert 0 <= again - each.chance.value <= 2 / DOUBT.draws
+        for lower in steps_down(hop, heights):
+            assert run_study(at(hop, lower), losses=False).confidence.chance.value < each.asked
+
+
+def test_where_an_error_is_known_the_answer_passes_and_the_merely_clearing_pair_is_kept(land):
+    hop = hop_over(land(ridge(20.0)), confidence=replace(DOUBT, minimum_chance=0.8))
+    plan = plan_heights(run_study(hop, losses=False))
+    assert plan.answer.asked[-1] == "clear with 80 % chance"
+    assert plan.answer.asked_chance == 0.8
+    assert run_study(at(hop, pair_of(plan)), losses=False).confidence.chance.value >= 0.8
+    merely = plan.cheapest.antenna_a_m, plan.cheapest.antenna_b_m
+    assert plan.cheapest.cost < plan.answer.pair.cost
+    alone = plan_heights(run_study(replace(hop, confidence=None), losses=False))
+    assert pair_of(alone) == merely
+    assert (alone.answer.asked_chance, alone.answer.chance, alone.cheapest_chance, alone.sure) == (None, None, None, ())
+    found = run_study(at(hop, merely), losses=False).confidence.chance.value
+    assert 0 <= found - plan.cheapest_chance.value <= 2 / DOUBT.draws
+    assert plan.cheapest_chance.value < 0.8
+    document = heights_document(plan)
+    assert document["cheapest_chance"]["value"] == plan.cheapest_chance.value
+    assert [each["asked_chance"] for each in document["sure"]] == [0.90, 0.95]
+
+
+def test_another_seed_finds_the_printed_chance_of_the_pair_within_its_interval(land):
+    """The pair was chosen by the very draws that give its chance: is it flattered? Other draws, and many, say."""
+    hop = hop_over(land(ridge(20.0)), confidence=replace(DOUBT, draws=400))
+    hop = replace(hop, terrain=replace(hop.terrain, spacing_m=150.0))
+    study = run_study(hop, losses=False)
+    inside = []
+    for seed in range(20):
+        plan = plan_heights(replace(study, hop=replace(hop, confidence=replace(hop.confidence, seed=seed))))
+        fresh = at(replace(hop, confidence=replace(DOUBT, draws=6000, seed=1000 + seed)), pair_of(plan))
+        truth = run_study(fresh, losses=False).confidence.chance.value
+        inside.append(plan.answer.chance.low <= truth <= plan.answer.chance.high)
+    assert sum(inside) >= 16  # of 20 at 95 %: 15 or fewer has a probability of 3e-4
 
 
 @pytest.mark.parametrize(
@@ -436,9 +475,9 @@ def test_wrong_input_is_named_in_one_line(run, tmp_path, change, words, message)
     assert err.count("\n") == 1
 
 
-def test_sure_heights_above_a_tower_are_said_to_be(run, tmp_path):
+def test_where_nothing_clears_no_pair_is_sure(run, tmp_path):
     (tmp_path / "hop.toml").write_text(HOP.replace("highest_m = 60", "highest_m = 20"))
     code, out, _ = run("heights", "hop.toml")
     assert code == 1
-    assert "above the tower's 20.0 m" in out
+    assert "95% sure of every rule: " in out
     assert "In the way: 10.48 km, " in out

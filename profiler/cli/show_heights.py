@@ -231,19 +231,15 @@ def _show_diversity(screen: Console, plan: HeightsPlan, scale: Scale) -> None:
 
 
 def _show_sure(screen: Console, plan: HeightsPlan, scale: Scale) -> None:
-    """Print the heights that are sure enough, from the hop file's, on the positions of the towers."""
-    towers, unit = plan.study.hop.heights, scale.height_unit
+    """Print what the merely clearing pair has for a chance, and the cheapest pairs that are sure enough."""
+    clearing, chance = plan.cheapest, plan.cheapest_chance
+    if chance is not None and not isinstance(clearing, NoPair) and clearing != plan.answer.pair:
+        text = f"A {scale.height(clearing.antenna_a_m)}, B {scale.height(clearing.antenna_b_m)} {scale.height_unit}"
+        say(screen, f"\nOn the map as it is {text} would clear, cost {clearing.cost:g}: a chance of {chance.value:.1%}")
     for found in plan.sure:
-        sure = found.sure
-        change = f"{scale.height(abs(sure.raise_m))} {unit} {'higher' if sure.raise_m > 0 else 'lower'}"
-        a, b, a_only, b_only = (
-            _position(height_m, tower, plan.spacing_m, scale)
-            for height_m, tower in (
-                (sure.equal_m[0], towers.tower_a),
-                (sure.equal_m[1], towers.tower_b),
-                (sure.a_only_m, towers.tower_a),
-                (sure.b_only_m, towers.tower_b),
-            )
-        )
-        ways = f"both antennas {change} (A {a}, B {b}), or A alone {a_only}, or B alone {b_only}"
-        say(screen, f"\n{sure.chance:.0%} sure of every rule: {ways}")
+        pair = found.pair
+        if isinstance(pair, NoPair):
+            say(screen, f"\n{found.asked:.0%} sure of every rule: {pair.reason}")
+            continue
+        text = f"A {scale.height(pair.antenna_a_m)}, B {scale.height(pair.antenna_b_m)} {scale.height_unit}"
+        say(screen, f"\n{found.asked:.0%} sure of every rule: {text}, cost {pair.cost:g}")

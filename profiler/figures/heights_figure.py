@@ -143,9 +143,11 @@ def _marks(plan: HeightsPlan, scale: Scale) -> list[_Mark]:
     if isinstance(plan.least_b, Least):
         look = {"marker": "v", "mfc": style.GROUND}
         marks.append(_Mark(look, a, plan.least_b.height_m, "least B with A as it is"))
-    for each in () if plan.study.confidence is None else plan.study.confidence.sure:
-        words = f"clears with a chance of {100 * each.chance:g} %, both ends moved alike"
-        marks.append(_Mark({"marker": "D", "mfc": style.MUTED}, *each.equal_m, words))
+    for each in plan.sure:
+        if isinstance(each.pair, Choice):
+            words = f"cheapest pair to clear with {100 * each.asked:g} % chance"
+            pair_m = each.pair.antenna_a_m, each.pair.antenna_b_m
+            marks.append(_Mark({"marker": "D", "mfc": style.MUTED}, *pair_m, words))
     stars = [(plan.answer.pair, style.PASS, plan.answer.asked)]
     if plan.cheapest != plan.answer.pair:
         stars.insert(0, (plan.cheapest, "white", plan.answer.asked[:1]))

@@ -21,33 +21,27 @@ from profiler.heights import (
     least_other,
     lower_rules,
     mounting_sheet,
-    round_up,
 )
-from profiler.models import Hop, Rule
-from profiler.plan.cheapest_answer import Answer, find_answer
+from profiler.models import Rule
+from profiler.plan.cheapest_answer import (
+    Answer,
+    SurePair,
+    asked_chance,
+    chance_of_pair,
+    draw_regions,
+    find_answer,
+    sure_pairs,
+)
 from profiler.plan.link_limits import for_loss, for_objective, link_limits, loss_limit
 from profiler.study.requirements import Requirements, Source, lower_antennas, requirements, source_of, spacing_of
 from profiler.study.result import Study
 
 if TYPE_CHECKING:
-    from profiler.confidence import SureHeights
+    from profiler.confidence import Chance
 
-__all__ = ["HeightsPlan", "SurePositions", "plan_heights"]
+__all__ = ["HeightsPlan", "plan_heights"]
 
 _JOIN_M = 100.0
-
-
-@dataclass(frozen=True, slots=True)
-class SurePositions:
-    """The sure heights of the confidence analysis on the towers' positions; None where a tower has none so high.
-
-    ``both_m`` is for both antennas raised alike from the hop file's heights, the others for one raised alone.
-    """
-
-    sure: SureHeights
-    both_m: tuple[float | None, float | None]
-    a_only_m: float | None
-    b_only_m: float | None
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -59,8 +53,9 @@ class HeightsPlan:
     holds the lower antennas of a diversity pair clear; ``answer`` is the one that meets everything else too.
     ``least_a`` and ``least_b`` are the least height at one end with the other as the hop file has it. ``sheet`` is the
     answer's pair, or failing that the cheapest, mounted and re-checked; None where there is no pair. ``for_loss`` and
-    ``for_objective`` are None where the hop file sets no such limit, ``diversity`` and ``sure`` empty where it asks for
-    neither.
+    ``for_objective`` are None where the hop file sets no such limit, ``diversity`` is empty where it asks for none.
+    Where the hop file says how wrong the ground may be, ``cheapest_chance`` is the chance that the merely clearing pair
+    has, and ``sure`` the cheapest pairs for chances of 90 and 95 %; else None and empty.
     """
 
     study: Study
@@ -72,12 +67,13 @@ class HeightsPlan:
     least_a: Least | NoPair
     least_b: Least | NoPair
     cheapest: Choice | NoPair
+    cheapest_chance: Chance | None
     answer: Answer
     sheet: MountingSheet | None
     diversity: tuple[DiversityEnd, ...]
     for_loss: LimitHeights | None
     for_objective: LimitHeights | None
-    sure: tuple[SurePositions, ...]
+    sure: tuple[SurePair, ...]
 
     @property
     def feasible(self) -> bool:
@@ -106,10 +102,11 @@ def plan_heights(study: Study, *, sure: float | None = None) -> HeightsPlan:
     Parameters
     ----------
     study
-        The study; its antenna heights only serve as the fixed end of the one-ended answers, as the start of the sure
-        heights, and for the diversity pair where no pair clears.
+        The study; its antenna heights only serve as the fixed end of the one-ended answers, and for the diversity pair
+        where no pair clears.
     sure
-        Chance of clearing that the answer must have, 0.5 to 0.999; None takes the ground as given.
+        Chance of clearing that the answer must have, 0.5 to 0.999. None is the least with which a hop passes, that of
+        the hop file's ``[confidence]``; without one the ground is taken as given.
 
     Returns
     -------
@@ -127,6 +124,7 @@ def plan_heights(study: Study, *, sure: float | None = None) -> HeightsPlan:
     ground_a_m, ground_b_m = float(profile.ground_m[0]), float(profile.ground_m[-1])
     region = clearing_region(profile.distance_m, needs.least_ray_m, ground_a_m, ground_b_m)
     clearing = cheapest(region, towers.tower_a, towers.tower_b, spacing_m=spacing_m)
+    asked, drawn = asked_chance(study, sure), draw_regions(study, region)
     by_link, by_loss = link_limits(study), loss_limit(study)
     limits = {
         "keep a fade margin": by_link.margin,
@@ -139,8 +137,10 @@ def plan_heights(study: Study, *, sure: float | None = None) -> HeightsPlan:
         clearing,
         {words: excess for words, excess in limits.items() if excess is not None},
         unjudged=by_link.unjudged,
-        sure=sure,
+        drawn=drawn,
+        sure=asked,
     )
+    chances = () if study.confidence is None else tuple(each.chance for each in study.confidence.sure)
     pair = answer.pair if isinstance(answer.pair, Choice) else clearing
     stretches = frontier_stretches(
         region, highest_a_m=towers.tower_a.highest_m, highest_b_m=towers.tower_b.highest_m, join_m=_JOIN_M
@@ -157,12 +157,13 @@ def plan_heights(study: Study, *, sure: float | None = None) -> HeightsPlan:
         least_a=least_other(region, fixed_b_m=hop.site_b.antenna_m),
         least_b=least_other(region, fixed_a_m=hop.site_a.antenna_m),
         cheapest=clearing,
+        cheapest_chance=chance_of_pair(drawn, clearing),
         answer=answer,
         sheet=_sheet(study, pair) if isinstance(pair, Choice) else None,
         diversity=_diversity(study, pair),
         for_loss=for_loss(study, by_loss),
         for_objective=for_objective(study, by_link.objective),
-        sure=() if study.confidence is None else tuple(_positions(hop, each) for each in study.confidence.sure),
+        sure=() if drawn is None else sure_pairs(study, region, clearing, drawn, chances),
     )
 
 
@@ -202,15 +203,3 @@ def _diversity(study: Study, pair: Choice | NoPair) -> tuple[DiversityEnd, ...]:
         antenna_b_m=heights[1],
         lowest_m=(hop.heights.tower_a.lowest_m, hop.heights.tower_b.lowest_m),
     )
-
-
-def _positions(hop: Hop, sure: SureHeights) -> SurePositions:
-    """Round sure heights up to what the towers offer; a higher antenna is never less sure."""
-
-    def a(height_m: float | None) -> float | None:
-        return None if height_m is None else round_up(height_m, hop.heights.tower_a, spacing_m=spacing_of(hop))
-
-    def b(height_m: float | None) -> float | None:
-        return None if height_m is None else round_up(height_m, hop.heights.tower_b, spacing_m=spacing_of(hop))
-
-    return SurePositions(sure, (a(sure.equal_m[0]), b(sure.equal_m[1])), a(sure.a_only_m), b(sure.b_only_m))

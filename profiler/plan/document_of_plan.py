@@ -5,8 +5,8 @@ from __future__ import annotations
 from typing import Any
 
 from profiler.heights import Choice, Least, MountingSheet, NoPair, Stretch
-from profiler.plan.cheapest_answer import Answer
-from profiler.plan.compose import HeightsPlan, SurePositions
+from profiler.plan.cheapest_answer import Answer, SurePair
+from profiler.plan.compose import HeightsPlan
 from profiler.study.document import SCHEMA_HEIGHTS, plain
 
 __all__ = ["heights_document"]
@@ -37,6 +37,7 @@ def heights_document(plan: HeightsPlan) -> dict[str, Any]:
         "cheapest_m": _pair(choice),
         "feasible": plan.feasible,
         "cost": choice.cost if isinstance(choice, Choice) else None,
+        "cheapest_chance": plain(plan.cheapest_chance),
         "why_not": _why_not(plan, choice),
         "answer_m": _pair(plan.answer.pair),
         "answer": _answer(plan, plan.answer),
@@ -50,7 +51,7 @@ def heights_document(plan: HeightsPlan) -> dict[str, Any]:
         "diversity": [{**plain(end), "clears": end.clears, "notes": list(end.notes)} for end in plan.diversity],
         "for_loss": plain(plan.for_loss),
         "for_objective": plain(plan.for_objective),
-        "sure": [_sure(each) for each in plan.sure] or None,
+        "sure": [_sure(plan, each) for each in plan.sure] or None,
         "assumptions": list(plan.study.assumptions),
         "provenance": plain(plan.study.provenance),
     }
@@ -82,16 +83,23 @@ def _answer(plan: HeightsPlan, answer: Answer) -> dict[str, Any]:
         "why_not": _why_not(plan, pair),
         "asked": list(answer.asked),
         "unjudged": list(answer.unjudged),
+        "asked_chance": answer.asked_chance,
         "chance": plain(answer.chance),
         "by_trial": answer.by_trial,
         "cheaper_by_at_most": answer.cheaper_by_at_most,
     }
 
 
-def _sure(found: SurePositions) -> dict[str, Any]:
-    """Give sure heights with the positions of the towers that they take."""
-    positions: dict[str, Any] = plain(found)
-    return {**positions.pop("sure"), "positions": positions}
+def _sure(plan: HeightsPlan, found: SurePair) -> dict[str, Any]:
+    """Give the cheapest pair that clears with a chance."""
+    pair = found.pair
+    return {
+        "asked_chance": found.asked,
+        "pair_m": _pair(pair),
+        "cost": pair.cost if isinstance(pair, Choice) else None,
+        "chance": plain(found.chance),
+        "why_not": _why_not(plan, pair),
+    }
 
 
 def _sheet(sheet: MountingSheet) -> dict[str, Any]:
