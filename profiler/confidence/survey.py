@@ -74,7 +74,7 @@ def survey_places(
                 chance_critical=float(critical[near].sum()),
             )
         )
-    return tuple(sorted(places, key=lambda place: -place.share_of_doubt)[:_MOST_PLACES])
+    return tuple(places[:_MOST_PLACES])
 
 
 def _site(points: set[int], last: int) -> Literal["A", "B"] | None:
