@@ -28,7 +28,7 @@ from profiler.confidence import assess
 from profiler.diffraction import delta_bullington
 from profiler.heights import clearing_region, least_ray
 from profiler.hopfile import load_hop
-from profiler.models import Hop, Rule, Site, TerrainChoice
+from profiler.models import ConfidenceChoice, Hop, Rule, Site, TerrainChoice
 from profiler.path import PathLine, trace
 from profiler.plan import plan_heights
 from profiler.study import Study, run_study
@@ -264,12 +264,12 @@ def confidence(pairs: int) -> Iterator[Row]:
     """Draw the confidence analysis, beside drawing as many Gaussian numbers."""
     distance_m, ground_m = country(1000)
     cover_m = np.where(np.sin(distance_m / 700) > 0, 15.0, 0.0)
-    doubt = {"terrain_sigma_m": 5.0, "correlation_m": 120.0, "cover_sigma_m": 4.0, "draws": 2000}
+    doubt = ConfidenceChoice(5.0, "an invented error", 120.0, cover_sigma_m=4.0, draws=2000)
     percentiles = ((0.1, 0.8), (50, 4 / 3), (99.9, 3.0))
 
     def job() -> object:
         path = (distance_m, ground_m, cover_m, 60.0, 60.0, FREQUENCY_HZ)
-        return assess(*path, RULES, k_percentiles=percentiles, **doubt)
+        return assess(*path, RULES, doubt, cell_m=40.0, k_percentiles=percentiles)
 
     rng = np.random.default_rng(1)
     took = paired(job, lambda: rng.standard_normal((1000, 2000), dtype=np.float32), pairs)
