@@ -24,15 +24,15 @@ def tile(write_raster):
 @pytest.fixture
 def reads(monkeypatch):
     """Every window that is asked of GDAL."""
-    import profiler.terrain.cells as cells
+    import profiler.terrain.reading as reading
 
-    windows, read = [], cells.read_window
+    windows, read = [], reading.read_window
 
     def watched(dataset, band, rows, cols, **rest):
         windows.append((dataset.name, rows, cols))
         return read(dataset, band, rows, cols, **rest)
 
-    monkeypatch.setattr(cells, "read_window", watched)
+    monkeypatch.setattr(reading, "read_window", watched)
     return windows
 
 

@@ -135,7 +135,7 @@ def test_a_warped_vrt_names_all_that_it_is_made_from(tmp_path, write_raster):
     from rasterio.vrt import WarpedVRT
 
     path = write_raster("plain.tif", FLAT, GRID)
-    with rasterio.open(path) as raster, WarpedVRT(raster, crs="EPSG:32632") as warped:
+    with rasterio.open(path) as raster, WarpedVRT(raster, crs="EPSG:32632", nodata=-9999) as warped:
         copy(warped, tmp_path / "w.vrt", driver="VRT")
     assert names(sample(tmp_path / "w.vrt", 10.05, 49.95).sources[0]) == ["w.vrt", "plain.tif"]
 

@@ -18,6 +18,7 @@ from profiler.errors import InputError, under
 from profiler.geometry import Parabolas, PathZone, inside_places, least_surplus, zone_places
 from profiler.models import Hop, TerrainChoice
 from profiler.path import PathLine, equal_steps, geodesic, points_along, trace, with_points
+from profiler.study.terrain_notes import disagreements, sea_notes
 from profiler.terrain import SourceUse, Terrain
 from profiler.units import MEAN_EARTH_RADIUS_M, Float, wavelength
 
@@ -52,6 +53,8 @@ class AlongPath:
     notes: tuple[str, ...]
     cover_notes: tuple[str, ...]
     cover_files: tuple[Path, ...]
+    sea_share: float
+    warnings: tuple[str, ...]
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -88,9 +91,9 @@ def lay_profile(hop: Hop, terrain: Terrain, cover: CoverRasters) -> AlongPath:
     at_m = knot_m[:-1, None] + length_m[:, None] * Parabolas.FIT_AT
     start = coarse.longitude[0], coarse.latitude[0], coarse.azimuth_a_deg
     longitude, latitude = points_along(*start, at_m)
-    samples = terrain.sample(longitude, latitude)
+    samples = terrain.sample(longitude, latitude, compare=True)
     ground_m, weight_m = np.array(samples.ground_m), np.broadcast_to(length_m[:, None], at_m.shape)
-    notes = samples.notes
+    notes = (*samples.notes, *sea_notes(samples.sea, at_m))
     if hop.terrain.method == "highest":
         ends = [0, -1]
         ground_m[ends] = terrain.sample(longitude[ends], latitude[ends], method="bilinear").ground_m
@@ -116,6 +119,8 @@ def lay_profile(hop: Hop, terrain: Terrain, cover: CoverRasters) -> AlongPath:
         notes=notes,
         cover_notes=(*found.notes, *clearing_notes(hop)),
         cover_files=found.files,
+        sea_share=float(weight_m[samples.sea].sum() / weight_m.sum()),
+        warnings=disagreements(hop, samples.overlaps, at_m.ravel()),
     )
 
 

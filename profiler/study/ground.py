@@ -14,6 +14,7 @@ from profiler.models import Hop, Profile, Rule, Site, frozen_array
 from profiler.path import PathLine, across, trace
 from profiler.study.along_path import lay_profile, standing_heights
 from profiler.study.result import Corridor, Relief, TerrainUse
+from profiler.study.terrain_notes import passed_over
 from profiler.terrain import SourceUse, Terrain, common_datum, fill_missing, missing_stretches, require_ground
 from profiler.units import Float
 
@@ -68,7 +69,7 @@ def read_ground(
     with open_cover(hop.cover, hop.terrain.method) as cover:
         along = lay_profile(hop, terrain, cover)
         line = along.line
-        ground_m, filled, fill_notes = _without_gaps(hop, line, along.ground_m)
+        ground_m, filled, fill_notes = _without_gaps(hop, terrain, line, along.ground_m)
         surveyed = np.zeros(line.points, dtype=bool)
         surveyed[[0, -1]] = [site.surveyed_ground_m is not None for site in (hop.site_a, hop.site_b)]
         profile = Profile(
@@ -93,8 +94,15 @@ def read_ground(
         filled_share=float(profile.weight_m[filled].sum() / line.distance_m),
         surveyed_difference_a_m=differences[0],
         surveyed_difference_b_m=differences[1],
-        notes=(*along.notes, *(datum_notes if datum != along.vertical_datum else ()), *fill_notes),
+        notes=(
+            *along.notes,
+            *(datum_notes if datum != along.vertical_datum else ()),
+            *fill_notes,
+            *passed_over(terrain),
+        ),
         cover_notes=along.cover_notes,
+        sea_share=along.sea_share,
+        warnings=along.warnings,
     )
     wide = None if around is None else terrain.sample(*around, allow_mixed_datums=True)
     sources = [*along.sources, *beside, *(() if wide is None else wide.sources)]
@@ -110,7 +118,9 @@ def read_ground(
     )
 
 
-def _without_gaps(hop: Hop, line: PathLine, ground_m: Float) -> tuple[Float, np.ndarray, tuple[str, ...]]:
+def _without_gaps(
+    hop: Hop, terrain: Terrain, line: PathLine, ground_m: Float
+) -> tuple[Float, np.ndarray, tuple[str, ...]]:
     """Ground with its gaps filled where the hop file allows it; otherwise a gap is an error that says where."""
     filled = np.zeros(line.points, dtype=bool)
     notes: tuple[str, ...] = ()
@@ -122,7 +132,11 @@ def _without_gaps(hop: Hop, line: PathLine, ground_m: Float) -> tuple[Float, np.
         )
         if stretches:
             notes = (f"ground missing at {stretches}: interpolated along the path, as the hop file allows",)
-    require_ground(line.along_m, line.longitude, line.latitude, ground_m)
+    if np.isnan(ground_m).any():
+        covered = terrain.covers(line.longitude, line.latitude)
+        require_ground(
+            line.along_m, line.longitude, line.latitude, ground_m, covered=covered, interpolated=bool(filled.any())
+        )
     return ground_m, filled, notes
 
 

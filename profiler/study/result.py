@@ -79,7 +79,7 @@ class RuleResult:
 
 @dataclass(frozen=True, slots=True)
 class TerrainUse:
-    """Where the ground came from and what was done to it; ``filled_share`` is of the path's length.
+    """Where the ground came from and what was done to it; ``filled_share``, ``sea_share`` are of the path's length.
 
     ``spacing_m`` is the most that neighbouring points of the profile are apart; it has no say in what is found.
     """
@@ -95,6 +95,8 @@ class TerrainUse:
     surveyed_difference_b_m: float | None
     notes: tuple[str, ...]
     cover_notes: tuple[str, ...]
+    sea_share: float = 0.0
+    warnings: tuple[str, ...] = ()
 
 
 @dataclass(frozen=True, slots=True, eq=False)

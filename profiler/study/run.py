@@ -44,6 +44,8 @@ def open_hop_terrain(hop: Hop) -> Terrain:
         allow_mixed_datums=choice.allow_mixed_datums,
         vertical_datum=choice.vertical_datum,
         height_unit=choice.height_unit,
+        allow_network=choice.allow_network,
+        voids_are_sea=choice.voids_are_sea,
     )
 
 
@@ -238,6 +240,7 @@ def _warnings(hop: Hop, ground: Ground, rules: Sequence[RuleResult], air: Air, f
     return tuple(
         dict.fromkeys(
             [
+                *ground.terrain.warnings,
                 *ground_warnings(hop, ground.terrain, rules),
                 *(warning for loss in found.losses.values() for warning in loss.warnings),
                 *air.warnings,

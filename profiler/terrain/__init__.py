@@ -12,6 +12,7 @@ from profiler.terrain.gaps import fill_missing, missing_stretches, require_groun
 from profiler.terrain.gdal import library_versions
 from profiler.terrain.inventory import FolderSurvey, RasterSurvey, bounds_around, survey
 from profiler.terrain.mosaic import Terrain, as_reading, open_terrain
+from profiler.terrain.overlap import Overlap
 from profiler.terrain.reference import datum_key
 from profiler.terrain.samples import Samples, Skipped, SourceUse, common_datum
 from profiler.terrain.sites import require_inside
@@ -20,6 +21,7 @@ __all__ = [
     "Bounds",
     "Classes",
     "FolderSurvey",
+    "Overlap",
     "RasterInfo",
     "RasterSurvey",
     "Samples",

@@ -11,9 +11,10 @@ from numpy.typing import NDArray
 
 from profiler.errors import RasterError
 from profiler.terrain.describe import Tile
-from profiler.terrain.gdal import OpenRasters, read_window
+from profiler.terrain.files import Window
+from profiler.terrain.gdal import LARGE_BLOCK_CELLS, OpenRasters
 from profiler.terrain.index import Index, Ints
-from profiler.terrain.pieces import Window
+from profiler.terrain.reading import read_cells
 from profiler.units import Float
 
 __all__ = ["ReadTally", "fetch", "fetch_heights", "to_metres"]
@@ -32,6 +33,7 @@ class ReadTally:
     windows: dict[int, list[Window]] = field(default_factory=dict)
     blocks: dict[int, int] = field(default_factory=dict)
     read_bytes: dict[int, int] = field(default_factory=dict)
+    large: set[tuple[int, int, int]] = field(default_factory=set)
     undeclared: dict[int, dict[float, int]] = field(default_factory=dict)
     seabed: set[int] = field(default_factory=set)
 
@@ -44,6 +46,10 @@ class ReadTally:
         high = min((last_row + 1) * block_rows, tile.info.height) - first_row * block_rows
         wide = min((last_col + 1) * block_cols, tile.info.width) - first_col * block_cols
         blocks = (last_row - first_row + 1) * (last_col - first_col + 1)
+        if block_rows * block_cols > LARGE_BLOCK_CELLS:  # read in parts: each block counts once
+            if (number, first_row, first_col) in self.large:
+                return
+            self.large.add((number, first_row, first_col))
         self.blocks[number] = self.blocks.get(number, 0) + blocks
         self.read_bytes[number] = self.read_bytes.get(number, 0) + high * wide * tile.coding.item_bytes
 
@@ -71,21 +77,19 @@ def fetch(
     the blocks under it. Nothing but the wanted cells is kept.
     """
     raw = np.empty(col.size)
-    valid = np.ones(col.size, dtype=bool) if tile.coding.masked else None
+    valid: NDArray[np.bool_] | None = None
     key = (row // tile.read_cells[0] << 32) | (col // tile.read_cells[1])
     order = np.argsort(key, kind="stable")  # wanted cells come nearly in order: this is quick
     starts = np.flatnonzero(np.diff(key[order])) + 1
     for which in np.split(order, starts) if starts.size else [slice(None)]:
         part_col, part_row = col[which], row[which]
         rows, cols = _span(part_row), _span(part_col)
-        dataset = rasters.get(tile.file)
-        cells, cells_valid = read_window(
-            dataset, tile.coding.band, rows, cols, name=tile.file.name, masked=tile.coding.masked
-        )
+        cells, cells_valid = read_cells(rasters, tile, rows, cols)
         tally.count(number, tile, rows, cols)
         at = (part_row - rows[0]) * (cols[1] - cols[0]) + (part_col - cols[0])
         raw[which] = cells.ravel()[at]
-        if valid is not None and cells_valid is not None:
+        if cells_valid is not None:
+            valid = np.ones(col.size, dtype=bool) if valid is None else valid
             valid[which] = cells_valid.ravel()[at]
     return raw, valid
 

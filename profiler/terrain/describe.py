@@ -3,16 +3,20 @@
 from __future__ import annotations
 
 import math
-from dataclasses import dataclass
+from collections.abc import Sequence
+from dataclasses import dataclass, replace
 from pathlib import Path
 from typing import Any, NamedTuple
 
 import numpy as np
 
 from profiler.errors import InputError, RasterError, under
-from profiler.terrain.files import RasterFile
-from profiler.terrain.gdal import open_raster
+from profiler.printable import printable
+from profiler.terrain.files import RasterFile, read_bytes
+from profiler.terrain.gdal import LARGE_BLOCK_CELLS, open_raster
 from profiler.terrain.reference import Reference, parse_reference, unit_factor
+from profiler.terrain.sound import require_plain_beside
+from profiler.terrain.virtual import is_virtual, read_virtual
 
 __all__ = ["Bounds", "Coding", "NotHeightsError", "RasterInfo", "Reading", "Tile", "describe"]
 
@@ -88,31 +92,37 @@ class RasterInfo:
     @property
     def name(self) -> str:
         """What messages call the raster."""
-        return f"{self.path}/{self.member}" if self.member else str(self.path)
+        return printable(f"{self.path}/{self.member}" if self.member else str(self.path))
 
 
 @dataclass(frozen=True, slots=True)
 class Reading:
     """How rasters are to be understood where they do not say.
 
-    `classes` reads cells as class numbers, not heights; `eight_bit` takes 8-bit cells for heights.
+    `classes` reads cells as class numbers, not heights; `eight_bit` takes 8-bit cells for heights; `allow_network` lets
+    mosaics name sources that are read over the network.
     """
 
     vertical_datum: str | None = None
     height_unit: str | None = None
     eight_bit: bool = False
     classes: bool = False
+    allow_network: bool = False
 
 
 @dataclass(frozen=True, slots=True)
 class Coding:
-    """From stored cells to metres: height = cell · scale_m + offset_m, missing where the cell is `nodata` or masked."""
+    """From stored cells to metres: height = cell · scale_m + offset_m, missing where the cell is `nodata` or masked.
+
+    `alpha` is the band of opacities, 0 for none: what it makes invisible is missing too.
+    """
 
     band: int
     nodata: float
     scale_m: float
     offset_m: float
     masked: bool
+    alpha: int
     item_bytes: int
 
 
@@ -142,13 +152,14 @@ def describe(file: RasterFile, reading: Reading) -> Tile:
     RasterError
         When it is unreadable, has no CRS or no place, is a photo or classes instead of heights, or its unit is unknown.
     """
+    file = _settled(file, reading)
     with open_raster(file) as dataset, under(file.name):
-        band = _band(dataset, reading)
+        band = _band(dataset, file.types, reading)
         reference = _reference(dataset)
         affine = _affine(dataset)
         unit, factor, unit_notes = ("", 1.0, ()) if reading.classes else _unit(dataset, band, reference, reading)
         datum, datum_notes = (None, ()) if reading.classes else _datum(reference, reading)
-        size = (dataset.width, dataset.height)
+        size, block = (dataset.width, dataset.height), dataset.block_shapes[band - 1]
         info = RasterInfo(
             path=file.path,
             member=file.member,
@@ -165,18 +176,29 @@ def describe(file: RasterFile, reading: Reading) -> Tile:
             vertical_datum=datum,
             pixel_is_point=dataset.tags().get("AREA_OR_POINT") == "Point",
             size_bytes=file.path.stat().st_size,
-            notes=(*unit_notes, *datum_notes),
+            notes=(*unit_notes, *datum_notes, *_marker_notes(dataset, band), *_block_notes(block), *file.notes),
         )
-        block = dataset.block_shapes[band - 1]
         return Tile(info, file, reference, affine, _coding(dataset, band, factor), block, _read_cells(block))
 
 
+def _settled(file: RasterFile, reading: Reading) -> RasterFile:
+    """Return the file as GDAL may have it: a VRT as the plain mosaic that it is, all else as it stands."""
+    if is_virtual(read_bytes(file.source, 4096)):
+        found = read_virtual(file.source, file.name, allow_network=reading.allow_network)
+        return replace(file, source=found.text, pieces=found.pieces, types=found.types, notes=found.notes)
+    require_plain_beside(file.source, file.name)
+    return file
+
+
 def _read_cells(block: tuple[int, int]) -> tuple[int, int]:
-    rows, cols = (side if side >= _SMALL_BLOCK else side * (_READ_CELLS // side) for side in block)
+    if block[0] * block[1] > LARGE_BLOCK_CELLS:  # a window round a slanting path would be most of the raster
+        rows, cols = (min(side, _READ_CELLS) for side in block)
+    else:
+        rows, cols = (side if side >= _SMALL_BLOCK else side * (_READ_CELLS // side) for side in block)
     return rows, cols
 
 
-def _band(dataset: Any, reading: Reading) -> int:
+def _band(dataset: Any, types: Sequence[str], reading: Reading) -> int:
     """Band that holds the heights, refusing what cannot be heights."""
     from rasterio.enums import ColorInterp
 
@@ -201,7 +223,8 @@ def _band(dataset: Any, reading: Reading) -> int:
     if not reading.classes:
         if colors[band - 1] == ColorInterp.palette:
             raise NotHeightsError(f"holds classes or colors (it has a palette), not heights; {remedy}")
-        if kind.itemsize == 1 and not reading.eight_bit:
+        eight_bit = types[band - 1] in ("Byte", "Int8") if types else kind.itemsize == 1
+        if eight_bit and not reading.eight_bit:
             raise NotHeightsError(f"holds 8-bit cells (a photo, mask or class map), not heights; {remedy}")
     return int(band)
 
@@ -274,22 +297,51 @@ def _datum(reference: Reference, reading: Reading) -> tuple[str | None, tuple[st
 
 
 def _coding(dataset: Any, band: int, factor: float) -> Coding:
-    from rasterio.enums import MaskFlags
+    from rasterio.enums import ColorInterp, MaskFlags
 
     flags = dataset.mask_flag_enums[band - 1]
-    kind = np.dtype(dataset.dtypes[band - 1])
-    declared = dataset.nodatavals[band - 1]
-    nodata = math.nan
-    if declared is not None and kind.kind == "f":
-        with np.errstate(over="ignore"):  # a float64 marker on float32 cells
-            nodata = float(kind.type(declared))  # stored cells hold the rounded marker, not the printed one
-    elif declared is not None and np.iinfo(kind).min <= declared <= np.iinfo(kind).max:
-        nodata = float(declared)
+    scale, offset = float(dataset.scales[band - 1]), float(dataset.offsets[band - 1])
+    if scale == 0.0 or not math.isfinite(scale) or not math.isfinite(offset):
+        raise RasterError(
+            f"declares a scale of {scale:g} and an offset of {offset:g} for its cells, which leaves no heights in "
+            "them; correct the scale (gdal_edit -scale 1)"
+        )
+    alpha = [i for i, color in zip(dataset.indexes, dataset.colorinterp, strict=True) if color == ColorInterp.alpha]
     return Coding(
         band=band,
-        nodata=nodata,
-        scale_m=float(dataset.scales[band - 1]) * factor,
-        offset_m=float(dataset.offsets[band - 1]) * factor,
+        nodata=_marker(dataset, band),
+        scale_m=scale * factor,
+        offset_m=offset * factor,
         masked=MaskFlags.all_valid not in flags and MaskFlags.nodata not in flags,
-        item_bytes=kind.itemsize,
+        alpha=alpha[0] if alpha else 0,
+        item_bytes=np.dtype(dataset.dtypes[band - 1]).itemsize,
     )
+
+
+def _marker(dataset: Any, band: int) -> float:
+    """Find what missing cells hold as stored, NaN for none: a marker that the cells cannot hold became their nearest."""
+    declared, kind = dataset.nodatavals[band - 1], np.dtype(dataset.dtypes[band - 1])
+    if declared is None:
+        return math.nan
+    if kind.kind == "f":
+        with np.errstate(over="ignore"):  # a float64 marker on float32 cells
+            return float(kind.type(declared))  # stored cells hold the rounded marker, not the printed one
+    if kind.kind not in "iu" or math.isnan(declared):
+        return math.nan
+    return float(np.clip(np.rint(declared), np.iinfo(kind).min, np.iinfo(kind).max))
+
+
+def _block_notes(block: tuple[int, int]) -> tuple[str, ...]:
+    if block[0] * block[1] <= LARGE_BLOCK_CELLS:
+        return ()
+    return (
+        f"is stored in blocks of {block[1]} x {block[0]} cells, each unpacked whole: slow; gdal_translate -of COG "
+        "in.tif out.tif makes it quick",
+    )
+
+
+def _marker_notes(dataset: Any, band: int) -> tuple[str, ...]:
+    declared, stored, kind = dataset.nodatavals[band - 1], _marker(dataset, band), dataset.dtypes[band - 1]
+    if declared is None or math.isnan(stored) or "float" in kind or stored == declared:
+        return ()
+    return (f"declares {declared:g} as nodata, which its {kind} cells cannot hold: {stored:g} taken as missing",)

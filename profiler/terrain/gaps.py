@@ -26,7 +26,15 @@ def missing_stretches(ground_m: ArrayLike) -> tuple[tuple[int, int], ...]:
     return tuple((int(first), int(end) - 1) for first, end in zip(turns[::2], turns[1::2], strict=True))
 
 
-def require_ground(distance_m: ArrayLike, longitude: ArrayLike, latitude: ArrayLike, ground_m: ArrayLike) -> None:
+def require_ground(
+    distance_m: ArrayLike,
+    longitude: ArrayLike,
+    latitude: ArrayLike,
+    ground_m: ArrayLike,
+    *,
+    covered: ArrayLike | None = None,
+    interpolated: bool = False,
+) -> None:
     """Stop when ground is missing anywhere on a path, saying where.
 
     Parameters
@@ -37,6 +45,10 @@ def require_ground(distance_m: ArrayLike, longitude: ArrayLike, latitude: ArrayL
         The points, degrees, shape (n,).
     ground_m
         Ground heights, metres, NaN where missing, shape (n,).
+    covered
+        Where a raster lies, though it may hold no height there; unknown by default.
+    interpolated
+        Gaps between known ground have been filled already, so that this is no way out.
 
     Raises
     ------
@@ -61,9 +73,17 @@ def require_ground(distance_m: ArrayLike, longitude: ArrayLike, latitude: ArrayL
         told.append(f"{where} (longitude {lon[first]:.5f}, latitude {lat[first]:.5f})")
     more = f" and {len(gaps) - 3} more stretches" if len(gaps) > 3 else ""
     count = sum(last - first + 1 for first, last in gaps)
+    missing = np.isnan(np.asarray(ground_m, dtype=float))
+    all_of = "any" if missing.all() else f"{count}"
+    ways = ["give terrain that covers them"]
+    if not interpolated and not missing.all() and not missing[0] and not missing[-1]:
+        ways.append('set terrain.missing = "interpolate" in the hop file')
+    if covered is not None and np.asarray(covered)[missing].all():
+        ways.append("if these cells are the sea, set terrain.voids_are_sea = true")
+    elif covered is not None and not np.asarray(covered)[missing].any():
+        ways[0] = "no raster lies there: " + ways[0]
     raise MissingGroundError(
-        f"no ground height at {count} of {distance.size} points: {', '.join(told)}{more}; give terrain that covers "
-        'them, or set terrain.missing = "interpolate" in the hop file'
+        f"no ground height at {all_of} of {distance.size} points: {', '.join(told)}{more}; {', or '.join(ways)}"
     )
 
 

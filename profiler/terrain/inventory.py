@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import math
 from collections.abc import Sequence
+from contextlib import closing
 from dataclasses import dataclass
 from pathlib import Path
 
@@ -13,10 +14,11 @@ from profiler.errors import RasterError
 from profiler.terrain.cells import ReadTally, to_metres
 from profiler.terrain.describe import Bounds, NotHeightsError, RasterInfo, Tile, describe
 from profiler.terrain.files import find_rasters
-from profiler.terrain.gdal import gdal_session, open_raster, read_window
+from profiler.terrain.gdal import OpenRasters, gdal_session
 from profiler.terrain.index import build_index, find_hits
 from profiler.terrain.mosaic import as_reading
 from profiler.terrain.placing import place, require_placed
+from profiler.terrain.reading import read_cells
 from profiler.terrain.samples import Skipped
 
 __all__ = ["FolderSurvey", "RasterSurvey", "bounds_around", "survey"]
@@ -121,9 +123,10 @@ def survey(
     tiles: list[Tile] = []
     rasters: list[RasterSurvey] = []
     problems: list[str] = []
-    skipped: list[Skipped] = []
     with gdal_session():
-        for file in find_rasters([paths] if isinstance(paths, Path) else paths):
+        listed = find_rasters([paths] if isinstance(paths, Path) else paths)
+        skipped = [Skipped(path, "", reason) for path, reason in listed.passed_over]
+        for file in listed.rasters:
             try:
                 found.append(describe(file, reading))
             except NotHeightsError as error:
@@ -144,15 +147,12 @@ def survey(
 
 def _survey_tile(tile: Tile) -> RasterSurvey:
     """Read all cells in bands of whole blocks."""
-    info, coding = tile.info, tile.coding
+    info = tile.info
     rows = max(1, _PIECE_CELLS // (info.width * tile.read_cells[0])) * tile.read_cells[0]
     lowest, highest, known, tally = math.inf, -math.inf, 0, ReadTally()
-    with open_raster(tile.file) as dataset:
+    with closing(OpenRasters()) as rasters:
         for top in range(0, info.height, rows):
-            span = (top, min(top + rows, info.height))
-            cells, valid = read_window(
-                dataset, coding.band, span, (0, info.width), name=info.name, masked=coding.masked
-            )
+            cells, valid = read_cells(rasters, tile, (top, min(top + rows, info.height)), (0, info.width))
             height = to_metres(
                 tile,
                 0,

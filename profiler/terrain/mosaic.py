@@ -17,6 +17,7 @@ from profiler.terrain.describe import NotHeightsError, RasterInfo, Reading, Tile
 from profiler.terrain.files import find_rasters
 from profiler.terrain.gdal import OpenRasters, gdal_session
 from profiler.terrain.index import build_index, find_hits
+from profiler.terrain.overlap import find_overlaps
 from profiler.terrain.placing import place, require_placed
 from profiler.terrain.reference import resolve_datum, unit_factor
 from profiler.terrain.samples import Samples, Skipped, gather_samples
@@ -32,15 +33,24 @@ class Terrain:
     One thread at a time may use it (GDAL's datasets allow no more); every process opens its own.
     """
 
-    __slots__ = ("_allow_mixed_datums", "_index", "_method", "_rasters", "skipped")
+    __slots__ = ("_allow_mixed_datums", "_allow_network", "_index", "_method", "_rasters", "_voids_are_sea", "skipped")
 
     def __init__(
-        self, tiles: Sequence[Tile], skipped: Sequence[Skipped], *, method: SampleMethod, allow_mixed_datums: bool
+        self,
+        tiles: Sequence[Tile],
+        skipped: Sequence[Skipped],
+        *,
+        method: SampleMethod,
+        allow_mixed_datums: bool,
+        allow_network: bool,
+        voids_are_sea: bool,
     ) -> None:
         self._index = build_index(tiles)
         self._rasters = OpenRasters()
         self._method: SampleMethod = method
         self._allow_mixed_datums = allow_mixed_datums
+        self._allow_network = allow_network
+        self._voids_are_sea = voids_are_sea
         self.skipped = tuple(skipped)
 
     def __enter__(self) -> Self:
@@ -109,11 +119,13 @@ class Terrain:
         *,
         method: SampleMethod | None = None,
         allow_mixed_datums: bool | None = None,
+        compare: bool = False,
     ) -> Samples:
         """Heights of the ground at points, in metres.
 
         Bilinear between the four cell centres around a point, or the highest of those of them that carry weight. The
-        finest raster answers where all of these hold heights, else the next.
+        finest raster answers where all of these hold heights, else the next; of rasters of one resolution the one whose
+        path was given first. Where voids are sea, void cells count 0 m once every raster was asked.
 
         Parameters
         ----------
@@ -124,6 +136,8 @@ class Terrain:
         allow_mixed_datums
             What to do about rasters on different vertical datums, where it differs from how the terrain was opened:
             points beside the path need not stop a study whose path is on one datum.
+        compare
+            Read the other rasters of the same resolution at the points too, and tell how they differ.
 
         Returns
         -------
@@ -140,10 +154,17 @@ class Terrain:
             When heights come from rasters on different vertical datums, unless that was allowed.
         """
         lon, lat, shape = as_degrees(longitude, latitude)
-        with gdal_session():
-            ground = sample_ground(self._index, self._rasters, lon, lat, method or self._method)
+        with gdal_session(allow_network=self._allow_network):
+            ground = sample_ground(
+                self._index, self._rasters, lon, lat, method or self._method, voids_are_sea=self._voids_are_sea
+            )
             allow = self._allow_mixed_datums if allow_mixed_datums is None else allow_mixed_datums
-            return gather_samples(self._index.tiles, self._rasters, ground, shape, allow_mixed_datums=allow)
+            overlaps = (
+                find_overlaps(self._index, self._rasters, lon, lat, ground, method or self._method) if compare else ()
+            )
+            return gather_samples(
+                self._index.tiles, self._rasters, ground, shape, allow_mixed_datums=allow, overlaps=overlaps
+            )
 
 
 def open_terrain(
@@ -154,6 +175,8 @@ def open_terrain(
     vertical_datum: str | None = None,
     height_unit: str | None = None,
     eight_bit: bool = False,
+    allow_network: bool = False,
+    voids_are_sea: bool = False,
 ) -> Terrain:
     r"""Index rasters for sampling; only their metadata is read.
 
@@ -172,6 +195,10 @@ def open_terrain(
         Unit of the rasters that declare none (``"m"``, ``"ft"``…); metres otherwise.
     eight_bit
         Take 8-bit cells for heights (canopy height maps often are), instead of a photo or a mask.
+    allow_network
+        Let mosaics (VRT) name sources that are read over the network; nothing else ever is.
+    voids_are_sea
+        Take cells without a height for the sea, at 0 m; a place that no raster covers stays missing.
 
     Returns
     -------
@@ -204,12 +231,27 @@ def open_terrain(
     """
     if method not in ("bilinear", "highest"):
         raise InputError(f"terrain.method = {method!r}: must be bilinear or highest")
-    reading = as_reading(vertical_datum, height_unit, eight_bit=eight_bit)
+    reading = as_reading(vertical_datum, height_unit, eight_bit=eight_bit, allow_network=allow_network)
     tiles, skipped = describe_all([paths] if isinstance(paths, Path) else paths, reading)
-    return Terrain(tiles, skipped, method=method, allow_mixed_datums=allow_mixed_datums)
+    above = next((tile.info for tile in tiles if (tile.info.vertical_datum or "").startswith("ellipsoid")), None)
+    if voids_are_sea and above is not None:
+        raise InputError(
+            f"terrain.voids_are_sea = true: must be left out with {above.name}, whose heights count from the "
+            f"{above.vertical_datum}, where the sea is not at 0 m; give heights above sea level"
+        )
+    return Terrain(
+        tiles,
+        skipped,
+        method=method,
+        allow_mixed_datums=allow_mixed_datums,
+        allow_network=allow_network,
+        voids_are_sea=voids_are_sea,
+    )
 
 
-def as_reading(vertical_datum: str | None, height_unit: str | None, *, eight_bit: bool = False) -> Reading:
+def as_reading(
+    vertical_datum: str | None, height_unit: str | None, *, eight_bit: bool = False, allow_network: bool = False
+) -> Reading:
     """Check what a user says about rasters that do not say it themselves.
 
     Raises
@@ -222,16 +264,17 @@ def as_reading(vertical_datum: str | None, height_unit: str | None, *, eight_bit
             unit_factor(height_unit)
     with under("terrain.vertical_datum"):
         datum = None if vertical_datum is None else resolve_datum(vertical_datum)
-    return Reading(vertical_datum=datum, height_unit=height_unit, eight_bit=eight_bit)
+    return Reading(vertical_datum=datum, height_unit=height_unit, eight_bit=eight_bit, allow_network=allow_network)
 
 
 def describe_all(paths: Sequence[Path], reading: Reading) -> tuple[list[Tile], list[Skipped]]:
     """Describe every raster in the paths; what a folder holds besides heights is set aside, all else is an error."""
     tiles: list[Tile] = []
-    skipped: list[Skipped] = []
     refused: RasterError | None = None
-    with gdal_session():
-        for file in find_rasters(paths):
+    with gdal_session(allow_network=reading.allow_network):
+        found = find_rasters(paths)
+        skipped = [Skipped(path, "", reason) for path, reason in found.passed_over]
+        for file in found.rasters:
             try:
                 tiles.append(describe(file, reading))
             except NotHeightsError as error:

@@ -11,10 +11,12 @@ import numpy as np
 from numpy.typing import NDArray
 
 from profiler.errors import DatumError
+from profiler.printable import printable
 from profiler.terrain.describe import NotHeightsError, RasterInfo, Tile
 from profiler.terrain.files import RasterFile
 from profiler.terrain.gdal import OpenRasters
 from profiler.terrain.index import Ints
+from profiler.terrain.overlap import Overlap
 from profiler.terrain.reference import datum_key
 from profiler.terrain.sampling import SampledGround
 from profiler.units import Float
@@ -24,7 +26,7 @@ __all__ = ["Samples", "Skipped", "SourceUse", "common_datum", "gather_samples"]
 
 @dataclass(frozen=True, slots=True)
 class Skipped:
-    """A file in a folder (or a member of an archive) that was left out, and why: it holds no heights."""
+    """A file in a folder (or a member of an archive), a link or a folder that was left out, and why."""
 
     path: Path
     member: str
@@ -38,7 +40,7 @@ class Skipped:
     @property
     def name(self) -> str:
         """What messages call it."""
-        return f"{self.path}/{self.member}" if self.member else str(self.path)
+        return printable(f"{self.path}/{self.member}" if self.member else str(self.path))
 
 
 @dataclass(frozen=True, slots=True)
@@ -82,20 +84,27 @@ class Samples:
         Which of `sources` the height came from; -1 where missing.
     covered
         The point lies on some raster: where the height is missing, that is a void, not a place off the terrain.
+    sea
+        A void cell at the point was taken for the sea.
     sources
         The rasters that gave heights, in the order of their share.
     vertical_datum
         What all the heights count from, as far as the sources say; None when none says, or when they differ.
     notes
         What holds for the heights together: datums that are mixed or not all known.
+    overlaps
+        Pairs of rasters of one resolution that both hold heights at some of the points, if they were to be compared; an
+        overlap counts points of the flattened arrays.
     """
 
     ground_m: Float
     source: Ints
     covered: NDArray[np.bool_]
+    sea: NDArray[np.bool_]
     sources: tuple[SourceUse, ...]
     vertical_datum: str | None
     notes: tuple[str, ...]
+    overlaps: tuple[Overlap, ...] = ()
 
 
 def gather_samples(
@@ -105,6 +114,7 @@ def gather_samples(
     shape: tuple[int, ...],
     *,
     allow_mixed_datums: bool,
+    overlaps: tuple[Overlap, ...] = (),
 ) -> Samples:
     """Turn heights by tile into heights by source, the greatest share first, and settle the vertical datum.
 
@@ -125,11 +135,13 @@ def gather_samples(
         ground_m=ground.height_m.reshape(shape),
         source=rank[ground.tile].reshape(shape),
         covered=ground.covered.reshape(shape),
+        sea=ground.sea.reshape(shape),
         sources=sources,
         vertical_datum=datum,
         notes=notes,
+        overlaps=overlaps,
     )
-    for array in (result.ground_m, result.source, result.covered):
+    for array in (result.ground_m, result.source, result.covered, result.sea):
         array.flags.writeable = False
     return result
 
