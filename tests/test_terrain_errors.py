@@ -1,5 +1,6 @@
 """Each thing that can be wrong with terrain has its own line, which names the file and the way out."""
 
+import re
 import subprocess
 import sys
 
@@ -109,12 +110,11 @@ def test_corrupt_file(tmp_path, content):
 
 
 def test_file_cut_short(write_raster):
-    path = cut_short(write_raster)
-    with open_terrain(path) as terrain:
-        assert not np.isnan(terrain.sample(10.1, 49.99).ground_m)
-        text = message(lambda: terrain.sample([10.1, 10.4], [49.99, 49.51]))
-    assert "cut.tif: cannot be read at rows 489 to 490" in text
-    assert "damaged or cut short" in text
+    with open_terrain(cut_short(write_raster)) as terrain:  # refused before a cell is read, wherever the cut may be
+        text = message(lambda: terrain.sample(10.1, 49.99))
+    assert re.search(
+        r"cut\.tif: ends after \d+ bytes where its cells reach to byte \d+; the file is damaged or cut", text
+    )
 
 
 def test_bad_zip(tmp_path):

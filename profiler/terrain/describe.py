@@ -14,6 +14,7 @@ from profiler.errors import InputError, RasterError, under
 from profiler.printable import printable
 from profiler.terrain.files import RasterFile, read_bytes
 from profiler.terrain.gdal import LARGE_BLOCK_CELLS, open_raster
+from profiler.terrain.markers import declared_marker
 from profiler.terrain.reference import Reference, parse_reference, unit_factor
 from profiler.terrain.sound import require_plain_beside
 from profiler.terrain.virtual import is_virtual, read_virtual
@@ -159,6 +160,7 @@ def describe(file: RasterFile, reading: Reading) -> Tile:
         affine = _affine(dataset)
         unit, factor, unit_notes = ("", 1.0, ()) if reading.classes else _unit(dataset, band, reference, reading)
         datum, datum_notes = (None, ()) if reading.classes else _datum(reference, reading)
+        marker, marker_notes = _marker(dataset, band, file)
         size, block = (dataset.width, dataset.height), dataset.block_shapes[band - 1]
         info = RasterInfo(
             path=file.path,
@@ -176,9 +178,9 @@ def describe(file: RasterFile, reading: Reading) -> Tile:
             vertical_datum=datum,
             pixel_is_point=dataset.tags().get("AREA_OR_POINT") == "Point",
             size_bytes=file.path.stat().st_size,
-            notes=(*unit_notes, *datum_notes, *_marker_notes(dataset, band), *_block_notes(block), *file.notes),
+            notes=(*unit_notes, *datum_notes, *marker_notes, *_block_notes(block), *file.notes),
         )
-        return Tile(info, file, reference, affine, _coding(dataset, band, factor), block, _read_cells(block))
+        return Tile(info, file, reference, affine, _coding(dataset, band, factor, marker), block, _read_cells(block))
 
 
 def _settled(file: RasterFile, reading: Reading) -> RasterFile:
@@ -296,7 +298,7 @@ def _datum(reference: Reference, reading: Reading) -> tuple[str | None, tuple[st
     return None, ("declares no vertical datum",)
 
 
-def _coding(dataset: Any, band: int, factor: float) -> Coding:
+def _coding(dataset: Any, band: int, factor: float, marker: float) -> Coding:
     from rasterio.enums import ColorInterp, MaskFlags
 
     flags = dataset.mask_flag_enums[band - 1]
@@ -309,7 +311,7 @@ def _coding(dataset: Any, band: int, factor: float) -> Coding:
     alpha = [i for i, color in zip(dataset.indexes, dataset.colorinterp, strict=True) if color == ColorInterp.alpha]
     return Coding(
         band=band,
-        nodata=_marker(dataset, band),
+        nodata=marker,
         scale_m=scale * factor,
         offset_m=offset * factor,
         masked=MaskFlags.all_valid not in flags and MaskFlags.nodata not in flags,
@@ -318,17 +320,22 @@ def _coding(dataset: Any, band: int, factor: float) -> Coding:
     )
 
 
-def _marker(dataset: Any, band: int) -> float:
-    """Find what missing cells hold as stored, NaN for none: a marker that the cells cannot hold became their nearest."""
+def _marker(dataset: Any, band: int, file: RasterFile) -> tuple[float, tuple[str, ...]]:
+    """Find what missing cells hold as stored, NaN for none, and what to say about it.
+
+    A declared marker that the cells cannot hold became the nearest that they can.
+    """
     declared, kind = dataset.nodatavals[band - 1], np.dtype(dataset.dtypes[band - 1])
+    if declared is None and kind.kind in "iu" and not file.types:
+        lost, limits = declared_marker(file.source), np.iinfo(kind)
+        if lost is None or not math.isfinite(lost):
+            return math.nan, ()
+        held = float(np.clip(np.rint(lost), limits.min, limits.max))
+        return held, (f"declares {lost:g} as nodata, which its {kind} cells cannot hold: {held:g} taken as missing",)
     if declared is None:
-        return math.nan
-    if kind.kind == "f":
-        with np.errstate(over="ignore"):  # a float64 marker on float32 cells
-            return float(kind.type(declared))  # stored cells hold the rounded marker, not the printed one
-    if kind.kind not in "iu" or math.isnan(declared):
-        return math.nan
-    return float(np.clip(np.rint(declared), np.iinfo(kind).min, np.iinfo(kind).max))
+        return math.nan, ()
+    with np.errstate(over="ignore"):  # stored cells hold the marker as rounded to their type, not as printed
+        return float(kind.type(declared)) if kind.kind == "f" else float(declared), ()
 
 
 def _block_notes(block: tuple[int, int]) -> tuple[str, ...]:
@@ -338,10 +345,3 @@ def _block_notes(block: tuple[int, int]) -> tuple[str, ...]:
         f"is stored in blocks of {block[1]} x {block[0]} cells, each unpacked whole: slow; gdal_translate -of COG "
         "in.tif out.tif makes it quick",
     )
-
-
-def _marker_notes(dataset: Any, band: int) -> tuple[str, ...]:
-    declared, stored, kind = dataset.nodatavals[band - 1], _marker(dataset, band), dataset.dtypes[band - 1]
-    if declared is None or math.isnan(stored) or "float" in kind or stored == declared:
-        return ()
-    return (f"declares {declared:g} as nodata, which its {kind} cells cannot hold: {stored:g} taken as missing",)

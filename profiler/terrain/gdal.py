@@ -24,8 +24,8 @@ __all__ = ["LARGE_BLOCK_CELLS", "OpenRasters", "gdal_session", "library_versions
 
 _DRIVERS = [
     "GTiff", "SRTMHGT", "DTED", "AAIGrid", "GRASSASCIIGrid", "HFA", "EHdr", "ENVI", "BT", "USGSDEM", "SDTS", "GSAG",
-    "GSBG", "GS7BG", "netCDF", "BAG", "Terragen", "JP2OpenJPEG", "HF2", "SAGA", "RST", "SIGDEM", "XYZ", "NITF", "GXF", "AIG",
-    "PCRaster", "NWT_GRD", "Leveller", "PNG", "JPEG", "GIF", "WEBP", "BMP",
+    "GSBG", "GS7BG", "netCDF", "BAG", "Terragen", "JP2OpenJPEG", "HF2", "SAGA", "RST", "SIGDEM", "XYZ", "NITF", "GXF",
+    "AIG", "PCRaster", "NWT_GRD", "Leveller", "PNG", "JPEG", "GIF", "WEBP", "BMP",
 ]  # fmt: skip
 """Formats that hold cells themselves. GDAL's others reach for services, data bases, indexes of further files."""
 

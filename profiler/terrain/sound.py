@@ -69,7 +69,9 @@ def require_whole(dataset: Any, source: str, name: str) -> None:
     RasterError
         Naming what is there and what should be.
     """
-    if dataset.driver in _HEADER:
+    if dataset.driver == "GTiff" and not source.startswith("/vsi"):
+        _require_blocks(dataset, source, name)
+    elif dataset.driver in _HEADER:
         with open_stream(source) as stream:
             _require_numbers(stream, _HEADER[dataset.driver], dataset.width * dataset.height, name)
     elif dataset.driver in _UNPACKED and not source.startswith("/vsi"):
@@ -79,6 +81,21 @@ def require_whole(dataset: Any, source: str, name: str) -> None:
             raise RasterError(
                 f"{name}: holds {max(sizes)} bytes where its {cells} bytes of cells do not fit; {_GET_AGAIN}"
             )
+
+
+def _require_blocks(dataset: Any, source: str, name: str) -> None:
+    """Refuse a GeoTIFF whose last block ends beyond the file's end."""
+    high, wide = dataset.block_shapes[0]
+    last, at = 0, ""
+    for y in range(-(-dataset.height // high)):
+        for x in range(-(-dataset.width // wide)):
+            start = dataset.get_tag_item(f"BLOCK_OFFSET_{x}_{y}", "TIFF", bidx=1)
+            if start is not None and int(start) >= last:
+                last, at = int(start), f"{x}_{y}"
+    end = last + int(dataset.get_tag_item(f"BLOCK_SIZE_{at}", "TIFF", bidx=1) or 0) if at else 0
+    size = Path(source).stat().st_size
+    if end > size:
+        raise RasterError(f"{name}: ends after {size} bytes where its cells reach to byte {end}; {_GET_AGAIN}")
 
 
 def _require_numbers(stream: IO[bytes], header: re.Pattern[bytes], cells: int, name: str) -> None:
