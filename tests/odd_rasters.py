@@ -2,8 +2,8 @@
 
 The country is a plain at 100 m with a wall of 700 m across its middle. A hop over the plain passes; over the wall it
 does not. A lying raster hides the wall: whoever reads its absent cells as ground lets the hop pass, and that is the
-one outcome which none may have. ``KINDS`` maps a name to its maker, which takes an empty folder and returns the path to give
-as terrain; ``EXPECTED`` maps it to words of the one line that must come (empty: the wall is seen, exit code 1).
+one outcome which none may have. ``KINDS`` maps a name to its maker, which takes an empty folder and returns the path to
+give as terrain; ``EXPECTED`` maps it to words of the one line that must come (empty: the wall is seen, exit code 1).
 
 ``mutated`` damages one of them at random, for scripts that try many.
 """

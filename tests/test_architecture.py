@@ -9,6 +9,7 @@ PACKAGE = Path(__file__).resolve().parent.parent / "profiler"
 
 RANKS = {
     "printable": -1,  # below even the errors, which are made of it
+    "surroundings": 0,
     "errors": 0,
     "units": 0,
     "models": 1,

@@ -56,8 +56,8 @@ def _require_small_blocks(dataset: Any, tile: Tile) -> None:
     size = high * wide * tile.coding.item_bytes
     if size > _MOST_BYTES and not (tile.info.driver == "GTiff" and dataset.compression is None):
         raise RasterError(
-            f"{tile.info.name}: is stored in blocks of {wide} x {high} cells, one of {size / 1e9:.1f} GB, to unpack whole; "
-            "make tiles of it (gdal_translate -of COG in.tif out.tif) and give those"
+            f"{tile.info.name}: is stored in blocks of {wide} x {high} cells, of {size / 1e9:.1f} GB each, "
+            "which must be unpacked whole; make tiles of it (gdal_translate -of COG in.tif out.tif) and give those"
         )
 
 
