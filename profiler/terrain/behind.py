@@ -7,7 +7,7 @@ from contextlib import suppress
 from pathlib import Path
 
 from profiler.errors import HopwrightError
-from profiler.terrain.describe import NotHeightsError, Reading, describe
+from profiler.terrain.describe import NotHeightsError, Reading, describe, settled
 from profiler.terrain.files import RasterFile, find_rasters
 from profiler.terrain.gdal import gdal_session, open_raster
 from profiler.terrain.pieces import find_pieces
@@ -22,19 +22,18 @@ def files_behind(paths: Iterable[Path]) -> Iterator[Path]:
     mosaics, and theirs in turn. What a folder holds besides heights is not among them: it is left out when they are
     read. A raster that cannot be opened is given by its own name; whoever reads it says what is wrong with it.
     """
-    waiting, seen = list(paths), set[Path]()
+    seen = set[Path]()
     with gdal_session():
-        while waiting:
-            for file in _rasters(waiting.pop()):
+        for path in paths:
+            for file in _rasters(path):
                 fresh = [each for each in _touched(file) if each not in seen]
                 seen.update(fresh)
                 yield from fresh
-                waiting += [each for each in fresh if each != file.path and each.suffix.lower() == ".vrt"]
 
 
 def _rasters(path: Path) -> list[RasterFile]:
     try:
-        return [file for file in find_rasters([path]) if file.named or _holds_heights(file)]
+        return [file for file in find_rasters([path]).rasters if file.named or _holds_heights(file)]
     except HopwrightError:
         return []
 
@@ -51,6 +50,8 @@ def _holds_heights(file: RasterFile) -> bool:
 
 def _touched(file: RasterFile) -> dict[Path, None]:
     touched = {file.path: None}
-    with suppress(HopwrightError), open_raster(file) as dataset:
-        touched |= dict.fromkeys(find_pieces(dataset).files)
+    with suppress(HopwrightError):
+        plain = settled(file, Reading(allow_network=True))
+        with open_raster(plain) as dataset:
+            touched |= dict.fromkeys(find_pieces(plain, dataset).files)
     return touched

@@ -19,7 +19,7 @@ from profiler.terrain.reference import Reference, parse_reference, unit_factor
 from profiler.terrain.sound import require_plain_beside
 from profiler.terrain.virtual import is_virtual, read_virtual
 
-__all__ = ["Bounds", "Coding", "NotHeightsError", "RasterInfo", "Reading", "Tile", "describe"]
+__all__ = ["Bounds", "Coding", "NotHeightsError", "RasterInfo", "Reading", "Tile", "describe", "settled"]
 
 _PHOTO_DRIVERS = frozenset({"JPEG", "GIF", "WEBP", "BMP"})
 _SMALL_BLOCK, _READ_CELLS = 64, 256
@@ -153,7 +153,7 @@ def describe(file: RasterFile, reading: Reading) -> Tile:
     RasterError
         When it is unreadable, has no CRS or no place, is a photo or classes instead of heights, or its unit is unknown.
     """
-    file = _settled(file, reading)
+    file = settled(file, reading)
     with open_raster(file) as dataset, under(file.name):
         band = _band(dataset, file.types, reading)
         reference = _reference(dataset)
@@ -183,7 +183,7 @@ def describe(file: RasterFile, reading: Reading) -> Tile:
         return Tile(info, file, reference, affine, _coding(dataset, band, factor, marker), block, _read_cells(block))
 
 
-def _settled(file: RasterFile, reading: Reading) -> RasterFile:
+def settled(file: RasterFile, reading: Reading) -> RasterFile:
     """Return the file as GDAL may have it: a VRT as the plain mosaic that it is, all else as it stands."""
     if is_virtual(read_bytes(file.source, 4096)):
         found = read_virtual(file.source, file.name, allow_network=reading.allow_network)
