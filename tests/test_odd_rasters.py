@@ -5,7 +5,7 @@ import signal
 import pytest
 from odd_rasters import EXPECTED, KINDS, write_hop
 
-from profiler.cli.app import main
+from profiler.cli import main
 
 
 def run(arguments, capsys, seconds=20):

@@ -14,6 +14,8 @@ import warnings
 from contextlib import suppress
 from pathlib import Path
 
+from profiler.surroundings import forget_surroundings
+
 __all__ = ["drop_unwritten", "load_matplotlib", "settle_process"]
 
 
@@ -26,6 +28,7 @@ def settle_process() -> None:
     gc.set_threshold(500_000)  # 5 %: loading and figures make 250 000, to stay; every 700 it would look through them
     atexit.register(gc.freeze)  # 14 %: the last look for garbage, at the very end
     os.environ.setdefault("OPENBLAS_NUM_THREADS", "1")  # 10 %; before numpy loads: over so little, threads only wait
+    forget_surroundings()
     _end_by_signals()
     _open_streams()
     # what a library has to say about itself is no line of ours, and PYTHONWARNINGS=error must not stop a study
