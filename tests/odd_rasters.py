@@ -74,7 +74,7 @@ def write_hop(folder: Path, terrain: Path, *more: str) -> Path:
         "[site_a]", 'name = "west"', 'position = "49.964, 10.011"', "antenna_m = 60",
         "[site_b]", 'name = "east"', 'position = "49.9641, 10.166"', "antenna_m = 65",
         "[terrain]", f"paths = [{json.dumps(str(terrain))}]", *more,
-        "[rules]", 'preset = "light-route"',
+        "[rules]", "rule = [{ k = 1.0, fresnel_fraction = 0.6, margin_m = 3.0 }]",
     ]  # fmt: skip
     path = folder / "hop.toml"
     path.write_text("\n".join(lines) + "\n")

@@ -38,7 +38,7 @@ def sea_notes(sea: NDArray[np.bool_], distance_m: Float) -> tuple[str, ...]:
     told = ", ".join(f"{first:.2f} to {last:.2f} km" for first, last in ends[:5])
     more = f" and {len(ends) - 5} more stretches" if len(ends) > 5 else ""
     return (
-        f"sea at 0 m at {told}{more}: the rasters there hold no height, and the hop file says that such cells are the sea",
+        f"sea at 0 m at {told}{more}: the rasters hold no height there, and the hop file says that such cells are sea",
     )
 
 

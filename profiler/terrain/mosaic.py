@@ -17,7 +17,7 @@ from profiler.terrain.describe import NotHeightsError, RasterInfo, Reading, Tile
 from profiler.terrain.files import find_rasters
 from profiler.terrain.gdal import OpenRasters, gdal_session
 from profiler.terrain.index import build_index, find_hits
-from profiler.terrain.overlap import find_overlaps
+from profiler.terrain.overlap import Overlap, find_overlaps
 from profiler.terrain.placing import place, require_placed
 from profiler.terrain.reference import resolve_datum, unit_factor
 from profiler.terrain.samples import Samples, Skipped, gather_samples
@@ -159,9 +159,9 @@ class Terrain:
                 self._index, self._rasters, lon, lat, method or self._method, voids_are_sea=self._voids_are_sea
             )
             allow = self._allow_mixed_datums if allow_mixed_datums is None else allow_mixed_datums
-            overlaps = (
-                find_overlaps(self._index, self._rasters, lon, lat, ground, method or self._method) if compare else ()
-            )
+            overlaps: tuple[Overlap, ...] = ()
+            if compare:
+                overlaps = find_overlaps(self._index, self._rasters, lon, lat, ground, method or self._method)
             return gather_samples(
                 self._index.tiles, self._rasters, ground, shape, allow_mixed_datums=allow, overlaps=overlaps
             )

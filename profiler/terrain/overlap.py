@@ -33,14 +33,15 @@ def find_overlaps(
 ) -> tuple[Overlap, ...]:
     """Compare the raster that answered at each point with every other of the same resolution that could have.
 
-    Nothing is read where a point lies on one raster alone, or where a finer one answered.
+    Nothing is read where a point lies on one raster alone, or where a finer one answered. Points whose height was
+    settled at an edge, or taken for the sea, are nobody's own and not compared.
     """
     hits, size = ranked_hits(index, longitude, latitude)
-    # the rank of the raster that answered, by point; one further beyond all for points with no answer
+    # size of the cells of the raster that answered, by point; -1 where none did on its own
     answered = np.full(longitude.size, -1, dtype=np.int64)
-    mine = ground.tile[hits.point] == hits.tile
+    mine = (ground.tile[hits.point] == hits.tile) & ~(ground.edge | ground.sea)[hits.point]
     answered[hits.point[mine]] = size[mine]
-    rivals = hits.inside & ~mine & (size == answered[hits.point])
+    rivals = hits.inside & (ground.tile[hits.point] != hits.tile) & (size == answered[hits.point])
     if not rivals.any():
         return ()
     hits = hits.take(rivals)
