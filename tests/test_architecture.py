@@ -15,6 +15,7 @@ RANKS = {
     "models": 1,
     "checks": 1,
     "terrain_error": 1,
+    "remarks": 1,
     "terrain": 2,
     "path": 2,
     "climate": 2,
@@ -31,8 +32,10 @@ RANKS = {
     "study": 8,
     "plan": 9,
     "screen": 9,
-    "figures": 10,
-    "cli": 11,
+    "words": 10,
+    "figures": 11,
+    "document": 11,
+    "cli": 12,
 }
 
 SOLE_USERS = {

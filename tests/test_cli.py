@@ -168,11 +168,11 @@ def test_the_verdict_comes_first_and_sets_the_exit_code(run):
     code, out, err = run("study", "hop.toml")
     assert (code, err) == (0, "")
     first, second, *_ = out.splitlines()
-    assert first == "Over the plain: PASSES"
-    assert second.startswith("clears, ")
+    assert first == "Over the plain: PASSES, more than 99.9 % chance of clearing, 90 % asked"
+    assert second.startswith("Clears every rule; tightest ")
     code, out, _ = run("study", "fails.toml")
     assert code == 1
-    assert out.startswith("Over the plain: DOES NOT PASS\ndoes not clear, ")
+    assert re.match(r"Over the plain: FAILS, less than 0\.1 % chance of clearing, 90 % asked\n\d+\.\d m short ", out)
 
 
 def test_the_long_output_says_all_that_was_assumed(run):
@@ -205,7 +205,7 @@ def test_what_many_rasters_have_in_common_is_said_once(run, here):
 
 def test_a_survey_is_told_on_the_terminal(run, here):
     (here / "survey.toml").write_text(PASSING.replace("antenna_m = 40", "antenna_m = 40\nground_m = 97.5", 1))
-    assert "South: surveyed ground 97.50 m, -2.50 m above that of the terrain" in run("study", "survey.toml")[1]
+    assert "South: surveyed ground 97.50 m, −2.50 m above that of the terrain" in run("study", "survey.toml")[1]
 
 
 def test_a_rule_that_only_the_ground_beside_fails_says_so(run, here):
@@ -220,13 +220,15 @@ def test_a_rule_that_only_the_ground_beside_fails_says_so(run, here):
     code, out, _ = run("study", "wall.toml")
     assert code == 1
     place = r"(9|10)\.\d\d km, \d\d m right"
-    assert re.search(rf"0\.7 F1 at k = 1\.333 +FAIL +-\d+\.\d  {place}", out)  # in the table of rules
+    assert re.search(rf"0\.7 F1 at k = 4/3 +FAIL +−\d+\.\d  {place}", out)  # in the table of rules
     assert re.search(rf"\n{place} +\d+\.\d +0\.0 ", out)  # among the tight places
 
 
 def test_quiet_prints_the_verdict_only(run):
     _, out, err = run("study", "hop.toml", "--quiet")
-    assert len(out.splitlines()) == 2
+    assert len(out.splitlines()) == 3
+    assert out.splitlines()[2].startswith("Warning: the finest terrain has cells of 129 m")
+    assert "more than 99.9 % chance of clearing" in out
     assert err == ""
 
 
@@ -303,7 +305,7 @@ def test_a_real_terminal_is_measured(here):
                 text += piece
         assert running.wait(timeout=60) == 0
     os.close(main_end)
-    assert b"\x1b[1;32mOver the plain: PASSES\x1b[0m" in text
+    assert b"\x1b[1;32mOver the plain: PASSES, more than 99.9 %" in text
     lines = re.sub(r"\x1b\[[\d;]*m", "", text.decode()).splitlines()
     assert 50 < max(len(line) for line in lines) <= 60
 
@@ -338,7 +340,7 @@ def test_json_to_a_file_leaves_the_terminal_its_verdict(run, here):
     assert code == 0
     assert out.startswith("Over the plain: PASSES")
     document = json.loads((here / "out.json").read_text(encoding="utf-8"))
-    assert document["verdict"]["passes"] is True
+    assert document["verdict"]["outcome"] == "passes"
     assert document["provenance"]["hop_file"] == "hop.toml"
 
 
@@ -408,7 +410,7 @@ def test_heights_that_cannot_be_had_end_with_1_and_say_what_would_do(run, here):
     (here / "low.toml").write_text(PASSING.replace("highest_m = 60", "highest_m = 9"))
     code, out, err = run("heights", "low.toml", "--write", "raised.toml")
     assert code == 1
-    assert "no pair clears: at the highest there is, A 9.00 m and B 9.00 m" in out
+    assert "no pair clears: at the highest there is, A 9.0 m and B 9.0 m" in out
     assert "Any one of these would do" in out
     assert not (here / "raised.toml").exists()
     assert err == "raised.toml: not written, since no pair of heights does all that is asked\n"
@@ -441,7 +443,8 @@ def test_a_study_says_by_which_edges_a_loss_came_about(run):
     document = json.loads(run("study", "fails.toml", "--json", "-")[1])
     for loss in document["diffraction"]:
         places = [f"{edge['distance_m'] / 1000:.2f}" for edge in loss["edges"] if edge["loss_db"] is not None]
-        line = f"Diffraction at k = {loss['k']:.3f}: {loss['loss_db']:.1f} dB by {loss['method']}"
+        k = {4 / 3: "4/3", 2 / 3: "2/3"}[loss["k"]]
+        line = f"Diffraction at k = {k}: {loss['loss_db']:.1f} dB by {loss['method']}"
         assert f"{line}, edge at {' '.join(places)} km" in out
 
 
@@ -818,7 +821,7 @@ def process(*words, **options):
 def test_a_process_prints_one_document(here):
     done = process("study", "fails.toml", "--json", "-", env={"PYTHONIOENCODING": "latin-1"})
     assert (done.returncode, done.stderr) == (1, b"")
-    assert json.loads(done.stdout.decode("utf-8"))["verdict"]["passes"] is False
+    assert json.loads(done.stdout.decode("utf-8"))["verdict"]["outcome"] == "fails"
 
 
 def test_a_process_ends_with_one_line_and_code_2(here):

@@ -123,11 +123,13 @@ def test_a_tower_too_short_for_the_spacing_is_said_to_be():
     """Positions of 20 to 28 m hold no two that are 10 m apart."""
     short = TowerChoice(lowest_m=20, highest_m=28)
     found = cheapest(HILL, TowerChoice(), short, spacing_m=10)
-    assert found.reason == "no pair: tower B offers no two positions 10 m apart for the diversity pair, 20 to 28 m"
+    assert str(found.reason) == (
+        "no pair: tower B offers no two positions 10.0 m apart for the diversity pair, 20.0 m to 28.0 m"
+    )
     assert not found.taken_to_blame
     taken = cheapest(HILL, TowerChoice(highest_m=90), TowerChoice(taken_m=(75,), taken_clearance_m=70), spacing_m=10)
-    assert taken.reason == (
-        "no pair: every position of tower B is taken, or too close to a taken one, or the one 10 m below it is"
+    assert str(taken.reason) == (
+        "no pair: every position of tower B is taken, or too close to a taken one, or the one 10.0 m below it is"
     )
     assert taken.taken_to_blame
 
@@ -152,9 +154,8 @@ def test_taken_positions_push_the_antenna_up_or_block_the_tower():
     blocked = cheapest(HILL, TowerChoice(highest_m=68, taken_m=(67.5,), taken_clearance_m=1.5), fixed)
     assert blocked.taken_to_blame
     assert blocked.best_a_m == 66
-    assert blocked.remedies[-1] == "free taken positions: the towers are high enough without them"
     full = cheapest(HILL, TowerChoice(highest_m=3, taken_m=(2,), taken_clearance_m=5), fixed)
-    assert full.reason == "no pair: every position of tower A is taken, or too close to a taken one"
+    assert str(full.reason) == "no pair: every position of tower A is taken, or too close to a taken one"
     assert math.isnan(full.best_a_m)
     assert not full.taken_to_blame
 
@@ -162,15 +163,15 @@ def test_taken_positions_push_the_antenna_up_or_block_the_tower():
 def test_no_pair_says_what_would_have_to_change():
     """At 40 and 40 m the ray is at 140·0.6 + 160·0.4 = 148 m over the crest of 160 m: 12 m short."""
     found = cheapest(HILL, TowerChoice(highest_m=40), TowerChoice(highest_m=40))
-    assert found.reason == (
-        "no pair clears: at the highest there is, A 40.00 m and B 40.00 m, the ray is still 12.00 m short at 4.000 km"
+    assert str(found.reason) == (
+        "no pair clears: at the highest there is, A 40.0 m and B 40.0 m, the ray is still 12.0 m short 4.00 km from A"
     )
-    assert found.remedies == (
-        "lower what stands at 4.000 km by 12.00 m",
-        "let antenna A stand at 60.00 m or higher",
-        "let antenna B stand at 70.00 m or higher",
-        "let both antennas stand 12.00 m higher",
+    assert found.reason.text(feet=True).endswith(
+        "A 131.2 ft and B 131.2 ft, the ray is still 39.4 ft short 2.49 mi from A"
     )
+    assert [(place.distance_m, place.by_m) for place in found.lower] == [(4e3, pytest.approx(12.0))]
+    ways = (found.raise_a_to_m, found.raise_b_to_m, found.raise_both_by_m)
+    assert ways == pytest.approx((60.0, 70.0, 12.0))
     assert found.proven
 
 
@@ -179,7 +180,6 @@ def test_many_obstacles_are_all_listed_and_the_tallest_named():
     region = clearing_region(np.arange(17) * 1e3, [*crests, 0.0], 0, 0)
     found = cheapest(region, TowerChoice(highest_m=20), TowerChoice(highest_m=20))
     assert [place.by_m for place in found.lower] == [55.0, 53.0, 51.0, 49.0, 47.0, 45.0, 43.0, 41.0]
-    assert found.remedies[0].endswith("at 7.000 km by 47.00 m, and 3 more")
 
 
 def test_no_height_of_a_helps_an_antenna_b_in_its_own_cover():
@@ -190,11 +190,11 @@ def test_no_height_of_a_helps_an_antenna_b_in_its_own_cover():
 
 def test_a_fixed_antenna_below_its_own_cover_has_no_partner():
     found = least_other(HILL, fixed_b_m=9.0)
-    assert found.reason == (
-        "no antenna A helps: antenna B at 9.00 m stands 1.00 m too low at its own site, where 10.00 m are needed"
+    assert str(found.reason) == (
+        "no antenna A helps: antenna B at 9.0 m stands 1.0 m too low at its own site, where 10.0 m are needed"
     )
     assert found.raise_b_to_m == pytest.approx(10.0)
-    assert found.remedies[0] == "lower what stands at 10.000 km by 1.00 m"
+    assert [(place.distance_m, place.by_m) for place in found.lower] == [(10e3, pytest.approx(1.0))]
 
 
 def test_least_other_by_hand():

@@ -19,6 +19,8 @@ from hypothesis import strategies as st
 from scipy.ndimage import gaussian_filter
 
 from profiler.climate import lookup
+from profiler.document import point_table, to_document
+from profiler.document.heights_document import heights_document
 from profiler.errors import DatumError, InputError, MissingGroundError
 from profiler.geometry import ROUNDING_M
 from profiler.models import (
@@ -37,8 +39,9 @@ from profiler.models import (
     TerrainChoice,
     TowerChoice,
 )
-from profiler.plan import heights_document, plan_heights
-from profiler.study import open_hop_terrain, point_table, run_study, to_document
+from profiler.plan import plan_heights
+from profiler.study import open_hop_terrain, run_study
+from profiler.words import METRES, Scale, headline
 
 CELL = 1 / 3600
 ROWS, COLUMNS = 720, 61
@@ -147,9 +150,9 @@ def test_flat_ground_is_the_closed_form(land):
         assert study.profile.distance_m[check.critical] == pytest.approx(length_km * 500, abs=1.0)
         assert result.passes
         assert result.corridor.passes
-    assert study.verdict.passes
-    assert study.verdict.headline == "clears, 10.0 m to spare 10.00 km from south (rule 1 F1 at k = 1.33)"
-    assert study.verdict.headline_feet.startswith("clears, 32.7 ft to spare 6.22 mi from south")
+    assert study.verdict.outcome == "passes"
+    assert headline(study, METRES) == "Clears every rule; tightest 10.00 km from A: 10.0 m to spare (1.0 F1 at k = 4/3)"
+    assert headline(study, Scale(feet=True)).endswith("tightest 6.22 mi from A: 32.7 ft to spare (1.0 F1 at k = 4/3)")
 
 
 def test_the_path_is_the_meridian(land):
@@ -182,7 +185,7 @@ def test_a_sharp_ridge_is_a_knife_edge(land):
     # Rec. ITU-R P.526-15 §4.1, equation (31)
     assert loss.loss_db == pytest.approx(6.9 + 20 * math.log10(math.sqrt((nu - 0.1) ** 2 + 1) + nu - 0.1), abs=0.01)
     assert d1 == pytest.approx((46.0 - LATITUDE[MID_ROW]) * -111147, abs=1.5 * CELL_NS_M)
-    assert not study.verdict.passes
+    assert study.verdict.outcome == "fails"
     assert not check.line_of_sight
     assert study.budget.a_to_b.diffraction_db == loss.loss_db
 
@@ -290,7 +293,7 @@ def test_highest_of_the_cells_is_never_lower(land):
     highest, bilinear = run_study(with_terrain(hop, method="highest")), run_study(hop)
     x, z = bilinear.profile.distance_m, bilinear.profile.ground_m
     assert np.all(np.interp(x, highest.profile.distance_m, highest.profile.ground_m) >= z - 0.01)
-    assert any(each.startswith("ground between cell centres: highest") for each in highest.assumptions)
+    assert any(each.startswith("ground between cell centres: highest") for each in map(str, highest.assumptions))
 
 
 # Where the ground comes from ------------------------------------------------------------------------------------------
@@ -343,8 +346,8 @@ def test_missing_ground_is_filled_when_the_hop_says_so_and_marked(land):
     line = np.interp(x[filled], x[[first - 1, last + 1]], z[[first - 1, last + 1]])
     assert z[filled] == pytest.approx(line, abs=1e-9)
     assert study.terrain.filled_points == filled.sum()
-    assert any("interpolated along the path" in note for note in study.assumptions)
-    assert any("beside the path" in warning and "not checked" in warning for warning in study.warnings)
+    assert any("interpolated along the path" in note for note in map(str, study.assumptions))
+    assert any("beside the path" in warning and "not checked" in warning for warning in map(str, study.warnings))
 
 
 def test_a_void_under_a_site_cannot_be_filled(land):
@@ -382,7 +385,7 @@ def test_two_vertical_datums_on_a_path_stop_the_study_unless_allowed(land):
         run_study(hop)
     study = run_study(with_terrain(hop, missing="interpolate", allow_mixed_datums=True))
     assert study.terrain.vertical_datum is None
-    assert any("mixed, as allowed" in note for note in study.assumptions)
+    assert any("mixed, as allowed" in note for note in map(str, study.assumptions))
 
 
 def test_another_datum_beside_the_path_stops_the_study_unless_allowed(land):
@@ -400,7 +403,7 @@ def test_another_datum_beside_the_path_stops_the_study_unless_allowed(land):
     study = run_study(with_terrain(hop, allow_mixed_datums=True))
     assert study.terrain.vertical_datum == "EGM96 geoid"  # the path's own
     assert [use.info.path.name for use in study.terrain.sources] == ["on.tif"]
-    assert any("mixed, as allowed: EGM96 geoid" in note for note in study.assumptions)
+    assert any("mixed, as allowed: EGM96 geoid" in note for note in map(str, study.assumptions))
 
 
 def test_another_datum_beside_the_path_does_not_stop_the_view_from_above(land):
@@ -425,14 +428,14 @@ def test_the_finest_raster_wins_and_the_shares_are_told(land, write_raster):
 def test_a_raster_in_feet_becomes_metres_and_says_so(land):
     study = run_study(hop_over(land(1000.0, unit="ft")))
     assert study.profile.ground_m == pytest.approx(np.full(study.line.points, 304.8))
-    assert any("ft" in note and "ground.tif" in note for note in study.assumptions)
+    assert any("ft" in note and "ground.tif" in note for note in map(str, study.assumptions))
 
 
 def test_a_short_hop_over_coarse_cells_has_points_enough(write_raster):
     path = write_raster("coarse.tif", np.full((6, 6), 10.0), north_up(8.97, 46.03, 0.01), "EPSG:4326")
     study = run_study(hop_over(path, site_b=Site("north", 9.0, 46.02, 30.0)))
     assert np.diff(study.profile.distance_m).max() <= study.line.distance_m / 200 + 0.01
-    assert study.verdict.passes
+    assert study.verdict.outcome == "passes"
 
 
 def test_a_spacing_too_wide_for_the_path_names_its_field(land):
@@ -494,7 +497,7 @@ def test_an_obstacle_counts_where_it_stands(land):
     edges = study.profile.distance_m[[under[0] - 1, under[0], under[-1], under[-1] + 1]]
     assert edges == pytest.approx([8000, 8000, 8005, 8005], abs=0.00051)
     assert all(result.check.critical == under[-1] for result in study.rules)
-    assert not study.verdict.passes
+    assert study.verdict.outcome == "fails"
     with pytest.raises(InputError, match=r"obstacle far mast: to_m = 30000: must lie within the 200\d\d m path"):
         run_study(hop_over(land(), cover=CoverChoice(obstacles=(Obstacle("far mast", 29990.0, 30000.0, 5.0),))))
 
@@ -529,7 +532,7 @@ def test_a_wall_beside_the_path_fails_the_rule_and_names_the_side(land, side, na
     assert not corridor.passes
     assert not result.passes
     assert corridor.side == name
-    assert f"m {name} of the path" in study.verdict.headline
+    assert f"m {name} of the path" in headline(study, METRES)
     # by hand: the wall's flank rises over one cell; between the points across it is taken as straight
     row = corridor.critical
     columns_m, surface_m = study.corridor.offset_m[row], study.corridor.surface_m[row]
@@ -578,7 +581,7 @@ def test_ground_that_ends_beside_the_path_is_told(land):
     heights[:, 32:] = -9999
     study = run_study(hop_over(land(heights, nodata=-9999), frequency_hz=0.3e9))
     assert study.rules[0].corridor.need.missing_share > 0.1
-    assert any("not checked" in warning for warning in study.warnings)
+    assert any("not checked" in warning for warning in map(str, study.warnings))
 
 
 # Radio and availability -----------------------------------------------------------------------------------------------
@@ -595,7 +598,7 @@ def test_an_objective_without_a_radio_is_not_called_met(land):
     study = run_study(hop_over(land(), availability=CLIMATE))
     assert study.outage.availability is None
     assert study.verdict.meets_objective is None
-    assert any("objective was not judged" in warning for warning in study.warnings)
+    assert any("objective was not judged" in warning for warning in map(str, study.warnings))
 
 
 def test_the_lines_of_the_budget_add_up_both_ways(land):
@@ -642,14 +645,16 @@ def test_statistics_that_end_above_the_low_k_do_not_hide_that_it_cuts_the_hop_of
     received_dbm = run_study(hop).budget.b_to_a.received_dbm
     study = run_study(replace(hop, radio=with_threshold(received_dbm - 1.0)))
     assert (study.outage.availability.low_k_blocks, study.verdict.meets_objective) == (True, None)
-    assert not study.verdict.passes
-    assert sum("low k of the rules, 0.6667, takes" in warning for warning in study.warnings) == 1
+    assert study.verdict.outcome == "fails"
+    assert sum("low k of the rules, 0.6667, takes" in warning for warning in map(str, study.warnings)) == 1
 
 
 def test_multipath_over_a_path_blocked_at_the_median_k_is_warned_of(land):
     def warned(height_m):
         study = run_study(hop_over(land(ridge(height_m)), radio=RADIO, availability=CLIMATE))
-        return study.median_diffraction.loss_db, [line for line in study.warnings if "clear of the ground" in line]
+        return study.median_diffraction.loss_db, [
+            line for line in map(str, study.warnings) if "clear of the ground" in line
+        ]
 
     assert warned(0.0) == (pytest.approx(0.0, abs=1.0), [])
     loss_db, [line] = warned(60.0)
@@ -661,9 +666,9 @@ def test_too_little_terrain_for_the_roughness_leaves_out_the_outage_and_nothing_
     climate = replace(CLIMATE, multipath_method="p530-17", objective=objective)
     study = run_study(hop_over(land(), radio=RADIO, availability=climate))
     assert study.outage.availability is None
-    assert (study.verdict.clears, study.verdict.passes) == (True, not study.hop.has_objective)
+    assert (study.verdict.clears, study.verdict.outcome) == (True, "not_sure" if study.hop.has_objective else "passes")
     assert study.budget.a_to_b.fade_margin_db > 0
-    [line] = [warning for warning in study.warnings if "availability was not predicted" in warning]
+    [line] = [warning for warning in map(str, study.warnings) if "availability was not predicted" in warning]
     assert ("objective not judged" in line) == study.hop.has_objective
     assert "110 km x 110 km box" in line
     assert line.endswith("give terrain_roughness_m, more terrain, or choose p530-17-quick")
@@ -683,7 +688,7 @@ def test_the_maps_give_the_median_k_where_the_hop_does_not(land):
     assert study.median_diffraction.k == to_document(study)["hop"]["median_k"] == study.climate.median_k
     assert study.budget.a_to_b.diffraction_db == study.median_diffraction.loss_db
     assert [result.check.rule.k for result in study.rules] == [4 / 3, 2 / 3]
-    [line] = [assumption for assumption in study.assumptions if assumption.startswith("median k")]
+    [line] = [assumption for assumption in map(str, study.assumptions) if assumption.startswith("median k")]
     assert "P.453-13" in line
     assert "4/3" not in line
     used = {each.name: each for each in study.outage.availability.inputs}
@@ -693,7 +698,7 @@ def test_the_maps_give_the_median_k_where_the_hop_does_not(land):
     assert f"{study.climate.median_k:.4g} at 50 %" in used["k_percentiles"].value
     stated = run_study(replace(hop, median_k=1.2))
     assert stated.median_diffraction.k == 1.2
-    assert not any(assumption.startswith("median k") for assumption in stated.assumptions)
+    assert not any(assumption.startswith("median k") for assumption in map(str, stated.assumptions))
 
 
 def test_without_maps_a_median_k_that_is_not_given_is_four_thirds_and_said(land):
@@ -723,8 +728,8 @@ def test_a_missed_objective_fails_a_clear_hop(land):
     study = run_study(hop_over(land(), radio=RADIO, availability=climate))
     assert study.verdict.clears
     assert study.verdict.meets_objective is False
-    assert not study.verdict.passes
-    assert study.verdict.headline.endswith("misses the availability objective")
+    assert study.verdict.outcome == "fails"
+    assert headline(study, METRES).endswith("misses the availability objective")
 
 
 def test_roughness_is_the_spread_of_the_raster_in_the_box(write_raster):
@@ -966,7 +971,7 @@ def test_highest_cells_lift_the_path_but_not_the_sites(land):
     bilinear, highest = run_study(hop), run_study(with_terrain(hop, method="highest"))
     assert highest.profile.ground_m[[0, -1]].tolist() == bilinear.profile.ground_m[[0, -1]].tolist()
     assert (highest.profile.ground_m[1:-1] >= bilinear.profile.ground_m[1:-1]).all()
-    assert any("bilinear, as the highest cell around would lift" in line for line in highest.assumptions)
+    assert any("bilinear, as the highest cell around would lift" in line for line in map(str, highest.assumptions))
 
 
 def test_an_objective_that_cannot_be_judged_is_not_passed(land):
@@ -974,8 +979,8 @@ def test_an_objective_that_cannot_be_judged_is_not_passed(land):
     study = run_study(hop_over(land(), radio=mute, availability=CLIMATE, rules=(Rule(4 / 3, 0.0),)))
     assert study.verdict.clears
     assert study.verdict.meets_objective is None
-    assert not study.verdict.passes
-    assert "cannot be held against the availability objective" in study.verdict.headline
+    assert study.verdict.outcome == "not_sure"
+    assert "nobody can decide the availability objective" in headline(study, METRES)
 
 
 def test_ground_beside_the_path_counts_in_the_confidence(land):
@@ -998,8 +1003,8 @@ def test_a_link_without_margin_does_not_pass(land):
     study = run_study(hop_over(land(), radio=weak, rules=(Rule(4 / 3, 0.0),)))
     assert study.verdict.clears
     assert study.verdict.has_margin is False
-    assert not study.verdict.passes
-    assert "no fade margin (-" in study.verdict.headline
+    assert study.verdict.outcome == "fails"
+    assert "no fade margin (−" in headline(study, METRES)
 
 
 def test_invented_coarse_and_doubtful_ground_is_warned_of(land, write_raster):
@@ -1007,14 +1012,17 @@ def test_invented_coarse_and_doubtful_ground_is_warned_of(land, write_raster):
     heights[MID_ROW - 20 : MID_ROW + 20] = -9999
     holed = land(heights, "holed.tif", nodata=-9999)
     filled = run_study(with_terrain(hop_over(holed, rules=(Rule(4 / 3, 1.0),)), missing="interpolate"))
-    assert any("ground is interpolated at" in line for line in filled.warnings)
+    assert any("ground is interpolated at" in line for line in map(str, filled.warnings))
     assert filled.rules[0].critical.filled
-    assert "where the ground is interpolated" in filled.verdict.headline
+    assert "where the ground is interpolated" in headline(filled, METRES)
     hop = hop_over(land())
     surveyed = replace(hop, site_a=replace(hop.site_a, surveyed_ground_m=GROUND_M - 40.0))
-    assert any("surveyed ground at south is 40.0 m below the terrain" in line for line in run_study(surveyed).warnings)
+    assert any(
+        "surveyed ground at south is 40.0 m below the terrain" in line
+        for line in map(str, run_study(surveyed).warnings)
+    )
     coarse = write_raster("coarse.tif", np.full((60, 60), 100.0), north_up(8.7, 46.4, 0.01), "EPSG:4326")
-    assert any("hills narrower than that" in line for line in run_study(hop_over(coarse)).warnings)
+    assert any("hills narrower than that" in line for line in map(str, run_study(hop_over(coarse)).warnings))
 
 
 def test_a_survey_stands_for_missing_ground_at_its_site(land):

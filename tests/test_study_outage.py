@@ -10,6 +10,7 @@ from profiler.availability import PathFacts, outage_model, predict
 from profiler.availability.diversity import improvement_p530
 from profiler.availability.multipath import fade_percent, geoclimatic_factor_17_quick, occurrence_17_quick
 from profiler.availability.vigants import improvement_vigants, occurrence_vigants
+from profiler.document import to_document
 from profiler.models import (
     AvailabilityChoice,
     DiversityChoice,
@@ -23,7 +24,7 @@ from profiler.models import (
     TerrainChoice,
 )
 from profiler.plan import plan_heights
-from profiler.study import run_study, to_document
+from profiler.study import run_study
 
 CELL = 1 / 1200
 ROWS, COLUMNS = 420, 15
@@ -90,7 +91,7 @@ def test_the_verdict_needs_the_objective_of_every_mode_that_has_one(land, of_hop
     study = run_study(hop)
     assert hop.has_objective == (meets is not None)
     assert (study.outage.meets, study.outage.missed, study.outage.undecided) == (meets, missed, ())
-    assert study.verdict.passes == (meets is not False)
+    assert study.verdict.outcome == ("fails" if meets is False else "passes")
     rows = to_document(study)["availability"]["modes"]
     assert [row["mode"] for row in rows] == ["256-QAM", "QPSK"]
     assert [row["asked"] for row in rows] == [bool(of_hop or of_qam), bool(of_qpsk)]
@@ -110,13 +111,13 @@ def test_a_mode_whose_threshold_is_not_known_leaves_its_objective_undecided(land
     silent = RadioMode("4096-QAM", objective=Objective(year_percent=1.0))
     study = run_study(hop_over(land(), radio=radio(mode("QPSK", -86.0, year_percent=1.0), silent)))
     assert (study.outage.meets, study.outage.missed, study.outage.undecided) == (None, (), ("4096-QAM",))
-    assert not study.verdict.passes
+    assert study.verdict.outcome == "not_sure"
     assert "mode 4096-QAM: its objective was not judged, as no threshold is known" in study.warnings
 
 
 def test_an_objective_of_a_mode_without_a_climate_is_not_called_met(land):
     study = run_study(hop_over(land(), availability=None, radio=radio(mode("QPSK", -86.0, year_percent=1.0))))
-    assert (study.outage.meets, study.outage.undecided, study.verdict.passes) == (None, ("QPSK",), False)
+    assert (study.outage.meets, study.outage.undecided, study.verdict.outcome) == (None, ("QPSK",), "not_sure")
     assert any("gives no [availability]" in line for line in study.warnings)
 
 

@@ -116,7 +116,7 @@ def test_a_path_that_clears_by_hand(degrees):
     study = run_study(rim_to_rim(degrees))
     assert study.line.distance_m == pytest.approx(42_340, abs=5)
     median, low = study.rules
-    assert study.verdict.passes
+    assert study.verdict.outcome == "passes"
     assert study.governing is low
     for result, bulge_m, surplus_m in ((median, 24.2, 19.6), (low, 48.4, 9.2)):
         check, at = result.check, result.check.critical
@@ -140,7 +140,7 @@ def test_a_path_that_fails_by_hand(degrees):
     assert ground([(37.20, -113.09), (37.22, -112.97)]) == pytest.approx([1328, 1361], abs=0.5)
     study = run_study(through_the_mountain(degrees))
     check = study.rules[0].check
-    assert not study.verdict.passes
+    assert study.verdict.outcome == "fails"
     assert not check.line_of_sight
     assert study.profile.distance_m[check.critical] == pytest.approx(6_300, abs=100)
     assert study.profile.ground_m[check.critical] == pytest.approx(2352, abs=10)
@@ -171,8 +171,8 @@ def test_the_same_ground_in_two_systems_differs_by_the_warp_and_no_more(degrees,
     assert np.abs(warp_m).max() == pytest.approx(91, abs=0.5)
     for first, second in zip(one.rules, other.rules, strict=True):
         assert first.passes == second.passes
-    assert other.verdict.passes
-    assert not run_study(through_the_mountain(utm)).verdict.passes
+    assert other.verdict.outcome == "passes"
+    assert run_study(through_the_mountain(utm)).verdict.outcome == "fails"
 
 
 def test_land_cover_stands_where_its_raster_says(degrees, real_terrain):

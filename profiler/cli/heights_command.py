@@ -66,7 +66,8 @@ def command(
 
     Exit code 0: such a pair exists; 1: none does, and why is said; 2: the input is wrong.
     """
-    from profiler.plan import heights_document, plan_heights
+    from profiler.document.heights_document import heights_document
+    from profiler.plan import plan_heights
     from profiler.study import run_study
 
     hop = read_hop(**hop_given)

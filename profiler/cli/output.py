@@ -124,14 +124,14 @@ def tell(message: str, *, err: bool = False) -> None:
 
 
 def json_text(document: Any) -> str:
-    r"""One JSON document of whatever `profiler.study.plain` takes; what could steer a terminal is escaped.
+    r"""One JSON document of whatever `profiler.document.plain` takes; what could steer a terminal is escaped.
 
     Examples
     --------
     >>> print(json_text("\x1b\x9b \u202e \udcff \U000e0001 é"))
     "\u001b\u009b \u202e \udcff \udb40\udc01 é"
     """
-    from profiler.study import plain
+    from profiler.document import plain
 
     text = json.dumps(plain(document), indent=2, ensure_ascii=False, allow_nan=False)
     return re.sub(r"[^ -~\n]", lambda found: found[0] if printable(found[0]) == found[0] else _code(found[0]), text)

@@ -18,9 +18,9 @@ if TYPE_CHECKING:
     from rich.table import Table
 
     from profiler.budget import InverseAnswer, Way
-    from profiler.cli.screen import Scale
     from profiler.receiver import Line
     from profiler.study import Study
+    from profiler.words import Scale
 
 __all__ = ["command"]
 
@@ -122,7 +122,8 @@ def _answers(
 def _show(answers: dict[Way, dict[str, InverseAnswer]], *, feet: bool, quiet: bool, color: bool) -> None:
     """Print the answers, then the lines that each stands on."""
     from profiler.budget import way_name
-    from profiler.cli.screen import Scale, console, say, show_notes, show_table
+    from profiler.cli.screen import console, say, show_notes, show_table
+    from profiler.words import Scale
 
     screen, scale = console(color=color), Scale(feet=feet)
     questions = {
@@ -151,8 +152,8 @@ def _value(answer: InverseAnswer, scale: Scale) -> str:
     if answer.unit != "m":
         return f"{answer.value:.2f} {answer.unit}"
     if answer.value >= 1000.0:
-        return f"{scale.distance(answer.value)} {scale.distance_unit}"
-    return f"{scale.height(answer.value, 2)} {scale.height_unit}"
+        return f"{scale.distance_number(answer.value)} {scale.distance_unit}"
+    return f"{scale.height_number(answer.value, 2)} {scale.height_unit}"
 
 
 def _alike(found: dict[str, InverseAnswer]) -> list[dict[str, InverseAnswer]]:

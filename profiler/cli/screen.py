@@ -12,7 +12,7 @@ if TYPE_CHECKING:
     from rich.console import Console
     from rich.table import Table
 
-__all__ = ["Scale", "compact_table", "console", "say", "show_notes", "show_table"]
+__all__ = ["compact_table", "console", "say", "show_notes", "show_table"]
 
 _FILE_WIDTH = 110
 _NARROWEST, _WIDEST = 20, 1000
@@ -20,28 +20,6 @@ _NARROWEST, _WIDEST = 20, 1000
 
 _GAP = 2
 """Columns of space between two columns of a table."""
-
-
-class Scale:
-    """Heights and distances as the reader wants them: metres and kilometres, or feet and miles."""
-
-    def __init__(self, *, feet: bool) -> None:
-        from profiler.units import FOOT_M, STATUTE_MILE_M  # loads numpy, which not every command needs
-
-        self.height_unit, self.distance_unit = ("ft", "mi") if feet else ("m", "km")
-        self._height_m, self._distance_m = (FOOT_M, STATUTE_MILE_M) if feet else (1.0, 1000.0)
-
-    def height(self, height_m: float, digits: int = 1) -> str:
-        """Give a height without its unit."""
-        return _decimal(height_m / self._height_m, digits)
-
-    def distance(self, distance_m: float, digits: int = 2) -> str:
-        """Give a distance without its unit."""
-        return _decimal(distance_m / self._distance_m, digits)
-
-
-def _decimal(value: float, digits: int) -> str:
-    return f"{round(value, digits) + 0.0:.{digits}f}"  # no -0.0
 
 
 def console(*, color: bool) -> Console:

@@ -6,7 +6,9 @@ import math
 from typing import TYPE_CHECKING
 
 from profiler.cli.lines import lines_table
-from profiler.cli.screen import Scale, compact_table, console, say, show_notes, show_table
+from profiler.cli.screen import compact_table, console, say, show_notes, show_table
+from profiler.remarks import k_text
+from profiler.words import Scale, headline, steps_words, verdict_words
 
 if TYPE_CHECKING:
     from rich.console import Console
@@ -26,12 +28,14 @@ _MOST_NAMED = 3
 def show_study(study: Study, *, feet: bool, quiet: bool, color: bool) -> None:
     """Print a study."""
     screen, scale = console(color=color), Scale(feet=feet)
-    verdict = study.verdict
-    word, style = ("PASSES", "bold green") if verdict.passes else ("DOES NOT PASS", "bold red")
-    say(screen, f"{study.hop.name}: {word}", style)
-    say(screen, verdict.headline_feet if feet else verdict.headline)
+    styles = {"passes": "bold green", "not_sure": "bold yellow", "fails": "bold red"}
+    say(screen, f"{study.hop.name}: {verdict_words(study)}", styles[study.verdict.outcome])
+    say(screen, f"{headline(study, scale)}.")
     if quiet:
+        for warning in study.warnings[:1]:
+            say(screen, f"Warning: {scale.text(warning)}")
         return
+    say(screen, steps_words(study, scale))
     _show_sites(screen, study, scale)
     _show_rules(screen, study, scale)
     _show_places(screen, study, scale)
@@ -43,10 +47,10 @@ def show_study(study: Study, *, feet: bool, quiet: bool, color: bool) -> None:
         _show_availability(screen, study)
     if study.confidence is not None:
         _show_confidence(screen, study, scale)
-    show_notes(screen, "Warnings", study.warnings, "yellow")
+    show_notes(screen, "Warnings", tuple(map(scale.text, study.warnings)), "yellow")
     show_notes(screen, "Numbers used", _numbers_used(study, scale))
     doubt = () if study.confidence is None else study.confidence.method
-    show_notes(screen, "Assumed", (*study.assumptions, *doubt))
+    show_notes(screen, "Assumed", (*map(scale.text, study.assumptions), *doubt))
     caution = (
         "\nA screening result, not a certificate: heights, clearances and exposure are for licensed practice and local"
         " codes to confirm."
@@ -58,8 +62,8 @@ def _numbers_used(study: Study, scale: Scale) -> tuple[str, ...]:
     """Say where the ground is from and by how much a survey differs, and every climate number with its source."""
     terrain, unit = study.terrain, scale.height_unit
     surveys = [
-        f"{site.name}: surveyed ground {scale.height(site.surveyed_ground_m or 0.0, 2)} {unit},"
-        f" {scale.height(difference, 2)} {unit} above that of the terrain"
+        f"{site.name}: surveyed ground {scale.height_number(site.surveyed_ground_m or 0.0, 2)} {unit},"
+        f" {scale.height_number(difference, 2)} {unit} above that of the terrain"
         for site, difference in (
             (study.hop.site_a, terrain.surveyed_difference_a_m),
             (study.hop.site_b, terrain.surveyed_difference_b_m),
@@ -87,14 +91,14 @@ def _show_sites(screen: Console, study: Study, scale: Scale) -> None:
         ("B", hop.site_b, study.centre_b_m, line.azimuth_b_deg),
     ):
         place = (f"{site.latitude:.6f}", f"{site.longitude:.6f}")
-        shown = (scale.height(height_m) for height_m in (centre_m - site.antenna_m, site.antenna_m, centre_m))
+        shown = (scale.height_number(height_m) for height_m in (centre_m - site.antenna_m, site.antenna_m, centre_m))
         table.add_row(f"{letter}  {site.name}", *place, *shown, f"{azimuth_deg:.2f}°")
     say(screen, "")
     show_table(screen, table)
     say(
         screen,
-        f"{scale.distance(line.distance_m, 3)} {scale.distance_unit}, {hop.frequency_hz / 1e9:g} GHz,"
-        f" {hop.polarization} polarization, {line.points} points at most {scale.height(study.terrain.spacing_m)} {unit}"
+        f"{scale.distance_number(line.distance_m, 3)} {scale.distance_unit}, {hop.frequency_hz / 1e9:g} GHz,"
+        f" {hop.polarization} polarization, {line.points} points at most {scale.height_text(study.terrain.spacing_m)}"
         " apart; antennas above ground, centres above the datum of the ground",
     )
 
@@ -109,9 +113,9 @@ def _show_rules(screen: Console, study: Study, scale: Scale) -> None:
         table.add_row(
             _rule_name(result.check.rule, scale),
             "pass" if result.passes else "FAIL",
-            scale.height(place.surplus_m),
+            scale.height_number(place.surplus_m),
             _at(place, scale),
-            scale.height(place.f1_m),
+            scale.height_number(place.f1_m),
             "-" if math.isnan(place.ratio) else f"{place.ratio:.2f}",
             style="" if result.passes else "red",
         )
@@ -120,7 +124,7 @@ def _show_rules(screen: Console, study: Study, scale: Scale) -> None:
     for k, result in {result.check.rule.k: result for result in study.rules}.items():
         sight = "yes" if result.check.line_of_sight else "no"
         angles = (f"{angle_deg:+.3f}°" for angle_deg in (result.elevation_a_deg, result.elevation_b_deg))
-        by_k.add_row(f"{k:.3f}", sight, *angles, f"{losses[k]:.1f}")
+        by_k.add_row(f"{k_text(k)}", sight, *angles, f"{losses[k]:.1f}")
     for each in (table, by_k):
         say(screen, "")
         show_table(screen, each)
@@ -131,27 +135,27 @@ def _show_rules(screen: Console, study: Study, scale: Scale) -> None:
 def _edges(loss: DiffractionLoss, scale: Scale) -> str:
     """Say by which method and over which edges a diffraction loss came about."""
     charged, touched = (
-        [scale.distance(edge.distance_m) for edge in loss.edges if (edge.loss_db is None) == shape]
+        [scale.distance_number(edge.distance_m) for edge in loss.edges if (edge.loss_db is None) == shape]
         for shape in (False, True)
     )
     over = f", edge{'s' if len(charged) > 1 else ''} at {', '.join(charged)} {scale.distance_unit}" if charged else ""
     horizons = f" between horizons at {' and '.join(touched)} {scale.distance_unit}" if touched else ""
-    return f"Diffraction at k = {loss.k:.3f}: {loss.loss_db:.1f} dB by {loss.method}{over}{horizons}"
+    return f"Diffraction at k = {k_text(loss.k)}: {loss.loss_db:.1f} dB by {loss.method}{over}{horizons}"
 
 
 def _rule_name(rule: Rule, scale: Scale) -> str:
     """Give a rule's label, if it has one, and below it what it asks for."""
-    margin = f" + {scale.height(rule.margin_m)} {scale.height_unit}" if rule.margin_m else ""
-    asked = f"{rule.fresnel_fraction:g} F1{margin} at k = {rule.k:.3f}"
+    margin = f" + {scale.height_number(rule.margin_m)} {scale.height_unit}" if rule.margin_m else ""
+    asked = f"{rule.fresnel_fraction:g} F1{margin} at k = {k_text(rule.k)}"
     return f"{rule.label}\n{asked}" if rule.label else asked
 
 
 def _at(place: Place, scale: Scale) -> str:
     """Say how far along the path a place is, and how far to its side."""
-    along = f"{scale.distance(place.distance_m)} {scale.distance_unit}"
+    along = f"{scale.distance_number(place.distance_m)} {scale.distance_unit}"
     if not round(place.offset_m):
         return along
-    return f"{along}, {scale.height(abs(place.offset_m), 0)} {scale.height_unit} {place.side}"
+    return f"{along}, {scale.height_number(abs(place.offset_m), 0)} {scale.height_unit} {place.side}"
 
 
 def _show_places(screen: Console, study: Study, scale: Scale) -> None:
@@ -163,12 +167,12 @@ def _show_places(screen: Console, study: Study, scale: Scale) -> None:
         heights = (place.ground_m, place.cover_m, place.f1_m)
         held = (place.clearance_m, place.required_m, place.surplus_m)
         where = f"{_at(place, scale)}\n{place.latitude:.5f}, {place.longitude:.5f}"
-        table.add_row(where, *(scale.height(height_m) for height_m in (*heights, *held)))
+        table.add_row(where, *(scale.height_number(height_m) for height_m in (*heights, *held)))
     say(screen, f"\nTight places of rule {_rule_name(rule, scale).replace(chr(10), ', ')}", "bold")
     show_table(screen, table)
     for corridor in (result.corridor for result in study.rules):
         if corridor is not None:
-            width = f"{scale.height(corridor.half_width_m)} {unit} to each side"
+            width = f"{scale.height_number(corridor.half_width_m)} {unit} to each side"
             seen = corridor.need.missing_share
             unseen = f", {seen:.0%} of it without ground" if seen else ""
             say(screen, f"Checked across the path too: {width}{unseen}.")
@@ -184,11 +188,11 @@ def _show_reflections(screen: Console, study: Study, scale: Scale) -> None:
         for place in open_places[:3]:
             kind = "rough" if place.rough else "smooth enough to mirror"
             lines.append(
-                f"  k = {k:.3f}: {scale.distance(place.distance_m)} {scale.distance_unit}, grazing"
+                f"  k = {k_text(k)}: {scale.distance_number(place.distance_m)} {scale.distance_unit}, grazing"
                 f" {place.grazing_deg:.2f}°, {place.delay_s * 1e9:.2f} ns late, {kind}"
             )
         more = len(open_places) - 3
-        lines.append(f"  k = {k:.3f}: {hidden} screened" + (f", {more} more in view" if more > 0 else ""))
+        lines.append(f"  k = {k_text(k)}: {hidden} screened" + (f", {more} more in view" if more > 0 else ""))
     say(screen, "\nReflection points", "bold")
     say(screen, "\n".join(lines), hang=4)
 
@@ -285,13 +289,13 @@ def _show_confidence(screen: Console, study: Study, scale: Scale) -> None:
             _rule_name(doubt.rule, scale),
             f"{doubt.chance.value:.1%}",
             "-" if doubt.chance_with_k is None else f"{doubt.chance_with_k.value:.1%}",
-            *(scale.height(value) for value in (doubt.least_low_m, doubt.least_median_m, doubt.least_high_m)),
+            *(scale.height_number(value) for value in (doubt.least_low_m, doubt.least_median_m, doubt.least_high_m)),
             *(f"{share:.0%}" for share in (doubt.shares.terrain, doubt.shares.cover, doubt.shares.k)),
         )
     show_table(screen, table)
     _show_sure_heights(screen, found, scale)
     places = ", ".join(
-        f"{scale.distance(point.distance_m)} {scale.distance_unit} ({point.share_of_doubt:.0%} of the doubt)"
+        f"{scale.distance_number(point.distance_m)} {scale.distance_unit} ({point.share_of_doubt:.0%} of the doubt)"
         for point in found.survey
     )
     if places:
@@ -302,14 +306,16 @@ def _show_sure_heights(screen: Console, found: Confidence, scale: Scale) -> None
     """Print the antenna heights that are sure enough, by raising both or one."""
     for sure in found.sure:
         alone = [
-            f"{end} alone {scale.height(height)}"
+            f"{end} alone {scale.height_number(height)}"
             for end, height in (("A", sure.a_only_m), ("B", sure.b_only_m))
             if height is not None
         ]
-        change = f"{scale.height(abs(sure.raise_m))} {scale.height_unit} {'higher' if sure.raise_m > 0 else 'lower'}"
+        change = (
+            f"{scale.height_number(abs(sure.raise_m))} {scale.height_unit} {'higher' if sure.raise_m > 0 else 'lower'}"
+        )
         say(
             screen,
             f"{sure.chance:.0%} sure: both antennas {change}"
-            f" (A {scale.height(sure.equal_m[0])}, B {scale.height(sure.equal_m[1])})"
+            f" (A {scale.height_number(sure.equal_m[0])}, B {scale.height_number(sure.equal_m[1])})"
             + (f", or {', or '.join(alone)}" if alone else ""),
         )

@@ -5,8 +5,10 @@ from __future__ import annotations
 from collections.abc import Sequence
 from typing import TYPE_CHECKING
 
-from profiler.cli.screen import Scale, compact_table, console, say, show_notes, show_table
+from profiler.cli.screen import compact_table, console, say, show_notes, show_table
 from profiler.heights import Least, NoPair, round_up
+from profiler.remarks import chance_text, k_text
+from profiler.words import Scale, remedies_words
 
 if TYPE_CHECKING:
     from rich.console import Console
@@ -32,19 +34,19 @@ def show_heights(plan: HeightsPlan, *, feet: bool, quiet: bool, color: bool) -> 
         ("B", "A", site_b.antenna_m, plan.least_a),
         ("A", "B", site_a.antenna_m, plan.least_b),
     ):
-        text = _least(plan, found, scale, other) if isinstance(found, Least) else found.reason
-        beginning = f"Least {other} with {fixed} at {scale.height(height_m)} {scale.height_unit}"
+        text = _least(plan, found, scale, other) if isinstance(found, Least) else scale.text(found.reason)
+        beginning = f"Least {other} with {fixed} at {scale.height_number(height_m)} {scale.height_unit}"
         say(screen, f"{beginning}: {text}")
     _show_frontier(screen, plan, scale)
     if plan.for_loss is not None:
         asked = plan.study.hop.heights
-        title = f"Diffraction loss of {asked.loss_limit_db:g} dB at k = {asked.loss_k:.3f}"
+        title = f"Diffraction loss of {asked.loss_limit_db:g} dB at k = {k_text(asked.loss_k)}"
         _show_limit(screen, title, plan.for_loss, scale)
     if plan.for_objective is not None:
         _show_limit(screen, "Availability objective", plan.for_objective, scale)
     _show_diversity(screen, plan, scale)
     _show_sure(screen, plan, scale)
-    show_notes(screen, "Assumed", plan.study.assumptions)
+    show_notes(screen, "Assumed", tuple(map(scale.text, plan.study.assumptions)))
     say(
         screen,
         "\nA screening result: tower loading, lighting, aircraft notice and exposure are for licensed practice and"
@@ -58,29 +60,29 @@ def _rule(rules: Sequence[Rule], number: int, scale: Scale) -> str:
     if number < 0:
         return "site's own ground"
     rule = rules[number]
-    margin = f" + {scale.height(rule.margin_m)} {scale.height_unit}" if rule.margin_m else ""
+    margin = f" + {scale.height_number(rule.margin_m)} {scale.height_unit}" if rule.margin_m else ""
     lower = f", {rule.label}" if rule.label.startswith("lower antenna") else ""
-    return f"{rule.fresnel_fraction:g} F1{margin} at k = {rule.k:.3f}{lower}"
+    return f"{rule.fresnel_fraction:g} F1{margin} at k = {k_text(rule.k)}{lower}"
 
 
 def _show_answer(screen: Console, plan: HeightsPlan, scale: Scale) -> None:
     """Print the pair that meets everything, or why there is none and what would have to change."""
-    answer, name, unit = plan.answer, plan.study.hop.name, scale.height_unit
+    answer, name = plan.answer, plan.study.hop.name
     *most, last = answer.asked
     asked = f"{', '.join(most)} and {last}" if most else last
     if not isinstance(answer.pair, NoPair):
-        pair = f"A {scale.height(answer.pair.antenna_a_m)} {unit}, B {scale.height(answer.pair.antenna_b_m)} {unit}"
+        pair = f"A {scale.height_text(answer.pair.antenna_a_m)}, B {scale.height_text(answer.pair.antenna_b_m)}"
         text = f"{name}: {pair} above ground {asked}, cost {answer.pair.cost:g}"
         say(screen, text, style="bold green")
     else:
-        say(screen, f"{name}: {answer.pair.reason}", style="bold red")
+        say(screen, f"{name}: {scale.text(answer.pair.reason)}", style="bold red")
         if answer.pair.lower:
             worst = answer.pair.lower[0]
             text = f"In the way: {_where(plan.source(worst.point, worst.rule), scale)}, under"
             say(screen, f"{text} {_rule(plan.rules, worst.rule, scale)}")
-        show_notes(screen, "Any one of these would do", answer.pair.remedies)
+        show_notes(screen, "Any one of these would do", tuple(remedies_words(plan, answer.pair, scale)))
         if not isinstance(plan.cheapest, NoPair):
-            pair = f"A {scale.height(plan.cheapest.antenna_a_m)}, B {scale.height(plan.cheapest.antenna_b_m)} {unit}"
+            pair = f"A {scale.height_text(plan.cheapest.antenna_a_m)}, B {scale.height_text(plan.cheapest.antenna_b_m)}"
             text = f"Cheapest pair that {_third(answer.asked[0])}: {pair}, cost {plan.cheapest.cost:g}"
             say(screen, text)
     if answer.chance is not None:
@@ -89,7 +91,7 @@ def _show_answer(screen: Console, plan: HeightsPlan, scale: Scale) -> None:
     if answer.by_trial and not isinstance(answer.pair, NoPair):
         slack = _slack(answer.cheaper_by_at_most)
         say(screen, f"Found by trial of losses and outage: if height only helps those, {slack}.")
-    show_notes(screen, "Not judged", answer.unjudged, "yellow")
+    show_notes(screen, "Not judged", tuple(map(scale.text, answer.unjudged)), "yellow")
 
 
 def _third(words: str) -> str:
@@ -102,10 +104,10 @@ def _where(place: Source, scale: Scale) -> str:
     """Say where what asks for a height stands, and how high."""
     unit = scale.height_unit
     aside = f", {_offset(place, scale)} {unit} {place.side} of the path" if _aside(place) else ""
-    cover = f" + cover {scale.height(place.cover_m)}" if place.cover_m else ""
+    cover = f" + cover {scale.height_number(place.cover_m)}" if place.cover_m else ""
     return (
-        f"{scale.distance(place.distance_m)} {scale.distance_unit}{aside}"
-        f" ({place.latitude:.5f}, {place.longitude:.5f}; ground {scale.height(place.ground_m)}{cover} {unit})"
+        f"{scale.distance_number(place.distance_m)} {scale.distance_unit}{aside}"
+        f" ({place.latitude:.5f}, {place.longitude:.5f}; ground {scale.height_number(place.ground_m)}{cover} {unit})"
     )
 
 
@@ -115,7 +117,7 @@ def _aside(place: Source) -> bool:
 
 
 def _offset(place: Source, scale: Scale) -> str:
-    return scale.height(abs(place.offset_m))
+    return scale.height_number(abs(place.offset_m))
 
 
 def _least(plan: HeightsPlan, least: Least, scale: Scale, ends: str) -> str:
@@ -123,7 +125,7 @@ def _least(plan: HeightsPlan, least: Least, scale: Scale, ends: str) -> str:
     towers = {"A": plan.study.hop.heights.tower_a, "B": plan.study.hop.heights.tower_b}
     positions = ", ".join(f"{end} {_position(least.height_m, towers[end], plan.spacing_m, scale)}" for end in ends)
     return (
-        f"{scale.height(least.height_m, 2)} {scale.height_unit} ({positions}), for"
+        f"{scale.height_number(least.height_m, 2)} {scale.height_unit} ({positions}), for"
         f" {_where(plan.source(least.point, least.rule), scale)}, under {_rule(plan.rules, least.rule, scale)}"
     )
 
@@ -134,10 +136,10 @@ def _position(height_m: float | None, tower: TowerChoice, spacing_m: float, scal
         return "none alone"
     position_m = round_up(height_m, tower, spacing_m=spacing_m)
     if position_m is not None:
-        return f"at {scale.height(position_m)}"
+        return f"at {scale.height_number(position_m)}"
     if height_m > tower.highest_m:
-        return f"above the tower's {scale.height(tower.highest_m)} {scale.height_unit}"
-    return f"no free position from {scale.height(height_m)} {scale.height_unit} up"
+        return f"above the tower's {scale.height_number(tower.highest_m)} {scale.height_unit}"
+    return f"no free position from {scale.height_number(height_m)} {scale.height_unit} up"
 
 
 def _show_sheet(screen: Console, plan: HeightsPlan, scale: Scale) -> None:
@@ -153,12 +155,14 @@ def _show_sheet(screen: Console, plan: HeightsPlan, scale: Scale) -> None:
         antennas += [] if end.lower_m is None else [(f"{end.end}  lower antenna", end.lower_m)]
         for label, antenna_m in antennas:
             heights = (antenna_m, end.ground_m, end.ground_m + antenna_m)
-            table.add_row(label, *(text for height in heights for text in (f"{height:.1f}", feet.height(height))))
+            table.add_row(
+                label, *(text for height in heights for text in (f"{height:.1f}", feet.height_number(height)))
+            )
     say(screen, "")
     show_table(screen, table)
     width = "along the path and beside it" if sheet.beside else "along the path"
     worst = min(sheet.held, key=lambda held: held.surplus_m)
-    surplus = f"{scale.height(abs(worst.surplus_m), 2)} {scale.height_unit}"
+    surplus = f"{scale.height_number(abs(worst.surplus_m), 2)} {scale.height_unit}"
     verdict = f"passes, {surplus} to spare" if sheet.passes else f"FAILS, {surplus} short"
     say(screen, f"Re-checked through every rule, {width}: {verdict}")
 
@@ -176,9 +180,9 @@ def _show_frontier(screen: Console, plan: HeightsPlan, scale: Scale) -> None:
         aside = f", {_offset(place, scale)} {unit} {place.side}" if _aside(place) else ""
         table.add_row(
             *_spans(stretch, scale),
-            f"{scale.distance(place.distance_m)} {scale.distance_unit}{aside}\n"
+            f"{scale.distance_number(place.distance_m)} {scale.distance_unit}{aside}\n"
             f"{place.latitude:.5f}, {place.longitude:.5f}",
-            f"{scale.height(place.ground_m)} + {scale.height(place.cover_m)}",
+            f"{scale.height_number(place.ground_m)} + {scale.height_number(place.cover_m)}",
             _rule(plan.rules, stretch.rule, scale),
         )
     say(screen, "")
@@ -188,7 +192,7 @@ def _show_frontier(screen: Console, plan: HeightsPlan, scale: Scale) -> None:
 def _spans(stretch: Stretch, scale: Scale) -> tuple[str, str]:
     """Give the heights of A and of B along a stretch, from its first corner to its last."""
     first, last = stretch.corners_m[0], stretch.corners_m[-1]
-    a, b = (f"{scale.height(first[end])} to {scale.height(last[end])}" for end in (0, 1))
+    a, b = (f"{scale.height_number(first[end])} to {scale.height_number(last[end])}" for end in (0, 1))
     return a, b
 
 
@@ -198,15 +202,16 @@ def _show_limit(screen: Console, title: str, found: LimitHeights, scale: Scale) 
     say(screen, f"\n{title}, by trial of {found.trials} pairs of heights:", "bold")
     if found.least_equal_m is not None:
         caution = "" if found.holds_above else "; not at every greater height: the loss is not monotone here"
-        say(screen, f"  least equal heights {scale.height(found.least_equal_m, 2)} {unit}{caution}", hang=2)
+        say(screen, f"  least equal heights {scale.height_number(found.least_equal_m, 2)} {unit}{caution}", hang=2)
     choice = found.cheapest
     if isinstance(choice, NoPair):
-        say(screen, f"  {choice.reason}")
+        say(screen, f"  {scale.text(choice.reason)}")
     else:
         say(
             screen,
-            f"  cheapest pair found: A {scale.height(choice.antenna_a_m)}, B {scale.height(choice.antenna_b_m)} {unit},"
-            f" cost {choice.cost:g}; if height only helps, {_slack(found.cheaper_by_at_most)}",
+            f"  cheapest pair found: A {scale.height_text(choice.antenna_a_m)},"
+            f" B {scale.height_text(choice.antenna_b_m)}, cost {choice.cost:g};"
+            f" if height only helps, {_slack(found.cheaper_by_at_most)}",
             hang=2,
         )
 
@@ -222,9 +227,9 @@ def _show_diversity(screen: Console, plan: HeightsPlan, scale: Scale) -> None:
     for end in plan.diversity:
         say(
             screen,
-            f"\nDiversity at {end.end}: lower antenna {scale.height(end.lower_m)} {unit}, {scale.height(end.spacing_m)}"
-            f" {unit} ({end.spacing_wavelengths:.0f} wavelengths) below the main one; it needs"
-            f" {scale.height(end.least_m)} to {scale.height(end.full_m)} {unit}",
+            f"\nDiversity at {end.end}: lower antenna {scale.height_text(end.lower_m)},"
+            f" {scale.height_text(end.spacing_m)} ({end.spacing_wavelengths:.0f} wavelengths) below the main one;"
+            f" it needs {scale.height_number(end.least_m)} to {scale.height_number(end.full_m)} {unit}",
         )
         for note in end.notes:
             say(screen, f"  - {note}", hang=4)
@@ -234,12 +239,13 @@ def _show_sure(screen: Console, plan: HeightsPlan, scale: Scale) -> None:
     """Print what the merely clearing pair has for a chance, and the cheapest pairs that are sure enough."""
     clearing, chance = plan.cheapest, plan.cheapest_chance
     if chance is not None and not isinstance(clearing, NoPair) and clearing != plan.answer.pair:
-        text = f"A {scale.height(clearing.antenna_a_m)}, B {scale.height(clearing.antenna_b_m)} {scale.height_unit}"
-        say(screen, f"\nOn the map as it is {text} would clear, cost {clearing.cost:g}: a chance of {chance.value:.1%}")
+        text = f"A {scale.height_text(clearing.antenna_a_m)}, B {scale.height_text(clearing.antenna_b_m)}"
+        how_sure = f"a chance of {chance_text(chance.value)}"
+        say(screen, f"\nOn the map as it is {text} would clear, cost {clearing.cost:g}: {how_sure}")
     for found in plan.sure:
         pair = found.pair
         if isinstance(pair, NoPair):
-            say(screen, f"\n{found.asked:.0%} sure of every rule: {pair.reason}")
+            say(screen, f"\n{chance_text(found.asked)} sure of every rule: {scale.text(pair.reason)}")
             continue
-        text = f"A {scale.height(pair.antenna_a_m)}, B {scale.height(pair.antenna_b_m)} {scale.height_unit}"
-        say(screen, f"\n{found.asked:.0%} sure of every rule: {text}, cost {pair.cost:g}")
+        text = f"A {scale.height_text(pair.antenna_a_m)}, B {scale.height_text(pair.antenna_b_m)}"
+        say(screen, f"\n{chance_text(found.asked)} sure of every rule: {text}, cost {pair.cost:g}")

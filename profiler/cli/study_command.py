@@ -60,7 +60,8 @@ def command(
 
     Give a HOP.toml, or the sites in options. Exit code 0: the hop passes; 1: it does not; 2: the input is wrong.
     """
-    from profiler.study import point_table, run_study, to_document
+    from profiler.document import point_table, to_document
+    from profiler.study import run_study
 
     hop = read_hop(**hop_given)
     check_targets(json_to, csv_to, figures=(*figures, *margin_figures), reads=hop)
@@ -74,14 +75,14 @@ def command(
     if deliver(
         drawn,
         csv_to=csv_to,
-        table=lambda: csv_text(*point_table(study)),
+        table=lambda: csv_text(*point_table(study, feet=feet)),
         json_to=json_to,
         document=lambda: to_document(study),
     ):
         from profiler.cli.show import show_study
 
         show_study(study, feet=feet, quiet=quiet, color=not no_color)
-    return 0 if study.verdict.passes else 1
+    return 0 if study.verdict.outcome == "passes" else 1
 
 
 def _profile(study: Study, **axes: Any) -> Any:

@@ -49,8 +49,8 @@ def command(
 
     Exit code 1: a raster would stop a study, or the hop cannot be studied on them.
     """
+    from profiler.document import plain
     from profiler.hopfile import load_hop
-    from profiler.study import plain
     from profiler.terrain import as_reading, survey
 
     hop = None if hop_file is None else load_hop(hop_file)

@@ -5,7 +5,7 @@ Errors are true minus given height, in metres; ranges of correlation are practic
 
 from profiler.confidence.assess import assess
 from profiler.confidence.draws import Doubt, draw_doubt
-from profiler.confidence.findings import Chance, Confidence, SureHeights
+from profiler.confidence.findings import Chance, Confidence, SureHeights, SurveyPlace
 from profiler.confidence.summary import chance_of
 
 __all__ = [
@@ -13,6 +13,7 @@ __all__ = [
     "Confidence",
     "Doubt",
     "SureHeights",
+    "SurveyPlace",
     "assess",
     "chance_of",
     "draw_doubt",

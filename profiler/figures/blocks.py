@@ -3,10 +3,15 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
+from typing import TYPE_CHECKING
 
 from profiler.figures import style
 from profiler.figures.page import LINE_IN, MARGIN_IN, PAGE_WIDTH_IN, Page
 from profiler.figures.text import fitted, width_in, wrap
+from profiler.words import outcome_word
+
+if TYPE_CHECKING:
+    from profiler.study.reasons import Outcome
 
 __all__ = ["columns_at", "foot", "head", "heading", "rows", "titles"]
 
@@ -16,22 +21,16 @@ _COLUMNS = 3
 _GUTTER_IN = 0.3
 
 
-def head(page: Page, *, word: str, good: bool | None, sentence: str, name: str, facts: str) -> float:
-    """Put the verdict, large, and the hop's name across the top; returns how far down they reach, inches."""
-    top, depth = 0.3, 0.44
-    width = width_in(word, _VERDICT_PT, bold=True) + 0.3
-    color = style.MUTED if good is None else style.PASS if good else style.FAIL
-    page.box(MARGIN_IN, top, width, depth, fc=color, ec=color)
-    page.words(
-        MARGIN_IN + width / 2,
-        top + 0.075,
-        word,
-        size=_VERDICT_PT,
-        bold=True,
-        color="white",
-        align="center",
-        gid="verdict",
-    )
+def head(page: Page, outcome: Outcome, chance: str, *, sentence: str, name: str, facts: str) -> float:
+    """Put the verdict, large, its chance and the hop's name across the top; returns how far down they reach, inches."""
+    top, depth = 0.3, 0.62
+    word = outcome_word(outcome)
+    width = max(width_in(word, _VERDICT_PT, bold=True), width_in(chance, style.BODY, bold=True)) + 0.3
+    page.box(MARGIN_IN, top, width, depth, fc=style.OUTCOMES[outcome], ec=style.OUTCOMES[outcome])
+    for words, down, size, gid in ((word, 0.06, _VERDICT_PT, "verdict"), (chance, 0.42, style.BODY, "chance")):
+        page.words(
+            MARGIN_IN + width / 2, top + down, words, size=size, bold=True, color="white", align="center", gid=gid
+        )
     left = MARGIN_IN + width + 0.18
     lines, size = fitted(sentence, PAGE_WIDTH_IN - MARGIN_IN - left, (14.0, 13.0, 12.0, 11.0), bold=True)
     line_in = size * LINE_IN

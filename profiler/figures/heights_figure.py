@@ -14,17 +14,28 @@ import numpy as np
 
 from profiler.figures import style
 from profiler.figures.blocks import columns_at, foot, head, heading, rows, titles
+from profiler.figures.captions import hop_facts, profile_notes
 from profiler.figures.page import FOOT_IN, LINE_IN, MARGIN_IN, PAGE_WIDTH_IN, Page
 from profiler.figures.place_labels import spread
-from profiler.figures.scale import Scale, minus, position_text, required_text
 from profiler.figures.strips import rule_look
-from profiler.figures.words import hop_facts, profile_notes
+from profiler.remarks import chance_text, minus
+from profiler.words import (
+    Scale,
+    beside_text,
+    chance_words,
+    pair_words,
+    remedies_words,
+    rule_text,
+    spare_text,
+    spot_text,
+    stands_text,
+)
 
 if TYPE_CHECKING:
     from matplotlib.axes import Axes
     from matplotlib.figure import Figure
 
-    from profiler.heights import NoPair, Stretch
+    from profiler.heights import Stretch
     from profiler.plan import HeightsPlan
 
 __all__ = ["frontier_figure"]
@@ -64,10 +75,7 @@ def frontier_figure(plan: HeightsPlan, *, feet: bool = False) -> Figure:
     --------
     >>> size = Path("heights.png").write_bytes(render(frontier_figure(plan_heights(study)), ".png"))  # doctest: +SKIP
     """
-    from profiler.heights import Choice
-
     scale, hop = Scale(feet), plan.study.hop
-    found = isinstance(plan.answer.pair, Choice)
     marks = _marks(plan, scale)
     stretches = plan.stretches or plan.beyond
     highest_a, highest_b = hop.heights.tower_a.highest_m, hop.heights.tower_b.highest_m
@@ -82,9 +90,9 @@ def frontier_figure(plan: HeightsPlan, *, feet: bool = False) -> Figure:
         page = Page()
         top = head(
             page,
-            word="FEASIBLE" if found else "NO PAIR",
-            good=found,
-            sentence=_sentence(plan, scale),
+            plan.outcome,
+            chance_words(plan.answer.chance, plan.asked_chance),
+            sentence=pair_words(plan, scale),
             name=hop.name,
             facts=hop_facts(hop, plan.study.line.distance_m, scale),
         )
@@ -109,30 +117,13 @@ def _reach(highest_m: float, marked_m: list[float]) -> float:
     return 1.06 * max(highest_m, *near)
 
 
-def _sentence(plan: HeightsPlan, scale: Scale) -> str:
-    """Say which pair to build, or what is in the way."""
-    from profiler.heights import Choice
-
-    pair = plan.answer.pair
-    if isinstance(pair, Choice):
-        a, b = scale.height_text(pair.antenna_a_m), scale.height_text(pair.antenna_b_m)
-        does = "clears every rule" if len(plan.answer.asked) == 1 else "does all that is asked"
-        return f"Cheapest pair that {does}: antenna A at {a}, antenna B at {b} above ground"
-    if not pair.lower:
-        return f"{pair.reason[0].upper()}{pair.reason[1:]}"
-    worst = pair.lower[0]
-    a, b = scale.height_text(pair.best_a_m), scale.height_text(pair.best_b_m)
-    short, where = scale.height_text(worst.by_m), scale.distance_text(worst.distance_m)
-    return f"Even at the highest there is, A {a} and B {b}, the ray is {short} short {where} from A"
-
-
 def _marks(plan: HeightsPlan, scale: Scale) -> list[_Mark]:
     """Pairs worth a mark, the most wanted last so that it lies on top."""
     from profiler.heights import Choice, Least
 
     a, b = plan.study.hop.site_a.antenna_m, plan.study.hop.site_b.antenna_m
-    spare, equal = plan.study.governing.critical.surplus_m, plan.least_equal.height_m
-    state = f"{scale.height_text(abs(spare))} {'short' if spare < 0 else 'to spare'}"
+    spare = min(result.critical.surplus_m for result in plan.study.rules)
+    state, equal = spare_text(spare, scale), plan.least_equal.height_m
     marks = [
         _Mark({"marker": "s", "mfc": "white"}, a, b, f"as in the hop file: {state}"),
         _Mark({"marker": "^", "mfc": style.ZONE_REQUIRED}, equal, equal, "least equal heights"),
@@ -145,7 +136,7 @@ def _marks(plan: HeightsPlan, scale: Scale) -> list[_Mark]:
         marks.append(_Mark(look, a, plan.least_b.height_m, "least B with A as it is"))
     for each in plan.sure:
         if isinstance(each.pair, Choice):
-            words = f"cheapest pair to clear with {100 * each.asked:g} % chance"
+            words = f"cheapest pair to clear with a chance of {chance_text(each.asked)}"
             pair_m = each.pair.antenna_a_m, each.pair.antenna_b_m
             marks.append(_Mark({"marker": "D", "mfc": style.MUTED}, *pair_m, words))
     stars = [(plan.answer.pair, style.PASS, plan.answer.asked)]
@@ -273,19 +264,16 @@ def _stretch_cells(plan: HeightsPlan, stretch: Stretch, scale: Scale) -> tuple[s
         ends = [minus(f"{scale.height(float(each)):.1f}") if np.isfinite(each) else "∞" for each in (low, high)]
         return ends[0] if ends[0] == ends[1] else f"{ends[0]} to {ends[1]}"
 
-    spot = position_text(place.longitude, place.latitude)
-    cover = f" + cover {scale.height_text(place.cover_m)}" if place.cover_m > 0 else ""
-    aside = f" {scale.height_text(abs(place.offset_m))} {place.side} of the path" if abs(place.offset_m) >= 0.5 else ""
-    stands = f"ground {scale.height_text(place.ground_m)}{cover}{aside}"
+    stands = f"{stands_text(place, scale)}{beside_text(place, scale)}"
     rule = plan.rules[stretch.rule] if stretch.rule >= 0 else None
-    asks = "the site's own ground" if rule is None else required_text(rule, scale)
+    asks = "the site's own ground" if rule is None else rule_text(rule, scale)
     if rule is not None and stretch.rule >= len(plan.study.hop.rules):
         asks = f"{asks}, {rule.label}"
     return (
         span(first[0], last[0]),
         span(last[1], first[1]),
         f"{scale.distance(stretch.distance_m):.2f}",
-        f"{stands}; {asks}; {spot}",
+        f"{stands}; {asks}; {spot_text(place)}",
     )
 
 
@@ -295,22 +283,6 @@ def _notes(plan: HeightsPlan, scale: Scale) -> list[tuple[str, list[str]]]:
 
     reading = ["every pair in the shaded region clears every rule at every point; on its edge one point is just met"]
     if isinstance(plan.answer.pair, NoPair):
-        reading += [f"one way out: {way}" for way in _remedies(plan.answer.pair, scale)]
-    beware = [f"not judged: {each}" for each in plan.answer.unjudged]
+        reading += [f"one way out: {way}" for way in remedies_words(plan, plan.answer.pair, scale)]
+    beware = [f"not judged: {scale.text(each)}" for each in plan.answer.unjudged]
     return [("Reading", [*reading, *beware]), *profile_notes(plan.study, scale)]
-
-
-def _remedies(found: NoPair, scale: Scale) -> list[str]:
-    """Say what would have to change, in the units of the figure; any one of the lines would do."""
-    ways = []
-    if found.lower:
-        places = [f"{scale.distance_text(each.distance_m)} by {scale.height_text(each.by_m)}" for each in found.lower]
-        ways.append(f"lower what stands at {', at '.join(places)}")
-    for height, what in (
-        (found.raise_a_to_m, "let antenna A stand at {} or higher"),
-        (found.raise_b_to_m, "let antenna B stand at {} or higher"),
-        (found.raise_both_by_m, "let both antennas stand {} higher"),
-    ):
-        if height is not None:
-            ways.append(what.format(scale.height_text(height)))
-    return [*ways, "free taken positions: the towers are high enough"] if found.taken_to_blame else ways

@@ -8,8 +8,8 @@ from typing import Any
 from profiler.figures import style
 from profiler.figures.page import LINE_IN, Page
 from profiler.figures.profile import Scene
-from profiler.figures.scale import k_text
 from profiler.figures.text import width_in
+from profiler.remarks import k_text
 
 __all__ = ["draw_key"]
 

@@ -9,8 +9,8 @@ import numpy as np
 
 from profiler.figures import style
 from profiler.figures.page import FOOT_IN, LINE_IN, Page
-from profiler.figures.scale import minus
 from profiler.figures.text import wrap
+from profiler.remarks import minus
 
 if TYPE_CHECKING:
     from matplotlib.axes import Axes

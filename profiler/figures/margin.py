@@ -14,16 +14,16 @@ from profiler.budget import way_name
 from profiler.errors import InputError
 from profiler.figures import style
 from profiler.figures.blocks import columns_at, foot, head, heading, rows, titles
+from profiler.figures.captions import hop_facts, link_notes
 from profiler.figures.levels import draw_levels, steps_of
-from profiler.figures.outage_panel import draw_outage, percent_text
+from profiler.figures.outage_panel import draw_outage
 from profiler.figures.page import LINE_IN, MARGIN_IN, PAGE_WIDTH_IN, Page
-from profiler.figures.scale import Scale, minus
-from profiler.figures.words import hop_facts, link_notes, outage_words
+from profiler.remarks import db_text, outage_text
+from profiler.words import Scale, achieved_text, asked_text, chance_words, limit_text, margin_words
 
 if TYPE_CHECKING:
     from matplotlib.figure import Figure
 
-    from profiler.budget import ModeBudget
     from profiler.study.result import Study
 
 __all__ = ["margin_figure"]
@@ -66,9 +66,9 @@ def margin_figure(study: Study, *, feet: bool = False) -> Figure:
         page = Page()
         top = head(
             page,
-            word=_word(study),
-            good=_met(study),
-            sentence=_sentence(study, row),
+            study.verdict.outcome,
+            chance_words(study.verdict.chance, study.verdict.minimum_chance),
+            sentence=margin_words(study),
             name=study.hop.name,
             facts=hop_facts(study.hop, study.line.distance_m, Scale(feet)),
         )
@@ -79,36 +79,7 @@ def margin_figure(study: Study, *, feet: bool = False) -> Figure:
         if study.outage.availability is not None and study.outage.curve is not None:
             right = heading(page, _RIGHT, top + 0.14, "Outage against fade margin")
             _, right = draw_outage(page, _RIGHT, right, _RIGHT_ROOM, study.outage.availability, study.outage.curve)
-        return page.finish(foot(page, max(left, right) + 0.12, link_notes(study)))
-
-
-def _met(study: Study) -> bool | None:
-    objective = None if study.outage.availability is None else study.outage.availability.objective
-    return None if objective is None else objective.met
-
-
-def _word(study: Study) -> str:
-    """Give the verdict on the margin alone; the hop as a whole is judged on the profile figure."""
-    if study.outage.availability is None or study.outage.availability.objective is None:
-        return "NOT JUDGED"
-    return {True: "OBJECTIVE MET", False: "OBJECTIVE MISSED", None: "UNDECIDED"}[_met(study)]
-
-
-def _sentence(study: Study, row: ModeBudget) -> str:
-    """Say what margin there is, what is needed, and what limits it."""
-    if row.fade_margin_db is None:
-        return minus(f"Received level {row.received_dbm:.1f} dBm; no threshold is given, so there is no fade margin")
-    margin = minus(f"{row.fade_margin_db:.1f} dB")
-    outage = study.outage.availability
-    if outage is None:
-        return f"Fade margin {margin}; no outage predicted, as no climate numbers are given"
-    lost = outage_words(outage)
-    if outage.objective is None:
-        return f"Fade margin {margin}; {lost}; no objective given"
-    needed = outage.objective.required_margin_db
-    if needed is None:
-        return f"Fade margin {margin}; no margin is sure to meet the objective; {lost}"
-    return f"Fade margin {margin}, needed {needed:.1f} dB; {lost}"
+        return page.finish(foot(page, max(left, right) + 0.12, link_notes(study, Scale(feet))))
 
 
 def _modes(page: Page, top: float, study: Study) -> float:
@@ -123,12 +94,12 @@ def _modes(page: Page, top: float, study: Study) -> float:
         cells.append(
             (
                 there.name or "(unnamed)",
-                minus(f"{there.received_dbm:.1f} dBm"),
-                minus(f"{back.received_dbm:.1f} dBm"),
-                "–" if there.threshold_dbm is None else minus(f"{there.threshold_dbm:.1f} dBm"),
-                "–" if margin_db is None else minus(f"{margin_db:.1f} dB"),
-                "–" if found is None else percent_text(found.worst_month_percent),
-                "–" if found is None else percent_text(found.year_percent),
+                db_text(there.received_dbm, "dBm"),
+                db_text(back.received_dbm, "dBm"),
+                "–" if there.threshold_dbm is None else db_text(there.threshold_dbm, "dBm"),
+                "–" if margin_db is None else db_text(margin_db),
+                "–" if found is None else outage_text(found.worst_month_percent),
+                "–" if found is None else outage_text(found.year_percent),
                 {True: "met", False: "missed", None: "–"}[met],
             )
         )
@@ -145,17 +116,15 @@ def _targets(page: Page, top: float, study: Study) -> float:
         return top
     cells = [
         (
-            each.name.replace("_", " "),
-            f"{each.required:.4g}",
-            f"{each.achieved:.3g}" if each.achieved < 1000 else f"{each.achieved:.0f}",
+            asked_text(each),
+            achieved_text(each),
             {True: "met", False: "missed", None: "open"}[each.met],
-            "none is sure" if each.required_margin_db is None else f"{each.required_margin_db:.1f} dB",
-            each.margin_set_by,
-            each.limited_by,
+            "none is sure" if each.required_margin_db is None else db_text(each.required_margin_db),
+            limit_text(each.margin_set_by),
         )
         for each in objective.targets
     ]
     top = heading(page, MARGIN_IN, top + 0.14, "Objective")
-    columns = columns_at(MARGIN_IN, (1.68, 0.48, 0.6, 0.5, 0.95, 0.8, 0.7))
-    names = ("target", "asked", "reached", "", "margin needed", "for", "limited by")
+    columns = columns_at(MARGIN_IN, (1.55, 1.75, 0.5, 0.95, 0.8))
+    names = ("asked, at most", "reached", "", "margin needed", "decides")
     return rows(page, titles(page, top, columns, names), columns, cells)

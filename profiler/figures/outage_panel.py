@@ -10,8 +10,8 @@ import numpy as np
 from profiler.figures import style
 from profiler.figures.page import FOOT_IN, LINE_IN, Page
 from profiler.figures.place_labels import spread
-from profiler.figures.scale import minus
 from profiler.figures.text import width_in
+from profiler.remarks import db_text, outage_text, superscript
 from profiler.units import MINUTES_PER_YEAR
 
 if TYPE_CHECKING:
@@ -20,7 +20,7 @@ if TYPE_CHECKING:
     from profiler.availability import Availability, OutageCurve, Outages
     from profiler.units import Float
 
-__all__ = ["draw_outage", "percent_text", "target_lines"]
+__all__ = ["draw_outage", "target_lines"]
 
 _LOOKS: dict[str, tuple[str, tuple[float, ...], float]] = {
     "total": (style.INK, (), 1.8),
@@ -29,24 +29,9 @@ _LOOKS: dict[str, tuple[str, tuple[float, ...], float]] = {
     "rain": ("#4d8a7a", (1.5, 1.5), 1.4),
     "obstruction": ("#b8860b", (9, 3), 1.2),
 }
-_SUPERSCRIPT = str.maketrans("-0123456789", "⁻⁰¹²³⁴⁵⁶⁷⁸⁹")
 _HALF_IN = 2.0
 _LOWEST_POWER = -12
 _RIGHT_IN = 1.02
-
-
-def percent_text(percent: float) -> str:
-    """Write a share of time in percent with two digits.
-
-    Examples
-    --------
-    >>> percent_text(0.0123), percent_text(4.2e-6), percent_text(0.0)
-    ('0.012 %', '4.2·10⁻⁶ %', '0 %')
-    """
-    if percent and percent < 1e-3:
-        power = math.floor(math.log10(percent))
-        return f"{percent / 10.0**power:.1f}·10{str(power).translate(_SUPERSCRIPT)} %"
-    return f"{percent:.2g} %" if percent < 99.5 else "100 %"
 
 
 def target_lines(outage: Availability, period: str) -> list[tuple[float, list[str]]]:
@@ -56,10 +41,10 @@ def target_lines(outage: Availability, period: str) -> list[tuple[float, list[st
         if target.name == "minutes_per_year":
             line = (100.0 * target.required / MINUTES_PER_YEAR, [f"{target.required:g} min", "a year asked"])
         elif target.name in ("year_percent", "worst_month_percent"):
-            line = (target.required, [percent_text(target.required), "asked"])
+            line = (target.required, [outage_text(target.required), "asked"])
         else:
             kind = "errored" if target.name == "errored_seconds_ratio" else "sev. errored"
-            line = (100.0 * target.required, [percent_text(100.0 * target.required), f"{kind} s"])
+            line = (100.0 * target.required, [outage_text(100.0 * target.required), f"{kind} s"])
         of_year = target.name in ("minutes_per_year", "year_percent")
         if of_year == (period == "year"):
             found.append(line)
@@ -95,7 +80,7 @@ def draw_outage(
 
 def _percent_label(percent: float, _: object) -> str:
     power = round(math.log10(percent))
-    return f"{percent:g}" if power >= -3 else f"10{str(power).translate(_SUPERSCRIPT)}"
+    return f"{percent:g}" if power >= -3 else f"10{superscript(power)}"
 
 
 def _curves(
@@ -130,10 +115,10 @@ def _margins(axes: Axes, outage: Availability, highest: float) -> None:
 def _margin_labels(page: Page, left: float, top: float, room: float, outage: Availability, highest: float) -> float:
     """Name the two upright lines, each in a row of its own so that they never meet."""
     share = max(outage.fade_margin_db, 0.0) / highest
-    rows = [(minus(f"there is: {outage.fade_margin_db:.1f} dB"), share, style.INK)]
+    rows = [(f"there is: {db_text(outage.fade_margin_db)}", share, style.INK)]
     needed = None if outage.objective is None else outage.objective.required_margin_db
     if needed is not None:
-        rows.append((f"needed: {needed:.1f} dB", min(needed / highest, 1.0), style.FAIL))
+        rows.append((f"needed: {db_text(needed)}", min(needed / highest, 1.0), style.FAIL))
     for words, where, color in rows:
         half = width_in(words, style.BODY, bold=True) / 2
         x = min(max(left + where * room, left + half), left + room - half)

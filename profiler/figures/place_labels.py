@@ -1,4 +1,4 @@
-"""The places that a reader must find on the figure: where each rule is tightest, on the path or beside it."""
+"""Numbers beside a drawing, moved apart where they stand close, and which rule of the hop file is which."""
 
 from __future__ import annotations
 
@@ -6,46 +6,15 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 
-from profiler.figures.scale import Scale, position_text
-from profiler.units import Float
-
 if TYPE_CHECKING:
-    from profiler.study.result import Place, RuleResult, Study
+    from profiler.study.result import RuleResult, Study
 
-__all__ = [
-    "place_words",
-    "rule_position",
-    "rules_by_surplus",
-    "spread",
-    "surplus_drawn",
-]
-
-
-def rules_by_surplus(study: Study) -> tuple[RuleResult, ...]:
-    """Rules in the order in which figures list them, the governing one first."""
-    return tuple(sorted(study.rules, key=lambda result: result.critical.surplus_m))
+__all__ = ["rule_position", "spread"]
 
 
 def rule_position(study: Study, result: RuleResult) -> int:
     """Place of a rule among the rules as the hop file gives them."""
     return next(i for i, each in enumerate(study.rules) if each is result)
-
-
-def surplus_drawn(result: RuleResult) -> Float:
-    """Surplus along the path as drawn: the least over the width of the zone where that was checked."""
-    if result.corridor is None:
-        return result.check.surplus_m
-    return np.minimum(result.check.surplus_m, result.corridor.least_surplus_m)
-
-
-def place_words(place: Place, scale: Scale) -> str:
-    """Where a place is and what stands there, in words."""
-    side = f", {scale.height_text(abs(place.offset_m))} {place.side} of the path" if round(place.offset_m) else ""
-    stands = f"ground {scale.height_text(place.ground_m)}" + (" (interpolated)" if place.filled else "")
-    if place.cover_m > 0:
-        stands += f" + cover {scale.height_text(place.cover_m)}"
-    position = position_text(place.longitude, place.latitude)
-    return f"{scale.distance_text(place.distance_m)} from A{side} ({position}), {stands}"
 
 
 def spread(at: list[float], apart: float, low: float, high: float) -> list[float]:

@@ -10,9 +10,10 @@ from numpy.typing import NDArray
 
 from profiler.figures import style
 from profiler.figures.place_labels import rule_position
-from profiler.figures.scale import Scale, k_text
 from profiler.models import frozen_array
+from profiler.remarks import k_text
 from profiler.units import Float
+from profiler.words import Scale
 
 if TYPE_CHECKING:
     from matplotlib.axes import Axes

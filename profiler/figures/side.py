@@ -6,11 +6,11 @@ from typing import TYPE_CHECKING
 
 from profiler.figures import style
 from profiler.figures.blocks import heading, rows
+from profiler.figures.captions import ground_notes, hop_rows, rule_lines, site_rows
 from profiler.figures.page import LINE_IN, MARGIN_IN, PAGE_WIDTH_IN, Page
-from profiler.figures.place_labels import rule_position, rules_by_surplus
-from profiler.figures.scale import Scale
+from profiler.figures.place_labels import rule_position
 from profiler.figures.strips import rule_look
-from profiler.figures.words import ground_notes, hop_rows, rule_lines, site_rows
+from profiler.words import Scale
 
 if TYPE_CHECKING:
     from profiler.study.result import Study
@@ -38,7 +38,7 @@ def title_block(page: Page, top: float, study: Study, scale: Scale) -> float:
     columns = [(_SIDE, label - 0.05, style.MUTED), (_SIDE + label, 2 * each, style.INK)]
     top = rows(page, top, columns, hop_rows(study, scale))
     top = heading(page, _SIDE, top + 0.1, "Rules, each at its own k, the tightest first")
-    for result in rules_by_surplus(study):
+    for result in study.by_tightness:
         color, dashes = rule_look(rule_position(study, result))
         page.stroke(
             [_SIDE, _SIDE + 0.3],

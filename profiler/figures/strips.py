@@ -9,10 +9,10 @@ import numpy as np
 from matplotlib.colors import LightSource
 
 from profiler.figures import style
-from profiler.figures.place_labels import rule_position, rules_by_surplus, surplus_drawn
+from profiler.figures.place_labels import rule_position
 from profiler.figures.profile import thinned
-from profiler.figures.scale import Scale
 from profiler.units import Float
+from profiler.words import Scale
 
 if TYPE_CHECKING:
     from matplotlib.axes import Axes
@@ -44,7 +44,7 @@ def draw_surplus(
 
     The limits are set for the tight places; where there is much more clearance the lines leave at the top.
     """
-    results = rules_by_surplus(study)
+    results = study.by_tightness
     bottom, top = _surplus_limits(study, scale) if surplus_limits is None else surplus_limits
     axes.fill_between(distance_limits, min(bottom, 0.0), 0.0, fc=style.FAIL_TINT, lw=0, zorder=0.4)
     x = study.profile.distance_m
@@ -55,7 +55,7 @@ def draw_surplus(
         axes.fill_between(scale.distance(x[keep]), low, high, fc=style.INK, alpha=0.22, lw=0, label="band")
     for result in reversed(results):
         position = rule_position(study, result)
-        surplus = surplus_drawn(result)
+        surplus = result.least_surplus_m
         keep = thinned(surplus)
         color, dashes = rule_look(position)
         axes.plot(
@@ -74,7 +74,7 @@ def draw_surplus(
 
 def _surplus_limits(study: Study, scale: Scale) -> tuple[float, float]:
     """Limits that show the tight places of every rule, whatever room there is over deep valleys."""
-    surpluses = [surplus_drawn(each) for each in study.rules]
+    surpluses = [each.least_surplus_m for each in study.rules]
     leasts, most = [float(each.min()) for each in surpluses], max(float(each.max()) for each in surpluses)
     widest = max(float(each.check.f1_m.max()) for each in study.rules)
     doubtful = [] if study.confidence is None else [float(each.surplus.low_m.min()) for each in study.confidence.rules]

@@ -25,6 +25,7 @@ __all__ = [
     "HEAD",
     "INK",
     "MUTED",
+    "OUTCOMES",
     "PASS",
     "RAY",
     "RELIEF",
@@ -51,7 +52,9 @@ ZONE_REQUIRED = "#b5d0ea"
 RELIEF = LinearSegmentedColormap.from_list("relief", ["#6b6359", "#faf5e8"])
 PASS = "#00594f"
 FAIL = "#b23a00"
+UNSURE = "#7a5c00"
 FAIL_TINT = "#f6dfd2"
+OUTCOMES = {"passes": PASS, "not_sure": UNSURE, "fails": FAIL}
 
 RULE_COLORS = ("#1c1f24", "#0072b2", "#b8860b", "#a0527a", "#4d8a7a")
 RULE_DASHES: tuple[tuple[float, ...], ...] = ((), (5, 2), (1.5, 1.5), (6, 1.5, 1.5, 1.5), (4, 1.5, 1, 1.5, 1, 1.5))

@@ -11,15 +11,15 @@ from typing import TYPE_CHECKING
 from profiler.errors import InputError
 from profiler.figures import style
 from profiler.figures.blocks import foot, head
+from profiler.figures.captions import hop_facts, profile_notes, tightest_words
 from profiler.figures.key import draw_key
 from profiler.figures.page import FOOT_IN, LINE_IN, Page
 from profiler.figures.place_labels import spread
 from profiler.figures.profile import AXES_IN, draw_profile, draw_tight_places, scene
-from profiler.figures.scale import Scale
 from profiler.figures.side import title_block
 from profiler.figures.strips import draw_relief, draw_surplus, mark_on_relief, north_on_page
 from profiler.figures.text import width_in, wrap
-from profiler.figures.words import critical_words, hop_facts, profile_notes, verdict_sentence, verdict_word
+from profiler.words import Scale, chance_words, headline
 
 if TYPE_CHECKING:
     from matplotlib.axes import Axes
@@ -84,9 +84,9 @@ def profile_figure(
         page = Page()
         top = head(
             page,
-            word=verdict_word(study.verdict.passes),
-            good=study.verdict.passes,
-            sentence=verdict_sentence(study, scale),
+            study.verdict.outcome,
+            chance_words(study.verdict.chance, study.verdict.minimum_chance),
+            sentence=headline(study, scale),
             name=study.hop.name,
             facts=hop_facts(study.hop, study.line.distance_m, scale),
         )
@@ -152,7 +152,7 @@ def _numbers(page: Page, top: float, places: tuple[Place, ...], scale: Scale, re
 
 def _critical(page: Page, top: float, study: Study, place: Place, scale: Scale, reach: Limits, color: str) -> float:
     """Label the critical point in words, under it as far as the room allows."""
-    words = critical_words(study, scale)
+    words = tightest_words(study, scale)
     x = scale.distance(place.distance_m)
     if not reach[0] <= x <= reach[1]:
         words += " It lies outside the distances drawn."

@@ -3,7 +3,7 @@
 Heights are metres above the ground of their own site unless a name says ``centre`` (above the vertical datum).
 """
 
-from profiler.heights.choose import Choice, NoPair, cheapest, cheapest_of, least_other
+from profiler.heights.choose import Choice, Lowering, NoPair, cheapest, cheapest_of, least_other
 from profiler.heights.frontier import Stretch, frontier_stretches
 from profiler.heights.lower_antenna import DiversityEnd, check_diversity, lower_rays, lower_rules
 from profiler.heights.region import (
@@ -28,6 +28,7 @@ __all__ = [
     "DrawnRegions",
     "Least",
     "LimitHeights",
+    "Lowering",
     "MountingSheet",
     "NoPair",
     "Stretch",

@@ -12,14 +12,13 @@ from profiler.geometry import ROUNDING_M, tight_places
 from profiler.heights.region import ClearingRegion, Least, least_a_for, least_b_for, surplus
 from profiler.heights.tower_positions import both_free, free_positions, height_cost
 from profiler.models import TowerChoice
+from profiler.remarks import Length, Note, note
 from profiler.units import Float
 
 __all__ = ["Choice", "Lowering", "NoPair", "cheapest", "cheapest_of", "least_other", "no_position"]
 
 _TALLEST_M = 2000.0
 """Above this no antenna is mounted (the models refuse it), so it is no remedy."""
-
-_NAMED_PLACES = 5
 
 
 @dataclass(frozen=True, slots=True)
@@ -53,7 +52,7 @@ class NoPair:
     ``proven`` is False where the search was by trial, not by the region: then no pair was found.
     """
 
-    reason: str
+    reason: Note
     best_a_m: float
     best_b_m: float
     lower: tuple[Lowering, ...] = ()
@@ -62,25 +61,6 @@ class NoPair:
     raise_both_by_m: float | None = None
     taken_to_blame: bool = False
     proven: bool = True
-
-    @property
-    def remedies(self) -> tuple[str, ...]:
-        """What would have to change, one way a line."""
-        ways = []
-        if self.lower:
-            named = self.lower[:_NAMED_PLACES]
-            places = ", ".join(f"at {place.distance_m / 1e3:.3f} km by {place.by_m:.2f} m" for place in named)
-            more = len(self.lower) - len(named)
-            ways.append(f"lower what stands {places}" + (f", and {more} more" if more else ""))
-        if self.raise_a_to_m is not None:
-            ways.append(f"let antenna A stand at {self.raise_a_to_m:.2f} m or higher")
-        if self.raise_b_to_m is not None:
-            ways.append(f"let antenna B stand at {self.raise_b_to_m:.2f} m or higher")
-        if self.raise_both_by_m is not None:
-            ways.append(f"let both antennas stand {self.raise_both_by_m:.2f} m higher")
-        if self.taken_to_blame:
-            ways.append("free taken positions: the towers are high enough without them")
-        return tuple(ways)
 
 
 def least_other(
@@ -112,7 +92,7 @@ def least_other(
     >>> least_other(region, fixed_a_m=40.0)
     Least(height_m=80.0, point=1, distance_m=5000.0, rule=0)
     >>> print(least_other(region, fixed_a_m=8.0).reason)
-    no antenna B helps: antenna A at 8.00 m stands 2.00 m too low at its own site, where 10.00 m are needed
+    no antenna B helps: antenna A at 8.0 m stands 2.0 m too low at its own site, where 10.0 m are needed
     """
     given = [height for height in (fixed_a_m, fixed_b_m) if height is not None]
     if len(given) != 1:
@@ -128,8 +108,12 @@ def least_other(
         place = Lowering(point, float(region.distance_m[point]), int(region.rule[point]), lowest - fixed)
         here, far = ("A", "B") if at_a else ("B", "A")
         return NoPair(
-            reason=f"no antenna {far} helps: antenna {here} at {fixed:.2f} m stands {lowest - fixed:.2f} m too low at "
-            f"its own site, where {lowest:.2f} m are needed",
+            reason=note(
+                "heights",
+                f"no antenna {far} helps: antenna {here} at {{}} stands {{}} too low at its own site, where {{}} are"
+                " needed",
+                *(Length(height) for height in (fixed, lowest - fixed, lowest)),
+            ),
             best_a_m=fixed if at_a else math.inf,
             best_b_m=math.inf if at_a else fixed,
             lower=(place,),
@@ -179,7 +163,7 @@ def cheapest(
     >>> cheapest(region, tower_a, tower_b)
     Choice(antenna_a_m=119.0, antenna_b_m=1.0, cost=222.0)
     >>> print(cheapest(region, TowerChoice(highest_m=40), tower_b).reason)
-    no pair clears: at the highest there is, A 40.00 m and B 70.00 m, the ray is still 5.00 m short at 5.000 km
+    no pair clears: at the highest there is, A 40.0 m and B 70.0 m, the ray is still 5.0 m short 5.00 km from A
     """
     free_a, free_b = both_free(tower_a, tower_b, spacing_m=spacing_m)
     if not (free_a.size and free_b.size):
@@ -228,8 +212,12 @@ def _no_pair(region: ClearingRegion, best_a: float, best_b: float, *, taken_to_b
     worst = lower[0]
     to_a, to_b = float(least_a_for(region, best_b)), float(least_b_for(region, best_a))
     return NoPair(
-        reason=f"no pair clears: at the highest there is, A {best_a:.2f} m and B {best_b:.2f} m, the ray is still "
-        f"{worst.by_m:.2f} m short at {worst.distance_m / 1e3:.3f} km",
+        reason=note(
+            "heights",
+            "no pair clears: at the highest there is, A {} and B {}, the ray is still {} short {} from A",
+            *(Length(height) for height in (best_a, best_b, worst.by_m)),
+            Length(worst.distance_m, far=True),
+        ),
         best_a_m=best_a,
         best_b_m=best_b,
         lower=tuple(lower),
@@ -251,15 +239,17 @@ def no_position(
     """State that a tower has no free position; with a region, whether its taken positions are to blame for no pair."""
     full = " and ".join(name for name, free in (("A", free_a), ("B", free_b)) if not free.size)
     narrow = [
-        f"tower {name} offers no two positions {spacing_m:g} m apart for the diversity pair, "
-        f"{tower.lowest_m:g} to {tower.highest_m:g} m"
+        (f"tower {name} offers no two positions {{}} apart for the diversity pair, {{}} to {{}}", tower)
         for name, tower in (("A", tower_a), ("B", tower_b))
         if not _bare(tower, spacing_m).size
     ]
-    pairs = f", or the one {spacing_m:g} m below it is" if spacing_m else ""
-    taken = f"every position of tower {full} is taken, or too close to a taken one{pairs}"
+    lengths = [length_m for _, tower in narrow for length_m in (spacing_m, tower.lowest_m, tower.highest_m)]
+    words = "; ".join(why for why, _ in narrow)
+    if not narrow:
+        words = f"every position of tower {full} is taken, or too close to a taken one"
+        words, lengths = (f"{words}, or the one {{}} below it is", [spacing_m]) if spacing_m else (words, [])
     return NoPair(
-        reason="no pair: " + ("; ".join(narrow) or taken),
+        reason=note("heights", f"no pair: {words}", *(Length(length_m) for length_m in lengths)),
         best_a_m=float(free_a[-1]) if free_a.size else math.nan,
         best_b_m=float(free_b[-1]) if free_b.size else math.nan,
         taken_to_blame=region is not None and _clears_without_taken(region, tower_a, tower_b, spacing_m),

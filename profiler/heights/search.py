@@ -14,6 +14,7 @@ from profiler.checks import not_negative
 from profiler.heights.choose import Choice, NoPair, cheapest_of, no_position
 from profiler.heights.tower_positions import both_free, height_cost
 from profiler.models import TowerChoice, frozen_array
+from profiler.remarks import Length, note
 from profiler.units import Float
 
 __all__ = ["LimitHeights", "cheapest_by_trial", "heights_within", "loss_excess"]
@@ -113,7 +114,8 @@ def heights_within(
             if math.isfinite(over)
             else f"the {what} has no value: an antenna stands inside its own cover"
         )
-        reason = f"no pair found: at the highest there is, A {best_a:.2f} m and B {best_b:.2f} m, {verdict}"
+        words = f"no pair found: at the highest there is, A {{}} and B {{}}, {verdict}"
+        reason = note("heights", words, Length(best_a), Length(best_b))
         choice = NoPair(reason, best_a, best_b, proven=False)
     return LimitHeights(equal, holds, frozen_array(pairs), choice, slack, tried.cache_info().misses)
 

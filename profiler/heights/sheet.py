@@ -14,6 +14,7 @@ from profiler.geometry import ROUNDING_M, CorridorCheck, RuleCheck, check_corrid
 from profiler.heights.choose import NoPair
 from profiler.heights.tower_positions import both_free, round_up
 from profiler.models import Rule, TowerChoice
+from profiler.remarks import Length, note
 from profiler.units import FOOT_M
 
 __all__ = ["EndHeights", "Held", "MountingSheet", "mounting_sheet"]
@@ -162,7 +163,7 @@ def mounting_sheet(
         end, height = ("A", antenna_a_m) if mounted_a is None else ("B", antenna_b_m)
         free_a, free_b = both_free(tower_a, tower_b, spacing_m=spacing_m)
         return NoPair(
-            reason=f"antenna {end}: no free position at or above {height:.2f} m; raise the limit, or free a position",
+            reason=note("heights", f"antenna {end}: its tower has no free position at or above {{}}", Length(height)),
             best_a_m=max(free_a, default=math.nan),
             best_b_m=max(free_b, default=math.nan),
             raise_a_to_m=antenna_a_m if mounted_a is None else None,

@@ -28,6 +28,7 @@ from profiler.heights import (
     least_surplus_drawn,
 )
 from profiler.plan.link_limits import Excess
+from profiler.remarks import Length, chance_text, note
 from profiler.study.requirements import spacing_of
 from profiler.study.result import Study
 from profiler.units import Float
@@ -222,8 +223,14 @@ def _cheapest(
     assert chance is not None  # where none is asked for, the clearing pair is there
     assert sure is not None
     return NoPair(
-        reason=f"no pair clears with {100 * sure:g} % chance: at the highest there is, A {best.antenna_a_m:.2f} m and "
-        f"B {best.antenna_b_m:.2f} m, the chance is {chance.value:.1%}",
+        reason=note(
+            "heights",
+            "no pair clears with a chance of {}: at the highest there is, A {} and B {}, the chance is {}",
+            chance_text(sure),
+            Length(best.antenna_a_m),
+            Length(best.antenna_b_m),
+            chance_text(chance.value),
+        ),
         best_a_m=best.antenna_a_m,
         best_b_m=best.antenna_b_m,
     )
@@ -248,6 +255,11 @@ def _by_trial(
     over = {name: each(best_a, best_b) for name, each in limits.items()}
     missed = [f"{name} by {db:.2f} dB" for name, db in over.items() if 0 < db < math.inf]
     missed += [f"{name} at any fade margin" for name, db in over.items() if db == math.inf]
-    failing = f", A {best_a:.2f} m and B {best_b:.2f} m, the antennas fail to {', and to '.join(missed)}"
-    why = f"at the highest there is{failing}" if missed else "what helps one limit spoils another"
-    return NoPair(f"no pair found that does all that is asked: {why}", best_a, best_b, proven=False), 0.0
+    words = "no pair found that does all that is asked: what helps one limit spoils another"
+    if missed:
+        words = (
+            "no pair found that does all that is asked: at the highest there is, A {} and B {}, the antennas fail to"
+            f" {', and to '.join(missed)}"
+        )
+    reason = note("heights", words, *(Length(height) for height in (best_a, best_b) if missed))
+    return NoPair(reason, best_a, best_b, proven=False), 0.0

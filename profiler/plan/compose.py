@@ -33,6 +33,7 @@ from profiler.plan.cheapest_answer import (
     sure_pairs,
 )
 from profiler.plan.link_limits import for_loss, for_objective, link_limits, loss_limit
+from profiler.study.reasons import Outcome
 from profiler.study.requirements import Requirements, Source, lower_antennas, requirements, source_of, spacing_of
 from profiler.study.result import Study
 
@@ -79,6 +80,21 @@ class HeightsPlan:
     def feasible(self) -> bool:
         """Whether a pair of free positions clears every rule, lower antennas of a diversity pair included."""
         return isinstance(self.cheapest, Choice)
+
+    @property
+    def asked_chance(self) -> float | None:
+        """Chance of clearing under which a pair is not sure; None where no error of the terrain is known."""
+        doubt = self.study.hop.confidence
+        return None if doubt is None else doubt.minimum_chance
+
+    @property
+    def outcome(self) -> Outcome:
+        """Whether a hop with the answer's pair passes, as a study of it would say."""
+        if isinstance(self.answer.pair, NoPair):
+            return "fails"
+        chance, asked = self.answer.chance, self.asked_chance
+        too_small = chance is not None and asked is not None and chance.value < asked
+        return "not_sure" if too_small or self.answer.unjudged else "passes"
 
     @property
     def rules(self) -> tuple[Rule, ...]:

@@ -3,7 +3,6 @@
 The heights plan is in `profiler.plan`: a study does without it, and starts faster.
 """
 
-from profiler.study.document import plain, point_table, to_document
 from profiler.study.link import losses_at
 from profiler.study.result import Place, Study
 from profiler.study.run import open_hop_terrain, run_study
@@ -15,8 +14,5 @@ __all__ = [
     "gathered",
     "losses_at",
     "open_hop_terrain",
-    "plain",
-    "point_table",
     "run_study",
-    "to_document",
 ]

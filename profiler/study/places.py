@@ -2,20 +2,42 @@
 
 from __future__ import annotations
 
+from dataclasses import dataclass
+
 import numpy as np
 
-from profiler.geometry import CorridorCheck, RuleCheck, side_of, tight_places
+from profiler.geometry import ROUNDING_M, CorridorCheck, RuleCheck, side_of, tight_places
 from profiler.models import Profile
 from profiler.path import PathLine, beside
 from profiler.study.result import Corridor, Place
 
-__all__ = ["find_places"]
+__all__ = ["Tight", "find_places"]
+
+_FOOT_SHARE, _FOOT_LEAST_M, _FOOT_MOST_M = 0.03, 50.0, 300.0
+"""How far the foot of a mast reaches, as a share of the path within bounds: so near, what the clearance tells is the
+height of the mast (common practice, no source)."""
+
+_RISE, _WITHIN = 0.2, 2.0
+"""How far the surplus rises between two places, and how far above the tightest one still counts, in F1."""
+
+
+@dataclass(frozen=True, slots=True)
+class Tight:
+    """Where one rule is tight; see `profiler.study.result.RuleResult`."""
+
+    critical: Place
+    places: tuple[Place, ...]
+    feet: tuple[Place, Place]
 
 
 def find_places(
     check: RuleCheck, across: CorridorCheck | None, profile: Profile, corridor: Corridor | None, line: PathLine
-) -> tuple[Place, ...]:
-    """Find the separate tight places of one rule, tightest first, each where it is tightest across the path.
+) -> Tight:
+    """Find where one rule is tight, each place where it is tightest across the path.
+
+    Where something is short, the separate places that are, the shortest first. Where all clears, the obstacles away
+    from the masts' feet by their surplus in proportion to F1: a metre to spare under a wide zone is tighter than under
+    a narrow one, and the least surplus of all is mostly the height of a mast.
 
     Parameters
     ----------
@@ -26,13 +48,24 @@ def find_places(
 
     Returns
     -------
-    tuple of Place
-        At least one: the critical place.
+    Tight
     """
     surplus_m = check.surplus_m if across is None else np.minimum(check.surplus_m, across.least_surplus_m)
-    widest_m = float(check.f1_m.max())
-    found = tight_places(surplus_m, rise_m=max(2.0, 0.2 * widest_m), within_m=2.0 * widest_m)
-    return tuple(_place(int(index), check, across, profile, corridor, line) for index in found)
+    distance_m, f1_m = profile.distance_m, check.f1_m
+    length_m, widest_m = float(distance_m[-1]), float(f1_m.max())
+    foot_m = min(max(_FOOT_SHARE * length_m, _FOOT_LEAST_M), _FOOT_MOST_M, length_m / 4)
+    from_a, from_b = np.flatnonzero(distance_m <= foot_m), np.flatnonzero(distance_m >= length_m - foot_m)
+    between = np.arange(from_a[-1] + 1, from_b[0])
+    critical = int(np.argmin(surplus_m))
+    if surplus_m[critical] < -ROUNDING_M or not between.size:
+        found = list(tight_places(surplus_m, rise_m=max(2.0, _RISE * widest_m), within_m=_WITHIN * widest_m))
+    else:
+        found = between[list(tight_places(surplus_m[between] / f1_m[between], rise_m=_RISE, within_m=_WITHIN))].tolist()
+    feet = (int(from_a[np.argmin(surplus_m[from_a])]), int(from_b[np.argmin(surplus_m[from_b])]))
+    critical_place, foot_a, foot_b, *places = (
+        _place(int(index), check, across, profile, corridor, line) for index in (critical, *feet, *found)
+    )
+    return Tight(critical_place, tuple(places), (foot_a, foot_b))
 
 
 def _place(

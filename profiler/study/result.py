@@ -2,8 +2,13 @@
 
 from __future__ import annotations
 
+import math
 from dataclasses import dataclass
 from typing import TYPE_CHECKING
+
+import numpy as np
+
+from profiler.geometry import ROUNDING_M
 
 if TYPE_CHECKING:  # what the hop does not ask for is not loaded
     from profiler.budget import Budget
@@ -12,13 +17,15 @@ if TYPE_CHECKING:  # what the hop does not ask for is not loaded
     from profiler.geometry import CorridorCheck, Reflection, RuleCheck
     from profiler.models import Hop, Profile
     from profiler.path import PathLine
+    from profiler.remarks import Note
     from profiler.study.climate_numbers import ClimateUse
     from profiler.study.link import Air
     from profiler.study.outage import OutageResult
+    from profiler.study.verdict import Verdict
     from profiler.terrain import SourceUse
     from profiler.units import Float
 
-__all__ = ["Corridor", "Place", "Provenance", "Relief", "RuleResult", "Study", "TerrainUse", "Verdict"]
+__all__ = ["Corridor", "Place", "Provenance", "Relief", "RuleResult", "Study", "TerrainUse"]
 
 
 @dataclass(frozen=True, slots=True)
@@ -50,18 +57,30 @@ class Place:
         """Ground plus cover, above the vertical datum."""
         return self.ground_m + self.cover_m
 
+    @property
+    def tightness(self) -> tuple[bool, float]:
+        """What orders places by how tight they are: short ones by how much, the others in proportion to the zone."""
+        if self.surplus_m < -ROUNDING_M:
+            return False, self.surplus_m
+        return True, self.surplus_m / self.f1_m if self.f1_m > 0 else math.inf
+
 
 @dataclass(frozen=True, slots=True, eq=False)
 class RuleResult:
     """One rule along the path and across it, with the angles and the reflections at its k.
 
     ``corridor`` is None for a rule that asks for no part of the Fresnel zone: nothing beside the path matters to it.
-    ``places`` are the separate tight places, on the path or beside it, tightest first.
+    ``critical`` is the place of least surplus anywhere. ``places`` are the separate tight places, on the path or beside
+    it, the one that an engineer would name first: where something is short, that which is shortest; where all clears,
+    the obstacle away from the masts' feet that comes nearest to the zone in proportion to it. ``feet`` are the places
+    of least surplus around the foot of the mast at A and at B.
     """
 
     check: RuleCheck
     corridor: CorridorCheck | None
+    critical: Place
     places: tuple[Place, ...]
+    feet: tuple[Place, Place]
     elevation_a_deg: float
     elevation_b_deg: float
     reflections: tuple[Reflection, ...]
@@ -72,9 +91,16 @@ class RuleResult:
         return self.check.passes and (self.corridor is None or self.corridor.passes)
 
     @property
-    def critical(self) -> Place:
-        """The place of least surplus."""
+    def tightest(self) -> Place:
+        """The place that an engineer would name."""
         return self.places[0]
+
+    @property
+    def least_surplus_m(self) -> Float:
+        """Least surplus at each point of the path, over the width of the zone where that was checked, (n,)."""
+        if self.corridor is None:
+            return self.check.surplus_m
+        return np.minimum(self.check.surplus_m, self.corridor.least_surplus_m)
 
 
 @dataclass(frozen=True, slots=True)
@@ -118,22 +144,6 @@ class Relief:
 
 
 @dataclass(frozen=True, slots=True)
-class Verdict:
-    """Whether the hop passes, and the sentence that says why, in metres and in feet.
-
-    ``passes`` needs every rule met, a fade margin of 0 dB or more where one is known, and the objective met where one
-    is set. ``has_margin`` is None without a radio that has a threshold.
-    """
-
-    passes: bool
-    clears: bool
-    has_margin: bool | None
-    meets_objective: bool | None
-    headline: str
-    headline_feet: str
-
-
-@dataclass(frozen=True, slots=True)
 class Provenance:
     """What somebody else needs to get the same numbers."""
 
@@ -171,10 +181,15 @@ class Study:
     relief: Relief | None
     verdict: Verdict
     provenance: Provenance
-    assumptions: tuple[str, ...]
-    warnings: tuple[str, ...]
+    assumptions: tuple[Note | str, ...]
+    warnings: tuple[Note | str, ...]
 
     @property
     def governing(self) -> RuleResult:
-        """The rule with the least surplus at its critical place."""
-        return min(self.rules, key=lambda result: result.critical.surplus_m)
+        """The rule that decides: the one whose tightest place is tightest."""
+        return self.by_tightness[0]
+
+    @property
+    def by_tightness(self) -> tuple[RuleResult, ...]:
+        """The rules in the order in which a reader wants them, the one that decides first."""
+        return tuple(sorted(self.rules, key=lambda result: result.tightest.tightness))

@@ -11,16 +11,17 @@ import numpy as np
 from profiler.errors import InputError, under
 from profiler.geometry import check_corridor, check_rule, elevation_angle, find_reflections
 from profiler.models import ConfidenceChoice, Hop, Rule
+from profiler.remarks import Note, k_text, note
 from profiler.study.climate_numbers import ClimateUse, climate_numbers
 from profiler.study.ground import Ground, read_ground, require_above_cover
+from profiler.study.ground_warnings import ground_warnings
 from profiler.study.link import Air, Link, air_along, link
 from profiler.study.places import find_places
 from profiler.study.provenance import provenance
 from profiler.study.result import RuleResult, Study
 from profiler.study.said_once import gathered
-from profiler.study.verdict import ground_warnings, judge
+from profiler.study.verdict import judge
 from profiler.terrain import Terrain, open_terrain, require_inside
-from profiler.units import Float
 
 if TYPE_CHECKING:
     from profiler.confidence import Confidence
@@ -113,7 +114,7 @@ def run_study(hop: Hop, terrain: Terrain | None = None, *, relief: bool = False,
         corridor=ground.corridor,
         climate=climate,
         relief=ground.relief,
-        verdict=judge(hop, rules, found.budget, found.outage.meets),
+        verdict=judge(hop, profile.distance_m, rules, found.budget, found.outage, confidence),
         provenance=provenance(hop, ground.files),
         assumptions=_assumptions(hop, ground, climate, air, found),
         warnings=(*_lower_warnings(lower), *_warnings(hop, ground, rules, air, found)),
@@ -139,10 +140,13 @@ def _check(hop: Hop, ground: Ground, rule: Rule, centre_a_m: float, centre_b_m: 
         corridor = check_corridor(*beside, *path[2:], rule)
     elevation_a_deg, elevation_b_deg = _angles(ground, centre_a_m, centre_b_m, rule.k)
     check = check_rule(*path, rule)
+    tight = find_places(check, corridor, profile, ground.corridor, ground.line)
     return RuleResult(
         check=check,
         corridor=corridor,
-        places=find_places(check, corridor, profile, ground.corridor, ground.line),
+        critical=tight.critical,
+        places=tight.places,
+        feet=tight.feet,
         elevation_a_deg=elevation_a_deg,
         elevation_b_deg=elevation_b_deg,
         reflections=find_reflections(*path, k=rule.k),
@@ -174,18 +178,12 @@ def _confidence(hop: Hop, ground: Ground, climate: ClimateUse, rules: Sequence[R
             choice,
             cell_m=ground.terrain.finest_cell_m,
             surveyed=(bool(profile.surveyed[0]), bool(profile.surveyed[-1])),
-            beside_m=np.stack([_beside(result) for result in rules]),
+            beside_m=np.stack([result.check.surplus_m - result.least_surplus_m for result in rules]),
             k_percentiles=percentiles,
         )
 
 
-def _beside(result: RuleResult) -> Float:
-    """How much less surplus the ground beside the path leaves than the path itself, metres, (n,)."""
-    along = result.check.surplus_m
-    return np.zeros_like(along) if result.corridor is None else np.maximum(along - result.corridor.least_surplus_m, 0.0)
-
-
-def _assumptions(hop: Hop, ground: Ground, climate: ClimateUse, air: Air, found: Link) -> tuple[str, ...]:
+def _assumptions(hop: Hop, ground: Ground, climate: ClimateUse, air: Air, found: Link) -> tuple[Note | str, ...]:
     """Everything that was assumed, in the order of the stages, each thing once."""
     terrain = ground.terrain
     sources = gathered((use.info.path.name, note) for use in terrain.sources for note in use.notes)
@@ -196,13 +194,20 @@ def _assumptions(hop: Hop, ground: Ground, climate: ClimateUse, air: Air, found:
                 *hop.assumptions,
                 *climate.assumptions,
                 *(f"{site.name}: {note}" for site in (hop.site_a, hop.site_b) for note in site.position_notes),
-                f"ground between cell centres: {terrain.method}, exact along the path however densely it is listed",
-                f"vertical datum: {datum}",
+                note(
+                    "ground",
+                    f"ground between cell centres: {terrain.method}, exact along the path however densely it is listed",
+                ),
+                note("ground", "vertical datum: {}", datum),
                 *sources,
                 *terrain.notes,
                 *terrain.cover_notes,
-                f"diffraction: {hop.diffraction_method} over ground and cover; budget at k = {climate.median_k:.3g}",
-                f"air: {air.source}",
+                note(
+                    "diffraction",
+                    f"diffraction: {hop.diffraction_method} over ground and cover; budget at k ="
+                    f" {k_text(climate.median_k)}",
+                ),
+                note("air", "air: {}", str(air.source)),
                 *(_doubt_assumptions(hop.confidence) if hop.confidence is not None else ()),
                 *(found.budget.assumptions if found.budget is not None else ()),
                 *found.outage.assumptions,
@@ -211,10 +216,10 @@ def _assumptions(hop: Hop, ground: Ground, climate: ClimateUse, air: Air, found:
     )
 
 
-def _doubt_assumptions(choice: ConfidenceChoice) -> tuple[str, ...]:
+def _doubt_assumptions(choice: ConfidenceChoice) -> tuple[Note, ...]:
     return (
-        f"terrain error: {choice.terrain_source}",
-        "terrain error: ground beside the path has the error of the path's own point next to it",
+        note("confidence", "terrain error: {}", choice.terrain_source),
+        note("confidence", "terrain error: ground beside the path has the error of the path's own point next to it"),
     )
 
 
@@ -228,14 +233,14 @@ def _lower_antennas(hop: Hop, ground: Ground, median_k: float) -> tuple[Diversit
     return lower_antennas(hop, ground.profile, ground.corridor, median_k, antenna_a_m=a_m, antenna_b_m=b_m)
 
 
-def _lower_warnings(ends: Sequence[DiversityEnd]) -> tuple[str, ...]:
+def _lower_warnings(ends: Sequence[DiversityEnd]) -> tuple[Note | str, ...]:
     """Warn of lower antennas of a diversity pair that lack the clearance under which their improvement is credited."""
     return tuple(
         f"diversity at {end.notes[0]}; no improvement is credited to what it receives" for end in ends if not end.clears
     )
 
 
-def _warnings(hop: Hop, ground: Ground, rules: Sequence[RuleResult], air: Air, found: Link) -> tuple[str, ...]:
+def _warnings(hop: Hop, ground: Ground, rules: Sequence[RuleResult], air: Air, found: Link) -> tuple[Note | str, ...]:
     """Every warning of every stage, each once."""
     return tuple(
         dict.fromkeys(

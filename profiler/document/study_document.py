@@ -2,14 +2,10 @@
 
 from __future__ import annotations
 
-import math
-from dataclasses import fields, is_dataclass
-from pathlib import Path
 from typing import TYPE_CHECKING, Any
 
-import numpy as np
-
-from profiler.geometry import ray_height
+from profiler.document.plain_values import plain
+from profiler.words import METRES, headline, reason_words, step_words, steps_words
 
 if TYPE_CHECKING:
     from profiler.budget import Budget, Direction
@@ -17,34 +13,9 @@ if TYPE_CHECKING:
     from profiler.models import Site
     from profiler.study.result import RuleResult, Study
 
-__all__ = ["SCHEMA", "SCHEMA_HEIGHTS", "plain", "point_table", "to_document"]
+__all__ = ["to_document"]
 
-SCHEMA = "hopwright-study/1"
-SCHEMA_HEIGHTS = "hopwright-heights/1"
-
-
-def plain(value: Any) -> Any:
-    """Turn dataclasses into dictionaries, arrays and tuples into lists, paths into text, however deep.
-
-    A number that is not finite becomes None, since JSON has no word for it.
-
-    Examples
-    --------
-    >>> from profiler.models import Rule
-    >>> plain({"rule": Rule(k=1.0, fresnel_fraction=0.6), "at_m": np.array([0.0, np.nan])})
-    {'rule': {'k': 1.0, 'fresnel_fraction': 0.6, 'margin_m': 0.0, 'label': ''}, 'at_m': [0.0, None]}
-    """
-    if is_dataclass(value) and not isinstance(value, type):
-        return {each.name: plain(getattr(value, each.name)) for each in fields(value)}
-    if isinstance(value, dict):
-        return {str(key): plain(each) for key, each in value.items()}
-    if isinstance(value, tuple | list):
-        return [plain(each) for each in value]
-    if isinstance(value, np.ndarray | np.generic):
-        return plain(value.tolist())
-    if isinstance(value, float) and not math.isfinite(value):
-        return None
-    return str(value) if isinstance(value, Path) else value
+_SCHEMA = "hopwright-study/1"
 
 
 def to_document(study: Study) -> dict[str, Any]:
@@ -62,7 +33,7 @@ def to_document(study: Study) -> dict[str, Any]:
         ``confidence``, ``verdict``, ``provenance``. A part that the hop gives no data for is None.
     """
     return {
-        "schema": SCHEMA,
+        "schema": _SCHEMA,
         "hop": _hop(study),
         "path": _path(study),
         "terrain": plain(study.terrain),
@@ -71,12 +42,32 @@ def to_document(study: Study) -> dict[str, Any]:
         "budget": None if study.budget is None else _budget(study.budget),
         "availability": _availability(study),
         "confidence": _confidence(study),
-        "verdict": {
-            **plain(study.verdict),
-            "assumptions": list(study.assumptions),
-            "warnings": list(study.warnings),
-        },
+        "verdict": _verdict(study),
         "provenance": plain(study.provenance),
+    }
+
+
+def _verdict(study: Study) -> dict[str, Any]:
+    """Give the verdict with its words, in metres, and what was assumed and is to be beware of."""
+    verdict = study.verdict
+    reasons = [
+        {"test": each.test, "outcome": each.outcome, **plain(each), "text": reason_words(each, study, METRES)}
+        for each in verdict.reasons
+    ]
+    steps = [{"kind": each.kind, **plain(each), "text": step_words(each, study, METRES)} for each in verdict.next_step]
+    return {
+        "outcome": verdict.outcome,
+        "chance": None if verdict.chance is None else verdict.chance.value,
+        "minimum_chance": verdict.minimum_chance,
+        "headline": headline(study, METRES),
+        "tested": list(verdict.tested),
+        "clears": verdict.clears,
+        "has_margin": verdict.has_margin,
+        "meets_objective": verdict.meets_objective,
+        "reasons": reasons,
+        "next_step": {"text": steps_words(study, METRES), "any_of": steps},
+        "assumptions": plain(study.assumptions),
+        "warnings": plain(study.warnings),
     }
 
 
@@ -125,6 +116,7 @@ def _rule(result: RuleResult) -> dict[str, Any]:
         "line_of_sight": check.line_of_sight,
         "critical": plain(result.critical),
         "tight": plain(result.places),
+        "feet": plain(result.feet),
         "across": None if result.corridor is None else _across(result.corridor),
         "elevation_a_deg": result.elevation_a_deg,
         "elevation_b_deg": result.elevation_b_deg,
@@ -168,33 +160,3 @@ def _confidence(study: Study) -> dict[str, Any] | None:
         del row["surplus"], row["rule"]
         row |= {"k": found.rule.k, "fresnel_fraction": found.rule.fresnel_fraction, "margin_m": found.rule.margin_m}
     return document
-
-
-def point_table(study: Study) -> tuple[list[str], np.ndarray]:
-    """Give the point table: the names of its columns and the numbers, one row for each point of the path.
-
-    Columns: position, ground, cover, ray, and for each rule (numbered from 1 in the order of the study) bulge, F1,
-    clearance, required clearance, surplus and ratio on the path, the least surplus over the width of the zone and the
-    offset where that is; with a confidence analysis, the 5 % and 95 % surplus too.
-    """
-    profile = study.profile
-    columns: dict[str, Any] = {
-        "distance_m": profile.distance_m,
-        "longitude": profile.longitude,
-        "latitude": profile.latitude,
-        "ground_m": profile.ground_m,
-        "cover_m": profile.cover_m,
-        "ray_m": ray_height(profile.distance_m, study.centre_a_m, study.centre_b_m),
-        "filled": profile.filled.astype(float),
-    }
-    for number, result in enumerate(study.rules, start=1):
-        check, corridor = result.check, result.corridor
-        for name in ("bulge_m", "f1_m", "clearance_m", "required_m", "surplus_m", "ratio"):
-            columns[f"rule{number}_{name}"] = getattr(check, name)
-        columns[f"rule{number}_least_surplus_m"] = check.surplus_m if corridor is None else corridor.least_surplus_m
-        columns[f"rule{number}_offset_m"] = np.zeros(check.f1_m.size) if corridor is None else corridor.need.offset_m
-        if study.confidence is not None:
-            band = study.confidence.rules[number - 1].surplus
-            columns[f"rule{number}_surplus_5_percent_m"] = band.low_m
-            columns[f"rule{number}_surplus_95_percent_m"] = band.high_m
-    return list(columns), np.column_stack(list(columns.values()))

@@ -4,12 +4,15 @@ from __future__ import annotations
 
 from typing import Any
 
+from profiler.document.plain_values import plain
 from profiler.heights import Choice, Least, MountingSheet, NoPair, Stretch
 from profiler.plan.cheapest_answer import Answer, SurePair
 from profiler.plan.compose import HeightsPlan
-from profiler.study.document import SCHEMA_HEIGHTS, plain
+from profiler.words import METRES, remedies_words
 
 __all__ = ["heights_document"]
+
+_SCHEMA = "hopwright-heights/1"
 
 
 def heights_document(plan: HeightsPlan) -> dict[str, Any]:
@@ -29,7 +32,7 @@ def heights_document(plan: HeightsPlan) -> dict[str, Any]:
     """
     choice = plan.cheapest
     return {
-        "schema": SCHEMA_HEIGHTS,
+        "schema": _SCHEMA,
         "hop": plan.study.hop.name,
         "least_equal_m": plan.least_equal.height_m,
         "least_equal_for": _source(plan, plan.least_equal),
@@ -52,7 +55,7 @@ def heights_document(plan: HeightsPlan) -> dict[str, Any]:
         "for_loss": plain(plan.for_loss),
         "for_objective": plain(plan.for_objective),
         "sure": [_sure(plan, each) for each in plan.sure] or None,
-        "assumptions": list(plan.study.assumptions),
+        "assumptions": plain(plan.study.assumptions),
         "provenance": plain(plan.study.provenance),
     }
 
@@ -72,7 +75,7 @@ def _why_not(plan: HeightsPlan, choice: Choice | NoPair) -> dict[str, Any] | Non
     if isinstance(choice, Choice):
         return None
     lower = [{**plain(each), **plain(plan.source(each.point, each.rule))} for each in choice.lower]
-    return {**plain(choice), "lower": lower, "remedies": list(choice.remedies)}
+    return {**plain(choice), "lower": lower, "remedies": remedies_words(plan, choice, METRES)}
 
 
 def _answer(plan: HeightsPlan, answer: Answer) -> dict[str, Any]:

@@ -1,0 +1,94 @@
+"""Fade margin, outage and objective in words."""
+
+from __future__ import annotations
+
+from typing import TYPE_CHECKING
+
+from profiler.remarks import db_text, outage_text, ratio_text, time_text
+
+if TYPE_CHECKING:
+    from profiler.availability.objective import ObjectiveResult, TargetResult
+    from profiler.availability.predict import Availability
+    from profiler.study.result import Study
+
+__all__ = [
+    "PROPAGATION_ONLY",
+    "achieved_text",
+    "asked_text",
+    "limit_text",
+    "margin_words",
+    "needs_text",
+    "outage_sentence",
+]
+
+PROPAGATION_ONLY = "by propagation alone: failures of equipment and power are not counted"
+
+_LIMITS = {
+    "multipath": "multipath",
+    "selective": "selective fading",
+    "rain": "rain",
+    "obstruction": "obstruction",
+    "no margin": "the missing margin",
+}
+_COUNTED = {
+    "worst_month_percent": "of the worst month",
+    "year_percent": "of the year",
+    "severely_errored_seconds_ratio": "of the seconds of the worst month severely errored",
+    "errored_seconds_ratio": "of the seconds of the worst month errored",
+}
+
+
+def limit_text(limit: str) -> str:
+    """Name a mechanism of outage."""
+    return _LIMITS[limit]
+
+
+def _amount(target: TargetResult, value: float) -> str:
+    if target.unit == "min":
+        return time_text(value)
+    amount = outage_text(value) if target.unit == "%" else ratio_text(value)
+    return f"{amount} {_COUNTED[target.name]}"
+
+
+def asked_text(target: TargetResult) -> str:
+    """Say what a target asks for."""
+    return _amount(target, target.required)
+
+
+def achieved_text(target: TargetResult) -> str:
+    """Say what is reached in the measure of a target, and what it could be at most."""
+    reached = _amount(target, target.achieved)
+    if target.achieved_up_to > target.achieved:
+        return f"{reached}, at most {_amount(target, target.achieved_up_to)}"
+    return reached
+
+
+def needs_text(objective: ObjectiveResult | TargetResult) -> str:
+    """Say which fade margin meets an objective, and what decides."""
+    if objective.required_margin_db is None:
+        return f"has no fade margin that is sure to do, because of {limit_text(objective.margin_set_by)}"
+    return (
+        f"needs a fade margin of {db_text(objective.required_margin_db)}; {limit_text(objective.margin_set_by)} decides"
+    )
+
+
+def outage_sentence(outage: Availability) -> str:
+    """Say how long the hop is out, and by what."""
+    if outage.limited_by == "no margin":
+        return "out all the time: the level is below the threshold"
+    return f"out {time_text(outage.year_minutes)}, most by {limit_text(outage.limited_by)}"
+
+
+def margin_words(study: Study) -> str:
+    """Say what fade margin there is, what is needed, and how long the hop is out."""
+    if study.budget is None:
+        return "No radio is given, so there is no fade margin"
+    row = study.budget.weaker()[1]
+    if row.fade_margin_db is None:
+        return f"Received level {db_text(row.received_dbm, 'dBm')}; no threshold is given, so there is no fade margin"
+    margin, outage = db_text(row.fade_margin_db), study.outage.availability
+    if outage is None:
+        return f"Fade margin {margin}; no outage is predicted, as no climate numbers are given"
+    if outage.objective is None:
+        return f"Fade margin {margin}; {outage_sentence(outage)}; no objective is given"
+    return f"Fade margin {margin}, and the objective {needs_text(outage.objective)}; {outage_sentence(outage)}"
