@@ -5,7 +5,7 @@ from __future__ import annotations
 import numpy as np
 from numpy.typing import ArrayLike
 
-from profiler.errors import InputError, MissingGroundError
+from profiler.errors import Bare, InputError, MissingGroundError
 from profiler.units import Float
 
 __all__ = ["check_profile", "finite", "not_negative", "positive", "within"]
@@ -49,7 +49,7 @@ def within(name: str, values: ArrayLike, low: float, high: float, allowed: str, 
     array = np.asarray(values, dtype=float)
     inside = ((array > low) if above else (array >= low)) & (array <= high)
     if not inside.all():
-        raise InputError(f"{name} = {array[~inside].flat[0]:g}: must be {allowed}")
+        raise InputError(field=name, value=Bare(f"{array[~inside].flat[0]:g}"), allowed=allowed)
     return array
 
 

@@ -15,6 +15,7 @@ __all__ = [
     "SPEED_OF_LIGHT_M_S",
     "STATUTE_MILE_M",
     "US_SURVEY_FOOT_M",
+    "ZERO_CELSIUS_K",
     "Float",
     "db_from_ratio",
     "dbm_from_watts",
@@ -43,6 +44,9 @@ US_SURVEY_FOOT_M = 1200.0 / 3937.0
 
 STATUTE_MILE_M = 5280 * FOOT_M
 """Exact: statute mile of international feet."""
+
+ZERO_CELSIUS_K = 273.15
+"""Exact: 0 °C in kelvin (BIPM, SI Brochure, 9th edition, 2019)."""
 
 MINUTES_PER_YEAR = 365.25 * 1440.0
 """Minutes of a year of 365.25 days (the Julian year of the IAU)."""

@@ -250,7 +250,6 @@ def run() -> int:
     # every fork has these loaded then
     for library in (
         "matplotlib.figure",
-        "pydantic",
         "rich.table",
         "scipy.special",
         "profiler.plan",

@@ -39,7 +39,6 @@ RANKS = {
 }
 
 SOLE_USERS = {
-    "pydantic": {"hopfile"},
     "rasterio": {"terrain"},
     "pyproj": {"path", "terrain"},
     "itur": {"climate"},

@@ -263,8 +263,8 @@ def test_antenna_statements_that_agree():
         ({"line_loss_db": -1.0}, "line_loss_db = -1.0: must be 0 dB or more"),
         ({"efficiency": 55.0}, "efficiency = 55.0: .*a fraction, not percent"),
         ({"diameter_m": 0.0}, "diameter_m = 0.0: must be more than 0 m"),
-        ({"power_dbm": math.nan}, "power_dbm = nan: must be a finite level"),
-        ({"gain_dbi": math.inf}, "gain_dbi = inf: must be a finite gain"),
+        ({"power_dbm": math.nan}, "power_dbm = nan: must be a finite number of dBm"),
+        ({"gain_dbi": math.inf}, "gain_dbi = inf: must be a finite number of dBi"),
     ],
 )
 def test_terminal_refuses_impossible_values(fields, message):
@@ -273,9 +273,9 @@ def test_terminal_refuses_impossible_values(fields, message):
 
 
 def test_radio_refuses_negative_losses_and_modes_of_one_name():
-    with pytest.raises(InputError, match=r"other loss radome = -1\.0: must be 0 dB or more"):
+    with pytest.raises(InputError, match=r"other_losses_db\.radome = -1\.0: must be 0 dB or more"):
         replace(RADIO, other_losses_db=(("radome", -1.0),))
-    with pytest.raises(InputError, match="mode names = QPSK, QPSK: must be different"):
+    with pytest.raises(InputError, match="name = 'QPSK': must be another name than"):
         replace(RADIO, modes=(QPSK, QPSK))
 
 

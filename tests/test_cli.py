@@ -659,7 +659,7 @@ def test_outputs_that_cannot_be(refused, words, message):
         ('"46.0, 9.0"', '"46.18, 9.0"', "site_b = '46.180000, 9.000000': must be another place than site_a"),
         ('"46.0, 9.0"', '"somewhere"', "site_a.position = 'somewhere': must be a position"),
         ('"46.0, 9.0"', '"95, 9"', "site_a.position = '95, 9': must be a latitude of -90 to 90 degrees"),
-        ('"1.0-and-0.3-f1"', '"high"', "rules.preset = 'high': must be one of p530-isolated,"),
+        ('"1.0-and-0.3-f1"', '"high"', "rules.preset = 'high': must be one of 'p530-isolated',"),
         ('preset = "1.0-and-0.3-f1"', "", "rules.preset = (missing): must be given"),
         ('preset = "1.0-and-0.3-f1"', "rule = [{k = 0, fresnel_fraction = 1}]", "rules.rule[0].k = 0: must be 0.1"),
         ("dem.tif", "gone.tif", "terrain.paths[0] = 'gone.tif': must be a raster or a folder of rasters that is there"),
@@ -679,7 +679,7 @@ def test_outputs_that_cannot_be(refused, words, message):
          "bit_error_ratio = 1e-6", "bad.toml: radio: mode QPSK: modulation = FM: must be BPSK, QPSK"),
         ("dn1_n_km = -300\n", "", "bad.toml: availability.dn1_n_km = not given: must be given for multipath_method"),
         ("draws = 200", "draws = 2", "confidence.draws = 2: must be 100 to 1000000"),
-        ("highest_m = 60\n[", "highest_m = 60\nlowest_m = 70\n[", "heights.a.highest_m = 60.0: must be at least"),
+        ("highest_m = 60\n[", "highest_m = 60\nlowest_m = 70\n[", "heights.a.highest_m = 60: must be at least"),
     ],
 )  # fmt: skip
 def test_a_bad_hop_file(refused, here, old, new, message):

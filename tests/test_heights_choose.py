@@ -236,5 +236,5 @@ def test_contradictory_limits_are_refused():
             cheapest(HILL, *towers)
     with pytest.raises(InputError, match="highest_m = 5: must be at least lowest_m = 10"):
         TowerChoice(lowest_m=10, highest_m=5)
-    with pytest.raises(InputError, match="cost_per_m = -1: must be 0 or more"):
+    with pytest.raises(InputError, match="cost_per_m = -1: must be 0 to 1000000000"):
         TowerChoice(cost_per_m=-1)

@@ -347,7 +347,7 @@ def test_modulation_of_a_threshold_from_noise_must_be_known():
         ("bit_error_ratio", 0.5, "under 0.5"),
         ("coding_gain_db", -1.0, "0 dB or more"),
         ("implementation_loss_db", math.nan, "0 dB or more"),
-        ("threshold_dbm", math.nan, "finite level"),
+        ("threshold_dbm", math.nan, "a finite number of dBm"),
     ],
 )
 def test_a_mode_refuses_impossible_values(field, value, allowed):

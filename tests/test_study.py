@@ -27,6 +27,7 @@ from profiler.models import (
     AvailabilityChoice,
     ConfidenceChoice,
     CoverChoice,
+    DiffractionChoice,
     HeightsChoice,
     Hop,
     Objective,
@@ -175,7 +176,9 @@ def test_the_path_is_the_meridian(land):
 
 
 def test_a_sharp_ridge_is_a_knife_edge(land):
-    hop = hop_over(land(ridge(60.0)), diffraction_method="knife-edge", rules=(Rule(4 / 3, 1.0),), radio=RADIO)
+    hop = hop_over(
+        land(ridge(60.0)), diffraction=DiffractionChoice("knife-edge"), rules=(Rule(4 / 3, 1.0),), radio=RADIO
+    )
     study = run_study(hop)
     [loss], check = study.diffraction, study.rules[0].check
     d1 = study.profile.distance_m[check.critical]

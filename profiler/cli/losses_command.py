@@ -54,7 +54,7 @@ def _show(study: Study, by_k: dict[float, tuple[DiffractionLoss, ...]], *, quiet
     screen = console(color=color)
     table = compact_table("diffraction loss, dB", *(f"k = {k:.3f}" for k in by_k))
     for rows in zip(*by_k.values(), strict=True):
-        chosen = rows[0].method == study.hop.diffraction_method
+        chosen = rows[0].method == study.hop.diffraction.method
         name = rows[0].method + (" (chosen)" if chosen else "")
         table.add_row(name, *(f"{loss.loss_db:.2f}" for loss in rows), style="bold" if chosen else "")
     show_table(screen, table)

@@ -7,8 +7,8 @@ from copy import deepcopy
 from typing import Any
 
 from profiler.errors import InputError
-from profiler.hopfile.keys import LENGTHS_M
 from profiler.hopfile.reader import parse_tables
+from profiler.models.key_units import LENGTHS_M
 
 __all__ = ["with_antennas"]
 

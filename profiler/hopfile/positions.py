@@ -117,7 +117,7 @@ def parse_position(text: str) -> tuple[float, float]:
             return _both_degrees(_iso_angle(iso[1], iso[2], "lat"), _iso_angle(iso[3], iso[4], "lon"))
         return _both_degrees(*_only_pair(text))
     except _UnreadableError as problem:
-        raise InputError(f"position = {' '.join(text.split())!r}: must be {problem}") from None
+        raise InputError(field="position", value=" ".join(text.split()), allowed=str(problem)) from None
 
 
 def _iso_angle(sign: str, digits: str, axis: str) -> _Angle:

@@ -68,10 +68,6 @@ PRESETS: Mapping[str, Preset] = MappingProxyType(
 """The presets by name; `expand_preset` turns one into rules."""
 
 
-_SUCCESSORS = {"high-reliability": "1.0-and-0.3-f1", "light-route": "0.6-f1-plus-3m"}
-"""Names that presets had before."""
-
-
 def expand_preset(name: str, *, median_k: float = K_MEDIAN, low_k: float | None = None) -> tuple[Rule, ...]:
     """Spell out a preset as rules.
 
@@ -106,20 +102,18 @@ def expand_preset(name: str, *, median_k: float = K_MEDIAN, low_k: float | None 
     -----
     Sources: in the table; P.530 asks for the greater height of its two rules, which is what holding both does.
     """
-    if name in _SUCCESSORS:
-        raise InputError(f"preset = {name!r}: is called {_SUCCESSORS[name]!r} now, with the same rules")
     if name not in PRESETS:
-        raise InputError(f"preset = {name!r}: must be one of {', '.join(PRESETS)}")
+        raise InputError(field="preset", value=name, allowed=f"one of {', '.join(PRESETS)}")
     preset = PRESETS[name]
     if preset.needs_low_k and low_k is None:
-        raise InputError(
-            f"low_k = (missing): must be given beside preset {name!r}: the k exceeded for about 99.9 % of the worst "
-            "month, which Rec. ITU-R P.530 Figure 2 gives by path length"
+        told = (
+            "the k exceeded for about 99.9 % of the worst month, which Rec. ITU-R P.530 Figure 2 gives by path length"
         )
+        raise InputError(field="low_k", allowed=f"given beside preset {name!r}: {told}")
     if low_k is not None and not preset.needs_low_k:
-        raise InputError(f"low_k = {low_k:g}: must be left out beside preset {name!r}, which fixes its k")
+        raise InputError(field="low_k", value=low_k, allowed=f"left out beside preset {name!r}, which fixes its k")
     if low_k is not None and not low_k < median_k:
-        raise InputError(f"low_k = {low_k:g}: must be below the median k of {median_k:.4g}")
+        raise InputError(field="low_k", value=low_k, allowed=f"below the median k of {median_k:.4g}")
     values = {"median": median_k, "low": low_k if low_k is not None else median_k}
     return tuple(
         Rule(

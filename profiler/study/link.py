@@ -102,7 +102,7 @@ def losses_at(
     """Diffraction loss of a hop at each k, each k once, by the hop's own method unless another is named."""
     once = tuple(dict.fromkeys(ks))
     losses = diffract_over_k(
-        hop.diffraction_method if method is None else method,
+        hop.diffraction.method if method is None else method,
         profile.distance_m,
         profile.surface_m,
         centre_a_m,
@@ -110,7 +110,7 @@ def losses_at(
         hop.frequency_hz,
         once,
         polarization=hop.polarization,
-        sea_fraction=hop.sea_fraction,
+        sea_fraction=hop.diffraction.sea_fraction,
         cell_m=cell_m,
     )
     return dict(zip(once, losses, strict=True))
@@ -119,7 +119,7 @@ def losses_at(
 def _loss_over_k(hop: Hop, profile: Profile, centre_a_m: float, centre_b_m: float, cell_m: float, k: Float) -> Float:
     """Diffraction loss of a hop at many k, by its own method."""
     return losses_over_k(
-        hop.diffraction_method,
+        hop.diffraction.method,
         profile.distance_m,
         profile.surface_m,
         centre_a_m,
@@ -127,7 +127,7 @@ def _loss_over_k(hop: Hop, profile: Profile, centre_a_m: float, centre_b_m: floa
         hop.frequency_hz,
         k,
         polarization=hop.polarization,
-        sea_fraction=hop.sea_fraction,
+        sea_fraction=hop.diffraction.sea_fraction,
         cell_m=cell_m,
     )
 

@@ -16,7 +16,7 @@ from profiler.terrain import file_hash, library_versions
 
 __all__ = ["provenance"]
 
-_LIBRARIES = ("numpy", "scipy", "rasterio", "pyproj", "matplotlib", "pydantic")
+_LIBRARIES = ("numpy", "scipy", "rasterio", "pyproj", "matplotlib")
 
 
 @cache

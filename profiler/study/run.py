@@ -204,7 +204,7 @@ def _assumptions(hop: Hop, ground: Ground, climate: ClimateUse, air: Air, found:
                 *terrain.cover_notes,
                 note(
                     "diffraction",
-                    f"diffraction: {hop.diffraction_method} over ground and cover; budget at k ="
+                    f"diffraction: {hop.diffraction.method} over ground and cover; budget at k ="
                     f" {k_text(climate.median_k)}",
                 ),
                 note("air", "air: {}", str(air.source)),
