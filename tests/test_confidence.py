@@ -602,7 +602,7 @@ def test_method_states_what_was_assumed():
         ({"step_m": -1.0}, "step_m = -1.0: must be more than 0 m"),
         ({"step_m": 1.0}, r"draws = 20000: must be at most 12500 at steps of 1 m along this path of 20.00 km"),
         ({"cover_relative_sigma": -0.1}, "cover_relative_sigma = -0.1"),
-        ({"covariance": "spherical"}, "covariance = 'spherical': must be 'exponential' or 'gaussian'"),
+        ({"covariance": "spherical"}, "covariance = 'spherical': must be one of 'exponential', 'gaussian'"),
         ({"draws": 10}, "draws = 10: must be 100 to 1000000"),
         ({"seed": -1}, "seed = -1: must be 0 or more"),
         ({"rules": ()}, "rules: none given"),
