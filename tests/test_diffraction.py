@@ -156,6 +156,11 @@ def literal_smooth_heights(d, h, hts, hrs):
     return hts - min(hst, h[0]), hrs - min(hsr, h[-1])
 
 
+def everywhere(whole):
+    """Points of a path so dense, the more the nearer to its ends, that the maxima over smooth ground are met."""
+    return whole / (1 + np.exp(-np.linspace(-14, 14, 4001)))
+
+
 def wild_hop(rng, points):
     """Return a random profile with uneven spacing, antennas over it, GHz and an effective radius in km."""
     d = np.concatenate([[0], np.cumsum(rng.uniform(0.02, 1.0, points - 1))])
@@ -170,14 +175,15 @@ def test_delta_bullington_is_the_published_construction_step_by_step(seed):
     result = delta_bullington(d * 1000, h, a, b, ghz * 1e9, ae * 1000)
     lam = SPEED_OF_LIGHT_M_S / (ghz * 1e9)
     over_a, over_b = literal_smooth_heights(d, h, a, b)
-    smooth = literal_bullington(d, np.zeros_like(d), over_a, over_b, lam, ae)
+    dense = np.concatenate([[0], everywhere(d[-1]), d[-1:]])
+    smooth = literal_bullington(dense, np.zeros_like(dense), over_a, over_b, lam, ae)  # smooth ground is no points
     assert float(result.bullington_db) == pytest.approx(literal_bullington(d, h, a, b, lam, ae), abs=1e-9)
     assert float(result.effective_a_m) == pytest.approx(over_a, abs=1e-9)
     assert float(result.effective_b_m) == pytest.approx(over_b, abs=1e-9)
-    assert float(result.smooth_bullington_db) == pytest.approx(smooth, abs=1e-9)
+    assert float(result.smooth_bullington_db) == pytest.approx(smooth, abs=1e-4)
     sphere = float(spherical_earth(d[-1] * 1000, over_a, over_b, ghz * 1e9, ae * 1000))
     assert float(result.spherical_db) == pytest.approx(sphere, abs=1e-6)
-    assert float(result.total_db) == pytest.approx(float(result.bullington_db) + max(sphere - smooth, 0), abs=1e-6)
+    assert float(result.total_db) == pytest.approx(float(result.bullington_db) + max(sphere - smooth, 0), abs=1e-4)
 
 
 # Laws ----------------------------------------------------------------------------------------------------------------
@@ -259,11 +265,13 @@ def test_a_higher_frequency_costs_more_behind_an_obstacle_and_less_over_it(metho
 @given(hop=hops(), ground=st.floats(-100, 3000))
 def test_flat_ground_is_the_spherical_earth(hop, ground):
     d, h, a, b, frequency, radius = hop
-    flat = delta_bullington(d, np.full_like(h, ground), ground + a - h[0], ground + b - h[-1], frequency, radius)
+    dense = np.concatenate([[0], everywhere(d[-1]), d[-1:]])
+    level = np.full_like(dense, ground)
+    flat = delta_bullington(dense, level, ground + a - h[0], ground + b - h[-1], frequency, radius)
     sphere = float(spherical_earth(d[-1], a - h[0], b - h[-1], frequency, radius))
     assert float(flat.spherical_db) == pytest.approx(sphere, abs=1e-6)
-    assert float(flat.bullington_db) == pytest.approx(float(flat.smooth_bullington_db), abs=1e-6)
-    assert float(flat.total_db) == pytest.approx(max(sphere, float(flat.bullington_db)), abs=1e-6)
+    assert float(flat.bullington_db) == pytest.approx(float(flat.smooth_bullington_db), abs=1e-4)
+    assert float(flat.total_db) == pytest.approx(max(sphere, float(flat.bullington_db)), abs=1e-4)
 
 
 @given(hop=hops(), datum=st.floats(-400, 4000))

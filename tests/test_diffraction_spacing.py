@@ -157,8 +157,8 @@ def test_points_added_on_the_line_between_points_change_nothing(method, name):
     more = np.unique(np.concatenate([coarse, FINE[2005::5], coarse[1::3] - 1e-3, rng.uniform(0, LENGTH, 200)]))
     tilted = np.interp(more, coarse, ground - coarse * 1e-3)
     before, after = losses_of(method, coarse, ground - coarse * 1e-3), losses_of(method, more, tilted)
-    # the earth's bulge is not straight between points 100 m apart: 0.15 mm
-    assert after == pytest.approx(before, abs=0.3 if method in (double_edge, cascaded_knife_edges) else 0.02)
+    # an edge that fades in may stand between points; the earth's bulge is not straight over 100 m either: 0.15 mm
+    assert after == pytest.approx(before, abs=0.3 if method in (double_edge, cascaded_knife_edges) else 0.002)
 
 
 @pytest.mark.parametrize("method", [each for each in EVERY if each is not rounded_obstacle])

@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable
 from dataclasses import dataclass
 from typing import Any
 
@@ -106,39 +105,37 @@ def _delta_kernel(block: Block) -> tuple[NDArray[Any], ...]:
     return (*bullington_points(block), smooth_a, smooth_b)
 
 
-def _greatest(hops: Hops, values_at: Callable[[Float], Float], count: int) -> Float:
-    """Maxima over the inner points of each hop of functions of t with a single maximum each, found by bisection.
-
-    Over smooth ground every quantity of the construction has one maximum, so that a few looks per hop replace a look
-    at every point. `values_at` takes a t for each function and hop, `(count, hops)`, and gives their values there.
-    """
-    hop_count, points = hops.height_m.shape
-    low = np.zeros((count, hop_count), dtype=np.intp)
-    high = np.full((count, hop_count), points - 3, dtype=np.intp)
-    while (low < high).any():
-        middle = (low + high) // 2
-        after = np.minimum(middle + 1, points - 3)
-        rising = values_at(hops.fraction_at(after)) > values_at(hops.fraction_at(middle))
-        low, high = np.where(rising & (low < high), after, low), np.where(rising, high, middle)
-    return values_at(hops.fraction_at(low))
-
-
 def _smooth_bullington(hops: Hops, height_a_m: Float, height_b_m: Float) -> Float:
-    """Bullington's loss over smooth ground at height 0 with the same points, the antennas at the given heights."""
+    """Bullington's loss over smooth ground at height 0, the antennas at the given heights.
+
+    Smooth ground is the same everywhere, so the greatest slopes and the greatest ν are those of the whole path and not
+    of its points: the loss does not depend on how densely a path is drawn.
+    """
     bulge = hops.bulge_m
-
-    def values_at(t: Float) -> Float:
-        to_a, to_b, to_chord = t
-        bow = to_chord * (1.0 - to_chord)
-        from_a = bulge * (1.0 - to_a) - height_a_m * (1.0 - to_a) / to_a - height_b_m
-        from_b = bulge * to_b - height_b_m * to_b / (1.0 - to_b) - height_a_m
-        weighted = (bulge * bow - height_a_m * (1.0 - to_chord) - height_b_m * to_chord) / np.sqrt(bow)
-        return np.stack([from_a, from_b, weighted])
-
-    p, q, highest = _greatest(hops, values_at, 3)
+    # p(t) = (bulge − hA/t)(1 − t) − hB is greatest where t² = hA/bulge; from there on only the far end is seen
+    p, q = (
+        bulge * np.maximum(1.0 - np.sqrt(near / np.maximum(bulge, 1e-300)), 0.0) ** 2 - far
+        for near, far in ((height_a_m, height_b_m), (height_b_m, height_a_m))
+    )
+    highest = _nearest_to_smooth(bulge, height_a_m, height_b_m)
     crest = np.where((p >= 0) & (q >= 0), np.sqrt(np.maximum(p, 0.0) * np.maximum(q, 0.0)), highest)
     nu = crest * np.sqrt(2.0 / (hops.wavelength_m * hops.length_m))
     return _whole_loss(knife_edge_loss(nu), hops.length_m)
+
+
+def _nearest_to_smooth(bulge_m: Float, height_a_m: Float, height_b_m: Float) -> Float:
+    """Greatest of (rise over the ray)/sqrt(t(1 − t)) over smooth ground, metres.
+
+    With u² = t/(1 − t) it is bulge·u/(1 + u²) − hA/u − hB·u, which has one maximum: where its slope changes sign.
+    """
+    low, high = np.full(bulge_m.shape, -7.0), np.full(bulge_m.shape, 7.0)  # ln u: a millionth of the path from the ends
+    for _ in range(24):
+        middle = (low + high) / 2.0
+        square = np.exp(2.0 * middle)
+        rising = bulge_m * (1.0 - square) / (1.0 + square) ** 2 + height_a_m / square > height_b_m
+        low, high = np.where(rising, middle, low), np.where(rising, high, middle)
+    u = np.exp((low + high) / 2.0)
+    return np.asarray(bulge_m * u / (1.0 + u * u) - height_a_m / u - height_b_m * u)
 
 
 def bullington(
@@ -248,10 +245,11 @@ def delta_bullington(
     Source: Rec. ITU-R P.526-15 §4.5, as in P.452 and P.1812. The wavelength is c/f with the exact c, where the source
     rounds to 0.2998/f: at most 0.006 dB in the published validation examples.
 
-    The loss converges as the points come closer. On 60 obstructed paths of 4 to 37 km over a canyon, at 6 GHz and in
-    ground of 3″ cells, it differs from that with points 5 m apart by 0.4, 0.6 and 1.4 dB (root mean square; 4 dB at
-    most) with points 10, 25 and 100 m apart: the top of a ridge may lie between two points. L_smooth converges last,
-    where an antenna has next to no height above the smooth surface.
+    L_smooth is taken over the whole of the smooth ground, not at the profile's points, so that points added on the line
+    between points change nothing (at the points it made up to 12 dB with a point next to a low antenna); the published
+    validation examples come out alike to 1e-4 dB. What is left is whether the points meet the tops: on 60 obstructed
+    paths of 4 to 37 km over a canyon, at 6 GHz and in ground of 3″ cells, the loss with points 10, 25 and 100 m apart
+    differs from that with points 5 m apart by 0.2, 0.5 and 1.3 dB (root mean square).
     """
     sea = check_surface(polarization, sea_fraction)
     hops = Hops.of(distance_m, height_m, centre_a_m, centre_b_m, frequency_hz, effective_radius_m)
