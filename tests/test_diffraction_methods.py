@@ -130,6 +130,16 @@ def test_two_edges_warn_of_a_third():
     assert diffract("double-edge", D, peak(15e3, 190), 100.0, 100.0, 6e9, K).warnings == ()
 
 
+def test_edges_that_count_in_part_are_warned_of_where_it_matters():
+    ground = np.maximum(peak(15e3, 300, 100), peak(15.2e3, 300, 100))
+    for method in ("double-edge", "cascaded-edges"):
+        [line] = diffract(method, D, ground, 100.0, 100.0, 6e9, K).warnings
+        assert line.startswith(
+            f"{method}: the edge 15.000 km from A stands near the principal one and counts in part: "
+        )
+    assert diffract("cascaded-edges", D, peak(15e3, 190), 100.0, 100.0, 6e9, K).warnings == ()
+
+
 def test_two_edges_say_so_when_the_greater_alone_loses_more_than_their_formula_gives():
     ground = np.maximum(peak(15e3, 120), peak(15.5e3, 118))
     loss = diffract("double-edge", D, ground, 100.0, 100.0, 6e9, math.inf)

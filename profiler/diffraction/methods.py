@@ -183,8 +183,11 @@ def _rounded_doubts(inputs: Inputs, found: RoundedLosses) -> list[str]:
     return lines
 
 
-_MATTERS_DB = 3.0
-"""Loss of an edge left out, or counted in part, that is worth a line."""
+_LEFT_OUT_DB = 3.0
+"""Loss of an edge left out that is worth a line."""
+
+_FADED_DB = 7.0
+"""The same of an edge that counts in part: every hill has ground beside its top that would cost 6 dB, J(0)."""
 
 
 def _faded(found: EdgeLosses) -> list[str]:
@@ -196,7 +199,7 @@ def _faded(found: EdgeLosses) -> list[str]:
         f"{gap:.1f} dB more. That an edge counts in full from 500 m, or a tenth of the way to the nearer end, is this "
         "project's own rule"
         for at, gap in rows
-        if gap > _MATTERS_DB
+        if gap > _FADED_DB
     ]
 
 
@@ -204,7 +207,7 @@ def _double_doubts(inputs: Inputs, found: DoubleLosses) -> list[str]:
     cascade = cascaded_knife_edges(*inputs.path)
     lines = _faded(cascade)
     for at, loss_db in zip(cascade.distance_m.tolist(), cascade.edge_loss_db.tolist(), strict=True):
-        if loss_db > _MATTERS_DB and at not in found.distance_m:
+        if loss_db > _LEFT_OUT_DB and at not in found.distance_m:
             lines.append(f"a third edge, {at / 1000:.3f} km from A, is left out: cascaded-edges counts it")
     if found.floor_db > 0:
         published_db = float(found.loss_db - found.floor_db)
