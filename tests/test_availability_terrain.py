@@ -98,6 +98,11 @@ def test_statistics_that_are_refused(percent, excess, message):
         KStatistics(percent, excess)
 
 
+def test_a_percentage_without_a_score_is_refused():
+    with pytest.raises(InputError, match="must be percentages that the normal distribution knows"):
+        k_statistics([(5e-324, 0.8), (50.0, 4 / 3)], 4 / 3, np.zeros_like)
+
+
 @given(st.floats(-180.0, 180.0), st.floats(-85.0, 85.0))
 def test_grid_spans_110_km(longitude, latitude):
     from geographiclib.geodesic import Geodesic

@@ -14,6 +14,7 @@ from profiler.document import to_document
 from profiler.models import (
     AvailabilityChoice,
     DiversityChoice,
+    HeightsChoice,
     Hop,
     Objective,
     Radio,
@@ -22,6 +23,7 @@ from profiler.models import (
     Site,
     Terminal,
     TerrainChoice,
+    TowerChoice,
 )
 from profiler.plan import plan_heights
 from profiler.study import run_study
@@ -126,7 +128,8 @@ def test_the_heights_hold_every_mode_to_its_objective(land):
     received = run_study(hop_over(land(40.0), site_a=Site("south", 9.0, 46.0, 150.0))).budget.b_to_a.received_dbm
     easy = mode("QPSK", received - 60.0, year_percent=1.0)
     hard = mode("16-QAM", received - 42.0, year_percent=0.001)
-    hop = hop_over(land(40.0), radio=radio(easy, hard))
+    tower = TowerChoice(lowest_m=30, highest_m=120, step_m=3)
+    hop = hop_over(land(40.0), radio=radio(easy, hard), heights=HeightsChoice(tower, tower))
     plans = {
         name: plan_heights(run_study(replace(hop, radio=radio(*modes)), losses=False))
         for name, modes in (("easy", (easy,)), ("both", (easy, hard)))

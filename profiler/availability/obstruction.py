@@ -88,6 +88,10 @@ def k_statistics(
         percent, k = np.append(percent, _MEDIAN_PERCENT), np.append(k, closing)
         assumptions = (f"obstruction fading: the k given end below 50 %; there k = {closing:.4g}, the median",)
     score = ndtri(percent / 100.0)
+    if not np.isfinite(score).all():
+        raise InputError(
+            f"k_percentiles = {percent.tolist()} %: must be percentages that the normal distribution knows"
+        )
     pieces = np.ceil(np.diff(score) / _SCORE_STEP).astype(int)
     knots = np.append(0, pieces.cumsum())
     fine = np.interp(np.arange(knots[-1] + 1), knots, score)
