@@ -10,7 +10,7 @@ given by ``--keep``, and makes the exit code 1.
 from __future__ import annotations
 
 import argparse
-import importlib
+import io
 import json
 import os
 import random
@@ -23,6 +23,7 @@ import tempfile
 import time
 from collections import Counter
 from collections.abc import Callable, Iterator
+from contextlib import redirect_stdout, suppress
 from dataclasses import dataclass
 from pathlib import Path
 
@@ -247,15 +248,7 @@ def run() -> int:
     parser.add_argument("--seed", type=int, default=1)
     parser.add_argument("--keep", type=Path, default=ROOT / "out" / "fuzz", help="folder for what shows a finding")
     given = parser.parse_args()
-    # every fork has these loaded then
-    for library in (
-        "matplotlib.figure",
-        "rich.table",
-        "scipy.special",
-        "profiler.plan",
-        "profiler.cli.app",
-    ):
-        importlib.import_module(library)
+    warm_up()
     signal.signal(signal.SIGINT, signal.default_int_handler)  # nohup has it ignored, and children would
     findings: list[Finding] = []
     for name, trial, count in (
@@ -268,6 +261,13 @@ def run() -> int:
     for what, often in Counter(finding.what for finding in findings).most_common():
         print(f"  {often} x {what}")
     return 1 if findings else 0
+
+
+def warm_up() -> None:
+    """Run some commands here, so that every fork has loaded what they need."""
+    for words in (("study", "-q"), ("heights", "-q"), ("losses", "-q"), ("reach",), ("study",)):
+        with redirect_stdout(io.TextIOWrapper(io.BytesIO())), suppress(SystemExit):
+            main([words[0], str(SAMPLES / "ridge_to_mill.toml"), *words[1:]])
 
 
 if __name__ == "__main__":

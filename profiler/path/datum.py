@@ -195,13 +195,16 @@ def _check_area(system: CRS, x: float, y: float, longitude: float, latitude: flo
 def _operation_note(group: TransformerGroup) -> str:
     """Name the operation taken, its stated accuracy, and a better one that lacks its grid."""
     taken = group.transformers[0]
-    name = " + ".join(part for part in taken.description.split(" + ") if not part.startswith("axis order change"))
-    if taken.accuracy < 0 or "allpark" in name:
+    steps = [step for step in taken.operations or () if not step.name.startswith("axis order change")]
+    name = " + ".join(step.name for step in steps) or taken.description
+    # PROJ 9.8 states no accuracy for a conversion, which has no error, where older ones state 0
+    accuracy = 0.0 if steps and all(step.type_name == "Conversion" for step in steps) else taken.accuracy
+    if accuracy < 0 or "allpark" in name:
         note = f"{name}: no datum shift is known here, so the position may be off by 100 m and more (ballpark)"
         best = math.inf
     else:
-        sure = f"stated accuracy {taken.accuracy:g} m" if taken.accuracy else "exact"
-        note, best = f"{name}, {sure}", taken.accuracy
+        sure = f"stated accuracy {accuracy:g} m" if accuracy else "exact"
+        note, best = f"{name}, {sure}", accuracy
     better = [op for op in group.unavailable_operations if 0 <= op.accuracy < best]
     if better:
         first = min(better, key=lambda op: op.accuracy)
