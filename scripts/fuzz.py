@@ -121,14 +121,15 @@ def try_hop(chance: random.Random, folder: Path) -> tuple[str, str, str | None]:
 def try_raster(chance: random.Random, folder: Path) -> tuple[str, str, str | None]:
     """Study the hop that a wall stops over an odd raster or a mutant of one."""
     kind = chance.choice(sorted(odd_rasters.KINDS))
-    raster = odd_rasters.mutated(kind, folder, chance.randrange(2**32))
+    damaged = chance.random() < 0.5
+    raster = odd_rasters.mutated(kind, folder, chance.randrange(2**32)) if damaged else odd_rasters.KINDS[kind](folder)
     words = ["study", str(odd_rasters.write_hop(folder, raster)), "-q"]
     Path("words.json").write_text(json.dumps([kind, *words]))
     found = attempt(words)
     wrong = fault(found.code, found.out, found.err, found.seconds)
     if found.code == 0 and wrong is None:
         wrong = "passes, though a wall stands in the way"
-    return kind.partition("_")[0], f"exit code {found.code}", wrong
+    return f"{'damaged' if damaged else 'odd'} {kind.partition('_')[0]}", f"exit code {found.code}", wrong
 
 
 WRITERS = (
