@@ -316,3 +316,22 @@ def test_names_that_are_no_utf_8(here):
         assert done.stderr.count(b"\n") == (1 if done.returncode == 2 else 0), done.stderr
         seen_safe(done.stdout.decode() + done.stderr.decode())
     assert (here / os.fsdecode(b"new\xff.toml")).exists()
+
+
+def test_files_with_such_names_are_studied_and_forge_no_line(run, here):
+    """The hop file and the terrain have an end of line, a color and a turn of the writing in their names."""
+    evil = "\nforged \x1b[32m\u202e"
+    (here / "land").mkdir()
+    raster, hop = f"land/dem{evil}.tif", f"hop{evil}.toml"
+    (here / "dem.tif").rename(here / raster)
+    (here / hop).write_text(HOP.replace("dem.tif", "land"))
+    for words in (
+        ("study", hop), ("heights", hop), ("losses", hop), ("reach", hop), ("terrain", raster, "--hop", hop),
+        ("terrain", "land", "--all", "--hop", hop), ("study", hop, "--json", f"out{evil}.json"),
+        ("heights", hop, "--write", f"copy{evil}.toml"), ("starter", f"new{evil}.toml"),
+        ("study", hop, "--json", raster),
+    ):  # fmt: skip
+        code, out, err = run(*words)
+        assert code == (2 if words[0] == "reach" or words[-1] == raster else 0), err
+        seen_safe(out + err)
+        assert not [line for line in (out + err).splitlines() if line.startswith("forged")], out + err

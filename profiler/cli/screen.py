@@ -7,6 +7,7 @@ from textwrap import TextWrapper
 from typing import TYPE_CHECKING, Literal
 
 from profiler.cli.safe_screen import safe_hook
+from profiler.printable import printable
 
 if TYPE_CHECKING:
     from rich.console import Console
@@ -64,7 +65,7 @@ def show_notes(screen: Console, title: str, notes: tuple[str, ...], style: str =
     if notes:
         say(screen, f"\n{title}", "bold " + style)
         for note in notes:
-            say(screen, f"  - {note}", style, hang=4)
+            say(screen, f"  - {printable(note)}", style, hang=4)  # a line feed in it is that of some name
 
 
 def compact_table(*headers: str, words: tuple[str, ...] = (), wraps: str | None = None) -> Table:

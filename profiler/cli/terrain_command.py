@@ -12,6 +12,7 @@ import click
 from profiler.cli.hop_options import named
 from profiler.cli.output import check_targets, json_text, put
 from profiler.errors import HopwrightError
+from profiler.printable import printable
 
 if TYPE_CHECKING:
     from rich.console import Console
@@ -118,9 +119,11 @@ def _show(
     ground = "" if share is None else f"{share:.1%} of the path has ground"
     if stop is None:
         filled = "" if share == 1.0 else ", the rest is interpolated, as the hop file allows"
-        say(screen, f"\n{hop.source}: {ground}{filled}", "bold")
+        say(screen, f"\n{printable(hop.source)}: {ground}{filled}", "bold")
     else:
-        say(screen, f"\n{hop.source}: cannot be studied on this terrain{ground and ': '}{ground}", "bold red")
+        say(
+            screen, f"\n{printable(hop.source)}: cannot be studied on this terrain{ground and ': '}{ground}", "bold red"
+        )
         say(screen, stop, "red")
 
 
