@@ -206,7 +206,10 @@ def left_behind(outputs: list[str], number: signal.Signals, err: bytes) -> str |
             return f"some of {', '.join(outputs)} are new, some old"
         if stray := [path.name for path in Path().iterdir() if path.name.startswith(".")]:
             return f"left {', '.join(stray)}"
-    return f"said {err.decode(errors='replace')[:300]}" if b"Traceback" in err or err.count(b"\n") > 1 else None
+    # Ctrl-C in the first hundredths of a second finds Python itself still loading: none of our modules is in its words
+    python_loads = number is signal.SIGINT and str(ROOT).encode() not in err
+    said = err.decode(errors="replace")[:300]
+    return None if not said or python_loads or ": not written, since " in said else f"said {said}"
 
 
 def tried(name: str, trial: Trial, count: int, seed: int, keep: Path) -> Iterator[Finding]:
@@ -228,6 +231,8 @@ def tried(name: str, trial: Trial, count: int, seed: int, keep: Path) -> Iterato
             print(f"{name} {number} ({kind}): {wrong}", file=sys.stderr, flush=True)
             yield Finding(f"{name} {number}", wrong, kept)
         shutil.rmtree(folder)
+        if number % 1000 == 999:
+            print(f"{name}: {number + 1} so far", file=sys.stderr, flush=True)
     minutes = (time.monotonic() - begun) / 60.0
     print(f"{name}: {count} in {minutes:.1f} min, seed {seed}")
     for title, counts in (("tried", kinds), ("came to", results)):

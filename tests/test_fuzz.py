@@ -25,7 +25,7 @@ def here(tmp_path, monkeypatch):
     return tmp_path
 
 
-@settings(max_examples=120, suppress_health_check=[HealthCheck.function_scoped_fixture])
+@settings(max_examples=80, suppress_health_check=[HealthCheck.function_scoped_fixture])
 @given(
     text=st.sampled_from(good_hops()),
     mutations=MUTATIONS,
