@@ -23,6 +23,9 @@ def main(arguments: list[str] | None = None) -> NoReturn:
         Always, with the exit code.
     """
     if arguments is None:
+        from profiler.cli.signals import end_by_signals
+
+        end_by_signals()
         from profiler.cli.process import settle_process
 
         settle_process()

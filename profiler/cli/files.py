@@ -5,12 +5,11 @@ from __future__ import annotations
 import os
 import secrets
 import shutil
-import signal
-import threading
 from collections.abc import Iterator, Sequence
 from contextlib import contextmanager, suppress
 from pathlib import Path
 
+from profiler.cli.signals import signals_held
 from profiler.errors import InputError
 
 __all__ = ["real_path", "require_writable", "write_all"]
@@ -61,7 +60,7 @@ def write_all(files: Sequence[tuple[Path, bytes]]) -> None:
         if _is_stream(path):
             with _blamed(path):
                 path.write_bytes(data)
-    with _signals_held():
+    with signals_held():
         _replace_all([(path, real_path(path), data) for path, data in files if not _is_stream(path)])
 
 
@@ -131,25 +130,3 @@ def _blamed(path: Path) -> Iterator[None]:
         yield
     except OSError as error:
         raise InputError(f"{path}: {error.strerror}: must be a file that can be written here; name another") from error
-
-
-@contextmanager
-def _signals_held() -> Iterator[None]:
-    """Let no signal that ends a program come between; those that came act right after."""
-    if threading.current_thread() is not threading.main_thread():  # signals go to the main thread
-        yield
-        return
-    came: list[int] = []
-    ending = [getattr(signal, name) for name in ("SIGINT", "SIGTERM", "SIGHUP") if hasattr(signal, name)]
-    before = {
-        number: signal.signal(number, lambda number, _: came.append(number))
-        for number in ending
-        if signal.getsignal(number) not in (signal.SIG_IGN, None)
-    }
-    try:
-        yield
-    finally:
-        for number, handler in before.items():
-            signal.signal(number, handler)
-        for number in dict.fromkeys(came):
-            signal.raise_signal(number)

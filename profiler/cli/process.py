@@ -8,7 +8,6 @@ import importlib
 import io
 import logging
 import os
-import signal
 import sys
 import warnings
 from contextlib import suppress
@@ -29,24 +28,10 @@ def settle_process() -> None:
     atexit.register(gc.freeze)  # 14 %: the last look for garbage, at the very end
     os.environ.setdefault("OPENBLAS_NUM_THREADS", "1")  # 10 %; before numpy loads: over so little, threads only wait
     forget_surroundings()
-    _end_by_signals()
     _open_streams()
     # what a library has to say about itself is no line of ours, and PYTHONWARNINGS=error must not stop a study
     warnings.simplefilter("ignore")
     logging.disable(logging.CRITICAL)
-
-
-def _end_by_signals() -> None:
-    """Let Ctrl-C, and whoever stops reading, end the process at once and quietly, with no exit code of ours.
-
-    Python would raise an error instead: not before a raster library returns from its work, and with a traceback while
-    modules load. What must not be cut short (see `profiler.cli.files`) holds the signals back.
-    """
-    for name in ("SIGINT", "SIGPIPE"):
-        number = getattr(signal, name, None)
-        ignored = name == "SIGINT" and signal.getsignal(signal.SIGINT) is signal.SIG_IGN  # by nohup and the like
-        if number is not None and not ignored:
-            signal.signal(number, signal.SIG_DFL)
 
 
 def _open_streams() -> None:
