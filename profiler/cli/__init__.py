@@ -3,7 +3,10 @@
 from __future__ import annotations
 
 import sys
-from typing import NoReturn
+
+TYPE_CHECKING = False  # typing takes longer to load than all else that comes before Ctrl-C is settled
+if TYPE_CHECKING:
+    from typing import NoReturn
 
 __all__ = ["main"]
 
