@@ -600,7 +600,11 @@ def test_method_states_what_was_assumed():
         ({"cell_m": 0.0}, "cell_m = 0: must be"),
         ({"cell_m": np.nan}, "cell_m = nan: must be"),
         ({"step_m": -1.0}, "step_m = -1.0: must be more than 0 m"),
-        ({"step_m": 1.0}, r"draws = 20000: must be at most 12500 at steps of 1 m along this path of 20.00 km"),
+        ({"step_m": 1.0}, r"step_m = 1: must be at least 1.6 m for 20000 draws along this path of 20.00 km"),
+        (
+            {"draws": 200_000, "cell_m": 2.0},
+            r"draws = 200000: must be at most 50000 at steps of 4 m along this path of 20.00 km",
+        ),
         ({"cover_relative_sigma": -0.1}, "cover_relative_sigma = -0.1"),
         ({"covariance": "spherical"}, "covariance = 'spherical': must be one of 'exponential', 'gaussian'"),
         ({"draws": 10}, "draws = 10: must be 100 to 1000000"),

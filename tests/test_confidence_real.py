@@ -5,6 +5,9 @@ drawn by Cholesky's factor at cells that begin anywhere, and the rule is written
 are four standard errors of a difference of two estimates.
 """
 
+from dataclasses import replace
+from pathlib import Path
+
 import numpy as np
 import pytest
 import rasterio
@@ -12,7 +15,12 @@ from geographiclib.geodesic import Geodesic
 from scipy.interpolate import RegularGridInterpolator
 
 from profiler.confidence import assess
-from profiler.models import ConfidenceChoice, Rule
+from profiler.hopfile import load_hop
+from profiler.models import ConfidenceChoice, HeightsChoice, Hop, Rule, Site, TerrainChoice, TowerChoice
+from profiler.plan import plan_heights
+from profiler.study import run_study
+
+ROOT = Path(__file__).resolve().parent.parent
 
 CELL_M, FREQUENCY_HZ, DRAWS, SPARE_M = 92.0, 7.5e9, 4000, 4.0
 HOPS = {
@@ -150,3 +158,74 @@ def test_the_interval_holds_the_truth_for_19_seeds_in_20(hop):
     found = [assessed(hop, draws=400, seed=seed, step_m=300.0).chance for seed in range(60)]
     inside = sum(each.low <= truth <= each.high for each in found)
     assert inside >= 52  # of 60 at 95 %: fewer has a probability of 0.3 %
+
+
+# Whole studies: the spacing of the hop file has no say in any of it
+
+
+def canyon_hop(real_terrain):
+    """Give a hop from the mesa to the plateau that clears by some 4 m on the map."""
+    return Hop(
+        name="canyon",
+        site_a=Site("mesa", -113.20, 37.35, 818.0),
+        site_b=Site("plateau", -112.95, 37.18, 798.0),
+        frequency_hz=FREQUENCY_HZ,
+        rules=(Rule(4 / 3, 1.0), Rule(2 / 3, 0.3)),
+        terrain=TerrainChoice((real_terrain / "canyon_srtm_3arcsec.tif",)),
+        confidence=ConfidenceChoice(4.0, "test", 120.0, terrain_offset_sigma_m=3.0),
+        heights=HeightsChoice(TowerChoice(700, 900, step_m=2.0), TowerChoice(700, 900, step_m=2.0)),
+    )
+
+
+def sample_hop(_):
+    """Give the sample hop over its lowered antennas, so that some draws are short."""
+    hop = load_hop(ROOT / "sample_dem" / "ridge_to_mill.toml")
+    ends = replace(hop.site_a, antenna_m=17.0), replace(hop.site_b, antenna_m=19.0)
+    return replace(hop, site_a=ends[0], site_b=ends[1])
+
+
+@pytest.mark.parametrize("make", [canyon_hop, sample_hop])
+def test_chance_band_sure_heights_shares_and_places_are_equal_at_every_spacing(make, real_terrain):
+    hop = make(real_terrain)
+    studies = [
+        run_study(replace(hop, terrain=replace(hop.terrain, spacing_m=spacing_m)), losses=False)
+        for spacing_m in (40.0, 10.0, 2.0)
+    ]
+    first, *others = (study.confidence for study in studies)
+    assert 0.5 < first.chance.value < 0.99
+    at_m = studies[0].profile.distance_m[::7]
+    for other, study in zip(others, studies[1:], strict=True):
+        assert first.chance.low <= other.chance.value <= first.chance.high
+        for one, another in zip(first.sure, other.sure, strict=True):
+            assert one.raise_low_m <= another.raise_m <= one.raise_high_m
+        for one, another in zip(first.rules, other.rules, strict=True):
+            assert one.chance.low <= another.chance.value <= one.chance.high
+            assert another.least_low_m == pytest.approx(one.least_low_m, abs=0.1)
+            # estimates of a share are good to a few percent of the whole; the draws are the same
+            assert another.shares.terrain == pytest.approx(one.shares.terrain, abs=0.01)
+            rows = np.searchsorted(study.profile.distance_m, at_m)
+            same = study.profile.distance_m[rows] == at_m
+            assert same.sum() > 20
+            assert another.surplus.low_m[rows[same]] == pytest.approx(one.surplus.low_m[::7][same], abs=1e-3)
+        assert [place.site for place in other.survey] == [place.site for place in first.survey]
+        for one, another in zip(first.survey, other.survey, strict=True):
+            assert another.distance_m == pytest.approx(one.distance_m, abs=150.0)
+            assert another.share_of_doubt == pytest.approx(one.share_of_doubt, abs=0.05)
+
+
+@pytest.mark.parametrize("make", [canyon_hop, sample_hop])
+def test_the_planned_pair_is_the_same_at_every_spacing_and_passes(make, real_terrain):
+    hop = replace(make(real_terrain), availability=None, radio=None)
+    hop = replace(hop, confidence=replace(hop.confidence, vary_k=False))
+    pairs = set()
+    for spacing_m in (40.0, 5.0):
+        study = run_study(replace(hop, terrain=replace(hop.terrain, spacing_m=spacing_m)), losses=False)
+        plan = plan_heights(study, sure=0.95)
+        pairs.add((plan.answer.pair.antenna_a_m, plan.answer.pair.antenna_b_m))
+    assert len(pairs) == 1
+    a, b = pairs.pop()
+    again = replace(hop, site_a=replace(hop.site_a, antenna_m=a), site_b=replace(hop.site_b, antenna_m=b))
+    again = replace(again, terrain=replace(hop.terrain, spacing_m=5.0))
+    found = run_study(again, losses=False).confidence.chance
+    assert found.value >= 0.95
+    assert found.value == pytest.approx(plan.answer.chance.value, abs=0.002)

@@ -24,6 +24,7 @@ _LOOKS = 4
 """Places in each step: the greatest error of a step is then at most 1 % over the greatest that is looked at."""
 
 _MOST_NUMBERS = 250_000_000
+"""Of a field: 1 GB. What a plan keeps of them is no more in any but the flattest country."""
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -130,15 +131,7 @@ def draw_doubt(
     if not np.all(cover_m >= 0):
         raise InputError(f"cover_m: least value {float(cover_m.min())} m: must be 0 m or more everywhere, no gaps")
     draws, length_m = choice.draws, float(distance_m[-1])
-    positive("cell_m", cell_m, "m")
-    step_m = max(cell_m, length_m / _MOST_NODES) if choice.step_m is None else choice.step_m
-    if draws * length_m / step_m > _MOST_NUMBERS:
-        most = int(_MOST_NUMBERS * step_m / length_m)
-        raise InputError(
-            f"draws = {draws}: must be at most {most} at steps of {step_m:g} m along this path of"
-            f" {length_m / 1e3:.2f} km"
-        )
-    node_m = node_distances(length_m, step_m)
+    node_m = node_distances(length_m, _step(choice, length_m, float(positive("cell_m", cell_m, "m"))))
     places = join_places(distance_m, node_distances(length_m, (node_m[1] - node_m[0]) / _LOOKS))
     terrain_rng, site_rng, cover_rng, k_rng, offset_rng = (
         np.random.default_rng(child) for child in np.random.SeedSequence(choice.seed).spawn(5)
@@ -166,6 +159,19 @@ def draw_doubt(
         cover=cover,
         inverse_k=inverse_k,
     )
+
+
+def _step(choice: ConfidenceChoice, length_m: float, cell_m: float) -> float:
+    """Step of the nodes; more numbers than fit in memory are refused."""
+    step_m = max(cell_m, length_m / _MOST_NODES) if choice.step_m is None else choice.step_m
+    along = f"along this path of {length_m / 1e3:.2f} km"
+    if choice.step_m is None and choice.draws * length_m > _MOST_NUMBERS * step_m:
+        most = int(_MOST_NUMBERS * step_m / length_m)
+        raise InputError(f"draws = {choice.draws}: must be at most {most} at steps of {step_m:.3g} m {along}")
+    if choice.draws * length_m > _MOST_NUMBERS * step_m:
+        least_m = length_m * choice.draws / _MOST_NUMBERS
+        raise InputError(f"step_m = {step_m:g}: must be at least {least_m:.3g} m for {choice.draws} draws {along}")
+    return step_m
 
 
 def _site_errors(

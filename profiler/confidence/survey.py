@@ -21,6 +21,7 @@ _CHANCE_SHARE = 20.0
 
 _MOST_PLACES = 5
 _MOST_POINTS = 15
+_MOST_CANDIDATES = 300
 
 _ONE_PLACE_M = (100.0, 500.0)
 """A crew that measures a point measures what is nearer than this with it: a correlation length, within these limits."""
@@ -51,7 +52,8 @@ def survey_places(
     """
     last = distance_m.size - 1
     critical = np.bincount(doubt.places.nearest[tally.critical], minlength=distance_m.size) / doubt.draws
-    point = np.union1d(np.flatnonzero(critical), (0, last))
+    most_often = np.argsort(-critical, kind="stable")[: min(_MOST_CANDIDATES, np.count_nonzero(critical))]
+    point = np.union1d(most_often, (0, last))
     error = doubt.surface_error(np.flatnonzero(doubt.places.own)[point])
     reach_m = float(np.clip(correlation_m, *_ONE_PLACE_M))
     members: dict[int, list[tuple[int, float]]] = {}
