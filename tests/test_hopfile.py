@@ -209,6 +209,12 @@ def test_terrain_error_in_each_of_its_ways(folder):
     split = confidence("terrain_sigma_m = 3\nterrain_offset_sigma_m = 2\ncorrelation_m = 100")
     assert (split.terrain_sigma_m, split.terrain_offset_sigma_m) == (3, 2)
     assert split.terrain_source == "sigma 3 m (hop file)"
+    both = confidence(
+        "terrain_absolute_le90_m = 9\nterrain_relative_le90_m = 7\ncorrelation_m = 100\nterrain_source = 'producer'"
+    )
+    # 7/(1.645·sqrt 2) = 3.01 local; sqrt((9/1.645)² - 3.01²) = 4.57 offset
+    assert (both.terrain_sigma_m, both.terrain_offset_sigma_m) == pytest.approx((3.01, 4.57), abs=0.005)
+    assert both.terrain_source == "LE90 9 m absolute, 7 m relative (producer)"
     rmse = confidence("terrain_rmse_m = 5\ncorrelation_m = inf")
     assert (rmse.terrain_sigma_m, rmse.correlation_m, rmse.vary_k) == (5, float("inf"), False)
 

@@ -13,7 +13,7 @@ from profiler.hopfile.table import Table, build
 from profiler.models import ConfidenceChoice, Hop, Obstacle, Rule, Site
 from profiler.models.rules import RulesTable
 from profiler.path import geodesic
-from profiler.terrain_error import TERRAIN_ERRORS, sigma_from_le90, sigma_from_rmse
+from profiler.terrain_error import TERRAIN_ERRORS, sigma_from_le90, sigma_from_rmse, split_le90
 from profiler.units import K_MEDIAN
 
 __all__ = ["build_hop"]
@@ -127,6 +127,10 @@ def _confidence(table: Table) -> ConfidenceChoice:
             source += f"; correlated over {kind.correlation_m:g} m: {kind.correlation_source}"
     elif (rmse_m := values.pop("terrain_rmse_m", None)) is not None:
         sigma_m, source = sigma_from_rmse(rmse_m), f"RMSE {rmse_m:g} m ({stated})"
+    elif (relative_m := values.pop("terrain_relative_le90_m", None)) is not None:
+        absolute_m = values.pop("terrain_absolute_le90_m")
+        sigma_m, values["terrain_offset_sigma_m"] = split_le90(absolute_m, relative_m)
+        source = f"LE90 {absolute_m:g} m absolute, {relative_m:g} m relative ({stated})"
     elif (le90_m := values.pop("terrain_le90_m", None)) is not None:
         sigma_m, source = sigma_from_le90(le90_m), f"LE90 {le90_m:g} m / 1.645 ({stated})"
     else:

@@ -13,7 +13,7 @@ TerrainKind = Literal["srtm-1", "srtm-3", "nasadem", "merit", "alos-w3d30", "cop
 
 @dataclass(frozen=True, slots=True)
 class TerrainDoubt(Stated):
-    """How a hop file states the error of the terrain: by the kind of model, or as a number in one of three measures."""
+    """How a hop file states the error of the terrain: by the kind of model, or by numbers of one of four measures."""
 
     FORMS: ClassVar = (
         Forms(
@@ -22,6 +22,7 @@ class TerrainDoubt(Stated):
                 ("terrain_rmse_m", "correlation_m", "terrain_source?", "terrain_offset_sigma_m?"),
                 ("terrain_sigma_m", "correlation_m", "terrain_source?", "terrain_offset_sigma_m?"),
                 ("terrain_le90_m", "correlation_m", "terrain_source?", "terrain_offset_sigma_m?"),
+                ("terrain_absolute_le90_m", "terrain_relative_le90_m", "correlation_m", "terrain_source?"),
             )
         ),
     )
@@ -37,6 +38,19 @@ class TerrainDoubt(Stated):
     terrain_sigma_m: Annotated[float | None, Key("its standard deviation", least=0, most=100, example=4.0)] = None
     terrain_le90_m: Annotated[
         float | None, Key("what 90 % of the errors stay within", least=0, most=150, example=6.6)
+    ] = None
+    terrain_absolute_le90_m: Annotated[
+        float | None,
+        Key("what 90 % of the errors stay within, local noise and offset together", least=0, most=150, example=4.0),
+    ] = None
+    terrain_relative_le90_m: Annotated[
+        float | None,
+        Key(
+            "what 90 % of the differences between two points stay within: local noise alone",
+            least=0,
+            most=150,
+            example=2.0,
+        ),
     ] = None
     terrain_source: Annotated[
         str | None,
