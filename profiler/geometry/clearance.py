@@ -147,25 +147,38 @@ def tight_places(surplus_m: ArrayLike, *, rise_m: float, within_m: float = np.in
     (1, 5)
     """
     surplus = np.asarray(surplus_m, dtype=float)
-    chosen = [int(np.argmin(surplus))]
-    most = max(float(surplus[chosen[0]]), 0.0) + within_m
+    tightest = int(np.argmin(surplus))
+    most = max(float(surplus[tightest]), 0.0) + within_m
     minima = 1 + np.flatnonzero((surplus[1:-1] <= surplus[:-2]) & (surplus[1:-1] < surplus[2:]))
-    for index in minima[np.argsort(surplus[minima], kind="stable")]:
-        if len(chosen) >= places or surplus[index] > most:
+    nodes = np.unique(np.concatenate(([0, tightest, surplus.size - 1], minima)))
+    depth, crest = surplus[nodes].tolist(), np.maximum.reduceat(surplus, nodes)[:-1].tolist()
+    before = _crests_before(depth, crest, equal_hides=True)
+    after = _crests_before(depth[::-1], crest[::-1], equal_hides=False)[::-1]
+    lower_crest = dict(zip(nodes.tolist(), map(min, before, after), strict=True))
+    chosen = [tightest]
+    for index in minima[np.argsort(surplus[minima], kind="stable")].tolist():
+        here = float(surplus[index])
+        if len(chosen) >= places or here > most:
             break
-        if index != chosen[0] and _is_separate(surplus, int(index), chosen, rise_m):
-            chosen.append(int(index))
+        crossed = lower_crest[index]
+        separate = crossed - here >= max(rise_m, 0.2 * max(-here, 0.0)) or here < 0.0 <= crossed
+        if index != tightest and separate:
+            chosen.append(index)
     return tuple(chosen)
 
 
-def _is_separate(surplus: Float, index: int, chosen: list[int], rise_m: float) -> bool:
-    """Whether the way from a minimum to the nearest lower or chosen point, on either side, rises enough."""
-    here = surplus[index]
-    deeper = surplus < here
-    deeper[chosen] = True
-    lower = np.flatnonzero(deeper)
-    before, after = lower[lower < index], lower[lower > index]
-    crests = [surplus[before[-1] : index].max()] if before.size else []
-    crests += [surplus[index : after[0]].max()] if after.size else []
-    needed = max(rise_m, 0.2 * max(-here, 0.0))
-    return all(crest - here >= needed or here < 0.0 <= crest for crest in crests)
+def _crests_before(depth: list[float], crest: list[float], *, equal_hides: bool) -> list[float]:
+    """Highest surplus on the way back from each minimum to the nearest deeper one; infinite where none is deeper.
+
+    ``crest`` is the highest between each minimum and the next. A stack holds the minima that nothing deeper has hidden
+    since, each with the highest on the way to the one under it.
+    """
+    found: list[float] = []
+    stack: list[tuple[float, float]] = []
+    for here, top in zip(depth, [np.inf, *crest], strict=True):
+        highest = top
+        while stack and (stack[-1][0] > here or (stack[-1][0] == here and not equal_hides)):
+            highest = max(highest, stack.pop()[1])
+        found.append(highest if stack else np.inf)
+        stack.append((here, highest))
+    return found

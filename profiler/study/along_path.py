@@ -153,8 +153,9 @@ def _coarse(hop: Hop, terrain: Terrain) -> tuple[PathLine, float, float]:
     """Few equally spaced points of the path, the spacing of the regular points, and the finest cell on the way."""
     length_m, spacing_m = float(geodesic(*hop.ends)[0]), hop.terrain.spacing_m
     coarse = trace(*hop.ends, spacing_m=length_m / _SEARCH_STEPS)
-    # a cell is measured where the path meets its raster first: ask from both ends, or swapping them moves the points
-    cell_m = min(terrain.finest_cell_m(coarse.longitude[::way], coarse.latitude[::way]) for way in (1, -1))
+    # a cell is measured at the first point on its raster: the one nearest to the middle, whichever end is called A
+    outward = np.argsort(np.abs(np.arange(coarse.points) - coarse.points // 2), kind="stable")
+    cell_m = terrain.finest_cell_m(coarse.longitude[outward], coarse.latitude[outward])
     if spacing_m is None:
         spacing_m = length_m / _DEFAULT_STEPS
     elif spacing_m * _FEWEST_STEPS > length_m:
