@@ -90,7 +90,7 @@ def inside_places(crown_m: Float, *, above_m: float, below_m: float) -> tuple[In
 
 
 def zone_places(length_m: float, frequency_hz: float, fresnel_fraction: float, within_m: float) -> Float:
-    """Distances from an antenna, up to half the path, between which a straight line stays near the zone's radius.
+    """Distances from an antenna, up to a quarter of the path, between which straight lines stay near the zone's radius.
 
     The radius grows as √(λ·d) from the antenna. Between d and d′ the root stands (√d′ - √d)²/(4·(√d′ + √d)) above its
     chord; steps that make this the same everywhere put √d at Q times the triangular numbers, Q = 4·within/(f·√λ).
@@ -102,7 +102,8 @@ def zone_places(length_m: float, frequency_hz: float, fresnel_fraction: float, w
     frequency_hz, fresnel_fraction
         The zone: a fraction f of F1, 0 or more.
     within_m
-        How far the radius may stand above such a line, metres.
+        How far the radius may stand above such a line, metres; a quarter of the way it is half as much again, since
+        the other antenna bends it too.
 
     Examples
     --------
@@ -112,7 +113,7 @@ def zone_places(length_m: float, frequency_hz: float, fresnel_fraction: float, w
     if fresnel_fraction == 0.0:
         return np.zeros(0)
     unit = 4.0 * within_m / (fresnel_fraction * float(np.sqrt(wavelength(frequency_hz))))
-    count = int(np.sqrt(2.0 * np.sqrt(0.5 * length_m) / unit))
+    count = int(0.5 * (np.sqrt(1.0 + 4.0 * np.sqrt(length_m) / unit) - 1.0))
     number = np.arange(1.0, count + 1.0)
     return np.asarray((0.5 * unit * number * (number + 1.0)) ** 2)
 
