@@ -312,6 +312,22 @@ def test_a_ridge_screens_the_reflection_on_its_own_side():
     assert [(p.screened_a, p.screened_b) for p in places] == [(True, False)]
 
 
+def test_points_crowded_on_one_part_do_not_turn_the_facets():
+    """A facet is fitted to the length of the ground, not to the number of points that somebody put on a part of it."""
+    x = np.linspace(0, 20e3, 2001)
+    crowded = np.unique(
+        np.concatenate(
+            (x, np.arange(0.0, 20e3, 200.0)[:, None].repeat(30, 1).ravel() + np.tile(np.linspace(0.0, 9.9, 30), 100))
+        )
+    )
+    for ground in (lambda d: 5.0 * np.sin(d / 700.0) + d * 1e-3, lambda d: 8.0 * np.cos(d / 1100.0)):
+        even, uneven = (find_reflections(each, ground(each), 90.0, 60.0, 6e9, k=4 / 3) for each in (x, crowded))
+        assert len(even) == len(uneven) > 0
+        for one, other in zip(even, uneven, strict=True):
+            assert other.distance_m == pytest.approx(one.distance_m, abs=6.0)
+            assert other.roughness_m == pytest.approx(one.roughness_m, abs=0.02)
+
+
 def test_a_bank_next_to_the_place_hides_it():
     """Flat 60 km, 150 m antennas: a 40 m bank 1.7 km before the middle, where the mirrored ray is some 6 m up."""
     x = np.linspace(0, 60e3, 3001)

@@ -313,6 +313,11 @@ def test_surveyed_ground_replaces_the_raster_and_says_by_how_much(land):
     _, theirs, ours = np.intersect1d(raster.profile.distance_m, x, return_indices=True)
     changed = np.flatnonzero(np.abs(study.profile.ground_m[ours] - straight[theirs]) > 1e-9)
     assert 0 < x[ours[changed]].max() < CELL_NS_M
+    north = run_study(hop_over(path, site_b=replace(hop_over(path).site_b, surveyed_ground_m=88.5)))
+    assert north.profile.ground_m[[0, -1]].tolist() == [raster.profile.ground_m[0], 88.5]
+    _, theirs, ours = np.intersect1d(raster.profile.distance_m, north.profile.distance_m, return_indices=True)
+    changed = np.flatnonzero(np.abs(north.profile.ground_m[ours] - straight[theirs]) > 1e-9)
+    assert 0 < north.line.distance_m - north.profile.distance_m[ours[changed]].min() < CELL_NS_M
     assert study.terrain.surveyed_difference_a_m == pytest.approx(93.25 - raster.profile.ground_m[0])
     assert study.terrain.surveyed_difference_b_m is None
     assert study.centre_a_m == 93.25 + 30
@@ -425,6 +430,8 @@ def test_the_finest_raster_wins_and_the_shares_are_told(land, write_raster):
     assert share["ground.tif"] + share["wide.tif"] == pytest.approx(1.0)
     assert share["ground.tif"] == pytest.approx(np.mean(study.profile.ground_m == GROUND_M), abs=0.01)
     assert study.profile.ground_m[[0, -1]].tolist() == [GROUND_M, 50.0]
+    assert np.all(np.diff(study.profile.ground_m) <= 0)  # down at the seam, once
+    assert study.profile.mean_ground_m == pytest.approx(50.0 + 50.0 * share["ground.tif"], abs=1e-3)
     assert study.terrain.finest_cell_m == pytest.approx(CELL_EW_M, rel=1e-2)
 
 
@@ -501,6 +508,10 @@ def test_an_obstacle_counts_where_it_stands(land):
     assert edges == pytest.approx([8000, 8000, 8005, 8005], abs=0.00051)
     assert all(result.check.critical == under[-1] for result in study.rules)
     assert study.verdict.outcome == "fails"
+    pole = run_study(hop_over(land(), cover=CoverChoice(obstacles=(replace(mast, from_m=8003.0, to_m=8003.0),))))
+    assert [result.check.surplus_m.min() for result in pole.rules] == pytest.approx(
+        [result.check.surplus_m.min() for result in study.rules], abs=0.05
+    )
     with pytest.raises(InputError, match=r"obstacle far mast: to_m = 30000: must lie within the 200\d\d m path"):
         run_study(hop_over(land(), cover=CoverChoice(obstacles=(Obstacle("far mast", 29990.0, 30000.0, 5.0),))))
 
@@ -513,6 +524,8 @@ def test_an_antenna_in_its_own_trees_is_named_and_a_clearing_helps(land):
     study = run_study(cleared)
     near = np.minimum(study.profile.distance_m, study.line.distance_m - study.profile.distance_m) <= 50.0
     assert study.profile.cover_m.tolist() == np.where(near, 0.0, 35.0).tolist()
+    edges = study.profile.distance_m[np.flatnonzero(np.diff(near.astype(int)))]  # a hair before or after the trees
+    assert edges == pytest.approx([50.0, study.line.distance_m - 50.0], abs=0.001)
 
 
 def wall(side: int) -> np.ndarray:
