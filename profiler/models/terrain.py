@@ -17,7 +17,7 @@ FillPolicy = Literal["stop", "interpolate"]
 class TerrainChoice(Stated):
     """Where ground heights come from and how they are read.
 
-    ``spacing_m`` None means half the finest cell under the path; ``vertical_datum`` and ``height_unit``
+    ``spacing_m`` is the most that points are apart, None a 200th of the path. ``vertical_datum`` and ``height_unit``
     ("m", "ft") are those of rasters that do not say it themselves. Of rasters of one resolution the one whose path
     stands first answers. ``voids_are_sea`` takes cells without a height for the sea, at 0 m.
     """
@@ -31,7 +31,12 @@ class TerrainChoice(Stated):
     ] = "bilinear"
     spacing_m: Annotated[
         float | None,
-        Key("between points of the path", above=0, left_out="half the finest cell under the path", example=15),
+        Key(
+            "most between listed points; nothing that is found depends on it",
+            above=0,
+            left_out="a 200th of the path",
+            example=50,
+        ),
     ] = None
     missing: Annotated[
         FillPolicy, Key("where the path has no ground; what is interpolated is shown in the result", example="stop")
