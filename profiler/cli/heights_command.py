@@ -45,7 +45,6 @@ __all__ = ["command"]
     metavar="PERCENT",
     help="Let the pair clear with this chance, by [confidence]: 50 to 99.9.",
 )
-@click.option("--feet", is_flag=True, help="Print and draw in feet and miles.")
 @speech_options
 def command(
     json_to: str | None,
@@ -54,6 +53,7 @@ def command(
     write_to: Path | None,
     sure_percent: float | None,
     feet: bool,
+    full: bool,
     quiet: bool,
     no_color: bool,
     **hop_given: Any,
@@ -64,7 +64,7 @@ def command(
     given first also meets what else the hop file asks for: a fade margin, the objective, a loss limit; and the chance
     given by --sure.
 
-    Exit code 0: such a pair exists; 1: none does, and why is said; 2: the input is wrong.
+    Exit code 0: there is a pair and a hop with it passes; 1: not so, and why is said; 2: the input is wrong.
     """
     from profiler.document.heights_document import heights_document
     from profiler.plan import plan_heights
@@ -88,10 +88,10 @@ def command(
     ):
         from profiler.cli.show_heights import show_heights
 
-        show_heights(plan, feet=feet, quiet=quiet, color=not no_color)
+        show_heights(plan, feet=feet, full=full, quiet=quiet, color=not no_color)
     if write_to is not None and rewritten is None:
         tell(f"{write_to}: not written, since no pair of heights does all that is asked", err=True)
-    return 0 if _pair(plan) is not None else 1
+    return 0 if plan.outcome == "passes" else 1
 
 
 def _share(percent: float) -> float:

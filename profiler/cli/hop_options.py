@@ -73,8 +73,14 @@ def hop_options(command: Command) -> Command:
 
 def speech_options(command: Command) -> Command:
     """Add the options that say how much and how to print."""
-    command = click.option("--no-color", is_flag=True, help="Print without color.")(command)
-    return click.option("-q", "--quiet", is_flag=True, help="Print the verdict only.")(command)
+    for option in (
+        click.option("--no-color", is_flag=True, help="Print without color."),
+        click.option("-q", "--quiet", is_flag=True, help="Print the verdict only."),
+        click.option("--full", is_flag=True, help="Print every table, the numbers used and what was assumed."),
+        click.option("--feet", is_flag=True, help="Print (and draw) in feet and miles."),
+    ):
+        command = option(command)
+    return command
 
 
 def read_hop(hop_file: Path | None, **options: Any) -> Hop:

@@ -6,6 +6,7 @@ from collections.abc import Mapping, Sequence
 from typing import TYPE_CHECKING
 
 from profiler.cli.screen import compact_table
+from profiler.remarks import minus
 
 if TYPE_CHECKING:
     from rich.table import Table
@@ -42,6 +43,6 @@ def lines_table(title: str, lines: Mapping[str, Sequence[Line]]) -> Table:
     for row in zip(*lines.values(), strict=True):
         notes = {line.note: way for way, line in zip(lines, row, strict=True)}
         note = "; ".join(f"{way} {note}" for note, way in notes.items()) if len(notes) > 1 else row[0].note
-        values = (f"{line.value:+.2f}" if round(line.value, 2) else "0.00" for line in row)
+        values = (minus(f"{line.value:+.2f}") if round(line.value, 2) else "0.00" for line in row)
         table.add_row(seen_from(row[0].name, next(iter(lines))), *values, row[0].unit, note)
     return table

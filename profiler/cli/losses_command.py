@@ -8,10 +8,15 @@ import click
 
 from profiler.cli.hop_options import hop_options, named, read_hop, speech_options
 from profiler.cli.output import check_targets, json_text, put
+from profiler.remarks import db_text, k_text, listed, minus
 
 if TYPE_CHECKING:
+    from rich.table import Table
+
+    from profiler.cli.brief import Part
     from profiler.diffraction import DiffractionLoss
     from profiler.study import Study
+    from profiler.words import Scale
 
 __all__ = ["command"]
 
@@ -20,7 +25,7 @@ __all__ = ["command"]
 @hop_options
 @click.option("--json", "json_to", metavar="FILE", help="Write the losses as JSON; - for standard output.")
 @speech_options
-def command(json_to: str | None, quiet: bool, no_color: bool, **hop_given: Any) -> int:
+def command(json_to: str | None, feet: bool, full: bool, quiet: bool, no_color: bool, **hop_given: Any) -> int:
     """List the diffraction loss of one hop by every method.
 
     At every k of the rules and at the median k, with the edges that each method used.
@@ -43,38 +48,84 @@ def command(json_to: str | None, quiet: bool, no_color: bool, **hop_given: Any) 
         losses = [loss for found in by_k.values() for loss in found]
         put(json_to, json_text({"schema": "hopwright-losses/1", "hop": hop.name, "diffraction": losses}))
     if json_to != "-":
-        _show(study, by_k, quiet=quiet, color=not no_color)
+        _show(study, by_k, feet=feet, full=full, quiet=quiet, color=not no_color)
     return 0
 
 
-def _show(study: Study, by_k: dict[float, tuple[DiffractionLoss, ...]], *, quiet: bool, color: bool) -> None:
-    """Print a row for each method and a column for each k, then the edges, the rounded tops and the doubts."""
+def _show(
+    study: Study,
+    by_k: dict[float, tuple[DiffractionLoss, ...]],
+    *,
+    feet: bool,
+    full: bool,
+    quiet: bool,
+    color: bool,
+) -> None:
+    """Print the losses of every method; in full the edges and the rounded tops behind them too."""
+    from profiler.cli.brief import Part, show_brief
     from profiler.cli.screen import compact_table, console, say, show_notes, show_table
+    from profiler.words import Scale
 
-    screen = console(color=color)
-    table = compact_table("diffraction loss, dB", *(f"k = {k:.3f}" for k in by_k))
-    for rows in zip(*by_k.values(), strict=True):
-        chosen = rows[0].method == study.hop.diffraction.method
-        name = rows[0].method + (" (chosen)" if chosen else "")
-        table.add_row(name, *(f"{loss.loss_db:.2f}" for loss in rows), style="bold" if chosen else "")
-    show_table(screen, table)
-    if quiet:
+    screen, scale = console(color=color), Scale(feet=feet)
+    doubts = dict.fromkeys(scale.text(each) for losses in by_k.values() for loss in losses for each in loss.warnings)
+    rows = list(zip(*by_k.values(), strict=True))
+    if not full:
+        parts = [_row_part(study, losses) for losses in rows]
+        head = Part(f"{study.hop.name}: diffraction loss by every method.", "bold")
+        if quiet:
+            for part in parts:
+                say(screen, part.text, part.style)
+        else:
+            show_brief(screen, (head, *parts), list(doubts), "choose the method that fits the obstacles.")
         return
-    edges = compact_table("edge", "k", "method", "km from A", "height m", "nu", "loss dB", words=("method",))
-    for k, losses in by_k.items():
-        for loss in losses:
-            for number, edge in enumerate(loss.edges, start=1):
-                charged = "-" if edge.loss_db is None else f"{edge.loss_db:.2f}"
-                where = (f"{edge.distance_m / 1e3:.3f}", f"{edge.height_m:.1f}", f"{edge.nu:.2f}")
-                edges.add_row(str(number), f"{k:.3f}", loss.method, *where, charged)
-    tops = compact_table("rounded top", "radius m", "roundness m", "from km", "to km")
-    for k, losses in by_k.items():
-        for top in (loss.top for loss in losses if loss.top is not None):
-            fit = ("not convex", "-") if top.radius_m is None else (f"{top.radius_m:.0f}", f"{top.roundness:.3f}")
-            tops.add_row(f"k = {k:.3f}", *fit, f"{top.from_m / 1e3:.3f}", f"{top.to_m / 1e3:.3f}")
-    for each in (edges, tops):
+    table = compact_table("diffraction loss, dB", *(f"k = {k_text(k)}" for k in by_k))
+    for losses in rows:
+        chosen = losses[0].method == study.hop.diffraction.method
+        name = losses[0].method + (" (chosen)" if chosen else "")
+        table.add_row(name, *(f"{loss.loss_db:.2f}" for loss in losses), style="bold" if chosen else "")
+    show_table(screen, table)
+    for each in (_edges_table(by_k, scale), _tops_table(by_k, scale)):
         if each.rows:
             say(screen, "")
             show_table(screen, each)
-    doubts = dict.fromkeys(warning for losses in by_k.values() for loss in losses for warning in loss.warnings)
     show_notes(screen, "Warnings", tuple(doubts), "yellow")
+
+
+def _row_part(study: Study, losses: tuple[DiffractionLoss, ...]) -> Part:
+    """Say what one method gives at each k."""
+    from profiler.cli.brief import Part
+
+    chosen = losses[0].method == study.hop.diffraction.method
+    values = listed([f"{db_text(loss.loss_db)} at k = {k_text(loss.k)}" for loss in losses])
+    return Part(f"{losses[0].method}{', chosen' if chosen else ''}: {values}", "bold" if chosen else "")
+
+
+def _edges_table(by_k: dict[float, tuple[DiffractionLoss, ...]], scale: Scale) -> Table:
+    """Tabulate the edges that each method used."""
+    from profiler.cli.screen import compact_table
+
+    titles = (f"{scale.distance_unit} from A", f"height {scale.height_unit}", "ν", "loss dB")
+    table = compact_table("edge", "k", "method", *titles, words=("method",))
+    for k, losses in by_k.items():
+        for loss in losses:
+            for number, edge in enumerate(loss.edges, start=1):
+                charged = "–" if edge.loss_db is None else f"{edge.loss_db:.2f}"
+                where = scale.distance_number(edge.distance_m, 3), scale.height_number(edge.height_m)
+                table.add_row(str(number), k_text(k), loss.method, *where, minus(f"{edge.nu:.2f}"), charged)
+    return table
+
+
+def _tops_table(by_k: dict[float, tuple[DiffractionLoss, ...]], scale: Scale) -> Table:
+    """Tabulate the rounded tops that were fitted."""
+    from profiler.cli.screen import compact_table
+
+    far, near = scale.distance_unit, scale.height_unit
+    table = compact_table("rounded top", f"radius {near}", "roundness", f"from {far}", f"to {far}")
+    for k, losses in by_k.items():
+        for top in (loss.top for loss in losses if loss.top is not None):
+            fit = ("not convex", "–")
+            if top.radius_m is not None:
+                fit = scale.height_number(top.radius_m, 0), f"{top.roundness:.3f}"
+            span = scale.distance_number(top.from_m, 3), scale.distance_number(top.to_m, 3)
+            table.add_row(f"k = {k_text(k)}", *fit, *span)
+    return table

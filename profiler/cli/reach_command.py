@@ -13,6 +13,7 @@ from profiler.cli.lines import lines_table, seen_from
 from profiler.cli.number import NUMBER, NumberRange
 from profiler.cli.output import check_targets, json_text, put
 from profiler.errors import InputError
+from profiler.remarks import db_text, listed, minus
 
 if TYPE_CHECKING:
     from rich.table import Table
@@ -25,6 +26,16 @@ if TYPE_CHECKING:
 __all__ = ["command"]
 
 _WAYS: tuple[Way, ...] = ("a_to_b", "b_to_a")
+_QUESTIONS = {
+    "longest_free_space_range": "longest range in free space",
+    "least_power": "least power on this hop",
+    "smallest_dish_both": "smallest equal dishes on this hop",
+    "smallest_dish_a": "smallest dish at A on this hop",
+    "smallest_dish_b": "smallest dish at B on this hop",
+    "least_gain_both": "least equal antenna gains on this hop",
+    "least_gain_a": "least antenna gain at A on this hop",
+    "least_gain_b": "least antenna gain at B on this hop",
+}
 
 
 @click.command("reach")
@@ -49,7 +60,6 @@ _WAYS: tuple[Way, ...] = ("a_to_b", "b_to_a")
 )
 @click.option("--efficiency", type=NUMBER, metavar="RATIO", help="Of the dish asked for; the hop file's by default.")
 @click.option("--json", "json_to", metavar="FILE", help="Write the answers as JSON; - for standard output.")
-@click.option("--feet", is_flag=True, help="Print in feet and miles.")
 @speech_options
 def command(
     mode: str | None,
@@ -60,6 +70,7 @@ def command(
     efficiency: float | None,
     json_to: str | None,
     feet: bool,
+    full: bool,
     quiet: bool,
     no_color: bool,
     **hop_given: Any,
@@ -85,14 +96,14 @@ def command(
     if json_to is not None:
         put(json_to, json_text({"schema": "hopwright-reach/1", "hop": hop.name, "answers": answers}))
     if json_to != "-":
-        _show(answers, feet=feet, quiet=quiet, color=not no_color)
+        _show(hop.name, answers, feet=feet, full=full, quiet=quiet, color=not no_color)
     return 0
 
 
 def _answers(
     study: Study, way: Way, resize: str, efficiency: float | None, wanted: dict[str, Any]
 ) -> dict[str, InverseAnswer]:
-    """InverseAnswer every question for one direction."""
+    """Answer every question for one direction, by the question's key."""
     from profiler.budget import least_gain, least_power, longest_free_space_range, smallest_dish
 
     hop, losses = study.hop, study.median_diffraction
@@ -102,58 +113,73 @@ def _answers(
     path = (hop.radio, study.line.distance_m, hop.frequency_hz)
     here = {**wanted, "gas_db": study.air.gas_db, "diffraction_db": losses.loss_db}
     answers = {
-        "longest range in free space": longest_free_space_range(hop.radio, hop.frequency_hz, **wanted),
-        "least power on this hop": least_power(*path, **here),
+        "longest_free_space_range": longest_free_space_range(hop.radio, hop.frequency_hz, **wanted),
+        "least_power": least_power(*path, **here),
     }
     ends = {"a": hop.radio.terminal_a, "b": hop.radio.terminal_b}
     resized: Literal["both", "transmitter", "receiver"] = "both"
-    dish, gain = "equal dishes", "equal antenna gains"
+    which = "both"
     if resize != "both":
         ends = {resize: ends[resize]}
         resized = "transmitter" if way.startswith(resize) else "receiver"
-        dish, gain = f"dish at {resize.upper()}", f"antenna gain at {resize.upper()}"
+        which = resize
     if efficiency is not None or all(end.efficiency is not None for end in ends.values()):
-        answers[f"smallest {dish} on this hop"] = smallest_dish(*path, **here, resized=resized, efficiency=efficiency)
+        answers[f"smallest_dish_{which}"] = smallest_dish(*path, **here, resized=resized, efficiency=efficiency)
     else:
-        answers[f"least {gain} on this hop"] = least_gain(*path, **here, resized=resized)
+        answers[f"least_gain_{which}"] = least_gain(*path, **here, resized=resized)
     return answers
 
 
-def _show(answers: dict[Way, dict[str, InverseAnswer]], *, feet: bool, quiet: bool, color: bool) -> None:
+def _show(
+    hop: str, answers: dict[Way, dict[str, InverseAnswer]], *, feet: bool, full: bool, quiet: bool, color: bool
+) -> None:
     """Print the answers, then the lines that each stands on."""
     from profiler.budget import way_name
+    from profiler.cli.brief import Part, show_brief
     from profiler.cli.screen import console, say, show_notes, show_table
     from profiler.words import Scale
 
     screen, scale = console(color=color), Scale(feet=feet)
     questions = {
-        name: {way_name(way): found[name] for way, found in answers.items()} for name in next(iter(answers.values()))
+        _QUESTIONS[key]: {way_name(way): found[key] for way, found in answers.items()}
+        for key in next(iter(answers.values()))
     }
-    for name, found in questions.items():
-        values = ", ".join(f"{_value(answer, scale)} {way}" for way, answer in found.items())
-        say(screen, f"{name}: {values}", "bold")
-    if quiet:
-        return
-    for name, found in questions.items():
-        for part in _alike(found):
-            say(screen, "")
-            show_table(screen, _sum_table(name, part))
     each = [(name, answer) for name, found in questions.items() for answer in found.values()]
+    warnings = tuple(
+        dict.fromkeys(f"{name}: {scale.text(warning)}" for name, answer in each for warning in answer.warnings)
+    )
+    parts = [
+        Part(f"{name}: {listed([f'{_value(answer, scale)} {way}' for way, answer in found.items()])}.", "bold")
+        for name, found in questions.items()
+    ]
+    if not full:
+        head = Part(f"{hop}: what the radio reaches, in free space and over this path.", needed=not quiet)
+        if quiet:
+            for part in parts:
+                say(screen, part.text, part.style)
+        else:
+            show_brief(screen, (head, *parts), warnings, "study the hop with what you choose from these.")
+        return
+    for part in parts:
+        say(screen, part.text, part.style)
+    for name, found in questions.items():
+        for alike in _alike(found):
+            say(screen, "")
+            show_table(screen, _sum_table(name, alike))
     threshold = each[0][1].threshold_lines  # of the mode, so the same for every answer
     if len(threshold) > 1:
         say(screen, "")
         show_table(screen, _threshold_table(threshold))
-    warnings = dict.fromkeys(f"{name}: {warning}" for name, answer in each for warning in answer.warnings)
-    show_notes(screen, "Warnings", tuple(warnings), "yellow")
-    show_notes(screen, "Assumed", tuple(dict.fromkeys(note for _, answer in each for note in answer.assumptions)))
+    show_notes(screen, "Warnings", warnings, "yellow")
+    show_notes(
+        screen, "Assumed", tuple(dict.fromkeys(scale.text(note) for _, answer in each for note in answer.assumptions))
+    )
 
 
 def _value(answer: InverseAnswer, scale: Scale) -> str:
     if answer.unit != "m":
-        return f"{answer.value:.2f} {answer.unit}"
-    if answer.value >= 1000.0:
-        return f"{scale.distance_number(answer.value)} {scale.distance_unit}"
-    return f"{scale.height_number(answer.value, 2)} {scale.height_unit}"
+        return db_text(answer.value, answer.unit, digits=2)
+    return scale.distance_text(answer.value) if answer.value >= 1000.0 else scale.height_text(answer.value, 2)
 
 
 def _alike(found: dict[str, InverseAnswer]) -> list[dict[str, InverseAnswer]]:
@@ -166,7 +192,7 @@ def _sum_table(name: str, found: dict[str, InverseAnswer]) -> Table:
     """Tabulate the terms of an answer, and below them what they add up to."""
     table = lines_table(name, {way: answer.lines for way, answer in found.items()})
     way, answer = next(iter(found.items()))
-    sums = (f"{math.fsum(line.value for line in each.lines):.2f}" for each in found.values())
+    sums = (minus(f"{math.fsum(line.value for line in each.lines):.2f}") for each in found.values())
     unit = "dBi" if "gain" in answer.solved_for else "dBm" if answer.unit == "dBm" else "dB"
     table.add_section()
     table.add_row(seen_from(answer.solved_for, way), *sums, unit, "", style="bold")
@@ -176,5 +202,5 @@ def _sum_table(name: str, found: dict[str, InverseAnswer]) -> Table:
 def _threshold_table(lines: Sequence[Line]) -> Table:
     table = lines_table("threshold", {"both ways": lines})
     table.add_section()
-    table.add_row("threshold", f"{math.fsum(line.value for line in lines):.2f}", "dBm", "", style="bold")
+    table.add_row("threshold", minus(f"{math.fsum(line.value for line in lines):.2f}"), "dBm", "", style="bold")
     return table

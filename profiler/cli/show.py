@@ -5,10 +5,31 @@ from __future__ import annotations
 import math
 from typing import TYPE_CHECKING
 
+from profiler.cli.brief import CAUTION, Part, show_brief
 from profiler.cli.lines import lines_table
 from profiler.cli.screen import compact_table, console, say, show_notes, show_table
-from profiler.remarks import k_text
-from profiler.words import Scale, headline, steps_words, verdict_words
+from profiler.remarks import chance_text, db_text, k_text, listed, minus, percent_text, ratio_text
+from profiler.words import (
+    Scale,
+    achieved_text,
+    along_text,
+    asked_text,
+    clearance_words,
+    ends_words,
+    feet_words,
+    headline,
+    held_words,
+    input_words,
+    margin_words,
+    needs_text,
+    objective_words,
+    outage_sentence,
+    reason_words,
+    rule_text,
+    spot_text,
+    steps_words,
+    verdict_words,
+)
 
 if TYPE_CHECKING:
     from rich.console import Console
@@ -17,25 +38,63 @@ if TYPE_CHECKING:
     from profiler.confidence import Confidence
     from profiler.diffraction import DiffractionLoss
     from profiler.models import Rule
-    from profiler.study import Place, Study
+    from profiler.study import Study
+    from profiler.study.reasons import Outcome
 
-__all__ = ["show_study"]
+__all__ = ["OUTCOME_STYLES", "show_study"]
+
+OUTCOME_STYLES: dict[Outcome, str] = {"passes": "bold green", "not_sure": "bold yellow", "fails": "bold red"}
+_MOST_TARGETS = 2
+"""Targets of objectives that stand on the short screen in any case."""
 
 _MOST_NAMED = 3
 """Rasters that are named, those that gave most first; the document has them all."""
 
 
-def show_study(study: Study, *, feet: bool, quiet: bool, color: bool) -> None:
+def show_study(study: Study, *, feet: bool, full: bool, quiet: bool, color: bool) -> None:
     """Print a study."""
     screen, scale = console(color=color), Scale(feet=feet)
-    styles = {"passes": "bold green", "not_sure": "bold yellow", "fails": "bold red"}
-    say(screen, f"{study.hop.name}: {verdict_words(study)}", styles[study.verdict.outcome])
-    say(screen, f"{headline(study, scale)}.")
+    verdict, *more = _parts(study, scale)
+    warnings = tuple(map(scale.text, study.warnings))
     if quiet:
-        for warning in study.warnings[:1]:
-            say(screen, f"Warning: {scale.text(warning)}")
-        return
-    say(screen, steps_words(study, scale))
+        for text, style in ((verdict.text, verdict.style), (f"{headline(study, scale)}.", "")):
+            say(screen, text, style)
+        for warning in warnings[:1]:
+            say(screen, f"Warning: {warning}", "yellow")
+    elif not full:
+        show_brief(screen, (verdict, *more), warnings, steps_words(study, scale))
+    else:
+        for part in (verdict, *more):
+            say(screen, part.text, part.style)
+        say(screen, f"Next: {steps_words(study, scale)}", "bold")
+        _show_tables(screen, study, scale)
+        show_notes(screen, "Warnings", warnings, "yellow")
+        show_notes(screen, "Numbers used", _numbers_used(study, scale))
+        doubt = () if study.confidence is None else study.confidence.method
+        show_notes(screen, "Assumed", (*map(scale.text, study.assumptions), *map(scale.text, doubt)))
+        say(screen, f"\n{CAUTION}", "dim")
+
+
+def _parts(study: Study, scale: Scale) -> list[Part]:
+    """Give the short answer in the order in which it is decided."""
+    verdict = study.verdict
+    parts = [
+        Part(f"{study.hop.name}: {verdict_words(study)}", OUTCOME_STYLES[verdict.outcome]),
+        Part(f"{clearance_words(study, scale)}."),
+        Part(held_words(study, scale)),
+        Part(feet_words(study, scale), needed=False),
+    ]
+    if study.budget is not None:
+        parts.append(Part(f"{margin_words(study)}."))
+    objectives = objective_words(study)
+    parts += [Part(f"{text}.", needed=number < _MOST_TARGETS) for number, text in enumerate(objectives)]
+    told = {"clearance", "chance"} | ({"objective"} if objectives else set())
+    parts += [Part(reason_words(each, study, scale)) for each in verdict.reasons if each.test not in told]
+    return [*parts, Part(ends_words(study, scale), needed=False)]
+
+
+def _show_tables(screen: Console, study: Study, scale: Scale) -> None:
+    """Print every table of a study."""
     _show_sites(screen, study, scale)
     _show_rules(screen, study, scale)
     _show_places(screen, study, scale)
@@ -47,23 +106,14 @@ def show_study(study: Study, *, feet: bool, quiet: bool, color: bool) -> None:
         _show_availability(screen, study)
     if study.confidence is not None:
         _show_confidence(screen, study, scale)
-    show_notes(screen, "Warnings", tuple(map(scale.text, study.warnings)), "yellow")
-    show_notes(screen, "Numbers used", _numbers_used(study, scale))
-    doubt = () if study.confidence is None else study.confidence.method
-    show_notes(screen, "Assumed", (*map(scale.text, study.assumptions), *doubt))
-    caution = (
-        "\nA screening result, not a certificate: heights, clearances and exposure are for licensed practice and local"
-        " codes to confirm."
-    )
-    say(screen, caution, "dim")
 
 
 def _numbers_used(study: Study, scale: Scale) -> tuple[str, ...]:
     """Say where the ground is from and by how much a survey differs, and every climate number with its source."""
-    terrain, unit = study.terrain, scale.height_unit
+    terrain = study.terrain
     surveys = [
-        f"{site.name}: surveyed ground {scale.height_number(site.surveyed_ground_m or 0.0, 2)} {unit},"
-        f" {scale.height_number(difference, 2)} {unit} above that of the terrain"
+        f"{site.name}: surveyed ground {scale.height_text(site.surveyed_ground_m or 0.0, 2)},"
+        f" {scale.height_text(abs(difference), 2)} {'above' if difference > 0 else 'below'} that of the terrain"
         for site, difference in (
             (study.hop.site_a, terrain.surveyed_difference_a_m),
             (study.hop.site_b, terrain.surveyed_difference_b_m),
@@ -71,13 +121,13 @@ def _numbers_used(study: Study, scale: Scale) -> tuple[str, ...]:
         if difference is not None
     ]
     climate = () if study.outage.availability is None else study.outage.availability.inputs
-    named = [f"{use.info.path.name} at {use.share:.0%} of the points" for use in terrain.sources[:_MOST_NAMED]]
+    named = [f"{use.info.path.name} at {percent_text(use.share)} of the path" for use in terrain.sources[:_MOST_NAMED]]
     unnamed = len(terrain.sources) - len(named)
     more = f", and {unnamed} more" if unnamed else ""
     return (
         f"ground: {', '.join(named)}{more}",
         *surveys,
-        *(each.line for each in climate),
+        *(input_words(each, scale) for each in climate),
     )
 
 
@@ -114,17 +164,17 @@ def _show_rules(screen: Console, study: Study, scale: Scale) -> None:
             _rule_name(result.check.rule, scale),
             "pass" if result.passes else "FAIL",
             scale.height_number(place.surplus_m),
-            _at(place, scale),
+            along_text(place, scale),
             scale.height_number(place.f1_m),
-            "-" if math.isnan(place.ratio) else f"{place.ratio:.2f}",
+            "–" if math.isnan(place.ratio) else minus(f"{place.ratio:.2f}"),
             style="" if result.passes else "red",
         )
     by_k = compact_table("k", "line of sight", "elevation A", "elevation B", "diffraction dB", words=("line of sight",))
     losses = {loss.k: loss.loss_db for loss in study.diffraction}
     for k, result in {result.check.rule.k: result for result in study.rules}.items():
         sight = "yes" if result.check.line_of_sight else "no"
-        angles = (f"{angle_deg:+.3f}°" for angle_deg in (result.elevation_a_deg, result.elevation_b_deg))
-        by_k.add_row(f"{k_text(k)}", sight, *angles, f"{losses[k]:.1f}")
+        angles = (minus(f"{angle_deg:+.3f}°") for angle_deg in (result.elevation_a_deg, result.elevation_b_deg))
+        by_k.add_row(k_text(k), sight, *angles, f"{losses[k]:.1f}")
     for each in (table, by_k):
         say(screen, "")
         show_table(screen, each)
@@ -140,22 +190,12 @@ def _edges(loss: DiffractionLoss, scale: Scale) -> str:
     )
     over = f", edge{'s' if len(charged) > 1 else ''} at {', '.join(charged)} {scale.distance_unit}" if charged else ""
     horizons = f" between horizons at {' and '.join(touched)} {scale.distance_unit}" if touched else ""
-    return f"Diffraction at k = {k_text(loss.k)}: {loss.loss_db:.1f} dB by {loss.method}{over}{horizons}"
+    return f"Diffraction at k = {k_text(loss.k)}: {db_text(loss.loss_db)} by {loss.method}{over}{horizons}"
 
 
 def _rule_name(rule: Rule, scale: Scale) -> str:
     """Give a rule's label, if it has one, and below it what it asks for."""
-    margin = f" + {scale.height_number(rule.margin_m)} {scale.height_unit}" if rule.margin_m else ""
-    asked = f"{rule.fresnel_fraction:g} F1{margin} at k = {k_text(rule.k)}"
-    return f"{rule.label}\n{asked}" if rule.label else asked
-
-
-def _at(place: Place, scale: Scale) -> str:
-    """Say how far along the path a place is, and how far to its side."""
-    along = f"{scale.distance_number(place.distance_m)} {scale.distance_unit}"
-    if not round(place.offset_m):
-        return along
-    return f"{along}, {scale.height_number(abs(place.offset_m), 0)} {scale.height_unit} {place.side}"
+    return f"{rule.label}\n{rule_text(rule, scale)}" if rule.label else rule_text(rule, scale)
 
 
 def _show_places(screen: Console, study: Study, scale: Scale) -> None:
@@ -166,15 +206,15 @@ def _show_places(screen: Console, study: Study, scale: Scale) -> None:
     for place in study.governing.places:
         heights = (place.ground_m, place.cover_m, place.f1_m)
         held = (place.clearance_m, place.required_m, place.surplus_m)
-        where = f"{_at(place, scale)}\n{place.latitude:.5f}, {place.longitude:.5f}"
+        where = f"{along_text(place, scale)}\n{spot_text(place)}"
         table.add_row(where, *(scale.height_number(height_m) for height_m in (*heights, *held)))
     say(screen, f"\nTight places of rule {_rule_name(rule, scale).replace(chr(10), ', ')}", "bold")
     show_table(screen, table)
     for corridor in (result.corridor for result in study.rules):
         if corridor is not None:
-            width = f"{scale.height_number(corridor.half_width_m)} {unit} to each side"
+            width = f"{scale.height_text(corridor.half_width_m)} to each side"
             seen = corridor.need.missing_share
-            unseen = f", {seen:.0%} of it without ground" if seen else ""
+            unseen = f", {percent_text(seen)} of it without ground" if seen else ""
             say(screen, f"Checked across the path too: {width}{unseen}.")
             break
 
@@ -188,7 +228,7 @@ def _show_reflections(screen: Console, study: Study, scale: Scale) -> None:
         for place in open_places[:3]:
             kind = "rough" if place.rough else "smooth enough to mirror"
             lines.append(
-                f"  k = {k_text(k)}: {scale.distance_number(place.distance_m)} {scale.distance_unit}, grazing"
+                f"  k = {k_text(k)}: {scale.distance_text(place.distance_m)}, grazing"
                 f" {place.grazing_deg:.2f}°, {place.delay_s * 1e9:.2f} ns late, {kind}"
             )
         more = len(open_places) - 3
@@ -214,11 +254,11 @@ def _budget(study: Study) -> Table:
 
 
 def _number(value: float | None) -> str:
-    return "-" if value is None else f"{value:.2f}"
+    return "–" if value is None else minus(f"{value:.2f}")
 
 
 def _percent(value: float | None) -> str:
-    return "-" if value is None else f"{value:.3g}"
+    return "–" if value is None else ratio_text(value)
 
 
 def _span(value: float | None, most: float | None) -> str:
@@ -237,29 +277,32 @@ def _show_availability(screen: Console, study: Study) -> None:
         parts = (_percent(part) for part in (outages.multipath, outages.selective, outages.rain))
         obstruction = _span(outages.obstruction, outages.obstruction_up_to)
         table.add_row(period, *parts, obstruction, _span(outages.total, outages.total_up_to))
-    say(screen, f"\nAvailability ({found.method}), fade margin {found.fade_margin_db:.1f} dB", "bold")
+    say(screen, f"\nAvailability, fade margin {db_text(found.fade_margin_db)}", "bold")
     show_table(screen, table)
-    say(screen, f"Out of service {found.year_minutes:.3g} minutes a year, limited by {found.limited_by}.")
+    outage = outage_sentence(found)
+    say(screen, f"{outage[0].upper()}{outage[1:]}.")
     for target in found.objective.targets if found.objective is not None else ():
-        margin = "no" if target.required_margin_db is None else f"{target.required_margin_db:.1f} dB of"
-        outcome = {True: "met", False: "MISSED", None: "undecided"}[target.met]
-        unit = "" if target.unit == "ratio" else f" {target.unit}"
-        say(
-            screen,
-            f"Objective {target.name} {target.required:g}{unit}: {outcome} at"
-            f" {_span(target.achieved, target.achieved_up_to)}{unit}; {margin} fade margin is sure to meet it"
-            f" (set by {target.margin_set_by}).",
-            {True: "", False: "red", None: "yellow"}[target.met],
-        )
+        judged = {True: "met", False: "MISSED", None: "undecided"}[target.met]
+        text = f"Asked {asked_text(target)}, expected {achieved_text(target)}: {judged}; it {needs_text(target)}."
+        say(screen, text, {True: "", False: "red", None: "yellow"}[target.met])
+    if len(found.multipath) > 1:
+        methods = compact_table("flat multipath, without diversity", "worst month\n%", "year\n%", "", words=("",))
+        for each in found.multipath:
+            decides = "decides" if each.chosen else ""
+            outside = "outside its fit" if each.outside_fit else ""
+            said = ", ".join(filter(None, (decides, outside)))
+            methods.add_row(each.method, _percent(each.worst_month_percent), _percent(each.year_percent), said)
+        say(screen, "")
+        show_table(screen, methods)
     if len(study.outage.modes) > 1:
         headers = ("weaker\nway", "fade margin\ndB", "worst month\n%", "year\n%", "objective")
         modes = compact_table("mode", *headers, wraps="mode")
         for mode in study.outage.modes:
-            met = "-" if mode.met is None else "met" if mode.met else "missed"
+            met = {True: "met", False: "missed", None: "–"}[mode.met]
             modes.add_row(
                 mode.mode,
                 way_name(mode.direction),
-                f"{mode.fade_margin_db:.2f}",
+                minus(f"{mode.fade_margin_db:.2f}"),
                 _percent(mode.worst_month_percent),
                 _percent(mode.year_percent),
                 met,
@@ -272,12 +315,9 @@ def _show_confidence(screen: Console, study: Study, scale: Scale) -> None:
     """Print how sure the clearance is, the sure heights and what to survey."""
     found = study.confidence
     assert found is not None
-    say(
-        screen,
-        f"\nConfidence: all rules met with {found.chance.value:.1%} chance"
-        f" ({found.chance.low:.1%} to {found.chance.high:.1%} by {found.draws} draws, seed {found.seed})",
-        "bold",
-    )
+    low, high = chance_text(found.chance.low), chance_text(found.chance.high)
+    title = f"{chance_text(found.chance.value)} chance of meeting all rules"
+    say(screen, f"\nConfidence: {title} ({low} to {high} by {found.draws} draws, seed {found.seed})", "bold")
     say(
         screen,
         f"Chance of each rule and share of the time that its zone is clear; least surplus ({scale.height_unit}) that 5,"
@@ -287,35 +327,31 @@ def _show_confidence(screen: Console, study: Study, scale: Scale) -> None:
     for doubt in found.rules:
         table.add_row(
             _rule_name(doubt.rule, scale),
-            f"{doubt.chance.value:.1%}",
-            "-" if doubt.chance_with_k is None else f"{doubt.chance_with_k.value:.1%}",
+            chance_text(doubt.chance.value),
+            "–" if doubt.chance_with_k is None else chance_text(doubt.chance_with_k.value),
             *(scale.height_number(value) for value in (doubt.least_low_m, doubt.least_median_m, doubt.least_high_m)),
-            *(f"{share:.0%}" for share in (doubt.shares.terrain, doubt.shares.cover, doubt.shares.k)),
+            *(percent_text(share) for share in (doubt.shares.terrain, doubt.shares.cover, doubt.shares.k)),
         )
     show_table(screen, table)
     _show_sure_heights(screen, found, scale)
-    places = ", ".join(
-        f"{scale.distance_number(point.distance_m)} {scale.distance_unit} ({point.share_of_doubt:.0%} of the doubt)"
-        for point in found.survey
-    )
+    places = [
+        f"{'at site ' + each.site if each.site else scale.distance_text(each.distance_m) + ' from A'}"
+        f" ({percent_text(each.share_of_doubt)} of the doubt)"
+        for each in found.survey
+    ]
     if places:
-        say(screen, f"Survey first: {places}")
+        say(screen, f"Survey first {listed(places)}.")
 
 
 def _show_sure_heights(screen: Console, found: Confidence, scale: Scale) -> None:
     """Print the antenna heights that are sure enough, by raising both or one."""
     for sure in found.sure:
         alone = [
-            f"{end} alone {scale.height_number(height)}"
+            f"{end} alone at {scale.height_text(height)}"
             for end, height in (("A", sure.a_only_m), ("B", sure.b_only_m))
             if height is not None
         ]
-        change = (
-            f"{scale.height_number(abs(sure.raise_m))} {scale.height_unit} {'higher' if sure.raise_m > 0 else 'lower'}"
-        )
-        say(
-            screen,
-            f"{sure.chance:.0%} sure: both antennas {change}"
-            f" (A {scale.height_number(sure.equal_m[0])}, B {scale.height_number(sure.equal_m[1])})"
-            + (f", or {', or '.join(alone)}" if alone else ""),
-        )
+        change = f"{scale.height_text(abs(sure.raise_m))} {'higher' if sure.raise_m > 0 else 'lower'}"
+        both = f"both antennas {change}, A at {scale.height_text(sure.equal_m[0])}"
+        ways = listed([f"{both} and B at {scale.height_text(sure.equal_m[1])}", *alone], "or")
+        say(screen, f"For a chance of {chance_text(sure.chance)}: {ways}.")

@@ -38,7 +38,6 @@ Limits = tuple[float, float] | None
     type=click.Path(path_type=Path),
     help="Draw fade margin against outage; needs a radio and availability in the hop file.",
 )
-@click.option("--feet", is_flag=True, help="Print and draw in feet and miles.")
 @click.option(
     "--distance-limits", type=(NUMBER, NUMBER), metavar="FROM TO", help="Fix the figure's distance axis, km (mi)."
 )
@@ -50,6 +49,7 @@ def command(
     figures: tuple[Path, ...],
     margin_figures: tuple[Path, ...],
     feet: bool,
+    full: bool,
     distance_limits: Limits,
     height_limits: Limits,
     quiet: bool,
@@ -81,7 +81,7 @@ def command(
     ):
         from profiler.cli.show import show_study
 
-        show_study(study, feet=feet, quiet=quiet, color=not no_color)
+        show_study(study, feet=feet, full=full, quiet=quiet, color=not no_color)
     return 0 if study.verdict.outcome == "passes" else 1
 
 

@@ -10,7 +10,6 @@ from profiler.models import ConfidenceChoice, Hop, Site
 from profiler.remarks import Note, Topic, db_text, k_text, minus, percent_text, position_text
 from profiler.study.next_step import Survey
 from profiler.words import (
-    PROPAGATION_ONLY,
     Scale,
     chance_words,
     outage_sentence,
@@ -87,7 +86,7 @@ def link_rows(study: Study) -> list[tuple[str, str]]:
     if margin_db is not None:
         rows.append(("fade margin", db_text(margin_db)))
     if outage is not None:
-        rows.append(("outage", f"{outage_sentence(outage)}; {PROPAGATION_ONLY}"))
+        rows.append(("outage", outage_sentence(outage)))
     return rows
 
 

@@ -25,7 +25,7 @@ from profiler.words import (
     chance_words,
     pair_words,
     remedies_words,
-    rule_text,
+    requirement_text,
     spare_text,
     spot_text,
     stands_text,
@@ -91,7 +91,7 @@ def frontier_figure(plan: HeightsPlan, *, feet: bool = False) -> Figure:
         top = head(
             page,
             plan.outcome,
-            chance_words(plan.answer.chance, plan.asked_chance),
+            chance_words(plan.answer.chance, plan.answer.asked_chance),
             sentence=pair_words(plan, scale),
             name=hop.name,
             facts=hop_facts(hop, plan.study.line.distance_m, scale),
@@ -265,10 +265,7 @@ def _stretch_cells(plan: HeightsPlan, stretch: Stretch, scale: Scale) -> tuple[s
         return ends[0] if ends[0] == ends[1] else f"{ends[0]} to {ends[1]}"
 
     stands = f"{stands_text(place, scale)}{beside_text(place, scale)}"
-    rule = plan.rules[stretch.rule] if stretch.rule >= 0 else None
-    asks = "the site's own ground" if rule is None else rule_text(rule, scale)
-    if rule is not None and stretch.rule >= len(plan.study.hop.rules):
-        asks = f"{asks}, {rule.label}"
+    asks = requirement_text(plan, stretch.rule, scale)
     return (
         span(first[0], last[0]),
         span(last[1], first[1]),

@@ -82,18 +82,12 @@ class HeightsPlan:
         return isinstance(self.cheapest, Choice)
 
     @property
-    def asked_chance(self) -> float | None:
-        """Chance of clearing under which a pair is not sure; None where no error of the terrain is known."""
-        doubt = self.study.hop.confidence
-        return None if doubt is None else doubt.minimum_chance
-
-    @property
     def outcome(self) -> Outcome:
         """Whether a hop with the answer's pair passes, as a study of it would say."""
         if isinstance(self.answer.pair, NoPair):
             return "fails"
-        chance, asked = self.answer.chance, self.asked_chance
-        too_small = chance is not None and asked is not None and chance.value < asked
+        doubt, chance = self.study.hop.confidence, self.answer.chance
+        too_small = chance is not None and doubt is not None and chance.value < doubt.minimum_chance
         return "not_sure" if too_small or self.answer.unjudged else "passes"
 
     @property

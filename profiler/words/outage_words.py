@@ -12,16 +12,17 @@ if TYPE_CHECKING:
     from profiler.study.result import Study
 
 __all__ = [
-    "PROPAGATION_ONLY",
     "achieved_text",
     "asked_text",
     "limit_text",
     "margin_words",
+    "mode_text",
     "needs_text",
+    "objective_words",
     "outage_sentence",
 ]
 
-PROPAGATION_ONLY = "by propagation alone: failures of equipment and power are not counted"
+_PROPAGATION_ONLY = "by propagation alone, equipment and power not counted"
 
 _LIMITS = {
     "multipath": "multipath",
@@ -76,7 +77,7 @@ def outage_sentence(outage: Availability) -> str:
     """Say how long the hop is out, and by what."""
     if outage.limited_by == "no margin":
         return "out all the time: the level is below the threshold"
-    return f"out {time_text(outage.year_minutes)}, most by {limit_text(outage.limited_by)}"
+    return f"out {time_text(outage.year_minutes)} {_PROPAGATION_ONLY}, most by {limit_text(outage.limited_by)}"
 
 
 def margin_words(study: Study) -> str:
@@ -92,3 +93,19 @@ def margin_words(study: Study) -> str:
     if outage.objective is None:
         return f"Fade margin {margin}; {outage_sentence(outage)}; no objective is given"
     return f"Fade margin {margin}, and the objective {needs_text(outage.objective)}; {outage_sentence(outage)}"
+
+
+def objective_words(study: Study) -> list[str]:
+    """Hold the outage of each mode that must meet an objective against what is asked, a sentence for each target."""
+    judged = {True: "met", False: "missed", None: "undecided"}
+    return [
+        f"{mode_text(mode.mode)}: asked {asked_text(target)}, expected {achieved_text(target)}: {judged[target.met]}"
+        for mode in study.outage.asked
+        if mode.objective is not None
+        for target in mode.objective.targets
+    ]
+
+
+def mode_text(mode: str) -> str:
+    """Name a mode of the radio at the beginning of a sentence."""
+    return f"Mode {mode}" if mode else "The radio"

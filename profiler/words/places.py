@@ -12,7 +12,16 @@ if TYPE_CHECKING:
     from profiler.study.requirements import Source
     from profiler.study.result import Place
 
-__all__ = ["beside_text", "place_text", "rule_text", "spare_text", "spot_text", "stands_text", "where_text"]
+__all__ = [
+    "along_text",
+    "beside_text",
+    "place_text",
+    "rule_text",
+    "spare_text",
+    "spot_text",
+    "stands_text",
+    "where_text",
+]
 
 _NOTICED_M = 2.0
 """Less than this beside the path, nobody who stands there with a hand-held receiver could tell."""
@@ -46,6 +55,11 @@ def beside_text(place: Placed, scale: Scale) -> str:
     if abs(place.offset_m) < _NOTICED_M:
         return ""
     return f", {scale.height_text(abs(place.offset_m), 0)} {place.side} of the path"
+
+
+def along_text(place: Placed, scale: Scale) -> str:
+    """Say where a place is, for a cell of a table whose distances all are from A."""
+    return f"{scale.distance_text(place.distance_m)}{beside_text(place, scale)}".removesuffix(" of the path")
 
 
 def where_text(place: Placed, scale: Scale) -> str:

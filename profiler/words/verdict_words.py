@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from typing import TYPE_CHECKING
 
-from profiler.remarks import chance_text, db_text, listed
+from profiler.remarks import chance_text, db_text, listed, minus
 from profiler.study.reasons import (
     ChanceTooSmall,
     MarginMissing,
@@ -14,15 +14,25 @@ from profiler.study.reasons import (
     Reason,
     RuleMissed,
 )
-from profiler.words.outage_words import achieved_text, asked_text, needs_text
-from profiler.words.places import rule_text, spare_text, where_text
+from profiler.words.outage_words import achieved_text, asked_text, mode_text, needs_text
+from profiler.words.places import rule_text, spare_text, stands_text, where_text
 from profiler.words.scale import Scale
 
 if TYPE_CHECKING:
     from profiler.confidence import Chance
     from profiler.study.result import Study
 
-__all__ = ["chance_words", "clearance_words", "feet_words", "headline", "outcome_word", "reason_words", "verdict_words"]
+__all__ = [
+    "chance_words",
+    "clearance_words",
+    "ends_words",
+    "feet_words",
+    "headline",
+    "held_words",
+    "outcome_word",
+    "reason_words",
+    "verdict_words",
+]
 
 _WORDS: dict[Outcome, str] = {"passes": "PASSES", "not_sure": "NOT SURE", "fails": "FAILS"}
 
@@ -66,7 +76,25 @@ def clearance_words(study: Study, scale: Scale) -> str:
         return f"Clears {'every rule' if count > 1 else 'the rule'}; tightest {where}: {spare} ({asks})"
     missed = sum(isinstance(reason, RuleMissed) for reason in study.verdict.reasons)
     of_rules = f"; {missed} of {count} rules {'is' if missed == 1 else 'are'} missed" if count > 1 else ""
-    return f"{spare} {where} ({asks}){of_rules}"
+    return f"Does not clear: {spare}, {where} ({asks}){of_rules}"
+
+
+def held_words(study: Study, scale: Scale) -> str:
+    """Say what clearance there is at the place that decides, what is required and what stands there."""
+    place = study.governing.tightest
+    share = f" ({minus(f'{place.ratio:.2f}')} F1)" if place.f1_m > 0 else ""
+    clearance, required = scale.height_text(place.clearance_m), scale.height_text(place.required_m)
+    return f"There the clearance is {clearance}{share} and {required} are required, over {stands_text(place, scale)}."
+
+
+def ends_words(study: Study, scale: Scale) -> str:
+    """Give both ends and what lies between them."""
+    hop, line = study.hop, study.line
+    ends = [
+        f"{end} {site.name}, antenna {scale.height_text(site.antenna_m)} up, azimuth {azimuth_deg:.2f}°"
+        for end, site, azimuth_deg in (("A", hop.site_a, line.azimuth_a_deg), ("B", hop.site_b, line.azimuth_b_deg))
+    ]
+    return f"{'; '.join(ends)}; {scale.distance_text(line.distance_m)} at {hop.frequency_hz / 1e9:g} GHz."
 
 
 def feet_words(study: Study, scale: Scale) -> str:
@@ -76,7 +104,7 @@ def feet_words(study: Study, scale: Scale) -> str:
         foot = min((result.feet[end] for result in study.rules), key=lambda place: place.surplus_m)
         cover = f" over {scale.height_text(foot.cover_m)} of cover" if foot.cover_m > 0 else ""
         parts.append(f"{spare_text(foot.surplus_m, scale)} at {name}{cover}")
-    return f"At the masts' feet: {listed(parts)}"
+    return f"At the masts' feet: {listed(parts)}."
 
 
 def headline(study: Study, scale: Scale) -> str:
@@ -105,16 +133,12 @@ def reason_words(reason: Reason, study: Study, scale: Scale) -> str:
             return f"The mapped ground clears, but with a chance of {chance} where {asked} is asked."
         case MarginMissing():
             way = reason.direction.replace("_", " ").title().replace("To", "to")
-            return f"{_mode(reason.mode)} has no fade margin {way}: {db_text(reason.missing_db)} are missing."
+            return f"{mode_text(reason.mode)} has no fade margin {way}: {db_text(reason.missing_db)} are missing."
         case ObjectiveMissed():
             target = reason.target
             needs = f"{needs_text(target)}; there are {db_text(reason.fade_margin_db)}"
             reached = achieved_text(target)
-            return f"{_mode(reason.mode)} misses {asked_text(target)}: it reaches {reached}, and {needs}."
+            return f"{mode_text(reason.mode)} misses {asked_text(target)}: it reaches {reached}, and {needs}."
         case ObjectiveOpen():
             why = f": {'; '.join(map(scale.text, reason.why))}" if reason.why else ""
             return f"The availability objective cannot be decided{why}."
-
-
-def _mode(name: str) -> str:
-    return f"Mode {name}" if name else "The radio"
