@@ -319,7 +319,7 @@ def test_a_failing_rule_is_said_to_fail_by_how_much_where_and_which(study, profi
     assert text_by_gid(figure, "chance") == "less than 0.1 % chance of clearing, 90 % asked"
     short, where = f"{-place.surplus_m:.1f} m short", f"{place.distance_m / 1e3:.2f} km from A"
     sentence = text_by_gid(figure, "sentence").replace("\n", " ")
-    assert sentence.startswith(f"{short} {where} (1.0 F1 at k = 4/3); 2 of 2 rules are missed")
+    assert sentence.startswith(f"Does not clear: {short}, {where} (1.0 F1 at k = 4/3); 2 of 2 rules are missed")
     label = text_by_gid(figure, "critical").replace("\n", " ")
     ground, cover = place.ground_m, place.cover_m
     assert f"({place.latitude:.5f}° N, {-place.longitude:.5f}° W)" in label
@@ -510,7 +510,7 @@ def test_the_pair_that_meets_all_is_marked_beside_the_one_that_clears(plan):
     figure = frontier_figure(dataclasses.replace(found, answer=answer))
     stars = [line.get_xydata()[0].tolist() for line in axes_of(figure, "heights").lines if line.get_marker() == "*"]
     assert stars == [[found.cheapest.antenna_a_m, found.cheapest.antenna_b_m], [210.0, 30.0]]
-    assert "Antenna A at 210.0 m and antenna B at 30.0 m above ground clear every rule and meet" in text_by_gid(
+    assert "Antennas at A 210.0 m and B 30.0 m above ground clear every rule and meet" in text_by_gid(
         figure, "sentence"
     )
 

@@ -35,7 +35,7 @@ def study(hop, *options):
         "import sys\nfrom profiler.cli import main\n"
         "try:\n    main()\nfinally:\n    print('\\n'.join(sys.modules), file=sys.stderr)"
     )
-    command = [sys.executable, "-c", code, "study", str(hop), *options]
+    command = [sys.executable, "-c", code, "study", str(hop), "--full", *options]
     done = subprocess.run(command, cwd=ROOT, capture_output=True, text=True, check=True, encoding="utf-8")
     return done.stdout, set(done.stderr.split())
 

@@ -15,7 +15,7 @@ __all__ = ["CAUTION", "Part", "show_brief"]
 
 _LINES, _COLUMNS = 24, 80
 _MOST_OF_ONE = 4
-"""Lines of one part; what is longer is cut and stands whole in the full output."""
+"""Lines of 80 columns of one part; what is longer is cut and stands whole in the full output."""
 
 _WARNINGS = 3
 CAUTION = "A screening result, not a certificate: licensed practice and local codes decide."
@@ -90,8 +90,9 @@ def _lines(screen: Console, text: str, width: int) -> list[str]:
 
     # what a terminal would act on is escaped before the lines are measured
     lines = [line.plain.rstrip() for line in Text(printable(text)).wrap(screen, width)]
-    if len(lines) > _MOST_OF_ONE:
-        lines = [*lines[: _MOST_OF_ONE - 1], f"{lines[_MOST_OF_ONE - 1][: width - 2]} …"]
+    most = _MOST_OF_ONE * _COLUMNS // width
+    if len(lines) > most:
+        lines = [*lines[: most - 1], f"{lines[most - 1][: width - 2]} …"]
     return lines
 
 

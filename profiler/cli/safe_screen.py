@@ -5,6 +5,7 @@ from __future__ import annotations
 from typing import TYPE_CHECKING
 
 from profiler.printable import printable
+from profiler.remarks import without_signs
 
 if TYPE_CHECKING:
     from rich.console import RenderHook
@@ -24,6 +25,8 @@ def safe_hook() -> RenderHook:
         def __rich_console__(self, console: Console, options: ConsoleOptions) -> RenderResult:
             for text, style, control in console.render(self._inner, options):
                 safe = text if control else "\n".join(map(printable, text.split("\n")))
+                if not options.encoding.startswith("utf"):  # a minus that turns into a question mark is no minus
+                    safe = without_signs(safe)
                 yield Segment(safe, style, control)
 
     class SafeHook(RenderHook):

@@ -13,6 +13,7 @@ from profiler.remarks.numerals import (
     ratio_text,
     superscript,
     time_text,
+    without_signs,
 )
 
 __all__ = [
@@ -31,4 +32,5 @@ __all__ = [
     "ratio_text",
     "superscript",
     "time_text",
+    "without_signs",
 ]

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import math
+import re
 from fractions import Fraction
 
 from profiler.units import MINUTES_PER_YEAR
@@ -19,6 +20,7 @@ __all__ = [
     "ratio_text",
     "superscript",
     "time_text",
+    "without_signs",
 ]
 
 _SUPERSCRIPT = str.maketrans("-0123456789", "⁻⁰¹²³⁴⁵⁶⁷⁸⁹")
@@ -145,6 +147,19 @@ def time_text(minutes_per_year: float) -> str:
     if minutes < 1.0:
         value, unit = 60.0 * minutes, "s"
     return f"{value:.0f} {unit} a year" if value >= 10.0 else f"{ratio_text(value)} {unit} a year"
+
+
+def without_signs(text: str) -> str:
+    """Write numbers with the letters that every terminal has.
+
+    Examples
+    --------
+    >>> without_signs("−3.1 dB, 4.2·10⁻⁶ %")
+    '-3.1 dB, 4.2e-6 %'
+    """
+    powers = str.maketrans("⁻⁰¹²³⁴⁵⁶⁷⁸⁹", "-0123456789")
+    plain = re.sub("·10([⁻⁰¹²³⁴⁵⁶⁷⁸⁹]+)", lambda found: f"e{found[1].translate(powers)}", text)
+    return plain.replace("−", "-")
 
 
 def position_text(longitude: float, latitude: float) -> str:
