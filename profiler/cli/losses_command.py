@@ -20,6 +20,9 @@ if TYPE_CHECKING:
 
 __all__ = ["command"]
 
+_MOST_K = 2
+"""Factors k that stand on the short screen."""
+
 
 @click.command("losses")
 @hop_options
@@ -96,8 +99,9 @@ def _row_part(study: Study, losses: tuple[DiffractionLoss, ...]) -> Part:
     from profiler.cli.brief import Part
 
     chosen = losses[0].method == study.hop.diffraction.method
-    values = listed([f"{db_text(loss.loss_db)} at k = {k_text(loss.k)}" for loss in losses])
-    return Part(f"{losses[0].method}{', chosen' if chosen else ''}: {values}", "bold" if chosen else "")
+    values = [f"{db_text(loss.loss_db)} at k = {k_text(loss.k)}" for loss in losses[:_MOST_K]]
+    values += [f"{len(losses) - _MOST_K} more"] if len(losses) > _MOST_K else []
+    return Part(f"{losses[0].method}{', chosen' if chosen else ''}: {listed(values)}", "bold" if chosen else "")
 
 
 def _edges_table(by_k: dict[float, tuple[DiffractionLoss, ...]], scale: Scale) -> Table:
