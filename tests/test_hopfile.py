@@ -236,7 +236,7 @@ def test_celsius(folder):
         (
             {"frequency_ghz": "frequency = 7.5"},
             "",
-            "frequency = 7.5: must be a known key; did you mean frequency_ghz?",
+            "frequency = 7.5: must be a number with its unit in quotes, like \"7.5 GHz\"; or frequency_ghz with",
         ),
         (
             {"site_a__antenna_m": "antenna_ft = 9000"},
@@ -709,7 +709,7 @@ def test_quick_hop_is_the_hop_of_the_file(folder):
             {"antenna_b": "9000ft"},
             r"command line: site_b\.antenna_ft = 9000\.0: must be more than 0 and under 6561\.68 ft",
         ),
-        ({"antenna_b": "tall"}, r"command line: site_b\.antenna = 'tall': must be a height like 30 m or 98\.4 ft"),
+        ({"antenna_b": "tall"}, r"command line: site_b\.antenna = 'tall': must be a number with its unit in quotes, like .35 m.; or antenna_m"),
         (
             {"preset": None},
             r"command line: rules\.preset = \(missing\): must be given: preset, or rule; .*: p530-isolated",
@@ -813,7 +813,7 @@ def test_starter_sites_stand_in_the_sample_country():
 # One statement of each key --------------------------------------------------------------------------------------------
 
 DERIVED = {"longitude", "latitude", "position_notes", "from_m", "to_m", "terrain_sigma_m", "terrain_source"}
-DERIVED |= {"correlation_m", "median_k", "assumptions", "source", "source_sha256"}
+DERIVED |= {"correlation_m", "median_k", "assumptions", "overrides", "source", "source_sha256"}
 """Fields that are made from keys: a position, an extent, an error of the terrain, the rules, what reading adds."""
 
 
@@ -846,6 +846,7 @@ def test_any_stated_number_reaches_the_hop(data):
 PLACED = {"latitude", "longitude", "easting", "northing", "at_m", "from_m", "to_m", "width_m", "median_k", "low_k"}
 PLACED |= {"terrain_rmse_m", "terrain_sigma_m", "terrain_le90_m", "errored_seconds_ratio", "correlation_m"}
 PLACED |= {"errored_threshold_offset_db", "lowest_m", "highest_m", "terrain_absolute_le90_m", "terrain_relative_le90_m"}
+PLACED |= {"line_length_m", "line_loss_db_per_m"}
 """Numbers that are not taken up field by field, or not alone; they have tests of their own."""
 
 

@@ -21,6 +21,20 @@ __all__ = ["hop_options", "named", "read_hop", "speech_options"]
 Command = Callable[..., Any]
 
 _COMMAND_LINE = "command line"
+_KEYS = {
+    "position_a": "site_a.position",
+    "position_b": "site_b.position",
+    "name_a": "site_a.name",
+    "name_b": "site_b.name",
+    "antenna_a": "site_a.antenna",
+    "antenna_b": "site_b.antenna",
+    "frequency_ghz": "frequency_ghz",
+    "terrain": "terrain.paths",
+    "preset": "rules.preset",
+    "low_k": "rules.low_k",
+    "rules": "rules.rule",
+}
+"""The key of a hop file for each option; that of an antenna takes its unit from the value."""
 _SPELLING = {"position_a": "--a", "position_b": "--b", "rules": "--rule"}
 _OPTION_OF = (
     (r"\[\[rules\.rule\]\] tables with k and fresnel_fraction", "--rule"),
@@ -56,6 +70,8 @@ def hop_options(command: Command) -> Command:
             help="Raster or folder of rasters; may be repeated.",
         ),
         click.option("--preset", metavar="NAME", help="Named clearance rules; an unknown name lists them."),
+        click.option("--name-a", metavar="NAME", help="What site A is called."),
+        click.option("--name-b", metavar="NAME", help="What site B is called."),
         click.option("--low-k", type=NUMBER, metavar="K", help="Low k for presets that ask for one."),
         click.option(
             "--rule",
@@ -64,6 +80,13 @@ def hop_options(command: Command) -> Command:
             type=(NUMBER, NUMBER, NUMBER),
             metavar="K FRACTION MARGIN_M",
             help="A rule of your own: k, fraction of F1, margin in metres; may be repeated.",
+        ),
+        click.option(
+            "--set",
+            "settings",
+            multiple=True,
+            metavar="KEY=VALUE",
+            help="Any key of a hop file by its dotted name, like radio.a.power_dbm=24; may be repeated.",
         ),
     ]
     for option in reversed(options):
@@ -83,44 +106,57 @@ def speech_options(command: Command) -> Command:
     return command
 
 
-def read_hop(hop_file: Path | None, **options: Any) -> Hop:
-    """Read the hop from its file, or build it from the options of `hop_options`.
+def read_hop(hop_file: Path | None, *, antennas: bool = True, steps_in_feet: bool = False, **options: Any) -> Hop:
+    """Read the hop from its file, from the options of `hop_options`, or from the file with the options over it.
 
     Raises
     ------
     InputError
-        For a file and options together, or options that leave something out.
+        For options that leave something out, or anything that is not allowed.
     """
-    from profiler.hopfile import load_hop, quick_hop
+    from profiler.hopfile import load_hop
 
-    given = [name for name, value in options.items() if value not in (None, ())]
-    if hop_file is not None:
-        if given:
+    changes = _changes(options)
+    if hop_file is None:
+        needed = ("position_a", "position_b", "antenna_a", "antenna_b", "frequency_ghz", "terrain")
+        keys = set(changes) | {name.rpartition("_")[0] for name in changes}
+        missing = [
+            _option(name) for name in needed if _KEYS[name] not in keys and (antennas or not name.startswith("antenna"))
+        ]
+        if missing:
             raise InputError(
-                f"{hop_file}: {_option(given[0])}: must not stand beside a hop file; change the file instead"
+                f"{_COMMAND_LINE}: {', '.join(missing)}: must be given for a hop without a file; or name a hop file"
+                " (hopwright starter writes one)"
             )
-        return load_hop(hop_file)
-    needed = ("position_a", "position_b", "antenna_a", "antenna_b", "frequency_ghz", "terrain")
-    missing = [_option(name) for name in needed if name not in given]
-    if missing:
-        raise InputError(
-            f"{_COMMAND_LINE}: {', '.join(missing)}: must be given for a hop without a file; or name a hop file"
-            " (hopwright starter writes one)"
-        )
-    for end in ("antenna_a", "antenna_b"):
-        options[end] = _number_or_text(options[end])
-    with named(_COMMAND_LINE):
-        return quick_hop(options.pop("position_a"), options.pop("position_b"), **options)
+    with named(_COMMAND_LINE if hop_file is None else str(hop_file)):
+        return load_hop(hop_file, changes, antennas=antennas, steps_in_feet=steps_in_feet)
+
+
+def _changes(options: dict[str, Any]) -> dict[str, Any]:
+    """Keys of a hop file that the options set, with their values; ``--set`` has the last word."""
+    from profiler.hopfile import value_of
+
+    given = {name: value for name, value in options.items() if value not in (None, ())}
+    changes: dict[str, Any] = {}
+    for name, value in given.items():
+        if name == "rules":
+            changes[_KEYS[name]] = [{"k": k, "fresnel_fraction": share, "margin_m": m} for k, share, m in value]
+        elif name.startswith("antenna"):
+            metres = is_number(value)
+            changes[_KEYS[name] + ("_m" if metres else "")] = float(value) if metres else value
+        elif name != "settings":
+            changes[_KEYS[name]] = list(value) if isinstance(value, tuple) else value
+    for setting in given.get("settings", ()):
+        key, equals, text = setting.partition("=")
+        if not equals or not key.strip():
+            raise InputError(where=_COMMAND_LINE, field="--set", value=setting, allowed="KEY=VALUE")
+        changes[key.strip()] = value_of(text.strip())
+    return changes
 
 
 def _option(name: str) -> str:
     """Spell an option as it is typed."""
     return _SPELLING.get(name, "--" + name.replace("_", "-"))
-
-
-def _number_or_text(text: str) -> float | str:
-    """Read a bare number as metres, and leave text with a unit to the hop file's reader."""
-    return float(text) if is_number(text) else text
 
 
 @contextmanager
@@ -129,10 +165,11 @@ def named(source: str) -> Iterator[None]:
     try:
         yield
     except HopwrightError as error:
+        if not error.where and not str(error).startswith(source):
+            error.where = source
         text = str(error)
-        if not text.startswith(source):
-            text = f"{source}: {text}"
-        if source == _COMMAND_LINE:
-            for key, option in _OPTION_OF:
-                text = re.sub(rf"(?<![\w/.'\"-]){key}(?![\w/.])", option, text)
+        if not text.startswith(_COMMAND_LINE):
+            raise
+        for key, option in _OPTION_OF:
+            text = re.sub(rf"(?<![\w/.'\"-]){key}(?![\w/.])", option, text)
         raise InputError(text) from error

@@ -6,6 +6,7 @@ What a key is, is stated once, in `profiler.models`; the reader, the schema, the
 from profiler.hopfile.edit import with_antennas
 from profiler.hopfile.json_schema import hop_schema
 from profiler.hopfile.moved import with_paths_from
+from profiler.hopfile.overrides import value_of
 from profiler.hopfile.page import keys_page
 from profiler.hopfile.presets import PRESETS
 from profiler.hopfile.reader import load_hop, parse_hop, quick_hop
@@ -19,6 +20,7 @@ __all__ = [
     "parse_hop",
     "quick_hop",
     "starter",
+    "value_of",
     "with_antennas",
     "with_paths_from",
 ]

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping
+from collections.abc import Mapping, Sequence
 from pathlib import Path
 from typing import Any
 
@@ -10,8 +10,9 @@ from profiler.hopfile.placed import build_obstacle, build_site
 from profiler.hopfile.presets import PRESETS, expand_preset
 from profiler.hopfile.spot import Reading, Spot
 from profiler.hopfile.table import Table, build
-from profiler.models import ConfidenceChoice, Hop, Obstacle, Rule, Site
+from profiler.models import ConfidenceChoice, Hop, Obstacle, Override, Rule, Site, TowerChoice
 from profiler.models.rules import RulesTable
+from profiler.models.stated import ways
 from profiler.path import geodesic
 from profiler.terrain_error import TERRAIN_ERRORS, sigma_from_le90, sigma_from_rmse, split_le90
 from profiler.units import K_MEDIAN
@@ -19,7 +20,15 @@ from profiler.units import K_MEDIAN
 __all__ = ["build_hop"]
 
 
-def build_hop(raw: Mapping[str, Any], where: str, base_dir: Path, *, source_sha256: str | None = None) -> Hop:
+def build_hop(
+    raw: Mapping[str, Any],
+    where: str,
+    base_dir: Path,
+    *,
+    source_sha256: str | None = None,
+    overrides: tuple[Override, ...] = (),
+    notes: Sequence[str] = (),
+) -> Hop:
     """Build a hop from the tables of a file.
 
     Parameters
@@ -32,6 +41,10 @@ def build_hop(raw: Mapping[str, Any], where: str, base_dir: Path, *, source_sha2
         Folder that paths in the file start from.
     source_sha256
         Hash of the file, for the provenance.
+    overrides
+        What was set beside the file, and is in the tables already.
+    notes
+        What was assumed before.
 
     Returns
     -------
@@ -44,7 +57,7 @@ def build_hop(raw: Mapping[str, Any], where: str, base_dir: Path, *, source_sha2
     """
 
     def whole(table: Table) -> Hop:
-        return _hop(table, source_sha256)
+        return _hop(table, source_sha256, overrides)
 
     special = {
         Hop: whole,
@@ -53,11 +66,11 @@ def build_hop(raw: Mapping[str, Any], where: str, base_dir: Path, *, source_sha2
         RulesTable: _rules,
         ConfidenceChoice: _confidence,
     }
-    hop: Hop = build(Hop, raw, Spot(Reading(where, base_dir)), special)
+    hop: Hop = build(Hop, raw, Spot(Reading(where, base_dir, notes=list(notes))), special)
     return hop
 
 
-def _hop(table: Table, source_sha256: str | None) -> Hop:
+def _hop(table: Table, source_sha256: str | None, overrides: tuple[Override, ...]) -> Hop:
     values, reading = dict(table.values), table.spot.reading
     site_a, site_b = values["site_a"], values["site_b"]
     _check_sites(site_a, site_b, table)
@@ -74,7 +87,24 @@ def _hop(table: Table, source_sha256: str | None) -> Hop:
         reading.notes.insert(0, f"positions: no datum is given for {' and '.join(silent)}, WGS 84 is taken")
     if "polarization" not in values:
         reading.notes.append("polarization: none is given, vertical is taken")
-    return Hop(**values, assumptions=tuple(reading.notes), source=reading.where, source_sha256=source_sha256)
+    reading.notes += _cost_notes(table.raw.get("heights", {}))
+    values |= {"assumptions": tuple(reading.notes), "overrides": overrides}
+    return Hop(**values, source=reading.where, source_sha256=source_sha256)
+
+
+def _cost_notes(heights: Mapping[str, Any]) -> list[str]:
+    """Say what the costs of two towers have in common, where they are not both given per metre."""
+    stated = {end: [key for key in heights.get(end, {}) if key.startswith("cost_per_")] for end in ("a", "b")}
+    notes = []
+    for end, other in (("a", "b"), ("b", "a")):
+        for key in stated[end]:
+            way = ways(TowerChoice)[key][1]
+            if not way.plain:
+                unit, cost = key.removeprefix("cost_per_"), heights[end][key]
+                notes.append(f"cost at {end.upper()}: {cost:g} per {unit} is {way.into(cost):.4g} per m")
+        if stated[other] and not stated[end]:
+            notes.append(f"cost at {end.upper()}: none is given, 1 per m is taken")
+    return notes
 
 
 def _check_sites(site_a: Site, site_b: Site, table: Table) -> None:

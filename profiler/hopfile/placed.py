@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from profiler.errors import InputError
+from profiler.hopfile.grids import GridPlace, parse_grid
 from profiler.hopfile.positions import parse_position
 from profiler.hopfile.table import Table
 from profiler.models import Obstacle, Site
@@ -19,7 +20,13 @@ def _place(table: Table) -> tuple[float, float, tuple[str, ...]]:
     """Longitude, latitude, and how they were given if not as plain WGS 84 degrees; takes them out of the values."""
     given = {name: table.values.pop(name, None) for name in _PLACE}
     system: int | str | None = given["datum"]
-    if text := given["position"]:
+    text = given["position"]
+    if text and (place := parse_grid(text)):
+        system = given["epsg"] = _utm_grid(place, given["datum"], table)
+        given["easting"], given["northing"] = place.easting_m, place.northing_m
+        words = f"given as {' '.join(text.split())}"
+        words += f", the middle of a square of {place.square_m:g} m" if place.square_m else ""
+    elif text:
         given["latitude"], given["longitude"] = parse_position(text)
         words = f"given as {' '.join(text.split())}"
     elif given["easting"] is not None:
@@ -36,6 +43,25 @@ def _place(table: Table) -> tuple[float, float, tuple[str, ...]]:
         message = str(error).replace("crs = ", f"{'epsg' if given['epsg'] else 'datum'} = ", 1)
         raise InputError(table.spot.key(message.replace("x, y = ", f"{x}, {y} = ", 1)), where=_file(table)) from None
     return longitude, latitude, tuple(filter(None, (words, note)))
+
+
+_UTM_GRIDS = {
+    "WGS84": (32600, 32700, range(1, 61)),
+    "ETRS89": (25800, None, range(28, 39)),
+    "NAD83": (26900, None, range(1, 24)),
+    "NAD27": (26700, None, range(1, 23)),
+}
+"""EPSG codes of the UTM grids of a datum: zone 0 north, zone 0 south, and the zones that there are."""
+
+
+def _utm_grid(place: GridPlace, datum: str | None, table: Table) -> int:
+    """EPSG code of the UTM grid of a place."""
+    north, south, zones = _UTM_GRIDS.get((datum or "WGS84").upper().replace(" ", ""), (0, None, range(0)))
+    base = north if place.north else south
+    if place.zone not in zones or base is None:
+        remedy = "or give easting, northing and the epsg of the grid"
+        raise table.error("datum", f"one of {', '.join(_UTM_GRIDS)} that has this zone, beside UTM or MGRS", remedy)
+    return base + place.zone
 
 
 def _file(table: Table) -> str:

@@ -37,6 +37,8 @@ _WORDS: Final = {
 }
 _TOKEN: Final = re.compile(r"""\s*(?:(\d+(?:\.\d*)?|\.\d+)|([^\W\d_]+)|(''|[°'"])|([-+:=,]))""")
 _DECIMAL_COMMA: Final = re.compile(r"(?<=\d),(?=\d)")
+_SECONDS_BEFORE_LETTER: Final = re.compile(r"(?<=\d)\s?s(?=[NSEW]\b)", re.IGNORECASE)
+"""The s of 46sN, with no blank between."""
 _MARKS: Final = ("°", "'", '"')
 _ISO_6709: Final = re.compile(r"([-+])((?:\d{2}){1,3}(?:\.\d+)?)([-+])(\d(?:\d{2}){1,3}(?:\.\d+)?)/?")
 _LIMITS: Final = {"lat": 90, "lon": 180}
@@ -126,6 +128,7 @@ def _iso_angle(sign: str, digits: str, axis: str) -> _Angle:
 
 def _only_pair(text: str) -> tuple[_Angle, _Angle]:
     """Find the one way to read the text as two angles, with commas between them or before decimals."""
+    text = _SECONDS_BEFORE_LETTER.sub('"', text)
     tokens = _tokens(text.translate(_PLAIN).strip())
     found = _pairs(tokens)
     decimal = _DECIMAL_COMMA.sub(".", text)

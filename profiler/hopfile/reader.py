@@ -5,29 +5,47 @@ from __future__ import annotations
 import hashlib
 import re
 import tomllib
-from collections.abc import Sequence
+from collections.abc import Mapping, Sequence
 from pathlib import Path
+from types import MappingProxyType
 from typing import TYPE_CHECKING, Any
 
 from profiler.errors import InputError
 from profiler.hopfile.limits import read_limited, require_bounded, require_shallow
+from profiler.hopfile.overrides import overridden
+from profiler.hopfile.stand_ins import stand_ins
 
 if TYPE_CHECKING:
     from profiler.models import Hop
 
-__all__ = ["load_hop", "parse_hop", "parse_tables", "quick_hop"]
+__all__ = ["COMMAND_LINE", "load_hop", "parse_hop", "parse_tables", "quick_hop"]
 
 _PLACE = re.compile(r"\s*\(at (?:line (?P<line>\d+), column (?P<column>\d+)|end of document)\)$")
-_HEIGHT = re.compile(r"\s*(-?\d+(?:\.\d*)?)\s*(m|ft)?\s*", re.IGNORECASE)
+NOTHING: Mapping[str, Any] = MappingProxyType({})
+COMMAND_LINE = "command line"
+"""What messages call the place of what was typed."""
 
 
-def load_hop(path: Path | str) -> Hop:
-    """Read a hop file.
+def load_hop(
+    path: Path | str | None,
+    changes: Mapping[str, Any] = NOTHING,
+    *,
+    antennas: bool = True,
+    steps_in_feet: bool = False,
+) -> Hop:
+    """Read a hop file, with some of its keys set anew if asked.
 
     Parameters
     ----------
     path
-        A TOML file, UTF-8. Paths in it start from its folder.
+        A TOML file, UTF-8. Paths in it start from its folder. None for a hop that is in the changes alone.
+    changes
+        Values by dotted name, like ``{"site_a.antenna": "60 ft", "radio.mode[0].threshold_dbm": -72}``, in place of
+        what the file says. Paths in them start from the current folder.
+    antennas
+        Whether antenna heights must be given; else the highest positions of the towers stand in, and the hop says so.
+    steps_in_feet
+        Whether a tower without a step of its own has positions at whole feet, not metres.
 
     Returns
     -------
@@ -45,6 +63,9 @@ def load_hop(path: Path | str) -> Hop:
     Traceback (most recent call last):
     profiler.errors.InputError: no/such/hop.toml: No such file or directory: must be a hop file that can be read
     """
+    ways: dict[str, Any] = {"changes": changes, "antennas": antennas, "steps_in_feet": steps_in_feet}
+    if path is None:
+        return _made({}, COMMAND_LINE, Path(), **ways)
     path = Path(path)
     try:
         content = read_limited(path)
@@ -56,7 +77,8 @@ def load_hop(path: Path | str) -> Hop:
         ) from None
     except OSError as error:
         raise InputError(f"{path}: {error.strerror}: must be a hop file that can be read") from None
-    return _hop(text, str(path), path.parent, source_sha256=hashlib.sha256(content).hexdigest())
+    ways["source_sha256"] = hashlib.sha256(content).hexdigest()
+    return _made(parse_tables(text, str(path)), str(path), path.parent, **ways)
 
 
 def parse_hop(text: str, where: str = "hop file", base_dir: Path | str = ".") -> Hop:
@@ -86,16 +108,42 @@ def parse_hop(text: str, where: str = "hop file", base_dir: Path | str = ".") ->
     Traceback (most recent call last):
     profiler.errors.InputError: hop file: site_a = 5: must be a table, headed [site_a]
     """
-    return _hop(text, where, Path(base_dir))
+    return _made(parse_tables(text, where), where, Path(base_dir))
 
 
-def _hop(text: str, where: str, base_dir: Path, *, source_sha256: str | None = None) -> Hop:
+def _made(
+    raw: Mapping[str, Any],
+    where: str,
+    base_dir: Path,
+    *,
+    changes: Mapping[str, Any] = NOTHING,
+    antennas: bool = True,
+    steps_in_feet: bool = False,
+    source_sha256: str | None = None,
+) -> Hop:
+    """Build the hop, and name the command line where it is to blame."""
     from profiler.hopfile.build import build_hop
 
+    beside = {name: _from_here(name, value) for name, value in changes.items()} if source_sha256 else changes
+    require_bounded(beside, COMMAND_LINE)
     try:
-        return build_hop(parse_tables(text, where), where, base_dir, source_sha256=source_sha256)
+        tables, overrides = overridden(raw, beside)
+        notes = stand_ins(tables, antennas=antennas, steps_in_feet=steps_in_feet)
+        set_beside = overrides if source_sha256 else ()
+        return build_hop(tables, where, base_dir, source_sha256=source_sha256, overrides=set_beside, notes=notes)
     except RecursionError:
         raise InputError(f"{where}: must be TOML that is nested a few levels deep; it is nested too deeply") from None
+    except InputError as error:
+        if not error.where or any(error.field.startswith(name.rpartition("_")[0] or name) for name in changes):
+            error.where = COMMAND_LINE
+        raise
+
+
+def _from_here(name: str, value: Any) -> Any:
+    """Let paths that are set beside a file start from the current folder."""
+    if name not in ("terrain.paths", "cover.canopy", "cover.landcover"):
+        return value
+    return [str(Path(each).absolute()) for each in value] if isinstance(value, list) else str(Path(value).absolute())
 
 
 def parse_tables(text: str, where: str) -> dict[str, Any]:
@@ -136,6 +184,8 @@ declaration; text needs quotes, decimals a point
         raise InputError(
             f"{where}: line {line}, column {column}: must be TOML: {' '.join(reason.split())}; {remedy}"
         ) from None
+    except RecursionError:
+        raise InputError(f"{where}: must be TOML that is nested a few levels deep; it is nested too deeply") from None
     require_bounded(tables, where)
     return tables
 
@@ -152,7 +202,7 @@ def quick_hop(
     low_k: float | None = None,
     rules: Sequence[tuple[float, float, float]] = (),
     name: str | None = None,
-    where: str = "command line",
+    where: str = COMMAND_LINE,
     base_dir: Path | str = ".",
 ) -> Hop:
     """Make a hop from a few values, by the same checks as a hop file.
@@ -192,28 +242,13 @@ def quick_hop(
     >>> hop.site_a.antenna_m, hop.rules[0].fresnel_fraction, hop.rules[0].margin_m
     (30.48, 0.6, 3.0)
     """
-    from profiler.hopfile.build import build_hop
-
     own = [{"k": k, "fresnel_fraction": fraction, "margin_m": margin_m} for k, fraction, margin_m in rules]
+    stated: dict[str, Any] = {"name": name, "frequency_ghz": frequency_ghz}
+    for end, position, antenna in (("site_a", position_a, antenna_a), ("site_b", position_b, antenna_b)):
+        stated[end] = {"position": position, "antenna" if isinstance(antenna, str) else "antenna_m": antenna}
     asked = {"preset": preset, "low_k": low_k, "rule": own or None}
-    raw: dict[str, Any] = {
-        "frequency_ghz": frequency_ghz,
-        "site_a": {"position": position_a, **_height(antenna_a, "site_a", where)},
-        "site_b": {"position": position_b, **_height(antenna_b, "site_b", where)},
-        "terrain": {"paths": [str(path) for path in terrain]},
-        "rules": {key: value for key, value in asked.items() if value is not None},
-    }
-    if name is not None:
-        raw["name"] = name
+    stated["terrain"] = {"paths": [str(path) for path in terrain]}
+    stated["rules"] = {key: value for key, value in asked.items() if value is not None}
+    raw = {key: value for key, value in stated.items() if value is not None}
     require_bounded(raw, where)
-    return build_hop(raw, where, Path(base_dir))
-
-
-def _height(value: float | str, table: str, where: str) -> dict[str, float]:
-    """Antenna height as the key and number of a hop file."""
-    if not isinstance(value, str):
-        return {"antenna_m": value}
-    match = _HEIGHT.fullmatch(value)
-    if match is None:
-        raise InputError(f"{where}: {table}.antenna = {value!r}: must be a height like 30 m or 98.4 ft")
-    return {f"antenna_{(match[2] or 'm').lower()}": float(match[1])}
+    return _made(raw, where, Path(base_dir))

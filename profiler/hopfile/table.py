@@ -18,7 +18,7 @@ from typing import Any
 from profiler.errors import MISSING, InputError, show
 from profiler.hopfile.spot import Spot
 from profiler.models import Hop
-from profiler.models.key_units import Way
+from profiler.models.key_units import Way, in_unit, stem_of
 from profiler.models.stated import Entry, Kind, States, allowed, entries, forms, ways
 
 __all__ = ["Table", "build", "read"]
@@ -115,6 +115,7 @@ def read(states: States, raw: Mapping[str, Any], spot: Spot, special: Mapping[ty
     Traceback (most recent call last):
     profiler.errors.InputError: hop.toml: heights.a.lowest_fr = 100: must be a known key; did you mean lowest_ft?
     """
+    raw = _measured(states, raw, spot)
     known, written = ways(states), dict[str, str]()
     for key, value in raw.items():
         if key not in known:
@@ -137,12 +138,39 @@ def read(states: States, raw: Mapping[str, Any], spot: Spot, special: Mapping[ty
     return table
 
 
+def _measured(states: States, raw: Mapping[str, Any], spot: Spot) -> dict[str, Any]:
+    """Put the key with its unit in place of a key without, whose text names the unit: ``antenna = "60 ft"``."""
+    bare = {entry.bare: entry for entry in entries(states) if entry.bare}
+    found: dict[str, Any] = {}
+    for key, value in raw.items():
+        entry = bare.get(key) if key not in ways(states) else None
+        if entry is not None:
+            measure = in_unit(value, entry.ways) if isinstance(value, str) else None
+            if measure is None:
+                like = f'a number with its unit in quotes, like "{entry.key.example:g} {entry.usual.unit}"'
+                raise spot.error(key, value, like, f"or {entry.usual.key} with the number alone")
+            if measure[0] in raw:
+                raise spot.error(key, value, f"left out beside {measure[0]} = {show(raw[measure[0]])}", "give one")
+            found[measure[0]] = measure[1]
+        else:
+            found[key] = value
+    return found
+
+
 def _nearest(states: States, key: str, spot: Spot) -> str:
-    """Offer the nearest known key, or all of them."""
-    near = difflib.get_close_matches(key.lower(), ways(states), n=1)
+    """Offer the key that is meant, by what others call it or by its spelling, or all keys."""
+    plain = key.lower().replace("-", "_").replace(" ", "_")
+    meant = {name: way.key for name, (_, way) in ways(states).items()}
+    for entry in entries(states):
+        for name in entry.key.also:
+            meant[name] = entry.usual.key
+            meant |= {f"{name}_{way.key.rpartition('_')[2]}": way.key for way in entry.ways}
+    near = [plain] if plain in meant else difflib.get_close_matches(plain, meant, n=1, cutoff=0.7)
+    near = near or difflib.get_close_matches(plain, ways(states), n=1)
     if near:
-        entry, way = ways(states)[near[0]]
-        return f"did you mean {entry.usual.key if way.plain else way.key}?"
+        entry, way = ways(states)[meant[near[0]]]
+        spelled = way.plain and near[0] != plain and stem_of(near[0]) != stem_of(plain)
+        return f"did you mean {entry.usual.key if spelled else way.key}?"
     if spot.at and key in ways(Hop):
         return "it belongs at the top of the file, before the first [table]"
     return f"known here: {', '.join(entry.usual.key for entry in entries(states))}"

@@ -18,7 +18,7 @@ from profiler.models.availability import (
 )
 from profiler.models.confidence import ConfidenceChoice
 from profiler.models.heights import HeightsChoice, Obstruction, TowerChoice
-from profiler.models.hop import DiffractionChoice, DiffractionMethod, Hop, Polarization
+from profiler.models.hop import DiffractionChoice, DiffractionMethod, DocumentFacts, Hop, Override, Polarization
 from profiler.models.profile import Profile, frozen_array, lengths_between
 from profiler.models.radio import Radio, RadioMode, Signature, Terminal
 from profiler.models.rules import Rule
@@ -33,6 +33,7 @@ __all__ = [
     "DiffractionChoice",
     "DiffractionMethod",
     "DiversityChoice",
+    "DocumentFacts",
     "FillPolicy",
     "HeightsChoice",
     "Hop",
@@ -41,6 +42,7 @@ __all__ = [
     "Objective",
     "Obstacle",
     "Obstruction",
+    "Override",
     "Polarization",
     "Profile",
     "Radio",

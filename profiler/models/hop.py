@@ -13,7 +13,7 @@ from profiler.models.site import Site
 from profiler.models.stated import Bounds, Key, Stated, require
 from profiler.models.terrain import CoverChoice, TerrainChoice
 
-__all__ = ["DiffractionChoice", "DiffractionMethod", "Hop", "Polarization"]
+__all__ = ["DiffractionChoice", "DiffractionMethod", "DocumentFacts", "Hop", "Override", "Polarization"]
 
 Polarization = Literal["vertical", "horizontal"]
 DiffractionMethod = Literal[
@@ -36,6 +36,34 @@ class DiffractionChoice(Stated):
 
 
 @dataclass(frozen=True, slots=True)
+class DocumentFacts(Stated):
+    """What a data sheet or an application says about the hop besides; nothing is computed from it."""
+
+    project: Annotated[str, Key("name or number of the project", left_out="not said", example="none")] = ""
+    applicant: Annotated[str, Key("who applies or asks", left_out="not said", example="nobody")] = ""
+    preparer: Annotated[
+        str, Key("who prepared it", left_out="not said", example="nobody", also=("prepared_by", "author", "engineer"))
+    ] = ""
+    reviewer: Annotated[
+        str, Key("who checked it", left_out="not said", example="nobody", also=("checked_by", "reviewed_by"))
+    ] = ""
+    drawing_number: Annotated[
+        str, Key("of the drawing", left_out="not said", example="D-1", also=("drawing", "sheet"))
+    ] = ""
+    revision: Annotated[str, Key("of the document", left_out="not said", example="0", also=("rev",))] = ""
+    date: Annotated[str, Key("of the document, as it is to be printed", left_out="not said", example="2020-01-31")] = ""
+
+
+@dataclass(frozen=True, slots=True)
+class Override:
+    """A key that was set beside the hop file: its dotted name, the value, and what the file said (None: nothing)."""
+
+    key: str
+    value: str
+    instead_of: str | None = None
+
+
+@dataclass(frozen=True, slots=True)
 class Hop(Stated):
     """All that a user says about one hop. Built by `profiler.hopfile` or in code; `profiler.study` runs it.
 
@@ -46,7 +74,10 @@ class Hop(Stated):
     name: Annotated[str, Key("of the hop", left_out="the names of its sites", example="Western ridge to eastern ridge")]
     site_a: Annotated[Site, Key("one end; profiles run from here")]
     site_b: Annotated[Site, Key("the other end")]
-    frequency_hz: Annotated[float, Key("of the carrier", least=1e7, most=1e12, usual="ghz", example=7.5)]
+    frequency_hz: Annotated[
+        float,
+        Key("of the carrier", least=1e7, most=1e12, usual="ghz", example=7.5, also=("freq", "f", "carrier", "band")),
+    ]
     rules: Annotated[
         tuple[Rule, ...],
         Key(
@@ -55,7 +86,9 @@ class Hop(Stated):
         ),
     ]
     terrain: Annotated[TerrainChoice, Key("where ground heights come from")]
-    polarization: Annotated[Polarization, Key("of the wave", example="vertical")] = "vertical"
+    polarization: Annotated[Polarization, Key("of the wave", example="vertical", also=("pol", "polarisation"))] = (
+        "vertical"
+    )
     median_k: Annotated[float | None, Bounds(above=0)] = None
     diffraction: Annotated[DiffractionChoice, Key("how the loss of an obstructed path is computed")] = (
         DiffractionChoice()
@@ -70,6 +103,10 @@ class Hop(Stated):
     confidence: Annotated[
         ConfidenceChoice | None, Key("how wrong the terrain may be", left_out="doubt is not examined")
     ] = None
+    document: Annotated[
+        DocumentFacts, Key("what a document about the hop says besides; carried as it stands", left_out="nothing")
+    ] = DocumentFacts()
+    overrides: tuple[Override, ...] = ()
     assumptions: tuple[str, ...] = ()
     source: str = "code"
     source_sha256: str | None = None

@@ -2,12 +2,13 @@
 
 from __future__ import annotations
 
+import re
 from collections.abc import Callable, Mapping
 from typing import NamedTuple
 
 from profiler.units import FOOT_M, STATUTE_MILE_M, ZERO_CELSIUS_K, gradient_from_k, k_from_gradient
 
-__all__ = ["LENGTHS_M", "Way", "unit_ways"]
+__all__ = ["LENGTHS_M", "Way", "in_unit", "stem_of", "unit_ways"]
 
 LENGTHS_M: Mapping[str, float] = {"m": 1.0, "ft": FOOT_M, "km": 1e3, "mi": STATUTE_MILE_M}
 """Endings of a key that holds a length, and their size."""
@@ -50,6 +51,49 @@ class Way(NamedTuple):
         return self.into is _same
 
 
+_SPELLED = {
+    **dict.fromkeys(("'", "′", "’", "foot", "feet"), "ft"),
+    **dict.fromkeys(("metre", "metres", "meter", "meters"), "m"),
+    **dict.fromkeys(("kilometre", "kilometres", "kilometer", "kilometers"), "km"),
+    **dict.fromkeys(("mile", "miles"), "mi"),
+    **dict.fromkeys(("°c", "celsius"), "c"),
+    "kelvin": "k",
+}
+"""Units as people write them behind a number, beside the endings of keys."""
+_MEASURE = re.compile(r"\s*([-+]?(?:\d+(?:\.\d*)?|\.\d+)(?:[eE][-+]?\d+)?)\s*([^\d\s.].*?)\s*")
+
+
+def stem_of(key: str) -> str:
+    """Give a key without the ending that is its unit; empty where it has none.
+
+    Examples
+    --------
+    >>> stem_of("antenna_ft"), stem_of("terrain_kind"), stem_of("cost_per_m")
+    ('antenna', '', '')
+    """
+    stem, _, ending = key.rpartition("_")
+    known = ending in {"c", "k"}.union(*_SCALES.values()) and not stem.endswith("_per")
+    return stem if known and (ending not in "ck" or stem.endswith("temperature")) else ""
+
+
+def in_unit(text: str, ways: tuple[Way, ...]) -> tuple[str, float] | None:
+    """Read a number with its unit as the key in that unit and the number; None where it is no such text.
+
+    Examples
+    --------
+    >>> antenna = unit_ways("antenna_m")
+    >>> in_unit("60'", antenna), in_unit("18.3 m", antenna), in_unit("60 GHz", antenna), in_unit("60", antenna)
+    (('antenna_ft', 60.0), ('antenna_m', 18.3), None, None)
+    """
+    found = _MEASURE.fullmatch(text)
+    if found is None:
+        return None
+    unit = found[2].casefold()
+    unit = _SPELLED.get(unit, unit)
+    key = next((way.key for way in ways if way.key.rpartition("_")[2] == unit or way.unit.casefold() == unit), None)
+    return None if key is None else (key, float(found[1]))
+
+
 def _same(value: float) -> float:
     return value
 
@@ -77,6 +121,12 @@ def unit_ways(name: str, usual: str = "", *, percent: bool = False) -> tuple[Way
     elif ending == "k":
         lead = f"{stem}_" if stem else ""
         found.append(Way(f"{lead}gradient_n_km", "N/km", _k_from_gradient, lambda k: float(gradient_from_k(k))))
+    elif name.endswith("_db_per_m"):
+        lengths = {"m": 1.0, "100m": 100.0, "ft": FOOT_M, "100ft": 100.0 * FOOT_M}
+        found = [
+            _scaled(f"{stem}_{each}", f"dB per {each.replace('100', '100 ')}", 1.0 / size)
+            for each, size in lengths.items()
+        ]
     elif ending in _SCALES and stem:
         per = stem.endswith("_per")
         found = [

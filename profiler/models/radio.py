@@ -16,19 +16,59 @@ class Terminal(Stated):
     ``model`` names the antenna, for the note of its gain.
     """
 
-    FORMS: ClassVar = (Forms((("gain_dbi",), ("diameter_m", "efficiency")), only=False),)
+    FORMS: ClassVar = (
+        Forms((("gain_dbi",), ("diameter_m", "efficiency")), only=False),
+        Forms((("line_length_m", "line_loss_db_per_m"),), needed=False),
+    )
 
-    power_dbm: Annotated[float, Key("of the transmitter", example=27)]
-    line_loss_db: Annotated[float, Key("between radio and antenna", least=0, example=1.2)] = 0.0
-    gain_dbi: Annotated[
-        float | None, Key("of the antenna", left_out="from its diameter and efficiency", example=36.8)
+    power_dbm: Annotated[
+        float, Key("of the transmitter", example=27, also=("power", "tx_power", "transmit_power", "output_power"))
+    ]
+    line_loss_db: Annotated[
+        float,
+        Key(
+            "between radio and antenna, beside that of a line by its length",
+            least=0,
+            example=1.2,
+            also=("feeder_loss", "cable_loss", "waveguide_loss", "connector_loss"),
+        ),
+    ] = 0.0
+    line: Annotated[str, Key("type of the line, in words", left_out="not said", example="invented waveguide")] = ""
+    line_length_m: Annotated[
+        float | None, Key("of the line", least=0, below=5000, left_out="no line by its length", example=40)
     ] = None
-    diameter_m: Annotated[float | None, Key("of the dish", above=0, left_out="not known", example=1.2)] = None
+    line_loss_db_per_m: Annotated[
+        float | None,
+        Key("of the line, per length", least=0, most=100, usual="100m", left_out="no line by its length", example=4.5),
+    ] = None
+    gain_dbi: Annotated[
+        float | None,
+        Key("of the antenna", left_out="from its diameter and efficiency", example=36.8, also=("gain", "antenna_gain")),
+    ] = None
+    diameter_m: Annotated[
+        float | None,
+        Key("of the dish", above=0, left_out="not known", example=1.2, also=("dish", "dish_size", "antenna_diameter")),
+    ] = None
     efficiency: Annotated[
         float | None,
         Key("of the dish", above=0, most=1, left_out="not known", example=0.6),
     ] = None
     model: Annotated[str, Key("of the antenna", left_out="not named", example="invented 1.2 m dish")] = ""
+    equipment: Annotated[str, Key("the radio, in words", left_out="not said", example="invented radio")] = ""
+    overload_dbm: Annotated[
+        float | None,
+        Key(
+            "greatest level that the receiver takes",
+            left_out="not known",
+            example=-20,
+            also=("max_input", "saturation"),
+        ),
+    ] = None
+
+    @property
+    def length_loss_db(self) -> float:
+        """Loss of the line by its length."""
+        return (self.line_length_m or 0.0) * (self.line_loss_db_per_m or 0.0)
 
 
 @dataclass(frozen=True, slots=True)
@@ -52,9 +92,10 @@ class RadioMode(Stated):
     """
 
     name: Annotated[str, Key("what the mode is called", example="128-QAM")]
-    threshold_dbm: Annotated[float | None, Key("of the receiver", left_out="from what stands below", example=-70.0)] = (
-        None
-    )
+    threshold_dbm: Annotated[
+        float | None,
+        Key("of the receiver", left_out="from what stands below", example=-70.0, also=("sensitivity", "rx_threshold")),
+    ] = None
     noise_figure_db: Annotated[float | None, Key("of the receiver", least=0, left_out="not known", example=5.0)] = None
     noise_temperature_k: Annotated[
         float | None, Key("of the whole receiving system", above=0, left_out="from the noise figure", example=917)
@@ -104,6 +145,10 @@ class Radio(Stated):
             example={"connectors and aging": 0.5},
         ),
     ] = ()
+    emission: Annotated[
+        str, Key("emission designator", left_out="not said", example="28M0D7W", also=("emission_designator",))
+    ] = ""
+    channel: Annotated[str, Key("of the plan", left_out="not said", example="none")] = ""
 
     @property
     def terminals(self) -> dict[str, Terminal]:

@@ -17,10 +17,15 @@ class Rule(Stated):
 
     k: Annotated[
         float,
-        Key("effective earth radius factor of the rule", least=0.1, most=100, example=1.0),
+        Key("effective earth radius factor of the rule", also=("k_factor",), least=0.1, most=100, example=1.0),
         Bounds(above=0, infinite=True),
     ]
-    fresnel_fraction: Annotated[float, Key("of the radius of the first Fresnel zone", least=0, most=10, example=0.6)]
+    fresnel_fraction: Annotated[
+        float,
+        Key(
+            "of the radius of the first Fresnel zone", also=("fresnel", "f1", "fraction"), least=0, most=10, example=0.6
+        ),
+    ]
     margin_m: Annotated[float, Key("to keep free besides", least=-100, most=1000, example=5)] = 0.0
     label: Annotated[str, Key("what the rule is called", left_out="no name", example="room for the trees to grow")] = ""
 

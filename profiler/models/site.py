@@ -20,13 +20,18 @@ class Place(Stated):
     position: Annotated[
         str | None,
         Key(
-            "degrees as people write them, latitude first where there are no letters",
+            "degrees as people write them, latitude first where there are no letters; or UTM or MGRS",
             parsed=True,
+            also=("coordinates", "coords", "location", "latlon", "mgrs", "utm"),
             example="46°02'56.4\"N 39°06'01.8\"W",
         ),
     ] = None
-    latitude: Annotated[float | None, Key("north is positive", least=-90, most=90, example=46.0490)] = None
-    longitude: Annotated[float | None, Key("east is positive", least=-180, most=180, example=-39.1005)] = None
+    latitude: Annotated[float | None, Key("north is positive", least=-90, most=90, example=46.0490, also=("lat",))] = (
+        None
+    )
+    longitude: Annotated[
+        float | None, Key("east is positive", least=-180, most=180, example=-39.1005, also=("lon", "long", "lng"))
+    ] = None
     datum: Annotated[
         str | None,
         Key(
@@ -35,9 +40,9 @@ class Place(Stated):
             left_out="WGS 84, and the result says so",
         ),
     ] = None
-    easting: Annotated[float | None, Key("in the unit of the grid", example=492225)] = None
-    northing: Annotated[float | None, Key("in the unit of the grid", example=5099500)] = None
-    epsg: Annotated[int | None, Key("code of the grid", least=1, example=32624)] = None
+    easting: Annotated[float | None, Key("in the unit of the grid", example=492225, also=("x",))] = None
+    northing: Annotated[float | None, Key("in the unit of the grid", example=5099500, also=("y",))] = None
+    epsg: Annotated[int | None, Key("code of the grid", least=1, example=32624, also=("crs", "srid", "zone"))] = None
 
     @classmethod
     def remedy(cls, field: str, raw: Mapping[str, Any]) -> str:
@@ -59,10 +64,30 @@ class Site(Stated):
     WGS 84 degrees.
     """
 
-    name: Annotated[str, Key("what the site is called", left_out="A or B", example="Western ridge")]
+    name: Annotated[
+        str, Key("what the site is called", left_out="A or B", example="Western ridge", also=("site", "site_name"))
+    ]
     longitude: Annotated[float, Form(Place), Bounds(least=-180, most=180)]
     latitude: Annotated[float, Bounds(least=-90, most=90)]
-    antenna_m: Annotated[float, Key("centre of the antenna above ground", above=0, below=2000, example=35)]
+    antenna_m: Annotated[
+        float,
+        Key(
+            "centre of the antenna above ground",
+            above=0,
+            below=2000,
+            example=35,
+            also=(
+                "height",
+                "antenna_height",
+                "tower_height",
+                "mast_height",
+                "mounting_height",
+                "centerline",
+                "agl",
+                "h",
+            ),
+        ),
+    ]
     surveyed_ground_m: Annotated[
         float | None,
         Key(
@@ -70,6 +95,7 @@ class Site(Stated):
             least=-500,
             most=9000,
             name="ground_m",
+            also=("elevation", "elev", "ground_elevation", "site_elevation", "altitude", "amsl"),
             left_out="the raster's ground",
             example=600.2,
         ),
@@ -77,4 +103,17 @@ class Site(Stated):
     clearing_m: Annotated[
         float, Key("kept free of trees around the mast, whatever the cover says", least=0, most=5000, example=40)
     ] = 0.0
+    call_sign: Annotated[str, Key("of the station", left_out="not said", example="XX9999")] = ""
+    owner: Annotated[str, Key("of the site or the structure", left_out="not said", example="nobody")] = ""
+    licence: Annotated[str, Key("of the station", left_out="not said", example="none", also=("license",))] = ""
+    structure: Annotated[
+        str,
+        Key(
+            "what the antenna stands on, in words", left_out="not said", example="guyed mast", also=("structure_type",)
+        ),
+    ] = ""
+    structure_height_m: Annotated[
+        float | None,
+        Key("its top above ground, for the documents", above=0, below=2000, left_out="not said", example=42),
+    ] = None
     position_notes: tuple[str, ...] = ()

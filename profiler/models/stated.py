@@ -17,7 +17,7 @@ from functools import cache
 from typing import Any, ClassVar, Literal, NamedTuple, Union, get_args, get_origin, get_type_hints
 
 from profiler.errors import MISSING, InputError
-from profiler.models.key_units import Way, unit_ways
+from profiler.models.key_units import Way, stem_of, unit_ways
 
 __all__ = [
     "Bounds",
@@ -103,7 +103,8 @@ class Key(Bounds):
     ``words`` say what it is. ``left_out`` says what is taken where the key is not given, if that is not simply the
     field's default. ``name`` is the key in the file, where it is not the field's name; ``usual`` the ending that the
     trade writes (``"ghz"``); ``example`` a value in that unit. ``percent`` is for shares, written in percent, and
-    ``parsed`` for text that is taken apart and not shown. ``former`` has the names that choices had before, each with
+    ``parsed`` for text that is taken apart and not shown. ``also`` has what others call it,
+    without a unit, for the offer beside a wrong key. ``former`` has the names that choices had before, each with
     its successor. ``kind`` is the class that stands in the file in place of the field's own.
     """
 
@@ -114,6 +115,7 @@ class Key(Bounds):
     usual: str = ""
     percent: bool = False
     parsed: bool = False
+    also: tuple[str, ...] = ()
     former: tuple[tuple[str, str], ...] = ()
     kind: States | None = None
 
@@ -213,6 +215,11 @@ class Entry:
     def required(self) -> bool:
         """Whether there is nothing to take where it is left out."""
         return self.default is NO_DEFAULT and not self.key.left_out
+
+    @property
+    def bare(self) -> str:
+        """The key without its unit, which stands for text that names the unit: ``antenna = "60 ft"``."""
+        return "" if self.key.percent or self.kind.sort is not float else stem_of(self.ways[0].key)
 
     @property
     def usual(self) -> Way:

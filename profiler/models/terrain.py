@@ -24,7 +24,11 @@ class TerrainChoice(Stated):
 
     paths: Annotated[
         tuple[Path, ...],
-        Key("rasters, or folders of them; from the folder of this file", example=["terrain/"]),
+        Key(
+            "rasters, or folders of them; from the folder of this file",
+            also=("path", "files", "rasters", "dem", "dtm"),
+            example=["terrain/"],
+        ),
     ]
     method: Annotated[
         SampleMethod, Key("between cell centres, or the highest of the cells around", example="bilinear")
