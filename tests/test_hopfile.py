@@ -236,7 +236,7 @@ def test_celsius(folder):
         (
             {"frequency_ghz": "frequency = 7.5"},
             "",
-            "frequency = 7.5: must be a number with its unit in quotes, like \"7.5 GHz\"; or frequency_ghz with",
+            'frequency = 7.5: must be a number with its unit in quotes, like "7.5 GHz"; or frequency_ghz with',
         ),
         (
             {"site_a__antenna_m": "antenna_ft = 9000"},
@@ -709,7 +709,10 @@ def test_quick_hop_is_the_hop_of_the_file(folder):
             {"antenna_b": "9000ft"},
             r"command line: site_b\.antenna_ft = 9000\.0: must be more than 0 and under 6561\.68 ft",
         ),
-        ({"antenna_b": "tall"}, r"command line: site_b\.antenna = 'tall': must be a number with its unit in quotes, like .35 m.; or antenna_m"),
+        (
+            {"antenna_b": "tall"},
+            r"command line: site_b\.antenna = 'tall': must be a number with its unit in quotes, like .35 m",
+        ),
         (
             {"preset": None},
             r"command line: rules\.preset = \(missing\): must be given: preset, or rule; .*: p530-isolated",

@@ -11,7 +11,7 @@ from numpy.typing import ArrayLike
 
 from profiler.budget.antenna import antenna_gain, near_field_warnings
 from profiler.checks import finite, positive
-from profiler.models import Radio, RadioMode
+from profiler.models import Radio, RadioMode, Terminal
 from profiler.receiver import Line, Threshold, mode_threshold
 from profiler.units import Float, wavelength
 
@@ -34,6 +34,7 @@ __all__ = [
 Way = Literal["a_to_b", "b_to_a"]
 """A direction of the hop, by the end that sends and the end that receives."""
 
+FREE_SPACE = "free space"
 FREE_SPACE_NOTE = "20·log10(4π·d/λ), Rec. ITU-R P.525-4 §2.3"
 AIMED = "antennas aimed at each other and matched in polarization: full gain at both ends"
 
@@ -42,11 +43,13 @@ AIMED = "antennas aimed at each other and matched in polarization: full gain at 
 class ModeBudget:
     """One mode's row: ``lines`` add up to ``received_dbm``, ``threshold_lines`` to ``threshold_dbm``.
 
-    Threshold and fade margin are None where the mode gives no data for a threshold.
+    ``eirp_dbm`` is the equivalent isotropically radiated power. Threshold and fade margin are None where the mode gives
+    no data for a threshold.
     """
 
     name: str
     lines: tuple[Line, ...]
+    eirp_dbm: float
     received_dbm: float
     threshold_lines: tuple[Line, ...]
     threshold_dbm: float | None
@@ -55,10 +58,16 @@ class ModeBudget:
 
 @dataclass(frozen=True, slots=True)
 class Direction:
-    """One direction of the hop. The levels and the margin are those of the first mode; ``modes`` has them all."""
+    """One direction of the hop. The levels and the margin are those of the first mode; ``modes`` has them all.
+
+    ``overload_dbm`` is the greatest level that the receiver takes, None where that is not known.
+    """
 
     transmitter: str
     receiver: str
+    frequency_hz: float
+    eirp_dbm: float
+    overload_dbm: float | None
     free_space_db: float
     gas_db: float
     diffraction_db: float
@@ -146,6 +155,7 @@ def link_budget(
     diffraction_db: float,
     gas_note: str = "",
     diffraction_note: str = "",
+    back: tuple[float, float, float] | None = None,
 ) -> Budget:
     """Link budget in both directions for every mode of the radio.
 
@@ -159,11 +169,13 @@ def link_budget(
     distance_m
         Length of the path, m, above 0.
     frequency_hz
-        Frequency of both directions, Hz, above 0.
+        Frequency from A to B, and of both directions unless ``back`` is given, Hz, above 0.
     gas_db, diffraction_db
         Losses of the whole path in dB, diffraction at the median k.
     gas_note, diffraction_note
         Method and edition of each, for the notes of their lines.
+    back
+        Frequency from B to A where it is another, Hz, with the losses by gases and diffraction at it, dB.
 
     Returns
     -------
@@ -199,22 +211,32 @@ def link_budget(
     -----
     Sources: Rec. ITU-R P.525-4 (free space), P.341-7 (what the losses are between); see `mode_threshold`, `dish_gain`.
     """
-    path = path_lines(distance_m, frequency_hz, gas_db, diffraction_db, gas_note, diffraction_note)
+    each_way: dict[Way, tuple[float, float, float]] = {"a_to_b": (frequency_hz, gas_db, diffraction_db)}
+    each_way["b_to_a"] = back or each_way["a_to_b"]
     modes = radio.modes or (RadioMode(name=""),)
     thresholds = [mode_threshold(mode) for mode in modes]
     a_to_b, b_to_a = (
         _direction(
+            radio,
             way,
-            path,
-            tuple(
-                _row(mode, threshold, table(radio, way, mode, frequency_hz, path))
-                for mode, threshold in zip(modes, thresholds, strict=True)
-            ),
+            each_way[way][0],
+            path_lines(distance_m, *each_way[way], gas_note, diffraction_note),
+            list(zip(modes, thresholds, strict=True)),
         )
         for way in get_args(Way)
     )
-    warnings = near_field_warnings(diameters(radio), distance_m, frequency_hz)
-    return Budget(a_to_b, b_to_a, _assumptions(modes, thresholds), warnings)
+    warnings = near_field_warnings(diameters(radio), distance_m, max(found[0] for found in each_way.values()))
+    warnings += (*_overloads("a_to_b", a_to_b), *_overloads("b_to_a", b_to_a))
+    return Budget(a_to_b, b_to_a, _assumptions(modes, thresholds, both_alike=back is None), warnings)
+
+
+def _overloads(way: Way, direction: Direction) -> tuple[str, ...]:
+    """Warn of a receiver that gets more than it takes, in any mode."""
+    level_dbm = max(mode.received_dbm for mode in direction.modes)
+    if direction.overload_dbm is None or level_dbm <= direction.overload_dbm:
+        return ()
+    more = f"{level_dbm:.1f} dBm is more than the {direction.overload_dbm:g} dBm that the receiver takes"
+    return (f"{way_name(way)}: the received level of {more}; less power or an attenuator is needed",)
 
 
 def table(radio: Radio, way: Way, mode: RadioMode, frequency_hz: float, path: tuple[Line, ...]) -> tuple[Line, ...]:
@@ -225,13 +247,24 @@ def table(radio: Radio, way: Way, mode: RadioMode, frequency_hz: float, path: tu
     power_note = "as given" if mode.power_dbm is None else f"as given for mode {mode.name}"
     return (
         Line(f"transmit power {sender}", float(power_dbm), "dBm", power_note),
-        loss_line(f"line loss {sender}", ends[sender].line_loss_db, "as given"),
+        *_line_losses(ends[sender], sender),
         antenna_gain(ends[sender], frequency_hz, sender),
         *path,
         *(loss_line(name, loss_db, "as given") for name, loss_db in radio.other_losses_db),
         antenna_gain(ends[receiver], frequency_hz, receiver),
-        loss_line(f"line loss {receiver}", ends[receiver].line_loss_db, "as given"),
+        *_line_losses(ends[receiver], receiver),
     )
+
+
+def _line_losses(terminal: Terminal, end: str) -> tuple[Line, ...]:
+    """Enter what is lost between radio and antenna: as given, and in the length of the line where that is given."""
+    found = (loss_line(f"line loss {end}", terminal.line_loss_db, "as given"),)
+    if terminal.line_length_m is None or terminal.line_loss_db_per_m is None:
+        return found
+    lost_db = terminal.line_length_m * terminal.line_loss_db_per_m
+    kind = f"{terminal.line}, " if terminal.line else ""
+    note = f"{kind}{terminal.line_length_m:g} m at {100.0 * terminal.line_loss_db_per_m:g} dB per 100 m"
+    return (*found, loss_line(f"line by length {end}", lost_db, note))
 
 
 def path_lines(
@@ -244,7 +277,7 @@ def path_lines(
 ) -> tuple[Line, Line, Line]:
     """Lines of the path itself: free space, gases, diffraction."""
     return (
-        loss_line("free space", float(free_space_loss(distance_m, frequency_hz)), FREE_SPACE_NOTE),
+        loss_line(FREE_SPACE, float(free_space_loss(distance_m, frequency_hz)), FREE_SPACE_NOTE),
         loss_line("gases", gas_db, gas_note),
         loss_line("diffraction", diffraction_db, diffraction_note),
     )
@@ -265,12 +298,22 @@ def diameters(radio: Radio) -> dict[str, float | None]:
     return {end: terminal.diameter_m for end, terminal in radio.terminals.items()}
 
 
-def _direction(way: Way, path: tuple[Line, Line, Line], rows: tuple[ModeBudget, ...]) -> Direction:
+def _direction(
+    radio: Radio,
+    way: Way,
+    frequency_hz: float,
+    path: tuple[Line, Line, Line],
+    modes: list[tuple[RadioMode, Threshold]],
+) -> Direction:
+    rows = tuple(_row(mode, threshold, table(radio, way, mode, frequency_hz, path)) for mode, threshold in modes)
     first, (sender, receiver) = rows[0], ends_of(way)
     free_space_db, gas_db, diffraction_db = (0.0 - line.value for line in path)
     return Direction(
         transmitter=sender,
         receiver=receiver,
+        frequency_hz=frequency_hz,
+        eirp_dbm=first.eirp_dbm,
+        overload_dbm=radio.terminals[receiver].overload_dbm,
         free_space_db=free_space_db,
         gas_db=gas_db,
         diffraction_db=diffraction_db,
@@ -284,12 +327,14 @@ def _direction(way: Way, path: tuple[Line, Line, Line], rows: tuple[ModeBudget, 
 def _row(mode: RadioMode, threshold: Threshold, lines: tuple[Line, ...]) -> ModeBudget:
     received_dbm = total(lines)
     margin_db = None if threshold.level_dbm is None else received_dbm - threshold.level_dbm
-    return ModeBudget(mode.name, lines, received_dbm, threshold.lines, threshold.level_dbm, margin_db)
+    sent = lines[: next(index for index, line in enumerate(lines) if line.name == FREE_SPACE)]
+    return ModeBudget(mode.name, lines, total(sent), received_dbm, threshold.lines, threshold.level_dbm, margin_db)
 
 
-def _assumptions(modes: tuple[RadioMode, ...], thresholds: list[Threshold]) -> tuple[str, ...]:
+def _assumptions(modes: tuple[RadioMode, ...], thresholds: list[Threshold], *, both_alike: bool) -> tuple[str, ...]:
     """Collect what the budget assumed, each thing once."""
-    lines = [AIMED, "the same frequency and path losses in both directions"]
+    alike = "the same frequency and path losses in both directions"
+    lines = [AIMED, alike if both_alike else "each direction at its own frequency, with the path losses at it"]
     if len(modes) > 1:
         lines.append(f"level, threshold and fade margin of a direction are those of its first mode, {modes[0].name}")
     for threshold in thresholds:

@@ -12,6 +12,7 @@ import click
 
 from profiler import __version__
 from profiler.cli import (
+    compare_command,
     heights_command,
     losses_command,
     reach_command,
@@ -69,6 +70,7 @@ for _module in (
     heights_command,
     losses_command,
     reach_command,
+    compare_command,
     terrain_command,
     starter_command,
 ):  # each loads what it needs when it runs

@@ -10,7 +10,7 @@ import click
 from profiler.cli.hop_options import hop_options, named, read_hop, speech_options
 from profiler.cli.number import NUMBER
 from profiler.cli.output import check_targets, csv_text, deliver, rendered, tell
-from profiler.errors import InputError
+from profiler.errors import InputError, field_error
 
 if TYPE_CHECKING:
     from profiler.heights import Choice
@@ -70,7 +70,7 @@ def command(
     from profiler.plan import plan_heights
     from profiler.study import run_study
 
-    hop = read_hop(**hop_given)
+    hop = read_hop(**hop_given, antennas=False, steps_in_feet=feet)
     check_targets(json_to, csv_to, write_to, figures=figures, reads=hop)
     with named(hop.source):
         sure = None if sure_percent is None else _share(sure_percent)
@@ -121,6 +121,9 @@ def _rewritten(hop: Hop, hop_file: Path | None, plan: HeightsPlan, write_to: Pat
 
     if hop_file is None:
         raise InputError(f"{hop.source}: --write: must have a hop file to copy; give one instead of options")
+    if hop.overrides:
+        remedy = "write the keys into the file, or leave --write out"
+        raise field_error(hop.source, "--write", str(write_to), "without options that set keys", remedy)
     pair = _pair(plan)
     if pair is None:
         return None

@@ -10,12 +10,14 @@ from profiler.words import METRES, headline, reason_words, step_words, steps_wor
 if TYPE_CHECKING:
     from profiler.budget import Budget, Direction
     from profiler.geometry import CorridorCheck
-    from profiler.models import Site
+    from profiler.models import Radio, Site
     from profiler.study.result import RuleResult, Study
 
 __all__ = ["to_document"]
 
 _SCHEMA = "hopwright-study/1"
+_SITE_FACTS = ("call_sign", "owner", "licence", "structure", "structure_height_m")
+_TERMINAL_FACTS = ("model", "equipment", "line", "line_length_m")
 
 
 def to_document(study: Study) -> dict[str, Any]:
@@ -81,6 +83,7 @@ def _site(site: Site, ground_m: float, centre_m: float) -> dict[str, Any]:
         "centre_m": centre_m,
         "ground_surveyed": site.surveyed_ground_m is not None,
         "position_notes": list(site.position_notes),
+        **{name: getattr(site, name) for name in _SITE_FACTS},
     }
 
 
@@ -93,7 +96,19 @@ def _hop(study: Study) -> dict[str, Any]:
         "frequency_hz": hop.frequency_hz,
         "polarization": hop.polarization,
         "median_k": study.climate.median_k,
+        "return_frequency_hz": hop.return_frequency_hz,
+        "equipment": None if hop.radio is None else _equipment(hop.radio),
+        "document": plain(hop.document),
+        "overrides": plain(hop.overrides),
     }
+
+
+def _equipment(radio: Radio) -> dict[str, Any]:
+    """Give what is said of the radio and carried as it stands."""
+    found: dict[str, Any] = {"emission": radio.emission, "channel": radio.channel}
+    for end, terminal in radio.terminals.items():
+        found[f"terminal_{end.lower()}"] = {name: getattr(terminal, name) for name in _TERMINAL_FACTS}
+    return found
 
 
 def _path(study: Study) -> dict[str, Any]:

@@ -88,8 +88,18 @@ def _hop(table: Table, source_sha256: str | None, overrides: tuple[Override, ...
     if "polarization" not in values:
         reading.notes.append("polarization: none is given, vertical is taken")
     reading.notes += _cost_notes(table.raw.get("heights", {}))
+    if "return_frequency_hz" in values:
+        both = "clearance is held at the lower of the two frequencies, outage predicted at the higher"
+        reading.notes.append(f"two frequencies: {both}; angles and diffraction by k are those from A to B")
+    reading.notes += [_set_beside(each) for each in overrides]
     values |= {"assumptions": tuple(reading.notes), "overrides": overrides}
     return Hop(**values, source=reading.where, source_sha256=source_sha256)
+
+
+def _set_beside(override: Override) -> str:
+    """Say what was set in place of what the file says."""
+    before = f", in place of {override.instead_of}" if override.instead_of else ", which the file leaves out"
+    return f"set beside the hop file: {override.key} = {override.value}{before}"
 
 
 def _cost_notes(heights: Mapping[str, Any]) -> list[str]:

@@ -103,6 +103,10 @@ class Hop(Stated):
     confidence: Annotated[
         ConfidenceChoice | None, Key("how wrong the terrain may be", left_out="doubt is not examined")
     ] = None
+    return_frequency_hz: Annotated[
+        float | None,
+        Key("from B to A, where it is another", least=1e7, most=1e12, usual="ghz", left_out="the same", example=7.66),
+    ] = None
     document: Annotated[
         DocumentFacts, Key("what a document about the hop says besides; carried as it stands", left_out="nothing")
     ] = DocumentFacts()
@@ -113,6 +117,11 @@ class Hop(Stated):
 
     def _agree(self) -> None:
         require(len(self.rules) > 0, "rules", Bare("none"), "at least one rule or a named preset")
+
+    @property
+    def frequencies_hz(self) -> dict[str, float]:
+        """Frequency of each direction, by the keys of a budget."""
+        return {"a_to_b": self.frequency_hz, "b_to_a": self.return_frequency_hz or self.frequency_hz}
 
     @property
     def ends(self) -> tuple[float, float, float, float]:

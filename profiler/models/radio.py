@@ -65,11 +65,6 @@ class Terminal(Stated):
         ),
     ] = None
 
-    @property
-    def length_loss_db(self) -> float:
-        """Loss of the line by its length."""
-        return (self.line_length_m or 0.0) * (self.line_loss_db_per_m or 0.0)
-
 
 @dataclass(frozen=True, slots=True)
 class Signature(Stated):

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Iterable
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from functools import partial
 from typing import TYPE_CHECKING
 
@@ -75,7 +75,7 @@ def link(
     """
     stated = (*(rule.k for rule in hop.rules), climate.median_k)
     losses = losses_at(hop, profile, stated, centre_a_m, centre_b_m, cell_m=cell_m)
-    budget = _budget(hop, profile, air, losses[climate.median_k])
+    budget = _budget(hop, profile, air, losses[climate.median_k], (centre_a_m, centre_b_m), cell_m)
     with under("availability", AvailabilityChoice):
         path = PathState(
             profile,
@@ -175,12 +175,19 @@ def air_along(hop: Hop, profile: Profile, median_k: float, centre_a_m: float, ce
     return Air(found.atmosphere, found.loss_db, source, gas_warnings(hop.frequency_hz, found.lowest_m))
 
 
-def _budget(hop: Hop, profile: Profile, air: Air, loss: DiffractionLoss) -> Budget | None:
+def _budget(
+    hop: Hop, profile: Profile, air: Air, loss: DiffractionLoss, centres_m: tuple[float, float], cell_m: float
+) -> Budget | None:
     """Link budget both ways where a radio is given."""
     if hop.radio is None:
         return None
     from profiler.budget import link_budget
 
+    back = None
+    if hop.return_frequency_hz is not None:
+        other = replace(hop, frequency_hz=hop.return_frequency_hz)
+        lost = losses_at(other, profile, (loss.k,), *centres_m, cell_m=cell_m)[loss.k]
+        back = other.frequency_hz, air_along(other, profile, loss.k, *centres_m).gas_db, lost.loss_db
     with under("radio"):
         return link_budget(
             hop.radio,
@@ -190,4 +197,5 @@ def _budget(hop: Hop, profile: Profile, air: Air, loss: DiffractionLoss) -> Budg
             diffraction_db=loss.loss_db,
             gas_note=f"Rec. ITU-R P.676-13; {air.source}",
             diffraction_note=f"{loss.method} at k = {loss.k:.3g}",
+            back=back,
         )

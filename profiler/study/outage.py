@@ -241,7 +241,7 @@ def _facts(hop: Hop, climate: ClimateUse, choice: AvailabilityChoice, path: Path
     )
     return PathFacts(
         distance_m=length_m,
-        frequency_hz=hop.frequency_hz,
+        frequency_hz=max(hop.frequencies_hz.values()),  # rain and multipath grow with it
         centre_a_m=path.centre_a_m,
         centre_b_m=path.centre_b_m,
         latitude=climate.latitude,
