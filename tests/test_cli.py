@@ -769,19 +769,25 @@ def test_a_hop_file_that_is_not_there(refused, command):
     ("words", "message"),
     [
         (("study",), "--a, --b, --antenna-a, --antenna-b, --frequency-ghz, --terrain: must be given for a hop without"),
-        (("study", "hop.toml", "--frequency-ghz", "7"), "hop.toml: --frequency-ghz: must not stand beside"),
+        (
+            ("study", "hop.toml", "--frequency-ghz", "7000"),
+            "command line: --frequency-ghz = 7000.0: must be 0.01 to 1000",
+        ),
         (("study", "a.toml", "b.toml"), "Got unexpected extra argument (b.toml)"),
         (("study", "--nonsense"), "No such option"),
-        (("nonsense",), "No such command 'nonsense': must be one of study, heights, losses, reach, terrain, starter"),
+        (
+            ("nonsense",),
+            "No such command 'nonsense': must be one of study, heights, losses, reach, compare, terrain, starter",
+        ),
         (
             ("Study3",),
-            "No such command 'Study3': must be one of study, heights, losses, reach, terrain, starter; did"
+            "No such command 'Study3': must be one of study, heights, losses, reach, compare, terrain, starter; did"
             " you mean study?",
         ),
         (("study", *changed(frequency_ghz="-7")), "command line: --frequency-ghz = -7.0: must be 0.01 to 1000 GHz"),
         (("study", *changed(frequency_ghz="nan")), "command line: --frequency-ghz = nan: must be a number"),
         (("study", *changed(frequency_ghz="x")), "'--frequency-ghz': 'x' must be a number, like 7.5"),
-        (("study", *changed(antenna_a="tall")), "--antenna-a = 'tall': must be a height like 30 m or 98.4 ft"),
+        (("study", *changed(antenna_a="tall")), "--antenna-a = 'tall': must be a number with its unit in quotes, like"),
         (("study", *changed(antenna_b="-5")), "--antenna-b = -5.0: must be more than 0 and under 2000 m"),
         (("study", *changed(terrain="")), "--terrain = '': must be text in quotes, not empty"),
         (

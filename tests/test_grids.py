@@ -1,4 +1,4 @@
-"""profiler.hopfile.grids: UTM and MGRS as text, against PROJ and an implementation of MGRS that is not this project's."""
+"""profiler.hopfile.grids: UTM and MGRS as text, against PROJ and an implementation of MGRS by others."""
 
 import mgrs
 import pytest
@@ -43,7 +43,7 @@ def test_utm_by_its_band_agrees_with_proj(latitude, zone, off_middle):
     epsg = (32600 if latitude >= 0 else 32700) + zone
     easting, northing = Transformer.from_crs("EPSG:4326", epsg, always_xy=True).transform(longitude, latitude)
     band = "CDEFGHJKLMNPQRSTUVWX"[min(int((latitude + 80) // 8), 19)]
-    if band == "S":  # not to be told from the southern hemisphere
+    if band == "S" or abs(latitude) < 1e-6:  # not to be told from the southern hemisphere; on the equator
         return
     place = parse_grid(f"{zone}{band} {easting:.3f} {northing:.3f}")
     assert (place.zone, place.north) == (zone, latitude >= 0)
@@ -75,7 +75,7 @@ def test_grid_text_in_many_habits(text, north, northing_m):
         # 4 000 km is 36.1° north in band S, and 54° south in the southern hemisphere: sea, but also Tierra del Fuego.
         (
             "19S 478000 4000000",
-            "UTM without doubt: write 19 north for band S .* or 19 south for the southern hemisphere",
+            "UTM without doubt: write 19 north for band S .* or 19 south for the southern",
         ),
         ("13T 478000 3000000", "a northing that lies in band T; or write north or south"),
         ("13I 478000 4420000", "a band of latitude out of CDEFGHJKLMNPQRSTUVWX"),

@@ -26,7 +26,7 @@ def run(capsys):
     return call
 
 
-# Keys set beside a file ------------------------------------------------------------------------------------------------
+# Keys set beside a file -----------------------------------------------------------------------------------------------
 
 
 @pytest.mark.parametrize(
@@ -67,13 +67,43 @@ def test_paths_that_are_set_start_from_the_current_folder(tmp_path, monkeypatch)
     assert load_hop(RIDGE).terrain.paths == (RIDGE.parent / "country.tif",)
 
 
+def test_two_frequencies_each_have_their_direction_and_the_lower_needs_the_clearance(run):
+    words = ("--frequency-ghz", "11.5", "--set", "return_frequency_ghz=7.425")
+    found = json.loads(run("study", RIDGE, *words, "--json", "-")[1])
+    alone = json.loads(run("study", RIDGE, "--json", "-")[1])
+    assert found["hop"]["frequencies_hz"] == {"a_to_b": 11.5e9, "b_to_a": 7.425e9}
+    assert found["rules"][0]["critical"] == alone["rules"][0]["critical"]  # at the lower, 7.425 GHz
+    there, back = found["budget"]["a_to_b"], found["budget"]["b_to_a"]
+    # 20·log10(11.5/7.425) = 3.80 dB more free-space loss, and as much more gain of each of the two dishes.
+    assert there["free_space_db"] - back["free_space_db"] == pytest.approx(3.80, abs=0.005)
+    assert there["received_dbm"] - back["received_dbm"] == pytest.approx(
+        3.80 - there["gas_db"] + back["gas_db"], abs=0.01
+    )
+    assert back == {**alone["budget"]["b_to_a"], "lines": back["lines"], "modes": back["modes"]}
+    # Rain takes more from 11.5 GHz than from 7.425: the outage is that of the higher.
+    both = [each["availability"]["year_percent"]["rain"] for each in (found, alone)]
+    assert both[0] > both[1]
+
+
+def test_a_line_by_its_length_the_eirp_and_a_receiver_that_gets_too_much(run):
+    words = ["radio.a.line_length_ft=120", "radio.a.line_loss_db_per_100ft=1.5", "radio.b.overload_dbm=-60"]
+    found = json.loads(run("study", RIDGE, *(f"--set={word}" for word in words), "--json", "-")[1])
+    there = found["budget"]["a_to_b"]
+    lines = {line["name"]: line["value"] for line in there["lines"]}
+    assert lines["line by length A"] == pytest.approx(-1.8)  # 120 ft at 1.5 dB per 100 ft
+    # Dish of 0.6 m at 7.425 GHz, 60 %: 10·log10(0.6·(π·0.6/0.040376)²) = 31.17 dBi; 22 − 1.2 − 1.8 + 31.17.
+    assert there["eirp_dbm"] == pytest.approx(50.17, abs=0.01)
+    (warning,) = (each for each in found["verdict"]["warnings"] if "receiver takes" in each)
+    assert warning.startswith("A to B: the received level of -51.")
+
+
 @pytest.mark.parametrize(
     ("changes", "message"),
     [
         ({"site_a.antenna_m": -3}, r"^command line: site_a\.antenna_m = -3: must be more than 0"),
         (
             {"site_a.height_ft": 3},
-            r"^command line: site_a\.height_ft = 3: must be a known key; did you mean antenna_ft",
+            r"command line: site_a\.height_ft = 3: must be a known key; did you mean antenna_",
         ),
         ({"radio.mode[3].power_dbm": 3}, r"^command line: --set = 'radio\.mode\[3\]\.power_dbm': must be about one of"),
         ({"radio.mode.power_dbm": 3}, r"must be a name in which mode is a table"),
@@ -106,7 +136,7 @@ def test_options_stand_beside_a_hop_file(run):
 
 
 def test_set_has_the_last_word_and_an_option_is_named_in_an_error(run):
-    code, out, _ = run("study", RIDGE, "--antenna-a", 99, "--set", "site_a.antenna_m=20", "--json", "-")
+    code, out, _ = run("study", QUARRY, "--antenna-a", 99, "--set", "site_a.antenna_m=20", "--json", "-")
     assert json.loads(out)["hop"]["site_a"]["antenna_m"] == 20
     code, _, err = run("study", RIDGE, "--antenna-a", "-3")
     assert (code, err) == (2, "hopwright: command line: --antenna-a = -3.0: must be more than 0 and under 2000 m\n")
@@ -114,7 +144,7 @@ def test_set_has_the_last_word_and_an_option_is_named_in_an_error(run):
     assert (code, err) == (2, "hopwright: command line: --set = 'site_a': must be KEY=VALUE\n")
 
 
-# Heights that are left out ---------------------------------------------------------------------------------------------
+# Heights that are left out --------------------------------------------------------------------------------------------
 
 
 @pytest.fixture
@@ -167,7 +197,7 @@ def test_a_copy_is_not_written_with_keys_set_beside_the_file(run, tmp_path):
     assert list(tmp_path.iterdir()) == []
 
 
-# Side by side ----------------------------------------------------------------------------------------------------------
+# Side by side ---------------------------------------------------------------------------------------------------------
 
 
 def test_compare_puts_variants_side_by_side(run):
@@ -196,6 +226,7 @@ def test_compare_passes_only_where_all_pass_and_needs_two(run):
 
 
 def test_the_table_of_a_comparison_fits_80_columns(run):
-    _, out, _ = run("compare", RIDGE, QUARRY, "--variant", "site_b.antenna_m=5", "--variant", "site_a.antenna_m=9")
+    variants = ("--variant", "site_b.antenna_m=5", "--variant", "site_a.antenna_m=9")
+    _, out, _ = run("compare", QUARRY, QUARRY, *variants)
     assert max(len(line) for line in out.splitlines()) <= 80
     assert out.count("chance of clearing") == 2  # three columns, then the fourth

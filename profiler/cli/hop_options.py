@@ -47,6 +47,7 @@ _OPTION_OF = (
     (r"site_([ab])(?:\.position)?", r"--\1"),
     (r"frequency_ghz", "--frequency-ghz"),
     (r"terrain\.paths\[\d+\]", "--terrain"),
+    (r"or antenna_m with the number alone", "or metres as a number alone"),
     (r"paths start from the folder of the hop file", "paths start from the folder that you are in"),
 )
 """How messages about keys of a hop file read where options stand for them: pattern, replacement."""

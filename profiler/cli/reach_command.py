@@ -106,14 +106,15 @@ def _answers(
     """Answer every question for one direction, by the question's key."""
     from profiler.budget import least_gain, least_power, longest_free_space_range, smallest_dish
 
-    hop, losses = study.hop, study.median_diffraction
+    hop = study.hop
     assert hop.radio is not None
-    assert losses is not None
+    assert study.budget is not None
     wanted = {**wanted, "direction": way}
-    path = (hop.radio, study.line.distance_m, hop.frequency_hz)
-    here = {**wanted, "gas_db": study.air.gas_db, "diffraction_db": losses.loss_db}
+    frequency_hz, lost = hop.frequencies_hz[way], getattr(study.budget, way)
+    path = (hop.radio, study.line.distance_m, frequency_hz)
+    here = {**wanted, "gas_db": lost.gas_db, "diffraction_db": lost.diffraction_db}
     answers = {
-        "longest_free_space_range": longest_free_space_range(hop.radio, hop.frequency_hz, **wanted),
+        "longest_free_space_range": longest_free_space_range(hop.radio, frequency_hz, **wanted),
         "least_power": least_power(*path, **here),
     }
     ends = {"a": hop.radio.terminal_a, "b": hop.radio.terminal_b}

@@ -96,7 +96,7 @@ def _hop(study: Study) -> dict[str, Any]:
         "frequency_hz": hop.frequency_hz,
         "polarization": hop.polarization,
         "median_k": study.climate.median_k,
-        "return_frequency_hz": hop.return_frequency_hz,
+        "frequencies_hz": hop.frequencies_hz,
         "equipment": None if hop.radio is None else _equipment(hop.radio),
         "document": plain(hop.document),
         "overrides": plain(hop.overrides),

@@ -88,9 +88,13 @@ def _hop(table: Table, source_sha256: str | None, overrides: tuple[Override, ...
     if "polarization" not in values:
         reading.notes.append("polarization: none is given, vertical is taken")
     reading.notes += _cost_notes(table.raw.get("heights", {}))
-    if "return_frequency_hz" in values:
-        both = "clearance is held at the lower of the two frequencies, outage predicted at the higher"
-        reading.notes.append(f"two frequencies: {both}; angles and diffraction by k are those from A to B")
+    if (back_hz := values.pop("return_frequency_hz", None)) is not None:
+        values["two_frequencies_hz"] = (values["frequency_hz"], back_hz)
+        values["frequency_hz"] = min(values["two_frequencies_hz"])
+        reading.notes.append(
+            "two frequencies: clearance and diffraction at the k of the rules are held at the lower, the outage at the"
+            " higher, the budget at each"
+        )
     reading.notes += [_set_beside(each) for each in overrides]
     values |= {"assumptions": tuple(reading.notes), "overrides": overrides}
     return Hop(**values, source=reading.where, source_sha256=source_sha256)

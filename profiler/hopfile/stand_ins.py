@@ -19,9 +19,7 @@ def stand_ins(tables: dict[str, Any], *, antennas: bool, steps_in_feet: bool) ->
         if not antennas and isinstance(site, dict) and _key(site, _entry(Site, "antenna_m")) is None:
             site.update(_highest(tower))
             height = " ".join(f"{value} {key.rpartition('_')[2]}" for key, value in _highest(tower).items())
-            notes.append(
-                f"antenna at {end.upper()}: no height is given, the tower's highest of {height} is looked from"
-            )
+            notes.append(f"antenna at {end.upper()}: no height is given, the highest of the tower, {height}, stands in")
         if steps_in_feet and _key(tower, _entry(TowerChoice, "step_m")) is None:
             tables.setdefault("heights", {}).setdefault(end, {})["step_ft"] = 1
             notes.append(f"tower at {end.upper()}: no step is given, positions at whole feet are taken")

@@ -10,7 +10,7 @@ from profiler.models.heights import HeightsChoice
 from profiler.models.radio import Radio
 from profiler.models.rules import PresetName, Rule, RulesTable
 from profiler.models.site import Site
-from profiler.models.stated import Bounds, Key, Stated, require
+from profiler.models.stated import Bounds, Form, Key, Stated, require
 from profiler.models.terrain import CoverChoice, TerrainChoice
 
 __all__ = ["DiffractionChoice", "DiffractionMethod", "DocumentFacts", "Hop", "Override", "Polarization"]
@@ -33,6 +33,16 @@ class DiffractionChoice(Stated):
 
     method: Annotated[DiffractionMethod, Key("of diffraction loss", example="delta-bullington")] = "delta-bullington"
     sea_fraction: Annotated[float, Key("of the path that is sea", least=0, most=1, example=0.0)] = 0.0
+
+
+@dataclass(frozen=True, slots=True)
+class ReturnFrequency(Stated):
+    """How a hop file states that the two directions have a frequency each."""
+
+    return_frequency_hz: Annotated[
+        float | None,
+        Key("from B to A, where it is another", least=1e7, most=1e12, usual="ghz", left_out="the same", example=7.66),
+    ] = None
 
 
 @dataclass(frozen=True, slots=True)
@@ -67,8 +77,9 @@ class Override:
 class Hop(Stated):
     """All that a user says about one hop. Built by `profiler.hopfile` or in code; `profiler.study` runs it.
 
-    ``median_k`` is for losses, budget and angles; None means that of the climate maps where they are used, else 4/3.
-    The rules have their own k.
+    With ``two_frequencies_hz``, from A to B and from B to A, ``frequency_hz`` is the lower, which needs the wider
+    clearance. ``median_k`` is for losses, budget and angles; None means that of the climate maps where they are used,
+    else 4/3. The rules have their own k.
     """
 
     name: Annotated[str, Key("of the hop", left_out="the names of its sites", example="Western ridge to eastern ridge")]
@@ -103,10 +114,7 @@ class Hop(Stated):
     confidence: Annotated[
         ConfidenceChoice | None, Key("how wrong the terrain may be", left_out="doubt is not examined")
     ] = None
-    return_frequency_hz: Annotated[
-        float | None,
-        Key("from B to A, where it is another", least=1e7, most=1e12, usual="ghz", left_out="the same", example=7.66),
-    ] = None
+    two_frequencies_hz: Annotated[tuple[float, float] | None, Form(ReturnFrequency)] = None
     document: Annotated[
         DocumentFacts, Key("what a document about the hop says besides; carried as it stands", left_out="nothing")
     ] = DocumentFacts()
@@ -121,7 +129,8 @@ class Hop(Stated):
     @property
     def frequencies_hz(self) -> dict[str, float]:
         """Frequency of each direction, by the keys of a budget."""
-        return {"a_to_b": self.frequency_hz, "b_to_a": self.return_frequency_hz or self.frequency_hz}
+        there, back = self.two_frequencies_hz or (self.frequency_hz, self.frequency_hz)
+        return {"a_to_b": there, "b_to_a": back}
 
     @property
     def ends(self) -> tuple[float, float, float, float]:

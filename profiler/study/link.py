@@ -183,19 +183,23 @@ def _budget(
         return None
     from profiler.budget import link_budget
 
-    back = None
-    if hop.return_frequency_hz is not None:
-        other = replace(hop, frequency_hz=hop.return_frequency_hz)
+    def at(frequency_hz: float) -> tuple[float, float, float]:
+        """Give a frequency with the losses of the path at it."""
+        if frequency_hz == hop.frequency_hz:
+            return frequency_hz, air.gas_db, loss.loss_db
+        other = replace(hop, frequency_hz=frequency_hz)
         lost = losses_at(other, profile, (loss.k,), *centres_m, cell_m=cell_m)[loss.k]
-        back = other.frequency_hz, air_along(other, profile, loss.k, *centres_m).gas_db, lost.loss_db
+        return frequency_hz, air_along(other, profile, loss.k, *centres_m).gas_db, lost.loss_db
+
+    (there_hz, gas_db, diffraction_db), back = (at(each) for each in hop.frequencies_hz.values())
     with under("radio"):
         return link_budget(
             hop.radio,
             float(profile.distance_m[-1]),
-            hop.frequency_hz,
-            gas_db=air.gas_db,
-            diffraction_db=loss.loss_db,
+            there_hz,
+            gas_db=gas_db,
+            diffraction_db=diffraction_db,
             gas_note=f"Rec. ITU-R P.676-13; {air.source}",
             diffraction_note=f"{loss.method} at k = {loss.k:.3g}",
-            back=back,
+            back=back if hop.two_frequencies_hz else None,
         )
