@@ -8,7 +8,7 @@ from typing import TYPE_CHECKING, Any
 
 import click
 
-from profiler.cli.hop_options import named, read_hop, speech_options
+from profiler.cli.hop_options import named, read_hop
 from profiler.cli.output import check_targets, json_text, put
 from profiler.errors import InputError
 
@@ -36,7 +36,8 @@ _ACROSS = 3
 )
 @click.option("--json", "json_to", metavar="FILE", help="Write the comparison as JSON; - for standard output.")
 @click.option("--feet", is_flag=True, help="Print in feet and miles.")
-@speech_options
+@click.option("-q", "--quiet", is_flag=True, help="Print the verdicts only.")
+@click.option("--no-color", is_flag=True, help="Print without color.")
 def command(
     hop_files: tuple[Path, ...],
     variants: tuple[str, ...],
