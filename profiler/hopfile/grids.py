@@ -14,7 +14,7 @@ _BANDS: Final = "CDEFGHJKLMNPQRSTUVWX"
 _UTM: Final = re.compile(
     r"(?:UTM\s*)?(?:zone\s*)?(\d{1,2})\s*(north|south|[A-Z])[\s,;]+"
     r"(?:E\s*[:=]?\s*)?(\d{5,6}(?:\.\d+)?)\s*(?:m\s*)?E?[\s,;]+(?:N\s*[:=]?\s*)?(\d{1,8}(?:\.\d+)?)\s*(?:m\s*)?N?",
-    re.IGNORECASE,
+    re.IGNORECASE | re.ASCII,
 )
 _MGRS: Final = re.compile(
     r"(?:MGRS\s*)?(\d{1,2})\s*([C-HJ-NP-X])\s*([A-HJ-NP-Z])([A-HJ-NP-V])\s*(\d*)\s*(\d*)", re.IGNORECASE

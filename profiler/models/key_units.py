@@ -60,7 +60,7 @@ _SPELLED = {
     "kelvin": "k",
 }
 """Units as people write them behind a number, beside the endings of keys."""
-_MEASURE = re.compile(r"\s*([-+]?(?:\d+(?:\.\d*)?|\.\d+)(?:[eE][-+]?\d+)?)\s*([^\d\s.].*?)\s*")
+_MEASURE = re.compile(r"\s*([-+]?(?:\d+(?:\.\d*)?|\.\d+)(?:[eE][-+]?\d+)?)\s*([^\d\s.].*?)\s*", re.ASCII)
 
 
 def stem_of(key: str) -> str:
