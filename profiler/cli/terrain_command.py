@@ -56,10 +56,17 @@ def command(
 
     hop = None if hop_file is None else load_hop(hop_file)
     check_targets(json_to, reads=(paths, hop))
-    datum, unit = (None, None) if hop is None else (hop.terrain.vertical_datum, hop.terrain.height_unit)
+    choice = None if hop is None else hop.terrain
+    datum, unit = (None, None) if choice is None else (choice.vertical_datum, choice.height_unit)
     with named("command line" if hop is None else hop.source):
         as_reading(datum, unit)  # what a hop file says must be right before it is used on rasters named elsewhere
-    found = survey(paths, read_heights=not metadata_only, vertical_datum=datum, height_unit=unit)
+    found = survey(
+        paths,
+        read_heights=not metadata_only,
+        vertical_datum=datum,
+        height_unit=unit,
+        allow_network=choice is not None and choice.allow_network,
+    )
     usable = list(dict.fromkeys(raster.info.path for raster in found.rasters))
     share, stop = (None, None) if hop is None or not usable else _hop_on(hop, usable)
     if json_to is not None:
@@ -71,26 +78,25 @@ def command(
 
 
 def _hop_on(hop: Hop, paths: Sequence[Path]) -> tuple[float | None, str | None]:
-    """Share of the hop's path that has ground, and what would stop a study of it on this terrain."""
+    """Share of the hop's path that has ground, and what would stop a study of it on this terrain: the study says so."""
+    from dataclasses import replace
+
     import numpy as np
 
     from profiler.path import geodesic, trace
-    from profiler.terrain import fill_missing, open_terrain, require_ground, require_inside
+    from profiler.study import open_hop_terrain, read_ground
+    from profiler.terrain import require_inside
 
-    choice, share = hop.terrain, None
-    line = trace(*hop.ends, spacing_m=choice.spacing_m or float(geodesic(*hop.ends)[0]) / 1000.0)
+    here = replace(hop, terrain=replace(hop.terrain, paths=tuple(paths)))
+    share = None
+    line = trace(*hop.ends, spacing_m=float(geodesic(*hop.ends)[0]) / 1000.0)
     try:
-        with open_terrain(
-            paths, method=choice.method, vertical_datum=choice.vertical_datum, height_unit=choice.height_unit
-        ) as terrain:
+        with open_hop_terrain(here) as terrain:
             ground_m = terrain.sample(line.longitude, line.latitude, allow_mixed_datums=True).ground_m
             share = float(1.0 - np.isnan(ground_m).mean())
             for site in (hop.site_a, hop.site_b):
                 require_inside(terrain, site.name, site.longitude, site.latitude)
-            terrain.sample(line.longitude, line.latitude, allow_mixed_datums=choice.allow_mixed_datums)
-        if choice.missing == "interpolate":
-            ground_m, _ = fill_missing(line.along_m, ground_m)
-        require_ground(line.along_m, line.longitude, line.latitude, ground_m)
+            read_ground(here, terrain)
     except HopwrightError as error:
         return share, str(error)
     return share, None
@@ -112,7 +118,7 @@ def _show(
         _show_group(screen, title, rasters)
     _show_whole(screen, found)
     left_out = gathered(((each.name, each.reason) for each in found.skipped), "files")
-    show_notes(screen, "Left out: not heights", left_out)
+    show_notes(screen, "Left out", left_out)
     show_notes(screen, "Cannot be used: a study on this terrain stops", found.problems, "red")
     if hop is None or not found.rasters:
         return

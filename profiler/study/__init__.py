@@ -3,6 +3,7 @@
 The heights plan is in `profiler.plan`: a study does without it, and starts faster.
 """
 
+from profiler.study.ground import read_ground
 from profiler.study.link import losses_at
 from profiler.study.result import Place, Study
 from profiler.study.run import open_hop_terrain, run_study
@@ -14,5 +15,6 @@ __all__ = [
     "gathered",
     "losses_at",
     "open_hop_terrain",
+    "read_ground",
     "run_study",
 ]

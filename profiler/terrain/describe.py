@@ -13,7 +13,7 @@ import numpy as np
 from profiler.errors import InputError, RasterError, under
 from profiler.printable import printable
 from profiler.terrain.files import RasterFile, read_bytes
-from profiler.terrain.gdal import LARGE_BLOCK_CELLS, open_raster
+from profiler.terrain.gdal import LARGE_BLOCK_CELLS, gdal_failures, open_raster
 from profiler.terrain.markers import declared_marker
 from profiler.terrain.reference import Reference, parse_reference, unit_factor
 from profiler.terrain.sound import require_plain_beside
@@ -154,7 +154,7 @@ def describe(file: RasterFile, reading: Reading) -> Tile:
         When it is unreadable, has no CRS or no place, is a photo or classes instead of heights, or its unit is unknown.
     """
     file = settled(file, reading)
-    with open_raster(file) as dataset, under(file.name):
+    with open_raster(file) as dataset, gdal_failures(file.name), under(file.name):
         band = _band(dataset, file.types, reading)
         reference = _reference(dataset)
         affine = _affine(dataset)

@@ -20,7 +20,15 @@ from profiler.terrain.pieces import Pieces, find_pieces
 from profiler.terrain.sound import require_plain_beside, require_whole
 from profiler.terrain.virtual import is_virtual
 
-__all__ = ["LARGE_BLOCK_CELLS", "OpenRasters", "gdal_session", "library_versions", "open_raster", "read_window"]
+__all__ = [
+    "LARGE_BLOCK_CELLS",
+    "OpenRasters",
+    "gdal_failures",
+    "gdal_session",
+    "library_versions",
+    "open_raster",
+    "read_window",
+]
 
 _DRIVERS = [
     "GTiff", "SRTMHGT", "DTED", "AAIGrid", "GRASSASCIIGrid", "HFA", "EHdr", "ENVI", "BT", "USGSDEM", "SDTS", "GSAG",
@@ -77,6 +85,21 @@ def gdal_session(*, allow_network: bool = False) -> Iterator[None]:
             yield
 
 
+@contextlib.contextmanager
+def gdal_failures(name: str) -> Iterator[None]:
+    """Turn what GDAL says of a damaged raster inside the body into one line that names the raster."""
+    from rasterio._err import CPLE_BaseError  # rasterio hands it on from where it only asks for metadata
+    from rasterio.errors import RasterioError
+
+    try:
+        yield
+    except (CPLE_BaseError, RasterioError, UnicodeError) as error:
+        reason = _first_line(error.__cause__ or error)
+        raise RasterError(
+            f"{name}: cannot be read ({reason}); the file is damaged or cut short: get it again"
+        ) from error
+
+
 def open_raster(file: RasterFile) -> Any:
     """Open a raster, by its own format alone or as the mosaic that its text was found to be.
 
@@ -115,13 +138,14 @@ def read_window(
     dataset: Any, band: int, rows: tuple[int, int], cols: tuple[int, int], *, name: str, masked: bool
 ) -> tuple[NDArray[Any], NDArray[np.bool_] | None]:
     """Raw cells of rows[0]:rows[1], cols[0]:cols[1], and where the raster's own mask band is valid (None: no mask)."""
+    from rasterio._err import CPLE_BaseError
     from rasterio.errors import RasterioError
 
     window = (rows, cols)
     try:
         cells = dataset.read(band, window=window)
         valid = dataset.read_masks(band, window=window) != 0 if masked else None
-    except RasterioError as error:
+    except (CPLE_BaseError, RasterioError) as error:
         raise RasterError(
             f"{name}: cannot be read at rows {rows[0]} to {rows[1] - 1}, columns {cols[0]} to {cols[1] - 1} "
             f"({_first_line(error.__cause__ or error)}); the file is damaged or cut short: get it again"
@@ -149,7 +173,7 @@ def _require_sound_piece(piece: Piece, mosaic: str) -> None:
     if is_virtual(read_bytes(piece.source, 4096)):
         raise RasterError(f"{name}: is a VRT with another ending; name it .vrt, or make a GeoTIFF of it")
     require_plain_beside(piece.source, name)
-    with open_raster(RasterFile(path, "", piece.source, named=True)) as dataset:
+    with open_raster(RasterFile(path, "", piece.source, named=True)) as dataset, gdal_failures(name):
         require_whole(dataset, piece.source, name)
         flags = {flag.name for flags in dataset.mask_flag_enums for flag in flags}
         others = {value for value in dataset.nodatavals if value is not None}
@@ -205,7 +229,8 @@ class OpenRasters:
         """Refuse a file that is not whole, or pieces under a window that are not; each is looked into once."""
         if not file.types:
             if file.source not in self._sound:
-                require_whole(self.get(file), file.source, name)
+                with gdal_failures(name):
+                    require_whole(self.get(file), file.source, name)
                 self._sound.add(file.source)
             return
         if file not in self._windows:

@@ -82,10 +82,11 @@ def build_index(tiles: Sequence[Tile]) -> Index:
     """Arrange described tiles for look-up."""
     from rasterio.transform import Affine
 
+    # every tile a row: what follows is arithmetic on whole columns, for a folder may hold thousands
     affine = np.array([tile.affine for tile in tiles])
     size = np.array([(tile.info.width, tile.info.height) for tile in tiles], dtype=np.int64)
     inverse = np.array([(~Affine(*tile.affine))[:6] for tile in tiles])
-    inverse[:, [2, 5]] -= 0.5
+    inverse[:, [2, 5]] -= 0.5  # an affine counts from the corner of the first cell, all else here from its centre
     groups = tuple(_group(tiles, members) for members in by_crs(tiles))
     lattice = np.full(len(tiles), -1, dtype=np.int64)
     offset = np.zeros((len(tiles), 2), dtype=np.int64)
@@ -106,6 +107,7 @@ def build_index(tiles: Sequence[Tile]) -> Index:
 
 def _boxes(affine: Float, size: Ints) -> Float:
     """Middle x, middle y, half width, half height of each outline, with a cell to spare."""
+    # a turned or sheared raster's outline: the middle is exact, and no corner is further off than both half sides
     a, b, c, d, e, f = affine.T
     width, height = size.T
     middle_x, middle_y = a * width / 2 + b * height / 2 + c, d * width / 2 + e * height / 2 + f
@@ -120,6 +122,7 @@ def _group(tiles: Sequence[Tile], ids: Ints) -> Group:
     south, north = bounds[:, 1].min() - 2 * cell_deg, bounds[:, 3].max() + 2 * cell_deg
     # longitudes shrink towards the poles: the margin grows, and close to one the whole circle is let in
     margin = 2 * cell_deg / max(np.cos(np.radians(min(max(abs(south), abs(north)), 90.0))), 1e-3)
+    # longitudes turn: all are counted from the first tile's western edge, so that none is cut at the antimeridian
     west = bounds[0, 0]
     start = (bounds[:, 0] - west + 180.0) % 360.0 - 180.0
     end = start + np.where(bounds[:, 2] >= bounds[:, 0], 0.0, 360.0) + bounds[:, 2] - bounds[:, 0]
@@ -135,12 +138,15 @@ def _join_lattices(
     """Fill `lattice`, `offset` and `around` for the tiles of one CRS."""
     left = group.tiles
     while left.size:
+        # the first tile left over begins a lattice; its cell is the measure for the others
         first = left[0]
         a, b, c, d, e, f = affine[first]
         ia, ib, _, id_, ie, _ = inverse[first]
+        # how far, in cells of the first, a tile's own cell would drift over its longer side
         da, db, dd, de = (affine[left][:, [0, 1, 3, 4]] - [a, b, d, e]).T
         drift = np.abs([ia * da + ib * dd, ia * db + ib * de, id_ * da + ie * dd, id_ * db + ie * de])
         drift = drift.max(axis=0) * size[left].max(axis=1)
+        # where each corner stands in the first's count: on the same grid it is whole numbers away
         dx, dy = affine[left][:, 2] - c, affine[left][:, 5] - f
         corner = np.stack([ia * dx + ib * dy, id_ * dx + ie * dy], axis=1)
         whole = np.rint(corner)
@@ -149,6 +155,7 @@ def _join_lattices(
         members = left[same]
         lattice[members] = first
         offset[members] = whole[same]
+        # a lattice of longitudes whose cells divide the circle closes on itself: its last column is beside its first
         round_trip = group.reference.period / abs(a) if group.reference.period and b == d == 0.0 else 0.0
         if round_trip and abs(round_trip - round(round_trip)) < _ALIGNED_CELLS:
             around[members] = round(round_trip)
@@ -167,6 +174,7 @@ def find_hits(index: Index, longitude: Float, latitude: Float) -> Hits:
     """
     found: list[Hits] = []
     for group in index.groups:
+        # the box of the whole CRS first, in degrees: what lies outside need not be projected
         near = np.flatnonzero(
             (latitude >= group.south) & (latitude <= group.north) & ((longitude - group.west) % 360.0 <= group.span)
         )
@@ -251,17 +259,20 @@ def locate_cells(index: Index, tile: Ints, col: Ints, row: Ints, candidates: Int
     holder, col, row
         The tile that holds the cell (-1: none does) and the cell in that tile's own count.
     """
+    # most cells lie in the tile that they were counted in: nothing to look up
     width, height = index.size[tile].T
     own = (col >= 0) & (col < width) & (row >= 0) & (row < height)
     if own.all():
         return tile, col, row
     holder, new_col, new_row = np.where(own, tile, -1), col.copy(), row.copy()
     away = np.flatnonzero(~own)
+    # the rest in the lattice's own count, which every tile of it shares up to its offset
     lattice, around = index.lattice[tile[away]], index.around[tile[away]]
     far_col, far_row = col[away] + index.offset[tile[away], 0], row[away] + index.offset[tile[away], 1]
     closes = np.maximum(around, 1)
     for other in candidates:
         here_col, here_row = far_col - index.offset[other, 0], far_row - index.offset[other, 1]
+        # round the globe a column has many numbers: the one within the circle counts
         here_col = np.where(around > 0, here_col % closes, here_col)
         fits = (lattice == index.lattice[other]) & (holder[away] < 0)
         fits &= (

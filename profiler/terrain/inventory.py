@@ -52,7 +52,7 @@ class FolderSurvey:
     problems
         One-line messages about rasters that cannot be used; `open_terrain` on the same paths stops with the first.
     skipped
-        What is not heights, and why.
+        What is not heights, and folders, links and files that were passed over, and why.
     bounds
         Degrees around all of them; None when there are none.
     covered_share
@@ -87,6 +87,7 @@ def survey(
     read_heights: bool = True,
     vertical_datum: str | None = None,
     height_unit: str | None = None,
+    allow_network: bool = False,
 ) -> FolderSurvey:
     r"""Describe every raster under the paths without stopping at a bad one.
 
@@ -98,6 +99,8 @@ def survey(
         Read every cell, for voids and heights; without, only metadata is read.
     vertical_datum, height_unit
         Of the rasters that declare none, as in `open_terrain`.
+    allow_network
+        Let mosaics name sources that are read over the network.
 
     Raises
     ------
@@ -118,12 +121,12 @@ def survey(
     >>> found.problems[0].split("/")[-1].split(",")[0]
     'lost.asc: has no coordinate reference system'
     """
-    reading = as_reading(vertical_datum, height_unit)
+    reading = as_reading(vertical_datum, height_unit, allow_network=allow_network)
     found: list[Tile] = []
     tiles: list[Tile] = []
     rasters: list[RasterSurvey] = []
     problems: list[str] = []
-    with gdal_session():
+    with gdal_session(allow_network=allow_network):
         listed = find_rasters([paths] if isinstance(paths, Path) else paths)
         skipped = [Skipped(path, "", reason) for path, reason in listed.passed_over]
         for file in listed.rasters:
