@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Iterator
 from contextlib import ExitStack, contextmanager
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from pathlib import Path
 from typing import TYPE_CHECKING
 
@@ -16,9 +16,9 @@ from profiler.models import CoverChoice, Obstacle, SampleMethod, frozen_array
 from profiler.units import Float
 
 if TYPE_CHECKING:
-    from profiler.terrain import Classes, Terrain
+    from profiler.terrain import Classes, Layer, Strip, Terrain
 
-__all__ = ["Cover", "CoverRasters", "obstacle_edges", "obstacle_heights", "open_cover"]
+__all__ = ["Cover", "CoverRasters", "obstacle_edges", "obstacle_extent", "obstacle_heights", "open_cover"]
 
 _NARROWEST_M = 0.01
 """An obstacle that is narrower, such as one given by a single distance, is taken to be so wide."""
@@ -33,7 +33,7 @@ class Cover:
     files: tuple[Path, ...] = ()
 
 
-def _extent(obstacle: Obstacle) -> tuple[float, float]:
+def obstacle_extent(obstacle: Obstacle) -> tuple[float, float]:
     """Where an obstacle begins and ends, metres from A."""
     wider = max(0.0, 0.5 * (_NARROWEST_M - (obstacle.to_m - obstacle.from_m)))
     return obstacle.from_m - wider, obstacle.to_m + wider
@@ -62,7 +62,7 @@ def obstacle_edges(obstacles: tuple[Obstacle, ...], length_m: float) -> Float:
     for each in obstacles:
         if each.to_m > length_m:
             raise InputError(f"obstacle {each.name}: to_m = {each.to_m:.0f}: must lie within the {length_m:.0f} m path")
-    edges = np.array([edge for each in obstacles for edge in _extent(each)])
+    edges = np.array([edge for each in obstacles for edge in obstacle_extent(each)])
     return edges[(edges > 0.0) & (edges < length_m)]
 
 
@@ -89,7 +89,7 @@ def obstacle_heights(distance_m: ArrayLike, obstacles: tuple[Obstacle, ...]) -> 
     distance = np.asarray(distance_m, dtype=float)
     heights = np.zeros_like(distance)
     for each in obstacles:
-        first, last = _extent(each)
+        first, last = obstacle_extent(each)
         stands = (distance >= first) & (distance <= last)
         heights[stands] = np.maximum(heights[stands], each.height_m)
     return heights
@@ -115,9 +115,8 @@ class CoverRasters:
         latitude: Float,
         *,
         weight_m: Float | None = None,
-        allow_gaps: bool = False,
     ) -> Cover:
-        """Cover heights at the points of a path, or of a corridor around it, from the rasters; obstacles come on top.
+        """Cover heights at the points of a path, from the rasters; obstacles come on top.
 
         Canopy rasters come first; where they have no data the land-cover class gives the height. Where a raster was
         given and neither has data, it is an error.
@@ -127,11 +126,9 @@ class CoverRasters:
         distance_m
             Distances from A, (m,), for the message.
         longitude, latitude
-            The points, degrees, a row or more for each distance: (m,) or (m, across).
+            The points, degrees, a row for each distance: (m, ...).
         weight_m
             Length of the path that each point stands for, for the shares in the notes; equal by default.
-        allow_gaps
-            Leave NaN where nothing has data, as beside a path, where the caller counts it.
 
         Returns
         -------
@@ -140,7 +137,7 @@ class CoverRasters:
         Raises
         ------
         MissingGroundError
-            Where a given raster has no data and no other source covers for it, unless gaps are allowed.
+            Where a given raster has no data and no other source covers for it.
         InputError
             For a land-cover class with no height, or a canopy below the ground.
         """
@@ -166,7 +163,7 @@ class CoverRasters:
                 if choice.obstacles
                 else "no cover given: trees and buildings are not in this result"
             )
-        if not allow_gaps and np.isnan(heights).any():
+        if np.isnan(heights).any():
             row = int(np.argwhere(np.isnan(heights))[0][0])
             raise MissingGroundError(
                 f"cover: no data {distance_m[row]:.0f} m from A: must be covered; give more rasters, or"
@@ -175,6 +172,29 @@ class CoverRasters:
         if choice.obstacles:
             notes.append("obstacles: " + ", ".join(f"{each.name} {each.height_m:g} m" for each in choice.obstacles))
         return Cover(frozen_array(heights), tuple(notes), tuple(files))
+
+    def layers(self, strip: Strip) -> tuple[list[Layer], list[Layer], tuple[Path, ...]]:
+        """Canopy heights and class heights on a strip beside a path, in the squares of their grids, and the files read.
+
+        Raises
+        ------
+        InputError
+            For a land-cover class with no height, or a canopy below the ground.
+        """
+        canopy: list[Layer] = []
+        classes: list[Layer] = []
+        files: list[Path] = []
+        if self.canopy is not None:
+            with under("cover.canopy"):
+                canopy, sources = self.canopy.layers(strip)
+            files += [path for use in sources for path in use.files]
+            _require_canopy(self.choice, *(layer.corners for layer in canopy))
+        if self.classes is not None:
+            with under("cover.landcover"):
+                found, read = self.classes.layers(strip)
+            files += read
+            classes = [replace(layer, corners=_heights_of(self.choice, layer.corners)) for layer in found]
+        return canopy, classes, tuple(files)
 
 
 @contextmanager
@@ -224,10 +244,14 @@ def _canopy_heights(
     with under("cover.canopy"):
         samples = canopy.sample(longitude, latitude)
     heights = np.array(samples.ground_m)
-    lowest = np.nanmin(heights, initial=0.0)
+    _require_canopy(choice, heights)
+    return heights, tuple(path for use in samples.sources for path in use.files)
+
+
+def _require_canopy(choice: CoverChoice, *heights_m: Float) -> None:
+    lowest = min((np.nanmin(each, initial=0.0) for each in heights_m), default=0.0)
     if lowest < 0.0:
         raise InputError(f"cover.canopy = {choice.canopy[0]}: must hold heights of 0 m or more, not {lowest:g} m")
-    return heights, tuple(path for use in samples.sources for path in use.files)
 
 
 def _class_heights(
@@ -236,8 +260,13 @@ def _class_heights(
     """Height of the land-cover class under each point, NaN where the raster has no class, and the files read."""
     with under("cover.landcover"):
         classes, files = rasters.sample(longitude, latitude)
+    return _heights_of(choice, np.where(classes >= 0, classes, np.nan)), files
+
+
+def _heights_of(choice: CoverChoice, classes: Float) -> Float:
+    """Heights of classes, NaN where there is none."""
     table, name = dict(choice.class_heights_m), "" if choice.landcover is None else choice.landcover.name
-    found = {int(each) for each in np.unique(classes[classes >= 0])}
+    found = {int(each) for each in np.unique(classes[~np.isnan(classes)])}
     unknown = sorted(found - table.keys())
     if unknown:
         raise InputError(
@@ -247,4 +276,4 @@ def _class_heights(
     heights = np.full(classes.shape, np.nan)
     for each in found:
         heights[classes == each] = table[each]
-    return heights, files
+    return heights

@@ -184,7 +184,8 @@ def analysis(work: Path, pairs: int) -> Iterator[Row]:
     cells = rng.standard_normal((1201, 1201))
     with open_terrain(tile) as terrain:
         study = run_study(hop, terrain)
-        points = study.profile.distance_m.size + (0 if study.corridor is None else study.corridor.surface_m.size)
+        beside = 0 if study.surface.patches is None else study.surface.patches.size
+        points = study.profile.distance_m.size + beside
         row, col = (rng.uniform(0, 1199, points) for _ in range(2))
 
         def gather() -> np.ndarray:
@@ -207,7 +208,7 @@ def analysis(work: Path, pairs: int) -> Iterator[Row]:
         missed = [
             check_rule(*path, each.check.rule).surplus_m.min() - each.check.surplus_m.min() for each in study.rules
         ]
-    size = f"{study.line.distance_m / 1e3:.0f} km, {study.line.points} points, {points} with those beside"
+    size = f"{study.line.distance_m / 1e3:.0f} km, {study.line.points} points, {beside} patches beside"
     yield took.row(f"analysis: {size}", "15 ms", "numpy gather of the cells")
     yield Row("  of it reading the ground", *(100 * each for each in ground.ratio), "%")
     yield exact.row("  of it laying the profile, exact", "", "sampled half a cell apart")

@@ -15,6 +15,7 @@ RANKS = {
     "models": 1,
     "checks": 1,
     "terrain_error": 1,
+    "patches": 1,
     "remarks": 1,
     "terrain": 2,
     "path": 2,

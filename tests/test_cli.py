@@ -362,7 +362,7 @@ def test_csv_is_the_point_table(run):
     rows = list(csv.DictReader(io.StringIO(out)))
     document = json.loads(run("study", "hop.toml", "--json", "-")[1])
     assert len(rows) == document["path"]["points"]
-    surplus = [float(row["rule1_surplus_m"]) for row in rows]
+    surplus = [float(row["rule1_least_surplus_m"]) for row in rows]
     assert min(surplus) == document["rules"][0]["critical"]["surplus_m"]
     assert rows[0]["rule1_ratio"] == ""  # 0/0 at the sites
     assert float(rows[-1]["distance_m"]) == document["path"]["distance_m"]

@@ -1,4 +1,4 @@
-"""Bulge, Fresnel radius, clearance, tight places, corridor and reflection, against published values and by property."""
+"""Bulge, Fresnel radius, clearance, tight places and reflection, against published values and by property."""
 
 import itertools
 
@@ -10,10 +10,7 @@ from scipy.optimize import brentq
 
 from profiler.errors import InputError, MissingGroundError
 from profiler.geometry import (
-    check_corridor,
     check_rule,
-    corridor_need,
-    corridor_offsets,
     earth_bulge,
     elevation_angle,
     find_reflections,
@@ -204,79 +201,6 @@ def test_tight_places_are_ranked_separate_and_start_with_the_tightest(values, ri
         assert enough or shallower < 0 <= crest
 
 
-# Corridor.
-
-
-def test_corridor_on_the_path_is_the_rule_itself():
-    x, z = profile([10, 50, 20, 90, 30, 15])
-    offset = corridor_offsets(x, 6e9, 0.6, 5.0)
-    flat_across = np.repeat(z[:, None], offset.shape[1], axis=1)
-    check = check_rule(x, z, 110.0, 105.0, 6e9, Rule(1.0, 0.6, 2.0))
-    beside = check_corridor(x, offset, flat_across, 110.0, 105.0, 6e9, Rule(1.0, 0.6, 2.0))
-    np.testing.assert_allclose(beside.least_surplus_m, check.surplus_m, atol=1e-9)
-    assert beside.side == "centre"
-
-
-@pytest.mark.parametrize(("side", "name"), [(-1, "left"), (1, "right")])
-def test_corridor_names_the_side(side, name):
-    x = np.array([0.0, 10e3, 20e3])
-    offset = corridor_offsets(x, 6e9, 1.0, 2.0)
-    ground = np.where(side * offset > 8.0, 100.0, 0.0)
-    beside = check_corridor(x, offset, ground, 100.0, 100.0, 6e9, Rule(1e6, 1.0))
-    assert (beside.passes, beside.side, beside.critical) == (False, name, 1)
-    assert abs(beside.offset_m) > 8.0
-
-
-def test_ground_outside_the_zone_or_below_its_curve_does_not_matter():
-    x = np.array([0.0, 10e3, 20e3])
-    radius = float(fresnel_radius(10e3, 10e3, 6e9))
-    offset = np.array([[0.0] * 5, [-1.01 * radius, -1.001 * radius, 0, 0.6 * radius, 0.61 * radius], [0.0] * 5])
-    below = 100 - 0.8 * radius - 0.01  # the circle's height at 0.6 r is 0.8 r: a 3-4-5 triangle
-    ground = np.array([[0.0] * 5, [500, 0, 0, below, 0], [0.0] * 5])
-    assert check_corridor(x, offset, ground, 100, 100, 6e9, Rule(1e9, 1.0)).passes
-    ground[1, 3] += 0.02
-    assert not check_corridor(x, offset, ground, 100, 100, 6e9, Rule(1e9, 1.0)).passes
-
-
-def test_corridor_counts_what_it_could_not_see():
-    x = np.array([0.0, 10e3, 20e3])
-    offset = corridor_offsets(x, 6e9, 1.0, 11.2)
-    ground = np.zeros_like(offset)
-    ground[1, 0] = np.nan
-    beside = check_corridor(x, offset, ground, 100, 100, 6e9, Rule(1.0, 1.0))
-    assert beside.need.missing_share == pytest.approx(1 / offset.size)
-
-
-@pytest.mark.parametrize("slope", [0.5, 1.0, -1.0, 2.0])
-@pytest.mark.parametrize("columns", [3, 5, 9])
-def test_a_side_slope_asks_for_the_distance_to_the_plane(slope, columns):
-    """Independent: a plane tilted across the path touches a circle of radius r when the ray is r·sqrt(1 + s²) above it.
-
-    With points across only at the edges and the middle, the touching point lies between them.
-    """
-    x = np.array([0.0, 10e3, 20e3])
-    radius = float(fresnel_radius(10e3, 10e3, 3e9))
-    offset = np.linspace(-1, 1, columns) * np.array([0.0, radius, 0.0])[:, None]
-    need = corridor_need(x, offset, slope * offset, 3e9, Rule(k=1e12, fresnel_fraction=1.0))
-    assert need.least_ray_m[1] == pytest.approx(radius * np.sqrt(1 + slope**2), rel=1e-9)
-    assert need.offset_m[1] == pytest.approx(radius * slope / np.sqrt(1 + slope**2), rel=1e-9)
-    assert need.surface_m[1] == pytest.approx(slope * need.offset_m[1], rel=1e-9)
-
-
-@given(st.lists(st.floats(-50, 50), min_size=5, max_size=5), st.floats(0, 1))
-def test_no_ground_between_the_points_across_asks_for_more(heights, share):
-    """Independent: a point of the straight ground between neighbours, taken as a point of its own, changes nothing."""
-    x = np.array([0.0, 10e3, 20e3])
-    radius = float(fresnel_radius(10e3, 10e3, 6e9))
-    columns = np.linspace(-radius, radius, 5)
-    y = (2 * share - 1) * radius
-    need = corridor_need(
-        x, np.array([0 * columns, columns, 0 * columns]), np.array([heights] * 3), 6e9, Rule(1e12, 1.0)
-    )
-    extra = np.interp(y, columns, heights) + np.sqrt(max(radius**2 - y**2, 0.0))
-    assert extra <= need.least_ray_m[1] + 1e-9
-
-
 # Reflection and elevation.
 
 
@@ -361,14 +285,12 @@ def test_elevation_angles_of_a_level_hop_are_both_down_by_half_the_arc():
         (lambda: fresnel_radius(0, 0, 6e9), "the path has no length"),
         (lambda: fresnel_radius(1, 1, 0.0), "frequency_hz = 0: must be finite and more than 0 Hz"),
         (lambda: fresnel_radius(1, 1, 6e9, 0), "zone = 0: must be 1 or more"),
-        (lambda: corridor_offsets([0, 1], 6e9, 1.0, 0.0), "cell_m = 0: must be more than 0 m"),
         (
             lambda: find_reflections([0, 1e3], [0, 0], 9, 9, 6e9, k=1),
             "2 points: must have 3 or more in every",
         ),
         (lambda: check_rule([0, 2, 1], [0, 0, 0], 9, 9, 6e9, Rule(1, 1)), "must ascend from 0"),
         (lambda: check_rule([0, 1], [0, 0, 0], 9, 9, 6e9, Rule(1, 1)), "must be two equal rows"),
-        (lambda: check_corridor([0, 1], [[0]], [[0]], 9, 9, 6e9, Rule(1, 1)), "with n points"),
     ],
 )
 def test_bad_input_is_named(call, message):

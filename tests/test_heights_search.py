@@ -10,7 +10,7 @@ from hypothesis import strategies as st
 
 from profiler.diffraction import delta_bullington, knife_edge_loss
 from profiler.errors import InputError
-from profiler.geometry import ROUNDING_M, check_rule, fresnel_radius
+from profiler.geometry import ROUNDING_M, Surface, check_rule, fresnel_radius, hold_rules
 from profiler.heights import (
     Choice,
     NoPair,
@@ -22,13 +22,13 @@ from profiler.heights import (
     least_equal,
     least_ray,
     loss_excess,
-    lower_rays,
     lower_rules,
     mounting_sheet,
     surplus,
 )
 from profiler.heights.tower_positions import free_positions
 from profiler.models import Rule, TowerChoice
+from profiler.patches import Patches
 from profiler.units import MEAN_EARTH_RADIUS_M
 
 FOOT_M = 0.3048
@@ -202,7 +202,8 @@ def diversity(**changes):
 def check_lower(distance, surface, *, obstruction, **given):
     """Hold lower antennas against a bare profile at k = 4/3 and 6 GHz, sites at 0 m."""
     rays = least_ray(distance, surface, 6e9, lower_rules(obstruction, 4 / 3))
-    return check_diversity(distance, rays, 0, 0, 6e9, obstruction=obstruction, **given)
+    least, full = (clearing_region(distance, ray, 0, 0) for ray in rays)
+    return check_diversity(least, full, 6e9, obstruction=obstruction, **given)
 
 
 @pytest.mark.parametrize(
@@ -288,7 +289,8 @@ def test_the_region_with_lower_rays_is_where_both_lower_antennas_clear(surface, 
     distance = np.linspace(0, 30e3, len(surface))
     rule = lower_rules(obstruction, 4 / 3)[0]
     ray = least_ray(distance, surface, 6e9, [rule])
-    region = clearing_region(distance, lower_rays(distance, ray[0], spacing), 0, 0)
+    share = distance / distance[-1]
+    region = clearing_region(distance, ray + spacing * np.stack((1 - share, share)), 0, 0)
     forward = [
         float(check_rule(distance, surface, a - down_a, b - down_b, 6e9, rule).surplus_m.min())
         for down_a, down_b in ((spacing, 0), (0, spacing))
@@ -300,11 +302,17 @@ def test_the_region_with_lower_rays_is_where_both_lower_antennas_clear(surface, 
         assert (min(forward) >= 0) == (above_own and all(end.clears for end in ends))
 
 
+def over_path(distance_m, surface_m, patches=None):
+    """Hold rules over ground without cover, as a mounting sheet asks for it."""
+    return partial(hold_rules, Surface(distance_m, surface_m, 0 * surface_m, patches), frequency_hz=6e9)
+
+
 def sheet(**changes):
     x = np.array([0, 20e3, 40e3])
     given = {"antenna_a_m": 45.9, "antenna_b_m": 45.9}
     given |= {"tower_a": TowerChoice(step_m=5 * FOOT_M), "tower_b": TowerChoice()}
-    return mounting_sheet(x, [312.3, 300, 290], 312.3, 290, 6e9, [Rule(4 / 3, 1.0, 0, "full")], **(given | changes))
+    hold = over_path(x, np.array([312.3, 300, 290]))
+    return mounting_sheet(hold, 312.3, 290, [Rule(4 / 3, 1.0, 0, "full")], **(given | changes))
 
 
 def test_the_sheet_rounds_up_converts_and_checks_again():
@@ -315,9 +323,10 @@ def test_the_sheet_rounds_up_converts_and_checks_again():
     assert a.centre_ft == pytest.approx(312.3 / FOOT_M + 155)
     assert b.ground_ft == pytest.approx(951.44, abs=0.005)  # 290/0.3048
     assert found.passes
-    assert found.held[0].check.rule.label == "full"
+    check = found.rays[0].held.check
+    assert check.rule.label == "full"
     assert not found.beside
-    assert found.held[0].check.surplus_m[1] == pytest.approx((a.centre_m + 336) / 2 - 300 - 23.54 - 22.35, abs=0.01)
+    assert check.surplus_m[1] == pytest.approx((a.centre_m + 336) / 2 - 300 - 23.54 - 22.35, abs=0.01)
     assert not sheet(antenna_a_m=20, antenna_b_m=20).passes
 
 
@@ -331,11 +340,9 @@ def test_a_sheet_for_a_full_or_low_tower_says_so():
 def test_exactly_at_the_cover_passes_up_to_rounding():
     """312.3 + 10 - 322.3 is -5.7e-14 m in float64: no antenna goes up a step for that."""
     found = mounting_sheet(
-        [0, 5e3],
-        [322.3, 322.3],
+        over_path(np.array([0, 5e3]), np.array([322.3, 322.3])),
         312.3,
         312.3,
-        6e9,
         [Rule(math.inf, 0.0)],
         antenna_a_m=10,
         antenna_b_m=10,
@@ -347,25 +354,32 @@ def test_exactly_at_the_cover_passes_up_to_rounding():
 
 def test_the_sheet_looks_beside_the_path_and_down_to_the_lower_antennas():
     """A wall of 20 m stands 10 m to the right at the middle: on the path nothing, beside it less than F1 is left."""
-    offset = np.array([[0, 0, 0], [-10, 0, 10], [0, 0, 0]])
-    beside = np.array([[0, 0, 0], [0, 0, 20], [0, 0, 0]])
+    wall = Patches(
+        along_m=np.array([[19_999.0, 2.0, 0.0]]),
+        across_m=np.array([[10.0, 0.0, 1.0]]),
+        surface_m=np.array([[20.0, 0, 0, 0, 0, 0]]),
+        cover_m=np.zeros((1, 6)),
+        window=np.empty((1, 0, 3)),
+        whole=np.array([True]),
+    )
+    x = np.array([0, 20e3, 40e3])
     bare = {"tower_a": TowerChoice(), "tower_b": TowerChoice(), "antenna_a_m": 50, "antenna_b_m": 50}
-    path = ([0, 20e3, 40e3], [0, 0, 0], 0, 0, 6e9, [Rule(4 / 3, 1.0)])
+    path = (over_path(x, 0 * x), 0, 0, [Rule(4 / 3, 1.0)])
     assert mounting_sheet(*path, **bare).passes  # 50 m over 23.54 m of bulge and 22.35 m of F1
-    walled = mounting_sheet(*path, **bare, corridor=(offset, beside))
+    walled = mounting_sheet(over_path(x, 0 * x, wall), *path[1:], **bare)
     assert walled.beside
     assert not walled.passes
     # ray 50 - bulge 23.54 - wall 20 - sqrt(22.35² - 10²) = -13.53 m
-    assert walled.held[0].surplus_m == pytest.approx(-13.53, abs=0.02)
+    assert walled.rays[0].held.surplus_m == pytest.approx(-13.53, abs=0.02)
     lower = lower_rules("extended", 4 / 3)[0]
     pair = mounting_sheet(*path, **bare, spacing_m=12, lower_rule=lower)
     assert (pair.end_a.lower_m, pair.end_b.lower_m) == (38, 38)
-    assert [held.ray for held in pair.held] == ["main", "lower A", "lower B"]
+    assert [each.ray for each in pair.rays] == ["main", "lower A", "lower B"]
     # the middle of a ray from 38 m to 50 m: 44 - 23.54 - 0.3 x 22.35 = 13.76 m
-    assert pair.held[1].check.surplus_m[1] == pytest.approx(13.76, abs=0.02)
+    assert pair.rays[1].held.check.surplus_m[1] == pytest.approx(13.76, abs=0.02)
     assert pair.passes
     # 56 m apart both go up to 57 m, the lower ones to 1 m: 29 - 23.54 is 5.46 m, where 0.3 F1 is 6.70 m
     deep = mounting_sheet(*path, **bare, spacing_m=56, lower_rule=lower)
     assert (deep.end_a.antenna_m, deep.end_a.lower_m) == (57, 1)
-    assert deep.held[0].passes
+    assert deep.rays[0].held.passes
     assert not deep.passes

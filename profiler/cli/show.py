@@ -210,10 +210,10 @@ def _show_places(screen: Console, study: Study, scale: Scale) -> None:
         table.add_row(where, *(scale.height_number(height_m) for height_m in (*heights, *held)))
     say(screen, f"\nTight places of rule {_rule_name(rule, scale).replace(chr(10), ', ')}", "bold")
     show_table(screen, table)
-    for corridor in (result.corridor for result in study.rules):
-        if corridor is not None:
-            width = f"{scale.height_text(corridor.half_width_m)} to each side"
-            seen = corridor.need.missing_share
+    for zone in (result.held for result in study.rules):
+        if zone.half_width_m > 0.0:
+            width = f"{scale.height_text(zone.half_width_m)} to each side"
+            seen = zone.missing_share
             unseen = f", {percent_text(seen)} of it without ground" if seen else ""
             say(screen, f"Checked across the path too: {width}{unseen}.")
             break

@@ -52,7 +52,7 @@ def show_heights(plan: HeightsPlan, *, feet: bool, full: bool, quiet: bool, colo
         say(screen, f"Next: {_next_step(plan, scale)}", "bold")
         _show_tables(screen, plan, scale)
         show_notes(screen, "Warnings", tuple(warnings), "yellow")
-        show_notes(screen, "Assumed", tuple(map(scale.text, plan.study.assumptions)))
+        show_notes(screen, "Assumed", tuple(map(scale.text, plan.assumptions)))
         threshold = "A height threshold here counts the antenna's centre, not the top of the structure."
         say(screen, f"\n{CAUTION} {threshold}", style="dim")
 
@@ -83,7 +83,7 @@ def _parts(plan: HeightsPlan, scale: Scale) -> list[Part]:
 def _held_words(sheet: MountingSheet, scale: Scale) -> str:
     """Say how the mounted pair fares when every rule is held against it again."""
     width = "along the path and beside it" if sheet.beside else "along the path"
-    worst = min(sheet.held, key=lambda held: held.surplus_m)
+    worst = min((ray.held for ray in sheet.rays), key=lambda held: held.surplus_m)
     verdict = "passes" if sheet.passes else "FAILS"
     return f"Re-checked through every rule, {width}: {verdict}, {spare_text(worst.surplus_m, scale)}."
 

@@ -55,7 +55,7 @@ def heights_document(plan: HeightsPlan) -> dict[str, Any]:
         "for_loss": plain(plan.for_loss),
         "for_objective": plain(plan.for_objective),
         "sure": [_sure(plan, each) for each in plan.sure] or None,
-        "assumptions": plain(plan.study.assumptions),
+        "assumptions": plain(plan.assumptions),
         "provenance": plain(plan.study.provenance),
     }
 
@@ -66,8 +66,7 @@ def _pair(choice: Choice | NoPair) -> list[float] | None:
 
 def _source(plan: HeightsPlan, asked: Least | Stretch) -> dict[str, Any]:
     """Give the place that asks for a height."""
-    found: dict[str, Any] = plain(plan.source(asked.point, asked.rule))
-    return found
+    return {**plain(plan.source(asked.point, asked.rule)), "rule": asked.rule}
 
 
 def _why_not(plan: HeightsPlan, choice: Choice | NoPair) -> dict[str, Any] | None:
@@ -114,11 +113,11 @@ def _sheet(sheet: MountingSheet) -> dict[str, Any]:
     held = [
         {
             "ray": each.ray,
-            **plain(each.check.rule),
-            "surplus_m": each.surplus_m,
-            "beside_the_path_too": each.across is not None,
-            "passes": each.passes,
+            **plain(each.held.check.rule),
+            "surplus_m": each.held.surplus_m,
+            "beside_the_path_too": each.held.half_width_m > 0.0,
+            "passes": each.held.passes,
         }
-        for each in sheet.held
+        for each in sheet.rays
     ]
     return {**ends, "held": held, "passes": sheet.passes}

@@ -34,11 +34,11 @@ def point_table(study: Study, *, feet: bool = False) -> tuple[list[str], Float]:
         "filled": profile.filled.astype(float),
     }
     for number, result in enumerate(study.rules, start=1):
-        check, corridor = result.check, result.corridor
+        check, held = result.check, result.held
         for name in ("bulge_m", "f1_m", "clearance_m", "required_m", "surplus_m", "ratio"):
             columns[f"rule{number}_{name}"] = getattr(check, name)
-        columns[f"rule{number}_least_surplus_m"] = check.surplus_m if corridor is None else corridor.least_surplus_m
-        columns[f"rule{number}_offset_m"] = np.zeros(check.f1_m.size) if corridor is None else corridor.need.offset_m
+        columns[f"rule{number}_least_surplus_m"] = held.least_surplus_m
+        columns[f"rule{number}_offset_m"] = held.offset_m
         if study.confidence is not None:
             band = study.confidence.rules[number - 1].surplus
             columns[f"rule{number}_surplus_5_percent_m"] = band.low_m

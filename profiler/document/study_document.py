@@ -9,7 +9,7 @@ from profiler.words import METRES, headline, reason_words, step_words, steps_wor
 
 if TYPE_CHECKING:
     from profiler.budget import Budget, Direction
-    from profiler.geometry import CorridorCheck
+    from profiler.geometry import HeldRule
     from profiler.models import Radio, Site
     from profiler.study.result import RuleResult, Study
 
@@ -132,21 +132,20 @@ def _rule(result: RuleResult) -> dict[str, Any]:
         "critical": plain(result.critical),
         "tight": plain(result.places),
         "feet": plain(result.feet),
-        "across": None if result.corridor is None else _across(result.corridor),
+        "across": _across(result.held) if result.held.half_width_m > 0.0 else None,
         "elevation_a_deg": result.elevation_a_deg,
         "elevation_b_deg": result.elevation_b_deg,
         "reflections": [{**plain(place), "screened": place.screened} for place in result.reflections],
     }
 
 
-def _across(corridor: CorridorCheck) -> dict[str, Any]:
+def _across(held: HeldRule) -> dict[str, Any]:
     """Say how wide one rule was checked, and what was not seen."""
     return {
-        "passes": corridor.passes,
-        "surplus_m": corridor.surplus_m,
-        "half_width_m": corridor.half_width_m,
-        "points_across": corridor.across,
-        "missing_share": corridor.need.missing_share,
+        "passes": held.passes,
+        "surplus_m": held.surplus_m,
+        "half_width_m": held.half_width_m,
+        "missing_share": held.missing_share,
     }
 
 

@@ -147,8 +147,8 @@ def ground_notes(study: Study, scale: Scale) -> list[str]:
         if value is not None
     ]
     ground = f"ground: {', '.join(names)}, {terrain.method}, points at most {spacing} apart"
-    corridor = study.governing.corridor
-    width = [] if corridor is None else [f"zone checked to {scale.height_text(corridor.half_width_m)} beside the path"]
+    side_m = study.governing.held.half_width_m
+    width = [f"zone checked to {scale.height_text(side_m)} beside the path"] if side_m > 0.0 else []
     return [ground, *filled, *differences, *map(scale.text, terrain.cover_notes), *width]
 
 

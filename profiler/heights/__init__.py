@@ -5,7 +5,7 @@ Heights are metres above the ground of their own site unless a name says ``centr
 
 from profiler.heights.choose import Choice, Lowering, NoPair, cheapest, cheapest_of, least_other
 from profiler.heights.frontier import Stretch, frontier_stretches
-from profiler.heights.lower_antenna import DiversityEnd, check_diversity, lower_rays, lower_rules
+from profiler.heights.lower_antenna import DiversityEnd, check_diversity, lower_rules
 from profiler.heights.region import (
     ClearingRegion,
     Least,
@@ -49,7 +49,6 @@ __all__ = [
     "least_ray",
     "least_surplus_drawn",
     "loss_excess",
-    "lower_rays",
     "lower_rules",
     "mounting_sheet",
     "round_up",

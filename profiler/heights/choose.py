@@ -142,7 +142,7 @@ def cheapest(
         Limits, steps, taken positions and costs.
     spacing_m
         How far each tower's lower antenna of a diversity pair is below the main one; it must stand on a free position
-        too. What it must clear is the region's to say (`profiler.heights.lower_rays`). 0: no diversity.
+        too. What it must clear is the region's to say. 0: no diversity.
 
     Returns
     -------

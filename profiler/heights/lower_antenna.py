@@ -6,17 +6,14 @@ import math
 from dataclasses import dataclass
 from typing import Literal
 
-import numpy as np
-from numpy.typing import ArrayLike
-
 from profiler.checks import positive
 from profiler.errors import InputError
 from profiler.geometry import ROUNDING_M
-from profiler.heights.region import clearing_region, least_a_for, least_b_for
+from profiler.heights.region import ClearingRegion, least_a_for, least_b_for
 from profiler.models import Obstruction, Rule
-from profiler.units import Float, wavelength
+from profiler.units import wavelength
 
-__all__ = ["DiversityEnd", "check_diversity", "lower_rays", "lower_rules"]
+__all__ = ["DiversityEnd", "check_diversity", "lower_rules"]
 
 _FRACTIONS: dict[Obstruction, tuple[float, float]] = {"isolated": (0.0, 0.3), "extended": (0.3, 0.6)}
 """Rec. ITU-R P.530-18 §2.2.2.2, step 2 (from memory): the range of F1 that the lower antenna clears at the median k."""
@@ -131,37 +128,9 @@ def lower_rules(obstruction: Obstruction, median_k: float) -> tuple[Rule, Rule]:
     return least, full
 
 
-def lower_rays(distance_m: ArrayLike, least_ray_m: ArrayLike, spacing_m: float) -> Float:
-    """Least height of the main antennas' ray for which the rays to and from the lower antennas clear, (2, n): A's, B's.
-
-    A ray from the lower antenna at A runs (1 - t)·spacing under the one from the main antenna, t being the share of the
-    way to B; a ray to the lower antenna at B runs t·spacing under it. Rays between two lower antennas are not used.
-
-    Parameters
-    ----------
-    distance_m
-        Distances from A, (n,), ascending from 0; the last is B.
-    least_ray_m
-        Least height of a lower antenna's own ray above the datum, (n,).
-    spacing_m
-        How far the lower antennas are below the main ones, more than 0 m.
-
-    Examples
-    --------
-    >>> lower_rays([0, 5e3, 10e3], [100, 150, 100], 8.0).tolist()
-    [[108.0, 154.0, 100.0], [100.0, 154.0, 108.0]]
-    """
-    distance, ray = np.asarray(distance_m, dtype=float), np.asarray(least_ray_m, dtype=float)
-    share = distance / distance[-1]
-    below = float(positive("spacing_m", spacing_m, "m"))
-    return np.stack((ray + (1.0 - share) * below, ray + share * below))
-
-
 def check_diversity(
-    distance_m: ArrayLike,
-    least_rays_m: ArrayLike,
-    ground_a_m: float,
-    ground_b_m: float,
+    least: ClearingRegion,
+    full: ClearingRegion,
     frequency_hz: float,
     *,
     antenna_a_m: float,
@@ -178,13 +147,8 @@ def check_diversity(
 
     Parameters
     ----------
-    distance_m
-        Distances from A, (n,), ascending from 0; the last is B.
-    least_rays_m
-        Least height of a lower antenna's ray above the datum under the two rules of `lower_rules`, (2, n), as
-        `profiler.heights.least_ray` gives it, raised where ground beside the path asks for more.
-    ground_a_m, ground_b_m
-        Ground at the sites above the datum.
+    least, full
+        Heights at the two ends of a lower antenna's ray that meet the two rules of `lower_rules`.
     frequency_hz
         Frequency, more than 0 Hz.
     antenna_a_m, antenna_b_m
@@ -209,11 +173,11 @@ def check_diversity(
 
     Examples
     --------
-    >>> from profiler.heights import least_ray
+    >>> from profiler.heights import clearing_region, least_ray
     >>> profile = [0, 20e3, 40e3], [0, 20, 0]
     >>> rays = least_ray(*profile, 6e9, lower_rules("isolated", 4 / 3))
-    >>> ends = check_diversity(profile[0], rays, 0, 0, 6e9, antenna_a_m=70, antenna_b_m=70, spacing_m=10,
-    ...     obstruction="isolated")
+    >>> least, full = (clearing_region(profile[0], ray, 0, 0) for ray in rays)
+    >>> ends = check_diversity(least, full, 6e9, antenna_a_m=70, antenna_b_m=70, spacing_m=10, obstruction="isolated")
     >>> ends[0].clears, round(ends[0].least_m, 2), round(ends[0].full_m, 2), round(ends[0].spacing_wavelengths)
     (True, 17.09, 30.5, 200)
     >>> print(ends[0].notes[0].partition(",")[0])
@@ -222,10 +186,9 @@ def check_diversity(
     fractions = tuple(rule.fresnel_fraction for rule in lower_rules(obstruction, 1.0))
     spacing = float(positive("spacing_m", spacing_m, "m"))
     needed = []
-    for ray in np.asarray(least_rays_m, dtype=float):
-        region = clearing_region(distance_m, ray, ground_a_m, ground_b_m)
-        least = (float(least_a_for(region, antenna_b_m)), float(least_b_for(region, antenna_a_m)))
-        needed.append([max(height, lowest) for height, lowest in zip(least, lowest_m, strict=True)])
+    for region in (least, full):
+        heights = (float(least_a_for(region, antenna_b_m)), float(least_b_for(region, antenna_a_m)))
+        needed.append([max(height, lowest) for height, lowest in zip(heights, lowest_m, strict=True)])
     ends: tuple[tuple[Literal["A", "B"], float], ...] = (("A", antenna_a_m), ("B", antenna_b_m))
     a, b = (
         DiversityEnd(

@@ -3,21 +3,19 @@
 from __future__ import annotations
 
 import math
-from collections.abc import Sequence
+from collections.abc import Callable, Sequence
 from dataclasses import dataclass
 from typing import Literal
 
-from numpy.typing import ArrayLike
-
 from profiler.errors import InputError
-from profiler.geometry import ROUNDING_M, CorridorCheck, RuleCheck, check_corridor, check_rule
+from profiler.geometry import HeldRule
 from profiler.heights.choose import NoPair
 from profiler.heights.tower_positions import both_free, round_up
 from profiler.models import Rule, TowerChoice
 from profiler.remarks import Length, note
 from profiler.units import FOOT_M
 
-__all__ = ["EndHeights", "Held", "MountingSheet", "mounting_sheet"]
+__all__ = ["EndHeights", "MountedRay", "MountingSheet", "mounting_sheet"]
 
 
 @dataclass(frozen=True, slots=True)
@@ -56,26 +54,14 @@ class EndHeights:
 
 
 @dataclass(frozen=True, slots=True, eq=False)
-class Held:
-    """One rule held against one mounted ray, along the path and, where it asks for some of the zone, beside it.
+class MountedRay:
+    """One rule held against one mounted ray.
 
     ``ray`` says which: between the main antennas, or from a lower antenna to the far main one.
     """
 
     ray: Literal["main", "lower A", "lower B"]
-    check: RuleCheck
-    across: CorridorCheck | None
-
-    @property
-    def surplus_m(self) -> float:
-        """Least surplus, metres; on the path the surplus counts even where beside it no ground is known."""
-        along = float(self.check.surplus_m.min())
-        return along if self.across is None else min(along, self.across.surplus_m)
-
-    @property
-    def passes(self) -> bool:
-        """Whether the rule is met everywhere, up to rounding."""
-        return self.surplus_m >= -ROUNDING_M
+    held: HeldRule
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -84,32 +70,29 @@ class MountingSheet:
 
     end_a: EndHeights
     end_b: EndHeights
-    held: tuple[Held, ...]
+    rays: tuple[MountedRay, ...]
 
     @property
     def passes(self) -> bool:
         """Whether the mounted heights pass every rule."""
-        return all(each.passes for each in self.held)
+        return all(each.held.passes for each in self.rays)
 
     @property
     def beside(self) -> bool:
         """Whether the ground beside the path was looked at too."""
-        return any(each.across is not None for each in self.held)
+        return any(each.held.half_width_m > 0.0 for each in self.rays)
 
 
 def mounting_sheet(
-    distance_m: ArrayLike,
-    surface_m: ArrayLike,
+    hold: Callable[[Sequence[tuple[Rule, float, float]]], Sequence[HeldRule]],
     ground_a_m: float,
     ground_b_m: float,
-    frequency_hz: float,
     rules: Sequence[Rule],
     *,
     antenna_a_m: float,
     antenna_b_m: float,
     tower_a: TowerChoice,
     tower_b: TowerChoice,
-    corridor: tuple[ArrayLike, ArrayLike] | None = None,
     spacing_m: float = 0.0,
     lower_rule: Rule | None = None,
 ) -> MountingSheet | NoPair:
@@ -117,21 +100,17 @@ def mounting_sheet(
 
     Parameters
     ----------
-    distance_m, surface_m
-        The profile, (n,), metres from A and metres above the datum, no gaps.
+    hold
+        Forward model: rules, each with the antenna centres at A and B above the datum, to what they leave; for
+        instance `profiler.geometry.hold_rules` with the surface and the frequency filled in.
     ground_a_m, ground_b_m
         Ground at the sites above the datum.
-    frequency_hz
-        Frequency, more than 0 Hz.
     rules
         One or more clearance rules.
     antenna_a_m, antenna_b_m
         Heights above ground that are asked for.
     tower_a, tower_b
         Steps, limits and taken positions.
-    corridor
-        Offsets across the path and the surface there, (n, across) each, as `profiler.geometry.check_corridor` takes
-        them; None: the path alone is looked at.
     spacing_m, lower_rule
         How far the lower antenna of a diversity pair is below the main one, and the rule that its ray to the far main
         antenna must meet (`profiler.heights.lower_rules`); 0 and None without diversity.
@@ -145,12 +124,17 @@ def mounting_sheet(
     Raises
     ------
     InputError
-        If there is no rule, the profile is bad, or a tower's limits hold no whole step.
+        If there is no rule, or a tower's limits hold no whole step.
 
     Examples
     --------
+    >>> from functools import partial
+    >>> import numpy as np
+    >>> from profiler.geometry import Surface, hold_rules
+    >>> path = np.array([0.0, 20e3, 40e3])
+    >>> hold = partial(hold_rules, Surface(path, 100 + 0 * path, 0 * path), frequency_hz=6e9)
     >>> feet = TowerChoice(step_m=5 * 0.3048)
-    >>> sheet = mounting_sheet([0, 20e3, 40e3], [100, 100, 100], 100, 100, 6e9, [Rule(k=4 / 3, fresnel_fraction=1.0)],
+    >>> sheet = mounting_sheet(hold, 100, 100, [Rule(k=4 / 3, fresnel_fraction=1.0)],
     ...     antenna_a_m=45.9, antenna_b_m=45.9, tower_a=feet, tower_b=TowerChoice())
     >>> round(sheet.end_a.antenna_ft, 6), sheet.end_b.antenna_m, sheet.end_b.centre_m, sheet.passes
     (155.0, 46.0, 146.0, True)
@@ -171,20 +155,17 @@ def mounting_sheet(
         )
     centres = ground_a_m + mounted_a, ground_b_m + mounted_b
 
-    def hold(ray: Literal["main", "lower A", "lower B"], down_a_m: float, down_b_m: float, rule: Rule) -> Held:
-        path = (centres[0] - down_a_m, centres[1] - down_b_m, frequency_hz, rule)
-        across = None
-        if corridor is not None and rule.fresnel_fraction > 0:
-            offset_m, beside_m = corridor
-            across = check_corridor(distance_m, offset_m, beside_m, *path)
-        return Held(ray, check_rule(distance_m, surface_m, *path), across)
-
-    held = [hold("main", 0.0, 0.0, rule) for rule in rules]
+    rays: list[tuple[Literal["main", "lower A", "lower B"], Rule, float, float]]
+    rays = [("main", rule, *centres) for rule in rules]
     if lower_rule is not None:
-        held += [hold("lower A", spacing_m, 0.0, lower_rule), hold("lower B", 0.0, spacing_m, lower_rule)]
+        rays += [
+            ("lower A", lower_rule, centres[0] - spacing_m, centres[1]),
+            ("lower B", lower_rule, centres[0], centres[1] - spacing_m),
+        ]
+    held = hold([ray[1:] for ray in rays])
     lower_a, lower_b = (mounted - spacing_m if spacing_m else None for mounted in (mounted_a, mounted_b))
     return MountingSheet(
         end_a=EndHeights("A", mounted_a, float(ground_a_m), lower_a),
         end_b=EndHeights("B", mounted_b, float(ground_b_m), lower_b),
-        held=tuple(held),
+        rays=tuple(MountedRay(ray[0], each) for ray, each in zip(rays, held, strict=True)),
     )

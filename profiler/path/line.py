@@ -342,18 +342,20 @@ def across(line: PathLine, offset_m: ArrayLike) -> tuple[Float, Float]:
     return np.asarray(lon).reshape(arrays[0].shape), np.asarray(lat).reshape(arrays[0].shape)
 
 
-def beside(line: PathLine, index: int, offset_m: float) -> tuple[float, float]:
-    """Longitude and latitude of one place beside the path: `across` for a single point.
+def beside(line: PathLine, along_m: ArrayLike, offset_m: ArrayLike) -> tuple[Float, Float]:
+    """Positions at any distances along the path and across it, positive to the right of A→B; they broadcast.
 
     Examples
     --------
     >>> line = trace(0, 0, 0, 0.1, spacing_m=20e3)
-    >>> [round(each, 6) for each in beside(line, 0, 50.0)]
-    [0.000449, 0.0]
+    >>> beside(line, 0.0, [-50.0, 50.0])[0].round(6).tolist()
+    [-0.000449, 0.000449]
     """
-    start = (float(line.longitude[index]), float(line.latitude[index]), float(line.azimuth_deg[index]) + 90.0)
-    longitude, latitude, _ = _geod().fwd(*start, offset_m)
-    return float(longitude), float(latitude)
+    along, offset = np.broadcast_arrays(np.asarray(along_m, dtype=float), np.asarray(offset_m, dtype=float))
+    start = (float(line.longitude[0]), float(line.latitude[0]), line.azimuth_a_deg)
+    longitude, latitude, back = _forward(start, along.ravel())
+    longitude, latitude, _ = _geod().fwd(longitude, latitude, back - 90.0, offset.ravel())
+    return np.asarray(longitude).reshape(along.shape), np.asarray(latitude).reshape(along.shape)
 
 
 def locate(line: PathLine, longitude: ArrayLike, latitude: ArrayLike) -> tuple[Float, Float]:

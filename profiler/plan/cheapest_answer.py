@@ -174,8 +174,8 @@ def draw_regions(study: Study, region: ClearingRegion) -> DrawnRegions | None:
     from profiler.confidence import draw_doubt
 
     doubt = draw_doubt(
-        profile.distance_m,
-        profile.cover_m,
+        region.distance_m,
+        np.interp(region.distance_m, profile.distance_m, profile.cover_m),
         choice,
         cell_m=study.terrain.finest_cell_m,
         surveyed=(bool(profile.surveyed[0]), bool(profile.surveyed[-1])),

@@ -3,8 +3,12 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
+from functools import partial
 from typing import TYPE_CHECKING
 
+import numpy as np
+
+from profiler.geometry import hold_rules
 from profiler.heights import (
     Choice,
     ClearingRegion,
@@ -15,14 +19,13 @@ from profiler.heights import (
     NoPair,
     Stretch,
     cheapest,
-    clearing_region,
     frontier_stretches,
     least_equal,
     least_other,
     lower_rules,
     mounting_sheet,
 )
-from profiler.models import Rule
+from profiler.models import Rule, TowerChoice
 from profiler.plan.cheapest_answer import (
     Answer,
     SurePair,
@@ -33,9 +36,11 @@ from profiler.plan.cheapest_answer import (
     sure_pairs,
 )
 from profiler.plan.link_limits import for_loss, for_objective, link_limits, loss_limit
+from profiler.remarks import Length, Note, note
+from profiler.study.places import places_at
 from profiler.study.reasons import Outcome
-from profiler.study.requirements import Requirements, Source, lower_antennas, requirements, source_of, spacing_of
-from profiler.study.result import Study
+from profiler.study.requirements import Requirements, lower_antennas, requirements, spacing_of
+from profiler.study.result import Place, Study
 
 if TYPE_CHECKING:
     from profiler.confidence import Chance
@@ -96,14 +101,40 @@ class HeightsPlan:
         return self.needs.rules
 
     @property
+    def assumptions(self) -> tuple[Note | str, ...]:
+        """What the study assumed, and what was taken of the towers."""
+        towers = self.study.hop.heights
+        return (*self.study.assumptions, _taken("A", towers.tower_a), _taken("B", towers.tower_b))
+
+    @property
     def spacing_m(self) -> float:
         """Spacing of the diversity pairs; 0 without."""
         return spacing_of(self.study.hop)
 
-    def source(self, point: int, rule: int) -> Source:
-        """Describe the place that asks for a height, by its point and its rule (-1: a site's own ground)."""
-        study = self.study
-        return source_of(self.needs, study.profile, study.corridor, study.line, point, rule)
+    def source(self, point: int, rule: int) -> Place:
+        """Describe the place that asks for a height, by its point and its rule (-1: a site's own ground).
+
+        Its surplus and clearance are those that the ray has which it asks for.
+        """
+        study, needs = self.study, self.needs
+        if rule >= 0:
+            offset_m, surface_m, cover_m = (
+                each[rule, [point]] for each in (needs.offset_m, needs.surface_m, needs.cover_m)
+            )
+        else:
+            ground_m = study.profile.ground_m[[0 if point == 0 else -1]]
+            offset_m, surface_m, cover_m = 0.0 * ground_m, ground_m, 0.0 * ground_m
+        return places_at(
+            needs.distance_m[[point]],
+            offset_m,
+            surface_m,
+            cover_m,
+            np.zeros(1),
+            profile=study.profile,
+            line=study.line,
+            frequency_hz=study.hop.frequency_hz,
+            rule=needs.rules[rule] if rule >= 0 else None,
+        )[0]
 
 
 def plan_heights(study: Study, *, sure: float | None = None) -> HeightsPlan:
@@ -130,9 +161,8 @@ def plan_heights(study: Study, *, sure: float | None = None) -> HeightsPlan:
     """
     hop, profile = study.hop, study.profile
     towers, spacing_m = hop.heights, spacing_of(study.hop)
-    needs = requirements(hop, profile, study.corridor, study.climate.median_k)
-    ground_a_m, ground_b_m = float(profile.ground_m[0]), float(profile.ground_m[-1])
-    region = clearing_region(profile.distance_m, needs.least_ray_m, ground_a_m, ground_b_m)
+    needs = requirements(hop, profile, study.surface, study.climate.median_k)
+    region = needs.region(profile)
     clearing = cheapest(region, towers.tower_a, towers.tower_b, spacing_m=spacing_m)
     asked, drawn = asked_chance(study, sure), draw_regions(study, region)
     by_link, by_loss = link_limits(study), loss_limit(study)
@@ -177,21 +207,34 @@ def plan_heights(study: Study, *, sure: float | None = None) -> HeightsPlan:
     )
 
 
+def _taken(end: str, tower: TowerChoice) -> Note:
+    """Say which positions and costs of a tower were taken; where the hop file is silent, that it is."""
+    silent = "the hop file says nothing of it, taken: " if tower == TowerChoice() else ""
+    if tower.lowest_m == tower.highest_m:
+        words, lengths = "one position at {}", [Length(tower.lowest_m)]
+    else:
+        words, lengths = (
+            "positions from {} to {} every {}",
+            [Length(each) for each in (tower.lowest_m, tower.highest_m, tower.step_m)],
+        )
+    cost = f"cost {tower.cost_per_m:g} a metre"
+    if tower.threshold_m is not None:
+        cost, lengths = f"{cost} and {tower.threshold_cost:g} more above {{}}", [*lengths, Length(tower.threshold_m)]
+    return note("heights", f"tower {end}: {silent}{words}, {cost}", *lengths)
+
+
 def _sheet(study: Study, pair: Choice) -> MountingSheet | None:
     """Mount a pair of free positions and hold every rule against it, on the path and beside it."""
-    hop, profile, corridor, spacing_m = study.hop, study.profile, study.corridor, spacing_of(study.hop)
+    hop, profile, spacing_m = study.hop, study.profile, spacing_of(study.hop)
     mounted = mounting_sheet(
-        profile.distance_m,
-        profile.surface_m,
+        partial(hold_rules, study.surface, frequency_hz=hop.frequency_hz),
         float(profile.ground_m[0]),
         float(profile.ground_m[-1]),
-        hop.frequency_hz,
         hop.rules,
         antenna_a_m=pair.antenna_a_m,
         antenna_b_m=pair.antenna_b_m,
         tower_a=hop.heights.tower_a,
         tower_b=hop.heights.tower_b,
-        corridor=None if corridor is None else (corridor.offset_m, corridor.surface_m),
         spacing_m=spacing_m,
         lower_rule=lower_rules(hop.heights.diversity_obstruction, study.climate.median_k)[0] if spacing_m else None,
     )
@@ -206,9 +249,7 @@ def _diversity(study: Study, pair: Choice | NoPair) -> tuple[DiversityEnd, ...]:
         heights = pair.antenna_a_m, pair.antenna_b_m
     return lower_antennas(
         hop,
-        study.profile,
-        study.corridor,
-        study.climate.median_k,
+        study.lower_regions,
         antenna_a_m=heights[0],
         antenna_b_m=heights[1],
         lowest_m=(hop.heights.tower_a.lowest_m, hop.heights.tower_b.lowest_m),

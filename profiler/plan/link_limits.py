@@ -84,9 +84,7 @@ def _link_at(study: Study, hop: Hop, antenna_a_m: float, antenna_b_m: float) -> 
         site_a=replace(hop.site_a, antenna_m=antenna_a_m),
         site_b=replace(hop.site_b, antenna_m=antenna_b_m),
     )
-    lower = lower_antennas(
-        study.hop, profile, study.corridor, median_k, antenna_a_m=antenna_a_m, antenna_b_m=antenna_b_m
-    )
+    lower = lower_antennas(study.hop, study.lower_regions, antenna_a_m=antenna_a_m, antenna_b_m=antenna_b_m)
     clears = (lower[0].clears, lower[1].clears) if lower else (True, True)
     air = air_along(raised, profile, median_k, *centres)
     cell_m = study.terrain.finest_cell_m

@@ -45,4 +45,4 @@ def _only_the_zone(plan: HeightsPlan, place: Lowering) -> bool:
     if not 0 <= place.rule < len(plan.study.rules):
         return False
     check = plan.study.rules[place.rule].check
-    return place.by_m < check.rule.fresnel_fraction * float(check.f1_m[place.point])
+    return place.by_m < check.rule.fresnel_fraction * plan.source(place.point, place.rule).f1_m

@@ -39,7 +39,8 @@ _STEP_M, _HAIR_M = 1e-3, 1e-3
 class AlongPath:
     """What the rasters say along a path; arrays (n,), ground NaN where it is missing.
 
-    ``raster_ends_m`` is the raster's own ground at A and B, where a survey may have replaced it.
+    ``raster_ends_m`` is the raster's own ground at A and B, where a survey may have replaced it. ``settled_m`` is where
+    the profile begins and ends to follow the raster: at the sites, unless their ground is their own.
     """
 
     line: PathLine
@@ -48,6 +49,7 @@ class AlongPath:
     spacing_m: float
     finest_cell_m: float
     raster_ends_m: tuple[float, float]
+    settled_m: tuple[float, float]
     sources: tuple[SourceUse, ...]
     vertical_datum: str | None
     notes: tuple[str, ...]
@@ -114,6 +116,7 @@ def lay_profile(hop: Hop, terrain: Terrain, cover: CoverRasters) -> AlongPath:
         spacing_m=spacing_m,
         finest_cell_m=cell_m,
         raster_ends_m=raster_ends_m,
+        settled_m=_settled(hop, knot_m),
         sources=tuple(replace(use, share=each) for use, each in zip(samples.sources, share, strict=True)),
         vertical_datum=samples.vertical_datum,
         notes=notes,
@@ -122,6 +125,12 @@ def lay_profile(hop: Hop, terrain: Terrain, cover: CoverRasters) -> AlongPath:
         sea_share=float(weight_m[samples.sea].sum() / weight_m.sum()),
         warnings=disagreements(hop, samples.overlaps, at_m.ravel()),
     )
+
+
+def _settled(hop: Hop, knot_m: Float) -> tuple[float, float]:
+    """Where the profile begins and ends to follow the raster: with ground of its own at a site, one piece further."""
+    own = [site.surveyed_ground_m is not None or hop.terrain.method == "highest" for site in (hop.site_a, hop.site_b)]
+    return float(knot_m[1 if own[0] else 0]), float(knot_m[-2 if own[1] else -1])
 
 
 def standing_heights(hop: Hop, length_m: float, distance_m: Float, cover_m: Float) -> Float:

@@ -1,4 +1,4 @@
-"""The first half of a study: from two sites and some rasters to a profile, a corridor and a view from above."""
+"""The first half of a study: from two sites and some rasters to a profile, what is beside it and a view from above."""
 
 from __future__ import annotations
 
@@ -7,23 +7,21 @@ from pathlib import Path
 
 import numpy as np
 
-from profiler.cover import Cover, CoverRasters, open_cover
+from profiler.cover import open_cover
 from profiler.errors import InputError
-from profiler.geometry import corridor_offsets
-from profiler.models import Hop, Profile, Rule, Site, frozen_array
+from profiler.geometry import Surface
+from profiler.models import Hop, Profile, Site, frozen_array
 from profiler.path import PathLine, across, trace
-from profiler.study.along_path import lay_profile, standing_heights
-from profiler.study.result import Corridor, Relief, TerrainUse
+from profiler.study.along_path import lay_profile
+from profiler.study.beside import read_beside
+from profiler.study.result import Relief, TerrainUse
 from profiler.study.terrain_notes import passed_over
-from profiler.terrain import SourceUse, Terrain, common_datum, fill_missing, missing_stretches, require_ground
+from profiler.terrain import Terrain, common_datum, fill_missing, missing_stretches, require_ground
 from profiler.units import Float
 
 __all__ = ["Ground", "read_ground", "require_above_cover"]
 
 _RELIEF_ALONG, _RELIEF_ACROSS = 320, 61
-_ACROSS_STEPS = 10
-_POINTS_AT_ONCE = 200_000
-"""Points beside the path that are read together: it bounds the memory of a long path over fine cells."""
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -33,7 +31,7 @@ class Ground:
     line: PathLine
     profile: Profile
     terrain: TerrainUse
-    corridor: Corridor | None
+    surface: Surface
     relief: Relief | None
     heights_around_m: Float | None
     files: tuple[Path, ...]
@@ -81,8 +79,8 @@ def read_ground(
             filled=frozen_array(filled, np.bool_),
             surveyed=frozen_array(surveyed, np.bool_),
         )
-        corridor, beside, cover_files = _corridor(hop, terrain, cover, profile, line, along.finest_cell_m)
-    datum, datum_notes = common_datum([*along.sources, *beside], allow_mixed=hop.terrain.allow_mixed_datums)
+        beside = read_beside(hop, terrain, cover, line, profile, along.settled_m)
+    datum, datum_notes = common_datum([*along.sources, *beside.sources], allow_mixed=hop.terrain.allow_mixed_datums)
     differences = _survey_differences(hop, along.raster_ends_m)
     use = TerrainUse(
         method=hop.terrain.method,
@@ -105,13 +103,13 @@ def read_ground(
         warnings=along.warnings,
     )
     wide = None if around is None else terrain.sample(*around, allow_mixed_datums=True)
-    sources = [*along.sources, *beside, *(() if wide is None else wide.sources)]
-    files = [*(path for source in sources for path in source.files), *along.cover_files, *cover_files]
+    sources = [*along.sources, *beside.sources, *(() if wide is None else wide.sources)]
+    files = [*(path for source in sources for path in source.files), *along.cover_files, *beside.cover_files]
     return Ground(
         line=line,
         profile=profile,
         terrain=use,
-        corridor=corridor,
+        surface=beside.surface,
         relief=_relief(terrain, line) if relief else None,
         heights_around_m=None if wide is None else wide.ground_m,
         files=tuple(dict.fromkeys(files)),
@@ -150,14 +148,6 @@ def _survey_differences(hop: Hop, raster_ends_m: tuple[float, float]) -> tuple[f
     return difference(hop.site_a, raster_ends_m[0]), difference(hop.site_b, raster_ends_m[1])
 
 
-def _cover(hop: Hop, cover: CoverRasters, line: PathLine, longitude: Float, latitude: Float, part: slice) -> Cover:
-    """Cover beside a part of the path, with obstacles and clearings; a gap is left there, and counted."""
-    along_m = line.along_m[part]
-    found = cover.sample(along_m, longitude, latitude, allow_gaps=True)
-    heights = standing_heights(hop, line.distance_m, along_m[:, None], found.cover_m)
-    return Cover(frozen_array(heights), found.notes, found.files)
-
-
 def require_above_cover(hop: Hop, profile: Profile) -> None:
     """Stop when an antenna stands inside the cover at its own site: no loss has a value there.
 
@@ -185,44 +175,6 @@ def require_above_cover(hop: Hop, profile: Profile) -> None:
                 f" to keep the lower antenna above {stands} at {site.name}; space them closer, or raise"
                 f" {key}.antenna_m = {site.antenna_m:g}"
             )
-
-
-def _lower_rules(hop: Hop) -> tuple[Rule, ...]:
-    """Rule of a diversity pair's lower antennas; its k has no part in the width of the zone."""
-    if hop.availability is None or hop.availability.diversity is None:
-        return ()
-    from profiler.heights import lower_rules
-
-    return lower_rules(hop.heights.diversity_obstruction, 1.0)[:1]
-
-
-def _corridor(
-    hop: Hop, terrain: Terrain, cover: CoverRasters, profile: Profile, line: PathLine, cell_m: float
-) -> tuple[Corridor | None, list[SourceUse], list[Path]]:
-    """Surface across the path to the edge of the widest zone asked for, NaN where unknown, and what it is from.
-
-    The path's own points keep their profile. Across, points stand half a cell apart, but no closer than a tenth of the
-    zone: what is narrower than that hides next to none of it.
-    """
-    fraction = max(rule.fresnel_fraction for rule in (*hop.rules, *_lower_rules(hop)))
-    if fraction == 0.0:
-        return None, [], []
-    widest = float(np.abs(corridor_offsets(line.along_m, hop.frequency_hz, fraction, np.inf)).max())
-    offset = corridor_offsets(line.along_m, hop.frequency_hz, fraction, max(0.5 * cell_m, widest / _ACROSS_STEPS))
-    longitude, latitude = across(line, offset)
-    surface, cover_m = np.empty_like(offset), np.empty_like(offset)
-    sources: list[SourceUse] = []
-    files: list[Path] = []
-    rows = max(1, _POINTS_AT_ONCE // offset.shape[1])
-    for part in (slice(first, first + rows) for first in range(0, line.points, rows)):
-        samples = terrain.sample(longitude[part], latitude[part])
-        standing = _cover(hop, cover, line, longitude[part], latitude[part], part)
-        surface[part], cover_m[part] = samples.ground_m + standing.cover_m, standing.cover_m
-        sources += samples.sources
-        files += standing.files
-    # at the sites the zone has no width: what a survey or a fill says of the path holds for the whole row there
-    surface = np.where(offset == 0.0, profile.surface_m[:, None], surface)
-    return Corridor(frozen_array(offset), frozen_array(surface), frozen_array(cover_m)), sources, files
 
 
 def _relief(terrain: Terrain, line: PathLine) -> Relief:

@@ -53,9 +53,9 @@ def ground_warnings(hop: Hop, terrain: TerrainUse, rules: Sequence[RuleResult]) 
                 " survey, the position and the datum"
             )
             found.append(note("site", words, site.name, Length(abs(difference_m))))
-    unseen = max((rule.corridor.need.missing_share for rule in rules if rule.corridor is not None), default=0.0)
+    unseen = max((rule.held.missing_share for rule in rules), default=0.0)
     if unseen:
         share = percent_text(unseen)
-        words = f"beside the path {share} of the points in the zone have no height and were not checked"
+        words = f"beside the path {share} of the zone has no height and was not checked"
         found.append(note("terrain", words))
     return tuple(found)

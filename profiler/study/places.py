@@ -1,4 +1,4 @@
-"""Where a rule is tight: the places that the terminal, the figure and the document all show."""
+"""Places that ask for clearance: what the terminal, the figures and the documents all show."""
 
 from __future__ import annotations
 
@@ -6,12 +6,15 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from profiler.geometry import ROUNDING_M, CorridorCheck, RuleCheck, side_of, tight_places
-from profiler.models import Profile
+from profiler.geometry import ROUNDING_M, HeldRule, earth_bulge, fresnel_radius, side_of, tight_places
+from profiler.models import Profile, Rule
 from profiler.path import PathLine, beside
-from profiler.study.result import Corridor, Place
+from profiler.study.result import Place
+from profiler.units import Float
 
-__all__ = ["Tight", "find_places"]
+__all__ = ["Tight", "find_places", "places_at"]
+
+_BARE = Rule(k=np.inf, fresnel_fraction=0.0)
 
 _FOOT_SHARE, _FOOT_LEAST_M, _FOOT_MOST_M = 0.03, 50.0, 300.0
 """How far the foot of a mast reaches, as a share of the path within bounds: so near, what the clearance tells is the
@@ -30,9 +33,7 @@ class Tight:
     feet: tuple[Place, Place]
 
 
-def find_places(
-    check: RuleCheck, across: CorridorCheck | None, profile: Profile, corridor: Corridor | None, line: PathLine
-) -> Tight:
+def find_places(held: HeldRule, profile: Profile, line: PathLine, frequency_hz: float) -> Tight:
     """Find where one rule is tight, each place where it is tightest across the path.
 
     Where something is short, the separate places that are, the shortest first. Where all clears, the obstacles away
@@ -41,17 +42,16 @@ def find_places(
 
     Parameters
     ----------
-    check, across
-        The rule held against the path and, where it asks for some of the zone, against the width of that.
-    profile, corridor, line
-        The ground on the path and beside it, and the path.
+    held
+        The rule held against the path and the width of its zone.
+    profile, line, frequency_hz
+        The ground on the path, the path, and the frequency.
 
     Returns
     -------
     Tight
     """
-    surplus_m = check.surplus_m if across is None else np.minimum(check.surplus_m, across.least_surplus_m)
-    distance_m, f1_m = profile.distance_m, check.f1_m
+    surplus_m, distance_m, f1_m = held.least_surplus_m, profile.distance_m, held.check.f1_m
     length_m, widest_m = float(distance_m[-1]), float(f1_m.max())
     foot_m = min(max(_FOOT_SHARE * length_m, _FOOT_LEAST_M), _FOOT_MOST_M, length_m / 4)
     from_a, from_b = np.flatnonzero(distance_m <= foot_m), np.flatnonzero(distance_m >= length_m - foot_m)
@@ -62,48 +62,64 @@ def find_places(
     else:
         found = between[list(tight_places(surplus_m[between] / f1_m[between], rise_m=_RISE, within_m=_WITHIN))].tolist()
     feet = (int(from_a[np.argmin(surplus_m[from_a])]), int(from_b[np.argmin(surplus_m[from_b])]))
-    critical_place, foot_a, foot_b, *places = (
-        _place(int(index), check, across, profile, corridor, line) for index in (critical, *feet, *found)
+    at = np.array([critical, *feet, *found])
+    rows = (held.along_m, held.offset_m, held.surface_m, held.cover_m, held.least_surplus_m)
+    critical_place, foot_a, foot_b, *places = places_at(
+        *(each[at] for each in rows), profile=profile, line=line, frequency_hz=frequency_hz, rule=held.check.rule
     )
     return Tight(critical_place, tuple(places), (foot_a, foot_b))
 
 
-def _place(
-    index: int,
-    check: RuleCheck,
-    across: CorridorCheck | None,
+def places_at(
+    along_m: Float,
+    offset_m: Float,
+    surface_m: Float,
+    cover_m: Float,
+    surplus_m: Float,
+    *,
     profile: Profile,
-    corridor: Corridor | None,
     line: PathLine,
-) -> Place:
-    """Describe one distance, where across the path it is tightest there."""
-    offset_m, surplus_m = 0.0, float(check.surplus_m[index])
-    longitude, latitude = float(profile.longitude[index]), float(profile.latitude[index])
-    surface_m, cover_m = float(profile.surface_m[index]), float(profile.cover_m[index])
-    if across is not None:
-        surplus_m = min(surplus_m, float(across.least_surplus_m[index]))
-    if across is not None and corridor is not None and across.need.offset_m[index] != 0.0:
-        offset_m = float(across.need.offset_m[index])
-        longitude, latitude = beside(line, index, offset_m)
-        surface_m = float(across.need.surface_m[index])
-        cover_m = float(np.interp(offset_m, corridor.offset_m[index], corridor.cover_m[index]))
-    # the ray's height over the bulge is the same across the path
-    clearance_m = float(check.clearance_m[index]) + float(profile.surface_m[index]) - surface_m
-    f1_m = float(check.f1_m[index])
-    return Place(
-        index=index,
-        distance_m=float(profile.distance_m[index]),
-        offset_m=offset_m,
-        side=side_of(offset_m),
-        longitude=longitude,
-        latitude=latitude,
-        ground_m=surface_m - cover_m,
-        cover_m=cover_m,
-        filled=bool(profile.filled[index]) and offset_m == 0.0,
-        bulge_m=float(check.bulge_m[index]),
-        f1_m=f1_m,
-        clearance_m=clearance_m,
-        required_m=clearance_m - surplus_m,
-        surplus_m=surplus_m,
-        ratio=clearance_m / f1_m if f1_m > 0 else float("nan"),
-    )
+    frequency_hz: float,
+    rule: Rule | None,
+) -> tuple[Place, ...]:
+    """Describe places on the path or beside it under a rule (None: bare ground, for which no more is asked).
+
+    Parameters
+    ----------
+    along_m, offset_m, surface_m, cover_m
+        Where they are, (m,), their surface above the datum and how much of that is cover.
+    surplus_m
+        What the ray has over what the rule asks for there, (m,).
+    profile, line, frequency_hz, rule
+        The ground on the path, the path, the frequency and the rule.
+
+    Returns
+    -------
+    tuple of Place
+    """
+    asked = rule or _BARE
+    remaining_m = np.maximum(line.distance_m - along_m, 0.0)
+    f1_m = fresnel_radius(along_m, remaining_m, frequency_hz)
+    required_m = np.sqrt(np.maximum((asked.fresnel_fraction * f1_m) ** 2 - offset_m**2, 0.0)) + asked.margin_m
+    clearance_m = surplus_m + required_m
+    longitude, latitude = beside(line, along_m, offset_m)
+    index = np.abs(profile.distance_m - along_m[:, None]).argmin(axis=1)
+    numbers = {
+        "index": index,
+        "distance_m": along_m,
+        "offset_m": offset_m,
+        "longitude": longitude,
+        "latitude": latitude,
+        "ground_m": surface_m - cover_m,
+        "cover_m": cover_m,
+        "filled": profile.filled[index] & (offset_m == 0.0),
+        "bulge_m": earth_bulge(along_m, remaining_m, asked.k),
+        "f1_m": f1_m,
+        "clearance_m": clearance_m,
+        "required_m": required_m,
+        "surplus_m": surplus_m,
+        "ratio": np.divide(clearance_m, f1_m, out=np.full_like(f1_m, np.nan), where=f1_m > 0),
+    }
+    rows = zip(*(each.tolist() for each in numbers.values()), strict=True)
+    found = [dict(zip(numbers, row, strict=True)) for row in rows]
+    return tuple(Place(side=side_of(each["offset_m"]), **each) for each in found)

@@ -6,15 +6,14 @@ import math
 from dataclasses import dataclass
 from typing import TYPE_CHECKING
 
-import numpy as np
-
 from profiler.geometry import ROUNDING_M
 
 if TYPE_CHECKING:  # what the hop does not ask for is not loaded
     from profiler.budget import Budget
     from profiler.confidence import Confidence
     from profiler.diffraction import DiffractionLoss
-    from profiler.geometry import CorridorCheck, Reflection, RuleCheck
+    from profiler.geometry import HeldRule, Reflection, RuleCheck, Surface
+    from profiler.heights import ClearingRegion
     from profiler.models import Hop, Profile
     from profiler.path import PathLine
     from profiler.remarks import Note
@@ -25,14 +24,14 @@ if TYPE_CHECKING:  # what the hop does not ask for is not loaded
     from profiler.terrain import SourceUse
     from profiler.units import Float
 
-__all__ = ["Corridor", "Place", "Provenance", "Relief", "RuleResult", "Study", "TerrainUse"]
+__all__ = ["Place", "Provenance", "Relief", "RuleResult", "Study", "TerrainUse"]
 
 
 @dataclass(frozen=True, slots=True)
 class Place:
-    """Where a rule is tight: ``distance_m`` from A, ``offset_m`` across the path (positive to the right of A→B).
+    """A place that asks for clearance: ``distance_m`` from A, ``offset_m`` across the path (positive to its right).
 
-    ``index`` is the point of the profile there; position, ground and cover are those of the place itself, and
+    ``index`` is the nearest point of the profile; position, ground and cover are those of the place itself, and
     ``required_m`` is what the rule asks above its surface. ``filled``: the ground was missing and interpolated.
     """
 
@@ -69,15 +68,13 @@ class Place:
 class RuleResult:
     """One rule along the path and across it, with the angles and the reflections at its k.
 
-    ``corridor`` is None for a rule that asks for no part of the Fresnel zone: nothing beside the path matters to it.
     ``critical`` is the place of least surplus anywhere. ``places`` are the separate tight places, on the path or beside
     it, the one that an engineer would name first: where something is short, that which is shortest; where all clears,
     the obstacle away from the masts' feet that comes nearest to the zone in proportion to it. ``feet`` are the places
     of least surplus around the foot of the mast at A and at B.
     """
 
-    check: RuleCheck
-    corridor: CorridorCheck | None
+    held: HeldRule
     critical: Place
     places: tuple[Place, ...]
     feet: tuple[Place, Place]
@@ -86,9 +83,14 @@ class RuleResult:
     reflections: tuple[Reflection, ...]
 
     @property
+    def check(self) -> RuleCheck:
+        """The rule along the path alone."""
+        return self.held.check
+
+    @property
     def passes(self) -> bool:
         """Whether the rule is met along the path and across it."""
-        return self.check.passes and (self.corridor is None or self.corridor.passes)
+        return self.held.passes
 
     @property
     def tightest(self) -> Place:
@@ -98,9 +100,7 @@ class RuleResult:
     @property
     def least_surplus_m(self) -> Float:
         """Least surplus at each point of the path, over the width of the zone where that was checked, (n,)."""
-        if self.corridor is None:
-            return self.check.surplus_m
-        return np.minimum(self.check.surplus_m, self.corridor.least_surplus_m)
+        return self.held.least_surplus_m
 
 
 @dataclass(frozen=True, slots=True)
@@ -123,15 +123,6 @@ class TerrainUse:
     cover_notes: tuple[str, ...]
     sea_share: float = 0.0
     warnings: tuple[str, ...] = ()
-
-
-@dataclass(frozen=True, slots=True, eq=False)
-class Corridor:
-    """Surface and cover beside the path, (n, across), out to the edge of the widest zone that a rule asks for."""
-
-    offset_m: Float
-    surface_m: Float
-    cover_m: Float
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -158,7 +149,8 @@ class Provenance:
 class Study:
     """The whole analysis of one hop. A part that the hop gives no data for, or that was not asked for, is None.
 
-    ``elevation_a_deg`` and ``elevation_b_deg`` are at the median k; every rule has its own.
+    ``elevation_a_deg`` and ``elevation_b_deg`` are at the median k; every rule has its own. ``lower_regions`` are the
+    heights at which the lower antennas of a diversity pair clear (`profiler.study.requirements`), empty without one.
     """
 
     hop: Hop
@@ -176,7 +168,8 @@ class Study:
     budget: Budget | None
     outage: OutageResult
     confidence: Confidence | None
-    corridor: Corridor | None
+    surface: Surface
+    lower_regions: tuple[ClearingRegion, ...]
     climate: ClimateUse
     relief: Relief | None
     verdict: Verdict

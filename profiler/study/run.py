@@ -9,8 +9,8 @@ from typing import TYPE_CHECKING
 import numpy as np
 
 from profiler.errors import InputError, under
-from profiler.geometry import check_corridor, check_rule, elevation_angle, find_reflections
-from profiler.models import ConfidenceChoice, Hop, Rule
+from profiler.geometry import elevation_angle, find_reflections, hold_rules
+from profiler.models import ConfidenceChoice, Hop
 from profiler.remarks import Note, k_text, note
 from profiler.study.climate_numbers import ClimateUse, climate_numbers
 from profiler.study.ground import Ground, read_ground, require_above_cover
@@ -25,7 +25,7 @@ from profiler.terrain import Terrain, open_terrain, require_inside
 
 if TYPE_CHECKING:
     from profiler.confidence import Confidence
-    from profiler.heights import DiversityEnd
+    from profiler.heights import ClearingRegion, DiversityEnd
 
 __all__ = ["open_hop_terrain", "run_study"]
 
@@ -85,9 +85,10 @@ def run_study(hop: Hop, terrain: Terrain | None = None, *, relief: bool = False,
     profile = ground.profile
     centre_a_m = float(profile.ground_m[0]) + hop.site_a.antenna_m
     centre_b_m = float(profile.ground_m[-1]) + hop.site_b.antenna_m
-    rules = tuple(_check(hop, ground, rule, centre_a_m, centre_b_m) for rule in hop.rules)
+    rules = _hold(hop, ground, centre_a_m, centre_b_m)
     air = air_along(hop, profile, climate.median_k, centre_a_m, centre_b_m)
-    lower = _lower_antennas(hop, ground, climate.median_k)
+    regions = _lower_regions(hop, ground, climate.median_k)
+    lower = _lower_antennas(hop, regions)
     clears = (lower[0].clears, lower[1].clears) if lower else (True, True)
     found = Link.none()
     if losses:
@@ -111,7 +112,8 @@ def run_study(hop: Hop, terrain: Terrain | None = None, *, relief: bool = False,
         budget=found.budget,
         outage=found.outage,
         confidence=confidence,
-        corridor=ground.corridor,
+        surface=ground.surface,
+        lower_regions=regions,
         climate=climate,
         relief=ground.relief,
         verdict=judge(hop, profile.distance_m, rules, found.budget, found.outage, confidence),
@@ -130,27 +132,27 @@ def _angles(ground: Ground, centre_a_m: float, centre_b_m: float, k: float) -> t
     )
 
 
-def _check(hop: Hop, ground: Ground, rule: Rule, centre_a_m: float, centre_b_m: float) -> RuleResult:
-    """Hold one rule against the path and the ground beside it."""
+def _hold(hop: Hop, ground: Ground, centre_a_m: float, centre_b_m: float) -> tuple[RuleResult, ...]:
+    """Hold every rule against the path and what stands beside it."""
     profile = ground.profile
     path = (profile.distance_m, profile.surface_m, centre_a_m, centre_b_m, hop.frequency_hz)
-    corridor = None
-    if ground.corridor is not None and rule.fresnel_fraction > 0:
-        beside = (profile.distance_m, ground.corridor.offset_m, ground.corridor.surface_m)
-        corridor = check_corridor(*beside, *path[2:], rule)
-    elevation_a_deg, elevation_b_deg = _angles(ground, centre_a_m, centre_b_m, rule.k)
-    check = check_rule(*path, rule)
-    tight = find_places(check, corridor, profile, ground.corridor, ground.line)
-    return RuleResult(
-        check=check,
-        corridor=corridor,
-        critical=tight.critical,
-        places=tight.places,
-        feet=tight.feet,
-        elevation_a_deg=elevation_a_deg,
-        elevation_b_deg=elevation_b_deg,
-        reflections=find_reflections(*path, k=rule.k),
-    )
+    rays = [(rule, centre_a_m, centre_b_m) for rule in hop.rules]
+    results = []
+    for held in hold_rules(ground.surface, rays, hop.frequency_hz):
+        elevation_a_deg, elevation_b_deg = _angles(ground, centre_a_m, centre_b_m, held.check.rule.k)
+        tight = find_places(held, profile, ground.line, hop.frequency_hz)
+        results.append(
+            RuleResult(
+                held=held,
+                critical=tight.critical,
+                places=tight.places,
+                feet=tight.feet,
+                elevation_a_deg=elevation_a_deg,
+                elevation_b_deg=elevation_b_deg,
+                reflections=find_reflections(*path, k=held.check.rule.k),
+            )
+        )
+    return tuple(results)
 
 
 def _confidence(hop: Hop, ground: Ground, climate: ClimateUse, rules: Sequence[RuleResult]) -> Confidence | None:
@@ -223,14 +225,22 @@ def _doubt_assumptions(choice: ConfidenceChoice) -> tuple[Note, ...]:
     )
 
 
-def _lower_antennas(hop: Hop, ground: Ground, median_k: float) -> tuple[DiversityEnd, ...]:
-    """Hold the lower antennas of a diversity pair to their clearance; empty without diversity."""
+def _lower_regions(hop: Hop, ground: Ground, median_k: float) -> tuple[ClearingRegion, ...]:
+    """Heights at which the lower antennas of a diversity pair clear; empty without diversity."""
     if hop.availability is None or hop.availability.diversity is None:
+        return ()
+    from profiler.study.requirements import lower_regions
+
+    return lower_regions(hop, ground.profile, ground.surface, median_k)
+
+
+def _lower_antennas(hop: Hop, regions: tuple[ClearingRegion, ...]) -> tuple[DiversityEnd, ...]:
+    """Hold the lower antennas of a diversity pair to their clearance; empty without diversity."""
+    if not regions:
         return ()
     from profiler.study.requirements import lower_antennas
 
-    a_m, b_m = hop.site_a.antenna_m, hop.site_b.antenna_m
-    return lower_antennas(hop, ground.profile, ground.corridor, median_k, antenna_a_m=a_m, antenna_b_m=b_m)
+    return lower_antennas(hop, regions, antenna_a_m=hop.site_a.antenna_m, antenna_b_m=hop.site_b.antenna_m)
 
 
 def _lower_warnings(ends: Sequence[DiversityEnd]) -> tuple[Note | str, ...]:

@@ -15,8 +15,10 @@ from profiler.terrain.cells import ReadTally, fetch
 from profiler.terrain.crossings import find_crossings
 from profiler.terrain.describe import Reading, Tile
 from profiler.terrain.gdal import OpenRasters, gdal_session
+from profiler.terrain.ground_patches import Layer, read_classes
 from profiler.terrain.index import Hits, Ints, build_index, find_hits
 from profiler.terrain.mosaic import as_degrees, describe_all
+from profiler.terrain.strip import Strip
 from profiler.units import Float
 
 __all__ = ["Classes", "open_classes"]
@@ -73,6 +75,24 @@ class Classes:
                     files |= dict.fromkeys(self._rasters.pieces(tile.file).under(tally.windows[int(number)]))
         return classes.reshape(shape), tuple(files)
 
+    def layers(self, strip: Strip) -> tuple[list[Layer], tuple[Path, ...]]:
+        """Class of every cell on a strip beside a path, and the files that were read for them."""
+        tally = ReadTally()
+
+        def classes_of(tile: Ints, col: Ints, row: Ints) -> Ints:
+            found = np.full(tile.size, -1, dtype=np.int64)
+            for number in np.unique(tile):
+                mine, at = tile == number, self._index.tiles[number]
+                found[mine] = _stored_classes(at, int(number), self._rasters, col[mine], row[mine], tally)
+            return found
+
+        with gdal_session():
+            layers = read_classes(self._index, strip, classes_of)
+            files = dict[Path, None]()
+            for number, windows in tally.windows.items():
+                files |= dict.fromkeys(self._rasters.pieces(self._index.tiles[number].file).under(windows))
+        return layers, tuple(files)
+
 
 def open_classes(path: Path) -> Classes:
     r"""Index class rasters for sampling; only their metadata is read.
@@ -113,6 +133,11 @@ def _classes_on_tile(tile: Tile, number: int, rasters: OpenRasters, hits: Hits, 
         np.clip(np.floor(at + 0.5).astype(np.int64), 0, side - 1)
         for at, side in ((hits.u, tile.info.width), (hits.v, tile.info.height))
     )
+    return _stored_classes(tile, number, rasters, col, row, tally)
+
+
+def _stored_classes(tile: Tile, number: int, rasters: OpenRasters, col: Ints, row: Ints, tally: ReadTally) -> Ints:
+    """Class of each cell, -1 where it has none."""
     raw, valid = fetch(tile, number, rasters, col, row, tally)
     there = (raw != tile.coding.nodata) & ~np.isnan(raw)
     if valid is not None:

@@ -16,12 +16,14 @@ from profiler.terrain.crossings import find_crossings
 from profiler.terrain.describe import NotHeightsError, RasterInfo, Reading, Tile, describe
 from profiler.terrain.files import find_rasters
 from profiler.terrain.gdal import OpenRasters, gdal_session
+from profiler.terrain.ground_patches import Layer, read_layers
 from profiler.terrain.index import build_index, find_hits
 from profiler.terrain.overlap import Overlap, find_overlaps
 from profiler.terrain.placing import place, require_placed
 from profiler.terrain.reference import resolve_datum, unit_factor
-from profiler.terrain.samples import Samples, Skipped, gather_samples
+from profiler.terrain.samples import Samples, Skipped, SourceUse, gather_samples
 from profiler.terrain.sampling import lattice_cells, sample_ground
+from profiler.terrain.strip import Strip
 from profiler.units import Float
 
 __all__ = ["Terrain", "as_degrees", "as_reading", "describe_all", "open_terrain"]
@@ -165,6 +167,22 @@ class Terrain:
             return gather_samples(
                 self._index.tiles, self._rasters, ground, shape, allow_mixed_datums=allow, overlaps=overlaps
             )
+
+    def layers(self, strip: Strip) -> tuple[list[Layer], tuple[SourceUse, ...]]:
+        """Squares between cell centres on a strip beside a path, of every grid, and the rasters that they are from.
+
+        Among them the ground is exact: between four cell centres it is bilinear (or the highest of them).
+        """
+        with gdal_session(allow_network=self._allow_network):
+            layers, cells = read_layers(
+                self._index, self._rasters, strip, self._method, voids_are_sea=self._voids_are_sea
+            )
+            if not cells.height_m.size:
+                return [], ()
+            shape = cells.height_m.shape
+            return layers, gather_samples(
+                self._index.tiles, self._rasters, cells, shape, allow_mixed_datums=True
+            ).sources
 
 
 def open_terrain(

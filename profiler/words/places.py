@@ -2,14 +2,13 @@
 
 from __future__ import annotations
 
-from typing import TYPE_CHECKING, TypeAlias
+from typing import TYPE_CHECKING
 
 from profiler.models import Rule
 from profiler.remarks import k_text, minus, position_text
 from profiler.words.scale import Scale
 
 if TYPE_CHECKING:
-    from profiler.study.requirements import Source
     from profiler.study.result import Place
 
 __all__ = [
@@ -25,10 +24,6 @@ __all__ = [
 
 _NOTICED_M = 2.0
 """Less than this beside the path, nobody who stands there with a hand-held receiver could tell."""
-
-
-Placed: TypeAlias = "Place | Source"
-"""A place on the path or beside it, of a study or of a heights plan."""
 
 
 def rule_text(rule: Rule, scale: Scale) -> str:
@@ -50,43 +45,44 @@ def rule_text(rule: Rule, scale: Scale) -> str:
     return f"{' '.join(parts)} at k = {k_text(rule.k)}"
 
 
-def beside_text(place: Placed, scale: Scale) -> str:
+def beside_text(place: Place, scale: Scale) -> str:
     """Say how far beside the path a place is, as a part of a sentence; nothing for a place on it."""
     if abs(place.offset_m) < _NOTICED_M:
         return ""
     return f", {scale.height_text(abs(place.offset_m), 0)} {place.side} of the path"
 
 
-def along_text(place: Placed, scale: Scale) -> str:
+def along_text(place: Place, scale: Scale) -> str:
     """Say where a place is, for a cell of a table whose distances all are from A."""
     return f"{scale.distance_text(place.distance_m)}{beside_text(place, scale)}".removesuffix(" of the path")
 
 
-def where_text(place: Placed, scale: Scale) -> str:
+def where_text(place: Place, scale: Scale) -> str:
     """Say where a place is.
 
     Examples
     --------
-    >>> from profiler.study.requirements import Source
-    >>> where_text(Source(3892.0, -12.4, "left", -38.95, 46.02, 568.0, 12.0, 0), Scale())
+    >>> from profiler.study.result import Place
+    >>> where = Place(0, 3892.0, -12.4, "left", -38.95, 46.02, 568.0, 12.0, False, 0.0, 9.0, 1.0, 2.0, -1.0, 0.1)
+    >>> where_text(where, Scale())
     '3.89 km from A, 12 m left of the path'
     """
     return f"{scale.distance_text(place.distance_m)} from A{beside_text(place, scale)}"
 
 
-def stands_text(place: Placed, scale: Scale) -> str:
+def stands_text(place: Place, scale: Scale) -> str:
     """Say how high the ground is at a place and what stands on it."""
     cover = f" + cover {scale.height_text(place.cover_m)}" if place.cover_m > 0 else ""
     filled = " (interpolated)" if getattr(place, "filled", False) else ""
     return f"ground {scale.height_text(place.ground_m)}{filled}{cover}"
 
 
-def spot_text(place: Placed) -> str:
+def spot_text(place: Place) -> str:
     """Write the position of a place."""
     return position_text(place.longitude, place.latitude)
 
 
-def place_text(place: Placed, scale: Scale) -> str:
+def place_text(place: Place, scale: Scale) -> str:
     """Say where a place is, with its position, and what stands there."""
     return f"{where_text(place, scale)} ({spot_text(place)}), {stands_text(place, scale)}"
 
