@@ -339,3 +339,32 @@ def test_degrees_on_wgs84_need_no_transformation(write_raster, monkeypatch, degr
 def test_stated_datum_must_be_vertical(write_raster, datum):
     with pytest.raises(InputError, match=f"vertical datum {datum}: must be the EPSG code of a vertical CRS"):
         open_terrain(write_raster("a.tif", FLAT, GRID), vertical_datum=datum)
+
+
+@pytest.mark.parametrize(
+    "options",
+    [
+        {},
+        {"compress": "lzw"},
+        {"tiled": True, "blockxsize": 16, "blockysize": 32, "bigtiff": "yes"},
+        {"tiled": True, "blockxsize": 16, "blockysize": 16, "sparse_ok": True, "endianness": "big"},
+    ],
+)
+def test_the_directory_of_a_tiff_says_what_gdal_says_of_each_block(write_raster, options):
+    """GDAL's own metadata of blocks (BLOCK_OFFSET_x_y, BLOCK_SIZE_x_y) is the reference."""
+    import rasterio
+
+    from profiler.terrain.tiff import read_directory
+
+    heights = np.full((64, 96), -7, "int16")
+    heights[:32, 16:80] = np.arange(64)
+    path = write_raster("t.tif", heights, GRID, nodata=-7, **options)
+    found = read_directory(str(path))
+    with rasterio.open(path) as raster:
+        high, wide = raster.block_shapes[0]
+        blocks = [f"{x}_{y}" for y in range(-(-64 // high)) for x in range(96 // wide)]
+        starts = [raster.get_tag_item(f"BLOCK_OFFSET_{block}", "TIFF", bidx=1) for block in blocks]
+        sizes = [raster.get_tag_item(f"BLOCK_SIZE_{block}", "TIFF", bidx=1) for block in blocks]
+    ends = [int(start) + int(size) for start, size in zip(starts, sizes, strict=True) if start is not None]
+    assert (found.end, found.all_written, found.marker) == (max(ends), None not in starts, -7.0)
+    assert found.all_written == ("sparse_ok" not in options)

@@ -272,6 +272,7 @@ def test_a_block_too_large_to_unpack_is_refused_with_the_way_out(tmp_path, capsy
 
     terrain = write(tmp_path / "a.tif", country(), blockysize=ROWS, compress="deflate")
     monkeypatch.setattr(reading, "_MOST_BYTES", 1000)
+    monkeypatch.setattr(reading, "LARGE_BLOCK_CELLS", 1000)
     code, _, err = run(["study", write_hop(tmp_path, terrain)], capsys)
     assert code == 2
     assert "is stored in blocks of 60 x 24 cells, of 0.0 GB each, which must be unpacked whole" in err

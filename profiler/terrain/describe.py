@@ -14,9 +14,8 @@ from profiler.errors import InputError, RasterError, under
 from profiler.printable import printable
 from profiler.terrain.files import RasterFile, read_bytes
 from profiler.terrain.gdal import LARGE_BLOCK_CELLS, gdal_failures, open_raster
-from profiler.terrain.markers import declared_marker
 from profiler.terrain.reference import Reference, parse_reference, unit_factor
-from profiler.terrain.sound import require_plain_beside
+from profiler.terrain.sound import declared_marker, require_plain_beside
 from profiler.terrain.virtual import is_virtual, read_virtual
 
 __all__ = ["Bounds", "Coding", "NotHeightsError", "RasterInfo", "Reading", "Tile", "describe", "settled"]

@@ -206,6 +206,10 @@ def on_disk(source: str) -> Path | None:
 @contextmanager
 def open_stream(source: str) -> Iterator[IO[bytes]]:
     """Open what GDAL calls `source` for reading as bytes, unpacked."""
+    if not source.startswith("/vsi"):
+        with Path(source).open("rb") as stream:
+            yield stream
+        return
     path = on_disk(source)
     if path is None:
         raise FileNotFoundError(source)
@@ -213,12 +217,9 @@ def open_stream(source: str) -> Iterator[IO[bytes]]:
         member = source.removeprefix(f"/vsizip/{path}").lstrip("/")
         with zipfile.ZipFile(path) as archive, archive.open(member) as stream:
             yield stream
-    elif source.startswith("/vsigzip/"):
+    else:
         with gzip.open(path) as stream:
             yield stream  # type: ignore[misc]  # it is IO[bytes] in all but name
-    else:
-        with path.open("rb") as stream:
-            yield stream
 
 
 def read_bytes(source: str, most: int) -> bytes:

@@ -135,7 +135,7 @@ def _has_large_block(dataset: Any) -> bool:
 
 
 def read_window(
-    dataset: Any, band: int, rows: tuple[int, int], cols: tuple[int, int], *, name: str, masked: bool
+    dataset: Any, band: int, rows: tuple[int, int], cols: tuple[int, int], *, file: RasterFile, masked: bool
 ) -> tuple[NDArray[Any], NDArray[np.bool_] | None]:
     """Raw cells of rows[0]:rows[1], cols[0]:cols[1], and where the raster's own mask band is valid (None: no mask)."""
     from rasterio._err import CPLE_BaseError
@@ -147,7 +147,7 @@ def read_window(
         valid = dataset.read_masks(band, window=window) != 0 if masked else None
     except (CPLE_BaseError, RasterioError) as error:
         raise RasterError(
-            f"{name}: cannot be read at rows {rows[0]} to {rows[1] - 1}, columns {cols[0]} to {cols[1] - 1} "
+            f"{file.name}: cannot be read at rows {rows[0]} to {rows[1] - 1}, columns {cols[0]} to {cols[1] - 1} "
             f"({_first_line(error.__cause__ or error)}); the file is damaged or cut short: get it again"
         ) from error
     return cells, valid
@@ -174,7 +174,7 @@ def _require_sound_piece(piece: Piece, mosaic: str) -> None:
         raise RasterError(f"{name}: is a VRT with another ending; name it .vrt, or make a GeoTIFF of it")
     require_plain_beside(piece.source, name)
     with open_raster(RasterFile(path, "", piece.source, named=True)) as dataset, gdal_failures(name):
-        require_whole(dataset, piece.source, name)
+        all_written = require_whole(dataset, piece.source, name)
         flags = {flag.name for flags in dataset.mask_flag_enums for flag in flags}
         others = {value for value in dataset.nodatavals if value is not None}
         if piece.marker is not None and "all_valid" not in flags and others != {piece.marker}:
@@ -182,31 +182,24 @@ def _require_sound_piece(piece: Piece, mosaic: str) -> None:
                 f"{name}: says itself which cells are missing, and the mosaic takes {piece.marker:g} for that; make "
                 "the mosaic without -srcnodata"
             )
-        if dataset.driver == "GTiff" and "all_valid" in flags and piece.marker is None and not _all_written(dataset):
+        # what was never written reads as 0, and the mosaic would hand that on
+        if "all_valid" in flags and piece.marker != 0.0 and not all_written:
             raise RasterError(
-                f"{name}: has blocks that were never written and declares no nodata, so that they read as 0 m; declare "
-                "one (gdal_edit -a_nodata)"
+                f"{name}: has, or may have, blocks that were never written and declares no nodata, so that "
+                "they read as 0 m; declare one (gdal_edit -a_nodata)"
             )
-
-
-def _all_written(dataset: Any) -> bool:
-    high, wide = dataset.block_shapes[0]
-    return all(
-        dataset.get_tag_item(f"BLOCK_OFFSET_{x}_{y}", "TIFF", bidx=1) is not None
-        for y in range(-(-dataset.height // high))
-        for x in range(-(-dataset.width // wide))
-    )
 
 
 class OpenRasters:
     """Open datasets, the least recently used closed first, so that thousands of tiles need few handles."""
 
-    __slots__ = ("_datasets", "_pieces", "_sound", "_windows")
+    __slots__ = ("_datasets", "_pieces", "_sound", "_sparse", "_windows")
 
     def __init__(self) -> None:
         self._datasets: OrderedDict[RasterFile, Any] = OrderedDict()
         self._pieces: dict[RasterFile, Pieces] = {}
-        self._sound: set[str] = set()
+        self._sound: set[Piece | RasterFile] = set()
+        self._sparse: set[RasterFile] = set()
         self._windows: dict[RasterFile, NDArray[np.int64]] = {}
 
     def get(self, file: RasterFile) -> Any:
@@ -225,23 +218,28 @@ class OpenRasters:
             self._pieces[file] = find_pieces(file, self.get(file))
         return self._pieces[file]
 
-    def require_sound(self, file: RasterFile, name: str, window: Window) -> None:
-        """Refuse a file that is not whole, or pieces under a window that are not; each is looked into once."""
+    def may_be_sparse(self, file: RasterFile, window: Window) -> bool:
+        """Whether the file may have blocks that were never written; a mosaic knows of its own gaps.
+
+        Refuses a file that is not whole, or pieces under the window that are not; each is looked into once.
+        """
         if not file.types:
-            if file.source not in self._sound:
-                with gdal_failures(name):
-                    require_whole(self.get(file), file.source, name)
-                self._sound.add(file.source)
-            return
+            if file not in self._sound:
+                with gdal_failures(file.name):
+                    if not require_whole(self.get(file), file.source, file.name):
+                        self._sparse.add(file)
+                self._sound.add(file)
+            return file in self._sparse
         if file not in self._windows:
             self._windows[file] = np.array([piece.window for piece in file.pieces], dtype=np.int64).reshape(-1, 4)
         first_row, end_row, first_col, end_col = self._windows[file].T
         top, bottom, left, right = window
         under = (first_row < bottom) & (end_row > top) & (first_col < right) & (end_col > left)
         for piece in (file.pieces[i] for i in np.flatnonzero(under)):
-            if piece.source not in self._sound:
-                _require_sound_piece(piece, name)
-                self._sound.add(piece.source)
+            if piece not in self._sound:
+                _require_sound_piece(piece, file.name)
+                self._sound.add(piece)
+        return False
 
     def close(self) -> None:
         """Close everything; a later `get` opens again."""

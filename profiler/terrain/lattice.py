@@ -3,15 +3,15 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
-from typing import Any
 
 import numpy as np
 from numpy.typing import NDArray
 
 from profiler.terrain.cells import ReadTally, to_metres
-from profiler.terrain.gdal import OpenRasters, read_window
+from profiler.terrain.gdal import OpenRasters
 from profiler.terrain.index import Index, find_hits
 from profiler.terrain.proj import from_lonlat
+from profiler.terrain.reading import read_cells
 from profiler.terrain.reference import Reference
 from profiler.terrain.sampling import lattice_cells
 from profiler.units import Float
@@ -59,7 +59,7 @@ def lattice_window(
 ) -> tuple[NDArray[np.float32], ReadTally]:
     """Read the cells rows[0]:rows[1], columns[0]:columns[1] of a lattice in metres, NaN where there are none.
 
-    Each tile is read once, only where the window covers it.
+    Each tile is read once, only where the window covers it; of tiles that overlap the first given answers.
     """
     height, tally = np.full((rows[1] - rows[0], columns[1] - columns[0]), np.nan, dtype=np.float32), ReadTally()
     for number in np.flatnonzero(index.lattice == index.lattice[lattice.number]):
@@ -71,7 +71,8 @@ def lattice_window(
             left, end = max(columns[0], turn), min(columns[1], turn + width)
             if top < bottom and left < end:
                 part = _read(index, rasters, int(number), (top - down, bottom - down), (left - turn, end - turn), tally)
-                height[top - rows[0] : bottom - rows[0], left - columns[0] : end - columns[0]] = part
+                here = height[top - rows[0] : bottom - rows[0], left - columns[0] : end - columns[0]]
+                np.copyto(here, part, where=np.isnan(here), casting="same_kind")
     return height, tally
 
 
@@ -89,8 +90,7 @@ def _read(
 ) -> Float:
     """Read a window of one tile in metres."""
     tile = index.tiles[number]
-    dataset: Any = rasters.get(tile.file)
-    cells, valid = read_window(dataset, tile.coding.band, rows, columns, name=tile.file.name, masked=tile.coding.masked)
+    cells, valid = read_cells(rasters, tile, rows, columns)
     tally.count(number, tile, rows, columns)
     width = columns[1] - columns[0]
 

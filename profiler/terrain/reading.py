@@ -9,7 +9,7 @@ from numpy.typing import NDArray
 
 from profiler.errors import RasterError
 from profiler.terrain.describe import Tile
-from profiler.terrain.gdal import OpenRasters, read_window
+from profiler.terrain.gdal import LARGE_BLOCK_CELLS, OpenRasters, read_window
 
 __all__ = ["Span", "read_cells"]
 
@@ -31,23 +31,25 @@ def read_cells(
         When a file is damaged or cut short, or its blocks are too large to unpack.
     """
     coding = tile.coding
-    rasters.require_sound(tile.file, tile.info.name, (*rows, *cols))
     dataset = rasters.get(tile.file)
-    _require_small_blocks(dataset, tile)
-    marked = not np.isnan(coding.nodata)
+    if tile.block[0] * tile.block[1] > LARGE_BLOCK_CELLS:
+        _require_small_blocks(dataset, tile)
+    # where the raster declares a marker, blocks that were never written read as that, and need no second look
+    sparse = rasters.may_be_sparse(tile.file, (*rows, *cols)) and np.isnan(coding.nodata)
+    by_zeros = sparse and tile.info.driver == "HFA"
     inner: tuple[slice, slice] = slice(None), slice(None)
-    if tile.info.driver == "HFA" and not marked:
+    if by_zeros:
         rows, cols, inner = _to_whole_blocks(tile, rows, cols)
-    cells, valid = read_window(dataset, coding.band, rows, cols, name=tile.info.name, masked=coding.masked)
+    cells, valid = read_window(dataset, coding.band, rows, cols, file=tile.file, masked=coding.masked)
+    shown: list[NDArray[np.bool_]] = []
     if coding.alpha:
-        seen, _ = read_window(dataset, coding.alpha, rows, cols, name=tile.info.name, masked=False)
-        valid = seen != 0 if valid is None else valid & (seen != 0)
-    if tile.info.driver == "GTiff":
-        written = _written(dataset, tile, rows, cols)
-        if written is not None and not marked:
-            valid = written if valid is None else valid & written
-    elif tile.info.driver == "HFA" and not marked:
-        valid = _not_all_zero(tile, cells)
+        shown.append(read_window(dataset, coding.alpha, rows, cols, file=tile.file, masked=False)[0] != 0)
+    if by_zeros:
+        shown.append(_not_all_zero(tile, cells))
+    elif sparse:
+        shown.append(_written(dataset, tile, rows, cols))
+    for seen in shown:
+        valid = seen if valid is None else valid & seen
     return cells[inner], None if valid is None else valid[inner]
 
 
@@ -66,18 +68,13 @@ def _blocks(tile: Tile, rows: Span, cols: Span) -> tuple[range, range]:
     return range(rows[0] // high, (rows[1] - 1) // high + 1), range(cols[0] // wide, (cols[1] - 1) // wide + 1)
 
 
-def _written(dataset: Any, tile: Tile, rows: Span, cols: Span) -> NDArray[np.bool_] | None:
-    """Which cells of a window of a GeoTIFF lie in blocks that were ever written; None when all do.
-
-    A block without a place in the file reads as 0.
-    """
+def _written(dataset: Any, tile: Tile, rows: Span, cols: Span) -> NDArray[np.bool_]:
+    """Which cells of a window of a GeoTIFF lie in blocks that were ever written: one without a place reads as 0."""
     down, across = _blocks(tile, rows, cols)
     there = [
         [dataset.get_tag_item(f"BLOCK_OFFSET_{x}_{y}", "TIFF", bidx=tile.coding.band) is not None for x in across]
         for y in down
     ]
-    if all(map(all, there)):
-        return None
     return _per_cell(np.array(there), tile, rows, cols)
 
 

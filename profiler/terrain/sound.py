@@ -3,14 +3,16 @@
 from __future__ import annotations
 
 import re
+from contextlib import suppress
 from pathlib import Path
 from typing import IO, Any
 
 from profiler.errors import RasterError
 from profiler.printable import printable
 from profiler.terrain.files import on_disk, open_stream, read_bytes
+from profiler.terrain.tiff import read_directory
 
-__all__ = ["require_plain_beside", "require_whole"]
+__all__ = ["declared_marker", "require_plain_beside", "require_whole"]
 
 _UNPACKED = frozenset({"SRTMHGT", "EHdr", "ENVI", "BT", "DTED", "SAGA", "RST", "GSBG", "GS7BG", "NWT_GRD", "PCRaster"})
 """Formats that store every cell as it is: a file shorter than its cells is cut short."""
@@ -30,6 +32,17 @@ _HEADER = {
 _PIECE_BYTES = 4_000_000
 
 _GET_AGAIN = "the file is damaged or cut short: get it again"
+
+
+def declared_marker(source: str) -> float | None:
+    """Find the marker of missing cells that a raster declares beside it (.aux.xml) or, a GeoTIFF, in itself."""
+    beside = Path(source + ".aux.xml")
+    if not source.startswith("/vsi") and beside.is_file():
+        found = re.search(r"<NoDataValue[^>]*>([^<]*)<", beside.read_text("utf-8", "replace"))
+        with suppress(ValueError):
+            return None if found is None else float(found[1])
+    directory = read_directory(source)
+    return None if directory is None else directory.marker
 
 
 def require_plain_beside(source: str, name: str) -> None:
@@ -52,7 +65,7 @@ def require_plain_beside(source: str, name: str) -> None:
             raise RasterError(f"{name}: {printable(beside.name)} beside it names other files; take it away")
 
 
-def require_whole(dataset: Any, source: str, name: str) -> None:
+def require_whole(dataset: Any, source: str, name: str) -> bool:
     """Refuse a file that is shorter than its cells, or a text grid in which a cell is no number.
 
     Parameters
@@ -64,14 +77,19 @@ def require_whole(dataset: Any, source: str, name: str) -> None:
     name
         What messages call it.
 
+    Returns
+    -------
+    bool
+        Whether every block was written; an Imagine file does not tell.
+
     Raises
     ------
     RasterError
         Naming what is there and what should be.
     """
-    if dataset.driver == "GTiff" and not source.startswith("/vsi"):
-        _require_blocks(dataset, source, name)
-    elif dataset.driver in _HEADER:
+    if dataset.driver == "GTiff":
+        return _require_blocks(source, name)
+    if dataset.driver in _HEADER:
         with open_stream(source) as stream:
             _require_numbers(stream, _HEADER[dataset.driver], dataset.width * dataset.height, name)
     elif dataset.driver in _UNPACKED and not source.startswith("/vsi"):
@@ -81,21 +99,21 @@ def require_whole(dataset: Any, source: str, name: str) -> None:
             raise RasterError(
                 f"{name}: holds {max(sizes)} bytes where its {cells} bytes of cells do not fit; {_GET_AGAIN}"
             )
+    return bool(dataset.driver != "HFA")
 
 
-def _require_blocks(dataset: Any, source: str, name: str) -> None:
-    """Refuse a GeoTIFF whose last block ends beyond the file's end."""
-    high, wide = dataset.block_shapes[0]
-    last, at = 0, ""
-    for y in range(-(-dataset.height // high)):
-        for x in range(-(-dataset.width // wide)):
-            start = dataset.get_tag_item(f"BLOCK_OFFSET_{x}_{y}", "TIFF", bidx=1)
-            if start is not None and int(start) >= last:
-                last, at = int(start), f"{x}_{y}"
-    end = last + int(dataset.get_tag_item(f"BLOCK_SIZE_{at}", "TIFF", bidx=1) or 0) if at else 0
-    size = Path(source).stat().st_size
-    if end > size:
-        raise RasterError(f"{name}: ends after {size} bytes where its cells reach to byte {end}; {_GET_AGAIN}")
+def _require_blocks(source: str, name: str) -> bool:
+    """Refuse a GeoTIFF whose last block ends beyond the file's end; say whether all its blocks were written."""
+    directory = read_directory(source)
+    if directory is None:
+        return False
+    if not source.startswith("/vsi"):  # what is in an archive is read to its end by whoever unpacks it
+        size = Path(source).stat().st_size
+        if directory.end > size:
+            raise RasterError(
+                f"{name}: ends after {size} bytes where its cells reach to byte {directory.end}; {_GET_AGAIN}"
+            )
+    return directory.all_written
 
 
 def _require_numbers(stream: IO[bytes], header: re.Pattern[bytes], cells: int, name: str) -> None:
