@@ -1,8 +1,15 @@
 """Hop files that went wrong, a few of the many that scripts/fuzz tries: an answer or one line, and nothing else."""
 
+import contextlib
+import copy
+import functools
+import json
+import operator
 import shutil
 import sys
 import time
+import tomllib
+from pathlib import Path
 
 import pytest
 from hypothesis import HealthCheck, given, settings
@@ -10,6 +17,9 @@ from hypothesis import strategies as st
 from odd_hops import KINDS, SAMPLES, fault, good_hops, mutated
 
 from profiler.cli import main
+from profiler.errors import InputError
+from profiler.hopfile import starter
+from profiler.hopfile.build import build_hop
 
 MUTATIONS = st.lists(
     st.tuples(st.sampled_from(sorted(KINDS)), st.floats(0.0, 1.0), st.integers(0, 10_000)), min_size=1, max_size=4
@@ -72,3 +82,27 @@ def test_what_counts_as_a_finding(outcome, words):
     assert words in fault(*outcome)
     assert fault(0, "PASSES\n", "") is None
     assert fault(2, "", "hopwright: hop.toml: must be TOML\n", 1.0) is None
+
+
+def test_any_part_that_is_left_out_is_answered_or_asked_for():
+    """Every key, every table and every list of a full hop file in turn: what may be left out may really be."""
+    country = json.dumps(str(SAMPLES / "country.tif"))
+    full = tomllib.loads(starter().replace('"terrain/"', country))
+    places = list(parts(full))
+    assert len(places) > 60
+    for place in places:
+        raw = copy.deepcopy(full)
+        table = functools.reduce(operator.getitem, place[:-1], raw)
+        del table[place[-1]]
+        with contextlib.suppress(InputError):
+            build_hop(raw, "hop.toml", Path())
+
+
+def parts(table, at=()):
+    for key, value in table.items():
+        yield (*at, key)
+        if isinstance(value, dict):
+            yield from parts(value, (*at, key))
+        for number, inner in enumerate(value) if isinstance(value, list) else []:
+            if isinstance(inner, dict):
+                yield from parts(inner, (*at, key, number))

@@ -151,6 +151,8 @@ def _preset_notes(name: str, rules: tuple[Rule, ...], sites: list[Site]) -> list
         for rule in rules
     )
     notes = [f"rules of preset {name} ({preset.label}): {spelled}; {preset.source}"]
+    if len(sites) < 2:  # the site that is missing is told next
+        return notes
     a, b = sites
     length_km = float(geodesic(a.longitude, a.latitude, b.longitude, b.latitude)[0]) / 1e3
     if length_km < preset.shortest_m / 1e3:

@@ -129,7 +129,7 @@ class Radio(Stated):
             name="mode",
             left_out="no threshold, so no margin",
         ),
-    ]
+    ] = ()
     other_losses_db: Annotated[
         tuple[tuple[str, float], ...],
         Key(
