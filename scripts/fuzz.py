@@ -138,6 +138,7 @@ WRITERS = (
     ("heights", "hop.toml", "--write", "a.toml", "--figure", "b.png", "--csv", "c.csv"),
     ("losses", "hop.toml", "--json", "a.json"),
     ("reach", "hop.toml", "--json", "a.json"),
+    ("compare", "hop.toml", "--variant", "frequency_ghz=8", "--json", "a.json"),
     ("terrain", "country.tif", "--json", "a.json"),
     ("starter", "a.toml", "--force"),
 )

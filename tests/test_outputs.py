@@ -44,7 +44,7 @@ canopy = ["trees.tif"]
 [rules]
 rule = [{ k = 1.333, fresnel_fraction = 1.0 }, { k = 0.667, fresnel_fraction = 0.3 }]
 """
-COMMANDS = ("study", "heights", "losses", "reach")
+COMMANDS = ("study", "heights", "losses", "reach", "compare")
 RADIO = """
 [radio.a]
 power_dbm = 27
@@ -124,7 +124,8 @@ def test_no_output_replaces_an_input(refused, here, command, target):
     (here / "soft.csv").symlink_to("dem.tif")
     (here / "hard.csv").hardlink_to("dem.tif")
     (here / "softhop.json").symlink_to("hop.toml")
-    assert f"{target}: must not be " in refused(command, "hop.toml", "--json", target)
+    hops = ["hop.toml"] * (1 + (command == "compare"))
+    assert f"{target}: must not be " in refused(command, *hops, "--json", target)
     if command == "study":
         assert f"{target}: must not be " in refused(command, "hop.toml", "--csv", target)
     if command == "heights":

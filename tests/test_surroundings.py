@@ -329,6 +329,7 @@ def test_files_with_such_names_are_studied_and_forge_no_line(run, here):
         ("study", hop), ("heights", hop), ("losses", hop), ("reach", hop), ("terrain", raster, "--hop", hop),
         ("terrain", "land", "--all", "--hop", hop), ("study", hop, "--json", f"out{evil}.json"),
         ("heights", hop, "--write", f"copy{evil}.toml"), ("starter", f"new{evil}.toml"),
+        ("compare", hop, hop),
         ("study", hop, "--json", raster),
     ):  # fmt: skip
         code, out, err = run(*words)

@@ -11,9 +11,11 @@ import click
 from profiler.cli.hop_options import named, read_hop
 from profiler.cli.output import check_targets, json_text, put
 from profiler.errors import InputError
+from profiler.printable import printable
 
 if TYPE_CHECKING:
     from profiler.document.comparison import Side
+    from profiler.models import Hop
     from profiler.words import Scale
 
 __all__ = ["command"]
@@ -51,11 +53,11 @@ def command(
 
     Exit code 0: every one passes; 1: at least one does not; 2: the input is wrong.
     """
-    sides = tuple(_sides(hop_files, variants, settings))
-    if len(sides) < 2:
+    hops = tuple(_hops(hop_files, variants, settings))
+    if len(hops) < 2:
         raise InputError("command line: HOP.toml: must be two or more, or one with --variant, to stand side by side")
-    for side in sides:
-        check_targets(json_to, reads=side.study.hop)
+    check_targets(json_to, reads=hops)
+    sides = tuple(_sides(hops))
     if json_to is not None:
         from profiler.document.comparison import comparison_document
 
@@ -65,18 +67,24 @@ def command(
     return 0 if all(side.study.verdict.outcome == "passes" for side in sides) else 1
 
 
-def _sides(hop_files: tuple[Path, ...], variants: tuple[str, ...], settings: tuple[str, ...]) -> Iterator[Side]:
-    """Study every hop and every variant of the first, and plan its heights."""
+def _hops(
+    hop_files: tuple[Path, ...], variants: tuple[str, ...], settings: tuple[str, ...]
+) -> Iterator[tuple[str, Hop]]:
+    """Read every hop and every variant of the first, each with its title."""
+    for path in hop_files:
+        yield printable(path.stem), read_hop(path, settings=settings)
+    for variant in variants:
+        own = tuple(part.strip() for part in variant.split(";") if part.strip())
+        yield printable(", ".join(own)), read_hop(hop_files[0], settings=(*settings, *own))
+
+
+def _sides(hops: tuple[tuple[str, Hop], ...]) -> Iterator[Side]:
+    """Study every hop, and plan its heights."""
     from profiler.document.comparison import Side
     from profiler.plan import plan_heights
     from profiler.study import run_study
 
-    asked: list[tuple[Path, tuple[str, ...], str]] = [(path, (), path.stem) for path in hop_files]
-    for variant in variants:
-        own = tuple(part.strip() for part in variant.split(";") if part.strip())
-        asked.append((hop_files[0], own, ", ".join(own)))
-    for path, own, title in asked:
-        hop = read_hop(path, settings=(*settings, *own))
+    for title, hop in hops:
         with named(hop.source):
             study = run_study(hop)
             yield Side(title, study, plan_heights(study))
