@@ -265,6 +265,11 @@ def alpha_band(folder: Path) -> Path:
     return write(folder / "a.tif", np.stack([hidden(100), (hidden(0) != 0) * np.int16(255)]), alpha="yes")
 
 
+@odd("")
+def alpha_band_that_hides_nothing(folder: Path) -> Path:
+    return write(folder / "a.tif", np.stack([country(), np.full_like(country(), 255)]), alpha="yes", nodata=-9999)
+
+
 @odd("no ground height")
 def alpha_band_beside_a_marker(folder: Path) -> Path:
     bands = np.stack([hidden(100), (hidden(0) != 0) * np.int16(255)])

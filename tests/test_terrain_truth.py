@@ -219,6 +219,22 @@ def test_a_mosaic_reaches_the_network_only_when_allowed(tmp_path, capsys, server
     assert err.count("\n") == 1
 
 
+@pytest.mark.parametrize(
+    "form", ["/vsicurl/{}/a.tif", "/vsicurl_streaming/{}/a.tif", "/vsizip//vsicurl/{}/a.zip/a.tif"]
+)
+def test_the_files_of_the_network_are_closed_behind_the_text_of_mosaics_too(server, form):
+    """The second lock: were a name to slip through the reading of a mosaic's text, GDAL itself has no way out."""
+    from profiler.terrain.gdal import gdal_session
+
+    address, asked = server
+    with gdal_session(), pytest.raises(rasterio.errors.RasterioIOError):
+        rasterio.open(form.format(address))
+    assert asked == []
+    with gdal_session(allow_network=True), pytest.raises(rasterio.errors.RasterioIOError):
+        rasterio.open(form.format(address).replace("/a.", "/b."))  # GDAL remembers what it could not have
+    assert asked
+
+
 @pytest.mark.parametrize("ending", [".ovr", ".msk", ".aux.xml"])
 def test_nothing_beside_a_raster_reaches_the_network(tmp_path, capsys, server, ending):
     address, asked = server
