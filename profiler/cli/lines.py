@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping, Sequence
+from collections.abc import Iterable, Mapping, Sequence
 from typing import TYPE_CHECKING
 
 from profiler.cli.screen import compact_table
@@ -38,11 +38,30 @@ def seen_from(name: str, way: str) -> str:
 
 
 def lines_table(title: str, lines: Mapping[str, Sequence[Line]]) -> Table:
-    """Tabulate lines by direction, such as "A to B"; they have the same names by `seen_from`."""
+    """Tabulate lines by direction, such as "A to B": a row for each name by `seen_from`, a dash for none."""
     table = compact_table(title, *lines, "unit", "by", words=("unit",), wraps="by")
-    for row in zip(*lines.values(), strict=True):
-        notes = {line.note: way for way, line in zip(lines, row, strict=True)}
-        note = "; ".join(f"{way} {note}" for note, way in notes.items()) if len(notes) > 1 else row[0].note
-        values = (minus(f"{line.value:+.2f}") if round(line.value, 2) else "0.00" for line in row)
-        table.add_row(seen_from(row[0].name, next(iter(lines))), *values, row[0].unit, note)
+    named = {way: {seen_from(line.name, way): line for line in each} for way, each in lines.items()}
+    for name in _in_order(named.values()):
+        row = {way: each[name] for way, each in named.items() if name in each}
+        first, notes = next(iter(row.values())), {line.note: way for way, line in row.items()}
+        note = "; ".join(f"{way} {note}" for note, way in notes.items()) if len(notes) > 1 else first.note
+        table.add_row(name, *(_value(row.get(way)) for way in named), first.unit, note)
     return table
+
+
+def _in_order(each: Iterable[Iterable[str]]) -> list[str]:
+    """Names of several lists, each once, in an order that keeps that of every list."""
+    found: list[str] = []
+    for names in each:
+        after = 0
+        for name in names:
+            if name not in found:
+                found.insert(after, name)
+            after = found.index(name) + 1
+    return found
+
+
+def _value(line: Line | None) -> str:
+    if line is None:
+        return "–"
+    return minus(f"{line.value:+.2f}") if round(line.value, 2) else "0.00"
