@@ -17,7 +17,8 @@ _UTM: Final = re.compile(
     re.IGNORECASE | re.ASCII,
 )
 _MGRS: Final = re.compile(
-    r"(?:MGRS\s*)?(\d{1,2})\s*([C-HJ-NP-X])\s*([A-HJ-NP-Z])([A-HJ-NP-V])\s*(\d*)\s*(\d*)", re.IGNORECASE
+    r"(?:MGRS\s*)?(\d{1,2})\s*([C-HJ-NP-X])\s*([A-HJ-NP-Z])([A-HJ-NP-V])\s*(\d*)\s*(\d*)",
+    re.IGNORECASE | re.ASCII,
 )
 _COLUMNS: Final = ("STUVWXYZ", "ABCDEFGH", "JKLMNPQR")
 """Letters of the 100 km columns from 100 km east on, for zones 3, 6, ...; 1, 4, ...; 2, 5, ..."""
