@@ -12,6 +12,7 @@ from profiler.document import output_schema
 from profiler.hopfile import starter
 
 ROOT = Path(__file__).resolve().parent.parent
+COUNTRY = str(ROOT / "sample_dem" / "country.tif")
 RIDGE, QUARRY = (str(ROOT / "sample_dem" / name) for name in ("ridge_to_mill.toml", "quarry_to_island.toml"))
 
 
@@ -41,7 +42,9 @@ def given(capsys, *words):
 
 @pytest.mark.parametrize("command", ["study", "heights", "losses", "reach", "compare", "terrain"])
 def test_what_a_command_gives_for_another_hop_keeps_to_its_schema(capsys, start, command):
-    words = {"compare": (command, start, QUARRY), "terrain": (command, "--hop", start)}.get(command, (command, start))
+    words = {"compare": (command, start, QUARRY), "terrain": (command, COUNTRY, "--hop", start)}.get(
+        command, (command, start)
+    )
     found = given(capsys, *words)
     validator(command).validate(found)
     assert found["schema"] == f"hopwright-{command}/1"
@@ -52,7 +55,15 @@ def test_what_a_command_gives_for_another_hop_keeps_to_its_schema(capsys, start,
     [
         (QUARRY, "--set", "site_a.antenna_m=60"),
         (RIDGE, "--set", "site_b.antenna_m=2", "--set", "confidence.minimum_chance_percent=99"),
-        (RIDGE, "--set", "availability.multipath_method=vigants-barnett", "--set", "availability.climate=average"),
+        (
+            RIDGE,
+            "--set",
+            "availability.multipath_method=vigants-barnett",
+            "--set",
+            "availability.climate=average",
+            "--set",
+            "availability.annual_temperature_c=11",
+        ),
         (RIDGE, "--set", "diffraction.method=knife-edge", "--set", "site_b.position=46.05 -38.98"),
     ],
 )
