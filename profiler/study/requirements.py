@@ -25,9 +25,6 @@ _ABOVE_COVER_M = 1e-5
 """More than rounding, and less than anybody means."""
 
 _SLACK_M = 1e-3
-_TALLEST_M = 2000.0
-"""Above this no antenna is mounted: the models refuse it."""
-
 _MOST_ROUNDS = 40
 
 
@@ -178,10 +175,10 @@ def _with_decisive_places(needs: Requirements, profile: Profile, surface: Surfac
         return needs
     for _ in range(_MOST_ROUNDS):
         more = _above_hull(needs, needs.region(profile), zoned, surface, frequency_hz)
-        if more is None or np.array_equal(more.least_ray_m, needs.least_ray_m):
+        if more is None:
             break
         needs = more
-    # what the search may have left under it
+    # what may be left: as much as does not count, and what the search may have left under it
     rays = np.array(needs.least_ray_m)
     rays[zoned] += 2.0 * _SLACK_M
     return replace(needs, least_ray_m=frozen_array(rays))
@@ -195,8 +192,6 @@ def _above_hull(
     x, y = region.distance_m[region.governing_point], region.least_ray_m[region.governing_point]
     slope = np.diff(y) / np.diff(x)
     at_a, at_b = y[:-1] - slope * x[:-1], y[1:] + slope * (x[-1] - x[1:])
-    # edges that only antennas would touch that nobody mounts: next to a mast the zone bends without end
-    mounted = (at_a - region.ground_a_m < _TALLEST_M) & (at_b - region.ground_b_m < _TALLEST_M)
     rays = zone_rays(
         surface,
         [
@@ -219,10 +214,11 @@ def _above_hull(
         rays,
         np.tile(patch, len(rows)),
         np.tile(edge, len(rows)) + of_row,
-        np.tile(np.where(mounted, 0.0, -np.inf), len(rows)),
+        np.zeros(edges * len(rows)),
         slack_m=_SLACK_M,
     )
-    hit = np.flatnonzero(least.patch >= 0)
+    # next to a mast the zone bends without end: what is short by less is no place of its own
+    hit = np.flatnonzero(least.surplus_m < -_SLACK_M)
     if not hit.size:
         return None
     along, offset, height, cover = surface.patches.at(least.patch[hit], least.p[hit], least.q[hit])
