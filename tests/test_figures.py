@@ -441,6 +441,7 @@ def test_level_diagram_adds_up_to_the_received_level_and_the_margin(study, margi
     assert power + sum(changes["gain"]) + sum(changes["loss"]) == pytest.approx(row.received_dbm)
     assert line_of(axes, "received")[0, 0] == pytest.approx(row.received_dbm)
     assert changes["margin"] == pytest.approx([row.fade_margin_db])
+    assert min(changes["gain"]) > 0.0 >= max(changes["loss"])
 
 
 def test_outage_curves_and_objective_are_drawn_as_computed(study, margin):

@@ -483,7 +483,8 @@ def test_document_has_every_rule_where_it_is_tightest(metres):
         assert critical["ratio"] == pytest.approx(float(literal["clearance_m"]) / float(literal["f1_m"]), abs=0.005)
         assert side == "centre" or critical["side"] == side
         assert (rule["elevation_a_deg"], rule["elevation_b_deg"]) == tuple(map(close, ends))
-    # at A the trees begin where the clearing ends, at B grass stands around the mast
+    # at A the trees begin where the clearing ends; at B stands grass, which with the last rule leaves 68.58 - 2 - 3 m
+    assert min(rule["feet"][1]["surplus_m"] for rule in document["rules"]) == pytest.approx(63.5, abs=0.15)
     assert [[foot["cover_m"] for foot in rule["feet"]] for rule in document["rules"]] == [[14.0, 2.0]] * 3
     verdict = document["verdict"]
     assert (verdict["outcome"], verdict["headline"]) == ("not_sure", HEADLINE)
@@ -510,6 +511,8 @@ def test_document_has_the_budget_both_ways(metres):
         assert found["gas_db"] == pytest.approx(GAS_DB, abs=0.02)
         assert found["diffraction_db"] == 0.0
         assert found["eirp_dbm"] == pytest.approx(eirp_dbm, abs=1e-6)
+        assert found["lines"][0]["value"] == (33.0 if after_db == "B" else 29.5)
+        assert sum(line["value"] for line in found["lines"]) == pytest.approx(found["received_dbm"])
         assert found["received_dbm"] == pytest.approx(level_dbm, abs=0.01)
         assert (found["threshold_dbm"], found["overload_dbm"]) == (-67.5, overload_dbm)
         assert found["fade_margin_db"] == pytest.approx(level_dbm + 67.5, abs=0.01)
@@ -535,6 +538,8 @@ def test_document_has_the_outage_of_the_weaker_way(metres):
     outage = metres[2]["availability"]
     margin_db, d_km = 30.60, float(PATH["distance_m"]) / 1e3
     month = 6.0e-7 * 0.8 * 2.2 * d_km**3 * 10 ** (-margin_db / 10)
+    # the frequency cancels with diversity, so that the law without it is held to its own number
+    assert outage["multipath"][0]["worst_month_percent"] == pytest.approx(100 * month, rel=0.01)
     month /= 1.2e-3 * 2.2 / 24.0 * 7.0**2 * 10 ** (margin_db / 10)
     year = month * 8e6 / (365.25 * 86400)
     assert outage["fade_margin_db"] == close("30.60")
@@ -649,6 +654,12 @@ def test_the_full_screen_in_metres(metres):
     assert "A Mesa, antenna 86.0 m up, azimuth 156.67°; B Bench, antenna 68.6 m up, azimuth 336.72°; 16.62 km" in screen
     assert "A to B: the received level of −32.4 dBm" in screen.replace("-", "−")
     # both ways −32.4 with the mode of most power; only so much is taken: −34 dBm at B, −37 dBm at A
+    rules = metres[2]["rules"]
+    feet_m = [min(rule["feet"][end]["surplus_m"] for rule in rules) for end in (0, 1)]
+    spare = (
+        f"{feet_m[0]:.1f} m to spare at A over 14.0 m of cover and {feet_m[1]:.1f} m to spare at B over 2.0 m of cover"
+    )
+    assert f"At the masts' feet: {spare}." in screen
     for sure in metres[2]["confidence"]["sure"]:
         more, equal, alone = sure["raise_m"], sure["equal_m"], (sure["a_only_m"], sure["b_only_m"])
         assert (
@@ -796,18 +807,20 @@ def test_levels_of_the_margin_figure_are_those_of_the_weaker_way(study):
 
 def test_planned_heights_belong_to_their_ends(study, hand):
     """A metre costs three times as much at A: the plan is held to the whole zone by hand, and a step less is short."""
+    from profiler.cli.show_heights import show_heights
     from profiler.document.heights_document import heights_document
     from profiler.plan import plan_heights
 
-    plan = heights_document(plan_heights(study))
+    found = plan_heights(study)
+    plan = heights_document(found)
     a_m, b_m = plan["cheapest_m"]
     assert plan["cost"] == pytest.approx(3.0 * a_m + b_m)
 
-    def least_m(antenna_a_m, antenna_b_m):
+    def least_m(antenna_a_m, antenna_b_m, asks=ASKS[DECIDES]):
         """Of all rules: the second asks for most on this path at any height."""
         raised = copy.copy(hand)
         raised.centres_m = hand.ends_m[0] + antenna_a_m, hand.ends_m[1] + antenna_b_m
-        return raised.tightest(*ASKS[DECIDES])["surplus_m"]
+        return raised.tightest(*asks)["surplus_m"]
 
     assert least_m(a_m, b_m) >= -0.01
     assert least_m(a_m - 1.0, b_m) < 0.0
@@ -826,3 +839,18 @@ def test_planned_heights_belong_to_their_ends(study, hand):
     sure = plan["sure"][1]
     assert sure["asked_chance"] == 0.95
     assert least_m(*sure["pair_m"]) > 5.8 - 0.3
+    # the lower antennas, 7 m down, by 0.3 F1 at the median k
+    lower = {each["ray"]: each["surplus_m"] for each in sheet["held"]}
+    assert lower["lower A"] == pytest.approx(least_m(answer[0] - 7.0, answer[1], (4 / 3, 0.3, 0.0)), abs=0.01)
+    assert lower["lower B"] == pytest.approx(least_m(answer[0], answer[1] - 7.0, (4 / 3, 0.3, 0.0)), abs=0.01)
+    # the frontier on the terminal: A rises and B falls along the stretch of the place that decides
+    (first_a, first_b), *_, (last_a, last_b) = plan["stretches"][-1]["corners_m"]
+    assert (last_a, least_m(last_a, last_b)) == (110.0, pytest.approx(0.0, abs=0.01))
+    printed = io.StringIO()
+    with pytest.MonkeyPatch.context() as patch, redirect_stdout(printed):
+        patch.setenv("COLUMNS", "250")
+        show_heights(found, feet=False, full=True, quiet=False, color=False)
+    screen = " ".join(printed.getvalue().split())
+    assert f"{first_a:.1f} to {last_a:.1f} {first_b:.1f} to {last_b:.1f} 14.36 km, 8 m left 1390.3 + 14.0" in screen
+    assert f"Least A with B at 68.6 m: {plan['least_a_m']:.2f} m" in screen
+    assert f"Least B with A at 86.0 m: {plan['least_b_m']:.2f} m" in screen

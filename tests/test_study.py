@@ -10,6 +10,7 @@ import math
 from dataclasses import replace
 from importlib.util import find_spec
 from itertools import pairwise
+from types import SimpleNamespace
 
 import numpy as np
 import pytest
@@ -19,6 +20,7 @@ from hypothesis import strategies as st
 from scipy.ndimage import gaussian_filter
 
 from profiler.climate import lookup
+from profiler.confidence import Chance
 from profiler.document import point_table, to_document
 from profiler.document.heights_document import heights_document
 from profiler.errors import DatumError, InputError, MissingGroundError
@@ -42,6 +44,8 @@ from profiler.models import (
 )
 from profiler.plan import plan_heights
 from profiler.study import open_hop_terrain, run_study
+from profiler.study.outage import OutageResult
+from profiler.study.reasons import ChanceTooSmall, MarginMissing, find_reasons
 from profiler.words import METRES, Scale, headline
 
 CELL = 1 / 3600
@@ -1033,3 +1037,18 @@ def test_a_survey_stands_for_missing_ground_at_its_site(land):
     study = run_study(with_terrain(known, missing="interpolate"))
     assert study.profile.filled[1]
     assert not study.profile.filled[0]
+
+
+def test_reasons_at_the_limits_of_chance_and_margin():
+    """The chance that is asked for is enough, and what a margin lacks is a positive number of decibels."""
+    clear = [SimpleNamespace(critical=SimpleNamespace(surplus_m=1.0))]
+    sure = SimpleNamespace(chance=Chance(0.9, 0.88, 0.92))
+
+    def reasons(asked, margin_db):
+        hop = SimpleNamespace(confidence=SimpleNamespace(minimum_chance=asked), has_objective=False)
+        row = SimpleNamespace(name="QPSK", fade_margin_db=margin_db)
+        return find_reasons(hop, clear, SimpleNamespace(weaker=lambda: ("b_to_a", row)), OutageResult(), sure)
+
+    assert reasons(0.9, 0.0) == ()
+    assert reasons(0.901, 0.0) == (ChanceTooSmall(sure.chance, 0.901),)
+    assert reasons(0.9, -3.25) == (MarginMissing("QPSK", "b_to_a", 3.25),)
