@@ -160,8 +160,8 @@ def _forward(start: tuple[float, float, float], along_m: Float) -> tuple[Float, 
 
 def points_along(
     longitude: ArrayLike, latitude: ArrayLike, azimuth_deg: ArrayLike, along_m: ArrayLike
-) -> tuple[Float, Float]:
-    """Positions at distances along geodesics.
+) -> tuple[Float, Float, Float]:
+    """Positions at distances along geodesics, and the way on there.
 
     Parameters
     ----------
@@ -174,20 +174,21 @@ def points_along(
 
     Returns
     -------
-    longitude, latitude
-        WGS 84 degrees.
+    longitude, latitude, azimuth_deg
+        WGS 84 degrees, and the true azimuth in which each goes on, 0 up to 360 degrees.
 
     Examples
     --------
-    >>> longitude, latitude = points_along([0.0, 5.0], [0.0, 0.0], 90.0, [[0.0], [111319.49079327358]])
-    >>> longitude.round(9).tolist(), latitude.round(9).tolist()
-    ([[0.0, 5.0], [1.0, 6.0]], [[0.0, 0.0], [0.0, 0.0]])
+    >>> longitude, latitude, azimuth = points_along([0.0, 5.0], [0.0, 0.0], 90.0, [[0.0], [111319.49079327358]])
+    >>> longitude.round(9).tolist(), latitude.round(9).tolist(), azimuth.round(9).tolist()
+    ([[0.0, 5.0], [1.0, 6.0]], [[0.0, 0.0], [0.0, 0.0]], [[90.0, 90.0], [90.0, 90.0]])
     """
     lon, lat, azimuth, along = np.broadcast_arrays(
         *(np.asarray(each, dtype=float) for each in (longitude, latitude, azimuth_deg, along_m))
     )
-    there_lon, there_lat, _ = _geod().fwd(lon.ravel(), lat.ravel(), azimuth.ravel(), along.ravel())
-    return np.asarray(there_lon).reshape(lon.shape), np.asarray(there_lat).reshape(lon.shape)
+    there_lon, there_lat, back = _geod().fwd(lon.ravel(), lat.ravel(), azimuth.ravel(), along.ravel())
+    onward = np.mod(np.asarray(back) + 180.0, 360.0)
+    return np.asarray(there_lon).reshape(lon.shape), np.asarray(there_lat).reshape(lon.shape), onward.reshape(lon.shape)
 
 
 def equal_steps(distance_m: float, spacing_m: float) -> Float:

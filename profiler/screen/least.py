@@ -19,7 +19,17 @@ from profiler.screen.blocks import BLOCK, Blocks
 from profiler.screen.lines import GridLines, Ints
 from profiler.units import MEAN_EARTH_RADIUS_M, Float
 
-__all__ = ["LeastSurplus", "Opened", "Segments", "Sight", "least_surplus", "open_segments", "segments_of"]
+__all__ = [
+    "LeastSurplus",
+    "Opened",
+    "Segments",
+    "Sight",
+    "least_surplus",
+    "lower_bounds",
+    "open_segments",
+    "segments_of",
+    "strides",
+]
 
 _SPARE = 1e-3
 """Cells that a path may bend out of the box around both ends of a segment: far more than a geodesic does."""
@@ -45,6 +55,11 @@ class Sight:
         k, fraction, margin_m = np.array([(rule.k, rule.fresnel_fraction, rule.margin_m) for rule in rules]).T
         per_metre = 1.0 / (2.0 * k * MEAN_EARTH_RADIUS_M)
         return cls(centre_a_m, centre_b_m, wavelength_m, per_metre[:, None], fraction[:, None], margin_m[:, None])
+
+    def take(self, hops: Ints) -> Sight:
+        """Return the same rules over some hops, in the order given."""
+        a, b, wavelength = (each[hops] for each in (self.centre_a_m, self.centre_b_m, self.wavelength_m))
+        return Sight(a, b, wavelength, self.per_metre, self.fraction, self.margin_m)
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -128,7 +143,7 @@ def least_surplus(lines: GridLines, blocks: Blocks, sight: Sight) -> LeastSurplu
     ([[10.0]], [[50094.0]])
     """
     segments = segments_of(lines)
-    least = _lower_bounds(lines, blocks, sight, segments)
+    least = lower_bounds(lines, blocks, sight, segments)
     hops = lines.distance_m.size
     best, at = (np.full((len(sight.fraction), hops), fill) for fill in (np.inf, np.nan))
     opened = np.zeros(segments.hop.size, dtype=bool)
@@ -147,8 +162,10 @@ _AT_ONCE = 4096
 """Segments opened together: their arrays of some 33 points stay in a core's cache."""
 
 
-def _lower_bounds(lines: GridLines, blocks: Blocks, sight: Sight, segments: Segments) -> Float:
-    """Bound the surplus of every segment from below, (rules, segments)."""
+def lower_bounds(
+    lines: GridLines, blocks: Blocks, sight: Sight, segments: Segments, *, aside_m: Float | float = 0.0
+) -> Float:
+    """Bound the surplus of every segment from below, (rules, segments), as far as some metres beside the path."""
     hop, final = segments.hop, np.append(segments.start[1:], segments.hop.size) - 1
     main = np.append(segments.first, segments.last[final])
     owner = np.append(hop, hop[final])
@@ -157,16 +174,18 @@ def _lower_bounds(lines: GridLines, blocks: Blocks, sight: Sight, segments: Segm
     following = np.arange(1, hop.size + 1)
     following[final] = hop.size + np.arange(final.size)
     low, high = (pick(cross[: hop.size], cross[following]) for pick in (np.minimum, np.maximum))
-    along, across = _strides(lines.turned[hop], blocks.block_columns)
-    near, far = (
-        segments.block * along + np.floor(side).astype(np.int64) // BLOCK * across
-        for side in (np.maximum(low - _SPARE, 0.0), high + _SPARE)
-    )
-    most = blocks.highest_m.size - 1
-    top = np.maximum(blocks.highest_m[np.minimum(near, most)], blocks.highest_m[np.minimum(far, most)])
+    spare: Float | float = _SPARE
+    if np.any(aside_m):
+        spare = aside_m / np.abs(lines.beside(0.5 * (segments.first + segments.last), hop)[0])
+    along, across = strides(lines.turned[hop], blocks.block_columns)
+    near, far = (np.floor(side).astype(np.int64) // BLOCK for side in (np.maximum(low - spare, 0.0), high + spare))
+    top = np.full(hop.size, -np.inf)
+    for further in range(int((far - near).max(initial=0)) + 1):
+        place = segments.block * along + np.minimum(near + further, far) * across
+        np.maximum(top, blocks.highest_m[np.minimum(place, blocks.highest_m.size - 1)], out=top)
 
     here, there = metres[: hop.size], metres[following]
-    middle, half = 0.5 * (here + there), 0.5 * np.abs(there - here)
+    middle, half = 0.5 * (here + there), 0.5 * np.abs(there - here) + aside_m
     length = lines.distance_m[hop]
     rise = (sight.centre_b_m - sight.centre_a_m)[hop] / length
     ray = sight.centre_a_m[hop] + rise * middle
@@ -178,7 +197,7 @@ def _lower_bounds(lines: GridLines, blocks: Blocks, sight: Sight, segments: Segm
     return np.asarray(value - np.abs(slope) * half - top)
 
 
-def _strides(turned: np.ndarray, columns: int) -> tuple[Ints, Ints]:
+def strides(turned: np.ndarray, columns: int) -> tuple[Ints, Ints]:
     """Give the steps in a flat grid along the main axis and along the cross axis."""
     return np.where(turned, columns, 1), np.where(turned, 1, columns)
 
@@ -205,7 +224,7 @@ def open_segments(lines: GridLines, blocks: Blocks, segments: Segments, which: I
     left, right = main[:, :-1] - column, main[:, 1:] - column
     middle = left + (right - left) * share
 
-    along, across = (stride[:, None] for stride in _strides(lines.turned[hop], blocks.columns))
+    along, across = (stride[:, None] for stride in strides(lines.turned[hop], blocks.columns))
     before = _Cells.at(blocks, column, from_row, along, across)
     after = _Cells.at(blocks, column, to_row, along, across)
     shape = (which.size, 2 * BLOCK + 1)

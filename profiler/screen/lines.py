@@ -8,7 +8,7 @@ at Chebyshev-Lobatto nodes, so that a crossing with a line of cell centres is on
 from __future__ import annotations
 
 from collections.abc import Callable
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 from numpy.typing import NDArray
@@ -23,6 +23,9 @@ Ints = NDArray[np.int64]
 _NODES = 5
 """Good to a micrometre for 40 km at up to 65° latitude, and to 0.1 mm for 100 km."""
 
+_ASIDE_M = 20.0
+"""How far beside the path the grid is asked which way is right: about as far as the zones of this trade reach."""
+
 _SNAP_CELLS = 1e-6
 """As for single points: coordinates do not carry more digits."""
 
@@ -32,8 +35,8 @@ class GridLines:
     """Paths of many hops over one grid; arrays (hops,) or (nodes, hops).
 
     ``column_a`` and ``row_a`` (likewise B) are the sites in cells from the first centre. ``turned`` says that the main
-    axis is that of the rows. ``main`` holds the nodes along the main axis, ``cross_by_main`` and ``metres_by_main`` the
-    coefficients of Newton's form over them.
+    axis is that of the rows. ``main`` holds the nodes along the main axis, the others the coefficients of Newton's form
+    over them: the cross coordinate, the distance, and what a metre to the right of the path adds along both axes.
     """
 
     distance_m: Float
@@ -47,6 +50,8 @@ class GridLines:
     main: Float
     cross_by_main: Float
     metres_by_main: Float
+    right_main_by_main: Float
+    right_cross_by_main: Float
 
     @property
     def first_main(self) -> Float:
@@ -62,6 +67,21 @@ class GridLines:
         """Return the lines of some hops, in the order given."""
         return GridLines(*(getattr(self, name)[..., hops] for name in self.__slots__))
 
+    def moved(self, columns: int, rows: int) -> GridLines:
+        """Return the same lines over a grid whose first cell lies some columns and rows further on."""
+        along, across = (np.where(self.turned, rows, columns), np.where(self.turned, columns, rows))
+        cross = self.cross_by_main.copy()
+        cross[0] -= across
+        return replace(
+            self,
+            column_a=self.column_a - columns,
+            row_a=self.row_a - rows,
+            column_b=self.column_b - columns,
+            row_b=self.row_b - rows,
+            main=self.main - along,
+            cross_by_main=cross,
+        )
+
     def cross(self, main: Float, hop: Ints) -> Float:
         """Cross coordinate where hops meet coordinates of their main axis; ``hop`` is (n,), ``main`` (n,) or (n, m)."""
         return self._evaluated(self.cross_by_main, main, hop)
@@ -69,6 +89,23 @@ class GridLines:
     def metres(self, main: Float, hop: Ints) -> Float:
         """Distance from A where hops meet coordinates of their main axis, as `cross`."""
         return self._evaluated(self.metres_by_main, main, hop)
+
+    def beside(self, main: Float, hop: Ints) -> tuple[Float, Float]:
+        """Give, where hops meet coordinates of their main axis, what one cell across the grid is for the path.
+
+        Metres to the right of the path, and metres further along it.
+        """
+        right_main, right_cross = (
+            self._evaluated(each, main, hop) for each in (self.right_main_by_main, self.right_cross_by_main)
+        )
+        step = 1e-3
+        slope, metres = (
+            (self._evaluated(each, main + step, hop) - self._evaluated(each, main - step, hop)) / (2.0 * step)
+            for each in (self.cross_by_main, self.metres_by_main)
+        )
+        # a metre to the right moves along the main axis too, and with it along the path
+        across = 1.0 / (right_cross - slope * right_main)
+        return across, -right_main * metres * across
 
     def _evaluated(self, coefficients: Float, main: Float, hop: Ints) -> Float:
         """Evaluate Newton's form by Horner's scheme."""
@@ -113,8 +150,10 @@ def grid_lines(
     distance_m, azimuth_a_deg, azimuth_b_deg = geodesic(longitude_a, latitude_a, longitude_b, latitude_b)
     share = 0.5 - 0.5 * np.cos(np.pi * np.arange(_NODES) / (_NODES - 1))
     along_m = share[:, None] * distance_m
-    longitude, latitude = points_along(longitude_a, latitude_a, azimuth_a_deg, along_m)
+    longitude, latitude, azimuth_deg = points_along(longitude_a, latitude_a, azimuth_a_deg, along_m)
     column, row = (_snapped(each) for each in to_cells(longitude, latitude))
+    beside = to_cells(*points_along(longitude, latitude, azimuth_deg + 90.0, _ASIDE_M)[:2])
+    right_column, right_row = ((there - here) / _ASIDE_M for there, here in zip(beside, (column, row), strict=True))
     turned = np.abs(column[-1] - column[0]) < np.abs(row[-1] - row[0])
     main, cross = np.where(turned, row, column), np.where(turned, column, row)
     return GridLines(
@@ -129,6 +168,8 @@ def grid_lines(
         main=main,
         cross_by_main=_divided_differences(main, cross),
         metres_by_main=_divided_differences(main, along_m),
+        right_main_by_main=_divided_differences(main, np.where(turned, right_row, right_column)),
+        right_cross_by_main=_divided_differences(main, np.where(turned, right_column, right_row)),
     )
 
 

@@ -92,7 +92,7 @@ def lay_profile(hop: Hop, terrain: Terrain, cover: CoverRasters) -> AlongPath:
     length_m = np.diff(knot_m)
     at_m = knot_m[:-1, None] + length_m[:, None] * Parabolas.FIT_AT
     start = coarse.longitude[0], coarse.latitude[0], coarse.azimuth_a_deg
-    longitude, latitude = points_along(*start, at_m)
+    longitude, latitude, _ = points_along(*start, at_m)
     samples = terrain.sample(longitude, latitude, compare=True)
     ground_m, weight_m = np.array(samples.ground_m), np.broadcast_to(length_m[:, None], at_m.shape)
     notes = (*samples.notes, *sea_notes(samples.sea, at_m))

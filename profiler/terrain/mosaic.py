@@ -18,6 +18,7 @@ from profiler.terrain.files import find_rasters
 from profiler.terrain.gdal import OpenRasters, gdal_session
 from profiler.terrain.ground_patches import Layer, read_layers
 from profiler.terrain.index import build_index, find_hits
+from profiler.terrain.lattice import Lattice, finest_lattice, lattice_window
 from profiler.terrain.overlap import Overlap, find_overlaps
 from profiler.terrain.placing import place, require_placed
 from profiler.terrain.reference import resolve_datum, unit_factor
@@ -113,6 +114,15 @@ class Terrain:
             any path that is a radio hop.
         """
         return find_crossings(self._index, *as_degrees(longitude, latitude)[:2], cell_edges=False)
+
+    def lattice(self, longitude: Float, latitude: Float) -> Lattice | None:
+        """Find the grid with the smallest cells under any of some positions, degrees, (n,); None if there is none."""
+        return finest_lattice(self._index, longitude, latitude)
+
+    def window(self, lattice: Lattice, rows: tuple[int, int], columns: tuple[int, int]) -> NDArray[np.float32]:
+        """Read a rectangle of a grid in metres, from the first to before the last row and column; NaN where missing."""
+        with gdal_session(allow_network=self._allow_network):
+            return lattice_window(self._index, self._rasters, lattice, rows, columns)
 
     def sample(
         self,
