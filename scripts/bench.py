@@ -21,7 +21,9 @@ from pathlib import Path
 
 import numpy as np
 import rasterio
+from pyproj import Geod
 from rasterio.transform import Affine
+from scipy.ndimage import map_coordinates
 from scipy.spatial import ConvexHull
 
 from profiler.confidence import assess
@@ -33,6 +35,9 @@ from profiler.hopfile import load_hop
 from profiler.models import ConfidenceChoice, Hop, Rule, Site, TerrainChoice
 from profiler.path import PathLine, trace
 from profiler.plan import plan_heights
+from profiler.screen.chunk import Template, screen_chunk
+from profiler.screen.pairs import Pairs
+from profiler.screen.rows import Rows
 from profiler.study import Study, run_study
 from profiler.study.along_path import lay_profile
 from profiler.study.ground import read_ground
@@ -323,6 +328,59 @@ def reading(work: Path, pairs: int) -> Iterator[Row]:
             yield Row("  memory grown by", grown, None, "MiB", "", f"the tile unpacked {size:.0f} MiB", grown / size)
 
 
+def screening(work: Path, pairs: int) -> Iterator[Row]:
+    """Screen pairs of 5 to 40 km over a tile, beside bilinear reads of its cells in memory and a plain script."""
+    count, few = 400, 4
+    tile = write_tile(work / "screened.tif", 3601, 10.0, 46.0, 1 / 3600)
+    rng = np.random.default_rng(3)
+    a, way = rng.uniform((10.4, 46.4), (10.6, 46.6), (count, 2)), rng.uniform(0, 2 * np.pi, count)
+    b = a + np.stack([np.sin(way) / 0.69, np.cos(way)], axis=1) * rng.uniform(5, 40, count)[:, None] / 111.2
+    no = np.full(count, np.nan)
+    sites = Pairs([str(i) for i in range(count)], [""] * count, *a.T, *b.T, no, no, no)
+    site = Site("anywhere", 10.5, 46.5, 40.0)
+    hop = Hop("template", site, site, FREQUENCY_HZ, RULES, TerrainChoice((tile,)))
+    geod = Geod(ellps="WGS84")
+    with open_terrain(tile) as terrain, rasterio.open(tile) as raster:
+        cells = raster.read(1).astype("float32")
+        share = np.linspace(0, 1, 512)
+        column, row = (np.outer(1 - share, start) + np.outer(share, end) for start, end in _in_cells(raster, a, b))
+
+        def floor() -> None:
+            for i in range(count):
+                map_coordinates(cells, (row[:, i], column[:, i]), order=1)
+
+        def plain() -> None:
+            for i in range(few):
+                points = [tuple(a[i]), *geod.npts(*a[i], *b[i], 510), tuple(b[i])]
+                z = np.array([value[0] for value in raster.sample(points)], dtype=float)
+                s = np.linspace(0, geod.inv(*a[i], *b[i])[2], z.size)
+                ray = z[0] + 40 + (z[-1] - z[0]) * s / s[-1]
+                for rule in RULES:
+                    zone = rule.fresnel_fraction * np.sqrt(299_792_458 / FREQUENCY_HZ * s * (s[-1] - s) / s[-1])
+                    (ray - z - s * (s[-1] - s) / (2 * rule.k * 6_371_000) - zone - rule.margin_m).min()
+                delta_bullington(s, z, z[0] + 40, z[-1] + 40, FREQUENCY_HZ, 4 / 3 * 6_371_000)
+
+        for what, beside in (("along the path", False), ("with the ground beside", True)):
+            template = Template(hop, beside=beside)
+
+            def job(template: Template = template) -> Rows:
+                return screen_chunk(template, sites, terrain)
+
+            took = paired(job, floor, min(pairs, 7))
+            yield took.row(f"a pair screened {what}, loss too", "", "512 reads", unit="us", per_second=1e6 / count)
+            if not beside:
+                script = paired(plain, job, min(pairs, 7))
+                ratio = [each * count / few for each in script.ratio]
+                value, cpu = (1e6 / few * each for each in script.job)
+                yield Row("  a plain script for the same pair", value, cpu, "us", ">= 120", "screened", *ratio)
+
+
+def _in_cells(raster: rasterio.DatasetReader, a: np.ndarray, b: np.ndarray) -> list[tuple[np.ndarray, np.ndarray]]:
+    """Columns, then rows, of both ends, counted from the first cell's centre."""
+    ends = [~raster.transform * (end[:, 0], end[:, 1]) for end in (a, b)]
+    return [(ends[0][axis] - 0.5, ends[1][axis] - 0.5) for axis in (0, 1)]
+
+
 def show(row: Row) -> None:
     def number(value: float | None) -> str:
         return " " * 9 if value is None else f"{value:>9.2f}"
@@ -351,6 +409,7 @@ def main() -> None:
             heights_plan(pairs),
             confidence(pairs),
             reading(work, pairs),
+            screening(work, pairs),
         ):
             for row in rows:
                 show(row)

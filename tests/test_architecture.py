@@ -1,6 +1,7 @@
 """The import ranks and the sole users of DEVELOPERS.md, held against the imports themselves."""
 
 import ast
+from functools import cache
 from pathlib import Path
 
 import pytest
@@ -49,6 +50,7 @@ SOLE_USERS = {
 }
 
 
+@cache
 def imports() -> list[tuple[Path, str]]:
     """Every (file, absolute module name imported) of the package, wherever in the file the import stands."""
     found = []
@@ -78,6 +80,7 @@ def test_imports_go_only_to_a_lower_rank():
     assert wrong == []
 
 
+@cache
 def public_names(name: str) -> set[str]:
     """Give what a module of the package lists in its ``__all__``, and the modules beside it."""
     path = PACKAGE.parent.joinpath(*name.split("."))

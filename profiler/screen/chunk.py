@@ -186,16 +186,17 @@ def _cleared(template: Template, pairs: Pairs, lines: GridLines, blocks: Blocks)
     whole = np.flatnonzero(np.isfinite(held.surplus_m).all(axis=0))
     passes = np.asarray((held.surplus_m >= -ROUNDING_M).all(axis=0))
     loss_db = np.full(len(pairs), np.nan)
-    loss_db[whole] = delta_bullington_losses(
-        lines.take(whole),
-        blocks,
-        centres[0][whole],
-        centres[1][whole],
-        wavelength_m[whole],
-        hop.median_k or K_MEDIAN,
-        polarization=hop.polarization,
-        sea_fraction=hop.diffraction.sea_fraction,
-    )
+    if whole.size:
+        loss_db[whole] = delta_bullington_losses(
+            lines.take(whole),
+            blocks,
+            centres[0][whole],
+            centres[1][whole],
+            wavelength_m[whole],
+            hop.median_k or K_MEDIAN,
+            polarization=hop.polarization,
+            sea_fraction=hop.diffraction.sea_fraction,
+        )
     return replace(
         rows,
         status=[OK] * len(pairs),

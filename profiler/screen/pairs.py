@@ -64,7 +64,7 @@ class _Rows:
     problem: list[str]
 
 
-def read_pairs(path: Path, *, epsg: int | None = None, within_m: tuple[float, float] = (0.0, 50e3)) -> Pairs:
+def read_pairs(path: Path, *, epsg: int | None = None, within_m: tuple[float, float] | None = None) -> Pairs:
     r"""Read pairs of sites, or sites to be paired, from a table.
 
     Parameters
@@ -77,7 +77,7 @@ def read_pairs(path: Path, *, epsg: int | None = None, within_m: tuple[float, fl
     epsg
         Coordinate system of the positions where they are not WGS 84 degrees; longitudes are then eastings.
     within_m
-        Least and greatest distance between the sites of a pair, where sites are to be paired.
+        Least and greatest distance between the sites of a pair, for a list of sites to be paired.
 
     Returns
     -------
@@ -104,7 +104,11 @@ def read_pairs(path: Path, *, epsg: int | None = None, within_m: tuple[float, fl
         feet = name.endswith("_ft") and f"{name.removesuffix('_ft')}_m" in _LIMITS
         columns[f"{name.removesuffix('_ft')}_m" if feet else name] = _scaled(values, FOOT_M) if feet else values
     if {"latitude", "longitude"} & columns.keys():
-        return _paired(_rows(path, columns, ("longitude", "latitude"), ("antenna_m",), epsg), within_m)
+        if within_m is None:
+            raise InputError(f"{path}: is a list of sites: must come with --within-km LEAST GREATEST to be paired")
+        return _paired(path, _rows(path, columns, ("longitude", "latitude"), ("antenna_m",), epsg), within_m)
+    if within_m is not None:
+        raise InputError(f"{path}: is a table of pairs: must come without --within-km, which pairs a list of sites")
     rows = _rows(path, columns, _ENDS, tuple(_EXTRAS), epsg)
     _require_apart(rows)
     return Pairs(rows.ids, rows.problem, *(rows.numbers[name] for name in (*_ENDS, *_EXTRAS)))
@@ -197,13 +201,13 @@ def _require_apart(rows: _Rows) -> None:
     _blame(rows.problem, length_m > _LONGEST_M, lambda i: f"the sites are {length_m[i] / 1e3:.0f} km apart")
 
 
-def _paired(sites: _Rows, within_m: tuple[float, float]) -> Pairs:
+def _paired(path: Path, sites: _Rows, within_m: tuple[float, float]) -> Pairs:
     """Pair every two sites whose distance is in range; a site with a problem is in no pair, and stops the list."""
     from scipy.spatial import cKDTree
 
     wrong = next((i for i, problem in enumerate(sites.problem) if problem), None)
     if wrong is not None:
-        raise InputError(f"site {sites.ids[wrong]}: {sites.problem[wrong]}")
+        raise InputError(f"{path}: site {sites.ids[wrong]}: {sites.problem[wrong]}")
     longitude, latitude, antenna_m = (sites.numbers[name] for name in ("longitude", "latitude", "antenna_m"))
     east, north = np.radians(longitude), np.radians(latitude)
     on_sphere = np.stack([np.cos(north) * np.cos(east), np.cos(north) * np.sin(east), np.sin(north)], axis=1)
@@ -211,7 +215,7 @@ def _paired(sites: _Rows, within_m: tuple[float, float]) -> Pairs:
     chord = 2.0 * np.sin(min(0.505 * within_m[1] / MEAN_EARTH_RADIUS_M, np.pi / 2.0))
     one, other = np.sort(cKDTree(on_sphere).query_pairs(chord, output_type="ndarray").astype(np.int64), axis=1).T
     if one.size > _MOST_PAIRS:
-        raise InputError(f"{one.size} pairs within {within_m[1] / 1e3:g} km: must be at most {_MOST_PAIRS}")
+        raise InputError(f"{path}: {one.size} pairs within {within_m[1] / 1e3:g} km: must be at most {_MOST_PAIRS}")
     length_m = geodesic(longitude[one], latitude[one], longitude[other], latitude[other])[0]
     kept = np.flatnonzero((length_m >= max(within_m[0], _SHORTEST_M)) & (length_m <= within_m[1]))
     kept = kept[np.lexsort((other[kept], one[kept]))]

@@ -22,8 +22,8 @@ class Rows:
     ``surplus_m`` is the least over the rules, ``surplus_at_m`` how far from A it is and ``surplus_offset_m`` how far to
     the right of the path, ``rule`` the number of its rule, counted from 1; ``rule_surplus_m`` (pairs, rules) is that of
     each. ``diffraction_db`` is by the template's method at the median k; ``least_equal_m`` the least height of both
-    antennas alike that meets the rules. ``studied`` is 1 for a pair that was studied in full, 0 for one that the kernel
-    for bare ground on one grid answered. ``fade_margin_db`` and ``chance`` are those of a full study, where the template asks for one.
+    antennas alike that meets the rules. ``fade_margin_db`` and ``chance`` are those of a full study, where the template
+    asks for one; ``studied`` is 1 for a pair that was studied in full, 0 where the kernel answered.
     """
 
     status: list[str]

@@ -8,12 +8,15 @@ from __future__ import annotations
 
 import hashlib
 import io
+import multiprocessing
 import os
 import pickle
+import signal
+import threading
 import zipfile
 from collections.abc import Callable, Iterator, Sequence
 from contextlib import suppress
-from functools import lru_cache
+from dataclasses import fields
 from pathlib import Path
 from typing import Any
 
@@ -25,11 +28,10 @@ from profiler.screen.chunk import Template, screen_chunk
 from profiler.screen.lines import Ints
 from profiler.screen.pairs import Pairs
 from profiler.screen.rows import Rows
-from profiler.screen.tables import needed
 from profiler.study import open_hop_terrain
-from profiler.terrain import Terrain
+from profiler.terrain import Terrain, files_behind
 
-__all__ = ["CHUNK", "chunks_of", "screen"]
+__all__ = ["CHUNK", "chunks_of", "remove_chunks", "screen"]
 
 CHUNK = 2048
 """Pairs of a chunk: a second or less of work that a crash can cost, and enough to share what opening ground costs."""
@@ -69,7 +71,6 @@ def screen(
     folder: Path,
     *,
     workers: int = 1,
-    cluster: str | None = None,
     progress: Progress | None = None,
 ) -> Rows:
     """Screen pairs and give a row for each, in their order.
@@ -85,8 +86,6 @@ def screen(
         taken up; the caller removes it when the results are written.
     workers
         Processes on this machine.
-    cluster
-        Address of a Dask scheduler whose workers do it instead; each must reach the terrain by the same paths.
     progress
         Told after every chunk.
 
@@ -97,7 +96,7 @@ def screen(
     Raises
     ------
     InputError
-        If the folder holds another screening's chunks, or the cluster cannot be reached.
+        If the folder holds another screening's chunks, or a chunk cannot be written.
     """
     chunks = chunks_of(pairs)
     _claim(folder, _signature(template, pairs))
@@ -114,7 +113,7 @@ def screen(
     if progress is not None:
         progress(done, len(pairs))
     jobs = [(number, pairs.take(chunks[number])) for number in left]
-    run = _on_cluster(cluster) if cluster is not None else _in_processes(workers) if workers > 1 else _here
+    run = _in_processes(workers) if workers > 1 else _here
     for number, found in run(template, jobs):
         _keep(folder / f"{number:06d}.npz", found)
         rows.put(chunks[number], found)
@@ -128,21 +127,36 @@ Job = tuple[int, Pairs]
 Runner = Callable[[Template, Sequence[Job]], Iterator[tuple[int, Rows]]]
 
 
-@lru_cache(maxsize=2)
-def _terrain(template: Template) -> Terrain:
-    """Open a template's terrain once a process."""
-    return open_hop_terrain(template.hop)
-
-
-def _one(template: Template, job: Job) -> tuple[int, Rows]:
-    """Screen one chunk, wherever that happens."""
-    return job[0], screen_chunk(template, job[1], _terrain(template))
-
-
 def _here(template: Template, jobs: Sequence[Job]) -> Iterator[tuple[int, Rows]]:
     """Screen chunks one after the other."""
-    for job in jobs:
-        yield _one(template, job)
+    with open_hop_terrain(template.hop) as terrain:
+        for number, pairs in jobs:
+            yield number, screen_chunk(template, pairs, terrain)
+
+
+_OF_WORKER: list[tuple[Template, Terrain]] = []
+"""What a worker process was started for."""
+
+
+def _start_worker(template: Template) -> None:
+    """Open the terrain once, let Ctrl-C end the process without a word, and end it when who started it is gone."""
+    signal.signal(signal.SIGINT, signal.SIG_DFL)
+    threading.Thread(target=_end_with_starter, daemon=True).start()
+    _OF_WORKER.append((template, open_hop_terrain(template.hop)))
+
+
+def _end_with_starter() -> None:
+    """End this process, which would wait for work for ever, when the one that started it was killed."""
+    starter = multiprocessing.parent_process()
+    if starter is not None:
+        starter.join()
+        os._exit(1)
+
+
+def _one(job: Job) -> tuple[int, Rows]:
+    """Screen one chunk in a worker process."""
+    template, terrain = _OF_WORKER[0]
+    return job[0], screen_chunk(template, job[1], terrain)
 
 
 def _in_processes(workers: int) -> Runner:
@@ -150,11 +164,13 @@ def _in_processes(workers: int) -> Runner:
 
     def run(template: Template, jobs: Sequence[Job]) -> Iterator[tuple[int, Rows]]:
         from concurrent.futures import ProcessPoolExecutor, as_completed
-        from multiprocessing import get_context
 
-        pool = ProcessPoolExecutor(min(workers, len(jobs) or 1), mp_context=get_context("spawn"))
+        spawn = multiprocessing.get_context("spawn")
+        pool = ProcessPoolExecutor(
+            min(workers, len(jobs)) or 1, mp_context=spawn, initializer=_start_worker, initargs=(template,)
+        )
         try:
-            for future in as_completed([pool.submit(_one, template, job) for job in jobs]):
+            for future in as_completed([pool.submit(_one, job) for job in jobs]):
                 yield future.result()
         finally:
             pool.shutdown(cancel_futures=True)
@@ -162,42 +178,17 @@ def _in_processes(workers: int) -> Runner:
     return run
 
 
-def _on_cluster(address: str) -> Runner:
-    """Screen chunks on a Dask cluster; one whose worker dies is given to another."""
-    distributed = needed("distributed", f"--cluster {address}")
-
-    def run(template: Template, jobs: Sequence[Job]) -> Iterator[tuple[int, Rows]]:
-        try:
-            client = distributed.Client(address, timeout="20s")
-        except (OSError, ValueError) as error:
-            raise InputError(f"--cluster = {address}: must be a scheduler that answers ({error})") from None
-        with client:
-            shared = client.scatter(template, broadcast=True)
-            futures = [client.submit(_one, shared, job, pure=False, retries=3) for job in jobs]
-            for future in distributed.as_completed(futures):
-                yield future.result()
-
-    return run
-
-
 def _signature(template: Template, pairs: Pairs) -> str:
     """Hash of all that the rows depend on: version, template, pairs, and the state of the terrain's files."""
     digest = hashlib.sha256(f"{__version__} {CHUNK} {template!r}".encode())
-    for path in template.hop.terrain.paths:
-        for file in sorted(path.rglob("*")) if path.is_dir() else [path]:
-            state = file.stat()
-            digest.update(f"{file} {state.st_size} {state.st_mtime_ns}".encode(errors="surrogateescape"))
+    cover = template.hop.cover
+    classes = () if cover.landcover is None else (cover.landcover,)
+    for file in files_behind([*template.hop.terrain.paths, *cover.canopy, *classes]):
+        state = file.stat()
+        digest.update(f"{file} {state.st_size} {state.st_mtime_ns}".encode(errors="surrogateescape"))
     digest.update(pickle.dumps((list(pairs.ids), list(pairs.problem))))
-    for name in (
-        "longitude_a",
-        "latitude_a",
-        "longitude_b",
-        "latitude_b",
-        "antenna_a_m",
-        "antenna_b_m",
-        "frequency_ghz",
-    ):
-        digest.update(np.ascontiguousarray(getattr(pairs, name)).tobytes())
+    for field in fields(pairs)[2:]:
+        digest.update(np.ascontiguousarray(getattr(pairs, field.name)).tobytes())
     return digest.hexdigest()
 
 
@@ -213,6 +204,14 @@ def _claim(folder: Path, signature: str) -> None:
             " name other results"
         )
     _write(signed, signature.encode())
+
+
+def remove_chunks(folder: Path) -> None:
+    """Remove what `screen` kept, once the results are written; what is not its own stays."""
+    for file in [*folder.glob("[0-9]*.npz"), folder / _SIGNED]:
+        file.unlink(missing_ok=True)
+    with suppress(OSError):
+        folder.rmdir()
 
 
 def _write(path: Path, data: bytes) -> None:
@@ -240,7 +239,7 @@ def _keep(path: Path, rows: Rows) -> None:
 def _kept(path: Path, chunk: Ints) -> Rows | None:
     """Read the rows of a chunk that an earlier run finished; None where there are none, or not all of them."""
     try:
-        with np.load(path, allow_pickle=False) as found:
+        with np.load(io.BytesIO(path.read_bytes()), allow_pickle=False) as found:
             columns = [found[name] for name in Rows.__slots__]
     except (OSError, ValueError, KeyError, EOFError, zipfile.BadZipFile):
         return None
