@@ -140,7 +140,7 @@ def run(folder, raster, table, *options, results="rows.csv", code=0):
 def test_every_row_keeps_its_place_and_says_what_is_wrong_with_it(real_terrain, tmp_path):
     with rasterio.open(real_terrain / "canyon_srtm_3arcsec.tif") as source:
         heights, profile = source.read(1), source.profile
-    heights[200:260, 100:300] = profile["nodata"] or -32768
+    heights[330:400, 100:300] = profile["nodata"] or -32768
     with rasterio.open(tmp_path / "void.tif", "w", **{**profile, "nodata": profile["nodata"] or -32768}) as raster:
         raster.write(heights, 1)
     table = (
