@@ -38,6 +38,7 @@ from profiler.plan import plan_heights
 from profiler.screen.chunk import Template, screen_chunk
 from profiler.screen.pairs import Pairs
 from profiler.screen.rows import Rows
+from profiler.screen.run import CHUNK
 from profiler.study import Study, run_study
 from profiler.study.along_path import lay_profile
 from profiler.study.ground import read_ground
@@ -330,7 +331,7 @@ def reading(work: Path, pairs: int) -> Iterator[Row]:
 
 def screening(work: Path, pairs: int) -> Iterator[Row]:
     """Screen pairs of 5 to 40 km over a tile, beside bilinear reads of its cells in memory and a plain script."""
-    count, few = 400, 4
+    count, few = CHUNK, 4
     tile = write_tile(work / "screened.tif", 3601, 10.0, 46.0, 1 / 3600)
     rng = np.random.default_rng(3)
     a, way = rng.uniform((10.4, 46.4), (10.6, 46.6), (count, 2)), rng.uniform(0, 2 * np.pi, count)

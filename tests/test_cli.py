@@ -777,12 +777,13 @@ def test_a_hop_file_that_is_not_there(refused, command):
         (("study", "--nonsense"), "No such option"),
         (
             ("nonsense",),
-            "No such command 'nonsense': must be one of study, heights, losses, reach, compare, terrain, starter",
+            "No such command 'nonsense': must be one of study, heights, losses, reach, screen, compare, terrain,"
+            " starter",
         ),
         (
             ("Study3",),
-            "No such command 'Study3': must be one of study, heights, losses, reach, compare, terrain, starter; did"
-            " you mean study?",
+            "No such command 'Study3': must be one of study, heights, losses, reach, screen, compare, terrain, starter;"
+            " did you mean study?",
         ),
         (("study", *changed(frequency_ghz="-7")), "command line: --frequency-ghz = -7.0: must be 0.01 to 1000 GHz"),
         (("study", *changed(frequency_ghz="nan")), "command line: --frequency-ghz = nan: must be a number"),

@@ -84,7 +84,7 @@ def some_hops(count, seed=3):
 
 
 def test_many_hops_at_once_are_exact_and_know_where():
-    ground, hops = country(), some_hops(60)
+    ground, hops = country(), some_hops(12)
     _, _, _, found = screened(ground, hops)
     for i, hop in enumerate(hops):
         for number, rule in enumerate(RULES):
