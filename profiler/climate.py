@@ -15,6 +15,7 @@ from types import ModuleType
 import numpy as np
 
 from profiler.errors import InputError, MissingExtraError
+from profiler.remarks import Remark
 from profiler.units import gradient_from_k, k_from_gradient
 
 __all__ = ["Climate", "lookup"]
@@ -58,7 +59,7 @@ class Climate:
     rain_source: str
     dn1_source: str
     k_source: str
-    warnings: tuple[str, ...] = ()
+    warnings: tuple[Remark, ...] = ()
 
 
 @contextmanager

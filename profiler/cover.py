@@ -13,6 +13,7 @@ from numpy.typing import ArrayLike
 
 from profiler.errors import InputError, MissingGroundError, under
 from profiler.models import CoverChoice, Obstacle, SampleMethod, frozen_array
+from profiler.remarks import Length, Note, note, percent_text
 from profiler.units import Float
 
 if TYPE_CHECKING:
@@ -29,7 +30,7 @@ class Cover:
     """Cover heights at the points asked for, where they came from, and the files that were read for them."""
 
     cover_m: Float
-    notes: tuple[str, ...]
+    notes: tuple[Note, ...]
     files: tuple[Path, ...] = ()
 
 
@@ -143,26 +144,23 @@ class CoverRasters:
         """
         choice = self.choice
         weight = np.ones(longitude.shape) if weight_m is None else weight_m
-        heights, notes, files = np.full(longitude.shape, np.nan), list[str](), list[Path]()
+        heights, notes, files = np.full(longitude.shape, np.nan), list[Note](), list[Path]()
         if self.canopy is not None:
             heights, read = _canopy_heights(self.canopy, choice, longitude, latitude)
             files += read
             share = 1.0 - weight[np.isnan(heights)].sum() / weight.sum()
             names = ", ".join(path.name for path in choice.canopy)
-            notes.append(f"canopy heights from {names} on {share:.0%} of the path")
+            notes.append(note("cover", "canopy heights from {} on {} of the path", names, percent_text(share)))
         gaps = np.isnan(heights)
         if self.classes is not None and gaps.any():
             heights[gaps], read = _class_heights(self.classes, choice, longitude[gaps], latitude[gaps])
             files += read
             share, name = weight[gaps].sum() / weight.sum(), "" if choice.landcover is None else choice.landcover.name
-            notes.append(f"class heights from {name} on {share:.0%} of the path")
+            notes.append(note("cover", "class heights from {} on {} of the path", name, percent_text(share)))
         if self.canopy is None and self.classes is None:
             heights[:] = 0.0
-            notes.append(
-                "cover from the listed obstacles only"
-                if choice.obstacles
-                else "no cover given: trees and buildings are not in this result"
-            )
+            none = "no cover given: trees and buildings are not in this result"
+            notes.append(note("cover", "cover from the listed obstacles only" if choice.obstacles else none))
         if np.isnan(heights).any():
             row = int(np.argwhere(np.isnan(heights))[0][0])
             raise MissingGroundError(
@@ -170,7 +168,8 @@ class CoverRasters:
                 " cover.landcover with cover.class_heights_m for the rest"
             )
         if choice.obstacles:
-            notes.append("obstacles: " + ", ".join(f"{each.name} {each.height_m:g} m" for each in choice.obstacles))
+            named = [part for each in choice.obstacles for part in (each.name, Length(each.height_m))]
+            notes.append(note("cover", f"obstacles: {', '.join('{} {}' for _ in choice.obstacles)}", *named))
         return Cover(frozen_array(heights), tuple(notes), tuple(files))
 
     def layers(self, strip: Strip) -> tuple[list[Layer], list[Layer], tuple[Path, ...]]:

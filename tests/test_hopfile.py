@@ -204,7 +204,7 @@ def test_terrain_error_in_each_of_its_ways(folder):
     assert "Oksanen" in named.terrain_source
     le90 = confidence("terrain_le90_m = 16\ncorrelation_m = 100\nterrain_source = 'producer'")
     assert le90.terrain_sigma_m == pytest.approx(16 / 1.645, rel=1e-3)  # LE90 = 1.645 σ of a Gaussian
-    local = "; all of it local, as no terrain_offset_sigma_m is given: the cautious way"
+    local = "; all of it local, as no error common to a neighbourhood is given: the cautious way"
     assert le90.terrain_source == "LE90 16 m / 1.645 (producer)" + local
     split = confidence("terrain_sigma_m = 3\nterrain_offset_sigma_m = 2\ncorrelation_m = 100")
     assert (split.terrain_sigma_m, split.terrain_offset_sigma_m) == (3, 2)

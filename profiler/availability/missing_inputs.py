@@ -7,6 +7,7 @@ from numpy.typing import NDArray
 
 from profiler.availability.model import OutageModel
 from profiler.availability.notes import Notes
+from profiler.remarks import db_text, k_text
 from profiler.units import Float
 
 __all__ = ["holds_at_low_k", "obstruction_notes", "reasons_open"]
@@ -25,9 +26,9 @@ def _cut_off(model: OutageModel, margin_db: float) -> tuple[str, ...]:
     if margin_db < 0.0 or holds_at_low_k(model, np.asarray(margin_db)):
         return ()
     return (
-        f"diffraction at the low k of the rules, {model.low_k:.4g}, takes {model.beyond_db:.1f} dB more than the "
-        f"budget counts, over the fade margin of {margin_db:.1f} dB: the hop is cut off then, for a time not counted; "
-        "give k_percentiles that reach it",
+        f"diffraction at the low k of the rules, {k_text(model.low_k or 0.0)}, takes {db_text(model.beyond_db or 0.0)}"
+        f" more than the budget counts, over the fade margin of {db_text(margin_db)}: the hop is cut off then, for a"
+        " time not counted; give statistics of k that reach it",
     )
 
 
@@ -48,7 +49,7 @@ def reasons_open(model: OutageModel, margin_db: float) -> tuple[str, ...]:
     rain: tuple[str, ...] = ()
     if model.rain_fade_001_db is None and model.path.frequency_hz > _RAIN_MATTERS_HZ:
         rain = (
-            "rain is not counted, and above 5 GHz Rec. ITU-R P.530 §2.4 wants it in the design: give rain_rate_mm_h",
+            "rain is not counted, and above 5 GHz Rec. ITU-R P.530 §2.4 wants it in the design: give the rain rate",
         )
     return rain + _cut_off(model, margin_db)
 
@@ -67,7 +68,8 @@ def obstruction_notes(model: OutageModel, margin_db: float) -> Notes:
         return notes
     held = f"obstruction: not cut off at the lowest k given, not exceeded {lowest:g} % of the time"
     if model.beyond_db is not None and model.beyond_db <= margin_db:
-        rest = f"nor at the low k of the rules, {model.low_k:.4g}; below that counted as 0 (Rec. ITU-R P.530-18 §2.2)"
+        low = k_text(model.low_k or 0.0)
+        rest = f"nor at the low k of the rules, {low}; below that counted as 0 (Rec. ITU-R P.530-18 §2.2)"
     else:
         rest = f"below it counted as 0, and it could be up to {lowest:g} %"
     return notes + Notes(assumptions=(f"{held}; {rest}",))

@@ -18,6 +18,7 @@ from profiler.availability.selective import multipath_activity, selective_percen
 from profiler.availability.vigants import improvement_vigants
 from profiler.errors import InputError
 from profiler.models import AvailabilityChoice, KPeriod, MultipathMethod, Signature
+from profiler.remarks import k_text
 
 __all__ = ["OutageModel", "outage_model"]
 
@@ -155,7 +156,7 @@ def _k_notes(choice: AvailabilityChoice, statistics: KStatistics | None, sources
         "Rec. ITU-R P.841-6, global values (Q1 2.85, β 0.13); 1/k is linear in the normal score between percentiles"
     )
     assumptions = [assumption, *statistics.assumptions]
-    text = ", ".join(f"{k:.4g} at {share:g} %" for share, k in choice.k_percentiles)
+    text = ", ".join(f"{k_text(k)} at {share:g} %" for share, k in choice.k_percentiles)
     return Notes((InputUsed("k_percentiles", text, sources.get("k_percentiles", GIVEN)),), tuple(assumptions))
 
 

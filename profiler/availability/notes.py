@@ -4,6 +4,8 @@ from __future__ import annotations
 
 from dataclasses import dataclass
 
+from profiler.remarks import Remark
+
 __all__ = ["InputUsed", "Notes"]
 
 
@@ -43,9 +45,9 @@ class Notes:
     """
 
     inputs: tuple[InputUsed, ...] = ()
-    assumptions: tuple[str, ...] = ()
-    warnings: tuple[str, ...] = ()
-    outside_fit: tuple[str, ...] = ()
+    assumptions: tuple[Remark, ...] = ()
+    warnings: tuple[Remark, ...] = ()
+    outside_fit: tuple[Remark, ...] = ()
 
     def __add__(self, other: Notes) -> Notes:
         """Both sets of notes, in order, without repeats."""

@@ -13,6 +13,7 @@ from profiler.availability.missing_inputs import holds_at_low_k, reasons_open
 from profiler.availability.model import OutageModel
 from profiler.availability.outages import MECHANISMS, Mechanism, Outages, outages_at
 from profiler.models import Objective
+from profiler.remarks import Remark, target_text
 from profiler.units import MINUTES_PER_YEAR, Float
 
 __all__ = ["LARGEST_MARGIN_DB", "Limit", "ObjectiveResult", "TargetResult", "judge", "limit_of"]
@@ -62,7 +63,7 @@ class ObjectiveResult:
 
     targets: tuple[TargetResult, ...]
     met: bool | None
-    undecided: tuple[str, ...]
+    undecided: tuple[Remark, ...]
     limited_by: Limit
     required_margin_db: float | None
     margin_set_by: Limit
@@ -168,8 +169,8 @@ def _judge_target(model: OutageModel, target: _Target, fade_margin_db: float) ->
     reasons = () if target.clear_air_only else reasons_open(model, fade_margin_db)
     if achieved <= target.required < most:
         reasons += (
-            f"{target.name} = {target.required:g}: obstruction below the lowest k given could make it {most:.3g}; give "
-            "k_percentiles for rarer times, or a rule at a lower k",
+            f"objective of {target_text(target.name, target.required)}: obstruction below the lowest k given could make"
+            f" it {target_text(target.name, most)}; give statistics of k for rarer times, or a rule at a lower k",
         )
     required_margin_db, margin_set_by = _required_margin(model, target)
     result = TargetResult(

@@ -11,6 +11,7 @@ from numpy.typing import ArrayLike
 from profiler.checks import not_negative
 from profiler.errors import InputError
 from profiler.models import frozen_array
+from profiler.remarks import Remark
 from profiler.units import Float
 
 __all__ = ["KStatistics", "k_statistics", "obstruction_percent", "unknown_percent"]
@@ -31,7 +32,7 @@ class KStatistics:
 
     percent: Float
     excess_db: Float
-    assumptions: tuple[str, ...] = ()
+    assumptions: tuple[Remark, ...] = ()
 
     def __post_init__(self) -> None:
         for name in ("percent", "excess_db"):
@@ -82,7 +83,7 @@ def k_statistics(
     if not k_percentiles:
         return None
     percent, k = np.array(k_percentiles, dtype=float).T
-    assumptions: tuple[str, ...] = ()
+    assumptions: tuple[Remark, ...] = ()
     if percent[-1] < _MEDIAN_PERCENT:
         closing = max(median_k, float(k[-1]))
         percent, k = np.append(percent, _MEDIAN_PERCENT), np.append(k, closing)

@@ -16,6 +16,7 @@ from profiler.availability.outages import MECHANISMS, Mechanism, Outages, outage
 from profiler.availability.rain_outage import PERCENT_RANGE
 from profiler.checks import finite
 from profiler.models import MultipathMethod, frozen_array
+from profiler.remarks import Remark, db_text, outage_text, target_text
 from profiler.units import MINUTES_PER_YEAR, Float
 
 __all__ = ["Availability", "MultipathEstimate", "OutageCurve", "outage_curve", "predict"]
@@ -36,7 +37,7 @@ class MultipathEstimate:
     chosen: bool
     worst_month_percent: float
     year_percent: float
-    outside_fit: tuple[str, ...]
+    outside_fit: tuple[Remark, ...]
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -79,10 +80,10 @@ class Availability:
     objective: ObjectiveResult | None
     limited_by: Limit
     multipath: tuple[MultipathEstimate, ...]
-    outside_fit: tuple[str, ...]
+    outside_fit: tuple[Remark, ...]
     inputs: tuple[InputUsed, ...]
-    assumptions: tuple[str, ...]
-    warnings: tuple[str, ...]
+    assumptions: tuple[Remark, ...]
+    warnings: tuple[Remark, ...]
 
     @property
     def year_minutes(self) -> float:
@@ -167,7 +168,7 @@ def _spread_notes(rows: tuple[MultipathEstimate, ...]) -> Notes:
     if most.worst_month_percent <= _WIDE_SPREAD * least.worst_month_percent:
         return Notes()
     factor = most.worst_month_percent / least.worst_month_percent
-    ends = " to ".join(f"{row.worst_month_percent:.2g} % ({row.method})" for row in (least, most))
+    ends = " to ".join(f"{outage_text(row.worst_month_percent)} ({row.method})" for row in (least, most))
     line = (
         f"multipath methods differ by a factor of {factor:.2g}, {ends} of the worst month without diversity; "
         f"{rows[0].method} is the one that was chosen, and decides"
@@ -183,20 +184,20 @@ def _rain_notes(year: Outages[Float]) -> Notes:
     law = "Rec. ITU-R P.530-18 §2.4.1; its curve was carried on along the tangent"
     span = f"outside the {rarest:g} to {most:g} % of {law}"
     if float(year.rain) < rarest:
-        return Notes(assumptions=(f"rain outage = {float(year.rain):.2g} % of the year: {span}",))
+        return Notes(assumptions=(f"rain outage {outage_text(float(year.rain))} of the year: {span}",))
     if float(year.rain) > most:
-        return Notes(outside_fit=(f"rain outage = {float(year.rain):.2g} % of the year: {span}",))
+        return Notes(outside_fit=(f"rain outage {outage_text(float(year.rain))} of the year: {span}",))
     return Notes()
 
 
 def _other_notes(fade_margin_db: float, missing: tuple[Mechanism, ...], objective: ObjectiveResult | None) -> Notes:
     """Note no margin, what is not counted, and targets that no margin meets."""
-    warnings = []
+    warnings: list[Remark] = []
     if fade_margin_db < 0.0:
-        warnings.append(f"fade margin = {fade_margin_db:.1f} dB: the hop is below its threshold without any fading")
+        warnings.append(f"fade margin {db_text(fade_margin_db)}: the hop is below its threshold without any fading")
     for target in () if objective is None else objective.targets:
         if target.required_margin_db is None:
-            asked = f"{target.name} = {target.required:g}"
+            asked = f"objective of {target_text(target.name, target.required)}"
             warnings.append(
                 f"{asked}: no fade margin up to {LARGEST_MARGIN_DB:g} dB is sure to meet it; most of what is left, or "
                 f"may be, is {target.margin_set_by}"

@@ -9,6 +9,7 @@ from profiler.checks import finite, positive, within
 from profiler.errors import InputError
 from profiler.models import Terminal
 from profiler.receiver import Line
+from profiler.remarks import Length, Note, note
 from profiler.units import AGREEMENT_DB, Float, db_from_ratio, ratio_from_db, wavelength
 
 __all__ = ["antenna_gain", "dish_diameter", "dish_gain", "far_field_distance", "near_field_warnings"]
@@ -140,8 +141,8 @@ def antenna_gain(terminal: Terminal, frequency_hz: float, end: str) -> Line:
 
     Examples
     --------
-    >>> antenna_gain(Terminal(power_dbm=30, diameter_m=1.8, efficiency=0.55), 6.175e9, "A").note
-    'dish 1.8 m, efficiency 0.55: 10·log10(η·(π·D/λ)²), Friis 1946'
+    >>> str(antenna_gain(Terminal(power_dbm=30, diameter_m=1.8, efficiency=0.55), 6.175e9, "A").note)
+    'dish 1.80 m, efficiency 0.55: 10·log10(η·(π·D/λ)²), Friis 1946'
     >>> antenna_gain(Terminal(power_dbm=30, gain_dbi=38.9, model="6 ft, shielded"), 6.175e9, "A").note
     '6 ft, shielded: as given'
     """
@@ -150,14 +151,15 @@ def antenna_gain(terminal: Terminal, frequency_hz: float, end: str) -> Line:
     if gain is None:
         if diameter is None or efficiency is None:
             raise InputError(f"terminal {end}: no antenna gain: give the gain in dBi, or dish diameter and efficiency")
-        note = f"{model}dish {diameter:g} m, efficiency {efficiency:g}: 10·log10(η·(π·D/λ)²), Friis 1946"
-        return Line(name, float(dish_gain(diameter, efficiency, frequency_hz)), "dBi", note)
+        words = f"{{}}dish {{}}, efficiency {efficiency:g}: 10·log10(η·(π·D/λ)²), Friis 1946"
+        by = note("budget", words, model, Length(diameter, 2))
+        return Line(name, float(dish_gain(diameter, efficiency, frequency_hz)), "dBi", by)
     if diameter is not None:
         _require_possible(gain, diameter, efficiency, frequency_hz, end)
     return Line(name, float(gain), "dBi", f"{model}as given")
 
 
-def near_field_warnings(ends: dict[str, float | None], distance_m: float, frequency_hz: float) -> tuple[str, ...]:
+def near_field_warnings(ends: dict[str, float | None], distance_m: float, frequency_hz: float) -> tuple[Note, ...]:
     """Say for each end (its dish diameter in m, None if unknown) whether the far one is nearer than its far field."""
     warnings = []
     for end, diameter_m in ends.items():
@@ -166,8 +168,14 @@ def near_field_warnings(ends: dict[str, float | None], distance_m: float, freque
         limit_m = float(far_field_distance(diameter_m, frequency_hz))
         if distance_m < limit_m:
             warnings.append(
-                f"distance {distance_m:.6g} m is nearer than the far field of the {diameter_m:.3g} m antenna at {end}: "
-                f"its gain and the free-space loss hold from 2·D²/λ = {limit_m:.0f} m on (IEEE Std 145)"
+                note(
+                    "budget",
+                    f"the distance of {{}} is nearer than the far field of the {{}} antenna at {end}: its gain and the"
+                    " free-space loss hold from 2·D²/λ = {} on (IEEE Std 145)",
+                    Length(distance_m),
+                    Length(diameter_m, 2),
+                    Length(limit_m, 0),
+                )
             )
     return tuple(warnings)
 

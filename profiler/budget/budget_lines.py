@@ -13,6 +13,7 @@ from profiler.budget.antenna import antenna_gain, near_field_warnings
 from profiler.checks import finite, positive
 from profiler.models import Radio, RadioMode, Terminal
 from profiler.receiver import Line, Threshold, mode_threshold
+from profiler.remarks import Remark
 from profiler.units import Float, wavelength
 
 __all__ = [
@@ -83,8 +84,8 @@ class Budget:
 
     a_to_b: Direction
     b_to_a: Direction
-    assumptions: tuple[str, ...]
-    warnings: tuple[str, ...]
+    assumptions: tuple[Remark, ...]
+    warnings: tuple[Remark, ...]
 
     def weaker(self, mode: int = 0) -> tuple[Way, ModeBudget]:
         """Give the direction in which a mode has less level, and so less fade margin, and the mode's row there."""
@@ -153,8 +154,8 @@ def link_budget(
     *,
     gas_db: float,
     diffraction_db: float,
-    gas_note: str = "",
-    diffraction_note: str = "",
+    gas_note: Remark = "",
+    diffraction_note: Remark = "",
     back: tuple[float, float, float] | None = None,
 ) -> Budget:
     """Link budget in both directions for every mode of the radio.
@@ -272,8 +273,8 @@ def path_lines(
     frequency_hz: float,
     gas_db: float,
     diffraction_db: float,
-    gas_note: str = "",
-    diffraction_note: str = "",
+    gas_note: Remark = "",
+    diffraction_note: Remark = "",
 ) -> tuple[Line, Line, Line]:
     """Lines of the path itself: free space, gases, diffraction."""
     return (
@@ -283,7 +284,7 @@ def path_lines(
     )
 
 
-def loss_line(name: str, loss_db: float, note: str) -> Line:
+def loss_line(name: str, loss_db: float, note: Remark) -> Line:
     """Enter a loss as a negative line (0, not −0, for none)."""
     return Line(name, 0.0 - float(finite(f"{name} loss", loss_db, "dB")), "dB", note)
 
@@ -331,10 +332,13 @@ def _row(mode: RadioMode, threshold: Threshold, lines: tuple[Line, ...]) -> Mode
     return ModeBudget(mode.name, lines, total(sent), received_dbm, threshold.lines, threshold.level_dbm, margin_db)
 
 
-def _assumptions(modes: tuple[RadioMode, ...], thresholds: list[Threshold], *, both_alike: bool) -> tuple[str, ...]:
+def _assumptions(modes: tuple[RadioMode, ...], thresholds: list[Threshold], *, both_alike: bool) -> tuple[Remark, ...]:
     """Collect what the budget assumed, each thing once."""
     alike = "the same frequency and path losses in both directions"
-    lines = [AIMED, alike if both_alike else "each direction at its own frequency, with the path losses at it"]
+    lines: list[Remark] = [
+        AIMED,
+        alike if both_alike else "each direction at its own frequency, with the path losses at it",
+    ]
     if len(modes) > 1:
         lines.append(f"level, threshold and fade margin of a direction are those of its first mode, {modes[0].name}")
     for threshold in thresholds:

@@ -13,6 +13,7 @@ from profiler.checks import finite
 from profiler.errors import InputError
 from profiler.models import Radio, RadioMode, Terminal
 from profiler.receiver import Line, Threshold, mode_threshold
+from profiler.remarks import Remark
 from profiler.units import wavelength
 
 __all__ = ["InverseAnswer", "least_gain", "least_power", "longest_free_space_range", "smallest_dish"]
@@ -33,8 +34,8 @@ class InverseAnswer:
     solved_for: str
     lines: tuple[Line, ...]
     threshold_lines: tuple[Line, ...]
-    assumptions: tuple[str, ...]
-    warnings: tuple[str, ...]
+    assumptions: tuple[Remark, ...]
+    warnings: tuple[Remark, ...]
 
 
 def longest_free_space_range(

@@ -12,6 +12,7 @@ if TYPE_CHECKING:
     from rich.table import Table
 
     from profiler.receiver import Line
+    from profiler.words import Scale
 
 __all__ = ["lines_table", "seen_from"]
 
@@ -37,14 +38,14 @@ def seen_from(name: str, way: str) -> str:
     return name
 
 
-def lines_table(title: str, lines: Mapping[str, Sequence[Line]]) -> Table:
+def lines_table(title: str, lines: Mapping[str, Sequence[Line]], scale: Scale) -> Table:
     """Tabulate lines by direction, such as "A to B": a row for each name by `seen_from`, a dash for none."""
     table = compact_table(title, *lines, "unit", "by", words=("unit",), wraps="by")
     named = {way: {seen_from(line.name, way): line for line in each} for way, each in lines.items()}
     for name in _in_order(named.values()):
         row = {way: each[name] for way, each in named.items() if name in each}
-        first, notes = next(iter(row.values())), {line.note: way for way, line in row.items()}
-        note = "; ".join(f"{way} {note}" for note, way in notes.items()) if len(notes) > 1 else first.note
+        first, notes = next(iter(row.values())), {scale.text(line.note): way for way, line in row.items()}
+        note = "; ".join(f"{way} {note}" for note, way in notes.items()) if len(notes) > 1 else next(iter(notes))
         table.add_row(name, *(_value(row.get(way)) for way in named), first.unit, note)
     return table
 

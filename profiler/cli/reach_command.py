@@ -166,11 +166,11 @@ def _show(
     for name, found in questions.items():
         for alike in _alike(found):
             say(screen, "")
-            show_table(screen, _sum_table(name, alike))
+            show_table(screen, _sum_table(name, alike, scale))
     threshold = each[0][1].threshold_lines  # of the mode, so the same for every answer
     if len(threshold) > 1:
         say(screen, "")
-        show_table(screen, _threshold_table(threshold))
+        show_table(screen, _threshold_table(threshold, scale))
     show_notes(screen, "Warnings", warnings, "yellow")
     show_notes(
         screen, "Assumed", tuple(dict.fromkeys(scale.text(note) for _, answer in each for note in answer.assumptions))
@@ -189,9 +189,9 @@ def _alike(found: dict[str, InverseAnswer]) -> list[dict[str, InverseAnswer]]:
     return [found] if names.count(names[0]) == len(names) else [{way: answer} for way, answer in found.items()]
 
 
-def _sum_table(name: str, found: dict[str, InverseAnswer]) -> Table:
+def _sum_table(name: str, found: dict[str, InverseAnswer], scale: Scale) -> Table:
     """Tabulate the terms of an answer, and below them what they add up to."""
-    table = lines_table(name, {way: answer.lines for way, answer in found.items()})
+    table = lines_table(name, {way: answer.lines for way, answer in found.items()}, scale)
     way, answer = next(iter(found.items()))
     sums = (minus(f"{math.fsum(line.value for line in each.lines):.2f}") for each in found.values())
     unit = "dBi" if "gain" in answer.solved_for else "dBm" if answer.unit == "dBm" else "dB"
@@ -200,8 +200,8 @@ def _sum_table(name: str, found: dict[str, InverseAnswer]) -> Table:
     return table
 
 
-def _threshold_table(lines: Sequence[Line]) -> Table:
-    table = lines_table("threshold", {"both ways": lines})
+def _threshold_table(lines: Sequence[Line], scale: Scale) -> Table:
+    table = lines_table("threshold", {"both ways": lines}, scale)
     table.add_section()
     table.add_row("threshold", minus(f"{math.fsum(line.value for line in lines):.2f}"), "dBm", "", style="bold")
     return table

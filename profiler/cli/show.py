@@ -101,7 +101,7 @@ def _show_tables(screen: Console, study: Study, scale: Scale) -> None:
     _show_reflections(screen, study, scale)
     if study.budget is not None:
         say(screen, "")
-        show_table(screen, _budget(study))
+        show_table(screen, _budget(study, scale))
     if study.outage.availability is not None:
         _show_availability(screen, study)
     if study.confidence is not None:
@@ -237,12 +237,12 @@ def _show_reflections(screen: Console, study: Study, scale: Scale) -> None:
     say(screen, "\n".join(lines), hang=4)
 
 
-def _budget(study: Study) -> Table:
+def _budget(study: Study, scale: Scale) -> Table:
     """Tabulate the budget of the first mode line by line both ways, then a row for every further mode."""
     assert study.budget is not None
     there, back = study.budget.a_to_b, study.budget.b_to_a
     lines = {"A to B": there.modes[0].lines, "B to A": back.modes[0].lines}
-    table = lines_table(f"budget, mode {there.modes[0].name}", lines)
+    table = lines_table(f"budget, mode {there.modes[0].name}", lines, scale)
     table.add_section()
     for name, part in (("received level", "received_dbm"), ("threshold", "threshold_dbm")):
         table.add_row(name, *(_number(getattr(way, part)) for way in (there, back)), "dBm", "")

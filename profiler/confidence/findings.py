@@ -6,6 +6,7 @@ from dataclasses import dataclass
 from typing import Literal
 
 from profiler.models import Rule
+from profiler.remarks import Note
 from profiler.units import Float
 
 __all__ = ["Band", "Chance", "Confidence", "DoubtShares", "RuleConfidence", "SureHeights", "SurveyPlace"]
@@ -107,4 +108,4 @@ class Confidence:
     survey: tuple[SurveyPlace, ...]
     draws: int
     seed: int
-    method: tuple[str, ...]
+    method: tuple[Note, ...]

@@ -12,13 +12,14 @@ import numpy as np
 from numpy.typing import ArrayLike
 
 from profiler.checks import positive
+from profiler.diffraction.doubts import cascaded_doubts, double_doubts, rounded_doubts
 from profiler.diffraction.edges import EdgeLosses
-from profiler.diffraction.formulas import MOST_ROUND, knife_edge_loss
 from profiler.diffraction.general import bullington, delta_bullington
-from profiler.diffraction.obstacles import DoubleLosses, cascaded_knife_edges, double_edge, single_knife_edge
+from profiler.diffraction.obstacles import cascaded_knife_edges, double_edge, single_knife_edge
 from profiler.diffraction.rounded import RoundedLosses, rounded_obstacle
 from profiler.errors import InputError
 from profiler.models import DiffractionMethod, Polarization
+from profiler.remarks import Length, Remark, note, prefixed
 from profiler.units import K_MEDIAN, MEAN_EARTH_RADIUS_M, Float
 
 __all__ = [
@@ -70,7 +71,7 @@ class DiffractionLoss:
     loss_db: float
     edges: tuple[Edge, ...]
     """In the order of the path; empty where nothing is near enough to the ray to cost anything."""
-    warnings: tuple[str, ...]
+    warnings: tuple[Remark, ...]
     top: RoundTop | None = None
     """Of the rounded obstacle alone, where it costs anything."""
 
@@ -111,19 +112,20 @@ class Method:
     frequency_source: str
     distance_m: tuple[float, float] | None = None
     distance_source: str = ""
-    doubts: Callable[[Inputs, Any], list[str]] | None = None
+    doubts: Callable[[Inputs, Any], list[Remark]] | None = None
     """Why a profile is not what the method was made for; of one effective radius, with the edges found over it."""
 
-    def range_warnings(self, distance_m: float, frequency_hz: float) -> list[str]:
+    def range_warnings(self, distance_m: float, frequency_hz: float) -> list[Remark]:
         """One line for each of frequency and distance that is outside the range stated for the method."""
-        lines = []
+        lines: list[Remark] = []
         low, high = self.frequency_hz
         if not low <= frequency_hz <= high:
             stated = f"{low / 1e9:g} GHz and above" if np.isinf(high) else f"{low / 1e9:g} to {high / 1e9:g} GHz"
             lines.append(f"frequency {frequency_hz / 1e9:g} GHz is outside {stated} ({self.frequency_source})")
         if self.distance_m is not None and not self.distance_m[0] <= distance_m <= self.distance_m[1]:
-            stated = f"{self.distance_m[0] / 1000:g} to {self.distance_m[1] / 1000:g} km"
-            lines.append(f"distance {distance_m / 1000:g} km is outside {stated} ({self.distance_source})")
+            lengths = (Length(each_m, far=True) for each_m in (distance_m, *self.distance_m))
+            words = f"distance {{}} is outside {{}} to {{}} ({self.distance_source})"
+            lines.append(note("diffraction", words, *lengths))
         return lines
 
 
@@ -151,84 +153,6 @@ def _over_edges(method: Callable[..., EdgeLosses]) -> Callable[[Inputs], Found]:
     return run
 
 
-def _rounded_doubts(inputs: Inputs, found: RoundedLosses) -> list[str]:
-    lines: list[str] = []
-    if not found.loss_db > 0:
-        return lines
-    if np.isnan(found.radius_m):
-        lines.append(
-            "the top of the main obstacle is not convex, so no radius fits it: the loss is that of a knife edge"
-        )
-    if found.narrow:
-        knife_db = float(single_knife_edge(*inputs.path).loss_db)
-        lines.append(
-            f"the top is narrower than the {(found.top_m[1] - found.top_m[0]).item():.0f} m over which its radius is "
-            f"fitted, as cells of {inputs.cell_m:.0f} m do not show it: a sharp edge would lose {knife_db:.1f} dB"
-        )
-    if found.roundness > MOST_ROUND:
-        lines.append(
-            f"roundness m = {float(found.roundness):.1f} is above {MOST_ROUND:g}, where the fit of "
-            "Rec. ITU-R P.526-15 §4.2 turns over: take spherical-earth or delta-bullington"
-        )
-    first, last = (float(x) / 1000 for x in found.top_m)
-    if found.arc_m / 1000 > last - first:
-        lines.append(
-            f"the top from {first:.3f} to {last:.3f} km is too short for the radius that fits it, which would bend the "
-            f"ray over {float(found.arc_m) / 1000:.3f} km: the most that has room is taken, and the loss is too high"
-        )
-    if not found.isolated:
-        lines.append(
-            f"more than one obstacle: the horizon rays do not both touch the top from {first:.3f} to {last:.3f} km"
-        )
-    return lines
-
-
-_LEFT_OUT_DB = 3.0
-"""Loss of an edge left out that is worth a line."""
-
-_FADED_DB = 7.0
-"""The same of an edge that counts in part: every hill has ground beside its top that would cost 6 dB, J(0)."""
-
-
-def _faded(found: EdgeLosses) -> list[str]:
-    """Say which edges of a cascade count in part only, where that makes a difference."""
-    gap_db = knife_edge_loss(found.nu) - found.edge_loss_db
-    rows = zip(found.distance_m.tolist(), gap_db.tolist(), strict=True)
-    return [
-        f"the edge {at / 1000:.3f} km from A stands near the principal one and counts in part: in full it would cost "
-        f"{gap:.1f} dB more. That an edge counts in full from 500 m, or a tenth of the way to the nearer end, is this "
-        "project's own rule"
-        for at, gap in rows
-        if gap > _FADED_DB
-    ]
-
-
-def _double_doubts(inputs: Inputs, found: DoubleLosses) -> list[str]:
-    cascade = cascaded_knife_edges(*inputs.path)
-    lines = _faded(cascade)
-    for at, loss_db in zip(cascade.distance_m.tolist(), cascade.edge_loss_db.tolist(), strict=True):
-        if loss_db > _LEFT_OUT_DB and at not in found.distance_m:
-            lines.append(f"a third edge, {at / 1000:.3f} km from A, is left out: cascaded-edges counts it")
-    if found.floor_db > 0:
-        published_db = float(found.loss_db - found.floor_db)
-        lines.append(
-            f"Rec. ITU-R P.526-15 §4.3 gives {published_db:.2f} dB, less than the greater edge alone loses, which is "
-            "taken instead"
-        )
-    return lines
-
-
-def _cascaded_doubts(inputs: Inputs, found: EdgeLosses) -> list[str]:
-    worst, kept = single_knife_edge(*inputs.path), np.nan_to_num(found.nu[1], nan=-np.inf)
-    if not worst.nu[0] > kept:
-        return _faded(found)
-    return [
-        *_faded(found),
-        f"the edges are those of k = 4/3, as Rec. ITU-R P.526-15 §4.4.2 recommends; at this k the ground "
-        f"{float(worst.distance_m[0]) / 1000:.3f} km from A obstructs more, ν = {float(worst.nu[0]):.2f}",
-    ]
-
-
 _EDGES_RANGE = ((30e6, float("inf")), "Rec. ITU-R P.526-15 §4: mainly above 30 MHz")
 _GENERAL_RANGE = (
     (30e6, 50e9),
@@ -254,11 +178,11 @@ _ALL = (
         f"{_P526} §4.2",
         _rounded,
         *_EDGES_RANGE,
-        doubts=_rounded_doubts,
+        doubts=rounded_doubts,
     ),
-    Method("double-edge", "Two isolated edges", f"{_P526} §4.3", _double, *_EDGES_RANGE, doubts=_double_doubts),
+    Method("double-edge", "Two isolated edges", f"{_P526} §4.3", _double, *_EDGES_RANGE, doubts=double_doubts),
     Method(
-        "cascaded-edges", "Cascaded knife edges", f"{_P526} §4.4.2", _cascaded, *_EDGES_RANGE, doubts=_cascaded_doubts
+        "cascaded-edges", "Cascaded knife edges", f"{_P526} §4.4.2", _cascaded, *_EDGES_RANGE, doubts=cascaded_doubts
     ),
 )
 
@@ -360,10 +284,10 @@ def diffract_over_k(
     losses = []
     for i, factor in enumerate(k):
         edges = None if found is None else found.of_hop(i)
-        doubts: list[str] = []
+        doubts: list[Remark] = []
         if edges is not None and chosen.doubts is not None:
             doubts = chosen.doubts(replace(inputs, radius_m=inputs.radius_m[i]), edges)
-        warnings = tuple(f"{method}: {line}" for line in (*ranges, *doubts))
+        warnings = tuple(prefixed(method, line) for line in (*ranges, *doubts))
         losses.append(
             DiffractionLoss(float(factor), chosen.name, float(loss_db[i]), _edges(edges), warnings, _top(edges))
         )

@@ -12,6 +12,7 @@ from profiler.study.next_step import Survey
 from profiler.words import (
     Scale,
     chance_words,
+    input_words,
     outage_sentence,
     place_text,
     rule_text,
@@ -181,7 +182,7 @@ def link_notes(study: Study, scale: Scale) -> list[tuple[str, list[str]]]:
     if loss is not None:
         path.insert(0, f"diffraction {db_text(loss.loss_db)} by {loss.method} at k = {k_text(loss.k)}")
     inputs = [] if study.outage.availability is None else study.outage.availability.inputs
-    numbers = [each.line for each in inputs]
+    numbers = [input_words(each, scale) for each in inputs]
     blocks = _notes(study, [*path, *map(scale.text, link_assumptions(study))], scale)
     return [("Numbers used", numbers), *blocks] if numbers else blocks
 

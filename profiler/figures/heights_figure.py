@@ -75,6 +75,8 @@ def frontier_figure(plan: HeightsPlan, *, feet: bool = False) -> Figure:
     --------
     >>> size = Path("heights.png").write_bytes(render(frontier_figure(plan_heights(study)), ".png"))  # doctest: +SKIP
     """
+    from profiler.heights import NoPair
+
     scale, hop = Scale(feet), plan.study.hop
     marks = _marks(plan, scale)
     stretches = plan.stretches or plan.beyond
@@ -91,7 +93,9 @@ def frontier_figure(plan: HeightsPlan, *, feet: bool = False) -> Figure:
         top = head(
             page,
             plan.outcome,
-            chance_words(plan.answer.chance, plan.answer.asked_chance),
+            "no pair of heights does"
+            if isinstance(plan.answer.pair, NoPair)
+            else chance_words(plan.answer.chance, plan.answer.asked_chance),
             sentence=pair_words(plan, scale),
             name=hop.name,
             facts=hop_facts(hop, plan.study.line.distance_m, scale),

@@ -11,6 +11,7 @@ from profiler.errors import InputError
 from profiler.geometry import ROUNDING_M
 from profiler.heights.region import ClearingRegion, least_a_for, least_b_for
 from profiler.models import Obstruction, Rule
+from profiler.remarks import Length, Note, note
 from profiler.units import wavelength
 
 __all__ = ["DiversityEnd", "check_diversity", "lower_rules"]
@@ -66,35 +67,40 @@ class DiversityEnd:
         return self.spacing_wavelengths >= _FEWEST_WAVELENGTHS
 
     @property
-    def notes(self) -> tuple[str, ...]:
+    def notes(self) -> tuple[Note, ...]:
         """What is wrong or worth knowing, one line each; empty when nothing is."""
         lines = []
+        lower = Length(self.lower_m)
         if not self.clears:
-            lines.append(f"{self.end}: the lower antenna at {self.lower_m:.2f} m {self._remedy()}")
+            words, *lengths_m = self._remedy()
+            lengths = map(Length, lengths_m)
+            lines.append(note("diversity", f"{self.end}: the lower antenna at {{}} {words}", lower, *lengths))
         if self.clears_more_than_needed:
-            lines.append(
-                f"{self.end}: the lower antenna at {self.lower_m:.2f} m clears more than {self.fractions[1]:g} F1 "
-                f"({self.full_m:.2f} m would do), so the ground shields it less from the reflected ray"
+            words = (
+                f"{self.end}: the lower antenna at {{}} clears more than {self.fractions[1]:g} F1 ({{}} would do), so"
+                " the ground shields it less from the reflected ray"
             )
+            lines.append(note("diversity", words, lower, Length(self.full_m)))
         if not self.spacing_in_data:
-            lines.append(
-                f"{self.end}: a spacing of {self.spacing_m:.2f} m is outside {_SPACING_M[0]:g} to {_SPACING_M[1]:g} m, "
-                "the data under P.530's improvement factor"
-            )
+            words = f"{self.end}: a spacing of {{}} is outside {{}} to {{}}, the data under P.530's improvement factor"
+            lines.append(note("diversity", words, *map(Length, (self.spacing_m, *_SPACING_M))))
         if not self.spacing_wide_enough:
-            lines.append(
-                f"{self.end}: a spacing of {self.spacing_m:.2f} m is {self.spacing_wavelengths:.0f} wavelengths; "
-                f"{_FEWEST_WAVELENGTHS:.0f} or more are common practice"
+            words = (
+                f"{self.end}: a spacing of {{}} is {self.spacing_wavelengths:.0f} wavelengths;"
+                f" {_FEWEST_WAVELENGTHS:.0f} or more are common practice"
             )
+            lines.append(note("diversity", words, Length(self.spacing_m)))
         return tuple(lines)
 
-    def _remedy(self) -> str:
-        """Say what a lower antenna that is too low needs."""
+    def _remedy(self) -> tuple[str, *tuple[float, ...]]:
+        """Say what a lower antenna that is too low needs: the words, and the lengths in them, metres."""
         if math.isinf(self.least_m):
-            return "cannot be helped by height: the far main antenna stands too low at its own site; raise that first"
-        raising = f"needs {self.least_m:.2f} m: raise the main antenna to {self.main_for_spacing_m:.2f} m"
-        closer = self.main_m - self.least_m
-        return f"{raising}, or space them by {closer:.2f} m" if closer > 0 else raising
+            return (
+                "cannot be helped by height: the far main antenna stands too low at its own site; raise that first",
+            )
+        raising, needed_m = "needs {}: raise the main antenna to {}", (self.least_m, self.main_for_spacing_m)
+        closer_m = self.main_m - self.least_m
+        return (f"{raising}, or space them by {{}}", *needed_m, closer_m) if closer_m > 0 else (raising, *needed_m)
 
 
 def lower_rules(obstruction: Obstruction, median_k: float) -> tuple[Rule, Rule]:

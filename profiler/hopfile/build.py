@@ -14,6 +14,7 @@ from profiler.models import ConfidenceChoice, Hop, Obstacle, Override, Rule, Sit
 from profiler.models.rules import RulesTable
 from profiler.models.stated import ways
 from profiler.path import geodesic
+from profiler.remarks import k_text
 from profiler.terrain_error import TERRAIN_ERRORS, sigma_from_le90, sigma_from_rmse, split_le90
 from profiler.units import K_MEDIAN
 
@@ -147,7 +148,9 @@ def _preset_notes(name: str, rules: tuple[Rule, ...], sites: list[Site]) -> list
     """Spell out a preset: its rules, its source, and whether the path is of the length it is for."""
     preset = PRESETS[name]
     spelled = "; ".join(
-        f"{rule.fresnel_fraction:g} F1" + (f" + {rule.margin_m:g} m" if rule.margin_m else "") + f" at k = {rule.k:.4g}"
+        f"{rule.fresnel_fraction:g} F1"
+        + (f" + {rule.margin_m:g} m" if rule.margin_m else "")
+        + f" at k = {k_text(rule.k)}"
         for rule in rules
     )
     notes = [f"rules of preset {name} ({preset.label}): {spelled}; {preset.source}"]
@@ -183,5 +186,5 @@ def _confidence(table: Table) -> ConfidenceChoice:
         sigma_m = values["terrain_sigma_m"]
         source = f"sigma {sigma_m:g} m ({stated})"
     if "terrain_offset_sigma_m" not in values:
-        source += "; all of it local, as no terrain_offset_sigma_m is given: the cautious way"
+        source += "; all of it local, as no error common to a neighbourhood is given: the cautious way"
     return ConfidenceChoice(**values | {"terrain_sigma_m": sigma_m, "terrain_source": source})

@@ -28,7 +28,7 @@ from profiler.heights import (
     least_surplus_drawn,
 )
 from profiler.plan.link_limits import Excess
-from profiler.remarks import Length, chance_text, note
+from profiler.remarks import Length, Remark, chance_text, note
 from profiler.study.requirements import spacing_of
 from profiler.study.result import Study
 from profiler.units import Float
@@ -58,7 +58,7 @@ class Answer:
 
     pair: Choice | NoPair
     asked: tuple[str, ...]
-    unjudged: tuple[str, ...]
+    unjudged: tuple[Remark, ...]
     asked_chance: float | None
     chance: Chance | None
     by_trial: bool = False
@@ -108,7 +108,7 @@ def find_answer(
     clearing: Choice | NoPair,
     limits: Mapping[str, Excess],
     *,
-    unjudged: tuple[str, ...] = (),
+    unjudged: tuple[Remark, ...] = (),
     drawn: DrawnRegions | None = None,
     sure: float | None = None,
 ) -> Answer:

@@ -9,6 +9,7 @@ from functools import cache, partial
 
 from profiler.heights import LimitHeights, heights_within, loss_excess
 from profiler.models import Hop
+from profiler.remarks import Remark
 from profiler.study.link import Link, air_along, link, losses_at
 from profiler.study.outage import ModeOutage
 from profiler.study.requirements import lower_antennas, spacing_of
@@ -30,7 +31,7 @@ class LinkLimits:
 
     margin: Excess | None
     objective: Excess | None
-    unjudged: tuple[str, ...] = ()
+    unjudged: tuple[Remark, ...] = ()
 
 
 def link_limits(study: Study) -> LinkLimits:
@@ -114,7 +115,7 @@ def _missing_db(mode: ModeOutage) -> float:
     return missing_db if mode.met is True or missing_db > 0 else math.inf
 
 
-def _reasons_open(mode: ModeOutage) -> tuple[str, ...]:
+def _reasons_open(mode: ModeOutage) -> tuple[Remark, ...]:
     """Say what leaves a mode's objective open although its fade margin is the one it takes: no height mends that."""
     objective = mode.objective
     if objective is None or objective.met is not None or objective.required_margin_db is None:

@@ -10,6 +10,7 @@ from profiler.errors import InputError, under
 from profiler.models import RadioMode
 from profiler.receiver.modulation import Modulation, parse_modulation, required_eb_n0_db
 from profiler.receiver.noise import NOISE_REFERENCE_K, noise_density_dbm_hz
+from profiler.remarks import Remark
 from profiler.units import AGREEMENT_DB
 
 __all__ = ["Line", "Threshold", "mode_threshold"]
@@ -22,7 +23,7 @@ class Line:
     name: str
     value: float
     unit: Literal["dBm", "dBi", "dB", "dBm/Hz", "dBHz"]
-    note: str = ""
+    note: Remark = ""
 
 
 @dataclass(frozen=True, slots=True)
@@ -31,7 +32,7 @@ class Threshold:
 
     level_dbm: float | None
     lines: tuple[Line, ...]
-    assumptions: tuple[str, ...]
+    assumptions: tuple[Remark, ...]
 
 
 def mode_threshold(mode: RadioMode) -> Threshold:

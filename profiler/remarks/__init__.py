@@ -1,6 +1,6 @@
 """What stages remark on their results, and how numbers are written in it: one notation for each kind of number."""
 
-from profiler.remarks.note import Length, Note, Topic, note
+from profiler.remarks.note import Length, Note, Remark, Topic, note, prefixed
 from profiler.remarks.numerals import (
     chance_text,
     db_text,
@@ -12,6 +12,7 @@ from profiler.remarks.numerals import (
     position_text,
     ratio_text,
     superscript,
+    target_text,
     time_text,
     without_signs,
 )
@@ -19,6 +20,7 @@ from profiler.remarks.numerals import (
 __all__ = [
     "Length",
     "Note",
+    "Remark",
     "Topic",
     "chance_text",
     "db_text",
@@ -29,8 +31,10 @@ __all__ = [
     "outage_text",
     "percent_text",
     "position_text",
+    "prefixed",
     "ratio_text",
     "superscript",
+    "target_text",
     "time_text",
     "without_signs",
 ]

@@ -6,12 +6,12 @@ A stage says what it found and never in which unit the reader will see it: `prof
 from __future__ import annotations
 
 from dataclasses import dataclass
-from typing import Literal
+from typing import Literal, TypeAlias
 
 from profiler.remarks.numerals import minus
 from profiler.units import FOOT_M, STATUTE_MILE_M
 
-__all__ = ["Length", "Note", "Topic", "note"]
+__all__ = ["Length", "Note", "Remark", "Topic", "note", "prefixed"]
 
 Topic = Literal[
     "site",
@@ -85,6 +85,10 @@ class Note:
         return self.text()
 
 
+Remark: TypeAlias = Note | str
+"""A remark with its lengths as numbers, or one that has none and is plain text."""
+
+
 def note(topic: Topic, words: str, *values: str | Length) -> Note:
     """Make a remark; each ``{}`` in its words stands for one of the values.
 
@@ -101,3 +105,14 @@ def note(topic: Topic, words: str, *values: str | Length) -> Note:
     for value, after in zip(values, others, strict=True):
         parts += [value, after]
     return Note(topic, tuple(part for part in parts if part != ""))
+
+
+def prefixed(name: str, remark: Remark) -> Remark:
+    """Put what a remark is about before it.
+
+    Examples
+    --------
+    >>> str(prefixed("knife-edge", note("diffraction", "the top is {} wide", Length(40.0, 0))))
+    'knife-edge: the top is 40 m wide'
+    """
+    return f"{name}: {remark}" if isinstance(remark, str) else Note(remark.topic, (f"{name}: ", *remark.parts))

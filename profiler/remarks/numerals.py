@@ -19,6 +19,7 @@ __all__ = [
     "position_text",
     "ratio_text",
     "superscript",
+    "target_text",
     "time_text",
     "without_signs",
 ]
@@ -160,6 +161,28 @@ def without_signs(text: str) -> str:
     powers = str.maketrans("⁻⁰¹²³⁴⁵⁶⁷⁸⁹", "-0123456789")
     plain = re.sub("·10([⁻⁰¹²³⁴⁵⁶⁷⁸⁹]+)", lambda found: f"e{found[1].translate(powers)}", text)
     return plain.replace("−", "-")
+
+
+_COUNTED = {
+    "worst_month_percent": "of the worst month",
+    "year_percent": "of the year",
+    "severely_errored_seconds_ratio": "of the seconds of the worst month severely errored",
+    "errored_seconds_ratio": "of the seconds of the worst month errored",
+}
+
+
+def target_text(target: str, amount: float) -> str:
+    """Write an outage in the measure of a target of an objective, by the target's name.
+
+    Examples
+    --------
+    >>> target_text("year_percent", 0.01), target_text("minutes_per_year", 53.0)
+    ('0.01 % of the year', '53 min a year')
+    """
+    if target == "minutes_per_year":
+        return time_text(amount)
+    written = outage_text(amount) if target.endswith("percent") else ratio_text(amount)
+    return f"{written} {_COUNTED[target]}"
 
 
 def position_text(longitude: float, latitude: float) -> str:

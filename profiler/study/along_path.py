@@ -18,6 +18,7 @@ from profiler.errors import InputError, under
 from profiler.geometry import Parabolas, PathZone, inside_places, least_surplus, zone_places
 from profiler.models import Hop, TerrainChoice
 from profiler.path import PathLine, equal_steps, geodesic, points_along, trace, with_points
+from profiler.remarks import Length, Note, Remark, note
 from profiler.study.terrain_notes import disagreements, sea_notes
 from profiler.terrain import SourceUse, Terrain
 from profiler.units import MEAN_EARTH_RADIUS_M, Float, wavelength
@@ -52,11 +53,11 @@ class AlongPath:
     settled_m: tuple[float, float]
     sources: tuple[SourceUse, ...]
     vertical_datum: str | None
-    notes: tuple[str, ...]
-    cover_notes: tuple[str, ...]
+    notes: tuple[Remark, ...]
+    cover_notes: tuple[Remark, ...]
     cover_files: tuple[Path, ...]
     sea_share: float
-    warnings: tuple[str, ...]
+    warnings: tuple[Remark, ...]
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -95,7 +96,7 @@ def lay_profile(hop: Hop, terrain: Terrain, cover: CoverRasters) -> AlongPath:
     longitude, latitude, _ = points_along(*start, at_m)
     samples = terrain.sample(longitude, latitude, compare=True)
     ground_m, weight_m = np.array(samples.ground_m), np.broadcast_to(length_m[:, None], at_m.shape)
-    notes = (*samples.notes, *sea_notes(samples.sea, at_m))
+    notes: tuple[Remark, ...] = (*samples.notes, *sea_notes(samples.sea, at_m))
     if hop.terrain.method == "highest":
         ends = [0, -1]
         ground_m[ends] = terrain.sample(longitude[ends], latitude[ends], method="bilinear").ground_m
@@ -152,10 +153,11 @@ def standing_heights(hop: Hop, length_m: float, distance_m: Float, cover_m: Floa
     return heights
 
 
-def clearing_notes(hop: Hop) -> tuple[str, ...]:
+def clearing_notes(hop: Hop) -> tuple[Note, ...]:
     """Say where the hop file has the cover taken out."""
     cleared = [site for site in (hop.site_a, hop.site_b) if site.clearing_m > 0.0]
-    return tuple(f"no cover within {site.clearing_m:g} m of {site.name}, as the hop file says" for site in cleared)
+    words = "no cover within {} of {}, as the hop file says"
+    return tuple(note("cover", words, Length(site.clearing_m), site.name) for site in cleared)
 
 
 def _coarse(hop: Hop, terrain: Terrain) -> tuple[PathLine, float, float]:

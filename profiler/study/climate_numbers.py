@@ -8,6 +8,7 @@ from typing import Any
 from profiler.errors import InputError, under
 from profiler.models import AvailabilityChoice, Hop
 from profiler.path import midpoint
+from profiler.remarks import Remark
 from profiler.units import K_MEDIAN, Float
 
 __all__ = ["ClimateUse", "climate_numbers"]
@@ -27,8 +28,8 @@ class ClimateUse:
     median_k: float
     roughness_points: tuple[Float, Float] | None
     gap: str | None = None
-    assumptions: tuple[str, ...] = ()
-    warnings: tuple[str, ...] = ()
+    assumptions: tuple[Remark, ...] = ()
+    warnings: tuple[Remark, ...] = ()
 
     @property
     def k_percentiles(self) -> tuple[tuple[float, float], ...]:

@@ -11,6 +11,7 @@ from profiler.atmosphere import Atmosphere, gas_along_ray, gas_warnings
 from profiler.diffraction import DiffractionLoss, diffract_over_k, losses_over_k
 from profiler.errors import under
 from profiler.models import AvailabilityChoice, DiffractionMethod, Hop, Profile
+from profiler.remarks import Length, Note, Remark, k_text, note, prefixed
 from profiler.study.climate_numbers import ClimateUse
 from profiler.study.outage import OutageResult, PathState, predict_outage
 from profiler.units import Float
@@ -27,8 +28,8 @@ class Air:
 
     atmosphere: Atmosphere
     gas_db: float
-    source: str
-    warnings: tuple[str, ...]
+    source: Note
+    warnings: tuple[Remark, ...]
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -164,14 +165,13 @@ def air_along(hop: Hop, profile: Profile, median_k: float, centre_a_m: float, ce
     fields = {"pressure": given.pressure_hpa, "temperature": given.temperature_k, "vapour": given.vapour_g_m3}
     reference = ", ".join(name for name, value in fields.items() if value is None)
     measured = ", ".join(name for name, value in fields.items() if value is not None)
-    parts = []
+    parts, heights_m = [], [found.lowest_m, found.highest_m]
     if measured:
-        parts.append(
-            f"{measured} as given for the ray's mean height of {found.mean_m:.0f} m, carried along its heights"
-        )
+        parts.append(f"{measured} as given for the ray's mean height of {{}}, carried along its heights")
+        heights_m.insert(0, found.mean_m)
     if reference:
         parts.append(f"{reference}: Rec. ITU-R P.835-6 mean annual reference atmosphere along the ray")
-    source = f"{'; '.join(parts)}, {found.lowest_m:.0f} to {found.highest_m:.0f} m"
+    source = note("air", f"{'; '.join(parts)}, {{}} to {{}}", *(Length(height_m, 0) for height_m in heights_m))
     return Air(found.atmosphere, found.loss_db, source, gas_warnings(hop.frequency_hz, found.lowest_m))
 
 
@@ -199,7 +199,7 @@ def _budget(
             there_hz,
             gas_db=gas_db,
             diffraction_db=diffraction_db,
-            gas_note=f"Rec. ITU-R P.676-13; {air.source}",
-            diffraction_note=f"{loss.method} at k = {loss.k:.3g}",
+            gas_note=prefixed("Rec. ITU-R P.676-13", air.source),
+            diffraction_note=f"{loss.method} at k = {k_text(loss.k)}",
             back=back if hop.two_frequencies_hz else None,
         )

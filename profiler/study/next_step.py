@@ -10,6 +10,7 @@ import numpy as np
 
 from profiler.geometry import ROUNDING_M
 from profiler.models import Hop
+from profiler.remarks import Remark
 from profiler.study.reasons import ChanceTooSmall, MarginMissing, ObjectiveMissed, ObjectiveOpen, Reason, RuleMissed
 from profiler.study.result import Place, RuleResult
 from profiler.units import Float
@@ -131,7 +132,7 @@ class GiveInputs:
 
     kind: ClassVar[str] = "give_inputs"
 
-    why: tuple[str, ...]
+    why: tuple[Remark, ...]
 
 
 @dataclass(frozen=True, slots=True)

@@ -10,6 +10,7 @@ import numpy as np
 
 from profiler.diffraction import DiffractionLoss
 from profiler.models import AvailabilityChoice, Hop, Objective, Profile, RadioMode
+from profiler.remarks import Remark
 from profiler.study.climate_numbers import ClimateUse
 from profiler.units import STATUTE_MILE_M, Float
 
@@ -71,8 +72,8 @@ class OutageResult:
     curve: OutageCurve | None = None
     modes: tuple[ModeOutage, ...] = ()
     unjudged: tuple[str, ...] = ()
-    assumptions: tuple[str, ...] = ()
-    warnings: tuple[str, ...] = ()
+    assumptions: tuple[Remark, ...] = ()
+    warnings: tuple[Remark, ...] = ()
 
     @property
     def asked(self) -> tuple[ModeOutage, ...]:

@@ -40,13 +40,13 @@ def provenance(hop: Hop, files: Sequence[Path]) -> Provenance:
     hop
         The hop, for its file's hash.
     files
-        The rasters that gave heights, each once.
+        The rasters that gave heights.
 
     Returns
     -------
     Provenance
     """
-    states = ((path.absolute(), path.stat()) for path in files)
+    states = ((path, path.stat()) for path in dict.fromkeys(path.absolute() for path in files))
     return Provenance(
         created=datetime.now(UTC).isoformat(timespec="seconds"),
         versions=_versions(),

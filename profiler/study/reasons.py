@@ -8,6 +8,7 @@ from typing import TYPE_CHECKING, ClassVar, Literal
 
 from profiler.geometry import ROUNDING_M
 from profiler.models import Hop
+from profiler.remarks import Remark
 from profiler.study.result import Place, RuleResult
 
 if TYPE_CHECKING:
@@ -87,7 +88,7 @@ class ObjectiveOpen:
     outcome: ClassVar[Outcome] = "not_sure"
 
     mode: str | None
-    why: tuple[str, ...]
+    why: tuple[Remark, ...]
 
 
 Reason = RuleMissed | ChanceTooSmall | MarginMissing | ObjectiveMissed | ObjectiveOpen

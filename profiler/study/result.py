@@ -7,6 +7,7 @@ from dataclasses import dataclass
 from typing import TYPE_CHECKING
 
 from profiler.geometry import ROUNDING_M
+from profiler.remarks import Remark
 
 if TYPE_CHECKING:  # what the hop does not ask for is not loaded
     from profiler.budget import Budget
@@ -16,7 +17,6 @@ if TYPE_CHECKING:  # what the hop does not ask for is not loaded
     from profiler.heights import ClearingRegion
     from profiler.models import Hop, Profile
     from profiler.path import PathLine
-    from profiler.remarks import Note
     from profiler.study.climate_numbers import ClimateUse
     from profiler.study.link import Air
     from profiler.study.outage import OutageResult
@@ -119,10 +119,10 @@ class TerrainUse:
     filled_share: float
     surveyed_difference_a_m: float | None
     surveyed_difference_b_m: float | None
-    notes: tuple[str, ...]
-    cover_notes: tuple[str, ...]
+    notes: tuple[Remark, ...]
+    cover_notes: tuple[Remark, ...]
     sea_share: float = 0.0
-    warnings: tuple[str, ...] = ()
+    warnings: tuple[Remark, ...] = ()
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -174,8 +174,8 @@ class Study:
     relief: Relief | None
     verdict: Verdict
     provenance: Provenance
-    assumptions: tuple[Note | str, ...]
-    warnings: tuple[Note | str, ...]
+    assumptions: tuple[Remark, ...]
+    warnings: tuple[Remark, ...]
 
     @property
     def governing(self) -> RuleResult:

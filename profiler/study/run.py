@@ -11,7 +11,7 @@ import numpy as np
 from profiler.errors import InputError, under
 from profiler.geometry import elevation_angle, find_reflections, hold_rules
 from profiler.models import ConfidenceChoice, Hop
-from profiler.remarks import Note, k_text, note
+from profiler.remarks import Note, Remark, k_text, note, prefixed
 from profiler.study.climate_numbers import ClimateUse, climate_numbers
 from profiler.study.ground import Ground, read_ground, require_above_cover
 from profiler.study.ground_warnings import ground_warnings
@@ -185,7 +185,7 @@ def _confidence(hop: Hop, ground: Ground, climate: ClimateUse, rules: Sequence[R
         )
 
 
-def _assumptions(hop: Hop, ground: Ground, climate: ClimateUse, air: Air, found: Link) -> tuple[Note | str, ...]:
+def _assumptions(hop: Hop, ground: Ground, climate: ClimateUse, air: Air, found: Link) -> tuple[Remark, ...]:
     """Everything that was assumed, in the order of the stages, each thing once."""
     terrain = ground.terrain
     sources = gathered((use.info.path.name, note) for use in terrain.sources for note in use.notes)
@@ -209,7 +209,7 @@ def _assumptions(hop: Hop, ground: Ground, climate: ClimateUse, air: Air, found:
                     f"diffraction: {hop.diffraction.method} over ground and cover; budget at k ="
                     f" {k_text(climate.median_k)}",
                 ),
-                note("air", "air: {}", str(air.source)),
+                prefixed("air", air.source),
                 *(_doubt_assumptions(hop.confidence) if hop.confidence is not None else ()),
                 *(found.budget.assumptions if found.budget is not None else ()),
                 *found.outage.assumptions,
@@ -243,14 +243,16 @@ def _lower_antennas(hop: Hop, regions: tuple[ClearingRegion, ...]) -> tuple[Dive
     return lower_antennas(hop, regions, antenna_a_m=hop.site_a.antenna_m, antenna_b_m=hop.site_b.antenna_m)
 
 
-def _lower_warnings(ends: Sequence[DiversityEnd]) -> tuple[Note | str, ...]:
+def _lower_warnings(ends: Sequence[DiversityEnd]) -> tuple[Remark, ...]:
     """Warn of lower antennas of a diversity pair that lack the clearance under which their improvement is credited."""
     return tuple(
-        f"diversity at {end.notes[0]}; no improvement is credited to what it receives" for end in ends if not end.clears
+        Note("diversity", ("diversity at ", *end.notes[0].parts, "; no improvement is credited to what it receives"))
+        for end in ends
+        if not end.clears
     )
 
 
-def _warnings(hop: Hop, ground: Ground, rules: Sequence[RuleResult], air: Air, found: Link) -> tuple[Note | str, ...]:
+def _warnings(hop: Hop, ground: Ground, rules: Sequence[RuleResult], air: Air, found: Link) -> tuple[Remark, ...]:
     """Every warning of every stage, each once."""
     return tuple(
         dict.fromkeys(

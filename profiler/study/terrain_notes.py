@@ -10,6 +10,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from profiler.models import Hop
+from profiler.remarks import Length, Note, note
 from profiler.study.said_once import gathered
 from profiler.terrain import Overlap, RasterInfo, Terrain
 from profiler.units import Float
@@ -28,21 +29,20 @@ def passed_over(terrain: Terrain) -> tuple[str, ...]:
     )
 
 
-def sea_notes(sea: NDArray[np.bool_], distance_m: Float) -> tuple[str, ...]:
+def sea_notes(sea: NDArray[np.bool_], distance_m: Float) -> tuple[Note, ...]:
     """Say where along the path cells without a height were taken for the sea, and on whose word."""
     distance_m, sea = distance_m.ravel(), sea.ravel()
     turns = np.flatnonzero(np.diff(np.concatenate([[False], sea, [False]]).astype(int)))
     if not turns.size:
         return ()
-    ends = list(zip(distance_m[turns[::2]] / 1e3, distance_m[turns[1::2] - 1] / 1e3, strict=True))
-    told = ", ".join(f"{first:.2f} to {last:.2f} km" for first, last in ends[:5])
+    ends = list(zip(distance_m[turns[::2]].tolist(), distance_m[turns[1::2] - 1].tolist(), strict=True))
+    told = ", ".join("{} to {}" for _ in ends[:5])
     more = f" and {len(ends) - 5} more stretches" if len(ends) > 5 else ""
-    return (
-        f"sea at 0 m at {told}{more}: the rasters hold no height there, and the hop file says that such cells are sea",
-    )
+    words = f"sea level at {told}{more}: the rasters hold no height there, and by the hop file such cells are sea"
+    return (note("terrain", words, *(Length(end_m, far=True) for pair in ends[:5] for end_m in pair)),)
 
 
-def disagreements(hop: Hop, overlaps: Sequence[Overlap], distance_m: Float) -> tuple[str, ...]:
+def disagreements(hop: Hop, overlaps: Sequence[Overlap], distance_m: Float) -> tuple[Note, ...]:
     """Warn of rasters of one resolution that overlap on the path and differ by more than their errors."""
     sigma_m = None if hop.confidence is None else hop.confidence.terrain_sigma_m
     # two errors of standard deviation σ differ by less than 2·√2·σ in 95 of 100 places
@@ -54,17 +54,22 @@ def disagreements(hop: Hop, overlaps: Sequence[Overlap], distance_m: Float) -> t
     )
 
 
-def _disagreement(hop: Hop, overlap: Overlap, distance_m: Float) -> str:
-    apart_m, at_km = np.abs(overlap.difference_m), distance_m[overlap.point] / 1e3
+def _disagreement(hop: Hop, overlap: Overlap, distance_m: Float) -> Note:
+    apart_m, at_m = np.abs(overlap.difference_m), distance_m[overlap.point]
     most = int(np.argmax(apart_m))
     order = [_place_in_order(hop, info) for info in (overlap.first, overlap.second)]
     why = "its name comes first in its folder" if order[0] == order[1] else "its path stands first in terrain.paths"
     higher = "above" if overlap.difference_m[most] > 0 else "below"
-    return (
-        f"{overlap.first.path.name} and {overlap.second.path.name} overlap between {at_km.min():.2f} and"
-        f" {at_km.max():.2f} km"
-        f" and do not agree: at {at_km[most]:.2f} km the first lies {apart_m[most]:.1f} m {higher} the second (median"
-        f" {np.median(apart_m):.1f} m); the first answers, as {why}. Find out which is right and put it first"
+    far = (Length(float(each), far=True) for each in (at_m.min(), at_m.max(), at_m[most]))
+    return note(
+        "terrain",
+        f"{{}} and {{}} overlap between {{}} and {{}} and do not agree: at {{}} the first lies {{}} {higher} the second"
+        f" (median {{}}); the first answers, as {why}. Find out which is right and put it first",
+        overlap.first.path.name,
+        overlap.second.path.name,
+        *far,
+        Length(float(apart_m[most])),
+        Length(float(np.median(apart_m))),
     )
 
 

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from typing import TYPE_CHECKING
 
-from profiler.remarks import db_text, outage_text, ratio_text, time_text
+from profiler.remarks import db_text, target_text, time_text
 
 if TYPE_CHECKING:
     from profiler.availability.objective import ObjectiveResult, TargetResult
@@ -31,12 +31,6 @@ _LIMITS = {
     "obstruction": "obstruction",
     "no margin": "the missing margin",
 }
-_COUNTED = {
-    "worst_month_percent": "of the worst month",
-    "year_percent": "of the year",
-    "severely_errored_seconds_ratio": "of the seconds of the worst month severely errored",
-    "errored_seconds_ratio": "of the seconds of the worst month errored",
-}
 
 
 def limit_text(limit: str) -> str:
@@ -44,23 +38,16 @@ def limit_text(limit: str) -> str:
     return _LIMITS[limit]
 
 
-def _amount(target: TargetResult, value: float) -> str:
-    if target.unit == "min":
-        return time_text(value)
-    amount = outage_text(value) if target.unit == "%" else ratio_text(value)
-    return f"{amount} {_COUNTED[target.name]}"
-
-
 def asked_text(target: TargetResult) -> str:
     """Say what a target asks for."""
-    return _amount(target, target.required)
+    return target_text(target.name, target.required)
 
 
 def achieved_text(target: TargetResult) -> str:
     """Say what is reached in the measure of a target, and what it could be at most."""
-    reached = _amount(target, target.achieved)
+    reached = target_text(target.name, target.achieved)
     if target.achieved_up_to > target.achieved:
-        return f"{reached}, at most {_amount(target, target.achieved_up_to)}"
+        return f"{reached}, at most {target_text(target.name, target.achieved_up_to)}"
     return reached
 
 
