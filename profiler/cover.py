@@ -216,8 +216,8 @@ def open_cover(choice: CoverChoice, method: SampleMethod = "bilinear") -> Iterat
     --------
     >>> x = np.array([0.0, 100.0])
     >>> with open_cover(CoverChoice()) as cover:
-    ...     cover.sample(x, x, x).notes
-    ('no cover given: trees and buildings are not in this result',)
+    ...     print(*cover.sample(x, x, x).notes)
+    no cover given: trees and buildings are not in this result
     """
     with ExitStack() as stack:
         canopy = classes = None

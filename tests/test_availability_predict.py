@@ -188,7 +188,9 @@ def test_no_margin_meets_a_target_under_the_selective_floor():
     assert found.limited_by == target.limited_by
     assert target.margin_set_by == found.objective.margin_set_by == "selective"
     assert any(
-        line.startswith("worst_month_percent = 1e-07: no fade margin up to 200 dB is sure to meet it; most of what is")
+        line.startswith(
+            "objective of 1.0·10⁻⁷ % of the worst month: no fade margin up to 200 dB is sure to meet it; most of what"
+        )
         and line.endswith("selective")
         for line in found.warnings
     )
@@ -365,7 +367,7 @@ def test_no_margin_at_all():
         assert outages.clear_air is outages.obstruction_up_to is None
     assert (found.limited_by, found.objective.met, found.objective.targets[0].achieved) == ("no margin", False, 100.0)
     assert found.objective.required_margin_db > 0
-    assert "fade margin = -3.0 dB: the hop is below its threshold without any fading" in found.warnings
+    assert "fade margin −3.0 dB: the hop is below its threshold without any fading" in found.warnings
 
 
 def test_obstruction_of_the_year_and_of_the_month():

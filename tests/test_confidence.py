@@ -273,7 +273,7 @@ def test_spread_of_k_leaves_the_rules_at_their_own_k():
     assert still.rules[0].shares.k == 0.0
     assert moving.chance == still.chance
     assert moving.sure == still.sure
-    assert "k does not vary" in " ".join(still.method)
+    assert "k does not vary" in " ".join(map(str, still.method))
 
 
 # bands and shares
@@ -578,12 +578,12 @@ def test_every_default_says_where_it_comes_from():
 
 
 def test_method_states_what_was_assumed():
-    text = " ".join(hills(1.0, terrain_sigma_m=4.0, site_sigma_m=0.2, seed=9, covariance="gaussian").method)
+    text = " ".join(map(str, hills(1.0, terrain_sigma_m=4.0, site_sigma_m=0.2, seed=9, covariance="gaussian").method))
     for words in (
-        "seed 9", "20000 draws", "sigma 4.00 m", "gaussian correlation", "100 m", "A is known to 0.2 m", "every 1e+03 m"
+        "seed 9", "20000 draws", "sigma 4.00 m", "gaussian correlation", "100 m", "A is known to 0.20 m", "every 1e+03 m"
     ):  # fmt: skip
         assert words in text
-    assert "uncorrelated" in " ".join(hills(1.0, terrain_sigma_m=4.0, correlation_m=0.0).method)
+    assert "uncorrelated" in " ".join(map(str, hills(1.0, terrain_sigma_m=4.0, correlation_m=0.0).method))
 
 
 # errors

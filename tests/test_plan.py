@@ -182,7 +182,9 @@ def test_a_study_warns_of_a_lower_antenna_behind_a_hill(land):
     warned = [warning for warning in map(str, study.warnings) if warning.startswith("diversity at")]
     assert len(warned) == 2
     assert "A: the lower antenna at 41.00 m needs" in warned[0]
-    assert not [warning for warning in run_study(at(hop, (80, 80))).warnings if warning.startswith("diversity at")]
+    assert not [
+        warning for warning in map(str, run_study(at(hop, (80, 80))).warnings) if warning.startswith("diversity at")
+    ]
 
 
 # Beside the path and where requirements come from ---------------------------------------------------------------------

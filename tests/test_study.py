@@ -649,7 +649,7 @@ def test_statistics_that_end_above_the_low_k_do_not_hide_that_it_cuts_the_hop_of
     study = run_study(replace(hop, radio=with_threshold(received_dbm - 1.0)))
     assert (study.outage.availability.low_k_blocks, study.verdict.meets_objective) == (True, None)
     assert study.verdict.outcome == "fails"
-    assert sum("low k of the rules, 0.6667, takes" in warning for warning in map(str, study.warnings)) == 1
+    assert sum("low k of the rules, 2/3, takes" in warning for warning in map(str, study.warnings)) == 1
 
 
 def test_multipath_over_a_path_blocked_at_the_median_k_is_warned_of(land):

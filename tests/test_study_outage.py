@@ -153,7 +153,7 @@ def test_no_improvement_is_credited_to_a_lower_antenna_without_its_clearance(lan
     """The ridge stands near A: the lower antenna there is behind it, that at B is not. What A receives decides."""
     hop = hop_over(land(64.0, row=ROWS - 60), availability=replace(CLIMATE, diversity=DiversityChoice(15.0)))
     with_pair, alone = run_study(hop), run_study(replace(hop, availability=CLIMATE))
-    [warning] = [line for line in with_pair.warnings if line.startswith("diversity at")]
+    [warning] = [line for line in map(str, with_pair.warnings) if line.startswith("diversity at")]
     assert warning.startswith("diversity at A: the lower antenna at 75.00 m needs")
     assert warning.endswith("no improvement is credited to what it receives")
     # B sends 2 dB less, so that A receives least anyway; turned round, A's direction still has more outage by far

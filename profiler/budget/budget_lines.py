@@ -226,7 +226,8 @@ def link_budget(
         )
         for way in get_args(Way)
     )
-    warnings = near_field_warnings(diameters(radio), distance_m, max(found[0] for found in each_way.values()))
+    highest_hz = max(found[0] for found in each_way.values())
+    warnings: tuple[Remark, ...] = near_field_warnings(diameters(radio), distance_m, highest_hz)
     warnings += (*_overloads("a_to_b", a_to_b), *_overloads("b_to_a", b_to_a))
     return Budget(a_to_b, b_to_a, _assumptions(modes, thresholds, both_alike=back is None), warnings)
 

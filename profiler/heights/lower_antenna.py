@@ -70,26 +70,28 @@ class DiversityEnd:
     def notes(self) -> tuple[Note, ...]:
         """What is wrong or worth knowing, one line each; empty when nothing is."""
         lines = []
-        lower = Length(self.lower_m)
+        lower = Length(self.lower_m, 2)
         if not self.clears:
             words, *lengths_m = self._remedy()
-            lengths = map(Length, lengths_m)
+            lengths = (Length(length_m, 2) for length_m in lengths_m)
             lines.append(note("diversity", f"{self.end}: the lower antenna at {{}} {words}", lower, *lengths))
         if self.clears_more_than_needed:
             words = (
                 f"{self.end}: the lower antenna at {{}} clears more than {self.fractions[1]:g} F1 ({{}} would do), so"
                 " the ground shields it less from the reflected ray"
             )
-            lines.append(note("diversity", words, lower, Length(self.full_m)))
+            lines.append(note("diversity", words, lower, Length(self.full_m, 2)))
         if not self.spacing_in_data:
             words = f"{self.end}: a spacing of {{}} is outside {{}} to {{}}, the data under P.530's improvement factor"
-            lines.append(note("diversity", words, *map(Length, (self.spacing_m, *_SPACING_M))))
+            lines.append(
+                note("diversity", words, Length(self.spacing_m, 2), *(Length(limit_m, 0) for limit_m in _SPACING_M))
+            )
         if not self.spacing_wide_enough:
             words = (
                 f"{self.end}: a spacing of {{}} is {self.spacing_wavelengths:.0f} wavelengths;"
                 f" {_FEWEST_WAVELENGTHS:.0f} or more are common practice"
             )
-            lines.append(note("diversity", words, Length(self.spacing_m)))
+            lines.append(note("diversity", words, Length(self.spacing_m, 2)))
         return tuple(lines)
 
     def _remedy(self) -> tuple[str, *tuple[float, ...]]:
@@ -186,7 +188,7 @@ def check_diversity(
     >>> ends = check_diversity(least, full, 6e9, antenna_a_m=70, antenna_b_m=70, spacing_m=10, obstruction="isolated")
     >>> ends[0].clears, round(ends[0].least_m, 2), round(ends[0].full_m, 2), round(ends[0].spacing_wavelengths)
     (True, 17.09, 30.5, 200)
-    >>> print(ends[0].notes[0].partition(",")[0])
+    >>> print(str(ends[0].notes[0]).partition(",")[0])
     A: the lower antenna at 60.00 m clears more than 0.3 F1 (30.50 m would do)
     """
     fractions = tuple(rule.fresnel_fraction for rule in lower_rules(obstruction, 1.0))

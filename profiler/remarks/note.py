@@ -57,11 +57,12 @@ class Length:
         """
         if self.far and abs(self.length_m) >= _NEAR_M:
             unit_m, unit = (STATUTE_MILE_M, "mi") if feet else (1000.0, "km")
-            return f"{minus(f'{self.length_m / unit_m:.{2 if self.digits is None else self.digits}f}')} {unit}"
+            value = self.length_m / unit_m
+            digits = (0 if abs(value) >= 1000 else 2) if self.digits is None else self.digits
+            return f"{minus(f'{value:.{digits}f}')} {unit}"
         value, unit = (self.length_m / FOOT_M, "ft") if feet else (self.length_m, "m")
-        digits = self.digits
-        if digits is None or self.far:
-            digits = 0 if self.far else 1 if abs(value) >= 1 or value == 0 else 2 if abs(value) >= 0.01 else 4
+        known = 0 if self.far else 1 if abs(value) >= 1 or value == 0 else 2 if abs(value) >= 0.01 else 4
+        digits = known if self.digits is None or self.far else self.digits
         return f"{minus(f'{value:.{digits}f}')} {unit}"
 
 
