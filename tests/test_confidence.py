@@ -580,7 +580,8 @@ def test_every_default_says_where_it_comes_from():
 def test_method_states_what_was_assumed():
     text = " ".join(map(str, hills(1.0, terrain_sigma_m=4.0, site_sigma_m=0.2, seed=9, covariance="gaussian").method))
     for words in (
-        "seed 9", "20000 draws", "sigma 4.00 m", "gaussian correlation", "100 m", "A is known to 0.20 m", "every 1e+03 m"
+        "seed 9", "20000 draws", "sigma 4.00 m", "gaussian correlation", "100 m", "A is known to 0.20 m",
+        "every 1000.0 m",
     ):  # fmt: skip
         assert words in text
     assert "uncorrelated" in " ".join(map(str, hills(1.0, terrain_sigma_m=4.0, correlation_m=0.0).method))
