@@ -210,13 +210,11 @@ def _show_places(screen: Console, study: Study, scale: Scale) -> None:
         table.add_row(where, *(scale.height_number(height_m) for height_m in (*heights, *held)))
     say(screen, f"\nTight places of rule {_rule_name(rule, scale).replace(chr(10), ', ')}", "bold")
     show_table(screen, table)
-    for zone in (result.held for result in study.rules):
-        if zone.half_width_m > 0.0:
-            width = f"{scale.height_text(zone.half_width_m)} to each side"
-            seen = zone.missing_share
-            unseen = f", {percent_text(seen)} of it without ground" if seen else ""
-            say(screen, f"Checked across the path too: {width}{unseen}.")
-            break
+    widest = max((result.held for result in study.rules), key=lambda zone: zone.half_width_m)
+    if widest.half_width_m > 0.0:
+        width = f"{scale.height_text(widest.half_width_m)} to each side"
+        unseen = f", {percent_text(widest.missing_share)} of it without ground" if widest.missing_share else ""
+        say(screen, f"Checked across the path too: {width}{unseen}.")
 
 
 def _show_reflections(screen: Console, study: Study, scale: Scale) -> None:

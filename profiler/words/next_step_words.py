@@ -78,9 +78,11 @@ def step_words(step: Step, study: Study, scale: Scale) -> str:
             words = f"lower the cover {_cut_words(step, scale)}"
         case GoElsewhere():
             band = ", or a higher band with a narrower zone" if step.band else ""
+            towers = study.hop.heights
+            limits = [scale.height_text(tower.highest_m) for tower in (towers.tower_a, towers.tower_b)]
             words = (
-                f"look for a relay, a passive reflector or another site{band}: no height within the towers' limits"
-                " clears"
+                f"look for a relay, a passive reflector or another site{band}: no height within the towers' limits,"
+                f" A {limits[0]} and B {limits[1]}, clears"
             )
         case FreePositions():
             words = "free positions that are taken: the towers are high enough"
