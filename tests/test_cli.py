@@ -468,6 +468,13 @@ def test_reach_answers_both_ways(run):
     ]
 
 
+def test_reach_says_by_which_mode_and_margin(run):
+    said = " ".join(run("reach", "hop.toml")[1].split())
+    assert "what the radio reaches with mode QPSK and a fade margin of 0.0 dB." in said
+    said = " ".join(run("reach", "hop.toml", "--fade-margin-db", "25")[1].split())
+    assert "with mode QPSK and a fade margin of 25.0 dB." in said
+
+
 def test_reach_adds_up_on_the_terminal(run):
     """Every table is of signed terms and ends with their sum."""
     _, out, _ = run("reach", "hop.toml", "--fade-margin-db", "10", "--resize", "b", "--efficiency", "0.6", "--full")

@@ -25,6 +25,7 @@ from profiler.document import point_table, to_document
 from profiler.document.heights_document import heights_document
 from profiler.errors import DatumError, InputError, MissingGroundError
 from profiler.geometry import ROUNDING_M
+from profiler.hopfile import load_hop
 from profiler.models import (
     AvailabilityChoice,
     ConfidenceChoice,
@@ -585,6 +586,24 @@ def test_ground_that_ends_beside_the_path_is_told(land):
     study = run_study(hop_over(land(heights, nodata=-9999), frequency_hz=0.3e9))
     assert study.rules[0].held.missing_share > 0.1
     assert any("not checked" in warning for warning in map(str, study.warnings))
+
+
+@pytest.mark.parametrize("end", ["37.5, -112.93", "37.46, -112.95", "37.44, -113.02"])
+def test_nothing_is_missing_between_the_squares_of_a_grid_in_degrees(real_terrain, tmp_path, end):
+    """They are no parallelograms, and along a parallel the lines across the path run along the grid's own."""
+    raster = real_terrain / "canyon_srtm_3arcsec.tif"
+    (tmp_path / "hop.toml").write_text(
+        f"""
+        frequency_ghz = 6.2
+        site_a = {{ position = "37.5, -113.02", antenna_m = 40 }}
+        site_b = {{ position = "{end}", antenna_m = 40 }}
+        terrain.paths = ['{raster}']
+        rules.preset = "1.0-and-0.3-f1"
+        """
+    )
+    study = run_study(load_hop(tmp_path / "hop.toml"))
+    assert [result.held.missing_share for result in study.rules] == [0.0, 0.0]
+    assert not [warning for warning in map(str, study.warnings) if "not checked" in warning]
 
 
 # Radio and availability -----------------------------------------------------------------------------------------------

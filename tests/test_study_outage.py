@@ -109,6 +109,19 @@ def test_each_mode_is_held_against_its_own_target(land):
         assert row.objective.targets[0].achieved == row.year_percent
 
 
+def test_another_mode_is_a_way_only_where_it_is_not_asked_for_itself(land):
+    """256-QAM misses the hop's objective, which QPSK meets; what QPSK's own asks for 256-QAM cannot do instead."""
+    steps = {}
+    for name, of_hop, of_qpsk in (("first", TIGHT, {}), ("own", LOOSE, TIGHT)):
+        modes = mode("256-QAM", -64.0), mode("QPSK", -86.0, **of_qpsk)
+        availability = replace(CLIMATE, objective=Objective(**of_hop))
+        verdict = run_study(hop_over(land(), radio=radio(*modes), availability=availability)).verdict
+        assert verdict.outcome == "fails"
+        steps[name] = [step.kind for step in verdict.next_step]
+    assert steps["first"][0] == "take_mode"
+    assert "take_mode" not in steps["own"]
+
+
 def test_a_mode_whose_threshold_is_not_known_leaves_its_objective_undecided(land):
     silent = RadioMode("4096-QAM", objective=Objective(year_percent=1.0))
     study = run_study(hop_over(land(), radio=radio(mode("QPSK", -86.0, year_percent=1.0), silent)))

@@ -170,7 +170,7 @@ def test_on_level_ground_across_the_rule_is_that_of_the_path():
 def test_what_is_not_known_is_counted():
     half = one_patch([0.0, LENGTH_M, 0], [0.0, 0, 100], [0.0] * 6)
     [held] = hold_rules(over(half), [(Rule(1.0, 1.0), 100.0, 100.0)], FREQUENCY_HZ)
-    assert held.missing_share == pytest.approx(0.5, abs=1e-6)
+    assert held.missing_share == pytest.approx(0.5, abs=1e-4)  # a patch reaches a 50 000th of itself further
 
 
 def test_a_step_counts_from_its_edge_on():

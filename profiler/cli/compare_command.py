@@ -109,7 +109,7 @@ def _show(sides: tuple[Side, ...], *, feet: bool, quiet: bool, color: bool) -> N
 
 def _rows(sides: tuple[Side, ...], scale: Scale) -> Iterator[tuple[str, list[str]]]:
     """Give the rows of the table: name, and a cell for each side; empty where a hop gives no data."""
-    from profiler.remarks import chance_text, db_text, time_text
+    from profiler.remarks import chance_text, cost_text, db_text, time_text
     from profiler.words import outcome_word
 
     def known(value: Any, write: Any) -> str:
@@ -120,11 +120,11 @@ def _rows(sides: tuple[Side, ...], scale: Scale) -> Iterator[tuple[str, list[str
         ("verdict", lambda side: outcome_word(side.study.verdict.outcome)),
         ("chance of clearing", lambda side: known(side.study.verdict.chance, lambda chance: chance_text(chance.value))),
         (f"least surplus, {unit}", lambda side: scale.height_number(side.study.governing.critical.surplus_m)),
-        ("tightest at", lambda side: scale.distance_text(side.study.governing.critical.distance_m)),
+        ("least surplus at", lambda side: scale.distance_text(side.study.governing.critical.distance_m)),
         (f"antennas A and B, {unit}", lambda side: _pair(_given(side), scale)),
         (f"least equal, {unit}", lambda side: scale.height_number(side.plan.least_equal.height_m)),
         (f"cheapest pair, {unit}", lambda side: known(side.pair, lambda pair: _pair(_found(pair), scale))),
-        ("its cost", lambda side: known(side.pair, lambda pair: f"{pair.cost:g}")),
+        ("its cost", lambda side: known(side.pair, lambda pair: cost_text(pair.cost))),
         ("fade margin", lambda side: known(side.margin_db, db_text)),
         ("outage", lambda side: known(side.year_minutes, time_text)),
         ("objective", lambda side: {True: "met", False: "missed", None: "–"}[side.study.verdict.meets_objective]),

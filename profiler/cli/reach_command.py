@@ -96,7 +96,8 @@ def command(
     if json_to is not None:
         put(json_to, json_text({"schema": "hopwright-reach/1", "hop": hop.name, "answers": answers}))
     if json_to != "-":
-        _show(hop.name, answers, feet=feet, full=full, quiet=quiet, color=not no_color)
+        asked = f"mode {mode or hop.radio.modes[0].name} and a fade margin of {db_text(fade_margin_db)}"
+        _show(f"{hop.name}: what the radio reaches with {asked}.", answers, feet=feet, full=full, quiet=quiet, color=not no_color)
     return 0
 
 
@@ -132,7 +133,7 @@ def _answers(
 
 
 def _show(
-    hop: str, answers: dict[Way, dict[str, InverseAnswer]], *, feet: bool, full: bool, quiet: bool, color: bool
+    head: str, answers: dict[Way, dict[str, InverseAnswer]], *, feet: bool, full: bool, quiet: bool, color: bool
 ) -> None:
     """Print the answers, then the lines that each stands on."""
     from profiler.budget import way_name
@@ -154,12 +155,11 @@ def _show(
         for name, found in questions.items()
     ]
     if not full:
-        head = Part(f"{hop}: what the radio reaches, in free space and over this path.", needed=not quiet)
         if quiet:
             for part in parts:
                 say(screen, part.text, part.style)
         else:
-            show_brief(screen, (head, *parts), warnings, "study the hop with what you choose from these.")
+            show_brief(screen, (Part(head), *parts), warnings, "study the hop with what you choose from these.")
         return
     for part in parts:
         say(screen, part.text, part.style)

@@ -78,9 +78,11 @@ def show_study(study: Study, *, feet: bool, full: bool, quiet: bool, color: bool
 def _parts(study: Study, scale: Scale) -> list[Part]:
     """Give the short answer in the order in which it is decided."""
     verdict = study.verdict
+    fails_otherwise = verdict.clears and verdict.outcome == "fails"
+    found = headline(study, scale) if fails_otherwise else clearance_words(study, scale)
     parts = [
         Part(f"{study.hop.name}: {verdict_words(study)}", OUTCOME_STYLES[verdict.outcome]),
-        Part(f"{clearance_words(study, scale)}."),
+        Part(f"{found}."),
         Part(held_words(study, scale)),
         Part(feet_words(study, scale), needed=False),
     ]

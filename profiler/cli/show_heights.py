@@ -8,7 +8,7 @@ from profiler.cli.brief import CAUTION, Part, show_brief
 from profiler.cli.screen import compact_table, console, say, show_notes, show_table
 from profiler.cli.show import OUTCOME_STYLES
 from profiler.heights import Least, NoPair
-from profiler.remarks import db_text, k_text
+from profiler.remarks import cost_text, db_text, k_text
 from profiler.words import (
     Scale,
     along_text,
@@ -177,7 +177,7 @@ def _show_limit(screen: Console, title: str, found: LimitHeights, scale: Scale) 
         say(
             screen,
             f"  cheapest pair found: A {scale.height_text(choice.antenna_a_m)},"
-            f" B {scale.height_text(choice.antenna_b_m)}, cost {choice.cost:g};"
+            f" B {scale.height_text(choice.antenna_b_m)}, cost {cost_text(choice.cost)};"
             f" if height only helps, {slack_words(found.cheaper_by_at_most)}",
             hang=2,
         )

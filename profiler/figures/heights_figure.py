@@ -18,7 +18,7 @@ from profiler.figures.captions import hop_facts, profile_notes
 from profiler.figures.page import FOOT_IN, LINE_IN, MARGIN_IN, PAGE_WIDTH_IN, Page
 from profiler.figures.place_labels import spread
 from profiler.figures.strips import rule_look
-from profiler.remarks import chance_text, minus
+from profiler.remarks import chance_text, cost_text, minus
 from profiler.words import (
     Scale,
     beside_text,
@@ -148,7 +148,7 @@ def _marks(plan: HeightsPlan, scale: Scale) -> list[_Mark]:
         stars.insert(0, (plan.cheapest, "white", plan.answer.asked[:1]))
     for pair, fill, asked in stars:
         if isinstance(pair, Choice):
-            words = f"cheapest pair to {' and '.join(asked)}, cost {pair.cost:g}"
+            words = f"cheapest pair to {' and '.join(asked)}, cost {cost_text(pair.cost)}"
             marks.append(_Mark({"marker": "*", "mfc": fill, "ms": 13}, pair.antenna_a_m, pair.antenna_b_m, words))
     return marks
 

@@ -26,6 +26,10 @@ _SAME_M = 0.01
 _AT_ONCE = 400_000
 _ROUNDING_SHARE = 1e-6
 
+_SEAM_SHARE = 2e-5
+"""Patches are affine, the squares of a grid not quite: neighbours leave up to a millimetre or two between them. Each
+reaches so much of itself further, or a line across the path that runs along a line of the grid falls between two."""
+
 
 @dataclass(frozen=True, slots=True, eq=False)
 class Surface:
@@ -96,11 +100,11 @@ def asked_across(surface: Surface, frequency_hz: float, fractions: Sequence[floa
 
 
 def _missing(known_m: Float, width_m: Float, distance_m: Float) -> float:
-    """Share of the zone's area of which not all is known."""
+    """Share of the zone's area of which not all is known; what lacks less than a centimetre of its width lacks none."""
     weight = lengths_between(distance_m)
     whole = (weight * width_m).sum()
-    known = (weight * np.minimum(known_m, width_m)).sum()
-    share = float(1.0 - known / whole) if whole > 0.0 else 0.0
+    lacking = width_m - known_m
+    share = float((weight * np.where(lacking > _SAME_M, lacking, 0.0)).sum() / whole) if whole > 0.0 else 0.0
     return share if share > _ROUNDING_SHARE else 0.0
 
 
@@ -177,9 +181,9 @@ def _sections(patches: Patches, patch: Index, distance_m: Float, radius_m: Float
         forms.append((c0 + c1 * p0 + c2 * q0, c1 * p1 + c2 * q1))
     for at_zero, slope in forms:
         with np.errstate(divide="ignore", invalid="ignore"):
-            ends = -at_zero / slope, (1.0 - at_zero) / slope
+            ends = (-_SEAM_SHARE - at_zero) / slope, (1.0 + _SEAM_SHARE - at_zero) / slope
         flat = np.abs(slope) < 1e-15
-        outside = flat & ((at_zero < 0.0) | (at_zero > 1.0))
+        outside = flat & ((at_zero < -_SEAM_SHARE) | (at_zero > 1.0 + _SEAM_SHARE))
         low = np.where(flat, low, np.maximum(low, np.minimum(*ends)))
         high = np.where(outside, -np.inf, np.where(flat, high, np.minimum(high, np.maximum(*ends))))
     meets = np.flatnonzero(low <= high)

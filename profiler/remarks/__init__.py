@@ -3,6 +3,7 @@
 from profiler.remarks.note import Length, Note, Remark, Topic, note, prefixed
 from profiler.remarks.numerals import (
     chance_text,
+    cost_text,
     db_text,
     k_text,
     listed,
@@ -23,6 +24,7 @@ __all__ = [
     "Remark",
     "Topic",
     "chance_text",
+    "cost_text",
     "db_text",
     "k_text",
     "listed",

@@ -10,6 +10,7 @@ from profiler.units import MINUTES_PER_YEAR
 
 __all__ = [
     "chance_text",
+    "cost_text",
     "db_text",
     "k_text",
     "listed",
@@ -48,6 +49,17 @@ def db_text(level: float, unit: str = "dB", *, digits: int = 1) -> str:
     ('31.0 dB', '−67.55 dBm')
     """
     return f"{minus(f'{level:.{digits}f}')} {unit}"
+
+
+def cost_text(cost: float) -> str:
+    """Write a cost in the user's own currency: two decimals where it is not whole.
+
+    Examples
+    --------
+    >>> cost_text(29.0), cost_text(28.6512), cost_text(1_299_380.0)
+    ('29', '28.65', '1299380')
+    """
+    return f"{cost:.2f}".removesuffix(".00")
 
 
 def k_text(k: float) -> str:

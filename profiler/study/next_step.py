@@ -258,7 +258,8 @@ def _mode_with_margin(budget: Budget | None) -> tuple[TakeMode, ...]:
 def _to_meet(missed: ObjectiveMissed, outage: OutageResult) -> tuple[Step, ...]:
     """Ways to meet an objective: a mode that does, more margin, or work against what takes it."""
     target = missed.target
-    modes = [TakeMode(each.mode) for each in outage.modes if each.met is True and each.mode != missed.mode]
+    # a mode that is asked for itself is no way round another that is
+    modes = [TakeMode(each.mode) for each in outage.modes if each.met is True and not each.asked]
     if target.required_margin_db is None:
         return (*modes[:1], Counter(target.margin_set_by))
     return (*modes[:1], AddMargin(target.required_margin_db - missed.fade_margin_db))

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from typing import TYPE_CHECKING
 
-from profiler.remarks import chance_text, listed
+from profiler.remarks import chance_text, cost_text, listed
 from profiler.words.next_step_words import step_words
 from profiler.words.places import place_text, rule_text
 from profiler.words.scale import Scale
@@ -37,7 +37,7 @@ def plan_verdict_words(plan: HeightsPlan) -> str:
 def pair_text(pair: Choice, scale: Scale) -> str:
     """Give a pair of heights and its cost."""
     a, b = scale.height_text(pair.antenna_a_m), scale.height_text(pair.antenna_b_m)
-    return f"A {a} and B {b} above ground, cost {pair.cost:g}"
+    return f"A {a} and B {b} above ground, cost {cost_text(pair.cost)}"
 
 
 def pair_words(plan: HeightsPlan, scale: Scale) -> str:
@@ -49,7 +49,7 @@ def pair_words(plan: HeightsPlan, scale: Scale) -> str:
         reason = scale.text(pair.reason)
         return f"{reason[0].upper()}{reason[1:]}"
     a, b = scale.height_text(pair.antenna_a_m), scale.height_text(pair.antenna_b_m)
-    return f"Antennas at A {a} and B {b} above ground {listed(list(plan.answer.asked))}, cost {pair.cost:g}"
+    return f"Antennas at A {a} and B {b} above ground {listed(list(plan.answer.asked))}, cost {cost_text(pair.cost)}"
 
 
 def remedies_words(plan: HeightsPlan, found: NoPair, scale: Scale) -> list[str]:
