@@ -97,7 +97,14 @@ def command(
         put(json_to, json_text({"schema": "hopwright-reach/1", "hop": hop.name, "answers": answers}))
     if json_to != "-":
         asked = f"mode {mode or hop.radio.modes[0].name} and a fade margin of {db_text(fade_margin_db)}"
-        _show(f"{hop.name}: what the radio reaches with {asked}.", answers, feet=feet, full=full, quiet=quiet, color=not no_color)
+        _show(
+            f"{hop.name}: what the radio reaches with {asked}.",
+            answers,
+            feet=feet,
+            full=full,
+            quiet=quiet,
+            color=not no_color,
+        )
     return 0
 
 
