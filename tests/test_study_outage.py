@@ -112,8 +112,11 @@ def test_each_mode_is_held_against_its_own_target(land):
 def test_another_mode_is_a_way_only_where_it_is_not_asked_for_itself(land):
     """256-QAM misses the hop's objective, which QPSK meets; what QPSK's own asks for 256-QAM cannot do instead."""
     steps = {}
-    for name, of_hop, of_qpsk, threshold_dbm in (("first", TIGHT, {}, -130.0), ("own", LOOSE, TIGHT, -86.0)):
-        modes = mode("256-QAM", -64.0), mode("QPSK", threshold_dbm, **of_qpsk)
+    for name, of_hop, of_qpsk, of_modes_dbm in (
+        ("first", {"year_percent": 1e-6}, {}, (-40.0, -130.0)),
+        ("own", LOOSE, TIGHT, (-64.0, -86.0)),
+    ):
+        modes = mode("256-QAM", of_modes_dbm[0]), mode("QPSK", of_modes_dbm[1], **of_qpsk)
         availability = replace(CLIMATE, objective=Objective(**of_hop))
         verdict = run_study(hop_over(land(), radio=radio(*modes), availability=availability)).verdict
         assert verdict.outcome == "fails"
